@@ -1,0 +1,1 @@
+"""archive of Stillroom."""

@@ -1,0 +1,1 @@
+"""intake of Stillroom."""

@@ -1,0 +1,1 @@
+"""reduction of Stillroom."""
