@@ -1,0 +1,306 @@
+"""Making files last: the only module that syncs, links and locks.
+
+A sealed file appears under its name in one step, whole, or not at all::
+
+    write staging file -> no more writing (mode 0444) -> sync it -> reopen it and compare digests
+        -> link it to its final name, which fails if that is taken -> sync the folder -> unlink the staging name
+
+What each system gives:
+
+- Linux: `fsync` of file and folder. The digest is compared after the page cache was asked to drop the file
+  (`posix_fadvise`), so that the comparison reads the disk where the kernel obliges; it does not have to.
+- macOS: `fsync` leaves data in the drive's own cache; `fcntl(F_FULLFSYNC)` does not, and is used.
+- Windows: folders cannot be synced; NTFS keeps its names in a journal instead. Files are given their name by
+  `os.rename`, which fails there if the name is taken, because a second name would share the read-only mark that
+  keeps the first from being removed.
+- File systems without hard links (exFAT, some network shares): the name is taken by creating an empty file
+  exclusively, then the staging file is renamed over it. A crash between the two leaves the empty file together
+  with its staging file; `sweep_staging` knows the pair and removes both.
+
+No system promises that a disk which acknowledged a sync has kept its word. That is what fixity checks are for.
+"""
+
+from __future__ import annotations
+
+import contextlib
+import datetime
+import errno
+import hashlib
+import os
+import secrets
+import sys
+import time
+from collections.abc import Iterator
+from pathlib import Path
+
+from archive.errors import AlreadySealed, ArchiveBusy, BadRequest
+from archive.store.names import is_key
+
+if sys.platform == "win32":  # pragma: no cover - the other system
+    import msvcrt
+else:
+    import fcntl
+
+__all__ = [
+    "LOCK_NAME",
+    "STAGING_SUFFIX",
+    "archive_lock",
+    "discard",
+    "file_digest",
+    "settle",
+    "staging_path",
+    "sweep_staging",
+    "take_name",
+]
+
+LOCK_NAME = "archive.lock"
+STAGING_SUFFIX = ".partial"
+# What a file system answers that knows no second names (Linux link(2), ERRORS; macOS answers ENOTSUP).
+_NO_LINKS = {errno.EPERM, errno.ENOSYS, errno.EOPNOTSUPP, errno.ENOTSUP, errno.EMLINK}
+_BLOCK = 1 << 20
+_held: dict[Path, int] = {}  # lock files held by this process, so that sweeping can insist on one
+
+
+def staging_path(root: Path, key: str) -> Path:
+    """Return a new path in ``root/staging`` for writing `key`; the folder is made if need be.
+
+    Notes
+    -----
+    The slash becomes ``~``, which no key holds, and a random part keeps two writers of one key apart.
+    """
+    folder = root / "staging"
+    _make_folders(folder, below=root)
+    return folder / f"{key.replace('/', '~')}.{secrets.token_hex(4)}{STAGING_SUFFIX}"
+
+
+def settle(staged: Path) -> None:
+    """Take the write permission from a finished file and bring its bytes to the disk.
+
+    Notes
+    -----
+    Who may read it is what the user's umask left to the staging file.
+    """
+    os.chmod(staged, staged.stat().st_mode & 0o444)  # noqa: PTH101 - crash tests replace this module's `os`
+    descriptor = os.open(staged, os.O_RDONLY)
+    try:
+        _sync(descriptor)
+        if hasattr(os, "posix_fadvise"):  # so that reading it back reads the disk
+            os.posix_fadvise(descriptor, 0, 0, os.POSIX_FADV_DONTNEED)
+    finally:
+        os.close(descriptor)
+
+
+def file_digest(path: Path) -> tuple[str, int]:
+    """Return the SHA-256 of a file and its size in bytes."""
+    digest, size = hashlib.sha256(), 0
+    with path.open("rb") as stream:
+        while block := stream.read(_BLOCK):
+            digest.update(block)
+            size += len(block)
+    return digest.hexdigest(), size
+
+
+def take_name(staged: Path, final: Path, *, root: Path, key: str) -> None:
+    """Give a settled file its final name, for ever.
+
+    Raises
+    ------
+    AlreadySealed
+        If the name is taken.
+    """
+    _make_folders(final.parent, below=root)
+    try:
+        if sys.platform == "win32":  # pragma: no cover - the other system
+            os.rename(staged, final)  # noqa: PTH104 - as above; does not overwrite on Windows
+        else:
+            _link_or_rename(staged, final)
+    except FileExistsError as error:
+        raise AlreadySealed(
+            f"{key} is sealed already",
+            file=str(final),
+            remedy="a correction is a new accession or revision that names what it supersedes",
+        ) from error
+    _sync_folder(final.parent)
+    discard(staged)
+
+
+def _link_or_rename(staged: Path, final: Path) -> None:
+    try:
+        os.link(staged, final)  # not Path.hardlink_to, as above
+    except OSError as error:
+        if error.errno not in _NO_LINKS:
+            raise
+        os.close(os.open(final, os.O_CREAT | os.O_EXCL | os.O_WRONLY, 0o444))
+        os.rename(staged, final)  # noqa: PTH104 - as above
+
+
+def discard(staged: Path) -> None:
+    """Remove a staging file if it is there."""
+    with contextlib.suppress(FileNotFoundError):
+        os.unlink(staged)  # noqa: PTH108 - as above
+
+
+def _make_folders(folder: Path, *, below: Path) -> None:
+    """Make `folder` and its parents under `below`, each synced into its own parent."""
+    missing = [f for f in (folder, *folder.parents) if f.is_relative_to(below) and not f.is_dir()]
+    for path in reversed(missing):
+        with contextlib.suppress(FileExistsError):  # another writer may have been quicker
+            os.mkdir(path)  # noqa: PTH102 - as above
+        _sync_folder(path.parent)
+
+
+def _sync(descriptor: int) -> None:
+    if sys.platform == "darwin":  # pragma: no cover - the other system
+        fcntl.fcntl(descriptor, fcntl.F_FULLFSYNC)
+    else:
+        os.fsync(descriptor)
+
+
+def _sync_folder(folder: Path) -> None:
+    if sys.platform == "win32":  # pragma: no cover - the other system
+        return
+    descriptor = os.open(folder, os.O_RDONLY)
+    try:
+        _sync(descriptor)
+    finally:
+        os.close(descriptor)
+
+
+@contextlib.contextmanager
+def archive_lock(root: Path, *, wait_s: float = 5.0) -> Iterator[None]:
+    """Return a context in which this process alone writes to the archive at `root`.
+
+    Parameters
+    ----------
+    root : Path
+        The archive's folder.
+    wait_s : float
+        How long to wait for another writer, in seconds, zero or more.
+
+    Raises
+    ------
+    ArchiveBusy
+        If another process, or another part of this one, still writes after that time.
+
+    Notes
+    -----
+    The operating system holds the lock and releases it when its holder ends, however it ends. The lock file stays;
+    what it says about the holder is for people only. It is not reentrant.
+    """
+    path = (root / LOCK_NAME).resolve()
+    descriptor = os.open(path, os.O_RDWR | os.O_CREAT, 0o664)
+    deadline, owner = time.monotonic() + wait_s, os.getpid()
+    try:
+        while not _locked(descriptor):
+            if time.monotonic() >= deadline:
+                raise ArchiveBusy(
+                    "the archive is being written to",
+                    file=str(root),
+                    found=_holder(path),
+                    remedy="wait for it to end and try again; the lock ends with its process",
+                )
+            time.sleep(0.05)
+        _held[path] = descriptor
+        now = datetime.datetime.now(datetime.UTC).isoformat(timespec="seconds")
+        os.ftruncate(descriptor, 0)
+        # Byte 0 is what Windows locks, and locked bytes cannot be read there; the text begins after it.
+        os.lseek(descriptor, 0, os.SEEK_SET)
+        os.write(descriptor, f"\nprocess {owner}, since {now}\n".encode())
+        yield
+    finally:
+        if os.getpid() == owner:  # a forked child that leaves this block has no lock to give back
+            if _held.pop(path, None) is not None:
+                os.ftruncate(descriptor, 0)
+                _unlock(descriptor)
+            os.close(descriptor)
+
+
+def _locked(descriptor: int) -> bool:
+    """Return whether the lock could be had at once."""
+    try:
+        if sys.platform == "win32":  # pragma: no cover - the other system
+            msvcrt.locking(descriptor, msvcrt.LK_NBLCK, 1)
+        else:
+            fcntl.flock(descriptor, fcntl.LOCK_EX | fcntl.LOCK_NB)
+    except OSError as error:
+        if error.errno in {errno.EAGAIN, errno.EACCES, errno.EDEADLK}:
+            return False
+        raise
+    return True
+
+
+def _unlock(descriptor: int) -> None:
+    if sys.platform == "win32":  # pragma: no cover - the other system
+        os.lseek(descriptor, 0, os.SEEK_SET)
+        msvcrt.locking(descriptor, msvcrt.LK_UNLCK, 1)
+    else:
+        fcntl.flock(descriptor, fcntl.LOCK_UN)
+
+
+def _holder(path: Path) -> str:
+    with path.open("rb") as stream:
+        stream.seek(1)
+        text = stream.read(200).decode("utf-8", "replace").strip()
+    return text or "a process that did not say which"
+
+
+def _release_in_child() -> None:
+    # A forked child shares the parent's lock; closing its copy lets the lock end with the parent.
+    for descriptor in _held.values():
+        os.close(descriptor)
+    _held.clear()
+
+
+if hasattr(os, "register_at_fork"):
+    os.register_at_fork(after_in_child=_release_in_child)
+
+
+def sweep_staging(root: Path) -> list[str]:
+    """Remove what a writer left behind that did not finish, and return a sentence about each thing.
+
+    Parameters
+    ----------
+    root : Path
+        The archive's folder; its lock must be held by this process, since a living writer's file looks the same.
+
+    Returns
+    -------
+    list of str
+        What was found and done, sorted by name; empty after a clean end.
+
+    Raises
+    ------
+    BadRequest
+        If the lock is not held.
+    """
+    if (root / LOCK_NAME).resolve() not in _held:
+        raise BadRequest(
+            "staging may be swept only by the one writer of the archive",
+            file=str(root),
+            expected="the archive's lock held by this process",
+        )
+    folder = root / "staging"
+    if not folder.is_dir():
+        return []
+    return [_swept(root, path) for path in sorted(folder.iterdir())]
+
+
+def _swept(root: Path, staged: Path) -> str:
+    name = f"staging/{staged.name}"
+    key = staged.name.removesuffix(STAGING_SUFFIX).rpartition(".")[0].replace("~", "/", 1)
+    if not staged.name.endswith(STAGING_SUFFIX) or not is_key(key) or not staged.is_file():
+        return f"{name} was not put there by the archive; it was left alone"
+    final = root / "sealed" / f"{key}.h5"
+    size = staged.stat().st_size
+    if final.exists() and final.samefile(staged):
+        _sync_folder(final.parent)
+        discard(staged)
+        return f"{name}: {key} had been sealed whole; only its staging name was left and is removed"
+    if final.is_file() and final.stat().st_size == 0 and size > 0:
+        # The name was taken on a file system without links, but the rename did not follow.
+        os.unlink(final)  # noqa: PTH108 - as above
+        _sync_folder(final.parent)
+    discard(staged)
+    return (
+        f"{name}: the writing of {key} had not finished; its {size} bytes were removed and nothing was sealed"
+    )
