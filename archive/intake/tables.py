@@ -1,0 +1,342 @@
+"""Text tables read block by block: columns as arrays, and every cell that is not what the sheet says.
+
+Rules: the bytes are read once; a row keeps its line number; nothing is dropped, repaired or guessed in silence. What
+cannot be read is a `BadCell` (a whole line if it cannot be split into cells), its value is NaN, and reading goes on,
+so that one pass finds everything. Cells must end on their line: a quoted line break is reported, not read.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterable, Iterator, Sequence
+from pathlib import Path
+from typing import Any, BinaryIO
+
+import numpy as np
+import numpy.typing as npt
+import pyarrow as pa
+import pyarrow.compute as pc
+from pyarrow import csv
+
+from archive.intake.cells import as_mask, numbers, parsed_number
+from archive.intake.dialect import BadCell, BadCells, Block, ColumnRequest, require_usable
+from archive.intake.header import Header
+from archive.intake.lines import BLOCK_BYTES, LineBlocks
+from archive.intake.rows import Rows
+from archive.intake.timestamps import TimeStamps
+from schemas.sweep import Dialect
+
+__all__ = ["TableReader", "read_header"]
+
+
+class TableReader:
+    """Reader of the asked columns of one text table.
+
+    Parameters
+    ----------
+    source : binary file or iterable of bytes
+        The file's bytes, packed with gzip or not; read once by `blocks`.
+    file : str
+        Name for messages.
+    dialect : schemas.sweep.Dialect
+        How the table is written.
+    columns : sequence of ColumnRequest
+        What is asked for; columns that nobody asks for are not looked into.
+    tee : sequence of callables, optional
+        Each gets every byte of the source as it stands in the file, in order, once.
+    block_bytes : int, optional
+        About how many bytes are parsed at once. It bounds the memory and changes no result.
+
+    Attributes
+    ----------
+    bad_cells : list of BadCell
+        The first thousand, in file order. Complete after `blocks` has ended, like the following.
+    bad_cell_count : int
+        All of them.
+    rows : int
+        Rows of data that could be split into cells.
+    header : tuple of str
+        Column names from the dialect or the first header line; empty without either.
+    header_lines : tuple of tuple of str
+        All header lines, split into cells.
+
+    Raises
+    ------
+    BadRequest
+        If dialect or columns contradict themselves, or a time column lacks its format or zone.
+
+    Notes
+    -----
+    A column that the file does not have is reported and comes as NaN (text: empty), so that the others are still
+    checked. If `blocks` is left before its end, the listeners have not had the whole file.
+    """
+
+    def __init__(
+        self,
+        source: BinaryIO | Iterable[bytes],
+        *,
+        file: str,
+        dialect: Dialect,
+        columns: Sequence[ColumnRequest],
+        tee: Sequence[Callable[[bytes], object]] = (),
+        block_bytes: int = BLOCK_BYTES,
+    ) -> None:
+        require_usable(dialect, columns, file=file)
+        self._file = file
+        self._dialect = dialect
+        self._columns = tuple(columns)
+        self._lines = LineBlocks(source, listeners=tee, block_bytes=block_bytes)
+        self._bad = BadCells(file)
+        self._rows = Rows(dialect, lambda line, found, why: self._bad.add(line, 0, "", found, why))
+        self._stamps = (
+            TimeStamps(
+                time_format=dialect.time_format,
+                time_zone=dialect.time_zone,
+                fold=dialect.fold,
+                decimal=dialect.decimal,
+            )
+            if any(request.kind == "time" for request in columns)
+            else None
+        )
+        self._header = Header(dialect, self._rows, self._bad)
+        self._places: dict[str, int] | None = None
+        self._typed = True
+        self.rows = 0
+
+    @property
+    def header(self) -> tuple[str, ...]:
+        """Column names, once the first block has been read; empty without any."""
+        return self._header.names
+
+    @property
+    def header_lines(self) -> tuple[tuple[str, ...], ...]:
+        """All header lines, split into cells."""
+        return self._header.lines
+
+    @property
+    def _placed(self) -> dict[str, int]:
+        return self._places or {}
+
+    @property
+    def bad_cells(self) -> list[BadCell]:
+        """The first thousand bad cells, in file order."""
+        return self._bad.detailed
+
+    @property
+    def bad_cell_count(self) -> int:
+        """Number of all bad cells."""
+        return self._bad.count
+
+    def blocks(self) -> Iterator[Block]:
+        """Yield the table in blocks of rows, in file order; to be called once."""
+        line = 1
+        for first, data in self._lines:
+            line = first + data.count(b"\n")
+            picked, lines = self._rows.pick(*self._header.strip(data, first))
+            if not len(lines):
+                self._bad.settle()
+                continue
+            if self._places is None:
+                self._places = self._found_columns(picked[: picked.index(b"\n")])
+            block = self._block(picked, lines, first)
+            self.rows += len(block.lines)
+            self._bad.settle()
+            yield block
+        if self._lines.fault is not None:
+            self._bad.add(self._lines.fault[0], 0, "", *self._lines.fault[1:])
+        elif self._header.pending:
+            self._bad.add(
+                line, 0, "", "", f"the file ends where {self._header.pending} more header lines were expected"
+            )
+        elif not self.rows and not self._bad.count:
+            self._bad.add(line, 0, "", "", "the table ends here without a row of data")
+        self._bad.settle()
+
+    def _found_columns(self, first_row: bytes) -> dict[str, int]:
+        self._header.settle_width(first_row)
+        places = {request.name: self._header.place(request.column) for request in self._columns}
+        return {name: place for name, place in places.items() if place is not None}
+
+    def _block(self, data: bytes, lines: npt.NDArray[np.int64], first: int) -> Block:
+        table, lines = self._table(data, lines)
+        block = Block(first_line=first, columns={}, lines=lines, sentinel={})
+        for request in self._columns:
+            place = self._placed.get(request.name)
+            if place is None:
+                values: npt.NDArray[Any] = (
+                    np.full(len(lines), "", object) if request.kind == "text" else np.full(len(lines), np.nan)
+                )
+                mask = np.zeros(len(lines), dtype=np.bool_)
+            else:
+                values, mask = self._column(request, table.column(str(place)).combine_chunks(), place, lines)
+            block.columns[request.name] = values
+            block.sentinel[request.name] = mask
+        return block
+
+    def _table(self, data: bytes, lines: npt.NDArray[np.int64]) -> tuple[pa.Table, npt.NDArray[np.int64]]:
+        """Return the asked columns, as numbers if all of them allow it, else as text; ragged rows are reported."""
+        if self._typed:
+            # Most blocks are clean: then Arrow reads the numbers itself, three times faster than through text.
+            try:
+                table, ragged = self._parsed(data, typed=True)
+            except pa.ArrowInvalid:
+                self._typed = False
+            else:
+                if self._clean(table):
+                    return table, self._without_ragged(table, ragged, lines)
+        table, ragged = self._parsed(data, typed=False)
+        return table, self._without_ragged(table, ragged, lines)
+
+    def _parsed(self, data: bytes, *, typed: bool) -> tuple[pa.Table, list[tuple[int, int, str]]]:
+        ragged: list[tuple[int, int, str]] = []
+
+        def skip(row: Any) -> str:
+            ragged.append((row.number, row.actual_columns, row.text))
+            return "skip"
+
+        types = {str(place): pa.string() for place in self._placed.values()} or {"0": pa.string()}
+        if typed:
+            # One column can be asked for twice, as text and as number; then it is read as text.
+            other = {self._placed.get(request.name) for request in self._columns if request.kind != "number"}
+            types |= {str(place): pa.float64() for place in self._placed.values() if place not in other}
+        quote = self._dialect.quote
+        table = csv.read_csv(
+            pa.BufferReader(data),
+            read_options=csv.ReadOptions(
+                use_threads=False,  # row numbers are only given then
+                block_size=len(data) + 1,
+                column_names=[str(place) for place in range(self._header.width)],
+            ),
+            parse_options=csv.ParseOptions(
+                delimiter=self._rows.delimiter,
+                quote_char=quote if quote is not None else False,
+                double_quote=quote is not None,
+                escape_char=False,
+                newlines_in_values=False,
+                ignore_empty_lines=False,
+                invalid_row_handler=skip,
+            ),
+            convert_options=csv.ConvertOptions(
+                column_types=types,
+                include_columns=list(types),
+                null_values=[],
+                strings_can_be_null=False,
+                decimal_point=self._dialect.decimal,
+                check_utf8=False,  # `Rows` has checked it
+            ),
+        )
+        return table, ragged
+
+    def _clean(self, table: pa.Table) -> bool:
+        """Whether every number can stand as Arrow read it: finite, or a NaN that is to be kept."""
+        for request in self._columns:
+            place = self._placed.get(request.name)
+            if request.kind != "number" or place is None:
+                continue
+            column = table.column(str(place))
+            if not pa.types.is_floating(column.type):
+                continue
+            allowed = pc.is_nan(column) if request.nan == "keep" and not self._names_nan(request) else False
+            if not pc.all(pc.or_(pc.is_finite(column), allowed), min_count=0).as_py():
+                return False
+        return True
+
+    @staticmethod
+    def _names_nan(request: ColumnRequest) -> bool:
+        return any(sentinel.strip().lower().lstrip("+-") == "nan" for sentinel in request.sentinels)
+
+    def _without_ragged(
+        self, table: pa.Table, ragged: list[tuple[int, int, str]], lines: npt.NDArray[np.int64]
+    ) -> npt.NDArray[np.int64]:
+        keep = np.ones(len(lines), dtype=np.bool_)
+        for number, cells, text in ragged:
+            keep[number - 1] = False
+            why = f"has {cells} cells where the table has {self._header.width}"
+            if cells == self._header.width + 1 and text.rstrip().endswith(self._rows.delimiter):
+                why += "; the last is empty, after a delimiter at the end of the line"
+            self._bad.add(int(lines[number - 1]), 0, "", text, why)
+        kept = lines[keep]
+        if (
+            len(kept) != table.num_rows
+        ):  # pragma: no cover - `Rows` leaves no line that Arrow could split in two
+            msg = f"{self._file}: {table.num_rows} rows were read from {len(kept)} lines near line {lines[0]}"
+            raise AssertionError(msg)
+        return kept
+
+    def _column(
+        self, request: ColumnRequest, cells: Any, place: int, lines: npt.NDArray[np.int64]
+    ) -> tuple[npt.NDArray[Any], npt.NDArray[np.bool_]]:
+        faults: dict[int, str]
+        if pa.types.is_floating(cells.type):
+            values = np.array(cells.to_numpy(zero_copy_only=False), dtype=np.float64)
+            mask = self._equals_sentinel(request, values)
+            faults = {}
+        else:
+            bare = pc.utf8_trim_whitespace(cells)
+            mask = as_mask(pc.is_in(bare, pa.array([s.strip() for s in request.sentinels], pa.string())))
+            if request.kind == "text":
+                text = np.array(cells.to_pylist(), dtype=object)
+                text[mask] = ""
+                return text, mask
+            absent = as_mask(pc.or_(pc.equal(bare, ""), pc.match_substring_regex(bare, r"(?i)^[+-]?nan$")))
+            if request.kind == "number":
+                values, _, faults = numbers(cells, decimal=self._dialect.decimal)
+                mask |= self._equals_sentinel(request, values)
+            else:
+                values, faults = self._seconds(cells, request, mask)
+            if request.nan == "error":
+                faults = {
+                    int(i): "is empty" if not bare[int(i)].as_py() else "is NaN"
+                    for i in np.flatnonzero(absent)
+                } | faults
+            else:
+                faults = {index: why for index, why in faults.items() if not absent[index]}
+        for index, why in faults.items():
+            if not mask[index]:
+                self._bad.add(
+                    int(lines[index]), place + 1, self._header.label(place), cells[index].as_py(), why
+                )
+        values[mask] = np.nan
+        return values, mask
+
+    def _seconds(
+        self, cells: Any, request: ColumnRequest, mask: npt.NDArray[np.bool_]
+    ) -> tuple[npt.NDArray[np.float64], dict[int, str]]:
+        if self._stamps is None:  # pragma: no cover - made in __init__ whenever a time is asked for
+            msg = "a time column without a time format"
+            raise AssertionError(msg)
+        values, faults = self._stamps.seconds(cells)
+        if self._dialect.time_format == "epoch":
+            mask |= self._equals_sentinel(request, numbers(cells, decimal=self._dialect.decimal)[0])
+        return values, faults
+
+    def _equals_sentinel(
+        self, request: ColumnRequest, values: npt.NDArray[np.float64]
+    ) -> npt.NDArray[np.bool_]:
+        stated = [parsed_number(sentinel, decimal=self._dialect.decimal) for sentinel in request.sentinels]
+        return np.isin(values, [value for value in stated if value is not None])
+
+
+def read_header(path: Path, dialect: Dialect) -> tuple[str, ...]:
+    """Return the column names of a text table, from the dialect or its first header line.
+
+    Parameters
+    ----------
+    path : pathlib.Path
+        File, packed with gzip or not.
+    dialect : schemas.sweep.Dialect
+        How the table is written.
+
+    Returns
+    -------
+    tuple of str
+        Empty if the table has no names.
+
+    Raises
+    ------
+    BadRequest
+        If the dialect contradicts itself.
+    """
+    with path.open("rb") as source:
+        reader = TableReader(source, file=path.name, dialect=dialect, columns=())
+        next(reader.blocks(), None)
+        return reader.header
