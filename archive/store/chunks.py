@@ -106,7 +106,8 @@ def _created(
     return group.create_dataset(
         name,
         shape=shape,
-        maxshape=(None,) if grows else None,
+        # HDF5 takes no chunk longer than an axis that cannot grow, and none of length zero.
+        maxshape=tuple(None if grows or length == 0 else length for length in shape),
         dtype=h5py.string_dtype("utf-8", dtype.itemsize) if text else dtype,
         chunks=chunks,
         shuffle=_shuffles(_shuffle_width(dtype)),
