@@ -2,7 +2,7 @@
 
 Rules
 -----
-* A kind is more than a dimension: Hz and rad/s, N m and N m/rad, a coverage and a bare inverse area share one.
+* A kind is more than a dimension: Hz and rad/s, N m and N m/rad, a coverage and a bare inverse area share a dimension in the SI.
 * The first entry of `si` is canonical. A kind with two entries (drive) is a union: the dimension decides.
 * `hints` answer the mistakes made most; each is one sentence and has a test.
 """
@@ -15,7 +15,6 @@ from difflib import get_close_matches
 __all__ = ["KINDS", "Kind", "kind_of"]
 
 _OSCILLATING = ("rms", "peak", "peak-to-peak")
-_RADIAN = frozenset({"rad", "deg"})
 _PURE = frozenset({"1"})
 _SHARE = frozenset({"1", "%", "ppm"})
 
@@ -24,7 +23,7 @@ _PER_MASS_HEAT = (
     "that is per mass; a molar heat capacity needs the isotope's molar mass: 1 J/(g K) is 4.002602 J/(mol K) for"
     " helium-4 and 3.016029 J/(mol K) for helium-3",
 )
-_CYCLES = "that is a cycle frequency; multiply by 2 pi and write rad/s"
+_CYCLES = "without radians that is a cycle frequency; multiply by 2 pi and write rad/s"
 
 
 @dataclass(frozen=True, slots=True)
@@ -48,7 +47,7 @@ class Kind:
     article : str
         "a" or "an", for sentences.
     required : frozenset of str
-        Unit names of which at least one must appear (``rad``, ``Hz``); empty for no demand.
+        Unit names of which at least one must appear (``Hz``); empty for no demand.
     allowed : frozenset of str or None
         The only unit names accepted, or None for whatever has the dimension.
     refused : tuple of (str, str)
@@ -59,6 +58,8 @@ class Kind:
         Sentences for a unit of the same dimension as the first element.
     conventions : tuple of str
         Words accepted after the unit.
+    only_if_asked : tuple of str
+        Words accepted only by a field that demands such a word.
     scaled : bool
         Whether a temperature scale may be named.
     """
@@ -76,6 +77,7 @@ class Kind:
     also: tuple[tuple[str, str], ...] = ()
     hints: tuple[tuple[str, str], ...] = ()
     conventions: tuple[str, ...] = ()
+    only_if_asked: tuple[str, ...] = ()
     scaled: bool = False
 
     @property
@@ -88,11 +90,6 @@ class Kind:
         """Whether a number alone, without a unit, is a complete statement."""
         return self.si == ("1",)
 
-    @property
-    def radian(self) -> bool:
-        """Whether an angle belongs to the unit."""
-        return bool(self.required & _RADIAN)
-
 
 _TABLE = (
     Kind("temperature", ("K",), ("uK", "mK", "K"), ("mK", "K"), "thermodynamic temperature, with its scale", "T", scaled=True),
@@ -102,10 +99,10 @@ _TABLE = (
     Kind("period", ("s",), ("us", "ms", "s"), ("ms", "us"), "time of one full oscillation", "P",
          hints=(("Hz", "that is a frequency; write the time of one oscillation"),)),
     Kind("frequency", ("Hz",), ("mHz", "Hz", "kHz", "MHz"), ("Hz", "mHz", "kHz"), "cycles per time", "f", required=frozenset({"Hz"}),
-         refused=(("rad", "that is an angular frequency; divide by 2 pi and write Hz"), ("s", "1/s does not say whether cycles or radians; write Hz")),
-         hints=(("s", "that is a period; write its inverse in Hz"),)),
+         refused=(("s", "1/s does not say whether cycles or radians; write Hz"),),
+         hints=(("s", "that is a period; write its inverse in Hz"), ("rad/s", "that is an angular frequency; divide by 2 pi and write Hz"))),
     Kind("angular_frequency", ("rad/s",), ("mrad/s", "rad/s"), ("rad/s",), "phase angle per time, 2 pi times the frequency", r"\omega", "an",
-         required=frozenset({"rad", "deg"}), refused=(("Hz", _CYCLES),)),
+         hints=(("Hz", _CYCLES),)),
     Kind("dissipation", ("1",), ("1", "ppm"), ("1", "ppm"), "inverse quality factor, full width at half power over frequency", "Q^{-1}", allowed=frozenset({"1", "ppm"}),
          hints=(("Hz", "a half width has to be divided by the frequency first"),)),
     Kind("quality_factor", ("1",), ("1",), ("1",), "quality factor of a resonance", "Q", allowed=_PURE),
@@ -114,7 +111,7 @@ _TABLE = (
     Kind("inductance", ("H",), ("nH", "uH", "mH", "H"), ("uH", "mH"), "self-inductance", "L", "an"),
     Kind("capacitance", ("F",), ("pF", "nF", "uF"), ("pF",), "electrical capacitance", "C"),
     Kind("pressure", ("Pa",), ("mPa", "Pa", "kPa", "MPa"), ("Pa", "mbar", "Torr"), "pressure, absolute or gauge", "p",
-         conventions=("absolute", "gauge"), refused=(("J", "write Pa for a pressure"), ("N", "write Pa for a pressure"))),
+         conventions=("absolute", "gauge"), only_if_asked=("gauge",), refused=(("J", "write Pa for a pressure"), ("N", "write Pa for a pressure"))),
     Kind("pressure_ratio", ("1",), ("1",), ("1", "%"), "ratio of two absolute pressures", "p/p_0", allowed=_SHARE),
     Kind("relative_pressure", ("1",), ("1",), ("1", "%"), "pressure over the saturated vapour pressure at the same temperature", "p/p_0", allowed=_SHARE),
     Kind("volume", ("m^3",), ("mm^3", "cm^3", "L", "m^3"), ("cm^3", "L"), "volume", "V"),
@@ -133,7 +130,7 @@ _TABLE = (
     Kind("density", ("kg/m^3",), ("kg/m^3",), ("kg/m^3", "g/cm^3"), "mass per volume", r"\rho"),
     Kind("moment_of_inertia", ("kg m^2",), ("g cm^2", "kg m^2"), ("g cm^2", "kg m^2"), "moment of inertia about the torsion axis", "I"),
     Kind("torsion_constant", ("N m/rad",), ("mN m/rad", "N m/rad"), ("N m/rad", "dyn cm/rad"), "torque per angle of twist", r"\kappa",
-         required=frozenset({"rad"})),
+         hints=(("N m", "that is a torque; write N m/rad or dyn cm/rad"),)),
     Kind("mass_sensitivity", ("s/kg",), ("ns/ug", "s/kg"), ("ns/ug",), "change of period per mass", r"\partial P/\partial m",
          hints=(("Hz/kg", "this kind is a change of period; write s per mass"),)),
     Kind("areal_mass_sensitivity", ("s m^2/kg",), ("ns cm^2/ng", "s m^2/kg"), ("ns cm^2/ng",), "change of period per mass per area", r"\partial P/\partial\sigma", "an"),
@@ -152,8 +149,8 @@ _TABLE = (
     Kind("drive", ("V", "A"), ("uV", "mV", "V", "uA", "mA", "A"), ("mV", "V", "uA"), "excitation of an oscillator, as voltage or current", "D", conventions=_OSCILLATING),
     Kind("power", ("W",), ("pW", "nW", "uW", "mW", "W"), ("nW", "uW"), "power", r"\dot Q"),
     Kind("charge", ("C",), ("pC", "nC", "uC", "C"), ("C", "nC"), "electric charge", "q"),
-    Kind("angle", ("rad",), ("nrad", "urad", "mrad", "rad"), ("rad", "mrad", "deg"), "plane angle", r"\theta", "an", allowed=_RADIAN, required=_RADIAN, conventions=_OSCILLATING),
-    Kind("phase", ("rad",), ("mrad", "rad"), ("rad", "deg"), "phase angle", r"\varphi", allowed=_RADIAN, required=_RADIAN),
+    Kind("angle", ("rad",), ("nrad", "urad", "mrad", "rad"), ("rad", "mrad", "deg"), "plane angle", r"\theta", "an", conventions=_OSCILLATING),
+    Kind("phase", ("rad",), ("mrad", "rad"), ("rad", "deg"), "phase angle", r"\varphi"),
     Kind("magnetic_flux_density", ("T",), ("uT", "mT", "T"), ("mT", "T"), "magnetic flux density", "B"),
     Kind("torque", ("N m",), ("nN m", "uN m", "mN m", "N m"), ("N m", "dyn cm"), "torque", r"\tau",
          refused=(("J", "a torque is written N m, not in units of energy"), ("erg", "a torque is written dyn cm, not in units of energy")), conventions=_OSCILLATING),
@@ -197,5 +194,7 @@ def kind_of(name: str) -> Kind:
     if found is None:
         near = get_close_matches(name, KINDS, n=3)
         hint = f"; did you mean {' or '.join(near)}?" if near else ""
-        raise ValueError(f"found quantity kind {name[:64]!r}; expected one of {len(KINDS)} kinds such as coverage{hint}")
+        raise ValueError(
+            f"found quantity kind {name[:64]!r}; expected one of {len(KINDS)} kinds such as coverage{hint}"
+        )
     return found

@@ -24,7 +24,7 @@ from schemas.kinds import kind_of
 from schemas.units import parse_unit
 
 if TYPE_CHECKING:
-    from schemas.quantity import Quantity
+    from schemas.quantity_value import Quantity
 
 __all__ = ["RoundedText", "html_text", "in_preferred_unit", "latex_text", "plain_text", "rounded"]
 
@@ -111,7 +111,9 @@ def rounded(value: float, uncertainty: float | None, *, exact: bool = False) -> 
     if uncertainty is None or (uncertainty == 0 and exact):
         return _all_digits(number)
     if uncertainty <= 0:
-        raise ValueError(f"found uncertainty {uncertainty:g}; expected a positive one, or a value declared exact")
+        raise ValueError(
+            f"found uncertainty {uncertainty:g}; expected a positive one, or a value declared exact"
+        )
     spread = Decimal(repr(float(uncertainty)))
     place = spread.adjusted() - 1
     spread = _at_place(spread, place)
@@ -141,8 +143,6 @@ def _bracket(spread: Decimal, place: int, power: int) -> str:
     if shown >= 1:
         return f"{shown:f}"
     return str(int(spread.scaleb(-place, context=_WIDE)))
-
-
 
 
 def _all_digits(number: Decimal) -> RoundedText:
@@ -222,7 +222,7 @@ _LATEX = str.maketrans(
 
 
 def _words(quantity: Quantity) -> list[str]:
-    words = [quantity.convention] if quantity.convention else []
+    words: list[str] = [quantity.convention] if quantity.convention else []
     words += [f"on {quantity.scale}"] if quantity.scale else []
     return words + (["(exact)"] if quantity.exact else [])
 
@@ -241,7 +241,11 @@ def in_preferred_unit(quantity: Quantity) -> Quantity:
         In the largest display unit that leaves at least one digit before the point; the smallest if none does, the
         middle of the list for zero. Exact fractions convert, so the digits shown do not depend on the way.
     """
-    units = [unit for unit in kind_of(quantity.kind).display if parse_unit(unit).dimension == parse_unit(quantity.si_unit).dimension]
+    units = [
+        unit
+        for unit in kind_of(quantity.kind).display
+        if parse_unit(unit).dimension == parse_unit(quantity.si_unit).dimension
+    ]
     if not units:
         return quantity
     shown = [quantity.to(unit) for unit in units]
