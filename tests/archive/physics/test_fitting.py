@@ -1,0 +1,191 @@
+"""The fitting layer against certified values, and what it says when it fails.
+
+Certified values: NIST Statistical Reference Datasets, nonlinear regression (Information Technology Laboratory, NIST);
+files and terms in tests/real/nist-strd.
+"""
+
+from __future__ import annotations
+
+import math
+import re
+from pathlib import Path
+
+import numpy as np
+import pytest
+
+from archive.physics.fitting import Parameter, fit, fit_residuals
+
+FOLDER = Path(__file__).parents[2] / "real" / "nist-strd"
+
+
+def lanczos(x, b):
+    return b[0] * np.exp(-b[1] * x) + b[2] * np.exp(-b[3] * x) + b[4] * np.exp(-b[5] * x)
+
+
+def gauss(x, b):
+    peaks = b[2] * np.exp(-(((x - b[3]) / b[4]) ** 2)) + b[5] * np.exp(-(((x - b[6]) / b[7]) ** 2))
+    return b[0] * np.exp(-b[1] * x) + peaks
+
+
+def enso(x, b):
+    def wave(period, cosine, sine):
+        return cosine * np.cos(2 * np.pi * x / period) + sine * np.sin(2 * np.pi * x / period)
+
+    return b[0] + wave(12, b[1], b[2]) + wave(b[3], b[4], b[5]) + wave(b[6], b[7], b[8])
+
+
+MODELS = {
+    "Bennett5": lambda x, b: b[0] * (b[1] + x) ** (-1 / b[2]),
+    "Chwirut1": lambda x, b: np.exp(-b[0] * x) / (b[1] + b[2] * x),
+    "Chwirut2": lambda x, b: np.exp(-b[0] * x) / (b[1] + b[2] * x),
+    "DanWood": lambda x, b: b[0] * x ** b[1],
+    "ENSO": enso,
+    "Gauss1": gauss,
+    "Gauss2": gauss,
+    "Kirby2": lambda x, b: (b[0] + b[1] * x + b[2] * x**2) / (1 + b[3] * x + b[4] * x**2),
+    "Lanczos2": lanczos,
+    "Lanczos3": lanczos,
+    "MGH10": lambda x, b: b[0] * np.exp(b[1] / (x + b[2])),
+    "MGH17": lambda x, b: b[0] + b[1] * np.exp(-x * b[3]) + b[2] * np.exp(-x * b[4]),
+    "Misra1a": lambda x, b: b[0] * (1 - np.exp(-b[1] * x)),
+    "Misra1b": lambda x, b: b[0] * (1 - (1 + b[1] * x / 2) ** -2),
+    "Misra1c": lambda x, b: b[0] * (1 - (1 + 2 * b[1] * x) ** -0.5),
+    "Misra1d": lambda x, b: b[0] * b[1] * x / (1 + b[1] * x),
+    "Nelson": lambda x, b: b[0] - b[1] * x[0] * np.exp(-b[2] * x[1]),
+    "Rat42": lambda x, b: b[0] / (1 + np.exp(b[1] - b[2] * x)),
+    "Roszman1": lambda x, b: b[0] - b[1] * x - np.arctan(b[2] / (x - b[3])) / np.pi,
+}
+
+
+def read(name):
+    """Return starts, certified values, deviations, residual sum of squares, x and y of a problem."""
+    text = (FOLDER / f"{name}.dat").read_text()
+    rows = [
+        [float(word) for word in found.split()]
+        for found in re.findall(r"^\s*b\d+\s*=(.*)$", text, re.MULTILINE)
+    ]
+    rows = [row for row in rows if len(row) == 4]
+    square_sum = float(re.search(r"Residual Sum of Squares:\s*(\S+)", text).group(1))
+    data = np.array(
+        [[float(word) for word in line.split()] for line in text.splitlines()[60:] if line.strip()]
+    )
+    first, second, certified, deviation = np.array(rows).T
+    if name == "Nelson":
+        return (first, second), certified, deviation, square_sum, data[:, 1:].T, np.log(data[:, 0])
+    return (first, second), certified, deviation, square_sum, data[:, 1], data[:, 0]
+
+
+def test_all_problems_are_here():
+    assert {path.stem for path in FOLDER.glob("*.dat")} == set(MODELS)
+
+
+@pytest.mark.parametrize("start", [0, 1], ids=["far", "near"])
+@pytest.mark.parametrize("name", sorted(MODELS))
+def test_certified_values(name, start):
+    starts, certified, deviation, square_sum, x, y = read(name)
+    parameters = [Parameter(f"b{i + 1}", value) for i, value in enumerate(starts[start])]
+    found = fit(MODELS[name], parameters, x, y, absolute=False)
+    assert found.converged, found.message
+    np.testing.assert_allclose(found.values, certified, rtol=1e-6)
+    np.testing.assert_allclose(np.sqrt(np.diag(found.covariance)), deviation, rtol=1e-4)
+    assert found.chi2 == pytest.approx(square_sum, rel=1e-6)
+    assert found.dof == y.size - len(parameters)
+
+
+def test_bound_is_respected_and_named():
+    x = np.linspace(0.0, 1.0, 11)
+    found = fit(
+        lambda x, p: p[0] + p[1] * x,
+        [Parameter("a", 0.5), Parameter("b", 0.5, 0.0, 1.0)],
+        x,
+        2 * x,
+        absolute=False,
+    )
+    assert found.at_bound == ("b",)
+    assert found.value("b") == pytest.approx(1.0, abs=1e-6)
+    assert found.standard_uncertainty("b") == 0.0
+    # With the slope held at one, the best level is the mean of what is left: 0.5.
+    assert found.value("a") == pytest.approx(0.5, abs=1e-6)
+    assert found.dof == 10
+
+
+def test_badly_scaled_problem_converges():
+    t = np.linspace(0.0, 1e-6, 50)
+    found = fit(
+        lambda t, p: p[0] * np.exp(-t / p[1]),
+        [Parameter("height", 1e-15), Parameter("time", 1e-6)],
+        t,
+        3e-12 * np.exp(-t / 2e-7),
+        absolute=False,
+    )
+    assert found.converged
+    np.testing.assert_allclose(found.values, [3e-12, 2e-7], rtol=1e-8)
+
+
+def test_undetermined_parameters_are_not_called_converged():
+    x = np.linspace(0.0, 1.0, 9)
+    found = fit(
+        lambda x, p: (p[0] + p[1]) * x,
+        [Parameter("a", 1.0), Parameter("b", 2.0)],
+        x,
+        x + x**2,
+        absolute=False,
+    )
+    assert not found.converged
+    assert "do not determine" in found.message
+    assert np.isinf(found.covariance).all()
+
+
+def test_too_few_evaluations_are_said():
+    starts, _, _, _, x, y = read("MGH10")
+    parameters = [Parameter(f"b{i}", value) for i, value in enumerate(starts[0])]
+    found = fit(MODELS["MGH10"], parameters, x, y, absolute=False, max_evaluations=30)
+    assert not found.converged
+    assert found.message.startswith("not converged after")
+
+
+def test_absolute_and_relative_uncertainty():
+    x = np.arange(6.0)
+    y = np.array([0.1, 0.9, 2.2, 2.8, 4.1, 5.0])
+    line = [Parameter("a", 1.0), Parameter("b", 1.0)]
+    absolute = fit(lambda x, p: p[0] + p[1] * x, line, x, y, standard_uncertainty=0.5, absolute=True)
+    relative = fit(lambda x, p: p[0] + p[1] * x, line, x, y, standard_uncertainty=0.5, absolute=False)
+    # For equal uncertainties u(slope) = u / sqrt(sum of squared distances from the mean) = 0.5 / sqrt(17.5).
+    assert absolute.standard_uncertainty("b") == pytest.approx(0.5 / math.sqrt(17.5), rel=1e-6)
+    ratio = relative.standard_uncertainty("b") / absolute.standard_uncertainty("b")
+    assert ratio == pytest.approx(math.sqrt(absolute.reduced_chi2), rel=1e-9)
+    assert absolute.residuals.sum() == pytest.approx(0.0, abs=1e-8)
+
+
+@pytest.mark.parametrize(
+    ("parameters", "message"),
+    [
+        ([], "found none"),
+        ([Parameter("a", 1.0), Parameter("a", 2.0)], "found a name twice"),
+        ([Parameter("a", 2.0, 0.0, 1.0)], "found start 2.0"),
+        ([Parameter("a", 1.0, 1.0, 1.0)], "no room"),
+        ([Parameter("a", 1.0, scale=0.0)], "found scale 0.0"),
+        ([Parameter("a", math.nan)], "found start nan"),
+        ([Parameter(name, 1.0) for name in "abcd"], "expected at least 4"),
+    ],
+    ids=["none", "twice", "outside", "no room", "scale", "nan", "too many"],
+)
+def test_refused_parameters(parameters, message):
+    with pytest.raises(ValueError, match=message):
+        fit_residuals(lambda p: np.zeros(3) + p.sum(), parameters, absolute=False)
+
+
+def test_model_not_finite_at_the_start():
+    with pytest.raises(ValueError, match="found nan at point 0"):
+        fit(
+            lambda x, p: np.log(p[0] * x),
+            [Parameter("a", -1.0)],
+            np.array([1.0, 2.0]),
+            [0.0, 1.0],
+            absolute=False,
+        )
+
+
+def test_absolute_needs_uncertainties():
+    with pytest.raises(ValueError, match="absolute=True"):
+        fit(lambda x, p: p[0] * x, [Parameter("a", 1.0)], np.array([1.0, 2.0]), [0.0, 1.0], absolute=True)
