@@ -11,17 +11,17 @@ from typing import Annotated
 
 from pydantic import BaseModel, ConfigDict, Field, StringConstraints
 
-__all__ = ["NAME_PATTERN", "Name", "NamedRecord", "Record", "Reference", "Text"]
+__all__ = ["NAME_PATTERN", "REFERENCE_PATTERN", "Name", "NamedRecord", "Record", "Reference", "Text"]
 
 # A name is part of addresses, file names and LaTeX labels: letters, digits, hyphen, underscore, no dot (the dot
 # separates the revision) and nothing that a file system folds or forbids.
 NAME_PATTERN = r"^[A-Za-z0-9][A-Za-z0-9_-]{0,63}$"
-_REFERENCE_PATTERN = r"^[A-Za-z0-9][A-Za-z0-9_-]{0,63}(\.r[1-9][0-9]{0,5})?$"
+REFERENCE_PATTERN = r"^[A-Za-z0-9][A-Za-z0-9_-]{0,63}(\.r[1-9][0-9]{0,5})?$"
 
 Name = Annotated[str, StringConstraints(pattern=NAME_PATTERN)]
 """A name: letters, digits, hyphen and underscore, up to 64 characters."""
 
-Reference = Annotated[str, StringConstraints(pattern=_REFERENCE_PATTERN)]
+Reference = Annotated[str, StringConstraints(pattern=REFERENCE_PATTERN)]
 """A record cited by name and revision (`TO-4.r2`); without a revision the sheet's own or the newest one."""
 
 Text = Annotated[str, StringConstraints(max_length=20_000)]

@@ -168,8 +168,8 @@ class Detection(Record):
     reference_drive: Annotated[Quantity, OfKind("drive")] | None = None
     reference_quality_factor: Annotated[Quantity, OfKind("quality_factor")] | None = None
     reference_period: Annotated[Quantity, OfKind("period")] | None = None
-    rim_velocity_per_signal: Annotated[Quantity, OfKind("velocity_per_signal")] | None = Field(
-        default=None, description="Peak rim speed per volt of signal, e.g. `1.2(1) mm/s/V`."
+    reference_rim_velocity: Annotated[Quantity, OfKind("velocity", convention_required=True)] | None = Field(
+        default=None, description="Rim speed at the reference signal, e.g. `1.2(1) mm/s peak`."
     )
 
 

@@ -18,7 +18,7 @@ from typing import Any, TypeVar
 
 from pydantic import ValidationError
 
-from schemas.base import Record
+from schemas.base import NAME_PATTERN, REFERENCE_PATTERN, Record
 from schemas.cooldown import CooldownSheet
 from schemas.finding import Finding
 
@@ -28,6 +28,10 @@ _Model = TypeVar("_Model", bound=Record)
 PathKey = tuple[str | int, ...]
 
 _LARGEST_SHEET = 5_000_000  # bytes; a sheet of hundreds of sweeps is some 200 kB
+_FORMS = {
+    NAME_PATTERN: "a name of letters, digits, - and _, without blanks or dots, at most 64 long",
+    REFERENCE_PATTERN: "the name of a record, with or without its revision, e.g. TO-4 or TO-4.r2",
+}
 _HEADER = re.compile(r"^\s*\[(\[)?\s*(?P<path>[^\[\]]+?)\s*\]")
 _ASSIGNMENT = re.compile(r"""^\s*(?P<path>(?:[A-Za-z0-9_-]+|"[^"]*"|'[^']*')(?:\s*\.\s*(?:[A-Za-z0-9_-]+|"[^"]*"|'[^']*'))*)\s*=""")
 _PART = re.compile(r"""[A-Za-z0-9_-]+|"[^"]*"|'[^']*'""")
@@ -216,7 +220,9 @@ def _finding(error: Mapping[str, Any], tables: Mapping[str, Any], *, file: str, 
     elif kind == "union_tag_not_found":
         what = f"the table does not say what it is: {context.get('discriminator')} is missing"
     elif kind == "string_pattern_mismatch":
-        what, expected = "this text does not have the form that is needed here", f"the form {context.get('pattern')}"
+        pattern = str(context.get("pattern"))
+        what = "this text does not have the form that is needed here"
+        expected = _FORMS.get(pattern, f"the form {pattern}")
     else:
         what = str(error["msg"])
     if kind not in ("missing", "extra_forbidden", "value_error") and not isinstance(error.get("input"), dict | list):

@@ -1,0 +1,77 @@
+"""`stillroom.toml`: the few settings of one archive."""
+
+from __future__ import annotations
+
+import tomllib
+from pathlib import Path
+
+from pydantic import Field
+
+from archive.errors import InvalidSheet, NotAnArchive
+from archive.intake.sheet import LineMap, validated
+from archive.intake.thresholds import Thresholds
+from schemas.base import Record, Text
+
+__all__ = ["SETTINGS_NAME", "Settings", "read_settings", "settings_text"]
+
+SETTINGS_NAME = "stillroom.toml"
+
+
+class Settings(Record):
+    """Settings of an archive."""
+
+    name: Text = Field(min_length=1, description="Name of the laboratory's archive.")
+    index: str = Field(
+        default="sqlite:///index.sqlite3",
+        description="Address of the index: a SQLite file beside this one, or postgresql+psycopg://...",
+    )
+    thresholds: Thresholds = Field(default_factory=Thresholds, description="The lab's own limits of the checks.")
+
+    def index_address(self, root: Path) -> str:
+        """Address of the index, with the place of a SQLite file filled in."""
+        prefix = "sqlite:///"
+        if self.index.startswith(prefix):
+            return prefix + str((root / self.index[len(prefix) :]).resolve())
+        return self.index
+
+
+def settings_text(name: str, index: str | None) -> str:
+    """Text of a new `stillroom.toml`."""
+    quoted = name.replace("\\", "\\\\").replace('"', '\\"')
+    lines = [
+        "# Settings of this archive. The sealed files beside it carry everything else.",
+        f'name = "{quoted}"',
+    ]
+    if index is not None:
+        lines.append(f'index = "{index}"')
+    lines += ["", "# Limits of the checks, where this laboratory sets its own:", "# [thresholds]", ""]
+    return "\n".join(lines)
+
+
+def read_settings(root: Path) -> Settings:
+    """Settings of the archive in a folder.
+
+    Raises
+    ------
+    NotAnArchive
+        If there is no `stillroom.toml`.
+    InvalidSheet
+        If it cannot be read; the message holds every fault with its line.
+    """
+    path = root / SETTINGS_NAME
+    try:
+        text = path.read_text(encoding="utf-8")
+    except FileNotFoundError:
+        raise NotAnArchive(
+            "there is no archive in this folder", file=str(root), remedy="make one with: stillroom init DIR"
+        ) from None
+    except (OSError, UnicodeDecodeError) as error:
+        raise InvalidSheet("the settings cannot be read", file=str(path), found=str(error)) from None
+    try:
+        tables = tomllib.loads(text)
+    except tomllib.TOMLDecodeError as error:
+        raise InvalidSheet(f"the settings are not valid TOML: {error}", file=str(path)) from None
+    settings, findings = validated(Settings, tables, file=SETTINGS_NAME, lines=LineMap(text))
+    if settings is None:
+        raise InvalidSheet("; ".join(finding.sentence() for finding in findings), remedy="correct stillroom.toml")
+    return settings
