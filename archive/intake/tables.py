@@ -253,6 +253,10 @@ class TableReader:
             why = f"has {cells} cells where the table has {self._header.width}"
             if cells == self._header.width + 1 and text.rstrip().endswith(self._rows.delimiter):
                 why += "; the last is empty, after a delimiter at the end of the line"
+            if cells == 2 * self._header.width and self._rows.delimiter == ",":
+                why += (
+                    "; twice as many, as if decimal commas stood between commas, which cannot be told apart"
+                )
             self._bad.add(int(lines[number - 1]), 0, "", text, why)
         kept = lines[keep]
         if (

@@ -22,7 +22,7 @@ import pyarrow.compute as pc
 from archive.errors import BadRequest
 from archive.intake.cells import as_mask, numbers
 
-__all__ = ["TimeStamps"]
+__all__ = ["LATEST", "TimeStamps"]
 
 _ISO: Final = (
     r"^(?P<Y>[0-9]{4})-(?P<m>[0-9]{2})-(?P<d>[0-9]{2})[Tt ](?P<H>[0-9]{2}):(?P<M>[0-9]{2})"
@@ -51,7 +51,7 @@ _DIRECTIVES: Final = {
 }
 _LONG: Final = {"%T": "%H:%M:%S", "%R": "%H:%M", "%F": "%Y-%m-%d"}
 _EPOCH: Final = datetime(1970, 1, 1)  # noqa: DTZ001 - local times are naive until their zone is looked up
-_LATEST: Final = 253402300800.0
+LATEST: Final = 253402300800.0
 """POSIX time of 10000-01-01T00:00:00Z; a larger number of seconds is no date that RFC 3339 can write."""
 
 Ints = npt.NDArray[np.int64]
@@ -165,7 +165,7 @@ class TimeStamps:
         values, absent, faults = numbers(texts, decimal=self._decimal)
         self._note(faults, absent, "is empty or NaN")
         with np.errstate(invalid="ignore"):
-            far = np.abs(values) >= _LATEST
+            far = np.abs(values) >= LATEST
         self._note(
             faults, far, "is no number of seconds since 1970 (beyond the year 9999; milliseconds, perhaps)"
         )

@@ -1,0 +1,192 @@
+"""Array sources (`.npy`, `.npz`, HDF5) as one block of columns, by the same rules as text tables.
+
+Rules: what a source is, its first bytes say, and its name must agree. A source that is not to be trusted is refused
+whole: no rows, and a bad cell on line 0 that says why.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from pathlib import Path
+from typing import Any, Final
+
+import numpy as np
+import numpy.typing as npt
+import pyarrow as pa
+
+from archive.intake.cells import parsed_number
+from archive.intake.dialect import BadCells, Block, ColumnRequest
+from archive.intake.hdf5_source import Columns, RefusalError, hdf5_columns
+from archive.intake.numpy_source import numpy_columns
+from archive.intake.timestamps import LATEST, TimeStamps
+
+__all__ = ["is_array_source", "read_array_source"]
+
+_SUFFIXES: Final = {
+    "hdf5": frozenset({".h5", ".hdf5", ".hdf", ".he5", ".nxs"}),
+    "npy": frozenset({".npy"}),
+    "npz": frozenset({".npz"}),
+}
+# Signatures: HDF5 file format specification, section II.A; NumPy Enhancement Proposal 1; PKWARE's APPNOTE 4.3.7.
+_SIGNATURES: Final = {"hdf5": b"\x89HDF\r\n\x1a\n", "npy": b"\x93NUMPY", "npz": b"PK\x03\x04"}
+
+
+def is_array_source(file: str) -> bool:
+    """Whether a file of this name is read by `read_array_source` (otherwise it is a text table).
+
+    Examples
+    --------
+    >>> is_array_source("raw/s017.h5"), is_array_source("raw/s017.csv.gz")
+    (True, False)
+    """
+    return any(Path(file).suffix.lower() in suffixes for suffixes in _SUFFIXES.values())
+
+
+def read_array_source(path: Path, file: str, columns: Sequence[ColumnRequest]) -> Block:
+    """Return the asked columns of a NumPy or HDF5 file as one block.
+
+    Parameters
+    ----------
+    path : pathlib.Path
+        The file.
+    file : str
+        Name for messages.
+    columns : sequence of ColumnRequest
+        `column` is a number from 1, a field name, the path of a data set, or path and number or field
+        (`run/table/3`). Times are numbers of POSIX seconds, or ISO 8601 text with an offset.
+
+    Returns
+    -------
+    Block
+        `lines` counts rows from 1. `bad_cells` and `bad_cell_count` are filled; a bad cell on line 0 concerns a
+        whole column, or the whole source if its column is empty.
+
+    Notes
+    -----
+    A column that cannot be read is NaN (text: empty), like one that is shorter than the others from its end on.
+    Integers must be exact in a double. `datetime64` is refused, because it does not say in which zone it is.
+    """
+    bad = BadCells(file)
+    arrays: Columns = {}
+    try:
+        kind = _kind(path)
+        read = hdf5_columns if kind == "hdf5" else numpy_columns
+        arrays, faults = read(path, columns)
+    except RefusalError as refusal:
+        faults = {}
+        bad.add(0, 0, "", path.name, f"this source is refused: {refusal}")
+    for number, request in enumerate(columns, start=1):
+        if request.name in faults:
+            bad.add(0, number, str(request.column), str(request.column), faults[request.name])
+    rows = max((len(array) for array in arrays.values()), default=0)
+    block = Block(first_line=1, columns={}, lines=np.arange(1, rows + 1, dtype=np.int64), sentinel={})
+    for number, request in enumerate(columns, start=1):
+        values, mask = _checked(request, arrays.get(request.name), number, bad)
+        if request.name in arrays and len(values) < rows:
+            why = f"is missing: the column ends after {len(values)} rows, another has {rows}"
+            bad.add(len(values) + 1, number, str(request.column), "", why)
+        missing = rows - len(values)
+        blank: Any = "" if request.kind == "text" else np.nan
+        block.columns[request.name] = np.concatenate((values, np.full(missing, blank, dtype=values.dtype)))
+        block.sentinel[request.name] = np.concatenate((mask, np.zeros(missing, dtype=np.bool_)))
+    if arrays and not rows:
+        bad.add(0, 0, "", path.name, "holds no row of data")
+    bad.settle()
+    block.bad_cells, block.bad_cell_count = bad.detailed, bad.count
+    return block
+
+
+def _kind(path: Path) -> str:
+    with path.open("rb") as stream:
+        begin = stream.read(8)
+    kinds = [kind for kind, signature in _SIGNATURES.items() if begin.startswith(signature)]
+    if not kinds:
+        raise RefusalError("it is neither HDF5 nor a NumPy file by its first bytes")
+    if path.suffix.lower() not in _SUFFIXES[kinds[0]]:
+        raise RefusalError(f"it is a file of kind {kinds[0]} by its first bytes, but not by its name")
+    return kinds[0]
+
+
+def _checked(
+    request: ColumnRequest, array: npt.NDArray[Any] | None, number: int, bad: BadCells
+) -> tuple[npt.NDArray[Any], npt.NDArray[np.bool_]]:
+    """Return values and sentinel mask of one column; what is wrong goes to `bad`."""
+    empty: npt.NDArray[Any] = np.zeros(0, dtype=object if request.kind == "text" else np.float64)
+    if array is None:
+        return empty, np.zeros(0, dtype=np.bool_)
+    column = str(request.column)
+    try:
+        if request.kind == "text":
+            return _text(request, array)
+        values, mask, faults = _numbers(request, array)
+    except RefusalError as refusal:
+        bad.add(0, number, column, str(array.dtype), str(refusal))
+        return empty, np.zeros(0, dtype=np.bool_)
+    for index, why in faults.items():
+        if not mask[index]:
+            bad.add(index + 1, number, column, str(array[index]), why)
+            values[index] = np.nan
+    values[mask] = np.nan
+    return values, mask
+
+
+def _strings(array: npt.NDArray[Any]) -> npt.NDArray[np.str_]:
+    if array.dtype.kind == "S":
+        try:
+            return np.char.decode(array, "utf-8")
+        except UnicodeDecodeError:
+            raise RefusalError("its text is not UTF-8") from None
+    return array
+
+
+def _text(request: ColumnRequest, array: npt.NDArray[Any]) -> tuple[npt.NDArray[Any], npt.NDArray[np.bool_]]:
+    if array.dtype.kind not in "SU":
+        raise RefusalError("it does not hold text")
+    text = _strings(array).astype(object)
+    sentinels = {sentinel.strip() for sentinel in request.sentinels}
+    mask = np.array([cell.strip() in sentinels for cell in text], dtype=np.bool_)
+    text[mask] = ""
+    return text, mask
+
+
+def _numbers(
+    request: ColumnRequest, array: npt.NDArray[Any]
+) -> tuple[npt.NDArray[np.float64], npt.NDArray[np.bool_], dict[int, str]]:
+    if array.dtype.kind == "M":
+        raise RefusalError(
+            "it is datetime64, which names no zone; write seconds since 1970 UTC, or text with an offset"
+        )
+    if array.dtype.kind in "SU":
+        if request.kind != "time":
+            raise RefusalError("it holds text, not numbers")
+        text = _strings(array)
+        mask = np.isin(np.char.strip(text), [sentinel.strip() for sentinel in request.sentinels])
+        values, faults = TimeStamps(time_format="iso8601").seconds(pa.array(text.tolist(), pa.string()))
+        if request.nan == "keep":
+            faults = {index: why for index, why in faults.items() if text[index].strip()}
+        return values, mask, faults
+    if array.dtype.kind not in "biuf" or array.dtype.itemsize > 8:
+        raise RefusalError("it does not hold numbers that fit a double")
+    values = array.astype(np.float64)
+    stated = [parsed_number(sentinel, decimal=".") for sentinel in request.sentinels]
+    mask = np.isin(values, [value for value in stated if value is not None])
+    faults = {}
+    if array.dtype.kind in "iu" and array.dtype.itemsize == 8:
+        # Beyond 2**53 not every integer is a double; compared in Python, where neither is rounded.
+        for index in np.flatnonzero(np.abs(values) > 2.0**53).tolist():
+            if int(values[index]) != int(array[index]):
+                faults[index] = "is an integer that a double cannot hold"
+    names_nan = any(sentinel.strip().lower() == "nan" for sentinel in request.sentinels)
+    nan = np.isnan(values)
+    if names_nan:
+        mask |= nan
+    elif request.nan == "error":
+        faults |= dict.fromkeys(np.flatnonzero(nan).tolist(), "is NaN")
+    faults |= dict.fromkeys(np.flatnonzero(np.isinf(values)).tolist(), "is infinite")
+    if request.kind == "time":
+        with np.errstate(invalid="ignore"):
+            far = np.isfinite(values) & (np.abs(values) >= LATEST)
+        faults |= dict.fromkeys(
+            np.flatnonzero(far).tolist(), "is no number of seconds since 1970 (beyond the year 9999)"
+        )
+    return values, mask, faults
