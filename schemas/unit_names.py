@@ -59,7 +59,7 @@ NAMES: dict[str, Name] = {
     "d": Name("day", "d"),
     "Hz": Name("hertz", "Hz", "numkMG"),
     "rad": Name("radian", "rad", "num"),
-    "deg": Name("degree", "deg", "m"),
+    "deg": Name("degree", "deg"),
     "m": Name("meter", "m", "pnumck"),
     "angstrom": Name("angstrom", "Ao", tex=r"\mbox{\AA}", shown="Å"),
     "g": Name("gram", "g", "pnumk"),

@@ -49,7 +49,7 @@ _SUPERSCRIPT_RUN = re.compile("[⁰¹²³⁴⁵⁶⁷⁸⁹⁻⁺]+")
 _SPACES = re.compile("[\\s\u00a0\u2000-\u200a\u202f\u205f]+")
 _TOKEN = re.compile(
     r"(?P<name>cm3_STP_0C_101325Pa|cm3_STP_0C_100kPa|mmHg_0C|mm\[Hg\]|cal_th|℃|°[CFK]?|[A-Za-zΩÅ]+|%|1(?![0-9]))"
-    r"|(?P<power>\*\*|\^)|(?P<times>[ *.]+)|(?P<over> ?/ ?)|(?P<open>\()|(?P<close>\))|(?P<integer>[+-]?[0-9]+)"
+    r"|(?P<power>\*\*|\^)|(?P<over> ?/ ?)|(?P<times>[ *.]+)|(?P<open>\()|(?P<close>\))|(?P<integer>[+-]?[0-9]+)"
 )
 
 
