@@ -30,7 +30,9 @@ _POWER = r"[eE][+-]?[0-9]{1,3}"
 _CONCISE = re.compile(
     rf"(?P<v>{_NUMBER})\((?P<u>[0-9]{{1,40}}(?:\.[0-9]{{1,40}})?)\)(?P<p>{_POWER})?(?![0-9.(])"
 )
-_GROUPED = re.compile(rf"\( ?(?P<v>{_NUMBER}) ?\+/- ?(?P<u>{_NUMBER}) ?\)(?P<p>{_POWER})?(?![0-9.(])")
+_GROUPED = re.compile(
+    rf"\( ?(?P<v>{_NUMBER}(?:{_POWER})?) ?\+/- ?(?P<u>{_NUMBER}(?:{_POWER})?) ?\)(?P<p>{_POWER})?(?![0-9.(])"
+)
 _PAIR = re.compile(rf"(?P<v>{_NUMBER}(?:{_POWER})?) ?\+/- ?(?P<u>{_NUMBER}(?:{_POWER})?)(?![0-9.(])")
 _PLAIN = re.compile(rf"(?P<v>{_NUMBER}(?:{_POWER})?)(?![0-9.(])")
 _TIMES_TEN = re.compile(r"(?<=[0-9)]) ?[×x*] ?10 ?\^ ?\(?([+-]?[0-9]{1,3})\)?(?![0-9])")
@@ -105,7 +107,8 @@ def stated_text(text: str, *, expectation: str) -> StatedText:
         words, uncertainty = _after_the_unit(rest, text, value)
     else:
         words = _words(rest)
-    if words[0] in {"%", "ppm"} and "+/-" in plain:
+    # "(50 +/- 2) %" can only mean percent both times
+    if words[0] in {"%", "ppm"} and "+/-" in plain and not plain.startswith("("):
         raise ValueError(
             f"found {text!r}, where the uncertainty may be relative or not; write it in brackets, as in 50(2) %"
         )

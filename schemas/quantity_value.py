@@ -278,7 +278,7 @@ class Quantity:
         """Return an unrounded text that reads back as this quantity."""
         number = repr(float(self.value))
         if self.uncertainty:
-            number = f"{number} +/- {float(self.uncertainty)!r}"
+            number = f"({number} +/- {float(self.uncertainty)!r})"
         parts = [number, "" if self.unit == "1" else self.unit, self.convention or ""]
         parts += [f"on {self.scale}" if self.scale else "", "(exact)" if self.uncertainty == 0 else ""]
         return " ".join(part for part in parts if part)

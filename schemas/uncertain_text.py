@@ -15,6 +15,7 @@ JCGM 100:2008 (GUM), clauses 7.2.2 and 7.2.6.
 
 from __future__ import annotations
 
+import html
 import math
 from dataclasses import dataclass
 from decimal import ROUND_HALF_EVEN, Context, Decimal
@@ -36,6 +37,8 @@ _SUPERSCRIPT = str.maketrans("0123456789-", "⁰¹²³⁴⁵⁶⁷⁸⁹⁻")
 _WIDE = Context(prec=700, rounding=ROUND_HALF_EVEN)
 # A value without uncertainty is shown as a person wrote it; beyond these a power of ten reads better.
 _LARGE, _SMALL = 6, -4
+# More digits than this come from converting units, not from a person or an instrument (common practice, no source).
+_MOST_DIGITS = 12
 
 
 @dataclass(frozen=True, slots=True)
@@ -89,7 +92,7 @@ def rounded(value: float, uncertainty: float | None, *, exact: bool = False) -> 
     -------
     RoundedText
         Two digits of the uncertainty, the value to the same place, ties to even on the shortest decimal form of
-        both numbers. Without an uncertainty, all digits of the value.
+        both numbers. Without an uncertainty, all digits of the value up to twelve; an exact value keeps all.
 
     Raises
     ------
@@ -108,7 +111,11 @@ def rounded(value: float, uncertainty: float | None, *, exact: bool = False) -> 
     if uncertainty is not None and not math.isfinite(uncertainty):
         raise ValueError(f"found uncertainty {uncertainty}; expected a finite number")
     number = Decimal(repr(float(value)))
-    if uncertainty is None or (uncertainty == 0 and exact):
+    if uncertainty is None:
+        if len(number.as_tuple().digits) > _MOST_DIGITS:
+            number = _at_place(number, number.adjusted() - _MOST_DIGITS + 1)
+        return _all_digits(number)
+    if uncertainty == 0 and exact:
         return _all_digits(number)
     if uncertainty <= 0:
         raise ValueError(
@@ -187,10 +194,11 @@ def html_text(quantity: Quantity) -> str:
     Returns
     -------
     str
-        True minus, multiplication sign, superscripts, no-break space before the unit; no ``<``, ``>``, ``&`` or quotes.
+        True minus, multiplication sign, superscripts, no-break space before the unit; a scale's name is escaped.
     """
     number = rounded(quantity.value, quantity.uncertainty, exact=quantity.exact).typographic()
-    parts = [number, "" if quantity.unit == "1" else parse_unit(quantity.unit).typographic, *_words(quantity)]
+    parts = [number, "" if quantity.unit == "1" else parse_unit(quantity.unit).typographic]
+    parts += [html.escape(word) for word in _words(quantity)]
     return _NO_BREAK.join(part for part in parts if part)
 
 
