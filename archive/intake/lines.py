@@ -63,6 +63,7 @@ class LineBlocks:
         self._source = source
         self._listeners = tuple(listeners)
         self._block_bytes = block_bytes
+        self._read_bytes = min(READ_BYTES, block_bytes)
         self._line = 1
         self._cr_only: bool | None = None
         self.fault: tuple[int, str, str] | None = None
@@ -105,7 +106,7 @@ class LineBlocks:
 
     def _chunks(self) -> Iterator[bytes]:
         read = getattr(self._source, "read", None)
-        chunks: Iterable[bytes] = self._source if read is None else iter(lambda: read(READ_BYTES), b"")
+        chunks: Iterable[bytes] = self._source if read is None else iter(lambda: read(self._read_bytes), b"")
         for chunk in chunks:
             for listener in self._listeners:
                 listener(chunk)
@@ -133,7 +134,7 @@ class LineBlocks:
                         break
                     unpack = zlib.decompressobj(wbits=31)
                 try:
-                    yield unpack.decompress(data, READ_BYTES)
+                    yield unpack.decompress(data, self._read_bytes)
                 except zlib.error as error:
                     self._stop(b"", f"the packed data are damaged ({error})")
                     return
