@@ -46,7 +46,8 @@ def accepted_unit(unit: str, kind_name: str) -> tuple[Unit, Fraction, str]:
     try:
         read = parse_unit(unit if unit.strip() or not kind.pure else "1")
     except ValueError as fault:
-        raise ValueError(f"{fault} (expected {expectation(kind)})") from None
+        joined = ", here" if "expected" in str(fault) else "; expected"
+        raise ValueError(f"{fault}{joined} {expectation(kind)}") from None
     same = [si for si in kind.si if parse_unit(si).dimension == read.dimension]
     for name, sentence in kind.refused:
         if same and name in read.names:

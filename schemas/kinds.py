@@ -111,7 +111,7 @@ _TABLE = (
     Kind("inductance", ("H",), ("nH", "uH", "mH", "H"), ("uH", "mH"), "self-inductance", "L", "an"),
     Kind("capacitance", ("F",), ("pF", "nF", "uF"), ("pF",), "electrical capacitance", "C"),
     Kind("pressure", ("Pa",), ("mPa", "Pa", "kPa", "MPa"), ("Pa", "mbar", "Torr"), "pressure, absolute or gauge", "p",
-         conventions=("absolute", "gauge"), only_if_asked=("gauge",), refused=(("J", "write Pa for a pressure"), ("N", "write Pa for a pressure"))),
+         conventions=("absolute", "gauge"), only_if_asked=("gauge",), refused=(("J", "write Pa for a pressure"),)),
     Kind("pressure_ratio", ("1",), ("1",), ("1", "%"), "ratio of two absolute pressures", "p/p_0", allowed=_SHARE),
     Kind("relative_pressure", ("1",), ("1",), ("1", "%"), "pressure over the saturated vapour pressure at the same temperature", "p/p_0", allowed=_SHARE),
     Kind("volume", ("m^3",), ("mm^3", "cm^3", "L", "m^3"), ("cm^3", "L"), "volume", "V"),

@@ -254,8 +254,6 @@ def in_preferred_unit(quantity: Quantity) -> Quantity:
         for unit in kind_of(quantity.kind).display
         if parse_unit(unit).dimension == parse_unit(quantity.si_unit).dimension
     ]
-    if not units:
-        return quantity
     shown = [quantity.to(unit) for unit in units]
     size = [max(abs(one.value), one.uncertainty or 0.0) for one in shown]
     if size[0] == 0:

@@ -319,12 +319,16 @@ def _named(word: str, text: str) -> Factor:
     found = _vocabulary().get(word)
     if found is not None:
         return (*found, 1)
-    hint = HINTS.get(word)
-    if hint is None:
-        near = [name for name in _vocabulary() if name.lower() == word.lower()]
-        near = near or difflib.get_close_matches(word, _vocabulary(), n=2, cutoff=0.6)
-        hint = f"did you mean {' or '.join(near)}? (case matters)" if near else "write it in SI units"
-    raise ValueError(f"found {word!r} in unit {text!r}, which is not a unit known here; {hint}")
+    place = f"found {word!r}" + (f" in unit {text!r}" if word != text else " as a unit")
+    if word in HINTS:
+        raise ValueError(f"{place}; {HINTS[word]}")
+    near = [name for name in _vocabulary() if name.lower() == word.lower()]
+    near = near or difflib.get_close_matches(word, [*_vocabulary(), *HINTS], n=2, cutoff=0.6)
+    if near and near[0] in HINTS:
+        raise ValueError(f"{place}, which is not known here; did you mean {near[0]}? then {HINTS[near[0]]}")
+    near = [name for name in near if name not in HINTS]
+    advice = f"did you mean {' or '.join(near)}? (case matters)" if near else "write it in SI units"
+    raise ValueError(f"{place}, which is not known here; {advice}")
 
 
 def _merged(factors: Iterable[Factor]) -> list[Factor]:

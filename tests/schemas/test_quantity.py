@@ -276,6 +276,11 @@ def test_a_drive_may_be_voltage_or_current_but_does_not_change_between_them() ->
         drive.to("V")
 
 
+def test_a_value_that_leaves_the_range_of_floats_on_conversion_is_refused() -> None:
+    with pytest.raises(ValueError, match="out of range after conversion"):
+        Quantity.parse("1e308 kPa", "pressure").si  # noqa: B018 - the property raises
+
+
 def test_conversion_keeps_text_and_words_and_scales_the_uncertainty() -> None:
     found = Quantity.parse("0.5(1) atoms/nm^2", "coverage").to("umol/m^2")
     # 1 atom/nm2 = 1.66053907 umol/m2, from the exact Avogadro constant
