@@ -181,3 +181,16 @@ HINTS: dict[str, str] = {
     "Da": "for molar mass write g/mol",
     "Q": "write the number alone: a quality factor and its inverse have no unit",
 }
+
+# Units written out in words.
+_IN_WORDS = {
+    "second": "s", "minute": "min", "hour": "h", "hertz": "Hz", "radian": "rad", "degree": "deg", "meter": "m",
+    "metre": "m", "gram": "g", "mole": "mol", "pascal": "Pa", "newton": "N", "joule": "J", "watt": "W", "volt": "V",
+    "ampere": "A", "amp": "A", "farad": "F", "henry": "H", "coulomb": "C", "tesla": "T", "liter": "L", "litre": "L",
+    "percent": "%",
+}  # fmt: skip
+HINTS |= {
+    spelling: f"write {symbol}"
+    for word, symbol in _IN_WORDS.items()
+    for spelling in (word, f"{word}s", word.capitalize(), f"{word.capitalize()}s")
+}

@@ -91,6 +91,8 @@ REFUSED = {
     "J/mol K": "two readings",
     "J/g/K": "two readings",
     "% V": "% or ppm beside",
+    "meters": "write m",
+    "Pascal": "write Pa",
     "foobar": "not known here",
     "KPA": "did you mean kPa",
     "2 m": "unit name",
