@@ -156,7 +156,7 @@ def _decoded(head: bytes, file: str, why: dict[str, str], doubts: list[str]) -> 
 def _comment(lines: list[str], why: dict[str, str]) -> str | None:
     for mark in _COMMENTS:
         count = sum(line.lstrip().startswith(mark) for line in lines)
-        if count and count < len(lines):
+        if count:
             why["comment"] = f"{count} of the first {len(lines)} lines begin with {mark}"
             return mark
     why["comment"] = "no line begins with a usual comment mark"

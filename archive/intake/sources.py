@@ -173,7 +173,7 @@ def _numbers(
     faults = {}
     if array.dtype.kind in "iu" and array.dtype.itemsize == 8:
         # Beyond 2**53 not every integer is a double; compared in Python, where neither is rounded.
-        for index in np.flatnonzero(np.abs(values) > 2.0**53).tolist():
+        for index in np.flatnonzero(np.abs(values) >= 2.0**53).tolist():
             if int(values[index]) != int(array[index]):
                 faults[index] = "is an integer that a double cannot hold"
     names_nan = any(sentinel.strip().lower() == "nan" for sentinel in request.sentinels)
