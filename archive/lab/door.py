@@ -1,0 +1,501 @@
+"""class Archive: open, check, ingest, reduce, find, show, trace, report.
+
+Everything that commands, notebooks and tests do to an archive goes through here. Writing is done under the archive's
+lock; reading needs none, since sealed files never change.
+"""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Callable, Iterator, Sequence
+from contextlib import contextmanager
+from datetime import UTC, datetime
+from pathlib import Path
+from types import TracebackType
+from typing import Any, Self
+
+import numpy as np
+from numpy.typing import NDArray
+
+from archive.errors import ArchiveBusy, BadRequest, NotAnArchive, UnknownAddress
+from archive.index import AccessionRow, CooldownRow, Index, RecordRow, ResultRow, SearchQuery, SweepRow
+from archive.intake import ingest as intake_ingest
+from archive.intake.examine import examined
+from archive.intake.folder import read_cooldown
+from archive.intake.reading import Reading
+from archive.intake.settings import SETTINGS_NAME, Settings, read_settings, settings_text
+from archive.intake.thresholds import Thresholds
+from archive.lab import reducing, reporting, showing
+from archive.lab.outcomes import CheckReport, IngestOutcome, ReduceOutcome, ReplayReport
+from archive.lab.software import software
+from archive.lab.source import LabSource
+from archive.reduction.trace import TraceNode, trace
+from archive.store.durable import archive_lock, sweep_staging, write_whole
+from archive.store.fixity import fixity
+from archive.store.interface import Damage, SealedFile
+from archive.store.local import LocalStore, open_store
+from schemas.address import parse_address
+from schemas.lineage import ReductionDocument
+from schemas.plan import Plan
+
+__all__ = ["Archive", "check_folder"]
+
+Progress = Callable[[str], None]
+Clock = Callable[[], datetime]
+
+
+def _quiet(sentence: str) -> None:
+    """Say nothing."""
+
+
+def _now() -> datetime:
+    return datetime.now(UTC).replace(microsecond=0)
+
+
+def _report(reading: Reading, findings: Sequence[Any], cautions: Sequence[dict[str, Any]]) -> CheckReport:
+    summary: dict[str, int | str] = {
+        "folder": str(reading.folder),
+        "sweeps": len(reading.tables),
+        "files": len(reading.raw_files),
+        "bytes": sum(entry.size for entry in reading.raw_files.values()),
+        "rows": sum(table.rows for table in reading.tables.values()),
+        "doses": len(reading.ledger),
+    }
+    if reading.sheet_reading.sheet is not None:
+        summary["cooldown"] = reading.sheet.name
+    return CheckReport(tuple(findings), tuple(cautions), summary, reading)
+
+
+def check_folder(
+    folder: Path,
+    *,
+    thresholds: Thresholds | None = None,
+    source: LabSource | None = None,
+    progress: Progress = _quiet,
+) -> CheckReport:
+    """Everything that can be said of a cooldown folder; nothing is stored.
+
+    Parameters
+    ----------
+    folder : Path
+        Folder with `cooldown.toml`.
+    thresholds : Thresholds, optional
+        Limits of the checks; the shipped ones if left out.
+    source : LabSource, optional
+        Archive that may hold records the sheet refers to, and earlier runs of the same cell.
+
+    Raises
+    ------
+    BadRequest
+        If there is no such folder.
+    """
+    if not folder.is_dir():
+        raise BadRequest("there is no such folder", file=str(folder), remedy="name the folder that holds cooldown.toml")
+    archived = (lambda reference: None) if source is None else source.find_record
+    reading = read_cooldown(folder, archived=archived, progress=progress)
+    if reading.sheet_reading.sheet is None:
+        return _report(reading, sorted(reading.findings, key=lambda finding: finding.order), ())
+    if source is not None:
+        reading.findings.extend(intake_ingest.records_differ(reading, archived))
+    progress("checking")
+    findings, cautions = examined(reading, thresholds or Thresholds())
+    return _report(reading, findings, cautions)
+
+
+class Archive:
+    """One laboratory's archive.
+
+    Use `Archive.create` or `Archive.open`; as a context manager it closes its index.
+
+    Attributes
+    ----------
+    root : Path
+        Folder of the archive.
+    settings : Settings
+        What `stillroom.toml` says.
+    notices : list of str
+        What opening found and put in order, as sentences.
+
+    Examples
+    --------
+    >>> import tempfile
+    >>> with tempfile.TemporaryDirectory() as folder, Archive.create(Path(folder) / "lab", name="Cold room") as lab:
+    ...     lab.name, lab.cooldowns()
+    ('Cold room', [])
+    """
+
+    def __init__(self, root: Path, settings: Settings, store: LocalStore, index: Index, clock: Clock) -> None:
+        self.root = root
+        self.settings = settings
+        self.notices: list[str] = []
+        self._store = store
+        self._index = index
+        self._clock = clock
+        self._source = LabSource(store, index)
+
+    # Opening and closing ------------------------------------------------------------------------------------------
+
+    @classmethod
+    def create(cls, root: Path, *, name: str | None = None, index: str | None = None, clock: Clock = _now) -> Archive:
+        """Make a new archive.
+
+        Parameters
+        ----------
+        root : Path
+            Folder to make it in; it may exist if it is empty.
+        name : str, optional
+            Name of the archive; the folder's name if left out.
+        index : str, optional
+            Address of the index; a SQLite file in the folder if left out.
+
+        Raises
+        ------
+        BadRequest
+            If the folder holds something already.
+        """
+        root = root.resolve()
+        if (root / SETTINGS_NAME).exists():
+            raise BadRequest("there is an archive here already", file=str(root), remedy="use it, or name another folder")
+        if root.exists() and (not root.is_dir() or any(root.iterdir())):
+            raise BadRequest("this folder is not empty", file=str(root), remedy="name a new or an empty folder")
+        root.mkdir(parents=True, exist_ok=True)
+        for part in ("sealed", "staging"):
+            (root / part).mkdir()
+        text = settings_text(name or root.name, index)
+        with archive_lock(root):
+            address = Settings.model_validate({"name": name or root.name, **({"index": index} if index else {})})
+            Index.create(address.index_address(root)).close()
+            write_whole(root / SETTINGS_NAME, text.encode())
+        return cls.open(root, clock=clock)
+
+    @classmethod
+    def open(cls, start: Path | str | None = None, *, clock: Clock = _now) -> Archive:
+        """Open an archive.
+
+        Parameters
+        ----------
+        start : Path, optional
+            Folder of the archive; else `STILLROOM_ARCHIVE`, else the current folder and its parents are looked at.
+
+        Raises
+        ------
+        NotAnArchive
+            If there is none.
+        """
+        root = find_root(None if start is None else Path(start))
+        settings = read_settings(root)
+        index = Index.open(settings.index_address(root))
+        archive = cls(root, settings, open_store(root), index, clock)
+        try:
+            archive._put_in_order()
+        except BaseException:
+            index.close()
+            raise
+        return archive
+
+    def close(self) -> None:
+        """Close the index."""
+        self._index.close()
+
+    def __enter__(self) -> Self:
+        """Enter a `with` block."""
+        return self
+
+    def __exit__(
+        self, kind: type[BaseException] | None, value: BaseException | None, trace: TracebackType | None
+    ) -> None:
+        """Close at the end of a `with` block."""
+        self.close()
+
+    @property
+    def name(self) -> str:
+        """Name of the archive."""
+        return self.settings.name
+
+    def _put_in_order(self) -> None:
+        """Sweep what an interrupted writer left, and complete the index from sealed files it does not know."""
+        if not os.access(self.root, os.W_OK):
+            return
+        unknown = set(self._store.keys()) - set(self._index.sealed_files())
+        staged = any((self.root / "staging").iterdir()) if (self.root / "staging").is_dir() else False
+        if not unknown and not staged:
+            return
+        try:
+            with archive_lock(self.root, wait_s=0.0):
+                self.notices += sweep_staging(self.root)
+                recorded = set(self._index.sealed_files())
+                for key in sorted(self._store.keys(), key=_by_age(self._store)):
+                    if key not in recorded:
+                        self._complete(key)
+        except ArchiveBusy:
+            self.notices.append("another process is writing; what it has not finished is not shown yet")
+
+    def _complete(self, key: str) -> None:
+        """Record a sealed file whose index rows an interruption cost, if the file is whole."""
+        damage = self._store.verify(key)
+        if damage:
+            self.notices.append(f"{key} is sealed but not in the index, and it is damaged: {damage[0].what}")
+            return
+        self._record(self._store.describe(key))
+        self.notices.append(f"{key} had been sealed but not indexed; its rows were made from the file itself")
+
+    def _record(self, sealed: SealedFile) -> None:
+        document = self._source.document(sealed.key)
+        if isinstance(document, ReductionDocument):
+            self._index.record_reduction(document, key=sealed.key, sha256=sealed.sha256, size=sealed.size)
+        else:
+            self._index.record_accession(document, key=sealed.key, sha256=sealed.sha256, size=sealed.size)
+
+    @contextmanager
+    def _writing(self) -> Iterator[None]:
+        with archive_lock(self.root):
+            self.notices += sweep_staging(self.root)
+            yield
+
+    # Coming in ----------------------------------------------------------------------------------------------------
+
+    def check(self, folder: Path | str, *, progress: Progress = _quiet) -> CheckReport:
+        """All findings on a cooldown folder, with the archive's records and thresholds; nothing is stored."""
+        return check_folder(
+            Path(folder), thresholds=self.settings.thresholds, source=self._source, progress=progress
+        )
+
+    def ingest(self, folder: Path | str, *, progress: Progress = _quiet) -> IngestOutcome:
+        """Take a cooldown folder into the archive, whole or not at all.
+
+        Returns
+        -------
+        IngestOutcome
+            `ingested`; `supplement` if files changed or came in addition; `already` if nothing differs; `refused`
+            if a finding is an error, and then nothing was stored.
+
+        Raises
+        ------
+        ArchiveBusy
+            If another process is writing.
+        """
+        folder = Path(folder)
+        if not folder.is_dir():
+            raise BadRequest("there is no such folder", file=str(folder), remedy="name the folder that holds cooldown.toml")
+        thresholds = self.settings.thresholds
+        with self._writing():
+            outcome = intake_ingest.ingest(
+                folder,
+                store=self._store,
+                earlier=self._source.accessions,
+                archived=self._source.find_record,
+                examine=lambda reading: intake_ingest.Examination(*examined(reading, thresholds)),
+                clock=self._clock,
+                software=software(),
+                progress=progress,
+            )
+            if outcome.document is not None and outcome.sealed is not None:
+                self._source.remember(outcome.sealed.key, outcome.document)
+                self._record(outcome.sealed)
+        reading = outcome.reading
+        report = (
+            CheckReport(outcome.findings, outcome.cautions)
+            if reading is None
+            else _report(reading, outcome.findings, outcome.cautions)
+        )
+        return IngestOutcome(outcome.state, outcome.address, report, outcome.differences)
+
+    # Reducing -----------------------------------------------------------------------------------------------------
+
+    def plans(self) -> list[Plan]:
+        """Shipped plans and those that reductions of this archive used."""
+        return reducing.plans(self._source)
+
+    def reduce(
+        self,
+        cooldown: str,
+        *,
+        plan: str | Path | None = None,
+        sweep: str | None = None,
+        progress: Progress = _quiet,
+    ) -> list[ReduceOutcome]:
+        """Carry out plans on the sweeps of a cooldown, in an order in which each finds what it rests on.
+
+        Parameters
+        ----------
+        cooldown : str
+            Name of the cooldown.
+        plan : str or Path, optional
+            Name of a shipped plan, or a plan file; else every plan that applies.
+        sweep : str, optional
+            Name of one sweep; else all.
+
+        Returns
+        -------
+        list of ReduceOutcome
+            One per sweep and plan, in the order carried out; a problem stands in the outcome and stops no other.
+        """
+        with self._writing():
+            return reducing.reduce(
+                self._source,
+                cooldown,
+                plan=plan,
+                sweep=sweep,
+                clock=self._clock,
+                seal=self._seal_reduction,
+                progress=progress,
+            )
+
+    def _seal_reduction(
+        self, document: ReductionDocument, arrays: dict[str, tuple[NDArray[Any], dict[str, str]]]
+    ) -> None:
+        with self._store.writer(document.address) as writer:
+            for path, (values, attributes) in arrays.items():
+                writer.array(path, values, attributes)
+            writer.document(document.model_dump_json(indent=1))
+            sealed = writer.seal()
+        self._source.remember(sealed.key, document)
+        self._record(sealed)
+
+    def replay(self, address: str) -> ReplayReport:
+        """Compute a reduction again from raw and compare it with what was sealed."""
+        return reducing.replay(self._source, address)
+
+    # Finding and showing ------------------------------------------------------------------------------------------
+
+    def search(self, query: SearchQuery) -> list[SweepRow]:
+        """Sweeps that a query finds."""
+        return self._index.search(query)
+
+    def cooldowns(self) -> list[CooldownRow]:
+        """All cooldowns."""
+        return self._index.cooldowns()
+
+    def accessions(self, cooldown: str | None = None) -> list[AccessionRow]:
+        """All accessions, or those of one cooldown."""
+        return self._index.accessions(cooldown)
+
+    def records(self, name: str | None = None, kind: str | None = None) -> list[RecordRow]:
+        """Cells, substrates, thermometers, ... with their revisions."""
+        return self._index.records(name=name, kind=kind)
+
+    def results(self, name: str | None = None, *, cooldown: str | None = None, sweep: str | None = None) -> list[ResultRow]:
+        """Scalar results of current reductions, as a table."""
+        return self._index.results(name=name, cooldown=cooldown, sweep=sweep)
+
+    def statistics(self) -> dict[str, int]:
+        """Counts of what the archive holds."""
+        return self._index.statistics()
+
+    def sweep(self, address: str) -> dict[str, NDArray[np.float64]]:
+        """Channels of a sweep as stored; `show` tells their units.
+
+        Parameters
+        ----------
+        address : str
+            Such as `2026-03/s017`.
+        """
+        parsed = parse_address(address)
+        if parsed.kind != "item" or parsed.item is None:
+            raise UnknownAddress(f"{address} is no sweep", expected="an address such as 2026-03/s017")
+        document = self._source.holding(parsed.head, parsed.item)
+        entry = next(entry for entry in document.sweeps if entry.name == parsed.item)
+        return {
+            channel.name: np.asarray(self._source.column(document.address, parsed.item, channel.name), dtype=np.float64)
+            for channel in entry.channels
+        }
+
+    def array(self, address: str) -> NDArray[np.float64]:
+        """Array that an address names: a channel of a sweep or an output of a reduction, in its stored unit."""
+        parsed = parse_address(address)
+        if parsed.part is None:
+            raise UnknownAddress(f"{address} names no channel or output", expected="an address that ends in #NAME")
+        return self._source.values(parsed.reduction or parsed.sweep or "", parsed.part)
+
+    def show(self, address: str) -> dict[str, Any]:
+        """Everything the archive knows of a thing, as JSON-able content with `address` and `what`."""
+        return showing.show(self._source, address)
+
+    def trace(self, address: str) -> TraceNode:
+        """Lineage of a result, array, reduction or sweep, down to raw files and their lines."""
+        self.show(address)
+        return trace(address, self._source)
+
+    # Telling ------------------------------------------------------------------------------------------------------
+
+    def run_sheet(self, cooldown: str, *, paper: str = "a4") -> dict[str, bytes]:
+        """Run sheet of a cooldown as HTML, PDF and JSON, by file name."""
+        return reporting.run_sheet(self._source, self.name, cooldown, paper=paper)
+
+    def appendix(self, addresses: Sequence[str], *, title: str | None = None, level: str = "section") -> dict[str, bytes]:
+        """Methods appendix behind cooldowns, sweeps or reductions: LaTeX, bibliography, figures, by file name."""
+        return reporting.appendix(self._source, self.name, addresses, title=title, level=level)
+
+    def write_reports(self, files: dict[str, bytes], target: Path | str) -> list[Path]:
+        """Write reports into a folder; each file whole or not at all."""
+        written = []
+        for name, content in files.items():
+            path = Path(target) / name
+            path.parent.mkdir(parents=True, exist_ok=True)
+            write_whole(path, content, replace=True)
+            written.append(path)
+        return written
+
+    # Keeping ------------------------------------------------------------------------------------------------------
+
+    def fixity(self, *, progress: Callable[[int, int, str], None] | None = None) -> list[Damage]:
+        """Re-read everything and name what is damaged, missing or stray."""
+        recorded = {
+            key: SealedFile(key, sha256, size) for key, (sha256, size) in self._index.sealed_files().items()
+        }
+        return fixity(self._store, recorded, progress)
+
+    @classmethod
+    def rebuild_index(
+        cls, start: Path | str | None = None, *, progress: Callable[[int, int, str], None] | None = None
+    ) -> dict[str, int]:
+        """Make the index anew from the sealed files alone; a damaged or lost index is set aside, not overwritten.
+
+        Returns
+        -------
+        dict
+            Counts of what the new index holds.
+
+        Raises
+        ------
+        DamagedFile
+            If a sealed file is damaged; the old index stays.
+        """
+        root = find_root(None if start is None else Path(start))
+        settings = read_settings(root)
+        return reducing.rebuilt_index(root, settings.index_address(root), open_store(root), progress=progress)
+
+
+def find_root(start: Path | None) -> Path:
+    """Folder of the archive: the one named, else that of `STILLROOM_ARCHIVE`, else this folder or a parent.
+
+    Raises
+    ------
+    NotAnArchive
+        If there is none.
+    """
+    if start is None:
+        named = os.environ.get("STILLROOM_ARCHIVE")
+        start = Path(named) if named else None
+    if start is not None:
+        if not (start / SETTINGS_NAME).is_file():
+            raise NotAnArchive(
+                "there is no archive in this folder", file=str(start), remedy="make one with: stillroom init DIR"
+            )
+        return start.resolve()
+    here = Path.cwd()
+    for folder in (here, *here.parents):
+        if (folder / SETTINGS_NAME).is_file():
+            return folder.resolve()
+    raise NotAnArchive(
+        "there is no archive in this folder or above it",
+        file=str(here),
+        remedy="name it with --archive DIR or STILLROOM_ARCHIVE, or make one with: stillroom init DIR",
+    )
+
+
+def _by_age(store: LocalStore) -> Callable[[str], tuple[bool, float, str]]:
+    """Order in which sealed files can be recorded: accessions before reductions, older before newer."""
+    return lambda key: ("@" in key, store.path(key).stat().st_mtime, key)
+
+

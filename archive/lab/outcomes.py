@@ -1,0 +1,98 @@
+"""What the door answers: reports of checks, ingests, reductions and replays."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from typing import Any, Literal
+
+from archive.errors import ArchiveError
+from archive.intake.reading import Reading
+from schemas.finding import Finding
+from schemas.lineage import ReductionDocument
+
+__all__ = ["CheckReport", "IngestOutcome", "ReduceOutcome", "ReplayReport"]
+
+
+@dataclass(frozen=True)
+class CheckReport:
+    """All that checking a cooldown folder found.
+
+    Attributes
+    ----------
+    findings : tuple of Finding
+        Sorted by file, line and severity; a waived warning carries its waiver.
+    cautions : tuple of dict
+        Cautions of the gas that may be trapped, and their like.
+    summary : dict
+        Counts of what was read: sweeps, files, rows, doses.
+    """
+
+    findings: tuple[Finding, ...]
+    cautions: tuple[dict[str, Any], ...] = ()
+    summary: dict[str, int | str] = field(default_factory=dict)
+    reading: Reading | None = field(default=None, repr=False, compare=False)
+
+    def _count(self, severity: str) -> int:
+        return sum(finding.severity == severity and finding.waived is None for finding in self.findings)
+
+    @property
+    def errors(self) -> int:
+        """Number of errors."""
+        return self._count("error")
+
+    @property
+    def warnings(self) -> int:
+        """Number of warnings that nobody waived."""
+        return self._count("warning")
+
+    @property
+    def notes(self) -> int:
+        """Number of notes."""
+        return self._count("note")
+
+    @property
+    def waived(self) -> int:
+        """Number of waived warnings."""
+        return sum(finding.waived is not None for finding in self.findings)
+
+
+@dataclass(frozen=True)
+class IngestOutcome:
+    """What an ingest did: `ingested`, `supplement`, `already` or `refused`."""
+
+    state: Literal["ingested", "supplement", "already", "refused"]
+    address: str | None
+    report: CheckReport
+    differences: tuple[str, ...] = ()
+
+
+@dataclass(frozen=True)
+class ReduceOutcome:
+    """One reduction made, or why it could not be made."""
+
+    sweep: str
+    plan: str
+    address: str | None = None
+    document: ReductionDocument | None = None
+    problem: ArchiveError | None = None
+
+
+@dataclass(frozen=True)
+class ReplayReport:
+    """A reduction computed again from raw.
+
+    Attributes
+    ----------
+    identical : bool
+        Every array and result has the digest that was sealed.
+    largest_difference : dict of str to float
+        Per output that differs, the largest relative difference.
+    shifts : dict of str to float
+        Per scalar that differs, the change in units of its standard uncertainty.
+    """
+
+    address: str
+    identical: bool
+    outputs: int
+    largest_difference: dict[str, float] = field(default_factory=dict)
+    shifts: dict[str, float] = field(default_factory=dict)

@@ -1,0 +1,167 @@
+"""What reductions, traces and reports read: documents and arrays of one archive, by address.
+
+Sealed files never change, so what was read once is kept.
+"""
+
+from __future__ import annotations
+
+import json
+from datetime import UTC, datetime
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+from pydantic import TypeAdapter, ValidationError
+
+from archive.errors import DamagedFile, UnknownAddress
+from archive.index import Index
+from archive.intake.summary import record_digest
+from archive.reduction.estimate import Estimate
+from archive.reduction.outputs import estimate_from
+from archive.store.interface import Store
+from schemas.address import parse_address
+from schemas.lineage import AccessionDocument, AnyRecord, ReductionDocument
+
+__all__ = ["LabSource", "document_of", "key_of"]
+
+_LONG_AGO = datetime.min.replace(tzinfo=UTC)
+_RECORD: TypeAdapter[AnyRecord] = TypeAdapter(AnyRecord)
+
+
+def key_of(address: str) -> str:
+    """Key of the sealed file that an accession's or reduction's address names.
+
+    Examples
+    --------
+    >>> key_of("2026-03.a1"), key_of("2026-03/s017@film-transition.2")
+    ('2026-03/2026-03.a1', '2026-03/s017@film-transition.2')
+    """
+    parsed = parse_address(address)
+    return f"{parsed.head}/{address}" if parsed.kind == "accession" else address
+
+
+def document_of(key: str, text: str) -> AccessionDocument | ReductionDocument:
+    """Document that a sealed file carries about itself.
+
+    Raises
+    ------
+    DamagedFile
+        If the text is not such a document.
+    """
+    model: type[AccessionDocument] | type[ReductionDocument] = ReductionDocument if "@" in key else AccessionDocument
+    try:
+        return model.model_validate_json(text)
+    except ValidationError as error:
+        first = error.errors(include_url=False)[0]
+        place = ".".join(map(str, first["loc"]))
+        raise DamagedFile(
+            "the document inside this sealed file cannot be read",
+            file=key,
+            field=place,
+            found=str(first["msg"]),
+            remedy="run: stillroom fixity; if the file is whole, it was written by another version of Stillroom",
+        ) from None
+
+
+class LabSource:
+    """Documents and arrays of one archive, as reductions ask for them."""
+
+    def __init__(self, store: Store, index: Index) -> None:
+        self.store = store
+        self.index = index
+        self._documents: dict[str, AccessionDocument | ReductionDocument] = {}
+
+    def document(self, key: str) -> AccessionDocument | ReductionDocument:
+        """Document of a sealed file."""
+        if key not in self._documents:
+            self._documents[key] = document_of(key, self.store.document(key))
+        return self._documents[key]
+
+    def remember(self, key: str, document: AccessionDocument | ReductionDocument) -> None:
+        """Keep a document that was just sealed."""
+        self._documents[key] = document
+
+    def cooldowns(self) -> list[str]:
+        """Names of all cooldowns, oldest first."""
+        return [row.name for row in sorted(self.index.cooldowns(), key=lambda row: (row.begin or _LONG_AGO, row.name))]
+
+    def accessions(self, cooldown: str) -> list[AccessionDocument]:
+        """Accessions of a cooldown, oldest first."""
+        rows = sorted(self.index.accessions(cooldown), key=lambda row: row.number)
+        documents = [self.document(row.key) for row in rows]
+        return [document for document in documents if isinstance(document, AccessionDocument)]
+
+    def accession(self, address: str) -> AccessionDocument:
+        """One accession's document."""
+        document = self.document(key_of(address))
+        if not isinstance(document, AccessionDocument):
+            raise UnknownAddress(f"{address} is no accession")
+        return document
+
+    def holding(self, cooldown: str, sweep: str) -> AccessionDocument:
+        """Newest accession that holds a sweep."""
+        for document in reversed(self.accessions(cooldown)):
+            if any(entry.name == sweep for entry in document.sweeps):
+                return document
+        raise UnknownAddress(
+            f"there is no sweep {cooldown}/{sweep} in this archive", remedy="list them with: stillroom search"
+        )
+
+    def column(self, accession_address: str, sweep_name: str, channel: str) -> NDArray[Any]:
+        """Channel as stored, in the unit of the file."""
+        return self.store.column(key_of(accession_address), f"sweeps/{sweep_name}/{channel}")
+
+    def record(self, address: str) -> AnyRecord:
+        """Record by address."""
+        found = self.find_record(address)
+        if found is None:
+            raise UnknownAddress(f"there is no record {address} in this archive")
+        return found
+
+    def find_record(self, reference: str) -> AnyRecord | None:
+        """Record by address, or the newest revision of a name; None if the archive holds none."""
+        name, _, revision = reference.partition(".r")
+        rows = [row for row in self.index.records(name=name) if not revision or row.revision == int(revision)]
+        if not rows:
+            return None
+        newest = max(rows, key=lambda row: row.revision)
+        return _RECORD.validate_json(json.dumps(newest.content))
+
+    def reductions(self, plan: str, sweep_address: str) -> list[ReductionDocument]:
+        """Reductions of a plan on a sweep, oldest first."""
+        rows = sorted(self.index.reductions(sweep=sweep_address, plan=plan), key=lambda row: row.number)
+        return [self.reduction(row.address) for row in rows]
+
+    def reduction(self, address: str) -> ReductionDocument:
+        """One reduction's document."""
+        key = key_of(address)
+        if not self.store.contains(key):
+            raise UnknownAddress(f"there is no reduction {address} in this archive")
+        document = self.document(key)
+        if not isinstance(document, ReductionDocument):
+            raise UnknownAddress(f"{address} is no reduction")
+        return document
+
+    def output(self, reduction_address: str, name: str) -> Estimate:
+        """Output of a reduction with its uncertainty."""
+        key = key_of(reduction_address)
+        return estimate_from(self.reduction(reduction_address), lambda path: self.store.column(key, path), name)
+
+    def digest(self, address: str) -> str:
+        """SHA-256 of a record's content, or of a sealed file."""
+        parsed = parse_address(address)
+        if parsed.kind in ("record", "name"):
+            return record_digest(self.record(address))
+        files = self.index.sealed_files()
+        key = key_of(parsed.reduction or address)
+        if key not in files:
+            raise UnknownAddress(f"there is nothing at {address} in this archive")
+        return files[key][0]
+
+    def values(self, address: str, name: str) -> NDArray[np.float64]:
+        """Channel of a sweep or array of a reduction, in the stored unit."""
+        parsed = parse_address(address)
+        if parsed.kind == "reduction":
+            return np.asarray(self.store.column(key_of(address), f"arrays/{name}"), dtype=np.float64)
+        document = self.holding(parsed.head, parsed.item or "")
+        return np.asarray(self.column(document.address, parsed.item or "", name), dtype=np.float64)
