@@ -261,7 +261,7 @@ def fit_log_polynomial(
     problem = _Problem(
         value=np.log(points.T),
         kelvin_per_value=lambda T, R: T + 0 * R,
-        design=lambda R, order: polynomial.polyvander((np.log(R) - centre) / scale, order),
+        design=lambda R, order: floats(polynomial.polyvander((np.log(R) - centre) / scale, order)),
         curve=lambda b: LogPolynomialCurve(tuple(map(float, b)), points.resistance_span, centre, scale),
     )
     return _outcome(points, problem, *_choose(points, problem, largest_order))
@@ -298,7 +298,7 @@ def fit_inverse_log_polynomial(
     problem = _Problem(
         value=np.log(points.R),
         kelvin_per_value=lambda T, R: T / rough(np.log(T)) + 0 * R,
-        design=lambda T, order: polynomial.polyvander((np.log(T) - centre) / scale, order),
+        design=lambda T, order: floats(polynomial.polyvander((np.log(T) - centre) / scale, order)),
         curve=lambda b: InverseLogPolynomialCurve(
             tuple(map(float, b)), points.temperature_span, centre, scale
         ),
@@ -341,8 +341,8 @@ def fit_chebyshev(
     problem = _Problem(
         value=points.T,
         kelvin_per_value=lambda T, R: np.ones_like(T) + 0 * R,
-        design=lambda R, order: chebyshev.chebvander(
-            ((np.log(R) - low) - (high - np.log(R))) / (high - low), order
+        design=lambda R, order: floats(
+            chebyshev.chebvander((2 * np.log(R) - low - high) / (high - low), order)
         ),
         curve=lambda a: ChebyshevCurve(tuple(map(float, a)), low, high, "ln"),
     )
