@@ -14,7 +14,9 @@ import numpy.typing as npt
 import pyarrow as pa
 import pyarrow.compute as pc
 
-__all__ = ["as_mask", "number_fault", "numbers", "parsed_number"]
+from archive.intake.dialect import DETAILED
+
+__all__ = ["as_mask", "is_absent", "number_fault", "numbers", "parsed_number"]
 
 _NUMBER: Final = r"^[+-]?(?:[0-9]+(?:{mark}[0-9]*)?|{mark}[0-9]+)(?:[eE][+-]?[0-9]+)?$"
 _POINT: Final = re.compile(_NUMBER.format(mark=r"\."))
@@ -37,7 +39,7 @@ _REASONS: Final = (
 
 
 def numbers(
-    texts: pa.StringArray, *, decimal: Literal[".", ","]
+    texts: pa.StringArray, *, decimal: Literal[".", ","], known: npt.NDArray[np.bool_] | None = None
 ) -> tuple[npt.NDArray[np.float64], npt.NDArray[np.bool_], dict[int, str]]:
     """Return the numbers in text cells, which cells are empty or NaN, and why the others are none.
 
@@ -47,6 +49,8 @@ def numbers(
         Cells without nulls; blanks around a number are ignored.
     decimal : {".", ","}
         Decimal mark.
+    known : numpy.ndarray of bool, optional
+        Cells that are explained already (sentinels); they are not among the faults.
 
     Returns
     -------
@@ -55,7 +59,7 @@ def numbers(
     absent : numpy.ndarray of bool
         Cells that are empty or `NaN`; they are not among the faults.
     faults : dict of int to str
-        Reason per index of every other cell that is not a finite number.
+        Reason per index of every other cell that is not a finite number; the first thousand are looked at closely.
 
     Examples
     --------
@@ -70,12 +74,16 @@ def numbers(
     cast = pc.cast(pc.if_else(good, pointed, pa.scalar(None, pa.string())), pa.float64())
     values = np.array(cast.to_numpy(zero_copy_only=False), dtype=np.float64)
     is_number = as_mask(good)
-    absent = as_mask(pc.or_(pc.equal(bare, ""), pc.match_substring_regex(bare, _NAN)))
-    bad = ~(is_number & np.isfinite(values)) & ~absent
-    faults = {
-        int(index): number_fault(texts[int(index)].as_py(), decimal=decimal) for index in np.flatnonzero(bad)
-    }
-    values[bad] = np.nan
+    absent = np.zeros(len(texts), dtype=np.bool_)
+    others = np.flatnonzero(~is_number)
+    if len(others):
+        absent[others] = is_absent(bare.take(pa.array(others)))
+    wrong = ~(is_number & np.isfinite(values)) & ~absent
+    bad = np.flatnonzero(wrong if known is None else wrong & ~known)
+    # Only so many bad cells are ever told in detail; a column that is bad throughout need not be looked at for long.
+    faults = {int(i): number_fault(texts[int(i)].as_py(), decimal=decimal) for i in bad[:DETAILED]}
+    faults |= dict.fromkeys(bad[DETAILED:].tolist(), "is not a number")
+    values[wrong] = np.nan
     return values, absent, faults
 
 
@@ -109,6 +117,11 @@ def parsed_number(text: str, *, decimal: Literal[".", ","]) -> float | None:
         return None
     value = float(bare)
     return value if np.isfinite(value) else None
+
+
+def is_absent(bare: pa.StringArray) -> npt.NDArray[np.bool_]:
+    """Return which cells, without blanks around them, are empty or NaN."""
+    return as_mask(pc.or_(pc.equal(bare, ""), pc.match_substring_regex(bare, _NAN)))
 
 
 def as_mask(array: Any) -> npt.NDArray[np.bool_]:

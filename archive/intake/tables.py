@@ -17,8 +17,8 @@ import pyarrow as pa
 import pyarrow.compute as pc
 from pyarrow import csv
 
-from archive.intake.cells import as_mask, numbers, parsed_number
-from archive.intake.dialect import BadCell, BadCells, Block, ColumnRequest, require_usable
+from archive.intake.cells import as_mask, is_absent, numbers, parsed_number
+from archive.intake.dialect import DETAILED, BadCell, BadCells, Block, ColumnRequest, require_usable
 from archive.intake.header import Header
 from archive.intake.lines import BLOCK_BYTES, LineBlocks
 from archive.intake.rows import Rows
@@ -281,24 +281,21 @@ class TableReader:
                 text = np.array(cells.to_pylist(), dtype=object)
                 text[mask] = ""
                 return text, mask
-            absent = as_mask(pc.or_(pc.equal(bare, ""), pc.match_substring_regex(bare, r"(?i)^[+-]?nan$")))
             if request.kind == "number":
-                values, _, faults = numbers(cells, decimal=self._dialect.decimal)
+                values, absent, faults = numbers(cells, decimal=self._dialect.decimal, known=mask)
                 mask |= self._equals_sentinel(request, values)
             else:
+                absent = is_absent(bare)
                 values, faults = self._seconds(cells, request, mask)
-            if request.nan == "error":
-                faults = {
-                    int(i): "is empty" if not bare[int(i)].as_py() else "is NaN"
-                    for i in np.flatnonzero(absent)
-                } | faults
-            else:
+            if request.nan == "keep":
                 faults = {index: why for index, why in faults.items() if not absent[index]}
-        for index, why in faults.items():
-            if not mask[index]:
-                self._bad.add(
-                    int(lines[index]), place + 1, self._header.label(place), cells[index].as_py(), why
-                )
+            else:
+                empty = as_mask(pc.equal(bare, ""))
+                faults |= {i: "is empty" if empty[i] else "is NaN" for i in np.flatnonzero(absent).tolist()}
+        label = self._header.label(place)
+        for count, index in enumerate(sorted(index for index in faults if not mask[index])):
+            found = cells[index].as_py() if count < DETAILED else ""
+            self._bad.add(int(lines[index]), place + 1, label, found, faults[index])
         values[mask] = np.nan
         return values, mask
 
@@ -308,7 +305,7 @@ class TableReader:
         if self._stamps is None:  # pragma: no cover - made in __init__ whenever a time is asked for
             msg = "a time column without a time format"
             raise AssertionError(msg)
-        values, faults = self._stamps.seconds(cells)
+        values, faults = self._stamps.seconds(cells, mask)
         if self._dialect.time_format == "epoch":
             mask |= self._equals_sentinel(request, numbers(cells, decimal=self._dialect.decimal)[0])
         return values, faults

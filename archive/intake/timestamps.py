@@ -119,13 +119,17 @@ class TimeStamps:
                 expected="a zone such as `Europe/Helsinki` or `UTC`",
             )
 
-    def seconds(self, texts: pa.StringArray) -> tuple[npt.NDArray[np.float64], Faults]:
+    def seconds(
+        self, texts: pa.StringArray, known: npt.NDArray[np.bool_] | None = None
+    ) -> tuple[npt.NDArray[np.float64], Faults]:
         """Return POSIX seconds since 1970-01-01T00:00:00Z, and why a stamp has none.
 
         Parameters
         ----------
         texts : pyarrow.StringArray
             Time stamps without nulls; blanks around them are ignored.
+        known : numpy.ndarray of bool, optional
+            Cells that are explained already (sentinels); they are not among the faults.
 
         Returns
         -------
@@ -136,7 +140,7 @@ class TimeStamps:
             Reason per index, as the end of a sentence.
         """
         if self._pattern is None:
-            return self._epoch(texts)
+            return self._epoch(texts, known)
         bare = pc.utf8_trim_whitespace(texts)
         groups = pc.extract_regex(bare, self._pattern)
         matched = as_mask(groups.is_valid())
@@ -154,15 +158,17 @@ class TimeStamps:
             self._note(
                 faults, leap & ~without & (whole % 86400 != 0), "has a 60th second that is no leap second"
             )
-        for index in np.flatnonzero(~matched):
+        for index in np.flatnonzero(~matched if known is None else ~matched & ~known):
             text = texts[int(index)].as_py().strip()
             faults[int(index)] = f"is not a time stamp of the form {self._format}" if text else "is empty"
-        seconds = whole + fraction
+        seconds = np.where(matched, whole + fraction, np.nan)
         seconds[list(faults)] = np.nan
         return seconds, faults
 
-    def _epoch(self, texts: pa.StringArray) -> tuple[npt.NDArray[np.float64], Faults]:
-        values, absent, faults = numbers(texts, decimal=self._decimal)
+    def _epoch(
+        self, texts: pa.StringArray, known: npt.NDArray[np.bool_] | None
+    ) -> tuple[npt.NDArray[np.float64], Faults]:
+        values, absent, faults = numbers(texts, decimal=self._decimal, known=known)
         self._note(faults, absent, "is empty or NaN")
         with np.errstate(invalid="ignore"):
             far = np.abs(values) >= LATEST
