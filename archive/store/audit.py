@@ -14,7 +14,7 @@ from typing import Any
 
 import h5py
 
-__all__ = ["READ_ERRORS", "datasets", "mark_faults", "structure_faults"]
+__all__ = ["READ_ERRORS", "datasets", "mark_faults", "structure_faults", "text_of"]
 
 _SIGNATURE = b"\x89HDF\r\n\x1a\n"
 _FILTERS = {1: "deflate", 2: "shuffle", 3: "fletcher32"}
@@ -124,3 +124,8 @@ def _size_faults(dataset: h5py.Dataset) -> list[str]:
     if dataset.chunks and dataset.nbytes > 1100 * max(stored, 1024):
         return [f"it claims {dataset.nbytes} bytes and stores {stored}"]
     return []
+
+
+def text_of(value: object) -> str:
+    """Return an attribute's text, whether HDF5 kept it with fixed or variable length."""
+    return value.decode("utf-8") if isinstance(value, bytes) else str(value)

@@ -23,7 +23,7 @@ import numpy as np
 from isal import isal_zlib
 from numpy.typing import NDArray
 
-__all__ = ["CHUNK_BYTES", "ChunkStream", "fitted_chunks", "fletcher32", "write_whole"]
+__all__ = ["CHUNK_BYTES", "ChunkStream", "fitted_chunks", "fletcher32", "mark", "write_whole"]
 
 # A damaged byte costs one chunk and a reader fetches whole ones: large enough to pack well, small enough to lose.
 CHUNK_BYTES = 262_144
@@ -123,6 +123,20 @@ def _shuffle_width(dtype: np.dtype[Any]) -> int:
     return 1 if dtype.kind == "S" else dtype.itemsize
 
 
+def mark(node: h5py.Group | h5py.Dataset, name: str, text: str | list[str]) -> None:
+    """Set an attribute that the store itself relies on, as text of fixed length.
+
+    Notes
+    -----
+    Fixed-length text lies in the object header, which has a checksum. Variable-length text is friendlier (h5py returns
+    it as `str`) and is used for what people read, but it lies in a heap without any: a flipped bit there made HDF5
+    2.0.0 loop for ever. So nothing that is needed to verify a file may lie there.
+    """
+    encoded = np.array([part.encode("utf-8") for part in ([text] if isinstance(text, str) else text)])
+    values = encoded[0] if isinstance(text, str) else encoded
+    node.attrs.create(name, values, dtype=h5py.string_dtype("utf-8", max(1, encoded.dtype.itemsize)))
+
+
 def write_whole(group: h5py.Group, name: str, data: NDArray[Any]) -> h5py.Dataset:
     """Write an array of known shape and return its dataset, with its digest as attribute ``sha256``.
 
@@ -149,7 +163,7 @@ def write_whole(group: h5py.Group, name: str, data: NDArray[Any]) -> h5py.Datase
         full[tuple(slice(0, length) for length in part.shape)] = part
         packed, mask = _packed(full.tobytes(), _shuffle_width(data.dtype))
         dataset.id.write_direct_chunk(offset, packed, mask)
-    dataset.attrs["sha256"] = hashlib.sha256(data.tobytes()).hexdigest()
+    mark(dataset, "sha256", hashlib.sha256(data.tobytes()).hexdigest())
     return dataset
 
 
@@ -165,7 +179,7 @@ def _written_scalar(group: h5py.Group, name: str, data: NDArray[Any]) -> h5py.Da
     kind = h5py.h5t.py_create(np.dtype(dtype), logical=True)
     dataset = h5py.Dataset(h5py.h5d.create(parent.id, leaf.encode(), kind, space, layout))
     dataset[()] = data
-    dataset.attrs["sha256"] = hashlib.sha256(data.tobytes()).hexdigest()
+    mark(dataset, "sha256", hashlib.sha256(data.tobytes()).hexdigest())
     return dataset
 
 
@@ -239,5 +253,5 @@ class ChunkStream:
             return write_whole(self._group, self._name, values)
         if self._waiting_rows:
             self._write()
-        self._dataset.attrs["sha256"] = self._digest.hexdigest()
+        mark(self._dataset, "sha256", self._digest.hexdigest())
         return self._dataset

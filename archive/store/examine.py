@@ -20,7 +20,7 @@ import h5py
 if sys.platform != "win32":
     import resource
 
-from archive.store.audit import READ_ERRORS, datasets, mark_faults, structure_faults
+from archive.store.audit import READ_ERRORS, datasets, mark_faults, structure_faults, text_of
 from archive.store.durable import file_digest
 from archive.store.interface import Damage
 
@@ -123,16 +123,16 @@ def _inside(path: Path, key: str) -> list[Damage]:
 
 
 def _identity_damage(key: str, file: h5py.File) -> Iterator[Damage]:
-    says = file.attrs.get("key")
+    says = text_of(file.attrs.get("key", ""))
     if says != key:
-        yield Damage(key, "damaged", "the file says that it is another", expected=key, found=str(says))
+        yield Damage(key, "damaged", "the file says that it is another", expected=key, found=says)
     if not file.id.links.exists(b"document"):
         yield Damage(key, "damaged", "the document is not in the file", dataset="document")
 
 
 def _dataset_damage(key: str, where: str, dataset: h5py.Dataset) -> Iterator[Damage]:
     try:
-        recorded = dataset.attrs.get("sha256")
+        recorded = text_of(dataset.attrs.get("sha256", "none"))
         found = _digest(dataset)
         size = dataset.attrs.get("size", dataset.size) if where.startswith("raw/") else dataset.size
     except READ_ERRORS as error:
@@ -144,7 +144,7 @@ def _dataset_damage(key: str, where: str, dataset: h5py.Dataset) -> Iterator[Dam
             "damaged",
             "the values are not those that were sealed",
             dataset=where,
-            expected=str(recorded),
+            expected=recorded,
             found=found,
         )
     if size != dataset.size:

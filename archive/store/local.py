@@ -23,7 +23,7 @@ from numpy.typing import NDArray
 
 from archive.errors import AlreadySealed, ArchiveError, DamagedFile, MissingFile, NotAnArchive, UnknownAddress
 from archive.store import durable
-from archive.store.audit import READ_ERRORS, datasets, mark_faults, structure_faults
+from archive.store.audit import READ_ERRORS, datasets, mark_faults, structure_faults, text_of
 from archive.store.examine import changed_datasets, examined
 from archive.store.interface import Attributes, Damage, SealedFile, Writer
 from archive.store.names import checked_key, is_key
@@ -171,7 +171,7 @@ class LocalStore:
         with self._opened(key) as file, self._damage_named(key, "/"):
             groups = dict.fromkeys(where.rpartition("/")[0] for where, _ in datasets(file))
             return {
-                group: [str(name) for name in file[group].attrs["columns"]]
+                group: [text_of(name) for name in file[group].attrs["columns"].tolist()]
                 for group in groups
                 if group and "columns" in file[group].attrs
             }
@@ -190,11 +190,7 @@ class LocalStore:
         """Return the attributes of a dataset or group; links between datasets are left out."""
         with self._opened(key) as file, self._damage_named(key, path):
             node = _node(file, key, path)
-            return {
-                name: value.tolist() if isinstance(value, np.ndarray | np.generic) else value
-                for name, value in node.attrs.items()
-                if name not in _SCALE_ATTRIBUTES
-            }
+            return {name: _plain(node.attrs[name]) for name in node.attrs if name not in _SCALE_ATTRIBUTES}
 
     def raw_names(self, key: str) -> list[str]:
         """Return the names of the raw files, sorted."""
@@ -273,3 +269,12 @@ def _node(file: h5py.File, key: str, path: str) -> Any:
             raise UnknownAddress("the file holds nothing of this name", file=key, field=path)
         node = node[part]
     return node
+
+
+def _plain(value: Any) -> Any:
+    """Return an attribute's value as text, number or list of them."""
+    if isinstance(value, np.ndarray):
+        return [_plain(part) for part in value.tolist()]
+    if isinstance(value, bytes | str):
+        return text_of(value)
+    return value.item() if isinstance(value, np.generic) else value

@@ -32,6 +32,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from archive.errors import ArchiveError, BadRequest
+from archive.store.audit import text_of
 from archive.store.blocks import (
     checked_array,
     checked_attributes,
@@ -40,7 +41,7 @@ from archive.store.blocks import (
     checked_text,
     column_attributes,
 )
-from archive.store.chunks import ChunkStream, write_whole
+from archive.store.chunks import ChunkStream, mark, write_whole
 from archive.store.interface import Column, TableWriter
 from archive.store.names import checked_raw_name
 
@@ -76,9 +77,9 @@ class SealedTableWriter:
     ) -> None:
         self._path, self._group, self._columns, self._index = path, group, columns, index
         self._node = file.create_group(group, track_order=True)
-        self._node.attrs["columns"] = [column.name for column in columns]
+        mark(self._node, "columns", [column.name for column in columns])
         if index is not None:
-            self._node.attrs["index"] = index
+            mark(self._node, "index", index)
         kinds = {"float64": np.dtype("<f8"), "int64": np.dtype("<i8")}
         self._streams = {
             column.name: ChunkStream(self._node, column.name, kinds[column.dtype])
@@ -121,7 +122,7 @@ class SealedTableWriter:
                 datasets[column.name].attrs[name] = value
         self._node.attrs["rows"] = self._rows
         self._attach(datasets)
-        return {f"{self._group}/{name}": d.attrs["sha256"] for name, d in datasets.items()}
+        return {f"{self._group}/{name}": text_of(d.attrs["sha256"]) for name, d in datasets.items()}
 
     def _attach(self, datasets: Mapping[str, h5py.Dataset]) -> None:
         if self._index is None:
@@ -155,8 +156,8 @@ class SealedWriter:
             self._file = h5py.File(
                 path, "x", libver=("v110", "v110"), track_order=True, track_times=False, locking="best-effort"
             )
-            self._file.attrs["format"] = FORMAT
-            self._file.attrs["key"] = key
+            mark(self._file, "format", FORMAT)
+            mark(self._file, "key", key)
 
     def raw(self, name: str, blocks: Iterable[bytes], *, media_type: str = "application/octet-stream") -> str:
         """Keep a raw file's bytes verbatim and return their SHA-256."""
@@ -192,7 +193,7 @@ class SealedWriter:
         self._require_free(path)
         with writing(self.path):
             dataset = write_whole(self._file, path, values)
-            self._digests[path] = dataset.attrs["sha256"]
+            self._digests[path] = text_of(dataset.attrs["sha256"])
             for name, value in checked.items():
                 dataset.attrs[name] = value
 
@@ -205,7 +206,7 @@ class SealedWriter:
         with writing(self.path):
             dataset = write_whole(self._file, "document", np.array([encoded]))
             dataset.attrs["media_type"] = "application/json"
-            self._digests["document"] = dataset.attrs["sha256"]
+            self._digests["document"] = text_of(dataset.attrs["sha256"])
         self._documented = True
 
     def finish(self) -> dict[str, str]:
