@@ -91,8 +91,9 @@ class CooldownSheet(Record):
     format: Literal["stillroom-cooldown/1"]
     name: Name = Field(description="Name of the cooldown, e.g. `2026-03`.")
     cryostat: Reference
-    begin: AwareDatetime = Field(description="With offset: 2026-03-02T09:10:00+02:00")
-    end: AwareDatetime
+    begin: AwareDatetime | None = Field(default=None, description="With offset: 2026-03-02T09:10:00+02:00")
+    end: AwareDatetime | None = None
+    undated: Text | None = Field(default=None, description="Why begin and end are not known, when they are not.")
     time_zone: str = Field(description="Zone of the laboratory, e.g. `Europe/Helsinki`.")
     operators: tuple[str, ...] = Field(min_length=1, description="By role, e.g. `graduate student`.")
     purpose: Text
@@ -123,7 +124,10 @@ class CooldownSheet(Record):
 
     @model_validator(mode="after")
     def _consistent(self) -> CooldownSheet:
-        if self.end <= self.begin:
+        if self.begin is None or self.end is None:
+            if self.undated is None:
+                raise ValueError("begin and end are missing; give both with their offset, or say in `undated` why they are not known")
+        elif self.end <= self.begin:
             raise ValueError("end must be later than begin")
         return self
 

@@ -52,8 +52,8 @@ def _name(source: LabSource, address: Address) -> dict[str, Any]:
     newest = documents[-1]
     return {
         "what": "cooldown",
-        "begin": newest.sheet.begin.isoformat(),
-        "end": newest.sheet.end.isoformat(),
+        "begin": None if newest.sheet.begin is None else newest.sheet.begin.isoformat(),
+        "end": None if newest.sheet.end is None else newest.sheet.end.isoformat(),
         "purpose": newest.sheet.purpose,
         "outcome": newest.sheet.outcome,
         "cell": newest.sheet.cell,
