@@ -1,0 +1,159 @@
+"""Conditions of the queries: what a search asks, as expressions with bound values.
+
+Rules: no value is ever written into SQL; a `LIKE` pattern is escaped; every condition means the same on SQLite and PostgreSQL.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+from sqlalchemy import ColumnElement, and_, exists, func, or_
+from sqlalchemy.orm import InstrumentedAttribute, aliased
+
+from archive.errors import BadRequest
+from archive.index.answers import ResultCondition, SearchQuery
+from archive.index.searchable import folded
+from archive.index.tables import Channel, Output, Reduction, Sweep, SweepThermometer
+
+__all__ = ["named", "newest_reduction", "newest_sweep", "part_of", "search_conditions"]
+
+_LONGEST_WORD = 1000
+
+_Text = InstrumentedAttribute[str] | InstrumentedAttribute[str | None]
+
+
+def named(column: _Text, reference: str) -> ColumnElement[bool]:
+    """Whether a column holds a record: that revision for an address (`TO-4.r2`), any revision for a name."""
+    if "." in reference:
+        return column == reference
+    # Names hold no dot and "s" follows "r", so this range is every revision and can use an index.
+    return or_(column == reference, and_(column >= f"{reference}.r", column < f"{reference}.s"))
+
+
+def part_of(column: _Text, address: str) -> ColumnElement[bool]:
+    """Whether a column holds an address or one of its parts: channel, output or raw file; for a name, a revision."""
+    parts = [column == address]
+    # "$" follows "#" and ";" follows ":" in the order of bytes.
+    parts += [
+        and_(column >= f"{address}{mark}", column < f"{address}{after}")
+        for mark, after in (("#", "$"), (":", ";"))
+    ]
+    if "." not in address and "/" not in address:
+        parts.append(named(column, address))
+    return or_(*parts)
+
+
+def newest_sweep() -> ColumnElement[bool]:
+    """Whether a row of `sweep` is held by the newest accession that has that sweep."""
+    later = aliased(Sweep)
+    return ~exists().where(later.address == Sweep.address, later.number > Sweep.number)
+
+
+def newest_reduction() -> ColumnElement[bool]:
+    """Whether no later reduction of this plan on this sweep exists, and none says that it supersedes this one."""
+    later = aliased(Reduction)
+    replacing = aliased(Reduction)
+    return and_(
+        ~exists().where(
+            later.sweep == Reduction.sweep, later.plan == Reduction.plan, later.number > Reduction.number
+        ),
+        ~exists().where(replacing.supersedes == Reduction.address),
+    )
+
+
+def search_conditions(query: SearchQuery) -> Iterator[ColumnElement[bool]]:
+    """Conditions of a search, all of which must hold.
+
+    Raises
+    ------
+    BadRequest
+        If a time has no offset, or a word is too long to search for.
+    """
+    yield newest_sweep()
+    for column, value in ((Sweep.kind, query.kind), (Sweep.cooldown, query.cooldown)):
+        if value is not None:
+            yield column == value
+    for reference_column, reference in (
+        (Sweep.cell, query.cell),
+        (Sweep.substrate, query.substrate),
+        (Sweep.sample, query.sample),
+    ):
+        if reference is not None:
+            yield named(reference_column, reference)
+    if query.empty_cell is not None:
+        yield Sweep.empty_cell == query.empty_cell
+    if query.thermometer is not None:
+        yield exists().where(
+            _same_sweep(SweepThermometer), named(SweepThermometer.thermometer, query.thermometer)
+        )
+    if query.scale is not None:
+        yield or_(
+            Sweep.scale == query.scale, exists().where(_same_sweep(Channel), Channel.scale == query.scale)
+        )
+    if query.plan is not None:
+        followed = Reduction.plan_address if "." in query.plan else Reduction.plan
+        yield exists().where(Reduction.sweep == Sweep.address, followed == query.plan)
+    yield from _ranges(query)
+    yield from _times(query)
+    yield from (_result(condition) for condition in query.results)
+    for word in folded(query.text or "").split():
+        if len(word) > _LONGEST_WORD:
+            raise BadRequest(
+                "a word to search for is too long", expected=f"at most {_LONGEST_WORD} characters"
+            )
+        yield Sweep.text.contains(word, autoescape=True)
+
+
+def _same_sweep(table: type[SweepThermometer | Channel]) -> ColumnElement[bool]:
+    return and_(table.accession == Sweep.accession, table.sweep == Sweep.name)
+
+
+def _ranges(query: SearchQuery) -> Iterator[ColumnElement[bool]]:
+    if query.coverage is not None:
+        low, high = query.coverage
+        yield Sweep.coverage_mol_per_m2.is_not(None)
+        if low is not None:
+            yield Sweep.coverage_mol_per_m2 >= low
+        if high is not None:
+            yield Sweep.coverage_mol_per_m2 <= high
+    if query.temperature is not None:
+        low, high = query.temperature
+        # A sweep of which only one end is known is a point.
+        coldest = func.coalesce(Sweep.temperature_low_K, Sweep.temperature_high_K)
+        warmest = func.coalesce(Sweep.temperature_high_K, Sweep.temperature_low_K)
+        yield coldest.is_not(None)
+        if low is not None:
+            yield warmest >= low
+        if high is not None:
+            yield coldest <= high
+
+
+def _times(query: SearchQuery) -> Iterator[ColumnElement[bool]]:
+    for field, moment in (("since", query.since), ("until", query.until)):
+        if moment is not None and moment.tzinfo is None:
+            raise BadRequest(
+                "a time without its offset from UTC is no instant",
+                field=field,
+                found=moment.isoformat(),
+                expected="a time such as 2026-03-02T09:10:00+02:00",
+            )
+    if query.since is not None:
+        yield func.coalesce(Sweep.end, Sweep.begin) >= query.since
+    if query.until is not None:
+        yield func.coalesce(Sweep.begin, Sweep.end) <= query.until
+
+
+def _result(condition: ResultCondition) -> ColumnElement[bool]:
+    bounds: list[ColumnElement[bool]] = [Output.value_si.is_not(None)]
+    if condition.low is not None:
+        bounds.append(Output.value_si >= condition.low)
+    if condition.high is not None:
+        bounds.append(Output.value_si <= condition.high)
+    return exists().where(
+        Output.reduction == Reduction.address,
+        Reduction.sweep == Sweep.address,
+        Output.name == condition.name,
+        Output.rows.is_(None),
+        newest_reduction(),
+        *bounds,
+    )

@@ -1,0 +1,341 @@
+"""The index: what a search needs to know of every sealed file, in relational tables.
+
+Rules
+-----
+* The index is derivable: `rebuild` from the sealed files gives, row for row, what recording them one by one gave.
+* Every write is one transaction; a reader sees one state throughout.
+* Nothing in here opens a sealed file; documents come in, plain rows go out.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Iterator
+from contextlib import contextmanager
+from pathlib import Path
+from types import TracebackType
+from typing import Any, Self
+
+from sqlalchemy import Engine
+from sqlalchemy.engine import URL
+
+from archive.errors import BadRequest, MissingFile
+from archive.index import queries
+from archive.index.answers import (
+    AccessionRow,
+    CooldownRow,
+    DoseRow,
+    FindingRow,
+    RawFileRow,
+    RecordRow,
+    ReductionRow,
+    ResultRow,
+    SearchQuery,
+    SweepRow,
+)
+from archive.index.engine import REBUILD, WAIT_SECONDS, engine_of, index_name, index_url, reading, writing
+from archive.index.record import add_accession, add_reduction, clear
+from archive.index.revision import make, raise_to_head
+from archive.index.sweep_rows import sweep_rows
+from archive.index.tables import Base
+from schemas.lineage import AccessionDocument, ReductionDocument
+
+__all__ = ["Entry", "Index"]
+
+Entry = tuple[str, str, int, AccessionDocument | ReductionDocument]
+"""Key, SHA-256, size and document of one sealed file."""
+
+
+class Index:
+    """An open index; made by `create` or `open`, and a context manager that closes it.
+
+    Every method raises `ArchiveBusy` when another process writes for longer than the wait, and `DamagedFile` when the
+    database is not one any more.
+    """
+
+    def __init__(self, engine: Engine, url: URL) -> None:
+        self._engine = engine
+        self._url = url
+
+    @classmethod
+    def create(cls, url: str, *, wait: float = WAIT_SECONDS) -> Self:
+        """Return a new, empty index.
+
+        Parameters
+        ----------
+        url : str
+            `sqlite:///folder/index.sqlite3` (the folder must exist) or `postgresql+psycopg://...`.
+        wait : float
+            Longest wait for another writer, in seconds.
+
+        Raises
+        ------
+        BadRequest
+            If an index is there already, or the address is none.
+        """
+        place = index_url(url)
+        if place.get_backend_name() == "sqlite":
+            folder = Path(str(place.database)).absolute().parent
+            if not folder.is_dir():
+                raise MissingFile(
+                    "the folder for the index is not there", file=str(folder), remedy="make the folder first"
+                )
+        engine = engine_of(place, read_only=False, new=True, wait=wait)
+        with _disposed_on_failure(engine):
+            make(engine, place)
+        return cls(engine, place)
+
+    @classmethod
+    def open(cls, url: str, *, read_only: bool = False, wait: float = WAIT_SECONDS) -> Self:
+        """Return an index that is there; one of an older revision is copied beside (SQLite) and raised.
+
+        Parameters
+        ----------
+        url : str
+            As for `create`.
+        read_only : bool
+            Open it so that the database itself refuses writes.
+        wait : float
+            Longest wait for another writer, in seconds.
+
+        Raises
+        ------
+        MissingFile
+            If it is not there.
+        DamagedFile
+            If its file is no database.
+        BadRequest
+            If a newer Stillroom wrote it, or it must be raised but is opened for reading only.
+        """
+        place = index_url(url)
+        if place.get_backend_name() == "sqlite" and not Path(index_name(place)).is_file():
+            raise MissingFile("the index is not there", file=index_name(place), remedy=REBUILD)
+        engine = engine_of(place, read_only=read_only, wait=wait)
+        with _disposed_on_failure(engine):
+            raise_to_head(engine, place, read_only=read_only)
+        return cls(engine, place)
+
+    @staticmethod
+    def set_aside(url: str) -> Path | None:
+        """Path to which an SQLite index is moved, so that a new one can be created; None when there is none to move.
+
+        Notes
+        -----
+        For a damaged index, before `stillroom rebuild-index`; nobody may have it open. Its write-ahead log goes along.
+        A PostgreSQL index cannot be set aside from here.
+        """
+        place = index_url(url)
+        if place.get_backend_name() != "sqlite":
+            raise BadRequest(
+                "an index in PostgreSQL cannot be set aside", remedy="give `index` another database"
+            )
+        path = Path(str(place.database))
+        if not path.exists():
+            return None
+        number = 1
+        while (aside := path.with_name(f"{path.name}.set-aside-{number}")).exists():
+            number += 1
+        for suffix in ("-wal", "-shm"):
+            if (beside := path.with_name(path.name + suffix)).exists():
+                beside.rename(path.with_name(aside.name + suffix))
+        return path.rename(aside)
+
+    def close(self) -> None:
+        """Let go of every connection."""
+        self._engine.dispose()
+
+    def __enter__(self) -> Self:
+        """Return this index."""
+        return self
+
+    def __exit__(
+        self, kind: type[BaseException] | None, fault: BaseException | None, trace: TracebackType | None
+    ) -> None:
+        """Close this index."""
+        self.close()
+
+    def record_accession(self, document: AccessionDocument, *, key: str, sha256: str, size: int) -> None:
+        """Record a sealed accession; nothing changes when the same file is recorded already.
+
+        Parameters
+        ----------
+        document : AccessionDocument
+            What the file says about itself.
+        key, sha256 : str
+            Its name in the store and its digest.
+        size : int
+            Its bytes.
+
+        Raises
+        ------
+        DamagedFile
+            If the key is recorded with other bytes, or the document contradicts itself or the index.
+        """
+        with writing(self._engine, self._url) as connection:
+            add_accession(connection, document, key=key, sha256=sha256, size=size)
+
+    def record_reduction(self, document: ReductionDocument, *, key: str, sha256: str, size: int) -> None:
+        """Record a sealed reduction; as `record_accession`."""
+        with writing(self._engine, self._url) as connection:
+            add_reduction(connection, document, key=key, sha256=sha256, size=size)
+
+    def rebuild(self, entries: Iterable[Entry]) -> None:
+        """Make all rows anew; when anything fails, also in `entries`, the old rows stay.
+
+        Parameters
+        ----------
+        entries : iterable of (key, sha256, size, document)
+            Every sealed file, in any order; they are taken one at a time.
+        """
+        with writing(self._engine, self._url) as connection:
+            clear(connection)
+            for key, sha256, size, document in entries:
+                if isinstance(document, AccessionDocument):
+                    add_accession(connection, document, key=key, sha256=sha256, size=size)
+                else:
+                    add_reduction(connection, document, key=key, sha256=sha256, size=size)
+
+    def rows(self) -> dict[str, list[tuple[Any, ...]]]:
+        """Every row of every table, by key: equal indexes give equal rows, whatever the engine."""
+        with reading(self._engine, self._url) as connection:
+            return {
+                name: [tuple(row) for row in connection.execute(queries.all_rows(table))]
+                for name, table in sorted(Base.metadata.tables.items())
+            }
+
+    def sealed_files(self) -> dict[str, tuple[str, int]]:
+        """SHA-256 and size of every sealed file, by key."""
+        with reading(self._engine, self._url) as connection:
+            return {row.key: (row.sha256, row.size) for row in connection.execute(queries.sealed_files())}
+
+    def search(self, query: SearchQuery) -> list[SweepRow]:
+        """Sweeps that satisfy a search, each once, in its newest version.
+
+        Raises
+        ------
+        BadRequest
+            If the query asks for something that cannot be: a time without offset, a negative limit.
+        """
+        for field, number in (("limit", query.limit), ("offset", query.offset)):
+            if number is not None and number < 0:
+                raise BadRequest(
+                    "a search cannot count backwards", field=field, found=str(number), expected="0 or more"
+                )
+        return self._sweeps(queries.search(query))
+
+    def sweeps(self, cooldown: str) -> list[SweepRow]:
+        """Sweeps of a cooldown by name, each as the newest accession that has it holds it."""
+        return self._sweeps(queries.sweeps(cooldown=cooldown))
+
+    def sweeps_of_accession(self, accession: str) -> list[SweepRow]:
+        """Sweeps by name as one accession holds them, older versions too."""
+        return self._sweeps(queries.sweeps(accession=accession))
+
+    def sweep(self, address: str) -> SweepRow | None:
+        """Return the newest version of a sweep; None when the index has none."""
+        return next(iter(self._sweeps(queries.sweeps(address=address))), None)
+
+    def accessions(self, cooldown: str | None = None) -> list[AccessionRow]:
+        """Return accessions by cooldown and number."""
+        return [
+            AccessionRow(**{**row, "differences": tuple(row["differences"])})
+            for row in self._mappings(queries.accessions(cooldown))
+        ]
+
+    def cooldowns(self) -> list[CooldownRow]:
+        """Cooldowns by begin."""
+        return [CooldownRow(**row) for row in self._mappings(queries.cooldowns())]
+
+    def records(self, name: str | None = None, kind: str | None = None) -> list[RecordRow]:
+        """Return records by kind, name and revision; `name` is a name (all revisions) or an address (`TO-4.r2`)."""
+        return [RecordRow(**row) for row in self._mappings(queries.records(name, kind))]
+
+    def reductions(
+        self,
+        *,
+        cooldown: str | None = None,
+        sweep: str | None = None,
+        plan: str | None = None,
+        step: str | None = None,
+        newest_only: bool = False,
+    ) -> list[ReductionRow]:
+        """Reductions by sweep, plan and number.
+
+        Parameters
+        ----------
+        cooldown : str, optional
+            Name of the cooldown.
+        sweep : str, optional
+            Address of the sweep.
+        plan : str, optional
+            Name or address of the plan.
+        step : str, optional
+            Name of a step that it must have taken.
+        newest_only : bool
+            Leave out those that a later or superseding one replaces.
+        """
+        asked = queries.reductions(
+            cooldown=cooldown, sweep=sweep, plan=plan, step=step, newest_only=newest_only
+        )
+        return [ReductionRow(**row) for row in self._mappings(asked)]
+
+    def results(
+        self,
+        *,
+        name: str | None = None,
+        cooldown: str | None = None,
+        sweep: str | None = None,
+        newest_only: bool = True,
+    ) -> list[ResultRow]:
+        """Scalar results by sweep, plan, number and place in the plan; parameters as for `reductions`."""
+        asked = queries.results(name=name, cooldown=cooldown, sweep=sweep, newest_only=newest_only)
+        return [ResultRow(**row) for row in self._mappings(asked)]
+
+    def raw_files(self, *, sha256: str | None = None, cooldown: str | None = None) -> list[RawFileRow]:
+        """Raw files by accession and name."""
+        asked = queries.raw_files(sha256=sha256, cooldown=cooldown)
+        return [
+            RawFileRow(address=f"{row['accession']}:{row['name']}", **row) for row in self._mappings(asked)
+        ]
+
+    def doses(self, cooldown: str) -> list[DoseRow]:
+        """Return the gas ledger of a cooldown, in order, as its newest accession with doses holds it."""
+        return [
+            DoseRow(address=f"{cooldown}/{row['name']}", **row)
+            for row in self._mappings(queries.doses(cooldown))
+        ]
+
+    def findings(
+        self, *, address: str | None = None, code: str | None = None, severity: str | None = None
+    ) -> list[FindingRow]:
+        """Return findings of accessions and reductions; `address` is that of one of them."""
+        asked = queries.findings(address=address, code=code, severity=severity)
+        return [FindingRow(**row) for row in self._mappings(asked)]
+
+    def dependents(self, address: str) -> list[str]:
+        """Addresses of the reductions that took something from an address, or from a part or revision of it."""
+        return [row["reduction"] for row in self._mappings(queries.dependents(address))]
+
+    def statistics(self) -> dict[str, int]:
+        """Return counts of what the archive holds (sweeps once each), and bytes."""
+        return {name: int(value) for name, value in self._mappings(queries.statistics())[0].items()}
+
+    def _mappings(self, query: queries.Query) -> list[dict[str, Any]]:
+        with reading(self._engine, self._url) as connection:
+            return [_columns(row) for row in connection.execute(query).mappings()]
+
+    def _sweeps(self, query: queries.Query) -> list[SweepRow]:
+        with reading(self._engine, self._url) as connection:
+            return sweep_rows(connection, query)
+
+
+@contextmanager
+def _disposed_on_failure(engine: Engine) -> Iterator[None]:
+    try:
+        yield
+    except BaseException:
+        engine.dispose()
+        raise
+
+
+def _columns(row: Any) -> dict[str, Any]:
+    return {str(name): value for name, value in row.items()}

@@ -1,0 +1,448 @@
+"""Every SELECT of the index.
+
+Rules: each query has a full order, so that an answer never depends on the engine; sweeps and records are shown once, in
+the version of the newest (for records: with the earliest) accession that holds them.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import Any
+
+from sqlalchemy import Select, Table, and_, cast, exists, func, or_, select
+from sqlalchemy.orm import InstrumentedAttribute, aliased
+
+from archive.index.answers import SearchQuery
+from archive.index.conditions import named, newest_reduction, newest_sweep, part_of, search_conditions
+from archive.index.tables import (
+    Accession,
+    Channel,
+    Cooldown,
+    Dose,
+    Finding,
+    Output,
+    Plan,
+    RawFile,
+    Record,
+    Reduction,
+    ReductionInput,
+    SealedFile,
+    Step,
+    Sweep,
+    SweepThermometer,
+)
+
+__all__ = [
+    "Query",
+    "accessions",
+    "all_rows",
+    "channel_names",
+    "cooldown_newest",
+    "cooldowns",
+    "dependents",
+    "doses",
+    "findings",
+    "plan_known",
+    "raw_files",
+    "records",
+    "reductions",
+    "results",
+    "sealed_file",
+    "sealed_files",
+    "search",
+    "statistics",
+    "sweep_results",
+    "sweeps",
+    "thermometers",
+]
+
+Query = Select[*tuple[Any, ...]]
+"""A SELECT of any columns."""
+
+_SWEEP = (
+    Sweep.address,
+    Sweep.cooldown,
+    Sweep.name,
+    Sweep.kind,
+    Sweep.accession,
+    Sweep.cell,
+    Sweep.substrate,
+    Sweep.sample,
+    Sweep.empty_cell,
+    Sweep.after_dose,
+    Sweep.begin,
+    Sweep.end,
+    Sweep.direction,
+    Sweep.rows,
+    Sweep.coverage_mol_per_m2.label("coverage"),
+    Sweep.coverage_uncertainty_mol_per_m2.label("coverage_uncertainty"),
+    Sweep.temperature_low_K.label("temperature_low"),
+    Sweep.temperature_high_K.label("temperature_high"),
+    Sweep.scale,
+)
+
+_SORT: dict[str, tuple[InstrumentedAttribute[Any], ...]] = {
+    "date": (Sweep.begin,),
+    "coverage": (Sweep.coverage_mol_per_m2, Sweep.begin),
+    "temperature": (Sweep.temperature_low_K, Sweep.temperature_high_K),
+    "cell": (Sweep.cell, Sweep.coverage_mol_per_m2, Sweep.begin),
+    "name": (Sweep.cooldown, Sweep.name),
+}
+
+
+def all_rows(table: Table) -> Query:
+    """Every row of a table, by its key."""
+    return select(table).order_by(*table.primary_key.columns)
+
+
+def sealed_files() -> Query:
+    """Key, digest and size of every sealed file."""
+    return select(SealedFile.key, SealedFile.sha256, SealedFile.size).order_by(SealedFile.key)
+
+
+def sealed_file(key: str) -> Query:
+    """Address, digest and size of one sealed file."""
+    return select(SealedFile.address, SealedFile.sha256, SealedFile.size).where(SealedFile.key == key)
+
+
+def cooldown_newest(name: str) -> Query:
+    """Return number of the newest accession of a cooldown."""
+    return select(Cooldown.newest).where(Cooldown.name == name)
+
+
+def plan_known(address: str, digest: str) -> Query:
+    """Return the plan, if it is recorded."""
+    return select(Plan.name).where(Plan.address == address, Plan.digest == digest)
+
+
+def search(query: SearchQuery) -> Query:
+    """Sweeps that satisfy a search."""
+    order: list[Any] = []
+    for column in _SORT[query.sort]:
+        # The engines disagree on where NULL sorts: said outright, it is last.
+        order += [column.is_(None), column.desc() if query.descending else column.asc()]
+    found = select(*_SWEEP).where(*search_conditions(query)).order_by(*order, Sweep.address)
+    # SQLite has no offset without a limit; SQLAlchemy then writes the limit -1.
+    return found.limit(query.limit).offset(query.offset or None)
+
+
+def sweeps(*, cooldown: str | None = None, address: str | None = None, accession: str | None = None) -> Query:
+    """Sweeps of a cooldown, or one sweep, in the newest version; or all sweeps as one accession holds them."""
+    found = select(*_SWEEP).order_by(Sweep.address)
+    if accession is not None:
+        return found.where(Sweep.accession == accession)
+    found = found.where(newest_sweep())
+    if cooldown is not None:
+        found = found.where(Sweep.cooldown == cooldown)
+    return found if address is None else found.where(Sweep.address == address)
+
+
+def thermometers(addresses: Sequence[str]) -> Query:
+    """Return accession, sweep and thermometer of some sweeps, in all their versions."""
+    return (
+        select(Sweep.accession, Sweep.address, SweepThermometer.thermometer)
+        .join(
+            Sweep, and_(Sweep.accession == SweepThermometer.accession, Sweep.name == SweepThermometer.sweep)
+        )
+        .where(Sweep.address.in_(addresses))
+        .order_by(Sweep.accession, Sweep.address, SweepThermometer.position)
+    )
+
+
+def channel_names(addresses: Sequence[str]) -> Query:
+    """Return accession, sweep and channel of some sweeps, in all their versions."""
+    return (
+        select(Sweep.accession, Sweep.address, Channel.name)
+        .join(Sweep, and_(Sweep.accession == Channel.accession, Sweep.name == Channel.sweep))
+        .where(Sweep.address.in_(addresses))
+        .order_by(Sweep.accession, Sweep.address, Channel.position)
+    )
+
+
+def sweep_results(addresses: Sequence[str]) -> Query:
+    """Results of the newest reductions of some sweeps, headline ones first within a plan."""
+    return (
+        select(Reduction.sweep, Output.name, Output.value, Output.uncertainty, Output.unit, Output.verdict)
+        .join(Output, Output.reduction == Reduction.address)
+        .where(Reduction.sweep.in_(addresses), Output.rows.is_(None), newest_reduction())
+        .order_by(
+            Reduction.sweep, Output.headline.is_(None), Reduction.plan, Output.headline, Output.position
+        )
+    )
+
+
+def _count(column: InstrumentedAttribute[Any], *where: Any) -> Any:
+    return select(func.count(column)).where(*where).scalar_subquery()
+
+
+def accessions(cooldown: str | None) -> Query:
+    """Return accessions with their counts, by cooldown and number."""
+
+    def of(severity: str, *, waived: bool) -> Any:
+        return _count(
+            Finding.key, Finding.key == Accession.key, Finding.severity == severity, Finding.waived == waived
+        )
+
+    found = select(
+        Accession.address,
+        Accession.cooldown,
+        Accession.number,
+        Accession.key,
+        Accession.accessioned,
+        Accession.supplements,
+        Accession.differences,
+        Accession.stillroom,
+        _count(Sweep.name, Sweep.accession == Accession.address).label("sweeps"),
+        _count(Dose.name, Dose.accession == Accession.address).label("doses"),
+        _count(Record.address, Record.accession == Accession.address).label("records"),
+        _count(RawFile.name, RawFile.accession == Accession.address).label("raw_files"),
+        _total(RawFile.size, RawFile.accession == Accession.address).label("raw_bytes"),
+        of("warning", waived=False).label("warnings"),
+        _count(Finding.key, Finding.key == Accession.key, Finding.waived == True).label("waived"),  # noqa: E712 - a column
+        of("note", waived=False).label("notes"),
+    ).order_by(Accession.cooldown, Accession.number)
+    return found if cooldown is None else found.where(Accession.cooldown == cooldown)
+
+
+def _total(column: InstrumentedAttribute[int], *where: Any) -> Any:
+    # The sum of bigints is a numeric on PostgreSQL.
+    total = cast(func.coalesce(func.sum(column), 0), column.type)
+    return select(total).where(*where).scalar_subquery()
+
+
+def cooldowns() -> Query:
+    """Cooldowns with their counts, by begin."""
+    return (
+        select(
+            Cooldown.name,
+            Accession.address.label("newest_accession"),
+            Cooldown.begin,
+            Cooldown.end,
+            Cooldown.outcome,
+            Cooldown.purpose,
+            Cooldown.next_step,
+            Cooldown.cryostat,
+            Cooldown.cell,
+            Cooldown.licence,
+            _counted(Accession, Accession.address),
+            select(func.count(func.distinct(Sweep.name)))
+            .where(Sweep.cooldown == Cooldown.name)
+            .scalar_subquery()
+            .label("sweeps"),
+            _counted(Reduction, Reduction.address),
+        )
+        .outerjoin(Accession, and_(Accession.cooldown == Cooldown.name, Accession.number == Cooldown.newest))
+        .order_by(Cooldown.begin.is_(None), Cooldown.begin, Cooldown.name)
+    )
+
+
+def records(name: str | None, kind: str | None) -> Query:
+    """Revisions of records, each with the earliest accession that holds it, by kind, name and revision."""
+    holder, other, earlier = aliased(Accession), aliased(Record), aliased(Accession)
+    before = exists().where(
+        other.address == Record.address,
+        other.digest == Record.digest,
+        earlier.address == other.accession,
+        or_(
+            earlier.accessioned < holder.accessioned,
+            and_(earlier.accessioned == holder.accessioned, earlier.address < holder.address),
+        ),
+    )
+    found = (
+        select(
+            Record.name,
+            Record.revision,
+            Record.kind,
+            Record.address,
+            Record.digest,
+            Record.content,
+            Record.accession,
+        )
+        .join(holder, holder.address == Record.accession)
+        .where(~before)
+        .order_by(Record.kind, Record.name, Record.revision, Record.digest)
+    )
+    if name is not None:
+        found = found.where(named(Record.address, name))
+    return found if kind is None else found.where(Record.kind == kind)
+
+
+def reductions(
+    *, cooldown: str | None, sweep: str | None, plan: str | None, step: str | None, newest_only: bool
+) -> Query:
+    """Reductions, by sweep, plan and number."""
+    found = (
+        select(
+            Reduction.address,
+            Reduction.cooldown,
+            Reduction.sweep,
+            Reduction.plan,
+            Reduction.plan_address,
+            Reduction.number,
+            Reduction.key,
+            Reduction.begin,
+            Reduction.end,
+            Reduction.supersedes,
+            Reduction.stillroom,
+            newest_reduction().label("newest"),
+            Plan.title,
+        )
+        .join(Plan, and_(Plan.address == Reduction.plan_address, Plan.digest == Reduction.plan_digest))
+        .order_by(Reduction.sweep, Reduction.plan, Reduction.number)
+    )
+    if cooldown is not None:
+        found = found.where(Reduction.cooldown == cooldown)
+    if sweep is not None:
+        found = found.where(Reduction.sweep == sweep)
+    if plan is not None:
+        found = found.where((Reduction.plan_address if "." in plan else Reduction.plan) == plan)
+    if step is not None:
+        found = found.where(exists().where(Step.reduction == Reduction.address, Step.name == step))
+    return found.where(newest_reduction()) if newest_only else found
+
+
+def results(*, name: str | None, cooldown: str | None, sweep: str | None, newest_only: bool) -> Query:
+    """Scalar results with cell and coverage of their sweep, by sweep, plan, number and place in the plan."""
+    found = (
+        select(
+            Output.reduction,
+            Reduction.cooldown,
+            Reduction.sweep,
+            Reduction.plan,
+            Output.name,
+            Output.quantity,
+            Output.unit,
+            Output.ucum,
+            Output.description,
+            Output.scale,
+            Output.value,
+            Output.uncertainty,
+            Output.value_si,
+            Output.uncertainty_si,
+            Output.verdict,
+            newest_reduction().label("newest"),
+            Output.headline.is_not(None).label("headline"),
+            Sweep.cell,
+            Sweep.coverage_mol_per_m2.label("coverage"),
+            Sweep.coverage_uncertainty_mol_per_m2.label("coverage_uncertainty"),
+        )
+        .join(Reduction, Reduction.address == Output.reduction)
+        .outerjoin(Sweep, and_(Sweep.address == Reduction.sweep, newest_sweep()))
+        .where(Output.rows.is_(None))
+        .order_by(Reduction.sweep, Reduction.plan, Reduction.number, Output.position)
+    )
+    if name is not None:
+        found = found.where(Output.name == name)
+    if cooldown is not None:
+        found = found.where(Reduction.cooldown == cooldown)
+    if sweep is not None:
+        found = found.where(Reduction.sweep == sweep)
+    return found.where(newest_reduction()) if newest_only else found
+
+
+def raw_files(*, sha256: str | None, cooldown: str | None) -> Query:
+    """Raw files, by accession and name."""
+    found = (
+        select(
+            RawFile.accession, Accession.cooldown, RawFile.name, RawFile.sha256, RawFile.size, RawFile.role
+        )
+        .join(Accession, Accession.address == RawFile.accession)
+        .order_by(Accession.cooldown, Accession.number, RawFile.name)
+    )
+    if sha256 is not None:
+        found = found.where(RawFile.sha256 == sha256)
+    return found if cooldown is None else found.where(Accession.cooldown == cooldown)
+
+
+def doses(cooldown: str) -> Query:
+    """Return the gas ledger of a cooldown as its newest accession with doses holds it, in order."""
+    newest = (
+        select(func.max(Accession.number))
+        .join(Dose, Dose.accession == Accession.address)
+        .where(Accession.cooldown == cooldown)
+        .scalar_subquery()
+    )
+    return (
+        select(
+            Dose.accession,
+            Dose.name,
+            Dose.at,
+            Dose.act,
+            Dose.counted,
+            Dose.amount_mol.label("amount"),
+            Dose.amount_uncertainty_mol.label("amount_uncertainty"),
+            Dose.running_amount_mol.label("running_amount"),
+            Dose.running_amount_uncertainty_mol.label("running_amount_uncertainty"),
+            Dose.running_coverage_mol_per_m2.label("running_coverage"),
+            Dose.running_coverage_uncertainty_mol_per_m2.label("running_coverage_uncertainty"),
+            Dose.method,
+        )
+        .join(Accession, Accession.address == Dose.accession)
+        .where(Accession.cooldown == cooldown, Accession.number == newest)
+        .order_by(Dose.position)
+    )
+
+
+def findings(*, address: str | None, code: str | None, severity: str | None) -> Query:
+    """Return findings of accessions and reductions, by address, step and place in its list."""
+    found = (
+        select(
+            SealedFile.address,
+            Finding.step,
+            Finding.code,
+            Finding.severity,
+            Finding.what,
+            Finding.place,
+            Finding.waived,
+            Finding.content,
+        )
+        .join(SealedFile, SealedFile.key == Finding.key)
+        .order_by(SealedFile.address, Finding.step, Finding.position)
+    )
+    for column, value in ((SealedFile.address, address), (Finding.code, code), (Finding.severity, severity)):
+        if value is not None:
+            found = found.where(column == value)
+    return found
+
+
+def dependents(address: str) -> Query:
+    """Reductions that took something from an address, or from one of its parts."""
+    return (
+        select(ReductionInput.reduction)
+        .where(part_of(ReductionInput.address, address))
+        .distinct()
+        .order_by(ReductionInput.reduction)
+    )
+
+
+def statistics() -> Query:
+    """Return counts of what the archive holds, as one row."""
+    newest = newest_sweep()
+    return select(
+        _counted_all(Cooldown.name, "cooldowns"),
+        _counted_all(Accession.address, "accessions"),
+        _count(Sweep.name, newest).label("sweeps"),
+        _total(Sweep.rows, newest).label("rows"),
+        select(func.count(func.distinct(Record.address))).scalar_subquery().label("records"),
+        _counted_all(RawFile.name, "raw_files"),
+        _total(RawFile.size).label("raw_bytes"),
+        select(func.count(func.distinct(Plan.address))).scalar_subquery().label("plans"),
+        _counted_all(Reduction.address, "reductions"),
+        _count(Output.name, Output.rows.is_(None)).label("results"),
+        _counted_all(SealedFile.key, "sealed_files"),
+        _total(SealedFile.size).label("sealed_bytes"),
+    )
+
+
+def _counted(table: type[Accession | Reduction], column: InstrumentedAttribute[str]) -> Any:
+    counted = aliased(table)
+    return (
+        select(func.count(getattr(counted, column.key)))
+        .where(counted.cooldown == Cooldown.name)
+        .scalar_subquery()
+        .label(f"{table.__tablename__}s")
+    )
+
+
+def _counted_all(column: InstrumentedAttribute[Any], label: str) -> Any:
+    return _count(column).label(label)

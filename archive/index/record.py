@@ -1,0 +1,345 @@
+"""Rows of one sealed file's document.
+
+Rules
+-----
+* What is written depends on the document alone, never on the order in which files are recorded, nor on the clock.
+* A value whose quantity or unit `schemas` does not know has no SI value: it is listed, and no search by number finds it.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping
+from typing import Any
+
+from sqlalchemy import Connection, delete, insert, update
+
+from archive.errors import DamagedFile
+from archive.index import queries, tables
+from archive.index.searchable import searchable_text
+from schemas.address import parse_address
+from schemas.finding import Finding
+from schemas.kinds import kind_of
+from schemas.lineage import AccessionDocument, OutputEntry, ReductionDocument, SweepEntry, Value
+from schemas.quantity import unit_factor
+
+__all__ = ["add_accession", "add_reduction", "clear"]
+
+# Fields whose columns bear their names.
+_SWEEP = {
+    "kind",
+    "cell",
+    "substrate",
+    "sample",
+    "empty_cell",
+    "after_dose",
+    "begin",
+    "end",
+    "direction",
+    "rows",
+}
+_CHANNEL = {
+    *("name", "quantity", "unit", "ucum", "description", "scale", "thermometer", "calibration"),
+    *("low", "high", "missing", "use", "digest"),
+}
+_DOSE = {"name", "at", "act", "counted", "method"}
+_STEP = {"number", "name", "version", "sentence", "parameters", "begin", "end"}
+_OUTPUT = {
+    *("name", "quantity", "unit", "ucum", "description", "step", "scale", "rows", "value", "uncertainty"),
+    *("verdict", "digest"),
+}
+
+
+def clear(connection: Connection) -> None:
+    """Take every row out of every table."""
+    for table in reversed(tables.Base.metadata.sorted_tables):
+        connection.execute(delete(table))
+
+
+def add_accession(
+    connection: Connection, document: AccessionDocument, *, key: str, sha256: str, size: int
+) -> None:
+    """Add the rows of an accession; nothing when they are there already.
+
+    Parameters
+    ----------
+    connection : Connection
+        In a writing transaction.
+    document : AccessionDocument
+        What the sealed file says about itself.
+    key, sha256 : str
+        Name and digest of the sealed file.
+    size : int
+        Its bytes.
+
+    Raises
+    ------
+    DamagedFile
+        If the index holds this file with another digest or size.
+    """
+    if not _seal(connection, document.address, "accession", key=key, sha256=sha256, size=size):
+        return
+    _tell_cooldown(connection, document)
+    connection.execute(
+        insert(tables.Accession).values(
+            address=document.address,
+            cooldown=document.cooldown,
+            number=document.number,
+            key=key,
+            accessioned=document.accessioned,
+            supplements=document.supplements,
+            sheet_file=document.sheet_file,
+            differences=list(document.differences),
+            stillroom=document.software.stillroom,
+        )
+    )
+    held = {"accession": document.address}
+    _add(
+        connection,
+        tables.RawFile,
+        (
+            {**held, "name": raw.name, "sha256": raw.sha256, "size": raw.size, "role": raw.role}
+            for raw in document.raw_files
+        ),
+    )
+    _add(connection, tables.Record, _record_rows(document))
+    _add(connection, tables.Sweep, (_sweep_row(document, entry) for entry in document.sweeps))
+    _add(
+        connection,
+        tables.SweepThermometer,
+        (
+            {**held, "sweep": entry.name, "position": position, "thermometer": thermometer}
+            for entry in document.sweeps
+            for position, thermometer in enumerate(entry.thermometers)
+        ),
+    )
+    _add(
+        connection,
+        tables.Channel,
+        (
+            {**held, "sweep": entry.name, "position": position, **channel.model_dump(include=_CHANNEL)}
+            for entry in document.sweeps
+            for position, channel in enumerate(entry.channels)
+        ),
+    )
+    _add(connection, tables.Dose, _dose_rows(document))
+    _add(connection, tables.Finding, _finding_rows(key, 0, document.findings))
+
+
+def add_reduction(
+    connection: Connection, document: ReductionDocument, *, key: str, sha256: str, size: int
+) -> None:
+    """Add the rows of a reduction; nothing when they are there already.
+
+    Parameters and errors are those of `add_accession`. The accession that it rests on need not be recorded: it may be
+    the damaged one.
+    """
+    if not _seal(connection, document.address, "reduction", key=key, sha256=sha256, size=size):
+        return
+    address = parse_address(document.address)
+    if connection.execute(queries.cooldown_newest(document.cooldown)).first() is None:
+        connection.execute(insert(tables.Cooldown).values(name=document.cooldown))
+    plan = document.plan
+    if connection.execute(queries.plan_known(plan.address, document.plan_digest)).first() is None:
+        connection.execute(
+            insert(tables.Plan).values(
+                address=plan.address,
+                digest=document.plan_digest,
+                name=plan.name,
+                revision=plan.revision,
+                title=plan.title,
+                content=plan.model_dump(mode="json"),
+            )
+        )
+    connection.execute(
+        insert(tables.Reduction).values(
+            address=document.address,
+            key=key,
+            cooldown=document.cooldown,
+            sweep=address.sweep,
+            plan=address.plan,
+            number=document.number,
+            plan_address=plan.address,
+            plan_digest=document.plan_digest,
+            supersedes=document.supersedes,
+            begin=document.begin,
+            end=document.end,
+            stillroom=document.software.stillroom,
+        )
+    )
+    held = {"reduction": document.address}
+    _add(connection, tables.ReductionInput, _input_rows(document))
+    _add(
+        connection,
+        tables.Step,
+        ({**held, **step.model_dump(include=_STEP)} for step in document.steps),
+    )
+    headline = {name: place for place, name in enumerate(plan.headline)}
+    _add(
+        connection,
+        tables.Output,
+        (
+            {**held, **_output_row(output, position, headline)}
+            for position, output in enumerate(document.outputs)
+        ),
+    )
+    _add(connection, tables.Finding, _finding_rows(key, 0, document.findings))
+    for step in document.steps:
+        _add(connection, tables.Finding, _finding_rows(key, step.number, step.findings))
+
+
+def _add(connection: Connection, table: type[tables.Base], rows: Iterable[Mapping[str, Any]]) -> None:
+    found = list(rows)
+    if found:
+        connection.execute(insert(table), found)
+
+
+def _seal(connection: Connection, address: str, document: str, *, key: str, sha256: str, size: int) -> bool:
+    """Add the row of a sealed file; False when the same file is there already."""
+    known = connection.execute(queries.sealed_file(key)).first()
+    if known is None:
+        connection.execute(
+            insert(tables.SealedFile).values(
+                key=key, document=document, address=address, sha256=sha256, size=size
+            )
+        )
+        return True
+    if (known.sha256, known.size, known.address) == (sha256, size, address):
+        return False
+    raise DamagedFile(
+        "the index holds this sealed file with other bytes",
+        file=key,
+        expected=f"{known.address}, {known.size} bytes, sha256 {known.sha256}",
+        found=f"{address}, {size} bytes, sha256 {sha256}",
+        remedy="a sealed file never changes: keep both, and find out which one was sealed before anything else is done",
+    )
+
+
+def _tell_cooldown(connection: Connection, document: AccessionDocument) -> None:
+    sheet = document.sheet
+    told = {
+        "newest": document.number,
+        "begin": sheet.begin,
+        "end": sheet.end,
+        "outcome": sheet.outcome,
+        "purpose": sheet.purpose,
+        "next_step": sheet.next_step,
+        "cryostat": sheet.cryostat,
+        "cell": sheet.cell,
+        "licence": sheet.licence,
+    }
+    known = connection.execute(queries.cooldown_newest(document.cooldown)).first()
+    if known is None:
+        connection.execute(insert(tables.Cooldown).values(name=document.cooldown, **told))
+    elif known.newest is None or known.newest < document.number:
+        connection.execute(
+            update(tables.Cooldown).where(tables.Cooldown.name == document.cooldown).values(**told)
+        )
+
+
+def _record_rows(document: AccessionDocument) -> Iterable[dict[str, Any]]:
+    for record in document.records:
+        address = parse_address(record.address)
+        yield {
+            "accession": document.address,
+            "address": record.address,
+            "name": address.head,
+            "revision": address.number,
+            "kind": record.kind,
+            "digest": record.digest,
+            "content": record.content,
+        }
+
+
+def _sweep_row(document: AccessionDocument, entry: SweepEntry) -> dict[str, Any]:
+    coverage, coverage_uncertainty = _si(entry.coverage, "coverage")
+    scales = [value.scale for value in (entry.temperature_low, entry.temperature_high) if value is not None]
+    scales += [channel.scale for channel in entry.channels if channel.use]
+    return {
+        "accession": document.address,
+        "name": entry.name,
+        "address": f"{document.cooldown}/{entry.name}",
+        "cooldown": document.cooldown,
+        "number": document.number,
+        **entry.model_dump(include=_SWEEP),
+        "amount_mol": _si(entry.amount, "amount")[0],
+        "coverage_mol_per_m2": coverage,
+        "coverage_uncertainty_mol_per_m2": coverage_uncertainty,
+        "temperature_low_K": _si(entry.temperature_low, "temperature")[0],
+        "temperature_high_K": _si(entry.temperature_high, "temperature")[0],
+        "scale": next((scale for scale in scales if scale is not None), None),
+        "text": searchable_text(document, entry),
+    }
+
+
+def _dose_rows(document: AccessionDocument) -> Iterable[dict[str, Any]]:
+    for position, dose in enumerate(document.doses):
+        amount, amount_uncertainty = _si(dose.amount, "amount")
+        running, running_uncertainty = _si(dose.running_amount, "amount")
+        coverage, coverage_uncertainty = _si(dose.running_coverage, "coverage")
+        yield {
+            "accession": document.address,
+            "position": position,
+            **dose.model_dump(include=_DOSE),
+            "amount_mol": amount,
+            "amount_uncertainty_mol": amount_uncertainty,
+            "running_amount_mol": running,
+            "running_amount_uncertainty_mol": running_uncertainty,
+            "running_coverage_mol_per_m2": coverage,
+            "running_coverage_uncertainty_mol_per_m2": coverage_uncertainty,
+        }
+
+
+def _finding_rows(key: str, step: int, findings: Iterable[Finding]) -> Iterable[dict[str, Any]]:
+    for position, finding in enumerate(findings):
+        yield {
+            "key": key,
+            "step": step,
+            "position": position,
+            "code": finding.code,
+            "severity": finding.severity,
+            "what": finding.what,
+            "place": finding.place,
+            "waived": finding.waived is not None,
+            "content": finding.model_dump(mode="json"),
+        }
+
+
+def _input_rows(document: ReductionDocument) -> Iterable[dict[str, Any]]:
+    for position, entry in enumerate(document.inputs):
+        value = entry.value
+        yield {
+            "reduction": document.address,
+            "position": position,
+            "address": entry.address,
+            "role": entry.role,
+            "digest": entry.digest,
+            "value": None if value is None else value.value,
+            "uncertainty": None if value is None else value.uncertainty,
+            "unit": None if value is None else value.unit,
+            "scale": None if value is None else value.scale,
+        }
+
+
+def _output_row(output: OutputEntry, position: int, headline: Mapping[str, int]) -> dict[str, Any]:
+    value, uncertainty = _si(
+        Value(value=output.value, uncertainty=output.uncertainty, unit=output.unit), output.quantity
+    )
+    return {
+        "position": position,
+        "headline": headline.get(output.name),
+        **output.model_dump(include=_OUTPUT),
+        "value_si": value,
+        "uncertainty_si": uncertainty,
+    }
+
+
+def _si(value: Value | None, quantity: str) -> tuple[float | None, float | None]:
+    """Value and standard uncertainty in the SI unit of a quantity kind; None where there is none."""
+    if value is None or value.value is None:
+        return None, None
+    try:
+        # The canonical unit is the usual case, and asking for no factor keeps the units library unloaded.
+        factor = 1.0 if value.unit in kind_of(quantity).si else unit_factor(value.unit, quantity)
+    except ValueError:
+        return None, None
+    return value.value * factor, None if value.uncertainty is None else value.uncertainty * factor
