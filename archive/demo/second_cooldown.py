@@ -42,8 +42,10 @@ SECOND_COVERAGES: Final = {"s003": 31.0e-6, "s004": 33.5e-6, "s005": 36.0e-6}
 """True coverage of each temperature sweep with a film, mol/m^2."""
 
 _DOSES: Final = (
-    ("2026-02-15 10:00", 12.0e-6),
-    ("2026-02-15 15:00", 22.0e-6),
+    ("2026-02-14 10:00", 7.0e-6),
+    ("2026-02-14 15:00", 14.0e-6),
+    ("2026-02-15 10:00", 21.0e-6),
+    ("2026-02-15 15:00", 26.0e-6),
     ("2026-02-16 10:00", 31.0e-6),
     ("2026-02-20 10:00", 33.5e-6),
     ("2026-02-24 10:00", 36.0e-6),
@@ -120,14 +122,14 @@ def _files(seed: int) -> dict[str, bytes]:
             [Column("A", "mV", magnitude * 1e3, 6)],
             remarks=["lock-in 1, magnitude, 0.3 s"],
         ),
-        "raw/ts_d03.csv": sweep_bytes(sweeps["s003"], at("2026-02-18 20:00"), sensor="RX2"),
-        "raw/ts_d04_part1.csv": comma_table(
+        "raw/ts_d05.csv": sweep_bytes(sweeps["s003"], at("2026-02-18 20:00"), sensor="RX2"),
+        "raw/ts_d06_part1.csv": comma_table(
             times_from(at("2026-02-20 23:00"), _BREAK, cadence=60.0), before, zone=ZONE
         ),
-        "raw/ts_d04_part2.csv": comma_table(
+        "raw/ts_d06_part2.csv": comma_table(
             times_from(at("2026-02-21 03:00"), rows - _BREAK, cadence=60.0), after, zone=ZONE
         ),
-        "raw/ts_d05.csv": sweep_bytes(sweeps["s005"], at("2026-02-25 20:00"), sensor="RX2"),
+        "raw/ts_d07.csv": sweep_bytes(sweeps["s005"], at("2026-02-25 20:00"), sensor="RX2"),
     }
 
 

@@ -154,9 +154,9 @@ bath_temperature = "0.100(1) K"
 [[sweep]]
 name = "s003"
 kind = "temperature-sweep"
-files = ["raw/ts_d03.csv"]
+files = ["raw/ts_d05.csv"]
 layout = "counter"
-after_dose = "d03"
+after_dose = "d05"
 thermometer = "thermometer"
 direction = "up"
 drive = "0.1 V rms"
@@ -165,9 +165,9 @@ settled = "annealed at 0.8 K, one night at base"
 [[sweep]]
 name = "s004"
 kind = "temperature-sweep"
-files = ["raw/ts_d04_part1.csv", "raw/ts_d04_part2.csv"]
+files = ["raw/ts_d06_part1.csv", "raw/ts_d06_part2.csv"]
 layout = "counter"
-after_dose = "d04"
+after_dose = "d06"
 thermometer = "thermometer"
 direction = "up"
 drive = "0.1 V rms"
@@ -176,9 +176,9 @@ notes = "The measuring program stopped at 02:10 and was started again 50 minutes
 [[sweep]]
 name = "s005"
 kind = "temperature-sweep"
-files = ["raw/ts_d05.csv"]
+files = ["raw/ts_d07.csv"]
 layout = "counter"
-after_dose = "d05"
+after_dose = "d07"
 thermometer = "thermometer"
 direction = "up"
 drive = "0.1 V rms"
