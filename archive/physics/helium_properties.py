@@ -8,7 +8,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from typing import Final, NamedTuple
 
-from archive.physics import helium_gas, helium_liquid
+from archive.physics import helium_gas, helium_liquid, helium_sound, helium_vapour, helium_viscosity
 from archive.physics.ranges import Floats
 from archive.physics.vapour_pressure import pressure_estimate, pressure_its90
 
@@ -47,18 +47,18 @@ _ENTRIES: Final[tuple[_Entry, ...]] = (
     _Entry("vapour pressure (estimate)", pressure_estimate, "Pa", "0.5 to 1.25 K", _DONNELLY,
            "estimate, outside ITS-90; 0.1 per cent from 0.65 K"),
     _Entry("density, liquid", helium_liquid.density, "kg/m^3", "0.1 to 4.2221 K", _DONNELLY),
-    _Entry("density, vapour", helium_gas.saturated_vapour_density, "kg/m^3", "0.5 to 4.2221 K",
+    _Entry("density, vapour", helium_vapour.saturated_vapour_density, "kg/m^3", "0.5 to 4.2221 K",
            "ITS-90 pressure with virial coefficients", "0.1 per cent to 2.75 K, 0.3 to 3.75 K, 0.5 above"),
     _Entry("superfluid fraction", helium_liquid.superfluid_fraction, "1", "0.1 to 4.2221 K", _DONNELLY, "uncertain by 0.001"),
     _Entry("density, normal component", helium_liquid.normal_density, "kg/m^3", "1.0 to 4.2221 K", _DONNELLY,
            "uncertain by 0.15 kg/m^3 below the lambda point"),
-    _Entry("viscosity, liquid", helium_liquid.viscosity, "Pa s", "0.8 to 4.2221 K", _DONNELLY,
+    _Entry("viscosity, liquid", helium_viscosity.viscosity, "Pa s", "0.8 to 4.2221 K", _DONNELLY,
            "1 per cent; depends on geometry below about 1 K"),
     _Entry("surface tension", helium_liquid.surface_tension, "N/m", "0.1 to 4.2221 K", _DONNELLY),
     _Entry("specific heat, liquid", helium_liquid.specific_heat, "J/(kg K)", "0.1 to 2.175 K, 2.18 to 4.2221 K", _DONNELLY,
            "along the saturation line; at constant pressure it is larger"),
-    _Entry("first sound", helium_liquid.first_sound, "m/s", "0.1 to 4.2221 K", _DONNELLY, "0.5 per cent"),
-    _Entry("second sound", helium_liquid.second_sound, "m/s", "0.6 to 2.1768 K", _DONNELLY, "0.5 per cent"),
+    _Entry("first sound", helium_sound.first_sound, "m/s", "0.1 to 4.2221 K", _DONNELLY, "0.5 per cent"),
+    _Entry("second sound", helium_sound.second_sound, "m/s", "0.6 to 2.1768 K", _DONNELLY, "0.5 per cent"),
     _Entry("second virial coefficient", helium_gas.second_virial, "m^3/mol", "0.5 to 300 K", _PHASE_SHIFTS,
            "1 per cent below 2 K"),
 )  # fmt: skip

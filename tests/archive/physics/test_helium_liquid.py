@@ -1,4 +1,4 @@
-"""Liquid 4He against the recommended table and three libraries, where those are known to be right."""
+"""Liquid 4He (density to second sound and viscosity) against the recommended table and three libraries, where those are known to be right."""
 
 import csv
 import warnings
@@ -12,7 +12,7 @@ from CoolProp.CoolProp import PropsSI
 from hypothesis import given
 from hypothesis import strategies as st
 
-from archive.physics import helium_liquid
+from archive.physics import helium_liquid, helium_sound, helium_viscosity
 
 TABLE = Path(__file__).parents[2] / "published" / "helium" / "helium4_liquid_svp.csv"
 ROWS = list(csv.DictReader(TABLE.read_text(encoding="utf-8").splitlines()))
@@ -22,10 +22,10 @@ COLUMNS = [
     ("density_kg_per_m3", helium_liquid.density, 1.0, 3e-3, 0.0),
     ("superfluid_fraction", helium_liquid.superfluid_fraction, 1.0, 1e-3, 0.0),
     ("specific_heat_sat_J_per_kg_K", helium_liquid.specific_heat, 1.0, 0.0, 5e-3),
-    ("viscosity_uPa_s", helium_liquid.viscosity, 1e-6, 0.0, 1e-2),
+    ("viscosity_uPa_s", helium_viscosity.viscosity, 1e-6, 0.0, 1e-2),
     ("surface_tension_mN_per_m", helium_liquid.surface_tension, 1e-3, 2e-6, 0.0),
-    ("second_sound_m_per_s", helium_liquid.second_sound, 1.0, 0.0, 5e-3),
-    ("first_sound_m_per_s", helium_liquid.first_sound, 1.0, 0.0, 5e-3),
+    ("second_sound_m_per_s", helium_sound.second_sound, 1.0, 0.0, 5e-3),
+    ("first_sound_m_per_s", helium_sound.first_sound, 1.0, 0.0, 5e-3),
 ]
 
 
@@ -51,11 +51,11 @@ def test_every_cell_of_the_table(row: dict[str, str]) -> None:
     ("name", "function", "low", "relative"),
     [
         ("density", helium_liquid.density, 0.1, 4e-5),
-        ("viscosity", helium_liquid.viscosity, 0.8, 2.1e-2),
+        ("viscosity", helium_viscosity.viscosity, 0.8, 2.1e-2),
         ("surface_tension", helium_liquid.surface_tension, 0.1, 1e-3),
         ("specific_heat_SVP", helium_liquid.specific_heat, 0.1, 2.1e-2),
-        ("sound_velocity_first", helium_liquid.first_sound, 0.1, 5e-3),
-        ("sound_velocity_second", helium_liquid.second_sound, 0.6, 8e-3),
+        ("sound_velocity_first", helium_sound.first_sound, 0.1, 5e-3),
+        ("sound_velocity_second", helium_sound.second_sound, 0.6, 8e-3),
     ],
 )
 def test_between_the_rows_against_liquid_helium_svp(name, function, low, relative) -> None:
@@ -112,14 +112,14 @@ def test_density_against_coolprop(T: float, relative: float) -> None:
     ],
     ids=str,
 )  # fmt: skip
-def test_penetration_depth_at_1_kHz(
+def test_penetration_depth_at_one_kilohertz(
     T: float, eta_uP: float, rho: float, rho_n: float, delta_um: float
 ) -> None:
     """Donnelly-Barenghi fits and sqrt(2 eta/(rho_n w)), computed apart; half a unit of the fraction is 0.007 kg/m3."""
-    assert helium_liquid.viscosity(T) == pytest.approx(1e-7 * eta_uP, rel=5e-4)
+    assert helium_viscosity.viscosity(T) == pytest.approx(1e-7 * eta_uP, rel=5e-4)
     assert helium_liquid.density(T) == pytest.approx(rho, abs=6e-3)
     assert helium_liquid.normal_density(T) == pytest.approx(rho_n, abs=1.3e-2)
-    assert helium_liquid.viscous_penetration_depth(T, 1000.0) == pytest.approx(1e-6 * delta_um, rel=1e-3)
+    assert helium_viscosity.viscous_penetration_depth(T, 1000.0) == pytest.approx(1e-6 * delta_um, rel=1e-3)
 
 
 def test_second_sound_follows_from_the_other_properties() -> None:
@@ -133,7 +133,7 @@ def test_second_sound_follows_from_the_other_properties() -> None:
         i = int(np.argmin(np.abs(grid - T)))
         fraction = helium_liquid.superfluid_fraction(grid[i])
         u2 = np.sqrt(fraction / (1 - fraction) * grid[i] * entropy[i] ** 2 / c[i])
-        assert helium_liquid.second_sound(grid[i]) == pytest.approx(u2, rel=1e-2), f"at {T} K"
+        assert helium_sound.second_sound(grid[i]) == pytest.approx(u2, rel=1e-2), f"at {T} K"
 
 
 def test_specific_heat_near_absolute_zero_is_that_of_phonons() -> None:
@@ -145,7 +145,7 @@ def test_values_to_remember() -> None:
     """Donnelly and Barenghi (1998)."""
     assert helium_liquid.density(2.1768) == pytest.approx(146.109, abs=1e-3)
     assert helium_liquid.superfluid_fraction(2.0) == pytest.approx(0.4469, abs=1e-4)
-    assert helium_liquid.viscosity(4.2) == pytest.approx(3.244e-6, rel=1e-3)
+    assert helium_viscosity.viscosity(4.2) == pytest.approx(3.244e-6, rel=1e-3)
     assert helium_liquid.surface_tension(4.2) == pytest.approx(0.0895e-3, abs=1e-7)
 
 
@@ -153,7 +153,7 @@ def test_lambda_point_is_approached_from_both_sides() -> None:
     below, above = helium_liquid.density([2.1768 - 1e-9, 2.1768 + 1e-9])
     assert below == pytest.approx(above, rel=1e-8)
     assert helium_liquid.superfluid_fraction([2.1768, 2.2]).tolist() == [0.0, 0.0]
-    assert helium_liquid.second_sound(2.1768) == 0.0
+    assert helium_sound.second_sound(2.1768) == 0.0
 
 
 @given(st.floats(0.1, 2.1767))
@@ -170,8 +170,8 @@ def test_normal_density_never_exceeds_the_density(T: float) -> None:
     ("function", "T"),
     [
         (helium_liquid.density, 0.05), (helium_liquid.density, 4.3), (helium_liquid.normal_density, 0.9),
-        (helium_liquid.viscosity, 0.79), (helium_liquid.second_sound, 2.2), (helium_liquid.second_sound, 0.5),
-        (helium_liquid.specific_heat, 5.0), (helium_liquid.surface_tension, 4.3), (helium_liquid.first_sound, 0.0),
+        (helium_viscosity.viscosity, 0.79), (helium_sound.second_sound, 2.2), (helium_sound.second_sound, 0.5),
+        (helium_liquid.specific_heat, 5.0), (helium_liquid.surface_tension, 4.3), (helium_sound.first_sound, 0.0),
     ],
 )  # fmt: skip
 def test_outside_is_refused(function, T) -> None:
@@ -187,9 +187,9 @@ def test_specific_heat_is_refused_at_the_singularity() -> None:
 def test_missing_stays_missing() -> None:
     for function in (
         helium_liquid.density,
-        helium_liquid.viscosity,
+        helium_viscosity.viscosity,
         helium_liquid.specific_heat,
-        helium_liquid.second_sound,
+        helium_sound.second_sound,
     ):
         assert np.isnan(function([np.nan, 2.0])).tolist() == [True, False]
 
@@ -218,4 +218,4 @@ def test_lambda_line_estimate_is_plausible_beside_the_1948_scale() -> None:
 @pytest.mark.parametrize("frequency", [0.0, -10.0])
 def test_penetration_depth_needs_a_frequency(frequency: float) -> None:
     with pytest.raises(ValueError, match="frequency"):
-        helium_liquid.viscous_penetration_depth(2.0, frequency)
+        helium_viscosity.viscous_penetration_depth(2.0, frequency)

@@ -44,7 +44,7 @@ def test_real_gas_against_the_equation_of_state(c: float) -> None:
     assert estimate.real == pytest.approx(PropsSI("P", "T", 293.15, "Dmolar", 1e3 * c, "Helium"), rel=6e-4)
 
 
-def test_more_than_100_MPa_is_said_and_not_silent() -> None:
+def test_more_than_100_megapascal_is_said_and_not_silent() -> None:
     estimate = trapped_pressure(amount=31.1e-3, volume=1e-6, temperature=293.15)
     assert estimate.state == "outside range of this formula"
     assert estimate.note == "caution: more than 100 MPa, outside range of this formula"
