@@ -38,6 +38,8 @@ _CHUNK = 1 << 20
 _ARRAY_SUFFIXES = (".npy", ".npz", ".h5", ".hdf5")
 _LISTED = 100
 _SHOWN_CELLS = 1000
+_EVERYWHERE = 20
+"""As many rows with one and the same fault are not listed one by one when hardly a row is without it."""
 
 Archived = Callable[[str], AnyRecord | None]
 Progress = Callable[[str], None]
@@ -452,7 +454,7 @@ def _read_file(
         block = read_array_source(path, name, requests)
         first_lines[name] = int(block.lines[0]) if len(block.lines) else 1
         gatherer.add(block, file_number)
-        _report_cells(reading, sweep, name, block.bad_cells, block.bad_cell_count)
+        _report_cells(reading, sweep, name, block.bad_cells, block.bad_cell_count, len(block.lines))
         return not block.bad_cell_count
     digest = hashlib.sha256()
     with path.open("rb") as stream:
@@ -463,7 +465,7 @@ def _read_file(
             if len(block.lines):
                 first_lines.setdefault(name, int(block.lines[0]))
             gatherer.add(block, file_number)
-    _report_cells(reading, sweep, name, reader.bad_cells, reader.bad_cell_count)
+    _report_cells(reading, sweep, name, reader.bad_cells, reader.bad_cell_count, reader.rows)
     if digest.hexdigest() != reading.raw_files[name].sha256:
         reading.findings.append(
             Finding(
@@ -479,27 +481,40 @@ def _read_file(
     return not reader.bad_cell_count
 
 
-def _report_cells(reading: Reading, sweep: Sweep, name: str, cells: list[BadCell], count: int) -> None:
+def _report_cells(
+    reading: Reading, sweep: Sweep, name: str, cells: list[BadCell], count: int, rows: int
+) -> None:
+    """Findings of the bad cells: each one, or one for all when the same fault stands in almost every row."""
+    alike: dict[str, list[BadCell]] = {}
     for cell in cells[:_SHOWN_CELLS]:
-        reading.findings.append(
-            Finding(
-                code="bad-cell",
-                severity="error",
-                what=cell.why,
-                file=name,
-                line=cell.line or None,
-                column=cell.column or None,
-                place=sweep.name,
-                found=repr(cell.found),
-                remedy="mend the file's copy, name the cell as a sentinel, or leave the rows out with a reason",
+        alike.setdefault(f"{cell.column}{cell.why}", []).append(cell)
+    listed = 0
+    for group in alike.values():
+        everywhere = len(group) > _EVERYWHERE and len(group) > 0.9 * min(rows + count, _SHOWN_CELLS) / len(alike)
+        for cell in group[:1] if everywhere else group:
+            more = f", and so it is in {len(group) - 1} or more further rows" if everywhere else ""
+            reading.findings.append(
+                Finding(
+                    code="bad-cell",
+                    severity="error",
+                    what=f"{cell.why}{more}",
+                    file=name,
+                    line=cell.line or None,
+                    column=cell.column or None,
+                    place=sweep.name,
+                    found=repr(cell.found),
+                    remedy="look at the delimiter and the decimal mark of the dialect first"
+                    if everywhere
+                    else "name the cell as a sentinel, or bring a whole copy of the file",
+                )
             )
-        )
-    if count > len(cells[:_SHOWN_CELLS]):
+        listed += len(group)
+    if count > listed:
         reading.findings.append(
             Finding(
                 code="bad-cell",
                 severity="error",
-                what=f"{count} cells of this file cannot be read; the first {_SHOWN_CELLS} are listed",
+                what=f"{count} cells of this file cannot be read; the first {listed} are listed",
                 file=name,
                 place=sweep.name,
                 remedy="a wrong dialect makes every row wrong: look at the delimiter and the decimal mark first",

@@ -24,7 +24,7 @@ from schemas.cooldown import CooldownSheet
 from schemas.finding import Finding
 from schemas.lineage import AccessionDocument, Software
 
-__all__ = ["Examination", "IngestOutcome", "ingest"]
+__all__ = ["Examination", "IngestOutcome", "ingest", "records_differ"]
 
 _CHUNK = 1 << 20
 
@@ -157,7 +157,7 @@ def ingest(
     with store.writer(f"{name}/{address}") as writer:
         reading = read_cooldown(folder, archived=archived, sink=_Selective(writer, plan), progress=progress)
         progress("checking")
-        reading.findings.extend(_records_differ(reading, archived))
+        reading.findings.extend(records_differ(reading, archived))
         examination = examine(reading)
         if any(finding.severity == "error" for finding in examination.findings):
             writer.abandon()
@@ -259,7 +259,7 @@ def _short(digest: str | None) -> str:
     return "none" if digest is None else digest[:16]
 
 
-def _records_differ(reading: Reading, archived: Archived) -> list[Finding]:
+def records_differ(reading: Reading, archived: Archived) -> list[Finding]:
     """Records whose content is not what the archive holds under the same revision."""
     findings = []
     for record in reading.sheet.records:
