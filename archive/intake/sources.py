@@ -82,9 +82,10 @@ def read_array_source(path: Path, file: str, columns: Sequence[ColumnRequest]) -
     block = Block(first_line=1, columns={}, lines=np.arange(1, rows + 1, dtype=np.int64), sentinel={})
     for number, request in enumerate(columns, start=1):
         values, mask = _checked(request, arrays.get(request.name), number, bad)
-        if request.name in arrays and len(values) < rows:
-            why = f"is missing: the column ends after {len(values)} rows, another has {rows}"
-            bad.add(len(values) + 1, number, str(request.column), "", why)
+        length = len(arrays.get(request.name, block.lines))
+        if length < rows:
+            why = f"is missing: the column ends after {length} rows, another has {rows}"
+            bad.add(length + 1, number, str(request.column), "", why)
         missing = rows - len(values)
         blank: Any = "" if request.kind == "text" else np.nan
         block.columns[request.name] = np.concatenate((values, np.full(missing, blank, dtype=values.dtype)))

@@ -14,10 +14,9 @@ from typing import Any, BinaryIO
 import numpy as np
 import numpy.typing as npt
 import pyarrow as pa
-import pyarrow.compute as pc
 from pyarrow import csv
 
-from archive.intake.cells import as_mask, is_absent, numbers, parsed_number
+from archive.intake.columns import checked_column, stands_as_read
 from archive.intake.dialect import DETAILED, BadCell, BadCells, Block, ColumnRequest, require_usable
 from archive.intake.header import Header
 from archive.intake.lines import BLOCK_BYTES, LineBlocks
@@ -181,10 +180,23 @@ class TableReader:
             except pa.ArrowInvalid:
                 self._typed = False
             else:
-                if self._clean(table):
-                    return table, self._without_ragged(table, ragged, lines)
-        table, ragged = self._parsed(data, typed=False)
-        return table, self._without_ragged(table, ragged, lines)
+                if table.num_rows + len(ragged) == len(lines) and self._clean(table):
+                    return table, self._without_ragged(ragged, lines)
+        try:
+            table, ragged = self._parsed(data, typed=False)
+        except pa.ArrowInvalid as error:
+            return self._nothing(lines, str(error))
+        if table.num_rows + len(ragged) != len(lines):
+            return self._nothing(lines, f"{table.num_rows + len(ragged)} rows on {len(lines)} lines")
+        return table, self._without_ragged(ragged, lines)
+
+    def _nothing(self, lines: npt.NDArray[np.int64], why: str) -> tuple[pa.Table, npt.NDArray[np.int64]]:
+        # No table is known that comes here: `Rows` leaves no line that could be split in two ways. If one does,
+        # none of its rows may be taken for read.
+        sentence = f"begins {len(lines)} rows, to line {lines[-1]}, that cannot be read ({why})"
+        self._bad.add(int(lines[0]), 0, "", "", sentence)
+        nothing = {str(place): pa.array([], pa.string()) for place in self._placed.values()}
+        return pa.table(nothing), lines[:0]
 
     def _parsed(self, data: bytes, *, typed: bool) -> tuple[pa.Table, list[tuple[int, int, str]]]:
         ragged: list[tuple[int, int, str]] = []
@@ -227,25 +239,15 @@ class TableReader:
         return table, ragged
 
     def _clean(self, table: pa.Table) -> bool:
-        """Whether every number can stand as Arrow read it: finite, or a NaN that is to be kept."""
-        for request in self._columns:
-            place = self._placed.get(request.name)
-            if request.kind != "number" or place is None:
-                continue
-            column = table.column(str(place))
-            if not pa.types.is_floating(column.type):
-                continue
-            allowed = pc.is_nan(column) if request.nan == "keep" and not self._names_nan(request) else False
-            if not pc.all(pc.or_(pc.is_finite(column), allowed), min_count=0).as_py():
-                return False
-        return True
-
-    @staticmethod
-    def _names_nan(request: ColumnRequest) -> bool:
-        return any(sentinel.strip().lower().lstrip("+-") == "nan" for sentinel in request.sentinels)
+        """Whether every number can stand as Arrow read it."""
+        return all(
+            stands_as_read(request, table.column(str(self._placed[request.name])))
+            for request in self._columns
+            if request.kind == "number" and request.name in self._placed
+        )
 
     def _without_ragged(
-        self, table: pa.Table, ragged: list[tuple[int, int, str]], lines: npt.NDArray[np.int64]
+        self, ragged: list[tuple[int, int, str]], lines: npt.NDArray[np.int64]
     ) -> npt.NDArray[np.int64]:
         keep = np.ones(len(lines), dtype=np.bool_)
         for number, cells, text in ragged:
@@ -255,66 +257,22 @@ class TableReader:
                 why += "; the last is empty, after a delimiter at the end of the line"
             if cells == 2 * self._header.width and self._rows.delimiter == ",":
                 why += (
-                    "; twice as many, as if decimal commas stood between commas, which cannot be told apart"
+                    "; twice as many, as if decimal commas stood between commas; these cannot be told apart"
                 )
             self._bad.add(int(lines[number - 1]), 0, "", text, why)
-        kept = lines[keep]
-        if (
-            len(kept) != table.num_rows
-        ):  # pragma: no cover - `Rows` leaves no line that Arrow could split in two
-            msg = f"{self._file}: {table.num_rows} rows were read from {len(kept)} lines near line {lines[0]}"
-            raise AssertionError(msg)
-        return kept
+        return lines[keep]
 
     def _column(
         self, request: ColumnRequest, cells: Any, place: int, lines: npt.NDArray[np.int64]
     ) -> tuple[npt.NDArray[Any], npt.NDArray[np.bool_]]:
-        faults: dict[int, str]
-        if pa.types.is_floating(cells.type):
-            values = np.array(cells.to_numpy(zero_copy_only=False), dtype=np.float64)
-            mask = self._equals_sentinel(request, values)
-            faults = {}
-        else:
-            bare = pc.utf8_trim_whitespace(cells)
-            mask = as_mask(pc.is_in(bare, pa.array([s.strip() for s in request.sentinels], pa.string())))
-            if request.kind == "text":
-                text = np.array(cells.to_pylist(), dtype=object)
-                text[mask] = ""
-                return text, mask
-            if request.kind == "number":
-                values, absent, faults = numbers(cells, decimal=self._dialect.decimal, known=mask)
-                mask |= self._equals_sentinel(request, values)
-            else:
-                absent = is_absent(bare)
-                values, faults = self._seconds(cells, request, mask)
-            if request.nan == "keep":
-                faults = {index: why for index, why in faults.items() if not absent[index]}
-            else:
-                empty = as_mask(pc.equal(bare, ""))
-                faults |= {i: "is empty" if empty[i] else "is NaN" for i in np.flatnonzero(absent).tolist()}
+        values, mask, faults = checked_column(
+            request, cells, decimal=self._dialect.decimal, stamps=self._stamps
+        )
         label = self._header.label(place)
-        for count, index in enumerate(sorted(index for index in faults if not mask[index])):
+        for count, index in enumerate(sorted(faults)):
             found = cells[index].as_py() if count < DETAILED else ""
             self._bad.add(int(lines[index]), place + 1, label, found, faults[index])
-        values[mask] = np.nan
         return values, mask
-
-    def _seconds(
-        self, cells: Any, request: ColumnRequest, mask: npt.NDArray[np.bool_]
-    ) -> tuple[npt.NDArray[np.float64], dict[int, str]]:
-        if self._stamps is None:  # pragma: no cover - made in __init__ whenever a time is asked for
-            msg = "a time column without a time format"
-            raise AssertionError(msg)
-        values, faults = self._stamps.seconds(cells, mask)
-        if self._dialect.time_format == "epoch":
-            mask |= self._equals_sentinel(request, numbers(cells, decimal=self._dialect.decimal)[0])
-        return values, faults
-
-    def _equals_sentinel(
-        self, request: ColumnRequest, values: npt.NDArray[np.float64]
-    ) -> npt.NDArray[np.bool_]:
-        stated = [parsed_number(sentinel, decimal=self._dialect.decimal) for sentinel in request.sentinels]
-        return np.isin(values, [value for value in stated if value is not None])
 
 
 def read_header(path: Path, dialect: Dialect) -> tuple[str, ...]:

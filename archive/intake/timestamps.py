@@ -9,7 +9,6 @@ Written after RFC 3339 (2002), sections 4.3, 5.6 and 5.7, and PEP 495 (2015) for
 
 from __future__ import annotations
 
-import re
 from datetime import datetime, timedelta, tzinfo
 from typing import Any, Final, Literal
 from zoneinfo import ZoneInfo
@@ -21,35 +20,11 @@ import pyarrow.compute as pc
 
 from archive.errors import BadRequest
 from archive.intake.cells import as_mask, numbers
+from archive.intake.time_formats import time_pattern
 
 __all__ = ["LATEST", "TimeStamps"]
 
-_ISO: Final = (
-    r"^(?P<Y>[0-9]{4})-(?P<m>[0-9]{2})-(?P<d>[0-9]{2})[Tt ](?P<H>[0-9]{2}):(?P<M>[0-9]{2})"
-    r"(?::(?P<S>[0-9]{2})(?:[.,](?P<f>[0-9]{1,9}))?)?(?: ?(?P<z>[Zz]|[+-][0-9]{2}(?::?[0-9]{2})?))?$"
-)
 _MONTHS: Final = ("jan", "feb", "mar", "apr", "may", "jun", "jul", "aug", "sep", "oct", "nov", "dec")
-# Directives of POSIX strptime (The Open Group Base Specifications, issue 8) with Python's %f and %z.
-_DIRECTIVES: Final = {
-    "Y": r"(?P<Y>[0-9]{4})",
-    "y": r"(?P<y>[0-9]{2})",
-    "m": r"(?P<m>[0-9]{1,2})",
-    "b": r"(?P<b>[A-Za-z]{3,9})\.?",
-    "B": r"(?P<b>[A-Za-z]{3,9})\.?",
-    "d": r"(?P<d>[0-9]{1,2})",
-    "j": r"(?P<j>[0-9]{1,3})",
-    "H": r"(?P<H>[0-9]{1,2})",
-    "I": r"(?P<I>[0-9]{1,2})",
-    "M": r"(?P<M>[0-9]{1,2})",
-    "S": r"(?P<S>[0-9]{1,2})",
-    "f": r"(?P<f>[0-9]{1,9})",
-    "p": r"(?P<p>[AaPp][Mm])",
-    "z": r"(?P<z>[Zz]|[+-][0-9]{2}(?::?[0-9]{2})?)",
-    "a": r"[A-Za-z]{2,9}\.?",
-    "A": r"[A-Za-z]{2,9}\.?",
-    "%": "%",
-}
-_LONG: Final = {"%T": "%H:%M:%S", "%R": "%H:%M", "%F": "%Y-%m-%d"}
 _EPOCH: Final = datetime(1970, 1, 1)  # noqa: DTZ001 - local times are naive until their zone is looked up
 LATEST: Final = 253402300800.0
 """POSIX time of 10000-01-01T00:00:00Z; a larger number of seconds is no date that RFC 3339 can write."""
@@ -106,7 +81,7 @@ class TimeStamps:
         self._fold = fold
         self._zone_name = time_zone
         self._zone = None if time_zone is None else _zone(time_zone)
-        self._pattern = None if time_format == "epoch" else _pattern(time_format)
+        self._pattern = None if time_format == "epoch" else time_pattern(time_format)
         if (
             self._pattern is not None
             and time_format != "iso8601"
@@ -118,6 +93,11 @@ class TimeStamps:
                 field="dialect.time_zone",
                 expected="a zone such as `Europe/Helsinki` or `UTC`",
             )
+
+    @property
+    def epoch(self) -> bool:
+        """Whether the stamps are numbers of seconds."""
+        return self._pattern is None
 
     def seconds(
         self, texts: pa.StringArray, known: npt.NDArray[np.bool_] | None = None
@@ -225,51 +205,6 @@ def _zone(name: str) -> tzinfo:
             found=name,
             expected="a zone of the IANA time zone database, such as `Europe/Helsinki`",
         ) from None
-
-
-def _pattern(time_format: str) -> str:
-    """Return the regular expression of a format, refusing formats that name no day."""
-    if time_format == "iso8601":
-        return _ISO
-    spelled = time_format
-    for short, long in _LONG.items():
-        spelled = spelled.replace(short, long)
-    pieces: list[str] = []
-    used: list[str] = []
-    for directive, blank, literal in re.findall(r"%(.?)|(\s+)|([^%\s]+)", spelled):
-        if blank:
-            pieces.append(r"\s+")
-        elif literal:
-            pieces.append(re.escape(literal))
-        elif directive not in _DIRECTIVES:
-            raise _unreadable(time_format, f"%{directive} is not a directive that is read here")
-        else:
-            used.append("b" if directive == "B" else directive)
-            pieces.append(_DIRECTIVES[directive])
-    twice = sorted({name for name in used if used.count(name) > 1 and name not in "%aA"})
-    if twice:
-        raise _unreadable(time_format, f"%{twice[0]} stands twice")
-    has = set(used)
-    day = "j" in has or ("d" in has and bool(has & {"m", "b"}))
-    if not day or not has & {"Y", "y"}:
-        raise _unreadable(time_format, "it names no year and day, and the day is never guessed from the file")
-    for clash in ({"Y", "y"}, {"m", "b"}, {"j", "d"}, {"H", "I"}):
-        if clash <= has:
-            raise _unreadable(
-                time_format, f"{' and '.join('%' + name for name in sorted(clash))} say the same twice"
-            )
-    if ("I" in has) != ("p" in has):
-        raise _unreadable(time_format, "%I (twelve hours) and %p (am or pm) belong together")
-    return "^" + "".join(pieces) + "$"
-
-
-def _unreadable(time_format: str, why: str) -> BadRequest:
-    return BadRequest(
-        f"this time format cannot be used: {why}",
-        field="dialect.time_format",
-        found=time_format,
-        expected="`iso8601`, `epoch`, or a pattern such as `%d.%m.%Y %H:%M:%S`",
-    )
 
 
 def _integer(texts: Any) -> Ints:

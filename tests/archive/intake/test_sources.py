@@ -373,3 +373,25 @@ def test_a_name_that_contradicts_the_bytes_is_refused(tmp_path: Path) -> None:
 )
 def test_the_name_says_which_reader(file: str, expected: bool) -> None:  # noqa: FBT001 - a table of cases
     assert is_array_source(file) is expected
+
+
+def test_times_and_text_with_sentinels_of_a_numpy_file(tmp_path: Path) -> None:
+    path = tmp_path / "run.npz"
+    np.savez(
+        path,
+        t=np.array(["1970-01-01T00:00:01Z", "never", ""]),
+        n=np.array([1.0, np.nan, 2.0]),
+        b=np.array([b"\xff", b"a", b"b"]),
+    )
+    columns = [
+        ColumnRequest("t", "t", "time", ("never",), "keep"),
+        number("n", "NaN", name="n"),
+        ColumnRequest("b", "b", "text"),
+        ColumnRequest("w", "n", "text"),
+    ]
+    block = read_array_source(path, "run.npz", columns)
+    assert block.columns["t"][0] == 1.0
+    assert block.sentinel["t"].tolist() == [False, True, False]
+    assert block.sentinel["n"].tolist() == [False, True, False]
+    assert block.columns["b"].tolist() == ["", "", ""]
+    assert [(cell.line, cell.column) for cell in block.bad_cells] == [(0, "b"), (0, "n")]

@@ -12,6 +12,7 @@ from pathlib import Path
 from typing import Any
 
 import numpy as np
+import pyarrow as pa
 import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
@@ -322,11 +323,17 @@ def test_listeners_get_every_byte_as_it_stands_in_the_file(pack: Callable[[bytes
     assert digest.digest() == hashlib.sha256(stored).digest()
 
 
-def test_listeners_get_a_file_whole_that_is_no_table() -> None:
+@pytest.mark.parametrize("block_bytes", [1 << 20, BLOCK], ids=["small blocks", "one block"])
+def test_listeners_get_a_file_whole_that_is_no_table(block_bytes: int) -> None:
     stored = b"PK\x03\x04" + bytes(3 << 20)
     seen = bytearray()
     reader = TableReader(
-        io.BytesIO(stored), file="f", dialect=Dialect(), columns=[number("a")], tee=[seen.extend]
+        io.BytesIO(stored),
+        file="f",
+        dialect=Dialect(),
+        columns=[number("a")],
+        tee=[seen.extend],
+        block_bytes=block_bytes,
     )
     assert list(reader.blocks()) == []
     assert (seen == stored, reader.bad_cell_count) == (True, 1)
@@ -439,3 +446,18 @@ def test_every_line_is_a_row_or_a_finding_or_nothing(cells: list[str], block_byt
     for line, value in zip(lines, values["x"].tolist(), strict=True):
         # Python's own reading of the same cell is the outside check.
         assert math.isnan(value) if line in bad else value == float(cells[line - 1].strip().strip('"'))
+
+
+@pytest.mark.parametrize("fault", ["raises", "loses rows"])
+def test_rows_that_arrow_does_not_split_as_expected_are_never_taken(
+    fault: str, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    def read_csv(*_: Any, **__: Any) -> pa.Table:
+        if fault == "raises":
+            raise pa.ArrowInvalid("no")
+        return pa.table({"0": pa.array(["1"])})
+
+    monkeypatch.setattr("archive.intake.tables.csv.read_csv", read_csv)
+    values, _, lines, reader = read(b"a\n1\n2\n", number("a"))
+    assert (values["x"].tolist(), lines) == ([], [])
+    assert [(cell.line, "cannot be read" in cell.why) for cell in reader.bad_cells] == [(2, True)]
