@@ -183,7 +183,7 @@ def complex_stiffness(
     # Below the exponent's limit a free term of zero is exact to double precision.
     free = np.exp(np.clip(2 * (l_D - l_plus), -700.0, 300.0)) * np.isfinite(l_plus)
     inverse = 1 + start.x.ravel() + bound + 1j * (4 * math.pi * F / 7) * free
-    return ((2 / math.pi) / inverse).reshape(start.x.shape)
+    return np.asarray((2 / math.pi) / inverse, dtype=np.complex128).reshape(start.x.shape)
 
 
 def reduced_response(ratio: npt.ArrayLike, stiffness: npt.ArrayLike) -> tuple[FloatArray, FloatArray]:
@@ -215,11 +215,8 @@ def dynamic_areal_density(temperature: npt.ArrayLike, stiffness: npt.ArrayLike) 
         K.
     stiffness : array_like of complex
     """
-    return (
-        STIFFNESS_UNIT
-        * np.asarray(temperature, dtype=np.float64)
-        * np.asarray(stiffness, dtype=np.complex128)
-    )
+    per_stiffness = STIFFNESS_UNIT * np.asarray(temperature, dtype=np.float64)
+    return np.asarray(per_stiffness * np.asarray(stiffness, dtype=np.complex128), dtype=np.complex128)
 
 
 def oscillator_response(
@@ -250,7 +247,7 @@ def oscillator_response(
     ratio = area_per_mass * np.asarray(areal_density, dtype=np.complex128)
     if not exact:
         return ratio.real / 2, -ratio.imag
-    frequency: ComplexArray = 1 / np.sqrt(1 - ratio)
+    frequency = np.asarray(1 / np.sqrt(1 - ratio), dtype=np.complex128)
     return 1 - 1 / frequency.real, -2 * frequency.imag / frequency.real
 
 

@@ -318,13 +318,19 @@ def _solve(
         width = np.where(np.isfinite(upper - lower), upper - lower, 1.0)
         start = np.clip(start, lower + 1e-10 * width, upper - 1e-10 * width)
 
+    # The solver's gradient tolerance is absolute, so it must not see the unit of the data.
+    unit = float(np.linalg.norm(calls.bounded(start))) or 1.0
+
+    def residuals(point: FloatArray) -> FloatArray:
+        return calls.bounded(point) / unit
+
     def jacobian(point: FloatArray) -> FloatArray:
-        return _jacobian(calls, point, lower, upper)
+        return _jacobian(calls, point, lower, upper) / unit
 
     # Cubes overflow inside the solver when a trial step was wild; it recovers by itself.
     with np.errstate(all="ignore"):
         outcome = least_squares(
-            calls.bounded,
+            residuals,
             start,
             jac=jacobian,
             bounds=bounds,

@@ -113,7 +113,7 @@ def test_badly_scaled_problem_converges():
     t = np.linspace(0.0, 1e-6, 50)
     found = fit(
         lambda t, p: p[0] * np.exp(-t / p[1]),
-        [Parameter("height", 1e-15), Parameter("time", 1e-6)],
+        [Parameter("height", 1e-12), Parameter("time", 1e-7)],
         t,
         3e-12 * np.exp(-t / 2e-7),
         absolute=False,
