@@ -167,6 +167,7 @@ def molar_density(
         high=limit,
         unit="",
         formula="the virial equation cut after B",
+        hint="for saturated vapour use saturated_molar_density",
     )
     if order == "first":
         return (ideal / (1 + B * ideal))[()]

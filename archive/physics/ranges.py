@@ -72,7 +72,8 @@ def within(
         others = flat.size - 1
         more = f" (and {others} more value{'s' if others > 1 else ''})" if others else ""
         advice = f"; {hint}" if hint else ""
+        of_unit = f" {unit}" if unit else ""
         raise ValueError(
-            f"{where} = {found:.8g} {unit} is outside the range {low:.8g} to {high:.8g} {unit} of {formula}{more}{advice}"
+            f"{where} = {found:.8g}{of_unit} is outside the range {low:.8g} to {high:.8g}{of_unit} of {formula}{more}{advice}"
         )
     return array

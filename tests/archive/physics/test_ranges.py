@@ -23,3 +23,8 @@ def test_first_index_of_a_table_and_the_count_are_named() -> None:
 
 def test_floats_accepts_integers() -> None:
     assert floats(3).dtype == np.float64
+
+
+def test_a_pure_number_has_no_unit_in_the_message() -> None:
+    with pytest.raises(ValueError, match=r"^x = 3 is outside the range 0 to 1 of a law$"):
+        within(3.0, "x", low=0, high=1, unit="", formula="a law")

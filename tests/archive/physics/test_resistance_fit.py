@@ -129,6 +129,7 @@ def test_curve_covers_the_points_and_no_more() -> None:
     fit = resistance_fit.fit_chebyshev(R, T)
     assert evaluate(fit.curve, [R.min(), R.max(), R.max() * 1.01]).outside.tolist() == [False, False, True]
     assert np.isnan(fit.standard_uncertainty([R.max() * 1.01, 1000.0])).tolist() == [True, False]
+    assert np.isnan(fit.standard_uncertainty(1.0))
     assert fit.largest_in_uncertainties is None
     assert fit.reduced_chi2 is None
 

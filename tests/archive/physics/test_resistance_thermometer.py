@@ -146,6 +146,20 @@ def test_outside_is_marked_and_never_extrapolated(curve) -> None:
     assert np.isnan(log_sensitivity(curve, R)).tolist() == np.isnan(result.temperature).tolist()
 
 
+@pytest.mark.parametrize("R", [1.0, [1.0, 2.0], float("nan")], ids=["one", "all", "missing"])
+def test_nothing_inside_is_no_error(R) -> None:
+    assert np.all(np.isnan(evaluate(MOTT, R).temperature))
+    assert np.all(np.isnan(log_sensitivity(MOTT, R)))
+
+
+def test_chebyshev_keeps_to_the_span_of_its_points() -> None:
+    curve = ChebyshevCurve(
+        COEFFICIENTS, lower=4.5302, upper=9.7922, logarithm="ln", span=(93.71179, 17714.73358)
+    )
+    assert evaluate(curve, [93.5, 100.0, 17800.0]).outside.tolist() == [True, False, True]
+    assert evaluate(CHEBYSHEV, [93.5, 17800.0]).outside.tolist() == [False, False]
+
+
 def test_a_narrower_certificate_is_kept_to() -> None:
     result = evaluate(MOTT, resistance(MOTT, [0.06, 0.5, 4.5]), temperature_span=(0.1, 4.0))
     assert result.outside.tolist() == [True, False, True]

@@ -7,9 +7,11 @@ import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+from pydantic import TypeAdapter
 
 from archive.physics import scales, tables_t58
 from archive.physics.scales import SCALES, convert, estimate_from_t58
+from schemas.thermometer import ScaleName
 
 PUBLISHED = Path(__file__).parents[2] / "published" / "thermometry"
 
@@ -141,3 +143,8 @@ def test_t58_estimate_is_labelled_and_wider() -> None:
 def test_t58_estimate_is_refused_where_a_conversion_exists() -> None:
     with pytest.raises(ValueError, match=r"temperature\[1\] = 2 K has a confirmed conversion"):
         estimate_from_t58([1.0, 2.0])
+
+
+@pytest.mark.parametrize("scale", SCALES, ids=lambda s: s.name)
+def test_records_know_every_scale_that_is_converted(scale: scales.Scale) -> None:
+    assert TypeAdapter(ScaleName).validate_python(scale.name) == scale.name
