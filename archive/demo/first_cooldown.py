@@ -58,6 +58,7 @@ _BASE: Final = 0.020
 _CROSSED_OUT: Final = 9
 """Place of the dose that was crossed out: it has a number, and no gas went in."""
 
+_POINTS: Final = 28
 _REMOVED_UNCERTAINTY: Final = 0.03e-6
 _RECOVERED_UNCERTAINTY: Final = 0.12e-6
 
@@ -198,12 +199,16 @@ def _film_file(seed: int, sweep: str, begin: str, *, down: bool = False) -> byte
 
 def _isotherm_file(seed: int) -> bytes:
     rng = generator(seed, NAME, "s001")
-    relative, amount = isotherm(TO4.film.area, rng, points=48)
+    relative, amount = isotherm(TO4.film.area, rng, points=_POINTS)
     zero = (0.84 + 0.05 * rng.standard_normal()) * MBAR
     columns = isotherm_columns(
-        relative, amount, saturation=NITROGEN_PRESSURE, zero=zero, noise=0.01 * MBAR * rng.standard_normal(48)
+        relative,
+        amount,
+        saturation=NITROGEN_PRESSURE,
+        zero=zero,
+        noise=0.01 * MBAR * rng.standard_normal(_POINTS),
     )
-    times = times_from(at("2025-03-12 08:00"), 48, cadence=1500.0)
+    times = times_from(at("2025-03-12 08:00"), _POINTS, cadence=1500.0)
     return latin_table(times, columns, zone=ZONE, title="sorption set - N2 on polyimide discs - valve plan B")
 
 

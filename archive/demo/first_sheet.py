@@ -176,7 +176,7 @@ time_zone = "Australia/Hobart"
 time       = { column = "time", quantity = "instant" }
 pressure   = { column = "p (mbar)", quantity = "pressure", unit = "mbar", convention = "absolute", uncertainty = "0.01 mbar", gauge = "G2" }
 saturation = { column = "p0 (mbar)", quantity = "pressure", unit = "mbar", convention = "absolute", description = "saturation pressure over the bath" }
-amount     = { column = "n (µmol)", quantity = "amount", unit = "umol", uncertainty = "0.15 %" }
+amount     = { column = "n (µmol)", quantity = "amount", unit = "umol", uncertainty = "0.025 %" }
 
 # ---------------------------------------------------------------- gas
 
@@ -184,7 +184,7 @@ amount     = { column = "n (µmol)", quantity = "amount", unit = "umol", uncerta
 name = "G1"                    # capacitance gauge on the dosing volume
 range = "10 Torr"
 zero = "$zero Torr"            # pumped overnight, read on 18 March
-uncertainty = "0.00038 Torr"
+uncertainty = "0.00015 Torr"
 relative_uncertainty = 8e-4
 calibration = "works certificate 2023"
 

@@ -39,7 +39,7 @@ NITROGEN_PRESSURE: Final = 99.85e3
 ROOM: Final = 295.2
 """K, the dosing volume."""
 
-THERMOMETER: Final = 0.05
+THERMOMETER: Final = 0.01
 """K, standard uncertainty of a reading of the room thermometer."""
 
 _LEFT: Final = 55.0
@@ -112,9 +112,9 @@ def isotherm(
     rng: np.random.Generator,
     *,
     points: int,
-    heat: float = 90.0,
+    heat: float = 60.0,
     pore_amount: float | None = None,
-    noise: float = 1.5e-3,
+    noise: float = 2.5e-4,
 ) -> tuple[Floats, Floats]:
     """Return an N2 isotherm: true relative pressure, and the adsorbed amount in mol as measured.
 

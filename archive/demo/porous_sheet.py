@@ -165,13 +165,13 @@ time_zone = "Australia/Hobart"
 time       = { column = "time", quantity = "instant" }
 pressure   = { column = "p (mbar)", quantity = "pressure", unit = "mbar", convention = "absolute", uncertainty = "0.01 mbar", gauge = "G2" }
 saturation = { column = "p0 (mbar)", quantity = "pressure", unit = "mbar", convention = "absolute", description = "saturation pressure over the bath" }
-amount     = { column = "n (µmol)", quantity = "amount", unit = "umol", uncertainty = "0.15 %" }
+amount     = { column = "n (µmol)", quantity = "amount", unit = "umol", uncertainty = "0.025 %" }
 
 [[gauge]]
 name = "G3"
 range = "100 mbar"
 zero = "$zero mbar"
-uncertainty = "0.002 mbar"
+uncertainty = "0.0005 mbar"
 relative_uncertainty = 8e-4
 
 [[gauge]]

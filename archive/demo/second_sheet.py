@@ -111,7 +111,7 @@ amplitude = { column = "A_mV", quantity = "amplitude", unit = "mV", convention =
 name = "G1"
 range = "10 Torr"
 zero = "$zero Torr"
-uncertainty = "0.00038 Torr"
+uncertainty = "0.00015 Torr"
 relative_uncertainty = 8e-4
 calibration = "works certificate 2023"
 

@@ -199,7 +199,7 @@ class CellTruth:
     area_uncertainty: float = 0.02
     volume_uncertainty: float = 8e-4
     gauge_gain: float = 8e-4
-    gauge_reading: float = 0.05
+    gauge_reading: float = 0.02
     gauge_zero: float = 1.9
     zero_uncertainty: float = 0.05
     quality_uncertainty: float = 2e-3
@@ -298,7 +298,7 @@ PG2: Final = CellTruth(
     film=PorousFilm(area=108.6),
     sensor=SensorTruth("GE-1", (-1.6125, -0.5238, 0.0521, -0.0147), float(np.log(1000.0)), 0.055, 1.0),
     doser_volume=1.0021e-3,
-    gauge_reading=0.2,
+    gauge_reading=0.05,
     gauge_zero=-3.5,
     zero_uncertainty=0.2,
 )
