@@ -6,10 +6,13 @@ What a step takes is written as a small text:
 |---|---|
 | `channel:NAME` | channel of the sweep, in SI units, with its standard uncertainty |
 | `channel:@thermometer` | the channel whose temperature counts |
+| `channel:@KIND` | the only channel of a quantity kind, e.g. `channel:@period` |
 | `sheet:NAME` | a value that the sheet or the records give for this sweep, e.g. `sheet:coverage`, `sheet:cell.gap` |
 | `need:NAME#OUTPUT` | an output of another reduction, named in `needs` |
 | `calibration:@thermometer` | the calibration in force for the counting thermometer |
 | anything else | an output of an earlier step of this plan |
+
+Alternatives are parted by ` | `; the first that exists is taken.
 """
 
 from __future__ import annotations
@@ -24,7 +27,8 @@ from schemas.sweep import SweepKind
 __all__ = ["Applies", "Need", "Plan", "PlanStep"]
 
 _Key = Annotated[str, StringConstraints(pattern=r"^[A-Za-z][A-Za-z0-9_]{0,63}$")]
-_Source = Annotated[str, StringConstraints(pattern=r"^[A-Za-z][A-Za-z0-9_]*(:[@A-Za-z0-9_.-]+(#[A-Za-z0-9_.]+)?)?$")]
+_ONE = r"[A-Za-z][A-Za-z0-9_]*(:[@A-Za-z0-9_.-]+(#[A-Za-z0-9_.]+)?)?"
+_Source = Annotated[str, StringConstraints(pattern=rf"^{_ONE}( \| {_ONE})*$", max_length=400)]
 
 
 class Applies(Record):
@@ -42,6 +46,7 @@ class Need(Record):
 
     plan: Name
     relation: Literal["same-cell", "same-sweep", "same-cell-any-cooldown"] = "same-cell"
+    optional: bool = Field(default=False, description="True: without it, inputs that name it do not exist.")
 
 
 class PlanStep(Record):
@@ -52,6 +57,7 @@ class PlanStep(Record):
     take: dict[_Key, _Source] = Field(default_factory=dict)
     set: dict[_Key, bool | int | float | str | tuple[float, ...] | tuple[str, ...]] = Field(default_factory=dict)
     give: dict[_Key, _Key] = Field(default_factory=dict, description="Output of the step: its name in this plan.")
+    optional: bool = Field(default=False, description="True: left out, and recorded as left out, when an input does not exist.")
 
 
 class Plan(NamedRecord):
@@ -67,7 +73,7 @@ class Plan(NamedRecord):
     def _names_once(self) -> Plan:
         seen: set[str] = set()
         for number, step in enumerate(self.step, 1):
-            for source in step.take.values():
+            for source in (one for text in step.take.values() for one in text.split(" | ")):
                 if ":" not in source and source not in seen:
                     raise ValueError(f"step {number} ({step.use}) takes {source!r}, which no earlier step gives")
                 if source.startswith("need:") and source[5:].partition("#")[0] not in self.needs:

@@ -1,0 +1,34 @@
+"""Digests of arrays and plans.
+
+The digest of an array is the SHA-256 of its little-endian float64 values, the same that a sealed file keeps beside
+the array, so that either can be checked against the other.
+"""
+
+from __future__ import annotations
+
+import hashlib
+import json
+
+import numpy as np
+import numpy.typing as npt
+from pydantic import BaseModel
+
+__all__ = ["array_digest", "record_digest"]
+
+
+def array_digest(values: npt.ArrayLike) -> str:
+    """Return the SHA-256 of the values as little-endian float64.
+
+    Examples
+    --------
+    >>> array_digest([1.0, 2.0])[:12]
+    '73a0c3cd7e3f'
+    """
+    array = np.ascontiguousarray(np.asarray(values, dtype=np.float64).astype("<f8"))
+    return hashlib.sha256(array.tobytes()).hexdigest()
+
+
+def record_digest(record: BaseModel) -> str:
+    """Return the SHA-256 of a record as JSON with sorted keys and no white space."""
+    text = json.dumps(record.model_dump(mode="json"), sort_keys=True, separators=(",", ":"), ensure_ascii=False)
+    return hashlib.sha256(text.encode()).hexdigest()

@@ -1,0 +1,23 @@
+"""What wrote a reduction: versions of Stillroom, Python, and the libraries whose rounding is in the numbers."""
+
+from __future__ import annotations
+
+import platform
+from importlib import metadata
+
+from schemas.lineage import Software
+
+__all__ = ["software"]
+
+PACKAGES = ("numpy", "scipy", "pint", "pydantic", "h5py")
+"""Libraries that can change a number or the reading of one."""
+
+
+def software() -> Software:
+    """Return the versions in use."""
+    return Software(
+        stillroom=metadata.version("stillroom"),
+        python=platform.python_version(),
+        platform=f"{platform.system()} {platform.machine()}",
+        packages={name: metadata.version(name) for name in PACKAGES},
+    )
