@@ -178,7 +178,7 @@ def _written_scalar(group: h5py.Group, name: str, data: NDArray[Any]) -> h5py.Da
     space = h5py.h5s.create(h5py.h5s.SCALAR)
     kind = h5py.h5t.py_create(np.dtype(dtype), logical=True)
     dataset = h5py.Dataset(h5py.h5d.create(parent.id, leaf.encode(), kind, space, layout))
-    dataset[()] = data
+    dataset.id.write(h5py.h5s.ALL, h5py.h5s.ALL, np.ascontiguousarray(data), kind)
     mark(dataset, "sha256", hashlib.sha256(data.tobytes()).hexdigest())
     return dataset
 

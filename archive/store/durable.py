@@ -33,7 +33,7 @@ import time
 from collections.abc import Iterator
 from pathlib import Path
 
-from archive.errors import AlreadySealed, ArchiveBusy, BadRequest
+from archive.errors import AlreadySealed, ArchiveBusy, ArchiveError, BadRequest
 from archive.store.names import is_key
 
 if sys.platform == "win32":  # pragma: no cover - the other system
@@ -80,9 +80,10 @@ def settle(staged: Path) -> None:
     -----
     Who may read it is what the user's umask left to the staging file.
     """
-    os.chmod(staged, staged.stat().st_mode & 0o444)  # noqa: PTH101 - crash tests replace this module's `os`
-    descriptor = os.open(staged, os.O_RDONLY)
+    # Opened before the permission goes: Windows syncs only what is open for writing.
+    descriptor = os.open(staged, os.O_RDWR)
     try:
+        os.chmod(staged, staged.stat().st_mode & 0o444)  # noqa: PTH101 - crash tests replace this module's `os`
         _sync(descriptor)
         if hasattr(os, "posix_fadvise"):  # so that reading it back reads the disk
             os.posix_fadvise(descriptor, 0, 0, os.POSIX_FADV_DONTNEED)
@@ -181,6 +182,8 @@ def archive_lock(root: Path, *, wait_s: float = 5.0) -> Iterator[None]:
     ------
     ArchiveBusy
         If another process, or another part of this one, still writes after that time.
+    ArchiveError
+        If the folder is not there or may not be written to.
 
     Notes
     -----
@@ -188,7 +191,12 @@ def archive_lock(root: Path, *, wait_s: float = 5.0) -> Iterator[None]:
     what it says about the holder is for people only. It is not reentrant.
     """
     path = (root / LOCK_NAME).resolve()
-    descriptor = os.open(path, os.O_RDWR | os.O_CREAT, 0o664)
+    try:
+        descriptor = os.open(path, os.O_RDWR | os.O_CREAT, 0o664)
+    except OSError as error:
+        raise ArchiveError(
+            "the archive cannot be locked for writing", file=str(path), found=error.strerror
+        ) from error
     deadline, owner = time.monotonic() + wait_s, os.getpid()
     try:
         while not _locked(descriptor):

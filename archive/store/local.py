@@ -57,7 +57,11 @@ class _LocalWriter(SealedWriter):
         self._root, self._final = store.root, store.path(key)
         with writing(self._final):
             staged = durable.staging_path(self._root, key)
-        super().__init__(staged, key)
+        try:
+            super().__init__(staged, key)
+        except BaseException:  # HDF5 may have made the file before it failed
+            durable.discard(staged)
+            raise
 
     def seal(self) -> SealedFile:
         """Finish, read back, and give the file its name."""
