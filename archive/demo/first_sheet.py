@@ -175,7 +175,7 @@ time_zone = "Australia/Hobart"
 [layout.sorption.channels]
 time       = { column = "time", quantity = "instant" }
 pressure   = { column = "p (mbar)", quantity = "pressure", unit = "mbar", convention = "absolute", uncertainty = "0.01 mbar", gauge = "G2" }
-saturation = { column = "p0 (mbar)", quantity = "pressure", unit = "mbar", convention = "absolute", description = "saturation pressure over the bath" }
+saturated_pressure = { column = "p0 (mbar)", quantity = "pressure", unit = "mbar", convention = "absolute", description = "saturation pressure over the bath" }
 amount     = { column = "n (µmol)", quantity = "amount", unit = "umol", uncertainty = "0.025 %" }
 
 # ---------------------------------------------------------------- gas

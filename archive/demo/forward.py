@@ -172,7 +172,7 @@ def sweep_temperatures(transition: float, *, base: float = 0.055, rows: int = 32
         [
             np.linspace(base, 0.95 * transition, rows - fine - warm, endpoint=False),
             np.linspace(0.95 * transition, 1.05 * transition, fine, endpoint=False),
-            np.linspace(1.05 * transition, 1.30 * transition, warm),
+            np.linspace(1.05 * transition, 1.27 * transition, warm),
         ]
     )
 
@@ -199,7 +199,7 @@ def film_sweep(
     transition = transition_temperature(cell, coverage)
     if not transition > 0.1:
         raise ValueError(f"coverage: found {coverage}, expected one whose film flows at 0.1 K")
-    base = max(0.055, 1.04 * cell.sensor.low)
+    base = max(0.055, 1.08 * cell.sensor.low)
     T = sweep_temperatures(transition, base=base, rows=rows)
     return oscillator_record(cell, T[::-1] if down else T, coverage, rng)
 

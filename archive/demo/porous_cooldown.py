@@ -152,7 +152,9 @@ def _film_file(seed: int, sweep: str, begin: str) -> bytes:
 
 
 def _files(seed: int) -> dict[str, bytes]:
-    empty = oscillator_record(PG2, np.linspace(_BASE, 0.975, 240), 0.0, generator(seed, NAME, "s002"))
+    empty = oscillator_record(
+        PG2, np.linspace(1.03 * PG2.sensor.low, 0.975, 240), 0.0, generator(seed, NAME, "s002")
+    )
     elapsed, magnitude, _ = ringdown(PG2, 0.100, 0.0, generator(seed, NAME, "s004"))
     drive = drive_sweep(PG2, 0.100, 31.0e-6, generator(seed, NAME, "s009"))
     return {

@@ -271,9 +271,7 @@ TO4: Final = CellTruth(
         rim_velocity=0.18e-3,
     ),
     film=PlanarFilm(area=1.607),
-    sensor=SensorTruth(
-        "RX-2", (-1.6137, -2.0140, 0.6032, -0.3124, 0.0615), float(np.log(5000.0)), 0.015, 1.0
-    ),
+    sensor=SensorTruth("RX-2", (-1.6104, -2.0667, 0.5896, -0.1858), float(np.log(5000.0)), 0.015, 1.0),
     doser_volume=25.06e-6,
 )
 """Stack of polyimide discs on a beryllium copper rod, near 1 kHz."""

@@ -68,7 +68,7 @@ def period_drop(cell, stated, loading, seed, coverage):
 
 
 def planar_pulls(seed):
-    """Pulls of mass sensitivity, chi, inert coverage and T_KT of one laboratory."""
+    """Return the pulls of mass sensitivity, chi, inert coverage and T_KT of one laboratory."""
     cell = TO4
     rng = generator(seed, "sheet")
     stated = Stated.drawn(cell, rng)
@@ -110,7 +110,7 @@ def planar_pulls(seed):
 
 @pytest.fixture(scope="module")
 def planar():
-    """Pulls of all laboratories, by quantity."""
+    """Compute the pulls of all laboratories, by quantity."""
     each = [planar_pulls(seed) for seed in range(LABORATORIES)]
     return {name: np.array([pulls[name] for pulls in each]) for name in each[0]}
 
@@ -121,7 +121,7 @@ def test_the_discs_give_back_their_truth(planar, name):
 
 
 def porous_pulls(seed):
-    """Pulls of T_c and exponent of one laboratory."""
+    """Return the pulls of T_c and exponent of one laboratory."""
     cell = PG2
     stated = Stated.drawn(cell, generator(seed, "sheet"))
     coverage = POROUS_COVERAGES["s007"]
