@@ -167,7 +167,11 @@ def fit(
     def residuals(values: FloatArray) -> FloatArray:
         return (observed - model(x, values)) * weights
 
-    result = fit_residuals(residuals, parameters, absolute=absolute, max_evaluations=max_evaluations)
+    # What double precision leaves of the data: a smaller gradient is no sign of a bad fit.
+    rounding = 8 * float(np.finfo(float).eps) * float(np.linalg.norm(observed * weights))
+    result = fit_residuals(
+        residuals, parameters, absolute=absolute, max_evaluations=max_evaluations, rounding=rounding
+    )
     return FitResult(**{**vars(result), "residuals": result.residuals / weights})
 
 
@@ -177,6 +181,7 @@ def fit_residuals(
     *,
     absolute: bool,
     max_evaluations: int = 20_000,
+    rounding: float = 0.0,
 ) -> FitResult:
     """Return the fit that makes the sum of squares of a residual function least.
 
@@ -186,6 +191,8 @@ def fit_residuals(
         Takes the parameter values, returns weighted residuals (observed minus fitted over uncertainty).
     parameters, absolute, max_evaluations
         As in `fit`.
+    rounding : float
+        Length of the residual vector that is rounding of the data alone.
 
     Returns
     -------
@@ -232,9 +239,9 @@ def fit_residuals(
         if np.sum(calls(end) ** 2) <= np.sum(calls(best) ** 2):
             best = end
         best_jacobian = _jacobian(calls, best, lower, upper)
-        offset = _relative_offset(
-            calls(best), best_jacobian, _held(best, best_jacobian, calls(best), lower, upper)
-        )
+        values = calls(best)
+        held = _held(best, best_jacobian, values, lower, upper)
+        offset = _relative_offset(values, best_jacobian, held, rounding=rounding)
         if offset < RELATIVE_OFFSET:
             break
     return _result(
@@ -353,12 +360,14 @@ def _held(
     return ((point - lower <= near) & (gradient >= 0)) | ((upper - point <= near) & (gradient <= 0))
 
 
-def _relative_offset(values: FloatArray, jacobian: FloatArray, held: npt.NDArray[np.bool_]) -> float:
+def _relative_offset(
+    values: FloatArray, jacobian: FloatArray, held: npt.NDArray[np.bool_], *, rounding: float
+) -> float:
     free = jacobian[:, ~held]
     norm = np.linalg.norm(free, axis=0)
-    if free.shape[1] == 0 or not np.isfinite(free).all():
-        return 0.0 if free.shape[1] == 0 else math.inf
-    if (norm == 0).any():
+    if free.shape[1] == 0:
+        return 0.0
+    if not np.isfinite(free).all() or (norm == 0).any():
         return math.inf
     q, _ = np.linalg.qr(free / norm)
     along = float(np.linalg.norm(q.T @ values))
@@ -366,7 +375,7 @@ def _relative_offset(values: FloatArray, jacobian: FloatArray, held: npt.NDArray
     across = math.sqrt(max(total**2 - along**2, 0.0))
     parameters, dof = free.shape[1], values.size - free.shape[1]
     # An exact fit has no length across; then what is left must be nothing against one natural step.
-    if total <= ROUNDING * float(np.linalg.norm(norm)) * 1e-3:
+    if total <= ROUNDING * float(np.linalg.norm(norm)) * 1e-3 or along <= rounding:
         return 0.0
     if dof <= 0 or across == 0:
         return math.inf
@@ -390,7 +399,7 @@ def _result(
     chi2 = float(np.sum(values**2))
     dof = int(values.size - np.count_nonzero(~held))
     covariance, determined = _covariance(jacobian, held)
-    if not absolute:
+    if not absolute and determined:
         covariance = covariance * (chi2 / dof) if dof > 0 else np.full_like(covariance, np.inf)
     covariance = covariance * np.outer(calls.scale, calls.scale)
     at_bound = tuple(name for name, flag in zip(names, held, strict=True) if flag)

@@ -36,7 +36,8 @@ class Loading:
     names : tuple of str
         slope (S_n, s per unit of coverage), drag_factor (chi), onset_coverage (n_c), period_at_zero (s).
     values, covariance : ndarray
-        In that order; not a number unless found.
+        In that order; not a number unless found. The drag factor of a flat substrate may come out below zero by its
+        uncertainty.
     points_below, points_past : int
         Points on each line.
     residuals : ndarray
@@ -125,15 +126,16 @@ def fit_loading(
     single = _line(n, P, u, slice(None))
     dof = n.size - 4
     chi2 = below.chi2 + past.chi2
-    reason = _reason(n, k, below, past, chance=_chance(single, chi2, dof))
-    if reason:
-        return _refused(reason, n.size)
+    scale = 1.0 if absolute else chi2 / dof
     values, jacobian = _values(below, past)
     joint = np.zeros((4, 4))
-    scale = 1.0 if absolute else chi2 / dof
     joint[:2, :2], joint[2:, 2:] = below.covariance * scale, past.covariance * scale
-    residuals = np.concatenate([below.residuals, past.residuals])
     covariance = jacobian @ joint @ jacobian.T
+    u_chi = math.sqrt(float(covariance[1, 1]))
+    reason = _reason(n, k, values, u_chi=u_chi, chance=_chance(single, chi2, dof))
+    if reason:
+        return _refused(reason, n.size)
+    residuals = np.concatenate([below.residuals, past.residuals])
     return Loading(
         found=True,
         reason="two slopes found",
@@ -160,16 +162,16 @@ def _chance(single: LinearFit, chi2: float, dof: int) -> float:
     return f_test(chi2_simple=single.chi2, dof_simple=dof + 2, chi2_full=chi2, dof_full=dof)
 
 
-def _reason(n: FloatArray, k: int, below: LinearFit, past: LinearFit, *, chance: float) -> str:
+def _reason(n: FloatArray, k: int, values: FloatArray, *, u_chi: float, chance: float) -> str:
     """Return why the two lines are no loading curve, or an empty text."""
-    slope, later = below.value("slope"), past.value("slope")
+    slope, chi, meet, _ = map(float, values)
     if chance > 1e-3:
         return "one straight line describes the run; no onset is seen"
-    if slope <= 0:
+    if not slope > 0:
         return f"found a slope of {slope:.4g} below the onset, expected > 0"
-    if not 0 <= later / slope < 1:
-        return f"found a ratio of slopes of {later / slope:.4g}, expected 0 <= chi < 1"
-    meet = (past.value("intercept") - below.value("intercept")) / (slope - later)
+    # A flat substrate has chi = 0, and noise puts it on either side.
+    if not -3 * u_chi - 1e-9 <= chi < 1:
+        return f"found a ratio of slopes of {chi:.4g}, expected 0 <= chi < 1"
     if not n[k - 2] <= meet <= n[k + 1]:
         return f"the two lines meet at a coverage of {meet:.5g}, expected {n[k - 2]:.5g} to {n[k + 1]:.5g} beside the break"
     return ""
@@ -179,7 +181,9 @@ def _values(below: LinearFit, past: LinearFit) -> tuple[FloatArray, FloatArray]:
     """Return the four values and their Jacobian by (intercept, slope) of both lines."""
     a, s = below.values
     b, r = past.values
-    gap = s - r
+    # Parallel lines or no slope are refused afterwards, by their own reasons.
+    gap = s - r if s != r else math.nan
+    s = s if s != 0 else math.nan
     meet = (b - a) / gap
     values = np.array([s, r / s, meet, a])
     jacobian = np.array(

@@ -66,7 +66,7 @@ class PolynomialBackground:
         uncertainty is the fit's; the difference between two empty-cell runs may be larger and then counts.
         """
         T = np.atleast_1d(np.asarray(temperature, dtype=np.float64))
-        outside = ~((self.low <= T) & (T <= self.high))
+        outside = ~((self.low <= T) & (self.high >= T))
         basis = _basis(np.where(outside, self.low, T), self.order, self.low, self.high)
         value = basis @ self.fit.values
         variance = np.einsum("ij,jk,ik->i", basis, self.fit.covariance, basis)

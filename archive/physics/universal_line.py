@@ -18,6 +18,9 @@ from archive.physics.linear_fit import LinearFit, linear_fit
 
 __all__ = ["UniversalCrossing", "crossing_of_universal_line"]
 
+SLOPE_SHARE = 0.1
+"""Relative uncertainty of the slope below which first-order propagation of the crossing is fair (no source)."""
+
 
 @dataclass(frozen=True)
 class UniversalCrossing:
@@ -66,7 +69,8 @@ def crossing_of_universal_line(
         Point errors, kg/m^2 (common errors move the answer as a whole and belong elsewhere). The scatter of the points about
         the local polynomial is used instead where it is larger.
     points : int
-        Points of the local polynomial, more than ``order + 1``.
+        Least number of points of the local polynomial, more than ``order + 1``. Twice as many are taken, again and again, until
+        the slope at the crossing is known to a tenth.
     order : int
         Its degree, 1 or 2.
 
@@ -95,26 +99,44 @@ def crossing_of_universal_line(
     if split in {0, T.size}:
         side = "below" if split == 0 else "above"
         return _none(f"the record stays {side} the universal line")
-    place = float(T[split - 1] + T[split]) / 2
-    first = min(max(split - points // 2, 0), T.size - points)
-    window = slice(first, first + points)
     spread = None
     if standard_uncertainty is not None:
         given = np.broadcast_to(np.asarray(standard_uncertainty, dtype=np.float64), rising.shape)
-        spread = series("standard_uncertainty", given, positive=True)[rising][window]
+        spread = series("standard_uncertainty", given, positive=True)[rising]
+    best = _none("the points beside the crossing do not fall through the line")
+    while points <= T.size:
+        found, slope_share = _local(T, excess, spread, split=split, points=points, order=order)
+        if found.found:
+            best = found
+            if slope_share < SLOPE_SHARE:
+                break
+        points *= 2
+    return best
+
+
+def _local(
+    T: FloatArray, excess: FloatArray, spread: FloatArray | None, *, split: int, points: int, order: int
+) -> tuple[UniversalCrossing, float]:
+    """Return the crossing of the polynomial through some points about the split, and its slope's relative uncertainty."""
+    place = float(T[split - 1] + T[split]) / 2
+    first = min(max(split - points // 2, 0), T.size - points)
+    window = slice(first, first + points)
     width = float(np.ptp(T[window])) / 2
     if width == 0:
-        return _none("all points beside the crossing have one temperature")
+        return _none("all points beside the crossing have one temperature"), math.inf
     local = (T[window] - place) / width
-    fit = _polynomial(local, excess[window], spread, order)
+    fit = _polynomial(local, excess[window], None if spread is None else spread[window], order)
     root = _root(fit.values, limit=(float(local[0]), float(local[-1])))
     if math.isnan(root):
-        return _none("the points beside the crossing do not fall through the line")
+        return _none("the points beside the crossing do not fall through the line"), math.inf
     powers = root ** np.arange(order + 1)
-    slope = float(fit.values[1] + (2 * fit.values[2] * root if order == 2 else 0.0))
+    # Derivatives of the powers: 0, 1, 2 x.
+    rates = np.arange(order + 1) * root ** np.maximum(np.arange(order + 1) - 1, 0)
+    slope = float(fit.values @ rates)
     u = width * math.sqrt(float(powers @ fit.covariance @ powers)) / abs(slope)
+    share = math.sqrt(float(rates @ fit.covariance @ rates)) / abs(slope)
     at = place + width * root
-    return UniversalCrossing(
+    found = UniversalCrossing(
         found=True,
         reason="crossing found",
         temperature=at,
@@ -123,6 +145,7 @@ def crossing_of_universal_line(
         slope=slope / width,
         points=points,
     )
+    return found, share
 
 
 def _split(excess: FloatArray) -> int:
@@ -143,16 +166,27 @@ def _polynomial(local: FloatArray, excess: FloatArray, spread: FloatArray | None
 
 
 def _root(coefficients: FloatArray, *, limit: tuple[float, float]) -> float:
-    """Return the falling root nearest to zero inside the window, or not a number."""
-    roots = np.polynomial.polynomial.polyroots(np.trim_zeros(coefficients, "b"))
-    real = roots.real[np.abs(roots.imag) < 1e-12 * (1 + np.abs(roots.real))]
-    slope = np.polynomial.polynomial.polyval(real, np.polynomial.polynomial.polyder(coefficients))
-    inside = real[(real >= limit[0]) & (real <= limit[1]) & (slope < 0)]
-    return float(inside[np.argmin(np.abs(inside))]) if inside.size else math.nan
+    """Return the root at which the polynomial falls, if it lies inside the window, or not a number."""
+    level, slope, curvature = (*map(float, coefficients), 0.0)[:3]
+    discriminant = slope**2 - 4 * curvature * level
+    if discriminant <= 0:
+        return math.nan
+    # The form without cancellation; of the two roots this is the one of negative slope, -sqrt(discriminant).
+    denominator = -slope + math.sqrt(discriminant)
+    if denominator <= 0:
+        return math.nan
+    root = 2 * level / denominator
+    return root if limit[0] <= root <= limit[1] else math.nan
 
 
 def _none(reason: str) -> UniversalCrossing:
     nan = math.nan
     return UniversalCrossing(
-        found=False, reason=reason, temperature=nan, standard_uncertainty=nan, areal_density=nan, slope=nan, points=0
+        found=False,
+        reason=reason,
+        temperature=nan,
+        standard_uncertainty=nan,
+        areal_density=nan,
+        slope=nan,
+        points=0,
     )

@@ -50,7 +50,11 @@ def test_thermal_limit_of_the_example():
 
 @pytest.mark.parametrize(
     ("arguments", "message"),
-    [({"interval": 0.0}, "interval"), ({"interval": 1.0, "factors": [3]}, r"factors\[0\]"), ({"interval": 1.0, "factors": [0]}, "factors")],
+    [
+        ({"interval": 0.0}, "interval"),
+        ({"interval": 1.0, "factors": [3]}, r"factors\[0\]"),
+        ({"interval": 1.0, "factors": [0]}, "factors"),
+    ],
     ids=["interval", "long", "zero"],
 )
 def test_refused(arguments, message):

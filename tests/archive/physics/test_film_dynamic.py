@@ -90,20 +90,27 @@ def by_integration(x0, c, L, F):
     l_D = (L + math.log(14)) / 2
     Y0 = math.sqrt(c + 2 * (x0 - math.log1p(x0)))
 
-    def slope(l, state):
+    def slope(length, state):
         x, log_Y = state[0], state[1]
         Y2 = math.exp(2 * log_Y)
-        z = math.exp(min(2 * (l - l_D), 300.0))
+        z = math.exp(min(2 * (length - l_D), 300.0))
         return [2 * Y2, 2 * x / (1 + x), 2 * Y2 / (1 + z * z), 2 * Y2 * z / (1 + z * z)]
 
-    def end(l, state):
+    def end(length, state):
         return state[0] - 1
 
     end.terminal = True
     solution = solve_ivp(
-        slope, (0, l_D + 40), [x0, math.log(Y0), 0, 0], method="DOP853", rtol=1e-12, atol=1e-15, max_step=0.25, events=end
+        slope,
+        (0, l_D + 40),
+        [x0, math.log(Y0), 0, 0],
+        method="DOP853",
+        rtol=1e-12,
+        atol=1e-15,
+        max_step=0.25,
+        events=end,
     )
-    x, log_Y, real, imaginary = solution.y[:, -1]
+    _, _, real, imaginary = solution.y[:, -1]
     # On a grid of l the invariant must stay put.
     invariant = np.exp(2 * solution.y[1]) - 2 * (solution.y[0] - np.log1p(solution.y[0]))
     assert np.max(np.abs(invariant - c)) < 1e-10
@@ -124,13 +131,18 @@ def test_against_differential_equations(name, ratio, L):
 def test_quadrature_of_the_fit_is_fine_enough():
     ratio = np.linspace(0.7, 1.3, 61)
     start = fixed_start(ratio, b=8.0)
-    fine, coarse = complex_stiffness(start, L=12.0), complex_stiffness(start, L=12.0, panel_width=2.0, order=10)
+    fine, coarse = (
+        complex_stiffness(start, L=12.0),
+        complex_stiffness(start, L=12.0, panel_width=2.0, order=10),
+    )
     assert np.max(np.abs(fine - coarse)) < 1e-8
 
 
 def test_free_vortices_do_nothing_below_the_transition():
     start = fixed_start(np.linspace(0.9, 1.0, 11), b=5.5)
-    np.testing.assert_array_equal(complex_stiffness(start, L=12.0, F=0.0), complex_stiffness(start, L=12.0, F=5.0))
+    np.testing.assert_array_equal(
+        complex_stiffness(start, L=12.0, F=0.0), complex_stiffness(start, L=12.0, F=5.0)
+    )
 
 
 def test_high_frequency_sees_the_bare_stiffness():
@@ -168,7 +180,11 @@ def test_far_below_the_transition_the_fugacity_is_zero():
 
 @settings(max_examples=25, deadline=None)
 @given(
-    st.floats(0.85, 1.15), st.floats(1.5, 15.0), st.floats(2.0, 20.0), st.floats(0.0, 5.0), st.floats(-0.8, -0.2)
+    st.floats(0.85, 1.15),
+    st.floats(1.5, 15.0),
+    st.floats(2.0, 20.0),
+    st.floats(0.0, 5.0),
+    st.floats(-0.8, -0.2),
 )
 def test_passive_and_bounded(ratio, b, L, F, x0):
     at = np.array([ratio])

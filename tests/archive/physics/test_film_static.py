@@ -27,7 +27,7 @@ from archive.physics.film_static import (
 
 def test_universal_jump():
     """Nelson and Kosterlitz 1977 with CODATA 2022: 3.491357877e-8 kg m^-2 K^-1."""
-    assert UNIVERSAL_JUMP == pytest.approx(3.491357877e-8, rel=2e-9)
+    assert pytest.approx(3.491357877e-8, rel=2e-9) == UNIVERSAL_JUMP
 
 
 def test_onset_coverage():
@@ -46,7 +46,7 @@ def test_villain_critical_stiffness():
 
 
 def test_villain_b():
-    """b = 4 sqrt(dc/dt) at the transition = 2.768394691."""
+    """The constant b = 4 sqrt(dc/dt) at the transition = 2.768394691."""
     step = 1e-4
     up, down = villain_start(np.array([1 + step])), villain_start(np.array([1 - step]))
     slope = (up.invariant[0] - down.invariant[0]) / (2 * step)

@@ -189,3 +189,62 @@ def test_model_not_finite_at_the_start():
 def test_absolute_needs_uncertainties():
     with pytest.raises(ValueError, match="absolute=True"):
         fit(lambda x, p: p[0] * x, [Parameter("a", 1.0)], np.array([1.0, 2.0]), [0.0, 1.0], absolute=True)
+
+
+def test_exact_data_on_a_large_offset_converge():
+    """What is left is the rounding of the data; it has no gradient worth following."""
+    x = np.linspace(0.0, 1.0, 200)
+    y = 1e6 + 1e-3 * np.exp(-3 * x)
+    start = [Parameter("level", 0.9e6), Parameter("height", 1e-3), Parameter("rate", 2.0)]
+    found = fit(lambda x, p: p[0] + p[1] * np.exp(-p[2] * x), start, x, y, absolute=False)
+    assert found.converged, found.message
+    # One unit of 1e6 in double precision is 1e-10, so the rate is known to about a part in 1e6.
+    assert found.value("rate") == pytest.approx(3.0, rel=1e-5)
+
+
+def test_all_parameters_held_by_bounds():
+    found = fit(
+        lambda x, p: p[0] * x,
+        [Parameter("a", 0.0, 0.0, 1.0)],
+        np.array([1.0, 2.0]),
+        [-1.0, -2.0],
+        absolute=False,
+    )
+    assert found.at_bound == ("a",)
+    assert found.converged
+    assert found.covariance[0, 0] == 0
+
+
+def test_start_at_zero_has_a_scale():
+    assert Parameter("a", 0.0).typical_size() == 1.0
+    assert Parameter("a", 0.0, -2.0, 2.0).typical_size() == 4.0
+    assert Parameter("a", 0.0, scale=7.0).typical_size() == 7.0
+    assert Parameter("a", -3.0).typical_size() == 3.0
+
+
+def test_parameter_that_does_nothing():
+    x = np.linspace(0.0, 1.0, 5)
+    found = fit(
+        lambda x, p: p[0] * x, [Parameter("a", 0.5), Parameter("idle", 1.0)], x, 2 * x, absolute=False
+    )
+    assert not found.converged
+    assert np.isinf(found.covariance).all()
+
+
+def test_no_degrees_of_freedom_give_no_uncertainty():
+    x = np.array([0.0, 1.0])
+    found = fit(
+        lambda x, p: p[0] + p[1] * x,
+        [Parameter("a", 1.0), Parameter("b", 1.0)],
+        x,
+        [1.0, 3.0],
+        absolute=False,
+    )
+    assert found.value("b") == pytest.approx(2.0)
+    assert math.isnan(found.reduced_chi2)
+    assert np.isinf(found.covariance).all()
+
+
+def test_model_of_wrong_shape():
+    with pytest.raises(ValueError, match="2 dimensions"):
+        fit_residuals(lambda p: np.ones((3, 1)) * p[0], [Parameter("a", 1.0)], absolute=False)

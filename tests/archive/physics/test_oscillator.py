@@ -33,7 +33,7 @@ def test_example_oscillator():
     assert period_per_mass(**EXAMPLE) == pytest.approx(0.028, rel=1e-12)
     assert period_per_areal_density(**EXAMPLE, area=1.5) == pytest.approx(0.042, rel=1e-12)
     # 0.1681093 ns per umol/m^2 with 4.002603e-9 kg/m^2 per umol/m^2.
-    assert 0.042 * 4.002603254e-9 == pytest.approx(0.1681093e-9, rel=3e-7)
+    assert pytest.approx(0.1681093e-9, rel=3e-7) == 0.042 * 4.002603254e-9
 
 
 def test_period_and_torsion_constant_are_inverse():
@@ -54,7 +54,9 @@ def test_fractional_period_change_keeps_digits():
 def test_dissipation_from_torque():
     kappa = 19.73921
     theta = 2e-5
-    assert float(dissipation_from_torque(torque=kappa * theta / 5e5, torsion_constant=kappa, amplitude=theta)) == pytest.approx(2e-6)
+    assert float(
+        dissipation_from_torque(torque=kappa * theta / 5e5, torsion_constant=kappa, amplitude=theta)
+    ) == pytest.approx(2e-6)
 
 
 REFERENCE = {"dissipation": 2e-6, "drive": 1.0, "signal": 5.0, "frequency": 1000.0}
@@ -69,7 +71,9 @@ def test_dissipation_from_amplitude(p, s, expected):
     reference = DriveReference(**REFERENCE, drive_power=p, signal_power=s)
     found = dissipation_from_amplitude(signal=2.5, drive=2.0, frequency=990.0, reference=reference)
     assert float(found) == pytest.approx(expected, rel=1e-12)
-    tilted = dissipation_from_amplitude(signal=2.5, drive=2.0, frequency=990.0, reference=reference, lock_phase=math.pi / 3)
+    tilted = dissipation_from_amplitude(
+        signal=2.5, drive=2.0, frequency=990.0, reference=reference, lock_phase=math.pi / 3
+    )
     assert float(tilted) == pytest.approx(expected / 2, rel=1e-12)
 
 
@@ -88,7 +92,9 @@ def test_transient_correction_recovers_q_of_a_driven_rise():
     Q, f, target = 5e5, 1000.0, 2e-5
     w = 2 * math.pi * f
     t = np.linspace(0.0, 300.0, 601)
-    solution = solve_ivp(lambda t, y: -(w / (2 * Q)) * (y - target), (0, 300), [1e-5], t_eval=t, rtol=1e-10, atol=1e-18)
+    solution = solve_ivp(
+        lambda t, y: -(w / (2 * Q)) * (y - target), (0, 300), [1e-5], t_eval=t, rtol=1e-10, atol=1e-18
+    )
     theta = solution.y[0]
     steady = target / (Q * theta)
     corrected = steady + transient_correction(t, theta, f)
@@ -104,7 +110,9 @@ def test_transient_needs_rising_times(time):
 
 def test_rim_velocity():
     """R = 7.5 mm, 1 kHz, 1 mm/s is 2.122e-5 rad."""
-    assert float(rim_velocity(radius=7.5e-3, frequency=1000.0, amplitude=2.122e-5)) == pytest.approx(1e-3, rel=1e-4)
+    assert float(rim_velocity(radius=7.5e-3, frequency=1000.0, amplitude=2.122e-5)) == pytest.approx(
+        1e-3, rel=1e-4
+    )
 
 
 @given(st.floats(-0.2, 0.2), st.floats(1e4, 1e6))
@@ -113,7 +121,11 @@ def test_lock_phase_is_undone(phase, Q):
     f0 = 1000.0
     drive = f0 * (1 + math.tan(phase) / (2 * Q))
     found = corrected_frequency(
-        drive_frequency=drive, dissipation=1 / Q, in_phase=math.cos(phase), quadrature=-math.sin(phase), sign=-1
+        drive_frequency=drive,
+        dissipation=1 / Q,
+        in_phase=math.cos(phase),
+        quadrature=-math.sin(phase),
+        sign=-1,
     )
     assert float(found) == pytest.approx(f0, abs=1e-6)
 

@@ -23,7 +23,9 @@ def test_amplitude_and_energy_agree():
     assert two.quality_factor == pytest.approx(expected, rel=1e-8)
     assert one.converged
     assert not one.curved
-    assert float(quality_factor(frequency=1000.0, decay_time=TAU / 2, convention="energy")) == pytest.approx(expected)
+    assert float(quality_factor(frequency=1000.0, decay_time=TAU / 2, convention="energy")) == pytest.approx(
+        expected
+    )
 
 
 @pytest.mark.parametrize(
@@ -37,7 +39,9 @@ def test_amplitude_and_energy_agree():
 )
 @pytest.mark.parametrize("height", [1.0, 3e-7])
 def test_backgrounds(background, signal, level, height):
-    found = ringdown(T, height * signal(np.exp(-T / TAU)), frequency=500.0, convention="amplitude", background=background)
+    found = ringdown(
+        T, height * signal(np.exp(-T / TAU)), frequency=500.0, convention="amplitude", background=background
+    )
     assert found.converged, found.message
     assert found.fit.value("decay_time") == pytest.approx(TAU, rel=1e-6)
     if level:
@@ -48,14 +52,18 @@ def test_uncertainty_is_honest():
     rng = np.random.default_rng(4)
     pulls = []
     for _ in range(100):
-        found = ringdown(T, np.exp(-T / TAU) + rng.normal(0, 0.01, T.size), frequency=1000.0, convention="amplitude")
+        found = ringdown(
+            T, np.exp(-T / TAU) + rng.normal(0, 0.01, T.size), frequency=1000.0, convention="amplitude"
+        )
         pulls.append((found.quality_factor - math.pi * 1000 * TAU) / found.standard_uncertainty)
     assert np.std(pulls) == pytest.approx(1.0, abs=0.2)
     assert abs(np.mean(pulls)) < 0.4
 
 
 def test_two_rates_are_called_curved():
-    assert ringdown(T, np.exp(-T / TAU) + np.exp(-T / 30), frequency=1e3, convention="amplitude", background="none").curved
+    assert ringdown(
+        T, np.exp(-T / TAU) + np.exp(-T / 30), frequency=1e3, convention="amplitude", background="none"
+    ).curved
 
 
 def test_a_record_that_grows_is_not_converged():
@@ -87,3 +95,8 @@ def test_refused(change, message):
     arguments = {"time": T, "signal": np.exp(-T), "frequency": 1.0, "convention": "amplitude"} | change
     with pytest.raises(ValueError, match=message):
         ringdown(**arguments)
+
+
+def test_local_dissipation_needs_three_points():
+    with pytest.raises(ValueError, match="points: found 2"):
+        local_dissipation(T, np.exp(-T), frequency=1.0, points=2)

@@ -1,0 +1,136 @@
+"""BET: the worked example, the counter-example, and a measured helium isotherm."""
+
+from __future__ import annotations
+
+import csv
+import math
+from pathlib import Path
+
+import numpy as np
+import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+
+from archive.physics.adsorption import bet_area
+
+TESTS = Path(__file__).parents[2]
+NITROGEN = 0.162e-18
+X = np.array([0.05, 0.10, 0.15, 0.20, 0.25, 0.30])
+REJECTED = [0.8580, 0.9582, 1.0132, 1.0577, 1.1003, 1.1447]
+
+
+def example():
+    with (TESTS / "published" / "film-tables" / "bet-example.csv").open() as file:
+        rows = list(csv.DictReader(file))
+    return {name: np.array([float(row[name]) for row in rows]) for name in rows[0]}
+
+
+def test_worked_example():
+    """Amounts in mol/kg: s = 0.990015, i = 0.00999646, n_m = 0.999989, C = 100.037, A = 97.5576 m^2/g."""
+    data = example()
+    found = bet_area(data["x"], data["n"], cross_section=NITROGEN)
+    assert found.accepted, found.reasons
+    assert found.points == 6
+    assert found.slope == pytest.approx(0.990015, abs=5e-7)
+    assert found.intercept == pytest.approx(0.00999646, abs=5e-9)
+    assert found.monolayer == pytest.approx(0.999989, abs=5e-7)
+    assert found.constant == pytest.approx(100.037, abs=5e-4)
+    assert found.r_squared == pytest.approx(0.9999999994, abs=1e-10)
+    assert found.area / 1000 == pytest.approx(97.5576, rel=1e-6)
+    assert found.x_expected == pytest.approx(0.09089, abs=1e-5)
+    assert found.low <= found.x_at_monolayer <= found.high
+    assert 0 < found.u_area < 1e-3 * found.area
+
+
+def test_columns_of_the_worked_example():
+    data = example()
+    np.testing.assert_allclose(data["x"] / (data["n"] * (1 - data["x"])), data["ordinate"], atol=6e-7)
+    np.testing.assert_allclose(data["n"] * (1 - data["x"]), data["n_times_1_minus_x"], atol=1e-6)
+
+
+def test_counter_example_is_rejected():
+    """n(1 - x) falls after x = 0.10; the full-range fit gives C = -155.7."""
+    forced = bet_area(X, REJECTED, cross_section=NITROGEN, bounds=(0.05, 0.30))
+    assert not forced.accepted
+    assert forced.constant == pytest.approx(-155.7, abs=0.05)
+    text = " ".join(forced.reasons)
+    assert "(i)" in text
+    assert "(ii)" in text
+    automatic = bet_area(X, REJECTED, cross_section=NITROGEN)
+    assert not automatic.accepted
+    assert automatic.reasons[0] == "no range meets all criteria"
+
+
+def test_one_square_metre_of_nitrogen():
+    """1 m^2 holds 10.25024 umol of N2."""
+    found = bet_area(example()["x"], example()["n"], cross_section=NITROGEN)
+    assert found.monolayer / found.area == pytest.approx(10.25024e-6, rel=1e-6)
+
+
+def helium(name):
+    path = TESTS / "real" / "he4-ar-mcm41-isotherms" / name
+    return np.array(
+        [
+            [float(word) for word in line.split()[:2]]
+            for line in path.read_text().splitlines()
+            if line[:1].isdigit()
+        ]
+    ).T
+
+
+def test_measured_helium_isotherm():
+    """4He at 4.2 K in argon-plated MCM-41 (Nichols et al., Phys. Rev. B 102, 144505 (2020)); cross-check of SOURCE.md."""
+    x, n = helium("Sokol_He_Ar_MCM41_Isotherm.dat")
+    assert x.size == 38
+    found = bet_area(x, n, cross_section=0.0847e-18, bounds=(0.02, 0.15))
+    assert found.monolayer == pytest.approx(10.2, abs=0.05)
+    assert found.constant == pytest.approx(210, abs=5)
+    assert found.r_squared > 0.999
+
+
+def test_two_roundings_of_one_isotherm_agree():
+    one, two = helium("Sokol_He_Ar_MCM41_Isotherm.dat"), helium("4He-isotherm.tsv")
+    a = bet_area(*one, cross_section=0.0847e-18, bounds=(0.02, 0.15))
+    b = bet_area(*two, cross_section=0.0847e-18, bounds=(0.02, 0.15))
+    assert a.monolayer == pytest.approx(b.monolayer, rel=1e-5)
+
+
+def test_automatic_range_meets_its_own_criteria():
+    x, n = helium("Sokol_He_Ar_MCM41_Isotherm.dat")
+    found = bet_area(x, n, cross_section=0.0847e-18)
+    if found.accepted:
+        assert found.constant > 0
+        assert found.low <= found.x_at_monolayer <= found.high
+        assert found.points >= 5
+    else:
+        assert len(found.reasons) > 1
+
+
+@given(st.floats(20.0, 500.0), st.floats(1e-6, 1e3))
+def test_exact_isotherm_returns_its_input(constant, monolayer):
+    x = np.linspace(0.01, 0.35, 18)
+    n = monolayer * constant * x / ((1 - x) * (1 + (constant - 1) * x))
+    found = bet_area(x, n, cross_section=1e-19)
+    assert found.accepted, found.reasons
+    assert found.points == 18
+    assert found.monolayer == pytest.approx(monolayer, rel=1e-9)
+    assert found.constant == pytest.approx(constant, rel=1e-6)
+
+
+def test_few_points_are_refused():
+    found = bet_area(X[:2], [1.0, 1.1], cross_section=NITROGEN, bounds=(0.0, 1.0))
+    assert not found.accepted
+    assert "found 2 points" in found.reasons[0]
+    assert math.isnan(found.area)
+    four = bet_area(X[:4], example()["n"][:4], cross_section=NITROGEN, bounds=(0.0, 1.0))
+    assert any("found 4 points" in reason for reason in four.reasons)
+
+
+@pytest.mark.parametrize(
+    ("x", "area", "message"),
+    [(X[::-1], NITROGEN, r"x\[1\]: found 0.25"), (X, 0.0, "cross_section")],
+    ids=["falling", "no area"],
+)
+def test_refused_arguments(x, area, message):
+    with pytest.raises(ValueError, match=message):
+        bet_area(x, REJECTED, cross_section=area)
