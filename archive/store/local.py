@@ -91,6 +91,11 @@ class LocalStore:
     ----------
     root : Path
         The archive's folder; use `open_store`.
+
+    Notes
+    -----
+    Reading checks marks, structure and the checksums of what it reads, in this process. It does not compare the digest
+    of the whole file; before a file of doubtful history is read, `verify` it, which reads damaged files in a child process.
     """
 
     def __init__(self, root: Path) -> None:

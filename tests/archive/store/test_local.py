@@ -54,10 +54,10 @@ def test_a_writer_that_cannot_begin_leaves_no_trace(
 ) -> None:
     def fail(self: object, path: Path, key: str) -> None:
         path.touch()
-        raise OSError
+        raise OSError("no room")
 
     monkeypatch.setattr(local.SealedWriter, "__init__", fail)
-    with pytest.raises(OSError, match=""), store.writer("2026-03/next"):
+    with pytest.raises(OSError, match="no room"), store.writer("2026-03/next"):
         pytest.fail("a writer was given out")
     assert store.strays() == []
 
