@@ -37,9 +37,6 @@ VILLAIN_CRITICAL_STIFFNESS = 0.7478524217720599
 X_END = 1.0
 """The flow above the transition ends at half the universal stiffness: this defines xi_+ here."""
 
-TAIL = 20.0
-"""Beyond l_D + 20 the kernel is below exp(-40)."""
-
 EDGE = math.sqrt(2 * (X_END - math.log1p(X_END)))
 
 
@@ -138,7 +135,13 @@ def free_vortex_length(start: FilmStart) -> FloatArray:
 
 
 def complex_stiffness(
-    start: FilmStart, *, L: npt.ArrayLike, F: float = 1.0, panel_width: float = 1.5, order: int = 20
+    start: FilmStart,
+    *,
+    L: npt.ArrayLike,
+    F: float = 1.0,
+    panel_width: float = 1.5,
+    order: int = 20,
+    tail: float = 20.0,
 ) -> ComplexArray:
     """Return the dynamic stiffness ``K_0/epsilon(w)``.
 
@@ -152,6 +155,8 @@ def complex_stiffness(
         Free-vortex prefactor, >= 0; zero leaves only bound pairs.
     panel_width, order : float, int
         Gauss-Legendre panels in the flow time. The defaults give about 1e-12 relative; a fit takes wider panels.
+    tail : float
+        How far beyond l_D the flow is followed; the kernel has fallen to exp(-2 tail) there.
 
     Returns
     -------
@@ -173,13 +178,14 @@ def complex_stiffness(
     c, s0 = _flat(start)
     l_D = np.broadcast_to((np.asarray(L, dtype=np.float64) + math.log(DEBYE)) / 2, start.x.shape).ravel()
     l_plus = free_vortex_length(start).ravel()
-    end = _end_of_flow(c, s0, l_D)
-    reach = float(end.max(initial=0.0))
-    count = max(math.ceil(reach / panel_width), 1)
+    end = _end_of_flow(c, s0, l_D + tail)
     bound = np.zeros(c.shape, dtype=np.complex128)
-    run = end > 0
-    if run.any():
-        bound[run] = _bound_pairs(c[run], s0[run], l_D[run], end[run], count=count, order=order)
+    # Flows above the transition end early; apart from the others they need fewer panels.
+    for side in (c > 0, c <= 0):
+        run = side & (end > 0)
+        if run.any():
+            count = max(math.ceil(float(end[run].max()) / panel_width), 1)
+            bound[run] = _bound_pairs(c[run], s0[run], l_D[run], end[run], count=count, order=order)
     # Below the exponent's limit a free term of zero is exact to double precision.
     free = np.exp(np.clip(2 * (l_D - l_plus), -700.0, 300.0)) * np.isfinite(l_plus)
     inverse = 1 + start.x.ravel() + bound + 1j * (4 * math.pi * F / 7) * free
@@ -273,10 +279,10 @@ def _linear_length(root: FloatArray, s0: FloatArray) -> FloatArray:
     return (np.arctan2(EDGE, root) - np.arctan2(s0, root)) / (2 * root)
 
 
-def _end_of_flow(c: FloatArray, s0: FloatArray, l_D: FloatArray) -> FloatArray:
-    # g >= g(s0) along the flow for s0 < 0 and g >= 1 beyond, so this flow time reaches at least l_D + TAIL.
+def _end_of_flow(c: FloatArray, s0: FloatArray, reach: FloatArray) -> FloatArray:
+    # g >= g(s0) along the flow for s0 < 0 and g >= 1 beyond, so this flow time reaches at least that length.
     slowest = np.minimum(flow_rate(np.minimum(s0, 0.0)), 1.0)
-    end = np.maximum(l_D + TAIL, 0.0) / slowest
+    end = np.maximum(reach, 0.0) / slowest
     above = c > 0
     if above.any():
         end[above] = np.minimum(end[above], _linear_length(np.sqrt(c[above]), s0[above]))
@@ -320,8 +326,8 @@ def _bound_pairs(
     fugacity2 = np.maximum(s * s + c[:, np.newaxis], 0.0)
     # (1 + i z)/(1 + z^2), written so that a large z does not overflow.
     small = 1 / (z + 1 / z)
-    kernel = small / z + 1j * small
-    return np.asarray((2 * fugacity2 * g * kernel) @ weights * end, dtype=np.complex128)
+    common = 2 * fugacity2 * g * small
+    return np.asarray(((common / z) @ weights + 1j * (common @ weights)) * end, dtype=np.complex128)
 
 
 def flow(c: FloatArray, s0: FloatArray, v: FloatArray) -> FloatArray:
@@ -329,7 +335,9 @@ def flow(c: FloatArray, s0: FloatArray, v: FloatArray) -> FloatArray:
     root = np.sqrt(np.abs(c))
     angle = 2 * root * v
     safe = np.where(root > 0, root, 1.0)
+    if np.all(c > 0):
+        sine, cosine = np.sin(angle), np.cos(angle)
+        return np.asarray((s0 * cosine + root * sine) / (cosine - s0 * sine / safe))
     tangent = np.where(c < 0, np.tanh(angle) / safe, 2 * v)
     below = (s0 + c * tangent) / (1 - s0 * tangent)
-    above = (s0 * np.cos(angle) + root * np.sin(angle)) / (np.cos(angle) - s0 * np.sin(angle) / safe)
-    return np.where(c > 0, above, below)
+    return below if not np.any(c > 0) else np.where(c > 0, flow(np.where(c > 0, c, 1.0), s0, v), below)

@@ -24,7 +24,7 @@ FREE_BY_DEFAULT = ("transition_temperature", "b", "log_diffusivity", "drop_offse
 
 NAMES = ("transition_temperature", "b", "log_diffusivity", "F", "scale", "drop_offset", "dissipation_offset")
 
-PANEL_WIDTH, ORDER = 2.0, 10
+PANEL_WIDTH, ORDER, TAIL = 2.0, 10, 9.0
 """Coarser quadrature for the fit: 1e-9 relative, far below any measurement."""
 
 
@@ -194,7 +194,7 @@ class _Curve:
         if key != self.key:
             begin = fixed_start(self.temperature / key[0], b=key[1], x0=self.x0)
             stiffness = complex_stiffness(
-                begin, L=key[2] - self.log_w, F=key[3], panel_width=PANEL_WIDTH, order=ORDER
+                begin, L=key[2] - self.log_w, F=key[3], panel_width=PANEL_WIDTH, order=ORDER, tail=TAIL
             )
             self.density = dynamic_areal_density(self.temperature, stiffness)
             self.key = key

@@ -23,7 +23,7 @@ INPUT = {
 }
 
 
-def record(seed, relative_noise=1e-3, points=60, **change):
+def record(seed, relative_noise=1e-3, points=45, **change):
     given = INPUT | change
     T = np.linspace(0.75, 1.05, points)
     start = fixed_start(T / given["transition_temperature"], b=given["b"])
