@@ -98,12 +98,13 @@ def test_two_roundings_of_one_isotherm_agree():
 def test_automatic_range_meets_its_own_criteria():
     x, n = helium("Sokol_He_Ar_MCM41_Isotherm.dat")
     found = bet_area(x, n, cross_section=0.0847e-18)
-    if found.accepted:
-        assert found.constant > 0
-        assert found.low <= found.x_at_monolayer <= found.high
-        assert found.points >= 5
-    else:
-        assert len(found.reasons) > 1
+    assert found.accepted, found.reasons
+    assert found.constant > 0
+    assert found.low <= found.x_at_monolayer <= found.high
+    assert found.points >= 5
+    assert found.r_squared > 0.999
+    # The largest range reaches lower pressures than the cross-check's 0.02, where stronger sites fill.
+    assert found.monolayer == pytest.approx(10.2, rel=0.03)
 
 
 @given(st.floats(20.0, 500.0), st.floats(1e-6, 1e3))
