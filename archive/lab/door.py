@@ -27,7 +27,7 @@ from archive.intake.settings import SETTINGS_NAME, Settings, read_settings, sett
 from archive.intake.thresholds import Thresholds
 from archive.lab import reducing, reporting, showing
 from archive.lab.outcomes import CheckReport, IngestOutcome, ReduceOutcome, ReplayReport
-from archive.lab.software import software
+from archive.reduction.software import software
 from archive.lab.source import LabSource
 from archive.reduction.trace import TraceNode, trace
 from archive.store.durable import archive_lock, sweep_staging, write_whole
@@ -354,7 +354,7 @@ class Archive:
 
     def replay(self, address: str) -> ReplayReport:
         """Compute a reduction again from raw and compare it with what was sealed."""
-        return reducing.replay(self._source, address)
+        return reducing.replay(self._source, address, clock=self._clock)
 
     # Finding and showing ------------------------------------------------------------------------------------------
 

@@ -75,6 +75,8 @@ class ReduceOutcome:
     address: str | None = None
     document: ReductionDocument | None = None
     problem: ArchiveError | None = None
+    already: bool = False
+    """True if the newest reduction of this plan has the same inputs and outputs; nothing was sealed."""
 
 
 @dataclass(frozen=True)
@@ -89,6 +91,8 @@ class ReplayReport:
         Per output that differs, the largest relative difference.
     shifts : dict of str to float
         Per scalar that differs, the change in units of its standard uncertainty.
+    changed_inputs, changed_software
+        What is not as it was when the reduction was made.
     """
 
     address: str
@@ -96,3 +100,5 @@ class ReplayReport:
     outputs: int
     largest_difference: dict[str, float] = field(default_factory=dict)
     shifts: dict[str, float] = field(default_factory=dict)
+    changed_inputs: tuple[str, ...] = ()
+    changed_software: dict[str, tuple[str, str]] = field(default_factory=dict)

@@ -51,6 +51,7 @@ __all__ = [
     "staging_path",
     "sweep_staging",
     "take_name",
+    "write_whole",
 ]
 
 LOCK_NAME = "archive.lock"
@@ -123,6 +124,46 @@ def take_name(staged: Path, final: Path, *, root: Path, key: str) -> None:
         ) from error
     _sync_folder(final.parent)
     discard(staged)
+
+
+def write_whole(path: Path, content: bytes, *, replace: bool = False) -> None:
+    """Write a small file of the archive's own, a setting or a report: whole under its name, or not at all.
+
+    Parameters
+    ----------
+    path : Path
+        Where it is to stand; the folder must be there.
+    content : bytes
+        All of it.
+    replace : bool
+        Whether a file that stands there may be replaced, as a report made anew replaces the one before.
+
+    Raises
+    ------
+    BadRequest
+        If the name is taken and must not be replaced, or the folder cannot be written to.
+    """
+    staged = path.with_name(f".{path.name[:100]}.{secrets.token_hex(4)}{STAGING_SUFFIX}")
+    try:
+        with staged.open("xb") as stream:
+            stream.write(content)
+            stream.flush()
+            _sync(stream.fileno())
+        if replace:
+            os.replace(staged, path)  # noqa: PTH105 - as above
+        else:
+            _link_or_rename(staged, path)
+        _sync_folder(path.parent)
+    except FileExistsError as error:
+        raise BadRequest("this name is taken", file=str(path), remedy="name another file, or move this one away") from error
+    except OSError as error:
+        raise BadRequest(
+            f"the file cannot be written: {error.strerror}",
+            file=str(path),
+            remedy="free space, or correct the permissions of the folder; nothing was written",
+        ) from error
+    finally:
+        discard(staged)
 
 
 def _link_or_rename(staged: Path, final: Path) -> None:

@@ -1,0 +1,197 @@
+"""Reductions over a whole cooldown, their repetition, and the index made anew."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator, Mapping
+from datetime import datetime
+from pathlib import Path
+from typing import Any
+
+from numpy.typing import NDArray
+
+from archive.errors import ArchiveError, BadRequest, DamagedFile, MissingFile, UnknownAddress
+from archive.index import Index
+from archive.lab.outcomes import ReduceOutcome, ReplayReport
+from archive.lab.source import LabSource, document_of
+from archive.reduction.planning import load_plan, plan_depth, plans_for, shipped_plans
+from archive.reduction.replay import replay as repeat
+from archive.reduction.runner import run
+from archive.store.durable import archive_lock
+from archive.store.local import LocalStore
+from schemas.lineage import AccessionDocument, ReductionDocument
+from schemas.plan import Plan
+
+__all__ = ["plans", "rebuilt_index", "reduce", "replay"]
+
+Seal = Callable[[ReductionDocument, Mapping[str, tuple[NDArray[Any], dict[str, str]]]], None]
+
+
+def plans(source: LabSource) -> list[Plan]:
+    """Shipped plans, and those of this archive's reductions that are not shipped, by name and revision."""
+    known = {plan.address: plan for plan in shipped_plans()}
+    for row in source.index.reductions():
+        if row.plan not in known:
+            plan = source.reduction(row.address).plan
+            known.setdefault(plan.address, plan)
+    return [known[address] for address in sorted(known)]
+
+
+def _chosen(source: LabSource, plan: str | Path | None) -> tuple[list[Plan], list[Plan]]:
+    """Plans that may be carried out, and those that can serve needs."""
+    known = list(shipped_plans())
+    if plan is None:
+        return known, known
+    path = Path(plan)
+    if path.suffix == ".toml":
+        try:
+            text = path.read_text(encoding="utf-8")
+        except (OSError, UnicodeDecodeError) as error:
+            raise BadRequest("the plan file cannot be read", file=str(path), found=str(error)) from None
+        own = load_plan(text, file=str(path))
+        _check_revision(source, own)
+        return [own], [*known, own]
+    fitting = [each for each in plans(source) if str(plan) in (each.name, each.address)]
+    if not fitting:
+        names = ", ".join(sorted({each.name for each in plans(source)}))
+        raise BadRequest(f"there is no plan {plan}", expected=f"one of: {names}, or a file such as my-plan.toml")
+    return [max(fitting, key=lambda each: each.revision)], known
+
+
+def _check_revision(source: LabSource, plan: Plan) -> None:
+    """A plan that differs from the one known under the same name and revision is refused."""
+    for other in plans(source):
+        if other.address == plan.address and other != plan:
+            raise BadRequest(
+                f"another plan is known as {plan.address}",
+                remedy=f"give yours another name, or revision {plan.revision + 1}",
+            )
+
+
+def reduce(
+    source: LabSource,
+    cooldown: str,
+    *,
+    plan: str | Path | None,
+    sweep: str | None,
+    clock: Callable[[], datetime],
+    seal: Seal,
+    progress: Callable[[str], None],
+) -> list[ReduceOutcome]:
+    """Plans carried out on the sweeps of a cooldown, each after what it rests on; see `Archive.reduce`."""
+    rows = source.index.sweeps(cooldown)
+    if not rows:
+        known = ", ".join(source.cooldowns()) or "none yet"
+        raise UnknownAddress(f"there is no cooldown {cooldown} in this archive", expected=f"one of: {known}")
+    name = None if sweep is None else sweep.rpartition("/")[2]
+    if name is not None and name not in {row.name for row in rows}:
+        raise UnknownAddress(f"there is no sweep {cooldown}/{name}", expected=f"one of: {', '.join(row.name for row in rows)}")
+    allowed, known_plans = _chosen(source, plan)
+    work: list[tuple[int, int, str, Plan]] = []
+    for position, row in enumerate(rows):
+        if name is not None and row.name != name:
+            continue
+        written = next(each for each in source.accession(row.accession).sheet.sweep if each.name == row.name)
+        cell = None if row.cell is None else source.find_record(row.cell)
+        substrate = None if row.substrate is None else source.find_record(row.substrate)
+        for each in plans_for(written, cell, substrate, allowed):
+            work.append((plan_depth(each, known_plans), position, row.address, each))
+    if not work:
+        raise BadRequest(
+            f"no plan {'here ' if plan is None else ''}is for {'this sweep' if name else 'any sweep of ' + cooldown}",
+            found="" if plan is None else str(plan),
+            remedy="stillroom plans tells what each plan is for",
+        )
+    outcomes = []
+    for number, (_, _, address, each) in enumerate(sorted(work, key=lambda item: item[:3]), 1):
+        progress(f"{address} by {each.name} ({number} of {len(work)})")
+        outcomes.append(_one(source, address, each, clock, seal))
+    return outcomes
+
+
+def _one(
+    source: LabSource, address: str, plan: Plan, clock: Callable[[], datetime], seal: Seal
+) -> ReduceOutcome:
+    earlier = source.reductions(plan.name, address)
+    newest = earlier[-1] if earlier else None
+    try:
+        made = run(
+            plan,
+            address,
+            source,
+            number=1 if newest is None else newest.number + 1,
+            clock=clock,
+            supersedes=None if newest is None else newest.address,
+        )
+    except ArchiveError as problem:
+        return ReduceOutcome(sweep=address, plan=plan.address, problem=problem)
+    if newest is not None and _same(newest, made.document):
+        return ReduceOutcome(address, plan.address, newest.address, newest, already=True)
+    seal(made.document, made.arrays)
+    return ReduceOutcome(address, plan.address, made.document.address, made.document)
+
+
+def _same(old: ReductionDocument, new: ReductionDocument) -> bool:
+    """Whether a reduction repeats the one before: same plan, same inputs, same outputs to the bit."""
+    return (
+        old.plan_digest == new.plan_digest
+        and [(entry.address, entry.digest) for entry in old.inputs] == [(entry.address, entry.digest) for entry in new.inputs]
+        and [(entry.name, entry.digest, entry.uncertainty) for entry in old.outputs]
+        == [(entry.name, entry.digest, entry.uncertainty) for entry in new.outputs]
+        and [(step.name, step.version) for step in old.steps] == [(step.name, step.version) for step in new.steps]
+    )
+
+
+def replay(source: LabSource, address: str, *, clock: Callable[[], datetime]) -> ReplayReport:
+    """A reduction computed again from raw and compared with what was sealed."""
+    document = source.reduction(address)
+    again = repeat(document, source, clock=clock)
+    unequal = [each for each in again.differences if not each.equal]
+    return ReplayReport(
+        address=document.address,
+        identical=not unequal,
+        outputs=len(again.differences),
+        largest_difference={each.name: each.relative for each in unequal},
+        shifts={each.name: each.in_uncertainties for each in unequal if each.in_uncertainties is not None},
+        changed_inputs=again.changed_inputs,
+        changed_software=again.changed_software,
+    )
+
+
+def rebuilt_index(
+    root: Path, address: str, store: LocalStore, *, progress: Callable[[int, int, str], None] | None = None
+) -> dict[str, int]:
+    """Counts of an index made anew from the sealed files; see `Archive.rebuild_index`."""
+    keys = store.keys()
+
+    def entries() -> Iterator[tuple[str, str, int, AccessionDocument | ReductionDocument]]:
+        for number, key in enumerate(sorted(keys, key=lambda key: ("@" in key, key))):
+            if progress is not None:
+                progress(number, len(keys), key)
+            damage = store.verify(key)
+            if damage:
+                raise DamagedFile(
+                    f"a sealed file is damaged: {damage[0].what}; the index stays as it was",
+                    file=key,
+                    field=damage[0].dataset,
+                    remedy="bring the file back from a copy, then rebuild the index again",
+                )
+            sealed = store.describe(key)
+            yield key, sealed.sha256, sealed.size, document_of(key, store.document(key))
+
+    with archive_lock(root):
+        try:
+            index = Index.open(address)
+        except (DamagedFile, MissingFile) as error:
+            # Every sealed file is read once before the old index is moved, so that a damaged one changes nothing.
+            for _ in entries():
+                pass
+            if isinstance(error, DamagedFile):
+                Index.set_aside(address)
+            index = Index.create(address)
+        with index:
+            index.rebuild(entries())
+            if progress is not None:
+                progress(len(keys), len(keys), "")
+            return index.statistics()
+
+
