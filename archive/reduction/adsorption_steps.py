@@ -39,7 +39,9 @@ class PlateauParameters(Record):
     """Largest rise over the range, as a share of the mean, that still is a plateau (common practice, no source)."""
 
 
-def relative_pressure(_: NoParameters, *, pressure: FloatArray, saturated_pressure: float | FloatArray) -> Outcome:
+def relative_pressure(
+    _: NoParameters, *, pressure: FloatArray, saturated_pressure: float | FloatArray
+) -> Outcome:
     """Return pressure over saturated pressure at the temperature of the film."""
     saturated = np.asarray(saturated_pressure, dtype=np.float64)
     if not (saturated[np.isfinite(saturated)] > 0).all():
@@ -47,7 +49,14 @@ def relative_pressure(_: NoParameters, *, pressure: FloatArray, saturated_pressu
     return Outcome({"relative_pressure": pressure / saturated})
 
 
-def bet(parameters: BetParameters, *, relative_pressure: FloatArray, amount: FloatArray, amount_kind: str, sample: Sample | None) -> Outcome:
+def bet(
+    parameters: BetParameters,
+    *,
+    relative_pressure: FloatArray,
+    amount: FloatArray,
+    amount_kind: str,
+    sample: Sample | None,
+) -> Outcome:
     """Return monolayer, constant and area of an isotherm by the method of Brunauer, Emmett and Teller.
 
     Raises
@@ -58,7 +67,9 @@ def bet(parameters: BetParameters, *, relative_pressure: FloatArray, amount: Flo
     gas = sample.isotope if sample is not None else "a gas that is not recorded"
     cross = parameters.cross_section_nm2 or CROSS_SECTIONS.get(gas)
     if cross is None:
-        raise ValueError(f"cross_section_nm2: the area per molecule of {gas} is not standardised; give it in a plan of your own, with its source")
+        raise ValueError(
+            f"cross_section_nm2: the area per molecule of {gas} is not standardised; give it in a plan of your own, with its source"
+        )
     rows = known_rows(relative_pressure, amount)
     bounds = None if parameters.low is None or parameters.high is None else (parameters.low, parameters.high)
     found = bet_area(relative_pressure[rows], amount[rows], cross_section=cross * 1e-18, bounds=bounds)
@@ -72,7 +83,13 @@ def bet(parameters: BetParameters, *, relative_pressure: FloatArray, amount: Flo
     label = "He-BET" if "He" in gas else f"{gas} BET"
     findings: tuple[Finding, ...] = ()
     if "He" in gas:
-        findings = (Finding(code="helium-bet", severity="note", what="an area by helium rests on an area per atom that is not standardised; never merge it with areas by nitrogen"),)
+        findings = (
+            Finding(
+                code="helium-bet",
+                severity="note",
+                what="an area by helium rests on an area per atom that is not standardised; never merge it with areas by nitrogen",
+            ),
+        )
     return Outcome(
         outputs, covariance=Covariance(names, joint), held={"low": found.low, "high": found.high},
         facts={
@@ -91,14 +108,24 @@ def plateau(parameters: PlateauParameters, *, relative_pressure: FloatArray, amo
     ValueError
         Fewer than three points in the range, or amounts that rise too much over it.
     """
-    rows = known_rows(relative_pressure, amount) & (np.nan_to_num(relative_pressure, nan=-1.0) > parameters.low)
+    rows = known_rows(relative_pressure, amount) & (
+        np.nan_to_num(relative_pressure, nan=-1.0) > parameters.low
+    )
     rows &= np.nan_to_num(relative_pressure, nan=2.0) < parameters.high
     chosen = amount[rows]
     if chosen.size < 3:
-        raise ValueError(f"relative_pressure: found {chosen.size} points between {parameters.low:g} and {parameters.high:g}, expected at least 3")
+        raise ValueError(
+            f"relative_pressure: found {chosen.size} points between {parameters.low:g} and {parameters.high:g}, expected at least 3"
+        )
     mean = float(np.mean(chosen))
     rise = float(np.ptp(chosen)) / mean
     if rise > parameters.largest_rise:
-        raise ValueError(f"amount: it rises by {rise:.0%} between {parameters.low:g} and {parameters.high:g}; that is no plateau")
+        raise ValueError(
+            f"amount: it rises by {rise:.0%} between {parameters.low:g} and {parameters.high:g}; that is no plateau"
+        )
     u = float(np.std(chosen, ddof=1)) / math.sqrt(chosen.size)
-    return Outcome({"plateau_amount": mean}, point={"plateau_amount": u}, facts={"points": int(chosen.size), "rise": rise})
+    return Outcome(
+        {"plateau_amount": mean},
+        point={"plateau_amount": u},
+        facts={"points": int(chosen.size), "rise": rise},
+    )

@@ -6,6 +6,7 @@ import math
 from typing import Literal
 
 import numpy as np
+import numpy.typing as npt
 
 from archive.physics.polynomial_background import fit_background
 from archive.reduction.estimate import FloatArray
@@ -14,7 +15,13 @@ from schemas.base import Record
 from schemas.finding import Finding
 from schemas.lineage import SourceEntry
 
-__all__ = ["AlignmentParameters", "BackgroundParameters", "added_dissipation", "background_fit", "period_drop"]
+__all__ = [
+    "AlignmentParameters",
+    "BackgroundParameters",
+    "added_dissipation",
+    "background_fit",
+    "period_drop",
+]
 
 LEAST_IN_WINDOW = 5
 """Points that an alignment needs (common practice, no source)."""
@@ -37,18 +44,20 @@ class AlignmentParameters(Record):
     high: float = 1.3
     coldest_share: float = 0.1
     """Share of the coldest rows, for `coldest`."""
-    window_low_K: float | None = None
+    window_low_kelvin: float | None = None
     """Lower end in kelvin, instead of `low`."""
-    window_high_K: float | None = None
+    window_high_kelvin: float | None = None
+    rows: tuple[int, ...] | None = None
+    """The rows to align on, from 1, in place of a window."""
 
 
-def known_rows(*columns: FloatArray | None) -> np.ndarray[tuple[int], np.dtype[np.bool_]]:
+def known_rows(*columns: FloatArray | None) -> npt.NDArray[np.bool_]:
     """Return the rows where every column has a value."""
     present = [np.isfinite(column) for column in columns if column is not None]
     return np.asarray(np.logical_and.reduce(present))
 
 
-def weights(u: FloatArray | None, rows: np.ndarray[tuple[int], np.dtype[np.bool_]]) -> FloatArray | None:
+def weights(u: FloatArray | None, rows: npt.NDArray[np.bool_] | npt.NDArray[np.int64]) -> FloatArray | None:
     """Return the uncertainties of some rows, or None if they are not all stated."""
     if u is None:
         return None
@@ -57,7 +66,11 @@ def weights(u: FloatArray | None, rows: np.ndarray[tuple[int], np.dtype[np.bool_
 
 
 def background_fit(
-    parameters: BackgroundParameters, *, temperature: FloatArray, values: FloatArray, u_values: FloatArray | None
+    parameters: BackgroundParameters,
+    *,
+    temperature: FloatArray,
+    values: FloatArray,
+    u_values: FloatArray | None,
 ) -> Outcome:
     """Return the polynomial of an empty-cell record: Chebyshev coefficients and the range they hold for.
 
@@ -92,12 +105,19 @@ def background_fit(
         covariance = covariance / chi2
     coefficients = np.asarray(found.fit.values)
     at_low = np.polynomial.chebyshev.chebvander(np.array([-1.0]), found.order)[0]
-    names = tuple(f"coefficients[{k}]" for k in range(coefficients.size)) + ("value_at_low",)
+    names = (*(f"coefficients[{k}]" for k in range(coefficients.size)), "value_at_low")
     jacobian = np.vstack([np.eye(coefficients.size), at_low])
     rms = float(np.sqrt(np.mean(np.square(found.fit.residuals))))
     findings: tuple[Finding, ...] = ()
     if not found.accepted:
-        findings = (Finding(code="background-has-shape", severity="warning", what=f"the residual of the background still has shape: {found.message}", remedy="raise highest_order, or leave out what is no smooth background"),)
+        findings = (
+            Finding(
+                code="background-has-shape",
+                severity="warning",
+                what=f"the residual of the background still has shape: {found.message}",
+                remedy="raise highest_order, or leave out what is no smooth background",
+            ),
+        )
     return Outcome(
         {"coefficients": coefficients, "low": found.low, "high": found.high, "value_at_low": float(at_low @ coefficients)},
         covariance=Covariance(names, jacobian @ covariance @ jacobian.T),
@@ -110,7 +130,9 @@ def background_fit(
     )  # fmt: skip
 
 
-def background_value(temperature: FloatArray, coefficients: FloatArray, low: float, high: float) -> FloatArray:
+def background_value(
+    temperature: FloatArray, coefficients: FloatArray, low: float, high: float
+) -> FloatArray:
     """Return the background at temperatures, NaN outside its range: it is never extrapolated."""
     # A part in 1e12 is the rounding of the ends.
     margin = 1e-12 * (high - low)
@@ -120,7 +142,9 @@ def background_value(temperature: FloatArray, coefficients: FloatArray, low: flo
     return np.where(inside, np.polynomial.chebyshev.chebval(scaled, coefficients), np.nan)
 
 
-def _outside(temperature: FloatArray, values: FloatArray, background: FloatArray, low: float, high: float) -> tuple[Finding, ...]:
+def _outside(
+    temperature: FloatArray, values: FloatArray, background: FloatArray, low: float, high: float
+) -> tuple[Finding, ...]:
     count = int(np.count_nonzero(known_rows(temperature, values) & np.isnan(background)))
     if not count:
         return ()
@@ -134,11 +158,20 @@ def _outside(temperature: FloatArray, values: FloatArray, background: FloatArray
 
 
 def added_dissipation(
-    _: NoParameters, *, temperature: FloatArray, dissipation: FloatArray, background: FloatArray, low: float, high: float
+    _: NoParameters,
+    *,
+    temperature: FloatArray,
+    dissipation: FloatArray,
+    background: FloatArray,
+    low: float,
+    high: float,
 ) -> Outcome:
     """Return the dissipation that the helium adds: Q^-1 less that of the empty cell; NaN outside the background's range."""
     empty = background_value(temperature, background, low, high)
-    return Outcome({"added_dissipation": dissipation - empty}, findings=_outside(temperature, dissipation, empty, low, high))
+    return Outcome(
+        {"added_dissipation": dissipation - empty},
+        findings=_outside(temperature, dissipation, empty, low, high),
+    )
 
 
 def period_drop(
@@ -183,7 +216,9 @@ def period_drop(
     raw = empty - period
     rows = known_rows(temperature, raw)
     if np.count_nonzero(rows) < LEAST_IN_WINDOW:
-        raise ValueError(f"temperature: found {np.count_nonzero(rows)} rows inside the background's range, expected at least {LEAST_IN_WINDOW}")
+        raise ValueError(
+            f"temperature: found {np.count_nonzero(rows)} rows inside the background's range, expected at least {LEAST_IN_WINDOW}"
+        )
     window, ends = _window(parameters, temperature, raw, rows, peak)
     shift, u_shift, count = 0.0, 0.0, 0
     if window is not None:
@@ -199,14 +234,22 @@ def period_drop(
     negative = int(np.count_nonzero(drop[rows] < -3 * np.hypot(point[rows], u_shift) - 1e-18))
     share = negative / np.count_nonzero(rows)
     if share > 0.05 and u_shift > 0:
-        findings.append(Finding(code="negative-period-drop", severity="warning", what=f"the period drop is negative by more than three standard uncertainties in {share:.0%} of the rows; the sign convention or the alignment is wrong"))
-    source = SourceEntry(name="own alignment", description="alignment of the background, one constant for the run", level="run")
+        findings.append(
+            Finding(
+                code="negative-period-drop",
+                severity="warning",
+                what=f"the period drop is negative by more than three standard uncertainties in {share:.0%} of the rows; the sign convention or the alignment is wrong",
+            )
+        )
+    source = SourceEntry(
+        name="own alignment", description="alignment of the background, one constant for the run", level="run"
+    )
     return Outcome(
         {"period_drop": drop, "shift": shift},
         point={"period_drop": point},
         shared={"period_drop": {"own alignment": u_shift}, "shift": {"own alignment": u_shift}} if u_shift else {},
         sources=(source,) if u_shift else (),
-        held={"window_low_K": ends[0], "window_high_K": ends[1]} if window is not None else {},
+        held={"rows": tuple(int(row) + 1 for row in np.flatnonzero(window))} if window is not None else {},
         facts={
             "alignment": parameters.align, "window_low_K": ends[0], "window_high_K": ends[1], "rows_in_window": count,
             "shift_s": shift, "shift_uncertainty_s": u_shift,
@@ -215,7 +258,7 @@ def period_drop(
     )  # fmt: skip
 
 
-_Rows = np.ndarray[tuple[int], np.dtype[np.bool_]]
+_Rows = npt.NDArray[np.bool_]
 
 
 def _window(
@@ -223,20 +266,24 @@ def _window(
 ) -> tuple[_Rows | None, tuple[float | None, float | None]]:
     if parameters.align == "none":
         return None, (None, None)
+    if parameters.rows is not None:
+        chosen = np.zeros(T.shape, dtype=np.bool_)
+        chosen[np.array(parameters.rows, dtype=np.int64) - 1] = True
+        return chosen & rows, (float(np.nanmin(T[chosen])), float(np.nanmax(T[chosen])))
     if parameters.align == "coldest":
         low = float(np.min(T[rows]))
         high = float(np.quantile(T[rows], parameters.coldest_share))
     else:
         about = peak if peak is not None else steepest_fall(T[rows], raw[rows])
         low, high = parameters.low * about, parameters.high * about
-    low = low if parameters.window_low_K is None else parameters.window_low_K
-    high = high if parameters.window_high_K is None else parameters.window_high_K
+    low = low if parameters.window_low_kelvin is None else parameters.window_low_kelvin
+    high = high if parameters.window_high_kelvin is None else parameters.window_high_kelvin
     window = rows & (np.nan_to_num(T, nan=-1.0) >= low) & (np.nan_to_num(T, nan=-1.0) <= high)
     count = int(np.count_nonzero(window))
     if count < LEAST_IN_WINDOW:
         raise ValueError(
             f"temperature: found {count} rows between {low:.5g} K and {high:.5g} K, where the film is taken to be normal, "
-            f"expected at least {LEAST_IN_WINDOW}; set window_low_K and window_high_K, or another alignment"
+            f"expected at least {LEAST_IN_WINDOW}; set window_low_kelvin and window_high_kelvin, or another alignment"
         )
     return window, (low, high)
 

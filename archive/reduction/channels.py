@@ -47,7 +47,9 @@ def channel_meant(facts: SweepFacts, name: str) -> str | None:
     BadRequest
         Several channels fit, or the one meant is not to be used.
     """
-    used = {n: c for n, c in facts.channels.items() if c.use and any(e.name == n for e in facts.entry.channels)}
+    used = {
+        n: c for n, c in facts.channels.items() if c.use and any(e.name == n for e in facts.entry.channels)
+    }
     if name == "@thermometer":
         return _thermometer(facts, used)
     if not name.startswith("@"):
@@ -88,7 +90,9 @@ def _thermometer(facts: SweepFacts, used: dict[str, Channel]) -> str | None:
     return fitting[0] if fitting else None
 
 
-def channel_estimate(source: Source, facts: SweepFacts, name: str) -> tuple[Estimate, tuple[SourceEntry, ...]]:
+def channel_estimate(
+    source: Source, facts: SweepFacts, name: str
+) -> tuple[Estimate, tuple[SourceEntry, ...]]:
     """Return a channel in SI units with its uncertainty, and the sources that it introduces.
 
     Raises
@@ -115,7 +119,9 @@ def channel_estimate(source: Source, facts: SweepFacts, name: str) -> tuple[Esti
     try:
         factor = unit_factor(stored.unit, channel.quantity)
     except ValueError as error:
-        raise BadRequest(f"channel {place}: {error}", field=f"channels.{name}.unit", remedy="correct the unit") from None
+        raise BadRequest(
+            f"channel {place}: {error}", field=f"channels.{name}.unit", remedy="correct the unit"
+        ) from None
     factor *= _rms_factor(facts, channel)
     value = raw * factor
     part = _uncertainty(channel, value, factor, place)
@@ -154,7 +160,10 @@ def _uncertainty(channel: Channel, value: FloatArray, factor: float, place: str)
     try:
         stated = Quantity.parse(channel.uncertainty, kind)
     except ValueError as error:
-        raise BadRequest(f"uncertainty of channel {place}: {error}", expected="a quantity such as `2 ns` or a share such as `0.01 %`") from None
+        raise BadRequest(
+            f"uncertainty of channel {place}: {error}",
+            expected="a quantity such as `2 ns` or a share such as `0.01 %`",
+        ) from None
     # A convention written beside the uncertainty itself counts; otherwise it is that of the channel.
     unit_si = unit_factor(channel.unit or "1", channel.quantity)
     own = rms_value(stated) if stated.convention else factor / unit_si

@@ -30,5 +30,7 @@ def array_digest(values: npt.ArrayLike) -> str:
 
 def record_digest(record: BaseModel) -> str:
     """Return the SHA-256 of a record as JSON with sorted keys and no white space."""
-    text = json.dumps(record.model_dump(mode="json"), sort_keys=True, separators=(",", ":"), ensure_ascii=False)
+    text = json.dumps(
+        record.model_dump(mode="json"), sort_keys=True, separators=(",", ":"), ensure_ascii=False
+    )
     return hashlib.sha256(text.encode()).hexdigest()

@@ -26,6 +26,7 @@ __all__ = ["Estimate", "covariance_between"]
 
 FloatArray = npt.NDArray[np.float64]
 
+
 @dataclass(frozen=True)
 class Estimate:
     """A number or a column of numbers in SI units, with standard uncertainty.
@@ -57,6 +58,7 @@ class Estimate:
     scale: str | None = None
 
     def __post_init__(self) -> None:
+        """Refuse shapes that do not fit, and leave out sources that contribute nothing."""
         value = np.asarray(self.value, dtype=np.float64)
         if value.ndim > 1:
             raise ValueError(f"value: found {value.ndim} dimensions, expected a number or one column")
@@ -66,7 +68,9 @@ class Estimate:
         shared = {name: _fitting(name, part, value.shape) for name, part in self.shared.items()}
         object.__setattr__(self, "value", value)
         object.__setattr__(self, "point", point)
-        object.__setattr__(self, "shared", MappingProxyType({n: p for n, p in shared.items() if np.any(p != 0)}))
+        object.__setattr__(
+            self, "shared", MappingProxyType({n: p for n, p in shared.items() if np.any(p != 0)})
+        )
 
     @property
     def scalar(self) -> bool:
@@ -121,4 +125,6 @@ def covariance_between(first: Estimate, second: Estimate) -> float:
     """
     if not (first.scalar and second.scalar):
         raise ValueError("first, second: found a column, expected two numbers")
-    return float(sum(float(part * second.shared[name]) for name, part in first.shared.items() if name in second.shared))
+    return float(
+        sum(float(part * second.shared[name]) for name, part in first.shared.items() if name in second.shared)
+    )

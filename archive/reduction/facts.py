@@ -114,7 +114,9 @@ def accession_of(source: Source, sweep_address: str) -> tuple[AccessionDocument,
     except ValueError as error:
         raise BadRequest(str(error)) from None
     if address.kind != "item" or address.item is None:
-        raise BadRequest(f"{sweep_address} is not the address of a sweep", expected="an address such as 2026-03/s017")
+        raise BadRequest(
+            f"{sweep_address} is not the address of a sweep", expected="an address such as 2026-03/s017"
+        )
     for accession in reversed(source.accessions(address.head)):
         for entry in accession.sweeps:
             if entry.name == address.item:

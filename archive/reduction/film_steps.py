@@ -6,6 +6,7 @@ import math
 from functools import lru_cache
 
 import numpy as np
+import numpy.typing as npt
 
 from archive.physics import film_dynamic, film_features, film_static
 from archive.physics.constants import MOLAR_MASS_HELIUM4
@@ -46,10 +47,10 @@ class DensityParameters(Record):
 class PeakParameters(Record):
     """How the maximum of the dissipation is read."""
 
-    share: float = 0.7
+    share: float = 0.6
     """Rows of at least this share of the maximum are fitted."""
-    low_K: float | None = None
-    high_K: float | None = None
+    rows: tuple[int, ...] | None = None
+    """The rows to fit, from 1, in place of that rule."""
 
 
 class CrossingParameters(Record):
@@ -118,19 +119,31 @@ def superfluid_density(
     if sample is not None and sample.isotope not in ("4He", "3He-4He"):
         raise ValueError(f"sample: found {sample.isotope}, expected 4He")
     if slope_past is None and parameters.drag_factor is None:
-        raise ValueError("slope_past: no dose run gives the part of the film that is dragged along; set drag_factor in a plan of your own, 0 for a smooth flat disc")
+        raise ValueError(
+            "slope_past: no dose run gives the part of the film that is dragged along; set drag_factor in a plan of your own, 0 for a smooth flat disc"
+        )
     if not area > 0:
         raise ValueError(f"area: found {area} m^2, expected > 0")
     chi = parameters.drag_factor if slope_past is None else slope_past / slope_below
     assert chi is not None  # noqa: S101 - refused above
     per_areal_density = slope_below * area / MOLAR_MASS_HELIUM4
-    sigma = film_static.superfluid_areal_density(period_drop, period_per_areal_density=per_areal_density, drag_factor=chi)
-    facts = {"period_per_areal_density": per_areal_density * 1e9, "chi": chi, "chi_from": "the slopes of the dose run" if slope_past is not None else "the plan"}
+    sigma = film_static.superfluid_areal_density(
+        period_drop, period_per_areal_density=per_areal_density, drag_factor=chi
+    )
+    facts = {
+        "period_per_areal_density": per_areal_density * 1e9,
+        "chi": chi,
+        "chi_from": "the slopes of the dose run" if slope_past is not None else "the plan",
+    }
     return Outcome({"superfluid_density": sigma}, facts=facts)
 
 
 def dissipation_peak(
-    parameters: PeakParameters, *, temperature: FloatArray, dissipation: FloatArray, u_dissipation: FloatArray | None
+    parameters: PeakParameters,
+    *,
+    temperature: FloatArray,
+    dissipation: FloatArray,
+    u_dissipation: FloatArray | None,
 ) -> Outcome:
     """Return the temperature and height of the dissipation peak, from a cubic through its top.
 
@@ -140,19 +153,30 @@ def dissipation_peak(
         No peak inside the record.
     """
     rows = known_rows(temperature, dissipation)
-    T, q, u = temperature[rows], dissipation[rows], weights(u_dissipation, rows)
-    if T.size < 8:
-        raise ValueError(f"dissipation: found {T.size} rows, expected at least 8")
-    order = np.argsort(T, kind="stable")
-    T, q = T[order], q[order]
-    u = u[order] if u is not None else None
-    low, high = _top(parameters, T, q)
-    top = (low <= T) & (high >= T)
-    if np.count_nonzero(top) < 6:
-        raise ValueError(f"dissipation: found {np.count_nonzero(top)} rows in the top of the peak, from {low:.5g} K to {high:.5g} K, expected at least 6")
+    if np.count_nonzero(rows) < 8:
+        raise ValueError(f"dissipation: found {np.count_nonzero(rows)} rows, expected at least 8")
+    order = np.flatnonzero(rows)[np.argsort(temperature[rows], kind="stable")]
+    chosen = (
+        np.array(parameters.rows, dtype=np.int64) - 1
+        if parameters.rows
+        else _top(temperature[order], dissipation[order], order, parameters.share)
+    )
+    T, q = temperature[chosen], dissipation[chosen]
+    u = weights(u_dissipation, chosen)
+    low, high = float(T.min()), float(T.max())
+    if chosen.size < 5:
+        raise ValueError(
+            f"dissipation: found {chosen.size} rows in the top of the peak, from {low:.5g} K to {high:.5g} K, expected at least 5"
+        )
     centre, half = (low + high) / 2, (high - low) / 2
-    x = (T[top] - centre) / half
-    fit = linear_fit(np.vander(x, 4, increasing=True), q[top], names=("a", "b", "c", "d"), standard_uncertainty=None if u is None else u[top], absolute=False)
+    x = (T - centre) / half
+    fit = linear_fit(
+        np.vander(x, 4, increasing=True),
+        q,
+        names=("a", "b", "c", "d"),
+        standard_uncertainty=u,
+        absolute=False,
+    )
     _, b, c, d = map(float, fit.values)
     at = _vertex(b, c, d)
     if not -1 < at < 1:
@@ -165,23 +189,31 @@ def dissipation_peak(
     covariance = jacobian @ fit.covariance @ jacobian.T
     outputs = {"peak_temperature": centre + half * at, "peak_height": float(powers @ fit.values)}
     return Outcome(
-        outputs, covariance=Covariance(("peak_temperature", "peak_height"), covariance), held={"low_K": low, "high_K": high},
-        facts={"points": int(np.count_nonzero(top)), "low_K": low, "high_K": high},
+        outputs, covariance=Covariance(("peak_temperature", "peak_height"), covariance), held={"rows": tuple(int(row) + 1 for row in chosen)},
+        facts={"points": int(chosen.size), "low_K": low, "high_K": high},
     )  # fmt: skip
 
 
-def _top(parameters: PeakParameters, T: FloatArray, q: FloatArray) -> tuple[float, float]:
-    if parameters.low_K is not None and parameters.high_K is not None:
-        return parameters.low_K, parameters.high_K
+def _top(T: FloatArray, q: FloatArray, order: npt.NDArray[np.int64], share: float) -> npt.NDArray[np.int64]:
+    """Return the rows around the maximum with at least a share of it, smoothed twice: roughly, then finer than the peak."""
     width = max(1, min(T.size // 40, 25))
-    smooth = np.convolve(np.pad(q, width, mode="edge"), np.ones(2 * width + 1) / (2 * width + 1), mode="valid")
-    k = int(np.argmax(smooth))
-    enough = smooth >= parameters.share * smooth[k]
-    first = k - int(np.argmin(enough[k::-1])) if not enough[: k + 1].all() else -1
-    after = k + int(np.argmin(enough[k:])) if not enough[k:].all() else T.size
-    if first < 0 or after >= T.size:
-        raise ValueError("dissipation: it does not fall to either side of its maximum inside the record; there is no peak")
-    return float(T[first + 1]), float(T[after - 1])
+    first, after = 0, T.size
+    for _ in range(3):
+        smooth = _smoothed(q, width)
+        k = first + int(np.argmax(smooth[first:after]))
+        enough = smooth >= share * smooth[k]
+        before, behind = np.flatnonzero(~enough[:k]), np.flatnonzero(~enough[k:])
+        if not (before.size and behind.size):
+            raise ValueError(
+                "dissipation: it does not fall to either side of its maximum inside the record; there is no peak"
+            )
+        first, after = int(before[-1]) + 1, k + int(behind[0])
+        width = max(1, min(width, (after - first) // 10))
+    return order[first:after]
+
+
+def _smoothed(q: FloatArray, width: int) -> FloatArray:
+    return np.convolve(np.pad(q, width, mode="edge"), np.ones(2 * width + 1) / (2 * width + 1), mode="valid")
 
 
 def _vertex(b: float, c: float, d: float) -> float:
@@ -211,10 +243,14 @@ def universal_crossing(
     u = weights(u_superfluid_density, rows)
     points = parameters.points or _points(T, sigma, u, parameters)
     if u is not None and u_temperature is not None:
-        rough = crossing_of_universal_line(T, sigma, standard_uncertainty=u, points=points, order=parameters.order)
+        rough = crossing_of_universal_line(
+            T, sigma, standard_uncertainty=u, points=points, order=parameters.order
+        )
         if rough.found:
             u = np.hypot(u, rough.slope * u_temperature[rows])
-    found = crossing_of_universal_line(T, sigma, standard_uncertainty=u, points=points, order=parameters.order)
+    found = crossing_of_universal_line(
+        T, sigma, standard_uncertainty=u, points=points, order=parameters.order
+    )
     if not found.found:
         raise ValueError(f"superfluid_density: {found.reason}")
     return Outcome(
@@ -225,7 +261,9 @@ def universal_crossing(
 
 def _points(T: FloatArray, sigma: FloatArray, u: FloatArray | None, parameters: CrossingParameters) -> int:
     least = parameters.order + 6
-    rough = crossing_of_universal_line(T, sigma, standard_uncertainty=u, points=max(least, T.size // 50), order=1)
+    rough = crossing_of_universal_line(
+        T, sigma, standard_uncertainty=u, points=max(least, T.size // 50), order=1
+    )
     if not rough.found:
         return least
     near = int(np.count_nonzero(np.abs(T / rough.temperature - 1) < parameters.half_width))
@@ -240,7 +278,9 @@ def _shift(b: float, L: float, F: float, x0: float) -> float:
 
 @lru_cache(maxsize=256)
 def _peak_ratio(b: float, L: float, F: float, x0: float) -> float:
-    return film_features.dissipation_peak(lambda ratio: film_dynamic.fixed_start(ratio, b=b, x0=x0), L=L, F=F).ratio
+    return film_features.dissipation_peak(
+        lambda ratio: film_dynamic.fixed_start(ratio, b=b, x0=x0), L=L, F=F
+    ).ratio
 
 
 @lru_cache(maxsize=256)
@@ -251,7 +291,9 @@ def _at_transition(b: float, L: float, F: float, x0: float) -> float:
     return float(film_dynamic.reduced_response(ratio, stiffness)[0][0])
 
 
-def _held(parameters: DynamicParameters, period: float | FloatArray) -> tuple[dict[str, float], list[tuple[str, float, str]]]:
+def _held(
+    parameters: DynamicParameters, period: float | FloatArray
+) -> tuple[dict[str, float], list[tuple[str, float, str]]]:
     """Return the held parameters at the oscillator's frequency, and their uncertainties with the names of the sources."""
     P = float(np.nanmedian(period))
     # Rounded, so that a period moved by a nanosecond does not start the flow integration anew.
@@ -265,7 +307,9 @@ def _held(parameters: DynamicParameters, period: float | FloatArray) -> tuple[di
     return values, spreads
 
 
-def _theory(function: object, parameters: DynamicParameters, period: float | FloatArray) -> tuple[float, dict[str, float], tuple[SourceEntry, ...], dict[str, float]]:
+def _theory(
+    function: object, parameters: DynamicParameters, period: float | FloatArray
+) -> tuple[float, dict[str, float], tuple[SourceEntry, ...], dict[str, float]]:
     """Return a number of the dynamic theory, what each held parameter contributes, the sources, and the values."""
     assert callable(function)  # noqa: S101 - one of the three cached functions above
     values, spreads = _held(parameters, period)
@@ -275,11 +319,19 @@ def _theory(function: object, parameters: DynamicParameters, period: float | Flo
         if u > 0:
             up, down = (function(**{**values, key: values[key] + sign * u}) for sign in (1, -1))
             parts[name] = (up - down) / 2
-            entries.append(SourceEntry(name=name, description=f"standard uncertainty {u:g} of the held parameter", level="laboratory"))
+            entries.append(
+                SourceEntry(
+                    name=name,
+                    description=f"standard uncertainty {u:g} of the held parameter",
+                    level="laboratory",
+                )
+            )
     return float(function(**values)), parts, tuple(entries), values
 
 
-def static_transition(parameters: DynamicParameters, *, crossing: float, period: float | FloatArray) -> Outcome:
+def static_transition(
+    parameters: DynamicParameters, *, crossing: float, period: float | FloatArray
+) -> Outcome:
     """Return the static transition temperature from the crossing, which the dynamics moves up.
 
     Parameters
@@ -298,19 +350,33 @@ def static_transition(parameters: DynamicParameters, *, crossing: float, period:
     T = crossing / (1 + shift)
     shared = {name: -T / (1 + shift) * part for name, part in parts.items()}
     facts = {"shift_mK": (crossing - T) * 1e3, "relative_shift": shift, "L": values["L"]}
-    return Outcome({"transition_temperature": T}, shared={"transition_temperature": shared}, sources=sources, facts=facts)
+    return Outcome(
+        {"transition_temperature": T}, shared={"transition_temperature": shared}, sources=sources, facts=facts
+    )
 
 
-def transition_from_peak(parameters: DynamicParameters, *, peak: float, period: float | FloatArray) -> Outcome:
+def transition_from_peak(
+    parameters: DynamicParameters, *, peak: float, period: float | FloatArray
+) -> Outcome:
     """Return the static transition temperature from the dissipation peak, which rests on no areal density."""
     ratio, parts, sources, values = _theory(_peak_ratio, parameters, period)
     T = peak / ratio
     shared = {name: -T / ratio * part for name, part in parts.items()}
-    return Outcome({"transition_temperature": T}, shared={"transition_temperature": shared}, sources=sources, facts={"ratio": ratio, "L": values["L"], "shift_mK": (peak - T) * 1e3})
+    return Outcome(
+        {"transition_temperature": T},
+        shared={"transition_temperature": shared},
+        sources=sources,
+        facts={"ratio": ratio, "L": values["L"], "shift_mK": (peak - T) * 1e3},
+    )
 
 
 def universal_ratio(
-    parameters: DynamicParameters, *, temperature: FloatArray, superfluid_density: FloatArray, transition: float, period: float | FloatArray
+    parameters: DynamicParameters,
+    *,
+    temperature: FloatArray,
+    superfluid_density: FloatArray,
+    transition: float,
+    period: float | FloatArray,
 ) -> Outcome:
     """Return sigma_s(T_KT)/T_KT over the universal constant: a test of area, mass loading and alignment.
 
@@ -332,9 +398,16 @@ def universal_ratio(
     rows = known_rows(temperature, superfluid_density)
     near = rows & (np.abs(np.nan_to_num(temperature) / transition - 1) < 0.01)
     if np.count_nonzero(near) < 6:
-        raise ValueError(f"temperature: found {np.count_nonzero(near)} rows within one per cent of {transition:.5g} K, expected at least 6")
+        raise ValueError(
+            f"temperature: found {np.count_nonzero(near)} rows within one per cent of {transition:.5g} K, expected at least 6"
+        )
     x = temperature[near] / transition - 1
-    fit = linear_fit(np.vander(x / 0.01, 3, increasing=True), superfluid_density[near], names=("level", "slope", "curve"), absolute=False)
+    fit = linear_fit(
+        np.vander(x / 0.01, 3, increasing=True),
+        superfluid_density[near],
+        names=("level", "slope", "curve"),
+        absolute=False,
+    )
     excess, parts, sources, _ = _theory(_at_transition, parameters, period)
     density = float(fit.values[0]) / excess
     ratio = density / (film_static.UNIVERSAL_JUMP * transition)
@@ -342,7 +415,13 @@ def universal_ratio(
     shared = {name: -part / excess for name, part in parts.items()}
     findings: tuple[Finding, ...] = ()
     if abs(ratio - 1) > 0.15:
-        findings = (Finding(code="universal-line", severity="warning" if transition < 1 else "note", what=f"sigma_s(T_KT)/T_KT is {ratio:.3f} of the universal value; more than 15 per cent off points to area, chi or alignment, above 1 K also to dense vapour"),)
+        findings = (
+            Finding(
+                code="universal-line",
+                severity="warning" if transition < 1 else "note",
+                what=f"sigma_s(T_KT)/T_KT is {ratio:.3f} of the universal value; more than 15 per cent off points to area, chi or alignment, above 1 K also to dense vapour",
+            ),
+        )
     return Outcome(
         {"ratio": ratio, "density_at_transition": density},
         point={"ratio": u / (film_static.UNIVERSAL_JUMP * transition), "density_at_transition": u},
@@ -352,7 +431,11 @@ def universal_ratio(
 
 
 def power_law_transition(
-    parameters: PowerLawParameters, *, temperature: FloatArray, superfluid_density: FloatArray, u_superfluid_density: FloatArray | None
+    parameters: PowerLawParameters,
+    *,
+    temperature: FloatArray,
+    superfluid_density: FloatArray,
+    u_superfluid_density: FloatArray | None,
 ) -> Outcome:
     """Return T_c, exponent and amplitude of a power law, as films in porous media follow.
 
@@ -367,10 +450,26 @@ def power_law_transition(
         raise ValueError(f"superfluid_density: found {T.size} rows, expected at least 8")
     gone = sigma < 0.02 * float(np.max(sigma))
     start = float(np.min(T[gone])) if gone.any() else float(np.max(T))
-    found = fit_power_law(T, sigma, start_temperature=start, window=(parameters.low, parameters.high), standard_uncertainty=u, absolute=False)
+    found = fit_power_law(
+        T,
+        sigma,
+        start_temperature=start,
+        window=(parameters.low, parameters.high),
+        standard_uncertainty=u,
+        absolute=False,
+    )
     if not found.converged:
         raise ValueError(f"superfluid_density: the power law was not fitted: {found.message}")
     fit = found.fit
-    outputs = {"transition_temperature": fit.value("transition_temperature"), "exponent": fit.value("exponent"), "amplitude": fit.value("amplitude")}
-    facts = {"points": int(np.count_nonzero(found.used)), "reduced_chi2": fit.reduced_chi2 if u is not None else math.nan, "low": parameters.low, "high": parameters.high}
+    outputs = {
+        "transition_temperature": fit.value("transition_temperature"),
+        "exponent": fit.value("exponent"),
+        "amplitude": fit.value("amplitude"),
+    }
+    facts = {
+        "points": int(np.count_nonzero(found.used)),
+        "reduced_chi2": fit.reduced_chi2 if u is not None else math.nan,
+        "low": parameters.low,
+        "high": parameters.high,
+    }
     return Outcome(outputs, covariance=Covariance(fit.names, np.asarray(fit.covariance)), facts=facts)

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field
-from typing import TypeVar
+from typing import Literal, TypeVar
 
 import numpy as np
 
@@ -61,7 +61,7 @@ class _Terms:
             self.sources.setdefault(source.name, (source, {}))[1][term] = u
 
 
-def helium_isotope(sample: Sample | None) -> str:
+def helium_isotope(sample: Sample | None) -> Literal["3He", "4He"]:
     """Return the isotope whose virial coefficient counts.
 
     Raises
@@ -71,9 +71,9 @@ def helium_isotope(sample: Sample | None) -> str:
     """
     if sample is None:
         raise ValueError("sample: the gas of the run is not recorded; name the sample in the sheet")
-    if sample.isotope not in ("4He", "3He"):
-        raise ValueError(f"sample: found {sample.isotope} ({sample.address}), expected 4He or 3He")
-    return sample.isotope
+    if sample.isotope == "4He" or sample.isotope == "3He":  # noqa: PLR1714 - narrows the type
+        return sample.isotope
+    raise ValueError(f"sample: found {sample.isotope} ({sample.address}), expected 4He or 3He")
 
 
 def dose_amounts(book: GasBook, sample: Sample | None) -> tuple[list[DoseAmount], dict[str, SourceEntry]]:
@@ -95,13 +95,21 @@ def dose_amounts(book: GasBook, sample: Sample | None) -> tuple[list[DoseAmount]
     return found, sources
 
 
-def _dose_amount(book: GasBook, dose: Dose, sample: Sample | None, sources: dict[str, SourceEntry]) -> DoseAmount:
+def _dose_amount(
+    book: GasBook, dose: Dose, sample: Sample | None, sources: dict[str, SourceEntry]
+) -> DoseAmount:
     counted = dose.crossed_out is None
     if dose.amount is not None:
         terms = _Terms()
-        stated = SourceEntry(name=f"amount of dose {dose.name} in {book.cooldown}", description=f"stated: {dose.amount.format()}", level="run", address=f"{book.cooldown}/{dose.name}")
+        stated = SourceEntry(
+            name=f"amount of dose {dose.name} in {book.cooldown}",
+            description=f"stated: {dose.amount.format()}",
+            level="run",
+            address=f"{book.cooldown}/{dose.name}",
+        )
         terms.add("amount", dose.amount, stated)
-        function, method = _stated_amount, "as stated in the notebook"
+        function: Callable[[Mapping[str, float]], float] = _stated_amount
+        method = "as stated in the notebook"
     else:
         terms = _terms_of(book, dose)
         isotope = helium_isotope(sample)
@@ -110,7 +118,9 @@ def _dose_amount(book: GasBook, dose: Dose, sample: Sample | None, sources: dict
     amount = _amount(terms, function, outward=outward)
     sources |= {name: source for name, (source, _) in terms.sources.items()}
     if not outward and not amount.value > 0:
-        raise ValueError(f"dose {dose.name}: the pressures say that gas came out ({float(amount.value) * 1e6:.4g} umol); write act = \"remove\" or correct them")
+        raise ValueError(
+            f'dose {dose.name}: the pressures say that gas came out ({float(amount.value) * 1e6:.4g} umol); write act = "remove" or correct them'
+        )
     return DoseAmount(dose, counted, amount, method)
 
 
@@ -131,10 +141,14 @@ def _stated_amount(values: Mapping[str, float]) -> float:
     return values["amount"]
 
 
-def _metered(isotope: str) -> Callable[[Mapping[str, float]], float]:
+def _metered(isotope: Literal["3He", "4He"]) -> Callable[[Mapping[str, float]], float]:
     def amount(values: Mapping[str, float]) -> float:
         densities = [
-            float(molar_density(max(values["gain"] * (values[p] - values["zero"]), 0.0), values[T], isotope=isotope))  # type: ignore[arg-type]
+            float(
+                molar_density(
+                    max(values["gain"] * (values[p] - values["zero"]), 0.0), values[T], isotope=isotope
+                )
+            )
             for p, T in (("p1", "T1"), ("p2", "T2"))
         ]
         return values["V"] * (densities[0] - densities[1])
@@ -148,28 +162,63 @@ def _terms_of(book: GasBook, dose: Dose) -> _Terms:
     place = f"{book.cooldown}/{dose.name}"
     terms = _Terms({"zero": 0.0, "gain": 1.0})
     # Equal statements about a metering volume are one source, also from cooldown to cooldown.
-    volume = SourceEntry(name=f"volume of doser {doser.name}, {doser.volume.format()}", description=doser.how, level="laboratory")
+    volume = SourceEntry(
+        name=f"volume of doser {doser.name}, {doser.volume.format()}",
+        description=doser.how,
+        level="laboratory",
+    )
     terms.add("V", doser.volume, volume)
-    for term, pressure, word in (("p1", dose.pressure_before, "before"), ("p2", dose.pressure_after, "after")):
+    for term, pressure, word in (
+        ("p1", dose.pressure_before, "before"),
+        ("p2", dose.pressure_after, "after"),
+    ):
         if pressure is None:
             raise ValueError(f"dose {dose.name}: pressure_{word} is missing")
         if pressure.convention == "gauge" or (gauge is not None and gauge.convention == "gauge"):
-            raise ValueError(f"dose {dose.name}: pressure_{word} is a gauge pressure and the ambient pressure is not recorded; write absolute pressures")
+            raise ValueError(
+                f"dose {dose.name}: pressure_{word} is a gauge pressure and the ambient pressure is not recorded; write absolute pressures"
+            )
         own = pressure.si_uncertainty
         if own is None and gauge is not None and gauge.uncertainty is not None:
             own = gauge.uncertainty.si
-        terms.add(term, pressure, SourceEntry(name=f"reading {word} {place}", description=f"pressure {word} dose {dose.name}", level="run", address=place), own)
+        terms.add(
+            term,
+            pressure,
+            SourceEntry(
+                name=f"reading {word} {place}",
+                description=f"pressure {word} dose {dose.name}",
+                level="run",
+                address=place,
+            ),
+            own,
+        )
     before = dose.temperature_before
     if before is None:
         raise ValueError(f"dose {dose.name}: temperature_before is missing")
-    warm = SourceEntry(name=f"temperature of doser {doser.name} in {book.cooldown}", description="temperature of the metering volume, common to all its doses", level="run")
+    warm = SourceEntry(
+        name=f"temperature of doser {doser.name} in {book.cooldown}",
+        description="temperature of the metering volume, common to all its doses",
+        level="run",
+    )
     terms.add("T1", before, warm)
     terms.add("T2", dose.temperature_after or before, warm)
     if gauge is not None:
         if gauge.zero is not None:
-            terms.add("zero", gauge.zero, SourceEntry(name=f"zero of gauge {gauge.name} in {book.cooldown}", description=f"stated: {gauge.zero.format()}", level="run"))
+            terms.add(
+                "zero",
+                gauge.zero,
+                SourceEntry(
+                    name=f"zero of gauge {gauge.name} in {book.cooldown}",
+                    description=f"stated: {gauge.zero.format()}",
+                    level="run",
+                ),
+            )
         if gauge.relative_uncertainty is not None:
-            entry = SourceEntry(name=f"gain of gauge {gauge.name} in {book.cooldown}", description=f"relative standard uncertainty {gauge.relative_uncertainty:.3g}", level="run")
+            entry = SourceEntry(
+                name=f"gain of gauge {gauge.name} in {book.cooldown}",
+                description=f"relative standard uncertainty {gauge.relative_uncertainty:.3g}",
+                level="run",
+            )
             terms.sources[entry.name] = (entry, {"gain": gauge.relative_uncertainty})
     return terms
 

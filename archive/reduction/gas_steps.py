@@ -52,7 +52,9 @@ class ThicknessParameters(Record):
     inner_thickness_nm: float = 0.0
 
 
-def amount_from_doses(_: NoParameters, *, gas: GasBook, sample: Sample | None, time: FloatArray | None) -> Outcome:
+def amount_from_doses(
+    _: NoParameters, *, gas: GasBook, sample: Sample | None, time: FloatArray | None
+) -> Outcome:
     """Return the amount of gas in the cell's system: after the last dose, or at each row of a run of doses.
 
     Parameters
@@ -69,21 +71,22 @@ def amount_from_doses(_: NoParameters, *, gas: GasBook, sample: Sample | None, t
     """
     doses, entries = dose_amounts(gas, sample)
     counted = [each for each in doses if each.counted]
-    facts = {
+    facts: dict[str, object] = {
         "crossed_out": [each.dose.name for each in doses if not each.counted],
         "method": METHOD if any(each.dose.amount is None for each in counted) else "as stated in the notebook",
     }  # fmt: skip
     if gas.during:
         if time is None:
-            raise ValueError(f"time: doses {', '.join(gas.during)} were admitted during the sweep, and no channel gives the time of a row")
+            raise ValueError(
+                f"time: doses {', '.join(gas.during)} were admitted during the sweep, and no channel gives the time of a row"
+            )
         return _running(counted, entries, time, facts)
     last = gas.admitted
     if last is not None and last not in {each.dose.name for each in doses}:
         raise ValueError(f"gas: the sweep follows dose {last}, and the sheet has no such dose")
     taken = [] if last is None else _up_to(counted, doses, last)
-    value = float(sum(float(each.amount.value) for each in taken))
     facts |= {"doses": len(taken), "last": last or "none"}
-    return _total(taken, entries, value, gas.cooldown, last, facts)
+    return _total(taken, entries, gas.cooldown, last, facts)
 
 
 def _up_to(counted: list[DoseAmount], doses: list[DoseAmount], last: str) -> list[DoseAmount]:
@@ -92,8 +95,13 @@ def _up_to(counted: list[DoseAmount], doses: list[DoseAmount], last: str) -> lis
 
 
 def _total(
-    taken: list[DoseAmount], entries: dict[str, SourceEntry], value: float, cooldown: str, last: str | None, facts: dict[str, object]
+    taken: list[DoseAmount],
+    entries: dict[str, SourceEntry],
+    cooldown: str,
+    last: str | None,
+    facts: dict[str, object],
 ) -> Outcome:
+    value = math.fsum(float(each.amount.value) for each in taken)
     shared: dict[str, float] = {}
     readings = 0.0
     for each in taken:
@@ -105,13 +113,19 @@ def _total(
                 shared[name] = shared.get(name, 0.0) + float(part)
     sources = [entries[name] for name in shared]
     if readings > 0:
-        entry = SourceEntry(name=f"readings of the doses up to {last} in {cooldown}", description="noise of the single pressure readings", level="run")
+        entry = SourceEntry(
+            name=f"readings of the doses up to {last} in {cooldown}",
+            description="noise of the single pressure readings",
+            level="run",
+        )
         shared[entry.name] = math.sqrt(readings)
         sources.append(entry)
     return Outcome({"amount": value}, shared={"amount": shared}, sources=tuple(sources), facts=facts)
 
 
-def _running(counted: list[DoseAmount], entries: dict[str, SourceEntry], time: FloatArray, facts: dict[str, object]) -> Outcome:
+def _running(
+    counted: list[DoseAmount], entries: dict[str, SourceEntry], time: FloatArray, facts: dict[str, object]
+) -> Outcome:
     ats = np.array([each.dose.at.timestamp() for each in counted])
     admitted = time[:, np.newaxis] >= ats[np.newaxis, :]
     amount = admitted @ np.array([float(each.amount.value) for each in counted])
@@ -121,11 +135,21 @@ def _running(counted: list[DoseAmount], entries: dict[str, SourceEntry], time: F
             shared[name] = shared.get(name, np.zeros(time.shape)) + admitted[:, k] * float(part)
     amount = np.where(np.isnan(time), np.nan, amount)
     facts |= {"doses": len(counted), "last": counted[-1].dose.name if counted else "none"}
-    return Outcome({"amount": amount}, shared={"amount": shared}, sources=tuple(entries[name] for name in shared), facts=facts)
+    return Outcome(
+        {"amount": amount},
+        shared={"amount": shared},
+        sources=tuple(entries[name] for name in shared),
+        facts=facts,
+    )
 
 
 def vapour_in_dead_volume(
-    parameters: VapourParameters, *, gas: GasBook, temperature: FloatArray, pressure: FloatArray | None, sample: Sample | None
+    parameters: VapourParameters,
+    *,
+    gas: GasBook,
+    temperature: FloatArray,
+    pressure: FloatArray | None,
+    sample: Sample | None,
 ) -> Outcome:
     """Return the amount of gas that is vapour in the dead volumes, row by row.
 
@@ -141,31 +165,61 @@ def vapour_in_dead_volume(
     standard uncertainty, common to all rows. The saturated vapour is that of 4He.
     """
     if not gas.dead_volumes:
-        finding = Finding(code="dead-volume-not-recorded", severity="note", what="no dead volume is recorded; no vapour was subtracted")
-        return Outcome({"vapour": np.where(np.isnan(temperature), np.nan, 0.0)}, facts={"treatment": "taken as nothing: no dead volume is recorded", "volume_cm3": 0.0}, findings=(finding,))
+        finding = Finding(
+            code="dead-volume-not-recorded",
+            severity="note",
+            what="no dead volume is recorded; no vapour was subtracted",
+        )
+        return Outcome(
+            {"vapour": np.where(np.isnan(temperature), np.nan, 0.0)},
+            facts={"treatment": "taken as nothing: no dead volume is recorded", "volume_cm3": 0.0},
+            findings=(finding,),
+        )
     volume = sum(each.volume.si for each in gas.dead_volumes)
     facts: dict[str, object] = {"volume_cm3": volume * 1e6}
     isotope = helium_isotope(sample)
     total = np.zeros(np.shape(temperature))
     if pressure is None and parameters.without_pressure == "refuse":
-        raise ValueError("pressure: none was measured, and the plan does not take the saturated bound instead")
+        raise ValueError(
+            "pressure: none was measured, and the plan does not take the saturated bound instead"
+        )
     shared: dict[str, FloatArray] = {}
     sources: list[SourceEntry] = []
     for each in gas.dead_volumes:
-        T = np.maximum(temperature, COLDEST_VAPOUR) if each.temperature == "cell" else np.full(np.shape(temperature), _kelvin(each.temperature))
+        T = (
+            np.maximum(temperature, COLDEST_VAPOUR)
+            if each.temperature == "cell"
+            else np.full(np.shape(temperature), _kelvin(each.temperature))
+        )
         held = _density(T, pressure, isotope, temperature) * each.volume.si
         total = total + held
         if each.volume.si_uncertainty:
-            entry = SourceEntry(name=f"dead volume {each.name}, {each.volume.format()}", description="stated dead volume", level="cell")
+            entry = SourceEntry(
+                name=f"dead volume {each.name}, {each.volume.format()}",
+                description="stated dead volume",
+                level="cell",
+            )
             sources.append(entry)
-            shared[entry.name] = np.where(np.isnan(held), 0.0, held) * (each.volume.si_uncertainty / each.volume.si)
+            shared[entry.name] = np.where(np.isnan(held), 0.0, held) * (
+                each.volume.si_uncertainty / each.volume.si
+            )
     total = np.where(np.isnan(temperature), np.nan, total)
     if pressure is None:
-        entry = SourceEntry(name=f"vapour between none and saturation in {gas.cooldown}", description="no pressure was measured", level="run")
-        shared = {name: part / 2 for name, part in shared.items()} | {entry.name: np.where(np.isnan(total), 0.0, total) / math.sqrt(12)}
+        entry = SourceEntry(
+            name=f"vapour between none and saturation in {gas.cooldown}",
+            description="no pressure was measured",
+            level="run",
+        )
+        shared = {name: part / 2 for name, part in shared.items()} | {
+            entry.name: np.where(np.isnan(total), 0.0, total) / math.sqrt(12)
+        }
         sources.append(entry)
         total = total / 2
-    facts["treatment"] = "subtracted at the measured pressure" if pressure is not None else "bounded by saturation and subtracted by half"
+    facts["treatment"] = (
+        "subtracted at the measured pressure"
+        if pressure is not None
+        else "bounded by saturation and subtracted by half"
+    )
     return Outcome({"vapour": total}, shared={"vapour": shared}, sources=tuple(sources), facts=facts)
 
 
@@ -174,17 +228,21 @@ def _kelvin(temperature: Quantity | str) -> float:
     return temperature.si
 
 
-def _density(T: FloatArray, pressure: FloatArray | None, isotope: str, cell: FloatArray) -> FloatArray:
+def _density(
+    T: FloatArray, pressure: FloatArray | None, isotope: Literal["3He", "4He"], cell: FloatArray
+) -> FloatArray:
     known = np.isfinite(T) & (np.isfinite(pressure) if pressure is not None else np.isfinite(cell))
     density = np.full(T.shape, np.nan)
     if not known.any():
         return density
     if pressure is not None:
         # Below zero is noise of the gauge about no gas at all.
-        density[known] = molar_density(np.maximum(pressure[known], 0.0), T[known], isotope=isotope)  # type: ignore[arg-type]
+        density[known] = molar_density(np.maximum(pressure[known], 0.0), T[known], isotope=isotope)
         return density
     if isotope != "4He":
-        raise ValueError("pressure: without a measured one the bound is that of saturated 4He, and the gas is 3He")
+        raise ValueError(
+            "pressure: without a measured one the bound is that of saturated 4He, and the gas is 3He"
+        )
     cold = np.maximum(cell[known], COLDEST_VAPOUR)
     saturated = np.asarray(saturated_molar_density(cold))
     # A warmer volume holds less at the same pressure, in proportion to the temperatures to first order.
@@ -193,7 +251,13 @@ def _density(T: FloatArray, pressure: FloatArray | None, isotope: str, cell: Flo
 
 
 def coverage_from_amount(
-    _: NoParameters, *, amount: float | FloatArray, vapour: FloatArray | None, area: float | None, specific_area: float | None, mass: float | None
+    _: NoParameters,
+    *,
+    amount: float | FloatArray,
+    vapour: FloatArray | None,
+    area: float | None,
+    specific_area: float | None,
+    mass: float | None,
 ) -> Outcome:
     """Return the coverage: amount that is not vapour, over the area.
 
@@ -215,7 +279,9 @@ def coverage_from_amount(
     return Outcome({"coverage": film / area}, facts={"largest_vapour_share": share})
 
 
-def layers_from_coverage(_: NoParameters, *, coverage: float | FloatArray, layer: float, substrate: Substrate | None) -> Outcome:
+def layers_from_coverage(
+    _: NoParameters, *, coverage: float | FloatArray, layer: float, substrate: Substrate | None
+) -> Outcome:
     """Return the coverage in layers of the substrate's own definition."""
     if not layer > 0:
         raise ValueError(f"layer: found {layer} mol/m^2, expected > 0")

@@ -61,7 +61,9 @@ def loading_fit(
             raise ValueError(f"amount, period: {found.reason}")
         slope, drag, onset, empty = map(float, found.values)
         values = np.array([slope, slope * drag, drag, onset, empty])
-        jacobian = np.array([[1, 0, 0, 0], [drag, slope, 0, 0], [0, 1, 0, 0], [0, 0, 1, 0], [0, 0, 0, 1]], dtype=np.float64)
+        jacobian = np.array(
+            [[1, 0, 0, 0], [drag, slope, 0, 0], [0, 1, 0, 0], [0, 0, 1, 0], [0, 0, 0, 1]], dtype=np.float64
+        )
         reduced = found.chi2 / found.dof
         # Scatter beyond the stated uncertainty counts; less scatter does not make the result better than stated.
         inflation = max(reduced, 1.0) if u is not None else 1.0
@@ -72,11 +74,20 @@ def loading_fit(
             "largest_departure": float(np.max(np.abs(found.residuals[: found.points_below])) / (slope * (n.max() - n.min()))),
         }  # fmt: skip
     names = ("slope_below", "slope_past", "chi", "onset_amount", "empty_period")
-    outputs: dict[str, float | FloatArray] = {name: float(value) for name, value in zip(names, values, strict=True)}
-    return Outcome(outputs, covariance=Covariance(names, covariance), held={"points_below": facts["points_below"]}, facts=facts)
+    outputs: dict[str, float | FloatArray] = {
+        name: float(value) for name, value in zip(names, values, strict=True)
+    }
+    return Outcome(
+        outputs,
+        covariance=Covariance(names, covariance),
+        held={"points_below": facts["points_below"]},
+        facts=facts,
+    )
 
 
-def _two_lines(n: FloatArray, P: FloatArray, u: FloatArray | None, below: int) -> tuple[FloatArray, FloatArray, dict[str, float]]:
+def _two_lines(
+    n: FloatArray, P: FloatArray, u: FloatArray | None, below: int
+) -> tuple[FloatArray, FloatArray, dict[str, float]]:
     """Return the same from a given number of points below the onset."""
     order = np.argsort(n, kind="stable")
     n, P = n[order], P[order]
@@ -103,7 +114,13 @@ def _two_lines(n: FloatArray, P: FloatArray, u: FloatArray | None, below: int) -
 
 
 def geometric_sensitivity(
-    _: NoParameters, *, slope: float, period: float, mean_square_radius: float, inertia: float | None, torsion_constant: float | None
+    _: NoParameters,
+    *,
+    slope: float,
+    period: float,
+    mean_square_radius: float,
+    inertia: float | None,
+    torsion_constant: float | None,
 ) -> Outcome:
     """Return the mass sensitivity that geometry gives, and the measured one over it.
 
@@ -122,9 +139,17 @@ def geometric_sensitivity(
         if torsion_constant is None:
             raise ValueError("inertia: found none, expected the cell's moment of inertia or torsion constant")
         inertia = torsion_constant * (period / (2 * math.pi)) ** 2
-    expected = MOLAR_MASS_HELIUM4 * period_per_mass(period=period, inertia=inertia, mean_square_radius=mean_square_radius)
+    expected = MOLAR_MASS_HELIUM4 * period_per_mass(
+        period=period, inertia=inertia, mean_square_radius=mean_square_radius
+    )
     ratio = slope / expected
     findings: tuple[Finding, ...] = ()
     if abs(ratio - 1) > 0.15:
-        findings = (Finding(code="mass-loading-geometry", severity="warning", what=f"the measured mass sensitivity is {ratio:.3f} of what geometry gives; more than 15 per cent apart points to a wrong area, inertia or metering volume"),)
+        findings = (
+            Finding(
+                code="mass-loading-geometry",
+                severity="warning",
+                what=f"the measured mass sensitivity is {ratio:.3f} of what geometry gives; more than 15 per cent apart points to a wrong area, inertia or metering volume",
+            ),
+        )
     return Outcome({"geometric_slope": expected, "ratio": ratio}, findings=findings)

@@ -73,11 +73,19 @@ def _related(need: Need, facts: SweepFacts, source: Source) -> Iterator[list[str
     if need.relation == "same-sweep":
         yield [facts.address]
         return
-    yield [f"{facts.cooldown}/{entry.name}" for entry in _sweeps(source.accessions(facts.cooldown)) if _same(entry, facts)]
+    yield [
+        f"{facts.cooldown}/{entry.name}"
+        for entry in _sweeps(source.accessions(facts.cooldown))
+        if _same(entry, facts)
+    ]
     if need.relation == "same-cell-any-cooldown":
         for cooldown in reversed(source.cooldowns()):
             if cooldown != facts.cooldown:
-                yield [f"{cooldown}/{entry.name}" for entry in _sweeps(source.accessions(cooldown)) if _same_name(entry, facts)]
+                yield [
+                    f"{cooldown}/{entry.name}"
+                    for entry in _sweeps(source.accessions(cooldown))
+                    if _same_name(entry, facts)
+                ]
 
 
 def _sweeps(accessions: list[AccessionDocument]) -> list[SweepEntry]:

@@ -84,7 +84,9 @@ def dissipation_from_amplitude(
     """
     if drive is None or reference_drive is None:
         if detection.drive_mode == "constant-amplitude":
-            raise ValueError("drive: at constant amplitude the drive carries the dissipation, and it is not recorded with its reference")
+            raise ValueError(
+                "drive: at constant amplitude the drive carries the dissipation, and it is not recorded with its reference"
+            )
         drive, reference_drive = 1.0, 1.0
         treatment = "constant"
     else:
@@ -96,13 +98,25 @@ def dissipation_from_amplitude(
         dissipation=1 / reference_quality_factor, drive=reference_drive, signal=reference_signal, frequency=1 / reference_period,
         drive_power=detection.torque_exponent, signal_power=detection.signal_exponent,
     )  # fmt: skip
-    found = oscillator.dissipation_from_amplitude(signal=signal, drive=drive, frequency=1 / period, reference=reference)
-    facts = {"p": detection.torque_exponent, "s": detection.signal_exponent, "drive_was": treatment, "drive_mode": detection.drive_mode}
+    found = oscillator.dissipation_from_amplitude(
+        signal=signal, drive=drive, frequency=1 / period, reference=reference
+    )
+    facts = {
+        "p": detection.torque_exponent,
+        "s": detection.signal_exponent,
+        "drive_was": treatment,
+        "drive_mode": detection.drive_mode,
+    }
     return Outcome({"dissipation": found}, facts=facts)
 
 
 def ringdown_quality_factor(
-    parameters: RingdownParameters, *, time: FloatArray, amplitude: FloatArray, period: float | FloatArray, u_amplitude: FloatArray | None
+    parameters: RingdownParameters,
+    *,
+    time: FloatArray,
+    amplitude: FloatArray,
+    period: float | FloatArray,
+    u_amplitude: FloatArray | None,
 ) -> Outcome:
     """Return Q and decay time of a free decay.
 
@@ -127,7 +141,14 @@ def ringdown_quality_factor(
     row = np.array([u_quality, u_quality / per_second, u_quality / quality**2 * -1])
     findings: tuple[Finding, ...] = ()
     if found.curved:
-        findings = (Finding(code="curved-ringdown", severity="warning", what="the decay is no single exponential; Q depends on amplitude, and the number is an average", remedy="reduce ranges of the decay apart, or reduce the drive"),)
+        findings = (
+            Finding(
+                code="curved-ringdown",
+                severity="warning",
+                what="the decay is no single exponential; Q depends on amplitude, and the number is an average",
+                remedy="reduce ranges of the decay apart, or reduce the drive",
+            ),
+        )
     return Outcome(
         {"quality_factor": quality, "decay_time": tau, "dissipation": 1 / quality},
         covariance=Covariance(("quality_factor", "decay_time", "dissipation"), np.outer(row, row)),
@@ -165,16 +186,34 @@ def drive_linearity(
     torque, y = drive[rows] ** p, amplitude[rows]
     if np.unique(torque).size < 3:
         raise ValueError(f"drive: found {np.unique(torque).size} different levels, expected at least 3")
-    fit = linear_fit(torque[:, np.newaxis], y, names=("response",), standard_uncertainty=weights(u_amplitude, rows), absolute=False)
+    fit = linear_fit(
+        torque[:, np.newaxis],
+        y,
+        names=("response",),
+        standard_uncertainty=weights(u_amplitude, rows),
+        absolute=False,
+    )
     departure = float(np.max(np.abs(fit.residuals)) / np.max(np.abs(y)))
     findings = []
     if departure > parameters.largest_residual:
-        findings.append(Finding(code="drive-not-linear", severity="warning", what=f"the amplitude departs from proportionality to the drive by {departure:.2%} of the largest amplitude; expected below {parameters.largest_residual:.0%}"))
+        findings.append(
+            Finding(
+                code="drive-not-linear",
+                severity="warning",
+                what=f"the amplitude departs from proportionality to the drive by {departure:.2%} of the largest amplitude; expected below {parameters.largest_residual:.0%}",
+            )
+        )
     moved, u_moved = math.nan, 0.0
     if period is not None:
         moved, u_moved = _period_change(amplitude, period, u_period)
         if abs(moved) > parameters.period_sigmas * u_moved > 0:
-            findings.append(Finding(code="amplitude-dependent-period", severity="warning", what=f"the period moves by {moved * 1e9:.3g} ns over the amplitudes used, more than {parameters.period_sigmas:g} standard uncertainties"))
+            findings.append(
+                Finding(
+                    code="amplitude-dependent-period",
+                    severity="warning",
+                    what=f"the period moves by {moved * 1e9:.3g} ns over the amplitudes used, more than {parameters.period_sigmas:g} standard uncertainties",
+                )
+            )
     factor = float(np.max(torque) / np.min(torque)) if np.min(torque) > 0 else math.nan
     return Outcome(
         {"departure": departure, "period_change": moved}, point={"period_change": u_moved},
@@ -182,7 +221,9 @@ def drive_linearity(
     )  # fmt: skip
 
 
-def _period_change(amplitude: FloatArray, period: FloatArray, u_period: FloatArray | None) -> tuple[float, float]:
+def _period_change(
+    amplitude: FloatArray, period: FloatArray, u_period: FloatArray | None
+) -> tuple[float, float]:
     rows = known_rows(amplitude, period)
     u = weights(u_period, rows)
     if np.count_nonzero(rows) < 3 or np.ptp(amplitude[rows]) == 0:
@@ -193,7 +234,12 @@ def _period_change(amplitude: FloatArray, period: FloatArray, u_period: FloatArr
 
 
 def resonance_fit(
-    parameters: ResonanceParameters, *, frequency: FloatArray, x: FloatArray, y: FloatArray, u_x: FloatArray | None
+    parameters: ResonanceParameters,
+    *,
+    frequency: FloatArray,
+    x: FloatArray,
+    y: FloatArray,
+    u_x: FloatArray | None,
 ) -> Outcome:
     """Return the one resonance of a frequency sweep, or the verdict that there is none in range."""
     rows = known_rows(frequency, x, y)
@@ -202,18 +248,36 @@ def resonance_fit(
         standard_uncertainty=weights(u_x, rows),
     )  # fmt: skip
     names = ("resonance_frequency", "quality_factor", "height", "frequency_at_maximum", "width")
-    facts = {"points": int(np.count_nonzero(rows)), "low_Hz": float(np.min(frequency[rows])), "high_Hz": float(np.max(frequency[rows])), "reason": found.reason, "noise": found.noise, "probability": found.probability}
+    facts = {
+        "points": int(np.count_nonzero(rows)),
+        "low_Hz": float(np.min(frequency[rows])),
+        "high_Hz": float(np.max(frequency[rows])),
+        "reason": found.reason,
+        "noise": found.noise,
+        "probability": found.probability,
+    }
     if not found.found or found.fit is None:
         verdict = "no resonance in range"
         finding = Finding(code="no-resonance", severity="note", what=f"no resonance in range: {found.reason}")
-        return Outcome(dict.fromkeys(names, math.nan), facts=facts, findings=(finding,), verdicts=dict.fromkeys(names, verdict))
+        return Outcome(
+            dict.fromkeys(names, math.nan),
+            facts=facts,
+            findings=(finding,),
+            verdicts=dict.fromkeys(names, verdict),
+        )
     fit = found.fit
     index = [fit.names.index(name) for name in ("frequency", "quality_factor", "height")]
     f0, Q = found.frequency, found.quality_factor
     jacobian = np.vstack([np.eye(3), [1 / Q, -f0 / Q**2, 0.0]])
     covariance = jacobian @ np.asarray(fit.covariance)[np.ix_(index, index)] @ jacobian.T
     step = float(np.median(np.diff(np.unique(frequency[rows]))))
-    outputs = {"resonance_frequency": f0, "quality_factor": Q, "height": fit.value("height"), "frequency_at_maximum": found.frequency_at_maximum, "width": f0 / Q}
+    outputs = {
+        "resonance_frequency": f0,
+        "quality_factor": Q,
+        "height": fit.value("height"),
+        "frequency_at_maximum": found.frequency_at_maximum,
+        "width": f0 / Q,
+    }
     # A grid frequency is known to the grid: all places between half steps alike (JCGM 100:2008, 4.3.7).
     return Outcome(
         outputs, point={"frequency_at_maximum": step / math.sqrt(12)},

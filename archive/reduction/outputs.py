@@ -10,6 +10,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 
@@ -50,7 +51,7 @@ def output_entry(found: Found) -> OutputEntry:
     """Return the entry of an output for the document."""
     estimate = found.estimate
     unit = canonical(estimate.quantity)
-    common = {
+    common: dict[str, Any] = {
         "name": found.name, "quantity": estimate.quantity, "unit": unit, "ucum": ucum(unit), "description": found.description,
         "step": found.step, "scale": estimate.scale, "verdict": found.verdict, "digest": array_digest(estimate.value),
     }  # fmt: skip
@@ -118,7 +119,9 @@ def estimate_from(document: ReductionDocument, reader: ArrayReader, name: str) -
     if entry.rows is None:
         value = math.nan if entry.value is None else entry.value
         shared = {source: np.asarray(part) for source, part in entry.shared.items()}
-        return Estimate(np.asarray(value), entry.quantity, np.asarray(entry.point or 0.0), shared, entry.scale)
+        return Estimate(
+            np.asarray(value), entry.quantity, np.asarray(entry.point or 0.0), shared, entry.scale
+        )
     path = f"arrays/{name}"
     shared = {
         source.name: np.asarray(reader(f"{path}.shared/{k}"), dtype=np.float64)

@@ -3,45 +3,24 @@
 from __future__ import annotations
 
 import json
-import math
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field
 from datetime import datetime
 from typing import Any
 
 import numpy as np
-from pydantic import JsonValue, ValidationError
+from pydantic import ValidationError
 
 from archive.errors import BadRequest, StepFailed
 from archive.reduction.estimate import Estimate, FloatArray
-from archive.reduction.outputs import Found, value_of
+from archive.reduction.outputs import Found
 from archive.reduction.propagation import Propagated, fit_contributions, propagate
-from archive.reduction.sentence import filled, number_text, quantity_text
-from archive.reduction.step import Outcome, Port, Step
+from archive.reduction.step import Covariance, Given, Outcome, Step
+from archive.reduction.step_record import step_record
 from schemas.base import Record
-from schemas.lineage import InputEntry, SourceEntry, StepRecord
+from schemas.lineage import SourceEntry, StepRecord
 
-__all__ = ["Given", "Performed", "perform", "step_parameters"]
-
-
-@dataclass(frozen=True)
-class Given:
-    """One input of a step, resolved.
-
-    Attributes
-    ----------
-    address : str
-        Where it stands.
-    estimate : Estimate or None
-    record : object or None
-        For record ports.
-    digest : str or None
-    """
-
-    address: str
-    estimate: Estimate | None = None
-    record: object | None = None
-    digest: str | None = None
+__all__ = ["Performed", "perform", "step_parameters"]
 
 
 @dataclass(frozen=True)
@@ -134,7 +113,8 @@ def perform(
         spread = propagate(
             _call(step, parameters, given, estimates), estimates, elementwise=step.spread == "elementwise"
         )
-        axes = [] if spread.outcome.covariance is None else fit_contributions(spread.outcome.covariance)
+        joint = _joint_covariance(spread)
+        axes = [] if joint is None else fit_contributions(joint)
     except ValueError as error:
         raise StepFailed(
             f"{place} could not give its results: {error}",
@@ -154,16 +134,53 @@ def perform(
         if estimate.scalar and float(estimate.points) > 0:
             # A scalar's own noise gets a name, so that two numbers made from it stay correlated.
             entry = SourceEntry(
-                name=f"{reduction}#{name}", description=f"own uncertainty of {name}", level="run", address=f"{reduction}#{name}"
+                name=f"{reduction}#{name}",
+                description=f"own uncertainty of {name}",
+                level="run",
+                address=f"{reduction}#{name}",
             )
             sources.append(entry)
             estimate = Estimate(
-                estimate.value, estimate.quantity, shared={**estimate.shared, entry.name: estimate.points}, scale=estimate.scale
+                estimate.value,
+                estimate.quantity,
+                shared={**estimate.shared, entry.name: estimate.points},
+                scale=estimate.scale,
             )
         verdict = spread.outcome.verdicts.get(output)
         found.append(Found(name, step.yields[output].description, estimate, number, verdict))
-    record = _record(step, parameters, given, found, give, spread.outcome, number=number, begin=begin, end=clock())
+    record = step_record(
+        step,
+        parameters,
+        given,
+        found,
+        spread.outcome,
+        named={name: output for output, name in give.items()},
+        number=number,
+        begin=begin,
+        end=clock(),
+    )
     return Performed(record, tuple(found), tuple(sources), _covariance(spread.outcome, give))
+
+
+def _joint_covariance(spread: Propagated) -> Covariance | None:
+    """Return the covariance of a fit, with that of the single readings which a fit to scalars has averaged.
+
+    A run of doses brings two sources a dose that nothing else shares; past the fit, as many axes as results hold them all.
+    """
+    fitted = spread.outcome.covariance
+    readings = sorted(
+        {name for parts in spread.shared.values() for name in parts if name.startswith("reading ")}
+    )
+    if (
+        fitted is None
+        or not readings
+        or any(spread.outcome.array(name).ndim for name in fitted.names if "[" not in name)
+    ):
+        return fitted
+    matrix = np.array(fitted.matrix, dtype=np.float64)
+    parts = [spread.shared.get(name, {}) for name in fitted.names]
+    columns = np.array([[float(part.pop(reading, 0.0)) for reading in readings] for part in parts])
+    return Covariance(fitted.names, matrix + columns @ columns.T)
 
 
 def _renamed(spread: Propagated, reduction: str) -> list[SourceEntry]:
@@ -192,7 +209,9 @@ def _check_inputs(step: Step, given: Mapping[str, Given], place: str) -> None:
             continue
         estimate = each.estimate
         if estimate is None:
-            raise BadRequest(f"{place}: input {name} ({each.address}) is no number", expected=port.description)
+            raise BadRequest(
+                f"{place}: input {name} ({each.address}) is no number", expected=port.description
+            )
         if port.quantity != "any" and estimate.quantity not in port.quantity.split("|"):
             raise BadRequest(
                 f"{place}: input {name} ({each.address}) is a {estimate.quantity}",
@@ -200,7 +219,10 @@ def _check_inputs(step: Step, given: Mapping[str, Given], place: str) -> None:
                 remedy="name another channel or output in the plan",
             )
         if (port.form == "scalar" and not estimate.scalar) or (port.form == "array" and estimate.scalar):
-            raise BadRequest(f"{place}: input {name} ({each.address}) is {'one number' if estimate.scalar else 'a column'}", expected=port.form)
+            raise BadRequest(
+                f"{place}: input {name} ({each.address}) is {'one number' if estimate.scalar else 'a column'}",
+                expected=port.form,
+            )
 
 
 def _call(
@@ -210,7 +232,9 @@ def _call(
     for port, declared in step.takes.items():
         each = given.get(port)
         if declared.form == "record" or each is None:
-            fixed[port] = None if each is None else (each.record if each.record is not None else each.estimate)
+            fixed[port] = (
+                None if each is None else (each.record if each.record is not None else each.estimate)
+            )
     for port in step.weights:
         fixed[f"u_{port}"] = estimates[port].points if port in estimates else None
     for port in step.kinds:
@@ -218,7 +242,9 @@ def _call(
 
     def call(values: Mapping[str, FloatArray], held: Mapping[str, Any]) -> Outcome:
         chosen = parameters.model_copy(update=dict(held)) if held else parameters
-        numbers = {port: _number(value) for port, value in values.items() if step.takes[port].form != "record"}
+        numbers = {
+            port: _number(value) for port, value in values.items() if step.takes[port].form != "record"
+        }
         return step.function(chosen, **numbers, **fixed)
 
     return call
@@ -254,7 +280,9 @@ def _scale(estimates: Mapping[str, Estimate], place: str) -> str | None:
     return next(iter(scales), None)
 
 
-def _estimate(step: Step, output: str, spread: Propagated, estimates: Mapping[str, Estimate], scale: str | None) -> Estimate:
+def _estimate(
+    step: Step, output: str, spread: Propagated, estimates: Mapping[str, Estimate], scale: str | None
+) -> Estimate:
     quantity = step.yields[output].quantity
     if quantity.startswith("same:"):
         quantity = estimates[quantity[5:]].quantity
@@ -274,50 +302,3 @@ def _covariance(outcome: Outcome, give: Mapping[str, str]) -> dict[str, Any]:
 
     names = [renamed(name) for name in outcome.covariance.names]
     return {"names": names, "matrix": np.asarray(outcome.covariance.matrix).tolist()}
-
-
-def _record(
-    step: Step, parameters: Record, given: Mapping[str, Given], found: list[Found], give: Mapping[str, str], outcome: Outcome,
-    *, number: int, begin: datetime, end: datetime,
-) -> StepRecord:  # fmt: skip
-    facts = {name: _json(value) for name, value in outcome.facts.items()}
-    words = {name: number_text(value) for name, value in parameters.model_dump(mode="json").items()}
-    words |= {port: quantity_text(each.estimate) for port, each in given.items() if each.estimate is not None}
-    named = {name: output for output, name in give.items()}
-    words |= {named[each.name]: each.verdict or quantity_text(each.estimate) for each in found}
-    words |= {name: number_text(value) for name, value in facts.items() if not isinstance(value, dict)}
-    inputs = {
-        port: InputEntry(
-            address=each.address, role=_role(step.takes[port]), digest=each.digest,
-            value=None if each.estimate is None else value_of(each.estimate),
-        )
-        for port, each in given.items()
-    }  # fmt: skip
-    return StepRecord(
-        number=number, name=step.name, version=step.version, sentence=filled(step.sentence, words),
-        parameters=parameters.model_dump(mode="json"), inputs=inputs, outputs=tuple(each.name for each in found),
-        citations=step.citations, effects=dict(step.effects), begin=begin, end=end, findings=outcome.findings, facts=facts,
-    )  # fmt: skip
-
-
-def _role(port: Port) -> str:
-    return port.description or port.quantity
-
-
-def _json(value: object) -> JsonValue:
-    """Return a fact as JSON; a number that is none becomes null."""
-    if isinstance(value, (bool, str)) or value is None:
-        return value
-    if isinstance(value, (int, np.integer)):
-        return int(value)
-    if isinstance(value, (float, np.floating)):
-        return float(value) if math.isfinite(value) else None
-    if isinstance(value, np.ndarray):
-        return [_json(each) for each in value.tolist()]
-    if isinstance(value, (list, tuple)):
-        return [_json(each) for each in value]
-    if isinstance(value, dict):
-        return {str(key): _json(each) for key, each in value.items()}
-    return str(value)
-
-

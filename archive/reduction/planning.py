@@ -17,14 +17,16 @@ from schemas.plan import Plan
 from schemas.substrate import Substrate
 from schemas.sweep import Sweep
 
-__all__ = ["applies", "load_plan", "plans_for", "shipped_plans"]
+__all__ = ["applies", "load_plan", "plan_depth", "plans_for", "shipped_plans"]
 
 
 @cache
 def shipped_plans() -> tuple[Plan, ...]:
     """Return the plans that Stillroom ships, sorted by name."""
     folder = resources.files("archive.reduction") / "plans"
-    files = sorted((entry for entry in folder.iterdir() if entry.name.endswith(".toml")), key=lambda entry: entry.name)
+    files = sorted(
+        (entry for entry in folder.iterdir() if entry.name.endswith(".toml")), key=lambda entry: entry.name
+    )
     return tuple(load_plan(entry.read_text(encoding="utf-8"), file=entry.name) for entry in files)
 
 
@@ -95,12 +97,14 @@ def plans_for(
         for plan in known
         if applies(plan, sweep, cell, substrate) and not (cell is None and plan.applies.cell_kinds)
     ]
-    depth = {plan.name: plan for plan in known}
-    return sorted(fitting, key=lambda plan: (_depth(plan, depth), plan.name))
+    return sorted(fitting, key=lambda plan: (plan_depth(plan, known), plan.name))
 
 
-def _depth(plan: Plan, known: dict[str, Plan], seen: frozenset[str] = frozenset()) -> int:
+def plan_depth(plan: Plan, known: Iterable[Plan]) -> int:
+    """Return how many plans, this one included, must have been carried out one after the other; needs come first."""
+    return _depth(plan, {each.name: each for each in known}, frozenset())
+
+
+def _depth(plan: Plan, known: dict[str, Plan], seen: frozenset[str]) -> int:
     below = [known[need.plan] for need in plan.needs.values() if need.plan in known and need.plan not in seen]
     return 1 + max((_depth(each, known, seen | {plan.name}) for each in below), default=0)
-
-

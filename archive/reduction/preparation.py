@@ -10,6 +10,7 @@ from dataclasses import dataclass
 from datetime import datetime
 
 import numpy as np
+import numpy.typing as npt
 
 from archive.errors import BadRequest
 from archive.reduction.channels import channel_estimate
@@ -64,7 +65,9 @@ def preliminary_steps(source: Source, facts: SweepFacts, name: str) -> list[Prel
     found += _gauge_zero(facts, channel)
     corrections = [each for each in facts.sweep.corrections if each.channel == name]
     for number, each in enumerate(corrections, 1):
-        found.append(_correction(facts, channel, each, suffix="corrected" + (str(number) if number > 1 else "")))
+        found.append(
+            _correction(facts, channel, each, suffix="corrected" + (str(number) if number > 1 else ""))
+        )
     return found
 
 
@@ -82,9 +85,8 @@ def rows_left_out(source: Source, facts: SweepFacts) -> LeaveOutParameters:
     return LeaveOutParameters(rows=tuple(ranges), reasons=tuple(reasons))
 
 
-def _inside(source: Source, facts: SweepFacts, left_out: LeftOut) -> np.ndarray[tuple[int], np.dtype[np.bool_]]:
+def _inside(source: Source, facts: SweepFacts, left_out: LeftOut) -> npt.NDArray[np.bool_]:
     name = left_out.channel or ""
-    stored = facts.stored(name)
     kind = facts.channels[name].quantity
     values = channel_estimate(source, facts, name)[0].value
     low, high = (_bound(facts, text, kind, name) for text in (left_out.low, left_out.high))
@@ -93,7 +95,7 @@ def _inside(source: Source, facts: SweepFacts, left_out: LeftOut) -> np.ndarray[
         inside &= values >= low
     if high is not None:
         inside &= values <= high
-    return np.asarray(inside[: stored.missing + values.size])
+    return inside
 
 
 def _bound(facts: SweepFacts, text: str | None, kind: str, channel: str) -> float | None:
@@ -110,7 +112,7 @@ def _bound(facts: SweepFacts, text: str | None, kind: str, channel: str) -> floa
         ) from None  # fmt: skip
 
 
-def _spans(inside: np.ndarray[tuple[int], np.dtype[np.bool_]]) -> list[tuple[int, int]]:
+def _spans(inside: npt.NDArray[np.bool_]) -> list[tuple[int, int]]:
     edges = np.diff(np.concatenate([[0], inside.astype(np.int8), [0]]))
     firsts, lasts = np.flatnonzero(edges == 1) + 1, np.flatnonzero(edges == -1)
     return [(int(first), int(last)) for first, last in zip(firsts, lasts, strict=True)]
@@ -126,14 +128,41 @@ def _gauge_zero(facts: SweepFacts, channel: Channel) -> list[Preliminary]:
         estimate, sources = quantity_estimate(
             gauge.zero, name=f"zero of gauge {gauge.name} in {facts.cooldown}", level="run", address=f"{facts.cooldown} gauge {gauge.name}"
         )  # fmt: skip
-        parameters = CorrectionParameters(correct="zero", stated=gauge.zero.format(), known=f"gauge {gauge.name}, zero in the sheet")
-        found.append(Preliminary("apply-correction", parameters, "zeroed", estimate, sources, f"{facts.cooldown} gauge {gauge.name}"))
+        parameters = CorrectionParameters(
+            correct="zero", stated=gauge.zero.format(), known=f"gauge {gauge.name}, zero in the sheet"
+        )
+        found.append(
+            Preliminary(
+                "apply-correction",
+                parameters,
+                "zeroed",
+                estimate,
+                sources,
+                f"{facts.cooldown} gauge {gauge.name}",
+            )
+        )
     if gauge.relative_uncertainty is not None:
         name = f"gain of gauge {gauge.name} in {facts.cooldown}"
-        entry = SourceEntry(name=name, description=f"relative standard uncertainty {gauge.relative_uncertainty:.3g}", level="run", address=f"{facts.cooldown} gauge {gauge.name}")
+        entry = SourceEntry(
+            name=name,
+            description=f"relative standard uncertainty {gauge.relative_uncertainty:.3g}",
+            level="run",
+            address=f"{facts.cooldown} gauge {gauge.name}",
+        )
         estimate = Estimate(np.asarray(1.0), "number", shared={name: np.asarray(gauge.relative_uncertainty)})
-        parameters = CorrectionParameters(correct="gain", stated="1", known=f"gauge {gauge.name}, relative uncertainty in the sheet")
-        found.append(Preliminary("apply-correction", parameters, "gauged", estimate, (entry,), f"{facts.cooldown} gauge {gauge.name}"))
+        parameters = CorrectionParameters(
+            correct="gain", stated="1", known=f"gauge {gauge.name}, relative uncertainty in the sheet"
+        )
+        found.append(
+            Preliminary(
+                "apply-correction",
+                parameters,
+                "gauged",
+                estimate,
+                (entry,),
+                f"{facts.cooldown} gauge {gauge.name}",
+            )
+        )
     return found
 
 
@@ -151,5 +180,9 @@ def _correction(facts: SweepFacts, channel: Channel, correction: Correction, *, 
     # Equal words in one cooldown are one statement: the same zero of the same channel in many sweeps is one source.
     name = f"{correction.correct} of {correction.channel} in {facts.cooldown}, {stated.format()}"
     estimate, sources = quantity_estimate(stated, name=name, level="run", address=facts.address)
-    parameters = CorrectionParameters(correct=correction.correct, stated=correction.value, known=f"{correction.known}: {correction.source}")
-    return Preliminary("apply-correction", parameters, suffix, estimate, sources, f"{facts.address}#{correction.channel}")
+    parameters = CorrectionParameters(
+        correct=correction.correct, stated=correction.value, known=f"{correction.known}: {correction.source}"
+    )
+    return Preliminary(
+        "apply-correction", parameters, suffix, estimate, sources, f"{facts.address}#{correction.channel}"
+    )

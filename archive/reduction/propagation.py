@@ -63,7 +63,10 @@ def propagate(call: Call, inputs: Mapping[str, Estimate], *, elementwise: bool) 
     values = {name: estimate.value for name, estimate in inputs.items()}
     outcome = call(values, {})
     shared: dict[str, dict[str, FloatArray]] = {
-        name: {source: np.asarray(part, dtype=np.float64) for source, part in outcome.shared.get(name, {}).items()}
+        name: {
+            source: np.asarray(part, dtype=np.float64)
+            for source, part in outcome.shared.get(name, {}).items()
+        }
         for name in outcome.outputs
     }
     for source, parts in shared_parts(call, inputs, outcome).items():
@@ -82,13 +85,17 @@ def propagate(call: Call, inputs: Mapping[str, Estimate], *, elementwise: bool) 
     return Propagated(outcome, point, shared)
 
 
-def shared_parts(call: Call, inputs: Mapping[str, Estimate], outcome: Outcome) -> dict[str, dict[str, FloatArray]]:
+def shared_parts(
+    call: Call, inputs: Mapping[str, Estimate], outcome: Outcome
+) -> dict[str, dict[str, FloatArray]]:
     """Return the contribution of each source of the inputs to each output."""
     sources = sorted({source for estimate in inputs.values() for source in estimate.shared})
     return {source: _one_source(call, inputs, outcome, source) for source in sources}
 
 
-def _one_source(call: Call, inputs: Mapping[str, Estimate], outcome: Outcome, source: str) -> dict[str, FloatArray]:
+def _one_source(
+    call: Call, inputs: Mapping[str, Estimate], outcome: Outcome, source: str
+) -> dict[str, FloatArray]:
     sides: dict[float, Outcome] = {}
     trouble: list[ValueError] = []
     for sign in (1.0, -1.0):
@@ -98,11 +105,16 @@ def _one_source(call: Call, inputs: Mapping[str, Estimate], outcome: Outcome, so
         except ValueError as error:
             trouble.append(error)
     if not sides:
-        raise ValueError(f"with the inputs moved by the standard uncertainty of '{source}': {trouble[0]}") from trouble[0]
+        raise ValueError(
+            f"with the inputs moved by the standard uncertainty of '{source}': {trouble[0]}"
+        ) from trouble[0]
     # At the edge of a range one direction may be refused; the other one alone is still first order.
     up = sides.get(1.0, outcome)
     down = sides.get(-1.0, outcome)
-    return {name: _half_difference(outcome.array(name), up.array(name), down.array(name), len(sides)) for name in outcome.outputs}
+    return {
+        name: _half_difference(outcome.array(name), up.array(name), down.array(name), len(sides))
+        for name in outcome.outputs
+    }
 
 
 def _half_difference(centre: FloatArray, up: FloatArray, down: FloatArray, sides: int = 2) -> FloatArray:
@@ -145,7 +157,9 @@ def fit_contributions(covariance: Covariance) -> list[dict[str, float]]:
     matrix = np.asarray(covariance.matrix, dtype=np.float64)
     if not np.isfinite(matrix).all():
         bad = int(np.argmax(~np.isfinite(matrix).all(axis=0)))
-        raise ValueError(f"{covariance.names[bad]}: found no finite uncertainty; the data do not determine it")
+        raise ValueError(
+            f"{covariance.names[bad]}: found no finite uncertainty; the data do not determine it"
+        )
     spread = np.sqrt(np.maximum(np.diag(matrix), 0.0))
     # Correlations first, so that a parameter in seconds and one in kelvin weigh alike in the cut below.
     unit = np.where(spread > 0, spread, 1.0)

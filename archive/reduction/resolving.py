@@ -10,10 +10,10 @@ from archive.reduction.channels import CONVERTED, channel_estimate, channel_mean
 from archive.reduction.digest import record_digest
 from archive.reduction.estimate import Estimate
 from archive.reduction.facts import SweepFacts
-from archive.reduction.performing import Given
 from archive.reduction.preparation import Preliminary, preliminary_steps
 from archive.reduction.sheet_values import sheet_value
 from archive.reduction.source import Source
+from archive.reduction.step import Given
 from schemas.lineage import ReductionDocument, SourceEntry
 
 __all__ = ["Missing", "Resolver"]
@@ -104,7 +104,9 @@ class Resolver:
         if entry is None:
             return None
         self.add_sources(document.sources)
-        return Given(f"{document.address}#{output}", self.source.output(document.address, output), digest=entry.digest)
+        return Given(
+            f"{document.address}#{output}", self.source.output(document.address, output), digest=entry.digest
+        )
 
     def _calibration(self, name: str) -> Given | None:
         channel = self.channel(name)
@@ -120,7 +122,11 @@ class Resolver:
                 expected="a calibration record, e.g. RX-2.r3",
                 remedy="name the calibration in the sheet and supplement the cooldown",
             )
-        return Given(stored.calibration, record=self.source.record(stored.calibration), digest=self.source.digest(stored.calibration))
+        return Given(
+            stored.calibration,
+            record=self.source.record(stored.calibration),
+            digest=self.source.digest(stored.calibration),
+        )
 
     def why_missing(self, text: str | None, port: str, left_out: Mapping[str, str]) -> Missing:
         """Return why none of an input's alternatives exists."""
@@ -135,17 +141,31 @@ class Resolver:
             return Missing(left_out.get(text, f"{text} was not given by an earlier step"), None)
         sheet = f"add it to the sheet and supplement the cooldown {self.facts.cooldown}"
         if kind == "channel":
-            what = "no thermometer channel" if name == "@thermometer" else f"no channel {name.replace('@', 'of kind ')}"
-            return Missing(f"sweep {self.facts.address} has {what}", f"describe the column, its quantity and its unit: {sheet}")
+            what = (
+                "no thermometer channel"
+                if name == "@thermometer"
+                else f"no channel {name.replace('@', 'of kind ')}"
+            )
+            return Missing(
+                f"sweep {self.facts.address} has {what}",
+                f"describe the column, its quantity and its unit: {sheet}",
+            )
         if kind == "need":
             need, _, output = name.partition("#")
             document = self.needs.get(need)
             if document is None:
-                return Missing(f"no reduction serves as {need}", f"reduce the sweep that gives {output} first")
-            return Missing(f"{document.address} has no output {output}", f"reduce {document.sweep} again with a plan that gives {output}")
+                return Missing(
+                    f"no reduction serves as {need}", f"reduce the sweep that gives {output} first"
+                )
+            return Missing(
+                f"{document.address} has no output {output}",
+                f"reduce {document.sweep} again with a plan that gives {output}",
+            )
         head, _, field = name.partition(".")
         if field and head in ("cell", "substrate", "sample"):
             address = getattr(self.facts.entry, head)
             where = "is named for the sweep" if address is None else f"states {field} ({address})"
-            return Missing(f"no {head} {where}", f"write a new revision of the record that states it, and {sheet}")
+            return Missing(
+                f"no {head} {where}", f"write a new revision of the record that states it, and {sheet}"
+            )
         return Missing(f"the sheet states no {name}", sheet)

@@ -15,12 +15,12 @@ from archive.reduction.digest import record_digest
 from archive.reduction.facts import sweep_facts
 from archive.reduction.needs import needed_reductions
 from archive.reduction.outputs import Found, Stored, output_arrays, output_entry
-from archive.reduction.performing import Given, perform, step_parameters
+from archive.reduction.performing import perform, step_parameters
 from archive.reduction.planning import applies
 from archive.reduction.resolving import Resolver
 from archive.reduction.software import software
 from archive.reduction.source import Source
-from archive.reduction.step import Step
+from archive.reduction.step import Given, Step
 from archive.reduction.steps import step_named
 from schemas.base import Record
 from schemas.finding import Finding
@@ -133,7 +133,10 @@ class _Work:
         parameters = step_parameters(step, planned.set, place=place)
         for port in planned.take:
             if port not in step.takes:
-                raise BadRequest(f"{place}: step {step.name} has no input {port!r}", expected=f"one of {', '.join(step.takes)}")
+                raise BadRequest(
+                    f"{place}: step {step.name} has no input {port!r}",
+                    expected=f"one of {', '.join(step.takes)}",
+                )
         given: dict[str, Given] = {}
         for port, declared in step.takes.items():
             text = planned.take.get(port)
@@ -143,7 +146,10 @@ class _Work:
             elif not declared.optional:
                 why = self.resolver.why_missing(text, port, self.missing)
                 if not planned.optional:
-                    raise BadRequest(f"{place}: step {step.name} lacks its input {port} ({declared.description}): {why.what}", remedy=why.remedy)
+                    raise BadRequest(
+                        f"{place}: step {step.name} lacks its input {port} ({declared.description}): {why.what}",
+                        remedy=why.remedy,
+                    )
                 self._left_out(planned, f"step {step.name} was left out: {why.what}", severity="note")
                 return
         try:
@@ -155,7 +161,14 @@ class _Work:
 
     def _left_out(self, planned: PlanStep, what: str, *, severity: str) -> None:
         code = "step-left-out" if severity == "note" else "step-without-result"
-        self.findings.append(Finding(code=code, severity="note" if severity == "note" else "warning", what=what, place=self.resolver.facts.sweep.name))
+        self.findings.append(
+            Finding(
+                code=code,
+                severity="note" if severity == "note" else "warning",
+                what=what,
+                place=self.resolver.facts.sweep.name,
+            )
+        )
         self.missing |= dict.fromkeys(planned.give.values(), what)
 
     def _given(self, text: str, quantity: str) -> Given | None:
@@ -195,13 +208,19 @@ class _Work:
                 inputs["correction"] = Given(each.address, each.correction)
             given = self._inserted(each.step, each.parameters, inputs, "values", f"{meant}_{each.suffix}")
         if wanted and self.resolver.is_inverse(meant, wanted):
-            name_of = {"period": "period-from-frequency", "dissipation": "dissipation-from-quality-factor"}[wanted]
+            name_of = {"period": "period-from-frequency", "dissipation": "dissipation-from-quality-factor"}[
+                wanted
+            ]
             step = step_named(name_of)
-            given = self._inserted(name_of, step.parameters(), {"values": given}, "inverse", f"{meant}_as_{wanted}")
+            given = self._inserted(
+                name_of, step.parameters(), {"values": given}, "inverse", f"{meant}_as_{wanted}"
+            )
         self.prepared[(meant, wanted)] = given
         return given
 
-    def _inserted(self, name: str, parameters: Record, inputs: dict[str, Given], output: str, called: str) -> Given:
+    def _inserted(
+        self, name: str, parameters: Record, inputs: dict[str, Given], output: str, called: str
+    ) -> Given:
         # A channel that two kinds are made from passes its corrections once.
         known = next((each for each in self.found if each.name == called), None)
         if known is None:
@@ -211,9 +230,14 @@ class _Work:
 
     def _note_input(self, given: Given) -> None:
         value = None
-        self.inputs.setdefault(given.address, InputEntry(address=given.address, role=_role(given), digest=given.digest, value=value))
+        self.inputs.setdefault(
+            given.address,
+            InputEntry(address=given.address, role=_role(given), digest=given.digest, value=value),
+        )
 
-    def _perform(self, step: Step, parameters: Record, given: Mapping[str, Given], give: Mapping[str, str]) -> None:
+    def _perform(
+        self, step: Step, parameters: Record, given: Mapping[str, Given], give: Mapping[str, str]
+    ) -> None:
         done = perform(
             step, parameters, given, give, number=len(self.records) + 1, reduction=self.address,
             fits=sum(name.startswith(f"{self.address} fit ") for name in self.resolver.sources), clock=self.clock,
@@ -221,7 +245,10 @@ class _Work:
         taken = {each.name for each in self.found}
         for each in done.found:
             if each.name in taken:
-                raise BadRequest(f"{self.address}: the name {each.name} is given twice", remedy="name the output otherwise in the plan")
+                raise BadRequest(
+                    f"{self.address}: the name {each.name} is given twice",
+                    remedy="name the output otherwise in the plan",
+                )
         self.resolver.add_sources(done.sources)
         place = self.resolver.facts.sweep.name
         placed = tuple(f if f.place else f.model_copy(update={"place": place}) for f in done.record.findings)
@@ -238,7 +265,9 @@ def _role(given: Given) -> str:
     return given.estimate.quantity if given.estimate is not None else "input"
 
 
-def _finished(plan: Plan, work: _Work, *, number: int, begin: datetime, supersedes: str | None) -> ReductionOutcome:
+def _finished(
+    plan: Plan, work: _Work, *, number: int, begin: datetime, supersedes: str | None
+) -> ReductionOutcome:
     facts = work.resolver.facts
     used = _used_sources(work)
     document = ReductionDocument(

@@ -10,6 +10,8 @@ import string
 from collections.abc import Mapping
 from typing import Any
 
+from typing_extensions import override
+
 from archive.reduction.estimate import Estimate
 from schemas.quantity import Quantity, canonical
 from schemas.uncertain_text import in_preferred_unit, plain_text
@@ -23,7 +25,8 @@ class _Words(string.Formatter):
     def __init__(self, words: Mapping[str, str]) -> None:
         self._words = words
 
-    def get_field(self, field_name: str, args: Any, kwargs: Any) -> tuple[str, str]:  # noqa: ANN401, ARG002
+    @override
+    def get_field(self, field_name: str, args: Any, kwargs: Any) -> tuple[str, str]:
         """Return the words for a name, or the statement that it is not recorded."""
         return self._words.get(field_name, f"[{field_name} is not recorded]"), field_name
 
@@ -48,20 +51,26 @@ def quantity_text(estimate: Estimate) -> str:
         return "no value"
     spread = float(estimate.uncertainty)
     if 0 < spread < math.inf:
-        stated = Quantity(value=value, unit=canonical(estimate.quantity), kind=estimate.quantity, uncertainty=spread)
+        stated = Quantity(
+            value=value, unit=canonical(estimate.quantity), kind=estimate.quantity, uncertainty=spread
+        )
         return plain_text(in_preferred_unit(stated))
     return _rounded_text(value, estimate.quantity, digits=6)
 
 
 def _rounded_text(value: float, kind: str, *, digits: int) -> str:
-    return plain_text(in_preferred_unit(Quantity(value=float(f"{value:.{digits}g}"), unit=canonical(kind), kind=kind)))
+    return plain_text(
+        in_preferred_unit(Quantity(value=float(f"{value:.{digits}g}"), unit=canonical(kind), kind=kind))
+    )
 
 
 def _range_text(estimate: Estimate) -> str:
     finite = estimate.value[[math.isfinite(value) for value in estimate.value]]
     if finite.size == 0:
         return "no value"
-    low, high = (_rounded_text(float(value), estimate.quantity, digits=5) for value in (finite.min(), finite.max()))
+    low, high = (
+        _rounded_text(float(value), estimate.quantity, digits=5) for value in (finite.min(), finite.max())
+    )
     return low if low == high else f"{low} to {high}"
 
 

@@ -24,7 +24,9 @@ SheetValue = tuple[Estimate | object | None, tuple[SourceEntry, ...], str]
 Level = Literal["run", "cell", "laboratory"]
 
 
-def quantity_estimate(quantity: Quantity, *, name: str, level: Level, address: str) -> tuple[Estimate, tuple[SourceEntry, ...]]:
+def quantity_estimate(
+    quantity: Quantity, *, name: str, level: Level, address: str
+) -> tuple[Estimate, tuple[SourceEntry, ...]]:
     """Return a stated quantity as an estimate, with the source of its uncertainty.
 
     Parameters
@@ -70,23 +72,17 @@ def sheet_value(facts: SweepFacts, name: str) -> SheetValue:
 
 
 def _holder(facts: SweepFacts, head: str) -> tuple[object | None, str, Level]:
-    sheet = facts.accession.sheet
-    match head:
-        case "gas":
-            return facts.gas_book, facts.accession.address, "run"
-        case "sheet":
-            return sheet, facts.accession.address, "run"
-        case "sweep":
-            return facts.sweep, facts.address, "run"
-        case "detection":
-            return sheet.detection_of(facts.sweep), f"{facts.cooldown} detection", "run"
-        case "cell":
-            return facts.cell, facts.entry.cell or facts.address, "cell"
-        case "substrate":
-            return facts.substrate, facts.entry.substrate or facts.address, "cell"
-        case "sample":
-            return facts.sample, facts.entry.sample or facts.address, "laboratory"
-    return None, facts.address, "run"
+    sheet, entry = facts.accession.sheet, facts.entry
+    holders: dict[str, tuple[object | None, str, Level]] = {
+        "gas": (facts.gas_book, facts.accession.address, "run"),
+        "sheet": (sheet, facts.accession.address, "run"),
+        "sweep": (facts.sweep, facts.address, "run"),
+        "detection": (sheet.detection_of(facts.sweep), f"{facts.cooldown} detection", "run"),
+        "cell": (facts.cell, entry.cell or facts.address, "cell"),
+        "substrate": (facts.substrate, entry.substrate or facts.address, "cell"),
+        "sample": (facts.sample, entry.sample or facts.address, "laboratory"),
+    }
+    return holders.get(head, (None, facts.address, "run"))
 
 
 def _accession_value(facts: SweepFacts, head: str) -> SheetValue:
@@ -98,5 +94,13 @@ def _accession_value(facts: SweepFacts, head: str) -> SheetValue:
     name = f"{facts.address} {head}"
     sources: tuple[SourceEntry, ...] = ()
     if spread:
-        sources = (SourceEntry(name=name, description=f"{head} during the sweep", level="run", address=facts.address),)
-    return Estimate(np.asarray(stated.value * factor), head, shared={name: np.asarray(spread)}), sources, facts.address
+        sources = (
+            SourceEntry(
+                name=name, description=f"{head} during the sweep", level="run", address=facts.address
+            ),
+        )
+    return (
+        Estimate(np.asarray(stated.value * factor), head, shared={name: np.asarray(spread)}),
+        sources,
+        facts.address,
+    )

@@ -13,12 +13,12 @@ from typing import Any, Literal
 import numpy as np
 import numpy.typing as npt
 
-from archive.reduction.estimate import FloatArray
+from archive.reduction.estimate import Estimate, FloatArray
 from schemas.base import Record
 from schemas.finding import Finding
 from schemas.lineage import SourceEntry
 
-__all__ = ["Covariance", "NoParameters", "Outcome", "Port", "Step"]
+__all__ = ["Covariance", "Given", "NoParameters", "Outcome", "Port", "Step"]
 
 Form = Literal["array", "scalar", "number", "record"]
 """`number` takes a scalar or an array."""
@@ -49,6 +49,26 @@ class Port:
     form: Form
     description: str
     optional: bool = False
+
+
+@dataclass(frozen=True)
+class Given:
+    """One input of a step, resolved.
+
+    Attributes
+    ----------
+    address : str
+        Where it stands.
+    estimate : Estimate or None
+    record : object or None
+        For record ports.
+    digest : str or None
+    """
+
+    address: str
+    estimate: Estimate | None = None
+    record: object | None = None
+    digest: str | None = None
 
 
 @dataclass(frozen=True)

@@ -317,10 +317,15 @@ def all_steps() -> tuple[Step, ...]:
         try:
             loaded = entry.load()
         except (ImportError, AttributeError) as error:
-            raise BadRequest(f"the laboratory's step {entry.name} ({entry.value}) cannot be loaded: {error}", remedy="mend or remove the package that brings it") from None
+            raise BadRequest(
+                f"the laboratory's step {entry.name} ({entry.value}) cannot be loaded: {error}",
+                remedy="mend or remove the package that brings it",
+            ) from None
         for step in [loaded] if isinstance(loaded, Step) else _steps(loaded, entry.name):
             if (step.name, step.version) in taken:
-                raise BadRequest(f"step {step.name} version {step.version} exists already; the one from {entry.name} needs another name")
+                raise BadRequest(
+                    f"step {step.name} version {step.version} exists already; the one from {entry.name} needs another name"
+                )
             taken.add((step.name, step.version))
             found.append(step)
     return tuple(found)
@@ -355,4 +360,6 @@ def step_named(name: str, version: int | None = None) -> Step:
     for step in known:
         if step.version == version:
             return step
-    raise BadRequest(f"step {name} has no version {version}", expected=", ".join(str(step.version) for step in known))
+    raise BadRequest(
+        f"step {name} has no version {version}", expected=", ".join(str(step.version) for step in known)
+    )

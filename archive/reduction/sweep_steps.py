@@ -14,7 +14,16 @@ from schemas.base import Record
 from schemas.finding import Finding
 from schemas.lineage import SourceEntry
 
-__all__ = ["CorrectionParameters", "LeaveOutParameters", "ScaleParameters", "corrected", "inverted", "inverted_scalar", "kept_rows", "on_scale"]
+__all__ = [
+    "CorrectionParameters",
+    "LeaveOutParameters",
+    "ScaleParameters",
+    "corrected",
+    "inverted",
+    "inverted_scalar",
+    "kept_rows",
+    "on_scale",
+]
 
 
 class LeaveOutParameters(Record):
@@ -92,7 +101,9 @@ def _phase_corrected(values: FloatArray, phase: float, kind: str) -> FloatArray:
         return values - phase
     if kind == "amplitude":
         if not abs(phase) < math.pi / 2:
-            raise ValueError(f"correction: found a phase of {phase:.4g} rad, expected less than a quarter turn")
+            raise ValueError(
+                f"correction: found a phase of {phase:.4g} rad, expected less than a quarter turn"
+            )
         return values / math.cos(phase)
     raise ValueError(f"values: a phase correction acts on a phase or an amplitude, found a channel of {kind}")
 
@@ -135,7 +146,11 @@ def on_scale(parameters: ScaleParameters, *, temperature: FloatArray) -> Outcome
     source = SourceEntry(name=name, description=str(method), level="laboratory")
     change = float(np.max(np.abs(result[known] - values[known]), initial=0.0))
     shared = {"temperature": {name: spread}} if np.any(spread > 0) else {}
-    finding = Finding(code="scale-converted", severity="note", what=f"temperatures were converted from {parameters.source} to {parameters.target}; the largest change is {change * 1e3:.3g} mK")
+    finding = Finding(
+        code="scale-converted",
+        severity="note",
+        what=f"temperatures were converted from {parameters.source} to {parameters.target}; the largest change is {change * 1e3:.3g} mK",
+    )
     return Outcome(
         {"temperature": result}, shared=shared, sources=(source,) if shared else (), scales={"temperature": parameters.target},
         facts={"largest_change_K": change, "method": str(method)}, findings=(finding,),

@@ -60,12 +60,16 @@ def temperature_from_calibration(
     """
     if calibration is None:
         if reading_kind != "temperature":
-            raise ValueError(f"reading: found a {reading_kind} and no calibration, expected a calibration or a temperature")
+            raise ValueError(
+                f"reading: found a {reading_kind} and no calibration, expected a calibration or a temperature"
+            )
         return Outcome({"temperature": reading}, facts={"calibration": "none, as recorded", "outside": 0})
     try:
         factor = unit_factor(calibration.reading_unit, reading_kind)
     except ValueError as error:
-        raise ValueError(f"reading: calibration {calibration.address} is for readings in {calibration.reading_unit}; {error}") from None
+        raise ValueError(
+            f"reading: calibration {calibration.address} is for readings in {calibration.reading_unit}; {error}"
+        ) from None
     temperature = calibrated_temperature(calibration, np.asarray(reading, dtype=np.float64) / factor, factor)
     outside = int(np.count_nonzero(np.isnan(temperature) & ~np.isnan(reading)))
     findings = _outside_finding(calibration, outside, int(np.size(reading))) if outside else ()
@@ -118,17 +122,25 @@ def calibrated_temperature(calibration: Calibration, reading: FloatArray, factor
     if isinstance(relation, CurieWeissForm):
         with np.errstate(divide="ignore", invalid="ignore"):
             excess = reading - relation.offset
-            found = np.where(excess * np.sign(relation.constant) > 0, relation.theta + relation.constant / excess, np.nan)
+            found = np.where(
+                excess * np.sign(relation.constant) > 0, relation.theta + relation.constant / excess, np.nan
+            )
     elif isinstance(relation, VapourPressureForm):
         _same_scale(calibration, "ITS-90")
         span = vapour_pressure.pressure_range_its90(relation.isotope)
-        found = _within(reading * factor, span, lambda p: vapour_pressure.temperature_its90(p, relation.isotope))
+        found = _within(
+            reading * factor, span, lambda p: vapour_pressure.temperature_its90(p, relation.isotope)
+        )
     elif isinstance(relation, MeltingCurveForm):
         _same_scale(calibration, "PLTS-2000")
         span = melting_pressure.pressure_range_plts2000(relation.branch)
-        found = _within(reading * factor, span, lambda p: melting_pressure.temperature_plts2000(p, branch=relation.branch))
+        found = _within(
+            reading * factor, span, lambda p: melting_pressure.temperature_plts2000(p, branch=relation.branch)
+        )
     else:
-        return np.asarray(evaluate(_curve(calibration), reading, temperature_span=(low, high)).temperature, dtype=np.float64)
+        return np.asarray(
+            evaluate(_curve(calibration), reading, temperature_span=(low, high)).temperature, dtype=np.float64
+        )
     with np.errstate(invalid="ignore"):
         # A part in 1e12 is the rounding of the ends.
         return np.where((found >= low * (1 - 1e-12)) & (found <= high * (1 + 1e-12)), found, np.nan)

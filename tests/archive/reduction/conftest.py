@@ -9,7 +9,7 @@ import json
 import math
 from dataclasses import dataclass, field
 from datetime import UTC, datetime, timedelta
-from typing import Any
+from typing import Any, ClassVar
 
 import numpy as np
 import pytest
@@ -75,13 +75,17 @@ class MemorySource:
 
     def reductions(self, plan: str, sweep_address: str) -> list[Any]:
         """Return the reductions of a plan on a sweep."""
-        return [each.document for each in self.done if each.document.plan.name == plan and each.document.sweep == sweep_address]
+        return [
+            each.document
+            for each in self.done
+            if each.document.plan.name == plan and each.document.sweep == sweep_address
+        ]
 
-    def reduction(self, address: str) -> Any:  # noqa: ANN401
+    def reduction(self, address: str) -> Any:
         """Return a reduction's document."""
         return self._outcome(address).document
 
-    def output(self, reduction_address: str, name: str) -> Any:  # noqa: ANN401
+    def output(self, reduction_address: str, name: str) -> Any:
         """Return an output of a reduction."""
         outcome = self._outcome(reduction_address)
         return estimate_from(outcome.document, lambda path: outcome.arrays[path][0], name)
@@ -90,13 +94,13 @@ class MemorySource:
         """Return the digest of a record."""
         return record_digest(self.records[address])
 
-    def _outcome(self, address: str) -> Any:  # noqa: ANN401
+    def _outcome(self, address: str) -> Any:
         for each in self.done:
             if each.document.address == address:
                 return each
         raise UnknownAddress(f"there is no reduction {address}")
 
-    def reduce(self, plan: str, sweep: str, *, number: int = 1, clock: Any = None) -> Any:  # noqa: ANN401
+    def reduce(self, plan: str, sweep: str, *, number: int = 1, clock: Any = None) -> Any:
         """Return a shipped plan carried out on a sweep, and remember it."""
         chosen = next(each for each in shipped_plans() if each.name == plan)
         outcome = run(chosen, sweep, self, number=number, clock=clock or Clock())
@@ -104,7 +108,7 @@ class MemorySource:
         return outcome
 
 
-def _record(content: dict[str, Any], kind: str) -> Any:  # noqa: ANN401
+def _record(content: dict[str, Any], kind: str) -> Any:
     sheet = CooldownSheet.model_fields["record"].annotation
     parsed = TypeAdapter(sheet).validate_json(json.dumps({kind: [content]}))
     return getattr(parsed, kind)[0]
@@ -143,7 +147,9 @@ def reading(temperature: np.ndarray) -> np.ndarray:
 def film(temperature: np.ndarray, transition: float) -> tuple[np.ndarray, np.ndarray]:
     """Return period drop (s) and added dissipation of a film, without noise."""
     L = LOG_D - math.log(2 * math.pi / PERIOD)
-    stiffness = film_dynamic.complex_stiffness(film_dynamic.fixed_start(temperature / transition, b=B), L=L, F=1.0)
+    stiffness = film_dynamic.complex_stiffness(
+        film_dynamic.fixed_start(temperature / transition, b=B), L=L, F=1.0
+    )
     density = film_dynamic.dynamic_areal_density(temperature, stiffness)
     per_density = 0.042 * (1 - CHI)
     return per_density * density.real, -2 * per_density / PERIOD * density.imag
@@ -202,7 +208,11 @@ def sweep_data(seed: int = 1) -> dict[str, dict[str, np.ndarray]]:
     """Return the columns of every sweep, in the units of the files."""
     random = np.random.default_rng(seed)
     data: dict[str, dict[str, np.ndarray]] = {}
-    for name, transition, low, high, rows in (("e1", None, 0.1, 1.1, 400), ("f1", T_KT, 0.3, 0.9, 900), ("f2", 0.5, 0.25, 0.8, 900)):
+    for name, transition, low, high, rows in (
+        ("e1", None, 0.1, 1.1, 400),
+        ("f1", T_KT, 0.3, 0.9, 2400),
+        ("f2", 0.5, 0.25, 0.8, 2400),
+    ):
         T = np.linspace(low, high, rows)
         period, loss = empty(T)
         if transition is not None:
@@ -210,16 +220,27 @@ def sweep_data(seed: int = 1) -> dict[str, dict[str, np.ndarray]]:
             period, loss = period + SLOPE * DOSES * DOSE - drop, loss + added
         noise_P, noise_Q = random.normal(0, U_PERIOD, rows), random.normal(0, U_LOSS, rows)
         resistance = reading(T) * (1 + 3e-5 * random.normal(size=rows))
-        data[name] = {"resistance": resistance, "period": (period + noise_P) * 1e3, "dissipation": loss + noise_Q}
+        data[name] = {
+            "resistance": resistance,
+            "period": (period + noise_P) * 1e3,
+            "dissipation": loss + noise_Q,
+        }
     hours = np.arange(0, DOSES + 1)
     n = hours * DOSE
-    P = PERIOD + SLOPE * np.minimum(n, ONSET) + CHI * SLOPE * np.maximum(n - ONSET, 0) + random.normal(0, U_PERIOD, n.size)
+    P = (
+        PERIOD
+        + SLOPE * np.minimum(n, ONSET)
+        + CHI * SLOPE * np.maximum(n - ONSET, 0)
+        + random.normal(0, U_PERIOD, n.size)
+    )
     at = np.array([(BEGIN + timedelta(hours=int(k), minutes=30)).timestamp() for k in hours])
     data["r1"] = {"at": at, "period": P * 1e3}
     return data
 
 
-def build(content: dict[str, Any] | None = None, data: dict[str, dict[str, np.ndarray]] | None = None) -> MemorySource:
+def build(
+    content: dict[str, Any] | None = None, data: dict[str, dict[str, np.ndarray]] | None = None
+) -> MemorySource:
     """Return the laboratory of a sheet and its columns."""
     content = content or sheet_content()
     data = data or sweep_data()
@@ -246,7 +267,14 @@ def build(content: dict[str, Any] | None = None, data: dict[str, dict[str, np.nd
                 sample="gas.r1", empty_cell=sweep.empty_cell, after_dose=sweep.after_dose, doses=sweep.doses,
             )
         )  # fmt: skip
-    kinds = {"fridge.r1": "cryostat", "TO-1.r1": "cell", "disc.r1": "substrate", "gas.r1": "sample", "RX-1.r1": "thermometer", "RX-1-cal.r1": "calibration"}
+    kinds = {
+        "fridge.r1": "cryostat",
+        "TO-1.r1": "cell",
+        "disc.r1": "substrate",
+        "gas.r1": "sample",
+        "RX-1.r1": "thermometer",
+        "RX-1-cal.r1": "calibration",
+    }
     document = AccessionDocument.model_validate(
         {
             "format": "stillroom-accession/1", "address": "2026-03.a1", "cooldown": "2026-03", "number": 1, "accessioned": BEGIN, "sheet": sheet,
@@ -270,13 +298,13 @@ def channels_rows(columns: dict[str, np.ndarray]) -> int:
 
 @pytest.fixture
 def laboratory() -> MemorySource:
-    """A laboratory with nothing reduced."""
+    """Return a laboratory with nothing reduced."""
     return build()
 
 
 @pytest.fixture(scope="session")
 def reduced() -> MemorySource:
-    """A laboratory with the empty cell, the dose run and two films reduced."""
+    """Return a laboratory with the empty cell, the dose run and two films reduced."""
     source = build()
     source.reduce("empty-cell", "2026-03/e1")
     source.reduce("dose-run", "2026-03/r1")
@@ -286,14 +314,14 @@ def reduced() -> MemorySource:
 
 
 @pytest.fixture(scope="session")
-def tools() -> Any:  # noqa: ANN401
-    """The builders of this file, for tests that change the sheet or the data."""
+def tools() -> Any:
+    """Return the builders of this file, for tests that change the sheet or the data."""
 
     class Tools:
         build = staticmethod(build)
         sheet_content = staticmethod(sheet_content)
         sweep_data = staticmethod(sweep_data)
         Clock = Clock
-        truth = {"T_KT": T_KT, "chi": CHI, "slope": SLOPE, "onset": ONSET, "dose": DOSE}
+        truth: ClassVar = {"T_KT": T_KT, "chi": CHI, "slope": SLOPE, "onset": ONSET, "dose": DOSE}
 
     return Tools
