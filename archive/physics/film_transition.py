@@ -25,7 +25,7 @@ FREE_BY_DEFAULT = ("transition_temperature", "b", "log_diffusivity", "drop_offse
 NAMES = ("transition_temperature", "b", "log_diffusivity", "F", "scale", "drop_offset", "dissipation_offset")
 
 PANEL_WIDTH, ORDER, TAIL = 2.0, 10, 9.0
-"""Coarser quadrature for the fit: 1e-9 relative, far below any measurement."""
+"""Coarser quadrature for the fit: within 1e-8 of the fine one, far below any measurement."""
 
 
 @dataclass(frozen=True)
