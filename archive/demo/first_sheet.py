@@ -72,7 +72,7 @@ revision = 1
 material = "polyimide film"
 form = "stack of 2200 discs, 15 mm diameter, 7.5 um thick, one roll"
 mass = "4.14(4) g"
-area = "$area m^2"
+area = { quantity = "$area m^2", known = "measured", source = "N2 isotherm on an offcut, December 2024" }
 area_method = "N2 at 77.3 K (BET), 0.162 nm^2 a molecule, from an earlier run on an offcut; s001 is the check in place"
 outgassing = "pumped 48 h at 350 K"
 preplating = "none"
@@ -196,7 +196,7 @@ relative_uncertainty = 5e-4
 
 [[doser]]
 name = "D1"
-volume = "$volume cm^3"
+volume = { quantity = "$volume cm^3", known = "measured", source = "weighing with water" }
 how = "weighed full of water, 2023; confirmed by expansion from a known volume in January 2025"
 
 [[dead_volume]]

@@ -61,7 +61,7 @@ revision = 1
 material = "porous glass"
 form = "rod 13 mm diameter, 8 mm long, leached and washed"
 mass = "1.087(2) g"
-area = "$area m^2"
+area = { quantity = "$area m^2", known = "measured", source = "N2 isotherm on the sister piece" }
 area_method = "N2 at 77.3 K (BET), 0.162 nm^2 a molecule, sister piece of the same rod; s001 is the check in place"
 pore_diameter = "7.0(5) nm"
 porosity = "0.30(2)"

@@ -105,7 +105,7 @@ def _doses(seed: int, stated: Stated) -> str:
 
 def _files(seed: int) -> dict[str, bytes]:
     cell = TO4_LATER
-    empty = oscillator_record(cell, np.linspace(0.020, 0.98, 240), 0.0, generator(seed, NAME, "s001"))
+    empty = oscillator_record(cell, np.linspace(0.020, 0.97, 240), 0.0, generator(seed, NAME, "s001"))
     elapsed, magnitude, _ = ringdown(cell, 0.100, 0.0, generator(seed, NAME, "s002"))
     sweeps = {
         name: film_sweep(cell, coverage, generator(seed, NAME, name))
