@@ -20,7 +20,7 @@ from sqlalchemy.engine import Dialect
 from sqlalchemy.types import TypeDecorator, TypeEngine
 from typing_extensions import override
 
-__all__ = ["COUNT", "FLAG", "JSON", "REAL", "TEXT", "TIME", "UnreadableError"]
+__all__ = ["COUNT", "FLAG", "JSON", "REAL", "TEXT", "TIME", "UnreadableError", "utc_text"]
 
 _TEXT = Text().with_variant(postgresql.TEXT(collation="C"), "postgresql")
 REAL: TypeEngine[float] = Double().with_variant(sqlite.REAL(), "sqlite")
@@ -106,6 +106,8 @@ def utc_text(moment: datetime) -> str:
     ------
     ValueError
         If the time has no offset: it would be an instant only by guessing.
+    OverflowError
+        If it is out of the calendar in UTC.
     """
     if moment.tzinfo is None:
         raise ValueError(f"{moment.isoformat()} has no offset from UTC")

@@ -7,17 +7,20 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
-from sqlalchemy import ColumnElement, and_, exists, func, or_
+from sqlalchemy import ColumnElement, and_, exists, func, or_, select
 from sqlalchemy.orm import InstrumentedAttribute, aliased
 
 from archive.errors import BadRequest
 from archive.index.answers import ResultCondition, SearchQuery
+from archive.index.columns import utc_text
 from archive.index.searchable import folded
 from archive.index.tables import Channel, Output, Reduction, Sweep, SweepThermometer
 
 __all__ = ["named", "newest_reduction", "newest_sweep", "part_of", "search_conditions"]
 
+# SQLite bounds the length of a pattern and the depth of an expression; a search by hand is far below either.
 _LONGEST_WORD = 1000
+_MOST_WORDS = 100
 
 _Text = InstrumentedAttribute[str] | InstrumentedAttribute[str | None]
 
@@ -67,7 +70,7 @@ def search_conditions(query: SearchQuery) -> Iterator[ColumnElement[bool]]:
     Raises
     ------
     BadRequest
-        If a time has no offset, or a word is too long to search for.
+        If a time has no offset, or the text is too long to search for.
     """
     yield newest_sweep()
     for column, value in ((Sweep.kind, query.kind), (Sweep.cooldown, query.cooldown)):
@@ -96,11 +99,14 @@ def search_conditions(query: SearchQuery) -> Iterator[ColumnElement[bool]]:
     yield from _ranges(query)
     yield from _times(query)
     yield from (_result(condition) for condition in query.results)
-    for word in folded(query.text or "").split():
-        if len(word) > _LONGEST_WORD:
-            raise BadRequest(
-                "a word to search for is too long", expected=f"at most {_LONGEST_WORD} characters"
-            )
+    words = folded(query.text or "").split()
+    if len(words) > _MOST_WORDS or max(map(len, words), default=0) > _LONGEST_WORD:
+        raise BadRequest(
+            "the text to search for is too long",
+            field="text",
+            expected=f"at most {_MOST_WORDS} words of at most {_LONGEST_WORD} characters",
+        )
+    for word in words:
         yield Sweep.text.contains(word, autoescape=True)
 
 
@@ -130,13 +136,17 @@ def _ranges(query: SearchQuery) -> Iterator[ColumnElement[bool]]:
 
 def _times(query: SearchQuery) -> Iterator[ColumnElement[bool]]:
     for field, moment in (("since", query.since), ("until", query.until)):
-        if moment is not None and moment.tzinfo is None:
+        if moment is None:
+            continue
+        try:
+            utc_text(moment)
+        except (ValueError, OverflowError) as fault:
             raise BadRequest(
-                "a time without its offset from UTC is no instant",
+                "that is no instant to search from or to",
                 field=field,
                 found=moment.isoformat(),
-                expected="a time such as 2026-03-02T09:10:00+02:00",
-            )
+                expected="a time with its offset from UTC, such as 2026-03-02T09:10:00+02:00",
+            ) from fault
     if query.since is not None:
         yield func.coalesce(Sweep.end, Sweep.begin) >= query.since
     if query.until is not None:
@@ -149,11 +159,10 @@ def _result(condition: ResultCondition) -> ColumnElement[bool]:
         bounds.append(Output.value_si >= condition.low)
     if condition.high is not None:
         bounds.append(Output.value_si <= condition.high)
-    return exists().where(
-        Output.reduction == Reduction.address,
-        Reduction.sweep == Sweep.address,
-        Output.name == condition.name,
-        Output.rows.is_(None),
-        newest_reduction(),
-        *bounds,
+    # A set made once: asked for each sweep anew, SQLite goes through every result of that name each time
+    # (10 000 sweeps and reductions: 80 s).
+    return Sweep.address.in_(
+        select(Reduction.sweep)
+        .join(Output, Output.reduction == Reduction.address)
+        .where(Output.name == condition.name, Output.rows.is_(None), newest_reduction(), *bounds)
     )

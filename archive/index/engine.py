@@ -4,12 +4,14 @@ Rules
 -----
 * SQLite: foreign keys on, write-ahead log, every commit synced to the disk; one writer at a time, taken at the
   beginning of its transaction, so that waiting for it has an end and never fails half-way.
+* An SQLite index in a folder that a reader may not write to (another person's, a backup) can be read all the same.
 * PostgreSQL: repeatable read; writers queue on a table lock, with the same bound on waiting.
 * "Damaged" is never reported as "absent", and "busy" as neither.
 """
 
 from __future__ import annotations
 
+import os
 import sqlite3
 from collections.abc import Iterator
 from contextlib import contextmanager
@@ -18,6 +20,7 @@ from typing import Any
 
 from sqlalchemy import Connection, Engine, create_engine, event, exc, text
 from sqlalchemy.engine import URL, make_url
+from sqlalchemy.pool import NullPool, QueuePool
 
 from archive.errors import ArchiveBusy, ArchiveError, BadRequest, DamagedFile, MissingFile
 from archive.index.columns import UnreadableError
@@ -62,6 +65,10 @@ def index_url(text_url: str) -> URL:
         If it is none that Stillroom can use.
     """
     expected = "sqlite:///folder/index.sqlite3 or postgresql+psycopg://user@host/database"
+    path = text_url.removeprefix("sqlite:///")
+    if path not in (text_url, "", ":memory:"):
+        # Taken as it stands: a path may hold "?", "#" and "%", which an address would read otherwise.
+        return URL.create("sqlite+pysqlite", database=path)
     try:
         url = make_url(text_url)
     except exc.ArgumentError as fault:
@@ -70,8 +77,6 @@ def index_url(text_url: str) -> URL:
         ) from fault
     if url.drivername in ("postgresql", "postgresql+psycopg"):
         return url.set(drivername="postgresql+psycopg")
-    if url.drivername in ("sqlite", "sqlite+pysqlite") and url.database not in (None, "", ":memory:"):
-        return url
     raise BadRequest(
         "no index can be kept there", found=url.render_as_string(hide_password=True), expected=expected
     )
@@ -105,9 +110,14 @@ def engine_of(url: URL, *, read_only: bool, new: bool = False, wait: float = WAI
 
 def _sqlite(url: URL, *, mode: str, wait: float) -> Engine:
     path = Path(str(url.database)).absolute()
+
+    def connection_to_file() -> sqlite3.Connection:
+        # Asked anew for every connection, as a writer may have come or gone.
+        how = f"?mode={mode}" + ("&immutable=1" if mode == "ro" and _at_rest_and_out_of_reach(path) else "")
+        return sqlite3.connect(path.as_uri() + how, uri=True, timeout=wait, check_same_thread=False)
+
     engine = create_engine(
-        URL.create("sqlite+pysqlite", database=path.as_uri(), query={"mode": mode, "uri": "true"}),
-        connect_args={"timeout": wait},
+        "sqlite+pysqlite://", creator=connection_to_file, poolclass=NullPool if mode == "ro" else QueuePool
     )
 
     @event.listens_for(engine, "connect")
@@ -125,6 +135,11 @@ def _sqlite(url: URL, *, mode: str, wait: float) -> Engine:
         connection.exec_driver_sql("BEGIN IMMEDIATE" if writes else "BEGIN")
 
     return engine
+
+
+def _at_rest_and_out_of_reach(path: Path) -> bool:
+    """Return whether nobody writes to a file, in a folder where this process could not lay the log's own index."""
+    return not path.with_name(f"{path.name}-wal").exists() and not os.access(path.parent, os.W_OK)
 
 
 def _postgresql(url: URL, *, read_only: bool, wait: float) -> Engine:

@@ -213,8 +213,15 @@ class Index:
         Raises
         ------
         BadRequest
-            If the query asks for something that cannot be: a time without offset, a negative limit.
+            If the query asks for something that cannot be: a time without offset, a negative limit, an unknown order.
         """
+        if query.sort not in queries.SORTS:
+            raise BadRequest(
+                "sweeps cannot be sorted so",
+                field="sort",
+                found=str(query.sort),
+                expected=", ".join(queries.SORTS),
+            )
         for field, number in (("limit", query.limit), ("offset", query.offset)):
             if number is not None and number < 0:
                 raise BadRequest(

@@ -1,4 +1,4 @@
-"""Every SELECT of the index.
+"""Every SELECT of the index (what a search asks, with its sub-selects, is spelt in `archive.index.conditions`).
 
 Rules: each query has a full order, so that an answer never depends on the engine; sweeps and records are shown once, in
 the version of the newest (for records: with the earliest) accession that holds them.
@@ -33,6 +33,7 @@ from archive.index.tables import (
 )
 
 __all__ = [
+    "SORTS",
     "Query",
     "accessions",
     "all_rows",
@@ -81,13 +82,14 @@ _SWEEP = (
     Sweep.scale,
 )
 
-_SORT: dict[str, tuple[InstrumentedAttribute[Any], ...]] = {
+SORTS: dict[str, tuple[InstrumentedAttribute[Any], ...]] = {
     "date": (Sweep.begin,),
     "coverage": (Sweep.coverage_mol_per_m2, Sweep.begin),
     "temperature": (Sweep.temperature_low_K, Sweep.temperature_high_K),
     "cell": (Sweep.cell, Sweep.coverage_mol_per_m2, Sweep.begin),
     "name": (Sweep.cooldown, Sweep.name),
 }
+"""Columns of each order that a search can have."""
 
 
 def all_rows(table: Table) -> Query:
@@ -118,7 +120,7 @@ def plan_known(address: str, digest: str) -> Query:
 def search(query: SearchQuery) -> Query:
     """Sweeps that satisfy a search."""
     order: list[Any] = []
-    for column in _SORT[query.sort]:
+    for column in SORTS[query.sort]:
         # The engines disagree on where NULL sorts: said outright, it is last.
         order += [column.is_(None), column.desc() if query.descending else column.asc()]
     found = select(*_SWEEP).where(*search_conditions(query)).order_by(*order, Sweep.address)

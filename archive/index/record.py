@@ -20,7 +20,7 @@ from schemas.address import parse_address
 from schemas.finding import Finding
 from schemas.kinds import kind_of
 from schemas.lineage import AccessionDocument, OutputEntry, ReductionDocument, SweepEntry, Value
-from schemas.quantity import unit_factor
+from schemas.quantity import Quantity
 
 __all__ = ["add_accession", "add_reduction", "clear"]
 
@@ -79,18 +79,22 @@ def add_accession(
     if not _seal(connection, document.address, "accession", key=key, sha256=sha256, size=size):
         return
     _tell_cooldown(connection, document)
-    connection.execute(
-        insert(tables.Accession).values(
-            address=document.address,
-            cooldown=document.cooldown,
-            number=document.number,
-            key=key,
-            accessioned=document.accessioned,
-            supplements=document.supplements,
-            sheet_file=document.sheet_file,
-            differences=list(document.differences),
-            stillroom=document.software.stillroom,
-        )
+    _add(
+        connection,
+        tables.Accession,
+        [
+            {
+                "address": document.address,
+                "cooldown": document.cooldown,
+                "number": document.number,
+                "key": key,
+                "accessioned": document.accessioned,
+                "supplements": document.supplements,
+                "sheet_file": document.sheet_file,
+                "differences": list(document.differences),
+                "stillroom": document.software.stillroom,
+            }
+        ],
     )
     held = {"accession": document.address}
     _add(
@@ -137,34 +141,42 @@ def add_reduction(
         return
     address = parse_address(document.address)
     if connection.execute(queries.cooldown_newest(document.cooldown)).first() is None:
-        connection.execute(insert(tables.Cooldown).values(name=document.cooldown))
+        _add(connection, tables.Cooldown, [{"name": document.cooldown}])
     plan = document.plan
     if connection.execute(queries.plan_known(plan.address, document.plan_digest)).first() is None:
-        connection.execute(
-            insert(tables.Plan).values(
-                address=plan.address,
-                digest=document.plan_digest,
-                name=plan.name,
-                revision=plan.revision,
-                title=plan.title,
-                content=plan.model_dump(mode="json"),
-            )
+        _add(
+            connection,
+            tables.Plan,
+            [
+                {
+                    "address": plan.address,
+                    "digest": document.plan_digest,
+                    "name": plan.name,
+                    "revision": plan.revision,
+                    "title": plan.title,
+                    "content": plan.model_dump(mode="json"),
+                }
+            ],
         )
-    connection.execute(
-        insert(tables.Reduction).values(
-            address=document.address,
-            key=key,
-            cooldown=document.cooldown,
-            sweep=address.sweep,
-            plan=address.plan,
-            number=document.number,
-            plan_address=plan.address,
-            plan_digest=document.plan_digest,
-            supersedes=document.supersedes,
-            begin=document.begin,
-            end=document.end,
-            stillroom=document.software.stillroom,
-        )
+    _add(
+        connection,
+        tables.Reduction,
+        [
+            {
+                "address": document.address,
+                "key": key,
+                "cooldown": document.cooldown,
+                "sweep": address.sweep,
+                "plan": address.plan,
+                "number": document.number,
+                "plan_address": plan.address,
+                "plan_digest": document.plan_digest,
+                "supersedes": document.supersedes,
+                "begin": document.begin,
+                "end": document.end,
+                "stillroom": document.software.stillroom,
+            }
+        ],
     )
     held = {"reduction": document.address}
     _add(connection, tables.ReductionInput, _input_rows(document))
@@ -197,10 +209,10 @@ def _seal(connection: Connection, address: str, document: str, *, key: str, sha2
     """Add the row of a sealed file; False when the same file is there already."""
     known = connection.execute(queries.sealed_file(key)).first()
     if known is None:
-        connection.execute(
-            insert(tables.SealedFile).values(
-                key=key, document=document, address=address, sha256=sha256, size=size
-            )
+        _add(
+            connection,
+            tables.SealedFile,
+            [{"key": key, "document": document, "address": address, "sha256": sha256, "size": size}],
         )
         return True
     if (known.sha256, known.size, known.address) == (sha256, size, address):
@@ -229,7 +241,7 @@ def _tell_cooldown(connection: Connection, document: AccessionDocument) -> None:
     }
     known = connection.execute(queries.cooldown_newest(document.cooldown)).first()
     if known is None:
-        connection.execute(insert(tables.Cooldown).values(name=document.cooldown, **told))
+        _add(connection, tables.Cooldown, [dict(name=document.cooldown, **told)])
     elif known.newest is None or known.newest < document.number:
         connection.execute(
             update(tables.Cooldown).where(tables.Cooldown.name == document.cooldown).values(**told)
@@ -338,8 +350,11 @@ def _si(value: Value | None, quantity: str) -> tuple[float | None, float | None]
     if value is None or value.value is None:
         return None, None
     try:
-        # The canonical unit is the usual case, and asking for no factor keeps the units library unloaded.
-        factor = 1.0 if value.unit in kind_of(quantity).si else unit_factor(value.unit, quantity)
+        if value.unit in kind_of(quantity).si:
+            # The usual case; asking for no factor keeps the units library unloaded.
+            return value.value, value.uncertainty
+        # A product of floats would miss the nearest one, and with it a search whose bound is that very number.
+        stated = Quantity(value=value.value, unit=value.unit, kind=quantity, uncertainty=value.uncertainty)
     except ValueError:
         return None, None
-    return value.value * factor, None if value.uncertainty is None else value.uncertainty * factor
+    return stated.si, stated.si_uncertainty

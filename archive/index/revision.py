@@ -15,7 +15,7 @@ from itertools import count
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from sqlalchemy import Column, Connection, Engine, MetaData, Table, Text, inspect, select
+from sqlalchemy import Column, Connection, Engine, MetaData, Table, Text, inspect, select, text
 from sqlalchemy.engine import URL
 
 from archive.errors import ArchiveError, BadRequest, MissingFile
@@ -168,6 +168,9 @@ def raise_to_head(engine: Engine, url: URL, *, read_only: bool) -> None:
         with translated(url):
             _copied_beside(Path(name), revision=revision)
     with connected(engine, url, writes=True) as connection:
+        if connection.dialect.name == "postgresql":
+            # A second program that wants to raise the tables waits here, and then finds nothing left to do.
+            connection.execute(text("LOCK TABLE alembic_version IN SHARE ROW EXCLUSIVE MODE"))
         upgrade(connection)
 
 
@@ -183,8 +186,12 @@ def _copied_beside(path: Path, *, revision: str) -> Path:
     """
     for attempt in count(1):
         copy = path.with_name(f"{path.name}.before-{revision}" + (f".{attempt}" if attempt > 1 else ""))
-        if not copy.exists():
-            break
+        try:
+            # Two programs may raise one index at once; each takes a name of its own.
+            copy.touch(exist_ok=False)
+        except FileExistsError:
+            continue
+        break
     # SQLite's own copy holds what still stands in the write-ahead log; a copy of the file alone would not.
     with closing(sqlite3.connect(path)) as source, closing(sqlite3.connect(copy)) as target:
         source.backup(target)
