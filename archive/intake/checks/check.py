@@ -56,7 +56,7 @@ class Check:
     uses_history: bool = False
 
     def findings(self, reading: Reading, thresholds: Thresholds, earlier: History | None) -> list[Finding]:
-        """Findings of this check."""
+        """Return the findings of this check."""
         arguments: tuple[Any, ...] = (reading, thresholds)
         if self.uses_history:
             if earlier is None:
