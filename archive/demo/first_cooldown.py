@@ -36,7 +36,8 @@ from archive.demo.recording import (
     sweep_bytes,
     times_from,
 )
-from archive.demo.truth import TO4, CellTruth, Stated, generator
+from archive.demo.stated import Stated, generator
+from archive.demo.truth import TO4, CellTruth
 
 __all__ = ["DOSE_COVERAGES", "FIRST_COVERAGES", "RUN_ROWS", "dose_run", "first_cooldown", "first_stated"]
 

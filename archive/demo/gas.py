@@ -11,7 +11,8 @@ from typing import TYPE_CHECKING, Final
 
 import numpy as np
 
-from archive.demo.truth import CellTruth, Stated
+from archive.demo.stated import Stated
+from archive.demo.truth import CellTruth
 from archive.physics.constants import AVOGADRO, GAS_CONSTANT
 from archive.physics.helium_gas import molar_density, second_virial
 

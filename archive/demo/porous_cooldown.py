@@ -36,7 +36,8 @@ from archive.demo.recording import (
     sweep_bytes,
     times_from,
 )
-from archive.demo.truth import PG2, Stated, generator
+from archive.demo.stated import Stated, generator
+from archive.demo.truth import PG2
 
 __all__ = ["POROUS_COVERAGES", "POROUS_DOSES", "porous_cooldown", "porous_stated"]
 

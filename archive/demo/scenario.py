@@ -13,7 +13,8 @@ from archive.demo.first_cooldown import FIRST_COVERAGES, first_cooldown, first_s
 from archive.demo.forward import transition_temperature
 from archive.demo.porous_cooldown import POROUS_COVERAGES, porous_cooldown, porous_stated
 from archive.demo.second_cooldown import SECOND_COVERAGES, TO4_LATER, second_cooldown, second_stated
-from archive.demo.truth import PG2, TO4, CellTruth, Stated
+from archive.demo.stated import Stated
+from archive.demo.truth import PG2, TO4, CellTruth
 
 __all__ = ["SEED", "CooldownTruth", "make_folders", "truth"]
 

@@ -29,7 +29,8 @@ from archive.demo.recording import (
     times_from,
 )
 from archive.demo.second_sheet import SECOND_SHEET
-from archive.demo.truth import TO4, Stated, generator, remounted
+from archive.demo.stated import Stated, generator
+from archive.demo.truth import TO4, remounted
 
 __all__ = ["SECOND_COVERAGES", "TO4_LATER", "second_cooldown", "second_stated"]
 

@@ -19,7 +19,8 @@ from archive.demo.forward import (
 )
 from archive.demo.gas import NITROGEN_AREA, THERMOMETER, dose_reading, isotherm, stated_amount
 from archive.demo.porous_cooldown import POROUS_DOSES
-from archive.demo.truth import PG2, TO4, Stated, generator, remounted
+from archive.demo.stated import Stated, generator
+from archive.demo.truth import PG2, TO4, remounted
 from archive.physics.constants import AVOGADRO
 
 CELLS = pytest.mark.parametrize("cell", [TO4, PG2], ids=lambda cell: cell.name)

@@ -19,7 +19,8 @@ from archive.demo.forward import (
 )
 from archive.demo.gas import NITROGEN_AREA, dose_run_readings, isotherm, stated_amount
 from archive.demo.porous_cooldown import POROUS_COVERAGES
-from archive.demo.truth import PG2, TO4, Stated, generator
+from archive.demo.stated import Stated, generator
+from archive.demo.truth import PG2, TO4
 from archive.physics.adsorption import bet_area
 from archive.physics.constants import MOLAR_MASS_HELIUM4
 from archive.physics.film_features import shift_of_crossing
