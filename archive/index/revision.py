@@ -60,7 +60,7 @@ def _is_older(revision: str, *, name: str) -> bool:
 
     Raises
     ------
-    ArchiveError
+    BadRequest
         If this program does not know the revision: a newer one wrote it.
     """
     if revision == HEAD:
