@@ -18,8 +18,10 @@ from archive.reduction import (
     gas_steps,
     loading_steps,
     oscillator_steps,
+    peak_steps,
     sweep_steps,
     thermometry_steps,
+    transition_steps,
 )
 from archive.reduction.step import Port, Step
 
@@ -200,7 +202,7 @@ STEPS: tuple[Step, ...] = (
         citations=("bishop-reppy-1980",),
     ),
     Step(
-        name="dissipation-peak", version=1, function=film_steps.dissipation_peak, parameters=film_steps.PeakParameters,
+        name="dissipation-peak", version=1, function=peak_steps.dissipation_peak, parameters=peak_steps.PeakParameters,
         takes={"temperature": _TEMPERATURE, "dissipation": Port("dissipation", "array", "dissipation that the helium adds")},
         yields={"peak_temperature": Port("temperature", "scalar", "temperature of the dissipation peak"), "peak_height": Port("dissipation", "scalar", "height of the dissipation peak")},
         sentence="The dissipation peaks at {peak_temperature} ({points} points from {low_K} K to {high_K} K).", spread="refit", weights=("dissipation",),
@@ -213,21 +215,21 @@ STEPS: tuple[Step, ...] = (
         citations=("nelson-kosterlitz-1977",), spread="refit", weights=("superfluid_density", "temperature"),
     ),
     Step(
-        name="static-transition", version=1, function=film_steps.static_transition, parameters=film_steps.DynamicParameters,
+        name="static-transition", version=1, function=transition_steps.static_transition, parameters=transition_steps.DynamicParameters,
         takes={"crossing": Port("temperature", "scalar", "crossing of the universal line"), "period": _ANY_PERIOD},
         yields={"transition_temperature": Port("temperature", "scalar", "static transition temperature")},
         sentence="T_KT is the temperature where the static areal density meets the universal line: the crossing less {shift_mK} mK, which the dynamic theory gives with b = {b}, ln(D/(a^2 w)) = {L} and F = {free_vortices} held.",
         citations=("nelson-kosterlitz-1977", "ahns-1980"),
     ),
     Step(
-        name="transition-from-peak", version=1, function=film_steps.transition_from_peak, parameters=film_steps.DynamicParameters,
+        name="transition-from-peak", version=1, function=transition_steps.transition_from_peak, parameters=transition_steps.DynamicParameters,
         takes={"peak": Port("temperature", "scalar", "temperature of the dissipation peak"), "period": _ANY_PERIOD},
         yields={"transition_temperature": Port("temperature", "scalar", "static transition temperature by the dissipation peak")},
         sentence="The dissipation peak lies {shift_mK} mK above the static transition by the dynamic theory with b = {b}, ln(D/(a^2 w)) = {L} and F = {free_vortices} held.",
         citations=("ahns-1980",),
     ),
     Step(
-        name="universal-ratio", version=1, function=film_steps.universal_ratio, parameters=film_steps.DynamicParameters,
+        name="universal-ratio", version=1, function=transition_steps.universal_ratio, parameters=transition_steps.DynamicParameters,
         takes={"temperature": _TEMPERATURE, "superfluid_density": _DENSITY, "transition": Port("temperature", "scalar", "static transition temperature"), "period": _ANY_PERIOD},
         yields={"ratio": Port("number", "scalar", "sigma_s(T_KT)/T_KT over the universal constant"), "density_at_transition": Port("areal_mass_density", "scalar", "static areal superfluid density at the transition")},
         sentence="sigma_s(T_KT)/T_KT is {ratio} of the universal value, after division by {dynamic_excess} for the finite frequency.",
