@@ -304,7 +304,9 @@ def _jacobian(calls: _Counted, point: FloatArray, lower: FloatArray, upper: Floa
     """Return the central-difference Jacobian, one-sided where a bound is in the way."""
     columns = []
     for index, value in enumerate(point):
-        step = np.finfo(float).eps ** (1 / 3) * max(abs(value), 1e-4)
+        # A value is counted in its parameter's own scale: a resonance frequency is many line widths, and a step of a part of
+        # it would leap over the line.
+        step = np.finfo(float).eps ** (1 / 3) * max(min(abs(value), 1.0), 1e-4)
         above, below = point.copy(), point.copy()
         above[index] = min(value + step, upper[index])
         below[index] = max(value - step, lower[index])
