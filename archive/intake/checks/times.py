@@ -10,7 +10,7 @@ from archive.intake.checks.rows import counting, ring_time_s, tables
 from archive.intake.checks.telling import number, on_row
 from archive.intake.reading import Reading, SweepTable
 from archive.intake.thresholds import Thresholds
-from schemas.finding import Finding
+from schemas.finding import Finding, Severity
 
 __all__ = ["time_gap", "time_repeated", "time_reversed"]
 
@@ -48,7 +48,7 @@ def time_repeated(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]
 
 
 def _at_line(
-    table: SweepTable, code: str, severity: str, what: str, name: str, line: int, remedy: str
+    table: SweepTable, code: str, severity: Severity, what: str, *, name: str, line: int, remedy: str
 ) -> Finding:
     where = np.flatnonzero(table.lines == line)
     file = table.where(int(where[0]))[0] if len(where) else table.sweep.files[0]
@@ -70,7 +70,8 @@ def time_gap(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]:
         name = table.of_kind("instant")
         if name is None or table.sweep.kind == "log":
             continue
-        rows = np.flatnonzero(counting(table) & np.isfinite(table.columns[name]))
+        counts = counting(table)
+        rows = np.flatnonzero(np.isfinite(table.columns[name]))
         time = table.columns[name][rows]
         if len(time) < 4:
             continue
@@ -84,7 +85,10 @@ def time_gap(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]:
         gaps = [
             int(i)
             for i in np.flatnonzero(steps > limit)
-            if usual > 0 and not any(time[i] <= at <= time[i + 1] for at in stated)
+            if usual > 0
+            and counts[rows[i]]
+            and counts[rows[i + 1]]
+            and not any(time[i] <= at <= time[i + 1] for at in stated)
         ]
         if gaps:
             longest = max(gaps, key=lambda i: steps[i])
