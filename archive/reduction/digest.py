@@ -22,7 +22,7 @@ def array_digest(values: npt.ArrayLike) -> str:
     Examples
     --------
     >>> array_digest([1.0, 2.0])[:12]
-    '73a0c3cd7e3f'
+    'dc91ce9a50dd'
     """
     array = np.ascontiguousarray(np.asarray(values, dtype=np.float64).astype("<f8"))
     return hashlib.sha256(array.tobytes()).hexdigest()

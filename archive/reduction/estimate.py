@@ -87,8 +87,9 @@ class Estimate:
     def uncertainty(self) -> FloatArray:
         """Combined standard uncertainty."""
         total = np.square(self.points)
-        for part in self.shared.values():
-            total = total + np.square(part)
+        # In the order of names, so that an estimate read back from an archive gives the same bits.
+        for name in sorted(self.shared):
+            total = total + np.square(self.shared[name])
         return np.asarray(np.sqrt(total))
 
     def shifted(self, source: str, sign: float) -> FloatArray:

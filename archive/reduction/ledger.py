@@ -58,10 +58,11 @@ def gas_ledger(sheet: CooldownSheet, *, sample: Sample | None, area: Quantity | 
     """
     doses = _doses(sheet, sample)
     entries = []
-    total = _sum([])
+    taken: list[Estimate] = []
     for each in doses:
         if each.counted:
-            total = _sum([total, each.amount])
+            taken.append(each.amount)
+        total = _sum(taken)
         entries.append(
             DoseEntry(
                 name=each.dose.name, at=each.dose.at, act=each.dose.act, counted=each.counted, amount=_value(each.amount),
@@ -78,7 +79,7 @@ def gas_ledger(sheet: CooldownSheet, *, sample: Sample | None, area: Quantity | 
         _value(acts["add"]),
         _value(_negative(acts["remove"])),
         _value(_negative(acts["recover"])),
-        _value(total),
+        _value(_sum(taken)),
     )
 
 

@@ -105,7 +105,7 @@ def test_axes_of_a_fit_reproduce_its_covariance() -> None:
     matrix = np.array([[4e-18, 1e-12, 0.0], [1e-12, 1e-6, 2e-4], [0.0, 2e-4, 9.0]])
     axes = fit_contributions(Covariance(("a", "b", "c"), matrix))
     back = sum(np.outer(list(axis.values()), list(axis.values())) for axis in axes)
-    assert back == pytest.approx(matrix, rel=1e-9, abs=1e-25)
+    assert back == pytest.approx(matrix, rel=1e-9, abs=1e-20)
 
 
 def test_an_undetermined_parameter_is_refused_by_name() -> None:
