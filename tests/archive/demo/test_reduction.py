@@ -8,6 +8,7 @@ import numpy as np
 import pytest
 
 from archive.demo.first_cooldown import first_cooldown
+from archive.demo.forward import background_period
 from archive.demo.scenario import make_folders, truth
 from archive.errors import UnknownAddress
 from archive.intake.folder import read_cooldown
@@ -168,6 +169,18 @@ def test_the_dose_runs_and_isotherms_give_back_the_cell(laboratory, name):
     area = laboratory.reduce("isotherm-bet", f"{name}/s001")["area"]
     # The line is unweighted and the plan holds the range for exact: a few of its own uncertainties.
     assert abs(pull(area, known.cell.film.area)) < 6
+
+
+def test_the_frequency_sweep_and_the_ringdown_agree_with_the_truth_and_with_each_other(laboratory):
+    resonance = laboratory.reduce("resonance", "2026-05/s003")
+    decay = laboratory.reduce("ringdown", "2026-05/s004")
+    oscillator = truth()["2026-05"].cell.oscillator
+    frequency = 1 / float(background_period(oscillator, 0.1))
+    quality = 1 / (oscillator.loss + 0.1 * oscillator.loss_slope + 0.01 * oscillator.loss_curvature)
+    assert abs(pull(resonance["resonance_frequency"], frequency)) < 4
+    assert abs(pull(resonance["quality_factor"], quality)) < 4
+    # The decay gives Q to about 1 part in 10 000; the period that it is computed with is stated much better.
+    assert decay["quality_factor"].value == pytest.approx(quality, rel=6e-4)
 
 
 def first_pulls(seed, folder):
