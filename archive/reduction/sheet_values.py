@@ -25,7 +25,7 @@ Level = Literal["run", "cell", "laboratory"]
 
 
 def quantity_estimate(
-    quantity: Quantity, *, name: str, level: Level, address: str
+    quantity: Quantity, *, name: str, level: Level, address: str, unstated: str | None = None
 ) -> tuple[Estimate, tuple[SourceEntry, ...]]:
     """Return a stated quantity as an estimate, with the source of its uncertainty.
 
@@ -36,8 +36,10 @@ def quantity_estimate(
         Name of the source; equal statements must have equal names.
     level, address : str
         Whom the source is common to, and where it stands.
+    unstated : str, optional
+        Convention of an amplitude that states none.
     """
-    rms = rms_value(quantity)
+    rms = rms_value(quantity, unstated)
     value = np.asarray(quantity.si * rms)
     spread = (quantity.si_uncertainty or 0.0) * rms
     if spread == 0:
@@ -65,7 +67,14 @@ def sheet_value(facts: SweepFacts, name: str) -> SheetValue:
     found = getattr(holder, field, None)
     if not isinstance(found, Quantity):
         return found, (), address
-    estimate, sources = quantity_estimate(found, name=f"{address} {field}", level=level, address=address)
+    detection = facts.accession.sheet.detection_of(facts.sweep)
+    estimate, sources = quantity_estimate(
+        found,
+        name=f"{address} {field}",
+        level=level,
+        address=address,
+        unstated=None if detection is None else detection.amplitude_convention,
+    )
     if estimate.quantity == "temperature" and estimate.scale is None:
         estimate = estimate.with_scale(facts.accession.sheet.temperature_scale)
     return estimate, sources, address
@@ -77,7 +86,7 @@ def _holder(facts: SweepFacts, head: str) -> tuple[object | None, str, Level]:
         "gas": (facts.gas_book, facts.accession.address, "run"),
         "sheet": (sheet, facts.accession.address, "run"),
         "sweep": (facts.sweep, facts.address, "run"),
-        "detection": (sheet.detection_of(facts.sweep), f"{facts.cooldown} detection", "run"),
+        "detection": (sheet.detection_of(facts.sweep), facts.accession.address, "run"),
         "cell": (facts.cell, entry.cell or facts.address, "cell"),
         "substrate": (facts.substrate, entry.substrate or facts.address, "cell"),
         "sample": (facts.sample, entry.sample or facts.address, "laboratory"),
