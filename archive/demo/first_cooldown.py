@@ -45,7 +45,7 @@ NAME: Final = "2025-03"
 
 DOSE_COVERAGES: Final = (
     *(3.0e-6, 6.0e-6, 9.0e-6, 12.0e-6, 15.0e-6, 17.0e-6, 19.0e-6, 21.0e-6, 22.2e-6, 23.2e-6),
-    *(25.2e-6, 26.2e-6, 27.2e-6, 28.2e-6, 29.2e-6, 30.2e-6, 31.1e-6, 32.0e-6),
+    *(25.6e-6, 26.4e-6, 27.2e-6, 28.2e-6, 29.2e-6, 30.2e-6, 31.1e-6, 32.0e-6),
 )
 """True coverage after each dose of the dose run, mol/m^2; one step across the onset, where 20 mK is not yet cold."""
 

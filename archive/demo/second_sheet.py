@@ -48,6 +48,7 @@ closable_volume = "5.2(5) cm^3"          # shorter fill line
 closing_valve = "V7"
 rated_pressure = "0.35 MPa gauge"
 rating_document = "workshop sheet TO-4, pressure test 2026-01-12"
+relief_device = "RV-3, set 0.20 MPa gauge, last test 2026-01-12"
 rod_material = "BeCu"
 rod = "12 mm long, 1.9 mm diameter, 0.4 mm bore, aged 2 h at 315 C"
 inertia = "5.00(5)e-7 kg m^2"

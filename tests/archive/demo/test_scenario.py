@@ -11,8 +11,13 @@ from itertools import pairwise
 import numpy as np
 import pytest
 
+from archive.demo.forward import temperature_of
 from archive.demo.scenario import SEED, make_folders, truth
+from archive.demo.truth import PG2, TO4
+from archive.intake.checks.registry import run_checks
 from archive.intake.folder import read_cooldown
+from archive.intake.thresholds import Thresholds
+from archive.intake.waivers import apply_waivers
 from archive.physics.helium_gas import molar_density
 from schemas.cooldown import EFFECTS, CooldownSheet
 
@@ -255,3 +260,24 @@ def test_the_new_calibration_reads_the_drifted_sensor_right(readings):
     assert np.max(np.abs(shown / true - 1)) < 4e-3
     middle = 120
     assert 2e-3 < temperature(old, reading[middle]) - shown[middle] < 6e-3
+
+
+@pytest.mark.parametrize("name", NAMES)
+def test_the_checks_find_no_error_and_the_waiver_meets_a_warning_that_occurs(readings, name):
+    reading = readings[name]
+    for table in reading.tables.values():
+        for channel in table.channels:
+            calibration = reading.calibration_of(table.channels[channel])
+            if calibration is not None:
+                sensor = TO4.sensor if calibration.thermometer == "RX-2" else PG2.sensor
+                # Any temperature within a per cent serves the checks; the calibrations differ by less.
+                table.temperature = temperature_of(sensor, table.columns[channel])
+                table.scale, table.calibration = calibration.scale, calibration
+                table.temperature_uncertainty = 1e-3 * table.temperature
+                table.outside_calibration = np.zeros(table.rows, dtype=bool)
+    found = run_checks(reading, Thresholds())
+    assert [finding.sentence() for finding in found if finding.severity == "error"] == []
+    answered = apply_waivers(found, reading.sheet.waiver, file="cooldown.toml", line_of=lambda _: 1)
+    assert "waiver-without-warning" not in {finding.code for finding in answered}
+    waived = [(finding.code, finding.place) for finding in answered if finding.waived]
+    assert waived == ([("rod-below-200-mk", "s006")] if name == "2025-03" else [])
