@@ -1,0 +1,117 @@
+"""Commands on an archive as a whole: make it, prove it, make its index anew."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import click
+
+from archive.commands import opening
+from archive.commands.failures import EXIT_WARNINGS
+from archive.commands.machine import write_json
+from archive.commands.opening import archive_option, json_option, strict_option
+from archive.commands.terminal import Progress, say, styled
+from archive.errors import EXIT_DAMAGE
+
+__all__ = ["fixity", "init", "rebuild_index"]
+
+
+@click.command(short_help="Make a new archive.")
+@click.argument("folder", metavar="[DIR]", default=".", type=click.Path(path_type=Path))
+@click.option("--name", help="Name of the archive, as reports print it; the folder's name if left out.")
+@click.option(
+    "--index", metavar="ADDRESS", help="Address of the index; a SQLite file in the folder if left out."
+)
+@json_option
+def init(*, folder: Path, name: str | None, index: str | None, as_json: bool) -> None:
+    """Make a new archive in DIR, a new or empty folder.
+
+    \b
+    Examples:
+      stillroom init lab-archive --name "Low-temperature group"
+      stillroom init lab-archive --index postgresql+psycopg://archive@server/stillroom
+    """
+    from archive.lab import Archive
+
+    with Archive.create(folder, name=name, index=index) as lab:
+        if as_json:
+            write_json({"root": str(lab.root), "name": lab.name})
+            return
+        say(f"There is now an empty archive, {lab.name}, in {lab.root}")
+        say(f"Next: stillroom --archive {lab.root} ingest FOLDER, or set STILLROOM_ARCHIVE to that folder.")
+
+
+@click.command(short_help="Prove that every sealed byte is as it was.")
+@archive_option
+@json_option
+@strict_option
+def fixity(*, archive_dir: Path | None, as_json: bool, strict: bool) -> None:
+    """Read every sealed file again and name what is damaged, missing, or there without being recorded.
+
+    \b
+    Example:
+      stillroom fixity
+
+    Exit codes: 3 if anything is damaged or missing; with --strict 1 if something is there that is not recorded.
+    """
+    with opening.open_archive(archive_dir) as lab, Progress("reading sealed files") as progress:
+        files = lab.statistics()["sealed_files"]
+        damage = lab.fixity(progress=progress.count)
+    hurt = [each for each in damage if each.kind != "stray"]
+    if as_json:
+        write_json({"sealed_files": files, "whole": not hurt, "damage": damage})
+    else:
+        for each in damage:
+            place = f"{each.key}, {each.dataset}" if each.dataset else each.key
+            colour = "yellow" if each.kind == "stray" else "red"
+            click.echo(styled(each.kind, colour, bold=True) + " ", nl=False)
+            say(f"{place}: {each.what}{_differing(each.expected, each.found)}")
+        say(_verdict(files, len(hurt), len(damage) - len(hurt)))
+    context = click.get_current_context()
+    if hurt:
+        context.exit(EXIT_DAMAGE)
+    if damage and strict:
+        context.exit(EXIT_WARNINGS)
+
+
+def _differing(expected: str | None, found: str | None) -> str:
+    return "".join(
+        f"; {word} {value}" for word, value in (("expected", expected), ("found", found)) if value is not None
+    )
+
+
+def _verdict(files: int, hurt: int, stray: int) -> str:
+    strays = f"; {stray} not recorded" if stray else ""
+    if hurt:
+        return (
+            f"{hurt} faults in {files} recorded files{strays}. Keep this archive as it is and restore the files named "
+            "above from a copy; the index is not the cause."
+        )
+    return f"All {files} recorded files are byte for byte as they were sealed{strays}."
+
+
+@click.command("rebuild-index", short_help="Make the index anew from sealed files.")
+@archive_option
+@json_option
+def rebuild_index(*, archive_dir: Path | None, as_json: bool) -> None:
+    """Make the index anew from the sealed files alone; the old one is set aside, not overwritten.
+
+    Use it when the index is lost or damaged. No sealed file is changed.
+
+    \b
+    Example:
+      stillroom rebuild-index
+
+    Exit code 3 if a sealed file is damaged; the old index stays then.
+    """
+    from archive.lab import Archive
+
+    with Progress("reading sealed files") as progress:
+        counts = Archive.rebuild_index(archive_dir, progress=progress.count)
+    if as_json:
+        write_json(counts)
+        return
+    say("The index was made anew from the sealed files. It holds:")
+    width = max((len(str(count)) for count in counts.values()), default=1)
+    for name, count in counts.items():
+        say(f"  {count:>{width}} {name.replace('_', ' ')}")

@@ -1,0 +1,110 @@
+"""A thing of the archive in words: quantities as one text, lists of things as tables, the rest as named lines."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from typing import Any, Final
+
+from archive.commands.numbers import shown_quantity
+from archive.commands.terminal import say, table
+
+__all__ = ["describe"]
+
+# Columns of lists that occur in `show`; other lists are written one thing a line.
+_COLUMNS: Final[dict[str, tuple[str, ...]]] = {
+    "doses": ("name", "at", "act", "amount", "running_amount", "running_coverage"),
+    "channels": ("name", "quantity", "unit", "low", "high", "missing", "thermometer"),
+    "results": ("address", "result"),
+    "raw_files": ("name", "role", "size", "sha256"),
+    "records": ("kind", "address"),
+    "sweeps": ("name", "kind", "rows", "cell", "coverage", "temperature_low", "temperature_high"),
+    "steps": ("number", "name", "version", "sentence"),
+    "outputs": ("name", "quantity", "result", "description"),
+    "inputs": ("role", "address"),
+    "sources": ("name", "level", "description"),
+    "findings": ("severity", "place", "what", "remedy"),
+}
+_HIDDEN: Final = frozenset({"address", "what"})
+
+
+def describe(content: Mapping[str, Any]) -> None:
+    """Write a thing to stdout.
+
+    Parameters
+    ----------
+    content : mapping
+        As `Archive.show` gives it, with `address` and `what`.
+    """
+    say(f"{content['address']}: {content['what']}")
+    _lines({name: value for name, value in content.items() if name not in _HIDDEN}, "  ")
+
+
+def _lines(content: Mapping[str, Any], indent: str) -> None:
+    content = _with_result(content)
+    shown = {name: value for name, value in content.items() if value not in (None, "", [], {}, ())}
+    width = max((len(name) for name, value in shown.items() if _short(value)), default=0)
+    for name, value in shown.items():
+        if _short(value):
+            say(f"{indent}{name.replace('_', ' '):<{width}}  {_text(value)}")
+    for name, value in shown.items():
+        if _short(value):
+            continue
+        say(f"{indent}{name.replace('_', ' ')}:")
+        if isinstance(value, Mapping):
+            _lines(value, indent + "  ")
+        else:
+            _list(name, value, indent + "  ")
+
+
+def _with_result(content: Mapping[str, Any]) -> Mapping[str, Any]:
+    """Content in which value, uncertainty, unit and scale of a result are one text."""
+    if "unit" not in content or not ({"value", "verdict"} & set(content)):
+        return content
+    parts = ("value", "uncertainty", "unit", "scale", "verdict", "convention")
+    rest = {name: value for name, value in content.items() if name not in parts}
+    verdict = content.get("verdict")
+    return {"result": verdict or shown_quantity({"value": None, **content}), **rest}
+
+
+def _quantity(value: Any) -> bool:
+    return isinstance(value, Mapping) and "value" in value and "unit" in value
+
+
+def _short(value: Any) -> bool:
+    if isinstance(value, Mapping):
+        return _quantity(value)
+    if isinstance(value, Sequence) and not isinstance(value, str):
+        return all(not isinstance(each, Mapping | list | tuple) for each in value) and len(value) <= 4
+    return True
+
+
+def _text(value: Any) -> str:
+    if isinstance(value, Mapping):
+        text = shown_quantity(value)
+        source = value.get("source")
+        return f"{text} ({source})" if source else text
+    if isinstance(value, Sequence) and not isinstance(value, str):
+        return ", ".join(_text(each) for each in value)
+    if isinstance(value, bool):
+        return "yes" if value else "no"
+    return f"{value:.6g}" if isinstance(value, float) else "-" if value is None else str(value)
+
+
+def _list(name: str, values: Sequence[Any], indent: str) -> None:
+    if not all(isinstance(value, Mapping) for value in values):
+        for value in values:
+            say(f"{indent}{_text(value)}")
+        return
+    rows = [_with_result(value) for value in values]
+    columns = [
+        column for column in _COLUMNS.get(name, ()) if any(row.get(column) is not None for row in rows)
+    ]
+    if columns:
+        table(
+            [column.replace("_", " ") for column in columns],
+            [[_text(row.get(column)) for column in columns] for row in rows],
+        )
+        return
+    for row in rows:
+        _lines(row, indent)
+        say()

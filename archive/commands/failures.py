@@ -1,0 +1,141 @@
+"""What becomes of everything that stops a command: one sentence and an exit code.
+
+| code | meaning |
+|---|---|
+| 0 | fine |
+| 1 | warnings, where `--strict` was asked for |
+| 2 | bad input, findings of error level, or a fault of Stillroom itself (its traceback is in the file that is named) |
+| 3 | damage |
+| 4 | busy, or not an archive |
+| 130 | stopped by the person |
+"""
+
+from __future__ import annotations
+
+import os
+import sys
+import tempfile
+import traceback
+from collections.abc import Iterator
+from contextlib import contextmanager
+from datetime import UTC, datetime
+from typing import Any
+
+import click
+from typing_extensions import override
+
+from archive.commands.terminal import note, styled
+from archive.errors import EXIT_BAD_INPUT, ArchiveError, BadRequest
+
+__all__ = ["EXIT_INTERRUPTED", "EXIT_WARNINGS", "GuardedGroup", "stopped", "told"]
+
+EXIT_WARNINGS = 1
+EXIT_INTERRUPTED = 130
+
+
+class GuardedGroup(click.Group):
+    """Group of commands that ends every failure in one sentence."""
+
+    @override
+    def invoke(self, ctx: click.Context) -> Any:
+        """Carry out a command."""
+        try:
+            result = super().invoke(ctx)
+            sys.stdout.flush()
+        except click.exceptions.Exit:
+            _flushed()
+            raise
+        except (click.ClickException, click.Abort):
+            raise
+        except BaseException as error:  # noqa: BLE001 - the one place where everything ends in a sentence
+            ctx.exit(stopped(error))
+        return result
+
+
+def stopped(error: BaseException) -> int:
+    """Exit code of what stopped a command, after its sentence was written to stderr."""
+    if isinstance(error, SystemExit):
+        raise error
+    if isinstance(error, BrokenPipeError):
+        _quieten()
+        return 0
+    if isinstance(error, KeyboardInterrupt):
+        note("stopped; nothing half-written counts: the next command on this archive sweeps it away")
+        return EXIT_INTERRUPTED
+    if isinstance(error, ArchiveError):
+        _say(str(error))
+        return error.exit_code
+    if isinstance(error, OSError) and error.strerror:
+        place = f"{error.filename}: " if error.filename else ""
+        _say(f"{place}{error.strerror[:1].lower()}{error.strerror[1:]}")
+        return EXIT_BAD_INPUT
+    _say(f"this is a fault of Stillroom, not yours; the details are in {_traceback_file(error)}")
+    return EXIT_BAD_INPUT
+
+
+@contextmanager
+def told(option: str | None = None) -> Iterator[None]:
+    """Turn a ValueError about what a person asked for into a refusal that names where it was asked.
+
+    Parameters
+    ----------
+    option : str, optional
+        Option or argument that holds the text.
+
+    Raises
+    ------
+    BadRequest
+        With the sentence of the ValueError; of several faults the first.
+    """
+    try:
+        yield
+    except ValueError as error:
+        raise BadRequest(_sentence(error), field=option) from None
+
+
+def _sentence(error: ValueError) -> str:
+    faults = getattr(error, "errors", None)
+    if faults is None:
+        return str(error)
+    first = faults(include_url=False)[0]
+    place = ".".join(str(part) for part in first["loc"])
+    text = str(first.get("ctx", {}).get("error", first["msg"]))
+    return f"{place}: {text}" if place else text
+
+
+def _say(sentence: str) -> None:
+    click.echo(styled("stillroom:", "red", bold=True) + " ", nl=False, err=True)
+    note(sentence)
+
+
+def _flushed() -> None:
+    try:
+        sys.stdout.flush()
+    except BrokenPipeError:
+        _quieten()
+
+
+def _quieten() -> None:
+    # The reader of the pipe has gone; what is left in the buffer must not complain when the interpreter ends.
+    try:
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+    except (OSError, ValueError):
+        return
+
+
+def _traceback_file(error: BaseException) -> str:
+    now = datetime.now(UTC).strftime("%Y%m%dT%H%M%SZ")
+    text = "".join(traceback.format_exception(error))
+    try:
+        with tempfile.NamedTemporaryFile(
+            "w",
+            prefix=f"stillroom-traceback-{now}-",
+            suffix=".txt",
+            delete=False,
+            encoding="utf-8",
+            errors="backslashreplace",
+        ) as stream:
+            stream.write(text)
+            return stream.name
+    except OSError:
+        return f"no file, since none could be written: {type(error).__name__}: {error}"

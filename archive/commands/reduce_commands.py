@@ -1,0 +1,217 @@
+"""Commands on plans and reductions."""
+
+from __future__ import annotations
+
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import click
+
+from archive.commands import opening
+from archive.commands.failures import EXIT_WARNINGS
+from archive.commands.machine import quantity, write_json
+from archive.commands.numbers import shown_number
+from archive.commands.opening import archive_option, json_option, strict_option
+from archive.commands.terminal import Progress, note, say, table
+from archive.errors import UnknownAddress
+
+if TYPE_CHECKING:
+    from archive.lab import ReduceOutcome
+    from schemas.lineage import OutputEntry
+    from schemas.plan import Plan
+
+__all__ = ["headline", "plans", "reduce", "say_outcomes"]
+
+
+@click.command(short_help="List the plans, or show one.")
+@click.argument("name", required=False)
+@click.option(
+    "--toml", "as_toml", is_flag=True, help="Print the TOML of a shipped plan, to copy and change it."
+)
+@archive_option
+@json_option
+def plans(*, name: str | None, as_toml: bool, archive_dir: Path | None, as_json: bool) -> None:
+    """List the plans that Stillroom ships and those that this archive's reductions used, or show one with its steps.
+
+    \b
+    Examples:
+      stillroom plans
+      stillroom plans film-transition
+      stillroom plans film-transition --toml > our-film.toml
+    """
+    from archive.reduction.planning import shipped_plans
+
+    lab = opening.archive_or_none(archive_dir)
+    if lab is None:
+        known = list(shipped_plans())
+    else:
+        with lab:
+            known = lab.plans()
+    if name is None:
+        _list_plans(known, as_json=as_json)
+        return
+    chosen = [plan for plan in known if name in (plan.name, plan.address)]
+    if not chosen:
+        raise UnknownAddress(
+            f"there is no plan {name}", expected=f"one of: {', '.join(sorted({plan.name for plan in known}))}"
+        )
+    plan = max(chosen, key=lambda each: each.revision)
+    if as_toml:
+        click.echo(_shipped_text(plan), nl=False)
+    elif as_json:
+        write_json(
+            {"address": plan.address, "what": "plan", **plan.model_dump(mode="json", exclude_none=True)}
+        )
+    else:
+        _show_plan(plan)
+
+
+def _list_plans(known: list[Plan], *, as_json: bool) -> None:
+    if as_json:
+        write_json(
+            [
+                {"address": plan.address, "title": plan.title, "sweep_kinds": plan.applies.sweep_kinds}
+                for plan in known
+            ]
+        )
+        return
+    rows = [(plan.address, ", ".join(plan.applies.sweep_kinds), plan.title) for plan in known]
+    table(("plan", "for sweeps of kind", "what it does"), rows)
+
+
+def _shipped_text(plan: Plan) -> str:
+    from importlib import resources
+
+    file = resources.files("archive.reduction") / "plans" / f"{plan.name}.toml"
+    if not file.is_file():
+        raise UnknownAddress(f"{plan.address} is not a shipped plan", remedy="show it with --json")
+    return file.read_text(encoding="utf-8")
+
+
+def _show_plan(plan: Plan) -> None:
+    say(f"{plan.address}: {plan.title}")
+    if plan.description:
+        say(plan.description)
+    say(f"For sweeps of kind {', '.join(plan.applies.sweep_kinds)}.")
+    for name, need in plan.needs.items():
+        word = "uses, where there is one," if need.optional else "needs"
+        say(f"It {word} a reduction by {need.plan} ({need.relation.replace('-', ' ')}), as {name}.")
+    if plan.headline:
+        say(f"Results shown first: {', '.join(plan.headline)}")
+    say()
+    for number, step in enumerate(plan.step, 1):
+        version = "" if step.version is None else f", version {step.version}"
+        left_out = " (left out where an input does not exist)" if step.optional else ""
+        say(f"{number:>3} {step.use}{version}{left_out}")
+        for port, source in step.take.items():
+            say(f"      takes {port} from {source}")
+        for key, value in step.set.items():
+            say(f"      with {key} = {value}")
+        say(f"      gives {', '.join(step.give.values())}")
+
+
+@click.command(short_help="Carry out plans on a cooldown.")
+@click.argument("cooldown")
+@click.option(
+    "--plan", metavar="PLAN", help="Name of a plan, or a plan file (.toml); else every plan that applies."
+)
+@click.option("--sweep", metavar="SWEEP", help="Name of one sweep; else all.")
+@archive_option
+@json_option
+@strict_option
+def reduce(
+    *,
+    cooldown: str,
+    plan: str | None,
+    sweep: str | None,
+    archive_dir: Path | None,
+    as_json: bool,
+    strict: bool,
+) -> None:
+    """Carry out plans on the sweeps of COOLDOWN, in an order in which each finds what it rests on.
+
+    Each reduction is sealed with its results, their uncertainties and one record per step; earlier reductions stay.
+    COOLDOWN may be the address of one sweep.
+
+    \b
+    Examples:
+      stillroom reduce 2026-03
+      stillroom reduce 2026-03/s017 --plan film-transition
+      stillroom reduce 2026-03 --plan our-film.toml
+
+    Exit codes: 1 findings of warning level, with --strict; 2 if a plan could not be carried out (the others were).
+    """
+    name, _, part = cooldown.partition("/")
+    chosen: str | Path | None = Path(plan) if plan is not None and plan.endswith(".toml") else plan
+    with opening.open_archive(archive_dir) as lab, Progress("reducing") as progress:
+        outcomes = lab.reduce(name, plan=chosen, sweep=sweep or part or None, progress=progress.sentence)
+    if as_json:
+        write_json([_content(outcome) for outcome in outcomes])
+    else:
+        say_outcomes(outcomes)
+    problems = [outcome.problem for outcome in outcomes if outcome.problem is not None]
+    warned = any(
+        finding.severity == "warning" and finding.waived is None
+        for outcome in outcomes
+        if outcome.document is not None
+        for finding in outcome.document.findings
+    )
+    context = click.get_current_context()
+    if problems:
+        context.exit(max(problem.exit_code for problem in problems))
+    if warned and strict:
+        context.exit(EXIT_WARNINGS)
+
+
+def say_outcomes(outcomes: list[ReduceOutcome]) -> None:
+    """Write what was reduced, and why something was not."""
+    made = [outcome for outcome in outcomes if outcome.document is not None]
+    if not outcomes:
+        say("No plan applies to these sweeps; see: stillroom plans")
+    if made:
+        rows = [
+            (outcome.address or "", "  ".join(_shown(entry) for entry in headline(outcome)))
+            for outcome in made
+        ]
+        table(("reduction", "results"), rows)
+    for outcome in outcomes:
+        if outcome.problem is not None:
+            note(f"not reduced: {outcome.sweep} by {outcome.plan}: {outcome.problem}")
+        for finding in outcome.document.findings if outcome.document is not None else ():
+            if finding.severity != "note" and finding.waived is None:
+                note(f"{finding.severity}: {outcome.address}: {finding.sentence()}")
+
+
+def headline(outcome: ReduceOutcome) -> list[OutputEntry]:
+    """Scalar results of a reduction that its plan wants shown first."""
+    if outcome.document is None:
+        return []
+    scalars = {entry.name: entry for entry in outcome.document.outputs if entry.rows is None}
+    return [scalars[name] for name in outcome.document.plan.headline if name in scalars]
+
+
+def _shown(entry: OutputEntry) -> str:
+    unit = "" if entry.unit == "1" else f" {entry.unit}"
+    return f"{entry.name} = {entry.verdict or shown_number(entry.value, entry.uncertainty) + unit}"
+
+
+def _content(outcome: ReduceOutcome) -> dict[str, Any]:
+    content: dict[str, Any] = {"address": outcome.address, "sweep": outcome.sweep, "plan": outcome.plan}
+    if outcome.document is not None:
+        content["plan"] = outcome.document.plan.address
+        content["results"] = {
+            entry.name: {
+                "address": f"{outcome.address}#{entry.name}",
+                "quantity": entry.quantity,
+                **(
+                    quantity(entry.value, entry.uncertainty, entry.unit, scale=entry.scale) or {"value": None}
+                ),
+                **({"verdict": entry.verdict} if entry.verdict else {}),
+            }
+            for entry in outcome.document.outputs
+            if entry.rows is None
+        }
+        content["findings"] = outcome.document.findings
+    if outcome.problem is not None:
+        content["problem"] = {"code": outcome.problem.code, "what": str(outcome.problem)}
+    return content

@@ -1,0 +1,121 @@
+"""Lists of sweeps: as a table, as JSON, as CSV."""
+
+from __future__ import annotations
+
+import shutil
+import sys
+from collections.abc import Sequence
+from typing import TYPE_CHECKING, Any
+
+from archive.commands.machine import Cell, quantity, write_csv, write_json
+from archive.commands.numbers import shown_number
+from archive.commands.terminal import say, table
+
+if TYPE_CHECKING:
+    from archive.index import SweepResult, SweepRow
+
+__all__ = ["say_sweeps", "write_sweeps_csv", "write_sweeps_json"]
+
+# Below this many columns the table leaves out what an address or `show` tells as well.
+_WIDE = 110
+# Coverage is shown as this trade reads it; SI in JSON and CSV.
+_UMOL = 1e6
+
+
+def say_sweeps(rows: Sequence[SweepRow]) -> None:
+    """Write a table of sweeps, and how many there are."""
+    wide = not sys.stdout.isatty() or shutil.get_terminal_size().columns >= _WIDE
+    columns = ["sweep", "kind", *(("begin", "cell") if wide else ()), "umol/m^2", "K", "results"]
+    if rows:
+        table(columns, (_line(row, wide=wide) for row in rows), right=("umol/m^2", "K"))
+    say(f"{len(rows) or 'No'} sweep{'' if len(rows) == 1 else 's'}.")
+
+
+def _line(row: SweepRow, *, wide: bool) -> list[str]:
+    more = (row.begin.strftime("%Y-%m-%d") if row.begin is not None else "-", row.cell or "-")
+    return [
+        row.address,
+        row.kind,
+        *(more if wide else ()),
+        "empty" if row.empty_cell else _coverage(row),
+        _temperatures(row),
+        "  ".join(_result(result) for result in row.results[:3]),
+    ]
+
+
+def _coverage(row: SweepRow) -> str:
+    if row.coverage is None:
+        return "-"
+    spread = None if row.coverage_uncertainty is None else row.coverage_uncertainty * _UMOL
+    return shown_number(row.coverage * _UMOL, spread)
+
+
+def _temperatures(row: SweepRow) -> str:
+    ends = [f"{end:.4g}" for end in (row.temperature_low, row.temperature_high) if end is not None]
+    return "-" if not ends else "-".join(dict.fromkeys(ends))
+
+
+def _result(result: SweepResult) -> str:
+    unit = "" if result.unit == "1" else f" {result.unit}"
+    return f"{result.name} = {result.verdict or shown_number(result.value, result.uncertainty) + unit}"
+
+
+def write_sweeps_json(rows: Sequence[SweepRow]) -> None:
+    """Write sweeps as a JSON list."""
+    write_json([_content(row) for row in rows])
+
+
+def _content(row: SweepRow) -> dict[str, Any]:
+    return {
+        "address": row.address,
+        "cooldown": row.cooldown,
+        "name": row.name,
+        "kind": row.kind,
+        "accession": row.accession,
+        "cell": row.cell,
+        "substrate": row.substrate,
+        "sample": row.sample,
+        "empty_cell": row.empty_cell,
+        "after_dose": row.after_dose,
+        "begin": row.begin,
+        "end": row.end,
+        "direction": row.direction,
+        "rows": row.rows,
+        "coverage": quantity(row.coverage, row.coverage_uncertainty, "mol/m^2"),
+        "temperature_low": quantity(row.temperature_low, None, "K", scale=row.scale),
+        "temperature_high": quantity(row.temperature_high, None, "K", scale=row.scale),
+        "thermometers": row.thermometers,
+        "channels": row.channels,
+        "results": {
+            result.name: {
+                "value": result.value,
+                "uncertainty": result.uncertainty,
+                "unit": result.unit,
+                **({"verdict": result.verdict} if result.verdict else {}),
+            }
+            for result in row.results
+        },
+    }
+
+
+def write_sweeps_csv(rows: Sequence[SweepRow]) -> None:
+    """Write sweeps as CSV, each result that occurs in two columns: value and standard uncertainty, in its unit."""
+    found = list(dict.fromkeys((result.name, result.unit) for row in rows for result in row.results))
+    header = [
+        "address", "cooldown", "kind", "cell", "substrate", "sample", "empty_cell", "begin", "end", "rows",
+        "coverage (mol/m^2)", "u(coverage) (mol/m^2)", "temperature_low (K)", "temperature_high (K)", "scale",
+        *(text for name, unit in found for text in (f"{name} ({unit})", f"u({name}) ({unit})")),
+    ]  # fmt: skip
+    write_csv(header, (_cells(row, found) for row in rows))
+
+
+def _cells(row: SweepRow, found: Sequence[tuple[str, str]]) -> list[Cell]:
+    results = {(result.name, result.unit): result for result in row.results}
+    cells: list[Cell] = [
+        row.address, row.cooldown, row.kind, row.cell, row.substrate, row.sample, row.empty_cell, row.begin, row.end,
+        row.rows, row.coverage, row.coverage_uncertainty, row.temperature_low, row.temperature_high, row.scale,
+    ]  # fmt: skip
+    for key in found:
+        result = results.get(key)
+        cells += [None, None] if result is None else [result.verdict or result.value, result.uncertainty]
+    return cells
