@@ -233,9 +233,9 @@ def _raw(accession: AccessionDocument, entry: SweepEntry) -> tuple[TraceNode, ..
         }
         found.append(
             TraceNode(
-                f"{accession.address}:raw/{name}",
+                f"{accession.address}:{name}",
                 "raw-file",
-                f"{accession.address}:raw/{name}{lines}, {digest}",
+                f"{accession.address}:{name}{lines}, {digest}",
                 facts,
             )
         )

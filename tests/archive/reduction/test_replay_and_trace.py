@@ -52,9 +52,9 @@ def test_a_trace_ends_at_raw_files_calibration_and_doses(reduced: Any) -> None:
     text = "\n".join(trace("2026-03/f1@film-transition.1#T_KT", reduced).lines())
     assert text.startswith("2026-03/f1@film-transition.1#T_KT = 0.6")
     for words in (
-        "2026-03.a1:raw/f1.csv, data from line 2, sha256 " + f"{2:064x}",
-        "2026-03.a1:raw/e1.csv",
-        "2026-03.a1:raw/r1.csv",
+        "2026-03.a1:f1.csv, data from line 2, sha256 " + f"{2:064x}",
+        "2026-03.a1:e1.csv",
+        "2026-03.a1:r1.csv",
         "RX-1-cal.r1, calibration, sha256",
         "2026-03/r1@dose-run.1#mass_sensitivity",
         "step 2 loading-fit.1",
