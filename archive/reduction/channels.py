@@ -144,9 +144,19 @@ def _rms_factor(facts: SweepFacts, channel: Channel) -> float:
     return _RMS.get(stated, 1.0)
 
 
-def rms_value(quantity: Quantity) -> float:
-    """Return the factor that takes an oscillating quantity's SI value to its rms value; 1 for any other."""
-    return _RMS.get(quantity.convention, 1.0) if quantity.kind in _OSCILLATING else 1.0
+def rms_value(quantity: Quantity, unstated: str | None = None) -> float:
+    """Return the factor that takes an oscillating quantity's SI value to its rms value; 1 for any other.
+
+    Parameters
+    ----------
+    quantity : Quantity
+    unstated : str, optional
+        Convention of an amplitude that states none: that of the detection.
+    """
+    if quantity.kind not in _OSCILLATING:
+        return 1.0
+    stated = quantity.convention or (unstated if quantity.kind == "amplitude" else None)
+    return _RMS.get(stated, 1.0)
 
 
 def _uncertainty(channel: Channel, value: FloatArray, factor: float, place: str) -> FloatArray:

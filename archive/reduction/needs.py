@@ -94,7 +94,7 @@ def _sweeps(accessions: list[AccessionDocument]) -> list[SweepEntry]:
 
 
 def _same(entry: SweepEntry, facts: SweepFacts) -> bool:
-    return entry.cell == facts.entry.cell
+    return entry.cell is not None and entry.cell == facts.entry.cell
 
 
 def _same_name(entry: SweepEntry, facts: SweepFacts) -> bool:

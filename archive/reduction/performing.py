@@ -115,7 +115,7 @@ def perform(
         )
         joint = _joint_covariance(spread)
         axes = [] if joint is None else fit_contributions(joint)
-    except ValueError as error:
+    except (ValueError, ArithmeticError) as error:
         raise StepFailed(
             f"{place} could not give its results: {error}",
             remedy="see the inputs with `stillroom trace`, leave out what is wrong in the sheet, or set the step's parameters in a plan of your own",
