@@ -6,12 +6,13 @@ import math
 
 import numpy as np
 
-from archive.physics.adsorption import bet_area
+from archive.physics.adsorption import BetArea, bet_area
 from archive.reduction.background_steps import known_rows
 from archive.reduction.estimate import FloatArray
 from archive.reduction.step import Covariance, NoParameters, Outcome
 from schemas.base import Record
 from schemas.finding import Finding
+from schemas.lineage import SourceEntry
 from schemas.substrate import Sample
 
 __all__ = ["BetParameters", "PlateauParameters", "bet", "plateau", "relative_pressure"]
@@ -49,6 +50,40 @@ def relative_pressure(
     return Outcome({"relative_pressure": pressure / saturated})
 
 
+def _propagated(
+    x: FloatArray, n: FloatArray, u_n: FloatArray | None, *, cross_section: float, low: float, high: float
+) -> FloatArray:
+    """Return the variances of monolayer, constant and area that the amounts' own uncertainty makes, one by one."""
+    total = np.zeros(3)
+    if u_n is None:
+        return total
+    for index in np.flatnonzero((x >= low) & (x <= high) & (u_n > 0)):
+        sides = []
+        for sign in (1.0, -1.0):
+            moved = n.copy()
+            moved[index] += sign * u_n[index]
+            each = bet_area(x, moved, cross_section=cross_section, bounds=(low, high))
+            sides.append((each.monolayer, each.constant, each.area))
+        total += np.square((np.array(sides[0]) - np.array(sides[1])) / 2)
+    return total
+
+
+def _range_choice(x: FloatArray, n: FloatArray, found: BetArea) -> tuple[float, ...]:
+    """Return how far monolayer, constant and area hang on one point more or less, as signed standard uncertainties."""
+    used = np.unique(x[(x >= found.low) & (x <= found.high)])
+    centre = np.array([found.monolayer, found.constant, found.area])
+    if used.size < 5:
+        return (0.0, 0.0, 0.0)
+    ranges = ((used[1], used[-1]), (used[0], used[-2]))
+    moved = [
+        bet_area(x, n, cross_section=found.cross_section, bounds=(float(low), float(high)))
+        for low, high in ranges
+    ]
+    parts = np.array([[each.monolayer, each.constant, each.area] for each in moved]) - centre
+    largest = parts[int(np.argmax(np.abs(parts[:, 0])))]
+    return tuple(float(part) / math.sqrt(3) for part in largest)
+
+
 def bet(
     parameters: BetParameters,
     *,
@@ -56,6 +91,7 @@ def bet(
     amount: FloatArray,
     amount_kind: str,
     sample: Sample | None,
+    u_amount: FloatArray | None = None,
 ) -> Outcome:
     """Return monolayer, constant and area of an isotherm by the method of Brunauer, Emmett and Teller.
 
@@ -63,6 +99,12 @@ def bet(
     ------
     ValueError
         No area per molecule, or no range that meets the criteria; with the reasons.
+
+    Notes
+    -----
+    The fit's variances are the larger of what the scatter about the line and what the amounts' own uncertainty make. The
+    choice of range is a source of its own: all results between those of the range and of the ranges one point shorter at
+    either end count alike (JCGM 100:2008, 4.3.7). The area per molecule carries no uncertainty here: it is a convention.
     """
     gas = sample.isotope if sample is not None else "a gas that is not recorded"
     cross = parameters.cross_section_nm2 or CROSS_SECTIONS.get(gas)
@@ -76,9 +118,23 @@ def bet(
     if not found.accepted:
         raise ValueError(f"amount: no BET area can be given: {'; '.join(found.reasons)}")
     names = ("monolayer", "constant", "area")
-    joint = np.diag([found.u_monolayer**2, found.u_constant**2, found.u_area**2])
+    x, n = relative_pressure[rows], amount[rows]
+    own = _propagated(
+        x,
+        n,
+        u_amount[rows] if u_amount is not None else None,
+        cross_section=found.cross_section,
+        low=found.low,
+        high=found.high,
+    )
+    variances = np.maximum(np.square([found.u_monolayer, found.u_constant, found.u_area]), own)
+    joint = np.diag(variances)
     # The area is the monolayer times a constant.
-    joint[0, 2] = joint[2, 0] = found.u_monolayer * found.u_area
+    joint[0, 2] = joint[2, 0] = math.sqrt(variances[0] * variances[2])
+    choice = _range_choice(x, n, found)
+    source = SourceEntry(
+        name="own range of the BET line", description="choice of the range of relative pressure", level="run"
+    )
     outputs = dict(zip(names, (found.monolayer, found.constant, found.area), strict=True))
     label = "He-BET" if "He" in gas else f"{gas} BET"
     findings: tuple[Finding, ...] = ()
@@ -92,6 +148,7 @@ def bet(
         )
     return Outcome(
         outputs, covariance=Covariance(names, joint), held={"low": found.low, "high": found.high},
+        shared={name: {source.name: part} for name, part in zip(names, choice, strict=True)}, sources=(source,),
         facts={
             "label": label, "cross_section_nm2": cross, "low": found.low, "high": found.high, "points": found.points, "r_squared": found.r_squared,
             "x_at_monolayer": found.x_at_monolayer, "x_expected": found.x_expected, "amounts_in": amount_kind.replace("_", " "),

@@ -293,7 +293,7 @@ STEPS: tuple[Step, ...] = (
             "area": Port("area-of:amount", "scalar", "area by the monolayer"),
         },
         sentence="The {label} isotherm, analysed between p/p0 = {low} and {high} ({points} points) with {cross_section_nm2} nm^2 per molecule, gives a monolayer of {monolayer} (constant C = {constant}).",
-        citations=("bet-1938", "thommes-2015"), spread="refit", kinds=("amount",),
+        citations=("bet-1938", "thommes-2015"), spread="refit", weights=("amount",), kinds=("amount",),
     ),
     Step(
         name="isotherm-plateau", version=1, function=adsorption_steps.plateau, parameters=adsorption_steps.PlateauParameters,

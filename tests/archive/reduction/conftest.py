@@ -321,6 +321,8 @@ def tools() -> Any:
         build = staticmethod(build)
         sheet_content = staticmethod(sheet_content)
         sweep_data = staticmethod(sweep_data)
+        empty = staticmethod(empty)
+        reading = staticmethod(reading)
         Clock = Clock
         truth: ClassVar = {"T_KT": T_KT, "chi": CHI, "slope": SLOPE, "onset": ONSET, "dose": DOSE}
 

@@ -14,6 +14,7 @@ from archive.reduction.estimate import covariance_between
 from archive.reduction.outputs import estimate_from
 from archive.reduction.planning import load_plan, shipped_plans
 from archive.reduction.runner import run
+from schemas.quantity import Quantity
 
 
 def _result(outcome: Any, name: str) -> Any:
@@ -108,6 +109,43 @@ def test_arrays_have_units_and_come_back_as_they_were(reduced: Any) -> None:
     assert _result(outcome, "superfluid_density").digest == array_digest(values)
     with pytest.raises(UnknownAddress, match="no output"):
         estimate_from(outcome.document, lambda path: outcome.arrays[path][0], "nothing")
+
+
+def test_a_film_in_pores_gives_back_its_power_law(tools: Any) -> None:
+    random = np.random.default_rng(5)
+    T = np.linspace(0.3, 0.8, 1500)
+    data = tools.sweep_data()
+    density = 3e-8 * np.maximum(1 - T / 0.6, 0.0) ** 0.67
+    empty = tools.empty(T)[0]
+    period = (
+        empty
+        + tools.truth["slope"] * 16 * tools.truth["dose"]
+        - 0.042 * 0.9 * density
+        + random.normal(0, 3e-13, T.size)
+    )
+    data["f1"] = {"resistance": tools.reading(T), "period": period * 1e3, "dissipation": tools.empty(T)[1]}
+    content = tools.sheet_content()
+    content["layout"]["sweep"]["channels"]["period"]["uncertainty"] = "0.3 ps"
+    content["sweep"][2]["channels"] = {
+        "dissipation": {
+            "column": "Q",
+            "quantity": "dissipation",
+            "unit": "1",
+            "use": False,
+            "why_not": "not recorded",
+        }
+    }
+    source = tools.build(content, data)
+    disc = source.records["disc.r1"]
+    source.records["disc.r1"] = disc.model_copy(update={"pore_diameter": Quantity.parse("50 nm", "length")})
+    source.reduce("empty-cell", "2026-03/e1")
+    source.reduce("dose-run", "2026-03/r1")
+    outcome = source.reduce("porous-film", "2026-03/f1")
+    assert abs(_pull(outcome, "T_c", 0.6)) < 3
+    assert abs(_pull(outcome, "exponent", 0.67)) < 3
+    assert abs(_pull(outcome, "amplitude_of_power_law", 3e-8)) < 3
+    with pytest.raises(BadRequest, match="is not for"):
+        tools.build().reduce("porous-film", "2026-03/f1")
 
 
 def test_every_step_is_recorded_with_numbers_digests_and_calibration(reduced: Any) -> None:
