@@ -105,7 +105,7 @@ CHECKS: tuple[Check, ...] = (
     ),
     Check(
         "lambda-temperature",
-        "a bulk lambda point lies at T_lambda, lambda_temperature_k",
+        "a bulk lambda point lies at its temperature, lambda_temperature_k",
         temperatures.lambda_temperature,
     ),
     Check(

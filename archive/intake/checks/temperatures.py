@@ -202,8 +202,8 @@ def rod_below_200_mk(reading: Reading, thresholds: Thresholds) -> Iterator[Findi
         )
 
 
-def _state(reading: Reading, table: SweepTable) -> tuple[str | None, str | None]:
-    return reading.sheet.cell_of(table.sweep), table.sweep.after_dose
+def _state(reading: Reading, table: SweepTable) -> tuple[str | None, str | None, bool]:
+    return reading.sheet.cell_of(table.sweep), table.sweep.after_dose, table.sweep.empty_cell
 
 
 def thermal_lag(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]:
@@ -213,8 +213,7 @@ def thermal_lag(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]:
         for direction in _directions(table):
             curve = curve_of(reading, table, "period", direction=direction)
             if curve is not None:
-                key = (*_state(reading, table), table.sweep.empty_cell)
-                curves.setdefault(key, {}).setdefault(direction, curve)
+                curves.setdefault(_state(reading, table), {}).setdefault(direction, curve)
     for (_, _, empty), both in curves.items():
         if empty or set(both) != {"up", "down"}:
             continue
