@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Mapping, Sequence
 from typing import Any, Final
 
@@ -12,18 +13,19 @@ __all__ = ["describe"]
 
 # Columns of lists that occur in `show`; other lists are written one thing a line.
 _COLUMNS: Final[dict[str, tuple[str, ...]]] = {
-    "doses": ("name", "at", "act", "amount", "running_amount", "running_coverage"),
+    "doses": ("name", "at", "act", "counted", "amount", "running_amount", "running_coverage"),
     "channels": ("name", "quantity", "unit", "low", "high", "missing", "thermometer"),
     "results": ("address", "result"),
     "raw_files": ("name", "role", "size", "sha256"),
     "records": ("kind", "address"),
     "sweeps": ("name", "kind", "rows", "cell", "coverage", "temperature_low", "temperature_high"),
     "steps": ("number", "name", "version", "sentence"),
-    "outputs": ("name", "quantity", "result", "description"),
+    "outputs": ("name", "quantity", "rows", "result", "description"),
     "inputs": ("role", "address"),
     "sources": ("name", "level", "description"),
     "findings": ("severity", "place", "what", "remedy"),
 }
+_FIELD: Final = re.compile(r"[a-z][a-z0-9_]*")
 _HIDDEN: Final = frozenset({"address", "what"})
 
 
@@ -41,19 +43,33 @@ def describe(content: Mapping[str, Any]) -> None:
 
 def _lines(content: Mapping[str, Any], indent: str) -> None:
     content = _with_result(content)
-    shown = {name: value for name, value in content.items() if value not in (None, "", [], {}, ())}
+    shown = {
+        name: _plan_address(value) for name, value in content.items() if value not in (None, "", [], {}, ())
+    }
     width = max((len(name) for name, value in shown.items() if _short(value)), default=0)
     for name, value in shown.items():
         if _short(value):
-            say(f"{indent}{name.replace('_', ' '):<{width}}  {_text(value)}")
+            say(f"{indent}{_words(name):<{width}}  {_text(value)}")
     for name, value in shown.items():
         if _short(value):
             continue
-        say(f"{indent}{name.replace('_', ' ')}:")
+        say(f"{indent}{_words(name)}:")
         if isinstance(value, Mapping):
             _lines(value, indent + "  ")
         else:
             _list(name, value, indent + "  ")
+
+
+def _words(name: str) -> str:
+    """Return the name of a field as words; file names and the like stay as they are."""
+    return name.replace("_", " ") if _FIELD.fullmatch(name) else name
+
+
+def _plan_address(value: Any) -> Any:
+    """Return the address instead of a whole plan, which has an address of its own to be shown by."""
+    if isinstance(value, Mapping) and {"name", "revision", "step"} <= set(value):
+        return f"{value['name']}.r{value['revision']}"
+    return value
 
 
 def _with_result(content: Mapping[str, Any]) -> Mapping[str, Any]:

@@ -12,7 +12,7 @@ from archive.commands.describing import describe
 from archive.commands.failures import EXIT_WARNINGS
 from archive.commands.machine import write_json
 from archive.commands.opening import archive_option, json_option, strict_option
-from archive.commands.terminal import Progress, clean, say
+from archive.commands.terminal import Progress, clean, draw, say
 
 if TYPE_CHECKING:
     from rich.tree import Tree
@@ -63,9 +63,7 @@ def trace(*, address: str, archive_dir: Path | None, as_json: bool) -> None:
     if as_json:
         write_json(_content(node))
         return
-    from rich.console import Console
-
-    Console(highlight=False, markup=False, emoji=False, soft_wrap=True).print(_tree(node))
+    draw(_tree(node))
 
 
 def _content(node: TraceNode) -> dict[str, Any]:
@@ -82,9 +80,7 @@ def _tree(node: TraceNode, above: Tree | None = None) -> Tree:
     from rich.text import Text
     from rich.tree import Tree
 
-    facts = "; ".join(f"{name} {value}" for name, value in node.facts.items())
-    place = "" if not node.address or node.address == node.label else f" [{node.address}]"
-    label = Text(clean(f"{node.kind}: {node.label}{place}{f' ({facts})' if facts else ''}"))
+    label = Text(clean(node.label))
     tree = Tree(label) if above is None else above.add(label)
     for child in node.children:
         _tree(child, tree)

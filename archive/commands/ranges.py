@@ -19,7 +19,7 @@ _DAY = re.compile(r"[0-9]{4}-[0-9]{2}-[0-9]{2}$")
 _EXAMPLE = "a range such as 20:35 umol/m^2; one end may be left open, as in 20: umol/m^2"
 
 
-def si_bounds(text: str, to_si: Callable[[float, str], float]) -> Bounds:
+def si_bounds(text: str, to_si: Callable[[str, str], float]) -> Bounds:
     """Bounds that a text states, in SI.
 
     Parameters
@@ -27,7 +27,7 @@ def si_bounds(text: str, to_si: Callable[[float, str], float]) -> Bounds:
     text : str
         Such as `20:35 umol/m^2`, `400 mK:0.8 K`, `:0.8 K`; a unit at one end counts for both.
     to_si : callable
-        SI value of a number and its unit ("" if none is written); raises ValueError with a sentence.
+        SI value of a number, as it is written, and its unit ("" if none is written); raises ValueError with a sentence.
 
     Raises
     ------
@@ -36,7 +36,7 @@ def si_bounds(text: str, to_si: Callable[[float, str], float]) -> Bounds:
 
     Examples
     --------
-    >>> si_bounds("400:800 mK", lambda number, unit: number * {"mK": 1e-3}[unit])
+    >>> si_bounds("400:800 mK", lambda number, unit: float(number) * {"mK": 1e-3}[unit])
     (0.4, 0.8)
     """
     ends = [_END.match(part) for part in text.split(":")]
@@ -46,7 +46,7 @@ def si_bounds(text: str, to_si: Callable[[float, str], float]) -> Bounds:
     low, high = (
         None
         if end is None or end["number"] is None
-        else to_si(float(end["number"]), end["unit"] or units[1 - index])
+        else to_si(end["number"], end["unit"] or units[1 - index])
         for index, end in enumerate(ends)
     )
     if low is None and high is None:

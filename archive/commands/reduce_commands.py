@@ -10,7 +10,7 @@ import click
 from archive.commands import opening
 from archive.commands.failures import EXIT_WARNINGS
 from archive.commands.machine import quantity, write_json
-from archive.commands.numbers import shown_number
+from archive.commands.numbers import readable
 from archive.commands.opening import archive_option, json_option, strict_option
 from archive.commands.terminal import Progress, note, say, table
 from archive.errors import UnknownAddress
@@ -191,8 +191,7 @@ def headline(outcome: ReduceOutcome) -> list[OutputEntry]:
 
 
 def _shown(entry: OutputEntry) -> str:
-    unit = "" if entry.unit == "1" else f" {entry.unit}"
-    return f"{entry.name} = {entry.verdict or shown_number(entry.value, entry.uncertainty) + unit}"
+    return f"{entry.name} = {entry.verdict or readable(entry.value, entry.uncertainty, entry.unit)}"
 
 
 def _content(outcome: ReduceOutcome) -> dict[str, Any]:

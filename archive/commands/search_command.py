@@ -150,18 +150,18 @@ def _query(lab: Archive, words: tuple[str, ...], limit: int, asked: dict[str, An
 def _bounds(text: str, kind: str) -> Bounds:
     from schemas.quantity import Quantity
 
-    return si_bounds(text, lambda number, unit: Quantity.parse(f"{number!r} {unit}".strip(), kind).si)
+    return si_bounds(text, lambda number, unit: Quantity.parse(f"{number} {unit}".strip(), kind).si)
 
 
 def _coverage(lab: Archive, text: str, substrate: str | None) -> Bounds:
     from schemas.quantity import Quantity
 
-    def to_si(number: float, unit: str) -> float:
+    def to_si(number: str, unit: str) -> float:
         if unit not in LAYER_WORDS:
-            return Quantity.parse(f"{number!r} {unit}".strip(), "coverage").si
+            return Quantity.parse(f"{number} {unit}".strip(), "coverage").si
         if substrate is None:
             raise ValueError(NO_SUBSTRATE)
-        return number * layer_of(substrate, lab).coverage.si
+        return float(number) * layer_of(substrate, lab).coverage.si
 
     with told("--coverage"):
         return si_bounds(text, to_si)

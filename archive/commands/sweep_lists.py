@@ -8,7 +8,7 @@ from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
 from archive.commands.machine import Cell, quantity, write_csv, write_json
-from archive.commands.numbers import shown_number
+from archive.commands.numbers import readable, shown_number
 from archive.commands.terminal import say, table
 
 if TYPE_CHECKING:
@@ -56,8 +56,7 @@ def _temperatures(row: SweepRow) -> str:
 
 
 def _result(result: SweepResult) -> str:
-    unit = "" if result.unit == "1" else f" {result.unit}"
-    return f"{result.name} = {result.verdict or shown_number(result.value, result.uncertainty) + unit}"
+    return f"{result.name} = {result.verdict or readable(result.value, result.uncertainty, result.unit)}"
 
 
 def write_sweeps_json(rows: Sequence[SweepRow]) -> None:

@@ -6,6 +6,7 @@ progress goes to stderr, only on a terminal, and only when work lasts.
 
 from __future__ import annotations
 
+import io
 import os
 import sys
 import threading
@@ -17,9 +18,10 @@ from typing import TYPE_CHECKING, Self
 import click
 
 if TYPE_CHECKING:
+    from rich.console import RenderableType
     from rich.progress import Progress as Bar
 
-__all__ = ["Progress", "clean", "note", "say", "styled", "table"]
+__all__ = ["Progress", "clean", "draw", "note", "say", "styled", "table"]
 
 # Controls (Cc), direction marks and other invisible formatting (Cf), lone surrogates (Cs).
 _UNSEEN = frozenset({"Cc", "Cf", "Cs"})
@@ -71,7 +73,6 @@ def table(columns: Sequence[str], rows: Iterable[Sequence[str]], *, right: Itera
         Headings of columns that are set flush right.
     """
     from rich import box
-    from rich.console import Console
     from rich.table import Table
     from rich.text import Text
 
@@ -81,8 +82,20 @@ def table(columns: Sequence[str], rows: Iterable[Sequence[str]], *, right: Itera
         shown.add_column(Text(name), justify="right" if name in flush else "left", overflow="fold")
     for row in rows:
         shown.add_row(*(Text(clean(cell)) for cell in row))
-    width = None if sys.stdout.isatty() else _PIPE_WIDTH
-    Console(file=sys.stdout, highlight=False, markup=False, emoji=False, width=width).print(shown)
+    draw(shown)
+
+
+def draw(shown: RenderableType) -> None:
+    """Write a table or tree to stdout; in a pipe nothing is folded, and no line ends in blanks."""
+    from rich.console import Console
+
+    if sys.stdout.isatty():
+        Console(file=sys.stdout, highlight=False, markup=False, emoji=False).print(shown)
+        return
+    stream = io.StringIO()
+    Console(file=stream, highlight=False, markup=False, emoji=False, width=_PIPE_WIDTH).print(shown)
+    for line in stream.getvalue().splitlines():
+        click.echo(line.rstrip())
 
 
 class Progress:
