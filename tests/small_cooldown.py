@@ -104,7 +104,9 @@ def _table(day: int, shift: float) -> str:
     rows = ["time,T (K),P (ms)"]
     for number in range(60):
         T = 0.2 + 0.01 * number
-        rows.append(f"2026-03-{day:02d}T{10 + number // 30:02d}:{number % 30 * 2:02d}:00+02:00,{T:.4f},{1 + 1e-6 * T + shift:.9f}")
+        rows.append(
+            f"2026-03-{day:02d}T{10 + number // 30:02d}:{number % 30 * 2:02d}:00+02:00,{T:.4f},{1 + 1e-6 * T + shift:.9f}"
+        )
     return "\n".join(rows) + "\n"
 
 

@@ -24,7 +24,9 @@ from schemas.sweep import Channel
 __all__ = ["add_ledger", "add_temperatures", "examined"]
 
 
-def examined(reading: Reading, thresholds: Thresholds) -> tuple[tuple[Finding, ...], tuple[dict[str, Any], ...]]:
+def examined(
+    reading: Reading, thresholds: Thresholds
+) -> tuple[tuple[Finding, ...], tuple[dict[str, Any], ...]]:
     """All findings on a reading, sorted, with waivers applied, and its cautions as plain data.
 
     Parameters

@@ -86,7 +86,12 @@ def read_cooldown(
         _read_sweep(reading, number, sweep, sink)
     for number, name in enumerate(reading.sheet.other_files):
         _keep_raw(
-            reading, name, "other", sink, field=f"other_files[{number + 1}]", line=reading.line("other_files", number)
+            reading,
+            name,
+            "other",
+            sink,
+            field=f"other_files[{number + 1}]",
+            line=reading.line("other_files", number),
         )
     return reading
 
@@ -221,7 +226,9 @@ def _requests(channels: dict[str, Channel]) -> list[ColumnRequest]:
     ]
 
 
-def _factors(reading: Reading, number: int, sweep: Sweep, channels: dict[str, Channel]) -> dict[str, float] | None:
+def _factors(
+    reading: Reading, number: int, sweep: Sweep, channels: dict[str, Channel]
+) -> dict[str, float] | None:
     """SI factor per channel; None if a unit or quantity cannot be what the sheet says."""
     factors: dict[str, float] = {}
     whole = True
@@ -231,7 +238,9 @@ def _factors(reading: Reading, number: int, sweep: Sweep, channels: dict[str, Ch
             continue
         in_sweep = name in sweep.channels
         path: tuple[str | int, ...] = (
-            ("sweep", number, "channels", name) if in_sweep else ("layout", str(sweep.layout), "channels", name)
+            ("sweep", number, "channels", name)
+            if in_sweep
+            else ("layout", str(sweep.layout), "channels", name)
         )
         try:
             factors[name] = unit_factor(channel.unit or "", channel.quantity)
@@ -243,7 +252,9 @@ def _factors(reading: Reading, number: int, sweep: Sweep, channels: dict[str, Ch
                 what=str(error),
                 file=SHEET_NAME,
                 line=reading.line(*path, "unit" if channel.quantity in KINDS else "quantity"),
-                field=("sweep[%d].channels.%s" % (number + 1, name)) if in_sweep else f"layout.{sweep.layout}.channels.{name}",
+                field=("sweep[%d].channels.%s" % (number + 1, name))
+                if in_sweep
+                else f"layout.{sweep.layout}.channels.{name}",
                 place=f"{sweep.name}#{name}" if in_sweep else None,
                 remedy="write the quantity and the unit that the column has",
             )
@@ -255,7 +266,9 @@ def _factors(reading: Reading, number: int, sweep: Sweep, channels: dict[str, Ch
 class _Gatherer:
     """Rows of one sweep as they stream by: statistics of all, values of some, all of them to the sealed file."""
 
-    def __init__(self, channels: dict[str, Channel], factors: dict[str, float], table: TableWriter | None) -> None:
+    def __init__(
+        self, channels: dict[str, Channel], factors: dict[str, float], table: TableWriter | None
+    ) -> None:
         self.channels = channels
         self.factors = factors
         self.table = table
@@ -307,8 +320,12 @@ class _Gatherer:
             lines = block.lines[np.isfinite(values)]
             before = self._last_time.get(name, -math.inf)
             step = np.diff(np.concatenate(([before], present)))
-            facts.reversed_at.extend(int(line) for line in lines[step < 0][: _LISTED - len(facts.reversed_at)])
-            facts.repeated_at.extend(int(line) for line in lines[step == 0][: _LISTED - len(facts.repeated_at)])
+            facts.reversed_at.extend(
+                int(line) for line in lines[step < 0][: _LISTED - len(facts.reversed_at)]
+            )
+            facts.repeated_at.extend(
+                int(line) for line in lines[step == 0][: _LISTED - len(facts.repeated_at)]
+            )
             self._last_time[name] = float(present[-1])
 
     def finished(self, number: int, sweep: Sweep) -> SweepTable:
@@ -323,7 +340,9 @@ class _Gatherer:
                 name: np.concatenate(parts) if parts else np.zeros(0) for name, parts in self.kept.items()
             },
             lines=np.concatenate(self.lines) if self.lines else np.zeros(0, dtype=np.int64),
-            file_numbers=np.concatenate(self.file_numbers) if self.file_numbers else np.zeros(0, dtype=np.int64),
+            file_numbers=np.concatenate(self.file_numbers)
+            if self.file_numbers
+            else np.zeros(0, dtype=np.int64),
             rows=self.rows,
             stride=self.stride,
             facts=self.facts,
@@ -342,7 +361,9 @@ def _columns(channels: dict[str, Channel]) -> list[Column]:
         )
         for name, channel in channels.items()
     ]
-    line = Column("source_line", "int64", "1", "1", "count", "Line of the raw file that this row stands in, from 1.")
+    line = Column(
+        "source_line", "int64", "1", "1", "count", "Line of the raw file that this row stands in, from 1."
+    )
     file = Column("source_file", "int64", "1", "1", "count", "Which of the sweep's files, from 0.")
     return [*columns, line, file]
 
@@ -384,7 +405,12 @@ def _read_sweep(reading: Reading, number: int, sweep: Sweep, sink: Writer | None
     factors = _factors(reading, number, sweep, channels)
     paths: list[Path | None] = [
         _keep_raw(
-            reading, name, "sweep", sink, field=f"sweep[{number + 1}].files", line=reading.line("sweep", number, "files")
+            reading,
+            name,
+            "sweep",
+            sink,
+            field=f"sweep[{number + 1}].files",
+            line=reading.line("sweep", number, "files"),
         )
         for name in sweep.files
     ]
@@ -490,7 +516,9 @@ def _report_cells(
         alike.setdefault(f"{cell.column}{cell.why}", []).append(cell)
     listed = 0
     for group in alike.values():
-        everywhere = len(group) > _EVERYWHERE and len(group) > 0.9 * min(rows + count, _SHOWN_CELLS) / len(alike)
+        everywhere = len(group) > _EVERYWHERE and len(group) > 0.9 * min(rows + count, _SHOWN_CELLS) / len(
+            alike
+        )
         for cell in group[:1] if everywhere else group:
             more = f", and so it is in {len(group) - 1} or more further rows" if everywhere else ""
             reading.findings.append(

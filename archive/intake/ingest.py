@@ -178,7 +178,9 @@ def ingest(
             ),
             doses=tuple(reading.ledger),
             raw_files=tuple(
-                entry for entry in reading.raw_files.values() if plan.files is None or entry.name in plan.files
+                entry
+                for entry in reading.raw_files.values()
+                if plan.files is None or entry.name in plan.files
             ),
             findings=examination.findings,
             cautions=examination.cautions,
@@ -216,7 +218,11 @@ def _plan(folder: Path, reading: SheetReading, documents: Sequence[AccessionDocu
             continue
         files.add(name)
         kind = "changed" if name in held else "added"
-        differences.append(f"file {name} {kind}: SHA-256 {_short(held.get(name))} -> {_short(digest)}" if name in held else f"file {name} {kind}: SHA-256 {_short(digest)}")
+        differences.append(
+            f"file {name} {kind}: SHA-256 {_short(held.get(name))} -> {_short(digest)}"
+            if name in held
+            else f"file {name} {kind}: SHA-256 {_short(digest)}"
+        )
     if not files:
         return None
     last = documents[-1].sheet
@@ -290,5 +296,3 @@ def _value(content: object) -> str:
         content = content["text"]
     text = json.dumps(content, ensure_ascii=False)
     return text if len(text) <= 200 else text[:197] + "..."
-
-

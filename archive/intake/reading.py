@@ -188,7 +188,8 @@ class Reading:
         own = [
             record
             for record in self.records.values()
-            if isinstance(record, Calibration) and record.thermometer in (thermometer.name, thermometer.address)
+            if isinstance(record, Calibration)
+            and record.thermometer in (thermometer.name, thermometer.address)
         ]
         return max(own, key=lambda record: (record.date, record.revision), default=None)
 

@@ -25,7 +25,9 @@ class Settings(Record):
         default="sqlite:///index.sqlite3",
         description="Address of the index: a SQLite file beside this one, or postgresql+psycopg://...",
     )
-    thresholds: Thresholds = Field(default_factory=Thresholds, description="The lab's own limits of the checks.")
+    thresholds: Thresholds = Field(
+        default_factory=Thresholds, description="The lab's own limits of the checks."
+    )
 
     def index_address(self, root: Path) -> str:
         """Address of the index, with the place of a SQLite file filled in."""
@@ -73,5 +75,7 @@ def read_settings(root: Path) -> Settings:
         raise InvalidSheet(f"the settings are not valid TOML: {error}", file=str(path)) from None
     settings, findings = validated(Settings, tables, file=SETTINGS_NAME, lines=LineMap(text))
     if settings is None:
-        raise InvalidSheet("; ".join(finding.sentence() for finding in findings), remedy="correct stillroom.toml")
+        raise InvalidSheet(
+            "; ".join(finding.sentence() for finding in findings), remedy="correct stillroom.toml"
+        )
     return settings

@@ -33,7 +33,9 @@ _FORMS = {
     REFERENCE_PATTERN: "the name of a record, with or without its revision, e.g. TO-4 or TO-4.r2",
 }
 _HEADER = re.compile(r"^\s*\[(\[)?\s*(?P<path>[^\[\]]+?)\s*\]")
-_ASSIGNMENT = re.compile(r"""^\s*(?P<path>(?:[A-Za-z0-9_-]+|"[^"]*"|'[^']*')(?:\s*\.\s*(?:[A-Za-z0-9_-]+|"[^"]*"|'[^']*'))*)\s*=""")
+_ASSIGNMENT = re.compile(
+    r"""^\s*(?P<path>(?:[A-Za-z0-9_-]+|"[^"]*"|'[^']*')(?:\s*\.\s*(?:[A-Za-z0-9_-]+|"[^"]*"|'[^']*'))*)\s*="""
+)
 _PART = re.compile(r"""[A-Za-z0-9_-]+|"[^"]*"|'[^']*'""")
 
 
@@ -93,7 +95,7 @@ def _logical_lines(text: str) -> Iterator[tuple[int, str]]:
             continue
         if depth == 0:
             yield number, line
-        for mark in ('"""', "\'\'\'"):
+        for mark in ('"""', "'''"):
             if line.count(mark) % 2 == 1:
                 closing = mark
         if closing is None and (depth > 0 or _ASSIGNMENT.match(line)):
@@ -147,12 +149,18 @@ def read_sheet(path: Path) -> SheetReading:
     file = path.name
     try:
         if path.stat().st_size > _LARGEST_SHEET:
-            return _unreadable(file, f"the sheet is larger than {_LARGEST_SHEET // 1_000_000} MB", "keep tables of numbers in data files")
+            return _unreadable(
+                file,
+                f"the sheet is larger than {_LARGEST_SHEET // 1_000_000} MB",
+                "keep tables of numbers in data files",
+            )
         data = path.read_bytes()
     except FileNotFoundError:
         return _unreadable(file, "there is no cooldown sheet here", "make one with: stillroom draft FOLDER")
     except OSError as error:
-        return _unreadable(file, f"the sheet cannot be read: {error.strerror}", "check the file and its permissions")
+        return _unreadable(
+            file, f"the sheet cannot be read: {error.strerror}", "check the file and its permissions"
+        )
     try:
         text = data.decode("utf-8-sig")
     except UnicodeDecodeError as error:
@@ -180,7 +188,9 @@ def read_sheet(path: Path) -> SheetReading:
 
 
 def _unreadable(file: str, what: str, remedy: str, line: int | None = None) -> SheetReading:
-    finding = Finding(code="sheet-unreadable", severity="error", what=what, file=file, line=line, remedy=remedy)
+    finding = Finding(
+        code="sheet-unreadable", severity="error", what=what, file=file, line=line, remedy=remedy
+    )
     return SheetReading(file, "", None, (finding,), LineMap(""))
 
 
@@ -191,7 +201,9 @@ def validated(
     try:
         return model.model_validate_json(json.dumps(tables, default=_plain)), ()
     except ValidationError as error:
-        known = [_finding(dict(each), tables, file=file, lines=lines) for each in error.errors(include_url=False)]
+        known = [
+            _finding(dict(each), tables, file=file, lines=lines) for each in error.errors(include_url=False)
+        ]
         unique = {(each.field, each.what): each for each in known}
         return None, tuple(unique.values())
 
@@ -209,11 +221,18 @@ def _finding(error: Mapping[str, Any], tables: Mapping[str, Any], *, file: str, 
         name = str(path[-1])
         close = difflib.get_close_matches(name, _known_names(), n=1)
         what = f"{name} is not a name that a sheet knows here"
-        remedy = f"did you mean {close[0]}?" if close and close[0] != name else "remove it, or move it to the table it belongs to"
+        remedy = (
+            f"did you mean {close[0]}?"
+            if close and close[0] != name
+            else "remove it, or move it to the table it belongs to"
+        )
     elif kind == "value_error":
         what = str(context.get("error", error["msg"]))
     elif kind == "timezone_aware":
-        what, remedy = "this time has no offset from UTC", "write it with its offset, e.g. 2026-03-02T09:10:00+02:00"
+        what, remedy = (
+            "this time has no offset from UTC",
+            "write it with its offset, e.g. 2026-03-02T09:10:00+02:00",
+        )
     elif kind == "literal_error" or kind == "union_tag_invalid":
         what = "this word is not one of those that can stand here"
         expected = str(context.get("expected") or context.get("expected_tags"))
@@ -225,12 +244,16 @@ def _finding(error: Mapping[str, Any], tables: Mapping[str, Any], *, file: str, 
         expected = _FORMS.get(pattern, f"the form {pattern}")
     else:
         what = str(error["msg"])
-    if kind not in ("missing", "extra_forbidden", "value_error") and not isinstance(error.get("input"), dict | list):
+    if kind not in ("missing", "extra_forbidden", "value_error") and not isinstance(
+        error.get("input"), dict | list
+    ):
         found = _shown(error.get("input"))
     return Finding(
         code="sheet-field",
         severity="error",
-        what=what[:1].lower() + what[1:] if kind not in ("missing", "extra_forbidden", "value_error") else what,
+        what=what[:1].lower() + what[1:]
+        if kind not in ("missing", "extra_forbidden", "value_error")
+        else what,
         file=file,
         line=lines.line(path),
         field=spelled(path) or None,

@@ -34,7 +34,9 @@ def record_kind(record: AnyRecord) -> RecordKind:
 
 def record_digest(record: AnyRecord) -> str:
     """SHA-256 of a record's content as canonical JSON."""
-    text = json.dumps(record.model_dump(mode="json"), sort_keys=True, ensure_ascii=False, separators=(",", ":"))
+    text = json.dumps(
+        record.model_dump(mode="json"), sort_keys=True, ensure_ascii=False, separators=(",", ":")
+    )
     return hashlib.sha256(text.encode()).hexdigest()
 
 
@@ -53,7 +55,11 @@ def record_entries(reading: Reading) -> tuple[RecordEntry, ...]:
 
 def sweep_entries(reading: Reading) -> tuple[SweepEntry, ...]:
     """One entry per sweep that was read, in the order of the sheet."""
-    return tuple(_entry(reading, reading.tables[sweep.name]) for sweep in reading.sheet.sweep if sweep.name in reading.tables)
+    return tuple(
+        _entry(reading, reading.tables[sweep.name])
+        for sweep in reading.sheet.sweep
+        if sweep.name in reading.tables
+    )
 
 
 def _entry(reading: Reading, table: SweepTable) -> SweepEntry:
@@ -139,5 +145,3 @@ def _held(reading: Reading, sweep: Sweep) -> tuple[Value | None, Value | None]:
         return Value(value=0.0, unit="mol"), Value(value=0.0, unit="mol/m^2")
     entry = next((entry for entry in reading.ledger if entry.name == sweep.after_dose), None)
     return (None, None) if entry is None else (entry.running_amount, entry.running_coverage)
-
-

@@ -90,7 +90,9 @@ def check_folder(
         If there is no such folder.
     """
     if not folder.is_dir():
-        raise BadRequest("there is no such folder", file=str(folder), remedy="name the folder that holds cooldown.toml")
+        raise BadRequest(
+            "there is no such folder", file=str(folder), remedy="name the folder that holds cooldown.toml"
+        )
     archived = (lambda reference: None) if source is None else source.find_record
     reading = read_cooldown(folder, archived=archived, progress=progress)
     if reading.sheet_reading.sheet is None:
@@ -136,7 +138,9 @@ class Archive:
     # Opening and closing ------------------------------------------------------------------------------------------
 
     @classmethod
-    def create(cls, root: Path, *, name: str | None = None, index: str | None = None, clock: Clock = _now) -> Archive:
+    def create(
+        cls, root: Path, *, name: str | None = None, index: str | None = None, clock: Clock = _now
+    ) -> Archive:
         """Make a new archive.
 
         Parameters
@@ -155,15 +159,21 @@ class Archive:
         """
         root = root.resolve()
         if (root / SETTINGS_NAME).exists():
-            raise BadRequest("there is an archive here already", file=str(root), remedy="use it, or name another folder")
+            raise BadRequest(
+                "there is an archive here already", file=str(root), remedy="use it, or name another folder"
+            )
         if root.exists() and (not root.is_dir() or any(root.iterdir())):
-            raise BadRequest("this folder is not empty", file=str(root), remedy="name a new or an empty folder")
+            raise BadRequest(
+                "this folder is not empty", file=str(root), remedy="name a new or an empty folder"
+            )
         root.mkdir(parents=True, exist_ok=True)
         for part in ("sealed", "staging"):
             (root / part).mkdir()
         text = settings_text(name or root.name, index)
         with archive_lock(root):
-            address = Settings.model_validate({"name": name or root.name, **({"index": index} if index else {})})
+            address = Settings.model_validate(
+                {"name": name or root.name, **({"index": index} if index else {})}
+            )
             Index.create(address.index_address(root)).close()
             write_whole(root / SETTINGS_NAME, text.encode())
         return cls.open(root, clock=clock)
@@ -276,7 +286,9 @@ class Archive:
         """
         folder = Path(folder)
         if not folder.is_dir():
-            raise BadRequest("there is no such folder", file=str(folder), remedy="name the folder that holds cooldown.toml")
+            raise BadRequest(
+                "there is no such folder", file=str(folder), remedy="name the folder that holds cooldown.toml"
+            )
         thresholds = self.settings.thresholds
         with self._writing():
             outcome = intake_ingest.ingest(
@@ -374,7 +386,9 @@ class Archive:
         """Cells, substrates, thermometers, ... with their revisions."""
         return self._index.records(name=name, kind=kind)
 
-    def results(self, name: str | None = None, *, cooldown: str | None = None, sweep: str | None = None) -> list[ResultRow]:
+    def results(
+        self, name: str | None = None, *, cooldown: str | None = None, sweep: str | None = None
+    ) -> list[ResultRow]:
         """Scalar results of current reductions, as a table."""
         return self._index.results(name=name, cooldown=cooldown, sweep=sweep)
 
@@ -396,7 +410,9 @@ class Archive:
         document = self._source.holding(parsed.head, parsed.item)
         entry = next(entry for entry in document.sweeps if entry.name == parsed.item)
         return {
-            channel.name: np.asarray(self._source.column(document.address, parsed.item, channel.name), dtype=np.float64)
+            channel.name: np.asarray(
+                self._source.column(document.address, parsed.item, channel.name), dtype=np.float64
+            )
             for channel in entry.channels
         }
 
@@ -404,7 +420,9 @@ class Archive:
         """Array that an address names: a channel of a sweep or an output of a reduction, in its stored unit."""
         parsed = parse_address(address)
         if parsed.part is None:
-            raise UnknownAddress(f"{address} names no channel or output", expected="an address that ends in #NAME")
+            raise UnknownAddress(
+                f"{address} names no channel or output", expected="an address that ends in #NAME"
+            )
         return self._source.values(parsed.reduction or parsed.sweep or "", parsed.part)
 
     def show(self, address: str) -> dict[str, Any]:
@@ -422,7 +440,9 @@ class Archive:
         """Run sheet of a cooldown as HTML, PDF and JSON, by file name."""
         return reporting.run_sheet(self._source, self.name, cooldown, paper=paper)
 
-    def appendix(self, addresses: Sequence[str], *, title: str | None = None, level: str = "section") -> dict[str, bytes]:
+    def appendix(
+        self, addresses: Sequence[str], *, title: str | None = None, level: str = "section"
+    ) -> dict[str, bytes]:
         """Methods appendix behind cooldowns, sweeps or reductions: LaTeX, bibliography, figures, by file name."""
         return reporting.appendix(self._source, self.name, addresses, title=title, level=level)
 
@@ -480,7 +500,9 @@ def find_root(start: Path | None) -> Path:
     if start is not None:
         if not (start / SETTINGS_NAME).is_file():
             raise NotAnArchive(
-                "there is no archive in this folder", file=str(start), remedy="make one with: stillroom init DIR"
+                "there is no archive in this folder",
+                file=str(start),
+                remedy="make one with: stillroom init DIR",
             )
         return start.resolve()
     here = Path.cwd()
@@ -497,5 +519,3 @@ def find_root(start: Path | None) -> Path:
 def _by_age(store: LocalStore) -> Callable[[str], tuple[bool, float, str]]:
     """Order in which sealed files can be recorded: accessions before reductions, older before newer."""
     return lambda key: ("@" in key, store.path(key).stat().st_mtime, key)
-
-

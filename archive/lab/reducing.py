@@ -53,7 +53,9 @@ def _chosen(source: LabSource, plan: str | Path | None) -> tuple[list[Plan], lis
     fitting = [each for each in plans(source) if str(plan) in (each.name, each.address)]
     if not fitting:
         names = ", ".join(sorted({each.name for each in plans(source)}))
-        raise BadRequest(f"there is no plan {plan}", expected=f"one of: {names}, or a file such as my-plan.toml")
+        raise BadRequest(
+            f"there is no plan {plan}", expected=f"one of: {names}, or a file such as my-plan.toml"
+        )
     return [max(fitting, key=lambda each: each.revision)], known
 
 
@@ -84,7 +86,9 @@ def reduce(
         raise UnknownAddress(f"there is no cooldown {cooldown} in this archive", expected=f"one of: {known}")
     name = None if sweep is None else sweep.rpartition("/")[2]
     if name is not None and name not in {row.name for row in rows}:
-        raise UnknownAddress(f"there is no sweep {cooldown}/{name}", expected=f"one of: {', '.join(row.name for row in rows)}")
+        raise UnknownAddress(
+            f"there is no sweep {cooldown}/{name}", expected=f"one of: {', '.join(row.name for row in rows)}"
+        )
     allowed, known_plans = _chosen(source, plan)
     work: list[tuple[int, int, str, Plan]] = []
     for position, row in enumerate(rows):
@@ -134,10 +138,12 @@ def _same(old: ReductionDocument, new: ReductionDocument) -> bool:
     """Whether a reduction repeats the one before: same plan, same inputs, same outputs to the bit."""
     return (
         old.plan_digest == new.plan_digest
-        and [(entry.address, entry.digest) for entry in old.inputs] == [(entry.address, entry.digest) for entry in new.inputs]
+        and [(entry.address, entry.digest) for entry in old.inputs]
+        == [(entry.address, entry.digest) for entry in new.inputs]
         and [(entry.name, entry.digest, entry.uncertainty) for entry in old.outputs]
         == [(entry.name, entry.digest, entry.uncertainty) for entry in new.outputs]
-        and [(step.name, step.version) for step in old.steps] == [(step.name, step.version) for step in new.steps]
+        and [(step.name, step.version) for step in old.steps]
+        == [(step.name, step.version) for step in new.steps]
     )
 
 
@@ -196,5 +202,3 @@ def rebuilt_index(
             if progress is not None:
                 progress(len(keys), len(keys), "")
             return index.statistics()
-
-

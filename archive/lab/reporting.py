@@ -61,7 +61,9 @@ def appendix(
 ) -> dict[str, bytes]:
     """Methods appendix behind cooldowns, sweeps, reductions or results."""
     if not addresses:
-        raise BadRequest("name what the appendix is about", expected="addresses of cooldowns, sweeps or reductions")
+        raise BadRequest(
+            "name what the appendix is about", expected="addresses of cooldowns, sweeps or reductions"
+        )
     chosen: dict[str, None] = {}
     cooldowns: dict[str, None] = {}
     for text in addresses:
@@ -85,8 +87,12 @@ def _reductions(source: LabSource, text: str) -> list[str]:
         rows = source.index.reductions(sweep=text, newest_only=True)
     else:
         raise BadRequest(
-            f"an appendix cannot be made of {text}", expected="a cooldown, a sweep, a reduction or one of its outputs"
+            f"an appendix cannot be made of {text}",
+            expected="a cooldown, a sweep, a reduction or one of its outputs",
         )
     if not rows:
-        raise BadRequest(f"nothing of {text} has been reduced yet", remedy=f"reduce it first: stillroom reduce {parsed.head}")
+        raise BadRequest(
+            f"nothing of {text} has been reduced yet",
+            remedy=f"reduce it first: stillroom reduce {parsed.head}",
+        )
     return [row.address for row in rows]

@@ -62,7 +62,9 @@ def _name(source: LabSource, address: Address) -> dict[str, Any]:
         "accessions": [document.address for document in documents],
         "sweeps": [f"{address.head}/{row.name}" for row in source.index.sweeps(address.head)],
         "doses": [_plain(dose) for dose in newest.doses],
-        "reductions": [row.address for row in source.index.reductions(cooldown=address.head, newest_only=True)],
+        "reductions": [
+            row.address for row in source.index.reductions(cooldown=address.head, newest_only=True)
+        ],
         "findings": [_plain(finding) for finding in newest.findings],
         "cautions": list(newest.cautions),
     }
@@ -132,7 +134,13 @@ def _channel(source: LabSource, address: Address) -> dict[str, Any]:
     accession, entry = _entry(source, address)
     for channel in entry.channels:
         if channel.name == address.part:
-            return {"what": "channel", "accession": accession, "sweep": address.sweep, "rows": entry.rows, **_plain(channel)}
+            return {
+                "what": "channel",
+                "accession": accession,
+                "sweep": address.sweep,
+                "rows": entry.rows,
+                **_plain(channel),
+            }
     names = ", ".join(channel.name for channel in entry.channels)
     raise UnknownAddress(f"{address.sweep} has no channel {address.part}", expected=f"one of: {names}")
 

@@ -48,7 +48,9 @@ def document_of(key: str, text: str) -> AccessionDocument | ReductionDocument:
     DamagedFile
         If the text is not such a document.
     """
-    model: type[AccessionDocument] | type[ReductionDocument] = ReductionDocument if "@" in key else AccessionDocument
+    model: type[AccessionDocument] | type[ReductionDocument] = (
+        ReductionDocument if "@" in key else AccessionDocument
+    )
     try:
         return model.model_validate_json(text)
     except ValidationError as error:
@@ -83,7 +85,10 @@ class LabSource:
 
     def cooldowns(self) -> list[str]:
         """Names of all cooldowns, oldest first."""
-        return [row.name for row in sorted(self.index.cooldowns(), key=lambda row: (row.begin or _LONG_AGO, row.name))]
+        return [
+            row.name
+            for row in sorted(self.index.cooldowns(), key=lambda row: (row.begin or _LONG_AGO, row.name))
+        ]
 
     def accessions(self, cooldown: str) -> list[AccessionDocument]:
         """Accessions of a cooldown, oldest first."""
@@ -145,7 +150,9 @@ class LabSource:
     def output(self, reduction_address: str, name: str) -> Estimate:
         """Output of a reduction with its uncertainty."""
         key = key_of(reduction_address)
-        return estimate_from(self.reduction(reduction_address), lambda path: self.store.column(key, path), name)
+        return estimate_from(
+            self.reduction(reduction_address), lambda path: self.store.column(key, path), name
+        )
 
     def digest(self, address: str) -> str:
         """SHA-256 of a record's content, or of a sealed file."""

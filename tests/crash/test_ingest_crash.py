@@ -24,14 +24,14 @@ print(len(calls))
 
 
 def archive_with(tmp_path: Path, name: str) -> tuple[Path, Path]:
-    """An empty archive and a folder to ingest."""
+    """Give an empty archive and a folder to ingest."""
     root = tmp_path / name
     Archive.create(root).close()
     return root, write_folder(tmp_path / "2026-03")
 
 
 def durable_calls(tmp_path: Path) -> int:
-    """How many durable calls a good ingest makes."""
+    """Count the durable calls of a good ingest."""
     root, folder = archive_with(tmp_path, "count")
     with Archive.open(root) as lab, faults.faulty(None) as calls:
         lab.ingest(folder)
@@ -57,7 +57,11 @@ def test_stopped_by_an_exception_at_every_durable_call(tmp_path: Path) -> None:
     assert total >= 6
     for stop_at in range(1, total + 1):
         root, folder = archive_with(tmp_path, f"exception-{stop_at}")
-        with Archive.open(root) as lab, pytest.raises(faults.StoppedError), faults.faulty(stop_at, faults.by_exception):
+        with (
+            Archive.open(root) as lab,
+            pytest.raises(faults.StoppedError),
+            faults.faulty(stop_at, faults.by_exception),
+        ):
             lab.ingest(folder)
         assert_all_or_nothing(root, folder)
 

@@ -32,11 +32,16 @@ def test_a_good_folder_has_no_finding(tmp_path: Path) -> None:
     # Units are SI here: the file's milliseconds have become seconds.
     np.testing.assert_allclose(table.columns["period"][0], (1 + 1e-6 * 0.2 + 8e-6) * 1e-3, rtol=1e-12)
     assert table.where(0) == ("film.csv", 2)
-    assert reading.raw_files["film.csv"].sha256 == hashlib.sha256((tmp_path / "film.csv").read_bytes()).hexdigest()
+    assert (
+        reading.raw_files["film.csv"].sha256
+        == hashlib.sha256((tmp_path / "film.csv").read_bytes()).hexdigest()
+    )
     assert sorted(reading.records) == ["bob.r1", "fridge.r1", "plastic.r1", "well-helium.r1"]
 
 
-def test_long_sweeps_are_thinned_in_memory_and_whole_in_the_sealed_file(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+def test_long_sweeps_are_thinned_in_memory_and_whole_in_the_sealed_file(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
     whole = read_cooldown(write_folder(tmp_path))
     monkeypatch.setattr(folder_module, "KEPT_ROWS", 16)
     store = MemoryStore()
@@ -62,8 +67,14 @@ def test_the_same_rows_from_gzip_and_numpy(tmp_path: Path) -> None:
     packed = read_cooldown(folder)
     assert packed.findings == []
     assert packed.tables["s001"].facts == plain.facts
-    np.save(folder / "empty.npy", np.column_stack([plain.columns["temperature"], plain.columns["period"] * 1e3]))
-    edited(folder, 'files = ["empty.csv.gz"]\nlayout = "bridge"', 'files = ["empty.npy"]\nchannels.temperature = { column = 1, quantity = "temperature", unit = "K", scale = "ITS-90" }\nchannels.period = { column = 2, quantity = "period", unit = "ms" }')
+    np.save(
+        folder / "empty.npy", np.column_stack([plain.columns["temperature"], plain.columns["period"] * 1e3])
+    )
+    edited(
+        folder,
+        'files = ["empty.csv.gz"]\nlayout = "bridge"',
+        'files = ["empty.npy"]\nchannels.temperature = { column = 1, quantity = "temperature", unit = "K", scale = "ITS-90" }\nchannels.period = { column = 2, quantity = "period", unit = "ms" }',
+    )
     array = read_cooldown(folder)
     assert array.findings == []
     np.testing.assert_array_equal(array.tables["s001"].columns["temperature"], plain.columns["temperature"])
@@ -93,7 +104,9 @@ def test_one_fault_of_every_row_is_told_once(tmp_path: Path) -> None:
     assert 1 <= len(findings) <= 4
 
 
-@pytest.mark.parametrize("name", ["../x.csv", "/etc/passwd", "C:x.csv", "sub/../../x.csv", "empty.CSV", "nothere.csv", "sub"])
+@pytest.mark.parametrize(
+    "name", ["../x.csv", "/etc/passwd", "C:x.csv", "sub/../../x.csv", "empty.CSV", "nothere.csv", "sub"]
+)
 def test_a_path_stays_inside_the_folder_and_is_spelled_as_on_disk(tmp_path: Path, name: str) -> None:
     folder = write_folder(tmp_path / "run")
     (folder / "sub").mkdir()
@@ -104,11 +117,13 @@ def test_a_path_stays_inside_the_folder_and_is_spelled_as_on_disk(tmp_path: Path
     assert name in finding.what
 
 
-def test_a_file_that_changes_while_it_is_read_is_refused(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+def test_a_file_that_changes_while_it_is_read_is_refused(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
     folder = write_folder(tmp_path)
     real = folder_module._keep_raw
 
-    def kept_then_changed(reading, name, *arguments, **options):  # type: ignore[no-untyped-def]  # noqa: ANN001, ANN002, ANN003, ANN202
+    def kept_then_changed(reading, name, *arguments, **options):  # type: ignore[no-untyped-def]
         path = real(reading, name, *arguments, **options)
         if name == "film.csv":
             with (folder / name).open("a") as stream:

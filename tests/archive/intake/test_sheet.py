@@ -68,14 +68,32 @@ def test_a_good_sheet_has_no_fault(tmp_path: Path) -> None:
     ("old", "new", "line", "field", "said"),
     [
         ('name = "s002"', 'name = "s 002"', 31, "sweep[2].name", "letters, digits"),
-        ("begin = 2026-03-02T09:10:00+02:00", "begin = 2026-03-02T09:10:00", 4, "begin", "no offset from UTC"),
+        (
+            "begin = 2026-03-02T09:10:00+02:00",
+            "begin = 2026-03-02T09:10:00",
+            4,
+            "begin",
+            "no offset from UTC",
+        ),
         ('outcome = "complete"', 'outcome = "done"', 9, "outcome", "'complete', 'aborted' or 'open'"),
-        ('scale = "ITS-90"\n\n[[sweep', "\n[[sweep", 18, "layout.bridge.channels.temperature", "needs its scale"),
+        (
+            'scale = "ITS-90"\n\n[[sweep',
+            "\n[[sweep",
+            18,
+            "layout.bridge.channels.temperature",
+            "needs its scale",
+        ),
         ('amount = "31.2(2) umol"', 'amount = "31.2 cm3 STP"', 39, "dose[1].amount", "reference state"),
         ('amount = "31.2(2) umol"', 'amount = "31,2 umol"', 39, "dose[1].amount", "decimal"),
         ('amount = "31.2(2) umol"', 'amout = "31.2 umol"', 39, "dose[1].amout", "did you mean amount?"),
         ('state = "recovered"', "", 12, "gas_end.state", "state is missing"),
-        ('kind = "temperature-sweep"\nfiles = ["b.csv"]', 'kind = "warm-up"\nfiles = ["b.csv"]', 32, "sweep[2].kind", "warm-up"),
+        (
+            'kind = "temperature-sweep"\nfiles = ["b.csv"]',
+            'kind = "warm-up"\nfiles = ["b.csv"]',
+            32,
+            "sweep[2].kind",
+            "warm-up",
+        ),
         ("end = 2026-03-20", "end = 2026-03-01", 1, None, "end must be later than begin"),
     ],
 )
@@ -88,7 +106,11 @@ def test_each_fault_names_its_line_and_field(
 
 
 def test_all_faults_are_found_at_once(tmp_path: Path) -> None:
-    text = GOOD.replace('outcome = "complete"', 'outcome = "done"').replace("umol", "umolar").replace("s001", "s.001")
+    text = (
+        GOOD.replace('outcome = "complete"', 'outcome = "done"')
+        .replace("umol", "umolar")
+        .replace("s001", "s.001")
+    )
     assert sorted(line for line, _, _ in read(tmp_path, text) if line) == [9, 25, 39]
 
 
@@ -117,7 +139,10 @@ def test_no_sheet_says_how_to_make_one(tmp_path: Path) -> None:
 def test_lines_survive_multi_line_values() -> None:
     text = 'a = """\n[[not]]\nx = 1\n"""\nb = [\n  { c = 1 },\n]\n[[t]]\nk = 1\n[t.u]\nv = 2\n[[t]]\nk = 3\n'
     lines = LineMap(text)
-    assert [lines.line(path) for path in (("b",), ("t", 0, "k"), ("t", 0, "u", "v"), ("t", 1, "k"), ("t", 1, "no"))] == [5, 9, 11, 13, 12]
+    assert [
+        lines.line(path)
+        for path in (("b",), ("t", 0, "k"), ("t", 0, "u", "v"), ("t", 1, "k"), ("t", 1, "no"))
+    ] == [5, 9, 11, 13, 12]
 
 
 def test_a_field_is_spelled_as_people_count() -> None:

@@ -17,18 +17,6 @@ from archive.store.durable import archive_lock
 from tests.small_cooldown import write_folder
 
 
-@pytest.fixture
-def folder(tmp_path: Path) -> Path:
-    """A small cooldown folder."""
-    return write_folder(tmp_path / "2026-03")
-
-
-@pytest.fixture
-def lab(tmp_path: Path) -> Archive:
-    """An empty archive."""
-    return Archive.create(tmp_path / "lab", name="Test laboratory")
-
-
 def contents(root: Path) -> dict[str, str]:
     """Digest of every sealed and staged file."""
     return {
@@ -46,15 +34,26 @@ def edit(path: Path, old: str, new: str) -> None:
     path.write_text(text.replace(old, new), encoding="utf-8")
 
 
+def test_the_index_in_postgresql_is_made_anew_too(lab: Archive, folder: Path) -> None:
+    lab.ingest(folder)
+    lab.reduce("2026-03")
+    before = lab._index.rows()
+    Archive.rebuild_index(lab.root)
+    assert lab._index.rows() == before
+
+
 def test_an_ingest_keeps_every_raw_byte(lab: Archive, folder: Path) -> None:
     outcome = lab.ingest(folder)
     assert (outcome.state, outcome.address) == ("ingested", "2026-03.a1")
     shown = lab.show("2026-03.a1")
     digests = {entry["name"]: entry["sha256"] for entry in shown["raw_files"]}
     assert digests == {
-        name: hashlib.sha256((folder / name).read_bytes()).hexdigest() for name in ("cooldown.toml", "empty.csv", "film.csv")
+        name: hashlib.sha256((folder / name).read_bytes()).hexdigest()
+        for name in ("cooldown.toml", "empty.csv", "film.csv")
     }
-    np.testing.assert_allclose(lab.sweep("2026-03/s001")["temperature"], 0.2 + 0.01 * np.arange(60), rtol=0, atol=1e-12)
+    np.testing.assert_allclose(
+        lab.sweep("2026-03/s001")["temperature"], 0.2 + 0.01 * np.arange(60), rtol=0, atol=1e-12
+    )
 
 
 def test_the_same_folder_again_changes_nothing(lab: Archive, folder: Path) -> None:
@@ -76,10 +75,15 @@ def test_a_changed_file_becomes_a_supplement_that_says_what_differs(lab: Archive
     after = contents(lab.root)
     assert before.items() <= after.items()
     assert lab.sweep("2026-03/s002")["temperature"][59] == 0.7901
-    assert [row.accession for row in lab.search(SearchQuery(cooldown="2026-03", sort="name"))] == ["2026-03.a1", "2026-03.a2"]
+    assert [row.accession for row in lab.search(SearchQuery(cooldown="2026-03", sort="name"))] == [
+        "2026-03.a1",
+        "2026-03.a2",
+    ]
 
 
-def test_a_record_that_differs_under_its_revision_is_refused_with_both_values(lab: Archive, folder: Path) -> None:
+def test_a_record_that_differs_under_its_revision_is_refused_with_both_values(
+    lab: Archive, folder: Path
+) -> None:
     lab.ingest(folder)
     before = contents(lab.root)
     edit(folder / "cooldown.toml", "1.60(3) m^2", "1.70(3) m^2")
@@ -101,7 +105,9 @@ def test_a_record_that_differs_under_its_revision_is_refused_with_both_values(la
         ("cooldown.toml", 'layout = "bridge"\nafter', 'layout = "brigde"\nafter', "unknown-name"),
     ],
 )
-def test_an_error_leaves_no_trace(lab: Archive, folder: Path, file: str, old: str, new: str, code: str) -> None:
+def test_an_error_leaves_no_trace(
+    lab: Archive, folder: Path, file: str, old: str, new: str, code: str
+) -> None:
     edit(folder / file, old, new)
     outcome = lab.ingest(folder)
     assert outcome.state == "refused"
@@ -119,31 +125,31 @@ def test_a_link_out_of_the_folder_is_refused(lab: Archive, folder: Path, tmp_pat
     assert any("leads out of the cooldown folder" in finding.what for finding in outcome.report.findings)
 
 
-def test_the_index_is_made_anew_row_for_row(lab: Archive, folder: Path) -> None:
-    lab.ingest(folder)
-    lab.reduce("2026-03")
+def test_the_index_is_made_anew_row_for_row(sqlite_lab: Archive, folder: Path) -> None:
+    sqlite_lab.ingest(folder)
+    sqlite_lab.reduce("2026-03")
     edit(folder / "film.csv", "0.7900", "0.7901")
-    lab.ingest(folder)
-    before = lab._index.rows()
-    lab.close()
-    (lab.root / "index.sqlite3").unlink()
+    sqlite_lab.ingest(folder)
+    before = sqlite_lab._index.rows()
+    sqlite_lab.close()
+    (sqlite_lab.root / "index.sqlite3").unlink()
     with pytest.raises(Exception, match="rebuild-index"):
-        Archive.open(lab.root)
-    Archive.rebuild_index(lab.root)
-    with Archive.open(lab.root) as again:
+        Archive.open(sqlite_lab.root)
+    Archive.rebuild_index(sqlite_lab.root)
+    with Archive.open(sqlite_lab.root) as again:
         assert again._index.rows() == before
         assert sum(map(len, before.values())) > 20
 
 
-def test_rebuilding_stops_at_damage_and_keeps_the_old_index(lab: Archive, folder: Path) -> None:
-    lab.ingest(folder)
-    before = lab._index.rows()
-    lab.close()
-    sealed = lab.root / "sealed" / "2026-03" / "2026-03.a1.h5"
+def test_rebuilding_stops_at_damage_and_keeps_the_old_index(sqlite_lab: Archive, folder: Path) -> None:
+    sqlite_lab.ingest(folder)
+    before = sqlite_lab._index.rows()
+    sqlite_lab.close()
+    sealed = sqlite_lab.root / "sealed" / "2026-03" / "2026-03.a1.h5"
     flip(sealed, sealed.stat().st_size // 2)
     with pytest.raises(DamagedFile):
-        Archive.rebuild_index(lab.root)
-    with Archive.open(lab.root) as again:
+        Archive.rebuild_index(sqlite_lab.root)
+    with Archive.open(sqlite_lab.root) as again:
         assert again._index.rows() == before
 
 
@@ -155,29 +161,29 @@ def flip(path: Path, offset: int) -> None:
     path.write_bytes(data)
 
 
-def test_fixity_names_damaged_missing_and_stray(lab: Archive, folder: Path) -> None:
-    lab.ingest(folder)
-    lab.ingest(write_folder(folder.parent / "other", name="2026-04"))
-    assert lab.fixity() == []
-    sealed = lab.root / "sealed"
+def test_fixity_names_damaged_missing_and_stray(sqlite_lab: Archive, folder: Path) -> None:
+    sqlite_lab.ingest(folder)
+    sqlite_lab.ingest(write_folder(folder.parent / "other", name="2026-04"))
+    assert sqlite_lab.fixity() == []
+    sealed = sqlite_lab.root / "sealed"
     flip(sealed / "2026-03" / "2026-03.a1.h5", 5000)
     (sealed / "2026-04" / "2026-04.a1.h5").unlink()
     (sealed / "2026-04" / "notes.txt").write_text("?")
-    assert {(damage.key, damage.kind) for damage in lab.fixity()} == {
+    assert {(damage.key, damage.kind) for damage in sqlite_lab.fixity()} == {
         ("2026-03/2026-03.a1", "damaged"),
         ("2026-04/2026-04.a1", "missing"),
         ("sealed/2026-04/notes.txt", "stray"),
     }
 
 
-def test_a_sealed_file_without_index_rows_is_completed_on_opening(lab: Archive, folder: Path) -> None:
-    lab.close()
-    shutil.copy(lab.root / "index.sqlite3", lab.root.parent / "empty.sqlite3")
-    with Archive.open(lab.root) as first:
+def test_a_sealed_file_without_index_rows_is_completed_on_opening(sqlite_lab: Archive, folder: Path) -> None:
+    sqlite_lab.close()
+    shutil.copy(sqlite_lab.root / "index.sqlite3", sqlite_lab.root.parent / "empty.sqlite3")
+    with Archive.open(sqlite_lab.root) as first:
         first.ingest(folder)
         rows = first._index.rows()
-    shutil.copy(lab.root.parent / "empty.sqlite3", lab.root / "index.sqlite3")
-    with Archive.open(lab.root) as again:
+    shutil.copy(sqlite_lab.root.parent / "empty.sqlite3", sqlite_lab.root / "index.sqlite3")
+    with Archive.open(sqlite_lab.root) as again:
         assert again._index.rows() == rows
         assert any("rows were made from the file itself" in notice for notice in again.notices)
 
@@ -214,7 +220,19 @@ def test_everything_with_an_address_is_shown(lab: Archive, folder: Path, address
     json.dumps(shown, allow_nan=False)
 
 
-@pytest.mark.parametrize("address", ["2027-01", "2026-03/s009", "2026-03.a7", "bob.r9", "2026-03/s001@empty-cell.9", "../x", "", "2026-03/s002#mass"])
+@pytest.mark.parametrize(
+    "address",
+    [
+        "2027-01",
+        "2026-03/s009",
+        "2026-03.a7",
+        "bob.r9",
+        "2026-03/s001@empty-cell.9",
+        "../x",
+        "",
+        "2026-03/s002#mass",
+    ],
+)
 def test_an_unknown_address_says_so(lab: Archive, folder: Path, address: str) -> None:
     lab.ingest(folder)
     with pytest.raises(UnknownAddress):
@@ -254,22 +272,24 @@ def test_a_missing_need_names_the_command(lab: Archive, folder: Path) -> None:
     assert "stillroom" in str(outcome.problem)
 
 
-def test_an_archive_is_found_from_below_and_by_name(lab: Archive, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+def test_an_archive_is_found_from_below_and_by_name(
+    sqlite_lab: Archive, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
     monkeypatch.delenv("STILLROOM_ARCHIVE", raising=False)
-    monkeypatch.chdir(lab.root / "sealed")
+    monkeypatch.chdir(sqlite_lab.root / "sealed")
     with Archive.open() as found:
-        assert found.root == lab.root
+        assert found.root == sqlite_lab.root
     monkeypatch.chdir(tmp_path)
     with pytest.raises(NotAnArchive):
         Archive.open()
-    monkeypatch.setenv("STILLROOM_ARCHIVE", str(lab.root))
+    monkeypatch.setenv("STILLROOM_ARCHIVE", str(sqlite_lab.root))
     with Archive.open() as found:
         assert found.name == "Test laboratory"
 
 
-def test_an_archive_is_not_made_over_something(lab: Archive, tmp_path: Path) -> None:
+def test_an_archive_is_not_made_over_something(sqlite_lab: Archive, tmp_path: Path) -> None:
     with pytest.raises(BadRequest):
-        Archive.create(lab.root)
+        Archive.create(sqlite_lab.root)
     (tmp_path / "full").mkdir()
     (tmp_path / "full" / "x").write_text("x")
     with pytest.raises(BadRequest):
@@ -277,14 +297,16 @@ def test_an_archive_is_not_made_over_something(lab: Archive, tmp_path: Path) -> 
     assert sorted(path.name for path in (tmp_path / "full").iterdir()) == ["x"]
 
 
-def test_a_report_is_written_whole_or_not_at_all(lab: Archive, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+def test_a_report_is_written_whole_or_not_at_all(
+    sqlite_lab: Archive, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
     target = tmp_path / "reports"
-    lab.write_reports({"a.html": b"first"}, target)
+    sqlite_lab.write_reports({"a.html": b"first"}, target)
 
     def full(descriptor: int) -> None:
         raise OSError(28, "No space left on device")
 
     monkeypatch.setattr("archive.store.durable._sync", full)
     with pytest.raises(BadRequest, match="No space left"):
-        lab.write_reports({"a.html": b"second"}, target)
+        sqlite_lab.write_reports({"a.html": b"second"}, target)
     assert {path.name: path.read_bytes() for path in target.iterdir()} == {"a.html": b"first"}
