@@ -175,19 +175,22 @@ def _jumps(P: np.ndarray, T: np.ndarray, u: float, thresholds: Thresholds) -> li
     if len(P) < 2 * _NEIGHBOURS + 2 or not u > 0:
         return []
     steps = np.diff(P)
+    size = np.abs(steps)
+    padded = np.pad(size, _NEIGHBOURS, constant_values=0.0)
+    shifts = [k for k in range(2 * _NEIGHBOURS + 1) if k != _NEIGHBOURS]
+    near = np.max([padded[k : k + len(size)] for k in shifts], axis=0)
+    # A steep drop of a film has steep neighbours; a slipped joint has none.
     candidates = np.flatnonzero(
-        (np.abs(steps) > thresholds.period_jump_sigma * u)
+        (size > thresholds.period_jump_sigma * u)
+        & (size > 5 * near)
         & (np.abs(np.diff(T)) < thresholds.period_jump_temperature_k)
     )
     found = []
     for i in candidates.tolist():
-        near = np.delete(steps[max(0, i - _NEIGHBOURS) : i + _NEIGHBOURS + 1], min(i, _NEIGHBOURS))
         before, after = P[max(0, i - _NEIGHBOURS + 1) : i + 1], P[i + 1 : i + 1 + _NEIGHBOURS]
         if min(len(before), len(after)) < 2:
             continue
-        stays = abs(float(np.median(after) - np.median(before))) > 0.7 * abs(steps[i])
-        # A steep drop of a film has steep neighbours; a slipped joint has none.
-        if stays and abs(steps[i]) > 5 * float(np.max(np.abs(near))):
+        if abs(float(np.median(after) - np.median(before))) > 0.7 * size[i]:
             found.append(i)
     return found
 

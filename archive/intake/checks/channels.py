@@ -103,12 +103,9 @@ def _near_full_scale(
 
 
 def _plateau(table: SweepTable, name: str, values: np.ndarray, thresholds: Thresholds) -> Iterator[Finding]:
-    top = values == np.nanmax(values)
-    longest, run, end = 0, 0, 0
-    for index, at_top in enumerate(top):
-        run = run + 1 if at_top else 0
-        if run > longest:
-            longest, end = run, index
+    edges = np.flatnonzero(np.diff(np.concatenate(([0], (values == np.nanmax(values)).astype(np.int8), [0]))))
+    begins, lengths = edges[::2], np.diff(edges)[::2]
+    begin, longest = int(begins[np.argmax(lengths)]), int(lengths.max())
     present = values[np.isfinite(values)]
     distinct = len(np.unique(present))
     # A coarse column repeats every value; a clipped one repeats only the largest.
@@ -118,7 +115,7 @@ def _plateau(table: SweepTable, name: str, values: np.ndarray, thresholds: Thres
             "saturated",
             "warning",
             f"channel {name} of {table.name} stays at its largest value {number(float(np.nanmax(values)))} (SI) for {longest} rows",
-            end - longest + 1,
+            begin,
             channel=name,
             expected=f"fewer than {thresholds.plateau_rows} equal rows there (plateau_rows)",
             remedy="state full_scale; leave clipped rows out with the reason",
@@ -158,7 +155,7 @@ def lock_phase(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]:
     """Find phases of the lock that mix dissipation into the period."""
     for table in tables(reading, "temperature-sweep", "dose-run", "drive-sweep"):
         name = table.of_kind("phase")
-        if name is None:
+        if name is None or any(each.correct == "phase" for each in table.sweep.corrections):
             continue
         phase = np.degrees(np.where(counting(table), table.columns[name], np.nan))
         if not np.isfinite(phase).any():

@@ -8,7 +8,15 @@ from collections.abc import Iterator
 import numpy as np
 
 from archive.intake.checks.check import History
-from archive.intake.checks.rows import counting, frequency_hz, noise, sigma, stated_uncertainty, tables
+from archive.intake.checks.rows import (
+    counting,
+    frequency_hz,
+    noise,
+    sigma,
+    stated_uncertainty,
+    tables,
+    temperature,
+)
 from archive.intake.checks.telling import number, on_sweep
 from archive.intake.reading import Reading, SweepTable
 from archive.intake.thresholds import Thresholds
@@ -170,29 +178,71 @@ def velocity_critical(reading: Reading, thresholds: Thresholds) -> Iterator[Find
 
 
 def quality_agreement(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]:
-    """Find ringdowns of the empty cell whose Q is not the one that the dissipation is referred to."""
+    """Find ringdowns whose Q is not the one that the drive gives: the reference of the detection, or a sweep in the same state."""
     for table in tables(reading, "ringdown"):
-        detection = reading.detection_of(table.sweep)
-        if not table.sweep.empty_cell or detection is None or detection.reference_quality_factor is None:
+        quality, expected = _ringdown_quality(reading, table), _driven_quality(reading, table)
+        if quality is None or expected is None:
             continue
-        quality = _ringdown_quality(reading, table)
-        if quality is None:
-            continue
-        q, u = quality
-        reference = detection.reference_quality_factor
-        away = q / reference.si - 1
-        spread = math.hypot(u / q, (reference.si_uncertainty or 0.0) / reference.si)
+        (q, u), (reference, u_reference, origin) = quality, expected
+        away = q / reference - 1
+        spread = math.hypot(u / q, u_reference / reference)
         if abs(away) > max(thresholds.quality_agreement_fraction, 2 * spread):
             yield on_sweep(
                 reading,
                 table,
                 "quality-agreement",
                 "warning",
-                f"Q of {table.name} differs by {100 * away:.3g} per cent from the reference quality factor of the detection",
+                f"Q of {table.name} differs by {100 * away:.3g} per cent from that of {origin}",
                 found=f"{q:.4g}",
-                expected=f"{reference.format()} within {100 * thresholds.quality_agreement_fraction:g} per cent (quality_agreement_fraction)",
+                expected=f"{reference:.4g} within {100 * thresholds.quality_agreement_fraction:g} per cent (quality_agreement_fraction)",
                 remedy="look whether amplitude or energy was fitted, whether the gain drifted, and at which temperature each was taken",
             )
+
+
+def _driven_quality(reading: Reading, table: SweepTable) -> tuple[float, float, str] | None:
+    """Q by the drive in the state of a ringdown, its standard uncertainty, and where it is from."""
+    detection = reading.detection_of(table.sweep)
+    if detection is None or detection.reference_quality_factor is None:
+        return None
+    reference = detection.reference_quality_factor
+    u = (reference.si_uncertainty or 0.0) / reference.si
+    if table.sweep.empty_cell:
+        return reference.si, u * reference.si, "the detection's reference"
+    bath = temperature(reading, table)
+    if (
+        bath is None
+        or detection.reference_signal is None
+        or detection.reference_drive is None
+        or not np.isfinite(bath).any()
+    ):
+        return None
+    at = float(np.nanmedian(bath))
+    for other in tables(reading, "temperature-sweep"):
+        same = other.sweep.after_dose == table.sweep.after_dose and not other.sweep.empty_cell
+        if not same or reading.sheet.cell_of(other.sweep) != reading.sheet.cell_of(table.sweep):
+            continue
+        T, signal, drive = temperature(reading, other), other.values("amplitude"), other.values("drive")
+        if T is None or signal is None or drive is None or reading.detection_of(other.sweep) != detection:
+            continue
+        rows = counting(other) & np.isfinite(T) & np.isfinite(signal) & (np.abs(drive) > 0)
+        near = rows & (np.abs(T - at) < 0.05 * at)
+        if near.sum() < 3:
+            continue
+        name = other.of_kind("amplitude")
+        word = None if name is None else other.channels[name].convention
+        ratio = float(np.median(np.abs(signal[near]))) * _PEAK[word or detection.amplitude_convention]
+        ratio /= (
+            abs(detection.reference_signal.si)
+            * _PEAK[detection.reference_signal.convention or detection.amplitude_convention]
+        )
+        drive_name = other.of_kind("drive")
+        stated = None if drive_name is None else other.channels[drive_name].convention
+        force = float(np.median(np.abs(drive[near]))) * _PEAK[stated or detection.reference_drive.convention]
+        force /= abs(detection.reference_drive.si) * _PEAK[detection.reference_drive.convention]
+        # Amplitude is Q times torque; the frequency changes by parts in 10^5 and drops out.
+        q = reference.si * ratio / force**detection.torque_exponent
+        return q, u * q, f"{other.name} near {number(at, 'K', 3)}"
+    return None
 
 
 def _ringdown_quality(reading: Reading, table: SweepTable) -> tuple[float, float] | None:

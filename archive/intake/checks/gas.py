@@ -19,6 +19,7 @@ from schemas.substrate import Sample
 __all__ = [
     "annealing_missing",
     "counted_amounts",
+    "coverage_not_stated",
     "dose_not_positive",
     "gas_end_contradiction",
     "gas_end_unknown",
@@ -172,6 +173,32 @@ def annealing_missing(reading: Reading, thresholds: Thresholds) -> Iterator[Find
                 f"{table.name} follows {listed(silent)}, and how the film was annealed is not recorded",
                 key="settled",
                 remedy="write annealing in the dose or settled in the sweep; an uneven film broadens the transition",
+            )
+
+
+def coverage_not_stated(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]:
+    """Find sweeps of a run with doses that do not say how much helium was in the cell."""
+    if not any(dose.crossed_out is None for dose in reading.sheet.dose):
+        return
+    for table in tables(
+        reading,
+        "temperature-sweep",
+        "drive-sweep",
+        "frequency-sweep",
+        "ringdown",
+        "heat-capacity",
+        "persistent-current",
+    ):
+        sweep = table.sweep
+        if sweep.gas == "helium" and not sweep.empty_cell and sweep.after_dose is None and not sweep.doses:
+            yield on_sweep(
+                reading,
+                table,
+                "coverage-not-stated",
+                "warning",
+                f"{table.name} does not say which dose it follows, nor that the cell was empty",
+                key="after_dose",
+                remedy="add after_dose or empty_cell = true; without it the sweep has no coverage",
             )
 
 

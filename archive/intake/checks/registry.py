@@ -182,6 +182,11 @@ CHECKS: tuple[Check, ...] = (
         "the doses add up to what was recovered, ledger_warning_fraction, ledger_error_fraction",
         gas.ledger_balance,
     ),
+    Check(
+        "coverage-not-stated",
+        "sweeps say which dose they follow, or that the cell was empty",
+        gas.coverage_not_stated,
+    ),
     Check("annealing-missing", "annealing or settling after a dose is recorded", gas.annealing_missing),
     Check("helium3-content", "the 3He content is stated and small, helium3_ppm_layers", gas.helium3_content),
     Check("gas-end-unknown", "what became of the gas is recorded", gas.gas_end_unknown),

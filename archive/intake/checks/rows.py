@@ -27,6 +27,7 @@ __all__ = [
     "stated_uncertainty",
     "tables",
     "temperature",
+    "time_span",
 ]
 
 Floats = NDArray[np.float64]
@@ -87,6 +88,21 @@ def bound(text: str, channel: Channel) -> float:
     if instant.tzinfo is None:
         raise ValueError(f"found {text!r}, expected a time with its offset from UTC")
     return instant.timestamp()
+
+
+def time_span(table: SweepTable) -> tuple[float, float] | None:
+    """Return first and last time of a sweep in POSIX seconds, with its corrections of the clock; None without times."""
+    name = table.of_kind("instant")
+    if name is None or np.isnan(table.facts[name].low):
+        return None
+    offset = 0.0
+    for correction in table.sweep.corrections:
+        if correction.channel == name and correction.correct == "clock":
+            try:
+                offset += Quantity.parse(correction.value, "time").si
+            except ValueError:  # told of by the check of the sheet's texts
+                continue
+    return table.facts[name].low + offset, table.facts[name].high + offset
 
 
 def stated_uncertainty(channel: Channel, values: Floats) -> Floats | None:

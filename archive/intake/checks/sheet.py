@@ -10,14 +10,15 @@ from zoneinfo import ZoneInfo
 import numpy as np
 from pydantic import BaseModel
 
-from archive.intake.checks.rows import bound, stated_uncertainty, tables
+from archive.intake.checks.rows import bound, stated_uncertainty, tables, time_span
 from archive.intake.checks.telling import listed, on_row, on_sheet, on_sweep
 from archive.intake.folder import folder_files
-from archive.intake.reading import Reading
+from archive.intake.reading import Reading, SweepTable
 from archive.intake.thresholds import Thresholds
 from schemas.cooldown import EFFECTS
 from schemas.finding import Finding
 from schemas.quantity import Quantity
+from schemas.sweep import Channel, Correction
 
 __all__ = [
     "data_outside_cooldown",
@@ -69,14 +70,14 @@ def data_outside_cooldown(reading: Reading, thresholds: Thresholds) -> Iterator[
     """Find sweeps with time stamps before the begin or after the end of the run."""
     begin, end = reading.sheet.begin, reading.sheet.end
     for table in tables(reading):
-        name = table.of_kind("instant")
-        if name is None or table.time is None or not np.isfinite(table.time).any():
+        name, span = table.of_kind("instant"), time_span(table)
+        if name is None or span is None or table.time is None:
             continue
         for limit, at, word in (
-            (begin, table.facts[name].low, "before the cooldown begins"),
-            (end, table.facts[name].high, "after the cooldown ends"),
+            (begin, span[0], "before the cooldown begins"),
+            (end, span[1], "after the cooldown ends"),
         ):
-            if limit is None or np.isnan(at):
+            if limit is None:
                 continue
             if (at < limit.timestamp()) if limit is begin else (at > limit.timestamp()):
                 row = int(np.nanargmin(table.time) if limit is begin else np.nanargmax(table.time))
@@ -160,10 +161,10 @@ def _dose_after_data(reading: Reading, at: dict[str, datetime]) -> Iterator[Find
     counted = [dose for dose in reading.sheet.dose if dose.crossed_out is None]
     for table in tables(reading):
         after = table.sweep.after_dose
-        name = table.of_kind("instant")
-        if name is None or table.sweep.gas != "helium" or np.isnan(table.facts[name].low):
+        span = time_span(table)
+        if span is None or table.sweep.gas != "helium":
             continue
-        begin = table.facts[name].low
+        begin = span[0]
         given = [dose.name for dose in counted if dose.at.timestamp() <= begin and dose.act != "recover"]
         wrong = None
         if after in at and begin < at[after].timestamp():
@@ -254,8 +255,8 @@ def events_during_sweeps(reading: Reading, thresholds: Thresholds) -> Iterator[F
         at = event.at.timestamp()
         hit = []
         for table in tables(reading):
-            name = table.of_kind("instant")
-            if name is None or not table.facts[name].low <= at <= table.facts[name].high:
+            span = time_span(table)
+            if span is None or not span[0] <= at <= span[1]:
                 continue
             if table.sweep.kind != "log" and table.name not in event.sweeps and not table.sweep.disturbances:
                 hit.append(table.name)
@@ -273,40 +274,71 @@ def events_during_sweeps(reading: Reading, thresholds: Thresholds) -> Iterator[F
 
 
 def texts_unreadable(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]:
-    """Find uncertainties, full scales and bounds that are texts in the sheet and cannot be read."""
+    """Find uncertainties, full scales, corrections and bounds that are texts in the sheet and cannot be read."""
     seen: set[tuple[str | None, str]] = set()
     for table in tables(reading):
-        for name, channel in table.channels.items():
-            for key, text in (("uncertainty", channel.uncertainty), ("full_scale", channel.full_scale)):
-                if text is None:
-                    continue
-                try:
-                    if key == "uncertainty":
-                        stated_uncertainty(channel, np.zeros(1))
-                    else:
-                        bound(text, channel)
-                except ValueError as error:
-                    finding = on_sweep(
-                        reading,
-                        table,
-                        "text-unreadable",
-                        "error",
-                        f"{key} of channel {name}: {error}",
-                        channel=name,
-                        remedy=f"correct {key}",
-                    )
-                    if (finding.field, finding.what) not in seen:
-                        seen.add((finding.field, finding.what))
-                        yield finding
-        for left_out in table.sweep.left_out:
-            bounding = table.channels.get(left_out.channel or "")
+        for finding in (*_channel_texts(reading, table), *_sweep_texts(reading, table)):
+            if (finding.field, finding.what) not in seen:
+                seen.add((finding.field, finding.what))
+                yield finding
+
+
+def _channel_texts(reading: Reading, table: SweepTable) -> Iterator[Finding]:
+    for name, channel in table.channels.items():
+        readers = {
+            "uncertainty": lambda each: stated_uncertainty(each, np.zeros(1)),
+            "full_scale": _full_scale,
+        }
+        for key, read in readers.items():
+            try:
+                read(channel)
+            except ValueError as error:
+                what = f"{key} of channel {name}: {error}"
+                yield on_sweep(
+                    reading, table, "text-unreadable", "error", what, channel=name, remedy=f"correct {key}"
+                )
+
+
+def _full_scale(channel: Channel) -> float | None:
+    return None if channel.full_scale is None else bound(channel.full_scale, channel)
+
+
+def _sweep_texts(reading: Reading, table: SweepTable) -> Iterator[Finding]:
+    for correction in table.sweep.corrections:
+        try:
+            _correction(correction, table.channels.get(correction.channel))
+        except ValueError as error:
+            yield on_sweep(
+                reading,
+                table,
+                "text-unreadable",
+                "error",
+                f"a correction of channel {correction.channel}: {error}",
+                key="corrections",
+                remedy="write a quantity: of the channel for zero, a number for gain, an angle for phase, a time for clock",
+            )
+    for left_out in table.sweep.left_out:
+        channel = table.channels.get(left_out.channel or "")
+        try:
             for text in (left_out.low, left_out.high):
-                if bounding is None or text is None:
-                    continue
-                try:
-                    bound(text, bounding)
-                except ValueError as error:
-                    yield on_sweep(
-                        reading, table, "text-unreadable", "error", f"a bound of what is left out: {error}", key="left_out",
-                        remedy="write a quantity of that channel, or a time with its offset",
-                    )  # fmt: skip
+                if channel is not None and text is not None:
+                    bound(text, channel)
+        except ValueError as error:
+            yield on_sweep(
+                reading,
+                table,
+                "text-unreadable",
+                "error",
+                f"a bound of what is left out: {error}",
+                key="left_out",
+                remedy="write a quantity of that channel, or a time with its offset",
+            )
+
+
+def _correction(correction: Correction, channel: Channel | None) -> Quantity | None:
+    """Return a correction as a quantity of the kind it must be; None for a channel that is not known."""
+    if channel is None:
+        return None
+    kinds = {"zero": channel.quantity, "gain": "number", "phase": "phase", "clock": "time"}
+    kind = kinds[correction.correct]
+    return Quantity.parse(correction.value, "temperature_difference" if kind == "temperature" else kind)

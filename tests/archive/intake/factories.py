@@ -25,7 +25,13 @@ CHANNELS: dict[str, Any] = {
     "time": {"column": "time", "quantity": "instant"},
     "thermometer": THERMOMETER,
     "period": {"column": "P", "quantity": "period", "unit": "s", "uncertainty": "1.5 ps"},
-    "amplitude": {"column": "A", "quantity": "amplitude", "unit": "V", "convention": "rms", "full_scale": "1 V"},
+    "amplitude": {
+        "column": "A",
+        "quantity": "amplitude",
+        "unit": "V",
+        "convention": "rms",
+        "full_scale": "1 V",
+    },
     "drive": {"column": "D", "quantity": "drive", "unit": "V", "convention": "rms"},
 }
 EFFECT_STATES = {"state": "considered", "reason": "looked at in the notebook"}
@@ -44,7 +50,9 @@ SHEET: dict[str, Any] = {
     "cell": "TO-4",
     "sample": "He4",
     "record": {
-        "cryostat": [{"name": "DR-1", "revision": 1, "kind": "dilution", "site_contact": "cryogenics technician"}],
+        "cryostat": [
+            {"name": "DR-1", "revision": 1, "kind": "dilution", "site_contact": "cryogenics technician"}
+        ],
         "cell": [
             {
                 "name": "TO-4",
@@ -63,7 +71,13 @@ SHEET: dict[str, Any] = {
         ],
         "substrate": [{"name": "PI", "revision": 1, "material": "polyimide film", "area": "1.0 m^2"}],
         "sample": [
-            {"name": "He4", "revision": 1, "isotope": "4He", "helium3_fraction": "0.2 ppm", "gas_source": "bottle 17"}
+            {
+                "name": "He4",
+                "revision": 1,
+                "isotope": "4He",
+                "helium3_fraction": "0.2 ppm",
+                "gas_source": "bottle 17",
+            }
         ],
         "thermometer": [{"name": "RX-2", "revision": 1, "kind": "ruthenium-oxide", "place": "base"}],
         "calibration": [
@@ -149,7 +163,9 @@ def temperatures(rows: int = 300) -> np.ndarray:
     return np.linspace(0.3, 1.0, rows)
 
 
-def periods(T: np.ndarray, *, drop: float = 0.0, at: float = 0.6, width: float = 0.02, seed: int = 1) -> np.ndarray:
+def periods(
+    T: np.ndarray, *, drop: float = 0.0, at: float = 0.6, width: float = 0.02, seed: int = 1
+) -> np.ndarray:
     """Return periods in s with a smooth background, a drop below `at`, and noise."""
     rng = np.random.default_rng(seed)
     film = 0.5 * drop * (1 - np.tanh((T - at) / width))
@@ -216,19 +232,26 @@ def add_table(reading: Reading, name: str, given: Columns) -> SweepTable:
         },
     )
     if "T" in given:
-        calibration = reading.calibration_of(channels[sweep.thermometer]) if sweep.thermometer in channels else None
+        calibration = (
+            reading.calibration_of(channels[sweep.thermometer]) if sweep.thermometer in channels else None
+        )
         T = np.asarray(given["T"], dtype=np.float64)
         table.calibration, table.scale = calibration, None if calibration is None else calibration.scale
         table.outside_calibration = np.zeros(rows, dtype=np.bool_)
         if calibration is not None:
-            table.outside_calibration = (T < calibration.temperature_low.si) | (T > calibration.temperature_high.si)
+            table.outside_calibration = (calibration.temperature_low.si > T) | (
+                calibration.temperature_high.si < T
+            )
         table.temperature = np.where(table.outside_calibration, np.nan, T)
     reading.tables[name] = table
     return table
 
 
 def make_reading(
-    tables: dict[str, Any] | None = None, data: dict[str, Columns] | None = None, *, folder: Path = Path("/nonexistent")
+    tables: dict[str, Any] | None = None,
+    data: dict[str, Columns] | None = None,
+    *,
+    folder: Path = Path("/nonexistent"),
 ) -> Reading:
     """Return a reading of a sheet given as tables, with the columns of its sweeps."""
     text = json.dumps(sheet_tables() if tables is None else tables)
@@ -246,7 +269,13 @@ def make_reading(
 
 
 def ledger_entry(
-    name: str, amount: float, running: float, *, act: str = "add", uncertainty: float = 0.0, coverage: float | None = None
+    name: str,
+    amount: float,
+    running: float,
+    *,
+    act: str = "add",
+    uncertainty: float = 0.0,
+    coverage: float | None = None,
 ) -> DoseEntry:
     """Return a line of the gas ledger, amounts in mol."""
     return DoseEntry(

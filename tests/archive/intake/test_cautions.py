@@ -13,17 +13,21 @@ from archive.intake.reading import Reading
 from schemas.lineage import DoseEntry
 from tests.archive.intake.factories import ledger_entry, make_reading, sheet_tables
 
-BANNED = re.compile(r"\b(safe|acceptable|negligible|compliant|certified|ok|allowed|below the rating)\b", re.IGNORECASE)
+BANNED = re.compile(
+    r"\b(safe|acceptable|negligible|compliant|certified|ok|allowed|below the rating)\b", re.IGNORECASE
+)
 
 
-def with_ledger(change: dict[str, Any] | None = None, *entries: DoseEntry, **end: Any) -> Reading:  # noqa: ANN401 - fields of the sheet
+def with_ledger(change: dict[str, Any] | None = None, *entries: DoseEntry, **end: Any) -> Reading:
     """Return a reading with 3.0 mmol of helium in 2.0 cm^3, a changed cell, and a changed end of the gas."""
     tables = sheet_tables()
     cell = tables["record"]["cell"][0]
     for key, value in (change or {}).items():
         cell[key] = value
     tables["record"]["cell"][0] = {key: value for key, value in cell.items() if value is not None}
-    tables["gas_end"] = {key: value for key, value in {**tables["gas_end"], **end}.items() if value is not None}
+    tables["gas_end"] = {
+        key: value for key, value in {**tables["gas_end"], **end}.items() if value is not None
+    }
     reading = make_reading(tables, {})
     reading.ledger = list(entries) or [ledger_entry("d01", 3.0e-3, 3.0e-3)]
     return reading
@@ -57,7 +61,9 @@ def test_the_worked_example() -> None:
     ("amount", "pressure", "state"),
     [
         pytest.param(20e-3, 27.54e6, "caution", id="10 mol/L"),
-        pytest.param(62.2e-3, 114e6, "outside range of this formula", id="31.1 mol/L, full of liquid at 4.2 K"),
+        pytest.param(
+            62.2e-3, 114e6, "outside range of this formula", id="31.1 mol/L, full of liquid at 4.2 K"
+        ),
     ],
 )
 def test_denser_gas(amount: float, pressure: float, state: str) -> None:
@@ -81,7 +87,9 @@ def test_the_rating_is_printed_beside_and_never_compared() -> None:
     [
         pytest.param({"rated_pressure": None}, "no rating recorded", id="no rating"),
         pytest.param(
-            {"rating_document": None}, "recorded rating 0.35 MPa gauge, not assessed: rating document", id="no document"
+            {"rating_document": None},
+            "recorded rating 0.35 MPa gauge, not assessed: rating document",
+            id="no document",
         ),
     ],
 )
@@ -95,7 +103,12 @@ def test_a_missing_rating_is_said(change: dict[str, Any], rating: str) -> None:
         pytest.param({"closable_volume": None}, {}, "closable volume of the cell", id="volume"),
         pytest.param({}, {"warmest_temperature": None}, "warmest temperature of this site", id="temperature"),
         pytest.param({}, {"valve_open": None}, "state of the valve", id="valve"),
-        pytest.param({"closable_volume": "2.0(1.2) cm^3"}, {}, "closable volume of the cell, better than its uncertainty", id="vague volume"),
+        pytest.param(
+            {"closable_volume": "2.0(1.2) cm^3"},
+            {},
+            "closable volume of the cell, better than its uncertainty",
+            id="vague volume",
+        ),
     ],
 )
 def test_a_missing_input_is_not_assessed(change: dict[str, Any], end: dict[str, Any], missing: str) -> None:
@@ -114,7 +127,9 @@ def test_without_a_ledger_the_amount_is_missing() -> None:
 
 
 def test_an_unknown_end_counts_all_that_was_added() -> None:
-    reading = with_ledger(None, ledger_entry("d01", 3.0e-3, 3.0e-3), state="unknown", valve_open=None, valve=None)
+    reading = with_ledger(
+        None, ledger_entry("d01", 3.0e-3, 3.0e-3), state="unknown", valve_open=None, valve=None
+    )
     found = trapped(reading)
     assert found.state == "caution"
     assert value(found, "amount") == 3.0e-3
@@ -153,7 +168,11 @@ def test_a_run_without_gas_has_no_such_caution() -> None:
 def test_a_closable_volume_asks_for_its_relief_device() -> None:
     (without,) = [each for each in cautions(with_ledger()) if each.subject.startswith("relief")]
     assert "no relief device recorded" in without.text
-    (with_one,) = [each for each in cautions(with_ledger({"relief_device": "RV3, 0.5 MPa, 2025-10"})) if each.subject.startswith("relief")]
+    (with_one,) = [
+        each
+        for each in cautions(with_ledger({"relief_device": "RV3, 0.5 MPa, 2025-10"}))
+        if each.subject.startswith("relief")
+    ]
     assert "RV3, 0.5 MPa, 2025-10" in with_one.text
 
 
@@ -177,16 +196,26 @@ def test_events_bring_their_cautions(what: str, subject: str) -> None:
     assert found[0].state == ("not assessed" if found[0].missing else "caution")
 
 
-@pytest.mark.parametrize(("bias", "subjects"), [("120 V", {"bias voltage"}), ("300 V", {"bias voltage", "discharge in gas"}), (None, set())])
+@pytest.mark.parametrize(
+    ("bias", "subjects"),
+    [("120 V", {"bias voltage"}), ("300 V", {"bias voltage", "discharge in gas"}), (None, set())],
+)
 def test_a_bias_brings_its_cautions(bias: str | None, subjects: set[str]) -> None:
     tables = sheet_tables()
     if bias is not None:
         tables["detection"]["bias"] = bias
-    assert {each.subject for each in cautions(make_reading(tables, {}))} & {"bias voltage", "discharge in gas"} == subjects
+    assert {each.subject for each in cautions(make_reading(tables, {}))} & {
+        "bias voltage",
+        "discharge in gas",
+    } == subjects
 
 
 def test_no_sentence_approves() -> None:
-    texts = [FIXED_TEXT, *caution_texts.BIAS, *(text for each in caution_texts.EVENTS.values() for _, text, _ in each)]
+    texts = [
+        FIXED_TEXT,
+        *caution_texts.BIAS,
+        *(text for each in caution_texts.EVENTS.values() for _, text, _ in each),
+    ]
     for state in ("recovered", "left-in-cell", "vented", "unknown", "never-admitted"):
         for change in ({}, {"closable_volume": None}, {"rated_pressure": None}):
             tables_end = with_ledger(change, state=state)
@@ -202,7 +231,15 @@ def test_cautions_are_plain_data() -> None:
 
 @pytest.mark.parametrize(
     ("number", "text"),
-    [(3.722, "3.8"), (3.7, "3.7"), (0.00731, "0.0074"), (99.5, "100"), (114.2, "120"), (0.0, "0"), (1e-12, "0.000000000001")],
+    [
+        (3.722, "3.8"),
+        (3.7, "3.7"),
+        (0.00731, "0.0074"),
+        (99.5, "100"),
+        (114.2, "120"),
+        (0.0, "0"),
+        (1e-12, "0.000000000001"),
+    ],
 )
 def test_numbers_are_rounded_up(number: float, text: str) -> None:
     assert float(unfavourable(number)) == float(text)

@@ -32,21 +32,26 @@ from tests.archive.intake.factories import (
 )
 
 Build = Callable[[], Reading]
-ISOTHERM = {"x": {"column": 1, "quantity": "relative_pressure", "unit": "1"}, "n": {"column": 2, "quantity": "specific_amount", "unit": "mmol/g"}}
+ISOTHERM = {
+    "x": {"column": 1, "quantity": "relative_pressure", "unit": "1"},
+    "n": {"column": 2, "quantity": "specific_amount", "unit": "mmol/g"},
+}
 # The worked example of the theory, C = 100, and the counter-example whose fit gives a negative constant.
 BET_X = np.array([0.05, 0.10, 0.15, 0.20, 0.25, 0.30])
 BET_N = np.array([0.8846, 1.0194, 1.1134, 1.2019, 1.2945, 1.3960])
 BET_BAD = np.array([0.8580, 0.9582, 1.0132, 1.0577, 1.1003, 1.1447])
 
 
-def found(reading: Reading, code: str, earlier: History | None = None, **limits: Any) -> list[Finding]:  # noqa: ANN401 - limits of any type
+def found(reading: Reading, code: str, earlier: History | None = None, **limits: Any) -> list[Finding]:
     """Return the findings of one check; none of the others may have failed."""
     findings = run_checks(reading, Thresholds(**limits), earlier=earlier)
     assert [finding.what for finding in findings if finding.code == "check-failed"] == []
     return [finding for finding in findings if finding.code == code]
 
 
-def sheet(change: Callable[[dict[str, Any]], None], data: dict[str, Columns] | None = None, **more: Any) -> Reading:  # noqa: ANN401 - as make_reading
+def sheet(
+    change: Callable[[dict[str, Any]], None], data: dict[str, Columns] | None = None, **more: Any
+) -> Reading:
     """Return a reading of the good sheet with one change."""
     tables = sheet_tables()
     change(tables)
@@ -96,7 +101,9 @@ def film_at(row: int | slice, channel: str, value: object) -> dict[str, Columns]
     return data
 
 
-def extra(name: str, kind: str, channels: dict[str, Any] | None = None, **fields: object) -> Callable[[dict[str, Any]], None]:
+def extra(
+    name: str, kind: str, channels: dict[str, Any] | None = None, **fields: object
+) -> Callable[[dict[str, Any]], None]:
     """Return a change that adds a sweep."""
 
     def change(tables: dict[str, Any]) -> None:
@@ -117,7 +124,9 @@ def added(name: str, given: Columns) -> dict[str, Columns]:
 
 def isotherm(x: np.ndarray, n: np.ndarray, **fields: object) -> Reading:
     """Return a reading with an isotherm of nitrogen."""
-    return sheet(extra("iso", "isotherm", ISOTHERM, gas="adsorptive", **fields), added("iso", {"x": x, "n": n}))
+    return sheet(
+        extra("iso", "isotherm", ISOTHERM, gas="adsorptive", **fields), added("iso", {"x": x, "n": n})
+    )
 
 
 def drive_sweep(amplitude_power: float = 1.0, shift: float = 0.0, T: float = 0.5, **cell: object) -> Reading:
@@ -129,7 +138,10 @@ def drive_sweep(amplitude_power: float = 1.0, shift: float = 0.0, T: float = 0.5
     given["amplitude"] = 0.1 * drive**amplitude_power
     given["period"] = PERIOD + shift * drive**2 + NOISE * rng.standard_normal(60)
     changes = [put(f"record.cell.0.{key}", value) for key, value in cell.items()]
-    change = both(*changes, extra("drives", "drive-sweep", after_dose="d01", thermometer="thermometer", direction="hold"))
+    change = both(
+        *changes,
+        extra("drives", "drive-sweep", after_dose="d01", thermometer="thermometer", direction="hold"),
+    )
     return sheet(change, added("drives", given))
 
 
@@ -138,7 +150,14 @@ def lagging(offset: float) -> Reading:
     T = temperatures()[5:-5]
     down = columns(T[::-1], day=4.0, drop=50e-9, at=0.6 - offset, seed=7)
     return sheet(
-        extra("down", "temperature-sweep", after_dose="d01", thermometer="thermometer", direction="down", settled="no"),
+        extra(
+            "down",
+            "temperature-sweep",
+            after_dose="d01",
+            thermometer="thermometer",
+            direction="down",
+            settled="no",
+        ),
         added("down", down),
     )
 
@@ -159,7 +178,9 @@ def stepped(step: float, *, explained: bool = False) -> Reading:
     T = np.full(60, 0.4)
     given = columns(T, day=6.0)
     given["period"] = given["period"] + np.where(np.arange(60) >= 30, step, 0.0)
-    tables: list[Callable[[dict[str, Any]], None]] = [extra("held", "temperature-sweep", after_dose="d01", thermometer="thermometer", settled="x")]
+    tables: list[Callable[[dict[str, Any]], None]] = [
+        extra("held", "temperature-sweep", after_dose="d01", thermometer="thermometer", settled="x")
+    ]
     if explained:
         at = "2026-03-08T09:29:30+00:00"
         tables.append(put("sweep.2.disturbances", [{"at": at, "what": "knock", "new_segment": True}]))
@@ -182,7 +203,17 @@ def ringdown_of(quality: float) -> Reading:
 def ledger(recovered: float, *, coverage: float = 20e-6) -> Reading:
     """Return a reading whose ledger holds one dose of 20 umol and its recovery."""
     reading = sheet(
-        both(put("dose.1", {"name": "e01", "at": "2026-03-19T08:00:00+00:00", "act": "recover", "amount": f"{recovered * 1e6:.6f} umol"}))
+        both(
+            put(
+                "dose.1",
+                {
+                    "name": "e01",
+                    "at": "2026-03-19T08:00:00+00:00",
+                    "act": "recover",
+                    "amount": f"{recovered * 1e6:.6f} umol",
+                },
+            )
+        )
     )
     reading.ledger = [
         ledger_entry("d01", 20e-6, 20e-6, coverage=coverage),
@@ -192,20 +223,37 @@ def ledger(recovered: float, *, coverage: float = 20e-6) -> Reading:
 
 
 def warm_film(
-    T: float, *, fraction: float | None = None, coverage: float = 20e-6, isotope: str = "4He", **substrate: object
+    T: float,
+    *,
+    fraction: float | None = None,
+    coverage: float = 20e-6,
+    isotope: str = "4He",
+    **substrate: object,
 ) -> Reading:
     """Return a reading with a film at about `T` under `fraction` of saturation, with dead volume and ledger."""
     warm = np.linspace(T, T + 0.01, 40)
     given = columns(warm, day=7.0)
-    channels: dict[str, Any] = {"time": CHANNELS["time"], "thermometer": THERMOMETER, "period": CHANNELS["period"]}
+    channels: dict[str, Any] = {
+        "time": CHANNELS["time"],
+        "thermometer": THERMOMETER,
+        "period": CHANNELS["period"],
+    }
     if fraction is not None:
-        channels["pressure"] = {"column": "p", "quantity": "pressure", "unit": "Pa", "convention": "absolute", "uncertainty": "0.1 %"}
+        channels["pressure"] = {
+            "column": "p",
+            "quantity": "pressure",
+            "unit": "Pa",
+            "convention": "absolute",
+            "uncertainty": "0.1 %",
+        }
         given["pressure"] = fraction * np.asarray(saturated_vapour_pressure(warm))
     changes = [put(f"record.substrate.0.{key}", value) for key, value in substrate.items()]
     changes += [
         put("dead_volume", [{"name": "cell", "volume": "1.0 cm^3", "temperature": "cell"}]),
         put("record.sample.0.isotope", isotope),
-        extra("warm", "temperature-sweep", channels, after_dose="d01", thermometer="thermometer", settled="yes"),
+        extra(
+            "warm", "temperature-sweep", channels, after_dose="d01", thermometer="thermometer", settled="yes"
+        ),
     ]
     reading = sheet(both(*changes), added("warm", given))
     reading.ledger = [ledger_entry("d01", 2e-3, 2e-3, coverage=coverage)]
@@ -225,7 +273,10 @@ def heat_capacity(peak: float) -> Reading:
 
 def twin(first: Columns, second: Columns, channels: dict[str, Any], *, same_bytes: bool = False) -> Reading:
     """Return a reading with two sweeps of the same channels from two files."""
-    change = both(extra("one", "isotherm", channels, gas="adsorptive"), extra("two", "isotherm", channels, gas="adsorptive"))
+    change = both(
+        extra("one", "isotherm", channels, gas="adsorptive"),
+        extra("two", "isotherm", channels, gas="adsorptive"),
+    )
     reading = sheet(change, {**good_columns(), "one": first, "two": second})
     if same_bytes:
         entry = reading.raw_files["one.csv"]
@@ -245,7 +296,7 @@ def revised(**fields: object) -> Reading:
     return make_reading(tables)
 
 
-def history(**fields: Any) -> History:  # noqa: ANN401 - as History
+def history(**fields: Any) -> History:
     """Return what an archive knows."""
     return History(cooldown="2026-03", **fields)
 
@@ -273,7 +324,9 @@ def phase(degrees: np.ndarray) -> Reading:
     """Return a reading whose film sweep records the phase of the lock."""
     data = good_columns()
     data["film"]["phase"] = np.radians(np.broadcast_to(degrees, data["film"]["T"].shape))
-    return sheet(put("layout.counter.channels.phase", {"column": "ph", "quantity": "phase", "unit": "rad"}), data)
+    return sheet(
+        put("layout.counter.channels.phase", {"column": "ph", "quantity": "phase", "unit": "rad"}), data
+    )
 
 
 def all_effects(tables: dict[str, Any]) -> None:
@@ -284,7 +337,7 @@ def all_effects(tables: dict[str, Any]) -> None:
 def known(tables: dict[str, Any]) -> None:
     """Say how every value of the sheet is known."""
 
-    def visit(here: Any) -> Any:  # noqa: ANN401 - any part of a sheet
+    def visit(here: Any) -> Any:
         if isinstance(here, dict):
             return {
                 key: {"quantity": value, "known": "measured"}
@@ -301,10 +354,7 @@ def known(tables: dict[str, Any]) -> None:
         "reference_period", "reference_rim_velocity", "range", "volume", "pressure_before", "pressure_after",
         "temperature_before", "warmest_temperature",
     }  # fmt: skip
-    for key, value in visit(tables).items():
-        tables[key] = value
-
-
+    tables |= visit(tables)
 
 
 BAD: dict[str, tuple[str, Build]] = {
@@ -320,31 +370,58 @@ BAD: dict[str, tuple[str, Build]] = {
     "origin-not-stated": ("note", make_reading),
     "event-during-sweep": (
         "note",
-        lambda: sheet(put("event", [{"at": "2026-03-04T10:00:00+00:00", "what": "transfer", "text": "bath"}])),
+        lambda: sheet(
+            put("event", [{"at": "2026-03-04T10:00:00+00:00", "what": "transfer", "text": "bath"}])
+        ),
     ),
-    "time-reversed": ("error", lambda: make_reading(None, film_at(50, "time", BEGIN.timestamp() + 2 * 86400))),
-    "time-repeated": ("warning", lambda: make_reading(None, film(time=BEGIN.timestamp() + 172800 + 60.0 * (np.arange(290) // 2)))),
+    "time-reversed": (
+        "error",
+        lambda: make_reading(None, film_at(50, "time", BEGIN.timestamp() + 2 * 86400)),
+    ),
+    "time-repeated": (
+        "warning",
+        lambda: make_reading(None, film(time=BEGIN.timestamp() + 172800 + 60.0 * (np.arange(290) // 2))),
+    ),
     "time-gap": (
         "warning",
-        lambda: make_reading(None, film(time=BEGIN.timestamp() + 172800 + 60.0 * np.arange(290) + 3600.0 * (np.arange(290) > 99))),
+        lambda: make_reading(
+            None,
+            film(time=BEGIN.timestamp() + 172800 + 60.0 * np.arange(290) + 3600.0 * (np.arange(290) > 99)),
+        ),
     ),
     "sentinel-undeclared": ("error", lambda: make_reading(None, film_at(17, "amplitude", 9.9e37))),
     "saturated": ("error", lambda: make_reading(None, film_at(17, "amplitude", 0.96))),
     "magnitude-floor": (
         "warning",
-        lambda: make_reading(None, film(amplitude=0.1 + 0.006 * np.random.default_rng(4).standard_normal(290))),
+        lambda: make_reading(
+            None, film(amplitude=0.1 + 0.006 * np.random.default_rng(4).standard_normal(290))
+        ),
     ),
     "lock-phase": ("warning", lambda: phase(np.array(6.0))),
     "constant-channel": ("warning", lambda: make_reading(None, film(amplitude=np.full(290, 0.1)))),
-    "coarse-steps": ("note", lambda: make_reading(None, film(period=np.round(good_columns()["film"]["period"], 9)))),
+    "coarse-steps": (
+        "note",
+        lambda: make_reading(None, film(period=np.round(good_columns()["film"]["period"], 9))),
+    ),
     "detection-missing": ("warning", lambda: sheet(put("detection", None))),
     "convention-missing": ("warning", lambda: sheet(put("layout.counter.channels.drive.convention", None))),
-    "temperature-outside-calibration": ("error", lambda: sheet(put("record.calibration.0.temperature_high", "0.9 K"))),
-    "temperature-near-calibration-end": ("warning", lambda: sheet(put("record.calibration.0.temperature_high", "1.001 K"))),
+    "temperature-outside-calibration": (
+        "error",
+        lambda: sheet(put("record.calibration.0.temperature_high", "0.9 K")),
+    ),
+    "temperature-near-calibration-end": (
+        "warning",
+        lambda: sheet(put("record.calibration.0.temperature_high", "1.001 K")),
+    ),
     "scales-mixed": (
         "warning",
         lambda: sheet(
-            extra("other", "temperature-sweep", {"temp": {"column": 1, "quantity": "temperature", "unit": "K", "scale": "T58"}}, thermometer="temp"),
+            extra(
+                "other",
+                "temperature-sweep",
+                {"temp": {"column": 1, "quantity": "temperature", "unit": "K", "scale": "T58"}},
+                thermometer="temp",
+            ),
             added("other", {"temp": temperatures()}),
         ),
     ),
@@ -361,33 +438,58 @@ BAD: dict[str, tuple[str, Build]] = {
     "period-scatter": (
         "note",
         lambda: make_reading(
-            None, film(period=good_columns()["film"]["period"] + 8e-12 * np.random.default_rng(8).standard_normal(290))
+            None,
+            film(
+                period=good_columns()["film"]["period"]
+                + 8e-12 * np.random.default_rng(8).standard_normal(290)
+            ),
         ),
     ),
     "background-missing": ("warning", lambda: make_reading(None, {"film": good_columns()["film"]})),
-    "background-span": ("warning", lambda: make_reading(None, {**good_columns(), "film": columns(np.linspace(0.2, 0.9, 200), day=2.0)})),
+    "background-span": (
+        "warning",
+        lambda: make_reading(None, {**good_columns(), "film": columns(np.linspace(0.2, 0.9, 200), day=2.0)}),
+    ),
     "background-drift": ("warning", lambda: second_empty(2e-9)),
     "period-jump": ("error", lambda: stepped(1e-9)),
-    "drop-sign": ("error", lambda: make_reading(None, {**good_columns(), "film": columns(temperatures()[5:-5], day=2.0, drop=-50e-9)})),
+    "drop-sign": (
+        "error",
+        lambda: make_reading(
+            None, {**good_columns(), "film": columns(temperatures()[5:-5], day=2.0, drop=-50e-9)}
+        ),
+    ),
     "not-positive": ("error", lambda: make_reading(None, film_at(slice(0, 40), "period", -1e-3))),
     "dose-not-positive": ("error", lambda: sheet(put("dose.0.pressure_after", "9 Torr"))),
     "gauge-above-range": ("warning", lambda: sheet(put("dose.0.pressure_before", "10.5 Torr"))),
     "ledger-balance": ("warning", lambda: ledger(19.8e-6)),
-    "annealing-missing": ("warning", lambda: sheet(both(put("dose.0.annealing", None), put("sweep.1.settled", None)))),
+    "coverage-not-stated": ("warning", lambda: sheet(put("sweep.1.after_dose", None))),
+    "annealing-missing": (
+        "warning",
+        lambda: sheet(both(put("dose.0.annealing", None), put("sweep.1.settled", None))),
+    ),
     "helium3-content": ("warning", lambda: sheet(put("record.sample.0.helium3_fraction", None))),
     "gas-end-unknown": ("warning", lambda: sheet(put("gas_end.state", "unknown"))),
     "gas-end-contradiction": ("error", lambda: sheet(put("gas_end.state", "never-admitted"))),
     "vapour-share": ("warning", lambda: warm_film(1.6, fraction=0.9)),
     "pressure-at-saturation": ("error", lambda: warm_film(1.5, fraction=1.05)),
     # At 1.5 K and 25 nm the pore empties at 0.944 of saturation.
-    "capillary-condensation": ("warning", lambda: warm_film(1.5, fraction=0.95, coverage=0.0, pore_diameter="50 nm")),
+    "capillary-condensation": (
+        "warning",
+        lambda: warm_film(1.5, fraction=0.95, coverage=0.0, pore_diameter="50 nm"),
+    ),
     "penetration-depth": ("error", lambda: warm_film(2.0, coverage=2e-2)),
     "pore-size": ("warning", lambda: warm_film(1.5, pore_diameter="7 nm")),
     "isotherm-order": ("warning", lambda: isotherm(BET_X[[0, 2, 1, 3, 4, 5]], BET_N)),
     "isotherm-points": ("warning", lambda: isotherm(BET_X[:4], BET_N[:4])),
     "bet-criteria": ("warning", lambda: isotherm(BET_X, BET_BAD)),
-    "file-twice": ("error", lambda: twin({"x": BET_X, "n": BET_N}, {"x": BET_X, "n": BET_N}, ISOTHERM, same_bytes=True)),
-    "same-data": ("warning", lambda: twin({"x": BET_X / 7, "n": BET_N}, {"x": rounded(BET_X / 7, 7), "n": BET_N}, ISOTHERM)),
+    "file-twice": (
+        "error",
+        lambda: twin({"x": BET_X, "n": BET_N}, {"x": BET_X, "n": BET_N}, ISOTHERM, same_bytes=True),
+    ),
+    "same-data": (
+        "warning",
+        lambda: twin({"x": BET_X / 7, "n": BET_N}, {"x": rounded(BET_X / 7, 7), "n": BET_N}, ISOTHERM),
+    ),
     "time-overlap": (
         "warning",
         lambda: sheet(
@@ -399,18 +501,24 @@ BAD: dict[str, tuple[str, Build]] = {
 
 GOOD: dict[str, Build] = {
     "record-revisions": lambda: revised(changed="new rod"),
-    "dose-order": lambda: sheet(lambda t: t["dose"].append({"name": "d02", "at": "2026-03-12T08:00:00+00:00", "amount": "3 umol"})),
+    "dose-order": lambda: sheet(
+        lambda t: t["dose"].append({"name": "d02", "at": "2026-03-12T08:00:00+00:00", "amount": "3 umol"})
+    ),
     "effects-not-stated": lambda: sheet(all_effects),
     "origin-not-stated": lambda: sheet(known),
     "event-during-sweep": lambda: sheet(
-        put("event", [{"at": "2026-03-04T10:00:00+00:00", "what": "transfer", "text": "bath", "sweeps": ["film"]}])
+        put(
+            "event",
+            [{"at": "2026-03-04T10:00:00+00:00", "what": "transfer", "text": "bath", "sweeps": ["film"]}],
+        )
     ),
     "time-gap": lambda: sheet(
         put("sweep.1.left_out", [{"rows": [100, 120], "reason": "transfer"}]),
         film(time=BEGIN.timestamp() + 172800 + 60.0 * np.arange(290) + 3600.0 * (np.arange(290) > 99)),
     ),
     "saturated": lambda: sheet(
-        put("sweep.1.left_out", [{"rows": [18, 18], "reason": "range change"}]), film_at(17, "amplitude", 0.96)
+        put("sweep.1.left_out", [{"rows": [18, 18], "reason": "range change"}]),
+        film_at(17, "amplitude", 0.96),
     ),
     "lock-phase": lambda: phase(np.linspace(0.0, 4.0, 290)),
     "coarse-steps": lambda: make_reading(None, film(period=np.round(good_columns()["film"]["period"], 12))),
@@ -438,7 +546,12 @@ GOOD: dict[str, Build] = {
     # One adsorbed amount after another at one pressure is no copy.
     "same-data": lambda: twin({"x": BET_X, "n": BET_N}, {"x": BET_X, "n": BET_N * (1 + 1e-5)}, ISOTHERM),
     "scales-mixed": lambda: sheet(
-        extra("other", "temperature-sweep", {"temp": {"column": 1, "quantity": "temperature", "unit": "K", "scale": "ITS-90"}}, thermometer="temp"),
+        extra(
+            "other",
+            "temperature-sweep",
+            {"temp": {"column": 1, "quantity": "temperature", "unit": "K", "scale": "ITS-90"}},
+            thermometer="temp",
+        ),
         added("other", {"temp": temperatures()}),
     ),
 }
@@ -494,16 +607,37 @@ def test_titles_name_limits_that_exist() -> None:
     [
         pytest.param("thermal-lag", lambda: lagging(8e-3), "error", id="lag beyond five times the limit"),
         pytest.param("lock-phase", lambda: phase(np.array(31.0)), "error", id="phase beyond 30 deg"),
-        pytest.param("lock-phase", lambda: phase(np.where(np.arange(290) == 50, 1.5, 0.0)), "warning", id="step of the phase"),
+        pytest.param(
+            "lock-phase",
+            lambda: phase(np.where(np.arange(290) == 50, 1.5, 0.0)),
+            "warning",
+            id="step of the phase",
+        ),
         pytest.param("ledger-balance", lambda: ledger(19.5e-6), "error", id="2.5 per cent missing"),
         pytest.param("ledger-balance", lambda: ledger(20.5e-6), "error", id="2.5 per cent too many"),
-        pytest.param("pressure-at-saturation", lambda: warm_film(1.5, fraction=0.99), "warning", id="near saturation"),
+        pytest.param(
+            "pressure-at-saturation", lambda: warm_film(1.5, fraction=0.99), "warning", id="near saturation"
+        ),
         pytest.param("vapour-share", lambda: warm_film(1.6), "warning", id="only an upper bound"),
-        pytest.param("vapour-share", lambda: warm_film(2.5, fraction=0.9), "error", id="measured, beyond 10 per cent"),
-        pytest.param("penetration-depth", lambda: warm_film(2.0, coverage=5e-3), "warning", id="film of 0.14 um"),
-        pytest.param("not-positive", lambda: make_reading(None, film_at(3, "period", -1e-3)), "warning", id="one period"),
+        pytest.param(
+            "vapour-share", lambda: warm_film(2.5, fraction=0.9), "error", id="measured, beyond 10 per cent"
+        ),
+        pytest.param(
+            "penetration-depth", lambda: warm_film(2.0, coverage=5e-3), "warning", id="film of 0.14 um"
+        ),
+        pytest.param(
+            "not-positive",
+            lambda: make_reading(None, film_at(3, "period", -1e-3)),
+            "warning",
+            id="one period",
+        ),
         pytest.param("helium3-content", lambda: _dirty(), "warning", id="100 ppm in two layers"),
-        pytest.param("record-revisions", lambda: revised(changed="x", valid_from="2020-01-01"), None, id="no day before"),
+        pytest.param(
+            "record-revisions",
+            lambda: revised(changed="x", valid_from="2020-01-01"),
+            None,
+            id="no day before",
+        ),
     ],
 )
 def test_severity(code: str, build: Build, severity: str | None) -> None:
@@ -548,12 +682,20 @@ def test_a_limit_of_the_laboratory_counts() -> None:
 
 def test_a_finding_names_file_line_and_column_of_the_data() -> None:
     (finding,) = found(make_reading(None, film_at(17, "amplitude", 0.96)), "saturated")
-    assert (finding.file, finding.line, finding.column, finding.place) == ("film.csv", 19, "A", "film#amplitude")
+    assert (finding.file, finding.line, finding.column, finding.place) == (
+        "film.csv",
+        19,
+        "A",
+        "film#amplitude",
+    )
     assert "96 per cent" in finding.what
 
 
 def test_channels_that_are_not_used_are_not_checked() -> None:
-    change = both(put("layout.counter.channels.amplitude.use", value=False), put("layout.counter.channels.amplitude.why_not", "broken"))
+    change = both(
+        put("layout.counter.channels.amplitude.use", value=False),
+        put("layout.counter.channels.amplitude.why_not", "broken"),
+    )
     reading = sheet(change, film_at(17, "amplitude", 9.9e37))
     assert not found(reading, "sentinel-undeclared")
     assert not found(reading, "saturated")
@@ -573,6 +715,69 @@ def test_a_vapour_that_is_corrected_is_left_alone() -> None:
     assert not found(reading, "vapour-share")
 
 
+def test_a_clock_that_is_corrected_is_taken_corrected() -> None:
+    late = {
+        "channel": "time",
+        "correct": "clock",
+        "value": "-200000 s",
+        "known": "measured",
+        "source": "radio clock",
+    }
+    assert found(sheet(put("end", "2026-03-04T08:00:00+00:00")), "time-outside-cooldown")
+    change = both(put("end", "2026-03-04T08:00:00+00:00"), put("sweep.1.corrections", [late]))
+    codes = {finding.what for finding in found(sheet(change), "time-outside-cooldown")}
+    assert not any("after the cooldown" in what for what in codes)
+
+
+def test_a_phase_that_is_corrected_is_left_alone() -> None:
+    reading = phase(np.array(6.0))
+    correction = {
+        "channel": "phase",
+        "correct": "phase",
+        "value": "6 deg",
+        "known": "measured",
+        "source": "detuning",
+    }
+    tables = sheet_tables()
+    tables["sweep"][1]["corrections"] = [correction]
+    reading.tables["film"].sweep = make_reading(tables, {}).sheet.sweep[1]
+    assert not found(reading, "lock-phase")
+
+
+@pytest.mark.parametrize(("factor", "told"), [(1.0, False), (0.97, False), (0.9, True)])
+def test_q_of_a_film_agrees_with_the_drive(factor: float, *, told: bool) -> None:
+    # The film sweep has half the reference amplitude at the reference drive, so half the reference Q.
+    reading = ringdown_of(factor * 2.0e5)
+    tables = sheet_tables()
+    extra("ring", "ringdown", {}, after_dose="d01", bath_temperature="0.5 K", layout="counter")(tables)
+    reading.tables["ring"].sweep = make_reading(tables, {}).sheet.sweep[2]
+    reading.tables["film"].columns["amplitude"] = np.full(290, 0.05)
+    assert bool(found(reading, "quality-agreement")) is told
+
+
+@pytest.mark.parametrize(
+    ("correct", "value", "fine"),
+    [
+        ("zero", "0.15(3) ps", True),
+        ("zero", "0.15 Pa", False),
+        ("gain", "1.002(1)", True),
+        ("gain", "1 ps", False),
+        ("clock", "3600 s", True),
+        ("phase", "2 deg", True),
+        ("phase", "soon", False),
+    ],
+)
+def test_corrections_can_be_read(correct: str, value: str, *, fine: bool) -> None:
+    correction = {
+        "channel": "period",
+        "correct": correct,
+        "value": value,
+        "known": "measured",
+        "source": "book",
+    }
+    assert bool(found(sheet(put("sweep.1.corrections", [correction])), "text-unreadable")) is not fine
+
+
 # Names.
 
 
@@ -588,7 +793,10 @@ def test_a_vapour_that_is_corrected_is_left_alone() -> None:
         ("sweep.1.doses", ["d07"]),
         ("sweep.1.thermometer", "thermometre"),
         ("sweep.1.left_out", [{"channel": "perod", "low": "1 ms", "reason": "knock"}]),
-        ("sweep.1.corrections", [{"channel": "perod", "correct": "gain", "value": "1", "known": "assumed", "source": "x"}]),
+        (
+            "sweep.1.corrections",
+            [{"channel": "perod", "correct": "gain", "value": "1", "known": "assumed", "source": "x"}],
+        ),
         ("layout.counter.channels.thermometer.thermometer", "RX-3"),
         ("layout.counter.channels.thermometer.calibration", "RX-3-cal"),
         ("layout.counter.channels.amplitude.gauge", "G9"),
@@ -642,7 +850,9 @@ def test_one_file_for_two_oscillators_is_no_copy() -> None:
 
 
 def test_one_file_read_twice_is_a_copy() -> None:
-    change = both(*(extra(name, "temperature-sweep", after_dose="d01", files=["two.csv"]) for name in ("one", "two")))
+    change = both(
+        *(extra(name, "temperature-sweep", after_dose="d01", files=["two.csv"]) for name in ("one", "two"))
+    )
     given = columns(temperatures(), day=8)
     assert found(sheet(change, {**good_columns(), "one": given, "two": given}), "file-twice")
 
@@ -650,7 +860,10 @@ def test_one_file_read_twice_is_a_copy() -> None:
 def test_two_roundings_of_a_published_isotherm_are_one_data_set() -> None:
     # First points of a 4He isotherm at 4.2 K as stored in two files of one repository (Nichols et al., Phys. Rev. B 102,
     # 144505 (2020), data under the MIT licence); points that share a pressure are real.
-    full = {"x": np.array([0, 0.0001360544218, 0.0002721088435, 0.0002721088435, 0.5, 0.97]), "n": np.array([0, 1.717538492, 3.114881396, 3.99541926, 12.9, 14.0])}
+    full = {
+        "x": np.array([0, 0.0001360544218, 0.0002721088435, 0.0002721088435, 0.5, 0.97]),
+        "n": np.array([0, 1.717538492, 3.114881396, 3.99541926, 12.9, 14.0]),
+    }
     short = {"x": np.array([0, 0.000136054, 0.000272109, 0.000272109, 0.5, 0.97]), "n": full["n"]}
     (finding,) = found(twin(full, short, ISOTHERM), "same-data")
     assert "one data set" in (finding.remedy or "")
@@ -698,7 +911,9 @@ def test_a_check_that_fails_is_told_of_and_the_others_go_on(monkeypatch: pytest.
         def load(self) -> Check:
             return own
 
-    monkeypatch.setattr(registry, "entry_points", lambda group: [Entry()] if group == "stillroom.checks" else [])
+    monkeypatch.setattr(
+        registry, "entry_points", lambda group: [Entry()] if group == "stillroom.checks" else []
+    )
     findings = run_checks(sheet(put("gas_end.state", "unknown")), Thresholds())
     (failed,) = [finding for finding in findings if finding.code == "check-failed"]
     assert failed.severity == "error"
@@ -714,21 +929,30 @@ def test_an_entry_point_that_is_no_check_is_told_of(monkeypatch: pytest.MonkeyPa
             return 3
 
     monkeypatch.setattr(registry, "entry_points", lambda group: [Entry()])
-    assert [finding.code for finding in run_checks(make_reading(), Thresholds()) if finding.severity == "error"] == ["check-failed"]
+    assert [
+        finding.code for finding in run_checks(make_reading(), Thresholds()) if finding.severity == "error"
+    ] == ["check-failed"]
 
 
 def test_findings_are_sorted() -> None:
-    findings = run_checks(sheet(both(put("gas_end.state", "unknown"), put("time_zone", "Nowhere/Land"))), Thresholds())
+    findings = run_checks(
+        sheet(both(put("gas_end.state", "unknown"), put("time_zone", "Nowhere/Land"))), Thresholds()
+    )
     assert findings == sorted(findings, key=lambda finding: finding.order)
 
 
 def test_a_sheet_without_any_table_raises_nothing() -> None:
-    assert "check-failed" not in {finding.code for finding in run_checks(make_reading(None, {}), Thresholds())}
+    assert "check-failed" not in {
+        finding.code for finding in run_checks(make_reading(None, {}), Thresholds())
+    }
 
 
 @pytest.mark.parametrize("value", [np.nan, 0.0], ids=["nothing", "zeros"])
 def test_empty_columns_raise_nothing(value: float) -> None:
     T = temperatures(30)
     given = {name: np.full(30, value) for name in columns(T)}
-    codes = {finding.code for finding in run_checks(make_reading(None, {"empty": given, "film": given}), Thresholds())}
+    codes = {
+        finding.code
+        for finding in run_checks(make_reading(None, {"empty": given, "film": given}), Thresholds())
+    }
     assert "check-failed" not in codes

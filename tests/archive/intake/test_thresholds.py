@@ -27,7 +27,9 @@ def test_a_laboratory_sets_its_own_limit(tmp_path: Path) -> None:
 @pytest.mark.parametrize(
     ("lines", "word"),
     [
-        pytest.param("thermal_lag_mk = 2", "thermal_lag_k", id="a name that is none is answered with a near one"),
+        pytest.param(
+            "thermal_lag_mk = 2", "thermal_lag_k", id="a name that is none is answered with a near one"
+        ),
         pytest.param("thermal_lag_k = -1", "greater than 0", id="negative"),
         pytest.param('thermal_lag_k = "2 mK"', "number", id="text"),
         pytest.param("thermal_lag_k = inf", "finite", id="infinite"),
@@ -48,4 +50,7 @@ def test_a_wrong_limit_is_refused(tmp_path: Path, lines: str, word: str) -> None
 def test_every_limit_says_where_it_comes_from() -> None:
     for name, field in Thresholds.model_fields.items():
         assert field.description, name
-        assert any(word in field.description for word in ("no source", "practice", "Metrologia", "Pure Appl. Chem.", "the same")), name
+        assert any(
+            word in field.description
+            for word in ("no source", "practice", "Metrologia", "Pure Appl. Chem.", "the same")
+        ), name

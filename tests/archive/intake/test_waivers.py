@@ -10,14 +10,18 @@ from archive.intake.waivers import apply_waivers
 from schemas.finding import Finding, Severity, Waiver
 
 
-def finding(severity: Severity = "warning", place: str | None = "s017#period", code: str = "time-gap") -> Finding:
+def finding(
+    severity: Severity = "warning", place: str | None = "s017#period", code: str = "time-gap"
+) -> Finding:
     """Return a finding."""
     return Finding(code=code, severity=severity, what="there is a gap", place=place)
 
 
 def waiver(place: str = "s017#period", check: str = "time-gap") -> Waiver:
     """Return a waiver."""
-    return Waiver(check=check, place=place, reason="the pump was changed", role="data steward", date=date(2026, 3, 20))
+    return Waiver(
+        check=check, place=place, reason="the pump was changed", role="data steward", date=date(2026, 3, 20)
+    )
 
 
 def applied(findings: list[Finding], *waivers: Waiver) -> list[Finding]:
