@@ -12,7 +12,7 @@ from typing import Any
 
 from archive.errors import BadRequest, StepFailed
 from archive.reduction.digest import record_digest
-from archive.reduction.facts import sweep_facts
+from archive.reduction.facts import SweepFacts, sweep_facts
 from archive.reduction.needs import needed_reductions
 from archive.reduction.outputs import Found, Stored, output_arrays, output_entry
 from archive.reduction.performing import perform, step_parameters
@@ -94,9 +94,25 @@ def run(
     address = f"{sweep_address}@{plan.name}.{number}"
     resolver = Resolver(source, facts, needed_reductions(plan, facts, source, needs))
     work = _Work(address, clock, resolver)
+    work.findings += _segments(facts)
     for each in plan.step:
         work.take(plan, each)
     return _finished(plan, work, number=number, begin=begin, supersedes=supersedes)
+
+
+def _segments(facts: SweepFacts) -> list[Finding]:
+    """Return a warning for each disturbance after which the record is not referred to what went before."""
+    return [
+        Finding(
+            code="new-segment",
+            severity="warning",
+            what=f"at {each.at.isoformat()} a new segment began ({each.what}); the rows on both sides were reduced as one record",
+            place=facts.sweep.name,
+            remedy="leave out the rows of one side, with the reason, and reduce again",
+        )
+        for each in facts.sweep.disturbances
+        if each.new_segment
+    ]
 
 
 def _terms(plan: Plan) -> str:

@@ -10,6 +10,7 @@ import string
 from collections.abc import Mapping
 from typing import Any
 
+import numpy as np
 from typing_extensions import override
 
 from archive.reduction.estimate import Estimate
@@ -65,7 +66,7 @@ def _rounded_text(value: float, kind: str, *, digits: int) -> str:
 
 
 def _range_text(estimate: Estimate) -> str:
-    finite = estimate.value[[math.isfinite(value) for value in estimate.value]]
+    finite = estimate.value[np.isfinite(estimate.value)]
     if finite.size == 0:
         return "no value"
     low, high = (

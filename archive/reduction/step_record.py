@@ -83,7 +83,7 @@ def as_json(value: object) -> JsonValue:
             return int(value)
         case float() | np.floating():
             return float(value) if math.isfinite(value) else None
-        case list() | tuple():
+        case list() | tuple() | np.ndarray():
             return [as_json(each) for each in value]
         case dict():
             return {str(key): as_json(each) for key, each in value.items()}

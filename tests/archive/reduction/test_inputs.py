@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import dataclasses
 import math
 from typing import Any
 
@@ -158,6 +159,50 @@ def test_plans_come_in_the_order_in_which_they_need_each_other(tools: Any) -> No
     assert names == [["empty-cell"], ["dose-run"], ["film-transition"], ["film-transition"]]
     assert plans_for(sheet.sweep[0], None, None) == []
     assert source.cooldowns() == ["2026-03"]
+
+
+class _Entry:
+    """An entry point of a laboratory's package."""
+
+    value = "ourlab.steps:OURS"
+
+    def __init__(self, name: str, loaded: object) -> None:
+        self.name, self._loaded = name, loaded
+
+    def load(self) -> object:
+        """Return what it stands for, or fail as an import does."""
+        if isinstance(self._loaded, Exception):
+            raise self._loaded
+        return self._loaded
+
+
+OURS = dataclasses.replace(step_named("leave-out"), name="our-own")
+
+
+@pytest.mark.parametrize(
+    ("loaded", "words"),
+    [
+        pytest.param(OURS, None, id="one step"),
+        pytest.param([OURS], None, id="a list of steps"),
+        pytest.param(step_named("leave-out"), "needs another name", id="a taken name"),
+        pytest.param("text", "no step and no sequence of steps", id="something else"),
+        pytest.param(ImportError("no module"), "cannot be loaded", id="a broken package"),
+    ],
+)
+def test_a_laboratory_adds_its_own_steps(
+    monkeypatch: pytest.MonkeyPatch, loaded: object, words: str | None
+) -> None:
+    monkeypatch.setattr("archive.reduction.steps.entry_points", lambda group: [_Entry("ours", loaded)])
+    all_steps.cache_clear()
+    try:
+        if words is None:
+            assert step_named("our-own") is OURS
+        else:
+            with pytest.raises(BadRequest, match=words):
+                all_steps()
+    finally:
+        monkeypatch.undo()
+        all_steps.cache_clear()
 
 
 def test_effects_are_those_of_the_closed_list() -> None:

@@ -210,6 +210,33 @@ def test_readings_outside_the_calibration_have_no_temperature_and_say_so(tools: 
     assert np.isnan(outcome.arrays["arrays/temperature"][0][:5]).all()
 
 
+def test_a_new_segment_is_told(tools: Any) -> None:
+    content = tools.sheet_content()
+    content["sweep"][0]["disturbances"] = [
+        {"at": "2026-03-02T10:00:00Z", "what": "knock at the frame", "new_segment": True}
+    ]
+    outcome = tools.build(content).reduce("empty-cell", "2026-03/e1")
+    assert "knock at the frame" in next(
+        each.what for each in outcome.document.findings if each.code == "new-segment"
+    )
+
+
+def test_an_optional_step_that_fails_leaves_a_warning_and_the_rest_stands(tools: Any) -> None:
+    data = tools.sweep_data()
+    # No peak: the dissipation only rises.
+    data["f1"]["dissipation"] = 3e-6 + 1e-9 * np.arange(data["f1"]["dissipation"].size)
+    source = tools.build(data=data)
+    source.reduce("empty-cell", "2026-03/e1")
+    source.reduce("dose-run", "2026-03/r1")
+    outcome = source.reduce("film-transition", "2026-03/f1")
+    finding = next(each for each in outcome.document.findings if each.code == "step-without-result")
+    assert "there is no peak" in finding.what
+    names = {entry.name for entry in outcome.document.outputs}
+    assert "T_KT" in names
+    assert "universal_ratio" not in names
+    assert abs(_pull(outcome, "T_KT", 0.6)) < 3
+
+
 def _refusal(source: Any, plan: str, sweep: str) -> str:
     with pytest.raises((BadRequest, StepFailed, UnknownAddress)) as caught:
         source.reduce(plan, sweep)
