@@ -8,6 +8,8 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from typing_extensions import override
+
 __all__ = [
     "AlreadySealed",
     "ArchiveBusy",
@@ -52,7 +54,9 @@ class ArchiveError(Exception):
     code = "archive-error"
     exit_code = EXIT_BAD_INPUT
 
+    @override
     def __str__(self) -> str:
+        """Return the sentence: where, what, found, expected, remedy."""
         place = ", ".join(
             part
             for part in (

@@ -37,7 +37,9 @@ class NamedRecord(Record):
     """A long-lived thing of the laboratory: it has a name, a revision number, and outlives a cooldown."""
 
     name: Name = Field(description="Name of the thing; the same over all its revisions.")
-    revision: int = Field(ge=1, le=999_999, description="Revision number, from 1; raise it when anything changes.")
+    revision: int = Field(
+        ge=1, le=999_999, description="Revision number, from 1; raise it when anything changes."
+    )
     description: Text = Field(default="", description="One or two sentences for a reader ten years from now.")
     valid_from: date | None = Field(default=None, description="Day from which this revision holds.")
     changed: Text | None = Field(default=None, description="What changed since the revision before, and why.")

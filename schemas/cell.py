@@ -36,8 +36,12 @@ class Cryostat(NamedRecord):
     """The refrigerator that a cooldown ran in."""
 
     kind: Literal["dilution", "helium-3", "helium-4", "nuclear-demagnetisation", "cryocooler", "other"]
-    frequency_reference: Text | None = Field(default=None, description="What frequencies refer to, with its uncertainty.")
-    site_contact: Text | None = Field(default=None, description="Role to ask before warming or opening anything.")
+    frequency_reference: Text | None = Field(
+        default=None, description="What frequencies refer to, with its uncertainty."
+    )
+    site_contact: Text | None = Field(
+        default=None, description="Role to ask before warming or opening anything."
+    )
 
 
 class _CellBase(NamedRecord):
@@ -53,8 +57,12 @@ class _CellBase(NamedRecord):
     rated_pressure: Annotated[Quantity, OfKind("pressure", convention_required=True)] | None = Field(
         default=None, description="Recorded pressure rating with its convention, e.g. `0.35 MPa gauge`."
     )
-    rating_document: Text | None = Field(default=None, description="Where the rating stands, with date of the last test.")
-    relief_device: Text | None = Field(default=None, description="Recorded relief device: tag, set pressure, test date.")
+    rating_document: Text | None = Field(
+        default=None, description="Where the rating stands, with date of the last test."
+    )
+    relief_device: Text | None = Field(
+        default=None, description="Recorded relief device: tag, set pressure, test date."
+    )
 
 
 class TorsionalOscillator(_CellBase):
@@ -74,7 +82,9 @@ class TorsionalOscillator(_CellBase):
     gyration_radius_squared: Annotated[Quantity, OfKind("area")] | None = Field(
         default=None, description="Mean square distance of the substrate area from the axis."
     )
-    gap: _Length | None = Field(default=None, description="Distance between neighbouring surfaces (disc spacing or pore width).")
+    gap: _Length | None = Field(
+        default=None, description="Distance between neighbouring surfaces (disc spacing or pore width)."
+    )
     mode: Text | None = Field(default=None, description="Which mode, and the nearest other one seen.")
 
     @model_validator(mode="after")
@@ -93,7 +103,9 @@ class Calorimeter(_CellBase):
     kind: Literal["calorimeter"]
     helium_amount: Annotated[Quantity, OfKind("amount")] | None = None
     height: _Length = Field(description="Height of the liquid: gravity spreads the lambda point over it.")
-    addenda: Text | None = Field(default=None, description="Where the heat capacity of the empty cell comes from.")
+    addenda: Text | None = Field(
+        default=None, description="Where the heat capacity of the empty cell comes from."
+    )
 
 
 class PersistentCurrentRing(_CellBase):
@@ -130,7 +142,12 @@ class ResonatorCell(_CellBase):
 
 
 Cell = Annotated[
-    TorsionalOscillator | Calorimeter | PersistentCurrentRing | ThirdSoundRing | AdsorptionCell | ResonatorCell,
+    TorsionalOscillator
+    | Calorimeter
+    | PersistentCurrentRing
+    | ThirdSoundRing
+    | AdsorptionCell
+    | ResonatorCell,
     Field(discriminator="kind"),
 ]
 """Any cell, told apart by its `kind`."""

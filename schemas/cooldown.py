@@ -93,18 +93,24 @@ class CooldownSheet(Record):
     cryostat: Reference
     begin: AwareDatetime | None = Field(default=None, description="With offset: 2026-03-02T09:10:00+02:00")
     end: AwareDatetime | None = None
-    undated: Text | None = Field(default=None, description="Why begin and end are not known, when they are not.")
+    undated: Text | None = Field(
+        default=None, description="Why begin and end are not known, when they are not."
+    )
     time_zone: str = Field(description="Zone of the laboratory, e.g. `Europe/Helsinki`.")
     operators: tuple[str, ...] = Field(min_length=1, description="By role, e.g. `graduate student`.")
     purpose: Text
     outcome: Literal["complete", "aborted", "open"] = Field(description="How the run ended.")
     next_step: Text | None = Field(default=None, description="What was meant to be done next.")
-    temperature_scale: ScaleName = Field(description="Scale of every temperature in this sheet that names no other.")
+    temperature_scale: ScaleName = Field(
+        description="Scale of every temperature in this sheet that names no other."
+    )
     cell: Reference | None = Field(default=None, description="The cell, when the run had one.")
     sample: Reference | None = Field(default=None, description="The helium of the run.")
     licence: str | None = Field(default=None, description="SPDX identifier under which the data may be used.")
 
-    record: Records = Field(default_factory=lambda: Records(), description="Long-lived things described in this sheet.")
+    record: Records = Field(
+        default_factory=lambda: Records(), description="Long-lived things described in this sheet."
+    )
 
     layout: dict[Name, Layout] = Field(default_factory=dict)
     detection: Detection | None = None
@@ -115,7 +121,8 @@ class CooldownSheet(Record):
     gas_end: GasEnd
     sweep: tuple[Sweep, ...] = Field(min_length=1)
     other_files: tuple[str, ...] = Field(
-        default=(), description="Files to keep beside the sweeps: scans of the notebook, scripts, calibration sheets."
+        default=(),
+        description="Files to keep beside the sweeps: scans of the notebook, scripts, calibration sheets.",
     )
     effect: tuple[Effect, ...] = Field(default=())
     waiver: tuple[Waiver, ...] = Field(default=())
@@ -126,7 +133,9 @@ class CooldownSheet(Record):
     def _consistent(self) -> CooldownSheet:
         if self.begin is None or self.end is None:
             if self.undated is None:
-                raise ValueError("begin and end are missing; give both with their offset, or say in `undated` why they are not known")
+                raise ValueError(
+                    "begin and end are missing; give both with their offset, or say in `undated` why they are not known"
+                )
         elif self.end <= self.begin:
             raise ValueError("end must be later than begin")
         return self
@@ -135,7 +144,14 @@ class CooldownSheet(Record):
     def records(self) -> tuple[Cryostat | Cell | Substrate | Sample | Thermometer | Calibration, ...]:
         """Every record written in this sheet."""
         each = self.record
-        return (*each.cryostat, *each.cell, *each.substrate, *each.sample, *each.thermometer, *each.calibration)
+        return (
+            *each.cryostat,
+            *each.cell,
+            *each.substrate,
+            *each.sample,
+            *each.thermometer,
+            *each.calibration,
+        )
 
     def channels_of(self, sweep: Sweep) -> dict[str, Channel]:
         """Channels of one sweep: those of its layout, replaced or added to by its own."""

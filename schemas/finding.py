@@ -22,12 +22,15 @@ class Finding(Record):
     code: _CODE = Field(description="Name of the check, e.g. `temperature-outside-calibration`.")
     severity: Severity
     what: str = Field(description="One sentence: what is wrong or notable, with the numbers.")
-    file: str | None = Field(default=None, description="File in the cooldown folder, relative, with forward slashes.")
+    file: str | None = Field(
+        default=None, description="File in the cooldown folder, relative, with forward slashes."
+    )
     line: int | None = Field(default=None, description="Line from 1.")
     column: str | None = Field(default=None, description="Column name or number from 1.")
     field: str | None = Field(default=None, description="Place in the sheet, e.g. `dose[3].pressure`.")
     place: str | None = Field(
-        default=None, description="What it is about: sweep, dose, channel or record, e.g. `s017`, `s017#period`, `TO-4.r2`."
+        default=None,
+        description="What it is about: sweep, dose, channel or record, e.g. `s017`, `s017#period`, `TO-4.r2`.",
     )
     expected: str | None = None
     found: str | None = None

@@ -78,7 +78,9 @@ class ChannelEntry(Record):
     scale: str | None = None
     thermometer: str | None = Field(default=None, description="Address of the thermometer's revision.")
     calibration: str | None = Field(default=None, description="Address of the calibration in force.")
-    low: float | None = Field(default=None, description="Smallest value in `unit`; none when no number is there.")
+    low: float | None = Field(
+        default=None, description="Smallest value in `unit`; none when no number is there."
+    )
     high: float | None = None
     missing: int = Field(default=0, description="Rows without a value.")
     use: bool = True
@@ -92,7 +94,9 @@ class SweepEntry(Record):
     kind: SweepKind
     files: tuple[str, ...]
     rows: int = Field(ge=0)
-    first_lines: dict[str, int] = Field(default_factory=dict, description="File line of the first data row, per file.")
+    first_lines: dict[str, int] = Field(
+        default_factory=dict, description="File line of the first data row, per file."
+    )
     channels: tuple[ChannelEntry, ...]
     cell: str | None = Field(default=None, description="Address of the cell's revision.")
     substrate: str | None = None
@@ -106,7 +110,9 @@ class SweepEntry(Record):
     direction: str = "none"
     temperature_low: Value | None = None
     temperature_high: Value | None = None
-    amount: Value | None = Field(default=None, description="Helium in the cell's system during the sweep, mol.")
+    amount: Value | None = Field(
+        default=None, description="Helium in the cell's system during the sweep, mol."
+    )
     coverage: Value | None = Field(default=None, description="Amount over area during the sweep, mol/m^2.")
 
 
@@ -120,7 +126,9 @@ class DoseEntry(Record):
     amount: Value
     running_amount: Value
     running_coverage: Value | None = None
-    method: str = Field(description="How the amount was obtained: equation, second virial coefficient, gauge zero.")
+    method: str = Field(
+        description="How the amount was obtained: equation, second virial coefficient, gauge zero."
+    )
 
 
 class RecordEntry(Record):
@@ -140,8 +148,12 @@ class AccessionDocument(Record):
     cooldown: str
     number: int = Field(ge=1)
     accessioned: AwareDatetime
-    supplements: str | None = Field(default=None, description="Address of the accession that this one adds to.")
-    differences: tuple[str, ...] = Field(default=(), description="What differs from the accession before, in words.")
+    supplements: str | None = Field(
+        default=None, description="Address of the accession that this one adds to."
+    )
+    differences: tuple[str, ...] = Field(
+        default=(), description="What differs from the accession before, in words."
+    )
     sheet: CooldownSheet
     sheet_file: str
     records: tuple[RecordEntry, ...]
@@ -182,11 +194,17 @@ class OutputEntry(Record):
     step: int = Field(ge=1, description="Number of the step that gave it, from 1.")
     scale: str | None = None
     rows: int | None = Field(default=None, description="Length of an array; none for a scalar.")
-    value: float | None = Field(default=None, description="Value of a scalar in `unit`; none when there is none.")
+    value: float | None = Field(
+        default=None, description="Value of a scalar in `unit`; none when there is none."
+    )
     uncertainty: float | None = Field(default=None, description="Combined standard uncertainty of a scalar.")
     point: float | None = Field(default=None, description="The part of it that nothing else shares.")
-    shared: dict[str, float] = Field(default_factory=dict, description="Signed contribution of each shared source, in `unit`.")
-    verdict: str | None = Field(default=None, description="A word instead of a number, e.g. `no resonance in range`.")
+    shared: dict[str, float] = Field(
+        default_factory=dict, description="Signed contribution of each shared source, in `unit`."
+    )
+    verdict: str | None = Field(
+        default=None, description="A word instead of a number, e.g. `no resonance in range`."
+    )
     digest: Sha256 = Field(description="SHA-256 of the stored array, or of the scalar as one float64.")
 
 
@@ -201,11 +219,16 @@ class StepRecord(Record):
     inputs: dict[str, InputEntry]
     outputs: tuple[str, ...]
     citations: tuple[str, ...] = ()
-    effects: dict[str, str] = Field(default_factory=dict, description="Known effects that this step treats: effect, sentence.")
+    effects: dict[str, str] = Field(
+        default_factory=dict, description="Known effects that this step treats: effect, sentence."
+    )
     begin: AwareDatetime
     end: AwareDatetime
     findings: tuple[Finding, ...] = ()
-    facts: dict[str, JsonValue] = Field(default_factory=dict, description="Numbers the step has to say beyond its outputs: orders, chi^2, counts.")
+    facts: dict[str, JsonValue] = Field(
+        default_factory=dict,
+        description="Numbers the step has to say beyond its outputs: orders, chi^2, counts.",
+    )
 
 
 class ReductionDocument(Record):
@@ -222,7 +245,9 @@ class ReductionDocument(Record):
     steps: tuple[StepRecord, ...]
     outputs: tuple[OutputEntry, ...]
     sources: tuple[SourceEntry, ...] = ()
-    covariances: dict[str, Any] = Field(default_factory=dict, description="Covariance of fitted parameters: names, matrix.")
+    covariances: dict[str, Any] = Field(
+        default_factory=dict, description="Covariance of fitted parameters: names, matrix."
+    )
     supersedes: str | None = None
     findings: tuple[Finding, ...] = ()
     begin: AwareDatetime

@@ -35,10 +35,14 @@ class Applies(Record):
     """Which sweeps a plan is for."""
 
     sweep_kinds: tuple[SweepKind, ...] = Field(min_length=1)
-    cell_kinds: tuple[str, ...] = Field(default=(), description="Kinds of cell; empty: any, or none recorded.")
+    cell_kinds: tuple[str, ...] = Field(
+        default=(), description="Kinds of cell; empty: any, or none recorded."
+    )
     empty_cell: bool | None = Field(default=None, description="Only runs of the empty cell, or only others.")
     gas: Literal["helium", "adsorptive"] | None = None
-    has_pores: bool | None = Field(default=None, description="Only substrates with, or without, a recorded pore size.")
+    has_pores: bool | None = Field(
+        default=None, description="Only substrates with, or without, a recorded pore size."
+    )
 
 
 class Need(Record):
@@ -55,9 +59,15 @@ class PlanStep(Record):
     use: Name = Field(description="Name of the step.")
     version: int | None = Field(default=None, ge=1, description="Version of the step; left out: the newest.")
     take: dict[_Key, _Source] = Field(default_factory=dict)
-    set: dict[_Key, bool | int | float | str | tuple[float, ...] | tuple[str, ...]] = Field(default_factory=dict)
-    give: dict[_Key, _Key] = Field(default_factory=dict, description="Output of the step: its name in this plan.")
-    optional: bool = Field(default=False, description="True: left out, and recorded as left out, when an input does not exist.")
+    set: dict[_Key, bool | int | float | str | tuple[float, ...] | tuple[str, ...]] = Field(
+        default_factory=dict
+    )
+    give: dict[_Key, _Key] = Field(
+        default_factory=dict, description="Output of the step: its name in this plan."
+    )
+    optional: bool = Field(
+        default=False, description="True: left out, and recorded as left out, when an input does not exist."
+    )
 
 
 class Plan(NamedRecord):
@@ -67,7 +77,9 @@ class Plan(NamedRecord):
     applies: Applies
     needs: dict[_Key, Need] = Field(default_factory=dict)
     step: tuple[PlanStep, ...] = Field(min_length=1)
-    headline: tuple[_Key, ...] = Field(default=(), description="Results to show first, at most three.", max_length=3)
+    headline: tuple[_Key, ...] = Field(
+        default=(), description="Results to show first, at most three.", max_length=3
+    )
 
     @model_validator(mode="after")
     def _names_once(self) -> Plan:
@@ -75,11 +87,17 @@ class Plan(NamedRecord):
         for number, step in enumerate(self.step, 1):
             for source in (one for text in step.take.values() for one in text.split(" | ")):
                 if ":" not in source and source not in seen:
-                    raise ValueError(f"step {number} ({step.use}) takes {source!r}, which no earlier step gives")
+                    raise ValueError(
+                        f"step {number} ({step.use}) takes {source!r}, which no earlier step gives"
+                    )
                 if source.startswith("need:") and source[5:].partition("#")[0] not in self.needs:
-                    raise ValueError(f"step {number} ({step.use}) takes {source!r}, which `needs` does not name")
+                    raise ValueError(
+                        f"step {number} ({step.use}) takes {source!r}, which `needs` does not name"
+                    )
             for output in step.give.values():
                 if output in seen:
-                    raise ValueError(f"step {number} ({step.use}) gives {output!r}, which an earlier step already gives")
+                    raise ValueError(
+                        f"step {number} ({step.use}) gives {output!r}, which an earlier step already gives"
+                    )
                 seen.add(output)
         return self

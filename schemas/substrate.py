@@ -25,7 +25,8 @@ class Substrate(NamedRecord):
     )
     specific_area: Annotated[Quantity, OfKind("specific_area")] | None = None
     area_method: Text | None = Field(
-        default=None, description="How the area is known: gas, temperature, range, cross-section, or geometry."
+        default=None,
+        description="How the area is known: gas, temperature, range, cross-section, or geometry.",
     )
     pore_diameter: Annotated[Quantity, OfKind("length")] | None = None
     roughness: Annotated[Quantity, OfKind("length")] | None = None
@@ -33,11 +34,16 @@ class Substrate(NamedRecord):
     outgassing: Text | None = None
     preplating: Text | None = Field(default=None, description="Species, amount and annealing, or `none`.")
     layer: Annotated[Quantity, OfKind("coverage")] | None = Field(
-        default=None, description="Coverage that one layer means on this substrate; needed before anything is told in layers."
+        default=None,
+        description="Coverage that one layer means on this substrate; needed before anything is told in layers.",
     )
-    layer_definition: Text | None = Field(default=None, description="What defines that layer, in words, with its source.")
+    layer_definition: Text | None = Field(
+        default=None, description="What defines that layer, in words, with its source."
+    )
     van_der_waals: float | None = Field(
-        default=None, gt=0, description="Frenkel-Halsey-Hill coefficient Gamma in K layer^3 (layers of 0.36 nm)."
+        default=None,
+        gt=0,
+        description="Frenkel-Halsey-Hill coefficient Gamma in K layer^3 (layers of 0.36 nm).",
     )
 
     @model_validator(mode="after")

@@ -35,9 +35,7 @@ SweepKind = Literal[
     "log",
 ]
 
-FilePath = Annotated[
-    str, StringConstraints(pattern=r"^[^\x00-\x1f\x7f\\]+$", max_length=400, min_length=1)
-]
+FilePath = Annotated[str, StringConstraints(pattern=r"^[^\x00-\x1f\x7f\\]+$", max_length=400, min_length=1)]
 """A file inside the cooldown folder, relative, with forward slashes."""
 
 ChannelName = Annotated[str, StringConstraints(pattern=r"^[a-z][a-z0-9_]{0,63}$")]
@@ -50,14 +48,20 @@ class Dialect(Record):
     decimal: Literal[".", ","] = "."
     comment: Annotated[str, StringConstraints(min_length=1, max_length=3)] | None = "#"
     encoding: Literal["utf-8", "latin-1"] = "utf-8"
-    skip_rows: int = Field(default=0, ge=0, le=10_000, description="Lines before the header that are not data.")
-    header_rows: int = Field(default=1, ge=0, le=20, description="Header lines: names first, then e.g. units.")
+    skip_rows: int = Field(
+        default=0, ge=0, le=10_000, description="Lines before the header that are not data."
+    )
+    header_rows: int = Field(
+        default=1, ge=0, le=20, description="Header lines: names first, then e.g. units."
+    )
     header_comment: bool = Field(
-        default=False, description="The header line itself begins with the comment mark, as in `# T (K), P (s)`."
+        default=False,
+        description="The header line itself begins with the comment mark, as in `# T (K), P (s)`.",
     )
     quote: Literal['"', "'"] | None = '"'
     time_format: str | None = Field(
-        default=None, description="`iso8601`, `epoch` (seconds since 1970 UTC), or a strptime pattern for local time."
+        default=None,
+        description="`iso8601`, `epoch` (seconds since 1970 UTC), or a strptime pattern for local time.",
     )
     time_zone: str | None = Field(default=None, description="Zone of local times, e.g. `Europe/Helsinki`.")
     fold: Literal["earlier", "later"] | None = Field(
@@ -70,22 +74,30 @@ class Channel(Record):
     """One column of a sweep: what it is, in which unit, from which instrument, how well known."""
 
     column: str | int = Field(description="Column name in the file's header, or its number from 1.")
-    quantity: str = Field(description="Quantity kind, e.g. `period`, `resistance`, `pressure`, `instant` for a time stamp.")
-    unit: str | None = Field(default=None, description="Unit of the numbers in the file; time stamps have none.")
+    quantity: str = Field(
+        description="Quantity kind, e.g. `period`, `resistance`, `pressure`, `instant` for a time stamp."
+    )
+    unit: str | None = Field(
+        default=None, description="Unit of the numbers in the file; time stamps have none."
+    )
     description: Text = ""
     instrument: Text | None = None
     uncertainty: str | None = Field(
-        default=None, description="Standard uncertainty of one reading: a quantity (`2 ns`) or a share (`0.01 %`)."
+        default=None,
+        description="Standard uncertainty of one reading: a quantity (`2 ns`) or a share (`0.01 %`).",
     )
     uncertainty_is: Literal["point", "run"] = Field(
-        default="point", description="`point`: independent from row to row; `run`: common to all rows of this sweep."
+        default="point",
+        description="`point`: independent from row to row; `run`: common to all rows of this sweep.",
     )
     convention: Literal["rms", "peak", "peak-to-peak", "absolute", "gauge"] | None = None
     scale: ScaleName | None = Field(default=None, description="Scale of a temperature channel.")
     thermometer: Reference | None = Field(default=None, description="Thermometer that a reading belongs to.")
     calibration: Reference | None = Field(default=None, description="Calibration to reduce the reading with.")
     gauge: Name | None = Field(default=None, description="Gauge that a pressure was read on.")
-    sentinels: tuple[str, ...] = Field(default=(), description="Cells that mean `no value`, as they stand in the file.")
+    sentinels: tuple[str, ...] = Field(
+        default=(), description="Cells that mean `no value`, as they stand in the file."
+    )
     nan: Literal["keep", "error"] = Field(default="error", description="What an empty or NaN cell is.")
     full_scale: Annotated[str, StringConstraints(min_length=1)] | None = Field(
         default=None, description="Range of the instrument, a quantity; readings near it are saturated."
@@ -97,11 +109,15 @@ class Channel(Record):
     def _consistent(self) -> Channel:
         if self.quantity == "instant":
             if self.unit is not None:
-                raise ValueError("a channel of time stamps (quantity = \"instant\") has no unit; its format stands in the dialect")
+                raise ValueError(
+                    'a channel of time stamps (quantity = "instant") has no unit; its format stands in the dialect'
+                )
         elif self.unit is None:
             raise ValueError('unit is missing; write "1" for a number without dimension')
         if self.quantity == "temperature" and self.scale is None:
-            raise ValueError("a temperature channel needs its scale, e.g. scale = \"ITS-90\"; a reading that is still to be calibrated is a resistance, pressure, ...")
+            raise ValueError(
+                'a temperature channel needs its scale, e.g. scale = "ITS-90"; a reading that is still to be calibrated is a resistance, pressure, ...'
+            )
         if not self.use and not self.why_not:
             raise ValueError("a channel that is not to be used needs why_not")
         if isinstance(self.column, int) and self.column < 1:
@@ -120,9 +136,13 @@ class LeftOut(Record):
     """A sub-range that is kept but not reduced with, and why."""
 
     channel: ChannelName | None = Field(default=None, description="Channel whose values bound the range.")
-    low: str | None = Field(default=None, description="Lower end, a quantity of that channel or an RFC 3339 time.")
+    low: str | None = Field(
+        default=None, description="Lower end, a quantity of that channel or an RFC 3339 time."
+    )
     high: str | None = None
-    rows: tuple[int, int] | None = Field(default=None, description="First and last data row, from 1, instead of a range.")
+    rows: tuple[int, int] | None = Field(
+        default=None, description="First and last data row, from 1, instead of a range."
+    )
     reason: Annotated[Text, StringConstraints(min_length=3)]
 
     @model_validator(mode="after")
@@ -140,7 +160,9 @@ class Correction(Record):
     correct: Literal["zero", "gain", "phase", "clock"] = Field(
         description="zero: value is subtracted; gain: values are divided by it; phase: the detector's phase error; clock: added to time stamps."
     )
-    value: str = Field(description="A quantity with uncertainty, e.g. `0.15(3) Pa`, `1.0021(4)`, `2.1(5) deg`, `3600 s`.")
+    value: str = Field(
+        description="A quantity with uncertainty, e.g. `0.15(3) Pa`, `1.0021(4)`, `2.1(5) deg`, `3600 s`."
+    )
     known: Literal["measured", "computed", "document", "assumed"]
     source: Text = Field(description="From where it is known.")
 
@@ -150,17 +172,23 @@ class Disturbance(Record):
 
     at: AwareDatetime
     what: Text
-    new_segment: bool = Field(default=False, description="True: what follows is not referred to what went before.")
+    new_segment: bool = Field(
+        default=False, description="True: what follows is not referred to what went before."
+    )
 
 
 class Detection(Record):
     """Drive and detection of an oscillator."""
 
     torque_exponent: Literal[1, 2] = Field(description="p: torque is proportional to drive to the power p.")
-    signal_exponent: Literal[0, 1] = Field(description="s: signal is proportional to amplitude times frequency to the power s.")
+    signal_exponent: Literal[0, 1] = Field(
+        description="s: signal is proportional to amplitude times frequency to the power s."
+    )
     amplitude_convention: Literal["rms", "peak"]
     bias: Annotated[Quantity, OfKind("voltage")] | None = None
-    quadrature_sign: Literal[-1, 1] | None = Field(default=None, description="Sign of the quadrature, fixed by a deliberate detuning.")
+    quadrature_sign: Literal[-1, 1] | None = Field(
+        default=None, description="Sign of the quadrature, fixed by a deliberate detuning."
+    )
     drive_mode: Literal["constant-drive", "constant-amplitude"] = "constant-drive"
     reference_signal: Annotated[Quantity, OfKind("amplitude")] | None = Field(
         default=None, description="Signal at the reference point where Q was measured independently."
@@ -181,18 +209,26 @@ class Sweep(Record):
     files: tuple[FilePath, ...] = Field(min_length=1)
     layout: Name | None = Field(default=None, description="Layout of the sheet that these files follow.")
     dialect: Dialect | None = Field(default=None, description="Dialect of just this sweep.")
-    channels: dict[ChannelName, Channel] = Field(default_factory=dict, description="Channels of just this sweep, over those of the layout.")
+    channels: dict[ChannelName, Channel] = Field(
+        default_factory=dict, description="Channels of just this sweep, over those of the layout."
+    )
     cell: Reference | None = Field(default=None, description="Cell, when it is not the sheet's only one.")
     after_dose: Name | None = Field(default=None, description="Last dose admitted before this sweep.")
     empty_cell: bool = Field(default=False, description="True: no helium had been admitted.")
-    doses: tuple[Name, ...] = Field(default=(), description="Doses admitted during a dose run or isotherm, in order.")
+    doses: tuple[Name, ...] = Field(
+        default=(), description="Doses admitted during a dose run or isotherm, in order."
+    )
     thermometer: ChannelName | None = Field(default=None, description="Channel whose temperature counts.")
     gas: Literal["helium", "adsorptive"] = Field(
-        default="helium", description="`adsorptive`: an isotherm with another gas (N2, Ar) that is no part of the helium bookkeeping."
+        default="helium",
+        description="`adsorptive`: an isotherm with another gas (N2, Ar) that is no part of the helium bookkeeping.",
     )
-    sample: Reference | None = Field(default=None, description="Gas of an isotherm, when not the helium of the run.")
+    sample: Reference | None = Field(
+        default=None, description="Gas of an isotherm, when not the helium of the run."
+    )
     bath_temperature: Annotated[Quantity, OfKind("temperature")] | None = Field(
-        default=None, description="Temperature of a run at one temperature, with scale, when no channel holds it."
+        default=None,
+        description="Temperature of a run at one temperature, with scale, when no channel holds it.",
     )
     direction: Literal["up", "down", "both", "hold", "none"] = "none"
     rate: Annotated[Quantity, OfKind("temperature_rate")] | None = None
@@ -209,5 +245,7 @@ class Sweep(Record):
         if self.layout is None and not self.channels:
             raise ValueError("name a layout of the sheet, or list the channels of this sweep")
         if self.empty_cell and self.after_dose is not None:
-            raise ValueError("empty_cell = true and after_dose contradict each other; keep the one that is true")
+            raise ValueError(
+                "empty_cell = true and after_dose contradict each other; keep the one that is true"
+            )
         return self

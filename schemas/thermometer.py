@@ -125,7 +125,9 @@ class Calibration(NamedRecord):
     points: tuple[tuple[float, float], ...] = Field(
         default=(), description="Pairs [reading in reading_unit, temperature in K on the scale]."
     )
-    temperature_low: _Temperature = Field(description="Lower end of the calibrated range; nothing is extrapolated.")
+    temperature_low: _Temperature = Field(
+        description="Lower end of the calibrated range; nothing is extrapolated."
+    )
     temperature_high: _Temperature
     uncertainty: Annotated[Quantity, OfKind("temperature_difference")] | None = Field(
         default=None, description="Standard uncertainty of the calibration, common to all its readings."
@@ -141,7 +143,9 @@ class Calibration(NamedRecord):
         if any(temperature <= 0 for _, temperature in self.points):
             raise ValueError("points: every temperature must be above 0 K")
         if (self.uncertainty is None) == (self.relative_uncertainty is None):
-            raise ValueError("give the standard uncertainty of the calibration once: `uncertainty` or `relative_uncertainty`")
+            raise ValueError(
+                "give the standard uncertainty of the calibration once: `uncertainty` or `relative_uncertainty`"
+            )
         if not self.temperature_low.si < self.temperature_high.si:
             raise ValueError("temperature_low must be below temperature_high")
         return self

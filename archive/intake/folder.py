@@ -124,9 +124,9 @@ def _take_records(reading: Reading, archived: Archived) -> None:
         reference = wanted.pop()
         if reading.record(reference) is not None:
             continue
-        record = archived(reference)
-        if record is not None:
-            reading.records[record.address] = record
+        held = archived(reference)
+        if held is not None:
+            reading.records[held.address] = held
             wanted |= _references(reading)
 
 
@@ -252,7 +252,7 @@ def _factors(
                 what=str(error),
                 file=SHEET_NAME,
                 line=reading.line(*path, "unit" if channel.quantity in KINDS else "quantity"),
-                field=("sweep[%d].channels.%s" % (number + 1, name))
+                field=f"sweep[{number + 1}].channels.{name}"
                 if in_sweep
                 else f"layout.{sweep.layout}.channels.{name}",
                 place=f"{sweep.name}#{name}" if in_sweep else None,

@@ -79,7 +79,7 @@ class _Selective:
         self._writer = writer
         self._plan = plan
 
-    def raw(self, name: str, blocks: Any, *, media_type: str = "application/octet-stream") -> str:  # noqa: ANN401 - as Writer
+    def raw(self, name: str, blocks: Any, *, media_type: str = "application/octet-stream") -> str:
         if self._plan.files is None or name in self._plan.files:
             return self._writer.raw(name, blocks, media_type=media_type)
         digest = hashlib.sha256()
@@ -92,7 +92,7 @@ class _Selective:
             return self._writer.table(group, columns, index=index)
         return _Nowhere()
 
-    def array(self, path: str, data: Any, attributes: Mapping[str, Any]) -> None:  # noqa: ANN401 - as Writer
+    def array(self, path: str, data: Any, attributes: Mapping[str, Any]) -> None:
         self._writer.array(path, data, attributes)
 
     def document(self, text: str) -> None:
@@ -273,21 +273,21 @@ def records_differ(reading: Reading, archived: Archived) -> list[Finding]:
         if held is None:
             continue
         mine, theirs = record.model_dump(mode="json"), held.model_dump(mode="json")
-        for name in sorted({*mine, *theirs}):
-            if mine.get(name) != theirs.get(name):
-                findings.append(
-                    Finding(
-                        code="record-differs",
-                        severity="error",
-                        what=f"{record.address} is in the archive with another {name}",
-                        file=SHEET_NAME,
-                        field=f"{record.address}.{name}",
-                        place=record.address,
-                        found=_value(mine.get(name)),
-                        expected=_value(theirs.get(name)),
-                        remedy=f"correct the sheet, or make it revision {record.revision + 1} and say what changed",
-                    )
-                )
+        findings.extend(
+            Finding(
+                code="record-differs",
+                severity="error",
+                what=f"{record.address} is in the archive with another {name}",
+                file=SHEET_NAME,
+                field=f"{record.address}.{name}",
+                place=record.address,
+                found=_value(mine.get(name)),
+                expected=_value(theirs.get(name)),
+                remedy=f"correct the sheet, or make it revision {record.revision + 1} and say what changed",
+            )
+            for name in sorted({*mine, *theirs})
+            if mine.get(name) != theirs.get(name)
+        )
     return findings
 
 

@@ -233,7 +233,7 @@ def _finding(error: Mapping[str, Any], tables: Mapping[str, Any], *, file: str, 
             "this time has no offset from UTC",
             "write it with its offset, e.g. 2026-03-02T09:10:00+02:00",
         )
-    elif kind == "literal_error" or kind == "union_tag_invalid":
+    elif kind in {"literal_error", "union_tag_invalid"}:
         what = "this word is not one of those that can stand here"
         expected = str(context.get("expected") or context.get("expected_tags"))
     elif kind == "union_tag_not_found":

@@ -7,7 +7,7 @@ lock; reading needs none, since sealed files never change.
 from __future__ import annotations
 
 import os
-from collections.abc import Callable, Iterator, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from contextlib import contextmanager
 from datetime import UTC, datetime
 from pathlib import Path
@@ -27,8 +27,8 @@ from archive.intake.settings import SETTINGS_NAME, Settings, read_settings, sett
 from archive.intake.thresholds import Thresholds
 from archive.lab import reducing, reporting, showing
 from archive.lab.outcomes import CheckReport, IngestOutcome, ReduceOutcome, ReplayReport
-from archive.reduction.software import software
 from archive.lab.source import LabSource
+from archive.reduction.software import software
 from archive.reduction.trace import TraceNode, trace
 from archive.store.durable import archive_lock, sweep_staging, write_whole
 from archive.store.fixity import fixity
@@ -354,7 +354,7 @@ class Archive:
             )
 
     def _seal_reduction(
-        self, document: ReductionDocument, arrays: dict[str, tuple[NDArray[Any], dict[str, str]]]
+        self, document: ReductionDocument, arrays: Mapping[str, tuple[NDArray[Any], dict[str, str]]]
     ) -> None:
         with self._store.writer(document.address) as writer:
             for path, (values, attributes) in arrays.items():

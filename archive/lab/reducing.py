@@ -97,8 +97,8 @@ def reduce(
         written = next(each for each in source.accession(row.accession).sheet.sweep if each.name == row.name)
         cell = None if row.cell is None else source.find_record(row.cell)
         substrate = None if row.substrate is None else source.find_record(row.substrate)
-        for each in plans_for(written, cell, substrate, allowed):
-            work.append((plan_depth(each, known_plans), position, row.address, each))
+        fitting = plans_for(written, cell, substrate, allowed)
+        work += [(plan_depth(each, known_plans), position, row.address, each) for each in fitting]
     if not work:
         raise BadRequest(
             f"no plan {'here ' if plan is None else ''}is for {'this sweep' if name else 'any sweep of ' + cooldown}",

@@ -48,7 +48,7 @@ def run_sheet(source: LabSource, archive_name: str, cooldown: str, *, paper: str
     if paper not in ("a4", "us-letter"):
         raise BadRequest("a run sheet is made for a4 or us-letter", found=paper)
     seen = view(source, archive_name, cooldown)
-    pdf = run_sheet_pdf(seen, paper=cast(Literal["a4", "us-letter"], paper))
+    pdf = run_sheet_pdf(seen, paper=cast("Literal['a4', 'us-letter']", paper))
     return {
         f"run-sheet-{cooldown}.html": run_sheet_html(seen).encode(),
         f"run-sheet-{cooldown}.pdf": pdf,
