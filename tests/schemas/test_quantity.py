@@ -68,7 +68,7 @@ READ = [
 @pytest.mark.parametrize(
     ("text", "kind", "value", "uncertainty", "unit", "si"), READ, ids=[row[0] for row in READ]
 )
-def test_a_text_is_read(  # noqa: PLR0917 - one argument a column
+def test_a_text_is_read(
     text: str, kind: str, value: float, uncertainty: float | None, unit: str, si: float
 ) -> None:
     found = Quantity.parse(text, kind)
