@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import math
 import re
-import shutil
 import subprocess
 from decimal import Decimal
 from pathlib import Path
@@ -18,6 +17,7 @@ from schemas.quantity import Quantity
 from schemas.uncertain_text import RoundedText, html_text, in_preferred_unit, latex_text, plain_text, rounded
 from schemas.unit_names import NAMES
 from schemas.units import parse_unit
+from tests.outside import program
 
 # Expected by hand from GUM 7.2.6: two digits of u, value to the same place, ties to even.
 ROUNDED = [
@@ -198,8 +198,7 @@ def test_the_typographic_form_needs_no_escaping() -> None:
 
 @pytest.mark.latex
 def test_every_unit_compiles_without_siunitx(tmp_path: Path) -> None:
-    if shutil.which("pdflatex") is None:
-        pytest.skip("no pdflatex here")
+    pdflatex = program("pdflatex")
     lines = [
         r"\documentclass{article}",
         r"\newcommand{\val}[4]{\ensuremath{#2\,\mathrm{#4}}}",
@@ -212,7 +211,7 @@ def test_every_unit_compiles_without_siunitx(tmp_path: Path) -> None:
     ]
     (tmp_path / "units.tex").write_text("\n".join([*lines, r"\end{document}", ""]), encoding="utf-8")
     done = subprocess.run(
-        ["pdflatex", "-interaction=nonstopmode", "-halt-on-error", "-no-shell-escape", "units.tex"],
+        [pdflatex, "-interaction=nonstopmode", "-halt-on-error", "-no-shell-escape", "units.tex"],
         cwd=tmp_path,
         capture_output=True,
         text=True,

@@ -17,8 +17,9 @@ from contextlib import contextmanager
 from pathlib import Path
 
 import psycopg
-import pytest
 from sqlalchemy.engine import URL, make_url
+
+from tests.outside import missing
 
 __all__ = ["own_schema", "server"]
 
@@ -47,12 +48,6 @@ def _language_order(programs: Path) -> list[str]:
     return ["--locale-provider=icu", "--icu-locale=en-US"] if "--icu-locale" in said else []
 
 
-def _cannot(reason: str) -> None:
-    if os.environ.get("STILLROOM_REQUIRE_ALL") == "1":
-        pytest.fail(reason)
-    pytest.skip(reason)
-
-
 @contextmanager
 def server() -> Iterator[URL]:
     """Address of a running server."""
@@ -62,7 +57,7 @@ def server() -> Iterator[URL]:
         return
     programs = _programs()
     if programs is None:
-        _cannot(
+        missing(
             "PostgreSQL's server programs are not installed, and STILLROOM_TEST_POSTGRESQL names no server"
         )
         return
@@ -104,7 +99,7 @@ def _run(command: list[str]) -> None:
         command, stdout=subprocess.DEVNULL, stderr=subprocess.PIPE, check=False, timeout=60, cwd="/"
     )
     if finished.returncode:
-        _cannot(f"{Path(command[-1]).name}: {finished.stderr.decode(errors='replace')[-500:]}")
+        missing(f"{Path(command[-1]).name}: {finished.stderr.decode(errors='replace')[-500:]}")
 
 
 @contextmanager
