@@ -14,7 +14,7 @@ __all__ = ["Curve", "curve_of", "drop_width", "lag"]
 
 Floats = NDArray[np.float64]
 
-_BINS = 60
+_BINS = 150
 _LEAST = 12
 
 

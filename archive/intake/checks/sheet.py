@@ -209,7 +209,7 @@ def origins_not_stated(reading: Reading, thresholds: Thresholds) -> Iterator[Fin
             reading,
             "origin-not-stated",
             "note",
-            f"{count} values do not say how they are known",
+            f"{count} value(s) do not say how they are known",
             remedy='write them as { quantity = "4.31(6) m^2", known = "measured", source = "..." } where it matters',
         )
 
@@ -243,7 +243,7 @@ def files_not_named(reading: Reading, thresholds: Thresholds) -> Iterator[Findin
             reading,
             "files-not-named",
             "note",
-            f"{len(rest)} files of the folder are not named by the sheet and will not be archived: {listed(rest)}",
+            f"{len(rest)} file(s) of the folder are not named by the sheet and will not be archived: {listed(rest)}",
             "other_files",
             remedy="name them in a sweep or in other_files, or leave them",
         )

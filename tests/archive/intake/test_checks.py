@@ -956,3 +956,33 @@ def test_empty_columns_raise_nothing(value: float) -> None:
         for finding in run_checks(make_reading(None, {"empty": given, "film": given}), Thresholds())
     }
     assert "check-failed" not in codes
+
+
+@pytest.mark.parametrize("rows", [1, 2, 3, 4, 6, 13])
+@pytest.mark.parametrize(
+    "kind",
+    [
+        "temperature-sweep",
+        "dose-run",
+        "drive-sweep",
+        "frequency-sweep",
+        "ringdown",
+        "isotherm",
+        "heat-capacity",
+        "log",
+    ],
+)
+def test_short_records_of_every_kind_raise_nothing(rows: int, kind: str) -> None:
+    given = columns(np.linspace(0.1, 0.2, rows), day=1.5)
+    change = both(
+        put("record.cell.0.rod_material", "BeCu"),
+        extra("short", kind, after_dose="d01", thermometer="thermometer"),
+    )
+    findings = run_checks(sheet(change, {"short": given}), Thresholds(), earlier=history())
+    assert "check-failed" not in {finding.code for finding in findings}
+
+
+def test_a_sweep_left_out_whole_raises_nothing() -> None:
+    reading = sheet(put("sweep.1.left_out", [{"rows": [1, 290], "reason": "no good"}]))
+    codes = {finding.code for finding in run_checks(reading, Thresholds())}
+    assert codes == {"origin-not-stated", "effects-not-stated"}
