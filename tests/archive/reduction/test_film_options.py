@@ -1,0 +1,313 @@
+"""Ways through the steps that the shipped plans take only with other sheets: gauges, alignments, missing inputs."""
+
+from __future__ import annotations
+
+import json
+from typing import Any
+
+import numpy as np
+import pytest
+
+from archive.errors import BadRequest
+from archive.reduction.background_steps import AlignmentParameters, period_drop
+from archive.reduction.facts import GasBook, sweep_facts
+from archive.reduction.film_steps import (
+    CrossingParameters,
+    DensityParameters,
+    superfluid_density,
+    universal_crossing,
+)
+from archive.reduction.gas_steps import (
+    ThicknessParameters,
+    VapourParameters,
+    coverage_from_amount,
+    thickness_from_coverage,
+    vapour_in_dead_volume,
+)
+from archive.reduction.loading_steps import LoadingParameters, geometric_sensitivity, loading_fit
+from archive.reduction.planning import load_plan
+from archive.reduction.runner import run
+from archive.reduction.sheet_values import sheet_value
+from archive.reduction.step import NoParameters
+from schemas.lineage import Value
+
+
+def test_a_gauge_is_zeroed_and_its_gain_is_one_source(tools: Any) -> None:
+    content, data = tools.sheet_content(), tools.sweep_data()
+    rows = data["f1"]["period"].size
+    content["sweep"][2]["channels"] = {
+        "pressure": {
+            "column": "p",
+            "quantity": "pressure",
+            "unit": "Pa",
+            "convention": "absolute",
+            "gauge": "G1",
+            "uncertainty": "0.1 Pa",
+        }
+    }
+    data["f1"]["pressure"] = np.full(rows, 3.0)
+    source = tools.build(content, data)
+    source.reduce("empty-cell", "2026-03/e1")
+    source.reduce("dose-run", "2026-03/r1")
+    outcome = source.reduce("film-transition", "2026-03/f1")
+    vapour = source.output("2026-03/f1@film-transition.1", "vapour")
+    temperature = source.output("2026-03/f1@film-transition.1", "temperature")
+    # 3 Pa read, 2 Pa zero: 1 Pa in 0.5 cm^3 at the cell's temperature, never below 0.5 K.
+    expected = 0.5e-6 / (8.314462618 * np.maximum(temperature.value, 0.5))
+    assert vapour.value == pytest.approx(expected, rel=2e-3)
+    zero = vapour.shared["zero of gauge G1 in 2026-03"]
+    assert np.abs(zero) == pytest.approx(0.1 * expected, rel=0.01)
+    # The same zero stands in the doses, so the amount of the film knows of both.
+    assert "gain of gauge G1 in 2026-03" in source.output("2026-03/f1@film-transition.1", "coverage").shared
+    assert [step.name for step in outcome.document.steps].count("apply-correction") == 2
+
+
+def test_a_correction_that_cannot_be_read_is_named(tools: Any) -> None:
+    content = tools.sheet_content()
+    content["sweep"][0]["corrections"] = [
+        {"channel": "period", "correct": "zero", "value": "a little", "known": "assumed", "source": "x"}
+    ]
+    with pytest.raises(BadRequest, match="zero correction of channel period"):
+        tools.build(content).reduce("empty-cell", "2026-03/e1")
+
+
+def test_a_range_that_cannot_be_read_is_named(tools: Any) -> None:
+    content = tools.sheet_content()
+    content["sweep"][0]["left_out"] = [{"channel": "period", "low": "3 K", "reason": "wrong kind"}]
+    with pytest.raises(BadRequest, match="range left out of channel period"):
+        tools.build(content).reduce("empty-cell", "2026-03/e1")
+
+
+@pytest.mark.parametrize(
+    ("take", "words"),
+    [
+        pytest.param('"channel:@pressure"', "no channel of kind pressure", id="a channel"),
+        pytest.param('"channel:missing"', "no channel missing", id="a channel by name"),
+        pytest.param('"sheet:cell.gap"', "no cell states gap (TO-1.r1)", id="a field of a record"),
+        pytest.param('"sheet:sweep.rate"', "the sheet states no sweep.rate", id="a field of the sweep"),
+    ],
+)
+def test_a_missing_input_says_what_and_where(laboratory: Any, tools: Any, take: str, words: str) -> None:
+    text = f"""
+        name = "mine"
+        revision = 1
+        title = "mine"
+        [applies]
+        sweep_kinds = ["temperature-sweep"]
+        [[step]]
+        use = "relative-pressure"
+        take = {{ pressure = {take}, saturated_pressure = "channel:@period" }}
+    """
+    with pytest.raises(BadRequest) as caught:
+        run(load_plan(text), "2026-03/e1", laboratory, number=1, clock=tools.Clock())
+    assert words in str(caught.value)
+    assert caught.value.remedy
+
+
+@pytest.mark.parametrize(
+    ("step", "take", "words"),
+    [
+        pytest.param(
+            "relative-pressure",
+            'pressure = "channel:@period", saturated_pressure = "channel:@period"',
+            "is a period; expected a pressure",
+            id="another kind",
+        ),
+        pytest.param(
+            "coverage-from-amount",
+            'amount = "sheet:substrate.area"',
+            "is a area; expected a amount",
+            id="a number of another kind",
+        ),
+        pytest.param(
+            "relative-pressure",
+            'pressure = "sheet:cell", saturated_pressure = "channel:@period"',
+            "is no number",
+            id="a record for a number",
+        ),
+        pytest.param(
+            "relative-pressure",
+            'nothing = "channel:@period"',
+            "has no input 'nothing'",
+            id="an input that is none",
+        ),
+        pytest.param(
+            "relative-pressure", 'pressure = "file:@period"', "file:@period", id="a source that is none"
+        ),
+    ],
+)
+def test_an_input_of_a_wrong_kind_is_refused(
+    laboratory: Any, tools: Any, step: str, take: str, words: str
+) -> None:
+    text = f'name = "mine"\nrevision = 1\ntitle = "mine"\n[applies]\nsweep_kinds = ["temperature-sweep"]\n[[step]]\nuse = "{step}"\ntake = {{ {take} }}'
+    with pytest.raises(BadRequest) as caught:
+        run(load_plan(text), "2026-03/e1", laboratory, number=1, clock=tools.Clock())
+    assert words in str(caught.value)
+
+
+def test_amount_and_coverage_of_the_accession_are_values_of_the_sheet(tools: Any) -> None:
+    source = tools.build()
+    document = source.documents["2026-03"][0]
+    sweeps = list(document.sweeps)
+    sweeps[2] = sweeps[2].model_copy(update={"coverage": Value(value=30.0, uncertainty=0.6, unit="umol/m^2")})
+    source.documents["2026-03"] = [document.model_copy(update={"sweeps": tuple(sweeps)})]
+    facts = sweep_facts(source, "2026-03/f1")
+    coverage, sources, _ = sheet_value(facts, "coverage")
+    assert float(coverage.value) == pytest.approx(30e-6)  # type: ignore[union-attr]
+    assert float(coverage.uncertainty) == pytest.approx(0.6e-6)  # type: ignore[union-attr]
+    assert [entry.name for entry in sources] == ["2026-03/f1 coverage"]
+    assert sheet_value(facts, "amount")[0] is None
+
+
+def _drop(parameters: AlignmentParameters, peak: float | None = None) -> Any:
+    T = np.linspace(0.3, 0.9, 200)
+    drop = 1e-9 * np.sqrt(np.clip((0.6 - T) * 10, 0, 1))
+    return period_drop(
+        parameters, temperature=T, period=1e-3 + 5e-9 - drop, background=np.array([1e-3]), low=0.2, high=1.0, peak=peak,
+        u_period=np.full(200, 1e-12), u_temperature=None,
+    )  # fmt: skip
+
+
+def test_alignment_above_the_transition_finds_the_constant() -> None:
+    # The mass of the film raises the period by 5 ns; the drop is zero above 0.6 K.
+    for found in (_drop(AlignmentParameters()), _drop(AlignmentParameters(), peak=0.6)):
+        assert float(found.outputs["shift"]) == pytest.approx(5e-9, abs=1e-15)
+        assert found.array("period_drop")[0] == pytest.approx(1e-9, rel=1e-6)
+
+
+def test_alignment_at_the_coldest_rows_forces_zero_there() -> None:
+    found = _drop(AlignmentParameters(align="coldest"))
+    assert found.array("period_drop")[0] == pytest.approx(0.0, abs=1e-15)
+    assert found.findings[0].code == "negative-period-drop"
+
+
+def test_no_alignment_adds_nothing() -> None:
+    found = _drop(AlignmentParameters(align="none"))
+    assert float(found.outputs["shift"]) == 0.0
+    assert found.sources == ()
+
+
+def test_an_alignment_window_without_rows_is_refused_with_its_ends() -> None:
+    with pytest.raises(ValueError, match=r"found 0 rows between 0\.95 K and 1\.05 K"):
+        _drop(AlignmentParameters(window_low_kelvin=0.95, window_high_kelvin=1.05))
+
+
+def test_a_density_needs_area_and_drag_factor() -> None:
+    common: dict[str, Any] = {"period_drop": np.array([8e-10]), "slope_below": 1.12e-4, "sample": None}
+    with pytest.raises(ValueError, match="drag_factor"):
+        superfluid_density(DensityParameters(), slope_past=None, area=1.5, **common)
+    with pytest.raises(ValueError, match="area"):
+        superfluid_density(DensityParameters(drag_factor=0.0), slope_past=None, area=0.0, **common)
+    # Doubling the area with a fixed drop halves the density.
+    one, two = (
+        superfluid_density(DensityParameters(drag_factor=0.0), slope_past=None, area=area, **common).array(
+            "superfluid_density"
+        )[0]
+        for area in (1.5, 3.0)
+    )
+    assert one / two == pytest.approx(2.0, rel=1e-12)
+
+
+def test_a_record_that_never_meets_the_universal_line_gives_no_crossing() -> None:
+    T = np.linspace(0.1, 0.5, 50)
+    with pytest.raises(ValueError, match="stays above the universal line"):
+        universal_crossing(
+            CrossingParameters(),
+            temperature=T,
+            superfluid_density=np.full(50, 1.0),
+            u_superfluid_density=None,
+            u_temperature=None,
+        )
+
+
+def test_area_may_be_given_per_mass() -> None:
+    found = coverage_from_amount(
+        NoParameters(), amount=2e-6, vapour=None, area=None, specific_area=100.0, mass=0.02
+    )
+    assert float(found.outputs["coverage"]) == pytest.approx(1e-6)
+    with pytest.raises(ValueError, match="specific area and mass"):
+        coverage_from_amount(
+            NoParameters(), amount=2e-6, vapour=None, area=None, specific_area=None, mass=0.02
+        )
+
+
+def test_thickness_is_bulk_liquid_beyond_the_inner_layers() -> None:
+    # One liquid layer by the two-thirds power, 12.9732 umol/m^2, is 0.357768 nm thick.
+    found = thickness_from_coverage(ThicknessParameters(), coverage=12.9732e-6)
+    assert float(found.outputs["thickness"]) == pytest.approx(0.357768e-9, rel=1e-5)
+    inner = thickness_from_coverage(
+        ThicknessParameters(inner_coverage_umol_m2=20.0, inner_thickness_nm=0.5),
+        coverage=np.array([10e-6, 32.9732e-6]),
+    )
+    assert np.isnan(inner.array("thickness")[0])
+    assert inner.array("thickness")[1] == pytest.approx(0.857768e-9, rel=1e-5)
+
+
+def test_without_a_dead_volume_nothing_is_vapour_and_a_finding_says_so() -> None:
+    found = vapour_in_dead_volume(
+        VapourParameters(),
+        gas=GasBook("c", ()),
+        temperature=np.array([1.0, np.nan]),
+        pressure=None,
+        sample=None,
+    )
+    assert found.array("vapour")[0] == 0.0
+    assert found.findings[0].code == "dead-volume-not-recorded"
+
+
+def test_a_given_break_gives_the_same_lines_as_the_search() -> None:
+    n = np.arange(1.0, 17.0) * 1e-6
+    P = (
+        1e-3
+        + 1e-4 * np.minimum(n, 8.5e-6)
+        + 1e-5 * np.maximum(n - 8.5e-6, 0)
+        + 1e-13 * np.cos(np.arange(16) * 2.0)
+    )
+    searched, given = (
+        loading_fit(LoadingParameters(points_below=k), amount=n, period=P, u_period=np.full(16, 1e-13))
+        for k in (None, 8)
+    )
+    assert searched.covariance is not None
+    assert given.covariance is not None
+    for name in ("slope_below", "slope_past", "chi", "onset_amount", "empty_period"):
+        assert float(searched.outputs[name]) == pytest.approx(float(given.outputs[name]), rel=1e-9), name
+    assert given.covariance.matrix == pytest.approx(searched.covariance.matrix, rel=1e-6, abs=1e-32)
+
+
+def test_geometry_by_torsion_constant_and_its_warning() -> None:
+    # f = 1 kHz, I = 5e-7 kg m^2, R_g^2 = 2.8e-5 m^2: dP/dm = 0.028 s/kg, kappa = 19.73921 N m/rad.
+    found = geometric_sensitivity(
+        NoParameters(),
+        slope=0.028 * 4.002602e-3,
+        period=1e-3,
+        mean_square_radius=2.8e-5,
+        inertia=None,
+        torsion_constant=19.73921,
+    )
+    assert float(found.outputs["ratio"]) == pytest.approx(1.0, rel=1e-5)
+    assert found.findings == ()
+    far = geometric_sensitivity(
+        NoParameters(),
+        slope=0.020 * 4.002602e-3,
+        period=1e-3,
+        mean_square_radius=2.8e-5,
+        inertia=5e-7,
+        torsion_constant=None,
+    )
+    assert far.findings[0].code == "mass-loading-geometry"
+    with pytest.raises(ValueError, match="moment of inertia or torsion constant"):
+        geometric_sensitivity(
+            NoParameters(),
+            slope=1e-4,
+            period=1e-3,
+            mean_square_radius=2.8e-5,
+            inertia=None,
+            torsion_constant=None,
+        )
+
+
+def test_documents_survive_json(reduced: Any) -> None:
+    for outcome in reduced.done:
+        text = outcome.document.model_dump_json()
+        assert type(outcome.document).model_validate_json(text) == outcome.document
+        assert json.loads(text)["format"] == "stillroom-reduction/1"
