@@ -18,6 +18,7 @@ from archive.reduction.propagation import Propagated, fit_contributions, propaga
 from archive.reduction.step import Covariance, Given, Outcome, Step
 from archive.reduction.step_record import step_record
 from schemas.base import Record
+from schemas.kinds import kind_of
 from schemas.lineage import SourceEntry, StepRecord
 
 __all__ = ["Performed", "perform", "step_parameters"]
@@ -214,8 +215,8 @@ def _check_inputs(step: Step, given: Mapping[str, Given], place: str) -> None:
             )
         if port.quantity != "any" and estimate.quantity not in port.quantity.split("|"):
             raise BadRequest(
-                f"{place}: input {name} ({each.address}) is a {estimate.quantity}",
-                expected=f"a {port.quantity.replace('|', ' or ')}",
+                f"{place}: input {name} ({each.address}) is {kind_of(estimate.quantity).words}",
+                expected=" or ".join(kind_of(each).words for each in port.quantity.split("|")),
                 remedy="name another channel or output in the plan",
             )
         if (port.form == "scalar" and not estimate.scalar) or (port.form == "array" and estimate.scalar):

@@ -116,7 +116,7 @@ def test_a_missing_input_says_what_and_where(laboratory: Any, tools: Any, take: 
         pytest.param(
             "coverage-from-amount",
             'amount = "sheet:substrate.area"',
-            "is a area; expected a amount",
+            "is an area; expected an amount",
             id="a number of another kind",
         ),
         pytest.param(
