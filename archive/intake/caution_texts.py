@@ -1,13 +1,15 @@
-"""Sentences of the cautions; the text fixed for every output that carries one.
+"""Sentences and numbers of the cautions; the text fixed for every output that carries one.
 
 Rules: a fact, what follows, who decides. Words of approval do not occur; rules of a jurisdiction are not paraphrased.
+Numbers have two digits and are rounded to the unfavourable side.
 """
 
 from __future__ import annotations
 
+import math
 from typing import Final
 
-__all__ = ["BIAS", "EVENTS", "FIXED_TEXT"]
+__all__ = ["BIAS", "EVENTS", "FIXED_TEXT", "amount_text", "pressure_text", "unfavourable"]
 
 FIXED_TEXT: Final = (
     "Estimate from recorded values, ideal mixing and stated assumptions. It does not replace the rules of this site, the "
@@ -85,3 +87,32 @@ BIAS: Final = (
     "and 4.2 K. Switch the bias off while gas is admitted or pumped.",
 )
 """Stored energy; discharge (R. Massarczyk et al., arXiv:1612.07170, for the scaling with temperature)."""
+
+
+def unfavourable(value: float, digits: int = 2) -> str:
+    """Return a number rounded up to a few digits.
+
+    Examples
+    --------
+    >>> unfavourable(3.722), unfavourable(0.0073), unfavourable(114.2)
+    ('3.8', '0.0073', '120')
+    """
+    if not value > 0:
+        return "0"
+    place = 10.0 ** (math.floor(math.log10(value)) - digits + 1)
+    # A value that has just so many digits stays as it is.
+    steps = math.ceil(round(value / place, 9))
+    return f"{float(f'{steps * place:.{digits}g}'):.12g}"
+
+
+def pressure_text(pressure: float) -> str:
+    """Return a pressure in Pa, kPa or MPa, rounded up."""
+    for least, factor, unit in ((1e5, 1e-6, "MPa"), (1e3, 1e-3, "kPa")):
+        if pressure >= least:
+            return f"{unfavourable(pressure * factor)} {unit}"
+    return f"{unfavourable(pressure)} Pa"
+
+
+def amount_text(amount: float) -> str:
+    """Return an amount in umol or mmol, rounded up."""
+    return f"{unfavourable(1e3 * amount)} mmol" if amount >= 1e-3 else f"{unfavourable(1e6 * amount)} umol"

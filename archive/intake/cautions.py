@@ -14,7 +14,7 @@ from typing import Literal
 
 from pydantic import Field
 
-from archive.intake.caution_texts import BIAS, EVENTS, FIXED_TEXT
+from archive.intake.caution_texts import BIAS, EVENTS, FIXED_TEXT, amount_text, pressure_text
 from archive.intake.reading import Reading
 from archive.physics.constants import STANDARD_ATMOSPHERE
 from archive.physics.trapped_gas import trapped_pressure
@@ -23,7 +23,7 @@ from schemas.cell import Cell, Cryostat
 from schemas.lineage import Value
 from schemas.quantity import Quantity, unit_factor
 
-__all__ = ["FIXED_TEXT", "Caution", "cautions", "unfavourable"]
+__all__ = ["FIXED_TEXT", "Caution", "cautions"]
 
 _TRAPPED_FORMULA = "p = n R T/V (1 + B c + C c^2), c = n/V; ideal: p = n R T/V; gauge: above 101.325 kPa"
 _COVERAGE_FACTOR = 2.0  # expanded uncertainty, JCGM 100:2008, 6.2 and annex G
@@ -74,35 +74,6 @@ def cautions(reading: Reading) -> list[Caution]:
         *_of_events(reading),
         *_of_bias(reading),
     ]
-
-
-def unfavourable(value: float, digits: int = 2) -> str:
-    """Return a number rounded up to a few digits.
-
-    Examples
-    --------
-    >>> unfavourable(3.722), unfavourable(0.0073), unfavourable(114.2)
-    ('3.8', '0.0073', '120')
-    """
-    if not value > 0:
-        return "0"
-    place = 10.0 ** (math.floor(math.log10(value)) - digits + 1)
-    # A value that has just so many digits stays as it is.
-    steps = math.ceil(round(value / place, 9))
-    return f"{float(f'{steps * place:.{digits}g}'):.12g}"
-
-
-def _pressure_text(pressure: float) -> str:
-    """Return a pressure in Pa, kPa or MPa, rounded up."""
-    for least, factor, unit in ((1e5, 1e-6, "MPa"), (1e3, 1e-3, "kPa")):
-        if pressure >= least:
-            return f"{unfavourable(pressure * factor)} {unit}"
-    return f"{unfavourable(pressure)} Pa"
-
-
-def _amount_text(amount: float) -> str:
-    """Return an amount in umol or mmol, rounded up."""
-    return f"{unfavourable(1e3 * amount)} mmol" if amount >= 1e-3 else f"{unfavourable(1e6 * amount)} umol"
 
 
 def _cells(reading: Reading) -> list[Cell]:
@@ -233,10 +204,10 @@ def _estimate(reading: Reading, cell: Cell, held: _Held, volume: Quantity, warme
         lead = "Not assessed: state of the valve. "
         state = "not assessed" if state == "caution" else state
     text = (
-        f"{lead}{_amount_text(n)} of helium is recorded in {cell.name} ({held.assumption}), {valve}. "
+        f"{lead}{amount_text(n)} of helium is recorded in {cell.name} ({held.assumption}), {valve}. "
         f"Assumed: {assumption}, and nothing vents. If it warms to {warmest.si:.4g} K, the estimate is "
-        f"{_pressure_text(estimate.largest)} absolute"
-        + (f" ({_pressure_text(gauge)} gauge)" if gauge > 0 else "")
+        f"{pressure_text(estimate.largest)} absolute"
+        + (f" ({pressure_text(gauge)} gauge)" if gauge > 0 else "")
         + f"; {estimate.note}. {rating[0].upper()}{rating[1:]}. Ask {_contact(reading)} before warming."
     )
     numbers = {

@@ -1,4 +1,4 @@
-"""Drive and amplitude of an oscillator: linearity, dependence on amplitude, rim velocity, agreement of Q, scatter."""
+"""Drive and amplitude of an oscillator: linearity, dependence on amplitude, rim velocity, scatter."""
 
 from __future__ import annotations
 
@@ -15,27 +15,26 @@ from archive.intake.checks.rows import (
     sigma,
     stated_uncertainty,
     tables,
-    temperature,
 )
 from archive.intake.checks.telling import number, on_sweep
 from archive.intake.reading import Reading, SweepTable
 from archive.intake.thresholds import Thresholds
 from archive.physics.constants import HBAR, MASS_HELIUM4
-from archive.physics.ringdown import ringdown
 from schemas.finding import Finding
 
 __all__ = [
+    "PEAK",
     "amplitude_dependence",
     "diffusion_length_m",
     "drive_linearity",
     "period_scatter",
     "period_scatter_history",
-    "quality_agreement",
     "velocity_critical",
     "velocity_film",
 ]
 
-_PEAK = {"rms": math.sqrt(2.0), "peak": 1.0, "peak-to-peak": 0.5, None: 1.0}
+PEAK = {"rms": math.sqrt(2.0), "peak": 1.0, "peak-to-peak": 0.5, None: 1.0}
+"""Factor to the peak value of a sine."""
 
 
 def diffusion_length_m(frequency: float) -> float:
@@ -124,13 +123,13 @@ def _rim_velocity(reading: Reading, table: SweepTable) -> float | None:
     if not np.isfinite(values).any() or detection.reference_signal.si == 0:
         return None
     convention = channel.convention or detection.amplitude_convention
-    ratio = float(np.nanmax(np.abs(values))) * _PEAK[convention]
+    ratio = float(np.nanmax(np.abs(values))) * PEAK[convention]
     ratio /= (
         abs(detection.reference_signal.si)
-        * _PEAK[detection.reference_signal.convention or detection.amplitude_convention]
+        * PEAK[detection.reference_signal.convention or detection.amplitude_convention]
     )
     velocity = detection.reference_rim_velocity
-    return ratio * abs(velocity.si) * _PEAK[velocity.convention]
+    return ratio * abs(velocity.si) * PEAK[velocity.convention]
 
 
 def _film_sweeps(reading: Reading) -> Iterator[tuple[SweepTable, float, float]]:
@@ -175,95 +174,6 @@ def velocity_critical(reading: Reading, thresholds: Thresholds) -> Iterator[Find
                 expected=f"at most {number(100 * thresholds.film_velocity_m_per_s, 'cm/s')} (film_velocity_m_per_s)",
                 remedy="compare temperature sweeps at two drives, or waive it with the reason",
             )
-
-
-def quality_agreement(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]:
-    """Find ringdowns whose Q is not the one that the drive gives: the reference of the detection, or a sweep in the same state."""
-    for table in tables(reading, "ringdown"):
-        quality, expected = _ringdown_quality(reading, table), _driven_quality(reading, table)
-        if quality is None or expected is None:
-            continue
-        (q, u), (reference, u_reference, origin) = quality, expected
-        away = q / reference - 1
-        spread = math.hypot(u / q, u_reference / reference)
-        if abs(away) > max(thresholds.quality_agreement_fraction, 2 * spread):
-            yield on_sweep(
-                reading,
-                table,
-                "quality-agreement",
-                "warning",
-                f"Q of {table.name} differs by {100 * away:.3g} per cent from that of {origin}",
-                found=f"{q:.4g}",
-                expected=f"{reference:.4g} within {100 * thresholds.quality_agreement_fraction:g} per cent (quality_agreement_fraction)",
-                remedy="look whether amplitude or energy was fitted, whether the gain drifted, and at which temperature each was taken",
-            )
-
-
-def _driven_quality(reading: Reading, table: SweepTable) -> tuple[float, float, str] | None:
-    """Q by the drive in the state of a ringdown, its standard uncertainty, and where it is from."""
-    detection = reading.detection_of(table.sweep)
-    if detection is None or detection.reference_quality_factor is None:
-        return None
-    reference = detection.reference_quality_factor
-    u = (reference.si_uncertainty or 0.0) / reference.si
-    if table.sweep.empty_cell:
-        return reference.si, u * reference.si, "the detection's reference"
-    bath = temperature(reading, table)
-    if (
-        bath is None
-        or detection.reference_signal is None
-        or detection.reference_drive is None
-        or not np.isfinite(bath).any()
-    ):
-        return None
-    at = float(np.nanmedian(bath))
-    for other in tables(reading, "temperature-sweep"):
-        same = other.sweep.after_dose == table.sweep.after_dose and not other.sweep.empty_cell
-        if not same or reading.sheet.cell_of(other.sweep) != reading.sheet.cell_of(table.sweep):
-            continue
-        T, signal, drive = temperature(reading, other), other.values("amplitude"), other.values("drive")
-        if T is None or signal is None or drive is None or reading.detection_of(other.sweep) != detection:
-            continue
-        rows = counting(other) & np.isfinite(T) & np.isfinite(signal) & (np.abs(drive) > 0)
-        near = rows & (np.abs(T - at) < 0.05 * at)
-        if near.sum() < 3:
-            continue
-        name = other.of_kind("amplitude")
-        word = None if name is None else other.channels[name].convention
-        ratio = float(np.median(np.abs(signal[near]))) * _PEAK[word or detection.amplitude_convention]
-        ratio /= (
-            abs(detection.reference_signal.si)
-            * _PEAK[detection.reference_signal.convention or detection.amplitude_convention]
-        )
-        drive_name = other.of_kind("drive")
-        stated = None if drive_name is None else other.channels[drive_name].convention
-        force = float(np.median(np.abs(drive[near]))) * _PEAK[stated or detection.reference_drive.convention]
-        force /= abs(detection.reference_drive.si) * _PEAK[detection.reference_drive.convention]
-        # Amplitude is Q times torque; the frequency changes by parts in 10^5 and drops out.
-        q = reference.si * ratio / force**detection.torque_exponent
-        return q, u * q, f"{other.name} near {number(at, 'K', 3)}"
-    return None
-
-
-def _ringdown_quality(reading: Reading, table: SweepTable) -> tuple[float, float] | None:
-    time, signal, frequency = table.time, table.values("amplitude"), frequency_hz(reading, table)
-    names = [
-        name for name, channel in table.channels.items() if channel.quantity == "amplitude" and channel.use
-    ]
-    if time is None or signal is None or frequency is None or len(names) != 1:
-        return None
-    rows = counting(table) & np.isfinite(time) & np.isfinite(signal)
-    rows[np.flatnonzero(rows)[2000:]] = False  # enough for a Q to a per cent; a check stays quick
-    if rows.sum() < 8 or not (np.diff(time[rows]) > 0).all():
-        return None
-    found = ringdown(time[rows] - time[rows][0], signal[rows], frequency=frequency, convention="amplitude")
-    if (
-        not found.converged
-        or not found.quality_factor > 0
-        or not found.standard_uncertainty < 0.1 * found.quality_factor
-    ):
-        return None
-    return found.quality_factor, found.standard_uncertainty
 
 
 def period_scatter(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]:

@@ -17,7 +17,9 @@ from archive.intake.checks import (
     gas,
     isotherm,
     names,
+    quality,
     sheet,
+    spans,
     temperatures,
     times,
 )
@@ -46,20 +48,20 @@ CHECKS: tuple[Check, ...] = (
     Check(
         "time-outside-cooldown",
         "time stamps lie between begin and end of the cooldown",
-        sheet.data_outside_cooldown,
+        spans.data_outside_cooldown,
     ),
     Check(
         "dose-outside-cooldown",
         "doses lie between begin and end of the cooldown",
-        sheet.doses_outside_cooldown,
+        spans.doses_outside_cooldown,
     ),
     Check(
-        "dose-order", "doses stand in order of time, and sweeps follow the dose they name", sheet.dose_order
+        "dose-order", "doses stand in order of time, and sweeps follow the dose they name", spans.dose_order
     ),
     Check("effects-not-stated", "every known effect has a state", sheet.effects_not_stated),
     Check("origin-not-stated", "values say how they are known", sheet.origins_not_stated),
     Check("files-not-named", "the sheet names every file of the folder", sheet.files_not_named),
-    Check("event-during-sweep", "events that fall into a sweep are tied to it", sheet.events_during_sweeps),
+    Check("event-during-sweep", "events that fall into a sweep are tied to it", spans.events_during_sweeps),
     # columns
     Check("time-reversed", "time does not run backwards", times.time_reversed),
     Check("time-repeated", "no time stamp stands twice", times.time_repeated),
@@ -139,7 +141,7 @@ CHECKS: tuple[Check, ...] = (
     Check(
         "quality-agreement",
         "Q from ringdown and reference agree, quality_agreement_fraction",
-        drive.quality_agreement,
+        quality.quality_agreement,
     ),
     Check("period-scatter", "the period scatters as stated, allan_factor", drive.period_scatter),
     Check(

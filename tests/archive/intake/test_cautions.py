@@ -8,7 +8,8 @@ from typing import Any
 import pytest
 
 from archive.intake import caution_texts
-from archive.intake.cautions import FIXED_TEXT, Caution, cautions, unfavourable
+from archive.intake.caution_texts import unfavourable
+from archive.intake.cautions import FIXED_TEXT, Caution, cautions
 from archive.intake.reading import Reading
 from schemas.lineage import DoseEntry
 from tests.archive.intake.factories import ledger_entry, make_reading, sheet_tables
