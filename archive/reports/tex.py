@@ -32,7 +32,7 @@ class Tex(str):
 _SPECIAL = {
     "\\": r"\textbackslash{}", "{": r"\{", "}": r"\}", "$": r"\$", "&": r"\&", "#": r"\#", "%": r"\%", "_": r"\_",
     "^": r"\textasciicircum{}", "~": r"\textasciitilde{}", "<": r"\textless{}", ">": r"\textgreater{}",
-    "|": r"\textbar{}", '"': r"\textquotedbl{}", "'": "'", "`": r"\textasciigrave{}", "-": "-{}",
+    "|": r"\textbar{}", '"': r"\textquotedbl{}", "`": r"\textasciigrave{}",
     "[": "{[}", "]": "{]}",
 }  # fmt: skip
 _MATHS = {
@@ -51,7 +51,7 @@ _TEXT = {
     "€": "EUR", "£": r"\pounds{}", "Å": r"\AA{}", "å": r"\aa{}", "ß": r"\ss{}", "ø": r"\o{}", "Ø": r"\O{}", "æ": r"\ae{}",
     "Æ": r"\AE{}", "œ": r"\oe{}", "Œ": r"\OE{}", "ł": r"\l{}", "Ł": r"\L{}", "ı": r"\i{}", "«": r"\guillemotleft{}",
     "»": r"\guillemotright{}", "\u2212": r"\ensuremath{-}", "\u2010": "-{}", "\u2011": "-{}", "K": "K",
-    "\u00ad": "", "\u200b": "", "\u00a0": "~", "\u2009": r"\,", "\u202f": r"\,",
+    "\u00ad": "", "\u200b": "", "\u200c": "{}", "\u00a0": "~", "\u2009": r"\,", "\u202f": r"\,",
 }  # fmt: skip
 _SUPER = str.maketrans("⁰¹²³⁴⁵⁶⁷⁸⁹⁺⁻ⁿ", "0123456789+-n")
 _SUB = str.maketrans("₀₁₂₃₄₅₆₇₈₉₊₋", "0123456789+-")
@@ -85,6 +85,9 @@ def tex(value: object) -> Tex:
     if isinstance(value, Tex):
         return value
     text = " ".join(str(value).split()) if any(c in str(value) for c in "\n\r\t\v\f\x85\u2028\u2029") else str(value)
+    # Two hyphens, commas or quotes in a row would become another sign.
+    for pair in ("--", ",,", "''"):
+        text = text.replace(pair, "\u200c".join(pair))
     return Tex("".join(_one(character) for character in text))
 
 

@@ -1,0 +1,214 @@
+"""The later pages of a run sheet: plots, doses, findings, replaced results, gaps, events, records, effects, reductions, files."""
+
+from __future__ import annotations
+
+import json
+from collections.abc import Iterator
+from typing import Any
+
+from archive.reports.front_page import finding_line, grouped_digest
+from archive.reports.holdings import Holdings
+from archive.reports.moments import clock_lines, full_time
+from archive.reports.numbers import CODES, shown_output, shown_value, words
+from archive.reports.prose import prose
+from archive.reports.set_up import calibration_rows, cell_rows, record_rows
+from archive.reports.small_plots import sweep_plot
+from archive.reports.standing import Standing
+from schemas.cooldown import EFFECTS
+from schemas.lineage import InputEntry, OutputEntry, ReductionDocument, StepRecord
+from schemas.thermometer import Calibration
+
+__all__ = ["effect_states", "later_pages", "parameter_text"]
+
+
+def later_pages(held: Holdings, stands: Standing) -> dict[str, Any]:
+    """Return everything that follows the front page."""
+    zone = held.sheet.time_zone
+    return {
+        "plots": list(_plots(held)),
+        "doses": list(_doses(held)),
+        "findings": [finding_line(flag, each) for flag, each in stands.open]
+        + [finding_line(each.flag, each.finding) for each in stands.waived]
+        + [finding_line("", each) for each in stands.notes],
+        "replaced": list(replaced_results(held)),
+        "gaps": list(_gaps(held)),
+        "events": [
+            {"at": full_time(each.at, zone), "what": each.what.replace("-", " "), "text": each.text, "sweeps": ", ".join(each.sweeps) or "[nr]"}
+            for each in sorted(held.sheet.event, key=lambda each: each.at)
+        ],
+        "notes": [
+            {"at": full_time(each.at, zone), "role": each.role or "[nr]", "text": each.text} for each in held.sheet.note
+        ],
+        "sweep_notes": list(_sweep_notes(held)),
+        "differences": list(held.view.newest.differences),
+        "records": list(_records(held)),
+        "effects": list(effect_states(held)),
+        "reductions": [reduction_block(held, each) for each in held.view.current],
+        "files": [
+            {"name": each.name, "role": each.role, "size": str(each.size), "sha256": grouped_digest(each.sha256)} for each in held.view.newest.raw_files
+        ],
+        "sealed": [
+            {"key": key, "size": str(size), "sha256": grouped_digest(digest)} for key, (digest, size) in sorted(held.view.sealed.items())
+        ],
+        "codes": CODES,
+    }  # fmt: skip
+
+
+def _plots(held: Holdings) -> Iterator[dict[str, Any]]:
+    for taken in held.sweeps:
+        drawn = sweep_plot(held, taken)
+        yield {"name": taken.sheet.name, "kind": taken.sheet.kind.replace("-", " "), "svg": drawn}
+
+
+def _doses(held: Holdings) -> Iterator[dict[str, Any]]:
+    entries = held.view.newest.doses
+    told = {each.name: each for each in held.sheet.dose}
+    starts = clock_lines([each.at for each in entries], held.sheet.time_zone)
+    for each, start in zip(entries, starts, strict=True):
+        sheet = told.get(each.name)
+        note = "; ".join(part for part in (f"crossed out: {sheet.crossed_out}" if sheet and sheet.crossed_out else "", (sheet.annealing or "") if sheet else "", sheet.notes if sheet else "") if part)
+        yield {
+            "name": each.name, "at": start, "act": each.act, "counted": "yes" if each.counted else "no", "amount": shown_value(each.amount, "amount"),
+            "running": shown_value(each.running_amount, "amount"), "coverage": shown_value(each.running_coverage, "coverage", code="na" if held.sheet.cell is None else "nr"),
+            "note": note,
+        }  # fmt: skip
+
+
+def replaced_results(held: Holdings) -> Iterator[dict[str, Any]]:
+    """Yield each headline result that a later reduction replaced: was, is, both addresses, when."""
+    current = {(each.sweep, each.plan.name): each for each in held.view.current}
+    for old in sorted(held.view.reductions, key=lambda each: each.address):
+        new = current[(old.sweep, old.plan.name)]
+        if new.number == old.number:
+            continue
+        outputs = {each.name: each for each in new.outputs}
+        for was in held.headline(old):
+            yield {
+                "name": prose(was.name), "was": shown_output(was), "is": shown_output(outputs.get(was.name)), "old": old.address, "new": new.address,
+                "date": full_time(new.begin, held.sheet.time_zone), "reason": _why(old, new),
+            }  # fmt: skip
+
+
+def _why(old: ReductionDocument, new: ReductionDocument) -> str:
+    parts = []
+    if old.plan_digest != new.plan_digest:
+        parts.append(f"plan {old.plan.address} became {new.plan.address}" + (f": {new.plan.changed}" if new.plan.changed else ""))
+    before = {each.address: each.digest for each in old.inputs}
+    changed = [each.address for each in new.inputs if before.get(each.address, each.digest) != each.digest or each.address not in before]
+    parts += [f"changed inputs: {', '.join(changed)}"] if changed else []
+    if old.software != new.software and not parts:
+        parts.append("the software changed")
+    return "; ".join(parts) or "[nr]"
+
+
+def _gaps(held: Holdings) -> Iterator[dict[str, str]]:
+    for taken in held.sweeps:
+        if taken.entry is None:
+            yield {"where": taken.sheet.name, "what": "no stored values", "why": "[nr]"}
+            continue
+        channels = held.sheet.channels_of(taken.sheet)
+        for channel in taken.entry.channels:
+            if channel.missing:
+                yield {"where": f"{taken.sheet.name}#{channel.name}", "what": f"{channel.missing} of {taken.entry.rows} rows have no value", "why": "sentinel or empty cell in the file"}
+            told = channels.get(channel.name)
+            if told is not None and not told.use:
+                yield {"where": f"{taken.sheet.name}#{channel.name}", "what": "kept, not used", "why": told.why_not or "[nr]"}
+        for left in taken.sheet.left_out:
+            span = f"rows {left.rows[0]} to {left.rows[1]}" if left.rows else f"{left.channel} from {left.low or 'its lowest'} to {left.high or 'its highest'}"
+            yield {"where": taken.sheet.name, "what": f"left out: {span}", "why": left.reason}
+        for reduction in held.reductions_of(taken.sheet.name):
+            for output in reduction.outputs:
+                if output.verdict is not None and output.rows is None:
+                    yield {"where": f"{reduction.address}#{output.name}", "what": "no number", "why": output.verdict}
+
+
+def _sweep_notes(held: Holdings) -> Iterator[dict[str, str]]:
+    zone = held.sheet.time_zone
+    for taken in held.sweeps:
+        sweep = taken.sheet
+        said = [f"settled: {sweep.settled}"] if sweep.settled else []
+        said += [f"{full_time(each.at, zone)}: {each.what}" + (" (new segment)" if each.new_segment else "") for each in sweep.disturbances]
+        said += [f"{each.correct} correction of {each.channel} by {each.value} ({each.known}): {each.source}" for each in sweep.corrections]
+        said += [sweep.notes] if sweep.notes else []
+        if said:
+            yield {"name": sweep.name, "text": "; ".join(said)}
+
+
+def _records(held: Holdings) -> Iterator[dict[str, Any]]:
+    for address, record in sorted(held.records.items(), key=lambda item: (held.entries[item[0]].kind, item[0])):
+        kind = held.entries[address].kind
+        rows = calibration_rows(record) if isinstance(record, Calibration) else (cell_rows(record) if kind == "cell" else record_rows(record))  # type: ignore[arg-type]
+        absent = [name for name, value in rows if value.plain == "[nr]"]
+        yield {
+            "address": address, "kind": kind, "digest": held.entries[address].digest[:16],
+            "rows": [{"name": name, "value": value} for name, value in rows if value.plain != "[nr]"], "absent": ", ".join(absent),
+        }  # fmt: skip
+
+
+def effect_states(held: Holdings) -> Iterator[dict[str, Any]]:
+    """Yield every known effect with its one state: applied by a step, else what the sheet says, else not examined."""
+    treated: dict[str, tuple[str, str]] = {}
+    for reduction in held.view.current:
+        for step in reduction.steps:
+            for effect, sentence in step.effects.items():
+                treated.setdefault(effect, (sentence, f"{reduction.address}, step {step.number}"))
+    said = {each.effect: each for each in held.sheet.effect}
+    for effect in EFFECTS:
+        found = said.get(effect)  # type: ignore[call-overload]
+        if effect in treated:
+            sentence, where = treated[effect]
+            yield {"effect": effect, "state": "applied", "bound": "", "text": prose(sentence), "by": where}
+        elif found is not None:
+            yield {"effect": effect, "state": found.state.replace("-", " "), "bound": found.bound or "", "text": prose(found.reason), "by": "sheet"}
+        else:
+            yield {"effect": effect, "state": "not examined", "bound": "", "text": prose("was not examined"), "by": "nobody"}
+
+
+def reduction_block(held: Holdings, reduction: ReductionDocument) -> dict[str, Any]:
+    """Return one reduction: results with uncertainties, steps with parameters, inputs and digests."""
+    return {
+        "address": reduction.address,
+        "plan": reduction.plan.address,
+        "title": reduction.plan.title,
+        "plan_digest": reduction.plan_digest[:16],
+        "sha256": held.view.sealed.get(reduction.address, ("[nr]", 0))[0][:16],
+        "begin": full_time(reduction.begin, held.sheet.time_zone),
+        "software": f"stillroom {reduction.software.stillroom}",
+        "results": [_result(each) for each in reduction.outputs if each.rows is None],
+        "steps": [_step(each, reduction) for each in reduction.steps],
+    }
+
+
+def _result(output: OutputEntry) -> dict[str, Any]:
+    shares = _shares(output)
+    return {"name": prose(output.name), "what": output.description, "value": shown_output(output), "shares": shares, "step": output.step}
+
+
+def _shares(output: OutputEntry) -> str:
+    """Return the largest shares of a result's variance, in per cent."""
+    if not output.uncertainty or output.value is None:
+        return ""
+    parts = [("own points", output.point or 0.0), *output.shared.items()]
+    shares = [(name, (part / output.uncertainty) ** 2) for name, part in parts]
+    large = sorted((each for each in shares if each[1] >= 0.05), key=lambda each: -each[1])[:3]
+    return ", ".join(f"{name} {100 * share:.2g}\u00a0%" for name, share in large)
+
+
+def _step(step: StepRecord, reduction: ReductionDocument) -> dict[str, Any]:
+    digests = {each.name: each.digest[:16] for each in reduction.outputs}
+    return {
+        "number": step.number, "name": step.name, "version": step.version, "sentence": prose(step.sentence),
+        "parameters": "; ".join(f"{name} = {parameter_text(value)}" for name, value in step.parameters.items()) or "none",
+        "inputs": "; ".join(_input(port, entry) for port, entry in step.inputs.items()),
+        "outputs": "; ".join(f"{name} {digests.get(name, '')}".strip() for name in step.outputs),
+        "findings": [prose(each.sentence()) for each in step.findings],
+    }  # fmt: skip
+
+
+def _input(port: str, entry: InputEntry) -> str:
+    return f"{port}: {entry.address}" + (f" {entry.digest[:16]}" if entry.digest else "")
+
+
+def parameter_text(value: object) -> str:
+    """Return a parameter as it stands in a table."""
+    return value if isinstance(value, str) else words(json.dumps(value)).plain

@@ -1,0 +1,137 @@
+"""Sentences of steps and checks set properly: numbers, units and symbols in them, for paper, page and LaTeX.
+
+Rules: digits are never changed here, only how they stand; what is not recognised stays as it was written.
+"""
+
+from __future__ import annotations
+
+import html
+import re
+from dataclasses import dataclass
+from functools import cache
+from itertools import chain
+
+from typing_extensions import override
+
+from archive.reports.tex import Tex, tex
+from schemas.kinds import KINDS
+from schemas.uncertain_text import RoundedText
+from schemas.units import parse_unit
+
+__all__ = ["Piece", "Prose", "prose"]
+
+_GREEK = {
+    "chi": "χ", "sigma": "σ", "zeta": "ζ", "rho": "ρ", "tau": "τ", "kappa": "κ", "omega": "ω", "lambda": "λ", "theta": "θ",
+}  # fmt: skip
+_NUMBER = r"(?P<digits>[+-]?\d+(?:\.\d+)?)(?:\((?P<bracket>\d+(?:\.\d+)?)\))?(?:e(?P<power>[+-]?\d+))?"
+_SYMBOL = rf"(?P<base>{'|'.join(_GREEK)}|[A-Za-z])(?:_(?P<sub>[A-Za-z0-9]{{1,6}}))?(?:\^(?P<sup>[A-Za-z0-9]+))?(?![A-Za-z0-9_]|\.[A-Za-z0-9])"
+
+
+@dataclass(frozen=True)
+class Piece:
+    """A stretch of a sentence: its text, ``sub``, ``sup`` or ``i`` for how it stands, and its LaTeX."""
+
+    text: str
+    style: str
+    latex: Tex
+
+
+@dataclass(frozen=True)
+class Prose:
+    """A sentence set properly."""
+
+    plain: str
+    pieces: tuple[Piece, ...]
+
+    @override
+    def __str__(self) -> str:
+        return self.plain
+
+    def __html__(self) -> str:
+        """Return the sentence as HTML, every text in it escaped."""
+        tags = {"sub": "sub", "sup": "sup", "i": "i"}
+        return "".join(
+            f"<{tags[piece.style]}>{html.escape(piece.text)}</{tags[piece.style]}>" if piece.style else html.escape(piece.text)
+            for piece in self.pieces
+        )
+
+    @property
+    def latex(self) -> Tex:
+        """The sentence as LaTeX."""
+        return Tex("".join(piece.latex for piece in self.pieces))
+
+
+@cache
+def _pattern() -> re.Pattern[str]:
+    names = set(chain.from_iterable((*kind.display, *kind.si, *kind.examples) for kind in KINDS.values()))
+    names |= {"ns m^2/kg", "ns/mmol", "min", "d"}
+    names -= {"1", "A", "T"}
+    units = "|".join(re.escape(name) for name in sorted(names, key=lambda name: (-len(name), name)))
+    return re.compile(
+        rf"(?<![A-Za-z0-9_.#@/-]){_NUMBER}(?:(?P<space> ?)(?P<unit>{units})(?![A-Za-z0-9_^/]))?(?![A-Za-z0-9_]|\.\d)"
+        rf"|(?<![A-Za-z0-9_.#@-]){_SYMBOL}"
+        r"|(?<=\))\^(?P<power_of>[A-Za-z0-9]+)"
+    )
+
+
+@cache
+def prose(sentence: str) -> Prose:
+    """Return a sentence with its numbers, units and symbols set.
+
+    Examples
+    --------
+    >>> str(prose("The rise is 168.0(3) ns/mmol.").latex)
+    'The rise is \\\\val{168.0(3)}{168.0(3)}{ns.mmol^{-1}}{ns\\\\,mmol^{-1}}.'
+    """
+    pieces: list[Piece] = []
+    end = 0
+    for found in _pattern().finditer(sentence):
+        made = _number(found) if found["digits"] else _symbol(found)
+        if made is None:
+            continue
+        if found.start() > end:
+            pieces.append(_text(sentence[end : found.start()]))
+        pieces += made
+        end = found.end()
+    if end < len(sentence):
+        pieces.append(_text(sentence[end:]))
+    return Prose(sentence, tuple(pieces))
+
+
+def _text(text: str) -> Piece:
+    return Piece(text, "", tex(text))
+
+
+def _number(found: re.Match[str]) -> list[Piece] | None:
+    if not found["unit"] and not found["power"] and not found["bracket"]:
+        if found["digits"].startswith("-"):
+            return [Piece("\u2212" + found["digits"][1:], "", Tex(f"${found['digits']}$"))]
+        return None
+    number = RoundedText(found["digits"].removeprefix("+"), found["bracket"] or "", int(found["power"] or 0))
+    if not found["unit"]:
+        return [Piece(number.typographic(), "", Tex(f"${number.maths()}$"))]
+    unit = parse_unit(found["unit"])
+    macro = rf"\val{{{number.plain()}}}{{{number.maths()}}}{{{unit.siunitx}}}{{{unit.latex}}}"
+    return [Piece(f"{number.typographic()}\u00a0{unit.typographic}", "", Tex(macro))]
+
+
+def _symbol(found: re.Match[str]) -> list[Piece] | None:
+    if found["power_of"]:
+        raised = found["power_of"]
+        return [Piece(_GREEK.get(raised, raised), "sup", Tex(rf"\ensuremath{{^{{{_inner(raised)}}}}}"))]
+    base, sub, sup = found["base"], found["sub"], found["sup"]
+    if sub is None and sup is None and base not in _GREEK:
+        return None
+    greek = base in _GREEK
+    letter = rf"\{base}" if greek else base
+    latex = letter + (f"_{{{_inner(sub)}}}" if sub else "") + (f"^{{{_inner(sup)}}}" if sup else "")
+    pieces = [Piece(_GREEK.get(base, base), "i", Tex(rf"\ensuremath{{{latex}}}"))]
+    pieces += [Piece(_GREEK.get(sub, sub), "sub", Tex(""))] if sub else []
+    pieces += [Piece(_GREEK.get(sup, sup), "sup", Tex(""))] if sup else []
+    return pieces
+
+
+def _inner(text: str) -> str:
+    if text in _GREEK:
+        return rf"\{text}"
+    return text if len(text) == 1 or text.isdigit() else rf"\mathrm{{{text}}}"

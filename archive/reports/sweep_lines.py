@@ -1,0 +1,134 @@
+"""One line of the run sheet for each sweep."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+from archive.reports.holdings import Holdings, Taken
+from archive.reports.moments import clock_lines, span_text
+from archive.reports.numbers import absent, shown, shown_output, shown_value
+from archive.reports.standing import Standing
+from schemas.quantity import unit_factor
+from schemas.sweep import Detection
+
+__all__ = ["SWEEP_HEADS", "sweep_lines"]
+
+SWEEP_HEADS = (
+    "no.", "kind", "start", "lasts", "coverage", "T from to", "rate", "drive", "rim speed, at most", "Q", "result", "flags", "file",
+)  # fmt: skip
+_KINDS = {
+    "dose-run": "dose", "drive-sweep": "ampl. test", "frequency-sweep": "resonance", "heat-capacity": "heat cap.", "persistent-current": "current",
+}  # fmt: skip
+_ARROWS = {"up": "\u2197", "down": "\u2198", "both": "\u2195", "hold": "=", "none": "\u2013"}
+
+
+def sweep_lines(held: Holdings, stands: Standing) -> list[dict[str, str]]:
+    """Return the cells of each sweep line, by head."""
+    zone = held.sheet.time_zone
+    starts = clock_lines([None if each.entry is None else each.entry.begin for each in held.sweeps], zone)
+    files = {file.name: file.sha256 for accession in held.view.accessions for file in accession.raw_files}
+    lines = [_line(held, each, stands, files) for each in held.sweeps]
+    for line, start in zip(lines, starts, strict=True):
+        line["start"] = start
+    return lines
+
+
+def _line(held: Holdings, taken: Taken, stands: Standing, files: Mapping[str, str]) -> dict[str, str]:
+    entry, sweep = taken.entry, taken.sheet
+    flags = stands.flags(sweep.name)
+    flags += ["X"] if any(not channel.use for channel in held.sheet.channels_of(sweep).values()) else []
+    flags += ["L"] if sweep.left_out else []
+    return {
+        "no.": sweep.name,
+        "kind": _kind(taken),
+        "start": "",
+        "lasts": "[nr]" if entry is None else span_text(entry.begin, entry.end),
+        "coverage": "[na]" if sweep.gas == "adsorptive" else ("0" if sweep.empty_cell else str(shown_value(None if entry is None else entry.coverage, "coverage"))),
+        "T from to": _temperatures(taken),
+        "rate": _rate(taken),
+        "drive": str(shown(sweep.drive, setting=True, code="nr" if _driven(taken) else "na")),
+        "rim speed, at most": _rim_speed(held, taken),
+        "Q": _quality(held, taken),
+        "result": _result(held, taken),
+        "flags": " ".join(flags),
+        "file": files.get(sweep.files[0], "[nr]")[:8],
+    }  # fmt: skip
+
+
+def _driven(taken: Taken) -> bool:
+    return taken.sheet.kind in ("temperature-sweep", "dose-run", "drive-sweep", "frequency-sweep")
+
+
+def _kind(taken: Taken) -> str:
+    sweep = taken.sheet
+    if sweep.kind != "temperature-sweep":
+        return _KINDS.get(sweep.kind, sweep.kind)
+    if sweep.empty_cell:
+        return "background"
+    return {"up": "warm", "down": "cool", "hold": "hold"}.get(sweep.direction, "sweep")
+
+
+def _temperatures(taken: Taken) -> str:
+    entry = taken.entry
+    if entry is None or entry.temperature_low is None or entry.temperature_low.value is None:
+        return "[nr]"
+    low, high = entry.temperature_low, entry.temperature_high or entry.temperature_low
+    texts = [f"{end.value:.4g}" for end in (low, high)]
+    if texts[0] == texts[1]:
+        return f"{texts[0]}\u00a0K"
+    direction = taken.sheet.direction
+    if direction == "down":
+        texts.reverse()
+    arrow = "\u2192" if direction in ("up", "down") else ("\u2194" if direction == "both" else "\u2013")
+    return f"{texts[0]}\u00a0{arrow} {texts[1]}\u00a0K"
+
+
+def _rate(taken: Taken) -> str:
+    sweep, entry = taken.sheet, taken.entry
+    if sweep.rate is not None:
+        return str(shown(sweep.rate, setting=True))
+    if sweep.kind != "temperature-sweep":
+        return "[na]"
+    if entry is None or entry.begin is None or entry.end is None or sweep.direction not in ("up", "down"):
+        return "[nr]"
+    low, high = entry.temperature_low, entry.temperature_high
+    hours = (entry.end - entry.begin).total_seconds() / 3600
+    if low is None or high is None or low.value is None or high.value is None or hours <= 0:
+        return "[nr]"
+    sign = "+" if sweep.direction == "up" else "\u2212"
+    # Computed from the span, not recorded: marked d.
+    return f"{sign}{1e3 * (high.value - low.value) / hours:.3g}\u00a0mK/h\u00a0d"
+
+
+def _rim_speed(held: Holdings, taken: Taken) -> str:
+    detection = held.sheet.detection_of(taken.sheet)
+    entry = taken.entry
+    if taken.sheet.kind in ("isotherm", "log", "calibration", "heat-capacity"):
+        return "[na]"
+    if entry is None or not _complete(detection):
+        return "[nr]"
+    assert detection is not None and detection.reference_rim_velocity is not None and detection.reference_signal is not None  # noqa: S101, PT018
+    channel = next((each for each in entry.channels if each.quantity == "amplitude" and each.high is not None), None)
+    if channel is None or channel.high is None:
+        return "[nr]"
+    share = channel.high * unit_factor(channel.unit, "amplitude") / detection.reference_signal.si
+    speed = detection.reference_rim_velocity.si * share
+    return f"{speed * 1e6:.3g}\u00a0µm/s {detection.reference_rim_velocity.convention or ''}\u00a0d".replace(" \u00a0", "\u00a0")
+
+
+def _complete(detection: Detection | None) -> bool:
+    return detection is not None and detection.reference_rim_velocity is not None and detection.reference_signal is not None
+
+
+def _quality(held: Holdings, taken: Taken) -> str:
+    found = held.result(taken.sheet.name, "quality_factor")
+    if found is not None:
+        return str(shown_output(found))
+    return str(absent("na" if taken.sheet.kind in ("isotherm", "log", "calibration", "heat-capacity") else "nm"))
+
+
+def _result(held: Holdings, taken: Taken) -> str:
+    for reduction in held.reductions_of(taken.sheet.name):
+        for each in held.headline(reduction):
+            return f"{each.name} = {shown_output(each)}" if each.verdict is None else str(shown_output(each))
+    return str(absent("pend"))
