@@ -28,6 +28,7 @@ __all__ = [
     "penetration_depth",
     "pore_size",
     "saturation",
+    "saturation_pressure",
     "vapour_share",
 ]
 
@@ -52,16 +53,24 @@ def _film_tables(reading: Reading) -> Iterator[SweepTable]:
 
 
 def film_pressure(table: SweepTable) -> str | None:
-    """Return the channel that holds the absolute pressure over the film; a vapour pressure thermometer is none."""
+    """Return the channel of the absolute pressure over the film; a thermometer's or a saturation pressure is none."""
     for name, channel in table.channels.items():
-        if (
-            channel.quantity == "pressure"
-            and channel.use
-            and channel.thermometer is None
-            and channel.convention != "gauge"
-        ):
+        is_absolute = channel.quantity == "pressure" and channel.convention != "gauge"
+        if is_absolute and channel.use and channel.thermometer is None and not _names_saturation(name):
             return name
     return None
+
+
+def saturation_pressure(table: SweepTable) -> str | None:
+    """Return the channel of a recorded saturation pressure: one named `saturated_pressure`, `saturation...` or `p0`."""
+    for name, channel in table.channels.items():
+        if channel.quantity == "pressure" and channel.use and _names_saturation(name):
+            return name
+    return None
+
+
+def _names_saturation(name: str) -> bool:
+    return name.startswith(("saturat", "p0", "p_0"))
 
 
 def _amount(reading: Reading, table: SweepTable) -> float | None:

@@ -6,7 +6,7 @@ from collections.abc import Iterator
 
 import numpy as np
 
-from archive.intake.checks.film import film_pressure
+from archive.intake.checks.film import film_pressure, saturation_pressure
 from archive.intake.checks.rows import counting, tables, temperature
 from archive.intake.checks.telling import listed, on_row, on_sweep
 from archive.intake.reading import Reading, SweepTable
@@ -22,7 +22,7 @@ __all__ = ["bet_criteria", "isotherm_order", "isotherm_points", "relative_pressu
 
 def relative_pressure(reading: Reading, table: SweepTable) -> tuple[str, np.ndarray] | None:
     """Return channel and p/p0 of an isotherm: as recorded, over a recorded saturation pressure, or over that of 4He."""
-    name = table.of_kind("relative_pressure")
+    name = table.of_kind("relative_pressure") or table.of_kind("pressure_ratio")
     if name is not None:
         return name, np.where(counting(table), table.columns[name], np.nan)
     name = film_pressure(table)
@@ -32,10 +32,10 @@ def relative_pressure(reading: Reading, table: SweepTable) -> tuple[str, np.ndar
     for correction in table.sweep.corrections:
         if correction.channel == name and correction.correct == "zero":
             p = p - _zero(correction.value)
-    others = [n for n, c in table.channels.items() if c.quantity == "pressure" and c.use and n != name]
-    if others:
-        with np.errstate(divide="ignore", invalid="ignore"):
-            return name, np.asarray(p / table.columns[others[0]])
+    saturated = saturation_pressure(table)
+    if saturated is not None:
+        p0 = table.columns[saturated]
+        return name, np.asarray(p / np.where(p0 > 0, p0, np.nan))
     sample, T = reading.record(table.sweep.sample or reading.sheet.sample), temperature(reading, table)
     helium = table.sweep.gas == "helium" and isinstance(sample, Sample) and sample.isotope == "4He"
     if (

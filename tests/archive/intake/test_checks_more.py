@@ -68,7 +68,7 @@ def test_a_coarse_column_is_not_clipped() -> None:
 
 @pytest.mark.parametrize("zero", [0.0, 20.0])
 def test_an_isotherm_over_a_recorded_saturation_pressure(zero: float) -> None:
-    channels = {"p": PRESSURE, "p0": {**PRESSURE, "column": 3}, "n": AMOUNT}
+    channels = {"p0": {**PRESSURE, "column": 3}, "p": PRESSURE, "n": AMOUNT}
     corrections = [
         {"channel": "p", "correct": "zero", "value": f"{zero} Pa", "known": "measured", "source": "night"}
     ]
