@@ -138,8 +138,9 @@ class Calibration(NamedRecord):
 
     @model_validator(mode="after")
     def _complete(self) -> Calibration:
-        if self.relation.form in ("spline", "fitted-points") and len(self.points) < 4:
-            raise ValueError(f"a calibration of form {self.relation.form} needs at least 4 points")
+        least = {"spline": 4, "fitted-points": 6}.get(self.relation.form, 0)
+        if len(self.points) < least:
+            raise ValueError(f"a calibration of form {self.relation.form} needs at least {least} points")
         if any(temperature <= 0 for _, temperature in self.points):
             raise ValueError("points: every temperature must be above 0 K")
         if (self.uncertainty is None) == (self.relative_uncertainty is None):

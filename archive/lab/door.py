@@ -331,7 +331,7 @@ class Archive:
         Parameters
         ----------
         cooldown : str
-            Name of the cooldown.
+            Name of the cooldown, or the address of one of its sweeps.
         plan : str or Path, optional
             Name of a shipped plan, or a plan file; else every plan that applies.
         sweep : str, optional

@@ -80,6 +80,8 @@ def reduce(
     progress: Callable[[str], None],
 ) -> list[ReduceOutcome]:
     """Plans carried out on the sweeps of a cooldown, each after what it rests on; see `Archive.reduce`."""
+    if "/" in cooldown:
+        cooldown, _, sweep = cooldown.partition("/")
     rows = source.index.sweeps(cooldown)
     if not rows:
         known = ", ".join(source.cooldowns()) or "none yet"

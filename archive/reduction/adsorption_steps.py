@@ -98,7 +98,7 @@ def bet(
     Raises
     ------
     ValueError
-        No area per molecule, or no range that meets the criteria; with the reasons.
+        No range that meets the criteria; with the reasons.
 
     Notes
     -----
@@ -108,16 +108,16 @@ def bet(
     """
     gas = sample.isotope if sample is not None else "a gas that is not recorded"
     cross = parameters.cross_section_nm2 or CROSS_SECTIONS.get(gas)
-    if cross is None:
-        raise ValueError(
-            f"cross_section_nm2: the area per molecule of {gas} is not standardised; give it in a plan of your own, with its source"
-        )
     rows = known_rows(relative_pressure, amount)
     bounds = None if parameters.low is None or parameters.high is None else (parameters.low, parameters.high)
-    found = bet_area(relative_pressure[rows], amount[rows], cross_section=cross * 1e-18, bounds=bounds)
+    # Without an area per molecule there is a monolayer but no area; the line is fitted with a unit one.
+    per_molecule = math.nan if cross is None else cross * 1e-18
+    found = bet_area(
+        relative_pressure[rows], amount[rows], cross_section=(cross or 1.0) * 1e-18, bounds=bounds
+    )
     if not found.accepted:
-        raise ValueError(f"amount: no BET area can be given: {'; '.join(found.reasons)}")
-    names = ("monolayer", "constant", "area")
+        raise ValueError(f"amount: no BET line can be given: {'; '.join(found.reasons)}")
+    names: tuple[str, ...] = ("monolayer", "constant", "area")
     x, n = relative_pressure[rows], amount[rows]
     own = _propagated(
         x,
@@ -135,7 +135,9 @@ def bet(
     source = SourceEntry(
         name="own range of the BET line", description="choice of the range of relative pressure", level="run"
     )
-    outputs = dict(zip(names, (found.monolayer, found.constant, found.area), strict=True))
+    if math.isnan(per_molecule):
+        names, joint, choice = names[:2], joint[:2, :2], choice[:2]
+    outputs = dict(zip(names, (found.monolayer, found.constant, found.area), strict=False))
     label = "He-BET" if "He" in gas else f"{gas} BET"
     findings: tuple[Finding, ...] = ()
     if "He" in gas:
@@ -146,11 +148,22 @@ def bet(
                 what="an area by helium rests on an area per atom that is not standardised; never merge it with areas by nitrogen",
             ),
         )
+    verdicts = {}
+    if math.isnan(per_molecule):
+        outputs["area"] = math.nan
+        verdicts["area"] = "area per molecule not given"
+        findings += (
+            Finding(
+                code="cross-section-asked", severity="warning",
+                what=f"the area per molecule (cross-section) of {gas} is not standardised and was not given, so there is a monolayer but no area",
+                remedy="copy the plan, set cross_section_nm2 with its source, and reduce again",
+            ),
+        )  # fmt: skip
     return Outcome(
-        outputs, covariance=Covariance(names, joint), held={"low": found.low, "high": found.high},
+        outputs, covariance=Covariance(names, joint), verdicts=verdicts, held={"low": found.low, "high": found.high},
         shared={name: {source.name: part} for name, part in zip(names, choice, strict=True)}, sources=(source,),
         facts={
-            "label": label, "cross_section_nm2": cross, "low": found.low, "high": found.high, "points": found.points, "r_squared": found.r_squared,
+            "label": label, "per_molecule": "no stated area" if cross is None else f"{cross:g} nm^2", "low": found.low, "high": found.high, "points": found.points, "r_squared": found.r_squared,
             "x_at_monolayer": found.x_at_monolayer, "x_expected": found.x_expected, "amounts_in": amount_kind.replace("_", " "),
         },
         findings=findings,

@@ -45,9 +45,11 @@ class LinearityParameters(Record):
 class ResonanceParameters(Record):
     """Form of the resonance curve."""
 
-    background: Literal["constant", "sloped"] = "constant"
+    background: Literal["constant", "sloped"] = "sloped"
     convention: Literal["+", "-"] = "+"
     """Sign of i w t in the lock-in."""
+    largest_inside: bool = True
+    """Whether the response above a constant must also be largest inside the sweep."""
 
 
 def dissipation_from_amplitude(
@@ -241,8 +243,16 @@ def resonance_fit(
     y: FloatArray,
     u_x: FloatArray | None,
 ) -> Outcome:
-    """Return the one resonance of a frequency sweep, or the verdict that there is none in range."""
+    """Return the one resonance of a frequency sweep, or the verdict that there is none in range.
+
+    Notes
+    -----
+    A Lorentzian as broad as the sweep can always be bent to fit a background that curves. So besides the fit there must
+    be a sign of the resonance that rests on no model of the background: with the medians of both components taken off,
+    the response is largest inside the sweep, not at its end.
+    """
     rows = known_rows(frequency, x, y)
+    largest = resonance.frequency_of_largest_response(frequency[rows], x[rows], y[rows])
     found = resonance.fit_resonance(
         frequency[rows], x[rows], y[rows], background=parameters.background, convention=parameters.convention,
         standard_uncertainty=weights(u_x, rows),
@@ -256,9 +266,15 @@ def resonance_fit(
         "noise": found.noise,
         "probability": found.probability,
     }
-    if not found.found or found.fit is None:
+    unseen = parameters.largest_inside and math.isnan(largest)
+    if not found.found or found.fit is None or unseen:
         verdict = "no resonance in range"
-        finding = Finding(code="no-resonance", severity="note", what=f"no resonance in range: {found.reason}")
+        if found.found and unseen:
+            facts["reason"] = (
+                "no resonance in range: above a constant the response is largest at the end of the sweep, so the broad line"
+                f" that would fit, {found.frequency:.5g} Hz with Q = {found.quality_factor:.2g}, cannot be told from the background"
+            )
+        finding = Finding(code="no-resonance", severity="note", what=str(facts["reason"]))
         return Outcome(
             dict.fromkeys(names, math.nan),
             facts=facts,
@@ -275,7 +291,7 @@ def resonance_fit(
         "resonance_frequency": f0,
         "quality_factor": Q,
         "height": fit.value("height"),
-        "frequency_at_maximum": found.frequency_at_maximum,
+        "frequency_at_maximum": largest if parameters.largest_inside else found.frequency_at_maximum,
         "width": f0 / Q,
     }
     # A grid frequency is known to the grid: all places between half steps alike (JCGM 100:2008, 4.3.7).

@@ -274,7 +274,7 @@ STEPS: tuple[Step, ...] = (
         yields={
             "resonance_frequency": Port("frequency", "scalar", "resonance frequency"), "quality_factor": Port("quality_factor", "scalar", "quality factor"),
             "height": Port("same:x", "scalar", "height of the resonance"), "width": Port("frequency", "scalar", "full width at half power"),
-            "frequency_at_maximum": Port("frequency", "scalar", "grid frequency of the largest response above background"),
+            "frequency_at_maximum": Port("frequency", "scalar", "grid frequency of the largest response above a constant"),
         },
         sentence="A complex Lorentzian on a {background} background was fitted to {points} points from {low_Hz} Hz to {high_Hz} Hz: {reason}.", spread="refit", weights=("x",),
     ),
@@ -292,7 +292,7 @@ STEPS: tuple[Step, ...] = (
             "monolayer": Port("same:amount", "scalar", "monolayer capacity"), "constant": Port("number", "scalar", "constant C"),
             "area": Port("area-of:amount", "scalar", "area by the monolayer"),
         },
-        sentence="The {label} isotherm, analysed between p/p0 = {low} and {high} ({points} points) with {cross_section_nm2} nm^2 per molecule, gives a monolayer of {monolayer} (constant C = {constant}).",
+        sentence="The {label} isotherm, analysed between p/p0 = {low} and {high} ({points} points) with {per_molecule} per molecule, gives a monolayer of {monolayer} (constant C = {constant}).",
         citations=("bet-1938", "thommes-2015"), spread="refit", weights=("amount",), kinds=("amount",),
     ),
     Step(
