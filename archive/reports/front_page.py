@@ -9,7 +9,7 @@ from archive.intake.cautions import FIXED_TEXT
 from archive.reports.holdings import Holdings
 from archive.reports.moments import full_time
 from archive.reports.numbers import Shown, shown_output, shown_value, words
-from archive.reports.prose import prose
+from archive.reports.prose import prose, symbol_of
 from archive.reports.set_up import left_column, right_column
 from archive.reports.standing import Standing, draft_reasons
 from archive.reports.strip import strip
@@ -73,18 +73,22 @@ def _count(number: int, noun: str) -> str:
 
 
 def _results(held: Holdings, *, provisional: bool) -> Iterator[dict[str, Any]]:
-    """Yield at most three: one of each plan, those that rest on others first, the last sweep first."""
+    """Yield at most three with their uncertainty: one of each plan, those that rest on others first, then those that others rest on."""
+    used: dict[str, int] = {}
+    for entry in (entry for each in held.view.current for entry in each.inputs):
+        address = entry.address.partition("#")[0]
+        used[address] = used.get(address, 0) + 1
     order = {f"{held.view.newest.cooldown}/{each.sheet.name}": each.number for each in held.sweeps}
-    ranked = sorted(held.view.current, key=lambda each: (-len(each.plan.needs), each.plan.name, -order.get(each.sweep, 0)))
+    ranked = sorted(held.view.current, key=lambda each: (-len(each.plan.needs), -used.get(each.address, 0), each.plan.name, -order.get(each.sweep, 0)))
     seen: set[str] = set()
     for reduction in ranked:
         if reduction.plan.name in seen or len(seen) == 3:
             continue
-        best = next((each for each in held.headline(reduction) if each.value is not None), None)
+        best = next((each for each in held.headline(reduction) if each.value is not None and each.uncertainty), None)
         if best is not None:
             seen.add(reduction.plan.name)
             yield {
-                "name": prose(best.name), "what": best.description, "value": shown_output(best), "where": _where(held, reduction),
+                "name": symbol_of(best.name), "what": best.description, "value": shown_output(best), "where": _where(held, reduction),
                 "number": reduction.number, "address": f"{reduction.address}#{best.name}", "provisional": provisional,
             }  # fmt: skip
 
@@ -101,13 +105,31 @@ def _mind(held: Holdings, stands: Standing) -> dict[str, Any]:
     end = held.sheet.gas_end
     return {
         "counts": f"{len(stands.open)} open, {len(stands.waived)} waived, {stands.cleared} cleared",
-        "open": [finding_line(flag, finding) for flag, finding in stands.open],
+        "open": list(_alike(stands)),
         "waived": [finding_line(each.flag, each.finding) for each in stands.waived],
         "none_waived": "No warnings were waived." if not stands.waived else "",
         "gas": {"state": _GAS[end.state], "valve": end.valve or "[nr]", "notes": end.notes, "last": _last_amount(held)},
         "cautions": [_caution(each) for each in held.view.newest.cautions],
         "fixed_text": FIXED_TEXT,
     }
+
+
+def _alike(stands: Standing) -> Iterator[dict[str, Any]]:
+    """Yield open warnings, those of one check as one line; each stands in full on a later page."""
+    groups: dict[str, list[tuple[str, Finding]]] = {}
+    for flag, finding in stands.open:
+        groups.setdefault(finding.code, []).append((flag, finding))
+    for members in groups.values():
+        line = finding_line(*members[0])
+        if len(members) > 1:
+            line["flag"] = f"{members[0][0]} to {members[-1][0]}" if _consecutive(members) else ", ".join(flag for flag, _ in members)
+            line["place"] = ", ".join(finding.place or "the cooldown" for _, finding in members)
+        yield line
+
+
+def _consecutive(members: list[tuple[str, Finding]]) -> bool:
+    numbers = [int(flag[1:]) for flag, _ in members]
+    return numbers == list(range(numbers[0], numbers[0] + len(numbers)))
 
 
 def _last_amount(held: Holdings) -> str:

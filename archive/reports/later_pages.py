@@ -10,7 +10,7 @@ from archive.reports.front_page import finding_line, grouped_digest
 from archive.reports.holdings import Holdings
 from archive.reports.moments import clock_lines, full_time
 from archive.reports.numbers import CODES, shown_output, shown_value, words
-from archive.reports.prose import prose
+from archive.reports.prose import prose, symbol_of
 from archive.reports.set_up import calibration_rows, cell_rows, record_rows
 from archive.reports.small_plots import sweep_plot
 from archive.reports.standing import Standing
@@ -84,7 +84,7 @@ def replaced_results(held: Holdings) -> Iterator[dict[str, Any]]:
         outputs = {each.name: each for each in new.outputs}
         for was in held.headline(old):
             yield {
-                "name": prose(was.name), "was": shown_output(was), "is": shown_output(outputs.get(was.name)), "old": old.address, "new": new.address,
+                "name": symbol_of(was.name), "was": shown_output(was), "is": shown_output(outputs.get(was.name)), "old": old.address, "new": new.address,
                 "date": full_time(new.begin, held.sheet.time_zone), "reason": _why(old, new),
             }  # fmt: skip
 
@@ -181,7 +181,7 @@ def reduction_block(held: Holdings, reduction: ReductionDocument) -> dict[str, A
 
 def _result(output: OutputEntry) -> dict[str, Any]:
     shares = _shares(output)
-    return {"name": prose(output.name), "what": output.description, "value": shown_output(output), "shares": shares, "step": output.step}
+    return {"name": symbol_of(output.name), "what": output.description, "value": shown_output(output), "shares": shares, "step": output.step}
 
 
 def _shares(output: OutputEntry) -> str:
@@ -191,7 +191,11 @@ def _shares(output: OutputEntry) -> str:
     parts = [("own points", output.point or 0.0), *output.shared.items()]
     shares = [(name, (part / output.uncertainty) ** 2) for name, part in parts]
     large = sorted((each for each in shares if each[1] >= 0.05), key=lambda each: -each[1])[:3]
-    return ", ".join(f"{name} {100 * share:.2g}\u00a0%" for name, share in large)
+    return ", ".join(f"{name} {_percent(share)}\u00a0%" for name, share in large)
+
+
+def _percent(share: float) -> str:
+    return "100" if share >= 0.995 else f"{100 * share:.2g}"
 
 
 def _step(step: StepRecord, reduction: ReductionDocument) -> dict[str, Any]:

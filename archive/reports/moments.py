@@ -18,7 +18,7 @@ def in_zone(at: datetime, zone: str) -> datetime:
 
 
 def full_time(at: datetime | None, zone: str) -> str:
-    """Return date, clock and offset, as ``2025-03-10 09:00 +11:00``."""
+    """Return date, clock and offset, as ``2025-03-10 09:00 +11``."""
     if at is None:
         return "[nr]"
     local = in_zone(at, zone)
@@ -42,7 +42,7 @@ def _offset(local: datetime) -> str:
     offset = local.utcoffset() or timedelta(0)
     minutes = round(offset.total_seconds() / 60)
     sign = "\u2212" if minutes < 0 else "+"
-    return f"{sign}{abs(minutes) // 60:02d}:{abs(minutes) % 60:02d}"
+    return f"{sign}{abs(minutes) // 60:02d}" + (f":{abs(minutes) % 60:02d}" if minutes % 60 else "")
 
 
 def span_text(begin: datetime | None, end: datetime | None) -> str:

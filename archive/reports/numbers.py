@@ -22,6 +22,8 @@ from schemas.uncertain_text import html_text, in_preferred_unit, latex_text, pla
 
 __all__ = ["CODES", "LOST", "NOT_RECORDED", "Shown", "absent", "shown", "shown_output", "shown_value", "words"]
 
+_DIGITS_WITHOUT_UNCERTAINTY = 4
+
 CODES: dict[str, str] = {
     "[nr]": "not recorded",
     "[u nr]": "standard uncertainty not recorded",
@@ -117,6 +119,9 @@ def _of(
 ) -> Shown:
     # A zero uncertainty in a document says that none is known, not that the value is exact.
     spread = u if u is not None and math.isfinite(u) and u > 0 else None
+    if spread is None and not setting:
+        # A computed number whose uncertainty is not known shows no more than this.
+        value = float(f"{value:.{_DIGITS_WITHOUT_UNCERTAINTY}g}")
     if kind not in KINDS:
         number = rounded(value, spread)
         tail = "" if spread is not None or setting else " [u nr]"

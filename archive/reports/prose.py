@@ -18,7 +18,7 @@ from schemas.kinds import KINDS
 from schemas.uncertain_text import RoundedText
 from schemas.units import parse_unit
 
-__all__ = ["Piece", "Prose", "prose"]
+__all__ = ["Piece", "Prose", "prose", "symbol_of"]
 
 _GREEK = {
     "chi": "χ", "sigma": "σ", "zeta": "ζ", "rho": "ρ", "tau": "τ", "kappa": "κ", "omega": "ω", "lambda": "λ", "theta": "θ",
@@ -96,6 +96,12 @@ def prose(sentence: str) -> Prose:
     if end < len(sentence):
         pieces.append(_text(sentence[end:]))
     return Prose(sentence, tuple(pieces))
+
+
+def symbol_of(name: str) -> Prose:
+    """Return the name of an output as a symbol (``T_KT``) or as words (``mass_sensitivity``)."""
+    found = prose(name)
+    return found if found.pieces and found.pieces[0].style else prose(name.replace("_", " "))
 
 
 def _text(text: str) -> Piece:

@@ -27,7 +27,8 @@ from archive.reports.view import CooldownView
 __all__ = ["run_sheet_html", "run_sheet_json", "run_sheet_pdf"]
 
 # Characters without a place to break, in tables: names may have 64 characters, addresses 200.
-_LONGEST_UNBROKEN = 14
+_LONGEST_UNBROKEN = 20
+_PIECE = 10
 
 
 def run_sheet_html(view: CooldownView) -> str:
@@ -114,12 +115,14 @@ def _for_paper(told: Any, name: str = "") -> Any:
         return {key: _for_paper(each, key) for key, each in told.items()}
     if isinstance(told, list | tuple):
         return [_for_paper(each) for each in told]
+    if name == "no.":
+        return _breakable(told, 6, 6)
     return _breakable(told) if isinstance(told, str) and name not in ("svg", "sha256") else told
 
 
-def _breakable(text: str) -> str:
+def _breakable(text: str, most: int = _LONGEST_UNBROKEN, piece: int = _PIECE) -> str:
     """Return a text in which long words may break: a zero-width space every few characters."""
     parts = [
-        "\u200b".join(word[k : k + _LONGEST_UNBROKEN] for k in range(0, len(word), _LONGEST_UNBROKEN)) for word in text.split(" ")
+        word if len(word) <= most else "\u200b".join(word[k : k + piece] for k in range(0, len(word), piece)) for word in text.split(" ")
     ]
     return " ".join(parts)

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import math
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -22,6 +24,8 @@ _SYMBOLS = {
     "amount": "n", "specific_amount": "n per mass", "relative_pressure": "p/p\u2080", "pressure_ratio": "p/p\u2080", "coverage": "n/A",
     "areal_mass_density": "\u03c3\u209b", "resistance": "R", "voltage": "U", "current": "I", "heat_capacity": "C", "quality_factor": "Q",
 }  # fmt: skip
+# Small differences of a quantity are read in these, smallest first.
+_FINE_UNITS: dict[str, tuple[str, ...]] = {"period": ("ps", "ns"), "frequency": ("uHz", "mHz")}
 # Along which kind, and which kinds are worth seeing, in order of liking.
 _LIKED: dict[str, tuple[tuple[str, ...], tuple[str, ...]]] = {
     "temperature-sweep": (("temperature",), ("period", "frequency", "dissipation", "amplitude", "resistance")),
@@ -121,8 +125,9 @@ def sweep_plot(held: Holdings, taken: Taken) -> str | None:
     for channel, values in pairs:
         factor = unit_factor(channel.unit, channel.quantity) / unit_factor(unit, channel.quantity) if channel.quantity in KINDS else 1.0
         ys.append(values * factor)
+    ys, name = _less_offset(ys, pairs[0][0].quantity, unit)
     log = taken.sheet.kind == "ringdown" and all(bool((each[np.isfinite(each)] > 0).all()) for each in ys)
-    x_axis, y_axis = axis_of(_name(x[2], x_unit), [xs]), axis_of(_name(pairs[0][0].quantity, unit), ys, log=log)
+    x_axis, y_axis = axis_of(_name(x[2], x_unit), [xs]), axis_of(name, ys, log=log)
     if x_axis is None or y_axis is None:
         return None
     marks = taken.sheet.kind in ("drive-sweep", "dose-run", "isotherm")
@@ -131,6 +136,23 @@ def sweep_plot(held: Holdings, taken: Taken) -> str | None:
     names = " and ".join(channel.name for channel, _ in pairs)
     label = f"{taken.sheet.name}: {names} against {symbol(x[2])}, {x_axis.name} from {x_axis.low:.3g} to {x_axis.high:.3g}"
     return plot(x_axis, y_axis, series, label=label)
+
+
+def _less_offset(columns: list[Column], kind: str, unit: str) -> tuple[list[Column], str]:
+    """Return values less a round offset, in the unit that suits what is left, where they hardly differ; and the axis."""
+    every = np.concatenate([each[np.isfinite(each)] for each in columns])
+    span = float(np.ptp(every)) if every.size else 0.0
+    if kind not in KINDS or span == 0 or span > 2e-3 * float(np.max(np.abs(every))):
+        return columns, _name(kind, unit)
+    places = max(0, -math.floor(math.log10(span)) - 1)
+    offset = math.floor(float(every.min()) * 10**places) / 10**places
+    left = [each - offset for each in columns]
+    most = float(np.max(np.abs(every - offset))) * unit_factor(unit, kind)
+    able = [each for each in _FINE_UNITS.get(kind, ()) if most >= unit_factor(each, kind)]
+    shown = able[-1] if able else in_unit(np.array([most / unit_factor(unit, kind)]), unit, kind)[1]
+    factor = unit_factor(unit, kind) / unit_factor(shown, kind)
+    between = f"({symbol(kind)} \u2212 {offset:.{places}f} {unit_text(unit)})".replace(" )", ")")
+    return [each * factor for each in left], f"{between} / {unit_text(shown)}".removesuffix(" / ")
 
 
 def _channels(channels: tuple[ChannelEntry, ...], kind: str) -> list[ChannelEntry]:

@@ -24,7 +24,6 @@ class Axis:
     low: float
     high: float
     log: bool = False
-    offset: float = 0.0
 
     def place(self, values: NDArray[np.float64]) -> NDArray[np.float64]:
         """Return where values stand, 0 at the low end and 1 at the high end."""
@@ -85,12 +84,7 @@ class Frame:
 
 
 def axis_of(name: str, values: Sequence[NDArray[np.float64]], *, log: bool = False) -> Axis | None:
-    """Return an axis over all finite values, or None if there is nothing to show.
-
-    Notes
-    -----
-    Where the values differ by less than a thousandth of themselves, a round offset is taken out and named.
-    """
+    """Return an axis over all finite values, or None if there is nothing to show."""
     parts = [each[np.isfinite(each)] for each in values]
     every = np.concatenate(parts) if parts else np.array([])
     if log:
@@ -101,12 +95,8 @@ def axis_of(name: str, values: Sequence[NDArray[np.float64]], *, log: bool = Fal
     if log:
         return Axis(name, low * 0.93, max(high * 1.07, low * 1.01), log=True)
     span = high - low
-    offset = 0.0
-    if span < 2e-3 * max(abs(low), abs(high)):
-        place = 10.0 ** math.floor(math.log10(span)) * 10 if span > 0 else max(abs(low), 1e-300) * 1e-3
-        offset = math.floor(low / place) * place
     margin = 0.05 * span if span > 0 else max(abs(low) * 0.05, 1e-12)
-    return Axis(name, low - margin, high + margin, offset=offset)
+    return Axis(name, low - margin, high + margin)
 
 
 def plot(
@@ -125,7 +115,7 @@ def plot(
         mm.
     """
     frame = Frame(width, height, label)
-    left, right, top, bottom = 10.5, width - 1.0, 1.6, height - 7.4
+    left, right, top, bottom = 11.5, width - 1.0, 1.6, height - 7.4
     _frame(frame, x, y, (left, right, top, bottom))
     for each in series:
         X = left + x.place(each.x) * (right - left)
@@ -168,24 +158,15 @@ def _frame(frame: Frame, x: Axis, y: Axis, box: tuple[float, float, float, float
                 at = bottom - share * (bottom - top)
                 frame.line(left, at, left + 0.9, at)
                 frame.text(left - 0.7, at + 0.8, words, anchor="end")
-    frame.text((left + right) / 2, bottom + 6.3, axis_name(x), size=2.7)
-    frame.text(2.4, (top + bottom) / 2, axis_name(y), size=2.7, turn=True)
-
-
-def axis_name(axis: Axis) -> str:
-    """Return quantity over unit, less the offset that was taken out."""
-    if not axis.offset:
-        return axis.name
-    quantity, slash, unit = axis.name.partition(" / ")
-    places = max(0, math.ceil(-math.log10(axis.high - axis.low)))
-    return f"({quantity} \u2212 {axis.offset:.{places}f}{' ' + unit if slash else ''}){' / ' + unit if slash else ''}"
+    frame.text((left + right) / 2, bottom + 6.3, x.name, size=2.7)
+    frame.text(2.4, (top + bottom) / 2, y.name, size=2.7, turn=True)
 
 
 def tick_texts(axis: Axis, ticks: Sequence[float]) -> list[str]:
     """Return the texts of ticks, all to the same place, with a true minus."""
     if axis.log:
         return [f"{value:.3g}" for value in ticks]
-    values = [value - axis.offset for value in ticks]
+    values = list(ticks)
     step = min((abs(b - a) for a, b in zip(values, values[1:], strict=False)), default=abs(values[0]) if values else 1.0) or 1.0
     places = max(0, -math.floor(math.log10(step) + 1e-9))
     if round(step, places) != 0 and abs(step - round(step, places)) > 0.01 * step:

@@ -6,23 +6,25 @@ from collections.abc import Mapping
 
 from archive.reports.holdings import Holdings, Taken
 from archive.reports.moments import clock_lines, span_text
-from archive.reports.numbers import absent, shown, shown_output, shown_value
+from archive.reports.numbers import Shown, absent, shown, shown_output, shown_value
+from archive.reports.prose import Piece, Prose, symbol_of
 from archive.reports.standing import Standing
+from archive.reports.tex import Tex
 from schemas.quantity import unit_factor
 from schemas.sweep import Detection
 
 __all__ = ["SWEEP_HEADS", "sweep_lines"]
 
+COVERAGE, TEMPERATURE, RATE, RIM_SPEED = "coverage / µmol·m⁻²", "T from to / K", "rate / mK·h⁻¹", "rim speed / µm·s⁻¹"
 SWEEP_HEADS = (
-    "no.", "kind", "start", "lasts", "coverage", "T from to", "rate", "drive", "rim speed, at most", "Q", "result", "flags", "file",
+    "no.", "kind", "start", "lasts", COVERAGE, TEMPERATURE, RATE, "drive", RIM_SPEED, "Q", "result", "flags", "file",
 )  # fmt: skip
 _KINDS = {
     "dose-run": "dose", "drive-sweep": "ampl. test", "frequency-sweep": "resonance", "heat-capacity": "heat cap.", "persistent-current": "current",
 }  # fmt: skip
-_ARROWS = {"up": "\u2197", "down": "\u2198", "both": "\u2195", "hold": "=", "none": "\u2013"}
 
 
-def sweep_lines(held: Holdings, stands: Standing) -> list[dict[str, str]]:
+def sweep_lines(held: Holdings, stands: Standing) -> list[dict[str, str | Prose]]:
     """Return the cells of each sweep line, by head."""
     zone = held.sheet.time_zone
     starts = clock_lines([None if each.entry is None else each.entry.begin for each in held.sweeps], zone)
@@ -33,7 +35,7 @@ def sweep_lines(held: Holdings, stands: Standing) -> list[dict[str, str]]:
     return lines
 
 
-def _line(held: Holdings, taken: Taken, stands: Standing, files: Mapping[str, str]) -> dict[str, str]:
+def _line(held: Holdings, taken: Taken, stands: Standing, files: Mapping[str, str]) -> dict[str, str | Prose]:
     entry, sweep = taken.entry, taken.sheet
     flags = stands.flags(sweep.name)
     flags += ["X"] if any(not channel.use for channel in held.sheet.channels_of(sweep).values()) else []
@@ -43,16 +45,21 @@ def _line(held: Holdings, taken: Taken, stands: Standing, files: Mapping[str, st
         "kind": _kind(taken),
         "start": "",
         "lasts": "[nr]" if entry is None else span_text(entry.begin, entry.end),
-        "coverage": "[na]" if sweep.gas == "adsorptive" else ("0" if sweep.empty_cell else str(shown_value(None if entry is None else entry.coverage, "coverage"))),
-        "T from to": _temperatures(taken),
-        "rate": _rate(taken),
+        COVERAGE: "[na]" if sweep.gas == "adsorptive" else ("0" if sweep.empty_cell else _number(shown_value(None if entry is None else entry.coverage, "coverage", unit="umol/m^2"))),
+        TEMPERATURE: _temperatures(taken),
+        RATE: _rate(taken),
         "drive": str(shown(sweep.drive, setting=True, code="nr" if _driven(taken) else "na")),
-        "rim speed, at most": _rim_speed(held, taken),
+        RIM_SPEED: _rim_speed(held, taken),
         "Q": _quality(held, taken),
         "result": _result(held, taken),
         "flags": " ".join(flags),
         "file": files.get(sweep.files[0], "[nr]")[:8],
     }  # fmt: skip
+
+
+def _number(value: Shown) -> str:
+    """Return a number whose unit stands in the head."""
+    return value.text.partition("\u00a0")[0] if not value.text.startswith("[") else value.text
 
 
 def _driven(taken: Taken) -> bool:
@@ -75,18 +82,18 @@ def _temperatures(taken: Taken) -> str:
     low, high = entry.temperature_low, entry.temperature_high or entry.temperature_low
     texts = [f"{end.value:.4g}" for end in (low, high)]
     if texts[0] == texts[1]:
-        return f"{texts[0]}\u00a0K"
+        return texts[0]
     direction = taken.sheet.direction
     if direction == "down":
         texts.reverse()
     arrow = "\u2192" if direction in ("up", "down") else ("\u2194" if direction == "both" else "\u2013")
-    return f"{texts[0]}\u00a0{arrow} {texts[1]}\u00a0K"
+    return f"{texts[0]}\u00a0{arrow} {texts[1]}"
 
 
 def _rate(taken: Taken) -> str:
     sweep, entry = taken.sheet, taken.entry
     if sweep.rate is not None:
-        return str(shown(sweep.rate, setting=True))
+        return _number(shown(sweep.rate.to("mK/h"), setting=True))
     if sweep.kind != "temperature-sweep":
         return "[na]"
     if entry is None or entry.begin is None or entry.end is None or sweep.direction not in ("up", "down"):
@@ -97,7 +104,7 @@ def _rate(taken: Taken) -> str:
         return "[nr]"
     sign = "+" if sweep.direction == "up" else "\u2212"
     # Computed from the span, not recorded: marked d.
-    return f"{sign}{1e3 * (high.value - low.value) / hours:.3g}\u00a0mK/h\u00a0d"
+    return f"{sign}{1e3 * (high.value - low.value) / hours:.3g}\u00a0d"
 
 
 def _rim_speed(held: Holdings, taken: Taken) -> str:
@@ -113,7 +120,7 @@ def _rim_speed(held: Holdings, taken: Taken) -> str:
         return "[nr]"
     share = channel.high * unit_factor(channel.unit, "amplitude") / detection.reference_signal.si
     speed = detection.reference_rim_velocity.si * share
-    return f"{speed * 1e6:.3g}\u00a0µm/s {detection.reference_rim_velocity.convention or ''}\u00a0d".replace(" \u00a0", "\u00a0")
+    return f"{speed * 1e6:.3g} {detection.reference_rim_velocity.convention or ''}\u00a0d"
 
 
 def _complete(detection: Detection | None) -> bool:
@@ -127,8 +134,12 @@ def _quality(held: Holdings, taken: Taken) -> str:
     return str(absent("na" if taken.sheet.kind in ("isotherm", "log", "calibration", "heat-capacity") else "nm"))
 
 
-def _result(held: Holdings, taken: Taken) -> str:
+def _result(held: Holdings, taken: Taken) -> str | Prose:
     for reduction in held.reductions_of(taken.sheet.name):
         for each in held.headline(reduction):
-            return f"{each.name} = {shown_output(each)}" if each.verdict is None else str(shown_output(each))
+            value = shown_output(each)
+            if each.verdict is not None:
+                return value.text
+            name = symbol_of(each.name)
+            return Prose(f"{name.plain} = {value.plain}", (*name.pieces, Piece(f" = {value.text}", "", Tex(f" = {value.latex}"))))
     return str(absent("pend"))
