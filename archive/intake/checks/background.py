@@ -8,7 +8,7 @@ import numpy as np
 
 from archive.intake.checks.curves import Curve, curve_of
 from archive.intake.checks.rows import counting, sigma, tables, temperature
-from archive.intake.checks.telling import listed, number, on_row, on_sweep
+from archive.intake.checks.telling import in_file_unit, listed, number, on_row, on_sweep
 from archive.intake.reading import Reading, SweepTable
 from archive.intake.thresholds import Thresholds
 from schemas.cell import TorsionalOscillator
@@ -229,22 +229,23 @@ def drop_sign(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]:
             film.temperature[inside], background.temperature, background.values
         )
         # The film is normal, if anywhere, at the warm end; there the background is aligned.
-        drop = float(np.median(excess[-max(3, len(excess) // 20) :])) - excess
-        limit = thresholds.drop_sigma * float(np.hypot(sigma(table, name), _row_sigma(background.table)))
+        warm = max(5, len(excess) // 10)
+        drop = float(np.median(excess[-warm:])) - excess
+        # Film, background, and the median that aligns them (its variance is pi/2 that of a mean).
+        spread = float(np.hypot(sigma(table, name), _row_sigma(background.table)))
+        limit = thresholds.drop_sigma * spread * float(np.sqrt(1 + np.pi / 2 / warm))
         negative = float(np.mean(drop < -limit))
         if negative > thresholds.drop_points_fraction:
-            deeper = -float(drop.min()) > float(drop.max())
+            depth = -float(drop.min())
+            largest = _largest_drop(reading, reading.sheet.cell_of(table.sweep)) or 0.0
+            # A small dip is a drift between the runs; a drop that is mostly negative has the wrong sign or unit.
+            wrong = depth > max(float(drop.max()), 3 * limit, thresholds.background_fraction * largest)
             yield on_sweep(
                 reading,
                 table,
                 "drop-sign",
-                "error"
-                if deeper
-                and -float(drop.min())
-                > thresholds.background_fraction
-                * (_largest_drop(reading, reading.sheet.cell_of(table.sweep)) or 0.0)
-                else "warning",
-                f"the drop of the period in {table.name} is negative in {100 * negative:.3g} per cent of its range, down to {number(float(drop.min()) * 1e9, 'ns', 3)}",
+                "error" if wrong else "warning",
+                f"the drop of the period in {table.name} is negative in {100 * negative:.3g} per cent of its range, down to {number(-depth * 1e9, 'ns', 3)}",
                 channel=name,
                 expected=f"at least -{number(limit * 1e9, 'ns', 3)} in {100 * (1 - thresholds.drop_points_fraction):g} per cent (drop_sigma, drop_points_fraction)",
                 remedy="look at the unit of the period, at which run is the empty one, and at drifts between the two",
@@ -276,7 +277,7 @@ def dissipation_sign(reading: Reading, thresholds: Thresholds) -> Iterator[Findi
                 f"channel {name} of {table.name} is not above zero in {len(wrong)} row(s), {100 * share:.3g} per cent",
                 int(wrong[0]),
                 channel=name,
-                found=number(float(values[wrong[0]])),
+                found=in_file_unit(table, name, float(values[wrong[0]])),
                 expected=f"above zero; error beyond {100 * thresholds.drop_points_fraction:g} per cent (drop_points_fraction)",
                 remedy="look at sign convention and unit, or declare a sentinel",
             )

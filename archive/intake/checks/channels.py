@@ -8,7 +8,7 @@ from collections.abc import Iterator
 import numpy as np
 
 from archive.intake.checks.rows import bound, counting, noise, sigma, tables
-from archive.intake.checks.telling import number, on_row, on_sweep
+from archive.intake.checks.telling import in_file_unit, number, on_row, on_sweep
 from archive.intake.reading import Reading, SweepTable
 from archive.intake.thresholds import Thresholds
 from schemas.cell import TorsionalOscillator
@@ -114,7 +114,7 @@ def _plateau(table: SweepTable, name: str, values: np.ndarray, thresholds: Thres
             table,
             "saturated",
             "warning",
-            f"channel {name} of {table.name} stays at its largest value {number(float(np.nanmax(values)))} (SI) for {longest} rows",
+            f"channel {name} of {table.name} stays at its largest value {in_file_unit(table, name, float(np.nanmax(values)))} for {longest} rows",
             begin,
             channel=name,
             expected=f"fewer than {thresholds.plateau_rows} equal rows there (plateau_rows)",
@@ -241,7 +241,7 @@ def coarse_steps(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]:
                     table,
                     "coarse-steps",
                     "note",
-                    f"channel {name} of {table.name} moves in steps of {number(step)} (SI), {step / u:.3g} times its uncertainty",
+                    f"channel {name} of {table.name} moves in steps of {in_file_unit(table, name, step)}, {step / u:.3g} times its uncertainty",
                     channel=name,
                     expected="steps smaller than the uncertainty",
                     remedy="write more digits, or state an uncertainty that holds the step",

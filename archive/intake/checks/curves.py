@@ -81,13 +81,15 @@ def _steepest(curve: Curve) -> tuple[int, Floats]:
 
 def drop_width(curve: Curve) -> float | None:
     """Return the width in K of a drop: its height over its largest slope; None if there is none above the noise."""
-    _, slope = _steepest(curve)
+    at, slope = _steepest(curve)
     height = float(np.ptp(curve.values))
-    if not height > 20 * curve.uncertainty:
+    step = abs(float(curve.values[min(at + 1, len(slope) - 1)] - curve.values[max(at - 1, 0)]))
+    # Noise is steep too, between neighbouring bins; a drop stands far above it.
+    if not (height > 20 * curve.uncertainty and step > 10 * curve.uncertainty):
         return None
     width = height / float(np.max(np.abs(slope)))
-    # A drop is a feature only if it is narrow against the sweep.
-    return width if width < 0.5 * float(np.ptp(curve.temperature)) else None
+    # A drop is a feature only if it is narrow against the sweep; a background is not.
+    return width if width < 0.25 * float(np.ptp(curve.temperature)) else None
 
 
 def lag(up: Curve, down: Curve) -> tuple[float, float] | None:

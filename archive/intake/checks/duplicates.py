@@ -8,7 +8,7 @@ from itertools import combinations
 import numpy as np
 
 from archive.intake.checks.check import History
-from archive.intake.checks.rows import tables, time_span
+from archive.intake.checks.rows import noise, tables, time_span
 from archive.intake.checks.telling import on_sheet, on_sweep
 from archive.intake.reading import Reading, SweepTable
 from archive.intake.thresholds import Thresholds
@@ -69,6 +69,7 @@ def _same_columns(first: SweepTable | None, second: SweepTable | None) -> bool:
 
 def same_data(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]:
     """Find two sweeps from different files whose numbers agree within rounding."""
+    limit = thresholds.same_data_fraction
     for first, second in combinations(tables(reading), 2):
         if (
             set(first.sweep.files) & set(second.sweep.files)
@@ -79,11 +80,13 @@ def same_data(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]:
         if first.stride != second.stride or _digests(reading, first) & _digests(reading, second):
             continue  # the same bytes are told of as such
         # A few rows tell most pairs apart, and a long record is compared in full only then.
-        few = _largest_difference(first, second, slice(0, None, max(1, len(first.lines) // 64)))
-        if few is not None and few >= thresholds.same_data_fraction:
+        few = _largest_difference(
+            first, second, slice(0, None, max(1, len(first.lines) // 64)), fraction=limit
+        )
+        if few is not None and few >= limit:
             continue
-        largest = _largest_difference(first, second, slice(None))
-        if largest is not None and largest < thresholds.same_data_fraction:
+        largest = _largest_difference(first, second, slice(None), fraction=limit)
+        if largest is not None and largest < limit:
             yield on_sweep(
                 reading,
                 second,
@@ -91,7 +94,7 @@ def same_data(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]:
                 "warning",
                 f"all {second.rows} rows of {second.name} equal those of {first.name} within a fraction {max(largest, 1e-16):.1e}",
                 key="files",
-                expected=f"a difference of more than {thresholds.same_data_fraction:g} (same_data_fraction)",
+                expected=f"a difference of more than {limit:g} (same_data_fraction)",
                 remedy="they are one data set at different rounding: keep the one with more digits, the other under other_files",
             )
 
@@ -100,7 +103,9 @@ def _digests(reading: Reading, table: SweepTable) -> set[str]:
     return {entry.sha256 for name in table.sweep.files if (entry := reading.raw_files.get(name)) is not None}
 
 
-def _largest_difference(first: SweepTable, second: SweepTable, rows: slice) -> float | None:
+def _largest_difference(
+    first: SweepTable, second: SweepTable, rows: slice, *, fraction: float
+) -> float | None:
     """Largest difference of the columns of like kind over the largest value of each; None if they are not alike."""
     left, right = _by_quantity(first), _by_quantity(second)
     if not left or [quantity for quantity, _ in left] != [quantity for quantity, _ in right]:
@@ -120,6 +125,11 @@ def _largest_difference(first: SweepTable, second: SweepTable, rows: slice) -> f
         floor = 1e-3 * float(size.max())
         largest = max(largest, float(np.max(np.abs(a[known] - b[known]) / np.maximum(size, floor))))
         moving = moving or float(np.ptp(a[known])) > 0
+        # A repeated measurement differs by its scatter, a copy by rounding only: a period to nine digits shows it.
+        scatter = float(np.nanmax([noise(a[known]), noise(b[known]), 0.0]))
+        rounding = max(0.5 * scatter, fraction * float(np.ptp(a[known])))
+        if rows == slice(None) and float(np.std(a[known] - b[known])) > rounding:
+            return None
     return largest if moving else None
 
 

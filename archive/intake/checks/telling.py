@@ -7,8 +7,9 @@ import math
 from archive.intake.reading import Reading, SweepTable
 from archive.intake.sheet import spelled
 from schemas.finding import Finding, Severity
+from schemas.quantity import unit_factor
 
-__all__ = ["listed", "number", "on_row", "on_sheet", "on_sweep"]
+__all__ = ["in_file_unit", "listed", "number", "on_row", "on_sheet", "on_sweep"]
 
 
 def number(value: float, unit: str = "", digits: int = 4) -> str:
@@ -21,6 +22,14 @@ def number(value: float, unit: str = "", digits: int = 4) -> str:
     """
     text = "no number" if math.isnan(value) else f"{value:.{digits}g}"
     return text if unit in ("", "1") else f"{text} {unit}"
+
+
+def in_file_unit(table: SweepTable, name: str, value: float) -> str:
+    """Return an SI value of a channel as the file writes it, with its unit."""
+    channel = table.channels[name]
+    unit = channel.unit or "1"
+    factor = 1.0 if channel.quantity == "instant" else unit_factor(unit, channel.quantity)
+    return number(value / factor, unit)
 
 
 def listed(names: list[str], most: int = 8) -> str:

@@ -857,6 +857,16 @@ def test_one_file_read_twice_is_a_copy() -> None:
     assert found(sheet(change, {**good_columns(), "one": given, "two": given}), "file-twice")
 
 
+def test_a_repeated_sweep_is_no_copy_though_its_period_repeats_to_a_part_in_a_million() -> None:
+    reading = second_empty(0.0)
+    table = reading.tables["again"]
+    for name in ("thermometer", "amplitude", "drive"):
+        table.columns[name] = reading.tables["empty"].columns[name]
+    assert not found(reading, "same-data")
+    table.columns["period"] = rounded(reading.tables["empty"].columns["period"], 11)
+    assert found(reading, "same-data")
+
+
 def test_two_roundings_of_a_published_isotherm_are_one_data_set() -> None:
     # First points of a 4He isotherm at 4.2 K as stored in two files of one repository (Nichols et al., Phys. Rev. B 102,
     # 144505 (2020), data under the MIT licence); points that share a pressure are real.
