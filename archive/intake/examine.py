@@ -10,6 +10,7 @@ import numpy as np
 from archive.errors import BadRequest
 from archive.intake.cautions import cautions
 from archive.intake.checks import run_checks
+from archive.intake.checks.check import History
 from archive.intake.folder import SHEET_NAME
 from archive.intake.reading import Reading, SweepTable
 from archive.intake.thresholds import Thresholds
@@ -25,7 +26,7 @@ __all__ = ["add_ledger", "add_temperatures", "examined"]
 
 
 def examined(
-    reading: Reading, thresholds: Thresholds
+    reading: Reading, thresholds: Thresholds, *, earlier: History | None = None
 ) -> tuple[tuple[Finding, ...], tuple[dict[str, Any], ...]]:
     """All findings on a reading, sorted, with waivers applied, and its cautions as plain data.
 
@@ -35,11 +36,13 @@ def examined(
         With a valid sheet; temperatures and ledger are added to it.
     thresholds : Thresholds
         Limits of the checks.
+    earlier : History, optional
+        What the archive knows of earlier cooldowns.
     """
     for table in reading.tables.values():
         add_temperatures(reading, table)
     add_ledger(reading)
-    findings = [*reading.findings, *run_checks(reading, thresholds)]
+    findings = [*reading.findings, *run_checks(reading, thresholds, earlier=earlier)]
     findings = apply_waivers(
         findings, reading.sheet.waiver, file=SHEET_NAME, line_of=lambda number: reading.line("waiver", number)
     )

@@ -267,7 +267,7 @@ def _short(digest: str | None) -> str:
 
 def records_differ(reading: Reading, archived: Archived) -> list[Finding]:
     """Records whose content is not what the archive holds under the same revision."""
-    findings = []
+    findings: list[Finding] = []
     for record in reading.sheet.records:
         held = archived(record.address)
         if held is None:

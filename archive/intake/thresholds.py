@@ -16,7 +16,7 @@ _PRACTICE = "common practice, no source"
 
 
 def _limit(default: float, description: str, *, above: float = 0.0, below: float | None = None) -> float:
-    return Field(default=default, gt=above, lt=below, description=description)  # type: ignore[no-any-return]
+    return Field(default=default, gt=above, lt=below, description=description)
 
 
 class Thresholds(Record):

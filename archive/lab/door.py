@@ -20,12 +20,14 @@ from numpy.typing import NDArray
 from archive.errors import ArchiveBusy, BadRequest, NotAnArchive, UnknownAddress
 from archive.index import AccessionRow, CooldownRow, Index, RecordRow, ResultRow, SearchQuery, SweepRow
 from archive.intake import ingest as intake_ingest
+from archive.intake.checks.check import History
 from archive.intake.examine import examined
 from archive.intake.folder import read_cooldown
 from archive.intake.reading import Reading
 from archive.intake.settings import SETTINGS_NAME, Settings, read_settings, settings_text
 from archive.intake.thresholds import Thresholds
 from archive.lab import reducing, reporting, showing
+from archive.lab.earlier import history
 from archive.lab.outcomes import CheckReport, IngestOutcome, ReduceOutcome, ReplayReport
 from archive.lab.source import LabSource
 from archive.reduction.software import software
@@ -66,6 +68,11 @@ def _report(reading: Reading, findings: Sequence[Any], cautions: Sequence[dict[s
     return CheckReport(tuple(findings), tuple(cautions), summary, reading)
 
 
+def _earlier(source: LabSource, reading: Reading) -> History:
+    cells = {cell.name for sweep in reading.sheet.sweep if (cell := reading.cell_of(sweep)) is not None}
+    return history(source, reading.sheet.name, cells)
+
+
 def check_folder(
     folder: Path,
     *,
@@ -100,7 +107,8 @@ def check_folder(
     if source is not None:
         reading.findings.extend(intake_ingest.records_differ(reading, archived))
     progress("checking")
-    findings, cautions = examined(reading, thresholds or Thresholds())
+    earlier = None if source is None else _earlier(source, reading)
+    findings, cautions = examined(reading, thresholds or Thresholds(), earlier=earlier)
     return _report(reading, findings, cautions)
 
 
@@ -296,7 +304,9 @@ class Archive:
                 store=self._store,
                 earlier=self._source.accessions,
                 archived=self._source.find_record,
-                examine=lambda reading: intake_ingest.Examination(*examined(reading, thresholds)),
+                examine=lambda reading: intake_ingest.Examination(
+                    *examined(reading, thresholds, earlier=_earlier(self._source, reading))
+                ),
                 clock=self._clock,
                 software=software(),
                 progress=progress,

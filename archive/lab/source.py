@@ -14,7 +14,7 @@ from numpy.typing import NDArray
 from pydantic import TypeAdapter, ValidationError
 
 from archive.errors import DamagedFile, UnknownAddress
-from archive.index import Index
+from archive.index import Index, SearchQuery, SweepRow
 from archive.intake.summary import record_digest
 from archive.reduction.estimate import Estimate
 from archive.reduction.outputs import estimate_from
@@ -111,6 +111,10 @@ class LabSource:
         raise UnknownAddress(
             f"there is no sweep {cooldown}/{sweep} in this archive", remedy="list them with: stillroom search"
         )
+
+    def newest_sweeps(self, cell: str, *, kind: str) -> list[SweepRow]:
+        """Sweeps of one kind in a cell, the newest first."""
+        return self.index.search(SearchQuery(cell=cell, kind=kind, descending=True))
 
     def column(self, accession_address: str, sweep_name: str, channel: str) -> NDArray[Any]:
         """Channel as stored, in the unit of the file."""

@@ -151,7 +151,9 @@ def _unknown(
         *path,
         place=place,
         expected=listed(list(dict.fromkeys(known))) or f"a {kind} that the sheet or the archive describes",
-        remedy=f"did you mean {close[0]}?" if close else f"describe the {kind}, or correct its name",
+        remedy=f"did you mean {close[0]}?"
+        if close
+        else f"describe the {kind}, correct its name, or name the archive that holds it with --archive",
     )
 
 

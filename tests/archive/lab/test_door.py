@@ -310,3 +310,19 @@ def test_a_report_is_written_whole_or_not_at_all(
     with pytest.raises(BadRequest, match="No space left"):
         sqlite_lab.write_reports({"a.html": b"second"}, target)
     assert {path.name: path.read_bytes() for path in target.iterdir()} == {"a.html": b"first"}
+
+
+def test_checks_know_what_earlier_cooldowns_brought(lab: Archive, folder: Path) -> None:
+    lab.ingest(folder)
+    again = write_folder(folder.parent / "2026-04", name="2026-04")
+    codes = {finding.code for finding in lab.check(again).findings}
+    assert "file-archived" in codes
+    assert "period-scatter-history" not in codes
+    rng = np.random.default_rng(1)
+    lines = (again / "film.csv").read_text(encoding="utf-8").splitlines()
+    noisy = [lines[0]]
+    for line in lines[1:]:
+        time, temperature, period = line.split(",")
+        noisy.append(f"{time},{temperature},{float(period) + rng.normal(0, 1e-7):.9f}")
+    (again / "film.csv").write_text("\n".join(noisy) + "\n", encoding="utf-8")
+    assert "period-scatter-history" in {finding.code for finding in lab.check(again).findings}
