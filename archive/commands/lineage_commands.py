@@ -11,7 +11,7 @@ from archive.commands import opening
 from archive.commands.describing import describe
 from archive.commands.failures import EXIT_WARNINGS
 from archive.commands.machine import write_json
-from archive.commands.opening import archive_option, json_option, strict_option
+from archive.commands.opening import archive_option, json_option, require_address, strict_option
 from archive.commands.terminal import Progress, clean, draw, say
 
 if TYPE_CHECKING:
@@ -58,6 +58,7 @@ def trace(*, address: str, archive_dir: Path | None, as_json: bool) -> None:
     Example:
       stillroom trace 2026-03/s017@film-transition.2#T_KT
     """
+    require_address(address)
     with opening.open_archive(archive_dir) as lab, Progress("tracing"):
         node = lab.trace(address)
     if as_json:
@@ -103,6 +104,7 @@ def replay(*, address: str, archive_dir: Path | None, as_json: bool, strict: boo
 
     Exit code: with --strict 1 if any output differs.
     """
+    require_address(address)
     with opening.open_archive(archive_dir) as lab, Progress("computing again"):
         report = lab.replay(address)
     if as_json:

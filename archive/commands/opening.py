@@ -9,12 +9,20 @@ from typing import TYPE_CHECKING, Any
 
 import click
 
+from archive.commands.failures import told
 from archive.commands.terminal import note
 
 if TYPE_CHECKING:
     from archive.lab import Archive
 
-__all__ = ["archive_option", "archive_or_none", "json_option", "open_archive", "strict_option"]
+__all__ = [
+    "archive_option",
+    "archive_or_none",
+    "json_option",
+    "open_archive",
+    "require_address",
+    "strict_option",
+]
 
 
 def _inherited(ctx: click.Context, parameter: click.Parameter, value: Path | None) -> Path | None:
@@ -66,6 +74,20 @@ def open_archive(folder: Path | None) -> Archive:
         note(f"note: {sentence}")
     lab.notices.clear()
     return lab
+
+
+def require_address(text: str) -> None:
+    """Refuse a text that is no address, before an archive is opened for it.
+
+    Raises
+    ------
+    BadRequest
+        With the forms that an address has.
+    """
+    from schemas.address import parse_address
+
+    with told("ADDRESS"):
+        parse_address(text)
 
 
 def archive_or_none(folder: Path | None) -> Archive | None:

@@ -8,7 +8,7 @@ import click
 
 from archive.commands import opening
 from archive.commands.machine import write_json
-from archive.commands.opening import archive_option, json_option
+from archive.commands.opening import archive_option, json_option, require_address
 from archive.commands.terminal import Progress, say
 
 __all__ = ["appendix", "run_sheet"]
@@ -77,6 +77,8 @@ def appendix(
 
     Then in the thesis: \\input{appendix/appendix-preamble} before, \\input{appendix/appendix} where it belongs.
     """
+    for address in addresses:
+        require_address(address)
     with opening.open_archive(archive_dir) as lab, Progress("writing the appendix"):
         written = lab.write_reports(lab.appendix(addresses, title=title, level=level), target)
     _say_written(written, as_json=as_json)

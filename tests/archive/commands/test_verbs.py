@@ -131,29 +131,29 @@ def test_trace_is_a_tree_of_labels(run: Run, fake: Fake) -> None:
         "2026-03.a1:raw/a.csv", "raw-file", "2026-03.a1:raw/a.csv, lines 3 to 322", {"sha256": "ab"}
     )
     fake(trace=TraceNode("x#T_KT", "result", "x#T_KT = 0.7312 \x1b[2JK", {}, (leaf,)))
-    assert run("trace", "x#T_KT").stdout.splitlines() == [
+    assert run("trace", "a/x#T_KT").stdout.splitlines() == [
         "x#T_KT = 0.7312 [2JK",
         "└── 2026-03.a1:raw/a.csv, lines 3 to 322",
     ]
-    assert parsed(run("trace", "x#T_KT", "--json"))["children"][0]["facts"] == {"sha256": "ab"}
+    assert parsed(run("trace", "a/x#T_KT", "--json"))["children"][0]["facts"] == {"sha256": "ab"}
 
 
 @pytest.mark.parametrize(
     ("report", "strict", "code", "sentence"),
     [
-        pytest.param(ReplayReport("x@p.1", identical=True, outputs=21), True, 0, "All 21 outputs of x@p.1 are bit for bit", id="identical"),
-        pytest.param(ReplayReport("x@p.1", identical=False, outputs=21, largest_difference={"T": 1e-15}, shifts={"T_KT": 2e-9}), False, 0, "T: largest relative difference 1e-15", id="differs"),
-        pytest.param(ReplayReport("x@p.1", identical=False, outputs=21, shifts={"T_KT": 2e-9}), True, 1, "2e-09 of its standard uncertainty", id="strict"),
+        pytest.param(ReplayReport("a/x@p.1", identical=True, outputs=21), True, 0, "All 21 outputs of a/x@p.1 are bit for bit", id="identical"),
+        pytest.param(ReplayReport("a/x@p.1", identical=False, outputs=21, largest_difference={"T": 1e-15}, shifts={"T_KT": 2e-9}), False, 0, "T: largest relative difference 1e-15", id="differs"),
+        pytest.param(ReplayReport("a/x@p.1", identical=False, outputs=21, shifts={"T_KT": 2e-9}), True, 1, "2e-09 of its standard uncertainty", id="strict"),
     ],
 )  # fmt: skip
 def test_replay_says_how_far_it_is_off(
     *, report: ReplayReport, strict: bool, code: int, sentence: str, run: Run, fake: Fake
 ) -> None:
     fake(replay=report)
-    result = run("replay", "x@p.1", *(["--strict"] if strict else []))
+    result = run("replay", "a/x@p.1", *(["--strict"] if strict else []))
     assert result.exit_code == code
     assert sentence in result.stdout
-    assert parsed(run("replay", "x@p.1", "--json"))["identical"] is report.identical
+    assert parsed(run("replay", "a/x@p.1", "--json"))["identical"] is report.identical
 
 
 def test_reports_name_the_files_they_wrote(run: Run, fake: Fake) -> None:
@@ -168,3 +168,17 @@ def test_reports_name_the_files_they_wrote(run: Run, fake: Fake) -> None:
     }
     assert archive.asked[2] == ("appendix", (("a", "b"),), {"title": "T", "level": "chapter"})
     assert run("appendix", "a").exit_code == 2
+
+
+@pytest.mark.parametrize(
+    "words", [["replay"], ["trace"], ["appendix", "-o", "out"]], ids=lambda words: words[0]
+)
+@pytest.mark.parametrize("text", ["x y", "../etc", ""])
+def test_a_text_that_is_no_address_is_refused_with_the_forms(
+    words: list[str], text: str, run: Run, fake: Fake
+) -> None:
+    archive = fake()
+    result = run(*words, text)
+    assert result.exit_code == 2
+    assert "is no address; write a cooldown (2026-03)" in result.stderr
+    assert archive.asked == []
