@@ -170,8 +170,7 @@ def say_outcomes(outcomes: list[ReduceOutcome]) -> None:
         say("No plan applies to these sweeps; see: stillroom plans")
     if made:
         rows = [
-            (outcome.address or "", "  ".join(_shown(entry) for entry in headline(outcome)))
-            for outcome in made
+            (outcome.address or "", tuple(_shown(entry) for entry in headline(outcome))) for outcome in made
         ]
         table(("reduction", "results"), rows)
     for outcome in outcomes:

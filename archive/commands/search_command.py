@@ -148,17 +148,25 @@ def _query(lab: Archive, words: tuple[str, ...], limit: int, asked: dict[str, An
 
 
 def _bounds(text: str, kind: str) -> Bounds:
+    return si_bounds(text, lambda number, unit: _si(number, unit, kind))
+
+
+def _si(number: str, unit: str, kind: str) -> float:
     from schemas.quantity import Quantity
 
-    return si_bounds(text, lambda number, unit: Quantity.parse(f"{number} {unit}".strip(), kind).si)
+    quantity = Quantity.parse(f"{number} {unit}".strip(), kind)
+    if quantity.scale is not None:
+        raise ValueError(
+            f"found a scale behind the range; temperatures are compared as numbers, each on its own scale: "
+            f"leave it out, or choose sweeps by --scale {quantity.scale}"
+        )
+    return quantity.si
 
 
 def _coverage(lab: Archive, text: str, substrate: str | None) -> Bounds:
-    from schemas.quantity import Quantity
-
     def to_si(number: str, unit: str) -> float:
         if unit not in LAYER_WORDS:
-            return Quantity.parse(f"{number} {unit}".strip(), "coverage").si
+            return _si(number, unit, "coverage")
         if substrate is None:
             raise ValueError(NO_SUBSTRATE)
         return float(number) * layer_of(substrate, lab).coverage.si

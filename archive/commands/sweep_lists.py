@@ -2,36 +2,32 @@
 
 from __future__ import annotations
 
-import shutil
-import sys
 from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
 from archive.commands.machine import Cell, quantity, write_csv, write_json
 from archive.commands.numbers import readable, shown_number
-from archive.commands.terminal import say, table
+from archive.commands.terminal import say, table, wide_output
 
 if TYPE_CHECKING:
     from archive.index import SweepResult, SweepRow
 
 __all__ = ["say_sweeps", "write_sweeps_csv", "write_sweeps_json"]
 
-# Below this many columns the table leaves out what an address or `show` tells as well.
-_WIDE = 110
 # Coverage is shown as this trade reads it; SI in JSON and CSV.
 _UMOL = 1e6
 
 
 def say_sweeps(rows: Sequence[SweepRow]) -> None:
     """Write a table of sweeps, and how many there are."""
-    wide = not sys.stdout.isatty() or shutil.get_terminal_size().columns >= _WIDE
+    wide = wide_output()
     columns = ["sweep", "kind", *(("begin", "cell") if wide else ()), "umol/m^2", "K", "results"]
     if rows:
         table(columns, (_line(row, wide=wide) for row in rows), right=("umol/m^2", "K"))
     say(f"{len(rows) or 'No'} sweep{'' if len(rows) == 1 else 's'}.")
 
 
-def _line(row: SweepRow, *, wide: bool) -> list[str]:
+def _line(row: SweepRow, *, wide: bool) -> list[str | tuple[str, ...]]:
     more = (row.begin.strftime("%Y-%m-%d") if row.begin is not None else "-", row.cell or "-")
     return [
         row.address,
@@ -39,7 +35,7 @@ def _line(row: SweepRow, *, wide: bool) -> list[str]:
         *(more if wide else ()),
         "empty" if row.empty_cell else _coverage(row),
         _temperatures(row),
-        "  ".join(_result(result) for result in row.results[:3]),
+        tuple(_result(result) for result in row.results[:3]),
     ]
 
 

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import io
 import os
+import shutil
 import sys
 import threading
 import unicodedata
@@ -21,12 +22,16 @@ if TYPE_CHECKING:
     from rich.console import RenderableType
     from rich.progress import Progress as Bar
 
-__all__ = ["Progress", "clean", "draw", "note", "say", "styled", "table"]
+__all__ = ["Progress", "clean", "draw", "note", "say", "styled", "table", "wide_output"]
 
 # Controls (Cc), direction marks and other invisible formatting (Cf), lone surrogates (Cs).
 _UNSEEN = frozenset({"Cc", "Cf", "Cs"})
 # A pipe has no width; wide enough that no cell of a table is folded there.
 _PIPE_WIDTH = 4000
+# Below this many columns a table leaves out what can be left out, and stacks what stands side by side.
+_WIDE = 120
+
+Cell = str | tuple[str, ...]
 
 
 def clean(text: str) -> str:
@@ -60,15 +65,15 @@ def note(text: str) -> None:
     click.echo(clean(text), err=True)
 
 
-def table(columns: Sequence[str], rows: Iterable[Sequence[str]], *, right: Iterable[str] = ()) -> None:
+def table(columns: Sequence[str], rows: Iterable[Sequence[Cell]], *, right: Iterable[str] = ()) -> None:
     """Write a table to stdout; on a terminal it fits the width, in a pipe no cell is folded.
 
     Parameters
     ----------
     columns : sequence of str
         Headings.
-    rows : iterable of sequence of str
-        Cells; cleaned here.
+    rows : iterable of sequence of str or tuple of str
+        Cells; cleaned here. Several texts of one cell stand below each other on a narrow terminal.
     right : iterable of str
         Headings of columns that are set flush right.
     """
@@ -81,8 +86,19 @@ def table(columns: Sequence[str], rows: Iterable[Sequence[str]], *, right: Itera
     for name in columns:
         shown.add_column(Text(name), justify="right" if name in flush else "left", overflow="fold")
     for row in rows:
-        shown.add_row(*(Text(clean(cell)) for cell in row))
+        shown.add_row(*(Text(_in_one_cell(cell)) for cell in row))
     draw(shown)
+
+
+def wide_output() -> bool:
+    """Whether a line may be long: in a pipe, or on a wide terminal."""
+    return not sys.stdout.isatty() or shutil.get_terminal_size().columns >= _WIDE
+
+
+def _in_one_cell(cell: Cell) -> str:
+    if isinstance(cell, str):
+        return clean(cell)
+    return ("  " if wide_output() else "\n").join(clean(text) for text in cell)
 
 
 def draw(shown: RenderableType) -> None:
