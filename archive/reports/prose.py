@@ -18,7 +18,11 @@ from schemas.kinds import KINDS
 from schemas.uncertain_text import RoundedText
 from schemas.units import parse_unit
 
-__all__ = ["Piece", "Prose", "prose", "symbol_of"]
+__all__ = ["Piece", "Prose", "breakable", "prose", "symbol_of"]
+
+# Words longer than this may break: names have up to 64 characters, addresses 200.
+_LONGEST_UNBROKEN = 20
+_PIECE = 10
 
 _GREEK = {
     "chi": "χ", "sigma": "σ", "zeta": "ζ", "rho": "ρ", "tau": "τ", "kappa": "κ", "omega": "ω", "lambda": "λ", "theta": "θ",
@@ -105,7 +109,14 @@ def symbol_of(name: str) -> Prose:
 
 
 def _text(text: str) -> Piece:
-    return Piece(text, "", tex(text))
+    return Piece(text, "", tex(breakable(text)))
+
+
+def breakable(text: str, most: int = _LONGEST_UNBROKEN, piece: int = _PIECE) -> str:
+    """Return a text in which long words may break: a zero-width space every few characters."""
+    return " ".join(
+        word if len(word) <= most else "\u200b".join(word[k : k + piece] for k in range(0, len(word), piece)) for word in text.split(" ")
+    )
 
 
 def _number(found: re.Match[str]) -> list[Piece] | None:

@@ -20,15 +20,12 @@ from archive.reports.front_page import front_page
 from archive.reports.holdings import Holdings
 from archive.reports.later_pages import later_pages
 from archive.reports.numbers import Shown
-from archive.reports.prose import Prose
+from archive.reports.prose import Prose, breakable
 from archive.reports.standing import standing
 from archive.reports.view import CooldownView
 
 __all__ = ["run_sheet_html", "run_sheet_json", "run_sheet_pdf"]
 
-# Characters without a place to break, in tables: names may have 64 characters, addresses 200.
-_LONGEST_UNBROKEN = 20
-_PIECE = 10
 
 
 def run_sheet_html(view: CooldownView) -> str:
@@ -108,21 +105,13 @@ def _plain(told: Any) -> Any:
 
 def _for_paper(told: Any, name: str = "") -> Any:
     if isinstance(told, Prose):
-        return {"prose": [[_breakable(piece.text), piece.style] for piece in told.pieces]}
+        return {"prose": [[breakable(piece.text), piece.style] for piece in told.pieces]}
     if isinstance(told, Shown):
-        return _breakable(told.text)
+        return breakable(told.text)
     if isinstance(told, dict):
         return {key: _for_paper(each, key) for key, each in told.items()}
     if isinstance(told, list | tuple):
         return [_for_paper(each) for each in told]
     if name == "no.":
-        return _breakable(told, 6, 6)
-    return _breakable(told) if isinstance(told, str) and name not in ("svg", "sha256") else told
-
-
-def _breakable(text: str, most: int = _LONGEST_UNBROKEN, piece: int = _PIECE) -> str:
-    """Return a text in which long words may break: a zero-width space every few characters."""
-    parts = [
-        word if len(word) <= most else "\u200b".join(word[k : k + piece] for k in range(0, len(word), piece)) for word in text.split(" ")
-    ]
-    return " ".join(parts)
+        return breakable(told, 6, 6)
+    return breakable(told) if isinstance(told, str) and name not in ("svg", "sha256") else told

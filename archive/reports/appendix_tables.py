@@ -1,0 +1,213 @@
+"""Tables of the methods appendix: cells, thermometers, runs, results, steps, budget, corrections."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+
+from archive.reports.budget import budget_rows
+from archive.reports.holdings import Holdings
+from archive.reports.items_reduction import runs_not_used
+from archive.reports.later_pages import effect_states, parameter_text
+from archive.reports.numbers import Shown, absent, words
+from archive.reports.prose import Prose, prose, symbol_of
+from archive.reports.scope import Scope
+from archive.reports.tex import Tex
+from schemas.cell import Calorimeter, Cell, TorsionalOscillator
+from schemas.kinds import KINDS
+from schemas.lineage import OutputEntry, Value
+from schemas.quantity import Quantity
+from schemas.uncertain_text import in_preferred_unit, rounded
+from schemas.units import parse_unit
+
+__all__ = ["Table", "results_table", "tables"]
+
+Cell_ = Shown | Prose
+CODE_UNIT = {"1": Tex("1")}
+
+
+@dataclass(frozen=True)
+class Table:
+    """One table: label, caption, heads with widths in hundredths of the line, rows of cells."""
+
+    label: str
+    caption: str
+    heads: tuple[tuple[Tex, int], ...]
+    rows: tuple[tuple[Cell_, ...], ...]
+
+
+def head(text: str, unit: str | None = None) -> Tex:
+    """Return a head as quantity over unit."""
+    name = prose(text).latex
+    return name if unit is None else Tex(rf"{name}~/ $\mathrm{{{parse_unit(unit).latex}}}$")
+
+
+def bare(quantity: Quantity | None, unit: str) -> Shown:
+    """Return the number of a quantity in a unit that stands in the head."""
+    if quantity is None:
+        return absent("nr")
+    shown = quantity.to(unit)
+    return _digits(shown.value, shown.uncertainty)
+
+
+def _digits(value: float, u: float | None, *, setting: bool = False) -> Shown:
+    spread = u if u is not None and u > 0 else None
+    if spread is None:
+        value = float(f"{value:.6g}")
+    number = rounded(value, spread)
+    tail, tail_tex = ("", "") if spread is not None or setting else (" [u nr]", r"~{[}u~nr{]}")
+    return Shown(number.plain() + tail, number.typographic() + tail, Tex(f"${number.maths()}${tail_tex}"))
+
+
+def value_in(value: Value | None, kind: str, unit: str) -> Shown:
+    """Return the number of a document's value in a unit."""
+    if value is None or value.value is None:
+        return absent("nr")
+    spread = value.uncertainty if value.uncertainty else None
+    return bare(Quantity(value=value.value, uncertainty=spread, unit=value.unit, kind=kind), unit) if spread else _digits(Quantity(value=value.value, unit=value.unit, kind=kind).to(unit).value, None, setting=True)
+
+
+def number_and_unit(output: OutputEntry) -> tuple[Shown, Shown]:
+    """Return number and unit of a result in two cells."""
+    if output.value is None:
+        return words(output.verdict or "[lost]"), absent("na")
+    spread = output.uncertainty if output.uncertainty else None
+    if output.quantity not in KINDS:
+        return _digits(output.value, spread), words(output.unit)
+    shown = in_preferred_unit(Quantity(value=output.value, uncertainty=spread, unit=output.unit, kind=output.quantity))
+    unit = parse_unit(shown.unit)
+    return _digits(shown.value, shown.uncertainty), Shown(shown.unit, unit.typographic, Tex(rf"$\mathrm{{{unit.latex}}}$"))
+
+
+def results_table(scope: Scope) -> Table:
+    """Return the scalar results of the reductions that were asked for."""
+    rows = []
+    for reduction in scope.reductions:
+        if reduction.address not in scope.asked:
+            continue
+        entry = scope.taken_of(reduction).entry
+        coverage = value_in(entry.coverage if entry else None, "coverage", "umol/m^2") if scope.taken_of(reduction).sheet.gas == "helium" else absent("na")
+        for each in reduction.outputs:
+            if each.rows is None:
+                rows.append((symbol_of(each.name), prose(reduction.address), coverage, *number_and_unit(each), words(each.scale or "[na]")))
+    heads = ((head("result"), 17), (head("reduction"), 26), (head("coverage", "umol/m^2"), 14), (head("value"), 19), (head("unit"), 11), (head("scale"), 13))
+    return Table("results", "Results. The bracket is the standard uncertainty in the last digits.", heads, tuple(rows))
+
+
+def tables(scope: Scope) -> Iterator[Table]:
+    """Yield every table but the results."""
+    yield _cells(scope)
+    yield _thermometers(scope)
+    yield _runs(scope)
+    yield _not_used(scope)
+    yield _steps(scope)
+    yield _budget(scope)
+    for held in scope.runs:
+        yield _corrections(held)
+
+
+def _cells(scope: Scope) -> Table:
+    rows = [_cell(scope, cell) for cell in scope.cells]
+    heads = (
+        (head("cell"), 11), (head("material"), 14), (head("V", "cm^3"), 10), (head("A", "m^2"), 10), (head("substrate", "g"), 12), (head("P"), 15), (head("Q"), 14), (head("from"), 14),
+    )  # fmt: skip
+    heads = tuple((Tex(r"$P_0$~/ $\mathrm{ms}$"), width) if text == "P" else (text, width) for text, width in heads)
+    return Table("cells", "Cells, one row for each revision.", heads, tuple(rows))
+
+
+def _cell(scope: Scope, cell: Cell) -> tuple[Cell_, ...]:
+    substrate = next((each for each in scope.substrates if cell.substrate in (each.name, each.address)), None)
+    area = None if substrate is None else substrate.area
+    is_oscillator = isinstance(cell, TorsionalOscillator)
+    period = bare(cell.empty_period, "ms") if isinstance(cell, TorsionalOscillator) else absent("na")
+    quality = bare(cell.empty_quality_factor, "1") if isinstance(cell, TorsionalOscillator) and cell.empty_quality_factor else absent("nr" if is_oscillator or isinstance(cell, Calorimeter) else "na")
+    return (
+        prose(cell.address), words(cell.material or "[nr]"), bare(cell.free_volume, "cm^3"), bare(area, "m^2"), bare(None if substrate is None else substrate.mass, "g"),
+        period, quality, words(str(cell.valid_from) if cell.valid_from else "[nr]"),
+    )  # fmt: skip
+
+
+def _thermometers(scope: Scope) -> Table:
+    rows = [
+        (
+            prose(each.thermometer), prose(each.address), words(each.scale), bare(each.temperature_low, "K"), bare(each.temperature_high, "K"),
+            words(str(len(each.points)) if each.points else "[nr]"), words(str(each.date)), prose(each.against),
+        )
+        for each in scope.calibrations
+    ]  # fmt: skip
+    heads = (
+        (head("sensor"), 9), (head("calibration"), 15), (head("scale"), 12), (head("from", "K"), 11), (head("to", "K"), 11), (head("points"), 7), (head("date"), 12), (head("against"), 23),
+    )  # fmt: skip
+    return Table("thermometers", "Thermometers and calibrations in force; nothing is extrapolated beyond the ends.", heads, tuple(rows))
+
+
+def _runs(scope: Scope) -> Table:
+    rows = []
+    for held, taken in scope.used:
+        entry, address = taken.entry, f"{held.sheet.name}/{taken.sheet.name}"
+        by = [each for each in scope.reductions if each.sweep == address]
+        background = sorted({step.inputs["background"].address.partition("#")[0] for each in by for step in each.steps if "background" in step.inputs})
+        low, high = (None, None) if entry is None else (entry.temperature_low, entry.temperature_high)
+        rows.append((
+            prose(address), words(taken.sheet.kind.replace("-", " ")), value_in(None if entry is None else entry.coverage, "coverage", "umol/m^2"), _kelvin(low), _kelvin(high),
+            words(taken.sheet.direction), prose(", ".join(background) or "[na]"), prose(", ".join(each.plan.address for each in by)),
+        ))  # fmt: skip
+    heads = (
+        (head("sweep"), 13), (head("kind"), 14), (head("coverage", "umol/m^2"), 13), (head("from", "K"), 9), (head("to", "K"), 9), (head("direction"), 9), (head("background"), 18), (head("used by"), 15),
+    )  # fmt: skip
+    return Table("runs", "Runs used.", heads, tuple(rows))
+
+
+def _kelvin(value: Value | None) -> Shown:
+    if value is None or value.value is None:
+        return absent("nr")
+    return _digits(float(f"{value.value:.4g}"), None, setting=True)
+
+
+def _not_used(scope: Scope) -> Table:
+    rows = tuple((prose(address), words(kind), prose(reason)) for address, kind, reason in runs_not_used(scope))
+    return Table("not-used", "Runs not used, and why.", ((head("sweep"), 20), (head("kind"), 25), (head("reason"), 55)), rows)
+
+
+def _steps(scope: Scope) -> Table:
+    rows = []
+    for reduction in scope.reductions:
+        digests = {each.name: each.digest[:16] for each in reduction.outputs}
+        for step in reduction.steps:
+            rows.append((
+                prose(f"{reduction.address} {step.number}"), prose(f"{step.name} {step.version}"),
+                prose("; ".join(f"{port}: {each.address}" + (f" {each.digest[:16]}" if each.digest else "") for port, each in step.inputs.items())),
+                prose("; ".join(f"{name} = {parameter_text(value)}" for name, value in step.parameters.items()) or "none"),
+                prose("; ".join(f"{name} {digests.get(name, '')}" for name in step.outputs)),
+                prose("; ".join(each.code for each in step.findings) or "none"),
+            ))  # fmt: skip
+    heads = ((head("step"), 15), (head("operation"), 13), (head("inputs"), 27), (head("parameters, all"), 19), (head("outputs"), 16), (head("warnings"), 10))
+    return Table("steps", "Reduction steps. Digests are the first 16 hexadecimal digits of SHA-256; parameters include those left at their default.", heads, tuple(rows))
+
+
+def _budget(scope: Scope) -> Table:
+    rows: list[tuple[Cell_, ...]] = []
+    for reduction in scope.reductions:
+        outputs = {each.name: each for each in reduction.outputs if each.rows is None}
+        for name in reduction.plan.headline:
+            each = outputs.get(name)
+            if each is None or each.value is None or not each.uncertainty:
+                continue
+            number, unit = number_and_unit(each)
+            total = 0.0
+            for place, (term, part, share, common) in enumerate(budget_rows(reduction, each)):
+                total += share
+                first = (prose(f"{reduction.address}#{name}"), number, unit) if place == 0 else (words(""), words(""), words(""))
+                rows.append((*first, prose(term), _digits(float(f"{part:.2g}"), None, setting=True), words(f"{100 * share:.2g}"), words(common)))
+            rows.append((words(""), words(""), words(""), words("sum"), words(""), words(f"{100 * total:.3g}"), words("")))
+    heads = (
+        (head("quantity"), 20), (head("estimate"), 14), (head("unit"), 9), (head("term"), 25), (head("contribution, SI"), 13), (head("share, per cent"), 9), (head("common to"), 10),
+    )  # fmt: skip
+    return Table("budget", "Uncertainty budget: contributions to the combined standard uncertainty with their sign, in the SI unit of the quantity.", heads, tuple(rows))
+
+
+def _corrections(held: Holdings) -> Table:
+    rows: Sequence[tuple[Cell_, ...]] = [
+        (words(each["effect"]), words(each["state"]), prose(each["bound"] or "[na]"), prose(each["by"])) for each in effect_states(held)
+    ]
+    return Table(f"effects-{held.sheet.name}", f"Known effects in {held.sheet.name}, each with its one state.", ((head("effect"), 36), (head("state"), 22), (head("bound"), 22), (head("step"), 20)), tuple(rows))
