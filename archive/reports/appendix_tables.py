@@ -10,12 +10,12 @@ from archive.reports.holdings import Holdings
 from archive.reports.items_reduction import runs_not_used
 from archive.reports.later_pages import effect_states, parameter_text
 from archive.reports.numbers import Shown, absent, words
-from archive.reports.prose import Prose, prose, symbol_of
+from archive.reports.prose import Prose, breakable, prose, symbol_of
 from archive.reports.scope import Scope
-from archive.reports.tex import Tex
+from archive.reports.tex import Tex, tex
 from schemas.cell import Calorimeter, Cell, TorsionalOscillator
 from schemas.kinds import KINDS
-from schemas.lineage import OutputEntry, Value
+from schemas.lineage import OutputEntry, ReductionDocument, StepRecord, Value
 from schemas.quantity import Quantity
 from schemas.uncertain_text import in_preferred_unit, rounded
 from schemas.units import parse_unit
@@ -23,7 +23,6 @@ from schemas.units import parse_unit
 __all__ = ["Table", "results_table", "tables"]
 
 Cell_ = Shown | Prose
-CODE_UNIT = {"1": Tex("1")}
 
 
 @dataclass(frozen=True)
@@ -169,20 +168,42 @@ def _not_used(scope: Scope) -> Table:
     return Table("not-used", "Runs not used, and why.", ((head("sweep"), 20), (head("kind"), 25), (head("reason"), 55)), rows)
 
 
+def narrow(text: str) -> Shown:
+    """Return words for a narrow column: they may break every few characters."""
+    return Shown(text, text, tex(breakable(text, 12, 8)))
+
+
 def _steps(scope: Scope) -> Table:
-    rows = []
+    rows: list[tuple[Cell_, ...]] = []
     for reduction in scope.reductions:
         digests = {each.name: each.digest[:16] for each in reduction.outputs}
+        rows.append((prose(f"{reduction.address}, plan {reduction.plan.address} {reduction.plan_digest[:16]}"),))
         for step in reduction.steps:
             rows.append((
-                prose(f"{reduction.address} {step.number}"), prose(f"{step.name} {step.version}"),
-                prose("; ".join(f"{port}: {each.address}" + (f" {each.digest[:16]}" if each.digest else "") for port, each in step.inputs.items())),
-                prose("; ".join(f"{name} = {parameter_text(value)}" for name, value in step.parameters.items()) or "none"),
-                prose("; ".join(f"{name} {digests.get(name, '')}" for name in step.outputs)),
-                prose("; ".join(each.code for each in step.findings) or "none"),
+                words(str(step.number)), narrow(f"{step.name} {step.version}"), narrow(_inputs(reduction, step)),
+                narrow("; ".join(f"{name} = {parameter_text(value)}" for name, value in step.parameters.items()) or "none"),
+                narrow("; ".join(f"{name} {digests.get(name, '')}" for name in step.outputs)), narrow("; ".join(each.code for each in step.findings) or "none"),
             ))  # fmt: skip
-    heads = ((head("step"), 15), (head("operation"), 13), (head("inputs"), 27), (head("parameters, all"), 19), (head("outputs"), 16), (head("warnings"), 10))
-    return Table("steps", "Reduction steps. Digests are the first 16 hexadecimal digits of SHA-256; parameters include those left at their default.", heads, tuple(rows))
+    heads = ((head("no."), 4), (head("operation"), 15), (head("inputs"), 28), (head("parameters, all"), 22), (head("outputs"), 21), (head("warnings"), 10))
+    caption = (
+        "Reduction steps. Digests are the first 16 hexadecimal digits of SHA-256; an input without address is an output of an earlier step here, one with "
+        "# alone a channel of the sweep itself. Parameters include those left at their default."
+    )
+    return Table("steps", caption, heads, tuple(rows))
+
+
+def _inputs(reduction: ReductionDocument, step: StepRecord) -> str:
+    """Return the inputs of a step, those from one place together and what is near in short."""
+    places: dict[str, list[str]] = {}
+    for port, each in step.inputs.items():
+        near, _, part = each.address.partition("#")
+        if near == reduction.address:
+            place = part
+        else:
+            place = f"#{part}" if near == reduction.sweep else each.address
+            place += f" {each.digest[:16]}" if each.digest else ""
+        places.setdefault(place, []).append(port)
+    return "; ".join(place if ports == [place] else f"{', '.join(ports)}: {place}" for place, ports in places.items())
 
 
 def _budget(scope: Scope) -> Table:

@@ -173,7 +173,7 @@ def _density(scope: Scope, cell: str, members: list[ReductionDocument]) -> Drawn
     axes.plot(grid, UNIVERSAL_JUMP * grid * 1e9, "-", color="black", linewidth=1.2, label="universal line")
     axes.set(xlim=(0, highest * 1.03), ylim=(min(0.0, -0.02 * biggest * 1e9), biggest * 1.08e9), xlabel="T / K", ylabel=r"$\sigma_\mathrm{s}$ / $\mathrm{\mu g\,m^{-2}}$")
     if shared[1] > 0:
-        axes.errorbar([highest * 0.97], [shared[0] * 1e9], yerr=[shared[1] * 1e9], fmt="none", ecolor="black", capsize=3, elinewidth=1)
+        axes.errorbar([highest * 0.98], [0.55 * biggest * 1e9], yerr=[shared[1] * 1e9], fmt="none", ecolor="black", capsize=3, elinewidth=1)
     axes.legend(loc="upper right", fontsize=8)
     caption = (
         f"Areal superfluid mass density against temperature, cell {cell or 'not recorded'}, with the universal line sigma_s = (2 m^2 k_B/pi hbar^2) T. "

@@ -30,10 +30,12 @@ def step_sentences(item: str, *names: str) -> Callable[[Scope], Iterator[Said]]:
     """Return a teller of the sentences that some steps wrote about themselves."""
 
     def over(scope: Scope) -> Iterator[Said]:
-        found = False
+        found: dict[str, list[tuple[str, str]]] = {}
         for reduction, step in scope.steps(*names):
-            found = True
-            yield sentence(f"{reduction.sweep}: {step.sentence}", f"{reduction.address} step {step.number}")
+            found.setdefault(step.sentence, []).append((reduction.sweep, f"{reduction.address} step {step.number}"))
+        for text, places in found.items():
+            sweeps = ", ".join(dict.fromkeys(sweep for sweep, _ in places))
+            yield sentence(f"{sweeps}: {text}", "; ".join(record for _, record in places))
         if not found:
             yield absence(item, "the steps of these reductions", reason="no such step was carried out")
 

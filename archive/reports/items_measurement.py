@@ -61,9 +61,8 @@ def _recorded_scale(scope: Scope) -> Iterator[Said]:
 
 
 def _control(scope: Scope) -> Iterator[Said]:
-    for held, taken in scope.used:
-        if taken.sheet.kind == "temperature-sweep":
-            yield absence(f"the control of temperature during {held.sheet.name}/{taken.sheet.name}", f"{held.sheet.name}/{taken.sheet.name}")
+    sweeps = ", ".join(f"{held.sheet.name}/{taken.sheet.name}" for held, taken in scope.used)
+    yield absence(f"the control of temperature during {sweeps}", "the sheets of these cooldowns")
 
 
 def _ramps(scope: Scope) -> Iterator[Said]:

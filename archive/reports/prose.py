@@ -27,7 +27,12 @@ _PIECE = 10
 _GREEK = {
     "chi": "χ", "sigma": "σ", "zeta": "ζ", "rho": "ρ", "tau": "τ", "kappa": "κ", "omega": "ω", "lambda": "λ", "theta": "θ",
 }  # fmt: skip
-_NUMBER = r"(?P<digits>[+-]?\d+(?:\.\d+)?)(?:\((?P<bracket>\d+(?:\.\d+)?)\))?(?:e(?P<power>[+-]?\d+))?"
+# With a power of ten one digit stands before the point: that keeps hexadecimal digests apart from numbers.
+_NUMBER = (
+    r"(?:(?P<scaled>[+-]?\d(?:\.\d+)?)(?:\((?P<scaled_bracket>\d+(?:\.\d+)?)\))?e(?P<power>[+-]?\d{1,3})"
+    r"|(?P<digits>[+-]?\d+(?:\.\d+)?)(?:\((?P<bracket>\d+(?:\.\d+)?)\))?)"
+)
+_DIGEST = r"(?P<digest>(?<![0-9A-Za-z])(?:(?:[0-9a-f]{4} ){3,15}[0-9a-f]{4}|[0-9a-f]{16,64})(?![0-9A-Za-z]))"
 _SYMBOL = rf"(?P<base>{'|'.join(_GREEK)}|[A-Za-z])(?:_(?P<sub>[A-Za-z0-9]{{1,6}}))?(?:\^(?P<sup>[A-Za-z0-9]+))?(?![A-Za-z0-9_]|\.[A-Za-z0-9])"
 
 
@@ -72,7 +77,7 @@ def _pattern() -> re.Pattern[str]:
     names -= {"1", "A", "T"}
     units = "|".join(re.escape(name) for name in sorted(names, key=lambda name: (-len(name), name)))
     return re.compile(
-        rf"(?<![A-Za-z0-9_.#@/-]){_NUMBER}(?:(?P<space> ?)(?P<unit>{units})(?![A-Za-z0-9_^/]))?(?![A-Za-z0-9_]|\.\d)"
+        rf"{_DIGEST}|(?<![A-Za-z0-9_.#@/-]){_NUMBER}(?:(?P<space> ?)(?P<unit>{units})(?![A-Za-z0-9_^/]))?(?![A-Za-z0-9_]|\.\d)"
         rf"|(?<![A-Za-z0-9_.#@-]){_SYMBOL}"
         r"|(?<=\))\^(?P<power_of>[A-Za-z0-9]+)"
     )
@@ -90,7 +95,10 @@ def prose(sentence: str) -> Prose:
     pieces: list[Piece] = []
     end = 0
     for found in _pattern().finditer(sentence):
-        made = _number(found) if found["digits"] else _symbol(found)
+        if found["digest"]:
+            made: list[Piece] | None = [_text(found["digest"])]
+        else:
+            made = _number(found) if found["digits"] or found["scaled"] else _symbol(found)
         if made is None:
             continue
         if found.start() > end:
@@ -124,7 +132,8 @@ def _number(found: re.Match[str]) -> list[Piece] | None:
         if found["digits"].startswith("-"):
             return [Piece("\u2212" + found["digits"][1:], "", Tex(f"${found['digits']}$"))]
         return None
-    number = RoundedText(found["digits"].removeprefix("+"), found["bracket"] or "", int(found["power"] or 0))
+    digits, bracket = (found["scaled"], found["scaled_bracket"]) if found["scaled"] else (found["digits"], found["bracket"])
+    number = RoundedText(digits.removeprefix("+"), bracket or "", int(found["power"] or 0))
     if not found["unit"]:
         return [Piece(number.typographic(), "", Tex(f"${number.maths()}$"))]
     unit = parse_unit(found["unit"])

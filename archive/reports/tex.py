@@ -30,7 +30,7 @@ class Tex(str):
 
 
 _SPECIAL = {
-    "\\": r"\textbackslash{}", "{": r"\{", "}": r"\}", "$": r"\$", "&": r"\&", "#": r"\#", "%": r"\%", "_": r"\_",
+    "\\": r"\textbackslash{}", "{": r"\{", "}": r"\}", "$": r"\$", "&": r"\&", "#": r"\#", "%": r"\%", "_": r"\_\allowbreak{}", "/": r"/\allowbreak{}",
     "^": r"\textasciicircum{}", "~": r"\textasciitilde{}", "<": r"\textless{}", ">": r"\textgreater{}",
     "|": r"\textbar{}", '"': r"\textquotedbl{}", "`": r"\textasciigrave{}",
     "[": "{[}", "]": "{]}",
