@@ -124,6 +124,10 @@ def test_millikelvin_stay_millikelvin_on_another_scale() -> None:
         pytest.param(["1 bar", "--to", "Pa absolute"], "absolute or gauge", id="neither"),
         pytest.param(["1,5 K", "--to", "mK"], "decimal comma", id="decimal-comma"),
         pytest.param(["film", "--to", "mK"], "with a number in front", id="no-number"),
+        pytest.param(["1 J", "--to", "erg"], "not in units of energy", id="no-kind-takes-it"),
+        pytest.param(["1 W/m", "--to", "K"], "no quantity of this trade has the unit W/m", id="no-kind-at-all"),
+        pytest.param(["2 layers", "--scale", "T58", "--to", "ITS-90"], "only a temperature", id="layers-on-a-scale"),
+        pytest.param(["2 layers"], "say what to convert to", id="layers-without-target"),
         pytest.param(["1 K", "--to", "furlong"], "furlong", id="unknown-unit"),
         pytest.param(["1 K", "--to", "mK", "--kind", "coverage"], "coverage", id="wrong-kind"),
         pytest.param(["1 K", "--scale", "T58"], "say what to convert to", id="scale-without-target"),
@@ -143,6 +147,23 @@ def test_without_a_target_the_usual_units_are_listed(run: Run) -> None:
     assert result.exit_code == 0
     assert "31.4 umol/m^2 = 3.14e-5 mol/m^2" in result.stdout
     assert "= 18.9095219864 atoms/nm^2" in result.stdout  # 31.4e-6 x 6.02214076e23 / 1e18
+
+
+def test_a_temperature_keeps_its_scale_in_another_unit(run: Run) -> None:
+    assert run("convert", "1.5 K", "--scale", "T58", "--to", "mK").stdout == "1.5 K on T58 = 1500 mK on T58\n"
+    assert parsed(run("convert", "1.5 K on T58", "--to", "mK", "--json"))["scale"] == "T58"
+
+
+def test_the_end_of_a_range_still_has_an_uncertainty() -> None:
+    # T90 - T76 = -0.0056 mK (T76/K)^2 (R. L. Rusby, J. Chem. Thermodyn. 23, 1153, 1991): slope 1 - 3.0e-4 at 27.1 K.
+    result = converted("27.1(1) K on EPT-76", "ITS-90")
+    assert result.uncertainty == pytest.approx(0.1 * (1 - 2 * 5.6e-6 * 27.1), rel=1e-5)
+
+
+def test_a_kind_may_be_named(run: Run) -> None:
+    assert (
+        parsed(run("convert", "1 mHz", "--kind", "frequency", "--to", "Hz", "--json"))["kind"] == "frequency"
+    )
 
 
 def test_a_negative_number_is_no_option(run: Run) -> None:

@@ -15,8 +15,10 @@ import pytest
 from click.testing import Result
 
 from archive.commands import opening
+from archive.commands.failures import told
 from archive.commands.main import stillroom
-from archive.errors import ArchiveBusy, DamagedFile, NotAnArchive, UnknownAddress
+from archive.errors import ArchiveBusy, BadRequest, DamagedFile, NotAnArchive, UnknownAddress
+from schemas.cooldown import Event
 from tests.archive.commands.support import FakeArchive, child
 
 Run = Callable[..., Result]
@@ -178,3 +180,9 @@ def test_click_shows_a_real_backspace_mark() -> None:
         assert isinstance(command, click.Command)
         assert "\\b" not in (command.help or "")
         assert "\b" in (command.help or "")
+
+
+def test_the_first_fault_of_a_record_becomes_the_sentence() -> None:
+    with pytest.raises(BadRequest, match=r"^--name: what: ") as refused, told("--name"):
+        Event.model_validate_json('{"at": "2026-03-02T09:10:00Z", "text": "a leak"}')
+    assert "\n" not in str(refused.value)

@@ -87,6 +87,7 @@ def test_any_coverage_unit_in_one_word_or_two(
         pytest.param(["--coverage", "2:3 layers"], "--substrate NAME", id="layers-without-substrate"),
         pytest.param(["--coverage", "31 umol/m^2"], "expected a range", id="no-range"),
         pytest.param(["--temperature", "0.4:0.8 MK"], "MK is a million kelvin", id="megakelvin"),
+        pytest.param(["--temperature", "0.4:0.8 K on T58"], "--scale T58", id="scale-behind-a-range"),
         pytest.param(["--result", "T_X=0.4:0.6 K"], "no reduction here has a result T_X; expected one of: T_KT", id="unknown-result"),
         pytest.param(["--result", "T_KT=0.4:0.6 Pa"], "expected a temperature", id="unit-of-another-quantity"),
         pytest.param(["--result", "T_KT 0.4"], "name of a result", id="no-equals"),

@@ -67,3 +67,22 @@ def test_progress_is_shown_on_a_terminal_and_taken_off_again(monkeypatch: pytest
                 break
     assert "s002" in screen.getvalue()
     assert "\x1b]0;" not in screen.getvalue()
+
+
+@pytest.mark.parametrize(("columns", "lines"), [("80", 2), ("160", 1)], ids=["narrow", "wide"])
+def test_several_texts_of_a_cell_stack_on_a_narrow_terminal(
+    columns: str, lines: int, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    import io
+    import sys
+
+    class Screen(io.StringIO):
+        def isatty(self) -> bool:
+            return True
+
+    screen = Screen()
+    monkeypatch.setattr(sys, "stdout", screen)
+    monkeypatch.setenv("COLUMNS", columns)
+    table(("address", "results"), [("2026-03/s017", ("T_KT = 0.7312(12) K", "ratio = 1.00(2)"))])
+    body = [line for line in screen.getvalue().splitlines() if "T_KT" in line or "ratio" in line]
+    assert len(body) == lines

@@ -97,3 +97,17 @@ def test_nothing_to_draft_from_is_refused(*, made: bool, tmp_path: Path) -> None
         folder.mkdir()
     with pytest.raises(BadRequest):
         draft_text(folder)
+
+
+def test_a_folder_whose_name_is_no_name_leaves_a_blank(tmp_path: Path) -> None:
+    folder = tmp_path / "March run (2)"
+    folder.mkdir()
+    (folder / "a.csv").write_text("1,0.5\n2,0.6\n", encoding="utf-8")
+    (folder / "words.csv").write_text("role,note\nstudent,fine\npostdoc,fine\n", encoding="utf-8")
+    text = draft_text(folder).text
+    sheet = tomllib.loads(text)
+    assert (sheet["name"], sheet["begin"], sheet["end"]) == ("", "", "")
+    assert list(sheet["layout"]["layout-1"]["channels"]) == ["column_1", "column_2"]
+    assert [channel["column"] for channel in sheet["layout"]["layout-1"]["channels"].values()] == [1, 2]
+    assert '# unit = ""  # to fill in: the file names none' in text
+    assert '"words.csv": not taken for a table' in text
