@@ -36,12 +36,12 @@ def demo(*, folder: Path) -> None:
     """Show the whole way of the data on invented cooldowns: raw files, check, ingest, reduce, search, reports.
 
     Makes DIR (default ./stillroom-demo) with the raw data in DIR/cooldowns, an archive in DIR/archive and reports in
-    DIR/reports. Laboratory and numbers are invented; the same every time. Takes about a minute.
+    DIR/reports. Laboratory and numbers are invented; the same every time. Takes less than a minute.
 
     \b
     Examples:
       stillroom demo
-      stillroom demo /tmp/try-stillroom
+      stillroom demo ~/try-stillroom
 
     DIR must be new or empty.
     """
