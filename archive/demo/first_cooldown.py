@@ -248,15 +248,22 @@ Copy of the notebook, pages 61 to 70 (invented).
 15 April   warmed to 20 K, all gas in W2.
 """
 
+_WAIVED: Final = ("s005", "s006", "s008", "s009", "s012")
+"""Sweeps in which the rod went below 200 mK and whose warning a person answered."""
+
 _WAIVER: Final = """\
-# The rod is beryllium copper, and no drive sweep was taken at this coverage.
+# The rod is beryllium copper, and no drive sweep was taken at these coverages.
+""" + "\n".join(
+    f"""\
 [[waiver]]
 check = "rod-below-200-mk"
-place = "s006"
+place = "{sweep}"
 reason = "The drive sweeps at 100 mK, empty (s004) and with a thicker film (s011), show no dependence of the period on the drive."
 role = "postdoc"
 date = 2025-04-22
 """
+    for sweep in _WAIVED
+)
 
 
 def first_cooldown(seed: int) -> CooldownFolder:

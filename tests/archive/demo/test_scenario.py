@@ -280,4 +280,8 @@ def test_the_checks_find_no_error_and_the_waiver_meets_a_warning_that_occurs(rea
     answered = apply_waivers(found, reading.sheet.waiver, file="cooldown.toml", line_of=lambda _: 1)
     assert "waiver-without-warning" not in {finding.code for finding in answered}
     waived = [(finding.code, finding.place) for finding in answered if finding.waived]
-    assert waived == ([("rod-below-200-mk", "s006")] if name == "2025-03" else [])
+    places = ("s005", "s006", "s008", "s009", "s012") if name == "2025-03" else ()
+    assert waived == [("rod-below-200-mk", place) for place in places]
+    # The first run is closed: nothing is left open in it, and much is in the others.
+    open_warnings = [finding for finding in answered if finding.severity == "warning" and not finding.waived]
+    assert bool(open_warnings) == (name != "2025-03")
