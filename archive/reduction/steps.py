@@ -14,6 +14,7 @@ from archive.errors import BadRequest
 from archive.reduction import (
     adsorption_steps,
     background_steps,
+    dynamic_steps,
     film_steps,
     gas_steps,
     loading_steps,
@@ -301,6 +302,7 @@ STEPS: tuple[Step, ...] = (
         yields={"plateau_amount": Port("same:amount", "scalar", "amount on the plateau: filled pores")},
         sentence="Between p/p0 = {low} and {high} the isotherm is flat within {rise}, at {plateau_amount}.", spread="refit",
     ),
+    *dynamic_steps.DYNAMIC_STEPS,
 )  # fmt: skip
 
 

@@ -1,0 +1,147 @@
+"""A fit of the dynamic theory moved to slightly changed data, without fitting anew.
+
+Rules: to first order the parameters follow the data by the pseudo-inverse of the weighted Jacobian at the solution, so one
+Jacobian serves every source of uncertainty; a few steps with it take up the curvature of the model.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+
+from archive.physics.arrays import FloatArray
+from archive.physics.film_dynamic import complex_stiffness, dynamic_areal_density, fixed_start
+from archive.physics.film_transition import ORDER, PANEL_WIDTH, TAIL, FilmTransition
+
+__all__ = ["LocalSolution", "curves", "local_solution", "moved"]
+
+
+@dataclass(frozen=True)
+class LocalSolution:
+    """Where a fit ended, and how its parameters follow the data from there.
+
+    Attributes
+    ----------
+    values : dict of str to float
+        All parameters, as in `FilmTransition.values`.
+    free : tuple of str
+        Those that were fitted.
+    gain : ndarray, shape (free, 2 points)
+        Pseudo-inverse of the weighted Jacobian; drop first, then dissipation.
+    u_drop, u_dissipation : ndarray
+        The weights, kept while the data move.
+    x0 : float
+    """
+
+    values: dict[str, float]
+    free: tuple[str, ...]
+    gain: FloatArray
+    u_drop: FloatArray
+    u_dissipation: FloatArray
+    x0: float
+
+
+def curves(
+    temperature: FloatArray, values: Mapping[str, float], *, angular_frequency: float, x0: float
+) -> tuple[FloatArray, FloatArray]:
+    """Return twice the fractional period drop, and the dissipation, of the dynamic theory.
+
+    Parameters
+    ----------
+    temperature : ndarray
+        K, > 0.
+    values : mapping of str to float
+        Every parameter of `FilmTransition.values`.
+    angular_frequency : float
+        1/s.
+    x0 : float
+        Bare start of the flow.
+    """
+    begin = fixed_start(temperature / values["transition_temperature"], b=values["b"], x0=x0)
+    stiffness = complex_stiffness(
+        begin, L=values["log_diffusivity"] - math.log(angular_frequency), F=values["F"],
+        panel_width=PANEL_WIDTH, order=ORDER, tail=TAIL,
+    )  # fmt: skip
+    ratio = values["scale"] * dynamic_areal_density(temperature, stiffness)
+    return ratio.real + values["drop_offset"], -ratio.imag + values["dissipation_offset"]
+
+
+def local_solution(
+    found: FilmTransition,
+    *,
+    temperature: FloatArray,
+    u_drop: FloatArray,
+    u_dissipation: FloatArray,
+    angular_frequency: float,
+    x0: float,
+) -> LocalSolution:
+    """Return how the parameters of a fit follow the data.
+
+    Parameters
+    ----------
+    found : FilmTransition
+    temperature, u_drop, u_dissipation : ndarray
+        Those that were fitted: K, and the standard uncertainties.
+    angular_frequency, x0 : float
+        As fitted.
+    """
+    free = found.fit.names
+    columns = []
+    for name in free:
+        # Cube root of the precision times the parameter's own uncertainty scale: the best step of a central difference.
+        size = max(abs(found.values[name]), 1e-3) if not name.endswith("offset") else 1e-9
+        step = float(np.finfo(float).eps) ** (1 / 3) * size
+        sides = [
+            curves(temperature, found.values | {name: found.values[name] + sign * step}, angular_frequency=angular_frequency, x0=x0)
+            for sign in (1, -1)
+        ]  # fmt: skip
+        drop, loss = ((up - down) / (2 * step) for up, down in zip(*sides, strict=True))
+        columns.append(np.concatenate([drop / u_drop, loss / u_dissipation]))
+    jacobian = np.column_stack(columns)
+    norm = np.linalg.norm(jacobian, axis=0)
+    gain = np.linalg.pinv(jacobian / norm) / norm[:, np.newaxis]
+    return LocalSolution(dict(found.values), free, gain, u_drop, u_dissipation, x0)
+
+
+def moved(
+    local: LocalSolution,
+    *,
+    temperature: FloatArray,
+    twice_fractional_drop: FloatArray,
+    dissipation: FloatArray,
+    angular_frequency: float,
+    steps: int = 3,
+    F: float | None = None,
+) -> dict[str, float]:
+    """Return the parameters for data that differ a little from those fitted.
+
+    Parameters
+    ----------
+    local : LocalSolution
+    temperature, twice_fractional_drop, dissipation : ndarray
+        As many rows as were fitted.
+    angular_frequency : float
+        1/s.
+    steps : int
+        Steps with the one Jacobian; the first alone is first order.
+    F : float, optional
+        Another value of a held free-vortex prefactor.
+
+    Notes
+    -----
+    Good while the changes are small against the width of the transition; the weights stay those of the fit.
+    """
+    values = local.values | ({} if F is None else {"F": F})
+    for _ in range(steps):
+        drop, loss = curves(temperature, values, angular_frequency=angular_frequency, x0=local.x0)
+        residuals = np.concatenate(
+            [(twice_fractional_drop - drop) / local.u_drop, (dissipation - loss) / local.u_dissipation]
+        )
+        change = local.gain @ residuals
+        values = values | {
+            name: values[name] + float(each) for name, each in zip(local.free, change, strict=True)
+        }
+    return values
