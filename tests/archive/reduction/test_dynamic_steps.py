@@ -49,8 +49,14 @@ def _substrate(pores: str | None) -> Substrate:
     return Substrate.model_validate({key: value for key, value in content.items() if value is not None})
 
 
-def test_the_plan_finds_the_truth_of_the_laboratory(reduced: Any, tools: Any) -> None:
-    outcome = reduced.reduce("film-dynamic", "2026-03/f1")
+def test_the_plan_finds_the_truth_of_the_laboratory(tools: Any) -> None:
+    data = tools.sweep_data()
+    # A sixth of the rows is enough, and quick.
+    data["f1"] = {name: values[::6] for name, values in data["f1"].items()}
+    laboratory = tools.build(data=data)
+    for plan, sweep in (("empty-cell", "e1"), ("dose-run", "r1")):
+        laboratory.reduce(plan, f"2026-03/{sweep}")
+    outcome = laboratory.reduce("film-dynamic", "2026-03/f1")
     found = {each.name: each for each in outcome.document.outputs if each.rows is None}
     truths = (
         ("T_KT_by_fit", tools.truth["T_KT"]),
@@ -78,9 +84,9 @@ def test_the_plan_finds_the_truth_of_the_laboratory(reduced: Any, tools: Any) ->
     assert "D is taken as constant" in fit.sentence
     assert "local" not in fit.parameters
     assert any("T_KT_by_fit" in each["names"] for each in outcome.document.covariances.values())
-    residuals = reduced.output(outcome.document.address, "drop_residual")
+    residuals = laboratory.output(outcome.document.address, "drop_residual")
     known = residuals.value[np.isfinite(residuals.value)]
-    assert np.std(known) == pytest.approx(1.0, abs=0.1)
+    assert np.std(known) == pytest.approx(1.0, abs=0.2)
     assert not residuals.shared
 
 
