@@ -42,7 +42,11 @@ _SECTIONS = (
 
 
 def methods_appendix(
-    views: Sequence[CooldownView], addresses: Sequence[str], *, title: str | None = None, level: str = "section"
+    views: Sequence[CooldownView],
+    addresses: Sequence[str],
+    *,
+    title: str | None = None,
+    level: str = "section",
 ) -> dict[str, bytes]:
     r"""Return the files of a methods appendix by name.
 
@@ -77,7 +81,11 @@ def methods_appendix(
     drawn = list(figures(scope))
     account = _account(scope, drawn, title=title or "Methods")
     environment = tex_environment()
-    shared = {"level": Tex(level), "sublevel": Tex(_SUBLEVELS[level]), "document_class": Tex("report" if level == "chapter" else "article")}
+    shared = {
+        "level": Tex(level),
+        "sublevel": Tex(_SUBLEVELS[level]),
+        "document_class": Tex("report" if level == "chapter" else "article"),
+    }
     results = _for_tex(results_table(scope), account["prefix"])
     made: dict[str, Any] = {
         "appendix.tex": environment.get_template("appendix.tex.j2").render(**_printed(account), **shared),
@@ -85,7 +93,8 @@ def methods_appendix(
         "appendix-preamble.tex": environment.get_template("appendix-preamble.tex.j2").render(),
         "results.tex": environment.get_template("results.tex.j2").render(table=results),
         "methods.bib": bibliography_of(_citations(scope)),
-        "appendix.json": json.dumps(_companion(scope, account), indent=1, ensure_ascii=False, allow_nan=False) + "\n",
+        "appendix.json": json.dumps(_companion(scope, account), indent=1, ensure_ascii=False, allow_nan=False)
+        + "\n",
     }
     return {name: text.encode() for name, text in made.items()} | {each.name: each.content for each in drawn}
 
@@ -103,36 +112,74 @@ def _account(scope: Scope, drawn: Sequence[Drawn], *, title: str) -> dict[str, A
     for key, name, wanted in _SECTIONS:
         sections.append(_section(key, name, _of(key, said), [made[label] for label in wanted]))
     sections.append({**_section("reduction", "Reduction", [], [made["steps"]]), "steps": _steps(scope)})
-    sections.append({**_section("fits", "Fits and results", _of("fits", said), [results_table(scope)]), "figures": list(drawn)})
+    sections.append(
+        {
+            **_section("fits", "Fits and results", _of("fits", said), [results_table(scope)]),
+            "figures": list(drawn),
+        }
+    )
     sections.append(_section("uncertainty", "Uncertainty", _of("uncertainty", said), [made["budget"]]))
-    undone = [("R52", each) for each in effect_sentences(scope)] + [("R53", each) for each in waiver_sentences(scope)] + [("R55", each) for each in replaced_sentences(scope)]
+    undone = (
+        [("R52", each) for each in effect_sentences(scope)]
+        + [("R53", each) for each in waiver_sentences(scope)]
+        + [("R55", each) for each in replaced_sentences(scope)]
+    )
     corrections = [table for label, table in made.items() if label.startswith("effects-")]
-    sections.append(_section("not-done", "What was not done, warnings waived, results replaced", undone, corrections))
+    sections.append(
+        _section("not-done", "What was not done, warnings waived, results replaced", undone, corrections)
+    )
     data = [*_of("data", said), *(("R58", each) for each in data_sentences(scope, len(drawn)))]
     sections.append(_section("data", "Data and code", data))
     prefix = "stillroom-" + re.sub(r"[^A-Za-z0-9]+", "-", scope.asked[0]).strip("-").lower()
-    return {"title": title, "prefix": prefix, "sections": sections, "completeness": completeness(ITEMS, said, scope)}
+    return {
+        "title": title,
+        "prefix": prefix,
+        "sections": sections,
+        "completeness": completeness(ITEMS, said, scope),
+    }
 
 
-def _section(key: str, title: str, sentences: list[tuple[str, Said]], tables_: Sequence[Table] = ()) -> dict[str, Any]:
-    return {"key": key, "title": title, "sentences": sentences, "tables": list(tables_), "figures": [], "steps": []}
+def _section(
+    key: str, title: str, sentences: list[tuple[str, Said]], tables_: Sequence[Table] = ()
+) -> dict[str, Any]:
+    return {
+        "key": key,
+        "title": title,
+        "sentences": sentences,
+        "tables": list(tables_),
+        "figures": [],
+        "steps": [],
+    }
 
 
 def _of(section: str, said: dict[str, list[Said]]) -> list[tuple[str, Said]]:
-    return [(item.code, each) for item in ITEMS if item.section == section and item.code in said for each in said[item.code]]
+    return [
+        (item.code, each)
+        for item in ITEMS
+        if item.section == section and item.code in said
+        for each in said[item.code]
+    ]
 
 
 def _scope(scope: Scope, title: str, said: dict[str, list[Said]]) -> list[tuple[str, Said]]:
     runs = ", ".join(held.sheet.name for held in scope.runs)
     lines = [
-        sentence(f"{title} rests on {len(scope.asked)} reductions asked for and {len(scope.reductions) - len(scope.asked)} that they rest on, of the cooldowns {runs}.", "the request"),
+        sentence(
+            f"{title}: reductions asked for, {len(scope.asked)}; reductions that they rest on, {len(scope.reductions) - len(scope.asked)}; cooldowns, {runs}.",
+            "the request",
+        ),
         sentence(
             "A number in brackets is the standard uncertainty in the last digits; [u nr] marks a value whose uncertainty was not recorded; every temperature is in kelvin on the scale named with it.",
             "the notation",
         ),
-        sentence(f"Codes: {'; '.join(f'{code} {meaning}' for code, meaning in CODES.items())}.", "the notation"),
+        sentence(
+            f"Codes: {'; '.join(f'{code} {meaning}' for code, meaning in CODES.items())}.", "the notation"
+        ),
     ]
-    lines += [sentence(f"Completeness of the checklist, {each}.", "the checklist") for each in completeness(ITEMS, said, scope)]
+    lines += [
+        sentence(f"Completeness of the checklist, {each}.", "the checklist")
+        for each in completeness(ITEMS, said, scope)
+    ]
     lines += [sentence(f"{held.sheet.name}: {held.sheet.purpose}", held.sheet.name) for held in scope.runs]
     return [("scope", each) for each in lines]
 
@@ -145,7 +192,13 @@ def _steps(scope: Scope) -> list[dict[str, Any]]:
             record = f"{reduction.address} step {step.number}"
             warned = " ".join(f"Warning raised: {each.what}." for each in step.findings)
             lines.append(("ST", Said(f"{step.sentence} {warned}".strip(), record), step.citations))
-        blocks.append({"title": f"{reduction.address}: {reduction.plan.title} (plan {reduction.plan.address})", "record": reduction.address, "lines": lines})
+        blocks.append(
+            {
+                "title": f"{reduction.address}: {reduction.plan.title} (plan {reduction.plan.address})",
+                "record": reduction.address,
+                "lines": lines,
+            }
+        )
     return blocks
 
 
@@ -161,26 +214,47 @@ def _line(code: str, said: Said, cited: Sequence[str] = ()) -> dict[str, Tex]:
         latex = Tex(latex[:-1] + citation + ".")
     elif citation:
         latex = Tex(latex + citation)
-    return {"code": Tex(code), "record": _comment(said.record), "latex": latex}
+    group = f"{code} {said.record.split()[0]}" if code in ("R52", "R53") else code
+    return {"group": group, "code": Tex(code), "record": _comment(said.record), "latex": latex}
 
 
 def _printed(account: dict[str, Any]) -> dict[str, Any]:
     prefix = account["prefix"]
     sections = []
     for each in account["sections"]:
-        lines = [_line(code, said, ("jcgm-100",) if said.record == "the notation" and "brackets" in said.text else ()) for code, said in each["sentences"]]
+        lines = [
+            _line(
+                code, said, ("jcgm-100",) if said.record == "the notation" and "brackets" in said.text else ()
+            )
+            for code, said in each["sentences"]
+        ]
         steps = [
-            {"title": prose(block["title"]).latex, "record": _comment(block["record"]), "sentences": [_line(*line) for line in block["lines"]]} for block in each["steps"]
+            {
+                "title": prose(block["title"]).latex,
+                "record": _comment(block["record"]),
+                "sentences": [_line(*line) for line in block["lines"]],
+            }
+            for block in each["steps"]
         ]
         shown = [
-            {"name": Tex(drawn.name), "caption": prose(drawn.caption).latex, "source": tex(breakable(", ".join(drawn.sources))), "label": Tex(f"{prefix}-fig-{number}")}
+            {
+                "name": Tex(drawn.name),
+                "caption": prose(drawn.caption).latex,
+                "source": tex(breakable(", ".join(drawn.sources))),
+                "label": Tex(f"{prefix}-fig-{number}"),
+            }
             for number, drawn in enumerate(each["figures"], 1)
         ]
         sections.append({
             "key": Tex(each["key"]), "title": each["title"], "sentences": lines, "steps": steps, "tables": [_for_tex(table, prefix) for table in each["tables"]], "figures": shown,
         })  # fmt: skip
     slots = ",".join(each["key"] for each in account["sections"])
-    return {"title": prose(account["title"]).latex, "prefix": Tex(prefix), "sections": sections, "slots": Tex(slots)}
+    return {
+        "title": prose(account["title"]).latex,
+        "prefix": Tex(prefix),
+        "sections": sections,
+        "slots": Tex(slots),
+    }
 
 
 def _for_tex(table: Table, prefix: str) -> dict[str, Any]:

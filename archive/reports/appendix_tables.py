@@ -5,12 +5,12 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
-from archive.reports.budget import budget_rows
+from archive.reports.budget import budget_rows, percent
 from archive.reports.holdings import Holdings
 from archive.reports.items_reduction import runs_not_used
 from archive.reports.later_pages import effect_states, parameter_text
 from archive.reports.numbers import Shown, absent, words
-from archive.reports.prose import Prose, breakable, prose, symbol_of
+from archive.reports.prose import Piece, Prose, breakable, prose, symbol_of
 from archive.reports.scope import Scope
 from archive.reports.tex import Tex, tex
 from schemas.cell import Calorimeter, Cell, TorsionalOscillator
@@ -63,7 +63,13 @@ def value_in(value: Value | None, kind: str, unit: str) -> Shown:
     if value is None or value.value is None:
         return absent("nr")
     spread = value.uncertainty if value.uncertainty else None
-    return bare(Quantity(value=value.value, uncertainty=spread, unit=value.unit, kind=kind), unit) if spread else _digits(Quantity(value=value.value, unit=value.unit, kind=kind).to(unit).value, None, setting=True)
+    return (
+        bare(Quantity(value=value.value, uncertainty=spread, unit=value.unit, kind=kind), unit)
+        if spread
+        else _digits(
+            Quantity(value=value.value, unit=value.unit, kind=kind).to(unit).value, None, setting=True
+        )
+    )
 
 
 def number_and_unit(output: OutputEntry) -> tuple[Shown, Shown]:
@@ -73,9 +79,13 @@ def number_and_unit(output: OutputEntry) -> tuple[Shown, Shown]:
     spread = output.uncertainty if output.uncertainty else None
     if output.quantity not in KINDS:
         return _digits(output.value, spread), words(output.unit)
-    shown = in_preferred_unit(Quantity(value=output.value, uncertainty=spread, unit=output.unit, kind=output.quantity))
+    shown = in_preferred_unit(
+        Quantity(value=output.value, uncertainty=spread, unit=output.unit, kind=output.quantity)
+    )
     unit = parse_unit(shown.unit)
-    return _digits(shown.value, shown.uncertainty), Shown(shown.unit, unit.typographic, Tex(rf"$\mathrm{{{unit.latex}}}$"))
+    return _digits(shown.value, shown.uncertainty), Shown(
+        shown.unit, unit.typographic, Tex(rf"$\mathrm{{{unit.latex}}}$")
+    )
 
 
 def results_table(scope: Scope) -> Table:
@@ -85,12 +95,33 @@ def results_table(scope: Scope) -> Table:
         if reduction.address not in scope.asked:
             continue
         entry = scope.taken_of(reduction).entry
-        coverage = value_in(entry.coverage if entry else None, "coverage", "umol/m^2") if scope.taken_of(reduction).sheet.gas == "helium" else absent("na")
+        coverage = (
+            value_in(entry.coverage if entry else None, "coverage", "umol/m^2")
+            if scope.taken_of(reduction).sheet.gas == "helium"
+            else absent("na")
+        )
         for each in reduction.outputs:
             if each.rows is None:
-                rows.append((symbol_of(each.name), prose(reduction.address), coverage, *number_and_unit(each), words(each.scale or "[na]")))
-    heads = ((head("result"), 17), (head("reduction"), 26), (head("coverage", "umol/m^2"), 14), (head("value"), 19), (head("unit"), 11), (head("scale"), 13))
-    return Table("results", "Results. The bracket is the standard uncertainty in the last digits.", heads, tuple(rows))
+                rows.append(
+                    (
+                        symbol_of(each.name),
+                        prose(reduction.address),
+                        coverage,
+                        *number_and_unit(each),
+                        words(each.scale or "[na]"),
+                    )
+                )
+    heads = (
+        (head("result"), 17),
+        (head("reduction"), 26),
+        (head("coverage", "umol/m^2"), 14),
+        (head("value"), 19),
+        (head("unit"), 11),
+        (head("scale"), 13),
+    )
+    return Table(
+        "results", "Results. The bracket is the standard uncertainty in the last digits.", heads, tuple(rows)
+    )
 
 
 def tables(scope: Scope) -> Iterator[Table]:
@@ -110,7 +141,9 @@ def _cells(scope: Scope) -> Table:
     heads = (
         (head("cell"), 11), (head("material"), 14), (head("V", "cm^3"), 10), (head("A", "m^2"), 10), (head("substrate", "g"), 12), (head("P"), 15), (head("Q"), 14), (head("from"), 14),
     )  # fmt: skip
-    heads = tuple((Tex(r"$P_0$~/ $\mathrm{ms}$"), width) if text == "P" else (text, width) for text, width in heads)
+    heads = tuple(
+        (Tex(r"$P_0$~/ $\mathrm{ms}$"), width) if text == "P" else (text, width) for text, width in heads
+    )
     return Table("cells", "Cells, one row for each revision.", heads, tuple(rows))
 
 
@@ -119,7 +152,11 @@ def _cell(scope: Scope, cell: Cell) -> tuple[Cell_, ...]:
     area = None if substrate is None else substrate.area
     is_oscillator = isinstance(cell, TorsionalOscillator)
     period = bare(cell.empty_period, "ms") if isinstance(cell, TorsionalOscillator) else absent("na")
-    quality = bare(cell.empty_quality_factor, "1") if isinstance(cell, TorsionalOscillator) and cell.empty_quality_factor else absent("nr" if is_oscillator or isinstance(cell, Calorimeter) else "na")
+    quality = (
+        bare(cell.empty_quality_factor, "1")
+        if isinstance(cell, TorsionalOscillator) and cell.empty_quality_factor
+        else absent("nr" if is_oscillator or isinstance(cell, Calorimeter) else "na")
+    )
     return (
         prose(cell.address), words(cell.material or "[nr]"), bare(cell.free_volume, "cm^3"), bare(area, "m^2"), bare(None if substrate is None else substrate.mass, "g"),
         period, quality, words(str(cell.valid_from) if cell.valid_from else "[nr]"),
@@ -137,7 +174,12 @@ def _thermometers(scope: Scope) -> Table:
     heads = (
         (head("sensor"), 9), (head("calibration"), 15), (head("scale"), 12), (head("from", "K"), 11), (head("to", "K"), 11), (head("points"), 7), (head("date"), 12), (head("against"), 23),
     )  # fmt: skip
-    return Table("thermometers", "Thermometers and calibrations in force; nothing is extrapolated beyond the ends.", heads, tuple(rows))
+    return Table(
+        "thermometers",
+        "Thermometers and calibrations in force; nothing is extrapolated beyond the ends.",
+        heads,
+        tuple(rows),
+    )
 
 
 def _runs(scope: Scope) -> Table:
@@ -145,7 +187,14 @@ def _runs(scope: Scope) -> Table:
     for held, taken in scope.used:
         entry, address = taken.entry, f"{held.sheet.name}/{taken.sheet.name}"
         by = [each for each in scope.reductions if each.sweep == address]
-        background = sorted({step.inputs["background"].address.partition("#")[0] for each in by for step in each.steps if "background" in step.inputs})
+        background = sorted(
+            {
+                step.inputs["background"].address.partition("#")[0]
+                for each in by
+                for step in each.steps
+                if "background" in step.inputs
+            }
+        )
         low, high = (None, None) if entry is None else (entry.temperature_low, entry.temperature_high)
         rows.append((
             prose(address), words(taken.sheet.kind.replace("-", " ")), value_in(None if entry is None else entry.coverage, "coverage", "umol/m^2"), _kelvin(low), _kelvin(high),
@@ -164,8 +213,15 @@ def _kelvin(value: Value | None) -> Shown:
 
 
 def _not_used(scope: Scope) -> Table:
-    rows = tuple((prose(address), words(kind), prose(reason)) for address, kind, reason in runs_not_used(scope))
-    return Table("not-used", "Runs not used, and why.", ((head("sweep"), 20), (head("kind"), 25), (head("reason"), 55)), rows)
+    rows = tuple(
+        (prose(address), words(kind), prose(reason)) for address, kind, reason in runs_not_used(scope)
+    )
+    return Table(
+        "not-used",
+        "Runs not used, and why.",
+        ((head("sweep"), 20), (head("kind"), 25), (head("reason"), 55)),
+        rows,
+    )
 
 
 def narrow(text: str) -> Shown:
@@ -177,14 +233,23 @@ def _steps(scope: Scope) -> Table:
     rows: list[tuple[Cell_, ...]] = []
     for reduction in scope.reductions:
         digests = {each.name: each.digest[:16] for each in reduction.outputs}
-        rows.append((prose(f"{reduction.address}, plan {reduction.plan.address} {reduction.plan_digest[:16]}"),))
+        rows.append(
+            (prose(f"{reduction.address}, plan {reduction.plan.address} {reduction.plan_digest[:16]}"),)
+        )
         for step in reduction.steps:
             rows.append((
                 words(str(step.number)), narrow(f"{step.name} {step.version}"), narrow(_inputs(reduction, step)),
                 narrow("; ".join(f"{name} = {parameter_text(value)}" for name, value in step.parameters.items()) or "none"),
                 narrow("; ".join(f"{name} {digests.get(name, '')}" for name in step.outputs)), narrow("; ".join(each.code for each in step.findings) or "none"),
             ))  # fmt: skip
-    heads = ((head("no."), 4), (head("operation"), 15), (head("inputs"), 28), (head("parameters, all"), 22), (head("outputs"), 21), (head("warnings"), 10))
+    heads = (
+        (head("no."), 4),
+        (head("operation"), 15),
+        (head("inputs"), 28),
+        (head("parameters, all"), 22),
+        (head("outputs"), 21),
+        (head("warnings"), 10),
+    )
     caption = (
         "Reduction steps. Digests are the first 16 hexadecimal digits of SHA-256; an input without address is an output of an earlier step here, one with "
         "# alone a channel of the sweep itself. Parameters include those left at their default."
@@ -203,7 +268,9 @@ def _inputs(reduction: ReductionDocument, step: StepRecord) -> str:
             place = f"#{part}" if near == reduction.sweep else each.address
             place += f" {each.digest[:16]}" if each.digest else ""
         places.setdefault(place, []).append(port)
-    return "; ".join(place if ports == [place] else f"{', '.join(ports)}: {place}" for place, ports in places.items())
+    return "; ".join(
+        place if ports == [place] else f"{', '.join(ports)}: {place}" for place, ports in places.items()
+    )
 
 
 def _budget(scope: Scope) -> Table:
@@ -215,20 +282,61 @@ def _budget(scope: Scope) -> Table:
             if each is None or each.value is None or not each.uncertainty:
                 continue
             number, unit = number_and_unit(each)
+            title = f"{reduction.address}#{name} = {number.plain}" + (
+                f" {unit.plain}" if unit.plain != "1" else ""
+            )
+            rows.append(
+                (
+                    Prose(
+                        title,
+                        (
+                            Piece(
+                                "",
+                                "",
+                                Tex(
+                                    tex(f"{reduction.address}#{name} = ")
+                                    + number.latex
+                                    + (rf"\,{unit.latex}" if unit.plain != "1" else "")
+                                ),
+                            ),
+                        ),
+                    ),
+                )
+            )
             total = 0.0
-            for place, (term, part, share, common) in enumerate(budget_rows(reduction, each)):
+            for term, part, share, common in budget_rows(reduction, each):
                 total += share
-                first = (prose(f"{reduction.address}#{name}"), number, unit) if place == 0 else (words(""), words(""), words(""))
-                rows.append((*first, prose(term), _digits(float(f"{part:.2g}"), None, setting=True), words(f"{100 * share:.2g}"), words(common)))
-            rows.append((words(""), words(""), words(""), words("sum"), words(""), words(f"{100 * total:.3g}"), words("")))
+                rows.append(
+                    (
+                        prose(term),
+                        _digits(float(f"{part:.2g}"), None, setting=True),
+                        words(percent(share)),
+                        words(common),
+                    )
+                )
+            rows.append((words("sum"), words(""), words(percent(total)), words("")))
     heads = (
-        (head("quantity"), 20), (head("estimate"), 14), (head("unit"), 9), (head("term"), 25), (head("contribution, SI"), 13), (head("share, per cent"), 9), (head("common to"), 10),
-    )  # fmt: skip
-    return Table("budget", "Uncertainty budget: contributions to the combined standard uncertainty with their sign, in the SI unit of the quantity.", heads, tuple(rows))
+        (head("term"), 50),
+        (head("contribution, SI"), 18),
+        (head("share, per cent"), 14),
+        (head("common to"), 18),
+    )
+    return Table(
+        "budget",
+        "Uncertainty budget: contributions to the combined standard uncertainty with their sign, in the SI unit of the quantity.",
+        heads,
+        tuple(rows),
+    )
 
 
 def _corrections(held: Holdings) -> Table:
     rows: Sequence[tuple[Cell_, ...]] = [
-        (words(each["effect"]), words(each["state"]), prose(each["bound"] or "[na]"), prose(each["by"])) for each in effect_states(held)
+        (words(each["effect"]), words(each["state"]), prose(each["bound"] or "[na]"), prose(each["by"]))
+        for each in effect_states(held)
     ]
-    return Table(f"effects-{held.sheet.name}", f"Known effects in {held.sheet.name}, each with its one state.", ((head("effect"), 36), (head("state"), 22), (head("bound"), 22), (head("step"), 20)), tuple(rows))
+    return Table(
+        f"effects-{held.sheet.name}",
+        f"Known effects in {held.sheet.name}, each with its one state.",
+        ((head("effect"), 36), (head("state"), 22), (head("bound"), 22), (head("step"), 20)),
+        tuple(rows),
+    )

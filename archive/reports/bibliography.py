@@ -40,5 +40,8 @@ def bibliography_of(keys: Iterable[str]) -> str:
     wanted = set(keys)
     missing = sorted(wanted - set(_entries()))
     if missing:
-        raise BadRequest(f"no publication is known as {', '.join(missing)}", remedy="add it to templates/methods.bib, reviewed")
+        raise BadRequest(
+            f"no publication is known as {', '.join(missing)}",
+            remedy="add it to templates/methods.bib, reviewed",
+        )
     return "\n\n".join(entry for key, entry in _entries().items() if key in wanted) + ("\n" if wanted else "")

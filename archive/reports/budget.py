@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from schemas.lineage import OutputEntry, ReductionDocument
 
-__all__ = ["budget_rows", "largest_share"]
+__all__ = ["budget_rows", "largest_share", "percent"]
 
 _SHARED_BY = {"run": "this run", "cell": "this cell", "laboratory": "all"}
 
@@ -24,12 +24,28 @@ def largest_share(output: OutputEntry) -> tuple[str, float] | None:
     return (rows[0][0], rows[0][2]) if rows else None
 
 
+def percent(share: float) -> str:
+    """Return a share of a variance in per cent, to two digits, as people read it."""
+    if share >= 0.995:
+        return f"{100 * share:.0f}"
+    return f"{100 * share:.2g}" if share >= 1e-6 else "0"
+
+
 def budget_rows(reduction: ReductionDocument, output: OutputEntry) -> list[tuple[str, float, float, str]]:
     """Return term, contribution in the output's unit, share and what it is common to; terms below a thousandth are summed."""
     levels = {each.name: _SHARED_BY[each.level] for each in reduction.sources}
     rows = _shares(output)
-    large = [(name, part, share, levels.get(name, "this point")) for name, part, share in rows if share >= 1e-3]
+    large = [
+        (name, part, share, levels.get(name, "this point")) for name, part, share in rows if share >= 1e-3
+    ]
     rest = [each for each in rows if each[2] < 1e-3]
     if rest:
-        large.append((f"{len(rest)} terms below 0.1 per cent each", sum(each[1] ** 2 for each in rest) ** 0.5, sum(each[2] for each in rest), "various"))
+        large.append(
+            (
+                f"{len(rest)} terms below 0.1 per cent each",
+                sum(each[1] ** 2 for each in rest) ** 0.5,
+                sum(each[2] for each in rest),
+                "various",
+            )
+        )
     return large

@@ -13,7 +13,13 @@ from archive.reports.scope import Scope
 
 __all__ = ["Item", "Said", "absence", "completeness", "sentence", "told"]
 
-EXPERIMENTS = {"TO": "torsional oscillator", "FS": "adsorption", "PG": "porous substrate", "HC": "heat capacity", "TS": "third sound"}
+EXPERIMENTS = {
+    "TO": "torsional oscillator",
+    "FS": "adsorption",
+    "PG": "porous substrate",
+    "HC": "heat capacity",
+    "TS": "third sound",
+}
 
 
 @dataclass(frozen=True)
@@ -73,8 +79,12 @@ def completeness(items: Iterable[Item], said: dict[str, list[Said]], scope: Scop
     """Return one count per experiment, such as ``torsional oscillator: 38 of 41 present, 3 stated as not recorded``."""
     lines = []
     for experiment in scope.experiments or ("",):
-        needed = [each for each in items if each.code in said and (not each.needed or experiment in each.needed)]
+        needed = [
+            each for each in items if each.code in said and (not each.needed or experiment in each.needed)
+        ]
         present = sum(all(one.present for one in said[each.code]) for each in needed)
         name = EXPERIMENTS.get(experiment, "this work")
-        lines.append(f"{name}: {present} of {len(needed)} present, {len(needed) - present} stated as not recorded or not done")
+        lines.append(
+            f"{name}: {present} of {len(needed)} present, {len(needed) - present} stated as not recorded or not done"
+        )
     return lines

@@ -35,7 +35,15 @@ _STYLE: dict[str, Any] = {
     "ytick.right": True, "xtick.major.width": 0.5, "ytick.major.width": 0.5, "legend.frameon": False, "pdf.fonttype": 42, "pdf.compression": 6,
     "axes.formatter.useoffset": False, "savefig.dpi": 300, "path.simplify": True,
 }  # fmt: skip
-_LOOKS = (("o", "-", "black"), ("s", "--", "#444444"), ("^", "-.", "#0b5394"), ("v", ":", "#a61c00"), ("D", "-", "#38761d"), ("x", "--", "#674ea7"), ("+", "-.", "#7f6000"))
+_LOOKS = (
+    ("o", "-", "black"),
+    ("s", "--", "#444444"),
+    ("^", "-.", "#0b5394"),
+    ("v", ":", "#a61c00"),
+    ("D", "-", "#38761d"),
+    ("x", "--", "#674ea7"),
+    ("+", "-.", "#7f6000"),
+)
 _WIDTH = 4.6  # inches: fits a text width of 120 mm
 
 
@@ -67,7 +75,11 @@ def _column(scope: Scope, reduction: ReductionDocument, name: str) -> Column | N
 def _channel(scope: Scope, reduction: ReductionDocument, quantity: str) -> Column | None:
     """Return a recorded channel in SI units."""
     entry = scope.taken_of(reduction).entry
-    found = None if entry is None else next((each for each in entry.channels if each.quantity == quantity and each.use), None)
+    found = (
+        None
+        if entry is None
+        else next((each for each in entry.channels if each.quantity == quantity and each.use), None)
+    )
     values = None if found is None else scope.holdings_of(reduction).column(reduction.sweep, found.name)
     if values is None or found is None:
         return None
@@ -77,7 +89,9 @@ def _channel(scope: Scope, reduction: ReductionDocument, quantity: str) -> Colum
 def _saved(figure: Figure) -> bytes:
     FigureCanvasPdf(figure)
     buffer = io.BytesIO()
-    figure.savefig(buffer, format="pdf", metadata={"CreationDate": None, "Producer": "stillroom", "Creator": "stillroom"})
+    figure.savefig(
+        buffer, format="pdf", metadata={"CreationDate": None, "Producer": "stillroom", "Creator": "stillroom"}
+    )
     return buffer.getvalue()
 
 
@@ -90,7 +104,15 @@ def _background(scope: Scope, reduction: ReductionDocument) -> Drawn | None:
     outputs = {each.name: each for each in reduction.outputs}
     coefficients = _column(scope, reduction, "period_background")
     low, high = (outputs.get(name) for name in ("period_low", "period_high"))
-    if T is None or P is None or coefficients is None or low is None or high is None or low.value is None or high.value is None:
+    if (
+        T is None
+        or P is None
+        or coefficients is None
+        or low is None
+        or high is None
+        or low.value is None
+        or high.value is None
+    ):
         return None
     scaled = (2 * T - low.value - high.value) / (high.value - low.value)
     fit = np.polynomial.chebyshev.chebval(scaled, coefficients)
@@ -104,7 +126,16 @@ def _background(scope: Scope, reduction: ReductionDocument) -> Drawn | None:
 
 
 def _with_residual(
-    x: Column, y: Column, fit: Column, order: NDArray[np.int64], *, residual: Column, labels: tuple[str, str, str], name: str, source: str, caption: str
+    x: Column,
+    y: Column,
+    fit: Column,
+    order: NDArray[np.int64],
+    *,
+    residual: Column,
+    labels: tuple[str, str, str],
+    name: str,
+    source: str,
+    caption: str,
 ) -> Drawn:
     figure = Figure(figsize=(_WIDTH, 3.4), layout="constrained")
     top, below = figure.subplots(2, 1, sharex=True, height_ratios=[3, 1])
@@ -161,9 +192,26 @@ def _density(scope: Scope, cell: str, members: list[ReductionDocument]) -> Drawn
         order = order[np.isfinite(T[order]) & np.isfinite(sigma[order])]
         marker, line, colour = _LOOKS[number % len(_LOOKS)]
         every = max(1, order.size // 40)
-        axes.plot(T[order], sigma[order] * 1e9, line, marker=marker, markevery=every, color=colour, markerfacecolor="none", markeredgewidth=0.6, label=reduction.sweep)
+        axes.plot(
+            T[order],
+            sigma[order] * 1e9,
+            line,
+            marker=marker,
+            markevery=every,
+            color=colour,
+            markerfacecolor="none",
+            markeredgewidth=0.6,
+            label=reduction.sweep,
+        )
         if point is not None:
-            axes.fill_between(T[order], (sigma - point)[order] * 1e9, (sigma + point)[order] * 1e9, color=colour, alpha=0.2, linewidth=0)
+            axes.fill_between(
+                T[order],
+                (sigma - point)[order] * 1e9,
+                (sigma + point)[order] * 1e9,
+                color=colour,
+                alpha=0.2,
+                linewidth=0,
+            )
         highest, biggest = max(highest, float(T[order].max())), max(biggest, float(sigma[order].max()))
         shared = max(shared, _shared(scope, reduction, sigma, order))
         names.append(reduction.address)
@@ -171,19 +219,42 @@ def _density(scope: Scope, cell: str, members: list[ReductionDocument]) -> Drawn
         return None
     grid = np.array([0.0, highest])
     axes.plot(grid, UNIVERSAL_JUMP * grid * 1e9, "-", color="black", linewidth=1.2, label="universal line")
-    axes.set(xlim=(0, highest * 1.03), ylim=(min(0.0, -0.02 * biggest * 1e9), biggest * 1.08e9), xlabel="T / K", ylabel=r"$\sigma_\mathrm{s}$ / $\mathrm{\mu g\,m^{-2}}$")
+    axes.set(
+        xlim=(0, highest * 1.03),
+        ylim=(min(0.0, -0.02 * biggest * 1e9), biggest * 1.08e9),
+        xlabel="T / K",
+        ylabel=r"$\sigma_\mathrm{s}$ / $\mathrm{\mu g\,m^{-2}}$",
+    )
     if shared[1] > 0:
-        axes.errorbar([highest * 0.98], [0.55 * biggest * 1e9], yerr=[shared[1] * 1e9], fmt="none", ecolor="black", capsize=3, elinewidth=1)
+        axes.errorbar(
+            [highest * 0.98],
+            [0.55 * biggest * 1e9],
+            yerr=[shared[1] * 1e9],
+            fmt="none",
+            ecolor="black",
+            capsize=3,
+            elinewidth=1,
+        )
     axes.legend(loc="upper right", fontsize=8)
     caption = (
         f"Areal superfluid mass density against temperature, cell {cell or 'not recorded'}, with the universal line sigma_s = (2 m^2 k_B/pi hbar^2) T. "
         "Bands: standard uncertainty of the points alone; the single bar: standard uncertainty that all points share."
     )
-    return Drawn(f"figures/areal-density-{cell or 'unknown'}.pdf".replace(".r", "-r"), _saved(figure), caption, tuple(names))
+    return Drawn(
+        f"figures/areal-density-{cell or 'unknown'}.pdf".replace(".r", "-r"),
+        _saved(figure),
+        caption,
+        tuple(names),
+    )
 
 
-def _shared(scope: Scope, reduction: ReductionDocument, sigma: Column, order: NDArray[np.int64]) -> tuple[float, float]:
-    spread, point = _column(scope, reduction, "superfluid_density.uncertainty"), _column(scope, reduction, "superfluid_density.point")
+def _shared(
+    scope: Scope, reduction: ReductionDocument, sigma: Column, order: NDArray[np.int64]
+) -> tuple[float, float]:
+    spread, point = (
+        _column(scope, reduction, "superfluid_density.uncertainty"),
+        _column(scope, reduction, "superfluid_density.point"),
+    )
     if spread is None or order.size == 0:
         return 0.0, 0.0
     k = int(order[np.argmax(sigma[order])])
@@ -200,7 +271,12 @@ def _ringdown(scope: Scope, reduction: ReductionDocument) -> Drawn | None:
     axes.semilogy(t - np.nanmin(t), np.abs(A) * 1e3, "o", color="black", markersize=1.5)
     axes.set(xlabel="t / s", ylabel="A / mV")
     found = next((scope.text(each) for each in reduction.outputs if each.name == "quality_factor"), "[pend]")
-    return Drawn(_named("ringdown", reduction), _saved(figure), f"Free decay {reduction.sweep}; Q = {found}.", (reduction.address,))
+    return Drawn(
+        _named("ringdown", reduction),
+        _saved(figure),
+        f"Free decay {reduction.sweep}; Q = {found}.",
+        (reduction.address,),
+    )
 
 
 def _resonance(scope: Scope, reduction: ReductionDocument) -> Drawn | None:
@@ -215,11 +291,27 @@ def _resonance(scope: Scope, reduction: ReductionDocument) -> Drawn | None:
         values = scope.holdings_of(reduction).column(reduction.sweep, channel.name)
         if values is not None:
             shown = values * unit_factor(channel.unit, "amplitude") * 1e3
-            axes.plot(f, shown, line, marker=marker, markevery=max(1, f.size // 40), color=colour, markerfacecolor="none", label=channel.name.replace("_", " "))
+            axes.plot(
+                f,
+                shown,
+                line,
+                marker=marker,
+                markevery=max(1, f.size // 40),
+                color=colour,
+                markerfacecolor="none",
+                label=channel.name.replace("_", " "),
+            )
     axes.set(xlabel="f / Hz", ylabel="A / mV")
     axes.legend()
-    told = next((scope.text(each) for each in reduction.outputs if each.name == "resonance_frequency"), "[pend]")
-    return Drawn(_named("resonance", reduction), _saved(figure), f"Frequency sweep {reduction.sweep}; resonance: {told}.", (reduction.address,))
+    told = next(
+        (scope.text(each) for each in reduction.outputs if each.name == "resonance_frequency"), "[pend]"
+    )
+    return Drawn(
+        _named("resonance", reduction),
+        _saved(figure),
+        f"Frequency sweep {reduction.sweep}; resonance: {told}.",
+        (reduction.address,),
+    )
 
 
 def _isotherm(scope: Scope, reduction: ReductionDocument) -> Drawn | None:
@@ -237,7 +329,12 @@ def _isotherm(scope: Scope, reduction: ReductionDocument) -> Drawn | None:
     axes.plot(x, n * factor, "o", color="black", markerfacecolor="none", markeredgewidth=0.6)
     axes.set(xlabel="$p/p_0$", ylabel=unit)
     found = next((scope.text(each) for each in reduction.outputs if each.name == "area"), "[pend]")
-    return Drawn(_named("isotherm", reduction), _saved(figure), f"Isotherm {reduction.sweep}; area by the method of Brunauer, Emmett and Teller: {found}.", (reduction.address,))
+    return Drawn(
+        _named("isotherm", reduction),
+        _saved(figure),
+        f"Isotherm {reduction.sweep}; area by the method of Brunauer, Emmett and Teller: {found}.",
+        (reduction.address,),
+    )
 
 
 def _linearity(scope: Scope, reduction: ReductionDocument) -> Drawn | None:
@@ -248,7 +345,12 @@ def _linearity(scope: Scope, reduction: ReductionDocument) -> Drawn | None:
     axes = figure.subplots()
     axes.plot(drive * 1e3, A * 1e3, "o", color="black", markerfacecolor="none", markeredgewidth=0.6)
     axes.set(xlabel="drive / mV", ylabel="A / mV", xlim=(0, None), ylim=(0, None))
-    return Drawn(_named("linearity", reduction), _saved(figure), f"Drive sweep {reduction.sweep}: amplitude against drive.", (reduction.address,))
+    return Drawn(
+        _named("linearity", reduction),
+        _saved(figure),
+        f"Drive sweep {reduction.sweep}: amplitude against drive.",
+        (reduction.address,),
+    )
 
 
 _MAKERS: dict[str, Callable[[Scope, ReductionDocument], Drawn | None]] = {

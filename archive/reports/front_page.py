@@ -79,12 +79,22 @@ def _results(held: Holdings, *, provisional: bool) -> Iterator[dict[str, Any]]:
         address = entry.address.partition("#")[0]
         used[address] = used.get(address, 0) + 1
     order = {f"{held.view.newest.cooldown}/{each.sheet.name}": each.number for each in held.sweeps}
-    ranked = sorted(held.view.current, key=lambda each: (-len(each.plan.needs), -used.get(each.address, 0), each.plan.name, -order.get(each.sweep, 0)))
+    ranked = sorted(
+        held.view.current,
+        key=lambda each: (
+            -len(each.plan.needs),
+            -used.get(each.address, 0),
+            each.plan.name,
+            -order.get(each.sweep, 0),
+        ),
+    )
     seen: set[str] = set()
     for reduction in ranked:
         if reduction.plan.name in seen or len(seen) == 3:
             continue
-        best = next((each for each in held.headline(reduction) if each.value is not None and each.uncertainty), None)
+        best = next(
+            (each for each in held.headline(reduction) if each.value is not None and each.uncertainty), None
+        )
         if best is not None:
             seen.add(reduction.plan.name)
             yield {
@@ -108,7 +118,12 @@ def _mind(held: Holdings, stands: Standing) -> dict[str, Any]:
         "open": list(_alike(stands)),
         "waived": [finding_line(each.flag, each.finding) for each in stands.waived],
         "none_waived": "No warnings were waived." if not stands.waived else "",
-        "gas": {"state": _GAS[end.state], "valve": end.valve or "[nr]", "notes": end.notes, "last": _last_amount(held)},
+        "gas": {
+            "state": _GAS[end.state],
+            "valve": end.valve or "[nr]",
+            "notes": end.notes,
+            "last": _last_amount(held),
+        },
         "cautions": [_caution(each) for each in held.view.newest.cautions],
         "fixed_text": FIXED_TEXT,
     }
@@ -122,7 +137,11 @@ def _alike(stands: Standing) -> Iterator[dict[str, Any]]:
     for members in groups.values():
         line = finding_line(*members[0])
         if len(members) > 1:
-            line["flag"] = f"{members[0][0]} to {members[-1][0]}" if _consecutive(members) else ", ".join(flag for flag, _ in members)
+            line["flag"] = (
+                f"{members[0][0]} to {members[-1][0]}"
+                if _consecutive(members)
+                else ", ".join(flag for flag, _ in members)
+            )
             line["place"] = ", ".join(finding.place or "the cooldown" for _, finding in members)
         yield line
 
@@ -169,10 +188,14 @@ def finding_line(flag: str, finding: Finding) -> dict[str, Any]:
         "code": finding.code,
         "severity": finding.severity,
         "place": finding.place or "the cooldown",
-        "where": ", ".join(part for part in (finding.file or "", f"line {finding.line}" if finding.line else "") if part),
+        "where": ", ".join(
+            part for part in (finding.file or "", f"line {finding.line}" if finding.line else "") if part
+        ),
         "what": prose(told),
         "remedy": finding.remedy or "",
-        "waiver": None if waiver is None else {"date": str(waiver.date), "role": waiver.role, "reason": waiver.reason},
+        "waiver": None
+        if waiver is None
+        else {"date": str(waiver.date), "role": waiver.role, "reason": waiver.reason},
     }
 
 
@@ -201,5 +224,3 @@ def _origin(held: Holdings) -> dict[str, Any]:
         "licence": held.sheet.licence or "[nr]",
         "raw_files": f"{len(newest.raw_files)} raw files, {sum(each.size for each in newest.raw_files)} bytes",
     }
-
-

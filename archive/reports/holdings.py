@@ -71,7 +71,8 @@ class Holdings:
     def records(self) -> dict[str, NamedRecord]:
         """Every record by address, typed."""
         return {
-            address: _READERS[entry.kind].validate_json(json.dumps(entry.content)) for address, entry in self.entries.items()
+            address: _READERS[entry.kind].validate_json(json.dumps(entry.content))
+            for address, entry in self.entries.items()
         }
 
     def named(self, reference: str | None) -> NamedRecord | None:

@@ -23,17 +23,27 @@ def _each_cell(item: str, says: Callable[[Cell], str | None]) -> Callable[[Scope
     def over(scope: Scope) -> Iterator[Said]:
         for cell in scope.cells:
             text = says(cell)
-            yield sentence(text, cell.address) if text else absence(f"{item} of cell {cell.address}", cell.address)
+            yield (
+                sentence(text, cell.address)
+                if text
+                else absence(f"{item} of cell {cell.address}", cell.address)
+            )
 
     return over
 
 
-def _each_oscillator(item: str, says: Callable[[Scope, TorsionalOscillator], str | None]) -> Callable[[Scope], Iterator[Said]]:
+def _each_oscillator(
+    item: str, says: Callable[[Scope, TorsionalOscillator], str | None]
+) -> Callable[[Scope], Iterator[Said]]:
     def over(scope: Scope) -> Iterator[Said]:
         for cell in scope.cells:
             if isinstance(cell, TorsionalOscillator):
                 text = says(scope, cell)
-                yield sentence(text, cell.address) if text else absence(f"{item} of cell {cell.address}", cell.address)
+                yield (
+                    sentence(text, cell.address)
+                    if text
+                    else absence(f"{item} of cell {cell.address}", cell.address)
+                )
 
     return over
 
@@ -42,7 +52,11 @@ def _each_substrate(item: str, says: Callable[[Substrate], str | None]) -> Calla
     def over(scope: Scope) -> Iterator[Said]:
         for substrate in scope.substrates:
             text = says(substrate)
-            yield sentence(text, substrate.address) if text else absence(f"{item} of {substrate.address}", substrate.address)
+            yield (
+                sentence(text, substrate.address)
+                if text
+                else absence(f"{item} of {substrate.address}", substrate.address)
+            )
 
     return over
 
@@ -54,15 +68,25 @@ def _shape(cell: Cell) -> str | None:
 
 
 def _volume(cell: Cell) -> str | None:
-    return None if cell.free_volume is None else f"Its open volume ({cell.address}) is {plain(cell.free_volume)}."
+    return (
+        None
+        if cell.free_volume is None
+        else f"Its open volume ({cell.address}) is {plain(cell.free_volume)}."
+    )
 
 
 def _rod(_: Scope, cell: TorsionalOscillator) -> str | None:
-    return f"The bob of {cell.address} hangs on a rod of {cell.rod_material}: {cell.rod}." if cell.rod else None
+    return (
+        f"The bob of {cell.address} hangs on a rod of {cell.rod_material}: {cell.rod}." if cell.rod else None
+    )
 
 
 def _mode(scope: Scope, cell: TorsionalOscillator) -> str | None:
-    measured = [each for _, each in scope.output("empty_period") if _.plan.name == "empty-cell" and _cell_of(scope, _) == cell.address]
+    measured = [
+        each
+        for _, each in scope.output("empty_period")
+        if _.plan.name == "empty-cell" and _cell_of(scope, _) == cell.address
+    ]
     if cell.empty_period is None and not measured:
         return None
     period = scope.text(measured[-1]) if measured else plain(cell.empty_period)
@@ -76,17 +100,28 @@ def _cell_of(scope: Scope, reduction: object) -> str | None:
 
 def _quality(scope: Scope, cell: TorsionalOscillator) -> str | None:
     found = [
-        (reduction, each) for reduction, each in scope.output("quality_factor", "empty_quality_factor") if _cell_of(scope, reduction) == cell.address
+        (reduction, each)
+        for reduction, each in scope.output("quality_factor", "empty_quality_factor")
+        if _cell_of(scope, reduction) == cell.address
     ]
     if found:
         reduction, each = found[0]
         return f"Q of {cell.address} is {scope.text(each)}, from {reduction.plan.title.lower()} of {reduction.sweep}."
-    return None if cell.empty_quality_factor is None else f"Q of {cell.address} empty is {plain(cell.empty_quality_factor)}."
+    return (
+        None
+        if cell.empty_quality_factor is None
+        else f"Q of {cell.address} empty is {plain(cell.empty_quality_factor)}."
+    )
 
 
 def _inertia(_: Scope, cell: TorsionalOscillator) -> str | None:
     parts = [
-        f"{name} is {plain(value)}" for name, value in (("the moment of inertia", cell.inertia), ("the torsion constant", cell.torsion_constant)) if value is not None
+        f"{name} is {plain(value)}"
+        for name, value in (
+            ("the moment of inertia", cell.inertia),
+            ("the torsion constant", cell.torsion_constant),
+        )
+        if value is not None
     ]
     return f"For {cell.address} {' and '.join(parts)}." if parts else None
 
@@ -108,7 +143,11 @@ def _substrate(each: Substrate) -> str | None:
     if each.mass is None or each.form is None:
         return None
     text = f"The substrate {each.address} is {plain(each.mass)} of {each.material} ({each.form})"
-    return f"{text}, outgassed: {each.outgassing}." if each.outgassing else f"{text}; outgassing is not recorded."
+    return (
+        f"{text}, outgassed: {each.outgassing}."
+        if each.outgassing
+        else f"{text}; outgassing is not recorded."
+    )
 
 
 def _area(each: Substrate) -> str | None:

@@ -32,7 +32,9 @@ def step_sentences(item: str, *names: str) -> Callable[[Scope], Iterator[Said]]:
     def over(scope: Scope) -> Iterator[Said]:
         found: dict[str, list[tuple[str, str]]] = {}
         for reduction, step in scope.steps(*names):
-            found.setdefault(step.sentence, []).append((reduction.sweep, f"{reduction.address} step {step.number}"))
+            found.setdefault(step.sentence, []).append(
+                (reduction.sweep, f"{reduction.address} step {step.number}")
+            )
         for text, places in found.items():
             sweeps = ", ".join(dict.fromkeys(sweep for sweep, _ in places))
             yield sentence(f"{sweeps}: {text}", "; ".join(record for _, record in places))
@@ -43,7 +45,10 @@ def step_sentences(item: str, *names: str) -> Callable[[Scope], Iterator[Said]]:
 
 
 def _dosers(held: Holdings) -> list[str]:
-    return [f"In {held.sheet.name} doses were metered from a volume {each.name} of {plain(each.volume)} ({each.how})." for each in held.sheet.doser]
+    return [
+        f"In {held.sheet.name} doses were metered from a volume {each.name} of {plain(each.volume)} ({each.how})."
+        for each in held.sheet.doser
+    ]
 
 
 def _gauges(held: Holdings) -> list[str]:
@@ -61,7 +66,11 @@ def _gas(held: Holdings) -> list[str]:
     sample = held.named(held.sheet.sample)
     if not isinstance(sample, Sample):
         return []
-    content = f"3He fraction {plain(sample.helium3_fraction)}" if sample.helium3_fraction is not None else "the 3He fraction is not recorded"
+    content = (
+        f"3He fraction {plain(sample.helium3_fraction)}"
+        if sample.helium3_fraction is not None
+        else "the 3He fraction is not recorded"
+    )
     return [f"The gas of {held.sheet.name} was {sample.isotope} ({sample.gas_source}); {content}."]
 
 
@@ -69,12 +78,18 @@ def _doses(held: Holdings) -> list[str]:
     doses = [each for each in held.view.newest.doses if each.act == "add" and each.counted]
     if not doses:
         return []
-    return [f"In {held.sheet.name} {len(doses)} doses gave a total of {shown_value(doses[-1].running_amount, 'amount').plain}."]
+    return [
+        f"In {held.sheet.name} {len(doses)} doses gave a total of {shown_value(doses[-1].running_amount, 'amount').plain}."
+    ]
 
 
 def _annealing(held: Holdings) -> list[str]:
     texts = dict.fromkeys(each.annealing for each in held.sheet.dose if each.annealing)
-    said = list(texts) + list(dict.fromkeys(each.sheet.settled for each in held.sweeps if each.sheet.settled and each.sheet.after_dose))
+    said = list(texts) + list(
+        dict.fromkeys(
+            each.sheet.settled for each in held.sweeps if each.sheet.settled and each.sheet.after_dose
+        )
+    )
     return [f"Annealing in {held.sheet.name}: {'; '.join(str(each) for each in said)}."] if said else []
 
 
@@ -95,7 +110,10 @@ def _scale(scope: Scope) -> Iterator[Said]:
 
 
 def _link(_: Scope) -> Iterator[Said]:
-    yield sentence("No coverage scale of other work was rescaled to this one, and none of theirs is used here.", "the steps of these reductions")
+    yield sentence(
+        "No coverage scale of other work was rescaled to this one, and none of theirs is used here.",
+        "the steps of these reductions",
+    )
 
 
 GAS_ITEMS: tuple[Item, ...] = (

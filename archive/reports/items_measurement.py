@@ -24,26 +24,42 @@ def _drive(scope: Scope) -> Iterator[Said]:
         if detection is None:
             yield absence(f"the drive scheme in {name}", name)
             continue
-        speed = plain(detection.reference_rim_velocity) if detection.reference_rim_velocity is not None else "not recorded"
-        yield sentence(f"The oscillator ran in {name} at {detection.drive_mode.replace('-', ' ')}; the rim speed at the reference point was {speed}.", name)
+        speed = (
+            plain(detection.reference_rim_velocity)
+            if detection.reference_rim_velocity is not None
+            else "not recorded"
+        )
+        yield sentence(
+            f"The oscillator ran in {name} at {detection.drive_mode.replace('-', ' ')}; the rim speed at the reference point was {speed}.",
+            name,
+        )
 
 
 def _thermometers(scope: Scope) -> Iterator[Said]:
     named = dict.fromkeys(each.thermometer for each in scope.calibrations)
     for reference in named:
-        found = next((record for held in scope.runs if isinstance(record := held.named(reference), Thermometer)), None)
+        found = next(
+            (record for held in scope.runs if isinstance(record := held.named(reference), Thermometer)), None
+        )
         if found is None:
             yield absence(f"the thermometer {reference}", reference)
             continue
         excitation = found.excitation or "an excitation that is not recorded"
-        yield sentence(f"Temperature is taken from {found.address} ({found.kind.replace('-', ' ')}), {found.place}, read at {excitation}.", found.address)
+        yield sentence(
+            f"Temperature is taken from {found.address} ({found.kind.replace('-', ' ')}), {found.place}, read at {excitation}.",
+            found.address,
+        )
 
 
 def _calibrations(scope: Scope) -> Iterator[Said]:
     for each in scope.calibrations:
         low, high = plain(each.temperature_low, setting=True), plain(each.temperature_high, setting=True)
         points = f"at {len(each.points)} points " if each.points else ""
-        spread = f"{each.relative_uncertainty:.2g} of T" if each.relative_uncertainty is not None else plain(each.uncertainty, setting=True)
+        spread = (
+            f"{each.relative_uncertainty:.2g} of T"
+            if each.relative_uncertainty is not None
+            else plain(each.uncertainty, setting=True)
+        )
         yield sentence(
             f"The calibration {each.address} is on {each.scale} against {each.against} {points}from {low} to {high} ({each.date}), form "
             f"{each.relation.form}, standard uncertainty {spread}; outside this range no temperature is given.",
@@ -56,8 +72,13 @@ def _recorded_scale(scope: Scope) -> Iterator[Said]:
     for reduction, step in converted:
         yield sentence(f"{reduction.sweep}: {step.sentence}", f"{reduction.address} step {step.number}")
     if not converted:
-        scales = sorted({each.scale for reduction in scope.reductions for each in reduction.outputs if each.scale})
-        yield sentence(f"No temperature was converted from one scale to another; the scales are: {', '.join(scales) or 'none'}.", "the steps of these reductions")
+        scales = sorted(
+            {each.scale for reduction in scope.reductions for each in reduction.outputs if each.scale}
+        )
+        yield sentence(
+            f"No temperature was converted from one scale to another; the scales are: {', '.join(scales) or 'none'}.",
+            "the steps of these reductions",
+        )
 
 
 def _control(scope: Scope) -> Iterator[Said]:
@@ -73,9 +94,18 @@ def _ramps(scope: Scope) -> Iterator[Said]:
         if entry is None or entry.temperature_low is None or entry.temperature_high is None:
             yield absence(f"the range of {address}", address)
             continue
-        low, high = (shown_value(_short(end), "temperature", setting=True).plain for end in (entry.temperature_low, entry.temperature_high))
-        rate = f" at {plain(taken.sheet.rate, setting=True)}" if taken.sheet.rate is not None else _mean_rate(entry)
-        yield sentence(f"{address} ran between {low} and {high}{rate}, direction {taken.sheet.direction}.", address)
+        low, high = (
+            shown_value(_short(end), "temperature", setting=True).plain
+            for end in (entry.temperature_low, entry.temperature_high)
+        )
+        rate = (
+            f" at {plain(taken.sheet.rate, setting=True)}"
+            if taken.sheet.rate is not None
+            else _mean_rate(entry)
+        )
+        yield sentence(
+            f"{address} ran between {low} and {high}{rate}, direction {taken.sheet.direction}.", address
+        )
 
 
 def _short(value: object) -> object:
@@ -86,7 +116,9 @@ def _mean_rate(entry: object) -> str:
     begin, end = entry.begin, entry.end  # type: ignore[attr-defined]
     if begin is None or end is None or end <= begin:
         return "; its rate is not recorded"
-    rate = (entry.temperature_high.value - entry.temperature_low.value) / (end - begin).total_seconds() * 3.6e6  # type: ignore[attr-defined]
+    rate = (
+        (entry.temperature_high.value - entry.temperature_low.value) / (end - begin).total_seconds() * 3.6e6
+    )  # type: ignore[attr-defined]
     return f" at a mean of {rate:.3g} mK/h"
 
 
@@ -104,7 +136,10 @@ def _clock(scope: Scope) -> Iterator[Said]:
     for held in scope.runs:
         cryostat = held.named(held.sheet.cryostat)
         if isinstance(cryostat, Cryostat) and cryostat.frequency_reference:
-            yield sentence(f"Frequencies in {held.sheet.name} refer to a {cryostat.frequency_reference}.", cryostat.address)
+            yield sentence(
+                f"Frequencies in {held.sheet.name} refer to a {cryostat.frequency_reference}.",
+                cryostat.address,
+            )
         else:
             yield absence(f"the frequency reference in {held.sheet.name}", held.sheet.name)
 
@@ -112,7 +147,10 @@ def _clock(scope: Scope) -> Iterator[Said]:
 def _response(scope: Scope) -> Iterator[Said]:
     times = list(scope.output("decay_time"))
     for reduction, each in times:
-        yield sentence(f"Ring time {scope.text(each)} from {reduction.sweep}; detector and thermal time constants are not recorded.", reduction.address)
+        yield sentence(
+            f"Ring time {scope.text(each)} from {reduction.sweep}; detector and thermal time constants are not recorded.",
+            reduction.address,
+        )
     if not times:
         yield absence("the time response", "the steps of these reductions")
 

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
-from archive.reports.budget import largest_share
+from archive.reports.budget import largest_share, percent
 from archive.reports.checklist import Item, Said, absence, sentence
 from archive.reports.items_gas import step_sentences
 from archive.reports.moments import full_time
@@ -13,7 +13,16 @@ from archive.reports.scope import Scope
 __all__ = ["REDUCTION_ITEMS", "runs_not_used"]
 
 _FITS = "fits"
-_FIT_STEPS = ("background-fit", "loading-fit", "power-law-transition", "ringdown-quality-factor", "resonance-fit", "bet-area", "universal-crossing", "dissipation-peak")
+_FIT_STEPS = (
+    "background-fit",
+    "loading-fit",
+    "power-law-transition",
+    "ringdown-quality-factor",
+    "resonance-fit",
+    "bet-area",
+    "universal-crossing",
+    "dissipation-peak",
+)
 
 
 def _sensitivity(scope: Scope) -> Iterator[Said]:
@@ -21,7 +30,10 @@ def _sensitivity(scope: Scope) -> Iterator[Said]:
     for reduction, each in scope.output("mass_sensitivity"):
         beside = geometric.get(reduction.address)
         more = f"; geometry predicts {scope.text(beside)}" if beside is not None else ""
-        yield sentence(f"From {reduction.sweep}, below onset the period rises by {scope.text(each)}{more}.", f"{reduction.address}#mass_sensitivity")
+        yield sentence(
+            f"From {reduction.sweep}, below onset the period rises by {scope.text(each)}{more}.",
+            f"{reduction.address}#mass_sensitivity",
+        )
 
 
 def _coupling(scope: Scope) -> Iterator[Said]:
@@ -39,7 +51,13 @@ def _background(scope: Scope) -> Iterator[Said]:
 
 
 def _tc(scope: Scope) -> Iterator[Said]:
-    yield from step_sentences("the criterion of T_c", "static-transition", "transition-from-peak", "power-law-transition", "universal-crossing")(scope)
+    yield from step_sentences(
+        "the criterion of T_c",
+        "static-transition",
+        "transition-from-peak",
+        "power-law-transition",
+        "universal-crossing",
+    )(scope)
 
 
 def _fits(scope: Scope) -> Iterator[Said]:
@@ -47,7 +65,10 @@ def _fits(scope: Scope) -> Iterator[Said]:
         steps = [step for step in reduction.steps if step.name in _FIT_STEPS]
         if steps:
             names = ", ".join(f"{step.name} (step {step.number})" for step in steps)
-            yield sentence(f"Fits in {reduction.address}: {names}; ranges, points and values stand with these steps, parameters in the tables.", reduction.address)
+            yield sentence(
+                f"Fits in {reduction.address}: {names}; ranges, points and values stand with these steps, parameters in the tables.",
+                reduction.address,
+            )
 
 
 def _correlation(scope: Scope) -> Iterator[Said]:
@@ -78,7 +99,10 @@ def _strongest(held: object) -> tuple[str, str, float] | None:
 def _left_out(scope: Scope) -> Iterator[Said]:
     found = list(scope.steps("leave-out"))
     for reduction, step in found:
-        yield sentence(f"{reduction.sweep}: {step.sentence} What keeping them would change was not computed.", f"{reduction.address} step {step.number}")
+        yield sentence(
+            f"{reduction.sweep}: {step.sentence} What keeping them would change was not computed.",
+            f"{reduction.address} step {step.number}",
+        )
     if not found:
         yield sentence("No points were left out.", "the steps of these reductions")
 
@@ -86,11 +110,14 @@ def _left_out(scope: Scope) -> Iterator[Said]:
 def _budget(scope: Scope) -> Iterator[Said]:
     for reduction in scope.reductions:
         outputs = {each.name: each for each in reduction.outputs if each.rows is None}
-        for name in reduction.plan.headline:
+        for name in reduction.plan.headline if reduction.address in scope.asked else ():
             share = largest_share(outputs[name]) if name in outputs else None
             if share is not None:
                 term, part = share
-                yield sentence(f"Of the variance of {name} of {reduction.address} the largest share, {100 * part:.2g} per cent, is {term}.", f"{reduction.address}#{name}")
+                yield sentence(
+                    f"Of the variance of {name} of {reduction.address} the largest share, {percent(part)} per cent, is {term}.",
+                    f"{reduction.address}#{name}",
+                )
 
 
 def _repeat(scope: Scope) -> Iterator[Said]:
@@ -101,7 +128,10 @@ def _repeat(scope: Scope) -> Iterator[Said]:
             found.setdefault(cell, []).append((reduction.sweep, scope.text(each)))
     for cell, values in found.items():
         if len(values) > 1:
-            yield sentence(f"The empty cell {cell} was measured {len(values)} times: {'; '.join(f'{value} in {sweep}' for sweep, value in values)}.", cell)
+            yield sentence(
+                f"The empty cell {cell} was measured {len(values)} times: {'; '.join(f'{value} in {sweep}' for sweep, value in values)}.",
+                cell,
+            )
 
 
 def runs_not_used(scope: Scope) -> Iterator[tuple[str, str, str]]:
@@ -118,7 +148,10 @@ def runs_not_used(scope: Scope) -> Iterator[tuple[str, str, str]]:
 
 def _runs(scope: Scope) -> Iterator[Said]:
     total = sum(len(held.sweeps) for held in scope.runs)
-    yield sentence(f"Of {total} sweeps in {len(scope.runs)} cooldowns, {len(scope.used)} are used; a table names the others and the reason.", "the sheets of these cooldowns")
+    yield sentence(
+        f"Of {total} sweeps in {len(scope.runs)} cooldowns, {len(scope.used)} are used; a table names the others and the reason.",
+        "the sheets of these cooldowns",
+    )
 
 
 def _events(scope: Scope) -> Iterator[Said]:
@@ -128,22 +161,37 @@ def _events(scope: Scope) -> Iterator[Said]:
             yield sentence(f"No event is recorded of {name}.", name)
         for each in held.sheet.event:
             affected = ", ".join(each.sweeps) or "no sweep is named"
-            yield sentence(f"During {name}, {each.what.replace('-', ' ')} at {full_time(each.at, held.sheet.time_zone)}: {each.text} Sweeps affected: {affected}.", name)
+            yield sentence(
+                f"During {name}, {each.what.replace('-', ' ')} at {full_time(each.at, held.sheet.time_zone)}: {each.text} Sweeps affected: {affected}.",
+                name,
+            )
 
 
 def _software(scope: Scope) -> Iterator[Said]:
-    versions = sorted({f"stillroom {each.software.stillroom} on Python {each.software.python}" for each in scope.reductions})
+    versions = sorted(
+        {f"stillroom {each.software.stillroom} on Python {each.software.python}" for each in scope.reductions}
+    )
     steps = sorted({f"{step.name} {step.version}" for _, step in scope.steps()})
-    yield sentence(f"Reduced with {', '.join(versions)}; steps and versions: {', '.join(steps)}. A table has every parameter.", "the records of the reductions")
+    yield sentence(
+        f"Reduced with {', '.join(versions)}; steps and versions: {', '.join(steps)}. A table has every parameter.",
+        "the records of the reductions",
+    )
 
 
 def _elastic(scope: Scope) -> Iterator[Said]:
     for held in scope.runs:
-        found = next((each for each in held.sheet.effect if each.effect == "elasticity of contents and of cell"), None)
+        found = next(
+            (each for each in held.sheet.effect if each.effect == "elasticity of contents and of cell"), None
+        )
         if found is None:
-            yield absence(f"elastic contributions in {held.sheet.name}", held.sheet.name, reason="not examined")
+            yield absence(
+                f"elastic contributions in {held.sheet.name}", held.sheet.name, reason="not examined"
+            )
         else:
-            yield sentence(f"Elastic contributions in {held.sheet.name} ({found.state}): {found.reason}.", held.sheet.name)
+            yield sentence(
+                f"Elastic contributions in {held.sheet.name} ({found.state}): {found.reason}.",
+                held.sheet.name,
+            )
 
 
 def _drift(scope: Scope) -> Iterator[Said]:
@@ -152,7 +200,9 @@ def _drift(scope: Scope) -> Iterator[Said]:
         if found is None:
             yield absence(f"drift of the period in {held.sheet.name}", held.sheet.name, reason="not examined")
         else:
-            yield sentence(f"Drift of the period in {held.sheet.name} ({found.state}): {found.reason}.", held.sheet.name)
+            yield sentence(
+                f"Drift of the period in {held.sheet.name} ({found.state}): {found.reason}.", held.sheet.name
+            )
 
 
 REDUCTION_ITEMS: tuple[Item, ...] = (

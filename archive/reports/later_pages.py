@@ -6,6 +6,7 @@ import json
 from collections.abc import Iterator
 from typing import Any
 
+from archive.reports.budget import percent
 from archive.reports.front_page import finding_line, grouped_digest
 from archive.reports.holdings import Holdings
 from archive.reports.moments import clock_lines, full_time
@@ -66,7 +67,15 @@ def _doses(held: Holdings) -> Iterator[dict[str, Any]]:
     starts = clock_lines([each.at for each in entries], held.sheet.time_zone)
     for each, start in zip(entries, starts, strict=True):
         sheet = told.get(each.name)
-        note = "; ".join(part for part in (f"crossed out: {sheet.crossed_out}" if sheet and sheet.crossed_out else "", (sheet.annealing or "") if sheet else "", sheet.notes if sheet else "") if part)
+        note = "; ".join(
+            part
+            for part in (
+                f"crossed out: {sheet.crossed_out}" if sheet and sheet.crossed_out else "",
+                (sheet.annealing or "") if sheet else "",
+                sheet.notes if sheet else "",
+            )
+            if part
+        )
         yield {
             "name": each.name, "at": start, "act": each.act, "counted": "yes" if each.counted else "no", "amount": shown_value(each.amount, "amount"),
             "running": shown_value(each.running_amount, "amount"), "coverage": shown_value(each.running_coverage, "coverage", code="na" if held.sheet.cell is None else "nr"),
@@ -92,9 +101,16 @@ def replaced_results(held: Holdings) -> Iterator[dict[str, Any]]:
 def _why(old: ReductionDocument, new: ReductionDocument) -> str:
     parts = []
     if old.plan_digest != new.plan_digest:
-        parts.append(f"plan {old.plan.address} became {new.plan.address}" + (f": {new.plan.changed}" if new.plan.changed else ""))
+        parts.append(
+            f"plan {old.plan.address} became {new.plan.address}"
+            + (f": {new.plan.changed}" if new.plan.changed else "")
+        )
     before = {each.address: each.digest for each in old.inputs}
-    changed = [each.address for each in new.inputs if before.get(each.address, each.digest) != each.digest or each.address not in before]
+    changed = [
+        each.address
+        for each in new.inputs
+        if before.get(each.address, each.digest) != each.digest or each.address not in before
+    ]
     parts += [f"changed inputs: {', '.join(changed)}"] if changed else []
     if old.software != new.software and not parts:
         parts.append("the software changed")
@@ -109,17 +125,33 @@ def _gaps(held: Holdings) -> Iterator[dict[str, str]]:
         channels = held.sheet.channels_of(taken.sheet)
         for channel in taken.entry.channels:
             if channel.missing:
-                yield {"where": f"{taken.sheet.name}#{channel.name}", "what": f"{channel.missing} of {taken.entry.rows} rows have no value", "why": "sentinel or empty cell in the file"}
+                yield {
+                    "where": f"{taken.sheet.name}#{channel.name}",
+                    "what": f"{channel.missing} of {taken.entry.rows} rows have no value",
+                    "why": "sentinel or empty cell in the file",
+                }
             told = channels.get(channel.name)
             if told is not None and not told.use:
-                yield {"where": f"{taken.sheet.name}#{channel.name}", "what": "kept, not used", "why": told.why_not or "[nr]"}
+                yield {
+                    "where": f"{taken.sheet.name}#{channel.name}",
+                    "what": "kept, not used",
+                    "why": told.why_not or "[nr]",
+                }
         for left in taken.sheet.left_out:
-            span = f"rows {left.rows[0]} to {left.rows[1]}" if left.rows else f"{left.channel} from {left.low or 'its lowest'} to {left.high or 'its highest'}"
+            span = (
+                f"rows {left.rows[0]} to {left.rows[1]}"
+                if left.rows
+                else f"{left.channel} from {left.low or 'its lowest'} to {left.high or 'its highest'}"
+            )
             yield {"where": taken.sheet.name, "what": f"left out: {span}", "why": left.reason}
         for reduction in held.reductions_of(taken.sheet.name):
             for output in reduction.outputs:
                 if output.verdict is not None and output.rows is None:
-                    yield {"where": f"{reduction.address}#{output.name}", "what": "no number", "why": output.verdict}
+                    yield {
+                        "where": f"{reduction.address}#{output.name}",
+                        "what": "no number",
+                        "why": output.verdict,
+                    }
 
 
 def _sweep_notes(held: Holdings) -> Iterator[dict[str, str]]:
@@ -127,17 +159,29 @@ def _sweep_notes(held: Holdings) -> Iterator[dict[str, str]]:
     for taken in held.sweeps:
         sweep = taken.sheet
         said = [f"settled: {sweep.settled}"] if sweep.settled else []
-        said += [f"{full_time(each.at, zone)}: {each.what}" + (" (new segment)" if each.new_segment else "") for each in sweep.disturbances]
-        said += [f"{each.correct} correction of {each.channel} by {each.value} ({each.known}): {each.source}" for each in sweep.corrections]
+        said += [
+            f"{full_time(each.at, zone)}: {each.what}" + (" (new segment)" if each.new_segment else "")
+            for each in sweep.disturbances
+        ]
+        said += [
+            f"{each.correct} correction of {each.channel} by {each.value} ({each.known}): {each.source}"
+            for each in sweep.corrections
+        ]
         said += [sweep.notes] if sweep.notes else []
         if said:
             yield {"name": sweep.name, "text": "; ".join(said)}
 
 
 def _records(held: Holdings) -> Iterator[dict[str, Any]]:
-    for address, record in sorted(held.records.items(), key=lambda item: (held.entries[item[0]].kind, item[0])):
+    for address, record in sorted(
+        held.records.items(), key=lambda item: (held.entries[item[0]].kind, item[0])
+    ):
         kind = held.entries[address].kind
-        rows = calibration_rows(record) if isinstance(record, Calibration) else (cell_rows(record) if kind == "cell" else record_rows(record))  # type: ignore[arg-type]
+        rows = (
+            calibration_rows(record)
+            if isinstance(record, Calibration)
+            else (cell_rows(record) if kind == "cell" else record_rows(record))
+        )  # type: ignore[arg-type]
         absent = [name for name, value in rows if value.plain == "[nr]"]
         yield {
             "address": address, "kind": kind, "digest": held.entries[address].digest[:16],
@@ -159,9 +203,21 @@ def effect_states(held: Holdings) -> Iterator[dict[str, Any]]:
             sentence, where = treated[effect]
             yield {"effect": effect, "state": "applied", "bound": "", "text": prose(sentence), "by": where}
         elif found is not None:
-            yield {"effect": effect, "state": found.state.replace("-", " "), "bound": found.bound or "", "text": prose(found.reason), "by": "sheet"}
+            yield {
+                "effect": effect,
+                "state": found.state.replace("-", " "),
+                "bound": found.bound or "",
+                "text": prose(found.reason),
+                "by": "sheet",
+            }
         else:
-            yield {"effect": effect, "state": "not examined", "bound": "", "text": prose("was not examined"), "by": "nobody"}
+            yield {
+                "effect": effect,
+                "state": "not examined",
+                "bound": "",
+                "text": prose("was not examined"),
+                "by": "nobody",
+            }
 
 
 def reduction_block(held: Holdings, reduction: ReductionDocument) -> dict[str, Any]:
@@ -181,7 +237,13 @@ def reduction_block(held: Holdings, reduction: ReductionDocument) -> dict[str, A
 
 def _result(output: OutputEntry) -> dict[str, Any]:
     shares = _shares(output)
-    return {"name": symbol_of(output.name), "what": output.description, "value": shown_output(output), "shares": shares, "step": output.step}
+    return {
+        "name": symbol_of(output.name),
+        "what": output.description,
+        "value": shown_output(output),
+        "shares": shares,
+        "step": output.step,
+    }
 
 
 def _shares(output: OutputEntry) -> str:
@@ -191,11 +253,7 @@ def _shares(output: OutputEntry) -> str:
     parts = [("own points", output.point or 0.0), *output.shared.items()]
     shares = [(name, (part / output.uncertainty) ** 2) for name, part in parts]
     large = sorted((each for each in shares if each[1] >= 0.05), key=lambda each: -each[1])[:3]
-    return ", ".join(f"{name} {_percent(share)}\u00a0%" for name, share in large)
-
-
-def _percent(share: float) -> str:
-    return "100" if share >= 0.995 else f"{100 * share:.2g}"
+    return ", ".join(f"{name} {percent(share)}\u00a0%" for name, share in large)
 
 
 def _step(step: StepRecord, reduction: ReductionDocument) -> dict[str, Any]:

@@ -9,6 +9,7 @@ from archive.reports.front_page import grouped_digest
 from archive.reports.later_pages import effect_states, replaced_results
 from archive.reports.scope import Scope
 from archive.reports.standing import standing
+from schemas.cooldown import EFFECTS
 
 __all__ = ["data_sentences", "effect_sentences", "replaced_sentences", "waiver_sentences"]
 
@@ -17,8 +18,9 @@ def effect_sentences(scope: Scope) -> Iterator[Said]:
     """Yield one sentence for each known effect in each cooldown."""
     for held in scope.runs:
         name = held.sheet.name
+        yield sentence(f"Of {len(EFFECTS)} known effects each has one state in {name}.", f"{name} effects")
         for each in effect_states(held):
-            yield sentence(f"{name}: {_effect(each)}", f"{name} effect {each['effect']}")
+            yield sentence(_effect(each), f"{name} effect {each['effect']}")
 
 
 def _effect(each: dict[str, object]) -> str:
@@ -26,11 +28,17 @@ def _effect(each: dict[str, object]) -> str:
     subject, text = effect[0].upper() + effect[1:], str(each["text"]).rstrip(".")
     match each["state"]:
         case "applied":
-            return f"{subject} was treated in {each['by']}: {text}." if each["by"] != "sheet" else f"{subject} was corrected, as the sheet says: {text}."
+            return (
+                f"{subject} was treated in {each['by']}: {text}."
+                if each["by"] != "sheet"
+                else f"{subject} was corrected, as the sheet says: {text}."
+            )
         case "bounded":
             return f"{subject} was not corrected; it is below {each['bound']}, from: {text}."
         case "considered":
-            return f"{subject} may be present; we have no estimate of its size and made no correction ({text})."
+            return (
+                f"{subject} may be present; we have no estimate of its size and made no correction ({text})."
+            )
         case "not applicable":
             return f"{subject} cannot occur here because {text}."
         case "not possible to know":
@@ -43,7 +51,11 @@ def waiver_sentences(scope: Scope) -> Iterator[Said]:
     for held in scope.runs:
         name, stands = held.sheet.name, standing(held.view)
         count = len(stands.waived)
-        counted = "No warnings were waived" if count == 0 else f"{count} warning{'s were' if count > 1 else ' was'} waived"
+        counted = (
+            "No warnings were waived"
+            if count == 0
+            else f"{count} warning{'s were' if count > 1 else ' was'} waived"
+        )
         yield sentence(f"{counted} in {name}; {len(stands.open)} open, {stands.cleared} cleared.", name)
         for each in stands.waived:
             finding, waiver = each.finding, each.finding.waived
@@ -56,7 +68,10 @@ def waiver_sentences(scope: Scope) -> Iterator[Said]:
                     f"{name} {finding.code} {finding.place or ''}".strip(),
                 )
         for flag, finding in stands.open:
-            yield sentence(f"Open ({flag}): check {finding.code} in {finding.place or name}: {finding.what}.", f"{name} {finding.code} {finding.place or ''}".strip())
+            yield sentence(
+                f"Open ({flag}): check {finding.code} in {finding.place or name}: {finding.what}.",
+                f"{name} {finding.code} {finding.place or ''}".strip(),
+            )
 
 
 def replaced_sentences(scope: Scope) -> Iterator[Said]:
@@ -68,7 +83,10 @@ def replaced_sentences(scope: Scope) -> Iterator[Said]:
             sweep, _, plan = str(each["new"]).partition("@")
             if (sweep, plan.rpartition(".")[0]) in used:
                 found = True
-                yield sentence(f"{each['name'].plain} = {each['is'].plain} ({each['new']}) replaces {each['was'].plain} ({each['old']}, {each['date']}) because: {each['reason']}.", str(each["new"]))
+                yield sentence(
+                    f"{each['name'].plain} = {each['is'].plain} ({each['new']}) replaces {each['was'].plain} ({each['old']}, {each['date']}) because: {each['reason']}.",
+                    str(each["new"]),
+                )
     if not found:
         yield sentence("No result was replaced.", "the reductions of these cooldowns")
 
@@ -87,7 +105,13 @@ def data_sentences(scope: Scope, figures: int) -> Iterator[Said]:
         yield sentence(f"Licence of {name}: {held.sheet.licence or 'not recorded'}.", name)
     for reduction in scope.reductions:
         digest, _ = scope.holdings_of(reduction).view.sealed.get(reduction.address, ("", 0))
-        yield sentence(f"Reduction {reduction.address}: sealed file SHA-256 {grouped_digest(digest) if digest else '[nr]'}.", reduction.address)
+        yield sentence(
+            f"Reduction {reduction.address}: sealed file SHA-256 {grouped_digest(digest) if digest else '[nr]'}.",
+            reduction.address,
+        )
     for address in scope.not_held:
         yield sentence(f"Reduction {address} was rested on and is not among the records at hand.", address)
-    yield sentence("No deposit with a persistent identifier is recorded; the addresses hold inside the archive named.", "the records of these cooldowns")
+    yield sentence(
+        "No deposit with a persistent identifier is recorded; the addresses hold inside the archive named.",
+        "the records of these cooldowns",
+    )

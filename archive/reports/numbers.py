@@ -20,7 +20,17 @@ from schemas.lineage import OutputEntry, Value
 from schemas.quantity import Quantity
 from schemas.uncertain_text import html_text, in_preferred_unit, latex_text, plain_text, rounded
 
-__all__ = ["CODES", "LOST", "NOT_RECORDED", "Shown", "absent", "shown", "shown_output", "shown_value", "words"]
+__all__ = [
+    "CODES",
+    "LOST",
+    "NOT_RECORDED",
+    "Shown",
+    "absent",
+    "shown",
+    "shown_output",
+    "shown_value",
+    "words",
+]
 
 _DIGITS_WITHOUT_UNCERTAINTY = 4
 
@@ -72,7 +82,9 @@ NOT_RECORDED = absent("nr")
 LOST = absent("lost")
 
 
-def shown(quantity: Quantity | None, *, preferred: bool = False, setting: bool = False, code: str = "nr") -> Shown:
+def shown(
+    quantity: Quantity | None, *, preferred: bool = False, setting: bool = False, code: str = "nr"
+) -> Shown:
     """Return a quantity as it is printed.
 
     Parameters
@@ -102,7 +114,9 @@ def shown_value(
     """Return a value of a document as it is printed, in the unit people like to read unless one is named."""
     if value is None or value.value is None:
         return absent(code)
-    return _of(value.value, value.uncertainty, value.unit, kind, value.scale, setting=setting, unit_shown=unit)
+    return _of(
+        value.value, value.uncertainty, value.unit, kind, value.scale, setting=setting, unit_shown=unit
+    )
 
 
 def shown_output(output: OutputEntry | None) -> Shown:
@@ -115,7 +129,14 @@ def shown_output(output: OutputEntry | None) -> Shown:
 
 
 def _of(
-    value: float, u: float | None, unit: str, kind: str, scale: str | None, *, setting: bool = False, unit_shown: str | None = None
+    value: float,
+    u: float | None,
+    unit: str,
+    kind: str,
+    scale: str | None,
+    *,
+    setting: bool = False,
+    unit_shown: str | None = None,
 ) -> Shown:
     # A zero uncertainty in a document says that none is known, not that the value is exact.
     spread = u if u is not None and math.isfinite(u) and u > 0 else None
@@ -126,7 +147,11 @@ def _of(
         number = rounded(value, spread)
         tail = "" if spread is not None or setting else " [u nr]"
         name = "" if unit == "1" else f" {unit}"
-        return Shown(number.plain() + name + tail, number.typographic() + name + tail, Tex(rf"${number.maths()}$" + tex(name + tail)))
+        return Shown(
+            number.plain() + name + tail,
+            number.typographic() + name + tail,
+            Tex(rf"${number.maths()}$" + tex(name + tail)),
+        )
     scaled = scale if KINDS[kind].scaled else None
     quantity = Quantity(value=value, uncertainty=spread, unit=unit, kind=kind, scale=scaled)
     if unit_shown is not None:

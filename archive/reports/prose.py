@@ -60,7 +60,9 @@ class Prose:
         """Return the sentence as HTML, every text in it escaped."""
         tags = {"sub": "sub", "sup": "sup", "i": "i"}
         return "".join(
-            f"<{tags[piece.style]}>{html.escape(piece.text)}</{tags[piece.style]}>" if piece.style else html.escape(piece.text)
+            f"<{tags[piece.style]}>{html.escape(piece.text)}</{tags[piece.style]}>"
+            if piece.style
+            else html.escape(piece.text)
             for piece in self.pieces
         )
 
@@ -123,7 +125,8 @@ def _text(text: str) -> Piece:
 def breakable(text: str, most: int = _LONGEST_UNBROKEN, piece: int = _PIECE) -> str:
     """Return a text in which long words may break: a zero-width space every few characters."""
     return " ".join(
-        word if len(word) <= most else "\u200b".join(word[k : k + piece] for k in range(0, len(word), piece)) for word in text.split(" ")
+        word if len(word) <= most else "\u200b".join(word[k : k + piece] for k in range(0, len(word), piece))
+        for word in text.split(" ")
     )
 
 
@@ -132,7 +135,9 @@ def _number(found: re.Match[str]) -> list[Piece] | None:
         if found["digits"].startswith("-"):
             return [Piece("\u2212" + found["digits"][1:], "", Tex(f"${found['digits']}$"))]
         return None
-    digits, bracket = (found["scaled"], found["scaled_bracket"]) if found["scaled"] else (found["digits"], found["bracket"])
+    digits, bracket = (
+        (found["scaled"], found["scaled_bracket"]) if found["scaled"] else (found["digits"], found["bracket"])
+    )
     number = RoundedText(digits.removeprefix("+"), bracket or "", int(found["power"] or 0))
     if not found["unit"]:
         return [Piece(number.typographic(), "", Tex(f"${number.maths()}$"))]

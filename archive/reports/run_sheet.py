@@ -27,7 +27,6 @@ from archive.reports.view import CooldownView
 __all__ = ["run_sheet_html", "run_sheet_json", "run_sheet_pdf"]
 
 
-
 def run_sheet_html(view: CooldownView) -> str:
     """Return the run sheet as one self-contained page: drawings and style inside, no script, no outside reference.
 

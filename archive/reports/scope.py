@@ -37,7 +37,10 @@ class Scope:
         self._known = {each.address: each for view in views for each in view.reductions}
         for address in addresses:
             if address not in self._known:
-                raise UnknownAddress(f"no reduction {address} is at hand", expected="the address of a reduction of these cooldowns")
+                raise UnknownAddress(
+                    f"no reduction {address} is at hand",
+                    expected="the address of a reduction of these cooldowns",
+                )
         self.asked = tuple(dict.fromkeys(addresses))
 
     @cached_property

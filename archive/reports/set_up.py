@@ -27,7 +27,12 @@ def left_column(held: Holdings) -> list[Row]:
         rows += [
             ("rod", words(f"{cell.rod_material}, {cell.rod}") if cell.rod else words(cell.rod_material)),
             ("empty period", shown(cell.empty_period)),
-            ("empty Q", shown(cell.empty_quality_factor) if cell.empty_quality_factor else _measured(held, "empty_quality_factor")),
+            (
+                "empty Q",
+                shown(cell.empty_quality_factor)
+                if cell.empty_quality_factor
+                else _measured(held, "empty_quality_factor"),
+            ),
             ("dP/dn of the record", shown(cell.mass_sensitivity)),
             ("dP/dn measured", _measured(held, "mass_sensitivity")),
             ("mode", said(cell.mode)),
@@ -55,7 +60,9 @@ def right_column(held: Holdings) -> list[Row]:
         rows.append(("thermometer", _bare_thermometers(held)))
     sample = held.named(sheet.sample)
     rows.append(("gas", _gas(sample)))
-    rows += [(f"dosing volume {each.name}", shown(each.volume)) for each in sheet.doser] or [("dosing volume", NOT_RECORDED)]
+    rows += [(f"dosing volume {each.name}", shown(each.volume)) for each in sheet.doser] or [
+        ("dosing volume", NOT_RECORDED)
+    ]
     substrate = substrate_of(held)
     rows.append(("area", shown(area_of(substrate))))
     if substrate is not None and substrate.layer is not None:
@@ -79,7 +86,9 @@ def area_of(substrate: Substrate | None) -> Quantity | None:
 
 def _cryostat(held: Holdings) -> Shown:
     found = held.named(held.sheet.cryostat)
-    return words(f"{found.address}, {found.kind}") if isinstance(found, Cryostat) else words(held.sheet.cryostat)
+    return (
+        words(f"{found.address}, {found.kind}") if isinstance(found, Cryostat) else words(held.sheet.cryostat)
+    )
 
 
 def _cell_words(cell: object) -> Shown:
@@ -112,7 +121,11 @@ def _in_force(held: Holdings) -> list[Calibration]:
 
 def _bare_thermometers(held: Holdings) -> Shown:
     names = ", ".join(each.address for each in held.of_type(Thermometer))
-    return words(f"{names}, temperatures as recorded on {held.sheet.temperature_scale}") if names else words(f"[nr]; temperatures as recorded on {held.sheet.temperature_scale}")
+    return (
+        words(f"{names}, temperatures as recorded on {held.sheet.temperature_scale}")
+        if names
+        else words(f"[nr]; temperatures as recorded on {held.sheet.temperature_scale}")
+    )
 
 
 def _gas(sample: object) -> Shown:

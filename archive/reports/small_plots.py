@@ -55,7 +55,9 @@ def in_unit(values: Column, unit: str, kind: str) -> tuple[Column, str]:
         return values, unit
     si = values * unit_factor(unit, kind)
     biggest = float(np.max(np.abs(si[np.isfinite(si)])))
-    shown = in_preferred_unit(Quantity(value=biggest, unit=canonical(kind) if kind != "drive" else _si_of(unit, kind), kind=kind)).unit
+    shown = in_preferred_unit(
+        Quantity(value=biggest, unit=canonical(kind) if kind != "drive" else _si_of(unit, kind), kind=kind)
+    ).unit
     return np.asarray(si / unit_factor(shown, kind)), shown
 
 
@@ -91,7 +93,11 @@ def _along(held: Holdings, taken: Taken, kind: str) -> tuple[Column, str, str] |
         return None
     for reduction in held.reductions_of(taken.sheet.name):
         for output in reduction.outputs:
-            if output.quantity == kind and output.rows == taken.entry.rows and kind in ("amount", "relative_pressure"):
+            if (
+                output.quantity == kind
+                and output.rows == taken.entry.rows
+                and kind in ("amount", "relative_pressure")
+            ):
                 values = held.column(reduction.address, output.name)
                 if values is not None:
                     return values, output.unit, kind
@@ -113,17 +119,25 @@ def sweep_plot(held: Holdings, taken: Taken) -> str | None:
     if x is None or entry is None:
         return None
     if not seen:
-        seen = tuple(channel.quantity for channel in entry.channels if channel.quantity not in ("instant", x[2]))
+        seen = tuple(
+            channel.quantity for channel in entry.channels if channel.quantity not in ("instant", x[2])
+        )
     channels = next((found for kind in seen if (found := _channels(entry.channels, kind))), [])
     columns = [(channel, held.column(_address(held, taken), channel.name)) for channel in channels[:2]]
-    pairs = [(channel, values) for channel, values in columns if values is not None and values.shape == x[0].shape]
+    pairs = [
+        (channel, values) for channel, values in columns if values is not None and values.shape == x[0].shape
+    ]
     if not pairs:
         return None
     xs, x_unit = in_unit(x[0], x[1], x[2])
     ys = []
     unit = in_unit(pairs[0][1], pairs[0][0].unit, pairs[0][0].quantity)[1]
     for channel, values in pairs:
-        factor = unit_factor(channel.unit, channel.quantity) / unit_factor(unit, channel.quantity) if channel.quantity in KINDS else 1.0
+        factor = (
+            unit_factor(channel.unit, channel.quantity) / unit_factor(unit, channel.quantity)
+            if channel.quantity in KINDS
+            else 1.0
+        )
         ys.append(values * factor)
     ys, name = _less_offset(ys, pairs[0][0].quantity, unit)
     log = taken.sheet.kind == "ringdown" and all(bool((each[np.isfinite(each)] > 0).all()) for each in ys)
@@ -131,8 +145,14 @@ def sweep_plot(held: Holdings, taken: Taken) -> str | None:
     if x_axis is None or y_axis is None:
         return None
     marks = taken.sheet.kind in ("drive-sweep", "dose-run", "isotherm")
-    order = np.arange(xs.size) if marks or taken.sheet.kind == "frequency-sweep" else np.argsort(xs, kind="stable")
-    series = [Series(xs[order], each[order], marks=marks, dash="0.8 0.5" if k else "") for k, each in enumerate(ys)]
+    order = (
+        np.arange(xs.size)
+        if marks or taken.sheet.kind == "frequency-sweep"
+        else np.argsort(xs, kind="stable")
+    )
+    series = [
+        Series(xs[order], each[order], marks=marks, dash="0.8 0.5" if k else "") for k, each in enumerate(ys)
+    ]
     names = " and ".join(channel.name for channel, _ in pairs)
     label = f"{taken.sheet.name}: {names} against {symbol(x[2])}, {x_axis.name} from {x_axis.low:.3g} to {x_axis.high:.3g}"
     return plot(x_axis, y_axis, series, label=label)

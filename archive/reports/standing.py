@@ -59,7 +59,9 @@ def standing(view: CooldownView) -> Standing:
         own = [*reduction.findings, *(each for step in reduction.steps for each in step.findings)]
         seen: set[str] = set()
         for each in own:
-            placed = each if each.place else each.model_copy(update={"place": reduction.sweep.partition("/")[2]})
+            placed = (
+                each if each.place else each.model_copy(update={"place": reduction.sweep.partition("/")[2]})
+            )
             if placed.sentence() not in seen:
                 seen.add(placed.sentence())
                 findings.append(placed)
@@ -101,7 +103,9 @@ def _reasons(view: CooldownView, stands: Standing) -> Iterator[str]:
         yield "the state of the cell's valve is not recorded"
     if sheet.gas_end.state == "unknown":
         yield "the gas balance at the end is unknown"
-    keys = [f"{each.cooldown}/{each.address}" for each in view.accessions] + [each.address for each in view.current]
+    keys = [f"{each.cooldown}/{each.address}" for each in view.accessions] + [
+        each.address for each in view.current
+    ]
     missing = [key for key in keys if key not in view.sealed]
     if missing:
         yield f"no digest is known of {', '.join(missing)}"

@@ -14,7 +14,17 @@ from schemas.quantity import unit_factor
 
 __all__ = ["strip"]
 
-_MARKS = {"transfer": "T", "leak": "L", "plug": "P", "power-loss": "W", "fault": "F", "magnet": "M", "rotation": "R", "turbo": "U", "other": "O"}
+_MARKS = {
+    "transfer": "T",
+    "leak": "L",
+    "plug": "P",
+    "power-loss": "W",
+    "fault": "F",
+    "magnet": "M",
+    "rotation": "R",
+    "turbo": "U",
+    "other": "O",
+}
 _LEFT, _RIGHT, _TOP, _BOTTOM = 10.0, 179.0, 3.4, 20.0
 
 
@@ -26,14 +36,24 @@ def strip(held: Holdings) -> tuple[str | None, str]:
     From the top: marks of events; temperature, logarithmic; sweeps as bars with their numbers; doses as ticks, as high as
     their amount. Where nothing was recorded the temperature has a gap.
     """
-    moments = [at for each in held.sweeps if each.entry is not None for at in (each.entry.begin, each.entry.end) if at is not None]
+    moments = [
+        at
+        for each in held.sweeps
+        if each.entry is not None
+        for at in (each.entry.begin, each.entry.end)
+        if at is not None
+    ]
     moments += [each.at for each in held.view.newest.doses] + [each.at for each in held.sheet.event]
     moments += [at for at in (held.sheet.begin, held.sheet.end) if at is not None]
     if not moments or max(moments) <= min(moments):
         return None, held.sheet.undated or "[nr]: no time is recorded"
     begin, end = min(moments), max(moments)
     time = Axis("time", begin.timestamp(), end.timestamp())
-    frame = Frame(180.0, 30.0, f"temperature against time from {begin:%Y-%m-%d} to {end:%Y-%m-%d}, logarithmic, with sweeps, doses and events")
+    frame = Frame(
+        180.0,
+        30.0,
+        f"temperature against time from {begin:%Y-%m-%d} to {end:%Y-%m-%d}, logarithmic, with sweeps, doses and events",
+    )
     _temperatures(held, frame, time)
     _bars(held, frame, time)
     _doses(held, frame, time)
@@ -52,10 +72,17 @@ def _x(time: Axis, at: float) -> float:
 def _temperatures(held: Holdings, frame: Frame, time: Axis) -> None:
     lines = [(taken, found) for taken in held.sweeps if (found := _line(held, taken)) is not None]
     axis = axis_of("T / K", [values for _, (_, values) in lines], log=True)
-    frame.parts.append(f'<rect x="{_LEFT}" y="{_TOP}" width="{_RIGHT - _LEFT}" height="{_BOTTOM - _TOP}" fill="none" stroke="#000" stroke-width="0.14"/>')
+    frame.parts.append(
+        f'<rect x="{_LEFT}" y="{_TOP}" width="{_RIGHT - _LEFT}" height="{_BOTTOM - _TOP}" fill="none" stroke="#000" stroke-width="0.14"/>'
+    )
     frame.text(2.4, (_TOP + _BOTTOM) / 2, "T / K", size=2.7, turn=True)
     if axis is None:
-        frame.text((_LEFT + _RIGHT) / 2, (_TOP + _BOTTOM) / 2 + 1, "no temperature is recorded against time", size=2.7)
+        frame.text(
+            (_LEFT + _RIGHT) / 2,
+            (_TOP + _BOTTOM) / 2 + 1,
+            "no temperature is recorded against time",
+            size=2.7,
+        )
         return
     for tick in axis.ticks():
         at = _BOTTOM - float(axis.place(np.array([tick]))[0]) * (_BOTTOM - _TOP)
@@ -65,12 +92,22 @@ def _temperatures(held: Holdings, frame: Frame, time: Axis) -> None:
         X = _LEFT + time.place(times) * (_RIGHT - _LEFT)
         Y = _BOTTOM - axis.place(values) * (_BOTTOM - _TOP)
         keep = np.flatnonzero(np.isfinite(X) & np.isfinite(Y))
-        gap = np.flatnonzero(np.diff(times[keep]) > 20 * np.median(np.diff(times[keep]))) + 1 if keep.size > 2 else np.array([], dtype=int)
+        gap = (
+            np.flatnonzero(np.diff(times[keep]) > 20 * np.median(np.diff(times[keep]))) + 1
+            if keep.size > 2
+            else np.array([], dtype=int)
+        )
         for run in np.split(keep, gap):
-            thin = run[np.unique(np.linspace(0, run.size - 1, min(run.size, 80)).astype(int))] if run.size else run
+            thin = (
+                run[np.unique(np.linspace(0, run.size - 1, min(run.size, 80)).astype(int))]
+                if run.size
+                else run
+            )
             if thin.size:
                 points = " ".join(f"{X[k]:.2f},{Y[k]:.2f}" for k in thin)
-                frame.parts.append(f'<polyline points="{points}" fill="none" stroke="#000" stroke-width="0.3" stroke-linecap="round"/>')
+                frame.parts.append(
+                    f'<polyline points="{points}" fill="none" stroke="#000" stroke-width="0.3" stroke-linecap="round"/>'
+                )
 
 
 def _line(held: Holdings, taken: Taken) -> tuple[np.ndarray, np.ndarray] | None:  # type: ignore[type-arg]
@@ -108,11 +145,21 @@ def _bars(held: Holdings, frame: Frame, time: Axis) -> None:
 
 
 def _doses(held: Holdings, frame: Frame, time: Axis) -> None:
-    sizes = [abs(each.amount.value or 0.0) * unit_factor(each.amount.unit, "amount") for each in held.view.newest.doses]
+    sizes = [
+        abs(each.amount.value or 0.0) * unit_factor(each.amount.unit, "amount")
+        for each in held.view.newest.doses
+    ]
     for each, size in zip(held.view.newest.doses, sizes, strict=True):
         height = 0.6 + 2.4 * size / max(max(sizes), 1e-300)
         x = _x(time, each.at.timestamp())
-        frame.line(x, _BOTTOM, x, _BOTTOM - height, width=0.22 if each.act == "add" else 0.5, dash="" if each.counted else "0.3 0.3")
+        frame.line(
+            x,
+            _BOTTOM,
+            x,
+            _BOTTOM - height,
+            width=0.22 if each.act == "add" else 0.5,
+            dash="" if each.counted else "0.3 0.3",
+        )
 
 
 def _events(held: Holdings, frame: Frame, time: Axis) -> None:

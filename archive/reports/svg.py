@@ -29,13 +29,17 @@ class Axis:
         """Return where values stand, 0 at the low end and 1 at the high end."""
         if self.log:
             with np.errstate(invalid="ignore", divide="ignore"):
-                return np.asarray((np.log10(values) - math.log10(self.low)) / (math.log10(self.high) - math.log10(self.low)))
+                return np.asarray(
+                    (np.log10(values) - math.log10(self.low)) / (math.log10(self.high) - math.log10(self.low))
+                )
         return np.asarray((values - self.low) / (self.high - self.low))
 
     def ticks(self, most: int = 4) -> list[float]:
         """Return round values along the axis."""
         if self.log:
-            decades = range(math.ceil(math.log10(self.low) - 1e-9), math.floor(math.log10(self.high) + 1e-9) + 1)
+            decades = range(
+                math.ceil(math.log10(self.low) - 1e-9), math.floor(math.log10(self.high) + 1e-9) + 1
+            )
             ticks = [10.0**each for each in decades]
             return ticks if len(ticks) >= 2 else [self.low, self.high]
         span = self.high - self.low
@@ -65,15 +69,31 @@ class Frame:
     label: str
     parts: list[str] = field(default_factory=list)
 
-    def line(self, x1: float, y1: float, x2: float, y2: float, *, width: float = 0.14, dash: str = "", colour: str = "#000") -> None:
+    def line(
+        self,
+        x1: float,
+        y1: float,
+        x2: float,
+        y2: float,
+        *,
+        width: float = 0.14,
+        dash: str = "",
+        colour: str = "#000",
+    ) -> None:
         """Add a straight line."""
         dashes = f' stroke-dasharray="{dash}"' if dash else ""
-        self.parts.append(f'<line x1="{x1:.2f}" y1="{y1:.2f}" x2="{x2:.2f}" y2="{y2:.2f}" stroke="{colour}" stroke-width="{width}"{dashes}/>')
+        self.parts.append(
+            f'<line x1="{x1:.2f}" y1="{y1:.2f}" x2="{x2:.2f}" y2="{y2:.2f}" stroke="{colour}" stroke-width="{width}"{dashes}/>'
+        )
 
-    def text(self, x: float, y: float, words: str, *, size: float = 2.5, anchor: str = "middle", turn: bool = False) -> None:
+    def text(
+        self, x: float, y: float, words: str, *, size: float = 2.5, anchor: str = "middle", turn: bool = False
+    ) -> None:
         """Add a text; `size` is in millimetres."""
         turned = f' transform="rotate(-90 {x:.2f} {y:.2f})"' if turn else ""
-        self.parts.append(f'<text x="{x:.2f}" y="{y:.2f}" font-size="{size}" text-anchor="{anchor}"{turned}>{escape(words)}</text>')
+        self.parts.append(
+            f'<text x="{x:.2f}" y="{y:.2f}" font-size="{size}" text-anchor="{anchor}"{turned}>{escape(words)}</text>'
+        )
 
     def done(self) -> str:
         """Return the SVG."""
@@ -130,7 +150,9 @@ def plot(
         for run in np.split(np.flatnonzero(shown), np.flatnonzero(np.diff(np.flatnonzero(shown)) > 1) + 1):
             points = " ".join(f"{X[k]:.2f},{Y[k]:.2f}" for k in _thinned(run))
             if points:
-                frame.parts.append(f'<polyline points="{points}" fill="none" stroke="{colour}" stroke-width="0.22"{dash}/>')
+                frame.parts.append(
+                    f'<polyline points="{points}" fill="none" stroke="{colour}" stroke-width="0.22"{dash}/>'
+                )
     return frame.done()
 
 
@@ -142,7 +164,9 @@ def _thinned(indices: NDArray[np.int64]) -> NDArray[np.int64]:
 
 def _frame(frame: Frame, x: Axis, y: Axis, box: tuple[float, float, float, float]) -> None:
     left, right, top, bottom = box
-    frame.parts.append(f'<rect x="{left:.2f}" y="{top:.2f}" width="{right - left:.2f}" height="{bottom - top:.2f}" fill="none" stroke="#000" stroke-width="0.14"/>')
+    frame.parts.append(
+        f'<rect x="{left:.2f}" y="{top:.2f}" width="{right - left:.2f}" height="{bottom - top:.2f}" fill="none" stroke="#000" stroke-width="0.14"/>'
+    )
     for axis, across in ((x, True), (y, False)):
         ticks = axis.ticks()
         texts = tick_texts(axis, ticks)
@@ -167,7 +191,13 @@ def tick_texts(axis: Axis, ticks: Sequence[float]) -> list[str]:
     if axis.log:
         return [f"{value:.3g}" for value in ticks]
     values = list(ticks)
-    step = min((abs(b - a) for a, b in zip(values, values[1:], strict=False)), default=abs(values[0]) if values else 1.0) or 1.0
+    step = (
+        min(
+            (abs(b - a) for a, b in zip(values, values[1:], strict=False)),
+            default=abs(values[0]) if values else 1.0,
+        )
+        or 1.0
+    )
     places = max(0, -math.floor(math.log10(step) + 1e-9))
     if round(step, places) != 0 and abs(step - round(step, places)) > 0.01 * step:
         places += 1
@@ -175,7 +205,9 @@ def tick_texts(axis: Axis, ticks: Sequence[float]) -> list[str]:
     if places > 4 or largest >= 1e5:
         texts = [f"{value:.1e}" if value else "0" for value in values]
         return [_powers(text) for text in texts]
-    return [f"{value:.{places}f}".replace("-", "\u2212") if abs(value) > step * 1e-6 else "0" for value in values]
+    return [
+        f"{value:.{places}f}".replace("-", "\u2212") if abs(value) > step * 1e-6 else "0" for value in values
+    ]
 
 
 def _powers(text: str) -> str:

@@ -15,7 +15,12 @@ from schemas.sweep import Detection
 
 __all__ = ["SWEEP_HEADS", "sweep_lines"]
 
-COVERAGE, TEMPERATURE, RATE, RIM_SPEED = "coverage / µmol·m⁻²", "T from to / K", "rate / mK·h⁻¹", "rim speed / µm·s⁻¹"
+COVERAGE, TEMPERATURE, RATE, RIM_SPEED = (
+    "coverage / µmol·m⁻²",
+    "T from to / K",
+    "rate / mK·h⁻¹",
+    "rim speed / µm·s⁻¹",
+)
 SWEEP_HEADS = (
     "no.", "kind", "start", "lasts", COVERAGE, TEMPERATURE, RATE, "drive", RIM_SPEED, "Q", "result", "flags", "file",
 )  # fmt: skip
@@ -114,8 +119,14 @@ def _rim_speed(held: Holdings, taken: Taken) -> str:
         return "[na]"
     if entry is None or not _complete(detection):
         return "[nr]"
-    assert detection is not None and detection.reference_rim_velocity is not None and detection.reference_signal is not None  # noqa: S101, PT018
-    channel = next((each for each in entry.channels if each.quantity == "amplitude" and each.high is not None), None)
+    assert (
+        detection is not None
+        and detection.reference_rim_velocity is not None
+        and detection.reference_signal is not None
+    )  # noqa: S101, PT018
+    channel = next(
+        (each for each in entry.channels if each.quantity == "amplitude" and each.high is not None), None
+    )
     if channel is None or channel.high is None:
         return "[nr]"
     share = channel.high * unit_factor(channel.unit, "amplitude") / detection.reference_signal.si
@@ -124,14 +135,20 @@ def _rim_speed(held: Holdings, taken: Taken) -> str:
 
 
 def _complete(detection: Detection | None) -> bool:
-    return detection is not None and detection.reference_rim_velocity is not None and detection.reference_signal is not None
+    return (
+        detection is not None
+        and detection.reference_rim_velocity is not None
+        and detection.reference_signal is not None
+    )
 
 
 def _quality(held: Holdings, taken: Taken) -> str:
     found = held.result(taken.sheet.name, "quality_factor")
     if found is not None:
         return str(shown_output(found))
-    return str(absent("na" if taken.sheet.kind in ("isotherm", "log", "calibration", "heat-capacity") else "nm"))
+    return str(
+        absent("na" if taken.sheet.kind in ("isotherm", "log", "calibration", "heat-capacity") else "nm")
+    )
 
 
 def _result(held: Holdings, taken: Taken) -> str | Prose:
@@ -141,5 +158,8 @@ def _result(held: Holdings, taken: Taken) -> str | Prose:
             if each.verdict is not None:
                 return value.text
             name = symbol_of(each.name)
-            return Prose(f"{name.plain} = {value.plain}", (*name.pieces, Piece(f" = {value.text}", "", Tex(f" = {value.latex}"))))
+            return Prose(
+                f"{name.plain} = {value.plain}",
+                (*name.pieces, Piece(f" = {value.text}", "", Tex(f" = {value.latex}"))),
+            )
     return str(absent("pend"))

@@ -84,7 +84,11 @@ def tex(value: object) -> Tex:
     """
     if isinstance(value, Tex):
         return value
-    text = " ".join(str(value).split()) if any(c in str(value) for c in "\n\r\t\v\f\x85\u2028\u2029") else str(value)
+    text = (
+        " ".join(str(value).split())
+        if any(c in str(value) for c in "\n\r\t\v\f\x85\u2028\u2029")
+        else str(value)
+    )
     # Two hyphens, commas or quotes in a row would become another sign.
     for pair in ("--", ",,", "''"):
         text = text.replace(pair, "\u200c".join(pair))
@@ -115,7 +119,11 @@ def _accented(character: str) -> str:
         return " "
     parts = unicodedata.normalize("NFD", character)
     if len(parts) == 2 and parts[0].isascii() and parts[0].isalpha() and parts[1] in _ACCENTS:
-        letter = {"i": r"\i{}", "j": r"\j{}"}.get(parts[0], parts[0]) if parts[1] not in "\u0327\u0328\u0323" else parts[0]
+        letter = (
+            {"i": r"\i{}", "j": r"\j{}"}.get(parts[0], parts[0])
+            if parts[1] not in "\u0327\u0328\u0323"
+            else parts[0]
+        )
         return rf"\{_ACCENTS[parts[1]]}{{{letter}}}"
     simple = unicodedata.normalize("NFKD", character)
     if simple.isascii() and simple != character:
@@ -129,7 +137,9 @@ def tex_environment() -> ImmutableSandboxedEnvironment:
     """Return the environment of LaTeX templates: other delimiters, every value escaped, nothing undefined."""
     folder = files("templates")
     sources = {
-        entry.name: entry.read_text(encoding="utf-8") for entry in folder.iterdir() if entry.name.endswith(".tex.j2")
+        entry.name: entry.read_text(encoding="utf-8")
+        for entry in folder.iterdir()
+        if entry.name.endswith(".tex.j2")
     }
     return ImmutableSandboxedEnvironment(
         loader=DictLoader(sources),

@@ -59,5 +59,13 @@ class CooldownView:
             key = (each.sweep, each.plan.name)
             if key not in best or best[key].number < each.number:
                 best[key] = each
-        order = {f"{self.newest.cooldown}/{sweep.name}": place for place, sweep in enumerate(self.newest.sheet.sweep)}
-        return tuple(sorted(best.values(), key=lambda each: (order.get(each.sweep, len(order)), each.sweep, each.plan.name)))
+        order = {
+            f"{self.newest.cooldown}/{sweep.name}": place
+            for place, sweep in enumerate(self.newest.sheet.sweep)
+        }
+        return tuple(
+            sorted(
+                best.values(),
+                key=lambda each: (order.get(each.sweep, len(order)), each.sweep, each.plan.name),
+            )
+        )

@@ -1,0 +1,284 @@
+"""The methods appendix: no sentence vanishes, the same data give the same bytes, and what strangers write compiles as text."""
+
+from __future__ import annotations
+
+import json
+import re
+
+import pytest
+
+from archive.errors import BadRequest, UnknownAddress
+from archive.reduction.steps import STEPS
+from archive.reports import methods_appendix
+from archive.reports.appendix import ITEMS
+from archive.reports.bibliography import bibliography_of, known_keys
+from tests.archive.reports.factories import accession, film_view, finding, reduction, view_of
+
+ADDRESS = "2026-03/s001@film-transition.1"
+HOSTILE = '50 % of \\input{/etc/passwd} \\write18{id} \\catcode`\\%=12 ^^5cinput{x} {unbalanced $y_1 & z# ~ <a|b> "q" مرحبا 氦 é'
+
+
+def made(view=None, **options):
+    """Return the appendix of the first sweep of a view."""
+    return methods_appendix([film_view() if view is None else view], [ADDRESS], **options)
+
+
+def companion(files):
+    """Return the companion."""
+    return json.loads(files["appendix.json"])
+
+
+def sentences(files):
+    """Return item and text of every sentence outside the steps."""
+    return [
+        (each["item"], each["text"], each["present"])
+        for section in companion(files)["sections"]
+        for each in section["sentences"]
+    ]
+
+
+def present(files):
+    """Return how many items the torsional oscillator has, and of how many."""
+    line = next(each for each in companion(files)["completeness"] if each.startswith("torsional oscillator"))
+    return tuple(int(each) for each in re.findall(r"(\d+) of (\d+) present", line)[0])
+
+
+def test_the_sections_stand_in_order():
+    keys = [each["key"] for each in companion(made())["sections"]]
+    assert keys == [
+        "scope",
+        "cells",
+        "gas",
+        "thermometry",
+        "measurement",
+        "reduction",
+        "fits",
+        "uncertainty",
+        "not-done",
+        "data",
+    ]
+
+
+REQUIRED = [
+    ("R01", "cell", "seal"), ("R02", "cell", "free_volume"), ("R03", "cell", "rod"), ("R06", "cell", "inertia"), ("R05", "cell", "empty_quality_factor"),
+    ("R13", "substrate", "mass"), ("R14", "substrate", "area"), ("R16", "substrate", "preplating"), ("R34", "cryostat", "frequency_reference"),
+]  # fmt: skip
+
+
+@pytest.mark.parametrize(
+    ("code", "kind", "field"), REQUIRED, ids=[f"{code}-{field}" for code, _, field in REQUIRED]
+)
+def test_without_a_field_its_sentence_turns_negative_and_the_count_drops_by_one(code, kind, field):
+    whole, less = made(), made(film_view(record={kind: {field: None}}))
+    before = [text for item, text, _ in sentences(whole) if item == code]
+    after = [(text, there) for item, text, there in sentences(less) if item == code]
+    assert len(after) == len(before), "no sentence vanishes"
+    assert all(there is False and "does not exist" in text for text, there in after)
+    (had, of), (has, of_less) = present(whole), present(less)
+    assert (has, of_less) == (had - 1, of)
+
+
+@pytest.mark.parametrize("name", ["doser", "gauge", "detection"])
+def test_what_the_sheet_does_not_say_becomes_negative_too(name):
+    empty = None if name == "detection" else []
+    whole, less = made(), made(film_view(said={name: empty}))
+    codes = {"doser": ["R17"], "gauge": ["R18"], "detection": ["R07", "R08"]}[name]
+    turned = {item for item, _, there in sentences(less) if not there} - {
+        item for item, _, there in sentences(whole) if not there
+    }
+    assert sorted(turned) == codes
+    assert present(less)[0] == present(whole)[0] - len(codes)
+
+
+def test_every_item_that_is_needed_says_something():
+    said = {item for item, _, _ in sentences(made())}
+    needed = {item.code for item in ITEMS if item.applies(("TO",))}
+    assert needed <= said
+    assert len(ITEMS) == len({item.code for item in ITEMS})
+
+
+def test_a_changed_parameter_changes_what_depends_on_it_and_nothing_else():
+    one, two = companion(made(film_view(order=2))), companion(made(film_view(order=3)))
+    changed = set()
+    for a, b in zip(one["sections"], two["sections"], strict=True):
+        for part in ("sentences", "steps", "figures"):
+            changed |= {f"{a['key']}.{part}" for x, y in zip(a[part], b[part], strict=True) if x != y}
+        for x, y in zip(a["tables"], b["tables"], strict=True):
+            rows = [k for k, (p, q) in enumerate(zip(x["rows"], y["rows"], strict=True)) if p != q]
+            changed |= {f"{x['name']} row {k}" for k in rows}
+    # The sentences of the steps, both steps' lines in the table (parameters and the digest of the array), and R40, which quotes a step.
+    assert changed == {"reduction.steps", "steps row 1", "steps row 2", "fits.sentences"}
+
+
+def test_a_changed_result_changes_its_numbers_everywhere():
+    tex = made(film_view(value=0.74))["appendix.tex"].decode()
+    assert "740.0(1.2)" in tex
+    assert "731.2(1.2)" not in tex
+
+
+def test_the_same_data_give_the_same_bytes():
+    assert made() == made()
+
+
+def test_every_number_is_in_the_companion_with_the_same_digits():
+    files = made(film_view(findings=[finding(waived=True)]))
+    text = files["appendix.json"].decode()
+    tex = files["appendix.tex"].decode()
+    numbers = set(re.findall(r"\\val\{([^{}]+)\}", tex)) | set(
+        re.findall(r"(?<!\\)\$(-?[0-9][0-9.()]*)\$", tex)
+    )
+    assert len(numbers) > 30
+    # A power of ten is printed without a plus sign and leading zeros; the companion has it as the record wrote it.
+    spelled = re.sub(r"e\+?(-?)0*([1-9])", r"e\1\2", text)
+    assert [each for each in sorted(numbers) if each not in spelled] == []
+    results = files["results.tex"].decode()
+    assert "731.2(1.2)" in results
+
+
+def test_each_sentence_stands_after_a_comment_with_item_and_record():
+    lines = made()["appendix.tex"].decode().splitlines()
+    comments = [line for line in lines if re.match(r"% (R\d\d|ST|scope) \| \S", line)]
+    assert len(comments) >= 60
+    assert "% R14 | MYL-1.r1" in lines
+    assert f"% ST | {ADDRESS} step 2" in lines
+
+
+def test_every_known_effect_stands_in_one_state():
+    said = [text for item, text, _ in sentences(made()) if item == "R52"]
+    assert len(said) == 1 + 19
+    assert (
+        "Self-heating was not corrected; it is below 0.05 mK at 20 mK, from: bridge power halved at base."
+        in said
+    )
+    assert "Crossing modes was not examined." in said
+    assert (
+        f"Remounting shift was treated in {ADDRESS}, step 1: A constant shift is removed by the alignment."
+        in said
+    )
+
+
+def test_waived_warnings_are_told_and_counted_even_when_there_are_none():
+    none = [text for item, text, _ in sentences(made()) if item == "R53"]
+    assert none == ["No warnings were waived in 2026-03; 0 open, 0 cleared."]
+    told = " ".join(
+        text for item, text, _ in sentences(made(film_view(findings=[finding(waived=True)]))) if item == "R53"
+    )
+    assert (
+        "Check rod-below-200-mk (a beryllium copper rod in the cold is tested at two drives) found in s001"
+        in told
+    )
+    assert "waived on 2026-04-22 by postdoc because: The drive sweeps show no dependence" in told
+    assert "not estimated" in told
+
+
+def test_a_replaced_result_names_both_values():
+    view = view_of(accession(), reductions=(reduction(number_=1), reduction(number_=2, value=0.74)))
+    files = methods_appendix([view], ["2026-03/s001@film-transition.2"])
+    told = [text for item, text, _ in sentences(files) if item == "R55"]
+    assert len(told) == 1
+    assert "740.0(1.2) mK on PLTS-2000" in told[0]
+    assert "replaces 731.2(1.2) mK on PLTS-2000" in told[0]
+
+
+def test_the_data_sentence_has_the_whole_digest_in_groups_of_four():
+    view = film_view()
+    digest = view.sealed["2026-03/2026-03.a1"][0]
+    grouped = " ".join(digest[k : k + 4] for k in range(0, 64, 4))
+    files = made(view)
+    assert any(grouped in text for item, text, _ in sentences(files) if item == "R58")
+    assert grouped in files["appendix.tex"].decode().replace("\n", " ")
+
+
+def test_the_scale_of_coverage_is_named_with_its_anchor_or_said_to_have_none():
+    assert any(
+        "its anchor is: two-thirds power" in text for item, text, _ in sentences(made()) if item == "R23"
+    )
+    bare = made(film_view(record={"substrate": {"layer": None, "layer_definition": None}}))
+    assert any("has no anchor" in text for item, text, _ in sentences(bare) if item == "R23")
+
+
+def test_only_what_is_cited_is_in_the_bibliography():
+    files = made()
+    keys = set(re.findall(r"@\w+\{([^,]+),", files["methods.bib"].decode()))
+    assert keys == {"bishop-reppy-1980", "nelson-kosterlitz-1977", "ahns-1980", "jcgm-100"}
+    cited = {
+        key
+        for group in re.findall(r"\\cite\{([^}]+)\}", files["appendix.tex"].decode())
+        for key in group.split(",")
+    }
+    assert cited == keys
+
+
+def test_every_step_cites_what_the_reviewed_list_has():
+    assert {key for step in STEPS for key in step.citations} <= set(known_keys())
+    with pytest.raises(BadRequest, match="nobody-2099"):
+        bibliography_of(["nobody-2099"])
+
+
+def test_what_is_asked_for_must_be_there():
+    with pytest.raises(UnknownAddress, match="no reduction"):
+        methods_appendix([film_view()], ["2026-03/s009@film-transition.1"])
+    with pytest.raises(BadRequest, match="at least one"):
+        methods_appendix([film_view()], [])
+    with pytest.raises(BadRequest, match="part"):
+        made(level="part")
+
+
+def test_figures_are_vector_pdf_without_a_date():
+    figures = {name: content for name, content in made().items() if name.startswith("figures/")}
+    assert list(figures) == ["figures/areal-density-TO-4-r2.pdf"]
+    for content in figures.values():
+        assert content.startswith(b"%PDF")
+        assert b"CreationDate" not in content
+        assert b"/Subtype /Image" not in content
+
+
+@pytest.mark.parametrize("level", ["chapter", "section", "subsection"])
+def test_it_compiles_alone_at_every_level(compiled, level):
+    log, pages = compiled(made(level=level, title="Films on polyimide"))
+    text = " ".join("\n".join(pages).split())
+    assert "Films on polyimide" in text
+    assert "731.2(1.2)" in text
+    assert "Undefined control sequence" not in log
+
+
+def test_it_compiles_without_siunitx(compiled):
+    files = made()
+    preamble = files["appendix-preamble.tex"].replace(
+        b"\\IfFileExists{siunitx.sty}", b"\\IfFileExists{no-such-package.sty}"
+    )
+    _, pages = compiled({**files, "appendix-preamble.tex": preamble})
+    assert "731.2(1.2)" in "".join(pages)
+
+
+def test_text_of_persons_compiles_as_text_and_fits_the_page(compiled):
+    view = film_view(
+        said={
+            "purpose": HOSTILE,
+            "event": [{"at": "2026-03-05T00:00:00+00:00", "what": "other", "text": HOSTILE}],
+        },
+        record={"cell": {"mode": HOSTILE, "seal": "x" * 300, "rod": HOSTILE}, "substrate": {"form": HOSTILE}},
+        findings=[finding(waived=True, what=HOSTILE)],
+    )
+    log, pages = compiled(made(view, title=HOSTILE))
+    text = "".join("".join(pages).split())
+    assert "\\input{/etc/passwd}" in text
+    assert "\\write18{id}" in text
+    assert "root:" not in text
+    assert max((float(each) for each in re.findall(r"Overfull \\hbox \(([0-9.]+)pt", log)), default=0.0) < 20
+
+
+def test_the_table_of_results_can_be_read_into_a_document(compiled):
+    files = made()
+    document = b"\\documentclass{article}\\input{appendix-preamble.tex}\\begin{document}\\input{results.tex}\\end{document}\n"
+    _, pages = compiled({**files, "mine.tex": document}, "mine.tex")
+    assert "731.2(1.2)" in "".join(pages)
+
+
+def test_text_of_the_author_survives_in_its_slot(compiled):
+    files = made()
+    assert not [name for name in files if name.startswith("slot-")]
+    _, pages = compiled({**files, "slot-fits.tex": b"Written by hand.\n"})
+    text = " ".join("".join(pages).split())
+    assert "Written by hand." in text
+    assert "The section fits carries text written by hand" in text
