@@ -20,6 +20,7 @@ from archive.reduction import (
     loading_steps,
     oscillator_steps,
     peak_steps,
+    stability_steps,
     sweep_steps,
     thermometry_steps,
     transition_steps,
@@ -303,6 +304,7 @@ STEPS: tuple[Step, ...] = (
         sentence="Between p/p0 = {low} and {high} the isotherm is flat within {rise}, at {plateau_amount}.", spread="refit",
     ),
     *dynamic_steps.DYNAMIC_STEPS,
+    *stability_steps.STABILITY_STEPS,
 )  # fmt: skip
 
 
