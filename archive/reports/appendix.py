@@ -215,7 +215,7 @@ def _line(code: str, said: Said, cited: Sequence[str] = ()) -> dict[str, Tex]:
     elif citation:
         latex = Tex(latex + citation)
     group = f"{code} {said.record.split()[0]}" if code in ("R52", "R53") else code
-    return {"group": group, "code": Tex(code), "record": _comment(said.record), "latex": latex}
+    return {"group": Tex(group), "code": Tex(code), "record": _comment(said.record), "latex": latex}
 
 
 def _printed(account: dict[str, Any]) -> dict[str, Any]:

@@ -100,17 +100,11 @@ def results_table(scope: Scope) -> Table:
             if scope.taken_of(reduction).sheet.gas == "helium"
             else absent("na")
         )
-        for each in reduction.outputs:
-            if each.rows is None:
-                rows.append(
-                    (
-                        symbol_of(each.name),
-                        prose(reduction.address),
-                        coverage,
-                        *number_and_unit(each),
-                        words(each.scale or "[na]"),
-                    )
-                )
+        rows += [
+            (symbol_of(each.name), prose(reduction.address), coverage, *number_and_unit(each), words(each.scale or "[na]"))
+            for each in reduction.outputs
+            if each.rows is None
+        ]  # fmt: skip
     heads = (
         (head("result"), 17),
         (head("reduction"), 26),
@@ -139,11 +133,9 @@ def tables(scope: Scope) -> Iterator[Table]:
 def _cells(scope: Scope) -> Table:
     rows = [_cell(scope, cell) for cell in scope.cells]
     heads = (
-        (head("cell"), 11), (head("material"), 14), (head("V", "cm^3"), 10), (head("A", "m^2"), 10), (head("substrate", "g"), 12), (head("P"), 15), (head("Q"), 14), (head("from"), 14),
+        (head("cell"), 11), (head("material"), 14), (head("V", "cm^3"), 10), (head("A", "m^2"), 10), (head("substrate", "g"), 12), (head("P_0", "ms"), 15), (head("Q"), 14),
+        (head("from"), 14),
     )  # fmt: skip
-    heads = tuple(
-        (Tex(r"$P_0$~/ $\mathrm{ms}$"), width) if text == "P" else (text, width) for text, width in heads
-    )
     return Table("cells", "Cells, one row for each revision.", heads, tuple(rows))
 
 
@@ -236,12 +228,14 @@ def _steps(scope: Scope) -> Table:
         rows.append(
             (prose(f"{reduction.address}, plan {reduction.plan.address} {reduction.plan_digest[:16]}"),)
         )
-        for step in reduction.steps:
-            rows.append((
+        rows += [
+            (
                 words(str(step.number)), narrow(f"{step.name} {step.version}"), narrow(_inputs(reduction, step)),
                 narrow("; ".join(f"{name} = {parameter_text(value)}" for name, value in step.parameters.items()) or "none"),
                 narrow("; ".join(f"{name} {digests.get(name, '')}" for name in step.outputs)), narrow("; ".join(each.code for each in step.findings) or "none"),
-            ))  # fmt: skip
+            )
+            for step in reduction.steps
+        ]  # fmt: skip
     heads = (
         (head("no."), 4),
         (head("operation"), 15),

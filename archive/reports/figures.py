@@ -59,7 +59,7 @@ class Drawn:
 
 def figures(scope: Scope) -> Iterator[Drawn]:
     """Yield the figures of the reductions at hand, one for each kind that is present."""
-    with mpl.rc_context(_STYLE):
+    with mpl.rc_context(_STYLE):  # type: ignore[arg-type]
         for reduction in scope.reductions:
             maker = _MAKERS.get(reduction.plan.name)
             made = None if maker is None else maker(scope, reduction)
@@ -115,7 +115,7 @@ def _background(scope: Scope, reduction: ReductionDocument) -> Drawn | None:
     ):
         return None
     scaled = (2 * T - low.value - high.value) / (high.value - low.value)
-    fit = np.polynomial.chebyshev.chebval(scaled, coefficients)
+    fit = np.asarray(np.polynomial.chebyshev.chebval(scaled, coefficients), dtype=np.float64)
     order = np.argsort(T)
     base = float(np.nanmin(P))
     return _with_residual(
@@ -156,7 +156,7 @@ def _dose_run(scope: Scope, reduction: ReductionDocument) -> Drawn | None:
     if n is None or P is None or n.shape != P.shape or any(values.get(name) is None for name in needed):
         return None
     s, past, onset, empty = (float(values[name] or 0.0) for name in needed)
-    fit = empty + s * np.minimum(n, onset) + past * np.maximum(n - onset, 0.0)
+    fit = np.asarray(empty + s * np.minimum(n, onset) + past * np.maximum(n - onset, 0.0), dtype=np.float64)
     order = np.argsort(n)
     text = {each.name: scope.text(each) for each in reduction.outputs if each.name in needed}
     return _with_residual(

@@ -8,7 +8,7 @@ from typing import Any
 from archive.intake.cautions import FIXED_TEXT
 from archive.reports.holdings import Holdings
 from archive.reports.moments import full_time
-from archive.reports.numbers import Shown, shown_output, shown_value, words
+from archive.reports.numbers import Shown, shown_output, shown_value
 from archive.reports.prose import prose, symbol_of
 from archive.reports.set_up import left_column, right_column
 from archive.reports.standing import Standing, draft_reasons

@@ -88,14 +88,19 @@ class Holdings:
 
     @cached_property
     def sweeps(self) -> tuple[Taken, ...]:
-        """Every sweep of the sheet, in its order, with the newest stored entry."""
+        """Every sweep of the sheet that counts, in its order, then those that only older sheets have; none is left out."""
         stored: dict[str, tuple[SweepEntry, str]] = {}
+        described: dict[str, tuple[Sweep, str]] = {
+            each.name: (each, self.view.newest.address) for each in self.sheet.sweep
+        }
         for accession in self.view.accessions:
             for entry in accession.sweeps:
                 stored[entry.name] = (entry, accession.address)
+            for sweep in accession.sheet.sweep:
+                described.setdefault(sweep.name, (sweep, accession.address))
         return tuple(
-            Taken(number, sweep, *stored.get(sweep.name, (None, self.view.newest.address)))
-            for number, sweep in enumerate(self.sheet.sweep, 1)
+            Taken(number, sweep, *stored.get(name, (None, address)))
+            for number, (name, (sweep, address)) in enumerate(described.items(), 1)
         )
 
     def reductions_of(self, sweep: str) -> list[ReductionDocument]:

@@ -85,7 +85,7 @@ def _mode(scope: Scope, cell: TorsionalOscillator) -> str | None:
     measured = [
         each
         for _, each in scope.output("empty_period")
-        if _.plan.name == "empty-cell" and _cell_of(scope, _) == cell.address
+        if _.plan.name == "empty-cell" and scope.cell_of(_) == cell.address
     ]
     if cell.empty_period is None and not measured:
         return None
@@ -93,16 +93,11 @@ def _mode(scope: Scope, cell: TorsionalOscillator) -> str | None:
     return f"With the cell {cell.address} empty the period is {period}; {cell.mode or 'other modes are not recorded'}."
 
 
-def _cell_of(scope: Scope, reduction: object) -> str | None:
-    entry = scope.taken_of(reduction).entry  # type: ignore[arg-type]
-    return None if entry is None else entry.cell
-
-
 def _quality(scope: Scope, cell: TorsionalOscillator) -> str | None:
     found = [
         (reduction, each)
         for reduction, each in scope.output("quality_factor", "empty_quality_factor")
-        if _cell_of(scope, reduction) == cell.address
+        if scope.cell_of(reduction) == cell.address
     ]
     if found:
         reduction, each = found[0]

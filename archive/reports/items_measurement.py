@@ -10,6 +10,7 @@ from archive.reports.items_gas import step_sentences
 from archive.reports.numbers import shown_value
 from archive.reports.scope import Scope
 from schemas.cell import Cryostat, ThirdSoundRing
+from schemas.lineage import SweepEntry, Value
 from schemas.thermometer import Thermometer
 
 __all__ = ["MEASUREMENT_ITEMS"]
@@ -108,17 +109,16 @@ def _ramps(scope: Scope) -> Iterator[Said]:
         )
 
 
-def _short(value: object) -> object:
-    return value.model_copy(update={"value": float(f"{value.value:.4g}")})  # type: ignore[attr-defined]
+def _short(value: Value) -> Value:
+    return value if value.value is None else value.model_copy(update={"value": float(f"{value.value:.4g}")})
 
 
-def _mean_rate(entry: object) -> str:
-    begin, end = entry.begin, entry.end  # type: ignore[attr-defined]
-    if begin is None or end is None or end <= begin:
+def _mean_rate(entry: SweepEntry) -> str:
+    begin, end, low, high = entry.begin, entry.end, entry.temperature_low, entry.temperature_high
+    ends = [None if each is None else each.value for each in (low, high)]
+    if begin is None or end is None or end <= begin or ends[0] is None or ends[1] is None:
         return "; its rate is not recorded"
-    rate = (
-        (entry.temperature_high.value - entry.temperature_low.value) / (end - begin).total_seconds() * 3.6e6
-    )  # type: ignore[attr-defined]
+    rate = (ends[1] - ends[0]) / (end - begin).total_seconds() * 3.6e6
     return f" at a mean of {rate:.3g} mK/h"
 
 

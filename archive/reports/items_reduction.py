@@ -124,7 +124,7 @@ def _repeat(scope: Scope) -> Iterator[Said]:
     found: dict[str, list[tuple[str, str]]] = {}
     for reduction, each in scope.output("empty_period"):
         if reduction.plan.name == "empty-cell":
-            cell = (scope.taken_of(reduction).entry.cell or "").partition(".")[0]  # type: ignore[union-attr]
+            cell = scope.cell_of(reduction).partition(".")[0]
             found.setdefault(cell, []).append((reduction.sweep, scope.text(each)))
     for cell, values in found.items():
         if len(values) > 1:

@@ -12,10 +12,10 @@ from archive.reports.holdings import Holdings
 from archive.reports.moments import clock_lines, full_time
 from archive.reports.numbers import CODES, shown_output, shown_value, words
 from archive.reports.prose import prose, symbol_of
-from archive.reports.set_up import calibration_rows, cell_rows, record_rows
+from archive.reports.set_up import calibration_rows, record_rows
 from archive.reports.small_plots import sweep_plot
 from archive.reports.standing import Standing
-from schemas.cooldown import EFFECTS
+from schemas.cooldown import EFFECTS, Effect
 from schemas.lineage import InputEntry, OutputEntry, ReductionDocument, StepRecord
 from schemas.thermometer import Calibration
 
@@ -177,11 +177,7 @@ def _records(held: Holdings) -> Iterator[dict[str, Any]]:
         held.records.items(), key=lambda item: (held.entries[item[0]].kind, item[0])
     ):
         kind = held.entries[address].kind
-        rows = (
-            calibration_rows(record)
-            if isinstance(record, Calibration)
-            else (cell_rows(record) if kind == "cell" else record_rows(record))
-        )  # type: ignore[arg-type]
+        rows = calibration_rows(record) if isinstance(record, Calibration) else record_rows(record)
         absent = [name for name, value in rows if value.plain == "[nr]"]
         yield {
             "address": address, "kind": kind, "digest": held.entries[address].digest[:16],
@@ -196,9 +192,9 @@ def effect_states(held: Holdings) -> Iterator[dict[str, Any]]:
         for step in reduction.steps:
             for effect, sentence in step.effects.items():
                 treated.setdefault(effect, (sentence, f"{reduction.address}, step {step.number}"))
-    said = {each.effect: each for each in held.sheet.effect}
+    said: dict[str, Effect] = {each.effect: each for each in held.sheet.effect}
     for effect in EFFECTS:
-        found = said.get(effect)  # type: ignore[call-overload]
+        found = said.get(effect)
         if effect in treated:
             sentence, where = treated[effect]
             yield {"effect": effect, "state": "applied", "bound": "", "text": prose(sentence), "by": where}

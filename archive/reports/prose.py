@@ -87,12 +87,12 @@ def _pattern() -> re.Pattern[str]:
 
 @cache
 def prose(sentence: str) -> Prose:
-    """Return a sentence with its numbers, units and symbols set.
+    r"""Return a sentence with its numbers, units and symbols set.
 
     Examples
     --------
     >>> str(prose("The rise is 168.0(3) ns/mmol.").latex)
-    'The rise is \\\\val{168.0(3)}{168.0(3)}{ns.mmol^{-1}}{ns\\\\,mmol^{-1}}.'
+    'The rise is \\val{168.0(3)}{168.0(3)}{ns.mmol^{-1}}{ns\\,mmol^{-1}}.'
     """
     pieces: list[Piece] = []
     end = 0

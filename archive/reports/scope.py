@@ -73,7 +73,17 @@ class Scope:
     def taken_of(self, reduction: ReductionDocument) -> Taken:
         """Return the sweep of a reduction."""
         name = reduction.sweep.partition("/")[2]
-        return next(each for each in self.holdings_of(reduction).sweeps if each.sheet.name == name)
+        found = next((each for each in self.holdings_of(reduction).sweeps if each.sheet.name == name), None)
+        if found is None:
+            raise UnknownAddress(
+                f"no sheet at hand describes {reduction.sweep}, which {reduction.address} reduces"
+            )
+        return found
+
+    def cell_of(self, reduction: ReductionDocument) -> str:
+        """Return the address of the cell of a reduction, "" where none is recorded."""
+        entry = self.taken_of(reduction).entry
+        return "" if entry is None or entry.cell is None else entry.cell
 
     @cached_property
     def used(self) -> tuple[tuple[Holdings, Taken], ...]:

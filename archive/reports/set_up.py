@@ -4,12 +4,13 @@ from __future__ import annotations
 
 from archive.reports.holdings import Holdings
 from archive.reports.numbers import NOT_RECORDED, Shown, absent, shown, shown_output, words
-from schemas.cell import Cell, Cryostat, TorsionalOscillator
+from schemas.base import NamedRecord
+from schemas.cell import Cryostat, TorsionalOscillator
 from schemas.quantity import Quantity
 from schemas.substrate import Sample, Substrate
 from schemas.thermometer import Calibration, Thermometer
 
-__all__ = ["Row", "calibration_rows", "cell_rows", "left_column", "right_column", "said"]
+__all__ = ["Row", "calibration_rows", "left_column", "record_rows", "right_column", "said"]
 
 Row = tuple[str, Shown]
 
@@ -146,16 +147,6 @@ def _background(held: Holdings) -> Shown:
     return words(", ".join(sorted(used)) or ", ".join(own) or "[pend]")
 
 
-def cell_rows(cell: Cell) -> list[Row]:
-    """Return everything that a cell's record says."""
-    rows: list[Row] = [("kind", words(cell.kind.replace("-", " ")))]
-    for name in type(cell).model_fields:
-        if name in ("name", "revision", "kind"):
-            continue
-        rows.append((name.replace("_", " "), _field(getattr(cell, name))))
-    return rows
-
-
 def _field(value: object) -> Shown:
     if isinstance(value, Quantity):
         return shown(value)
@@ -164,9 +155,9 @@ def _field(value: object) -> Shown:
     return said(value)
 
 
-def record_rows(record: object) -> list[Row]:
+def record_rows(record: NamedRecord) -> list[Row]:
     """Return every field of a record but its name."""
-    fields = type(record).model_fields  # type: ignore[attr-defined]
+    fields = type(record).model_fields
     skipped = ("name", "revision", "relation", "points")
     return [(name.replace("_", " "), _field(getattr(record, name))) for name in fields if name not in skipped]
 

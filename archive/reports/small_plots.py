@@ -15,7 +15,7 @@ from schemas.quantity import Quantity, canonical, unit_factor
 from schemas.uncertain_text import in_preferred_unit
 from schemas.units import parse_unit
 
-__all__ = ["in_unit", "sweep_plot", "symbol", "temperature_of", "unit_text"]
+__all__ = ["Column", "in_unit", "sweep_plot", "symbol", "temperature_of", "unit_text"]
 
 Column = NDArray[np.float64]
 
@@ -122,7 +122,7 @@ def sweep_plot(held: Holdings, taken: Taken) -> str | None:
         seen = tuple(
             channel.quantity for channel in entry.channels if channel.quantity not in ("instant", x[2])
         )
-    channels = next((found for kind in seen if (found := _channels(entry.channels, kind))), [])
+    channels = next((liked for kind in seen if (liked := _channels(entry.channels, kind))), [])
     columns = [(channel, held.column(_address(held, taken), channel.name)) for channel in channels[:2]]
     pairs = [
         (channel, values) for channel, values in columns if values is not None and values.shape == x[0].shape

@@ -8,7 +8,7 @@ import numpy as np
 
 from archive.reports.holdings import Holdings, Taken
 from archive.reports.moments import in_zone
-from archive.reports.small_plots import temperature_of
+from archive.reports.small_plots import Column, temperature_of
 from archive.reports.svg import Axis, Frame, axis_of
 from schemas.quantity import unit_factor
 
@@ -110,7 +110,7 @@ def _temperatures(held: Holdings, frame: Frame, time: Axis) -> None:
                 )
 
 
-def _line(held: Holdings, taken: Taken) -> tuple[np.ndarray, np.ndarray] | None:  # type: ignore[type-arg]
+def _line(held: Holdings, taken: Taken) -> tuple[Column, Column] | None:
     entry = taken.entry
     if entry is None or entry.begin is None or entry.end is None:
         return None

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass, field
+from itertools import pairwise
 from xml.sax.saxutils import escape
 
 import numpy as np
@@ -193,7 +194,7 @@ def tick_texts(axis: Axis, ticks: Sequence[float]) -> list[str]:
     values = list(ticks)
     step = (
         min(
-            (abs(b - a) for a, b in zip(values, values[1:], strict=False)),
+            (abs(b - a) for a, b in pairwise(values)),
             default=abs(values[0]) if values else 1.0,
         )
         or 1.0

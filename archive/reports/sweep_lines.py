@@ -11,7 +11,6 @@ from archive.reports.prose import Piece, Prose, symbol_of
 from archive.reports.standing import Standing
 from archive.reports.tex import Tex
 from schemas.quantity import unit_factor
-from schemas.sweep import Detection
 
 __all__ = ["SWEEP_HEADS", "sweep_lines"]
 
@@ -117,29 +116,17 @@ def _rim_speed(held: Holdings, taken: Taken) -> str:
     entry = taken.entry
     if taken.sheet.kind in ("isotherm", "log", "calibration", "heat-capacity"):
         return "[na]"
-    if entry is None or not _complete(detection):
+    speed = None if detection is None else detection.reference_rim_velocity
+    signal = None if detection is None else detection.reference_signal
+    if entry is None or speed is None or signal is None:
         return "[nr]"
-    assert (
-        detection is not None
-        and detection.reference_rim_velocity is not None
-        and detection.reference_signal is not None
-    )  # noqa: S101, PT018
     channel = next(
         (each for each in entry.channels if each.quantity == "amplitude" and each.high is not None), None
     )
     if channel is None or channel.high is None:
         return "[nr]"
-    share = channel.high * unit_factor(channel.unit, "amplitude") / detection.reference_signal.si
-    speed = detection.reference_rim_velocity.si * share
-    return f"{speed * 1e6:.3g} {detection.reference_rim_velocity.convention or ''}\u00a0d"
-
-
-def _complete(detection: Detection | None) -> bool:
-    return (
-        detection is not None
-        and detection.reference_rim_velocity is not None
-        and detection.reference_signal is not None
-    )
+    share = channel.high * unit_factor(channel.unit, "amplitude") / signal.si
+    return f"{speed.si * share * 1e6:.3g} {speed.convention or ''}\u00a0d"
 
 
 def _quality(held: Holdings, taken: Taken) -> str:

@@ -7,9 +7,9 @@ import json
 import re
 
 import pytest
-from tests.archive.reports.factories import accession, film_view, finding, reduction, sheet, view_of
 
 from archive.reports import run_sheet_html, run_sheet_json, run_sheet_pdf
+from tests.archive.reports.factories import accession, film_view, finding, reduction, sheet, view_of
 
 HOSTILE = '50 % of \\input{/etc/passwd} <script>alert(1)</script> & #let x = $y$ _z_ ^^5c "quoted" مرحبا 氦'
 
