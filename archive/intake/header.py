@@ -6,7 +6,10 @@ them; a name that stands twice cannot be asked for.
 
 from __future__ import annotations
 
-from archive.intake.dialect import BadCells
+from collections.abc import Mapping, Sequence
+
+from archive.intake.cells import parsed_number
+from archive.intake.dialect import BadCells, ColumnRequest
 from archive.intake.rows import Rows, split_cells
 from schemas.sweep import Dialect
 
@@ -31,6 +34,7 @@ class Header:
         self._rows = rows
         self._bad = bad
         self._line = 1
+        self._places: list[int] = []
         self.names: tuple[str, ...] = dialect.names or ()
         self.lines: tuple[tuple[str, ...], ...] = ()
         self.width = 0
@@ -70,6 +74,7 @@ class Header:
         if not self.lines:
             self._line = line
             self.names = dialect.names or cells
+        self._places.append(line)
         self.lines = (*self.lines, cells)
 
     def settle_width(self, first_row: bytes) -> None:
@@ -97,6 +102,22 @@ class Header:
         found = ", ".join(self.names) or f"{self.width} columns without a header"
         self._bad.add(self._line, 0, str(column), found, why)
         return None
+
+    def refuse_data(self, columns: Sequence[ColumnRequest], places: Mapping[str, int]) -> None:
+        """Report header lines that read as a row of data, which would be lost without a word.
+
+        Notes
+        -----
+        Names and units never read as numbers throughout. Channel numbers may, so a line of whole numbers passes.
+        """
+        named_here = self._dialect.names is None and any(isinstance(each.column, str) for each in columns)
+        numeric = [places[each.name] for each in columns if each.kind == "number" and each.name in places]
+        for line, cells in list(zip(self._places, self.lines, strict=True))[named_here:]:
+            values = [cells[place] for place in numeric if place < len(cells)]
+            parsed = [parsed_number(value, decimal=self._dialect.decimal) for value in values]
+            if values and None not in parsed and any(self._dialect.decimal in value for value in values):
+                why = f"reads as a row of data, but counts among the {self._dialect.header_rows} header lines"
+                self._bad.add(line, 0, "", ", ".join(cells), why)
 
     def label(self, place: int) -> str:
         """Return number and name of a column for a message."""

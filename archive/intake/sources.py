@@ -18,7 +18,7 @@ from archive.intake.cells import parsed_number
 from archive.intake.dialect import BadCells, Block, ColumnRequest
 from archive.intake.hdf5_source import Columns, RefusalError, hdf5_columns
 from archive.intake.numpy_source import numpy_columns
-from archive.intake.timestamps import LATEST, TimeStamps
+from archive.intake.timestamps import EARLIEST, LATEST, TimeStamps
 
 __all__ = ["is_array_source", "read_array_source"]
 
@@ -186,8 +186,8 @@ def _numbers(
     faults |= dict.fromkeys(np.flatnonzero(np.isinf(values)).tolist(), "is infinite")
     if request.kind == "time":
         with np.errstate(invalid="ignore"):
-            far = np.isfinite(values) & (np.abs(values) >= LATEST)
+            far = np.isfinite(values) & ((values < EARLIEST) | (values >= LATEST))
         faults |= dict.fromkeys(
-            np.flatnonzero(far).tolist(), "is no number of seconds since 1970 (beyond the year 9999)"
+            np.flatnonzero(far).tolist(), "is no number of seconds since 1970 (outside the years 1 to 9999)"
         )
     return values, mask, faults

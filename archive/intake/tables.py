@@ -153,7 +153,9 @@ class TableReader:
     def _found_columns(self, first_row: bytes) -> dict[str, int]:
         self._header.settle_width(first_row)
         places = {request.name: self._header.place(request.column) for request in self._columns}
-        return {name: place for name, place in places.items() if place is not None}
+        found = {name: place for name, place in places.items() if place is not None}
+        self._header.refuse_data(self._columns, found)
+        return found
 
     def _block(self, data: bytes, lines: npt.NDArray[np.int64], first: int) -> Block:
         table, lines = self._table(data, lines)

@@ -22,12 +22,14 @@ from archive.errors import BadRequest
 from archive.intake.cells import as_mask, numbers
 from archive.intake.time_formats import time_pattern
 
-__all__ = ["LATEST", "TimeStamps"]
+__all__ = ["EARLIEST", "LATEST", "TimeStamps"]
 
 _MONTHS: Final = ("jan", "feb", "mar", "apr", "may", "jun", "jul", "aug", "sep", "oct", "nov", "dec")
 _EPOCH: Final = datetime(1970, 1, 1)  # noqa: DTZ001 - local times are naive until their zone is looked up
-LATEST: Final = 253402300800.0
-"""POSIX time of 10000-01-01T00:00:00Z; a larger number of seconds is no date that RFC 3339 can write."""
+EARLIEST: Final = -62135596800.0 + 86400
+"""POSIX time of 0001-01-02T00:00:00Z; a day later than the first date of RFC 3339, so that every zone can show it."""
+LATEST: Final = 253402300800.0 - 86400
+"""POSIX time of 9999-12-31T00:00:00Z; a larger number of seconds is no date that RFC 3339 can write in every zone."""
 
 Ints = npt.NDArray[np.int64]
 Faults = dict[int, str]
@@ -142,6 +144,9 @@ class TimeStamps:
             text = texts[int(index)].as_py().strip()
             faults[int(index)] = f"is not a time stamp of the form {self._format}" if text else "is empty"
         seconds = np.where(matched, whole + fraction, np.nan)
+        self._note(
+            faults, good & ((seconds < EARLIEST) | (seconds >= LATEST)), "lies outside the years 1 to 9999"
+        )
         seconds[list(faults)] = np.nan
         return seconds, faults
 
@@ -151,9 +156,11 @@ class TimeStamps:
         values, absent, faults = numbers(texts, decimal=self._decimal, known=known)
         self._note(faults, absent, "is empty or NaN")
         with np.errstate(invalid="ignore"):
-            far = np.abs(values) >= LATEST
+            far = (values < EARLIEST) | (values >= LATEST)
         self._note(
-            faults, far, "is no number of seconds since 1970 (beyond the year 9999; milliseconds, perhaps)"
+            faults,
+            far,
+            "is no number of seconds since 1970 (outside the years 1 to 9999; milliseconds, perhaps)",
         )
         values[far] = np.nan
         return values, faults

@@ -71,6 +71,7 @@ GOOD = {
     "header in a comment": (b"# log\n# a, b\n1,2\n", {"header_comment": True, "skip_rows": 1}, [2.0], [3]),
     "units row": (b"a,b\ns,K\n1,2\n", {"header_rows": 2}, [2.0], [3]),
     "lines to skip": (b"Instrument 7\n\na,b\n1,2\n", {"skip_rows": 2}, [2.0], [4]),
+    "channel numbers below the names": (b"a,b\n101,102\n1,2\n", {"header_rows": 2}, [2.0], [3]),
     "names in the dialect": (b"1,2\n3,4\n", {"header_rows": 0, "names": ("a", "b")}, [2.0, 4.0], [1, 2]),
     "quoted": (b'"a","b"\n"1, or so","2"\n', {}, [2.0], [2]),
     "quoted quotation mark": (b'a,b\n"say ""x""",2\n', {}, [2.0], [2]),
@@ -143,6 +144,16 @@ BAD = {
     "no rows": (b"a,b\n", {}, (2, "", "", "without a row")),
     "no header": (b"# a,b\n", {}, (2, "", "", "1 more header lines")),
     "empty file": (b"", {}, (1, "", "", "header lines")),
+    "row taken for a header line": (
+        b"a,b\n1.5,2.5\n3,4\n",
+        {"header_rows": 2},
+        (2, "", "1.5, 2.5", "reads as a row of data, but counts among the 2 header lines"),
+    ),
+    "row taken for the names": (
+        b"1.5,2.5\n3,4\n",
+        {"names": ("a", "b")},
+        (1, "", "1.5, 2.5", "reads as a row of data"),
+    ),
     "no such column": (b"a,c\n1,2\n", {}, (1, "b", "a, c", "no column has this name")),
     "name stands twice": (b"b,b\n1,2\n", {}, (1, "b", "b, b", "2 columns have this name")),
     "name without header": (
