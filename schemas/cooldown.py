@@ -11,7 +11,7 @@ from schemas.cell import Cell, Cryostat
 from schemas.finding import Waiver
 from schemas.gas import DeadVolume, Dose, Doser, GasEnd, Gauge
 from schemas.substrate import Sample, Substrate
-from schemas.sweep import Channel, Detection, Dialect, Layout, Sweep
+from schemas.sweep import Channel, Detection, Dialect, FilePath, Layout, Sweep
 from schemas.thermometer import Calibration, ScaleName, Thermometer
 
 __all__ = ["EFFECTS", "CooldownSheet", "Effect", "EffectName", "Event", "Note", "Records"]
@@ -120,7 +120,7 @@ class CooldownSheet(Record):
     dose: tuple[Dose, ...] = Field(default=())
     gas_end: GasEnd
     sweep: tuple[Sweep, ...] = Field(min_length=1)
-    other_files: tuple[str, ...] = Field(
+    other_files: tuple[FilePath, ...] = Field(
         default=(),
         description="Files to keep beside the sweeps: scans of the notebook, scripts, calibration sheets.",
     )
@@ -133,8 +133,9 @@ class CooldownSheet(Record):
     def _consistent(self) -> CooldownSheet:
         if self.begin is None or self.end is None:
             if self.undated is None:
+                missing = " and ".join(name for name in ("begin", "end") if getattr(self, name) is None)
                 raise ValueError(
-                    "begin and end are missing; give both with their offset, or say in `undated` why they are not known"
+                    f"{missing} missing; give begin and end with their offset, or say in `undated` why they are not known"
                 )
         elif self.end <= self.begin:
             raise ValueError("end must be later than begin")

@@ -11,11 +11,14 @@ from schemas.quantity import OfKind, Quantity
 from schemas.thermometer import ScaleName
 
 __all__ = [
+    "CHANNEL_PATTERN",
+    "FILE_PATTERN",
     "Channel",
     "Correction",
     "Detection",
     "Dialect",
     "Disturbance",
+    "FilePath",
     "Layout",
     "LeftOut",
     "Sweep",
@@ -35,10 +38,13 @@ SweepKind = Literal[
     "log",
 ]
 
-FilePath = Annotated[str, StringConstraints(pattern=r"^[^\x00-\x1f\x7f\\]+$", max_length=400, min_length=1)]
+FILE_PATTERN = r"^[^\x00-\x1f\x7f\\]+$"
+CHANNEL_PATTERN = r"^[a-z][a-z0-9_]{0,63}$"
+
+FilePath = Annotated[str, StringConstraints(pattern=FILE_PATTERN, max_length=400, min_length=1)]
 """A file inside the cooldown folder, relative, with forward slashes."""
 
-ChannelName = Annotated[str, StringConstraints(pattern=r"^[a-z][a-z0-9_]{0,63}$")]
+ChannelName = Annotated[str, StringConstraints(pattern=CHANNEL_PATTERN)]
 
 
 class Dialect(Record):

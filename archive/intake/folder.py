@@ -15,7 +15,7 @@ from typing import Protocol
 import numpy as np
 from numpy.typing import NDArray
 
-from archive.errors import ArchiveError
+from archive.errors import BadRequest
 from archive.intake.dialect import BadCell, Block, ColumnRequest
 from archive.intake.reading import ChannelFacts, Reading, SweepTable
 from archive.intake.sheet import read_sheet
@@ -29,7 +29,7 @@ from schemas.quantity import unit_factor
 from schemas.sweep import Channel, Sweep
 from schemas.units import ucum
 
-__all__ = ["SHEET_NAME", "folder_files", "read_cooldown"]
+__all__ = ["SHEET_NAME", "folder_files", "path_inside", "read_cooldown"]
 
 SHEET_NAME = "cooldown.toml"
 KEPT_ROWS = 1_000_000
@@ -144,17 +144,23 @@ def _references(reading: Reading) -> set[str]:
     return {reference for reference in named if reference is not None and reading.record(reference) is None}
 
 
-def _inside(reading: Reading, name: str) -> Path | str:
-    """Path of a file that the sheet names, or why it cannot be read."""
+def path_inside(folder: Path, name: str) -> Path | str:
+    """Path of a file that a sheet names, or why it cannot be read, as the rest of a sentence."""
     pure = PurePosixPath(name)
-    if pure.is_absolute() or ".." in pure.parts or ":" in pure.parts[0]:
+    if pure.is_absolute() or ".." in pure.parts or ":" in name.partition("/")[0]:
         return "leads out of the cooldown folder"
-    path = reading.folder.joinpath(*pure.parts)
+    if str(pure) != name:
+        # Two spellings of one path would be two raw files.
+        return f"is spelled in a roundabout way; write {pure}"
+    return _file_at(folder.joinpath(*pure.parts), folder)
+
+
+def _file_at(path: Path, folder: Path) -> Path | str:
     try:
         resolved = path.resolve(strict=True)
-    except OSError:
+    except (OSError, RuntimeError):  # RuntimeError: a link that leads to itself, before Python 3.13
         return "is not there"
-    if not resolved.is_relative_to(reading.folder.resolve()):
+    if not resolved.is_relative_to(folder.resolve()):
         return "is a link that leads out of the cooldown folder"
     if not resolved.is_file():
         return "is not a file"
@@ -181,7 +187,7 @@ def _fault(reading: Reading, name: str, why: str, *, field: str | None, line: in
 def _keep_raw(
     reading: Reading, name: str, role: str, sink: Writer | None, *, field: str | None, line: int
 ) -> Path | None:
-    path = _inside(reading, name)
+    path = path_inside(reading.folder, name)
     if isinstance(path, str):
         _fault(reading, name, path, field=field, line=line)
         return None
@@ -431,7 +437,7 @@ def _read_sweep(reading: Reading, number: int, sweep: Sweep, sink: Writer | None
         before = gatherer.rows
         try:
             whole &= _read_file(reading, sweep, name, path, gatherer, file_number, first_lines)
-        except ArchiveError as error:
+        except BadRequest as error:
             whole = False
             reading.findings.append(
                 Finding(
@@ -492,7 +498,8 @@ def _read_file(
                 first_lines.setdefault(name, int(block.lines[0]))
             gatherer.add(block, file_number)
     _report_cells(reading, sweep, name, reader.bad_cells, reader.bad_cell_count, reader.rows)
-    if digest.hexdigest() != reading.raw_files[name].sha256:
+    # After a fault the reader may have stopped before the end.
+    if not reader.bad_cell_count and digest.hexdigest() != reading.raw_files[name].sha256:
         reading.findings.append(
             Finding(
                 code="file-changed",
@@ -511,14 +518,13 @@ def _report_cells(
     reading: Reading, sweep: Sweep, name: str, cells: list[BadCell], count: int, rows: int
 ) -> None:
     """Findings of the bad cells: each one, or one for all when the same fault stands in almost every row."""
+    lines = rows + sum(not cell.column for cell in cells)  # a line that is wrong as a whole is no row
     alike: dict[str, list[BadCell]] = {}
     for cell in cells[:_SHOWN_CELLS]:
         alike.setdefault(f"{cell.column}{cell.why}", []).append(cell)
     listed = 0
     for group in alike.values():
-        everywhere = len(group) > _EVERYWHERE and len(group) > 0.9 * min(rows + count, _SHOWN_CELLS) / len(
-            alike
-        )
+        everywhere = len(group) > _EVERYWHERE and len(group) > 0.9 * min(lines, _SHOWN_CELLS / len(alike))
         for cell in group[:1] if everywhere else group:
             more = f", and so it is in {len(group) - 1} or more further rows" if everywhere else ""
             reading.findings.append(
@@ -531,9 +537,7 @@ def _report_cells(
                     column=cell.column or None,
                     place=sweep.name,
                     found=repr(cell.found),
-                    remedy="look at the delimiter and the decimal mark of the dialect first"
-                    if everywhere
-                    else "name the cell as a sentinel, or bring a whole copy of the file",
+                    remedy=_cell_remedy(cell, everywhere=everywhere),
                 )
             )
         listed += len(group)
@@ -548,3 +552,13 @@ def _report_cells(
                 remedy="a wrong dialect makes every row wrong: look at the delimiter and the decimal mark first",
             )
         )
+
+
+def _cell_remedy(cell: BadCell, *, everywhere: bool) -> str:
+    if everywhere:
+        return "look at the dialect first: delimiter, decimal mark, form and zone of the times"
+    if not cell.column:
+        return "bring a whole copy of the file, or correct the dialect in the sheet"
+    if not cell.column[0].isdigit():  # a column that was asked for, not the place of a cell
+        return "correct the column in the sheet, or the delimiter and the header of its dialect"
+    return "name the cell as a sentinel, or bring a whole copy of the file"

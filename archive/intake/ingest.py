@@ -15,7 +15,7 @@ from datetime import datetime
 from pathlib import Path
 from typing import Any, Literal
 
-from archive.intake.folder import SHEET_NAME, Archived, Progress, read_cooldown
+from archive.intake.folder import SHEET_NAME, Archived, Progress, path_inside, read_cooldown
 from archive.intake.reading import Reading
 from archive.intake.sheet import SheetReading, read_sheet
 from archive.intake.summary import record_entries, sweep_entries
@@ -254,8 +254,11 @@ def _definition(sheet: CooldownSheet, name: str) -> str:
 
 
 def _file_digest(folder: Path, name: str) -> str | None:
+    path = path_inside(folder, name)
+    if isinstance(path, str):
+        return None  # reading will say why
     try:
-        with folder.joinpath(*name.split("/")).open("rb") as stream:
+        with path.open("rb") as stream:
             return hashlib.file_digest(stream, "sha256").hexdigest()
     except OSError:
         return None

@@ -10,9 +10,10 @@ import difflib
 import json
 import re
 import tomllib
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from datetime import date, datetime, time
+from functools import cache
 from pathlib import Path
 from typing import Any, TypeVar
 
@@ -21,6 +22,7 @@ from pydantic import ValidationError
 from schemas.base import NAME_PATTERN, REFERENCE_PATTERN, Record
 from schemas.cooldown import CooldownSheet
 from schemas.finding import Finding
+from schemas.sweep import CHANNEL_PATTERN, FILE_PATTERN
 
 __all__ = ["LineMap", "SheetReading", "read_sheet", "validated"]
 
@@ -28,10 +30,18 @@ _Model = TypeVar("_Model", bound=Record)
 PathKey = tuple[str | int, ...]
 
 _LARGEST_SHEET = 5_000_000  # bytes; a sheet of hundreds of sweeps is some 200 kB
+_DEEPEST = (
+    30  # tables in tables; a sheet has at most six. The parsers behind this one give up from about 200 on.
+)
+_HINTED = 100  # unknown names that get a hint; looking for a near name takes a millisecond each
 _FORMS = {
+    FILE_PATTERN: "a path inside the cooldown folder, with forward slashes and without control characters",
+    CHANNEL_PATTERN: "a name of small letters, digits and _, beginning with a letter, at most 64 long",
     NAME_PATTERN: "a name of letters, digits, - and _, without blanks or dots, at most 64 long",
     REFERENCE_PATTERN: "the name of a record, with or without its revision, e.g. TO-4 or TO-4.r2",
 }
+_WITH_OFFSET = "write it with its offset, e.g. 2026-03-02T09:10:00+02:00"
+_NO_TIME = {"datetime_type", "datetime_parsing", "datetime_from_date_parsing", "datetime_object_invalid"}
 _HEADER = re.compile(r"^\s*\[(\[)?\s*(?P<path>[^\[\]]+?)\s*\]")
 _ASSIGNMENT = re.compile(
     r"""^\s*(?P<path>(?:[A-Za-z0-9_-]+|"[^"]*"|'[^']*')(?:\s*\.\s*(?:[A-Za-z0-9_-]+|"[^"]*"|'[^']*'))*)\s*="""
@@ -147,20 +157,9 @@ def read_sheet(path: Path) -> SheetReading:
         With every fault that can be found in one pass; `sheet` is None if there is an error.
     """
     file = path.name
-    try:
-        if path.stat().st_size > _LARGEST_SHEET:
-            return _unreadable(
-                file,
-                f"the sheet is larger than {_LARGEST_SHEET // 1_000_000} MB",
-                "keep tables of numbers in data files",
-            )
-        data = path.read_bytes()
-    except FileNotFoundError:
-        return _unreadable(file, "there is no cooldown sheet here", "make one with: stillroom draft FOLDER")
-    except OSError as error:
-        return _unreadable(
-            file, f"the sheet cannot be read: {error.strerror}", "check the file and its permissions"
-        )
+    data = _sheet_bytes(path)
+    if isinstance(data, tuple):
+        return _unreadable(file, *data)
     try:
         text = data.decode("utf-8-sig")
     except UnicodeDecodeError as error:
@@ -170,9 +169,9 @@ def read_sheet(path: Path) -> SheetReading:
     try:
         tables = tomllib.loads(text)
     except (tomllib.TOMLDecodeError, RecursionError) as error:
-        message = str(error)
+        message = str(error) if isinstance(error, tomllib.TOMLDecodeError) else "tables nested too deeply"
         place = re.search(r"\(at line (\d+), column (\d+)\)", message)
-        what = re.sub(r"\s*\(at .*\)$", "", message) or "nested too deeply"
+        what = re.sub(r"\s*\(at .*\)$", "", message)
         finding = Finding(
             code="sheet-syntax",
             severity="error",
@@ -187,6 +186,26 @@ def read_sheet(path: Path) -> SheetReading:
     return SheetReading(file, text, sheet, findings, lines)
 
 
+def _sheet_bytes(path: Path) -> bytes | tuple[str, str]:
+    """Content of the sheet, or what is wrong and what to do."""
+    try:
+        if path.exists() and not path.is_file() and not path.is_dir():
+            # A pipe or a device would be read without end.
+            return "the sheet is not a file", "write the sheet as a plain text file"
+        with path.open("rb") as stream:
+            data = stream.read(_LARGEST_SHEET + 1)
+    except FileNotFoundError:
+        return "there is no cooldown sheet here", "make one with: stillroom draft FOLDER"
+    except OSError as error:
+        return f"the sheet cannot be read: {error.strerror}", "check the file and its permissions"
+    if len(data) > _LARGEST_SHEET:
+        return (
+            f"the sheet is larger than {_LARGEST_SHEET // 1_000_000} MB",
+            "keep tables of numbers in data files",
+        )
+    return data
+
+
 def _unreadable(file: str, what: str, remedy: str, line: int | None = None) -> SheetReading:
     finding = Finding(
         code="sheet-unreadable", severity="error", what=what, file=file, line=line, remedy=remedy
@@ -198,17 +217,69 @@ def validated(
     model: type[_Model], tables: Mapping[str, Any], *, file: str, lines: LineMap
 ) -> tuple[_Model | None, tuple[Finding, ...]]:
     """Record that TOML tables describe, or every fault that keeps them from being one."""
+    if _is_too_deep(tables):
+        finding = Finding(
+            code="sheet-field",
+            severity="error",
+            what=f"tables or lists are nested more than {_DEEPEST} deep",
+            file=file,
+            remedy="remove what is nested; nothing here needs so many levels",
+        )
+        return None, (finding,)
     try:
         return model.model_validate_json(json.dumps(tables, default=_plain)), ()
     except ValidationError as error:
+        faults = error.errors(include_url=False)
+        hints = _hints(str(each["loc"][-1]) for each in faults if each["type"] == "extra_forbidden")
         known = [
-            _finding(dict(each), tables, file=file, lines=lines) for each in error.errors(include_url=False)
+            _finding(dict(each), tables, file=file, lines=lines, hints=hints)
+            for each in _first_causes(faults)
         ]
         unique = {(each.field, each.what): each for each in known}
         return None, tuple(unique.values())
 
 
-def _finding(error: Mapping[str, Any], tables: Mapping[str, Any], *, file: str, lines: LineMap) -> Finding:
+def _is_too_deep(tables: Mapping[str, Any]) -> bool:
+    """Whether tables and lists are nested deeper than any record; without recursion, since that is what would fail."""
+    level: list[Any] = [tables]
+    for _ in range(_DEEPEST):
+        level = [
+            inner
+            for each in level
+            for inner in (each.values() if isinstance(each, Mapping) else each)
+            if isinstance(inner, dict | list)
+        ]
+        if not level:
+            return False
+    return True
+
+
+def _first_causes(faults: Sequence[Any]) -> Iterator[Any]:
+    """Faults without those that only follow from others: a list is not too short because its one entry is wrong."""
+    inside = {fault["loc"][:depth] for fault in faults for depth in range(len(fault["loc"]))}
+    for fault in faults:
+        if fault["type"] != "too_short" or fault["loc"] not in inside:
+            yield fault
+
+
+def _hints(unknown: Iterable[str]) -> dict[str, str]:
+    """For names that no sheet knows, the known one that each is most like, if there is one."""
+    found: dict[str, str] = {}
+    for name in list(dict.fromkeys(unknown))[:_HINTED]:
+        close = difflib.get_close_matches(name, _known_names(), n=1)
+        if close and close[0] != name:
+            found[name] = close[0]
+    return found
+
+
+def _finding(
+    error: Mapping[str, Any],
+    tables: Mapping[str, Any],
+    *,
+    file: str,
+    lines: LineMap,
+    hints: Mapping[str, str],
+) -> Finding:
     kind = error["type"]
     path, _ = _real_path(error["loc"], tables, keep_last=kind in ("missing", "extra_forbidden"))
     context = error.get("ctx", {})
@@ -219,11 +290,10 @@ def _finding(error: Mapping[str, Any], tables: Mapping[str, Any], *, file: str, 
         what, remedy = f"{path[-1]} is missing", f"add {path[-1]} to this table"
     elif kind == "extra_forbidden":
         name = str(path[-1])
-        close = difflib.get_close_matches(name, _known_names(), n=1)
         what = f"{name} is not a name that a sheet knows here"
         remedy = (
-            f"did you mean {close[0]}?"
-            if close and close[0] != name
+            f"did you mean {hints[name]}?"
+            if name in hints
             else "remove it, or move it to the table it belongs to"
         )
     elif kind == "value_error":
@@ -231,8 +301,10 @@ def _finding(error: Mapping[str, Any], tables: Mapping[str, Any], *, file: str, 
     elif kind == "timezone_aware":
         what, remedy = (
             "this time has no offset from UTC",
-            "write it with its offset, e.g. 2026-03-02T09:10:00+02:00",
+            _WITH_OFFSET,
         )
+    elif kind in _NO_TIME:
+        what, remedy = "this is not a date with a time of day", _WITH_OFFSET
     elif kind in {"literal_error", "union_tag_invalid"}:
         what = "this word is not one of those that can stand here"
         expected = str(context.get("expected") or context.get("expected_tags"))
@@ -284,6 +356,7 @@ def _real_path(loc: Sequence[str | int], tables: Any, *, keep_last: bool) -> tup
     return path, here
 
 
+@cache
 def _known_names() -> list[str]:
     names: set[str] = set()
 

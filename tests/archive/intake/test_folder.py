@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import gzip
 import hashlib
+import os
 from pathlib import Path
 
 import numpy as np
@@ -105,16 +106,59 @@ def test_one_fault_of_every_row_is_told_once(tmp_path: Path) -> None:
 
 
 @pytest.mark.parametrize(
-    "name", ["../x.csv", "/etc/passwd", "C:x.csv", "sub/../../x.csv", "empty.CSV", "nothere.csv", "sub"]
-)
+    "name",
+    ["../x.csv", "/etc/passwd", "C:x.csv", "sub/../../x.csv", "empty.CSV", "nothere.csv", "sub", ".", "..", "pipe",
+     "./empty.csv", "sub//empty.csv", "loop"],
+)  # fmt: skip
 def test_a_path_stays_inside_the_folder_and_is_spelled_as_on_disk(tmp_path: Path, name: str) -> None:
     folder = write_folder(tmp_path / "run")
     (folder / "sub").mkdir()
+    (folder / "loop").symlink_to("loop")
+    os.mkfifo(folder / "pipe")
     (tmp_path / "x.csv").write_text("T (K),P (ms)\n1,1\n")
     edited(folder, '"empty.csv"', f'"{name}"')
     (finding,) = read_cooldown(folder).findings
     assert (finding.code, finding.field) == ("file-unreadable", "sweep[1].files")
     assert name in finding.what
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "remedy"),
+    [
+        ("T (K)", "T (mK)", "correct the column"),
+        ("2026", "", "name the cell"),
+        (",", ",7,", "bring a whole copy"),
+    ],
+    ids=["column", "cell", "line"],
+)
+def test_each_fault_of_a_table_has_its_own_remedy(tmp_path: Path, old: str, new: str, remedy: str) -> None:
+    """What to do about a missing column, a bad cell and a ragged line is not the same."""
+    folder = write_folder(tmp_path)
+    lines = (folder / "film.csv").read_text(encoding="utf-8").splitlines(keepends=True)
+    place = 0 if old in lines[0] and old != "," else 5
+    lines[place] = lines[place].replace(old, new, 1)
+    (folder / "film.csv").write_text("".join(lines), encoding="utf-8")
+    remedies = {each.remedy for each in read_cooldown(folder).findings if each.code == "bad-cell"}
+    assert len(remedies) == 1
+    assert remedies.pop().startswith(remedy)  # type: ignore[union-attr]
+
+
+def test_times_without_a_zone_are_told_once(tmp_path: Path) -> None:
+    """One fault in every row is one finding."""
+    folder = write_folder(tmp_path)
+    text = (folder / "film.csv").read_text(encoding="utf-8")
+    (folder / "film.csv").write_text(text.replace("+02:00", ""), encoding="utf-8")
+    (finding,) = (each for each in read_cooldown(folder).findings if each.file == "film.csv")
+    assert "59 or more further rows" in finding.what
+    assert "zone" in str(finding.remedy)
+
+
+def test_a_line_without_end_is_not_told_as_a_change(tmp_path: Path) -> None:
+    """The reader gives up on such a file before its end, which is no sign that somebody writes to it."""
+    folder = write_folder(tmp_path)
+    with (folder / "film.csv").open("a", encoding="utf-8") as stream:
+        stream.write("1" * 3_000_000)
+    assert {each.code for each in read_cooldown(folder).findings if each.file == "film.csv"} == {"bad-cell"}
 
 
 def test_a_file_that_changes_while_it_is_read_is_refused(

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 from pathlib import Path
 
 import pytest
@@ -147,3 +148,52 @@ def test_lines_survive_multi_line_values() -> None:
 
 def test_a_field_is_spelled_as_people_count() -> None:
     assert spelled(("dose", 2, "pressure_before")) == "dose[3].pressure_before"
+
+
+@pytest.mark.parametrize(
+    "nested",
+    ["[" + ".".join(["a"] * 5000) + "]\nx = 1\n", "deep = " + "[" * 300 + "]" * 300, "deep = " + "[" * 5000],
+    ids=["tables", "lists", "lists-beyond-the-parser"],
+)
+def test_deep_nesting_is_a_fault_of_the_sheet(tmp_path: Path, nested: str) -> None:
+    """However deep, it ends in a finding."""
+    ((_, _, sentence),) = read(tmp_path, nested + "\n" + GOOD if nested[0] == "d" else GOOD + nested)
+    assert "nested" in sentence
+
+
+def test_a_sheet_of_unknown_names_is_told_soon(tmp_path: Path) -> None:
+    """A hint is looked for a hundred times, not for each of many thousand names."""
+    faults = read(tmp_path, "".join(f"purpos{number} = 1\n" for number in range(20_000)) + GOOD)
+    assert len(faults) == 20_000
+    assert sum("did you mean purpose?" in sentence for _, _, sentence in faults) == 100
+
+
+@pytest.mark.parametrize("name", ["a\\\\b.csv", "a\\u0000b.csv"], ids=["backslash", "zero-byte"])
+@pytest.mark.parametrize("field", ["sweep[1].files[1]", "other_files[1]"])
+def test_a_path_has_its_form_in_words(tmp_path: Path, name: str, field: str) -> None:
+    """One fault, without a regular expression, and without the list being called too short because of it."""
+    text = GOOD.replace("a.csv", name) if "sweep" in field else f'other_files = ["{name}"]\n' + GOOD
+    ((_, found, sentence),) = read(tmp_path, text)
+    assert found == field
+    assert "forward slashes" in sentence
+
+
+@pytest.mark.parametrize("written", ["2026-03-02", '"yesterday"', "9.5", "09:10:00"])
+def test_a_time_that_is_none_is_asked_for_by_example(tmp_path: Path, written: str) -> None:
+    """The sentence shows how a time is written."""
+    ((_, field, sentence),) = read(tmp_path, GOOD.replace("2026-03-02T09:10:00+02:00", written))
+    assert field == "begin"
+    assert "2026-03-02T09:10:00+02:00" in sentence
+
+
+def test_only_the_time_that_is_missing_is_named(tmp_path: Path) -> None:
+    """Begin alone is missing here."""
+    ((_, _, sentence),) = read(tmp_path, GOOD.replace("begin = ", "# "))
+    assert "begin missing" in sentence
+
+
+def test_a_sheet_that_is_a_pipe_is_not_waited_for(tmp_path: Path) -> None:
+    """A pipe has no end, and nobody at the other one."""
+    os.mkfifo(tmp_path / "cooldown.toml")
+    (finding,) = read_sheet(tmp_path / "cooldown.toml").findings
+    assert finding.what == "the sheet is not a file"
