@@ -19,7 +19,7 @@ NAMES = [row.name for row in properties(1.5)]
         (4.8, set(NAMES) - {"vapour pressure", "second virial coefficient"}),
         (77.0, set(NAMES) - {"second virial coefficient"}),
     ],
-    ids=str,
+    ids=lambda value: f"{value} K" if isinstance(value, float) else f"{len(value)} missing",
 )  # fmt: skip
 def test_what_is_available(temperature: float, missing: set[str]) -> None:
     rows = properties(temperature)
