@@ -175,6 +175,6 @@ MEASUREMENT_ITEMS: tuple[Item, ...] = (
     Item("R33", "time response", ("TO", "HC", "TS"), _MEASUREMENT, _response),
     Item("R34", "clock and frequency reference", ("TO", "TS"), _MEASUREMENT, _clock),
     Item("R35", "the way from signal to period and 1/Q", ("TO",), _MEASUREMENT, step_sentences("the way from signal to period and 1/Q", "dissipation-from-amplitude", "period-from-frequency", "dissipation-from-quality-factor", "resonance-fit", "ringdown-quality-factor")),
-    Item("R44", "the method of heat capacity", ("HC",), _MEASUREMENT, lambda _: ()),
+    Item("R44", "the method of heat capacity", ("HC",), _MEASUREMENT, step_sentences("the method of heat capacity", "heat-capacity-from-pulses")),
     Item("R48", "the geometry of third sound", ("TS",), _MEASUREMENT, _third_sound),
 )  # fmt: skip

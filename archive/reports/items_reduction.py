@@ -22,6 +22,10 @@ _FIT_STEPS = (
     "bet-area",
     "universal-crossing",
     "dissipation-peak",
+    "film-dynamic-fit",
+    "addenda-fit",
+    "lambda-heat-capacity",
+    "bulk-superfluid-law",
 )
 
 
@@ -194,6 +198,18 @@ def _elastic(scope: Scope) -> Iterator[Said]:
             )
 
 
+def _path(scope: Scope) -> Iterator[Said]:
+    for held in scope.runs:
+        found = next(
+            (each for each in held.sheet.effect if each.effect == "desorption in heat capacity"), None
+        )
+        if found is not None:
+            yield sentence(
+                f"Desorption in the heat capacity of {held.sheet.name} ({found.state}): {found.reason}.",
+                held.sheet.name,
+            )
+
+
 def _drift(scope: Scope) -> Iterator[Said]:
     for held in scope.runs:
         found = next((each for each in held.sheet.effect if each.effect == "drift of the resonance"), None)
@@ -217,9 +233,9 @@ REDUCTION_ITEMS: tuple[Item, ...] = (
     Item("R41", "the fits", (), _FITS, _fits),
     Item("R42", "correlation of parameters", (), _FITS, _correlation),
     Item("R43", "points left out", (), _FITS, _left_out),
-    Item("R45", "the addenda", ("HC",), _FITS, lambda _: ()),
-    Item("R46", "the path of heat capacity", ("HC",), _FITS, lambda _: ()),
-    Item("R47", "lambda point and gravity", ("HC",), _FITS, lambda _: ()),
+    Item("R45", "the addenda", ("HC",), _FITS, step_sentences("the addenda", "addenda-fit", "molar-heat-capacity")),
+    Item("R46", "the path of heat capacity", ("HC",), _FITS, _path),
+    Item("R47", "lambda point and gravity", ("HC",), _FITS, step_sentences("lambda point and gravity", "lambda-gravity", "lambda-heat-capacity")),
     Item("R49", "the reduction of third sound", ("TS",), _FITS, lambda _: ()),
     Item("R50", "the uncertainty budget", (), "uncertainty", _budget),
     Item("R51", "repeatability", (), "uncertainty", _repeat),

@@ -282,3 +282,17 @@ def test_text_of_the_author_survives_in_its_slot(compiled):
     text = " ".join("".join(pages).split())
     assert "Written by hand." in text
     assert "The section fits carries text written by hand" in text
+
+
+def test_a_plan_without_a_figure_of_its_kind_shows_its_curve():
+    outputs = [
+        {"name": "temperature", "quantity": "temperature", "unit": "K", "description": "temperature of each row", "step": 1, "rows": 60, "scale": "PLTS-2000", "digest": "0" * 64},
+        {"name": "period", "quantity": "period", "unit": "s", "description": "period of each row", "step": 1, "rows": 60, "digest": "1" * 64},
+    ]  # fmt: skip
+    view = view_of(accession(), reductions=(reduction(outputs=outputs),))
+    files = made(view)
+    assert files["figures/film-transition-2026-03-s001.pdf"].startswith(b"%PDF")
+    figures = [each for section in companion(files)["sections"] for each in section["figures"]]
+    assert figures[0]["caption"].startswith(
+        "Period of each row against temperature of each row, 2026-03/s001 by plan film-transition.r1"
+    )
