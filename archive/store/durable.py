@@ -155,7 +155,9 @@ def write_whole(path: Path, content: bytes, *, replace: bool = False) -> None:
             _link_or_rename(staged, path)
         _sync_folder(path.parent)
     except FileExistsError as error:
-        raise BadRequest("this name is taken", file=str(path), remedy="name another file, or move this one away") from error
+        raise BadRequest(
+            "this name is taken", file=str(path), remedy="name another file, or move this one away"
+        ) from error
     except OSError as error:
         raise BadRequest(
             f"the file cannot be written: {error.strerror}",
@@ -254,7 +256,8 @@ def archive_lock(root: Path, *, wait_s: float = 5.0) -> Iterator[None]:
         os.ftruncate(descriptor, 0)
         # Byte 0 is what Windows locks, and locked bytes cannot be read there; the text begins after it.
         os.lseek(descriptor, 0, os.SEEK_SET)
-        os.write(descriptor, f"\nprocess {owner}, since {now}\n".encode())
+        with contextlib.suppress(OSError):  # on a full disk the lock holds all the same
+            os.write(descriptor, f"\nprocess {owner}, since {now}\n".encode())
         yield
     finally:
         if os.getpid() == owner:  # a forked child that leaves this block has no lock to give back

@@ -23,6 +23,7 @@ from __future__ import annotations
 
 import contextlib
 import hashlib
+import re
 from collections.abc import Iterable, Iterator, Mapping, Sequence
 from pathlib import Path
 from typing import Any
@@ -59,9 +60,15 @@ def writing(path: Path) -> Iterator[None]:
         raise ArchiveError(
             "the archive could not be written to; nothing of this file was kept",
             file=str(path),
-            found=error.strerror or str(error),
+            found=error.strerror or _system_message(str(error)),
             remedy="make room or mend the disk, then try again",
         ) from error
+
+
+def _system_message(text: str) -> str:
+    """Return what the system said, out of what HDF5 made of it: buffers, descriptors and offsets help nobody."""
+    said = re.search(r"error message = '([^']+)'", text)
+    return said[1] if said else text
 
 
 class SealedTableWriter:

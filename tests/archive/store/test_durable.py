@@ -136,6 +136,17 @@ def test_a_second_writer_is_told_who_holds_the_lock(tmp_path: Path) -> None:
         pass
 
 
+def test_the_lock_holds_on_a_full_disk(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    """What the lock file says is for people only; that it cannot be written does not matter."""
+
+    def full(descriptor: int, data: bytes) -> int:
+        raise OSError(errno.ENOSPC, os.strerror(errno.ENOSPC))
+
+    monkeypatch.setattr(os, "write", full)
+    with archive_lock(tmp_path), pytest.raises(ArchiveBusy), archive_lock(tmp_path, wait_s=0.0):
+        pass
+
+
 def test_a_folder_that_is_not_there_cannot_be_locked(tmp_path: Path) -> None:
     with pytest.raises(ArchiveError, match="cannot be locked"), archive_lock(tmp_path / "none"):
         pytest.fail("a lock on nothing")

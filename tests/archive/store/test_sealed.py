@@ -11,8 +11,10 @@ import h5py
 import numpy as np
 import pytest
 
+from archive.errors import ArchiveError
 from archive.store import Column, LocalStore, open_store
 from archive.store.chunks import fletcher32
+from archive.store.sealed import writing
 from tests.outside import program
 
 KEY = "2026-03/2026-03.a1"
@@ -146,3 +148,10 @@ def test_an_older_reader_reads_all_of_it(path: Path) -> None:
     assert (run.returncode, run.stderr) == (0, "")
     for part in ('DATASET "period"', "DIMENSION_LIST", "llung 6", 'ATTRIBUTE "units"'):
         assert part in run.stdout
+
+
+def test_a_full_disk_is_told_in_the_words_of_the_system(tmp_path: Path) -> None:
+    """Of what HDF5 says of a failed write, only the message of the system is for people."""
+    said = "Can't write chunk (file write failed: errno = 28, error message = 'No space left on device', buf = 0x55)"
+    with pytest.raises(ArchiveError, match="found No space left on device; make room"), writing(tmp_path):
+        raise OSError(said)
