@@ -50,10 +50,11 @@ _DAMAGE = (
     "unsupported file format",
 )
 # PostgreSQL, appendix A of its manual: class 55 lock_not_available, class 40 serialization_failure and deadlock_detected,
-# class 23 integrity_constraint_violation, 42P01 undefined_table.
+# class 23 integrity_constraint_violation, 42P01 undefined_table, 53100 disk_full.
 _BUSY_STATES = ("55P03", "40001", "40P01")
 _CONTRADICTION = "23"
 _NO_TABLE = "42P01"
+_DISK_FULL = "53100"
 
 
 def index_url(text_url: str) -> URL:
@@ -231,6 +232,17 @@ def _meaning(fault: BaseException | None, name: str) -> ArchiveError:
         return DamagedFile(f"what is to be recorded contradicts itself or the index ({said})", file=name)
     if "no such table" in low or state == _NO_TABLE:
         return MissingFile(f"a table of the index is missing ({said})", file=name, remedy=REBUILD)
+    return _refusal(said, low, state, name)
+
+
+def _refusal(said: str, low: str, state: str, name: str) -> ArchiveError:
+    """Return what it means when a sound and free database refuses."""
+    if "disk is full" in low or state == _DISK_FULL:
+        return ArchiveError(
+            "the index cannot be written: the disk is full",
+            file=name,
+            remedy="make room and try again; what had been sealed is not lost",
+        )
     if "readonly database" in low or "read-only transaction" in low:
         return BadRequest("the index is open for reading only", file=name)
     return ArchiveError(f"the database of the index refused ({said})", file=name)

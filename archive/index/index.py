@@ -18,7 +18,7 @@ from typing import Any, Self
 from sqlalchemy import Engine
 from sqlalchemy.engine import URL
 
-from archive.errors import BadRequest, MissingFile
+from archive.errors import BadRequest, DamagedFile, MissingFile
 from archive.index import queries
 from archive.index.answers import (
     AccessionRow,
@@ -107,8 +107,10 @@ class Index:
             If a newer Stillroom wrote it, or it must be raised but is opened for reading only.
         """
         place = index_url(url)
-        if place.get_backend_name() == "sqlite" and not Path(index_name(place)).is_file():
-            raise MissingFile("the index is not there", file=index_name(place), remedy=REBUILD)
+        if place.get_backend_name() == "sqlite" and not (file := Path(index_name(place))).is_file():
+            if file.exists():
+                raise DamagedFile("the index is not a file", file=str(file), remedy=REBUILD)
+            raise MissingFile("the index is not there", file=str(file), remedy=REBUILD)
         engine = engine_of(place, read_only=read_only, wait=wait)
         with _disposed_on_failure(engine):
             raise_to_head(engine, place, read_only=read_only)

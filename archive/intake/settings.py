@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 import tomllib
 from pathlib import Path
 
@@ -23,6 +24,7 @@ class Settings(Record):
     name: Text = Field(min_length=1, description="Name of the laboratory's archive.")
     index: str = Field(
         default="sqlite:///index.sqlite3",
+        pattern=r"^[^\x00-\x1f\x7f]+$",
         description="Address of the index: a SQLite file beside this one, or postgresql+psycopg://...",
     )
     thresholds: Thresholds = Field(
@@ -39,15 +41,19 @@ class Settings(Record):
 
 def settings_text(name: str, index: str | None) -> str:
     """Text of a new `stillroom.toml`."""
-    quoted = name.replace("\\", "\\\\").replace('"', '\\"')
     lines = [
         "# Settings of this archive. The sealed files beside it carry everything else.",
-        f'name = "{quoted}"',
+        f"name = {_quoted(name)}",
     ]
     if index is not None:
-        lines.append(f'index = "{index}"')
+        lines.append(f"index = {_quoted(index)}")
     lines += ["", "# Limits of the checks, where this laboratory sets its own:", "# [thresholds]", ""]
     return "\n".join(lines)
+
+
+def _quoted(text: str) -> str:
+    # A JSON string is a TOML basic string, but for the one control character that JSON leaves as it is.
+    return json.dumps(text, ensure_ascii=False).replace("\x7f", "\\u007f")
 
 
 def read_settings(root: Path) -> Settings:
@@ -73,9 +79,9 @@ def read_settings(root: Path) -> Settings:
         tables = tomllib.loads(text)
     except tomllib.TOMLDecodeError as error:
         raise InvalidSheet(f"the settings are not valid TOML: {error}", file=str(path)) from None
-    settings, findings = validated(Settings, tables, file=SETTINGS_NAME, lines=LineMap(text))
+    except RecursionError:
+        raise InvalidSheet("the settings are nested too deeply", file=str(path)) from None
+    settings, findings = validated(Settings, tables, file=str(path), lines=LineMap(text))
     if settings is None:
-        raise InvalidSheet(
-            "; ".join(finding.sentence() for finding in findings), remedy="correct stillroom.toml"
-        )
+        raise InvalidSheet("; ".join(finding.sentence() for finding in findings))
     return settings

@@ -35,6 +35,7 @@ _DEEPEST = (
 )
 _HINTED = 100  # unknown names that get a hint; looking for a near name takes a millisecond each
 _FORMS = {
+    r"^[^\x00-\x1f\x7f]+$": "text without control characters",
     FILE_PATTERN: "a path inside the cooldown folder, with forward slashes and without control characters",
     CHANNEL_PATTERN: "a name of small letters, digits and _, beginning with a letter, at most 64 long",
     NAME_PATTERN: "a name of letters, digits, - and _, without blanks or dots, at most 64 long",
@@ -290,7 +291,7 @@ def _finding(
         what, remedy = f"{path[-1]} is missing", f"add {path[-1]} to this table"
     elif kind == "extra_forbidden":
         name = str(path[-1])
-        what = f"{name} is not a name that a sheet knows here"
+        what = f"{name} is not a name that is known here"
         remedy = (
             f"did you mean {hints[name]}?"
             if name in hints

@@ -6,9 +6,10 @@ lock; reading needs none, since sealed files never change.
 
 from __future__ import annotations
 
+import glob
 import os
 from collections.abc import Callable, Iterator, Mapping, Sequence
-from contextlib import contextmanager
+from contextlib import contextmanager, suppress
 from datetime import UTC, datetime
 from pathlib import Path
 from types import TracebackType
@@ -17,7 +18,7 @@ from typing import Any, Self
 import numpy as np
 from numpy.typing import NDArray
 
-from archive.errors import ArchiveBusy, BadRequest, NotAnArchive, UnknownAddress
+from archive.errors import ArchiveBusy, ArchiveError, BadRequest, NotAnArchive, UnknownAddress
 from archive.index import AccessionRow, CooldownRow, Index, RecordRow, ResultRow, SearchQuery, SweepRow
 from archive.intake import ingest as intake_ingest
 from archive.intake.checks.check import History
@@ -32,7 +33,7 @@ from archive.lab.outcomes import CheckReport, IngestOutcome, ReduceOutcome, Repl
 from archive.lab.source import LabSource
 from archive.reduction.software import software
 from archive.reduction.trace import TraceNode, trace
-from archive.store.durable import archive_lock, sweep_staging, write_whole
+from archive.store.durable import LOCK_NAME, archive_lock, sweep_staging, write_whole
 from archive.store.fixity import fixity
 from archive.store.interface import Damage, SealedFile
 from archive.store.local import LocalStore, open_store
@@ -41,6 +42,8 @@ from schemas.lineage import ReductionDocument
 from schemas.plan import Plan
 
 __all__ = ["Archive", "check_folder"]
+
+_PARTS = ("sealed", "staging")
 
 Progress = Callable[[str], None]
 Clock = Callable[[], datetime]
@@ -170,20 +173,31 @@ class Archive:
             raise BadRequest(
                 "there is an archive here already", file=str(root), remedy="use it, or name another folder"
             )
-        if root.exists() and (not root.is_dir() or any(root.iterdir())):
+        # The lock file is all that an attempt leaves that could not be finished.
+        if root.exists() and (not root.is_dir() or any(path.name != LOCK_NAME for path in root.iterdir())):
             raise BadRequest(
                 "this folder is not empty", file=str(root), remedy="name a new or an empty folder"
             )
-        root.mkdir(parents=True, exist_ok=True)
-        for part in ("sealed", "staging"):
-            (root / part).mkdir()
-        text = settings_text(name or root.name, index)
-        with archive_lock(root):
-            address = Settings.model_validate(
+        try:
+            settings = Settings.model_validate(
                 {"name": name or root.name, **({"index": index} if index else {})}
             )
-            Index.create(address.index_address(root)).close()
-            write_whole(root / SETTINGS_NAME, text.encode())
+        except ValueError:
+            raise BadRequest(
+                "an archive cannot have this name or index",
+                found=repr((name or root.name)[:80]),
+                expected="text of at most 20000 characters",
+                remedy="give it another with --name",
+            ) from None
+        root.mkdir(parents=True, exist_ok=True)
+        with archive_lock(root):
+            if (root / SETTINGS_NAME).exists():
+                raise BadRequest("another process has just made an archive here", file=str(root))
+            try:
+                _made(root, settings, settings_text(settings.name, index))
+            except BaseException:
+                _unmade(root, settings)
+                raise
         return cls.open(root, clock=clock)
 
     @classmethod
@@ -247,6 +261,9 @@ class Archive:
                         self._complete(key)
         except ArchiveBusy:
             self.notices.append("another process is writing; what it has not finished is not shown yet")
+        except (ArchiveError, OSError) as problem:
+            # Reading needs none of this: whoever only looks is not kept out by a full disk.
+            self.notices.append(f"what an interruption left could not be put in order yet: {problem}")
 
     def _complete(self, key: str) -> None:
         """Record a sealed file whose index rows an interruption cost, if the file is whole."""
@@ -254,7 +271,11 @@ class Archive:
         if damage:
             self.notices.append(f"{key} is sealed but not in the index, and it is damaged: {damage[0].what}")
             return
-        self._record(self._store.describe(key))
+        try:
+            self._record(self._store.describe(key))
+        except ArchiveError as problem:
+            self.notices.append(f"{key} is sealed, but cannot be recorded in the index: {problem}")
+            return
         self.notices.append(f"{key} had been sealed but not indexed; its rows were made from the file itself")
 
     def _record(self, sealed: SealedFile) -> None:
@@ -494,6 +515,25 @@ class Archive:
         root = find_root(None if start is None else Path(start))
         settings = read_settings(root)
         return reducing.rebuilt_index(root, settings.index_address(root), open_store(root), progress=progress)
+
+
+def _made(root: Path, settings: Settings, text: str) -> None:
+    """Make what an archive consists of; its settings last, since they are what it is known by."""
+    for part in _PARTS:
+        (root / part).mkdir()
+    Index.create(settings.index_address(root)).close()
+    write_whole(root / SETTINGS_NAME, text.encode())
+
+
+def _unmade(root: Path, settings: Settings) -> None:
+    """Take away what `_made` left, in a folder that was empty before; only what lies in that folder."""
+    with suppress(OSError):
+        for part in _PARTS:
+            if (root / part).is_dir():
+                (root / part).rmdir()
+        index = Path(settings.index_address(root).removeprefix("sqlite:///"))
+        for path in root.glob(f"{glob.escape(index.name)}*") if index.parent == root else ():
+            path.unlink()
 
 
 def find_root(start: Path | None) -> Path:

@@ -128,11 +128,11 @@ def _one(
             clock=clock,
             supersedes=None if newest is None else newest.address,
         )
+        if newest is not None and _same(newest, made.document):
+            return ReduceOutcome(address, plan.address, newest.address, newest, already=True)
+        seal(made.document, made.arrays)
     except ArchiveError as problem:
         return ReduceOutcome(sweep=address, plan=plan.address, problem=problem)
-    if newest is not None and _same(newest, made.document):
-        return ReduceOutcome(address, plan.address, newest.address, newest, already=True)
-    seal(made.document, made.arrays)
     return ReduceOutcome(address, plan.address, made.document.address, made.document)
 
 
@@ -188,19 +188,24 @@ def rebuilt_index(
             sealed = store.describe(key)
             yield key, sealed.sha256, sealed.size, document_of(key, store.document(key))
 
+    def rebuilt(index: Index) -> dict[str, int]:
+        with index:
+            recorded.update(index.sealed_files())
+            index.rebuild(entries())
+            return index.statistics()
+
     with archive_lock(root):
+        old = None
         try:
-            index = Index.open(address)
+            old = Index.open(address)
+            counts = rebuilt(old)
         except (DamagedFile, MissingFile) as error:
             # Every sealed file is read once before the old index is moved, so that a damaged one changes nothing.
             for _ in entries():
                 pass
-            if isinstance(error, DamagedFile):
+            if isinstance(error, DamagedFile) or old is not None:
                 Index.set_aside(address)
-            index = Index.create(address)
-        with index:
-            recorded.update(index.sealed_files())
-            index.rebuild(entries())
-            if progress is not None:
-                progress(len(keys), len(keys), "")
-            return index.statistics()
+            counts = rebuilt(Index.create(address))
+    if progress is not None:
+        progress(len(keys), len(keys), "")
+    return counts
