@@ -14,6 +14,7 @@ from archive.errors import BadRequest
 from archive.reduction import (
     adsorption_steps,
     background_steps,
+    current_steps,
     dynamic_steps,
     film_steps,
     gas_steps,
@@ -305,6 +306,7 @@ STEPS: tuple[Step, ...] = (
     ),
     *dynamic_steps.DYNAMIC_STEPS,
     *stability_steps.STABILITY_STEPS,
+    *current_steps.CURRENT_STEPS,
 )  # fmt: skip
 
 
