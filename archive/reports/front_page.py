@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator
 from typing import Any
 
 from archive.intake.cautions import FIXED_TEXT
@@ -115,8 +115,8 @@ def _mind(held: Holdings, stands: Standing) -> dict[str, Any]:
     end = held.sheet.gas_end
     return {
         "counts": f"{len(stands.open)} open, {len(stands.waived)} waived, {stands.cleared} cleared",
-        "open": list(_alike(stands)),
-        "waived": [finding_line(each.flag, each.finding) for each in stands.waived],
+        "open": list(_alike(stands.open)),
+        "waived": list(_alike([(each.flag, each.finding) for each in stands.waived])),
         "none_waived": "No warnings were waived." if not stands.waived else "",
         "gas": {
             "state": _GAS[end.state],
@@ -129,11 +129,13 @@ def _mind(held: Holdings, stands: Standing) -> dict[str, Any]:
     }
 
 
-def _alike(stands: Standing) -> Iterator[dict[str, Any]]:
-    """Yield open warnings, those of one check as one line; each stands in full on a later page."""
-    groups: dict[str, list[tuple[str, Finding]]] = {}
-    for flag, finding in stands.open:
-        groups.setdefault(finding.code, []).append((flag, finding))
+def _alike(flagged: Iterable[tuple[str, Finding]]) -> Iterator[dict[str, Any]]:
+    """Yield warnings, those of one check with one answer as one line; each stands in full on a later page."""
+    groups: dict[tuple[str, str], list[tuple[str, Finding]]] = {}
+    for flag, finding in flagged:
+        waiver = finding.waived
+        answer = "" if waiver is None else f"{waiver.date} {waiver.role} {waiver.reason}"
+        groups.setdefault((finding.code, answer), []).append((flag, finding))
     for members in groups.values():
         line = finding_line(*members[0])
         if len(members) > 1:
