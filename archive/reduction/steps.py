@@ -24,6 +24,7 @@ from archive.reduction import (
     stability_steps,
     sweep_steps,
     thermometry_steps,
+    third_sound_steps,
     transition_steps,
 )
 from archive.reduction.step import Port, Step
@@ -307,6 +308,7 @@ STEPS: tuple[Step, ...] = (
     *dynamic_steps.DYNAMIC_STEPS,
     *stability_steps.STABILITY_STEPS,
     *current_steps.CURRENT_STEPS,
+    *third_sound_steps.THIRD_SOUND_STEPS,
 )  # fmt: skip
 
 
