@@ -43,13 +43,18 @@ class Applies(Record):
     has_pores: bool | None = Field(
         default=None, description="Only substrates with, or without, a recorded pore size."
     )
+    has_substrate: bool | None = Field(
+        default=None, description="Only cells with, or without, a recorded substrate: films, or bulk liquid."
+    )
 
 
 class Need(Record):
     """Another reduction that this plan rests on: the newest one of that plan on a sweep related to this one."""
 
     plan: Name
-    relation: Literal["same-cell", "same-sweep", "same-cell-any-cooldown"] = "same-cell"
+    relation: Literal["same-cell", "same-sweep", "same-cell-any-cooldown", "same-sample-any-cooldown"] = (
+        "same-cell"
+    )
     optional: bool = Field(default=False, description="True: without it, inputs that name it do not exist.")
 
 

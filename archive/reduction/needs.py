@@ -73,18 +73,20 @@ def _related(need: Need, facts: SweepFacts, source: Source) -> Iterator[list[str
     if need.relation == "same-sweep":
         yield [facts.address]
         return
+    same = _same_sample if need.relation == "same-sample-any-cooldown" else _same
+    same_elsewhere = _same_sample if need.relation == "same-sample-any-cooldown" else _same_name
     yield [
         f"{facts.cooldown}/{entry.name}"
         for entry in _sweeps(source.accessions(facts.cooldown))
-        if _same(entry, facts)
+        if same(entry, facts)
     ]
-    if need.relation == "same-cell-any-cooldown":
+    if need.relation.endswith("-any-cooldown"):
         for cooldown in reversed(source.cooldowns()):
             if cooldown != facts.cooldown:
                 yield [
                     f"{cooldown}/{entry.name}"
                     for entry in _sweeps(source.accessions(cooldown))
-                    if _same_name(entry, facts)
+                    if same_elsewhere(entry, facts)
                 ]
 
 
@@ -99,7 +101,15 @@ def _same(entry: SweepEntry, facts: SweepFacts) -> bool:
 
 def _same_name(entry: SweepEntry, facts: SweepFacts) -> bool:
     """Whether the cell is the same thing, in whatever revision it was described."""
-    here, there = facts.entry.cell, entry.cell
+    return _same_thing(facts.entry.cell, entry.cell)
+
+
+def _same_sample(entry: SweepEntry, facts: SweepFacts) -> bool:
+    """Whether the gas is the same, in whatever revision it was described; the cell may be another one."""
+    return _same_thing(facts.entry.sample, entry.sample)
+
+
+def _same_thing(here: str | None, there: str | None) -> bool:
     return here is not None and there is not None and here.partition(".r")[0] == there.partition(".r")[0]
 
 
@@ -113,10 +123,11 @@ def _missing(plan: Plan, need: Need, facts: SweepFacts, source: Source) -> BadRe
     ]
     if need.relation == "same-sweep":
         candidates = [facts.address]
+    thing = "gas" if need.relation == "same-sample-any-cooldown" else "cell"
     remedy = (
         f"run `stillroom reduce {candidates[0]} --plan {need.plan}` first"
         if candidates
-        else f"ingest a sweep that plan {need.plan} is for (same cell), and reduce it first"
+        else f"ingest a sweep that plan {need.plan} is for (same {thing}), and reduce it first"
     )
     return BadRequest(
         f"plan {plan.name} on {facts.address} rests on a reduction by plan {need.plan}, and there is none for {cell}",

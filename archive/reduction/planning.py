@@ -65,17 +65,26 @@ def applies(
 ) -> bool:
     """Return whether a plan is for a sweep; what is not told is not held against it."""
     terms = plan.applies
-    if sweep.kind not in terms.sweep_kinds:
-        return False
-    if terms.empty_cell is not None and sweep.empty_cell != terms.empty_cell:
+    if sweep.kind not in terms.sweep_kinds or terms.empty_cell not in (None, sweep.empty_cell):
         return False
     if cell is not None and terms.cell_kinds and getattr(cell, "kind", None) not in terms.cell_kinds:
         return False
     if terms.gas is not None and isinstance(sweep, Sweep) and sweep.gas != terms.gas:
         return False
+    if (
+        terms.has_substrate is not None
+        and cell is not None
+        and _coated(cell, substrate) != terms.has_substrate
+    ):
+        return False
     if terms.has_pores is not None and isinstance(substrate, Substrate):
         return (substrate.pore_diameter is not None) == terms.has_pores
     return True
+
+
+def _coated(cell: AnyRecord, substrate: AnyRecord | None) -> bool:
+    """Whether a substrate is recorded: a film is measured, not bulk liquid."""
+    return substrate is not None or getattr(cell, "substrate", None) is not None
 
 
 def plans_for(

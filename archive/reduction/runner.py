@@ -126,6 +126,8 @@ def _terms(plan: Plan) -> str:
         parts.append(f"gas {terms.gas}")
     if terms.has_pores is not None:
         parts.append("with a recorded pore size" if terms.has_pores else "without a recorded pore size")
+    if terms.has_substrate is not None:
+        parts.append("of a cell with a substrate" if terms.has_substrate else "of a cell without a substrate")
     return ", ".join(parts)
 
 
