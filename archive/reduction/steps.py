@@ -14,10 +14,12 @@ from archive.errors import BadRequest
 from archive.reduction import (
     adsorption_steps,
     background_steps,
+    bulk_steps,
     current_steps,
     dynamic_steps,
     film_steps,
     gas_steps,
+    heat_capacity_steps,
     loading_steps,
     oscillator_steps,
     peak_steps,
@@ -309,6 +311,8 @@ STEPS: tuple[Step, ...] = (
     *stability_steps.STABILITY_STEPS,
     *current_steps.CURRENT_STEPS,
     *third_sound_steps.THIRD_SOUND_STEPS,
+    *bulk_steps.BULK_STEPS,
+    *heat_capacity_steps.HEAT_CAPACITY_STEPS,
 )  # fmt: skip
 
 

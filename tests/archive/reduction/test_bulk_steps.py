@@ -1,0 +1,171 @@
+"""Steps of bulk liquid: fractions from an oscillator, power law, gravity, two-scale-factor combination."""
+
+from __future__ import annotations
+
+import numpy as np
+import pytest
+
+from archive.demo.bulk_cooldowns import stack_temperatures
+from archive.demo.bulk_truth import BULK, bulk_period, superfluid_fraction
+from archive.physics import helium_liquid
+from archive.physics.constants import T_LAMBDA
+from archive.reduction.bulk_fraction import BulkParameters, normal_fraction
+from archive.reduction.bulk_steps import (
+    BULK_STEPS,
+    GravityParameters,
+    LawParameters,
+    gravity,
+    superfluid_law,
+    two_scale,
+)
+from archive.reduction.step import NoParameters
+from archive.reduction.steps import STEPS
+
+LOW, HIGH = 1.45, 2.35
+# Chebyshev coefficients of the true empty cell, a straight line in T.
+BACKGROUND = np.array([
+    BULK.empty_period + BULK.period_slope * ((LOW + HIGH) / 2 - 2), BULK.period_slope * (HIGH - LOW) / 2,
+])  # fmt: skip
+
+
+def fractions(T, period, *, gap=BULK.gap, u=None, pressure=None, **parameters):
+    """Return the outcome of the step on a run."""
+    return normal_fraction(
+        BulkParameters(**parameters), temperature=T, period=period, background=BACKGROUND, low=LOW, high=HIGH, gap=gap,
+        pressure=pressure, u_period=u,
+    )  # fmt: skip
+
+
+def test_every_step_is_in_the_list():
+    assert {step.name for step in BULK_STEPS} <= {step.name for step in STEPS}
+
+
+def test_true_fractions_come_back():
+    """Without noise the fraction is the one that was put in; the table behind it has steps of 3e-5 of the density."""
+    T = stack_temperatures()
+    found = fractions(T, bulk_period(T, filled=True))
+    np.testing.assert_allclose(found.array("superfluid_fraction"), superfluid_fraction(T), atol=1e-9)
+    np.testing.assert_allclose(
+        found.array("normal_density") + found.array("superfluid_density"),
+        helium_liquid.density(T),
+        rtol=1e-12,
+    )
+    assert float(found.outputs["coupled_inertia"]) == pytest.approx(BULK.coupled_inertia, rel=1e-9)
+    assert [finding.code for finding in found.findings] == ["gap-over-penetration-depth"]
+
+
+def test_without_the_gap_the_fraction_is_off():
+    """What the plates do not drag along counts: at a gap of 1.2 um it is a part in a thousand, where a row's noise is 3e-7."""
+    T = stack_temperatures()
+    found = fractions(T, bulk_period(T, filled=True), gap=1e-9)
+    assert np.max(np.abs(found.array("superfluid_fraction") - superfluid_fraction(T))) > 5e-5
+    assert found.findings == ()
+
+
+@pytest.mark.slow
+def test_pulls_of_fraction_and_law():
+    """200 runs: fractions, scale, and every parameter of the power law lie where their uncertainties say."""
+    T, u = stack_temperatures(), BULK.period_noise
+    period = bulk_period(T, filled=True)
+    truth = {
+        "lambda_temperature": T_LAMBDA, "exponent": 0.6717, "amplitude": 2.403, "confluent": 0.33, "regular": -1.46,
+        "coherence_length": BULK.coherence_length,
+    }  # fmt: skip
+    pulls, scales, singles = [], [], []
+    for seed in range(200):
+        random = np.random.default_rng(seed)
+        read = T + BULK.temperature_noise * random.standard_normal(T.size)
+        first = fractions(read, period + u * random.standard_normal(T.size), u=np.full(T.size, u))
+        shared = first.shared["coupled_inertia"]["own coupling of the liquid"]
+        scales.append((float(first.outputs["coupled_inertia"]) - BULK.coupled_inertia) / float(shared))
+        row = 5  # far below, where the temperature noise does not matter to the density
+        own = np.hypot(
+            first.point["normal_density"][row],
+            first.shared["normal_density"]["own coupling of the liquid"][row],
+        )
+        true = float(helium_liquid.density(read[row]) * (1 - superfluid_fraction(read[row])))
+        through_slope = BULK.temperature_noise * 80.0  # d rho_n/dT at 1.55 K, kg/(m^3 K), from the table
+        singles.append((first.array("normal_density")[row] - true) / np.hypot(own, through_slope))
+        law = superfluid_law(
+            LawParameters(), temperature=read, superfluid_fraction=first.array("superfluid_fraction"),
+            lambda_density=float(first.outputs["lambda_density"]), u_superfluid_fraction=np.asarray(first.point["superfluid_fraction"]),
+            u_temperature=np.full(T.size, BULK.temperature_noise),
+        )  # fmt: skip
+        spread = dict(zip(law.covariance.names, np.sqrt(np.diag(law.covariance.matrix)), strict=True))
+        pulls.append([(float(law.outputs[name]) - value) / spread[name] for name, value in truth.items()])
+    # The uncertainty of the power law is never shrunk below what is stated, so its pulls are a little narrower than one.
+    assert np.abs(np.mean(pulls, axis=0)).max() < 4 / np.sqrt(200)
+    assert np.all((np.std(pulls, axis=0) > 0.75) & (np.std(pulls, axis=0) < 1.2))
+    assert abs(np.mean(scales)) < 4 / np.sqrt(200)
+    assert 0.8 < np.std(scales) < 1.25
+    assert np.std(singles) < 1.2
+
+
+def test_scale_needs_rows_above_the_transition():
+    T = np.linspace(1.5, 2.17, 50)
+    with pytest.raises(ValueError, match=r"found 0 rows from 2\.18 K up"):
+        fractions(T, bulk_period(T, filled=True))
+
+
+def test_empty_and_filled_exchanged():
+    T = stack_temperatures()
+    with pytest.raises(ValueError, match="no rise above that of the empty cell"):
+        fractions(T, 2 * bulk_period(T, filled=False) - bulk_period(T, filled=True))
+
+
+def test_rows_outside_background_and_tables():
+    T = np.concatenate([[0.5, 1.40, np.nan], stack_temperatures()])
+    period = np.concatenate([np.full(3, 2.41e-3), bulk_period(T[3:], filled=True)])
+    found = fractions(T, period)
+    assert np.isnan(found.array("normal_fraction")[:3]).all()
+    assert np.isfinite(found.array("normal_fraction")[3:]).all()
+    assert "outside-background" in [finding.code for finding in found.findings]
+
+
+@pytest.mark.parametrize(
+    ("pressure", "more", "warned"),
+    [(5.2e3, {}, False), (1.5e6, {}, True), (1.5e6, {"density_kg_m3": 164.0}, False)],
+    ids=["saturated", "15 bar", "15 bar with its density"],
+)
+def test_pressure_is_looked_at(pressure, more, warned):
+    T = stack_temperatures()
+    found = fractions(T, bulk_period(T, filled=True), pressure=np.full(T.size, pressure), **more)
+    assert ("pressure-above-saturation" in [finding.code for finding in found.findings]) is warned
+
+
+def test_transition_held():
+    T = T_LAMBDA * (1 - np.geomspace(1.2e-4, 0.029, 60))
+    found = superfluid_law(
+        LawParameters(lambda_temperature_kelvin=T_LAMBDA), temperature=T, superfluid_fraction=superfluid_fraction(T),
+        lambda_density=146.109, u_superfluid_fraction=np.full(60, 1e-5), u_temperature=None,
+    )  # fmt: skip
+    assert float(found.outputs["lambda_temperature"]) == T_LAMBDA
+    assert "lambda_temperature" not in found.covariance.names
+    # 3.400 angstrom for k_0 = 2.403 and 146.1 kg/m^3, by hand.
+    assert float(found.outputs["coherence_length"]) * 1e10 == pytest.approx(3.400, abs=1e-3)
+    assert found.facts["correlation"] > 0.9
+
+
+def test_fewer_terms_have_no_value_for_the_others():
+    T = T_LAMBDA * (1 - np.geomspace(1.2e-4, 3e-3, 60))
+    found = superfluid_law(
+        LawParameters(terms=3), temperature=T, superfluid_fraction=superfluid_fraction(T), lambda_density=146.109,
+        u_superfluid_fraction=None, u_temperature=None,
+    )  # fmt: skip
+    assert np.isnan(float(found.outputs["regular"]))
+    assert np.isfinite(float(found.outputs["confluent"]))
+
+
+def test_gravity():
+    """5.8e-7 of reduced temperature for each centimetre."""
+    found = gravity(GravityParameters(), height=0.02)
+    assert float(found.outputs["limit"]) == pytest.approx(2 * 5.8e-7, rel=0.02)
+    assert float(found.outputs["spread"]) == pytest.approx(2 * 1.273e-6, rel=0.02)
+
+
+@pytest.mark.parametrize(("angstrom", "warned"), [(3.43, False), (3.1, True)])
+def test_two_scale_factor_is_looked_at(angstrom, warned):
+    """0.845 and 0.764 with A = 5.6537 J/(mol K); accepted are 0.80 to 0.88 (common practice, no source)."""
+    found = two_scale(NoParameters(), heat_capacity_amplitude=5.6537, coherence_length=angstrom * 1e-10)
+    assert float(found.outputs["combination"]) == pytest.approx(0.845 if not warned else 0.764, abs=1e-3)
+    assert bool(found.findings) is warned
