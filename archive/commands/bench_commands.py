@@ -62,14 +62,14 @@ def convert(
       stillroom convert "2.4 layers" --substrate PI-2200 --to umol/m^2
       stillroom convert "5 mV rms" --to "mV peak"
     """
-    text = " ".join(words)
+    text = " ".join(words).strip()
     if any(word.startswith("--") for word in words):
         raise click.UsageError(f"there is no option {next(word for word in words if word.startswith('--'))}")
     from archive.commands.conversion import converted, in_display_units
     from archive.commands.layers import LAYER_WORDS, layer_of
 
     if target is None:
-        if scale is not None or text.split()[-1] in LAYER_WORDS:
+        if scale is not None or text.endswith(tuple(LAYER_WORDS)):
             raise BadRequest("say what to convert to", field="--to", expected="a unit or a temperature scale")
         with told():
             results = in_display_units(text, kind=kind)

@@ -169,7 +169,7 @@ def _coverage(lab: Archive, text: str, substrate: str | None) -> Bounds:
             return _si(number, unit, "coverage")
         if substrate is None:
             raise ValueError(NO_SUBSTRATE)
-        return float(number) * layer_of(substrate, lab).coverage.si
+        return _si(number, "", "number") * layer_of(substrate, lab).coverage.si
 
     with told("--coverage"):
         return si_bounds(text, to_si)

@@ -212,6 +212,11 @@ def translated(url: URL) -> Iterator[None]:
         yield
     except UnreadableError as fault:
         raise DamagedFile(f"the index is damaged: {fault}", file=index_name(url), remedy=REBUILD) from fault
+    except UnicodeEncodeError as fault:
+        # Bytes of the command line that were no text in its code page come as lone surrogates.
+        raise BadRequest(
+            "what is asked for is not text", found=repr(fault.object[:80]), expected="text in UTF-8"
+        ) from fault
     except exc.DBAPIError as fault:
         raise _meaning(fault.orig, index_name(url)) from fault
     except sqlite3.Error as fault:

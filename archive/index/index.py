@@ -41,6 +41,8 @@ from schemas.lineage import AccessionDocument, ReductionDocument
 
 __all__ = ["Entry", "Index"]
 
+_LARGEST = 2**63 - 1  # the largest integer of SQLite and of a bigint of PostgreSQL
+
 Entry = tuple[str, str, int, AccessionDocument | ReductionDocument]
 """Key, SHA-256, size and document of one sealed file."""
 
@@ -225,9 +227,9 @@ class Index:
                 expected=", ".join(queries.SORTS),
             )
         for field, number in (("limit", query.limit), ("offset", query.offset)):
-            if number is not None and number < 0:
+            if number is not None and not 0 <= number <= _LARGEST:
                 raise BadRequest(
-                    "a search cannot count backwards", field=field, found=str(number), expected="0 or more"
+                    "a search cannot count so", field=field, found=str(number), expected=f"0 to {_LARGEST}"
                 )
         return self._sweeps(queries.search(query))
 

@@ -18,6 +18,7 @@ from archive.reduction.replay import replay as repeat
 from archive.reduction.runner import run
 from archive.store.durable import archive_lock
 from archive.store.local import LocalStore
+from schemas.address import parse_address
 from schemas.lineage import AccessionDocument, ReductionDocument
 from schemas.plan import Plan
 
@@ -151,7 +152,7 @@ def _same(old: ReductionDocument, new: ReductionDocument) -> bool:
 
 def replay(source: LabSource, address: str, *, clock: Callable[[], datetime]) -> ReplayReport:
     """A reduction computed again from raw and compared with what was sealed."""
-    document = source.reduction(address)
+    document = source.reduction(parse_address(address).reduction or address)
     again = repeat(document, source, clock=clock)
     unequal = [each for each in again.differences if not each.equal]
     return ReplayReport(

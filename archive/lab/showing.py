@@ -184,6 +184,10 @@ def _record(source: LabSource, address: Address) -> dict[str, Any]:
     for plan in shipped_plans():
         if address.text in (plan.name, plan.address):
             return {"what": "plan", **_plain(plan)}
+    revisions = source.index.records(name=address.head)
+    if revisions:
+        held = ", ".join(sorted(row.address for row in revisions))
+        raise UnknownAddress(f"there is no {address.text} in this archive", expected=f"one of: {held}")
     known = source.cooldowns()
     hint = f"cooldowns here: {', '.join(known)}" if known else "this archive is empty"
     raise UnknownAddress(f"there is nothing at {address.text} in this archive", expected=hint)

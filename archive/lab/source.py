@@ -143,6 +143,10 @@ class LabSource:
 
     def reduction(self, address: str) -> ReductionDocument:
         """One reduction's document."""
+        if parse_address(address).kind != "reduction":
+            raise UnknownAddress(
+                f"{address} is no reduction", expected="an address such as 2026-03/s017@film-transition.2"
+            )
         key = key_of(address)
         if not self.store.contains(key):
             raise UnknownAddress(f"there is no reduction {address} in this archive")

@@ -33,6 +33,7 @@ __all__ = ["LocalStore", "open_store"]
 
 _SUFFIX = ".h5"
 _BLOCK = 1 << 22
+_RESTORE = "run: stillroom fixity; then restore the file from a copy"
 # What the dimension scale specification keeps in attributes; references mean nothing outside the file.
 _SCALE_ATTRIBUTES = {"CLASS", "NAME", "DIMENSION_LIST", "REFERENCE_LIST", "DIMENSION_LABELS"}
 
@@ -235,7 +236,7 @@ class LocalStore:
         with self._damage_named(key, None):
             marks = mark_faults(path)
             if marks:
-                raise DamagedFile(marks[0], file=str(path))
+                raise DamagedFile(marks[0], file=str(path), remedy=_RESTORE)
             # Nobody writes a sealed file, so a lock that a read-only mount refuses is no loss.
             file = h5py.File(path, "r", locking="best-effort")
         with file:
@@ -251,7 +252,7 @@ class LocalStore:
             faults = structure_faults(file)
         if faults:
             where, sentence = faults[0]
-            raise DamagedFile(sentence, file=str(path), field=where)
+            raise DamagedFile(sentence, file=str(path), field=where, remedy=_RESTORE)
         self._sound[key] = mark
 
     @contextlib.contextmanager
@@ -266,7 +267,7 @@ class LocalStore:
                 file=str(self.path(key)),
                 field=path,
                 found=str(error),
-                remedy="run the fixity check and restore the file from a copy",
+                remedy=_RESTORE,
             ) from error
 
 

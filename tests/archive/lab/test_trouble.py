@@ -11,7 +11,8 @@ from typing import Any
 
 import pytest
 
-from archive.errors import ArchiveError, BadRequest, DamagedFile, InvalidSheet
+from archive.errors import ArchiveError, BadRequest, DamagedFile, InvalidSheet, UnknownAddress
+from archive.index import SearchQuery
 from archive.lab import Archive
 from archive.store.local import open_store
 
@@ -156,3 +157,37 @@ def test_damage_of_a_sealed_file_is_told_before_the_index_is_touched(
     with pytest.raises(DamagedFile, match="sealed file"):
         Archive.rebuild_index(sqlite_lab.root)
     assert not list(sqlite_lab.root.glob("*set-aside*"))
+
+
+@pytest.mark.parametrize("address", ["2026-03", "2026-03.a1", "2026-03/s001", "TO-4.r1"])
+def test_only_a_reduction_is_computed_again(sqlite_lab: Archive, folder: Path, address: str) -> None:
+    """Another address is refused by what it is, not by what no file can be called."""
+    sqlite_lab.ingest(folder)
+    with pytest.raises(UnknownAddress, match="is no reduction; expected an address such as"):
+        sqlite_lab.replay(address)
+
+
+def test_a_result_stands_for_its_reduction(sqlite_lab: Archive, folder: Path) -> None:
+    """An address copied from a list of results can be computed again as it is."""
+    sqlite_lab.ingest(folder)
+    done = next(each for each in sqlite_lab.reduce("2026-03") if each.document is not None)
+    name = done.document.outputs[-1].name  # type: ignore[union-attr]
+    assert sqlite_lab.replay(f"{done.address}#{name}").address == done.address
+
+
+def test_a_revision_that_is_not_there_names_those_that_are(sqlite_lab: Archive, folder: Path) -> None:
+    """The record is known, its revision is not."""
+    sqlite_lab.ingest(folder)
+    record = sqlite_lab.records()[0]
+    with pytest.raises(UnknownAddress, match=f"expected one of: {record.address}"):
+        sqlite_lab.show(f"{record.name}.r77")
+
+
+@pytest.mark.parametrize(
+    "query", [SearchQuery(limit=2**63), SearchQuery(offset=2**70), SearchQuery(limit=-1), SearchQuery(cell="\udcff")],
+    ids=["limit", "offset", "negative", "no-text"],
+)  # fmt: skip
+def test_a_search_that_no_database_can_carry_out_is_refused(sqlite_lab: Archive, query: SearchQuery) -> None:
+    """Numbers beyond the database's and bytes that are no text."""
+    with pytest.raises(BadRequest):
+        sqlite_lab.search(query)
