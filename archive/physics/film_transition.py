@@ -269,6 +269,8 @@ def _first_values(
     given: dict[str, float],
 ) -> dict[str, float]:
     """Return start values: the best of short fits to a thinned record from three values of b."""
+    if set(NAMES) <= set(given):
+        return dict(given)
     first = tuple(name for name in free if name not in {"F", "scale"})
     candidates = [_start_values(data, b=b, F=F, scale=scale) | given for b in (3.0, 5.0, 9.0)]
     if given or not first:

@@ -6,33 +6,29 @@ Rules: a density is given only for a ring that is full of liquid; a current that
 from __future__ import annotations
 
 import math
-from typing import Any
 
 import numpy as np
 import numpy.typing as npt
 
 from archive.physics.constants import MOLAR_MASS_HELIUM4, T_LAMBDA
-from archive.physics.film_static import UNIVERSAL_JUMP
 from archive.physics.helium_liquid import density, superfluid_fraction
-from archive.physics.linear_fit import straight_line
-from archive.physics.persistent_current import branch_ratio, fit_decay
+from archive.physics.persistent_current import branch_ratio
 from archive.reduction.background_steps import known_rows, weights
+from archive.reduction.current_decay_steps import (
+    CoverageParameters,
+    HeldParameters,
+    current_against_coverage,
+    current_decay,
+    relative_spread,
+    turning_row,
+)
 from archive.reduction.estimate import FloatArray
-from archive.reduction.step import Covariance, Outcome, Port, Step
+from archive.reduction.step import Outcome, Port, Step
 from schemas.base import Record
 from schemas.finding import Finding
 from schemas.lineage import SourceEntry
 
-__all__ = [
-    "CURRENT_STEPS",
-    "CoverageParameters",
-    "CurrentParameters",
-    "HeldParameters",
-    "current_against_coverage",
-    "current_decay",
-    "current_reversibility",
-    "density_from_current",
-]
+__all__ = ["CURRENT_STEPS", "CurrentParameters", "current_reversibility", "density_from_current"]
 
 _Rows = npt.NDArray[np.bool_]
 
@@ -57,20 +53,6 @@ class CurrentParameters(Record):
     """Whether the ring is full of liquid; from amount and open volume when none."""
     rows: tuple[int, ...] | None = None
     """The rows of reference, from 1, in place of a share."""
-
-
-class HeldParameters(Record):
-    """What counts as one temperature."""
-
-    largest_spread: float = 0.01
-    """Largest spread of temperature or coverage (5th to 95th percentile) over its median (common practice, no source)."""
-
-
-class CoverageParameters(Record):
-    """Which coverages lie on the straight line."""
-
-    share: float = 1.0
-    """Share of the thickest rows that is fitted."""
 
 
 def density_from_current(
@@ -173,9 +155,9 @@ def current_reversibility(
     rows = np.flatnonzero(known_rows(abscissa, angular_momentum, time))
     rows = rows[np.argsort(time[rows], kind="stable")]
     x, L, u = abscissa[rows], angular_momentum[rows], weights(u_angular_momentum, rows)
-    if rows.size < 16 or _spread(x) < parameters.largest_spread:
+    if rows.size < 16 or relative_spread(x) < parameters.largest_spread:
         return _silent("no way back")
-    turn = _turn(x)
+    turn = turning_row(x)
     found = branch_ratio(x, L, turn=turn, standard_uncertainty=u)
     if found is None:
         return _silent("no way back")
@@ -197,127 +179,6 @@ def current_reversibility(
     )  # fmt: skip
 
 
-def current_decay(
-    parameters: HeldParameters,
-    *,
-    time: FloatArray,
-    angular_momentum: FloatArray,
-    temperature: FloatArray | None,
-    coverage: FloatArray | None,
-    u_angular_momentum: FloatArray | None,
-) -> Outcome:
-    """Return the power law in time by which a current at one temperature decays.
-
-    Parameters
-    ----------
-    time, angular_momentum : ndarray
-        s, kg m^2/s.
-    temperature : ndarray or None
-        K; a record whose temperature moves has no decay of its own.
-    coverage : ndarray or None
-        Coverage or thickness; the same holds for it.
-
-    Notes
-    -----
-    For a film the exponent is pi K_R, so that sigma_s = m T/2 of the universal jump's constant: an areal density that needs no area.
-    For bulk liquid the exponent describes the decay and means no more.
-    """
-    rows = known_rows(time, angular_momentum)
-    names = (
-        "initial_angular_momentum",
-        "decay_time",
-        "exponent",
-        "stiffness_ratio",
-        "areal_density_from_decay",
-    )
-    facts: dict[str, Any] = {"points": int(np.count_nonzero(rows)), "reason": "", "probability": math.nan, "chi2_exponential": math.nan, "chi2_power": math.nan}  # fmt: skip
-    T = math.nan
-    if temperature is not None:
-        T = float(np.nanmedian(temperature))
-        if _spread(temperature[np.isfinite(temperature)]) > parameters.largest_spread:
-            return _no_decay(
-                names, facts, "temperature not held", "the temperature moves, so no decay is looked for"
-            )
-    if coverage is not None and _spread(coverage[np.isfinite(coverage)]) > parameters.largest_spread:
-        return _no_decay(names, facts, "coverage not held", "the coverage moves, so no decay is looked for")
-    if facts["points"] < 8:
-        return _no_decay(names, facts, "too few readings", "fewer than eight readings")
-    t, L = time[rows], angular_momentum[rows]
-    found = fit_decay(t - t.min(), L, standard_uncertainty=weights(u_angular_momentum, rows))
-    facts |= {
-        "probability": found.probability,
-        "chi2_exponential": found.exponential_chi2,
-        "reason": found.reason,
-    }
-    if not found.found or found.fit is None:
-        return _no_decay(names, facts, "no decay law", found.reason)
-    fit = found.fit
-    facts["chi2_power"] = fit.chi2
-    initial, rate, m = (float(value) for value in fit.values)
-    jacobian = np.array(
-        [
-            [1, 0, 0],
-            [0, -1 / rate**2, 0],
-            [0, 0, 1],
-            [0, 0, 0.5],
-            [0, 0, 0 if math.isnan(T) else UNIVERSAL_JUMP * T / 2],
-        ]
-    )
-    widened = max(fit.reduced_chi2, 1.0) if fit.absolute else 1.0
-    known = names[:4] if math.isnan(T) else names
-    covariance = (jacobian @ fit.covariance @ jacobian.T)[: len(known), : len(known)] * widened
-    values = (initial, 1 / rate, m, m / 2, UNIVERSAL_JUMP * T * m / 2)
-    return Outcome(
-        dict(zip(names, values, strict=True)), covariance=Covariance(known, covariance), facts=facts,
-        verdicts={} if known == names else {names[4]: "temperature not recorded"},
-    )  # fmt: skip
-
-
-def current_against_coverage(
-    parameters: CoverageParameters, *, coverage: FloatArray, angular_momentum: FloatArray, u_angular_momentum: FloatArray | None
-) -> Outcome:  # fmt: skip
-    """Return the coverage at which a current of kept circulation would vanish, and its slope.
-
-    Parameters
-    ----------
-    coverage : ndarray
-        mol/m^2, or thickness in m.
-    angular_momentum : ndarray
-        kg m^2/s.
-
-    Raises
-    ------
-    ValueError
-        Fewer than four different coverages, or a current that does not rise with them.
-
-    Notes
-    -----
-    Far below its transition all of a film above the inert layer flows, so that L rises in proportion to coverage less onset.
-    """
-    rows = known_rows(coverage, angular_momentum)
-    if rows.any() and parameters.share < 1:
-        rows &= np.nan_to_num(coverage) >= np.quantile(coverage[rows], 1 - parameters.share)
-    n, L, u = coverage[rows], angular_momentum[rows], weights(u_angular_momentum, rows)
-    if np.unique(n).size < 4:
-        raise ValueError(f"coverage: found {np.unique(n).size} different coverages, expected at least 4")
-    middle = float(np.mean(n))
-    line = straight_line(n - middle, L, standard_uncertainty=u, absolute=False)
-    a, s = line.value("intercept"), line.value("slope")
-    if not a * s > 0:
-        raise ValueError(
-            "angular_momentum: found no rise with coverage, expected one in proportion to coverage less onset"
-        )
-    gradient = np.array([-1 / s, a / s**2])
-    order = [line.names.index(name) for name in ("intercept", "slope")]
-    covariance = np.asarray(line.covariance)[np.ix_(order, order)]
-    if u is not None and 0 < line.chi2 < line.dof:
-        covariance = covariance / (line.chi2 / line.dof)
-    return Outcome(
-        {"onset_coverage": middle - a / s}, point={"onset_coverage": math.sqrt(float(gradient @ covariance @ gradient))},
-        facts={"points": int(n.size), "rms": float(np.sqrt(np.mean(line.residuals**2)))},
-    )  # fmt: skip
-
-
 def _reference(parameters: CurrentParameters, T: FloatArray, known: _Rows) -> _Rows:
     chosen = np.zeros(T.shape, dtype=np.bool_)
     if parameters.rows is not None:
@@ -327,7 +188,7 @@ def _reference(parameters: CurrentParameters, T: FloatArray, known: _Rows) -> _R
     if count:
         # Up to the turn: what is lost there must not lower the level that it is measured against.
         first = np.flatnonzero(known)
-        turn = _turn(T[first])
+        turn = turning_row(T[first])
         if min(turn, count - turn) > parameters.reference_share * count:
             first = first[: turn + 1]
         chosen[first[T[first] <= np.quantile(T[first], parameters.reference_share)]] = True
@@ -372,31 +233,11 @@ def _identity(T: FloatArray, found: FloatArray, known: _Rows) -> tuple[float, tu
     )  # fmt: skip
 
 
-def _turn(x: FloatArray) -> int:
-    """Return the row at which a record turns back: its highest or lowest one, whichever is further from both ends."""
-    return int(max((int(np.argmax(x)), int(np.argmin(x))), key=lambda row: min(row, x.size - row)))
-
-
-def _spread(values: FloatArray) -> float:
-    if values.size == 0:
-        return 0.0
-    low, middle, high = np.quantile(values, [0.05, 0.5, 0.95])
-    return float((high - low) / abs(middle)) if middle else math.inf
-
-
 def _silent(verdict: str) -> Outcome:
     return Outcome(
         {"remaining": math.nan},
         verdicts={"remaining": verdict},
         facts={"reversible": "not tested", "abscissa_is": "temperature or coverage"},
-    )
-
-
-def _no_decay(names: tuple[str, ...], facts: dict[str, Any], verdict: str, reason: str) -> Outcome:
-    return Outcome(
-        dict.fromkeys(names, math.nan),
-        facts=facts | {"reason": reason},
-        verdicts=dict.fromkeys(names, verdict),
     )
 
 

@@ -10,12 +10,14 @@ import pytest
 
 from archive.demo.current_forward import RING, coverage_run, cycle, hold
 from archive.physics.helium_liquid import density, superfluid_fraction
-from archive.reduction.current_steps import (
+from archive.reduction.current_decay_steps import (
     CoverageParameters,
-    CurrentParameters,
     HeldParameters,
     current_against_coverage,
     current_decay,
+)
+from archive.reduction.current_steps import (
+    CurrentParameters,
     current_reversibility,
     density_from_current,
 )
