@@ -118,7 +118,7 @@ class LambdaLaw:
     References
     ----------
     J. A. Lipa, J. A. Nissen, D. A. Stricker, D. R. Swanson, T. C. P. Chui, "Specific heat of liquid helium in zero gravity very near the lambda
-    point", Physical Review B 68, 174518 (2003): form; that a and b are common to both sides is an assumption of this form.
+    point", Physical Review B 68, 174518 (2003), title from memory: form; that a and b are common to both sides is an assumption of this form.
     """
 
     amplitude: float

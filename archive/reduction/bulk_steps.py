@@ -19,7 +19,16 @@ from archive.reduction.step import Covariance, NoParameters, Outcome, Port, Step
 from schemas.base import Record
 from schemas.finding import Finding
 
-__all__ = ["BULK_STEPS", "GravityParameters", "LawParameters"]
+__all__ = ["BULK_STEPS", "GravityParameters", "LawParameters", "LineParameters"]
+
+LAMBDA_PRESSURE = 5042.0
+"""Pa: saturated vapour pressure at the lambda point on ITS-90."""
+
+HIGHEST_LINE_PRESSURE = 1e5
+"""Pa; the linear form of the lambda line ends there."""
+
+LINE_UNCERTAINTY = 1e-3
+"""K, of that form."""
 
 
 class LawParameters(Record):
@@ -33,6 +42,12 @@ class LawParameters(Record):
     """Held; fitted when none."""
     rows: tuple[int, ...] | None = None
     """The rows to fit, from 1, in place of the window."""
+
+
+class LineParameters(Record):
+    """Which rows tell the pressure at the lambda point."""
+
+    within_kelvin: float = 0.01
 
 
 class GravityParameters(Record):
@@ -113,6 +128,64 @@ def superfluid_law(
             "correlation": float(covariance[0, 1] / (spread[0] * spread[1])), "treated": "held" if fixed else "fitted",
         },
     )  # fmt: skip
+
+
+def lambda_line(
+    parameters: LineParameters, *, temperature: FloatArray, pressure: FloatArray, lambda_temperature: float
+) -> Outcome:
+    """Return the pressure at the lambda point, the lambda temperature expected there, and how far the measured one is above it.
+
+    Parameters
+    ----------
+    temperature, pressure : ndarray
+        K, Pa.
+    lambda_temperature : float
+        As measured, K on ITS-90.
+
+    Raises
+    ------
+    ValueError
+        No row near the lambda point.
+
+    Notes
+    -----
+    The line is known here near saturated vapour pressure only, to about a millikelvin and up to 1 bar; above it there is a pressure and no
+    expectation.
+    """
+    rows = known_rows(temperature, pressure) & (
+        np.abs(np.nan_to_num(temperature) - lambda_temperature) < parameters.within_kelvin
+    )
+    if not rows.any():
+        raise ValueError(
+            f"temperature: found no row with a pressure within {parameters.within_kelvin} K of the lambda point"
+        )
+    p = float(np.median(pressure[rows]))
+    expected, verdicts = math.nan, {}
+    if p > HIGHEST_LINE_PRESSURE:
+        verdicts = dict.fromkeys(("expected", "difference"), "no equation of the lambda line above 1 bar")
+    else:
+        # A gauge may read a little less than the liquid's own vapour pressure.
+        expected = float(helium_liquid.lambda_temperature_estimate(max(p, LAMBDA_PRESSURE)))
+    difference = lambda_temperature - expected
+    findings: tuple[Finding, ...] = ()
+    if abs(difference) > 2e-3:
+        findings = (
+            Finding(
+                code="lambda-temperature",
+                severity="warning",
+                what=f"the lambda point lies {difference * 1e3:.3g} mK from where the lambda line has it at {p / 1e3:.4g} kPa",
+                expected="2 mK at most",
+                remedy="look at the scale, the calibration and the gauge",
+            ),
+        )
+    spread = 0.0 if math.isnan(expected) else LINE_UNCERTAINTY
+    return Outcome(
+        {"pressure": p, "expected": expected, "difference": difference},
+        point={"expected": spread, "difference": spread},
+        facts={"rows": int(np.count_nonzero(rows)), "pressure_kPa": p / 1e3},
+        verdicts=verdicts,
+        findings=findings,
+    )
 
 
 def gravity(parameters: GravityParameters, *, height: float) -> Outcome:
@@ -198,6 +271,20 @@ BULK_STEPS: tuple[Step, ...] = (
         },
         sentence="rho_s/rho = k_0 (1 + k_1 t) t^zeta (1 + D t^0.5) was fitted to {points} points with t from {low} to {high}: zeta = {exponent}, k_0 = {amplitude} (correlation {correlation}), D = {confluent}, k_1 = {regular}, T_lambda = {lambda_temperature} ({treated}); chi^2 per degree of freedom {reduced_chi2}. The transverse correlation length, m^2 k_B T/(hbar^2 rho_s), has the amplitude {coherence_length}.",
         citations=("singsaas-1984", "josephson-1966"), spread="refit", weights=("superfluid_fraction", "temperature"),
+    ),
+    Step(
+        name="lambda-line", version=1, function=lambda_line, parameters=LineParameters,
+        takes={
+            "temperature": _TEMPERATURE, "pressure": Port("pressure", "array", "pressure of the liquid"),
+            "lambda_temperature": Port("temperature", "scalar", "lambda temperature as measured"),
+        },
+        yields={
+            "pressure": Port("pressure", "scalar", "pressure of the liquid at the lambda point"),
+            "expected": Port("temperature", "scalar", "lambda temperature expected at that pressure"),
+            "difference": Port("temperature_difference", "scalar", "measured less expected"),
+        },
+        sentence="At the lambda point the liquid was at {pressure_kPa} kPa ({rows} rows); the lambda line near saturated vapour pressure has it at {expected}, so the measured one differs by {difference}.",
+        citations=("ahlers-1968",), spread="refit",
     ),
     Step(
         name="lambda-gravity", version=1, function=gravity, parameters=GravityParameters,

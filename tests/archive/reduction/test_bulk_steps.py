@@ -14,7 +14,9 @@ from archive.reduction.bulk_steps import (
     BULK_STEPS,
     GravityParameters,
     LawParameters,
+    LineParameters,
     gravity,
+    lambda_line,
     superfluid_law,
     two_scale,
 )
@@ -154,6 +156,42 @@ def test_fewer_terms_have_no_value_for_the_others():
     )  # fmt: skip
     assert np.isnan(float(found.outputs["regular"]))
     assert np.isfinite(float(found.outputs["confluent"]))
+
+
+@pytest.mark.parametrize(
+    ("kilopascal", "measured", "expected", "codes"),
+    [
+        (5.04, 2.1769, 2.1768, []),
+        # -8.88 mK/bar from 5.042 kPa: 2.1768 - 0.95 x 8.88e-3 bar by hand.
+        (100.0, 2.1684, 2.16837, []),
+        (100.0, 2.1768, 2.16837, ["lambda-temperature"]),
+        (1500.0, 2.05, None, []),
+    ],
+    ids=["saturated", "1 bar", "1 bar, off by 8 mK", "15 bar"],
+)
+def test_lambda_line(kilopascal, measured, expected, codes):
+    """The pressure counts where the lambda point is, not far below, where a saturated liquid has another."""
+    T = measured + np.array([-0.3, -0.2, -0.005, 0.0, 0.005, 0.3])
+    p = np.array([0.1, 0.2, 1.0, 1.0, 1.0, 1.3]) * kilopascal * 1e3
+    found = lambda_line(LineParameters(), temperature=T, pressure=p, lambda_temperature=measured)
+    assert float(found.outputs["pressure"]) == pytest.approx(kilopascal * 1e3)
+    assert [finding.code for finding in found.findings] == codes
+    if expected is None:
+        assert np.isnan(float(found.outputs["difference"]))
+        assert "above 1 bar" in found.verdicts["expected"]
+    else:
+        assert float(found.outputs["expected"]) == pytest.approx(expected, abs=1e-5)
+        assert float(found.outputs["difference"]) == pytest.approx(measured - expected, abs=1e-5)
+
+
+def test_lambda_line_needs_a_pressure_there():
+    with pytest.raises(ValueError, match="found no row with a pressure"):
+        lambda_line(
+            LineParameters(),
+            temperature=np.array([1.5]),
+            pressure=np.array([471.0]),
+            lambda_temperature=2.1768,
+        )
 
 
 def test_gravity():
