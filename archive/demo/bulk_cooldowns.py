@@ -16,6 +16,7 @@ from archive.demo.files import Column, comma_table
 from archive.demo.recording import ZONE, CooldownFolder, at, concise, filled, times_from
 from archive.demo.stated import generator
 from archive.physics.constants import T_LAMBDA
+from archive.physics.vapour_pressure import pressure_its90
 
 if TYPE_CHECKING:
     import numpy.typing as npt
@@ -28,6 +29,7 @@ STACK: Final = "2025-08"
 CALORIMETER: Final = "2025-11"
 
 _GAP_UNCERTAINTY: Final = 0.03e-6
+_GAUGE_NOISE: Final = 6.0
 _AMOUNT_UNCERTAINTY: Final = 0.0005
 
 
@@ -52,6 +54,9 @@ def _sweep_file(seed: int, sweep: str, begin: str, temperature: Floats, *, fille
         Column("T", "K", temperature + BULK.temperature_noise * random.standard_normal(temperature.size), 7),
         Column("P", "us", (period + BULK.period_noise * random.standard_normal(temperature.size)) * 1e6, 9),
     ]
+    if filled_cell:
+        pressure = pressure_its90(temperature) + _GAUGE_NOISE * random.standard_normal(temperature.size)
+        columns.append(Column("p", "Pa", pressure, 1))
     return comma_table(times_from(at(begin), temperature.size, cadence=240.0), columns, zone=ZONE)
 
 
@@ -66,6 +71,10 @@ def stack_cooldown(seed: int) -> CooldownFolder:
     gap = BULK.gap + _GAP_UNCERTAINTY * generator(seed, "SD-1").standard_normal()
     values = {
         "gap": concise(gap * 1e6, _GAP_UNCERTAINTY * 1e6, 2),
+        "head_state": "considered",
+        "head": "the level stands 4 cm above the stack: 57 Pa, which is 5 uK of the lambda point",
+        "transpiration_state": "considered",
+        "transpiration": "wide line, 500 Pa and more",
         "amplitude": "rim velocity below 0.1 mm/s; half the drive gave the same period",
         "ring": "ring time 40 s, four minutes a point",
         "elastic": "the stack is clamped; full and empty cell alike",
@@ -109,6 +118,10 @@ def calorimeter_cooldown(seed: int) -> CooldownFolder:
     amount = BULK.amount + _AMOUNT_UNCERTAINTY * generator(seed, "CAL-2").standard_normal()
     values = {
         "amount": concise(amount, _AMOUNT_UNCERTAINTY, 4),
+        "head_state": "not-applicable",
+        "head": "no pressure was read",
+        "transpiration_state": "not-applicable",
+        "transpiration": "no pressure was read",
         "amplitude": "no oscillator",
         "ring": "no oscillator; five minutes between pulses",
         "elastic": "no oscillator",

@@ -10,8 +10,8 @@ _EFFECTS: Final = """\
 effect = [
   { effect = "vapour in dead volume", state = "considered", reason = "the cell is full of liquid" },
   { effect = "desorption in heat capacity", state = "not-applicable", reason = "the cell is full of liquid" },
-  { effect = "thermal transpiration", state = "not-applicable", reason = "no pressure was read" },
-  { effect = "hydrostatic head", state = "not-applicable", reason = "no vapour pressure thermometer" },
+  { effect = "thermal transpiration", state = "$transpiration_state", reason = "$transpiration" },
+  { effect = "hydrostatic head", state = "$head_state", reason = "$head" },
   { effect = "self-heating", state = "bounded", bound = "0.1 uK", reason = "bridge power halved: no change" },
   { effect = "sensor-film offset", state = "considered", reason = "the thermometer stands in the liquid" },
   { effect = "amplitude dependence", state = "considered", reason = "$amplitude" },
@@ -135,6 +135,7 @@ after_dose = "d01"
 thermometer = "temperature"
 direction = "up"
 settled = "a night at 1.5 K"
+channels = { pressure = { column = "p", quantity = "pressure", unit = "Pa", convention = "absolute", uncertainty = "6 Pa", description = "over the liquid in the filling line" } }
 
 [[note]]
 role = "graduate student"

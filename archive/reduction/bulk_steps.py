@@ -10,6 +10,7 @@ from archive.physics import helium_liquid
 from archive.physics.bulk_superfluid import fit_superfluid_law, transition_estimate
 from archive.physics.constants import MOLAR_MASS_HELIUM4, T_LAMBDA
 from archive.physics.lambda_gravity import lambda_spread
+from archive.physics.linear_fit import straight_line
 from archive.physics.power_law import transverse_correlation_length
 from archive.physics.two_scale_factor import two_scale_factor
 from archive.reduction.background_steps import known_rows, weights
@@ -145,7 +146,7 @@ def lambda_line(
     Raises
     ------
     ValueError
-        No row near the lambda point.
+        Fewer than three rows near the lambda point.
 
     Notes
     -----
@@ -155,11 +156,14 @@ def lambda_line(
     rows = known_rows(temperature, pressure) & (
         np.abs(np.nan_to_num(temperature) - lambda_temperature) < parameters.within_kelvin
     )
-    if not rows.any():
+    count = int(np.count_nonzero(rows))
+    if count < 3:
         raise ValueError(
-            f"temperature: found no row with a pressure within {parameters.within_kelvin} K of the lambda point"
+            f"temperature: found {count} rows with a pressure within {parameters.within_kelvin} K of the lambda point, expected at least 3"
         )
-    p = float(np.median(pressure[rows]))
+    # A saturated liquid's pressure rises by 12 Pa in a millikelvin: a line is read at the lambda point, not a mean.
+    line = straight_line(temperature[rows] - lambda_temperature, pressure[rows], absolute=False)
+    p, u_p = line.value("intercept"), line.standard_uncertainty("intercept")
     expected, verdicts = math.nan, {}
     if p > HIGHEST_LINE_PRESSURE:
         verdicts = dict.fromkeys(("expected", "difference"), "no equation of the lambda line above 1 bar")
@@ -181,8 +185,8 @@ def lambda_line(
     spread = 0.0 if math.isnan(expected) else LINE_UNCERTAINTY
     return Outcome(
         {"pressure": p, "expected": expected, "difference": difference},
-        point={"expected": spread, "difference": spread},
-        facts={"rows": int(np.count_nonzero(rows)), "pressure_kPa": p / 1e3},
+        point={"pressure": u_p, "expected": spread, "difference": spread},
+        facts={"rows": count},
         verdicts=verdicts,
         findings=findings,
     )
@@ -283,7 +287,7 @@ BULK_STEPS: tuple[Step, ...] = (
             "expected": Port("temperature", "scalar", "lambda temperature expected at that pressure"),
             "difference": Port("temperature_difference", "scalar", "measured less expected"),
         },
-        sentence="At the lambda point the liquid was at {pressure_kPa} kPa ({rows} rows); the lambda line near saturated vapour pressure has it at {expected}, so the measured one differs by {difference}.",
+        sentence="At the lambda point the liquid was at {pressure} ({rows} rows); the lambda line near saturated vapour pressure has it at {expected}, so the measured one differs by {difference}.",
         citations=("ahlers-1968",), spread="refit",
     ),
     Step(

@@ -162,17 +162,17 @@ def test_fewer_terms_have_no_value_for_the_others():
     ("kilopascal", "measured", "expected", "codes"),
     [
         (5.04, 2.1769, 2.1768, []),
-        # -8.88 mK/bar from 5.042 kPa: 2.1768 - 0.95 x 8.88e-3 bar by hand.
-        (100.0, 2.1684, 2.16837, []),
-        (100.0, 2.1768, 2.16837, ["lambda-temperature"]),
+        # -8.88 mK/bar from 5.042 kPa: 2.1768 - 0.93958 bar x 8.88e-3 K/bar by hand.
+        (99.0, 2.1684, 2.168457, []),
+        (99.0, 2.1768, 2.168457, ["lambda-temperature"]),
         (1500.0, 2.05, None, []),
     ],
-    ids=["saturated", "1 bar", "1 bar, off by 8 mK", "15 bar"],
+    ids=["saturated", "99 kPa", "99 kPa, off by 8 mK", "15 bar"],
 )
 def test_lambda_line(kilopascal, measured, expected, codes):
-    """The pressure counts where the lambda point is, not far below, where a saturated liquid has another."""
+    """The pressure counts at the lambda point itself: it rises with temperature, and rows far away do not count."""
     T = measured + np.array([-0.3, -0.2, -0.005, 0.0, 0.005, 0.3])
-    p = np.array([0.1, 0.2, 1.0, 1.0, 1.0, 1.3]) * kilopascal * 1e3
+    p = np.array([0.1, 0.2, 0.9, 1.0, 1.1, 1.3]) * kilopascal * 1e3
     found = lambda_line(LineParameters(), temperature=T, pressure=p, lambda_temperature=measured)
     assert float(found.outputs["pressure"]) == pytest.approx(kilopascal * 1e3)
     assert [finding.code for finding in found.findings] == codes
@@ -185,7 +185,7 @@ def test_lambda_line(kilopascal, measured, expected, codes):
 
 
 def test_lambda_line_needs_a_pressure_there():
-    with pytest.raises(ValueError, match="found no row with a pressure"):
+    with pytest.raises(ValueError, match="found 0 rows with a pressure"):
         lambda_line(
             LineParameters(),
             temperature=np.array([1.5]),
