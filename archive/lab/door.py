@@ -216,7 +216,8 @@ class Archive:
         """
         root = find_root(None if start is None else Path(start))
         settings = read_settings(root)
-        index = Index.open(settings.index_address(root))
+        # A copy on a read-only medium, or another person's archive, can be read all the same.
+        index = Index.open(settings.index_address(root), read_only=not os.access(root, os.W_OK))
         archive = cls(root, settings, open_store(root), index, clock)
         try:
             archive._put_in_order()

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator, Mapping
+from collections.abc import Callable, Collection, Iterator, Mapping
 from datetime import datetime
 from pathlib import Path
 from typing import Any
@@ -184,7 +184,8 @@ def rebuilt_index(
                     f"a sealed file is damaged: {damage[0].what}; the index stays as it was",
                     file=key,
                     field=damage[0].dataset,
-                    remedy="bring the file back from a copy, then rebuild the index again",
+                    remedy="bring the file back from a copy, or move away what does not belong there; then rebuild "
+                    "the index again",
                 )
             sealed = store.describe(key)
             yield key, sealed.sha256, sealed.size, document_of(key, store.document(key))
@@ -192,6 +193,7 @@ def rebuilt_index(
     def rebuilt(index: Index) -> dict[str, int]:
         with index:
             recorded.update(index.sealed_files())
+            _refuse_loss(recorded, keys)
             index.rebuild(entries())
             return index.statistics()
 
@@ -201,6 +203,7 @@ def rebuilt_index(
             old = Index.open(address)
             counts = rebuilt(old)
         except (DamagedFile, MissingFile) as error:
+            _refuse_loss(recorded, keys)
             # Every sealed file is read once before the old index is moved, so that a damaged one changes nothing.
             for _ in entries():
                 pass
@@ -210,3 +213,16 @@ def rebuilt_index(
     if progress is not None:
         progress(len(keys), len(keys), "")
     return counts
+
+
+def _refuse_loss(recorded: Collection[str], keys: Collection[str]) -> None:
+    """Refuse to forget a sealed file that the old index records and that is gone: the index is all that tells of it."""
+    lost = sorted(set(recorded) - set(keys))
+    if lost:
+        raise MissingFile(
+            "a sealed file that the index records is missing; the index stays as it was",
+            file=lost[0],
+            found=f"{len(lost)} missing",
+            remedy="bring it back from a copy; if it is lost for good, move the old index to where it is kept, then "
+            "rebuild the index again",
+        )

@@ -238,7 +238,10 @@ def archive_lock(root: Path, *, wait_s: float = 5.0) -> Iterator[None]:
         descriptor = os.open(path, os.O_RDWR | os.O_CREAT, 0o664)
     except OSError as error:
         raise ArchiveError(
-            "the archive cannot be locked for writing", file=str(path), found=error.strerror
+            "the archive cannot be locked for writing",
+            file=str(path),
+            found=error.strerror,
+            remedy="to write to it, the folder of the archive must be writable",
         ) from error
     deadline, owner = time.monotonic() + wait_s, os.getpid()
     try:

@@ -11,10 +11,11 @@ from typing import Any
 
 import pytest
 
-from archive.errors import ArchiveError, BadRequest, DamagedFile, InvalidSheet, UnknownAddress
+from archive.errors import ArchiveError, BadRequest, DamagedFile, InvalidSheet, MissingFile, UnknownAddress
 from archive.index import SearchQuery
 from archive.lab import Archive
 from archive.store.local import open_store
+from tests.small_cooldown import write_folder
 
 NO_SPACE = OSError(errno.ENOSPC, os.strerror(errno.ENOSPC))
 
@@ -191,3 +192,38 @@ def test_a_search_that_no_database_can_carry_out_is_refused(sqlite_lab: Archive,
     """Numbers beyond the database's and bytes that are no text."""
     with pytest.raises(BadRequest):
         sqlite_lab.search(query)
+
+
+@pytest.mark.parametrize("spoil", [None, _table_lost], ids=["index-whole", "index-spoilt"])
+def test_a_lost_sealed_file_is_never_forgotten(
+    sqlite_lab: Archive, folder: Path, spoil: Callable[[Path], None] | None
+) -> None:
+    """An index made anew from what is left would call an archive whole that has lost a file."""
+    sqlite_lab.ingest(folder)
+    sqlite_lab.close()
+    (sqlite_lab.root / "sealed" / "2026-03" / "2026-03.a1.h5").unlink()
+    index = sqlite_lab.root / "index.sqlite3"
+    if spoil is not None:
+        spoil(index)
+    with pytest.raises(MissingFile, match=r"2026-03/2026-03\.a1.*is missing"):
+        Archive.rebuild_index(sqlite_lab.root)
+    assert not list(sqlite_lab.root.glob("*set-aside*"))
+    index.rename(index.with_name("kept"))
+    Archive.rebuild_index(sqlite_lab.root)
+    with Archive.open(sqlite_lab.root) as again:
+        assert again.fixity() == []
+
+
+def test_an_archive_in_a_folder_that_may_only_be_read_answers(
+    sqlite_lab: Archive, folder: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """A copy on a read-only medium is searched and proved like any other; what writes is refused by the database too."""
+    sqlite_lab.ingest(folder)
+    sqlite_lab.close()
+    monkeypatch.setattr("os.access", lambda path, mode: mode != os.W_OK)
+    with Archive.open(sqlite_lab.root) as again:
+        assert [cooldown.name for cooldown in again.cooldowns()] == ["2026-03"]
+        assert again.fixity() == []
+        assert not (sqlite_lab.root / "index.sqlite3-shm").exists()
+        with pytest.raises(BadRequest, match="reading only"):
+            again.ingest(write_folder(folder.parent / "2026-04", name="2026-04"))
