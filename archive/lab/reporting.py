@@ -1,21 +1,20 @@
-"""Gathering what the two reports tell from store and index."""
+"""Gathering what the two reports tell from store and index.
+
+The reports are imported where they are made: they draw, and what draws takes longer to import than a search to answer.
+"""
 
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import Literal, cast
+from typing import TYPE_CHECKING, Literal, cast
 
 from archive.errors import BadRequest, UnknownAddress
 from archive.intake.checks import CHECKS
 from archive.lab.source import LabSource
-from archive.reports import (
-    CooldownView,
-    methods_appendix,
-    run_sheet_html,
-    run_sheet_json,
-    run_sheet_pdf,
-)
 from schemas.address import parse_address
+
+if TYPE_CHECKING:
+    from archive.reports import CooldownView
 
 __all__ = ["appendix", "run_sheet", "view"]
 
@@ -28,6 +27,8 @@ def view(source: LabSource, archive_name: str, cooldown: str) -> CooldownView:
     UnknownAddress
         If the archive holds no such cooldown.
     """
+    from archive.reports import CooldownView
+
     accessions = source.accessions(cooldown)
     if not accessions:
         known = ", ".join(source.cooldowns()) or "none yet"
@@ -45,6 +46,8 @@ def view(source: LabSource, archive_name: str, cooldown: str) -> CooldownView:
 
 def run_sheet(source: LabSource, archive_name: str, cooldown: str, *, paper: str) -> dict[str, bytes]:
     """Run sheet of a cooldown by file name."""
+    from archive.reports import run_sheet_html, run_sheet_json, run_sheet_pdf
+
     if paper not in ("a4", "us-letter"):
         raise BadRequest("a run sheet is made for a4 or us-letter", found=paper)
     seen = view(source, archive_name, cooldown)
@@ -60,6 +63,8 @@ def appendix(
     source: LabSource, archive_name: str, addresses: Sequence[str], *, title: str | None, level: str
 ) -> dict[str, bytes]:
     """Methods appendix behind cooldowns, sweeps, reductions or results."""
+    from archive.reports import methods_appendix
+
     if not addresses:
         raise BadRequest(
             "name what the appendix is about", expected="addresses of cooldowns, sweeps or reductions"
