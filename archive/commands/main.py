@@ -6,6 +6,7 @@ is imported inside the commands, so that `--help` answers at once.
 
 from __future__ import annotations
 
+import os
 import sys
 from pathlib import Path
 from typing import Final
@@ -95,6 +96,9 @@ for _command in _COMMANDS:
 
 def main() -> None:
     """Run the command line and leave the process with its exit code."""
+    # Streams that were closed before the start (>&-) are None; what is written to them is lost, as was asked for.
+    sys.stdout = sys.stdout or Path(os.devnull).open("w", encoding="utf-8")  # noqa: SIM115 - open to the end
+    sys.stderr = sys.stderr or Path(os.devnull).open("w", encoding="utf-8")  # noqa: SIM115 - as above
     for stream in (sys.stdout, sys.stderr):
         # A sign that the terminal's code page lacks is written as an escape, never as a traceback.
         if hasattr(stream, "reconfigure"):

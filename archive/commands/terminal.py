@@ -83,8 +83,11 @@ def table(columns: Sequence[str], rows: Iterable[Sequence[Cell]], *, right: Iter
 
     flush = set(right)
     shown = Table(box=box.SIMPLE_HEAD, pad_edge=False, padding=(0, 1), show_edge=False)
-    for name in columns:
-        shown.add_column(Text(name), justify="right" if name in flush else "left", overflow="fold")
+    for place, name in enumerate(columns):
+        # What stands first is an address or a name, which is copied, and so is never folded.
+        shown.add_column(
+            Text(name), justify="right" if name in flush else "left", overflow="fold", no_wrap=place == 0
+        )
     for row in rows:
         shown.add_row(*(Text(_in_one_cell(cell)) for cell in row))
     draw(shown)

@@ -65,6 +65,12 @@ def test_a_temperature_on_another_scale_is_converted_and_said(run: Run) -> None:
     assert "equal vapour pressure" in result.stdout
 
 
+def test_a_blank_is_no_quantity(run: Run) -> None:
+    result = run("convert", " ")
+    assert result.exit_code == 2
+    assert "expected a quantity such as" in result.stderr
+
+
 @pytest.mark.parametrize(
     ("text", "sentence"),
     [
@@ -72,6 +78,7 @@ def test_a_temperature_on_another_scale_is_converted_and_said(run: Run) -> None:
         pytest.param("400 K", "no property of 4He is tabulated", id="too-warm"),
         pytest.param("-1 K", "above 0", id="negative"),
         pytest.param("1.5", "without a unit", id="no-unit"),
+        pytest.param(" ", "expected a temperature", id="blank"),
         pytest.param("3 Torr", "expected a temperature", id="a-pressure"),
         pytest.param("1.0 K on T58", "outside the range", id="scale-ends"),
     ],

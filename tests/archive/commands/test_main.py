@@ -174,6 +174,20 @@ def test_a_code_page_without_the_sign_is_no_traceback(tmp_path: Path) -> None:
     assert "\\u03a9.csv" in ended.stdout
 
 
+def test_a_closed_stdout_is_no_fault() -> None:
+    ended = subprocess.run(
+        [
+            "/bin/sh",
+            "-c",
+            f"exec {sys.executable} -c 'from archive.commands.main import main; main()' plans >&-",
+        ],
+        stderr=subprocess.PIPE,
+        cwd=Path(__file__).parents[3],
+        check=False,
+    )
+    assert (ended.returncode, ended.stderr) == (0, b"")
+
+
 def test_click_shows_a_real_backspace_mark() -> None:
     # A raw docstring would hold a backslash and a b, and every example would be wrapped into one line.
     for command in stillroom.commands.values():

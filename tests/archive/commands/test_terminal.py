@@ -86,3 +86,19 @@ def test_several_texts_of_a_cell_stack_on_a_narrow_terminal(
     table(("address", "results"), [("2026-03/s017", ("T_KT = 0.7312(12) K", "ratio = 1.00(2)"))])
     body = [line for line in screen.getvalue().splitlines() if "T_KT" in line or "ratio" in line]
     assert len(body) == lines
+
+
+def test_what_stands_first_is_never_folded(monkeypatch: pytest.MonkeyPatch) -> None:
+    # An address is copied from the table into the next command.
+    import io
+    import sys
+
+    class Screen(io.StringIO):
+        def isatty(self) -> bool:
+            return True
+
+    screen = Screen()
+    monkeypatch.setattr(sys, "stdout", screen)
+    monkeypatch.setenv("COLUMNS", "30")
+    table(("sweep", "results"), [("2025-03/s006@film", "a result of many words, " * 5)])
+    assert "2025-03/s006@film " in screen.getvalue()
