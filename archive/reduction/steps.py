@@ -71,7 +71,7 @@ STEPS: tuple[Step, ...] = (
             "calibration": Port("any", "record", "calibration in force", optional=True),
         },
         yields={"temperature": Port("temperature", "array", "temperature")}, kinds=("reading",),
-        sentence="Readings became temperatures on {scale} by calibration {calibration} ({form}), from {low_K} K to {high_K} K; {outside} readings outside have none.",
+        sentence="{origin}; {outside} readings outside have none.",
         citations=("preston-thomas-1990", "rusby-2002"),
     ),
     Step(

@@ -63,7 +63,7 @@ def temperature_from_calibration(
             raise ValueError(
                 f"reading: found a {reading_kind} and no calibration, expected a calibration or a temperature"
             )
-        return Outcome({"temperature": reading}, facts={"calibration": "none, as recorded", "outside": 0})
+        return Outcome({"temperature": reading}, facts={"calibration": "none, as recorded", "outside": 0, "origin": "Temperatures were taken as recorded"})
     try:
         factor = unit_factor(calibration.reading_unit, reading_kind)
     except ValueError as error:
@@ -90,6 +90,8 @@ def temperature_from_calibration(
         facts={
             "calibration": calibration.address, "form": calibration.relation.form, "outside": outside, "scale": calibration.scale,
             "low_K": calibration.temperature_low.si, "high_K": calibration.temperature_high.si,
+            "origin": f"Readings became temperatures on {calibration.scale} by calibration {calibration.address} ({calibration.relation.form}),"
+            f" from {calibration.temperature_low.format()} to {calibration.temperature_high.format()}",
         },
         findings=findings,
     )  # fmt: skip

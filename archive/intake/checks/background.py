@@ -211,6 +211,8 @@ def _explained(reading: Reading, table: SweepTable, before: int, after: int) -> 
 def drop_sign(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]:
     """Find films whose period lies above that of the normal film: the drop has the wrong sign."""
     for table in _oscillator_sweeps(reading, empty=False):
+        if reading.substrate_of(table.sweep) is None:  # bulk liquid, not a film
+            continue
         empty = [
             curve
             for each in _empty_of(reading, table)
