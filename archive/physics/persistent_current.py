@@ -14,7 +14,7 @@ import numpy.typing as npt
 from scipy.stats import chi2 as chi2_distribution
 from scipy.stats import f as f_distribution
 
-from archive.physics.arrays import FloatArray, same_length, series
+from archive.physics.arrays import BoolArray, FloatArray, same_length, series
 from archive.physics.constants import MASS_HELIUM4, PLANCK
 from archive.physics.fitting import FitResult, Parameter, fit
 from archive.physics.linear_fit import linear_fit
@@ -147,8 +147,8 @@ def fit_decay(
     Notes
     -----
     A uniform current in a film below its transition decays by dissociation of vortex pairs, dv_s/dt ~ -v_s^(1 + pi K_R), so
-    that m = pi K_R: 2 at the transition, more below it. Readings that begin long after 1/(m r) fix only a combination of
-    initial value and rate; then nothing is found.
+    that m = pi K_R: 2 at the transition, more below it. The law keeps its form when
+    time is counted from another reading: initial value and rate are those of the first.
 
     References
     ----------
@@ -184,6 +184,11 @@ def fit_decay(
             fit=None,
             probability=probability,
             exponential_chi2=exponential,
+        )
+    if "exponent" in best.at_bound and best.value("exponent") < 1:
+        reason = "the current decays, and not more slowly than an exponential"
+        return Decay(
+            found=False, reason=reason, fit=None, probability=probability, exponential_chi2=exponential
         )
     if not best.converged or not np.isfinite(best.covariance).all() or "exponent" in best.at_bound:
         return Decay(
@@ -222,7 +227,7 @@ def branch_ratio(
 
     Notes
     -----
-    In each group both ways are fitted by one parabola and two levels, so that readings need not be at the same places.
+    In each group both ways are fitted by one parabola and its multiple, so that readings need not be at the same places.
     """
     x, y = series("abscissa", abscissa), series("values", values)
     same_length(abscissa=x, values=y)
@@ -246,22 +251,38 @@ def branch_ratio(
         back = later[group]
         if min(np.count_nonzero(back), np.count_nonzero(~back)) < LEAST_IN_GROUP:
             continue
-        away = x[group] - x[group].mean()
-        design = np.column_stack([np.ones(group.size), away, away**2, back])
-        found = linear_fit(
-            design, y[group], names=("level", "slope", "curve", "change"), standard_uncertainty=None if u is None else u[group], absolute=u is not None
-        )  # fmt: skip
-        level, change = found.value("level"), found.value("change")
-        if not found.converged or level == 0:
-            continue
-        gradient = np.array([-change / level**2, 0.0, 0.0, 1 / level])
-        ratios.append(1 + change / level)
-        variances.append(float(gradient @ found.covariance @ gradient))
+        one, spread = _group_ratio(x[group], y[group], back, None if u is None else u[group])
+        if math.isfinite(one):
+            ratios.append(one)
+            variances.append(spread**2)
     if not ratios:
         return None
     ratio, weight = np.array(ratios), 1 / np.array(variances)
     mean = float(np.sum(weight * ratio) / np.sum(weight))
     return Return(mean, float(1 / np.sqrt(np.sum(weight))), float(np.sum(weight * (ratio - mean) ** 2)), len(ratios) - 1, len(ratios))  # fmt: skip
+
+
+def _group_ratio(x: FloatArray, y: FloatArray, back: BoolArray, u: FloatArray | None) -> tuple[float, float]:
+    """Return the multiple by which the readings of the way back follow the parabola of the way there, and its uncertainty."""
+    away = x - x.mean()
+    design = np.column_stack([np.ones(x.size), away, away**2, back])
+    ratio, spread = 1.0, math.nan
+    # The way back, divided by the ratio found so far, is shifted by what is still missing; a few rounds leave nothing.
+    for _ in range(8):
+        scale = np.where(back, ratio, 1.0)
+        found = linear_fit(
+            design, y / scale, names=("level", "slope", "curve", "change"), standard_uncertainty=None if u is None else u / abs(scale), absolute=u is not None
+        )  # fmt: skip
+        level, change = found.value("level"), found.value("change")
+        if not found.converged or level == 0 or change == -level:
+            return math.nan, math.nan
+        gradient = np.array([-change / level**2, 0.0, 0.0, 1 / level])
+        # Readings without any scatter still have the rounding of their numbers.
+        spread = max(abs(ratio) * math.sqrt(max(float(gradient @ found.covariance @ gradient), 0.0)), 1e-15)
+        ratio *= 1 + change / level
+        if abs(change / level) < 1e-13:
+            break
+    return ratio, spread
 
 
 def _fitted(

@@ -132,3 +132,28 @@ def test_a_record_of_one_way_has_no_ratio(turn):
         T = np.linspace(1.3, 2.1, 300)
         T[296:] = 5.0
     assert branch_ratio(T, y, turn=turn) is None
+
+
+def test_a_decay_faster_than_an_exponential_is_no_power_law():
+    t = np.linspace(0, 4, 60)
+    found = fit_decay(t, 6e-10 * np.exp(-(t**2) / 4), standard_uncertainty=2e-12)
+    assert not found.found
+    assert "exponential" in found.reason
+
+
+def test_readings_without_scatter():
+    t = np.linspace(0, 7200, 60)
+    assert not fit_decay(t, np.full(60, 6e-10)).found
+    T = np.concatenate([np.linspace(1.3, 2.1, 100), np.linspace(2.1, 1.3, 100)])
+    found = branch_ratio(T, (3 - T) * np.where(np.arange(200) < 100, 1.0, 0.75), turn=100)
+    assert found.ratio == pytest.approx(0.75, rel=1e-9)
+    assert found.standard_uncertainty < 1e-9
+
+
+def test_groups_with_one_way_only_are_left_out():
+    """The way back is read densely below 1.5 K only: the rest says nothing."""
+    T = np.concatenate([np.linspace(1.3, 2.1, 200), [2.1], np.linspace(1.5, 1.3, 60)])
+    y = (3 - T) * np.where(np.arange(T.size) < 200, 1.0, 0.9)
+    found = branch_ratio(T, y, turn=200)
+    assert found.groups < 8
+    assert found.ratio == pytest.approx(0.9, rel=1e-9)
