@@ -17,7 +17,7 @@ from numpy.typing import NDArray
 
 from archive.errors import BadRequest
 from archive.intake.dialect import BadCell, Block, ColumnRequest
-from archive.intake.reading import ChannelFacts, Reading, SweepTable
+from archive.intake.reading import LISTED, ChannelFacts, Reading, SweepTable
 from archive.intake.sheet import read_sheet
 from archive.intake.sources import read_array_source
 from archive.intake.tables import TableReader
@@ -36,7 +36,6 @@ KEPT_ROWS = 1_000_000
 """Rows of one sweep kept in memory for the checks; beyond that every second, fourth, ... row is kept."""
 _CHUNK = 1 << 20
 _ARRAY_SUFFIXES = (".npy", ".npz", ".h5", ".hdf5")
-_LISTED = 100
 _SHOWN_CELLS = 1000
 _EVERYWHERE = 20
 """As many rows with one and the same fault are not listed one by one when hardly a row is without it."""
@@ -296,7 +295,7 @@ class _Gatherer:
         chosen = slice((-self.rows) % self.stride, None, self.stride)
         for name in self.channels:
             values = np.ascontiguousarray(block.columns[name], dtype=np.float64)
-            self._count(name, values, block)
+            self._count(name, values, block, file_number)
             self.digests[name].update(values.tobytes())
             self.kept[name].append(values[chosen] * self.factors[name])
         self.lines.append(block.lines[chosen])
@@ -314,7 +313,7 @@ class _Gatherer:
         self.file_numbers = [np.concatenate(self.file_numbers)[::2]]
         self.kept = {name: [np.concatenate(parts)[::2]] for name, parts in self.kept.items()}
 
-    def _count(self, name: str, values: NDArray[np.float64], block: Block) -> None:
+    def _count(self, name: str, values: NDArray[np.float64], block: Block, file_number: int) -> None:
         facts = self.facts[name]
         present = values[np.isfinite(values)]
         facts.missing += len(values) - len(present)
@@ -326,12 +325,8 @@ class _Gatherer:
             lines = block.lines[np.isfinite(values)]
             before = self._last_time.get(name, -math.inf)
             step = np.diff(np.concatenate(([before], present)))
-            facts.reversed_at.extend(
-                int(line) for line in lines[step < 0][: _LISTED - len(facts.reversed_at)]
-            )
-            facts.repeated_at.extend(
-                int(line) for line in lines[step == 0][: _LISTED - len(facts.repeated_at)]
-            )
+            for places, odd in ((facts.reversed_at, step < 0), (facts.repeated_at, step == 0)):
+                places.extend((file_number, int(line)) for line in lines[odd][: LISTED - len(places)])
             self._last_time[name] = float(present[-1])
 
     def finished(self, number: int, sweep: Sweep) -> SweepTable:

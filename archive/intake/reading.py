@@ -23,7 +23,10 @@ from schemas.substrate import Substrate
 from schemas.sweep import Channel, Detection, Sweep
 from schemas.thermometer import Calibration, Thermometer
 
-__all__ = ["ChannelFacts", "Reading", "SweepTable"]
+__all__ = ["LISTED", "ChannelFacts", "Reading", "SweepTable"]
+
+LISTED = 100
+"""Places of one fault in a sweep that are kept."""
 
 
 @dataclass
@@ -38,8 +41,8 @@ class ChannelFacts:
         Rows without a value (sentinels and kept NaN).
     sentinels : int
         Rows that hold a sentinel.
-    reversed_at, repeated_at : list of int
-        File lines at which a time runs backwards or repeats (the first hundred).
+    reversed_at, repeated_at : list of (int, int)
+        File of the sweep, from 0, and line in it at which a time runs backwards or repeats (the first hundred).
     digest : str
         SHA-256 of the stored array.
     """
@@ -48,8 +51,8 @@ class ChannelFacts:
     high: float = float("nan")
     missing: int = 0
     sentinels: int = 0
-    reversed_at: list[int] = field(default_factory=list)
-    repeated_at: list[int] = field(default_factory=list)
+    reversed_at: list[tuple[int, int]] = field(default_factory=list)
+    repeated_at: list[tuple[int, int]] = field(default_factory=list)
     digest: str = ""
 
 

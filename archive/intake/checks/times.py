@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 
 import numpy as np
 
 from archive.intake.checks.rows import counting, ring_time_s, tables
 from archive.intake.checks.telling import number, on_row
-from archive.intake.reading import Reading, SweepTable
+from archive.intake.reading import LISTED, Reading, SweepTable
 from archive.intake.thresholds import Thresholds
 from schemas.finding import Finding, Severity
 
@@ -24,9 +24,9 @@ def time_reversed(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]
                     table,
                     "time-reversed",
                     "error",
-                    f"time runs backwards at {len(facts.reversed_at)} place(s) of {table.name}",
+                    f"time runs backwards at {_places(facts.reversed_at)} of {table.name}",
                     name=name,
-                    line=facts.reversed_at[0],
+                    place=facts.reversed_at[0],
                     remedy="name the zone and the hour that is meant if a clock was set back, order the files, or leave the rows out of the copy",
                 )
 
@@ -40,18 +40,29 @@ def time_repeated(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]
                     table,
                     "time-repeated",
                     "warning",
-                    f"a time stamp repeats the one before at {len(facts.repeated_at)} place(s) of {table.name}",
+                    f"a time stamp repeats the one before at {_places(facts.repeated_at)} of {table.name}",
                     name=name,
-                    line=facts.repeated_at[0],
+                    place=facts.repeated_at[0],
                     remedy="look whether rows were written twice, or the clock is too coarse for the rate of reading",
                 )
 
 
+def _places(found: Sequence[tuple[int, int]]) -> str:
+    more = " or more" if len(found) >= LISTED else ""
+    return f"{len(found)}{more} place{'' if len(found) == 1 else 's'}"
+
+
 def _at_line(
-    table: SweepTable, code: str, severity: Severity, what: str, *, name: str, line: int, remedy: str
+    table: SweepTable,
+    code: str,
+    severity: Severity,
+    what: str,
+    *,
+    name: str,
+    place: tuple[int, int],
+    remedy: str,
 ) -> Finding:
-    where = np.flatnonzero(table.lines == line)
-    file = table.where(int(where[0]))[0] if len(where) else table.sweep.files[0]
+    file, line = table.sweep.files[place[0]], place[1]
     return Finding(
         code=code,
         severity=severity,

@@ -199,8 +199,8 @@ def facts_of(values: np.ndarray, quantity: str, factor: float, lines: np.ndarray
         facts.low, facts.high = float(present.min() / factor), float(present.max() / factor)
     if quantity == "instant":
         steps = np.diff(values)
-        facts.reversed_at = [int(line) for line in lines[1:][steps < 0]]
-        facts.repeated_at = [int(line) for line in lines[1:][steps == 0]]
+        facts.reversed_at = [(0, int(line)) for line in lines[1:][steps < 0]]
+        facts.repeated_at = [(0, int(line)) for line in lines[1:][steps == 0]]
     return facts
 
 

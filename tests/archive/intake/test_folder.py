@@ -11,7 +11,9 @@ import numpy as np
 import pytest
 
 from archive.intake import folder as folder_module
+from archive.intake.checks.times import time_reversed
 from archive.intake.folder import folder_files, read_cooldown
+from archive.intake.thresholds import Thresholds
 from archive.store import MemoryStore
 from tests.small_cooldown import write_folder
 
@@ -159,6 +161,17 @@ def test_a_line_without_end_is_not_told_as_a_change(tmp_path: Path) -> None:
     with (folder / "film.csv").open("a", encoding="utf-8") as stream:
         stream.write("1" * 3_000_000)
     assert {each.code for each in read_cooldown(folder).findings if each.file == "film.csv"} == {"bad-cell"}
+
+
+def test_time_that_runs_backwards_from_file_to_file_names_the_second(tmp_path: Path) -> None:
+    """The same line stands in both files; the fault lies in the one that was put second."""
+    folder = write_folder(tmp_path)
+    (folder / "earlier.csv").write_bytes((folder / "film.csv").read_bytes())
+    edited(folder, '["film.csv"]', '["film.csv", "earlier.csv"]')
+    reading = read_cooldown(folder)
+    (found,) = time_reversed(reading, Thresholds())
+    assert (found.file, found.line) == ("earlier.csv", 2)
+    assert "at 1 place of s002" in found.what
 
 
 def test_a_file_that_changes_while_it_is_read_is_refused(
