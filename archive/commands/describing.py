@@ -49,7 +49,9 @@ def _lines(content: Mapping[str, Any], indent: str) -> None:
     width = max((len(name) for name, value in shown.items() if _short(value)), default=0)
     for name, value in shown.items():
         if _short(value):
-            say(f"{indent}{_words(name):<{width}}  {_text(value)}")
+            # Further lines of a text stand below the first, so that none can pass for a field of its own.
+            further = "\n" + " " * (len(indent) + width + 2)
+            say(f"{indent}{_words(name):<{width}}  {_text(value).replace(chr(10), further)}")
     for name, value in shown.items():
         if _short(value):
             continue
@@ -109,7 +111,7 @@ def _text(value: Any) -> str:
 def _list(name: str, values: Sequence[Any], indent: str) -> None:
     if not all(isinstance(value, Mapping) for value in values):
         for value in values:
-            say(f"{indent}{_text(value)}")
+            say(f"{indent}{_text(value)}".replace("\n", f"\n{indent}  "))
         return
     rows = [_with_result(value) for value in values]
     columns = [

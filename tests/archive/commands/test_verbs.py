@@ -126,6 +126,23 @@ def test_show_writes_quantities_lists_and_text_without_controls(run: Run, fake: 
     assert machine["notes"] == content["notes"]
 
 
+def test_a_text_of_several_lines_passes_for_no_field(run: Run, fake: Fake) -> None:
+    fake(
+        show={
+            "address": "2026-03",
+            "what": "cooldown",
+            "purpose": "test\n  outcome  complete",
+            "cell": "TO-4",
+        }
+    )
+    assert run("show", "2026-03").stdout.splitlines() == [
+        "2026-03: cooldown",
+        "  purpose  test",
+        "             outcome  complete",
+        "  cell     TO-4",
+    ]
+
+
 def test_trace_is_a_tree_of_labels(run: Run, fake: Fake) -> None:
     leaf = TraceNode(
         "2026-03.a1:raw/a.csv", "raw-file", "2026-03.a1:raw/a.csv, lines 3 to 322", {"sha256": "ab"}
