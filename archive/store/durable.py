@@ -165,7 +165,8 @@ def write_whole(path: Path, content: bytes, *, replace: bool = False) -> None:
             remedy="free space, or correct the permissions of the folder; nothing was written",
         ) from error
     finally:
-        discard(staged)
+        with contextlib.suppress(OSError):  # where it could not be made, it cannot be removed either
+            discard(staged)
 
 
 def _link_or_rename(staged: Path, final: Path) -> None:

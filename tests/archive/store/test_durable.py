@@ -136,6 +136,21 @@ def test_a_second_writer_is_told_who_holds_the_lock(tmp_path: Path) -> None:
         pass
 
 
+def test_a_report_on_a_read_only_medium_is_refused_by_its_own_name(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Neither making nor removing the staging file is possible there, and neither is what the person asked about."""
+
+    def read_only(path: Path, *arguments: object) -> None:
+        raise OSError(errno.EROFS, os.strerror(errno.EROFS), str(path))
+
+    monkeypatch.setattr(Path, "open", read_only)
+    monkeypatch.setattr(os, "unlink", read_only)
+    with pytest.raises(BadRequest, match=r"report\.html: the file cannot be written: Read-only") as caught:
+        durable.write_whole(tmp_path / "report.html", b"x")
+    assert "partial" not in str(caught.value)
+
+
 def test_the_lock_holds_on_a_full_disk(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     """What the lock file says is for people only; that it cannot be written does not matter."""
 
