@@ -71,6 +71,13 @@ def _report(reading: Reading, findings: Sequence[Any], cautions: Sequence[dict[s
     return CheckReport(tuple(findings), tuple(cautions), summary, reading)
 
 
+def _require_folder(folder: Path) -> None:
+    if not folder.is_dir():
+        raise BadRequest(
+            "there is no such folder", file=str(folder), remedy="name the folder that holds cooldown.toml"
+        )
+
+
 def _earlier(source: LabSource, reading: Reading) -> History:
     cells = {cell.name for sweep in reading.sheet.sweep if (cell := reading.cell_of(sweep)) is not None}
     return history(source, reading.sheet.name, cells)
@@ -99,10 +106,7 @@ def check_folder(
     BadRequest
         If there is no such folder.
     """
-    if not folder.is_dir():
-        raise BadRequest(
-            "there is no such folder", file=str(folder), remedy="name the folder that holds cooldown.toml"
-        )
+    _require_folder(folder)
     archived = (lambda reference: None) if source is None else source.find_record
     reading = read_cooldown(folder, archived=archived, progress=progress)
     if reading.sheet_reading.sheet is None:
@@ -315,10 +319,7 @@ class Archive:
             If another process is writing.
         """
         folder = Path(folder)
-        if not folder.is_dir():
-            raise BadRequest(
-                "there is no such folder", file=str(folder), remedy="name the folder that holds cooldown.toml"
-            )
+        _require_folder(folder)
         thresholds = self.settings.thresholds
         with self._writing():
             outcome = intake_ingest.ingest(
