@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from pathlib import Path
+from shlex import quote
 
 import click
 
@@ -38,7 +39,9 @@ def init(*, folder: Path, name: str | None, index: str | None, as_json: bool) ->
             write_json({"root": str(lab.root), "name": lab.name})
             return
         say(f"There is now an empty archive, {lab.name}, in {lab.root}")
-        say(f"Next: stillroom --archive {lab.root} ingest FOLDER, or set STILLROOM_ARCHIVE to that folder.")
+        say(
+            f"Next: stillroom --archive {quote(str(lab.root))} ingest FOLDER, or set STILLROOM_ARCHIVE to that folder."
+        )
 
 
 @click.command(short_help="Prove that every sealed byte is as it was.")

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from pathlib import Path
+from shlex import quote
 
 import click
 
@@ -61,7 +62,7 @@ def draft(*, folder: Path, only_print: bool) -> None:
     for doubt in drafted.doubts:
         say(f"  look at {doubt}")
     say(
-        f'Fill in what is marked "to fill in", look at what is marked "guessed", then: stillroom check {folder}'
+        f'Fill in what is marked "to fill in", look at what is marked "guessed", then: stillroom check {quote(str(folder))}'
     )
 
 
@@ -105,7 +106,7 @@ def check(*, folder: Path, archive_dir: Path | None, as_json: bool, strict: bool
         if lab is None:
             note("note: no archive was found, so records and earlier runs of an archive were not looked at")
         if not report.errors:
-            say(f"Next: stillroom ingest {folder}")
+            say(f"Next: stillroom ingest {quote(str(folder))}")
     _leave(errors=report.errors, warnings=report.warnings, strict=strict)
 
 

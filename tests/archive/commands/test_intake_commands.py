@@ -136,6 +136,11 @@ def test_the_schema_is_json_schema_2020_12(run: Run) -> None:
     assert {error.validator for error in validator.iter_errors({"format": "x"})} >= {"const", "required"}
 
 
+def test_the_next_command_can_be_pasted_into_a_shell(run: Run, fake: Fake) -> None:
+    fake(check=CheckReport(()))
+    assert "Next: stillroom ingest 'run $(id) 7'" in run("check", "run $(id) 7").stdout
+
+
 def test_draft_writes_once_and_check_leads_on(tmp_path: Path) -> None:
     (tmp_path / "a.csv").write_text("T (K),P (us)\n0.5,1003.1\n0.6,1003.2\n", encoding="utf-8")
     first = child("draft", str(tmp_path))
