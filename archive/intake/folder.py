@@ -22,6 +22,7 @@ from archive.intake.sheet import read_sheet
 from archive.intake.sources import read_array_source
 from archive.intake.tables import TableReader
 from archive.store.interface import Column, TableWriter, Writer
+from archive.store.names import is_key
 from schemas.finding import Finding
 from schemas.kinds import KINDS
 from schemas.lineage import AnyRecord, RawFileEntry
@@ -78,6 +79,7 @@ def read_cooldown(
     reading.findings.extend(reading.sheet_reading.findings)
     if reading.sheet_reading.sheet is None:
         return reading
+    _check_name(reading)
     _take_records(reading, archived)
     _keep_raw(reading, SHEET_NAME, "sheet", sink, field=None, line=1)
     for number, sweep in enumerate(reading.sheet.sweep):
@@ -101,6 +103,23 @@ def folder_files(folder: Path) -> Iterator[str]:
         relative = path.relative_to(folder)
         if path.is_file() and not any(part.startswith(".") for part in relative.parts):
             yield relative.as_posix()
+
+
+def _check_name(reading: Reading) -> None:
+    name = reading.sheet.name
+    if not is_key(f"{name}/{name}.a1"):
+        reading.findings.append(
+            Finding(
+                code="sheet-field",
+                severity="error",
+                what="no folder can have this name on every system, so no cooldown can either",
+                file=SHEET_NAME,
+                line=reading.line("name"),
+                field="name",
+                found=name,
+                remedy="give the cooldown another name, e.g. 2026-03",
+            )
+        )
 
 
 def _take_records(reading: Reading, archived: Archived) -> None:

@@ -145,6 +145,13 @@ def test_each_fault_of_a_table_has_its_own_remedy(tmp_path: Path, old: str, new:
     assert remedies.pop().startswith(remedy)  # type: ignore[union-attr]
 
 
+def test_a_cooldown_is_not_named_as_a_device(tmp_path: Path) -> None:
+    """The check says what the ingest would stumble over."""
+    folder = write_folder(tmp_path, name="con")
+    (finding,) = read_cooldown(folder).findings
+    assert (finding.field, finding.found, finding.severity) == ("name", "con", "error")
+
+
 def test_times_without_a_zone_are_told_once(tmp_path: Path) -> None:
     """One fault in every row is one finding."""
     folder = write_folder(tmp_path)
