@@ -33,7 +33,7 @@ __all__ = [
 
 Branch = Literal["low", "high"]
 
-# MPa/K^i, i = -3 ... 9, Rusby et al. (2002). A widely copied transcription has a_3 = -3.5789858e1, which the fixed
+# MPa/K^i, i = -3 ... 9, Rusby et al. (2002). One widely spread copy has a_3 = -3.5789858e1, which the fixed
 # points do not show; the test table does.
 _A: Final = (
     -1.3855442e-12, 4.5557026e-9, -6.4430869e-6, 3.4467434, -4.4176438, 1.5417437e1, -3.5789853e1,

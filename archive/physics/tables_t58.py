@@ -2,7 +2,7 @@
 
 Micrometres of mercury at 0 degrees Celsius under standard gravity, from 0.50 K to 5.22 K on T58 in steps of 0.01 K.
 Values below 0.85 K are good only to their five digits. The rows at 2.88, 4.05 and 4.50 K are those of an independent
-copy: one open transcription has them wrong or lacks them.
+copy: one open digital table has them wrong or lacks them.
 
 References
 ----------
