@@ -87,7 +87,7 @@ def check(*, folder: Path, archive_dir: Path | None, as_json: bool, strict: bool
     lab = opening.archive_or_none(archive_dir)
     with Progress("reading the folder") as progress:
         if lab is None:
-            from archive.lab.door import check_folder
+            from archive.lab.checking import check_folder
 
             report = check_folder(folder, progress=progress.sentence)
         else:

@@ -15,8 +15,9 @@ from typing import Final, get_args
 
 from archive.errors import ArchiveError, BadRequest
 from archive.intake.draft_layouts import BLANK, GUESSED, layout_lines, layouts_of
-from archive.intake.folder import SHEET_NAME, folder_files
+from archive.intake.folder import SHEET_NAME
 from archive.intake.guess import TableGuess, guess_table
+from archive.intake.paths import folder_files
 from archive.intake.sources import is_array_source
 from schemas.cooldown import CooldownSheet
 from schemas.gas import GasEnd

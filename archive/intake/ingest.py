@@ -15,7 +15,8 @@ from datetime import datetime
 from pathlib import Path
 from typing import Any, Literal
 
-from archive.intake.folder import SHEET_NAME, Archived, Progress, path_inside, read_cooldown
+from archive.intake.folder import SHEET_NAME, Archived, Progress, read_cooldown
+from archive.intake.paths import path_inside
 from archive.intake.reading import Reading
 from archive.intake.sheet import SheetReading, read_sheet
 from archive.intake.summary import record_entries, sweep_entries

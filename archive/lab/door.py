@@ -6,10 +6,9 @@ lock; reading needs none, since sealed files never change.
 
 from __future__ import annotations
 
-import glob
 import os
 from collections.abc import Callable, Iterator, Mapping, Sequence
-from contextlib import contextmanager, suppress
+from contextlib import contextmanager
 from datetime import UTC, datetime
 from pathlib import Path
 from types import TracebackType
@@ -18,18 +17,15 @@ from typing import Any, Self
 import numpy as np
 from numpy.typing import NDArray
 
-from archive.errors import ArchiveBusy, ArchiveError, BadRequest, NotAnArchive, UnknownAddress
+from archive.errors import ArchiveBusy, ArchiveError, BadRequest, UnknownAddress
 from archive.index import AccessionRow, CooldownRow, Index, RecordRow, ResultRow, SearchQuery, SweepRow
 from archive.intake import ingest as intake_ingest
-from archive.intake.checks.check import History
 from archive.intake.examine import examined
-from archive.intake.folder import read_cooldown
-from archive.intake.reading import Reading
 from archive.intake.settings import SETTINGS_NAME, Settings, read_settings, settings_text
-from archive.intake.thresholds import Thresholds
 from archive.lab import reducing, reporting, showing
-from archive.lab.earlier import history
+from archive.lab.checking import check_folder, earlier_runs, folder_report, require_folder
 from archive.lab.outcomes import CheckReport, IngestOutcome, ReduceOutcome, ReplayReport
+from archive.lab.place import find_root, made, unmade
 from archive.lab.source import LabSource
 from archive.reduction.software import software
 from archive.reduction.trace import TraceNode, trace
@@ -41,9 +37,7 @@ from schemas.address import parse_address
 from schemas.lineage import ReductionDocument
 from schemas.plan import Plan
 
-__all__ = ["Archive", "check_folder"]
-
-_PARTS = ("sealed", "staging")
+__all__ = ["Archive"]
 
 Progress = Callable[[str], None]
 Clock = Callable[[], datetime]
@@ -55,68 +49,6 @@ def _quiet(sentence: str) -> None:
 
 def _now() -> datetime:
     return datetime.now(UTC).replace(microsecond=0)
-
-
-def _report(reading: Reading, findings: Sequence[Any], cautions: Sequence[dict[str, Any]]) -> CheckReport:
-    summary: dict[str, int | str] = {
-        "folder": str(reading.folder),
-        "sweeps": len(reading.tables),
-        "files": len(reading.raw_files),
-        "bytes": sum(entry.size for entry in reading.raw_files.values()),
-        "rows": sum(table.rows for table in reading.tables.values()),
-        "doses": len(reading.ledger),
-    }
-    if reading.sheet_reading.sheet is not None:
-        summary["cooldown"] = reading.sheet.name
-    return CheckReport(tuple(findings), tuple(cautions), summary, reading)
-
-
-def _require_folder(folder: Path) -> None:
-    if not folder.is_dir():
-        raise BadRequest(
-            "there is no such folder", file=str(folder), remedy="name the folder that holds cooldown.toml"
-        )
-
-
-def _earlier(source: LabSource, reading: Reading) -> History:
-    cells = {cell.name for sweep in reading.sheet.sweep if (cell := reading.cell_of(sweep)) is not None}
-    return history(source, reading.sheet.name, cells)
-
-
-def check_folder(
-    folder: Path,
-    *,
-    thresholds: Thresholds | None = None,
-    source: LabSource | None = None,
-    progress: Progress = _quiet,
-) -> CheckReport:
-    """Everything that can be said of a cooldown folder; nothing is stored.
-
-    Parameters
-    ----------
-    folder : Path
-        Folder with `cooldown.toml`.
-    thresholds : Thresholds, optional
-        Limits of the checks; the shipped ones if left out.
-    source : LabSource, optional
-        Archive that may hold records the sheet refers to, and earlier runs of the same cell.
-
-    Raises
-    ------
-    BadRequest
-        If there is no such folder.
-    """
-    _require_folder(folder)
-    archived = (lambda reference: None) if source is None else source.find_record
-    reading = read_cooldown(folder, archived=archived, progress=progress)
-    if reading.sheet_reading.sheet is None:
-        return _report(reading, sorted(reading.findings, key=lambda finding: finding.order), ())
-    if source is not None:
-        reading.findings.extend(intake_ingest.records_differ(reading, archived))
-    progress("checking")
-    earlier = None if source is None else _earlier(source, reading)
-    findings, cautions = examined(reading, thresholds or Thresholds(), earlier=earlier)
-    return _report(reading, findings, cautions)
 
 
 class Archive:
@@ -198,9 +130,9 @@ class Archive:
             if (root / SETTINGS_NAME).exists():
                 raise BadRequest("another process has just made an archive here", file=str(root))
             try:
-                _made(root, settings, settings_text(settings.name, index))
+                made(root, settings, settings_text(settings.name, index))
             except BaseException:
-                _unmade(root, settings)
+                unmade(root, settings)
                 raise
         return cls.open(root, clock=clock)
 
@@ -319,7 +251,7 @@ class Archive:
             If another process is writing.
         """
         folder = Path(folder)
-        _require_folder(folder)
+        require_folder(folder)
         thresholds = self.settings.thresholds
         with self._writing():
             outcome = intake_ingest.ingest(
@@ -328,7 +260,7 @@ class Archive:
                 earlier=self._source.accessions,
                 archived=self._source.find_record,
                 examine=lambda reading: intake_ingest.Examination(
-                    *examined(reading, thresholds, earlier=_earlier(self._source, reading))
+                    *examined(reading, thresholds, earlier=earlier_runs(self._source, reading))
                 ),
                 clock=self._clock,
                 software=software(),
@@ -341,7 +273,7 @@ class Archive:
         report = (
             CheckReport(outcome.findings, outcome.cautions)
             if reading is None
-            else _report(reading, outcome.findings, outcome.cautions)
+            else folder_report(reading, outcome.findings, outcome.cautions)
         )
         return IngestOutcome(outcome.state, outcome.address, report, outcome.differences)
 
@@ -517,55 +449,6 @@ class Archive:
         root = find_root(None if start is None else Path(start))
         settings = read_settings(root)
         return reducing.rebuilt_index(root, settings.index_address(root), open_store(root), progress=progress)
-
-
-def _made(root: Path, settings: Settings, text: str) -> None:
-    """Make what an archive consists of; its settings last, since they are what it is known by."""
-    for part in _PARTS:
-        (root / part).mkdir()
-    Index.create(settings.index_address(root)).close()
-    write_whole(root / SETTINGS_NAME, text.encode())
-
-
-def _unmade(root: Path, settings: Settings) -> None:
-    """Take away what `_made` left, in a folder that was empty before; only what lies in that folder."""
-    with suppress(OSError):
-        for part in _PARTS:
-            if (root / part).is_dir():
-                (root / part).rmdir()
-        index = Path(settings.index_address(root).removeprefix("sqlite:///"))
-        for path in root.glob(f"{glob.escape(index.name)}*") if index.parent == root else ():
-            path.unlink()
-
-
-def find_root(start: Path | None) -> Path:
-    """Folder of the archive: the one named, else that of `STILLROOM_ARCHIVE`, else this folder or a parent.
-
-    Raises
-    ------
-    NotAnArchive
-        If there is none.
-    """
-    if start is None:
-        named = os.environ.get("STILLROOM_ARCHIVE")
-        start = Path(named) if named else None
-    if start is not None:
-        if not (start / SETTINGS_NAME).is_file():
-            raise NotAnArchive(
-                "there is no archive in this folder",
-                file=str(start),
-                remedy="make one with: stillroom init DIR",
-            )
-        return start.resolve()
-    here = Path.cwd()
-    for folder in (here, *here.parents):
-        if (folder / SETTINGS_NAME).is_file():
-            return folder.resolve()
-    raise NotAnArchive(
-        "there is no archive in this folder or above it",
-        file=str(here),
-        remedy="name it with --archive DIR or STILLROOM_ARCHIVE, or make one with: stillroom init DIR",
-    )
 
 
 def _by_age(store: LocalStore) -> Callable[[str], tuple[bool, float, str]]:

@@ -11,7 +11,7 @@ from pydantic import BaseModel
 
 from archive.intake.checks.rows import bound, stated_uncertainty, tables
 from archive.intake.checks.telling import listed, on_sheet, on_sweep
-from archive.intake.folder import folder_files
+from archive.intake.paths import folder_files
 from archive.intake.reading import Reading, SweepTable
 from archive.intake.thresholds import Thresholds
 from schemas.cooldown import EFFECTS

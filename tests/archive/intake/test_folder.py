@@ -11,8 +11,10 @@ import numpy as np
 import pytest
 
 from archive.intake import folder as folder_module
+from archive.intake import gather
 from archive.intake.checks.times import time_reversed
-from archive.intake.folder import folder_files, read_cooldown
+from archive.intake.folder import read_cooldown
+from archive.intake.paths import folder_files
 from archive.intake.thresholds import Thresholds
 from archive.store import MemoryStore
 from tests.small_cooldown import write_folder
@@ -46,7 +48,7 @@ def test_long_sweeps_are_thinned_in_memory_and_whole_in_the_sealed_file(
     tmp_path: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
     whole = read_cooldown(write_folder(tmp_path))
-    monkeypatch.setattr(folder_module, "KEPT_ROWS", 16)
+    monkeypatch.setattr(gather, "KEPT_ROWS", 16)
     store = MemoryStore()
     with store.writer("2026-03/2026-03.a1") as writer:
         thinned = read_cooldown(tmp_path, sink=writer)

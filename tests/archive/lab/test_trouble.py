@@ -35,7 +35,7 @@ def test_an_archive_that_cannot_be_made_leaves_its_folder_for_a_second_try(
 ) -> None:
     """A disk that is full while an archive is made does not spoil the folder."""
     with monkeypatch.context() as patch:
-        patch.setattr(f"archive.lab.door.{collaborator}", raiser(ArchiveError("full")))
+        patch.setattr(f"archive.lab.place.{collaborator}", raiser(ArchiveError("full")))
         with pytest.raises(ArchiveError, match="full"):
             Archive.create(tmp_path / "lab")
     assert {path.name for path in (tmp_path / "lab").iterdir()} == {"archive.lock"}
