@@ -47,12 +47,14 @@ def _rows(*parts: str) -> list[dict[str, str]]:
 
 @pytest.mark.parametrize(
     "row",
-    _rows("units", "unit_conversions_check.csv"),
+    [
+        row
+        for row in _rows("units", "unit_conversions_check.csv")
+        if row["from_unit"] not in NOT_HERE and row["to_unit"] not in NOT_HERE
+    ],
     ids=lambda row: f"{row['from_value']} {row['from_unit']} in {row['to_unit']}",
 )
 def test_conversions_agree_with_the_published_table(row: dict[str, str], run: Run) -> None:
-    if row["from_unit"] in NOT_HERE or row["to_unit"] in NOT_HERE:
-        pytest.skip(NOT_HERE.get(row["from_unit"], NOT_HERE.get(row["to_unit"], "")))
     unit = AS_TYPED.get(row["from_unit"], row["from_unit"])
     result = run(
         "convert", row["from_value"], unit, "--to", AS_TYPED.get(row["to_unit"], row["to_unit"]), "--json"
