@@ -70,6 +70,7 @@ def background_fit(
     *,
     temperature: FloatArray,
     values: FloatArray,
+    values_kind: str,
     u_values: FloatArray | None,
 ) -> Outcome:
     """Return the polynomial of an empty-cell record: Chebyshev coefficients and the range they hold for.
@@ -80,6 +81,8 @@ def background_fit(
         K.
     values : ndarray
         Period or dissipation of the empty cell.
+    values_kind : str
+        Quantity kind of `values`, for the words.
     u_values : ndarray or None
         Point uncertainty; rows count alike if not all is stated, and the covariance comes from the scatter.
 
@@ -100,7 +103,7 @@ def background_fit(
     )  # fmt: skip
     covariance = np.asarray(found.fit.covariance)
     chi2 = found.fit.chi2 / found.fit.dof if u is not None and found.fit.dof else math.nan
-    if chi2 < 1:
+    if 0 < chi2 < 1:
         # Stated uncertainties larger than the scatter stand.
         covariance = covariance / chi2
     coefficients = np.asarray(found.fit.values)
@@ -125,6 +128,7 @@ def background_fit(
         facts={
             "order": found.order, "rms": rms, "points": int(np.count_nonzero(rows)), "runs_probability": found.runs_probability,
             "reduced_chi2": chi2, "low_K": found.low, "high_K": found.high, "message": found.message,
+            "kind": values_kind, "rms_words": f"{rms * 1e12:.3g} ps" if values_kind == "period" else f"{rms:.3g}",
         },
         findings=findings,
     )  # fmt: skip
@@ -204,7 +208,7 @@ def period_drop(
     Raises
     ------
     ValueError
-        Fewer than five rows in the window.
+        Fewer than five rows in the window, or rows named that the sweep does not have.
 
     Notes
     -----
@@ -219,7 +223,7 @@ def period_drop(
         raise ValueError(
             f"temperature: found {np.count_nonzero(rows)} rows inside the background's range, expected at least {LEAST_IN_WINDOW}"
         )
-    window, ends = _window(parameters, temperature, raw, rows, peak)
+    window, where = _window(parameters, temperature, raw, rows, peak)
     shift, u_shift, count = 0.0, 0.0, 0
     if window is not None:
         count = int(np.count_nonzero(window))
@@ -251,7 +255,7 @@ def period_drop(
         sources=(source,) if u_shift else (),
         held={"rows": tuple(int(row) + 1 for row in np.flatnonzero(window))} if window is not None else {},
         facts={
-            "alignment": parameters.align, "window_low_K": ends[0], "window_high_K": ends[1], "rows_in_window": count,
+            "alignment": parameters.align, "aligned": _aligned(temperature, window, where), "rows_in_window": count,
             "shift_s": shift, "shift_uncertainty_s": u_shift,
         },
         findings=tuple(findings),
@@ -261,21 +265,39 @@ def period_drop(
 _Rows = npt.NDArray[np.bool_]
 
 
+def _aligned(T: FloatArray, window: _Rows | None, where: str) -> str:
+    """Return how the run was aligned, in words, with the temperatures that the rows really have."""
+    if window is None:
+        return "nothing was aligned"
+    count = int(np.count_nonzero(window))
+    ends = f"{float(np.min(T[window])):.4g} K to {float(np.max(T[window])):.4g} K"
+    return f"the shift makes the mean drop zero {where} ({count} rows from {ends})"
+
+
 def _window(
     parameters: AlignmentParameters, T: FloatArray, raw: FloatArray, rows: _Rows, peak: float | None
-) -> tuple[_Rows | None, tuple[float | None, float | None]]:
+) -> tuple[_Rows | None, str]:
     if parameters.align == "none":
-        return None, (None, None)
+        return None, ""
     if parameters.rows is not None:
         chosen = np.zeros(T.shape, dtype=np.bool_)
-        chosen[np.array(parameters.rows, dtype=np.int64) - 1] = True
-        return chosen & rows, (float(np.nanmin(T[chosen])), float(np.nanmax(T[chosen])))
+        numbers = np.array(parameters.rows, dtype=np.int64)
+        if numbers.size and not (numbers.min() >= 1 and numbers.max() <= T.size):
+            raise ValueError(f"rows: found {numbers.min()} to {numbers.max()}, expected 1 to {T.size}")
+        chosen[numbers - 1] = True
+        chosen &= rows
+        if np.count_nonzero(chosen) < LEAST_IN_WINDOW:
+            raise ValueError(
+                f"rows: found {np.count_nonzero(chosen)} with a value, expected at least {LEAST_IN_WINDOW}"
+            )
+        return chosen, "over the rows named in the plan"
     if parameters.align == "coldest":
         low = float(np.min(T[rows]))
         high = float(np.quantile(T[rows], parameters.coldest_share))
     else:
         about = peak if peak is not None else steepest_fall(T[rows], raw[rows])
         low, high = parameters.low * about, parameters.high * about
+    where = "at the coldest rows" if parameters.align == "coldest" else "above the transition"
     low = low if parameters.window_low_kelvin is None else parameters.window_low_kelvin
     high = high if parameters.window_high_kelvin is None else parameters.window_high_kelvin
     window = rows & (np.nan_to_num(T, nan=-1.0) >= low) & (np.nan_to_num(T, nan=-1.0) <= high)
@@ -285,7 +307,7 @@ def _window(
             f"temperature: found {count} rows between {low:.5g} K and {high:.5g} K, where the film is taken to be normal, "
             f"expected at least {LEAST_IN_WINDOW}; set window_low_kelvin and window_high_kelvin, or another alignment"
         )
-    return window, (low, high)
+    return window, where
 
 
 def steepest_fall(T: FloatArray, drop: FloatArray) -> float:

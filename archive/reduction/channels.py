@@ -19,7 +19,7 @@ from schemas.lineage import SourceEntry
 from schemas.quantity import Quantity, unit_factor
 from schemas.sweep import Channel
 
-__all__ = ["CONVERTED", "channel_estimate", "channel_meant", "rms_value"]
+__all__ = ["CONVERTED", "channel_estimate", "channel_meant", "rms_factor", "rms_value"]
 
 CONVERTED = {"period": "frequency", "dissipation": "quality_factor"}
 """A kind that a plan asks for, and the kind whose inverse serves as well."""
@@ -122,7 +122,7 @@ def channel_estimate(
         raise BadRequest(
             f"channel {place}: {error}", field=f"channels.{name}.unit", remedy="correct the unit"
         ) from None
-    factor *= _rms_factor(facts, channel)
+    factor *= rms_factor(facts, channel)
     value = raw * factor
     part = _uncertainty(channel, value, factor, place)
     if channel.uncertainty_is == "point" or not np.any(part > 0):
@@ -134,7 +134,8 @@ def channel_estimate(
     return Estimate(value, channel.quantity, shared={entry.name: part}, scale=channel.scale), (entry,)
 
 
-def _rms_factor(facts: SweepFacts, channel: Channel) -> float:
+def rms_factor(facts: SweepFacts, channel: Channel) -> float:
+    """Return the factor that takes a channel's readings to rms values; 1 for a channel that does not oscillate."""
     if channel.quantity not in _OSCILLATING:
         return 1.0
     detection = facts.accession.sheet.detection_of(facts.sweep)

@@ -91,7 +91,7 @@ def superfluid_density(
         period_drop, period_per_areal_density=per_areal_density, drag_factor=chi
     )
     facts = {
-        "period_per_areal_density": per_areal_density * 1e9,
+        "period_per_areal_density": per_areal_density,
         "chi": chi,
         "chi_from": "the slopes of the dose run" if slope_past is not None else "the plan",
     }
@@ -104,9 +104,15 @@ def universal_crossing(
     temperature: FloatArray,
     superfluid_density: FloatArray,
     u_superfluid_density: FloatArray | None,
-    u_temperature: FloatArray | None,
 ) -> Outcome:
     """Return where the areal density, as the oscillator reports it, falls through the universal line.
+
+    Parameters
+    ----------
+    temperature, superfluid_density : ndarray
+        K, kg/m^2.
+    u_superfluid_density : ndarray or None
+        Point uncertainty. What the temperature's own makes through the slope is in it already, from the period drop.
 
     Raises
     ------
@@ -117,12 +123,6 @@ def universal_crossing(
     T, sigma = temperature[rows], superfluid_density[rows]
     u = weights(u_superfluid_density, rows)
     points = parameters.points or _points(T, sigma, u, parameters)
-    if u is not None and u_temperature is not None:
-        rough = crossing_of_universal_line(
-            T, sigma, standard_uncertainty=u, points=points, order=parameters.order
-        )
-        if rough.found:
-            u = np.hypot(u, rough.slope * u_temperature[rows])
     found = crossing_of_universal_line(
         T, sigma, standard_uncertainty=u, points=points, order=parameters.order
     )

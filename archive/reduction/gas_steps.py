@@ -85,8 +85,15 @@ def amount_from_doses(
     if last is not None and last not in {each.dose.name for each in doses}:
         raise ValueError(f"gas: the sweep follows dose {last}, and the sheet has no such dose")
     taken = [] if last is None else _up_to(counted, doses, last)
-    facts |= {"doses": len(taken), "last": last or "none"}
+    facts |= {"doses": len(taken), "count": _doses_text(taken), "last": last or "none"}
     return _total(taken, entries, gas.cooldown, last, facts)
+
+
+def _doses_text(doses: list[DoseAmount]) -> str:
+    added = sum(each.dose.act == "add" for each in doses)
+    removed = len(doses) - added
+    less = f", less {removed} removal{'s' * (removed != 1)}," if removed else ""
+    return f"{added} dose{'s' * (added != 1)}{less}"
 
 
 def _up_to(counted: list[DoseAmount], doses: list[DoseAmount], last: str) -> list[DoseAmount]:
@@ -134,7 +141,13 @@ def _running(
         for name, part in each.amount.shared.items():
             shared[name] = shared.get(name, np.zeros(time.shape)) + admitted[:, k] * float(part)
     amount = np.where(np.isnan(time), np.nan, amount)
-    facts |= {"doses": len(counted), "last": counted[-1].dose.name if counted else "none"}
+    # Doses after the last row are no part of any amount here.
+    within = [each for k, each in enumerate(counted) if admitted[:, k].any()]
+    facts |= {
+        "doses": len(within),
+        "count": _doses_text(within),
+        "last": within[-1].dose.name if within else "none",
+    }
     return Outcome(
         {"amount": amount},
         shared={"amount": shared},
@@ -216,9 +229,9 @@ def vapour_in_dead_volume(
         sources.append(entry)
         total = total / 2
     facts["treatment"] = (
-        "subtracted at the measured pressure"
+        "taken at the measured pressure and subtracted"
         if pressure is not None
-        else "bounded by saturation and subtracted by half"
+        else "taken as half of what saturation allows and subtracted"
     )
     return Outcome({"vapour": total}, shared={"vapour": shared}, sources=tuple(sources), facts=facts)
 
@@ -266,8 +279,10 @@ def coverage_from_amount(
     ValueError
         No area, or an area that is not positive.
     """
+    over = "the stated area"
     if area is None and specific_area is not None and mass is not None:
         area = specific_area * mass
+        over = "the specific area times the mass,"
     if area is None:
         raise ValueError("area: found none, expected the substrate's area, or its specific area and mass")
     if not area > 0:
@@ -276,7 +291,9 @@ def coverage_from_amount(
     share = 0.0
     if vapour is not None and np.isfinite(vapour).any():
         share = float(np.nanmax(np.asarray(vapour) / np.where(np.asarray(amount) > 0, amount, np.nan)))
-    return Outcome({"coverage": film / area}, facts={"largest_vapour_share": share})
+    what = "the amount" if vapour is None else "the amount that is not vapour"
+    facts = {"largest_vapour_share": share, "what": what, "over": f"{over} {area:.5g} m^2"}
+    return Outcome({"coverage": film / area}, facts=facts)
 
 
 def layers_from_coverage(

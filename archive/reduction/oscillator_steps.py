@@ -27,6 +27,10 @@ __all__ = [
 ]
 
 
+STEADY_DRIVE = 0.01
+"""Largest change of a recorded drive, as a share of its median, that still is a constant drive (common practice, no source)."""
+
+
 class RingdownParameters(Record):
     """What falls, and on what it stands."""
 
@@ -82,15 +86,20 @@ def dissipation_from_amplitude(
     Raises
     ------
     ValueError
-        Constant amplitude without a recorded drive, or values that are not positive.
+        Constant amplitude without a recorded drive, a drive that changed without one at the reference point, or values that
+        are not positive.
     """
     if drive is None or reference_drive is None:
         if detection.drive_mode == "constant-amplitude":
             raise ValueError(
                 "drive: at constant amplitude the drive carries the dissipation, and it is not recorded with its reference"
             )
+        if drive is not None and _spread(drive) > STEADY_DRIVE:
+            raise ValueError(
+                f"reference_drive: none is recorded, and the drive changed by {_spread(drive):.1%} during the sweep, which would be taken for dissipation; state the drive at the reference point"
+            )
         drive, reference_drive = 1.0, 1.0
-        treatment = "constant"
+        treatment = "taken as that of the reference point"
     else:
         treatment = "recorded"
     signal = np.where(amplitude > 0, amplitude, np.nan)
@@ -110,6 +119,11 @@ def dissipation_from_amplitude(
         "drive_mode": detection.drive_mode,
     }
     return Outcome({"dissipation": found}, facts=facts)
+
+
+def _spread(drive: float | FloatArray) -> float:
+    known = np.asarray(drive)[np.isfinite(drive)]
+    return float(np.ptp(known) / abs(np.median(known))) if known.size and np.median(known) else 0.0
 
 
 def ringdown_quality_factor(

@@ -13,7 +13,7 @@ import numpy as np
 import numpy.typing as npt
 
 from archive.errors import BadRequest
-from archive.reduction.channels import channel_estimate
+from archive.reduction.channels import channel_estimate, rms_factor
 from archive.reduction.estimate import Estimate
 from archive.reduction.facts import SweepFacts
 from archive.reduction.sheet_values import quantity_estimate
@@ -149,7 +149,8 @@ def _gauge_zero(facts: SweepFacts, channel: Channel) -> list[Preliminary]:
             level="run",
             address=f"{facts.cooldown} gauge {gauge.name}",
         )
-        estimate = Estimate(np.asarray(1.0), "number", shared={name: np.asarray(gauge.relative_uncertainty)})
+        # The doses multiply by the gain of this name and a correction divides by it: a gauge that reads low makes both larger.
+        estimate = Estimate(np.asarray(1.0), "number", shared={name: np.asarray(-gauge.relative_uncertainty)})
         parameters = CorrectionParameters(
             correct="gain", stated="1", known=f"gauge {gauge.name}, relative uncertainty in the sheet"
         )
@@ -180,9 +181,19 @@ def _correction(facts: SweepFacts, channel: Channel, correction: Correction, *, 
     # Equal words in one cooldown are one statement: the same zero of the same channel in many sweeps is one source.
     name = f"{correction.correct} of {correction.channel} in {facts.cooldown}, {stated.format()}"
     estimate, sources = quantity_estimate(stated, name=name, level="run", address=facts.address)
+    if kind == channel.quantity and stated.convention is None:
+        # A zero is read on the channel's own scale, which may be that of peak values.
+        estimate = _times(estimate, rms_factor(facts, channel))
     parameters = CorrectionParameters(
         correct=correction.correct, stated=correction.value, known=f"{correction.known}: {correction.source}"
     )
     return Preliminary(
         "apply-correction", parameters, suffix, estimate, sources, f"{facts.address}#{correction.channel}"
+    )
+
+
+def _times(estimate: Estimate, factor: float) -> Estimate:
+    shared = {name: part * factor for name, part in estimate.shared.items()}
+    return Estimate(
+        estimate.value * factor, estimate.quantity, estimate.points * factor, shared, estimate.scale
     )

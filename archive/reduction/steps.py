@@ -71,7 +71,7 @@ STEPS: tuple[Step, ...] = (
             "calibration": Port("any", "record", "calibration in force", optional=True),
         },
         yields={"temperature": Port("temperature", "array", "temperature")}, kinds=("reading",),
-        sentence="{origin}; {outside} readings outside have none.",
+        sentence="{origin}{outside_words}.",
         citations=("preston-thomas-1990", "rusby-2002"),
     ),
     Step(
@@ -84,13 +84,13 @@ STEPS: tuple[Step, ...] = (
         name="amount-from-doses", version=1, function=gas_steps.amount_from_doses,
         takes={"gas": _GAS, "sample": _SAMPLE, "time": Port("time", "array", "instant of each row", optional=True)},
         yields={"amount": Port("amount", "number", "gas in the cell's system")},
-        sentence="{doses} doses gave a total of {amount}, by {method}.", spread="refit", citations=("cencek-2012",),
+        sentence="{count} gave a total of {amount}, by {method}.", spread="refit", citations=("cencek-2012",),
     ),
     Step(
         name="vapour-in-dead-volume", version=1, function=gas_steps.vapour_in_dead_volume, parameters=gas_steps.VapourParameters,
         takes={"gas": _GAS, "temperature": _TEMPERATURE, "pressure": Port("pressure", "array", "measured pressure", optional=True), "sample": _SAMPLE},
         yields={"vapour": Port("amount", "array", "gas that is not in the film")},
-        sentence="Vapour in {volume_cm3} cm^3 of dead volume takes {vapour} and was {treatment}.",
+        sentence="The vapour in {volume_cm3} cm^3 of dead volume, {vapour}, was {treatment}.",
         effects={"vapour in dead volume": "The gas in the dead volumes was {treatment}."}, citations=("cencek-2012", "donnelly-1998"),
     ),
     Step(
@@ -101,7 +101,7 @@ STEPS: tuple[Step, ...] = (
             "mass": Port("mass", "scalar", "mass of substrate", optional=True),
         },
         yields={"coverage": Port("coverage", "number", "amount in the film over area")},
-        sentence="Coverage, {coverage}, is amount over an area of {area}.",
+        sentence="The coverage, {coverage}, is {what} over {over}.",
     ),
     Step(
         name="layers-from-coverage", version=1, function=gas_steps.layers_from_coverage,
@@ -139,8 +139,8 @@ STEPS: tuple[Step, ...] = (
             "low": Port("temperature", "scalar", "lowest temperature of the background"), "high": Port("temperature", "scalar", "highest temperature of the background"),
             "value_at_low": Port("same:values", "scalar", "background at its lowest temperature"),
         },
-        sentence="The empty cell was measured between {low_K} K and {high_K} K and fitted by a polynomial of order {order} ({points} points, rms {rms} in SI units).",
-        spread="refit", weights=("values",),
+        sentence="The {kind} of the empty cell was measured between {low_K} K and {high_K} K and fitted by a polynomial of order {order} ({points} points, rms of the residuals {rms_words}).",
+        spread="refit", weights=("values",), kinds=("values",),
     ),
     Step(
         name="quality-factor-from-dissipation", version=1, function=sweep_steps.inverted_scalar,
@@ -168,7 +168,7 @@ STEPS: tuple[Step, ...] = (
             "period_drop": Port("period", "array", "period of the fully coupled film minus the period"),
             "shift": Port("period", "scalar", "constant added to the background for this run"),
         },
-        sentence="The empty-cell background was subtracted after a shift of {shift_s} s, aligned {alignment} over {rows_in_window} rows from {window_low_K} K to {window_high_K} K.",
+        sentence="The period was subtracted from that of the empty cell, shifted by {shift}; {aligned}.",
         spread="refit", weights=("period", "temperature"),
         effects={"remounting shift": "A constant shift of the background between runs is removed by the alignment; a shift that depends on temperature is not."},
     ),
@@ -204,7 +204,7 @@ STEPS: tuple[Step, ...] = (
             "sample": _SAMPLE,
         },
         yields={"superfluid_density": _DENSITY},
-        sentence="The areal superfluid mass is the period drop over {period_per_areal_density} ns m^2/kg and (1 - chi), chi = {chi} from {chi_from}.",
+        sentence="The areal superfluid density is the period drop over {period_per_areal_density} s m^2/kg and (1 - chi), chi = {chi} from {chi_from}.",
         citations=("bishop-reppy-1980",),
     ),
     Step(
@@ -218,7 +218,7 @@ STEPS: tuple[Step, ...] = (
         takes={"temperature": _TEMPERATURE, "superfluid_density": _DENSITY},
         yields={"crossing_temperature": Port("temperature", "scalar", "where the observed areal density falls through the universal line")},
         sentence="The observed areal density falls through the universal line at {crossing_temperature} (local polynomial of order {order} through {points} points).",
-        citations=("nelson-kosterlitz-1977",), spread="refit", weights=("superfluid_density", "temperature"),
+        citations=("nelson-kosterlitz-1977",), spread="refit", weights=("superfluid_density",),
     ),
     Step(
         name="static-transition", version=1, function=transition_steps.static_transition, parameters=transition_steps.DynamicParameters,
@@ -238,7 +238,7 @@ STEPS: tuple[Step, ...] = (
         name="universal-ratio", version=1, function=transition_steps.universal_ratio, parameters=transition_steps.DynamicParameters,
         takes={"temperature": _TEMPERATURE, "superfluid_density": _DENSITY, "transition": Port("temperature", "scalar", "static transition temperature"), "period": _ANY_PERIOD},
         yields={"ratio": Port("number", "scalar", "sigma_s(T_KT)/T_KT over the universal constant"), "density_at_transition": Port("areal_mass_density", "scalar", "static areal superfluid density at the transition")},
-        sentence="sigma_s(T_KT)/T_KT is {ratio} of the universal value, after division by {dynamic_excess} for the finite frequency.",
+        sentence="At the transition {transition}, which is not that of the crossing, sigma_s/T is {ratio} of the universal value, after division by {dynamic_excess} for the finite frequency.",
         citations=("nelson-kosterlitz-1977", "ahns-1980"), spread="refit",
     ),
     Step(

@@ -63,7 +63,15 @@ def temperature_from_calibration(
             raise ValueError(
                 f"reading: found a {reading_kind} and no calibration, expected a calibration or a temperature"
             )
-        return Outcome({"temperature": reading}, facts={"calibration": "none, as recorded", "outside": 0, "origin": "Temperatures were taken as recorded"})
+        return Outcome(
+            {"temperature": reading},
+            facts={
+                "calibration": "none, as recorded",
+                "outside": 0,
+                "origin": "Temperatures were taken as recorded",
+                "outside_words": "",
+            },
+        )
     try:
         factor = unit_factor(calibration.reading_unit, reading_kind)
     except ValueError as error:
@@ -90,6 +98,7 @@ def temperature_from_calibration(
         facts={
             "calibration": calibration.address, "form": calibration.relation.form, "outside": outside, "scale": calibration.scale,
             "low_K": calibration.temperature_low.si, "high_K": calibration.temperature_high.si,
+            "outside_words": f"; {outside} reading{'s' * (outside != 1)} outside ha{'s' if outside == 1 else 've'} none" if outside else "",
             "origin": f"Readings became temperatures on {calibration.scale} by calibration {calibration.address} ({calibration.relation.form}),"
             f" from {calibration.temperature_low.format()} to {calibration.temperature_high.format()}",
         },

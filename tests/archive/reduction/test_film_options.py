@@ -10,6 +10,7 @@ import pytest
 
 from archive.errors import BadRequest
 from archive.reduction.background_steps import AlignmentParameters, period_drop
+from archive.reduction.channels import channel_estimate
 from archive.reduction.facts import GasBook, sweep_facts
 from archive.reduction.film_steps import (
     CrossingParameters,
@@ -26,9 +27,11 @@ from archive.reduction.gas_steps import (
 )
 from archive.reduction.loading_steps import LoadingParameters, geometric_sensitivity, loading_fit
 from archive.reduction.planning import load_plan
+from archive.reduction.preparation import preliminary_steps
 from archive.reduction.runner import run
 from archive.reduction.sheet_values import sheet_value
 from archive.reduction.step import NoParameters
+from archive.reduction.steps import step_named
 from schemas.lineage import Value
 
 
@@ -56,9 +59,14 @@ def test_a_gauge_is_zeroed_and_its_gain_is_one_source(tools: Any) -> None:
     expected = 0.5e-6 / (8.314462618 * np.maximum(temperature.value, 0.5))
     assert vapour.value == pytest.approx(expected, rel=2e-3)
     zero = vapour.shared["zero of gauge G1 in 2026-03"]
-    assert np.abs(zero) == pytest.approx(0.1 * expected, rel=0.01)
-    # The same zero stands in the doses, so the amount of the film knows of both.
-    assert "gain of gauge G1 in 2026-03" in source.output("2026-03/f1@film-transition.1", "coverage").shared
+    assert zero == pytest.approx(-0.1 * expected, rel=0.01)
+    # One gain, one sign: a gauge that reads low by a part in a thousand makes doses and vapour larger together (by hand).
+    gain = "gain of gauge G1 in 2026-03"
+    amount = source.output("2026-03/f1@film-transition.1", "amount")
+    assert vapour.shared[gain] == pytest.approx(1e-3 * expected, rel=0.01)
+    assert float(amount.shared[gain]) == pytest.approx(1e-3 * float(amount.value), rel=0.01)
+    coverage = source.output("2026-03/f1@film-transition.1", "coverage").shared[gain]
+    assert coverage == pytest.approx((amount.shared[gain] - vapour.shared[gain]) / 1.5, rel=1e-6)
     assert [step.name for step in outcome.document.steps].count("apply-correction") == 2
 
 
@@ -181,6 +189,92 @@ def test_alignment_at_the_coldest_rows_forces_zero_there() -> None:
     assert found.findings[0].code == "negative-period-drop"
 
 
+@pytest.mark.parametrize(
+    ("rows", "words"),
+    [
+        pytest.param((0, 1, 2, 3, 4), "expected 1 to 200", id="row 0 is not the last row"),
+        pytest.param((197, 198, 199, 200, 201), "expected 1 to 200", id="beyond the end"),
+        pytest.param((150, 151), "at least 5", id="too few to state an uncertainty"),
+    ],
+)
+def test_alignment_rows_that_there_are_not_are_refused(rows: tuple[int, ...], words: str) -> None:
+    with pytest.raises(ValueError, match=words):
+        _drop(AlignmentParameters(rows=rows))
+
+
+def test_the_alignment_says_which_rows_it_rests_on() -> None:
+    # 200 rows from 0.3 K to 0.9 K: 1.1 to 1.6 times 0.6 K asks for 0.66 K to 0.96 K, and the record ends at 0.9 K.
+    found = _drop(AlignmentParameters(high=1.6), peak=0.6)
+    assert str(found.facts["aligned"]).startswith("the shift makes the mean drop zero above the transition")
+    assert str(found.facts["aligned"]).endswith("K to 0.9 K)")
+    named = _drop(AlignmentParameters(rows=(150, 151, 152, 153, 154)))
+    assert "over the rows named in the plan (5 rows from" in str(named.facts["aligned"])
+
+
+def test_a_temperature_counts_once_in_the_crossing() -> None:
+    # By hand: a drop of 10 ns/K and 1 mK make 10 ps. It is in the drop, so the crossing must not add it again.
+    T = np.linspace(0.3, 0.9, 200)
+    drop = 1e-8 * np.clip(0.6 - T, 0, None)
+    found = period_drop(
+        AlignmentParameters(), temperature=T, period=1e-3 - drop, background=np.array([1e-3]), low=0.2, high=1.0, peak=0.6,
+        u_period=np.full(200, 1e-12), u_temperature=np.full(200, 1e-3),
+    )  # fmt: skip
+    assert found.point["period_drop"][50] == pytest.approx(np.hypot(1e-11, 1e-12), rel=1e-3)
+    assert step_named("universal-crossing").weights == ("superfluid_density",)
+
+
+def test_a_zero_is_read_on_the_channels_own_scale(tools: Any) -> None:
+    content, data = tools.sheet_content(), tools.sweep_data()
+    content["sweep"][0]["channels"] = {
+        "signal": {"column": "V", "quantity": "voltage", "unit": "mV", "convention": "peak"}
+    }
+    content["sweep"][0]["corrections"] = [
+        {
+            "channel": "signal",
+            "correct": "zero",
+            "value": "0.2(1) mV",
+            "known": "measured",
+            "source": "drive off",
+        }
+    ]
+    data["e1"]["signal"] = np.full(data["e1"]["period"].size, 1.0)
+    source = tools.build(content, data)
+    facts = sweep_facts(source, "2026-03/e1")
+    values, _ = channel_estimate(source, facts, "signal")
+    correction = preliminary_steps(source, facts, "signal")[-1].correction
+    assert correction is not None
+    # 1.0 mV peak less 0.2 mV peak is 0.8 mV peak, over the square root of two as rms.
+    assert values.value[0] - float(correction.value) == pytest.approx(0.8e-3 / np.sqrt(2), rel=1e-9)
+    assert float(correction.uncertainty) == pytest.approx(0.1e-3 / np.sqrt(2), rel=1e-9)
+
+
+def test_temperatures_on_two_scales_are_not_mixed(tools: Any) -> None:
+    # The empty cell is on PLTS-2000, the film's temperatures were written down on ITS-90.
+    content, data = tools.sheet_content(), tools.sweep_data()
+    content["sweep"][2] |= {
+        "thermometer": "stage",
+        "channels": {"stage": {"column": "T", "quantity": "temperature", "unit": "K", "scale": "ITS-90"}},
+    }
+    data["f1"]["stage"] = np.linspace(0.3, 0.9, data["f1"]["period"].size)
+    source = tools.build(content, data)
+    source.reduce("empty-cell", "2026-03/e1")
+    source.reduce("dose-run", "2026-03/r1")
+    with pytest.raises(BadRequest, match="temperatures are on different scales") as caught:
+        source.reduce("film-transition", "2026-03/f1")
+    assert "PLTS-2000" in str(caught.value)
+    assert "ITS-90" in str(caught.value)
+
+
+def test_a_run_of_doses_counts_those_that_its_rows_have_seen(tools: Any) -> None:
+    data = tools.sweep_data()
+    data["r1"] = {name: column[:-3] for name, column in data["r1"].items()}
+    outcome = tools.build(data=data).reduce("dose-run", "2026-03/r1")
+    step = outcome.document.steps[0]
+    # Rows for 0 to 16 doses, the last three cut off.
+    assert step.facts["doses"] == 13
+    assert step.sentence.startswith("13 doses gave a total of 0")
+
+
 def test_no_alignment_adds_nothing() -> None:
     found = _drop(AlignmentParameters(align="none"))
     assert float(found.outputs["shift"]) == 0.0
@@ -216,7 +310,6 @@ def test_a_record_that_never_meets_the_universal_line_gives_no_crossing() -> Non
             temperature=T,
             superfluid_density=np.full(50, 1.0),
             u_superfluid_density=None,
-            u_temperature=None,
         )
 
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 import pytest
@@ -54,6 +55,17 @@ def test_constant_amplitude_needs_the_drive() -> None:
             NoParameters(), amplitude=np.array([1.0]), period=np.array([1e-3]), drive=None, detection=_detection(drive_mode="constant-amplitude"),
             reference_signal=1.0, reference_drive=None, reference_quality_factor=1e6, reference_period=1e-3,
         )  # fmt: skip
+
+
+def test_a_drive_that_changed_is_no_dissipation() -> None:
+    common: dict[str, Any] = {
+        "amplitude": np.array([1.0, 2.0]), "period": np.full(2, 1e-3), "detection": _detection(),
+        "reference_signal": 1.0, "reference_drive": None, "reference_quality_factor": 1e6, "reference_period": 1e-3,
+    }  # fmt: skip
+    with pytest.raises(ValueError, match="reference_drive: none is recorded"):
+        dissipation_from_amplitude(NoParameters(), drive=np.array([0.1, 0.2]), **common)
+    found = dissipation_from_amplitude(NoParameters(), drive=np.array([0.1, 0.1001]), **common)
+    assert found.array("dissipation") == pytest.approx([1e-6, 0.5e-6], rel=1e-12)
 
 
 def test_a_ringdown_gives_back_its_quality_factor() -> None:

@@ -157,8 +157,8 @@ def test_every_step_is_recorded_with_numbers_digests_and_calibration(reduced: An
         assert all(entry.digest or entry.value for entry in step.inputs.values()), step.name
         assert step.end >= step.begin
     density = next(step for step in document.steps if step.name == "superfluid-density")
-    # (0.042 s m^2/kg in ns m^2/kg, as far as the dose run knows it)
-    assert density.facts["period_per_areal_density"] == pytest.approx(0.042e9, rel=5e-3)
+    # 0.042 s m^2/kg, as far as the dose run knows it.
+    assert density.facts["period_per_areal_density"] == pytest.approx(0.042, rel=5e-3)
     assert density.inputs["slope_below"].value is not None
     assert pytest.approx(4.0026e-3, rel=1e-4) == MOLAR_MASS_HELIUM4
 
