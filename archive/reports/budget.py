@@ -42,7 +42,9 @@ def budget_rows(reduction: ReductionDocument, output: OutputEntry) -> list[tuple
     if rest:
         large.append(
             (
-                f"{len(rest)} terms below 0.1 per cent each",
+                f"{len(rest)} terms below 0.1 per cent each"
+                if len(rest) > 1
+                else "1 term below 0.1 per cent",
                 sum(each[1] ** 2 for each in rest) ** 0.5,
                 sum(each[2] for each in rest),
                 "various",

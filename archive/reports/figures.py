@@ -190,7 +190,7 @@ def _density(scope: Scope, cell: str, members: list[ReductionDocument]) -> Drawn
         )
     axes.legend(loc="upper right", fontsize=8)
     caption = (
-        f"Areal superfluid mass density against temperature, cell {cell or 'not recorded'}, with the universal line sigma_s = (2 m^2 k_B/pi hbar^2) T. "
+        f"Areal superfluid mass density against temperature, cell {cell or 'not recorded'}, with the universal line of Nelson and Kosterlitz. "
         "Bands: standard uncertainty of the points alone; the single bar: standard uncertainty that all points share."
     )
     return Drawn(

@@ -75,11 +75,17 @@ def _gas(held: Holdings) -> list[str]:
 
 
 def _doses(held: Holdings) -> list[str]:
-    doses = [each for each in held.view.newest.doses if each.act == "add" and each.counted]
-    if not doses:
+    counted = [each for each in held.view.newest.doses if each.counted]
+    last = max((k for k, each in enumerate(counted) if each.act == "add"), default=None)
+    if last is None:
         return []
+    # What is recovered after the last dose says nothing of what was measured.
+    counted = counted[: last + 1]
+    added = sum(each.act == "add" for each in counted)
+    removed = len(counted) - added
+    less = f", less {removed} removal{'s' * (removed != 1)}," if removed else ""
     return [
-        f"In {held.sheet.name} {len(doses)} doses gave a total of {shown_value(doses[-1].running_amount, 'amount').plain}."
+        f"In {held.sheet.name} {added} dose{'s' * (added != 1)}{less} left {shown_value(counted[-1].running_amount, 'amount').plain} in the cell's system."
     ]
 
 

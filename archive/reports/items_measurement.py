@@ -36,6 +36,37 @@ def _drive(scope: Scope) -> Iterator[Said]:
         )
 
 
+def _linearity(scope: Scope) -> Iterator[Said]:
+    cells = {each.address for each in scope.cells}
+    own = {reduction.address for reduction, _ in scope.steps("drive-linearity")}
+    found = False
+    for held in scope.runs:
+        of_cell = {
+            f"{held.sheet.name}/{taken.sheet.name}"
+            for taken in held.sweeps
+            if taken.entry is not None and taken.entry.cell in cells
+        }
+        for reduction in held.view.current:
+            for step in reduction.steps:
+                if step.name == "drive-linearity" and reduction.sweep in of_cell:
+                    found = True
+                    not_here = (
+                        ""
+                        if reduction.address in own
+                        else f" This reduction, {reduction.address}, is not among those of this appendix."
+                    )
+                    yield sentence(
+                        f"{reduction.sweep}: {step.sentence}{not_here}",
+                        f"{reduction.address} step {step.number}",
+                    )
+    if not found:
+        yield absence(
+            "the test of linearity",
+            "the reductions of these cooldowns",
+            reason="no such step was carried out",
+        )
+
+
 def _thermometers(scope: Scope) -> Iterator[Said]:
     named = dict.fromkeys(each.thermometer for each in scope.calibrations)
     for reference in named:
@@ -170,7 +201,7 @@ MEASUREMENT_ITEMS: tuple[Item, ...] = (
     Item("R30", "the offset between sensor and sample", (), _THERMOMETRY, _offset),
     Item("R31", "control of temperature", (), _THERMOMETRY, _control),
     Item("R08", "drive scheme and rim speed", ("TO",), _MEASUREMENT, _drive),
-    Item("R09", "the test of linearity", ("TO", "TS"), _MEASUREMENT, step_sentences("the test of linearity", "drive-linearity")),
+    Item("R09", "the test of linearity", ("TO", "TS"), _MEASUREMENT, _linearity),
     Item("R32", "ramp rate and direction", (), _MEASUREMENT, _ramps),
     Item("R33", "time response", ("TO", "HC", "TS"), _MEASUREMENT, _response),
     Item("R34", "clock and frequency reference", ("TO", "TS"), _MEASUREMENT, _clock),

@@ -101,12 +101,14 @@ def _strongest(held: object) -> tuple[str, str, float] | None:
 
 
 def _left_out(scope: Scope) -> Iterator[Said]:
-    found = list(scope.steps("leave-out"))
-    for reduction, step in found:
-        yield sentence(
-            f"{reduction.sweep}: {step.sentence} What keeping them would change was not computed.",
-            f"{reduction.address} step {step.number}",
+    # The rows left out of a sweep leave every channel that is used: one sentence, with all the steps behind it.
+    found: dict[str, list[str]] = {}
+    for reduction, step in scope.steps("leave-out"):
+        found.setdefault(f"{reduction.sweep}: {step.sentence}", []).append(
+            f"{reduction.address} step {step.number}"
         )
+    for text, records in found.items():
+        yield sentence(f"{text} What keeping them would change was not computed.", "; ".join(records))
     if not found:
         yield sentence("No points were left out.", "the steps of these reductions")
 
@@ -153,7 +155,7 @@ def runs_not_used(scope: Scope) -> Iterator[tuple[str, str, str]]:
 def _runs(scope: Scope) -> Iterator[Said]:
     total = sum(len(held.sweeps) for held in scope.runs)
     yield sentence(
-        f"Of {total} sweeps in {len(scope.runs)} cooldowns, {len(scope.used)} are used; a table names the others and the reason.",
+        f"Of {total} sweep{'s' * (total != 1)} in {len(scope.runs)} cooldown{'s' * (len(scope.runs) != 1)}, {len(scope.used)} {'is' if len(scope.used) == 1 else 'are'} used; a table names any other and the reason.",
         "the sheets of these cooldowns",
     )
 

@@ -12,7 +12,7 @@ from archive.reduction.steps import STEPS
 from archive.reports import methods_appendix
 from archive.reports.appendix import ITEMS
 from archive.reports.bibliography import bibliography_of, known_keys
-from tests.archive.reports.factories import accession, film_view, finding, reduction, view_of
+from tests.archive.reports.factories import accession, film_view, finding, moment, reduction, view_of
 
 ADDRESS = "2026-03/s001@film-transition.1"
 HOSTILE = '50 % of \\input{/etc/passwd} \\write18{id} \\catcode`\\%=12 ^^5cinput{x} {unbalanced $y_1 & z# ~ <a|b> "q" مرحبا 氦 é'
@@ -296,3 +296,58 @@ def test_a_plan_without_a_figure_of_its_kind_shows_its_curve():
     assert figures[0]["caption"].startswith(
         "Period of each row against temperature of each row, 2026-03/s001 by plan film-transition.r1"
     )
+
+
+def own_steps(*told):
+    """Return steps with these names and sentences."""
+    return [
+        {"number": k, "name": name, "version": 1, "sentence": text, "parameters": {}, "inputs": {}, "outputs": [], "begin": moment(900), "end": moment(900)}
+        for k, (name, text) in enumerate(told, 1)
+    ]  # fmt: skip
+
+
+def test_rows_left_out_of_three_channels_are_told_once():
+    text = "12 of 320 points were left out (the dewar shook)."
+    files = made(film_view(steps=own_steps(*[("leave-out", text)] * 3)))
+    told = [said for item, said, _ in sentences(files) if item == "R43"]
+    assert told == [f"2026-03/s001: {text} What keeping them would change was not computed."]
+    (record,) = (
+        each["record"]
+        for section in companion(files)["sections"]
+        for each in section["sentences"]
+        if each["item"] == "R43"
+    )
+    assert record == "; ".join(f"{ADDRESS} step {k}" for k in (1, 2, 3))
+
+
+def test_a_test_of_linearity_that_was_not_asked_for_is_still_a_test():
+    first = film_view()
+    other = reduction("s002", steps=own_steps(("drive-linearity", "The period moved by 0.1 ps.")), outputs=[])
+    view = view_of(first.newest, reductions=(*first.reductions, other))
+    told = [(said, there) for item, said, there in sentences(made(view)) if item == "R09"]
+    assert told == [
+        (
+            "2026-03/s002: The period moved by 0.1 ps. This reduction, 2026-03/s002@film-transition.1, is not among those of this appendix.",
+            True,
+        )
+    ]
+
+
+def test_the_doses_are_counted_apart_from_what_was_removed():
+    # 2 doses of 30 umol, 5 umol removed between them, and all recovered at the end: 55 umol were there last.
+    acts = (("d1", "add", 30), ("d2", "remove", 25), ("d3", "add", 55), ("d4", "recover", 0))
+    first = film_view()
+    dose = first.newest.doses[0]
+    doses = tuple(
+        dose.model_copy(
+            update={
+                "name": name,
+                "act": act,
+                "running_amount": dose.running_amount.model_copy(update={"value": left * 1e-6}),
+            }
+        )
+        for name, act, left in acts
+    )
+    view = view_of(first.newest.model_copy(update={"doses": doses}), reductions=first.reductions)
+    (told,) = (said for item, said, _ in sentences(made(view)) if item == "R20")
+    assert told.startswith("In 2026-03 2 doses, less 1 removal, left 55.00(50)")
