@@ -96,7 +96,7 @@ _TABLE = (
     Kind("temperature_difference", ("K",), ("uK", "mK", "K"), ("mK", "K"), "difference of two temperatures", r"\Delta T", scaled=True),
     Kind("temperature_rate", ("K/s",), ("uK/s", "mK/s", "K/s"), ("uK/s", "mK/h"), "rate of change of temperature, warming positive", r"\dot T", scaled=True),
     Kind("time", ("s",), ("us", "ms", "s", "h"), ("s", "min", "h"), "length of time; an instant is a date and time instead", "t"),
-    Kind("period", ("s",), ("ns", "us", "ms", "s"), ("ms", "us"), "time of one full oscillation", "P",
+    Kind("period", ("s",), ("ps", "ns", "us", "ms", "s"), ("ms", "us"), "time of one full oscillation", "P",
          hints=(("Hz", "that is a frequency; write the time of one oscillation"),)),
     Kind("frequency", ("Hz",), ("mHz", "Hz", "kHz", "MHz"), ("Hz", "mHz", "kHz"), "cycles per time", "f", required=frozenset({"Hz"}),
          refused=(("s", "1/s does not say whether cycles or radians; write Hz"),),

@@ -74,13 +74,17 @@ def superfluid_density(
     Raises
     ------
     ValueError
-        Neither a slope past the onset nor a drag factor, or a chi outside [0, 1).
+        Neither a slope past the onset nor a drag factor, both of them, or a chi outside [0, 1).
     """
     if sample is not None and sample.isotope not in ("4He", "3He-4He"):
         raise ValueError(f"sample: found {sample.isotope}, expected 4He")
     if slope_past is None and parameters.drag_factor is None:
         raise ValueError(
             "slope_past: no dose run gives the part of the film that is dragged along; set drag_factor in a plan of your own, 0 for a smooth flat disc"
+        )
+    if slope_past is not None and parameters.drag_factor is not None:
+        raise ValueError(
+            f"drag_factor: found {parameters.drag_factor:g}, and a dose run gives {slope_past / slope_below:.4g}; leave one of them out of the plan"
         )
     if not area > 0:
         raise ValueError(f"area: found {area} m^2, expected > 0")

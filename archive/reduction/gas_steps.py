@@ -279,10 +279,10 @@ def coverage_from_amount(
     ValueError
         No area, or an area that is not positive.
     """
-    over = "the stated area"
+    facts: dict[str, object] = {}
     if area is None and specific_area is not None and mass is not None:
         area = specific_area * mass
-        over = "the specific area times the mass,"
+        facts["area"] = f"{area:.4g} m^2 (specific area times mass)"
     if area is None:
         raise ValueError("area: found none, expected the substrate's area, or its specific area and mass")
     if not area > 0:
@@ -292,7 +292,7 @@ def coverage_from_amount(
     if vapour is not None and np.isfinite(vapour).any():
         share = float(np.nanmax(np.asarray(vapour) / np.where(np.asarray(amount) > 0, amount, np.nan)))
     what = "the amount" if vapour is None else "the amount that is not vapour"
-    facts = {"largest_vapour_share": share, "what": what, "over": f"{over} {area:.5g} m^2"}
+    facts |= {"largest_vapour_share": share, "what": what}
     return Outcome({"coverage": film / area}, facts=facts)
 
 

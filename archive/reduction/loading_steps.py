@@ -6,15 +6,17 @@ import math
 
 import numpy as np
 
-from archive.physics.constants import MOLAR_MASS_HELIUM4
+from archive.physics.constants import MOLAR_MASS_HELIUM3, MOLAR_MASS_HELIUM4
 from archive.physics.linear_fit import straight_line
 from archive.physics.loading import fit_loading
 from archive.physics.oscillator import period_per_mass
 from archive.reduction.background_steps import known_rows, weights
 from archive.reduction.estimate import FloatArray
+from archive.reduction.gas_amounts import helium_isotope
 from archive.reduction.step import Covariance, NoParameters, Outcome
 from schemas.base import Record
 from schemas.finding import Finding
+from schemas.substrate import Sample
 
 __all__ = ["LoadingParameters", "geometric_sensitivity", "loading_fit"]
 
@@ -93,6 +95,10 @@ def _two_lines(
     n, P = n[order], P[order]
     if not 2 <= below <= n.size - 2:
         raise ValueError(f"points_below: found {below}, expected 2 to {n.size - 2}")
+    if u is None and n.size < 5:
+        raise ValueError(
+            "points_below: two lines through four points leave no scatter, and no uncertainty is stated"
+        )
     parts = (slice(None, below), slice(below, None))
     first, past = (
         straight_line(n[part], P[part], standard_uncertainty=np.ones(n[part].size) if u is None else u[order][part], absolute=True)
@@ -121,13 +127,19 @@ def geometric_sensitivity(
     mean_square_radius: float,
     inertia: float | None,
     torsion_constant: float | None,
+    sample: Sample | None,
 ) -> Outcome:
     """Return the mass sensitivity that geometry gives, and the measured one over it.
+
+    Parameters
+    ----------
+    sample : Sample or None
+        Gas of the run, whose atomic mass counts; 4He if none is recorded.
 
     Raises
     ------
     ValueError
-        Neither inertia nor torsion constant.
+        Neither inertia nor torsion constant, or a gas that is no pure helium.
 
     Notes
     -----
@@ -139,7 +151,8 @@ def geometric_sensitivity(
         if torsion_constant is None:
             raise ValueError("inertia: found none, expected the cell's moment of inertia or torsion constant")
         inertia = torsion_constant * (period / (2 * math.pi)) ** 2
-    expected = MOLAR_MASS_HELIUM4 * period_per_mass(
+    light = sample is not None and helium_isotope(sample) == "3He"
+    expected = (MOLAR_MASS_HELIUM3 if light else MOLAR_MASS_HELIUM4) * period_per_mass(
         period=period, inertia=inertia, mean_square_radius=mean_square_radius
     )
     ratio = slope / expected

@@ -233,7 +233,7 @@ def drive_linearity(
     factor = float(np.max(torque) / np.min(torque)) if np.min(torque) > 0 else math.nan
     return Outcome(
         {"departure": departure, "period_change": moved}, point={"period_change": u_moved},
-        facts={"levels": int(np.unique(torque).size), "factor": factor, "p": p}, findings=tuple(findings),
+        facts={"levels": int(np.unique(torque).size), "factor": factor, "p": p, "departure_percent": f"{100 * departure:.2g}"}, findings=tuple(findings),
     )  # fmt: skip
 
 
@@ -247,6 +247,13 @@ def _period_change(
     line = straight_line(amplitude[rows], period[rows], standard_uncertainty=u, absolute=u is not None)
     span = float(np.ptp(amplitude[rows]))
     return line.value("slope") * span, line.standard_uncertainty("slope") * span
+
+
+def _range(frequency: FloatArray) -> str:
+    """Return the ends of a sweep with the digits that its width needs: a high Q is swept over parts in a million."""
+    low, high = float(np.min(frequency)), float(np.max(frequency))
+    places = max(0, 2 - math.floor(math.log10(high - low))) if high > low else 3
+    return f"{low:.{places}f} Hz to {high:.{places}f} Hz"
 
 
 def resonance_fit(
@@ -276,6 +283,7 @@ def resonance_fit(
         "points": int(np.count_nonzero(rows)),
         "low_Hz": float(np.min(frequency[rows])),
         "high_Hz": float(np.max(frequency[rows])),
+        "range": _range(frequency[rows]),
         "reason": found.reason,
         "noise": found.noise,
         "probability": found.probability,

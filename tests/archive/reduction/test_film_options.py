@@ -33,6 +33,7 @@ from archive.reduction.sheet_values import sheet_value
 from archive.reduction.step import NoParameters
 from archive.reduction.steps import step_named
 from schemas.lineage import Value
+from schemas.substrate import Sample
 
 
 def test_a_gauge_is_zeroed_and_its_gain_is_one_source(tools: Any) -> None:
@@ -219,7 +220,7 @@ def test_a_temperature_counts_once_in_the_crossing() -> None:
         AlignmentParameters(), temperature=T, period=1e-3 - drop, background=np.array([1e-3]), low=0.2, high=1.0, peak=0.6,
         u_period=np.full(200, 1e-12), u_temperature=np.full(200, 1e-3),
     )  # fmt: skip
-    assert found.point["period_drop"][50] == pytest.approx(np.hypot(1e-11, 1e-12), rel=1e-3)
+    assert np.asarray(found.point["period_drop"])[50] == pytest.approx(np.hypot(1e-11, 1e-12), rel=1e-3)
     assert step_named("universal-crossing").weights == ("superfluid_density",)
 
 
@@ -292,6 +293,8 @@ def test_a_density_needs_area_and_drag_factor() -> None:
         superfluid_density(DensityParameters(), slope_past=None, area=1.5, **common)
     with pytest.raises(ValueError, match="area"):
         superfluid_density(DensityParameters(drag_factor=0.0), slope_past=None, area=0.0, **common)
+    with pytest.raises(ValueError, match=r"drag_factor: found 0\.1, and a dose run gives 0\.2"):
+        superfluid_density(DensityParameters(drag_factor=0.1), slope_past=0.224e-4, area=1.5, **common)
     # Doubling the area with a fixed drop halves the density.
     one, two = (
         superfluid_density(DensityParameters(drag_factor=0.0), slope_past=None, area=area, **common).array(
@@ -376,6 +379,7 @@ def test_geometry_by_torsion_constant_and_its_warning() -> None:
         mean_square_radius=2.8e-5,
         inertia=None,
         torsion_constant=19.73921,
+        sample=None,
     )
     assert float(found.outputs["ratio"]) == pytest.approx(1.0, rel=1e-5)
     assert found.findings == ()
@@ -386,6 +390,7 @@ def test_geometry_by_torsion_constant_and_its_warning() -> None:
         mean_square_radius=2.8e-5,
         inertia=5e-7,
         torsion_constant=None,
+        sample=None,
     )
     assert far.findings[0].code == "mass-loading-geometry"
     with pytest.raises(ValueError, match="moment of inertia or torsion constant"):
@@ -396,7 +401,28 @@ def test_geometry_by_torsion_constant_and_its_warning() -> None:
             mean_square_radius=2.8e-5,
             inertia=None,
             torsion_constant=None,
+            sample=None,
         )
+
+
+def test_geometry_weighs_the_atoms_of_the_gas() -> None:
+    # The same mass per period; 3He atoms have 3.016029322 u, 4He atoms 4.002603254 u (AME2020).
+    light = Sample.model_validate({"name": "gas", "revision": 1, "isotope": "3He", "gas_source": "invented"})
+    four, three = (
+        float(
+            geometric_sensitivity(
+                NoParameters(), slope=1e-4, period=1e-3, mean_square_radius=2.8e-5, inertia=5e-7, torsion_constant=None, sample=sample
+            ).outputs["geometric_slope"]
+        )
+        for sample in (None, light)
+    )  # fmt: skip
+    assert three / four == pytest.approx(3.016029322 / 4.002603254, rel=1e-8)
+
+
+def test_four_points_without_uncertainty_determine_no_uncertainty() -> None:
+    n, P = np.array([0.0, 1e-6, 2e-6, 3e-6]), 1e-3 + np.array([0.0, 1e-10, 1.5e-10, 1.6e-10])
+    with pytest.raises(ValueError, match="leave no scatter"):
+        loading_fit(LoadingParameters(points_below=2), amount=n, period=P, u_period=None)
 
 
 def test_documents_survive_json(reduced: Any) -> None:

@@ -57,6 +57,18 @@ def test_constant_amplitude_needs_the_drive() -> None:
         )  # fmt: skip
 
 
+def test_the_ends_of_a_narrow_sweep_are_told_apart() -> None:
+    # 20 mHz about 1 kHz, as Q = 4e5 needs; five digits would call both ends 1000.0 Hz.
+    f = np.linspace(999.99, 1000.01, 81)
+    line = -1j / (1 + 2j * 4e5 * (f - 1000.0) / 1000.0)
+    noise = 1e-4 * np.random.default_rng(3).normal(size=(2, f.size))
+    found = resonance_fit(
+        ResonanceParameters(), frequency=f, x=line.real + noise[0], y=line.imag + noise[1], u_x=None
+    )
+    assert found.facts["range"] == "999.9900 Hz to 1000.0100 Hz"
+    assert float(found.outputs["quality_factor"]) == pytest.approx(4e5, rel=2e-3)
+
+
 def test_a_drive_that_changed_is_no_dissipation() -> None:
     common: dict[str, Any] = {
         "amplitude": np.array([1.0, 2.0]), "period": np.full(2, 1e-3), "detection": _detection(),
