@@ -259,11 +259,11 @@ def _calendar_seconds(
         )
     begin = ((np.where(bad, 1970, year) - 1970) * 12 + np.where(bad, 1, month) - 1).astype("datetime64[M]")
     end = (
-        (begin.astype("datetime64[Y]") + 1).astype("datetime64[D]")
+        (begin.astype("datetime64[Y]") + np.timedelta64(1, "Y")).astype("datetime64[D]")
         if "j" in part
-        else (begin + 1).astype("datetime64[D]")
+        else (begin + np.timedelta64(1, "M")).astype("datetime64[D]")
     )
-    date = begin.astype("datetime64[D]") + (day - 1)
+    date = begin.astype("datetime64[D]") + (day - 1).astype("timedelta64[D]")
     bad |= date >= end
     seconds = date.astype(np.int64) * 86400 + hour * 3600 + minute * 60 + second
     return np.where(bad, 0, seconds), bad

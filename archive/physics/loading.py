@@ -157,7 +157,8 @@ def _line(n: FloatArray, P: FloatArray, u: FloatArray | None, part: slice) -> Li
 
 
 def _chance(single: LinearFit, chi2: float, dof: int) -> float:
-    if single.chi2 <= (1e-14 * float(np.max(np.abs(single.values)))) ** 2:
+    # A part in 1e13 is what rounding leaves of an exact line, whatever library adds it up.
+    if float(np.max(np.abs(single.residuals))) <= 1e-13 * float(np.max(np.abs(single.values))):
         return 1.0
     return f_test(chi2_simple=single.chi2, dof_simple=dof + 2, chi2_full=chi2, dof_full=dof)
 
