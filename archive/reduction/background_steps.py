@@ -10,6 +10,7 @@ import numpy.typing as npt
 
 from archive.physics.polynomial_background import fit_background
 from archive.reduction.estimate import FloatArray
+from archive.reduction.row_choice import chosen_rows
 from archive.reduction.step import Covariance, NoParameters, Outcome
 from schemas.base import Record
 from schemas.finding import Finding
@@ -280,11 +281,7 @@ def _window(
     if parameters.align == "none":
         return None, ""
     if parameters.rows is not None:
-        chosen = np.zeros(T.shape, dtype=np.bool_)
-        numbers = np.array(parameters.rows, dtype=np.int64)
-        if numbers.size and not (numbers.min() >= 1 and numbers.max() <= T.size):
-            raise ValueError(f"rows: found {numbers.min()} to {numbers.max()}, expected 1 to {T.size}")
-        chosen[numbers - 1] = True
+        chosen = chosen_rows(parameters.rows, T.size)
         chosen &= rows
         if np.count_nonzero(chosen) < LEAST_IN_WINDOW:
             raise ValueError(

@@ -22,6 +22,7 @@ from archive.physics.constants import T_LAMBDA
 from archive.physics.vapour_pressure import pressure_its90
 from archive.reduction.background_steps import background_value, known_rows
 from archive.reduction.estimate import FloatArray
+from archive.reduction.row_choice import chosen_rows, row_numbers
 from archive.reduction.step import Outcome
 from schemas.base import Record
 from schemas.finding import Finding
@@ -47,18 +48,6 @@ class BulkParameters(Record):
     """Density of the liquid, constant over the run, for a run under pressure; none: at saturated vapour pressure."""
     rows: tuple[int, ...] | None = None
     """The rows that set the scale, from 1, in place of those above a temperature."""
-
-
-def chosen_rows(numbers: tuple[int, ...], size: int) -> npt.NDArray[np.bool_]:
-    """Return the mask of rows that are numbered from 1."""
-    mask = np.zeros(size, dtype=np.bool_)
-    mask[np.array(numbers, dtype=np.int64) - 1] = True
-    return mask
-
-
-def row_numbers(mask: npt.NDArray[np.bool_]) -> tuple[int, ...]:
-    """Return the numbers of rows, from 1."""
-    return tuple(int(row) + 1 for row in np.flatnonzero(mask))
 
 
 @dataclass(frozen=True)

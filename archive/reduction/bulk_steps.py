@@ -14,8 +14,9 @@ from archive.physics.linear_fit import straight_line
 from archive.physics.power_law import transverse_correlation_length
 from archive.physics.two_scale_factor import two_scale_factor
 from archive.reduction.background_steps import known_rows, weights
-from archive.reduction.bulk_fraction import BulkParameters, chosen_rows, normal_fraction, row_numbers
+from archive.reduction.bulk_fraction import BulkParameters, normal_fraction
 from archive.reduction.estimate import FloatArray
+from archive.reduction.row_choice import chosen_rows, row_numbers
 from archive.reduction.step import Covariance, NoParameters, Outcome, Port, Step
 from schemas.base import Record
 from schemas.finding import Finding

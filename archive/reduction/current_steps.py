@@ -23,6 +23,7 @@ from archive.reduction.current_decay_steps import (
     turning_row,
 )
 from archive.reduction.estimate import FloatArray
+from archive.reduction.row_choice import row_indices
 from archive.reduction.step import Outcome, Port, Step
 from schemas.base import Record
 from schemas.finding import Finding
@@ -182,7 +183,7 @@ def current_reversibility(
 def _reference(parameters: CurrentParameters, T: FloatArray, known: _Rows) -> _Rows:
     chosen = np.zeros(T.shape, dtype=np.bool_)
     if parameters.rows is not None:
-        chosen[np.array(parameters.rows, dtype=np.int64) - 1] = True
+        chosen[row_indices(parameters.rows, chosen.size)] = True
         return chosen
     count = int(np.count_nonzero(known))
     if count:

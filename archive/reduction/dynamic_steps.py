@@ -20,6 +20,7 @@ from archive.physics.film_transition import FilmTransition, fit_film_transition
 from archive.physics.film_transition_local import LocalSolution, curves, local_solution, moved
 from archive.reduction.background_steps import known_rows, weights
 from archive.reduction.estimate import FloatArray
+from archive.reduction.row_choice import row_indices
 from archive.reduction.step import Covariance, NoParameters, Outcome, Port, Step
 from schemas.base import Record
 from schemas.finding import Finding
@@ -199,7 +200,7 @@ def _rows(
 ) -> npt.NDArray[np.bool_]:
     if parameters.rows is not None:
         chosen = np.zeros(T.shape, dtype=np.bool_)
-        chosen[np.array(parameters.rows, dtype=np.int64) - 1] = True
+        chosen[row_indices(parameters.rows, chosen.size)] = True
         return chosen
     known = known_rows(T, drop, loss)
     if np.count_nonzero(known) < LEAST:

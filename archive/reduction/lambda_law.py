@@ -13,8 +13,8 @@ import numpy.typing as npt
 
 from archive.physics.heat_capacity_fit import LambdaFit, Sides, fit_lambda_law, sides_of_transition
 from archive.reduction.background_steps import known_rows, weights
-from archive.reduction.bulk_fraction import chosen_rows, row_numbers
 from archive.reduction.estimate import FloatArray
+from archive.reduction.row_choice import chosen_rows, row_numbers
 from archive.reduction.step import Covariance, Outcome
 from schemas.base import Record
 from schemas.finding import Finding

@@ -10,6 +10,7 @@ import numpy.typing as npt
 from archive.physics.linear_fit import linear_fit
 from archive.reduction.background_steps import known_rows, weights
 from archive.reduction.estimate import FloatArray
+from archive.reduction.row_choice import row_indices
 from archive.reduction.step import Covariance, Outcome
 from schemas.base import Record
 
@@ -44,17 +45,16 @@ def dissipation_peak(
         raise ValueError(f"dissipation: found {np.count_nonzero(rows)} rows, expected at least 8")
     order = np.flatnonzero(rows)[np.argsort(temperature[rows], kind="stable")]
     chosen = (
-        np.array(parameters.rows, dtype=np.int64) - 1
+        row_indices(parameters.rows, temperature.size)
         if parameters.rows
         else _top(temperature[order], dissipation[order], order, parameters.share)
     )
+    chosen = chosen[rows[chosen]]
     T, q = temperature[chosen], dissipation[chosen]
     u = weights(u_dissipation, chosen)
-    low, high = float(T.min()), float(T.max())
     if chosen.size < 5:
-        raise ValueError(
-            f"dissipation: found {chosen.size} rows in the top of the peak, from {low:.5g} K to {high:.5g} K, expected at least 5"
-        )
+        raise ValueError(f"dissipation: found {chosen.size} rows in the top of the peak, expected at least 5")
+    low, high = float(T.min()), float(T.max())
     centre, half = (low + high) / 2, (high - low) / 2
     x = (T - centre) / half
     fit = linear_fit(

@@ -130,6 +130,10 @@ def _ramps(scope: Scope) -> Iterator[Said]:
             shown_value(_short(end), "temperature", setting=True).plain
             for end in (entry.temperature_low, entry.temperature_high)
         )
+        ending = f" on {entry.temperature_low.scale}"
+        if entry.temperature_low.scale == entry.temperature_high.scale and high.endswith(ending):
+            # One scale is named once.
+            low = low.removesuffix(ending)
         rate = (
             f" at {plain(taken.sheet.rate, setting=True)}"
             if taken.sheet.rate is not None

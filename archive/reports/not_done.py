@@ -40,7 +40,7 @@ def _effect(each: dict[str, object]) -> str:
                 f"{subject} may be present; we have no estimate of its size and made no correction ({text})."
             )
         case "not applicable":
-            return f"{subject} cannot occur here because {text}."
+            return f"{subject} cannot occur here: {text}."
         case "not possible to know":
             return f"The record needed for {effect} does not exist ({text})."
     return f"{subject} was not examined."

@@ -26,6 +26,7 @@ from archive.reduction.gas_steps import (
     vapour_in_dead_volume,
 )
 from archive.reduction.loading_steps import LoadingParameters, geometric_sensitivity, loading_fit
+from archive.reduction.peak_steps import PeakParameters, dissipation_peak
 from archive.reduction.planning import load_plan
 from archive.reduction.preparation import preliminary_steps
 from archive.reduction.runner import run
@@ -430,3 +431,17 @@ def test_documents_survive_json(reduced: Any) -> None:
         text = outcome.document.model_dump_json()
         assert type(outcome.document).model_validate_json(text) == outcome.document
         assert json.loads(text)["format"] == "stillroom-reduction/1"
+
+
+@pytest.mark.parametrize(
+    "rows", [pytest.param((0, 1, 2), id="row 0"), pytest.param((1, 2, 51), id="row 51 of 50")]
+)
+def test_a_row_that_there_is_not_is_refused_wherever_rows_are_named(rows: tuple[int, ...]) -> None:
+    T = np.linspace(0.1, 0.5, 50)
+    with pytest.raises(ValueError, match="expected 1 to 50"):
+        dissipation_peak(
+            PeakParameters(rows=rows),
+            temperature=T,
+            dissipation=np.exp(-(((T - 0.3) / 0.05) ** 2)),
+            u_dissipation=None,
+        )
