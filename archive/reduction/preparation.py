@@ -104,12 +104,18 @@ def _bound(facts: SweepFacts, text: str | None, kind: str, channel: str) -> floa
     try:
         if kind == "instant" or _INSTANT.match(text):
             return datetime.fromisoformat(text).timestamp()
-        return Quantity.parse(text, kind).si
+        return _on_channel(Quantity.parse(text, kind), facts.channels[channel].scale)
     except ValueError as error:
         raise BadRequest(
             f"sweep {facts.address}: the range left out of channel {channel} cannot be read: {error}",
             field=f"sweep[{facts.sweep.name}].left_out", found=text, expected=f"a {kind} with unit, or a time with offset",
         ) from None  # fmt: skip
+
+
+def _on_channel(stated: Quantity, scale: str | None) -> float:
+    if stated.scale is not None and stated.scale != scale:
+        raise ValueError(f"it is on {stated.scale}, and the channel is on {scale or 'no scale'}")
+    return stated.si
 
 
 def _spans(inside: npt.NDArray[np.bool_]) -> list[tuple[int, int]]:

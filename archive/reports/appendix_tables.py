@@ -126,8 +126,9 @@ def tables(scope: Scope) -> Iterator[Table]:
     yield _not_used(scope)
     yield _steps(scope)
     yield _budget(scope)
+    own = frozenset(each.address for each in scope.reductions)
     for held in scope.runs:
-        yield _corrections(held)
+        yield _corrections(held, own)
 
 
 def _cells(scope: Scope) -> Table:
@@ -323,10 +324,10 @@ def _budget(scope: Scope) -> Table:
     )
 
 
-def _corrections(held: Holdings) -> Table:
+def _corrections(held: Holdings, first: frozenset[str]) -> Table:
     rows: Sequence[tuple[Cell_, ...]] = [
         (words(each["effect"]), words(each["state"]), prose(each["bound"] or "[na]"), prose(each["by"]))
-        for each in effect_states(held)
+        for each in effect_states(held, first)
     ]
     return Table(
         f"effects-{held.sheet.name}",

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Iterator
+from collections.abc import Container, Iterator
 from typing import Any
 
 from archive.reports.budget import percent
@@ -185,10 +185,17 @@ def _records(held: Holdings) -> Iterator[dict[str, Any]]:
         }  # fmt: skip
 
 
-def effect_states(held: Holdings) -> Iterator[dict[str, Any]]:
-    """Yield every known effect with its one state: applied by a step, else what the sheet says, else not examined."""
+def effect_states(held: Holdings, first: Container[str] = ()) -> Iterator[dict[str, Any]]:
+    """Yield every known effect with its one state: applied by a step, else what the sheet says, else not examined.
+
+    Parameters
+    ----------
+    held : Holdings
+    first : container of str
+        Addresses of the reductions whose steps are named before those of others.
+    """
     treated: dict[str, tuple[str, str]] = {}
-    for reduction in held.view.current:
+    for reduction in sorted(held.view.current, key=lambda each: each.address not in first):
         for step in reduction.steps:
             for effect, sentence in step.effects.items():
                 treated.setdefault(effect, (sentence, f"{reduction.address}, step {step.number}"))

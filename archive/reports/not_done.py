@@ -16,10 +16,11 @@ __all__ = ["data_sentences", "effect_sentences", "replaced_sentences", "waiver_s
 
 def effect_sentences(scope: Scope) -> Iterator[Said]:
     """Yield one sentence for each known effect in each cooldown."""
+    first = {each.address for each in scope.reductions}
     for held in scope.runs:
         name = held.sheet.name
         yield sentence(f"Of {len(EFFECTS)} known effects each has one state in {name}.", f"{name} effects")
-        for each in effect_states(held):
+        for each in effect_states(held, first):
             yield sentence(_effect(each), f"{name} effect {each['effect']}")
 
 

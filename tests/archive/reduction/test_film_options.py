@@ -88,6 +88,18 @@ def test_a_range_that_cannot_be_read_is_named(tools: Any) -> None:
         tools.build(content).reduce("empty-cell", "2026-03/e1")
 
 
+def test_a_range_on_another_scale_is_not_read_as_one_on_the_channels(tools: Any) -> None:
+    content, data = tools.sheet_content(), tools.sweep_data()
+    channel = {"column": "T", "quantity": "temperature", "unit": "K", "scale": "ITS-90"}
+    content["sweep"][0] |= {
+        "channels": {"stage": channel},
+        "left_out": [{"channel": "stage", "high": "0.2 K on PLTS-2000", "reason": "not settled"}],
+    }
+    data["e1"]["stage"] = np.linspace(0.1, 1.1, data["e1"]["period"].size)
+    with pytest.raises(BadRequest, match="it is on PLTS-2000, and the channel is on ITS-90"):
+        tools.build(content, data).reduce("empty-cell", "2026-03/e1")
+
+
 @pytest.mark.parametrize(
     ("take", "words"),
     [

@@ -351,3 +351,18 @@ def test_the_doses_are_counted_apart_from_what_was_removed():
     view = view_of(first.newest.model_copy(update={"doses": doses}), reductions=first.reductions)
     (told,) = (said for item, said, _ in sentences(made(view)) if item == "R20")
     assert told.startswith("In 2026-03 2 doses, less 1 removal, left 55.00(50)")
+
+
+def test_an_effect_is_told_by_the_reductions_asked_for():
+    first = film_view()
+    steps = json.loads(first.reductions[0].model_dump_json())["steps"]
+    steps[0]["effects"] = {"remounting shift": "Another reduction's shift."}
+    # It sorts before the one asked for, and is not of this appendix.
+    other = reduction("s000", steps=steps)
+    view = view_of(first.newest, reductions=(other, *first.reductions))
+    files = made(view)
+    (told,) = (said for item, said, _ in sentences(files) if item == "R52" and said.startswith("Remounting"))
+    assert (
+        told
+        == f"Remounting shift was treated in {ADDRESS}, step 1: A constant shift is removed by the alignment."
+    )
