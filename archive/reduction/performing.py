@@ -241,6 +241,9 @@ def _call(
     for port in step.kinds:
         fixed[f"{port}_kind"] = estimates[port].quantity if port in estimates else None
 
+    for port in step.scales:
+        fixed[f"{port}_scale"] = estimates[port].scale if port in estimates else None
+
     def call(values: Mapping[str, FloatArray], held: Mapping[str, Any]) -> Outcome:
         chosen = parameters.model_copy(update=dict(held)) if held else parameters
         numbers = {

@@ -148,7 +148,12 @@ def _difference(
 
 
 def _scalar_difference(name: str, old: OutputEntry, new: OutputEntry) -> OutputDifference:
-    equal = old.digest == new.digest and old.uncertainty == new.uncertainty and old.verdict == new.verdict
+    # The contributions too: one that changed its sign leaves the uncertainty, and spoils what is made from two results.
+    equal = (
+        (old.digest, old.uncertainty, old.verdict) == (new.digest, new.uncertainty, new.verdict)
+        and old.point == new.point
+        and old.shared == new.shared
+    )
     if old.value is None or new.value is None:
         return OutputDifference(name, equal, 0.0 if equal else math.nan)
     shift = new.value - old.value

@@ -153,6 +153,8 @@ class Step:
         Array inputs whose point uncertainty is handed over as ``u_NAME``.
     kinds : tuple of str
         Inputs whose quantity kind is handed over as ``NAME_kind``.
+    scales : tuple of str
+        Temperature inputs whose scale is handed over as ``NAME_scale``.
     """
 
     name: str
@@ -167,3 +169,4 @@ class Step:
     spread: Literal["elementwise", "refit"] = "elementwise"
     weights: tuple[str, ...] = ()
     kinds: tuple[str, ...] = ()
+    scales: tuple[str, ...] = ()

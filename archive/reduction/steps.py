@@ -78,7 +78,7 @@ STEPS: tuple[Step, ...] = (
         name="temperature-on-scale", version=1, function=sweep_steps.on_scale, parameters=sweep_steps.ScaleParameters,
         takes={"temperature": _TEMPERATURE}, yields={"temperature": Port("temperature", "array", "temperature on the scale asked for")},
         sentence="Temperatures first recorded on {source} were converted to {target}; the largest change in the range is {largest_change_K} K.",
-        citations=("preston-thomas-1990",),
+        citations=("preston-thomas-1990",), scales=("temperature",),
     ),
     Step(
         name="amount-from-doses", version=1, function=gas_steps.amount_from_doses,

@@ -128,14 +128,27 @@ def inverted_scalar(_: NoParameters, *, values: float) -> Outcome:
     return Outcome({"inverse": 1 / values})
 
 
-def on_scale(parameters: ScaleParameters, *, temperature: FloatArray) -> Outcome:
+def on_scale(
+    parameters: ScaleParameters, *, temperature: FloatArray, temperature_scale: str | None
+) -> Outcome:
     """Return temperatures converted to another named scale, with the uncertainty of the conversion.
+
+    Parameters
+    ----------
+    temperature : ndarray
+        K.
+    temperature_scale : str or None
+        Scale that the temperatures carry.
 
     Raises
     ------
     ValueError
-        Scales between which no conversion is known.
+        Temperatures on another scale than the plan converts from, or scales between which no conversion is known.
     """
+    if temperature_scale is not None and temperature_scale != parameters.source:
+        raise ValueError(
+            f"temperature: it is on {temperature_scale}, and the plan converts from {parameters.source}"
+        )
     values = np.asarray(temperature, dtype=np.float64)
     result = np.full(values.shape, np.nan)
     spread = np.zeros(values.shape)

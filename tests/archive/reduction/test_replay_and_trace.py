@@ -19,6 +19,16 @@ def test_a_replay_is_equal_bit_for_bit(reduced: Any, tools: Any) -> None:
     assert found.changed_software == {}
 
 
+def test_a_replay_sees_a_contribution_that_changed_its_sign(tools: Any) -> None:
+    source = tools.build()
+    document = source.reduce("empty-cell", "2026-03/e1").document
+    quality = next(each for each in document.outputs if each.name == "empty_quality_factor")
+    turned = quality.model_copy(update={"shared": {name: -part for name, part in quality.shared.items()}})
+    outputs = tuple(turned if each is quality else each for each in document.outputs)
+    found = replay(document.model_copy(update={"outputs": outputs}), source, clock=tools.Clock())
+    assert [each.name for each in found.differences if not each.equal] == ["empty_quality_factor"]
+
+
 def test_a_replay_rests_on_the_recorded_reductions_not_the_newest(tools: Any) -> None:
     source = tools.build()
     source.reduce("empty-cell", "2026-03/e1")

@@ -8,6 +8,9 @@ from typing import Any
 import numpy as np
 import pytest
 
+from archive.errors import StepFailed
+from archive.reduction.planning import load_plan
+from archive.reduction.runner import run
 from archive.reduction.step import NoParameters
 from archive.reduction.sweep_steps import ScaleParameters, on_scale
 from archive.reduction.thermometry_steps import temperature_from_calibration
@@ -123,7 +126,41 @@ def test_a_temperature_passes_and_anything_else_needs_a_calibration() -> None:
 
 def test_an_old_scale_is_converted_with_its_uncertainty() -> None:
     # T58 4.215 K is the boiling point, 4.2221 K on ITS-90.
-    found = on_scale(ScaleParameters(source="T58", target="ITS-90"), temperature=np.array([4.215, np.nan]))
+    found = on_scale(
+        ScaleParameters(source="T58", target="ITS-90"),
+        temperature=np.array([4.215, np.nan]),
+        temperature_scale="T58",
+    )
     assert found.array("temperature")[0] == pytest.approx(4.2221, abs=1e-4)
     assert found.scales["temperature"] == "ITS-90"
     assert found.shared["temperature"]["conversion T58 to ITS-90"][0] > 0
+
+
+def test_a_conversion_from_a_scale_that_the_temperatures_are_not_on_is_refused() -> None:
+    with pytest.raises(ValueError, match="it is on PLTS-2000, and the plan converts from T58"):
+        on_scale(
+            ScaleParameters(source="T58", target="ITS-90"),
+            temperature=np.array([1.0]),
+            temperature_scale="PLTS-2000",
+        )
+
+
+def test_a_plan_hands_the_scale_of_its_temperatures_to_the_conversion(laboratory: Any, tools: Any) -> None:
+    text = """
+        name = "mine"
+        revision = 1
+        title = "mine"
+        [applies]
+        sweep_kinds = ["temperature-sweep"]
+        [[step]]
+        use = "temperature-from-calibration"
+        take = { reading = "channel:@thermometer", calibration = "calibration:@thermometer" }
+        give = { temperature = "recorded" }
+        [[step]]
+        use = "temperature-on-scale"
+        take = { temperature = "recorded" }
+        set = { source = "T76", target = "ITS-90" }
+        give = { temperature = "temperature" }
+    """
+    with pytest.raises(StepFailed, match="it is on PLTS-2000, and the plan converts from T76"):
+        run(load_plan(text), "2026-03/e1", laboratory, number=1, clock=tools.Clock())
