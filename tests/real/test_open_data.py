@@ -89,3 +89,22 @@ def test_both_sets_replay_to_the_bit(lab: Archive, resonances: dict[str, ReduceO
     assert lab.replay(resonances["s010"].address or "").identical
     (isotherm,) = lab.reduce("open-mcm41", plan="isotherm-bet")
     assert lab.replay(isotherm.address or "").identical
+
+
+def test_both_sets_are_told_in_run_sheets_and_an_appendix(
+    lab: Archive, resonances: dict[str, ReduceOutcome]
+) -> None:
+    (isotherm,) = lab.reduce("open-mcm41", plan="isotherm-bet")
+    sheets = {name: lab.run_sheet(name) for name in ("open-resonator", "open-mcm41")}
+    for name, files in sheets.items():
+        assert set(files) == {f"run-sheet-{name}.{form}" for form in ("html", "pdf", "json")}
+        assert files[f"run-sheet-{name}.pdf"].startswith(b"%PDF-")
+    assert sheets["open-resonator"]["run-sheet-open-resonator.html"].count(b"no resonance in range") >= 4
+    told = lab.appendix(
+        [resonances["s000"].address or "", resonances["s010"].address or "", isotherm.address or ""]
+    )
+    text = told["appendix.tex"].decode()
+    assert "no resonance in range" in text
+    assert "complex Lorentzian" in text
+    assert "area per molecule" in text
+    assert "thommes-2015" in told["methods.bib"].decode()
