@@ -60,12 +60,18 @@ def _say_finding(finding: Finding) -> None:
 
 
 def say_cautions(cautions: Iterable[Mapping[str, Any]]) -> None:
-    """Write cautions to stdout; they say what is known, and that local rules decide."""
+    """Write cautions to stdout, each with its state, and the words that always stand below them."""
+    from archive.intake.caution_texts import FIXED_TEXT
+
+    said = False
     for caution in cautions:
         subject = clean(str(caution.get("subject") or "caution"))
-        click.echo(styled("CAUTION", "red", bold=True) + " ", nl=False)
-        say(f"{subject}: {caution.get('text') or caution.get('state')}")
-    if cautions:
+        state = clean(str(caution.get("state") or "caution"))
+        click.echo(styled(state, "red", bold=state == "caution") + ": ", nl=False)
+        say(f"{subject}: {caution.get('text') or ', '.join(map(str, caution.get('missing') or ()))}")
+        said = True
+    if said:
+        say(FIXED_TEXT)
         say()
 
 

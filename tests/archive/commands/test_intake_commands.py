@@ -10,6 +10,7 @@ import jsonschema
 import pytest
 from click.testing import Result
 
+from archive.intake.cautions import FIXED_TEXT
 from archive.lab import CheckReport, IngestOutcome
 from schemas.finding import Finding, Severity, Waiver
 from tests.archive.commands.support import FakeArchive, child, parsed
@@ -85,7 +86,8 @@ def test_findings_stand_under_their_file_in_order(run: Run, fake: Fake) -> None:
         "The cooldown as a whole",
         "cooldown.toml",
         "raw/b.csv",
-        "CAUTION trapped gas: 0.31 umol is recorded in TO-4.",
+        "caution: trapped gas: 0.31 umol is recorded in TO-4.",
+        FIXED_TEXT,
         "Read: 5 sweeps, 1600 rows, 7 files.",
         "Found: 1 error, 2 warnings, 1 note. Nothing was stored.",
     ]
