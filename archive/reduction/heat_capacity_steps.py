@@ -168,7 +168,7 @@ HEAT_CAPACITY_STEPS: tuple[Step, ...] = (
             "value_at_low": Port("same:values", "scalar", "addenda at their lowest temperature"),
         },
         sentence="The heat capacity of the empty cell was measured between {low_K} K and {high_K} K and fitted by a polynomial of order {order} ({points} points, rms {rms} J/K).",
-        spread="refit", weights=("values",),
+        spread="refit", weights=("values",), kinds=("values",),
     ),
     Step(
         name="molar-heat-capacity", version=1, function=molar,
