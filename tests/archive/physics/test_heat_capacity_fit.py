@@ -86,9 +86,7 @@ def test_uncertainty_is_honest(law, free):
         u = 1e-3 * C
         noisy = C + u * np.random.default_rng(seed).normal(size=C.size)
         sides = sides_of_transition(T, noisy, rise=rise, lambda_temperature=None if free else T_LAMBDA)
-        found = fit_lambda_law(
-            T, noisy, sides=sides, rise=rise, standard_uncertainty=u, absolute=True
-        )
+        found = fit_lambda_law(T, noisy, sides=sides, rise=rise, standard_uncertainty=u, absolute=True)
         assert found.converged, found.message
         assert sides.low <= found.lambda_temperature <= sides.high
         spread = np.sqrt(np.diag(found.covariance))
