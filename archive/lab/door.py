@@ -24,15 +24,18 @@ from archive.intake.examine import examined
 from archive.intake.settings import SETTINGS_NAME, Settings, read_settings, settings_text
 from archive.lab import reducing, reporting, showing
 from archive.lab.checking import check_folder, earlier_runs, folder_report, require_folder
+from archive.lab.forward import forward as lineage_forward
 from archive.lab.outcomes import CheckReport, IngestOutcome, ReduceOutcome, ReplayReport
 from archive.lab.place import find_root, made, unmade
 from archive.lab.source import LabSource
+from archive.lab.tracing import backward
 from archive.reduction.software import software
-from archive.reduction.trace import TraceNode, trace
-from archive.store.durable import LOCK_NAME, archive_lock, sweep_staging, write_whole
+from archive.reduction.trace import TraceNode
+from archive.store.durable import LOCK_NAME, archive_lock, write_whole
 from archive.store.fixity import fixity
 from archive.store.interface import Damage, SealedFile
 from archive.store.local import LocalStore, open_store
+from archive.store.staging import sweep_staging
 from schemas.address import parse_address
 from schemas.lineage import ReductionDocument
 from schemas.plan import Plan
@@ -394,10 +397,9 @@ class Archive:
         """Everything the archive knows of a thing, as JSON-able content with `address` and `what`."""
         return showing.show(self._source, address)
 
-    def trace(self, address: str) -> TraceNode:
-        """Lineage of a result, array, reduction or sweep, down to raw files and their lines."""
-        self.show(address)
-        return trace(address, self._source)
+    def trace(self, address: str, *, forward: bool = False) -> TraceNode:
+        """Lineage of a result, array, sentence or figure down to raw files and lines; or forward, to all that rests on it."""
+        return lineage_forward(self._source, address) if forward else backward(self._source, address)
 
     # Telling ------------------------------------------------------------------------------------------------------
 

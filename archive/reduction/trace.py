@@ -13,7 +13,7 @@ from archive.reduction.source import Source
 from schemas.address import Address, parse_address
 from schemas.lineage import AccessionDocument, OutputEntry, ReductionDocument, StepRecord, SweepEntry
 
-__all__ = ["TraceNode", "trace"]
+__all__ = ["TraceNode", "trace", "trace_step"]
 
 
 @dataclass(frozen=True)
@@ -74,6 +74,36 @@ def trace(address: str, source: Source) -> TraceNode:
     except ValueError as error:
         raise BadRequest(str(error)) from None
     return _Tracer(source).node(parsed, ())
+
+
+def trace_step(reduction: str, number: int, source: Source) -> TraceNode:
+    """Return the lineage tree of one step of a reduction, as a sentence of a report cites it.
+
+    Parameters
+    ----------
+    reduction : str
+        Address of the reduction.
+    number : int
+        Number of the step, from 1.
+    source : Source
+
+    Raises
+    ------
+    BadRequest
+        The text is no address of a reduction.
+    UnknownAddress
+        The reduction is not there, or has fewer steps.
+    """
+    try:
+        parsed = parse_address(reduction)
+    except ValueError as error:
+        raise BadRequest(str(error)) from None
+    document = source.reduction(parsed.text)
+    if not 1 <= number <= len(document.steps):
+        raise UnknownAddress(
+            f"{reduction} has no step {number}", expected=f"a number from 1 to {len(document.steps)}"
+        )
+    return _Tracer(source).step(document, document.steps[number - 1], ())
 
 
 class _Tracer:
@@ -137,10 +167,11 @@ class _Tracer:
             _kind(entry),
             label,
             facts,
-            (self._step(document, document.steps[entry.step - 1], path),),
+            (self.step(document, document.steps[entry.step - 1], path),),
         )
 
-    def _step(self, document: ReductionDocument, step: StepRecord, path: tuple[str, ...]) -> TraceNode:
+    def step(self, document: ReductionDocument, step: StepRecord, path: tuple[str, ...]) -> TraceNode:
+        """Return the tree below a step."""
         children = []
         for port, entry in step.inputs.items():
             try:
