@@ -4,12 +4,14 @@
 |---|---|
 | cooldown | `2026-03` |
 | accession | `2026-03.a1` |
+| amendment, withdrawal in a cooldown | `2026-03.m1`, `2026-03.w1` |
 | raw file | `2026-03.a1:raw/ts05.csv` |
 | sweep, dose | `2026-03/s017`, `2026-03/d03` |
 | channel of a sweep | `2026-03/s017#period` |
 | reduction | `2026-03/s017@film-transition.2` |
 | array or result of a reduction | `2026-03/s017@film-transition.2#T_KT` |
 | record or plan | `TO-4.r2` |
+| withdrawal of a record's or plan's revision | `TO-4.r2.w1` |
 """
 
 from __future__ import annotations
@@ -20,14 +22,18 @@ from typing import Literal
 
 __all__ = ["Address", "AddressKind", "parse_address"]
 
-AddressKind = Literal["name", "accession", "raw", "item", "channel", "reduction", "output", "record"]
+AddressKind = Literal[
+    "name", "accession", "raw", "item", "channel", "reduction", "output", "record", "amendment", "withdrawal",
+]  # fmt: skip
 
 _NAME = r"[A-Za-z0-9][A-Za-z0-9_-]{0,63}"
 _PATTERN = re.compile(
     rf"""^(?P<head>{_NAME})
     (?:
         \.a(?P<accession>[1-9][0-9]{{0,5}})(?::(?P<raw>[^\x00-\x1f\x7f\\]{{1,500}}))?
-      | \.r(?P<revision>[1-9][0-9]{{0,5}})
+      | \.m(?P<amendment>[1-9][0-9]{{0,5}})
+      | \.w(?P<withdrawal>[1-9][0-9]{{0,5}})
+      | \.r(?P<revision>[1-9][0-9]{{0,5}})(?:\.w(?P<taken_back>[1-9][0-9]{{0,5}}))?
       | /(?P<item>{_NAME})(?:@(?P<plan>{_NAME})\.(?P<number>[1-9][0-9]{{0,5}}))?(?:\#(?P<part>[A-Za-z0-9_][A-Za-z0-9_.-]{{0,99}}))?
     )?$""",
     re.VERBOSE,
@@ -47,7 +53,9 @@ class Address:
     head, item, plan, part, raw : str or None
         Cooldown or record name; sweep or dose; plan; channel, array or result; raw file.
     number : int or None
-        Accession, revision or reduction number.
+        Accession, amendment, withdrawal, revision or reduction number.
+    revision : int or None
+        Revision that a withdrawal outside a cooldown is about.
     """
 
     text: str
@@ -58,6 +66,7 @@ class Address:
     number: int | None = None
     part: str | None = None
     raw: str | None = None
+    revision: int | None = None
 
     @property
     def sweep(self) -> str | None:
@@ -98,6 +107,13 @@ def parse_address(text: str) -> Address:
         return Address(text, "raw", head, number=int(group["accession"]), raw=group["raw"])
     if group["accession"] is not None:
         return Address(text, "accession", head, number=int(group["accession"]))
+    if group["amendment"] is not None:
+        return Address(text, "amendment", head, number=int(group["amendment"]))
+    if group["withdrawal"] is not None:
+        return Address(text, "withdrawal", head, number=int(group["withdrawal"]))
+    if group["taken_back"] is not None:
+        number, revision = int(group["taken_back"]), int(group["revision"])
+        return Address(text, "withdrawal", head, number=number, revision=revision)
     if group["revision"] is not None:
         return Address(text, "record", head, number=int(group["revision"]))
     if group["item"] is None:

@@ -13,6 +13,7 @@ from schemas.base import Record
 from schemas.cell import Cell, Cryostat
 from schemas.cooldown import CooldownSheet
 from schemas.finding import Finding
+from schemas.monte_carlo import MonteCarlo
 from schemas.plan import Plan
 from schemas.substrate import Sample, Substrate
 from schemas.sweep import SweepKind
@@ -27,7 +28,9 @@ __all__ = [
     "OutputEntry",
     "RawFileEntry",
     "RecordEntry",
+    "RecordKind",
     "ReductionDocument",
+    "Sha256",
     "Software",
     "SourceEntry",
     "StepRecord",
@@ -172,6 +175,10 @@ class InputEntry(Record):
     role: str
     digest: Sha256 | None = None
     value: Value | None = None
+    instead_of: str | None = Field(
+        default=None, description="What the sheet names, where something else was taken."
+    )
+    because: str | None = Field(default=None, description="Why this one was taken.")
 
 
 class SourceEntry(Record):
@@ -181,6 +188,12 @@ class SourceEntry(Record):
     description: str
     level: Literal["run", "cell", "laboratory"] = Field(description="Whom it is common to.")
     address: str | None = None
+    distribution: Literal["normal", "rectangular"] = Field(
+        default="normal", description="Of the values that the source may have: JCGM 100:2008, 4.3.7, for rectangular."
+    )
+    stated: Value | None = Field(
+        default=None, description="What is uncertain, with its standard uncertainty, where that is one number."
+    )
 
 
 class OutputEntry(Record):
@@ -249,6 +262,9 @@ class ReductionDocument(Record):
         default_factory=dict, description="Covariance of fitted parameters: names, matrix."
     )
     supersedes: str | None = None
+    monte_carlo: MonteCarlo | None = Field(
+        default=None, description="The plan repeated with drawn inputs, where that was asked for."
+    )
     findings: tuple[Finding, ...] = ()
     begin: AwareDatetime
     end: AwareDatetime

@@ -15,7 +15,7 @@ What each system gives:
   keeps the first from being removed.
 - File systems without hard links (exFAT, some network shares): the name is taken by creating an empty file
   exclusively, then the staging file is renamed over it. A crash between the two leaves the empty file together
-  with its staging file; `sweep_staging` knows the pair and removes both.
+  with its staging file; `archive.store.staging` knows the pair and removes both.
 
 No system promises that a disk which acknowledged a sync has kept its word. That is what fixity checks are for.
 """
@@ -34,7 +34,6 @@ from collections.abc import Iterator
 from pathlib import Path
 
 from archive.errors import AlreadySealed, ArchiveBusy, ArchiveError, BadRequest
-from archive.store.names import is_key
 
 if sys.platform == "win32":  # pragma: no cover - the other system
     import msvcrt
@@ -47,9 +46,12 @@ __all__ = [
     "archive_lock",
     "discard",
     "file_digest",
+    "holds_lock",
     "settle",
     "staging_path",
-    "sweep_staging",
+    "sync_file",
+    "sync_folder",
+    "take_folder_name",
     "take_name",
     "write_whole",
 ]
@@ -122,7 +124,7 @@ def take_name(staged: Path, final: Path, *, root: Path, key: str) -> None:
             file=str(final),
             remedy="a correction is a new accession or revision that names what it supersedes",
         ) from error
-    _sync_folder(final.parent)
+    sync_folder(final.parent)
     discard(staged)
 
 
@@ -153,7 +155,7 @@ def write_whole(path: Path, content: bytes, *, replace: bool = False) -> None:
             os.replace(staged, path)  # noqa: PTH105 - as above
         else:
             _link_or_rename(staged, path)
-        _sync_folder(path.parent)
+        sync_folder(path.parent)
     except FileExistsError as error:
         raise BadRequest(
             "this name is taken", file=str(path), remedy="name another file, or move this one away"
@@ -191,7 +193,7 @@ def _make_folders(folder: Path, *, below: Path) -> None:
     for path in reversed(missing):
         with contextlib.suppress(FileExistsError):  # another writer may have been quicker
             os.mkdir(path)  # noqa: PTH102 - as above
-        _sync_folder(path.parent)
+        sync_folder(path.parent)
 
 
 def _sync(descriptor: int) -> None:
@@ -201,7 +203,8 @@ def _sync(descriptor: int) -> None:
         os.fsync(descriptor)
 
 
-def _sync_folder(folder: Path) -> None:
+def sync_folder(folder: Path) -> None:
+    """Bring the names in a folder to the disk."""
     if sys.platform == "win32":  # pragma: no cover - the other system
         return
     descriptor = os.open(folder, os.O_RDONLY)
@@ -209,6 +212,43 @@ def _sync_folder(folder: Path) -> None:
         _sync(descriptor)
     finally:
         os.close(descriptor)
+
+
+def sync_file(path: Path) -> None:
+    """Bring the bytes of a finished file to the disk."""
+    descriptor = os.open(path, os.O_RDWR)
+    try:
+        _sync(descriptor)
+    finally:
+        os.close(descriptor)
+
+
+def take_folder_name(staged: Path, final: Path) -> None:
+    """Give a finished folder its name; an empty folder of that name makes way.
+
+    Raises
+    ------
+    BadRequest
+        If the name is taken.
+    """
+    try:
+        if (
+            sys.platform == "win32" and final.is_dir()
+        ):  # pragma: no cover - a folder is in the way there even if empty
+            os.rmdir(final)  # noqa: PTH106 - as above
+        os.rename(staged, final)  # noqa: PTH104 - as above; POSIX refuses a folder that holds something
+    except OSError as error:
+        if error.errno not in (errno.ENOTEMPTY, errno.EEXIST, errno.ENOTDIR):
+            raise
+        raise BadRequest(
+            "this name is taken", file=str(final), expected="a new or an empty folder", remedy="name another"
+        ) from error
+    sync_folder(final.parent)
+
+
+def holds_lock(root: Path) -> bool:
+    """Return whether this process holds the lock of the archive at `root`."""
+    return (root / LOCK_NAME).resolve() in _held
 
 
 @contextlib.contextmanager
@@ -309,54 +349,3 @@ def _release_in_child() -> None:
 
 if hasattr(os, "register_at_fork"):
     os.register_at_fork(after_in_child=_release_in_child)
-
-
-def sweep_staging(root: Path) -> list[str]:
-    """Remove what a writer left behind that did not finish, and return a sentence about each thing.
-
-    Parameters
-    ----------
-    root : Path
-        The archive's folder; its lock must be held by this process, since a living writer's file looks the same.
-
-    Returns
-    -------
-    list of str
-        What was found and done, sorted by name; empty after a clean end.
-
-    Raises
-    ------
-    BadRequest
-        If the lock is not held.
-    """
-    if (root / LOCK_NAME).resolve() not in _held:
-        raise BadRequest(
-            "staging may be swept only by the one writer of the archive",
-            file=str(root),
-            expected="the archive's lock held by this process",
-        )
-    folder = root / "staging"
-    if not folder.is_dir():
-        return []
-    return [_swept(root, path) for path in sorted(folder.iterdir())]
-
-
-def _swept(root: Path, staged: Path) -> str:
-    name = f"staging/{staged.name}"
-    key = staged.name.removesuffix(STAGING_SUFFIX).rpartition(".")[0].replace("~", "/", 1)
-    if not staged.name.endswith(STAGING_SUFFIX) or not is_key(key) or not staged.is_file():
-        return f"{name} was not put there by the archive; it was left alone"
-    final = root / "sealed" / f"{key}.h5"
-    size = staged.stat().st_size
-    if final.exists() and final.samefile(staged):
-        _sync_folder(final.parent)
-        discard(staged)
-        return f"{name}: {key} had been sealed whole; only its staging name was left and is removed"
-    if final.is_file() and final.stat().st_size == 0 and size > 0:
-        # The name was taken on a file system without links, but the rename did not follow.
-        os.unlink(final)  # noqa: PTH108 - as above
-        _sync_folder(final.parent)
-    discard(staged)
-    return (
-        f"{name}: the writing of {key} had not finished; its {size} bytes were removed and nothing was sealed"
-    )
