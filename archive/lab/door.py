@@ -36,7 +36,6 @@ from archive.store.fixity import fixity
 from archive.store.interface import Damage, SealedFile
 from archive.store.local import LocalStore, open_store
 from archive.store.staging import sweep_staging
-from archive.store.staging import sweep_staging
 from schemas.address import parse_address
 from schemas.lineage import ReductionDocument
 from schemas.plan import Plan
