@@ -8,7 +8,7 @@ What a step takes is written as a small text:
 | `channel:@thermometer` | the channel whose temperature counts |
 | `channel:@KIND` | the only channel of a quantity kind, e.g. `channel:@period` |
 | `sheet:NAME` | a value that the sheet or the records give for this sweep, e.g. `sheet:coverage`, `sheet:cell.gap` |
-| `need:NAME#OUTPUT` | an output of another reduction, named in `needs` |
+| `need:NAME#OUTPUT` | an output of another reduction, named in `needs`; of many, as one column |
 | `calibration:@thermometer` | the calibration in force for the counting thermometer |
 | anything else | an output of an earlier step of this plan |
 
@@ -46,15 +46,31 @@ class Applies(Record):
     has_substrate: bool | None = Field(
         default=None, description="Only cells with, or without, a recorded substrate: films, or bulk liquid."
     )
+    doses: bool | None = Field(
+        default=None, description="Only sweeps during which doses were admitted, or only others."
+    )
+    last: bool = Field(
+        default=False,
+        description="True: it sums up a cell's sweeps in a cooldown, so it is carried out once, on the last that the other terms admit; on another one when that is named.",
+    )
 
 
 class Need(Record):
-    """Another reduction that this plan rests on: the newest one of that plan on a sweep related to this one."""
+    """Another reduction that this plan rests on: the newest one of that plan on a sweep related to this one.
+
+    With `many` these are the newest ones on all related sweeps of this cooldown and, if the relation reaches further, of
+    earlier ones. What is taken from them is one column with a row for each reduction, in the order of cooldowns and
+    sweeps; a reduction that lacks an output has no value in its row.
+    """
 
     plan: Name
-    relation: Literal["same-cell", "same-sweep", "same-cell-any-cooldown", "same-sample-any-cooldown"] = (
-        "same-cell"
+    relation: Literal[
+        "same-cell", "same-sweep", "same-dose", "same-cell-any-cooldown", "same-sample-any-cooldown"
+    ] = Field(
+        default="same-cell",
+        description="`same-dose`: same cell and cooldown, after the same dose, so at the same filling.",
     )
+    many: bool = Field(default=False, description="True: every related sweep's, taken together.")
     optional: bool = Field(default=False, description="True: without it, inputs that name it do not exist.")
 
 

@@ -94,14 +94,23 @@ def reduce(
         )
     allowed, known_plans = _chosen(source, plan)
     work: list[tuple[int, int, str, Plan]] = []
+    closing: dict[tuple[str, str | None], str] = {}
     for position, row in enumerate(rows):
-        if name is not None and row.name != name:
-            continue
         written = next(each for each in source.accession(row.accession).sheet.sweep if each.name == row.name)
         cell = None if row.cell is None else source.find_record(row.cell)
         substrate = None if row.substrate is None else source.find_record(row.substrate)
         fitting = plans_for(written, cell, substrate, allowed)
         work += [(plan_depth(each, known_plans), position, row.address, each) for each in fitting]
+        closing |= {(each.name, row.cell): row.address for each in fitting}
+    cells = {row.address: row.cell for row in rows}
+    # A plan that sums up a cell's sweeps is carried out on the last of them, unless it is asked for elsewhere by name.
+    asked = name is not None and plan is not None
+    work = [
+        item
+        for item in work
+        if (name is None or item[2] == f"{cooldown}/{name}")
+        and (not item[3].applies.last or asked or closing[item[3].name, cells[item[2]]] == item[2])
+    ]
     if not work:
         raise BadRequest(
             f"no plan {'here ' if plan is None else ''}is for {'this sweep' if name else 'any sweep of ' + cooldown}",

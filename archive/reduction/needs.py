@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 
 from archive.errors import BadRequest
 from archive.reduction.facts import SweepFacts
@@ -11,13 +11,16 @@ from archive.reduction.source import Source
 from schemas.lineage import AccessionDocument, ReductionDocument, SweepEntry
 from schemas.plan import Need, Plan
 
-__all__ = ["needed_reductions"]
+__all__ = ["NeedAddresses", "gathered_reductions", "needed_reductions"]
+
+NeedAddresses = Mapping[str, str | Sequence[str]]
+"""Addresses of reductions by the plan's name for a need; several for a need of many."""
 
 
 def needed_reductions(
-    plan: Plan, facts: SweepFacts, source: Source, given: Mapping[str, str] | None = None
+    plan: Plan, facts: SweepFacts, source: Source, given: NeedAddresses | None = None
 ) -> dict[str, ReductionDocument]:
-    """Return the reduction that serves each need of a plan.
+    """Return the reduction that serves each need of a plan; needs of many are left to `gathered_reductions`.
 
     Parameters
     ----------
@@ -39,14 +42,77 @@ def needed_reductions(
     """
     found: dict[str, ReductionDocument] = {}
     for name, need in plan.needs.items():
+        if need.many:
+            continue
         if given is not None and name in given:
-            found[name] = _given(source, plan, need, given[name])
+            (address,) = _addresses(given[name])
+            found[name] = _given(source, plan, need, address)
             continue
         best = _newest(need, facts, source)
         if best is not None:
             found[name] = best
         elif not need.optional:
             raise _missing(plan, need, facts, source)
+    return found
+
+
+def gathered_reductions(
+    plan: Plan, facts: SweepFacts, source: Source, given: NeedAddresses | None = None
+) -> dict[str, tuple[ReductionDocument, ...]]:
+    """Return the reductions that serve each need of many, in the order of cooldowns and sweeps.
+
+    Parameters
+    ----------
+    plan, facts, source, given
+        As in `needed_reductions`.
+
+    Returns
+    -------
+    dict
+        Of each related sweep the newest fitting reduction, if it has one of the outputs that the plan asks for; sweeps of
+        later cooldowns are left out, and optional needs that nothing serves.
+
+    Raises
+    ------
+    BadRequest
+        A need that nothing serves, with the command that makes it.
+    """
+    found: dict[str, tuple[ReductionDocument, ...]] = {}
+    cooldowns = source.cooldowns()
+    for name, need in plan.needs.items():
+        if not need.many:
+            continue
+        if given is not None and name in given:
+            documents = [_given(source, plan, need, address) for address in _addresses(given[name])]
+        else:
+            documents = _newest_of_each(plan, name, need, facts, source)
+        if documents:
+            documents.sort(key=lambda each: (cooldowns.index(each.cooldown), each.sweep))
+            found[name] = tuple(documents)
+        elif not need.optional:
+            raise _missing(plan, need, facts, source)
+    return found
+
+
+def _addresses(given: str | Sequence[str]) -> tuple[str, ...]:
+    return (given,) if isinstance(given, str) else tuple(given)
+
+
+def _newest_of_each(
+    plan: Plan, name: str, need: Need, facts: SweepFacts, source: Source
+) -> list[ReductionDocument]:
+    """Return the newest reduction of every related sweep that has one of the outputs that the plan takes."""
+    texts = (one for step in plan.step for text in step.take.values() for one in text.split(" | "))
+    wanted = {text.partition("#")[2] for text in texts if text.startswith(f"need:{name}#")}
+    known = source.cooldowns()
+    so_far = set(known[: known.index(facts.cooldown) + 1])
+    found = []
+    for address in dict.fromkeys(each for group in _related(need, facts, source) for each in group):
+        documents = source.reductions(need.plan, address)
+        if address.partition("/")[0] in so_far and documents:
+            newest = max(documents, key=lambda document: (document.end, document.address))
+            if wanted & {output.name for output in newest.outputs}:
+                found.append(newest)
     return found
 
 
@@ -73,6 +139,13 @@ def _related(need: Need, facts: SweepFacts, source: Source) -> Iterator[list[str
     if need.relation == "same-sweep":
         yield [facts.address]
         return
+    if need.relation == "same-dose":
+        yield [
+            f"{facts.cooldown}/{entry.name}"
+            for entry in _sweeps(source.accessions(facts.cooldown))
+            if _same(entry, facts) and _same_filling(entry, facts)
+        ]
+        return
     same = _same_sample if need.relation == "same-sample-any-cooldown" else _same
     same_elsewhere = _same_sample if need.relation == "same-sample-any-cooldown" else _same_name
     yield [
@@ -97,6 +170,11 @@ def _sweeps(accessions: list[AccessionDocument]) -> list[SweepEntry]:
 
 def _same(entry: SweepEntry, facts: SweepFacts) -> bool:
     return entry.cell is not None and entry.cell == facts.entry.cell
+
+
+def _same_filling(entry: SweepEntry, facts: SweepFacts) -> bool:
+    """Whether the same helium was in the cell: the same last dose, or none at all."""
+    return (entry.after_dose, entry.empty_cell) == (facts.entry.after_dose, facts.entry.empty_cell)
 
 
 def _same_name(entry: SweepEntry, facts: SweepFacts) -> bool:

@@ -67,6 +67,7 @@ def applies(
     terms = plan.applies
     if sweep.kind not in terms.sweep_kinds or terms.empty_cell not in (None, sweep.empty_cell):
         return False
+    dosed = terms.doses in (None, bool(sweep.doses))
     if cell is not None and terms.cell_kinds and getattr(cell, "kind", None) not in terms.cell_kinds:
         return False
     if terms.gas is not None and isinstance(sweep, Sweep) and sweep.gas != terms.gas:
@@ -78,8 +79,8 @@ def applies(
     ):
         return False
     if terms.has_pores is not None and isinstance(substrate, Substrate):
-        return (substrate.pore_diameter is not None) == terms.has_pores
-    return True
+        return dosed and (substrate.pore_diameter is not None) == terms.has_pores
+    return dosed
 
 
 def _coated(cell: AnyRecord, substrate: AnyRecord | None) -> bool:

@@ -102,9 +102,9 @@ def replay(document: ReductionDocument, source: Source, *, clock: Callable[[], d
     return Replay(outcome, differences, changed, _software(document, outcome.document))
 
 
-def recorded_needs(document: ReductionDocument, source: Source) -> dict[str, str]:
-    """Return which reduction served which need, from the recorded inputs."""
-    found: dict[str, str] = {}
+def recorded_needs(document: ReductionDocument, source: Source) -> dict[str, str | list[str]]:
+    """Return which reduction served which need, and which ones a need of many, from the recorded inputs."""
+    found: dict[str, str | list[str]] = {}
     used = dict.fromkeys(
         address
         for entry in document.inputs
@@ -114,7 +114,7 @@ def recorded_needs(document: ReductionDocument, source: Source) -> dict[str, str
         plan = source.reduction(address).plan.name
         for name, need in document.plan.needs.items():
             if need.plan == plan:
-                found[name] = address
+                found[name] = [*found.get(name, []), address] if need.many else address
     missing = [name for name, need in document.plan.needs.items() if name not in found and not need.optional]
     if missing:
         raise BadRequest(

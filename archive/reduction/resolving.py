@@ -36,10 +36,19 @@ class Resolver:
     facts : SweepFacts
     needs : mapping of str to ReductionDocument
         By the plan's names for them.
+    many : mapping of str to tuple of ReductionDocument
+        Those that are taken together.
     """
 
-    def __init__(self, source: Source, facts: SweepFacts, needs: Mapping[str, ReductionDocument]) -> None:
+    def __init__(
+        self,
+        source: Source,
+        facts: SweepFacts,
+        needs: Mapping[str, ReductionDocument],
+        many: Mapping[str, tuple[ReductionDocument, ...]] | None = None,
+    ) -> None:
         self.source, self.facts, self.needs = source, facts, needs
+        self.many = many or {}
         self.sources: dict[str, SourceEntry] = {}
 
     def add_sources(self, entries: Iterable[SourceEntry]) -> None:
@@ -98,8 +107,22 @@ class Resolver:
     def _need(self, name: str) -> Given | None:
         need, _, output = name.partition("#")
         document = self.needs.get(need)
-        if document is None:
-            return None
+        return None if document is None else self._output_of(document, output)
+
+    def gathered(self, name: str) -> list[Given | None] | None:
+        """Return what ``need:NAME#OUTPUT`` stands for in each reduction of a need of many.
+
+        Returns
+        -------
+        list or None
+            None in the place of a reduction without the output; None in place of all if this is no need of many, or none
+            of its reductions has the output.
+        """
+        need, _, output = name.partition("#")
+        found = [self._output_of(document, output) for document in self.many.get(need, ())]
+        return found if any(each is not None for each in found) else None
+
+    def _output_of(self, document: ReductionDocument, output: str) -> Given | None:
         entry = next((each for each in document.outputs if each.name == output), None)
         if entry is None:
             return None
@@ -151,16 +174,7 @@ class Resolver:
                 f"describe the column, its quantity and its unit: {sheet}",
             )
         if kind == "need":
-            need, _, output = name.partition("#")
-            document = self.needs.get(need)
-            if document is None:
-                return Missing(
-                    f"no reduction serves as {need}", f"reduce the sweep that gives {output} first"
-                )
-            return Missing(
-                f"{document.address} has no output {output}",
-                f"reduce {document.sweep} again with a plan that gives {output}",
-            )
+            return self._why_no_need(name)
         head, _, field = name.partition(".")
         if field and head in ("cell", "substrate", "sample"):
             address = getattr(self.facts.entry, head)
@@ -169,3 +183,18 @@ class Resolver:
                 f"no {head} {where}", f"write a new revision of the record that states it, and {sheet}"
             )
         return Missing(f"the sheet states no {name}", sheet)
+
+    def _why_no_need(self, name: str) -> Missing:
+        need, _, output = name.partition("#")
+        if need in self.many:
+            return Missing(
+                f"none of the {len(self.many[need])} reductions that serve as {need} has an output {output}",
+                "reduce their sweeps again, and see why that output is missing",
+            )
+        document = self.needs.get(need)
+        if document is None:
+            return Missing(f"no reduction serves as {need}", f"reduce the sweep that gives {output} first")
+        return Missing(
+            f"{document.address} has no output {output}",
+            f"reduce {document.sweep} again with a plan that gives {output}",
+        )

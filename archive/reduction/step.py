@@ -155,6 +155,8 @@ class Step:
         Inputs whose quantity kind is handed over as ``NAME_kind``.
     scales : tuple of str
         Temperature inputs whose scale is handed over as ``NAME_scale``.
+    estimates : tuple of str
+        Inputs whose estimate is handed over as ``NAME_estimate``, unshifted: for a fit that weighs with what its rows share.
     """
 
     name: str
@@ -170,3 +172,4 @@ class Step:
     weights: tuple[str, ...] = ()
     kinds: tuple[str, ...] = ()
     scales: tuple[str, ...] = ()
+    estimates: tuple[str, ...] = ()

@@ -1,0 +1,138 @@
+"""A law of proportion through points whose errors in both coordinates are partly common.
+
+Rules: the common part is never thrown in with the points' own scatter: each source moves its points together; what a source
+does to an ordinate is scaled to the fitted line, so that a common factor (an area, a mass sensitivity) neither pulls the slope
+down nor spoils chi squared.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+from scipy.stats import chi2 as chi2_distribution
+
+from archive.physics.arrays import FloatArray, same_length, series
+
+__all__ = ["Proportion", "proportion"]
+
+_ROUNDS = 20
+_SINGULAR = 1e-10
+"""Least eigenvalue of the correlation matrix of the residuals below which its inverse would be rounding."""
+
+
+@dataclass(frozen=True)
+class Proportion:
+    """Outcome of the fit of ``y = slope x``.
+
+    Attributes
+    ----------
+    slope, standard_uncertainty : float
+        The uncertainty contains all sources that were given.
+    chi2, probability : float
+        With ``dof`` degrees of freedom; the chance of a larger chi squared if the points lie on one line. Not a number for one
+        point.
+    dof : int
+    residuals : ndarray
+        ``y - slope x`` over the standard uncertainty that the residual has, common sources and all.
+    weights : ndarray
+        The slope is ``weights @ y``.
+    """
+
+    slope: float
+    standard_uncertainty: float
+    chi2: float
+    probability: float
+    dof: int
+    residuals: FloatArray
+    weights: FloatArray
+
+
+def proportion(
+    x: npt.ArrayLike,
+    y: npt.ArrayLike,
+    *,
+    contributions_x: npt.ArrayLike,
+    contributions_y: npt.ArrayLike,
+    slope: float | None = None,
+) -> Proportion:
+    """Return the best factor between two columns that are proportional to each other.
+
+    Parameters
+    ----------
+    x, y : array_like
+        Abscissae and ordinates, n >= 1, all > 0.
+    contributions_x, contributions_y : array_like, shape (sources, n)
+        Signed standard uncertainty that each source brings to each abscissa and ordinate; one row may touch a single point (an
+        error of its own) or all of them (a common one), and both coordinates at once.
+    slope : float, optional
+        Slope with which the covariance of the residuals is formed; found by iteration without it.
+
+    Raises
+    ------
+    ValueError
+        Numbers that are not above zero, shapes that do not fit, or sources that leave a residual, or a combination of
+        residuals, without uncertainty.
+
+    Notes
+    -----
+    Generalised least squares of ``y - slope x`` with its covariance ``V = sum c c^T``, ``c = (slope x/y) c_y - slope c_x`` for each
+    source. A source that multiplies all y by one factor then lies along the line: it is in the uncertainty of the slope and in no
+    residual. With V formed from the measured y instead, such a source makes the fit prefer low points.
+
+    References
+    ----------
+    JCGM 100:2008, 5.2 (correlated input quantities). G. D'Agostini, "On the use of the covariance matrix to fit correlated data",
+    Nuclear Instruments and Methods A 346, 306 (1994) (the effect of a common factor; from memory).
+    """
+    X, Y = series("x", x, positive=True), series("y", y, positive=True)
+    same_length(x=X, y=Y)
+    parts = []
+    for name, given in (("contributions_x", contributions_x), ("contributions_y", contributions_y)):
+        part = np.asarray(given, dtype=np.float64)
+        if part.ndim != 2 or part.shape[1] != X.size:
+            raise ValueError(f"{name}: found shape {part.shape}, expected (sources, {X.size})")
+        parts.append(part)
+    if parts[0].shape != parts[1].shape:
+        raise ValueError(
+            f"contributions_x, contributions_y: found {parts[0].shape[0]} and {parts[1].shape[0]} sources, expected as many in both"
+        )
+    beta = float(np.median(Y / X)) if slope is None else slope
+    for _ in range(_ROUNDS):
+        covariance = _covariance(X, Y, parts, beta)
+        weights = _weights(X, covariance)
+        found = float(weights @ Y)
+        if slope is not None or abs(found / beta - 1) < 1e-12:
+            break
+        beta = found
+    residual = Y - found * X
+    dof = X.size - 1
+    chi2 = float(residual @ np.linalg.solve(covariance, residual)) if dof else np.nan
+    return Proportion(
+        slope=found,
+        standard_uncertainty=float(np.sqrt(weights @ covariance @ weights)),
+        chi2=chi2,
+        probability=float(chi2_distribution.sf(chi2, dof)) if dof else np.nan,
+        dof=dof,
+        residuals=residual / np.sqrt(np.diag(covariance)),
+        weights=weights,
+    )
+
+
+def _covariance(X: FloatArray, Y: FloatArray, parts: list[FloatArray], beta: float) -> FloatArray:
+    moved = parts[1] * (beta * X / Y) - beta * parts[0]
+    covariance = np.asarray(moved.T @ moved)
+    spread = np.sqrt(np.diag(covariance))
+    if not (spread > 0).all():
+        raise ValueError(f"y[{int(np.argmax(spread <= 0))}]: its residual has no uncertainty")
+    if float(np.linalg.eigvalsh(covariance / np.outer(spread, spread))[0]) < _SINGULAR:
+        raise ValueError(
+            "contributions_y: all sources are common to the points, so nothing says how closely these should lie on one line"
+        )
+    return covariance
+
+
+def _weights(X: FloatArray, covariance: FloatArray) -> FloatArray:
+    solved = np.linalg.solve(covariance, X)
+    return np.asarray(solved / float(X @ solved))
