@@ -12,6 +12,7 @@ from archive.errors import InvalidSheet, NotAnArchive
 from archive.intake.sheet import LineMap, validated
 from archive.intake.thresholds import Thresholds
 from schemas.base import Record, Text
+from schemas.deposit import Deposit
 
 __all__ = ["SETTINGS_NAME", "Settings", "read_settings", "settings_text"]
 
@@ -30,6 +31,10 @@ class Settings(Record):
     thresholds: Thresholds = Field(
         default_factory=Thresholds, description="The lab's own limits of the checks."
     )
+    exchange: Deposit = Field(
+        default_factory=lambda: Deposit(),
+        description="Authors, publisher and licence of packages that leave the archive.",
+    )
 
     def index_address(self, root: Path) -> str:
         """Address of the index, with the place of a SQLite file filled in."""
@@ -47,7 +52,15 @@ def settings_text(name: str, index: str | None) -> str:
     ]
     if index is not None:
         lines.append(f"index = {_quoted(index)}")
-    lines += ["", "# Limits of the checks, where this laboratory sets its own:", "# [thresholds]", ""]
+    lines += [
+        "",
+        "# Limits of the checks, where this laboratory sets its own:",
+        "# [thresholds]",
+        "",
+        "# Who made the data, for packages that leave the archive (stillroom export):",
+        "# [exchange]",
+        "",
+    ]
     return "\n".join(lines)
 
 

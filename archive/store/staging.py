@@ -21,27 +21,30 @@ from archive.errors import AlreadySealed, BadRequest, DamagedFile, MissingFile
 from archive.store import durable
 from archive.store.names import is_key
 
-__all__ = ["BATCH_SUFFIX", "decided", "name_all", "sweep_staging"]
+__all__ = ["decide", "name_all", "new_plan", "sweep_staging"]
 
-BATCH_SUFFIX = ".batch"
+_BATCH_SUFFIX = ".batch"
 _FORMAT = "stillroom-batch/1"
 _UNFINISHED_PLAN = re.compile(r"\.[0-9a-f]{16}\.batch\.[0-9a-f]{8}\.partial")
 
 
-def decided(root: Path, files: Sequence[tuple[Path, str]]) -> Path:
-    """Return the path of the plan by which settled staging files are to be sealed together, now that it is on disk.
+def new_plan(root: Path) -> Path:
+    """Return a path for a plan by which staging files are to be sealed together."""
+    return root / "staging" / f"{secrets.token_hex(8)}{_BATCH_SUFFIX}"
+
+
+def decide(plan: Path, files: Sequence[tuple[Path, str]]) -> None:
+    """Write the plan by which settled staging files are to be sealed together; once it is there, they will be.
 
     Parameters
     ----------
-    root : Path
-        The archive's folder.
+    plan : Path
+        From `new_plan`.
     files : sequence of (path, key)
         Staging files and the keys that they are to have, in the order of naming.
     """
-    path = root / "staging" / f"{secrets.token_hex(8)}{BATCH_SUFFIX}"
-    plan = {"format": _FORMAT, "files": [[staged.name, key] for staged, key in files]}
-    durable.write_whole(path, json.dumps(plan, indent=1).encode())
-    return path
+    content = {"format": _FORMAT, "files": [[staged.name, key] for staged, key in files]}
+    durable.write_whole(plan, json.dumps(content, indent=1).encode())
 
 
 def name_all(root: Path, plan: Path) -> list[str]:
@@ -120,7 +123,7 @@ def sweep_staging(root: Path) -> list[str]:
     folder = root / "staging"
     if not folder.is_dir():
         return []
-    plans = sorted(path for path in folder.iterdir() if path.name.endswith(BATCH_SUFFIX) and path.is_file())
+    plans = sorted(path for path in folder.iterdir() if path.name.endswith(_BATCH_SUFFIX) and path.is_file())
     sentences = [_finished(root, plan) for plan in plans]
     # What belongs to a plan that could not be finished is not swept: it is all there is of it.
     kept = {plan for plan in plans if plan.exists()}
