@@ -28,6 +28,9 @@ class Substrate(NamedRecord):
         default=None,
         description="How the area is known: gas, temperature, range, cross-section, or geometry.",
     )
+    volume: Annotated[Quantity, OfKind("volume")] | None = Field(
+        default=None, description="Outer volume of a porous substrate, pores included."
+    )
     pore_diameter: Annotated[Quantity, OfKind("length")] | None = None
     roughness: Annotated[Quantity, OfKind("length")] | None = None
     porosity: Annotated[Quantity, OfKind("fraction")] | None = None
@@ -59,5 +62,9 @@ class Sample(NamedRecord):
     isotope: Isotope
     helium3_fraction: Annotated[Quantity, OfKind("fraction")] | None = Field(
         default=None, description="Amount fraction of 3He; leave it out when it is not known."
+    )
+    area_per_molecule: Annotated[Quantity, OfKind("atoms_area")] | None = Field(
+        default=None,
+        description="Area of one molecule in a full first layer, for areas by adsorption; a convention for N2 and Ar, not standardised for helium.",
     )
     gas_source: Text = Field(description="Where the gas came from, its stated purity, and traps it passed.")

@@ -225,6 +225,14 @@ class Sweep(Record):
         default=(), description="Doses admitted during a dose run or isotherm, in order."
     )
     thermometer: ChannelName | None = Field(default=None, description="Channel whose temperature counts.")
+    calibrates: ChannelName | None = Field(
+        default=None,
+        description="Channel of the thermometer under calibration; `thermometer` then is the reference.",
+    )
+    liquid_depth: Annotated[Quantity, OfKind("length")] | None = Field(
+        default=None,
+        description="Depth of the thermometers below the liquid surface whose vapour pressure was read.",
+    )
     gas: Literal["helium", "adsorptive"] = Field(
         default="helium",
         description="`adsorptive`: an isotherm with another gas (N2, Ar) that is no part of the helium bookkeeping.",
@@ -235,6 +243,10 @@ class Sweep(Record):
     bath_temperature: Annotated[Quantity, OfKind("temperature")] | None = Field(
         default=None,
         description="Temperature of a run at one temperature, with scale, when no channel holds it.",
+    )
+    saturated_pressure: Annotated[Quantity, OfKind("pressure")] | None = Field(
+        default=None,
+        description="Saturated vapour pressure of the gas at the temperature of the film, when no channel holds it.",
     )
     direction: Literal["up", "down", "both", "hold", "none"] = "none"
     rate: Annotated[Quantity, OfKind("temperature_rate")] | None = None
@@ -254,4 +266,11 @@ class Sweep(Record):
             raise ValueError(
                 "empty_cell = true and after_dose contradict each other; keep the one that is true"
             )
+        if self.calibrates is not None:
+            if self.kind != "calibration":
+                raise ValueError('calibrates belongs to a sweep of kind "calibration"')
+            if self.thermometer is None or self.thermometer == self.calibrates:
+                raise ValueError(
+                    "a sweep that calibrates a thermometer names the reference in `thermometer`, another channel"
+                )
         return self

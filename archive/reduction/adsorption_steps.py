@@ -17,18 +17,20 @@ from schemas.substrate import Sample
 
 __all__ = ["BetParameters", "PlateauParameters", "bet", "plateau", "relative_pressure"]
 
-CROSS_SECTIONS = {"N2": 0.162, "Ar": 0.142}
-"""nm^2 per molecule, N2 at 77 K and Ar at 87 K by convention: M. Thommes et al., Pure Appl. Chem. 87, 1051 (2015)."""
-
 
 class BetParameters(Record):
-    """What BET needs beyond the isotherm."""
+    """What BET needs beyond the isotherm. No area per molecule is assumed: it is stated here or in the record of the gas."""
 
     cross_section_nm2: float | None = None
-    """Area of one molecule; by convention for N2 and Ar, to be given for any other gas."""
+    """Area of one molecule, whatever the gas."""
+    nitrogen_nm2: float | None = None
+    argon_nm2: float | None = None
+    """Those of the two gases that have a convention (N2 at 77 K, Ar at 87 K), used for nothing else."""
     low: float | None = None
     high: float | None = None
     """Range of relative pressure; chosen by the criteria when none."""
+    least_r_squared: float = 0.999
+    """Of the straight line (common practice, no source)."""
 
 
 class PlateauParameters(Record):
@@ -84,6 +86,18 @@ def _range_choice(x: FloatArray, n: FloatArray, found: BetArea) -> tuple[float, 
     return tuple(float(part) / math.sqrt(3) for part in largest)
 
 
+def _area_per_molecule(
+    parameters: BetParameters, gas: str, recorded: float | None
+) -> tuple[float | None, str]:
+    """Return the area of one molecule, m^2, and where it is stated."""
+    if parameters.cross_section_nm2 is not None:
+        return parameters.cross_section_nm2 * 1e-18, "stated in the plan"
+    if recorded is not None:
+        return recorded, "stated in the record of the gas"
+    convention = {"N2": parameters.nitrogen_nm2, "Ar": parameters.argon_nm2}.get(gas)
+    return (None, "") if convention is None else (convention * 1e-18, "the convention for this gas")
+
+
 def bet(
     parameters: BetParameters,
     *,
@@ -91,9 +105,21 @@ def bet(
     amount: FloatArray,
     amount_kind: str,
     sample: Sample | None,
+    cross_section: float | None = None,
     u_amount: FloatArray | None = None,
 ) -> Outcome:
     """Return monolayer, constant and area of an isotherm by the method of Brunauer, Emmett and Teller.
+
+    Parameters
+    ----------
+    relative_pressure, amount : ndarray
+        Pressure over the saturated one; mol or mol/kg.
+    sample : Sample or None
+        The gas.
+    cross_section : float or None
+        Area of one molecule as the record of the gas states it, m^2.
+    u_amount : ndarray or None
+        Point uncertainty of the amounts.
 
     Raises
     ------
@@ -104,29 +130,25 @@ def bet(
     -----
     The fit's variances are the larger of what the scatter about the line and what the amounts' own uncertainty make. The
     choice of range is a source of its own: all results between those of the range and of the ranges one point shorter at
-    either end count alike (JCGM 100:2008, 4.3.7). The area per molecule carries no uncertainty here: it is a convention.
+    either end count alike (JCGM 100:2008, 4.3.7). An area per molecule that is a convention carries no uncertainty; one from
+    the record of the gas carries what is stated there. Without one there is a monolayer and no area.
     """
     gas = sample.isotope if sample is not None else "a gas that is not recorded"
-    cross = parameters.cross_section_nm2 or CROSS_SECTIONS.get(gas)
+    each, stated = _area_per_molecule(parameters, gas, cross_section)
     rows = known_rows(relative_pressure, amount)
     bounds = None if parameters.low is None or parameters.high is None else (parameters.low, parameters.high)
-    # Without an area per molecule there is a monolayer but no area; the line is fitted with a unit one.
-    per_molecule = math.nan if cross is None else cross * 1e-18
+    x, n = relative_pressure[rows], amount[rows]
+    # Without an area per molecule the line is fitted with a unit one.
     found = bet_area(
-        relative_pressure[rows], amount[rows], cross_section=(cross or 1.0) * 1e-18, bounds=bounds
+        x, n, cross_section=each or 1e-18, bounds=bounds, least_r_squared=parameters.least_r_squared
     )
     if not found.accepted:
         raise ValueError(f"amount: no BET line can be given: {'; '.join(found.reasons)}")
     names: tuple[str, ...] = ("monolayer", "constant", "area")
-    x, n = relative_pressure[rows], amount[rows]
     own = _propagated(
-        x,
-        n,
-        u_amount[rows] if u_amount is not None else None,
-        cross_section=found.cross_section,
-        low=found.low,
-        high=found.high,
-    )
+        x, n, u_amount[rows] if u_amount is not None else None,
+        cross_section=found.cross_section, low=found.low, high=found.high,
+    )  # fmt: skip
     variances = np.maximum(np.square([found.u_monolayer, found.u_constant, found.u_area]), own)
     joint = np.diag(variances)
     # The area is the monolayer times a constant.
@@ -135,39 +157,46 @@ def bet(
     source = SourceEntry(
         name="own range of the BET line", description="choice of the range of relative pressure", level="run"
     )
-    if math.isnan(per_molecule):
+    if each is None:
         names, joint, choice = names[:2], joint[:2, :2], choice[:2]
     outputs = dict(zip(names, (found.monolayer, found.constant, found.area), strict=False))
-    label = "He-BET" if "He" in gas else f"{gas} BET"
+    on_line = (relative_pressure >= found.low) & (relative_pressure <= found.high) & rows
+    with np.errstate(divide="ignore", invalid="ignore"):
+        ordinate = np.where(rows, relative_pressure / (amount * (1 - relative_pressure)), math.nan)
+        rising = np.where(rows, amount * (1 - relative_pressure), math.nan)
+    fitted = np.where(on_line, found.intercept + found.slope * relative_pressure, math.nan)
+    return Outcome(
+        outputs | ({"area": math.nan} if each is None else {}) | {"range_low": found.low, "range_high": found.high, "x_at_monolayer": found.x_at_monolayer, "rising": rising, "residual": (ordinate - fitted) * found.monolayer},
+        covariance=Covariance(names, joint), verdicts={"area": "area per molecule not given"} if each is None else {},
+        held={"low": found.low, "high": found.high},
+        shared={name: {source.name: part} for name, part in zip(names, choice, strict=True)}, sources=(source,),
+        facts={
+            "label": "He-BET" if "He" in gas else f"{gas} BET", "per_molecule": "no stated area" if each is None else f"{each * 1e18:g} nm^2 ({stated})",
+            "low": found.low, "high": found.high, "points": found.points, "r_squared": found.r_squared,
+            "x_at": found.x_at_monolayer, "x_expected": found.x_expected, "amounts_in": amount_kind.replace("_", " "),
+        },
+        findings=_findings(gas, each),
+    )  # fmt: skip
+
+
+def _findings(gas: str, each: float | None) -> tuple[Finding, ...]:
     findings: tuple[Finding, ...] = ()
     if "He" in gas:
         findings = (
             Finding(
-                code="helium-bet",
-                severity="note",
+                code="helium-bet", severity="note",
                 what="an area by helium rests on an area per atom that is not standardised; never merge it with areas by nitrogen",
             ),
-        )
-    verdicts = {}
-    if math.isnan(per_molecule):
-        outputs["area"] = math.nan
-        verdicts["area"] = "area per molecule not given"
+        )  # fmt: skip
+    if each is None:
         findings += (
             Finding(
                 code="cross-section-asked", severity="warning",
                 what=f"the area per molecule (cross-section) of {gas} is not standardised and was not given, so there is a monolayer but no area",
-                remedy="copy the plan, set cross_section_nm2 with its source, and reduce again",
+                remedy="state area_per_molecule in the record of the gas, or cross_section_nm2 in a copy of the plan, with its source, and reduce again",
             ),
         )  # fmt: skip
-    return Outcome(
-        outputs, covariance=Covariance(names, joint), verdicts=verdicts, held={"low": found.low, "high": found.high},
-        shared={name: {source.name: part} for name, part in zip(names, choice, strict=True)}, sources=(source,),
-        facts={
-            "label": label, "per_molecule": "no stated area" if cross is None else f"{cross:g} nm^2", "low": found.low, "high": found.high, "points": found.points, "r_squared": found.r_squared,
-            "x_at_monolayer": found.x_at_monolayer, "x_expected": found.x_expected, "amounts_in": amount_kind.replace("_", " "),
-        },
-        findings=findings,
-    )  # fmt: skip
+    return findings
 
 
 def plateau(parameters: PlateauParameters, *, relative_pressure: FloatArray, amount: FloatArray) -> Outcome:

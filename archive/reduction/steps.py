@@ -295,12 +295,17 @@ STEPS: tuple[Step, ...] = (
         name="bet-area", version=1, function=adsorption_steps.bet, parameters=adsorption_steps.BetParameters,
         takes={
             "relative_pressure": Port("relative_pressure|pressure_ratio", "array", "relative pressure"), "amount": Port("amount|specific_amount", "array", "amount adsorbed"), "sample": _SAMPLE,
+            "cross_section": Port("atoms_area", "scalar", "area of one molecule", optional=True),
         },
         yields={
             "monolayer": Port("same:amount", "scalar", "monolayer capacity"), "constant": Port("number", "scalar", "constant C"),
             "area": Port("area-of:amount", "scalar", "area by the monolayer"),
+            "range_low": Port("relative_pressure", "scalar", "lower end of the line"), "range_high": Port("relative_pressure", "scalar", "upper end of the line"),
+            "x_at_monolayer": Port("relative_pressure", "scalar", "where the isotherm reaches the monolayer"),
+            "rising": Port("same:amount", "array", "amount times 1 - p/p0, which must rise over the line"),
+            "residual": Port("number", "array", "x/(n(1 - x)) less line, times the monolayer"),
         },
-        sentence="The {label} isotherm, analysed between p/p0 = {low} and {high} ({points} points) with {per_molecule} per molecule, gives a monolayer of {monolayer} (constant C = {constant}).",
+        sentence="The {label} isotherm, analysed between p/p0 = {low} and {high} ({points} points) with {per_molecule} per molecule, gives a monolayer of {monolayer} (constant C = {constant}), reached at p/p0 = {x_at}.",
         citations=("bet-1938", "thommes-2015"), spread="refit", weights=("amount",), kinds=("amount",),
     ),
     Step(

@@ -172,10 +172,15 @@ def test_the_published_bet_example_and_its_counterexample() -> None:
     x = np.array([0.05, 0.10, 0.15, 0.20, 0.25, 0.30])
     n = np.array([0.8846, 1.0194, 1.1134, 1.2019, 1.2945, 1.3960])
     nitrogen = Sample(name="nitrogen", revision=1, isotope="N2", gas_source="cylinder")
-    found = bet(
-        BetParameters(), relative_pressure=x, amount=n, amount_kind="specific_amount", sample=nitrogen
-    )
+    common: dict[str, Any] = {"relative_pressure": x, "amount_kind": "specific_amount", "sample": nitrogen}
+    found = bet(BetParameters(nitrogen_nm2=0.162, argon_nm2=0.142), amount=n, **common)
     assert float(found.outputs["area"]) == pytest.approx(97.5576e3, rel=1e-5)
+    # Nothing is assumed, not even for nitrogen; what the record of the gas states goes before the convention.
+    asked = bet(BetParameters(argon_nm2=0.142), amount=n, **common)
+    assert np.isnan(float(asked.outputs["area"]))
+    assert [finding.code for finding in asked.findings] == ["cross-section-asked"]
+    flat = bet(BetParameters(nitrogen_nm2=0.162), amount=n, cross_section=0.135e-18, **common)
+    assert float(flat.outputs["area"]) == pytest.approx(97.5576e3 * 0.135 / 0.162, rel=1e-5)
     falling = np.array([0.8580, 0.9582, 1.0132, 1.0577, 1.1003, 1.1447])
     with pytest.raises(ValueError, match="no BET line"):
         bet(
