@@ -189,10 +189,12 @@ class SourceEntry(Record):
     level: Literal["run", "cell", "laboratory"] = Field(description="Whom it is common to.")
     address: str | None = None
     distribution: Literal["normal", "rectangular"] = Field(
-        default="normal", description="Of the values that the source may have: JCGM 100:2008, 4.3.7, for rectangular."
+        default="normal",
+        description="Of the values that the source may have: JCGM 100:2008, 4.3.7, for rectangular.",
     )
     stated: Value | None = Field(
-        default=None, description="What is uncertain, with its standard uncertainty, where that is one number."
+        default=None,
+        description="What is uncertain, with its standard uncertainty, where that is one number.",
     )
 
 

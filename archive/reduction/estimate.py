@@ -72,6 +72,10 @@ class Estimate:
             self, "shared", MappingProxyType({n: p for n, p in shared.items() if np.any(p != 0)})
         )
 
+    def __reduce__(self) -> tuple[type[Estimate], tuple[object, ...]]:
+        """Return what makes it again in another process, which cannot be sent a read-only mapping."""
+        return Estimate, (self.value, self.quantity, self.point, dict(self.shared), self.scale)
+
     @property
     def scalar(self) -> bool:
         """Whether this is one number."""

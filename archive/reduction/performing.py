@@ -13,7 +13,7 @@ from pydantic import ValidationError
 
 from archive.errors import BadRequest, StepFailed
 from archive.reduction.estimate import Estimate, FloatArray
-from archive.reduction.outputs import Found
+from archive.reduction.outputs import Found, value_of
 from archive.reduction.propagation import Propagated, fit_contributions, propagate
 from archive.reduction.step import Covariance, Given, Outcome, Step
 from archive.reduction.step_record import step_record
@@ -21,7 +21,7 @@ from schemas.base import Record
 from schemas.kinds import kind_of
 from schemas.lineage import SourceEntry, StepRecord
 
-__all__ = ["Performed", "perform", "step_parameters"]
+__all__ = ["Performed", "StepCall", "perform", "step_parameters"]
 
 
 @dataclass(frozen=True)
@@ -35,6 +35,10 @@ class Performed:
         Outputs under their names in the plan.
     sources : tuple of SourceEntry
         Sources that arose here.
+    outcome : Outcome
+        As the step's function gave it.
+    call : StepCall
+        The function with everything that is not a number fixed.
     covariance : dict
         Names (in the plan) and matrix of what was fitted; empty if nothing was.
     """
@@ -42,7 +46,34 @@ class Performed:
     record: StepRecord
     found: tuple[Found, ...]
     sources: tuple[SourceEntry, ...]
+    outcome: Outcome
+    call: StepCall
     covariance: dict[str, Any] = field(default_factory=dict)
+
+
+@dataclass(frozen=True)
+class StepCall:
+    """A step's function with its parameters, records and weights fixed, so that only numbers are left to be given.
+
+    Attributes
+    ----------
+    step : Step
+    parameters : Record
+    fixed : dict
+        Records, weights, kinds and scales, by argument.
+    """
+
+    step: Step
+    parameters: Record
+    fixed: dict[str, object]
+
+    def __call__(self, values: Mapping[str, FloatArray], held: Mapping[str, Any]) -> Outcome:
+        """Return the outcome for input values and held choices."""
+        chosen = self.parameters.model_copy(update=dict(held)) if held else self.parameters
+        numbers = {
+            port: _number(value) for port, value in values.items() if self.step.takes[port].form != "record"
+        }
+        return self.step.function(chosen, **numbers, **self.fixed)
 
 
 def step_parameters(step: Step, chosen: Mapping[str, Any], *, place: str) -> Record:
@@ -110,10 +141,9 @@ def perform(
         if output not in step.yields:
             raise BadRequest(f"{place} has no output {output!r}", expected=f"one of {', '.join(step.yields)}")
     estimates = {port: each.estimate for port, each in given.items() if each.estimate is not None}
+    call = _call(step, parameters, given, estimates)
     try:
-        spread = propagate(
-            _call(step, parameters, given, estimates), estimates, elementwise=step.spread == "elementwise"
-        )
+        spread = propagate(call, estimates, elementwise=step.spread == "elementwise")
         joint = _joint_covariance(spread)
         axes = [] if joint is None else fit_contributions(joint)
     except (ValueError, ArithmeticError) as error:
@@ -139,6 +169,9 @@ def perform(
                 description=f"own uncertainty of {name}",
                 level="run",
                 address=f"{reduction}#{name}",
+                stated=value_of(
+                    Estimate(estimate.value, estimate.quantity, estimate.points, scale=estimate.scale)
+                ),
             )
             sources.append(entry)
             estimate = Estimate(
@@ -160,7 +193,9 @@ def perform(
         begin=begin,
         end=clock(),
     )
-    return Performed(record, tuple(found), tuple(sources), _covariance(spread.outcome, give))
+    return Performed(
+        record, tuple(found), tuple(sources), spread.outcome, call, _covariance(spread.outcome, give)
+    )
 
 
 def _joint_covariance(spread: Propagated) -> Covariance | None:
@@ -228,7 +263,7 @@ def _check_inputs(step: Step, given: Mapping[str, Given], place: str) -> None:
 
 def _call(
     step: Step, parameters: Record, given: Mapping[str, Given], estimates: Mapping[str, Estimate]
-) -> Callable[[Mapping[str, FloatArray], Mapping[str, Any]], Outcome]:
+) -> StepCall:
     fixed: dict[str, object] = {}
     for port, declared in step.takes.items():
         each = given.get(port)
@@ -243,15 +278,9 @@ def _call(
 
     for port in step.scales:
         fixed[f"{port}_scale"] = estimates[port].scale if port in estimates else None
-
-    def call(values: Mapping[str, FloatArray], held: Mapping[str, Any]) -> Outcome:
-        chosen = parameters.model_copy(update=dict(held)) if held else parameters
-        numbers = {
-            port: _number(value) for port, value in values.items() if step.takes[port].form != "record"
-        }
-        return step.function(chosen, **numbers, **fixed)
-
-    return call
+    for port in step.estimates:
+        fixed[f"{port}_estimate"] = estimates.get(port)
+    return StepCall(step, parameters, fixed)
 
 
 def _number(value: FloatArray) -> float | FloatArray:

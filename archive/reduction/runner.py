@@ -6,17 +6,19 @@ The runner computes nothing itself and reads no clock but the one it is given: e
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from datetime import datetime
 from typing import Any
 
 from archive.errors import BadRequest, StepFailed
 from archive.reduction.digest import record_digest
 from archive.reduction.facts import SweepFacts, sweep_facts
-from archive.reduction.needs import needed_reductions
+from archive.reduction.gathering import GatherParameters, gathering_step
+from archive.reduction.needs import NeedAddresses, gathered_reductions, needed_reductions
 from archive.reduction.outputs import Found, Stored, output_arrays, output_entry
 from archive.reduction.performing import perform, step_parameters
 from archive.reduction.planning import applies
+from archive.reduction.repeatable import Repeatable, Repeated
 from archive.reduction.resolving import Resolver
 from archive.reduction.software import software
 from archive.reduction.source import Source
@@ -39,10 +41,13 @@ class ReductionOutcome:
     document : ReductionDocument
     arrays : dict
         Array and attributes by path, as they are to be stored.
+    repeated : Repeated
+        The reduction as a function of its inputs; no part of what is stored.
     """
 
     document: ReductionDocument
     arrays: Stored
+    repeated: Repeated = field(repr=False, compare=False)
 
 
 def run(
@@ -53,7 +58,7 @@ def run(
     number: int,
     clock: Callable[[], datetime],
     supersedes: str | None = None,
-    needs: Mapping[str, str] | None = None,
+    needs: NeedAddresses | None = None,
 ) -> ReductionOutcome:
     """Return a plan carried out on a sweep.
 
@@ -92,7 +97,12 @@ def run(
             remedy=f"see which plans serve it with `stillroom show {sweep_address}`",
         )
     address = f"{sweep_address}@{plan.name}.{number}"
-    resolver = Resolver(source, facts, needed_reductions(plan, facts, source, needs))
+    resolver = Resolver(
+        source,
+        facts,
+        needed_reductions(plan, facts, source, needs),
+        gathered_reductions(plan, facts, source, needs),
+    )
     work = _Work(address, clock, resolver)
     work.findings += _segments(facts)
     for each in plan.step:
@@ -143,6 +153,7 @@ class _Work:
         self.covariances: dict[str, Any] = {}
         self.prepared: dict[tuple[str, str], Given] = {}
         self.missing: dict[str, str] = {}
+        self.repeatable = Repeatable(address)
 
     def take(self, plan: Plan, planned: PlanStep) -> None:
         """Carry out one step of the plan."""
@@ -203,10 +214,28 @@ class _Work:
             return None if each is None else self._output(each)
         if kind == "channel":
             return self._channel(name, quantity)
+        if kind == "need" and name.partition("#")[0] in self.resolver.many:
+            return self._gathered(name)
         given = self.resolver.resolved(kind, name)
         if given is not None:
             self._note_input(given)
         return given
+
+    def _gathered(self, name: str) -> Given | None:
+        """Take an output of many reductions together as one column; what two steps take is gathered once."""
+        results = self.resolver.gathered(name)
+        if results is None:
+            return None
+        need, _, output = name.partition("#")
+        inputs = {f"from_{k}": each for k, each in enumerate(results, 1) if each is not None}
+        for each in inputs.values():
+            self._note_input(each)
+        estimate = next(iter(inputs.values())).estimate
+        assert estimate is not None  # noqa: S101 - outputs of reductions are numbers
+        step = gathering_step(len(results), quantity=estimate.quantity)
+        documents = self.resolver.many[need]
+        parameters = GatherParameters(output=output, reductions=tuple(each.address for each in documents))
+        return self._inserted(step, parameters, inputs, "values", f"{need}_{output}")
 
     def _output(self, each: Found) -> Given:
         return Given(f"{self.address}#{each.name}", each.estimate, digest=output_entry(each).digest)
@@ -224,25 +253,27 @@ class _Work:
             inputs = {"values": given}
             if each.correction is not None:
                 inputs["correction"] = Given(each.address, each.correction)
-            given = self._inserted(each.step, each.parameters, inputs, "values", f"{meant}_{each.suffix}")
+            given = self._inserted(
+                step_named(each.step), each.parameters, inputs, "values", f"{meant}_{each.suffix}"
+            )
         if wanted and self.resolver.is_inverse(meant, wanted):
             name_of = {"period": "period-from-frequency", "dissipation": "dissipation-from-quality-factor"}[
                 wanted
             ]
             step = step_named(name_of)
             given = self._inserted(
-                name_of, step.parameters(), {"values": given}, "inverse", f"{meant}_as_{wanted}"
+                step, step.parameters(), {"values": given}, "inverse", f"{meant}_as_{wanted}"
             )
         self.prepared[(meant, wanted)] = given
         return given
 
     def _inserted(
-        self, name: str, parameters: Record, inputs: dict[str, Given], output: str, called: str
+        self, step: Step, parameters: Record, inputs: dict[str, Given], output: str, called: str
     ) -> Given:
         # A channel that two kinds are made from passes its corrections once.
         known = next((each for each in self.found if each.name == called), None)
         if known is None:
-            self._perform(step_named(name), parameters, inputs, {output: called})
+            self._perform(step, parameters, inputs, {output: called})
             known = self.found[-1]
         return self._output(known)
 
@@ -273,6 +304,7 @@ class _Work:
         self.records.append(done.record.model_copy(update={"findings": placed}))
         self.findings += placed
         self.found += done.found
+        self.repeatable.add(done, given, give)
         if done.covariance:
             self.covariances[f"step {len(self.records)}"] = done.covariance
 
@@ -307,7 +339,8 @@ def _finished(
         end=work.clock(),
         software=software(),
     )
-    return ReductionOutcome(document, output_arrays(work.found, [each.name for each in used]))
+    arrays = output_arrays(work.found, [each.name for each in used])
+    return ReductionOutcome(document, arrays, work.repeatable.finished(work.resolver.sources))
 
 
 def _used_sources(work: _Work) -> list[SourceEntry]:
