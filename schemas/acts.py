@@ -131,7 +131,8 @@ class LeftOutRows(Record):
     rows: tuple[int, int] = Field(description="First and last data row, from 1.")
     reason: Annotated[Text, StringConstraints(min_length=3)]
     data: Sha256 | None = Field(
-        default=None, description="Digest of the rows that were meant; filled in when the amendment is sealed."
+        default=None,
+        description="Digest of the rows that were meant; filled in when the amendment is sealed.",
     )
 
 
@@ -163,6 +164,7 @@ class AmendmentDocument(Record):
     address: str
     cooldown: str
     number: int = Field(ge=1)
+    sequence: int = Field(ge=1, description="Place among the amendments and withdrawals of the cooldown.")
     rests_on: str = Field(description="Newest accession of the cooldown when it was made.")
     because: str
     by: str
@@ -189,7 +191,16 @@ class WithdrawalDocument(Record):
     target: str = Field(description="What is withdrawn; it stays in the archive.")
     cooldown: str | None = None
     number: int = Field(ge=1)
+    sequence: int = Field(
+        ge=1, description="Place among the amendments and withdrawals of the cooldown, or of the revision."
+    )
+    rests_on: str | None = Field(
+        default=None, description="Newest accession of the cooldown when it was made."
+    )
     why: str
     by: str
     made: AwareDatetime
+    entries: tuple[SweepEntry, ...] = Field(
+        default=(), description="Sweeps as they are found from now on, where an amendment is withdrawn."
+    )
     software: Software

@@ -73,6 +73,8 @@ class SearchQuery:
         Largest first.
     limit, offset : int
         At most so many sweeps (None: all), after so many left out.
+    withdrawn : bool
+        Withdrawn sweeps too, marked.
     """
 
     coverage: tuple[float | None, float | None] | None = None
@@ -94,6 +96,7 @@ class SearchQuery:
     descending: bool = False
     limit: int | None = 200
     offset: int = 0
+    withdrawn: bool = False
 
 
 class SweepResult(NamedTuple):
@@ -132,6 +135,12 @@ class SweepRow:
     thermometers: tuple[str, ...] = ()
     results: tuple[SweepResult, ...] = ()
     channels: tuple[str, ...] = ()
+    withdrawn: str | None = None
+    """Why it is withdrawn, if it is."""
+    amended: tuple[str, ...] = ()
+    """Addresses of the amendments that bear on it and count."""
+    flagged: tuple[str, ...] = ()
+    """Its newest reductions that rest on something withdrawn."""
 
 
 @dataclass(frozen=True)
@@ -190,7 +199,7 @@ class RawFileRow:
 
 @dataclass(frozen=True)
 class RecordRow:
-    """A revision of a long-lived thing; `accession` is the earliest one that holds it."""
+    """A revision of a long-lived thing; `accession` is the earliest one that holds it, None if it came in by itself."""
 
     name: str
     revision: int
@@ -198,7 +207,7 @@ class RecordRow:
     address: str
     digest: str
     content: dict[str, Any]
-    accession: str
+    accession: str | None
 
 
 @dataclass(frozen=True)
@@ -251,6 +260,7 @@ class ReductionRow:
     stillroom: str
     newest: bool
     title: str
+    withdrawn: bool = False
 
 
 @dataclass(frozen=True)
@@ -280,3 +290,6 @@ class ResultRow:
     cell: str | None
     coverage: float | None
     coverage_uncertainty: float | None
+    withdrawn: bool = False
+    flagged: bool = False
+    """Whether its reduction rests on something withdrawn."""

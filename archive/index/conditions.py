@@ -6,34 +6,34 @@ Rules: no value is ever written into SQL; a `LIKE` pattern is escaped; every con
 from __future__ import annotations
 
 from collections.abc import Iterator
+from typing import Any
 
 from sqlalchemy import ColumnElement, and_, exists, func, or_, select
-from sqlalchemy.orm import InstrumentedAttribute, aliased
 
 from archive.errors import BadRequest
 from archive.index.answers import ResultCondition, SearchQuery
 from archive.index.columns import utc_text
+from archive.index.found import column_found, newest_reduction, newest_sweep
 from archive.index.searchable import folded
 from archive.index.tables import Channel, Output, Reduction, Sweep, SweepThermometer
 
-__all__ = ["named", "newest_reduction", "newest_sweep", "part_of", "search_conditions"]
+__all__ = ["named", "part_of", "search_conditions"]
 
 # SQLite bounds the length of a pattern and the depth of an expression; a search by hand is far below either.
 _LONGEST_WORD = 1000
 _MOST_WORDS = 100
 
-_Text = InstrumentedAttribute[str] | InstrumentedAttribute[str | None]
 
-
-def named(column: _Text, reference: str) -> ColumnElement[bool]:
+def named(column: Any, reference: str) -> ColumnElement[bool]:
     """Whether a column holds a record: that revision for an address (`TO-4.r2`), any revision for a name."""
     if "." in reference:
-        return column == reference
+        exact: ColumnElement[bool] = column == reference
+        return exact
     # Names hold no dot and "s" follows "r", so this range is every revision and can use an index.
     return or_(column == reference, and_(column >= f"{reference}.r", column < f"{reference}.s"))
 
 
-def part_of(column: _Text, address: str) -> ColumnElement[bool]:
+def part_of(column: Any, address: str) -> ColumnElement[bool]:
     """Whether a column holds an address or one of its parts: channel, output or raw file; for a name, a revision."""
     parts = [column == address]
     # "$" follows "#" and ";" follows ":" in the order of bytes.
@@ -46,45 +46,33 @@ def part_of(column: _Text, address: str) -> ColumnElement[bool]:
     return or_(*parts)
 
 
-def newest_sweep() -> ColumnElement[bool]:
-    """Whether a row of `sweep` is held by the newest accession that has that sweep."""
-    later = aliased(Sweep)
-    return ~exists().where(later.address == Sweep.address, later.number > Sweep.number)
-
-
-def newest_reduction() -> ColumnElement[bool]:
-    """Whether no later reduction of this plan on this sweep exists, and none says that it supersedes this one."""
-    later = aliased(Reduction)
-    replacing = aliased(Reduction)
-    return and_(
-        ~exists().where(
-            later.sweep == Reduction.sweep, later.plan == Reduction.plan, later.number > Reduction.number
-        ),
-        ~exists().where(replacing.supersedes == Reduction.address),
-    )
-
-
-def search_conditions(query: SearchQuery) -> Iterator[ColumnElement[bool]]:
+def search_conditions(query: SearchQuery, *, amended: bool) -> Iterator[ColumnElement[bool]]:
     """Conditions of a search, all of which must hold.
+
+    Parameters
+    ----------
+    query : SearchQuery
+    amended : bool
+        Whether `sweep` is joined to `amended_sweep`; see `archive.index.found`.
 
     Raises
     ------
     BadRequest
         If a time has no offset, or the text is too long to search for.
     """
-    yield newest_sweep()
+    yield newest_sweep(withdrawn_too=query.withdrawn)
     for column, value in ((Sweep.kind, query.kind), (Sweep.cooldown, query.cooldown)):
         if value is not None:
             yield column == value
-    for reference_column, reference in (
-        (Sweep.cell, query.cell),
-        (Sweep.substrate, query.substrate),
-        (Sweep.sample, query.sample),
+    for name, reference in (
+        ("cell", query.cell),
+        ("substrate", query.substrate),
+        ("sample", query.sample),
     ):
         if reference is not None:
-            yield named(reference_column, reference)
+            yield named(column_found(name, amended=amended), reference)
     if query.empty_cell is not None:
-        yield Sweep.empty_cell == query.empty_cell
+        yield column_found("empty_cell", amended=amended) == int(query.empty_cell)
     if query.thermometer is not None:
         yield exists().where(
             _same_sweep(SweepThermometer), named(SweepThermometer.thermometer, query.thermometer)
@@ -96,7 +84,7 @@ def search_conditions(query: SearchQuery) -> Iterator[ColumnElement[bool]]:
     if query.plan is not None:
         followed = Reduction.plan_address if "." in query.plan else Reduction.plan
         yield exists().where(Reduction.sweep == Sweep.address, followed == query.plan)
-    yield from _ranges(query)
+    yield from _ranges(query, amended=amended)
     yield from _times(query)
     yield from (_result(condition) for condition in query.results)
     words = folded(query.text or "").split()
@@ -114,19 +102,22 @@ def _same_sweep(table: type[SweepThermometer | Channel]) -> ColumnElement[bool]:
     return and_(table.accession == Sweep.accession, table.sweep == Sweep.name)
 
 
-def _ranges(query: SearchQuery) -> Iterator[ColumnElement[bool]]:
+def _ranges(query: SearchQuery, *, amended: bool) -> Iterator[ColumnElement[bool]]:
     if query.coverage is not None:
         low, high = query.coverage
-        yield Sweep.coverage_mol_per_m2.is_not(None)
+        coverage = column_found("coverage_mol_per_m2", amended=amended)
+        yield coverage.is_not(None)
         if low is not None:
-            yield Sweep.coverage_mol_per_m2 >= low
+            yield coverage >= low
         if high is not None:
-            yield Sweep.coverage_mol_per_m2 <= high
+            yield coverage <= high
     if query.temperature is not None:
         low, high = query.temperature
+        lowest = column_found("temperature_low_K", amended=amended)
+        highest = column_found("temperature_high_K", amended=amended)
         # A sweep of which only one end is known is a point.
-        coldest = func.coalesce(Sweep.temperature_low_K, Sweep.temperature_high_K)
-        warmest = func.coalesce(Sweep.temperature_high_K, Sweep.temperature_low_K)
+        coldest = func.coalesce(lowest, highest)
+        warmest = func.coalesce(highest, lowest)
         yield coldest.is_not(None)
         if low is not None:
             yield warmest >= low

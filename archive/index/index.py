@@ -19,7 +19,9 @@ from sqlalchemy import Engine
 from sqlalchemy.engine import URL
 
 from archive.errors import BadRequest, DamagedFile, MissingFile
-from archive.index import queries
+from archive.index import act_queries, queries
+from archive.index.act_answers import AmendmentRow, InputRow, RevisionRow, WithdrawalRow
+from archive.index.acts import ActDocument, add_act
 from archive.index.answers import (
     AccessionRow,
     CooldownRow,
@@ -33,17 +35,21 @@ from archive.index.answers import (
     SweepRow,
 )
 from archive.index.engine import REBUILD, WAIT_SECONDS, engine_of, index_name, index_url, reading, writing
+from archive.index.flags import flagged
 from archive.index.record import add_accession, add_reduction, clear
 from archive.index.revision import make, raise_to_head
 from archive.index.sweep_rows import sweep_rows
 from archive.index.tables import Base
 from schemas.lineage import AccessionDocument, ReductionDocument
 
-__all__ = ["Entry", "Index"]
+__all__ = ["Document", "Entry", "Index"]
 
 _LARGEST = 2**63 - 1  # the largest integer of SQLite and of a bigint of PostgreSQL
 
-Entry = tuple[str, str, int, AccessionDocument | ReductionDocument]
+Document = AccessionDocument | ReductionDocument | ActDocument
+"""What a sealed file says about itself."""
+
+Entry = tuple[str, str, int, Document]
 """Key, SHA-256, size and document of one sealed file."""
 
 
@@ -182,6 +188,20 @@ class Index:
         with writing(self._engine, self._url) as connection:
             add_reduction(connection, document, key=key, sha256=sha256, size=size)
 
+    def record_act(self, document: ActDocument, *, key: str, sha256: str, size: int) -> None:
+        """Record a sealed revision, amendment or withdrawal; as `record_accession`."""
+        with writing(self._engine, self._url) as connection:
+            add_act(connection, document, key=key, sha256=sha256, size=size)
+
+    def record(self, document: Document, *, key: str, sha256: str, size: int) -> None:
+        """Record a sealed file of any kind; as `record_accession`."""
+        if isinstance(document, AccessionDocument):
+            self.record_accession(document, key=key, sha256=sha256, size=size)
+        elif isinstance(document, ReductionDocument):
+            self.record_reduction(document, key=key, sha256=sha256, size=size)
+        else:
+            self.record_act(document, key=key, sha256=sha256, size=size)
+
     def rebuild(self, entries: Iterable[Entry]) -> None:
         """Make all rows anew; when anything fails, also in `entries`, the old rows stay.
 
@@ -195,6 +215,8 @@ class Index:
             for key, sha256, size, document in entries:
                 if isinstance(document, AccessionDocument):
                     add_accession(connection, document, key=key, sha256=sha256, size=size)
+                elif not isinstance(document, ReductionDocument):
+                    add_act(connection, document, key=key, sha256=sha256, size=size)
                 else:
                     add_reduction(connection, document, key=key, sha256=sha256, size=size)
 
@@ -231,11 +253,12 @@ class Index:
                 raise BadRequest(
                     "a search cannot count so", field=field, found=str(number), expected=f"0 to {_LARGEST}"
                 )
-        return self._sweeps(queries.search(query))
+        return self._sweeps(queries.search(query, amended=self._is_amended()))
 
-    def sweeps(self, cooldown: str) -> list[SweepRow]:
-        """Sweeps of a cooldown by name, each as the newest accession that has it holds it."""
-        return self._sweeps(queries.sweeps(cooldown=cooldown))
+    def sweeps(self, cooldown: str, *, withdrawn: bool = False) -> list[SweepRow]:
+        """Sweeps of a cooldown by name, each as the newest accession that has it holds it; withdrawn ones if asked for."""
+        asked = queries.sweeps(cooldown=cooldown, amended=self._is_amended(), withdrawn_too=withdrawn)
+        return self._sweeps(asked)
 
     def sweeps_of_accession(self, accession: str) -> list[SweepRow]:
         """Sweeps by name as one accession holds them, older versions too."""
@@ -243,7 +266,8 @@ class Index:
 
     def sweep(self, address: str) -> SweepRow | None:
         """Return the newest version of a sweep; None when the index has none."""
-        return next(iter(self._sweeps(queries.sweeps(address=address))), None)
+        asked = queries.sweeps(address=address, amended=self._is_amended(), withdrawn_too=True)
+        return next(iter(self._sweeps(asked)), None)
 
     def accessions(self, cooldown: str | None = None) -> list[AccessionRow]:
         """Return accessions by cooldown and number."""
@@ -296,10 +320,22 @@ class Index:
         cooldown: str | None = None,
         sweep: str | None = None,
         newest_only: bool = True,
+        withdrawn: bool = False,
     ) -> list[ResultRow]:
-        """Scalar results by sweep, plan, number and place in the plan; parameters as for `reductions`."""
-        asked = queries.results(name=name, cooldown=cooldown, sweep=sweep, newest_only=newest_only)
-        return [ResultRow(**row) for row in self._mappings(asked)]
+        """Scalar results by sweep, plan, number and place in the plan; parameters as for `reductions`.
+
+        Withdrawn ones are left out unless they are asked for; what rests on something withdrawn is flagged.
+        """
+        asked = queries.results(
+            name=name,
+            cooldown=cooldown,
+            sweep=sweep,
+            newest_only=newest_only,
+            amended=self._is_amended(),
+            withdrawn_too=withdrawn,
+        )
+        resting = self.flagged()
+        return [ResultRow(**row, flagged=row["reduction"] in resting) for row in self._mappings(asked)]
 
     def raw_files(self, *, sha256: str | None = None, cooldown: str | None = None) -> list[RawFileRow]:
         """Raw files by accession and name."""
@@ -325,6 +361,49 @@ class Index:
     def dependents(self, address: str) -> list[str]:
         """Addresses of the reductions that took something from an address, or from a part or revision of it."""
         return [row["reduction"] for row in self._mappings(queries.dependents(address))]
+
+    def withdrawals(self, *, counting: bool = True) -> list[WithdrawalRow]:
+        """Withdrawals by target and number; those that were themselves withdrawn only if `counting` is False."""
+        asked = act_queries.withdrawals(counting=counting)
+        return [WithdrawalRow(**row) for row in self._mappings(asked)]
+
+    def amendments(self, cooldown: str | None = None) -> list[AmendmentRow]:
+        """Return amendments by cooldown and number, withdrawn ones too."""
+        return [AmendmentRow(**row) for row in self._mappings(act_queries.amendments(cooldown))]
+
+    def amended_sweeps(self) -> dict[str, tuple[str, ...]]:
+        """Addresses of the amendments that bear on a sweep and count, by sweep."""
+        found: dict[str, tuple[str, ...]] = {}
+        for row in self._mappings(act_queries.amendments_of_sweeps()):
+            found[row["sweep"]] = (*found.get(row["sweep"], ()), row["amendment"])
+        return found
+
+    def revisions(self, name: str | None = None) -> list[RevisionRow]:
+        """Revisions of records and plans that came in outside a cooldown, by kind, name and number."""
+        return [RevisionRow(**row) for row in self._mappings(act_queries.revisions(name))]
+
+    def replaced_records(self, cooldown: str | None = None) -> dict[tuple[str, str], tuple[str, str]]:
+        """What current reductions took instead of what the sheet names.
+
+        Returns
+        -------
+        dict
+            By cooldown and the address that the sheet names: the address taken, and the last reduction that took it.
+        """
+        rows = self._mappings(act_queries.replaced_records(cooldown))
+        return {(row["cooldown"], row["instead_of"]): (row["address"], row["reduction"]) for row in rows}
+
+    def current_inputs(self) -> list[InputRow]:
+        """Return what the current reductions took from outside themselves, by reduction."""
+        return [InputRow(**row) for row in self._mappings(act_queries.inputs())]
+
+    def flagged(self) -> dict[str, tuple[str, ...]]:
+        """Reductions that rest on something withdrawn, each with the addresses of what that is."""
+        with reading(self._engine, self._url) as connection:
+            return flagged(connection)
+
+    def _is_amended(self) -> bool:
+        return bool(self._mappings(queries.anything_amended()))
 
     def statistics(self) -> dict[str, int]:
         """Return counts of what the archive holds (sweeps once each), and bytes."""

@@ -9,11 +9,13 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import Any
 
-from sqlalchemy import Select, Table, and_, cast, exists, func, or_, select
+from sqlalchemy import Select, Table, and_, cast, exists, func, null, or_, select, union_all
 from sqlalchemy.orm import InstrumentedAttribute, aliased
 
+from archive.index.act_tables import AmendedSweep, Revision
 from archive.index.answers import SearchQuery
-from archive.index.conditions import named, newest_reduction, newest_sweep, part_of, search_conditions
+from archive.index.conditions import named, part_of, search_conditions
+from archive.index.found import column_found, last_amended, newest_reduction, newest_sweep, withdrawn
 from archive.index.tables import (
     Accession,
     Channel,
@@ -37,6 +39,7 @@ __all__ = [
     "Query",
     "accessions",
     "all_rows",
+    "anything_amended",
     "channel_names",
     "cooldown_newest",
     "cooldowns",
@@ -60,34 +63,26 @@ __all__ = [
 Query = Select[*tuple[Any, ...]]
 """A SELECT of any columns."""
 
-_SWEEP = (
-    Sweep.address,
-    Sweep.cooldown,
-    Sweep.name,
-    Sweep.kind,
-    Sweep.accession,
-    Sweep.cell,
-    Sweep.substrate,
-    Sweep.sample,
-    Sweep.empty_cell,
-    Sweep.after_dose,
-    Sweep.begin,
-    Sweep.end,
-    Sweep.direction,
-    Sweep.rows,
-    Sweep.coverage_mol_per_m2.label("coverage"),
-    Sweep.coverage_uncertainty_mol_per_m2.label("coverage_uncertainty"),
-    Sweep.temperature_low_K.label("temperature_low"),
-    Sweep.temperature_high_K.label("temperature_high"),
-    Sweep.scale,
-)
+_SWEEP = {
+    **{
+        name: name
+        for name in ("address", "cooldown", "name", "kind", "accession", "cell", "substrate", "sample")
+    },
+    **{name: name for name in ("empty_cell", "after_dose", "begin", "end", "direction", "rows")},
+    "coverage": "coverage_mol_per_m2",
+    "coverage_uncertainty": "coverage_uncertainty_mol_per_m2",
+    "temperature_low": "temperature_low_K",
+    "temperature_high": "temperature_high_K",
+    "scale": "scale",
+}
+"""What a list of sweeps shows, and the column of `sweep` that holds it."""
 
-SORTS: dict[str, tuple[InstrumentedAttribute[Any], ...]] = {
-    "date": (Sweep.begin,),
-    "coverage": (Sweep.coverage_mol_per_m2, Sweep.begin),
-    "temperature": (Sweep.temperature_low_K, Sweep.temperature_high_K),
-    "cell": (Sweep.cell, Sweep.coverage_mol_per_m2, Sweep.begin),
-    "name": (Sweep.cooldown, Sweep.name),
+SORTS: dict[str, tuple[str, ...]] = {
+    "date": ("begin",),
+    "coverage": ("coverage_mol_per_m2", "begin"),
+    "temperature": ("temperature_low_K", "temperature_high_K"),
+    "cell": ("cell", "coverage_mol_per_m2", "begin"),
+    "name": ("cooldown", "name"),
 }
 """Columns of each order that a search can have."""
 
@@ -117,26 +112,46 @@ def plan_known(address: str, digest: str) -> Query:
     return select(Plan.name).where(Plan.address == address, Plan.digest == digest)
 
 
-def search(query: SearchQuery) -> Query:
-    """Sweeps that satisfy a search."""
+def _sweeps(*, amended: bool) -> Query:
+    columns = (column_found(name, amended=amended).label(label) for label, name in _SWEEP.items())
+    found = select(*columns)
+    return found.outerjoin(AmendedSweep, last_amended()) if amended else found
+
+
+def search(query: SearchQuery, *, amended: bool = False) -> Query:
+    """Sweeps that satisfy a search; `amended` says whether anything is amended at all."""
     order: list[Any] = []
-    for column in SORTS[query.sort]:
+    for name in SORTS[query.sort]:
+        column = column_found(name, amended=amended)
         # The engines disagree on where NULL sorts: said outright, it is last.
         order += [column.is_(None), column.desc() if query.descending else column.asc()]
-    found = select(*_SWEEP).where(*search_conditions(query)).order_by(*order, Sweep.address)
+    conditions = search_conditions(query, amended=amended)
+    found = _sweeps(amended=amended).where(*conditions).order_by(*order, Sweep.address)
     # SQLite has no offset without a limit; SQLAlchemy then writes the limit -1.
     return found.limit(query.limit).offset(query.offset or None)
 
 
-def sweeps(*, cooldown: str | None = None, address: str | None = None, accession: str | None = None) -> Query:
+def sweeps(
+    *,
+    cooldown: str | None = None,
+    address: str | None = None,
+    accession: str | None = None,
+    amended: bool = False,
+    withdrawn_too: bool = False,
+) -> Query:
     """Sweeps of a cooldown, or one sweep, in the newest version; or all sweeps as one accession holds them."""
-    found = select(*_SWEEP).order_by(Sweep.address)
     if accession is not None:
-        return found.where(Sweep.accession == accession)
-    found = found.where(newest_sweep())
+        return _sweeps(amended=False).where(Sweep.accession == accession).order_by(Sweep.address)
+    found = _sweeps(amended=amended).order_by(Sweep.address)
+    found = found.where(newest_sweep(withdrawn_too=withdrawn_too))
     if cooldown is not None:
         found = found.where(Sweep.cooldown == cooldown)
     return found if address is None else found.where(Sweep.address == address)
+
+
+def anything_amended() -> Query:
+    """One row if any sweep is amended."""
+    return select(AmendedSweep.act).limit(1)
 
 
 def thermometers(addresses: Sequence[str]) -> Query:
@@ -239,7 +254,10 @@ def cooldowns() -> Query:
 
 
 def records(name: str | None, kind: str | None) -> Query:
-    """Revisions of records, each with the earliest accession that holds it, by kind, name and revision."""
+    """Revisions of records, each with the earliest accession that holds it, by kind, name and revision.
+
+    Those that came in outside a cooldown, and that no accession holds, have none.
+    """
     holder, other, earlier = aliased(Accession), aliased(Record), aliased(Accession)
     before = exists().where(
         other.address == Record.address,
@@ -250,27 +268,31 @@ def records(name: str | None, kind: str | None) -> Query:
             and_(earlier.accessioned == holder.accessioned, earlier.address < holder.address),
         ),
     )
-    found = (
-        select(
-            Record.name,
-            Record.revision,
-            Record.kind,
-            Record.address,
-            Record.digest,
-            Record.content,
-            Record.accession,
-        )
+    shown = ("name", "revision", "kind", "address", "digest", "content")
+    held = (
+        select(*(getattr(Record, column) for column in shown), Record.accession)
         .join(holder, holder.address == Record.accession)
         .where(~before)
-        .order_by(Record.kind, Record.name, Record.revision, Record.digest)
+    )
+    same = exists().where(Record.address == Revision.address, Record.digest == Revision.digest)
+    outside = select(*(getattr(Revision, column) for column in shown), null().label("accession")).where(
+        Revision.kind != "plan", ~same
     )
     if name is not None:
-        found = found.where(named(Record.address, name))
-    return found if kind is None else found.where(Record.kind == kind)
+        held, outside = held.where(named(Record.address, name)), outside.where(named(Revision.address, name))
+    if kind is not None:
+        held, outside = held.where(Record.kind == kind), outside.where(Revision.kind == kind)
+    both = union_all(held, outside).subquery()
+    return select(both).order_by(both.c.kind, both.c.name, both.c.revision, both.c.digest)
 
 
 def reductions(
-    *, cooldown: str | None, sweep: str | None, plan: str | None, step: str | None, newest_only: bool
+    *,
+    cooldown: str | None = None,
+    sweep: str | None = None,
+    plan: str | None = None,
+    step: str | None = None,
+    newest_only: bool = False,
 ) -> Query:
     """Reductions, by sweep, plan and number."""
     found = (
@@ -288,6 +310,7 @@ def reductions(
             Reduction.stillroom,
             newest_reduction().label("newest"),
             Plan.title,
+            withdrawn(Reduction.address, Reduction.sweep, Reduction.cooldown).label("withdrawn"),
         )
         .join(Plan, and_(Plan.address == Reduction.plan_address, Plan.digest == Reduction.plan_digest))
         .order_by(Reduction.sweep, Reduction.plan, Reduction.number)
@@ -303,8 +326,17 @@ def reductions(
     return found.where(newest_reduction()) if newest_only else found
 
 
-def results(*, name: str | None, cooldown: str | None, sweep: str | None, newest_only: bool) -> Query:
+def results(
+    *,
+    name: str | None,
+    cooldown: str | None,
+    sweep: str | None,
+    newest_only: bool,
+    amended: bool = False,
+    withdrawn_too: bool = False,
+) -> Query:
     """Scalar results with cell and coverage of their sweep, by sweep, plan, number and place in the plan."""
+    taken_back = withdrawn(Reduction.address, Reduction.sweep, Reduction.cooldown)
     found = (
         select(
             Output.reduction,
@@ -324,12 +356,13 @@ def results(*, name: str | None, cooldown: str | None, sweep: str | None, newest
             Output.verdict,
             newest_reduction().label("newest"),
             Output.headline.is_not(None).label("headline"),
-            Sweep.cell,
-            Sweep.coverage_mol_per_m2.label("coverage"),
-            Sweep.coverage_uncertainty_mol_per_m2.label("coverage_uncertainty"),
+            column_found("cell", amended=amended).label("cell"),
+            column_found("coverage_mol_per_m2", amended=amended).label("coverage"),
+            column_found("coverage_uncertainty_mol_per_m2", amended=amended).label("coverage_uncertainty"),
+            taken_back.label("withdrawn"),
         )
         .join(Reduction, Reduction.address == Output.reduction)
-        .outerjoin(Sweep, and_(Sweep.address == Reduction.sweep, newest_sweep()))
+        .outerjoin(Sweep, and_(Sweep.address == Reduction.sweep, newest_sweep(withdrawn_too=withdrawn_too)))
         .where(Output.rows.is_(None))
         .order_by(Reduction.sweep, Reduction.plan, Reduction.number, Output.position)
     )
@@ -339,7 +372,11 @@ def results(*, name: str | None, cooldown: str | None, sweep: str | None, newest
         found = found.where(Reduction.cooldown == cooldown)
     if sweep is not None:
         found = found.where(Reduction.sweep == sweep)
-    return found.where(newest_reduction()) if newest_only else found
+    if amended:
+        found = found.outerjoin(AmendedSweep, last_amended())
+    if withdrawn_too:
+        return found.where(or_(newest_reduction(), taken_back)) if newest_only else found
+    return found.where(newest_reduction()) if newest_only else found.where(~taken_back)
 
 
 def raw_files(*, sha256: str | None, cooldown: str | None) -> Query:
@@ -419,13 +456,13 @@ def dependents(address: str) -> Query:
 
 def statistics() -> Query:
     """Return counts of what the archive holds, as one row."""
-    newest = newest_sweep()
+    newest = newest_sweep(withdrawn_too=True)
     return select(
         _counted_all(Cooldown.name, "cooldowns"),
         _counted_all(Accession.address, "accessions"),
         _count(Sweep.name, newest).label("sweeps"),
         _total(Sweep.rows, newest).label("rows"),
-        select(func.count(func.distinct(Record.address))).scalar_subquery().label("records"),
+        select(func.count()).select_from(_record_addresses()).scalar_subquery().label("records"),
         _counted_all(RawFile.name, "raw_files"),
         _total(RawFile.size).label("raw_bytes"),
         select(func.count(func.distinct(Plan.address))).scalar_subquery().label("plans"),
@@ -434,6 +471,11 @@ def statistics() -> Query:
         _counted_all(SealedFile.key, "sealed_files"),
         _total(SealedFile.size).label("sealed_bytes"),
     )
+
+
+def _record_addresses() -> Any:
+    outside = select(Revision.address).where(Revision.kind != "plan")
+    return select(Record.address).union(outside).subquery()
 
 
 def _counted(table: type[Accession | Reduction], column: InstrumentedAttribute[str]) -> Any:

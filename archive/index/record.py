@@ -11,16 +11,15 @@ from __future__ import annotations
 from collections.abc import Iterable, Mapping
 from typing import Any
 
-from sqlalchemy import Connection, delete, insert, update
+from sqlalchemy import Connection, delete, update
 
-from archive.errors import DamagedFile
 from archive.index import queries, tables
+from archive.index.acts import add_replaced_records
+from archive.index.rows import add_rows, seal_row, si_value
 from archive.index.searchable import searchable_text
 from schemas.address import parse_address
 from schemas.finding import Finding
-from schemas.kinds import kind_of
 from schemas.lineage import AccessionDocument, OutputEntry, ReductionDocument, SweepEntry, Value
-from schemas.quantity import Quantity
 
 __all__ = ["add_accession", "add_reduction", "clear"]
 
@@ -76,10 +75,10 @@ def add_accession(
     DamagedFile
         If the index holds this file with another digest or size.
     """
-    if not _seal(connection, document.address, "accession", key=key, sha256=sha256, size=size):
+    if not seal_row(connection, document.address, "accession", key=key, sha256=sha256, size=size):
         return
     _tell_cooldown(connection, document)
-    _add(
+    add_rows(
         connection,
         tables.Accession,
         [
@@ -97,7 +96,7 @@ def add_accession(
         ],
     )
     held = {"accession": document.address}
-    _add(
+    add_rows(
         connection,
         tables.RawFile,
         (
@@ -105,9 +104,9 @@ def add_accession(
             for raw in document.raw_files
         ),
     )
-    _add(connection, tables.Record, _record_rows(document))
-    _add(connection, tables.Sweep, (_sweep_row(document, entry) for entry in document.sweeps))
-    _add(
+    add_rows(connection, tables.Record, _record_rows(document))
+    add_rows(connection, tables.Sweep, (_sweep_row(document, entry) for entry in document.sweeps))
+    add_rows(
         connection,
         tables.SweepThermometer,
         (
@@ -116,7 +115,7 @@ def add_accession(
             for position, thermometer in enumerate(entry.thermometers)
         ),
     )
-    _add(
+    add_rows(
         connection,
         tables.Channel,
         (
@@ -125,8 +124,8 @@ def add_accession(
             for position, channel in enumerate(entry.channels)
         ),
     )
-    _add(connection, tables.Dose, _dose_rows(document))
-    _add(connection, tables.Finding, _finding_rows(key, 0, document.findings))
+    add_rows(connection, tables.Dose, _dose_rows(document))
+    add_rows(connection, tables.Finding, _finding_rows(key, 0, document.findings))
 
 
 def add_reduction(
@@ -137,14 +136,14 @@ def add_reduction(
     Parameters and errors are those of `add_accession`. The accession that it rests on need not be recorded: it may be
     the damaged one.
     """
-    if not _seal(connection, document.address, "reduction", key=key, sha256=sha256, size=size):
+    if not seal_row(connection, document.address, "reduction", key=key, sha256=sha256, size=size):
         return
     address = parse_address(document.address)
     if connection.execute(queries.cooldown_newest(document.cooldown)).first() is None:
-        _add(connection, tables.Cooldown, [{"name": document.cooldown}])
+        add_rows(connection, tables.Cooldown, [{"name": document.cooldown}])
     plan = document.plan
     if connection.execute(queries.plan_known(plan.address, document.plan_digest)).first() is None:
-        _add(
+        add_rows(
             connection,
             tables.Plan,
             [
@@ -158,7 +157,7 @@ def add_reduction(
                 }
             ],
         )
-    _add(
+    add_rows(
         connection,
         tables.Reduction,
         [
@@ -179,14 +178,15 @@ def add_reduction(
         ],
     )
     held = {"reduction": document.address}
-    _add(connection, tables.ReductionInput, _input_rows(document))
-    _add(
+    add_rows(connection, tables.ReductionInput, _input_rows(document))
+    add_replaced_records(connection, document)
+    add_rows(
         connection,
         tables.Step,
         ({**held, **step.model_dump(include=_STEP)} for step in document.steps),
     )
     headline = {name: place for place, name in enumerate(plan.headline)}
-    _add(
+    add_rows(
         connection,
         tables.Output,
         (
@@ -194,36 +194,9 @@ def add_reduction(
             for position, output in enumerate(document.outputs)
         ),
     )
-    _add(connection, tables.Finding, _finding_rows(key, 0, document.findings))
+    add_rows(connection, tables.Finding, _finding_rows(key, 0, document.findings))
     for step in document.steps:
-        _add(connection, tables.Finding, _finding_rows(key, step.number, step.findings))
-
-
-def _add(connection: Connection, table: type[tables.Base], rows: Iterable[Mapping[str, Any]]) -> None:
-    found = list(rows)
-    if found:
-        connection.execute(insert(table), found)
-
-
-def _seal(connection: Connection, address: str, document: str, *, key: str, sha256: str, size: int) -> bool:
-    """Add the row of a sealed file; False when the same file is there already."""
-    known = connection.execute(queries.sealed_file(key)).first()
-    if known is None:
-        _add(
-            connection,
-            tables.SealedFile,
-            [{"key": key, "document": document, "address": address, "sha256": sha256, "size": size}],
-        )
-        return True
-    if (known.sha256, known.size, known.address) == (sha256, size, address):
-        return False
-    raise DamagedFile(
-        "the index holds this sealed file with other bytes",
-        file=key,
-        expected=f"{known.address}, {known.size} bytes, sha256 {known.sha256}",
-        found=f"{address}, {size} bytes, sha256 {sha256}",
-        remedy="a sealed file never changes: keep both, and find out which one was sealed before anything else is done",
-    )
+        add_rows(connection, tables.Finding, _finding_rows(key, step.number, step.findings))
 
 
 def _tell_cooldown(connection: Connection, document: AccessionDocument) -> None:
@@ -241,7 +214,7 @@ def _tell_cooldown(connection: Connection, document: AccessionDocument) -> None:
     }
     known = connection.execute(queries.cooldown_newest(document.cooldown)).first()
     if known is None:
-        _add(connection, tables.Cooldown, [dict(name=document.cooldown, **told)])
+        add_rows(connection, tables.Cooldown, [dict(name=document.cooldown, **told)])
     elif known.newest is None or known.newest < document.number:
         connection.execute(
             update(tables.Cooldown).where(tables.Cooldown.name == document.cooldown).values(**told)
@@ -263,7 +236,7 @@ def _record_rows(document: AccessionDocument) -> Iterable[dict[str, Any]]:
 
 
 def _sweep_row(document: AccessionDocument, entry: SweepEntry) -> dict[str, Any]:
-    coverage, coverage_uncertainty = _si(entry.coverage, "coverage")
+    coverage, coverage_uncertainty = si_value(entry.coverage, "coverage")
     scales = [value.scale for value in (entry.temperature_low, entry.temperature_high) if value is not None]
     scales += [channel.scale for channel in entry.channels if channel.use]
     return {
@@ -273,11 +246,11 @@ def _sweep_row(document: AccessionDocument, entry: SweepEntry) -> dict[str, Any]
         "cooldown": document.cooldown,
         "number": document.number,
         **entry.model_dump(include=_SWEEP),
-        "amount_mol": _si(entry.amount, "amount")[0],
+        "amount_mol": si_value(entry.amount, "amount")[0],
         "coverage_mol_per_m2": coverage,
         "coverage_uncertainty_mol_per_m2": coverage_uncertainty,
-        "temperature_low_K": _si(entry.temperature_low, "temperature")[0],
-        "temperature_high_K": _si(entry.temperature_high, "temperature")[0],
+        "temperature_low_K": si_value(entry.temperature_low, "temperature")[0],
+        "temperature_high_K": si_value(entry.temperature_high, "temperature")[0],
         "scale": next((scale for scale in scales if scale is not None), None),
         "text": searchable_text(document, entry),
     }
@@ -285,9 +258,9 @@ def _sweep_row(document: AccessionDocument, entry: SweepEntry) -> dict[str, Any]
 
 def _dose_rows(document: AccessionDocument) -> Iterable[dict[str, Any]]:
     for position, dose in enumerate(document.doses):
-        amount, amount_uncertainty = _si(dose.amount, "amount")
-        running, running_uncertainty = _si(dose.running_amount, "amount")
-        coverage, coverage_uncertainty = _si(dose.running_coverage, "coverage")
+        amount, amount_uncertainty = si_value(dose.amount, "amount")
+        running, running_uncertainty = si_value(dose.running_amount, "amount")
+        coverage, coverage_uncertainty = si_value(dose.running_coverage, "coverage")
         yield {
             "accession": document.address,
             "position": position,
@@ -333,7 +306,7 @@ def _input_rows(document: ReductionDocument) -> Iterable[dict[str, Any]]:
 
 
 def _output_row(output: OutputEntry, position: int, headline: Mapping[str, int]) -> dict[str, Any]:
-    value, uncertainty = _si(
+    value, uncertainty = si_value(
         Value(value=output.value, uncertainty=output.uncertainty, unit=output.unit), output.quantity
     )
     return {
@@ -343,18 +316,3 @@ def _output_row(output: OutputEntry, position: int, headline: Mapping[str, int])
         "value_si": value,
         "uncertainty_si": uncertainty,
     }
-
-
-def _si(value: Value | None, quantity: str) -> tuple[float | None, float | None]:
-    """Value and standard uncertainty in the SI unit of a quantity kind; None where there is none."""
-    if value is None or value.value is None:
-        return None, None
-    try:
-        if value.unit in kind_of(quantity).si:
-            # The usual case; asking for no factor keeps the units library unloaded.
-            return value.value, value.uncertainty
-        # A product of floats would miss the nearest one, and with it a search whose bound is that very number.
-        stated = Quantity(value=value.value, unit=value.unit, kind=quantity, uncertainty=value.uncertainty)
-    except ValueError:
-        return None, None
-    return stated.si, stated.si_uncertainty

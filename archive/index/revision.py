@@ -26,7 +26,7 @@ if TYPE_CHECKING:
 
 __all__ = ["HEAD", "make", "migration_config", "raise_to_head", "upgrade"]
 
-HEAD = "0001"
+HEAD = "0002"
 """The revision this program works with."""
 
 _VERSION = Table("alembic_version", MetaData(), Column("version_num", Text))

@@ -7,8 +7,10 @@ from collections.abc import Iterator, Sequence
 
 from sqlalchemy import Connection
 
-from archive.index import queries
+from archive.index import act_queries, queries
+from archive.index.act_answers import WithdrawalRow
 from archive.index.answers import SweepResult, SweepRow
+from archive.index.flags import flagged_now
 
 __all__ = ["sweep_rows"]
 
@@ -31,6 +33,9 @@ def sweep_rows(connection: Connection, query: queries.Query) -> list[SweepRow]:
     thermometers: dict[tuple[str, str], list[str]] = defaultdict(list)
     channels: dict[tuple[str, str], list[str]] = defaultdict(list)
     results: dict[str, list[SweepResult]] = defaultdict(list)
+    amended: dict[str, list[str]] = defaultdict(list)
+    withdrawn = _withdrawn(connection)
+    flagged = flagged_now(connection) if withdrawn else {}
     for some in _pieces(addresses):
         for accession, address, thermometer in connection.execute(queries.thermometers(some)):
             thermometers[accession, address].append(thermometer)
@@ -38,15 +43,34 @@ def sweep_rows(connection: Connection, query: queries.Query) -> list[SweepRow]:
             channels[accession, address].append(channel)
         for address, *result in connection.execute(queries.sweep_results(some)):
             results[address].append(SweepResult(*result))
+        for address, amendment in connection.execute(act_queries.amendments_of_sweeps(some)):
+            amended[address].append(amendment)
     return [
         SweepRow(
             **{str(name): value for name, value in row.items()},
             thermometers=tuple(thermometers[row["accession"], row["address"]]),
             channels=tuple(channels[row["accession"], row["address"]]),
             results=tuple(results[row["address"]]),
+            amended=tuple(amended[row["address"]]),
+            flagged=tuple(flagged.get(row["address"], ())),
+            withdrawn=next(
+                (
+                    withdrawn[row[name]]
+                    for name in ("address", "accession", "cooldown")
+                    if row[name] in withdrawn
+                ),
+                None,
+            ),
         )
         for row in found
     ]
+
+
+def _withdrawn(connection: Connection) -> dict[str, str]:
+    """Why each withdrawn thing is withdrawn, by its address."""
+    rows = connection.execute(act_queries.withdrawals(counting=True)).mappings()
+    found = [WithdrawalRow(**{str(name): value for name, value in row.items()}) for row in rows]
+    return {row.target: row.sentence() for row in found}
 
 
 def _pieces(addresses: Sequence[str]) -> Iterator[Sequence[str]]:

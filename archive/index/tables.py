@@ -18,6 +18,7 @@ from sqlalchemy.orm import DeclarativeBase, Mapped, mapped_column
 from archive.index.columns import COUNT, FLAG, JSON, REAL, TEXT, TIME
 
 __all__ = [
+    "STRICT",
     "Accession",
     "Base",
     "Channel",
@@ -36,7 +37,7 @@ __all__ = [
     "SweepThermometer",
 ]
 
-_STRICT = {"sqlite_strict": True}
+STRICT = {"sqlite_strict": True}
 
 
 class Base(DeclarativeBase):
@@ -72,8 +73,10 @@ class SealedFile(Base):
     size: Mapped[int]
     __table_args__ = (
         UniqueConstraint("address"),
-        CheckConstraint("document IN ('accession', 'reduction')", name="document"),
-        _STRICT,
+        CheckConstraint(
+            "document IN ('accession', 'reduction', 'revision', 'amendment', 'withdrawal')", name="document"
+        ),
+        STRICT,
     )
 
 
@@ -91,7 +94,7 @@ class Cooldown(Base):
     cryostat: Mapped[str | None]
     cell: Mapped[str | None]
     licence: Mapped[str | None]
-    __table_args__ = (_STRICT,)
+    __table_args__ = (STRICT,)
 
 
 class Accession(Base):
@@ -107,7 +110,7 @@ class Accession(Base):
     sheet_file: Mapped[str]
     differences: Mapped[Any]
     stillroom: Mapped[str]
-    __table_args__ = (UniqueConstraint("cooldown", "number"), UniqueConstraint("key"), _STRICT)
+    __table_args__ = (UniqueConstraint("cooldown", "number"), UniqueConstraint("key"), STRICT)
 
 
 class RawFile(Base):
@@ -119,7 +122,7 @@ class RawFile(Base):
     sha256: Mapped[str] = mapped_column(index=True)
     size: Mapped[int]
     role: Mapped[str]
-    __table_args__ = (_STRICT,)
+    __table_args__ = (STRICT,)
 
 
 class Record(Base):
@@ -133,7 +136,7 @@ class Record(Base):
     kind: Mapped[str]
     digest: Mapped[str]
     content: Mapped[Any]
-    __table_args__ = (Index(None, "name", "revision"), Index(None, "address"), _STRICT)
+    __table_args__ = (Index(None, "name", "revision"), Index(None, "address"), STRICT)
 
 
 class Sweep(Base):
@@ -167,7 +170,7 @@ class Sweep(Base):
         Index(None, "cell", "coverage_mol_per_m2", "begin"),
         Index(None, "cell", "begin", "coverage_mol_per_m2"),
         Index(None, "cooldown", "name"),
-        _STRICT,
+        STRICT,
     )
 
 
@@ -181,7 +184,7 @@ class SweepThermometer(Base):
     thermometer: Mapped[str] = mapped_column(index=True)
     __table_args__ = (
         ForeignKeyConstraint(["accession", "sweep"], ["sweep.accession", "sweep.name"]),
-        _STRICT,
+        STRICT,
     )
 
 
@@ -207,7 +210,7 @@ class Channel(Base):
     digest: Mapped[str]
     __table_args__ = (
         ForeignKeyConstraint(["accession", "sweep"], ["sweep.accession", "sweep.name"]),
-        _STRICT,
+        STRICT,
     )
 
 
@@ -228,7 +231,7 @@ class Dose(Base):
     running_coverage_mol_per_m2: Mapped[float | None]
     running_coverage_uncertainty_mol_per_m2: Mapped[float | None]
     method: Mapped[str]
-    __table_args__ = (_STRICT,)
+    __table_args__ = (STRICT,)
 
 
 class Finding(Base):
@@ -244,7 +247,7 @@ class Finding(Base):
     place: Mapped[str | None]
     waived: Mapped[bool]
     content: Mapped[Any]
-    __table_args__ = (_STRICT,)
+    __table_args__ = (STRICT,)
 
 
 class Plan(Base):
@@ -257,7 +260,7 @@ class Plan(Base):
     revision: Mapped[int]
     title: Mapped[str]
     content: Mapped[Any]
-    __table_args__ = (_STRICT,)
+    __table_args__ = (STRICT,)
 
 
 class Reduction(Base):
@@ -281,7 +284,7 @@ class Reduction(Base):
         UniqueConstraint("key"),
         ForeignKeyConstraint(["plan_address", "plan_digest"], ["plan.address", "plan.digest"]),
         Index(None, "plan", "cooldown"),
-        _STRICT,
+        STRICT,
     )
 
 
@@ -298,7 +301,7 @@ class ReductionInput(Base):
     uncertainty: Mapped[float | None]
     unit: Mapped[str | None]
     scale: Mapped[str | None]
-    __table_args__ = (_STRICT,)
+    __table_args__ = (STRICT,)
 
 
 class Step(Base):
@@ -313,7 +316,7 @@ class Step(Base):
     parameters: Mapped[Any]
     begin: Mapped[datetime]
     end: Mapped[datetime]
-    __table_args__ = (Index(None, "name", "version"), _STRICT)
+    __table_args__ = (Index(None, "name", "version"), STRICT)
 
 
 class Output(Base):
@@ -337,4 +340,4 @@ class Output(Base):
     uncertainty_si: Mapped[float | None]
     verdict: Mapped[str | None]
     digest: Mapped[str]
-    __table_args__ = (Index(None, "name", "value_si"), _STRICT)
+    __table_args__ = (Index(None, "name", "value_si"), STRICT)

@@ -16,6 +16,7 @@ from alembic.autogenerate import compare_metadata
 from alembic.migration import MigrationContext
 from alembic.script import ScriptDirectory
 from sqlalchemy import Connection, create_engine, inspect, text
+from sqlalchemy.exc import DBAPIError
 
 from archive.errors import ArchiveError, BadRequest, MissingFile
 from archive.index import Index, revision
@@ -28,8 +29,8 @@ _ADDS_A_TABLE = '''
 import sqlalchemy as sa
 from alembic import op
 
-revision = "0002"
-down_revision = "0001"
+revision = "0003"
+down_revision = "0002"
 
 
 def upgrade():
@@ -60,11 +61,12 @@ def later(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> Path:
     folder = tmp_path / "later"
     source = Path(str(revision.files("migrations")))
     (folder / "versions").mkdir(parents=True)
-    for name in ("env.py", "script.py.mako", "versions/0001_first_tables.py"):
+    names = ("env.py", "script.py.mako", "versions/0001_first_tables.py", "versions/0002_acts.py")
+    for name in names:
         (folder / name).write_bytes((source / name).read_bytes())
     monkeypatch.setattr(revision, "files", lambda _package: folder)
-    monkeypatch.setattr(revision, "HEAD", "0002")
-    script = folder / "versions" / "0002_more.py"
+    monkeypatch.setattr(revision, "HEAD", "0003")
+    script = folder / "versions" / "0003_more.py"
     script.write_text(_ADDS_A_TABLE.format(more=""))
     return script
 
@@ -128,6 +130,28 @@ def test_down_and_up_again(index: Index, url: str) -> None:
         assert again.statistics()["sweeps"] == 1
 
 
+def test_an_index_of_the_first_revision_is_raised_with_every_row_and_lowered_again(url: str) -> None:
+    acts = {"amended_sweep", "amendment", "amendment_sweep", "replaced_record", "revision", "withdrawal"}
+    documents = [make.accession(), make.accession("Z-1"), make.reduction()]
+    with Index.create(url) as index:
+        index.rebuild([make.entry(document) for document in documents])
+        before = index.rows()
+    with _connection(url) as connection:
+        command.downgrade(revision.migration_config(connection), "0001")
+        assert not acts & set(inspect(connection).get_table_names())
+        with pytest.raises(DBAPIError), connection.begin_nested():
+            connection.execute(text("INSERT INTO sealed_file VALUES ('k', 'amendment', 'a', 's', 1)"))
+    with Index.open(url) as raised:
+        assert raised.rows() == before
+        assert all(before[table] == [] for table in acts)
+    with _connection(url) as connection:
+        connection.execute(text("INSERT INTO sealed_file VALUES ('k', 'amendment', 'a', 's', 1)"))
+        with pytest.raises(DBAPIError), connection.begin_nested():
+            connection.execute(text("INSERT INTO sealed_file VALUES ('l', 'letter', 'b', 's', 1)"))
+        with pytest.raises(DBAPIError), connection.begin_nested():
+            connection.execute(text("DELETE FROM cooldown"))
+
+
 def test_an_older_index_is_copied_beside_and_raised(index: Index, url: str, later: Path) -> None:
     index.rebuild([make.entry(make.accession(findings=[{"code": "gap", "severity": "note", "what": "gap"}]))])
     before = index.rows()
@@ -138,14 +162,14 @@ def test_an_older_index_is_copied_beside_and_raised(index: Index, url: str, late
     with Index.open(url) as raised:
         assert raised.rows() == {**before, "finding": []}
     with _connection(url) as connection:
-        assert connection.execute(text("SELECT version_num FROM alembic_version")).scalar() == "0002"
+        assert connection.execute(text("SELECT version_num FROM alembic_version")).scalar() == "0003"
         assert inspect(connection).has_table("added")
     if url.startswith("sqlite"):
-        copy = Path(url.removeprefix("sqlite:///") + ".before-0001")
+        copy = Path(url.removeprefix("sqlite:///") + ".before-0002")
         with closing(sqlite3.connect(copy)) as connection_to_copy:
             assert connection_to_copy.execute("SELECT count(*) FROM finding").fetchone() == (1,)
             assert connection_to_copy.execute("SELECT version_num FROM alembic_version").fetchone() == (
-                "0001",
+                "0002",
             )
 
 
@@ -159,7 +183,7 @@ def test_programs_that_raise_one_index_at_once_all_open_it(index: Index, url: st
 import sys
 from pathlib import Path
 from archive.index import Index, revision
-revision.files, revision.HEAD = (lambda _package: Path(sys.argv[2])), "0002"
+revision.files, revision.HEAD = (lambda _package: Path(sys.argv[2])), "0003"
 with Index.open(sys.argv[1]) as index:
     print(index.statistics()["sweeps"])
 """
