@@ -2,14 +2,13 @@
 
 from __future__ import annotations
 
-import hashlib
-import json
 import math
 from datetime import UTC, datetime
 
 import numpy as np
 
 from archive.intake.reading import Reading, SweepTable
+from archive.reduction.digest import record_digest
 from schemas.cell import Cryostat
 from schemas.lineage import AnyRecord, ChannelEntry, RecordEntry, RecordKind, SweepEntry, Value
 from schemas.substrate import Sample, Substrate
@@ -17,7 +16,7 @@ from schemas.sweep import Channel, Sweep
 from schemas.thermometer import Calibration, Thermometer
 from schemas.units import ucum
 
-__all__ = ["record_digest", "record_entries", "record_kind", "sweep_entries"]
+__all__ = ["record_entries", "record_kind", "sweep_entries"]
 
 
 def record_kind(record: AnyRecord) -> RecordKind:
@@ -30,14 +29,6 @@ def record_kind(record: AnyRecord) -> RecordKind:
         (Calibration, "calibration"),
     )
     return next((kind for each, kind in kinds if isinstance(record, each)), "cell")
-
-
-def record_digest(record: AnyRecord) -> str:
-    """SHA-256 of a record's content as canonical JSON."""
-    text = json.dumps(
-        record.model_dump(mode="json"), sort_keys=True, ensure_ascii=False, separators=(",", ":")
-    )
-    return hashlib.sha256(text.encode()).hexdigest()
 
 
 def record_entries(reading: Reading) -> tuple[RecordEntry, ...]:

@@ -15,7 +15,7 @@ from pydantic import TypeAdapter, ValidationError
 
 from archive.errors import DamagedFile, UnknownAddress
 from archive.index import Index, SearchQuery, SweepRow
-from archive.intake.summary import record_digest
+from archive.reduction.digest import record_digest
 from archive.reduction.estimate import Estimate
 from archive.reduction.outputs import estimate_from
 from archive.store.interface import Store
