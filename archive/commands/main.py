@@ -18,6 +18,7 @@ from archive import __version__
 from archive.commands import (
     archive_commands,
     bench_commands,
+    compare_command,
     demo_command,
     intake_commands,
     lineage_commands,
@@ -43,6 +44,7 @@ _COMMANDS: Final = (
     lineage_commands.show,
     lineage_commands.trace,
     lineage_commands.replay,
+    compare_command.compare,
     report_commands.run_sheet,
     report_commands.appendix,
     archive_commands.fixity,

@@ -24,9 +24,11 @@ from archive.intake.examine import examined
 from archive.intake.settings import SETTINGS_NAME, Settings, read_settings, settings_text
 from archive.lab import reducing, reporting, showing
 from archive.lab.checking import check_folder, earlier_runs, folder_report, require_folder
+from archive.lab.comparing import Comparison, compare
 from archive.lab.forward import forward as lineage_forward
 from archive.lab.outcomes import CheckReport, IngestOutcome, ReduceOutcome, ReplayReport
 from archive.lab.place import find_root, made, unmade
+from archive.lab.replaying import replay_all
 from archive.lab.source import LabSource
 from archive.lab.tracing import backward
 from archive.reduction.software import software
@@ -335,6 +337,20 @@ class Archive:
     def replay(self, address: str) -> ReplayReport:
         """Compute a reduction again from raw and compare it with what was sealed."""
         return reducing.replay(self._source, address, clock=self._clock)
+
+    def replay_all(
+        self, *, progress: Callable[[int, int, str], None] | None = None
+    ) -> Iterator[tuple[str, ReplayReport | ArchiveError]]:
+        """Every reduction computed again, one after the other; see `archive.lab.replaying.replay_all`."""
+        return replay_all(self._source, clock=self._clock, progress=progress)
+
+    def compare(self, first: str, second: str) -> Comparison:
+        """Two reductions side by side: parameters, inputs, results with the significance of their change, arrays."""
+        return compare(self._source, first, second)
+
+    def compare_figure(self, found: Comparison, *, kind: str = "pdf") -> bytes:
+        """Figure of a comparison, as PDF or SVG."""
+        return reporting.comparison(self._source, found, kind=kind)
 
     # Finding and showing ------------------------------------------------------------------------------------------
 

@@ -242,7 +242,10 @@ class _Forward:
         return tuple(
             TraceNode(
                 f"{document.address}#{entry.name}", "result", f"{document.address}#{entry.name}{_value(entry)}",
-                {"value": entry.value, "uncertainty": entry.uncertainty, "unit": entry.unit},
+                {
+                    "quantity": entry.quantity, "value": entry.value, "uncertainty": entry.uncertainty,
+                    "unit": entry.unit, "scale": entry.scale,
+                },
             )
             for entry in document.outputs
             if entry.rows is None and entry.name in touched

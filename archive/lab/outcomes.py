@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, field
 from typing import Any, Literal
 
@@ -102,3 +103,14 @@ class ReplayReport:
     shifts: dict[str, float] = field(default_factory=dict)
     changed_inputs: tuple[str, ...] = ()
     changed_software: dict[str, tuple[str, str]] = field(default_factory=dict)
+
+    def moved(self, fraction: float) -> dict[str, float]:
+        """Results that moved by more than a fraction of their standard uncertainty, or are lost: name to shift in that unit.
+
+        Examples
+        --------
+        >>> ReplayReport("2026-03/s017@film-transition.2", False, 3, shifts={"T_KT": -0.4, "b": 0.01}).moved(0.1)
+        {'T_KT': -0.4}
+        """
+        lost = {name: math.inf for name, far in self.largest_difference.items() if math.isnan(far)}
+        return {**lost, **{name: shift for name, shift in self.shifts.items() if abs(shift) > fraction}}

@@ -14,9 +14,10 @@ from archive.lab.source import LabSource
 from schemas.address import parse_address
 
 if TYPE_CHECKING:
+    from archive.lab.comparing import Comparison
     from archive.reports import CooldownView
 
-__all__ = ["appendix", "run_sheet", "view"]
+__all__ = ["appendix", "comparison", "run_sheet", "view"]
 
 
 def view(source: LabSource, archive_name: str, cooldown: str) -> CooldownView:
@@ -101,3 +102,21 @@ def _reductions(source: LabSource, text: str) -> list[str]:
             remedy=f"reduce it first: stillroom reduce {parsed.head}",
         )
     return [row.address for row in rows]
+
+
+def comparison(source: LabSource, found: Comparison, *, kind: str) -> bytes:
+    """Figure of two reductions.
+
+    Raises
+    ------
+    BadRequest
+        If both have neither a curve nor a result in common.
+    """
+    from archive.reports.comparison_figure import comparison_figure
+
+    shifts = [(each.name, each.significance) for each in found.results if each.significance is not None]
+    first, second = source.reduction(found.first), source.reduction(found.second)
+    try:
+        return comparison_figure(first, second, shifts, source.values, kind=kind)
+    except ValueError as error:
+        raise BadRequest("there is nothing to draw", found=str(error)) from None

@@ -154,7 +154,9 @@ class _Tracer:
             )
         facts: dict[str, JsonValue] = {
             "digest": entry.digest,
+            "quantity": entry.quantity,
             "unit": entry.unit,
+            "scale": entry.scale,
             "value": entry.value,
             "uncertainty": entry.uncertainty,
         }

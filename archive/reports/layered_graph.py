@@ -16,7 +16,7 @@ __all__ = ["Box", "drawn"]
 
 _TEXT = 2.6  # mm: 7.4 pt
 _LINE = 3.3
-_CHARACTER = 0.54 * _TEXT  # mean advance of a sans-serif
+_CHARACTER = 0.57 * _TEXT  # mean advance of a sans-serif
 _PAD = 1.4
 _GAP = 3.0
 _BETWEEN = 9.0
@@ -100,15 +100,16 @@ def drawn(
     }
     across = _places(ordered, chains, size)
     along: list[float] = []
+    thick = [max((size[key][1] for key in layer if key in size), default=0.0) for layer in ordered]
     depth = 0.0
-    for layer in ordered:
-        thick = max((size[key][1] for key in layer if key in size), default=0.0)
-        along.append(depth + thick / 2)
-        depth += thick + _BETWEEN
+    for each in thick:
+        along.append(depth + each / 2)
+        depth += each + _BETWEEN
     level = {key: number for number, layer in enumerate(ordered) for key in layer}
     spot = {key: (across[key], along[level[key]]) for key in level}
-    low = min((spot[key][0] - size[key][0] / 2 for key in by_key), default=0.0) - 1
-    high = max((spot[key][0] + size[key][0] / 2 for key in by_key), default=1.0) + 1
+    half = {key: size[key][0] / 2 if key in size else 0.4 for key in spot}
+    low = min((spot[key][0] - half[key] for key in spot), default=0.0) - 1
+    high = max((spot[key][0] + half[key] for key in spot), default=1.0) + 1
     deep = max(depth - _BETWEEN, 0.0) + 2
 
     def at(x: float, y: float) -> tuple[float, float]:
@@ -121,13 +122,16 @@ def drawn(
         f'<g fill="none" stroke="currentColor" stroke-width="0.2" font-family="{_FONT}" font-size="{_TEXT}">',
     ]
     for (start, end), chain in sorted(chains.items()):
+        # A line that passes a layer runs straight beside its boxes.
+        passed = [
+            (spot[key][0], spot[key][1] + side * thick[level[key]] / 2) for key in chain for side in (-1, 1)
+        ]
         leave = (spot[start][0], spot[start][1] + size[start][1] / 2)
         enter = (spot[end][0], spot[end][1] - size[end][1] / 2)
-        parts.append(
-            _curve([at(*each) for each in (leave, *(spot[key] for key in chain), enter)], downward=downward)
-        )
-    for key in sorted(by_key):
-        parts.append(_box(by_key[key], at(*spot[key]), None if link is None else link(key)))
+        parts.append(_curve([at(*each) for each in (leave, *passed, enter)], downward=downward))
+    parts += [
+        _box(by_key[key], at(*spot[key]), None if link is None else link(key)) for key in sorted(by_key)
+    ]
     return "".join([*parts, "</g></svg>"])
 
 
@@ -161,9 +165,11 @@ def _layers(
         layers[level[key]].append(key)
     chains: dict[tuple[str, str], list[str]] = {}
     for start, end in edges:
-        chain = [f"\0{start}\0{end}\0{number}" for number in range(level[start] + 1, level[end])]
+        # Edges from one box share the places that they pass, so that they run as one line until they part.
+        chain = [f"\0{start}\0{number}" for number in range(level[start] + 1, level[end])]
         for number, key in enumerate(chain, level[start] + 1):
-            layers[number].append(key)
+            if key not in layers[number]:
+                layers[number].append(key)
         chains[start, end] = chain
     return layers, chains
 
@@ -175,8 +181,9 @@ def _neighbours(
     down: dict[str, list[str]] = {}
     for (start, end), chain in sorted(chains.items()):
         for one, two in pairwise([start, *chain, end]):
-            down.setdefault(one, []).append(two)
-            up.setdefault(two, []).append(one)
+            if two not in down.setdefault(one, []):
+                down[one].append(two)
+                up.setdefault(two, []).append(one)
     return up, down
 
 

@@ -6,13 +6,13 @@ from collections.abc import Callable, Sequence
 
 from archive.reduction.trace import TraceNode
 from archive.reports.layered_graph import Box, drawn
-from archive.reports.numbers import shown_output
+from archive.reports.numbers import shown_output, shown_value
 from schemas.address import parse_address
-from schemas.lineage import ReductionDocument, SweepEntry
+from schemas.lineage import ReductionDocument, SweepEntry, Value
 
 __all__ = ["cooldown_graph", "trace_graph"]
 
-_LONGEST = 34
+_LONGEST = 42
 _MOST = 40
 """More sweeps than this are drawn as one box for each kind, and their reductions as one for each plan."""
 
@@ -26,7 +26,7 @@ _KINDS = {
     "plan": "record",
     "step": "act",
     "reduction": "act",
-    "result": "result",
+    "result": "data",
 }
 
 
@@ -58,7 +58,7 @@ def trace_graph(
             lines = (_short(node.label.partition(":")[2].strip() or node.label),)
         elif "#" in node.address:
             owner, name = node.address.split("#", 1)
-            told = node.label.partition(" = ")[2] if node.kind == "result" else ""
+            told = _number(node)
             lines = (
                 (name, _short(owner), _short(told.removesuffix(" (see above)")))
                 if told
@@ -66,7 +66,8 @@ def trace_graph(
             )
         else:
             lines = (_short(node.address or node.label),)
-        boxes.setdefault(key, Box(key, tuple(line for line in lines if line), _KINDS.get(node.kind, "data")))
+        kind = "result" if parent is None else _KINDS.get(node.kind, "data")
+        boxes.setdefault(key, Box(key, tuple(line for line in lines if line), kind))
         if parent is not None and parent != key:
             edges.add((parent, key) if forwards else (key, parent))
         for child in node.children:
@@ -74,7 +75,17 @@ def trace_graph(
 
     visit(root, None)
     title = f"{'What rests on' if forwards else 'Lineage of'} {root.address or root.label}"
-    return drawn(boxes.values(), edges, title=title, link=link)
+    # A tree read forwards fans out: it is drawn to the right.
+    return drawn(boxes.values(), edges, title=title, downward=not forwards, link=link)
+
+
+def _number(node: TraceNode) -> str:
+    if node.kind != "result" or node.facts.get("value") is None:
+        return ""
+    value = Value.model_validate(
+        {each: node.facts.get(each) for each in ("value", "uncertainty", "unit", "scale")}
+    )
+    return shown_value(value, str(node.facts.get("quantity", ""))).text
 
 
 def cooldown_graph(
@@ -127,14 +138,12 @@ def cooldown_graph(
         edges.add((group(document.sweep), own))
     for document in reductions:
         own = group(document.address)
-        for entry in document.inputs:
-            taken = group(entry.address)
-            if parse_address(taken).kind in ("accession", "name") if _is_address(taken) else False:
+        for taken_from in document.inputs:
+            kind = parse_address(taken_from.address).kind
+            if kind == "accession":
                 continue  # Facts of the sheet are behind everything; a line to each would tell nothing.
-            if taken not in boxes:
-                boxes[taken] = Box(
-                    taken, (_short(taken),), "record" if parse_address(taken).kind == "record" else "data"
-                )
+            taken = group(taken_from.address)
+            boxes.setdefault(taken, Box(taken, (_short(taken),), "record" if kind == "record" else "data"))
             if taken != own:
                 edges.add((taken, own))
     if many:
@@ -149,20 +158,13 @@ def cooldown_graph(
     )  # fmt: skip
 
 
-def _is_address(text: str) -> bool:
-    return " " not in text
-
-
 def _told(document: ReductionDocument, *, many: bool) -> tuple[str, ...]:
     if many:
         return (document.plan.name,)
     name = f"{document.plan.name}.{document.number}"
-    results = [entry for entry in document.outputs if entry.rows is None and entry.value is not None]
-    if not results:
-        return (name,)
-    # The last result is what the plan was for.
-    last = results[-1]
-    return (name, _short(f"{last.name} = {shown_output(last)}"))
+    scalars = {entry.name: entry for entry in document.outputs if entry.rows is None}
+    shown = next((scalars[each] for each in document.plan.headline if each in scalars), None)
+    return (name,) if shown is None else (name, _short(f"{shown.name} = {shown_output(shown)}"))
 
 
 def _short(text: str) -> str:
