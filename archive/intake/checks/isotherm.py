@@ -21,7 +21,7 @@ __all__ = ["bet_criteria", "isotherm_order", "isotherm_points", "relative_pressu
 
 
 def relative_pressure(reading: Reading, table: SweepTable) -> tuple[str, np.ndarray] | None:
-    """Return channel and p/p0 of an isotherm: as recorded, over a recorded saturation pressure, or over that of 4He."""
+    """Return channel and p/p0 of an isotherm: as recorded, over a recorded or stated saturation pressure, or over that of 4He."""
     name = table.of_kind("relative_pressure") or table.of_kind("pressure_ratio")
     if name is not None:
         return name, np.where(counting(table), table.columns[name], np.nan)
@@ -36,6 +36,8 @@ def relative_pressure(reading: Reading, table: SweepTable) -> tuple[str, np.ndar
     if saturated is not None:
         p0 = table.columns[saturated]
         return name, np.asarray(p / np.where(p0 > 0, p0, np.nan))
+    if table.sweep.saturated_pressure is not None:
+        return name, np.asarray(p / table.sweep.saturated_pressure.si)
     sample, T = reading.record(table.sweep.sample or reading.sheet.sample), temperature(reading, table)
     helium = table.sweep.gas == "helium" and isinstance(sample, Sample) and sample.isotope == "4He"
     if (
