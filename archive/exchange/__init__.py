@@ -1,0 +1,1 @@
+"""What leaves an archive and comes into one: provenance, packages, citation. Knows open standards, draws nothing."""
