@@ -107,6 +107,7 @@ _TABLE = (
          hints=(("Hz", "a half width has to be divided by the frequency first"),)),
     Kind("quality_factor", ("1",), ("1",), ("1",), "quality factor of a resonance", "Q", allowed=_PURE),
     Kind("resistance", ("Ohm",), ("mOhm", "Ohm", "kOhm", "MOhm"), ("Ohm", "kOhm"), "electrical resistance; two-wire or four-wire is stated with the reading", "R"),
+    Kind("conductance", ("S",), ("nS", "uS", "mS", "S"), ("uS", "mS"), "electrical conductance", "G", required=frozenset({"S"}), hints=(("Ohm", "that is a resistance; write its inverse in S"),)),
     Kind("mutual_inductance", ("H",), ("nH", "uH", "mH", "H"), ("uH", "nH"), "mutual inductance of a coil pair", "M"),
     Kind("inductance", ("H",), ("nH", "uH", "mH", "H"), ("uH", "mH"), "self-inductance", "L", "an"),
     Kind("capacitance", ("F",), ("pF", "nF", "uF"), ("pF",), "electrical capacitance", "C"),

@@ -9,7 +9,9 @@ What a step takes is written as a small text:
 | `channel:@KIND` | the only channel of a quantity kind, e.g. `channel:@period` |
 | `sheet:NAME` | a value that the sheet or the records give for this sweep, e.g. `sheet:coverage`, `sheet:cell.gap` |
 | `need:NAME#OUTPUT` | an output of another reduction, named in `needs`; of many, as one column |
+| `channel:@calibrates` | the channel of the thermometer under calibration |
 | `calibration:@thermometer` | the calibration in force for the counting thermometer |
+| `thermometer:@thermometer.FIELD` | the record of the counting thermometer, if it states that field |
 | anything else | an output of an earlier step of this plan |
 
 Alternatives are parted by ` | `; the first that exists is taken.
@@ -48,6 +50,9 @@ class Applies(Record):
     )
     doses: bool | None = Field(
         default=None, description="Only sweeps during which doses were admitted, or only others."
+    )
+    calibrates: bool | None = Field(
+        default=None, description="Only sweeps that name the channel under calibration, or only others."
     )
     last: bool = Field(
         default=False,

@@ -23,6 +23,7 @@ from schemas.base import NAME_PATTERN, REFERENCE_PATTERN, Record
 from schemas.cooldown import CooldownSheet
 from schemas.finding import Finding
 from schemas.sweep import CHANNEL_PATTERN, FILE_PATTERN
+from schemas.thermometer import MADE_FROM_PATTERN
 
 __all__ = ["LineMap", "SheetReading", "read_sheet", "validated"]
 
@@ -39,6 +40,7 @@ _FORMS = {
     FILE_PATTERN: "a path inside the cooldown folder, with forward slashes and without control characters",
     CHANNEL_PATTERN: "a name of small letters, digits and _, beginning with a letter, at most 64 long",
     NAME_PATTERN: "a name of letters, digits, - and _, without blanks or dots, at most 64 long",
+    MADE_FROM_PATTERN: "the address of a reduction, e.g. 2024-11/c01@thermometer-calibration.1",
     REFERENCE_PATTERN: "the name of a record, with or without its revision, e.g. TO-4 or TO-4.r2",
 }
 _WITH_OFFSET = "write it with its offset, e.g. 2026-03-02T09:10:00+02:00"

@@ -19,7 +19,7 @@ from archive.physics.helium_liquid import density
 from archive.physics.ranges import Floats, floats, within
 from archive.physics.vapour_pressure import Isotope, pressure_its90, temperature_per_pressure
 
-__all__ = ["aerostatic_head", "liquid_head", "liquid_head_temperature"]
+__all__ = ["aerostatic_head", "liquid_head", "liquid_head_temperature", "straight_profile"]
 
 
 def liquid_head(temperature: ArrayLike, depth: ArrayLike) -> Floats:
@@ -104,3 +104,25 @@ def aerostatic_head(
         / (GAS_CONSTANT * floats(temperature))
     )[()]
     return result
+
+
+def straight_profile(cold: ArrayLike, warm: ArrayLike) -> Floats:
+    """Return the temperature of a uniform gas column as heavy as one whose temperature runs straight between its ends.
+
+    Parameters
+    ----------
+    cold, warm : float or array_like
+        Temperatures of the two ends, K, different.
+
+    Returns
+    -------
+    ndarray of float64
+        (T_warm - T_cold)/ln(T_warm/T_cold) in K: the inverse of the mean of 1/T along the column (derived).
+
+    Examples
+    --------
+    >>> round(float(straight_profile(4.0, 295.0)), 2)
+    67.66
+    """
+    T1, T2 = floats(cold), floats(warm)
+    return ((T2 - T1) / np.log(T2 / T1))[()]

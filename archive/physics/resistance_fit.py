@@ -42,6 +42,8 @@ def fit_log_polynomial(
     *,
     temperature_uncertainty: ArrayLike | None = None,
     largest_order: int = 9,
+    order: int | None = None,
+    centre_and_half_width: tuple[float, float] | None = None,
 ) -> CurveFit:
     """Return the polynomial ln T(ln R) that the points support.
 
@@ -54,6 +56,10 @@ def fit_log_polynomial(
         covariance is scaled by the scatter.
     largest_order : int
         Highest power tried; also limited so that two points are left for each parameter.
+    order : int, optional
+        The power itself, instead of a choice.
+    centre_and_half_width : tuple of float, optional
+        Of ln R; those of the outermost points if left out.
 
     Returns
     -------
@@ -70,14 +76,16 @@ def fit_log_polynomial(
     F-test of an additional term; AICc after C. M. Hurvich, C.-L. Tsai, Biometrika 76, 297 (1989) (from memory).
     """
     points = calibration_points(resistance, temperature, temperature_uncertainty, 6)
-    centre, scale = _centre_and_scale(np.log(points.R))
+    centre, scale = centre_and_half_width or _centre_and_scale(np.log(points.R))
     problem = Problem(
         value=np.log(points.T),
         kelvin_per_value=lambda T, R: T + 0 * R,
         design=lambda R, order: floats(polynomial.polyvander((np.log(R) - centre) / scale, order)),
         curve=lambda b: LogPolynomialCurve(tuple(map(float, b)), points.resistance_span, centre, scale),
+        centre=centre,
+        half_width=scale,
     )
-    return outcome(points, problem, *choose_order(points, problem, largest_order))
+    return outcome(points, problem, *choose_order(points, problem, largest_order, order))
 
 
 def fit_inverse_log_polynomial(
@@ -116,6 +124,8 @@ def fit_inverse_log_polynomial(
             tuple(map(float, b)), points.temperature_span, centre, scale
         ),
         inverse=True,
+        centre=centre,
+        half_width=scale,
     )
     return outcome(points, problem, *choose_order(points, problem, largest_order))
 
@@ -131,18 +141,20 @@ def fit_chebyshev(
     *,
     temperature_uncertainty: ArrayLike | None = None,
     largest_order: int = 12,
+    order: int | None = None,
+    centre_and_half_width: tuple[float, float] | None = None,
 ) -> CurveFit:
     """Return the Chebyshev series T(ln R) that the points support.
 
     Parameters
     ----------
-    resistance, temperature, temperature_uncertainty, largest_order
+    resistance, temperature, temperature_uncertainty, largest_order, order, centre_and_half_width
         As in `fit_log_polynomial`.
 
     Returns
     -------
     CurveFit
-        Its curve is a `ChebyshevCurve` in ln R whose ZL and ZU are those of the outermost points.
+        Its curve is a `ChebyshevCurve` in ln R whose ZL and ZU are centre less and plus half width.
 
     Raises
     ------
@@ -150,16 +162,16 @@ def fit_chebyshev(
         As `fit_log_polynomial`.
     """
     points = calibration_points(resistance, temperature, temperature_uncertainty, 6)
-    low, high = float(np.log(points.R.min())), float(np.log(points.R.max()))
+    centre, half = centre_and_half_width or _centre_and_scale(np.log(points.R))
     problem = Problem(
         value=points.T,
         kelvin_per_value=lambda T, R: np.ones_like(T) + 0 * R,
-        design=lambda R, order: floats(
-            chebyshev.chebvander((2 * np.log(R) - low - high) / (high - low), order)
-        ),
-        curve=lambda a: ChebyshevCurve(tuple(map(float, a)), low, high, "ln"),
+        design=lambda R, order: floats(chebyshev.chebvander((np.log(R) - centre) / half, order)),
+        curve=lambda a: ChebyshevCurve(tuple(map(float, a)), centre - half, centre + half, "ln"),
+        centre=centre,
+        half_width=half,
     )
-    return outcome(points, problem, *choose_order(points, problem, largest_order))
+    return outcome(points, problem, *choose_order(points, problem, largest_order, order))
 
 
 def fit_hopping(
@@ -202,6 +214,7 @@ def fit_hopping(
         kelvin_per_value=lambda T, R: -(T ** (exponent + 1)) / exponent + 0 * R,
         design=lambda R, _: np.column_stack([np.ones_like(R), np.log(R)]),
         curve=curve,
+        graded=False,
     )
     return outcome(points, problem, 1, solve(points, problem, 1), ())
 
@@ -246,5 +259,6 @@ def fit_clement_quinnell(
         kelvin_per_value=lambda T, R: -(T**2) + 0 * R,
         design=lambda R, _: np.column_stack([np.ones_like(R), np.log(R), 1 / np.log(R)]),
         curve=curve,
+        graded=False,
     )
     return outcome(points, problem, 2, solve(points, problem, 2), ())

@@ -1,11 +1,14 @@
 """Weighted linear fit of a calibration form to points, the order chosen by the data, and how well it stands.
 
 Rules: weights are the temperature-equivalent uncertainty of each point. The order rises while both the F-test and AICc
-ask for it and stops at the first order that neither supports.
+ask for it and stops at the first order that neither supports. What the form leaves open between the points is the rms
+distance to the curve of the next order, with the scatter beyond the stated uncertainties where chi-squared (5 per cent)
+asks for it (the project's own estimate; the covariance of a fit cannot know that the form is only an approximation).
 """
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable
 from dataclasses import dataclass
 
@@ -14,7 +17,7 @@ from numpy.typing import ArrayLike
 
 from archive.physics.linear_fit import LinearFit, linear_fit
 from archive.physics.ranges import Floats, floats
-from archive.physics.residual_tests import aicc, f_test
+from archive.physics.residual_tests import aicc, chi2_probability, f_test
 from archive.physics.resistance_curves import ResistanceCurve
 from archive.physics.resistance_thermometer import evaluate, is_monotonic
 
@@ -62,10 +65,14 @@ class CurveFit:
         The largest residual in units of the point's uncertainty, when that was given.
     leave_one_out : float
         Root mean square of the residuals of points left out of their own fit, K.
+    interpolation : float
+        What the form itself leaves open, as a fraction of T; see `interpolation_uncertainty`.
     reduced_chi2 : float or None
         When uncertainties were given and degrees of freedom are left.
     monotonic : bool
         Whether dT/dR keeps one sign over the span; otherwise do not use the curve.
+    centre, half_width : float
+        Of ln R (of ln T for the inverse form); the variable of the linear problem is (ln R - centre)/half_width.
     trials : tuple of OrderTrial
         The orders tried.
     """
@@ -78,8 +85,11 @@ class CurveFit:
     largest: float
     largest_in_uncertainties: float | None
     leave_one_out: float
+    interpolation: float
     reduced_chi2: float | None
     monotonic: bool
+    centre: float
+    half_width: float
     trials: tuple[OrderTrial, ...]
     _row: Callable[[Floats], Floats]
     _kelvin_per_value: Callable[[Floats, Floats], Floats]
@@ -152,6 +162,9 @@ class Problem:
     design: Callable[[Floats, int], Floats]  # from R (or T, if inverse) and the order
     curve: Callable[[Floats], ResistanceCurve]
     inverse: bool = False
+    graded: bool = True  # whether there is a next order to compare with
+    centre: float = 0.0
+    half_width: float = 1.0
 
 
 def solve(points: Points, problem: Problem, order: int) -> LinearFit:
@@ -167,10 +180,12 @@ def solve(points: Points, problem: Problem, order: int) -> LinearFit:
 
 
 def choose_order(
-    points: Points, problem: Problem, largest_order: int
+    points: Points, problem: Problem, largest_order: int, order: int | None = None
 ) -> tuple[int, LinearFit, tuple[OrderTrial, ...]]:
-    """Return the order that the points support, its fit, and the orders tried."""
+    """Return the order that the points support, or the one that is given, its fit, and the orders tried."""
     n = points.R.size
+    if order is not None:
+        return order, solve(points, problem, order), ()
     # Keep at least two points for each parameter, the variance counted.
     largest = max(1, min(largest_order, n // 2 - 2))
     best = solve(points, problem, 1)
@@ -203,8 +218,8 @@ def outcome(
     weighted = (
         problem.design(points.T if problem.inverse else points.R, order) * np.abs(slope / u_T)[:, np.newaxis]
     )
-    leverage = np.sum(np.linalg.qr(weighted)[0] ** 2, axis=1)
-    left_out = residuals / np.maximum(1 - leverage, np.finfo(float).eps)
+    kept = np.maximum(1 - np.sum(np.linalg.qr(weighted)[0] ** 2, axis=1), np.finfo(float).eps)
+    left_out = residuals / kept
 
     def row(R: Floats) -> Floats:
         return problem.design(floats(evaluate(curve, R).temperature) if problem.inverse else R, order)
@@ -218,9 +233,39 @@ def outcome(
         largest=float(np.max(np.abs(residuals))),
         largest_in_uncertainties=None if points.u is None else float(np.max(np.abs(residuals) / points.u)),
         leave_one_out=float(np.sqrt(np.mean(left_out**2))),
+        interpolation=math.hypot(
+            _next_order(points, problem, order, curve), _excess(points, residuals, kept, fit)
+        ),
         reduced_chi2=None if points.u is None or fit.dof == 0 else fit.chi2 / fit.dof,
         monotonic=is_monotonic(curve),
+        centre=problem.centre,
+        half_width=problem.half_width,
         trials=trials,
         _row=row,
         _kelvin_per_value=problem.kelvin_per_value,
     )
+
+
+def _next_order(points: Points, problem: Problem, order: int, curve: ResistanceCurve) -> float:
+    """Return the rms distance of the next order's curve, as a fraction of T, on an even grid of ln R."""
+    if not problem.graded or points.R.size < order + 3:
+        return 0.0
+    low, high = np.log(points.resistance_span)
+    grid = np.linspace(low, high, 200)[1:-1]
+    try:
+        other = problem.curve(solve(points, problem, order + 1).values)
+        with np.errstate(invalid="ignore"):
+            distance = other.log_temperature(grid)[0] - curve.log_temperature(grid)[0]
+    except ValueError:  # the next order turns within the span: it says nothing
+        return 0.0
+    distance = distance[np.isfinite(distance)]
+    return float(np.sqrt(np.mean(distance**2))) if distance.size else 0.0
+
+
+def _excess(points: Points, residuals: Floats, kept: Floats, fit: LinearFit) -> float:
+    """Return the scatter of the points beyond their uncertainties, as a fraction of T; 0 unless chi-squared asks for it."""
+    if points.u is None or chi2_probability(fit.chi2, fit.dof) > _SIGNIFICANT or fit.dof == 0:
+        return 0.0
+    # The variance of a residual is u^2 (1 - leverage) where the form is true.
+    variance = np.mean((residuals**2 / kept - points.u**2) / points.T**2)
+    return math.sqrt(max(float(variance), 0.0))

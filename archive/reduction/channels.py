@@ -39,7 +39,7 @@ def channel_meant(facts: SweepFacts, name: str) -> str | None:
     ----------
     facts : SweepFacts
     name : str
-        A channel's name, ``@thermometer``, or ``@KIND`` for the only channel of a quantity kind (or of the kind whose
+        A channel's name, ``@thermometer``, ``@calibrates`` (that of the thermometer under calibration), or ``@KIND`` for the only channel of a quantity kind (or of the kind whose
         inverse serves as well).
 
     Raises
@@ -52,6 +52,8 @@ def channel_meant(facts: SweepFacts, name: str) -> str | None:
     }
     if name == "@thermometer":
         return _thermometer(facts, used)
+    if name == "@calibrates":
+        return None if facts.sweep.calibrates is None else channel_meant(facts, facts.sweep.calibrates)
     if not name.startswith("@"):
         if name in facts.channels and not facts.channels[name].use:
             raise BadRequest(

@@ -13,7 +13,7 @@ from pydantic import ValidationError
 
 from archive.errors import InvalidSheet
 from schemas.lineage import AnyRecord, SweepEntry
-from schemas.plan import Plan
+from schemas.plan import Applies, Plan
 from schemas.substrate import Substrate
 from schemas.sweep import Sweep
 
@@ -70,7 +70,7 @@ def applies(
     dosed = terms.doses in (None, bool(sweep.doses))
     if cell is not None and terms.cell_kinds and getattr(cell, "kind", None) not in terms.cell_kinds:
         return False
-    if terms.gas is not None and isinstance(sweep, Sweep) and sweep.gas != terms.gas:
+    if isinstance(sweep, Sweep) and not _as_written(terms, sweep):
         return False
     if (
         terms.has_substrate is not None
@@ -81,6 +81,11 @@ def applies(
     if terms.has_pores is not None and isinstance(substrate, Substrate):
         return dosed and (substrate.pore_diameter is not None) == terms.has_pores
     return dosed
+
+
+def _as_written(terms: Applies, sweep: Sweep) -> bool:
+    """Whether what only the sheet says of a sweep fits: its gas, and a channel under calibration."""
+    return terms.gas in (None, sweep.gas) and terms.calibrates in (None, sweep.calibrates is not None)
 
 
 def _coated(cell: AnyRecord, substrate: AnyRecord | None) -> bool:

@@ -92,7 +92,11 @@ class Resolver:
                 return self._need(name)
             case "calibration":
                 return self._calibration(name)
-        raise BadRequest(f"a plan takes {kind}:{name}", expected="channel:, sheet:, need: or calibration:")
+            case "thermometer":
+                return self._thermometer(name)
+        raise BadRequest(
+            f"a plan takes {kind}:{name}", expected="channel:, sheet:, need:, calibration: or thermometer:"
+        )
 
     def _sheet(self, name: str) -> Given | None:
         value, sources, address = sheet_value(self.facts, name)
@@ -151,6 +155,18 @@ class Resolver:
             digest=self.source.digest(stored.calibration),
         )
 
+    def _thermometer(self, name: str) -> Given | None:
+        """Return the record of the thermometer that a channel reads, if it states the field that is asked for."""
+        asked, _, field = name.partition(".")
+        channel = self.channel(asked)
+        address = None if channel is None else self.facts.stored(channel).thermometer
+        if address is None:
+            return None
+        record = self.source.record(address)
+        if field and getattr(record, field, None) is None:
+            return None
+        return Given(address, record=record, digest=self.source.digest(address))
+
     def why_missing(self, text: str | None, port: str, left_out: Mapping[str, str]) -> Missing:
         """Return why none of an input's alternatives exists."""
         if text is None:
@@ -167,6 +183,8 @@ class Resolver:
             what = (
                 "no thermometer channel"
                 if name == "@thermometer"
+                else "no channel under calibration"
+                if name == "@calibrates"
                 else f"no channel {name.replace('@', 'of kind ')}"
             )
             return Missing(
@@ -176,6 +194,11 @@ class Resolver:
         if kind == "need":
             return self._why_no_need(name)
         head, _, field = name.partition(".")
+        if kind == "thermometer":
+            return Missing(
+                f"the thermometer of {self.facts.address} states no {field or 'record'}",
+                f"write a new revision of the thermometer that states it, and {sheet}",
+            )
         if field and head in ("cell", "substrate", "sample"):
             address = getattr(self.facts.entry, head)
             where = "is named for the sweep" if address is None else f"states {field} ({address})"

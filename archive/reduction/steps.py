@@ -15,6 +15,7 @@ from archive.reduction import (
     adsorption_steps,
     background_steps,
     bulk_steps,
+    calibration_steps,
     current_steps,
     dynamic_steps,
     film_steps,
@@ -67,7 +68,7 @@ STEPS: tuple[Step, ...] = (
         sentence="The dissipation is one over the recorded quality factor.",
     ),
     Step(
-        name="temperature-from-calibration", version=1, function=thermometry_steps.temperature_from_calibration,
+        name="temperature-from-calibration", version=2, function=thermometry_steps.temperature_from_calibration,
         takes={
             "reading": Port("any", "array", "reading of the thermometer, or a temperature"),
             "calibration": Port("any", "record", "calibration in force", optional=True),
@@ -321,6 +322,7 @@ STEPS: tuple[Step, ...] = (
     *current_steps.CURRENT_STEPS,
     *third_sound_steps.THIRD_SOUND_STEPS,
     *bulk_steps.BULK_STEPS,
+    *calibration_steps.CALIBRATION_STEPS,
     *heat_capacity_steps.HEAT_CAPACITY_STEPS,
 )  # fmt: skip
 

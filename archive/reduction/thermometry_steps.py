@@ -14,12 +14,15 @@ from archive.physics.resistance_curves import (
     SplineCurve,
     log_polynomial_span,
 )
-from archive.physics.resistance_fit import fit_log_polynomial
 from archive.physics.resistance_thermometer import evaluate
+from archive.reduction.calibration_sources import (
+    calibration_curve,
+    points_fit,
+    temperature_contributions,
+)
 from archive.reduction.estimate import FloatArray
 from archive.reduction.step import NoParameters, Outcome
 from schemas.finding import Finding
-from schemas.lineage import SourceEntry
 from schemas.quantity import unit_factor
 from schemas.thermometer import (
     Calibration,
@@ -55,8 +58,8 @@ def temperature_from_calibration(
 
     Notes
     -----
-    The calibration's standard uncertainty is one source, common to every temperature of every sweep that uses it.
-    Outside the calibrated range there is no temperature, and a finding says how many rows that concerns.
+    The sources of `calibration_sources.temperature_contributions` are common to every temperature of every sweep that uses
+    the calibration. Outside the calibrated range there is no temperature, and a finding says how many rows that concerns.
     """
     if calibration is None:
         if reading_kind != "temperature":
@@ -81,23 +84,17 @@ def temperature_from_calibration(
     temperature = calibrated_temperature(calibration, np.asarray(reading, dtype=np.float64) / factor, factor)
     outside = int(np.count_nonzero(np.isnan(temperature) & ~np.isnan(reading)))
     findings = _outside_finding(calibration, outside, int(np.size(reading))) if outside else ()
-    spread = (
-        np.full(temperature.shape, abs(calibration.uncertainty.si))
-        if calibration.uncertainty is not None
-        else (calibration.relative_uncertainty or 0.0) * np.where(np.isnan(temperature), 0.0, temperature)
+    parts = temperature_contributions(
+        calibration, np.asarray(reading, dtype=np.float64) / factor, temperature
     )
-    source = SourceEntry(
-        name=calibration.address, description=f"calibration of {calibration.thermometer} against {calibration.against}",
-        level="laboratory", address=calibration.address,
-    )  # fmt: skip
     return Outcome(
         {"temperature": temperature},
-        shared={"temperature": {source.name: spread}},
-        sources=(source,),
+        shared={"temperature": {entry.name: part for entry, part in parts}},
+        sources=tuple(entry for entry, _ in parts),
         scales={"temperature": calibration.scale},
         facts={
             "calibration": calibration.address, "form": calibration.relation.form, "outside": outside, "scale": calibration.scale,
-            "low_K": calibration.temperature_low.si, "high_K": calibration.temperature_high.si,
+            "made_from": calibration.made_from or "no reduction of this archive", "low_K": calibration.temperature_low.si, "high_K": calibration.temperature_high.si,
             "outside_words": f"; {outside} reading{'s' * (outside != 1)} outside ha{'s' if outside == 1 else 've'} none" if outside else "",
             "origin": f"Readings became temperatures on {calibration.scale} by calibration {calibration.address} ({calibration.relation.form}),"
             f" from {calibration.temperature_low.format()} to {calibration.temperature_high.format()}",
@@ -130,7 +127,10 @@ def calibrated_temperature(calibration: Calibration, reading: FloatArray, factor
     """
     relation = calibration.relation
     low, high = calibration.temperature_low.si, calibration.temperature_high.si
-    if isinstance(relation, CurieWeissForm):
+    fitted = calibration_curve(calibration)
+    if fitted is not None:
+        found = fitted.temperature(reading).reshape(np.shape(reading))
+    elif isinstance(relation, CurieWeissForm):
         with np.errstate(divide="ignore", invalid="ignore"):
             excess = reading - relation.offset
             found = np.where(
@@ -182,9 +182,10 @@ def _curve(calibration: Calibration) -> ResistanceCurve:
     if isinstance(relation, ChebyshevForm):
         return ChebyshevCurve(relation.coefficients, relation.lower, relation.upper, relation.logarithm)
     if isinstance(relation, LogPolynomialForm):
-        resistances = log_polynomial_span(relation.coefficients, span, centre=relation.centre)
-        return LogPolynomialCurve(relation.coefficients, resistances, centre=relation.centre)
-    readings, temperatures = (tuple(column) for column in zip(*calibration.points, strict=True))
+        scaled = {"centre": relation.centre, "scale": relation.half_width}
+        resistances = log_polynomial_span(relation.coefficients, span, **scaled)
+        return LogPolynomialCurve(relation.coefficients, resistances, **scaled)
     if isinstance(relation, SplineForm):
+        readings, temperatures = (tuple(column) for column in zip(*calibration.points, strict=True))
         return SplineCurve(readings, temperatures)
-    return fit_log_polynomial(readings, temperatures, largest_order=relation.largest_order).curve  # type: ignore[union-attr]
+    return points_fit(calibration).curve
