@@ -12,7 +12,8 @@ import numpy as np
 import numpy.typing as npt
 
 from archive.physics.arrays import ComplexArray, FloatArray
-from archive.physics.film_dynamic import DEBYE, EDGE, FilmStart, flow, flow_rate, free_vortex_length, panels
+from archive.physics.film_dynamic import DEBYE, FilmStart, free_vortex_length
+from archive.physics.film_flow import EDGE, flow, flow_rate, panels
 from archive.physics.film_static import x_minus_log1p, x_of_s
 
 __all__ = ["step_stiffness", "step_stiffness_linear_flow"]

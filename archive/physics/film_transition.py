@@ -13,8 +13,8 @@ import numpy as np
 import numpy.typing as npt
 
 from archive.physics.arrays import FloatArray, same_length, series
-from archive.physics.film_dynamic import complex_stiffness, dynamic_areal_density, fixed_start
-from archive.physics.film_features import dissipation_peak
+from archive.physics.film_curves import PARAMETERS, curve_slopes, curves
+from archive.physics.film_dynamic import complex_stiffness, fixed_start, reduced_response
 from archive.physics.fitting import FitResult, Parameter, fit_residuals
 
 __all__ = ["FREE_BY_DEFAULT", "FilmTransition", "fit_film_transition"]
@@ -22,10 +22,9 @@ __all__ = ["FREE_BY_DEFAULT", "FilmTransition", "fit_film_transition"]
 FREE_BY_DEFAULT = ("transition_temperature", "b", "log_diffusivity", "drop_offset", "dissipation_offset")
 """F and the scale trade against the rest and stay fixed unless they are freed by name."""
 
-NAMES = ("transition_temperature", "b", "log_diffusivity", "F", "scale", "drop_offset", "dissipation_offset")
-
-PANEL_WIDTH, ORDER, TAIL = 2.0, 10, 9.0
-"""Coarser quadrature for the fit: within 1e-8 of the fine one, far below any measurement."""
+NEAR, CLOSE = 1e-4, 1e-12
+"""Tolerances of fits that only find a start, and of the last: a part in 10^12 of T_KT is below 10^-6 of its uncertainty, where
+the model's own rounding still lets the search end by itself."""
 
 
 @dataclass(frozen=True)
@@ -149,57 +148,37 @@ def fit_film_transition(
     same_length(temperature=T, twice_fractional_drop=drop, dissipation=loss)
     if not (scale > 0 and angular_frequency > 0):
         raise ValueError(f"scale, angular_frequency: found {scale}, {angular_frequency}, expected > 0")
-    unknown = [name for name in (*free, *(start or {})) if name not in NAMES]
+    unknown = [name for name in (*free, *(start or {})) if name not in PARAMETERS]
     if unknown:
-        raise ValueError(f"free, start: found {unknown[0]!r}, expected one of {', '.join(NAMES)}")
-    data = _Data(T, drop, loss, u_drop, u_loss, x0, math.log(angular_frequency))
+        raise ValueError(f"free, start: found {unknown[0]!r}, expected one of {', '.join(PARAMETERS)}")
+    data = _Data(T, drop, loss, u_drop, u_loss, x0, angular_frequency)
     limits = _limits(data, scale=scale, scale_uncertainty=scale_uncertainty)
     values = _first_values(data, limits, free, F=F, scale=scale, given=start or {})
-    # F and the scale open false minima when they are free from the start, so they come last.
+    # F and the scale open false minima when they are free from the start, so they come last; not from another fit's end.
     first = tuple(name for name in free if name not in {"F", "scale"})
-    if first and first != tuple(free):
+    if first and first != tuple(free) and not _complete(start):
         values = _completed(
-            values, data.fit(values, limits, first, absolute=absolute, max_evaluations=max_evaluations)
+            values,
+            data.fit(
+                values, limits, first, absolute=absolute, max_evaluations=max_evaluations, tolerance=NEAR
+            ),
         )
-    found = data.fit(values, limits, free, absolute=absolute, max_evaluations=max_evaluations)
+    found = data.fit(
+        values, limits, free, absolute=absolute, max_evaluations=max_evaluations, tolerance=CLOSE
+    )
     final = _completed(values, found)
-    log_w = data.log_w
-    curve = _Curve(T, x0, log_w)
-    model_drop, model_loss = curve(final)
+    model_drop, model_loss = curves(T, final, angular_frequency=angular_frequency, x0=x0)
     parts = found.residuals[: T.size], found.residuals[T.size :]
     return FilmTransition(
         fit=found,
         values=final,
-        L=final["log_diffusivity"] - log_w,
+        L=final["log_diffusivity"] - math.log(angular_frequency),
         twice_fractional_drop=model_drop,
         dissipation=model_loss,
         chi2_drop=float(np.sum(parts[0] ** 2)),
         chi2_dissipation=float(np.sum(parts[1] ** 2)),
         trajectory=f"fixed x0 = {x0:g}, c = (b/4)^2 (T/T_KT - 1)",
     )
-
-
-class _Curve:
-    """The two model curves; the stiffness is kept between calls that change only linear parameters."""
-
-    def __init__(self, temperature: FloatArray, x0: float, log_w: float) -> None:
-        self.temperature = temperature
-        self.x0 = x0
-        self.log_w = log_w
-        self.key: tuple[float, ...] = ()
-        self.density = np.zeros(temperature.shape, dtype=np.complex128)
-
-    def __call__(self, values: dict[str, float]) -> tuple[FloatArray, FloatArray]:
-        key = (values["transition_temperature"], values["b"], values["log_diffusivity"], values["F"])
-        if key != self.key:
-            begin = fixed_start(self.temperature / key[0], b=key[1], x0=self.x0)
-            stiffness = complex_stiffness(
-                begin, L=key[2] - self.log_w, F=key[3], panel_width=PANEL_WIDTH, order=ORDER, tail=TAIL
-            )
-            self.density = dynamic_areal_density(self.temperature, stiffness)
-            self.key = key
-        ratio = values["scale"] * self.density
-        return ratio.real + values["drop_offset"], -ratio.imag + values["dissipation_offset"]
 
 
 @dataclass(frozen=True)
@@ -210,7 +189,7 @@ class _Data:
     u_drop: FloatArray
     u_loss: FloatArray
     x0: float
-    log_w: float
+    angular_frequency: float
 
     def peak(self) -> float:
         return float(self.temperature[int(np.argmax(self.loss))])
@@ -225,7 +204,7 @@ class _Data:
             self.u_drop[order],
             self.u_loss[order],
             self.x0,
-            self.log_w,
+            self.angular_frequency,
         )
 
     def fit(
@@ -236,23 +215,47 @@ class _Data:
         *,
         absolute: bool,
         max_evaluations: int,
+        tolerance: float,
     ) -> FitResult:
-        curve = _Curve(self.temperature, self.x0, self.log_w)
         sizes = {
             "drop_offset": float(np.ptp(self.drop)) or 1.0,
             "dissipation_offset": float(np.ptp(self.loss)) or 1.0,
             "F": 1.0,
         }
         parameters = [
-            _parameter(name, values[name], limits[name], sizes.get(name)) for name in NAMES if name in free
+            _parameter(name, values[name], limits[name], sizes.get(name))
+            for name in PARAMETERS
+            if name in free
         ]
         names = tuple(parameter.name for parameter in parameters)
 
+        def at(fitted: FloatArray) -> dict[str, float]:
+            return values | dict(zip(names, map(float, fitted), strict=True))
+
         def residuals(fitted: FloatArray) -> FloatArray:
-            drop, loss = curve(values | dict(zip(names, map(float, fitted), strict=True)))
+            drop, loss = curves(
+                self.temperature, at(fitted), angular_frequency=self.angular_frequency, x0=self.x0
+            )
             return np.concatenate([(self.drop - drop) / self.u_drop, (self.loss - loss) / self.u_loss])
 
-        return fit_residuals(residuals, parameters, absolute=absolute, max_evaluations=max_evaluations)
+        def jacobian(fitted: FloatArray) -> FloatArray:
+            drop, loss = curve_slopes(
+                self.temperature, at(fitted), names, angular_frequency=self.angular_frequency, x0=self.x0
+            )
+            return -np.concatenate([drop / self.u_drop[:, np.newaxis], loss / self.u_loss[:, np.newaxis]])
+
+        return fit_residuals(
+            residuals,
+            parameters,
+            absolute=absolute,
+            max_evaluations=max_evaluations,
+            jacobian=jacobian,
+            tolerance=tolerance,
+        )
+
+
+def _complete(start: dict[str, float] | None) -> bool:
+    return set(PARAMETERS) <= set(start or {})
 
 
 def _completed(values: dict[str, float], found: FitResult) -> dict[str, float]:
@@ -269,7 +272,7 @@ def _first_values(
     given: dict[str, float],
 ) -> dict[str, float]:
     """Return start values: the best of short fits to a thinned record from three values of b."""
-    if set(NAMES) <= set(given):
+    if _complete(given):
         return dict(given)
     first = tuple(name for name in free if name not in {"F", "scale"})
     candidates = [_start_values(data, b=b, F=F, scale=scale) | given for b in (3.0, 5.0, 9.0)]
@@ -278,18 +281,21 @@ def _first_values(
     few = data.thinned(40)
     trials = []
     for values in candidates:
-        found = few.fit(values, limits, first, absolute=False, max_evaluations=200)
+        found = few.fit(values, limits, first, absolute=False, max_evaluations=200, tolerance=NEAR)
         trials.append((found.chi2, _completed(values, found)))
     return min(trials, key=lambda trial: trial[0])[1]
 
 
 def _start_values(data: _Data, *, b: float, F: float, scale: float) -> dict[str, float]:
     L = 13.0
-    above = dissipation_peak(lambda ratio: fixed_start(ratio, b=b, x0=data.x0), L=L, F=max(F, 0.1)).ratio
+    ratio = 1 + np.geomspace(1e-3, 1.0, 60)
+    # Without free vortices the highest dissipation is not above the transition.
+    stiffness = complex_stiffness(fixed_start(ratio, b=b, x0=data.x0), L=L, F=max(F, 0.1))
+    above = float(ratio[int(np.argmax(reduced_response(ratio, stiffness)[1]))])
     return {
         "transition_temperature": data.peak() / above,
         "b": b,
-        "log_diffusivity": L + data.log_w,
+        "log_diffusivity": L + math.log(data.angular_frequency),
         "F": F,
         "scale": scale,
         "drop_offset": 0.0,
@@ -298,7 +304,7 @@ def _start_values(data: _Data, *, b: float, F: float, scale: float) -> dict[str,
 
 
 def _limits(data: _Data, *, scale: float, scale_uncertainty: float | None) -> dict[str, tuple[float, float]]:
-    peak, log_w = data.peak(), data.log_w
+    peak, log_w = data.peak(), math.log(data.angular_frequency)
     # The highest reading may sit one point beside the true maximum.
     step = float(np.max(np.diff(np.unique(data.temperature)), initial=0.0))
     room = 2 * scale_uncertainty if scale_uncertainty is not None else math.inf

@@ -6,17 +6,15 @@ Jacobian serves every source of uncertainty; a few steps with it take up the cur
 
 from __future__ import annotations
 
-import math
-from collections.abc import Mapping
 from dataclasses import dataclass
 
 import numpy as np
 
 from archive.physics.arrays import FloatArray
-from archive.physics.film_dynamic import complex_stiffness, dynamic_areal_density, fixed_start
-from archive.physics.film_transition import ORDER, PANEL_WIDTH, TAIL, FilmTransition
+from archive.physics.film_curves import curve_slopes, curves
+from archive.physics.film_transition import FilmTransition
 
-__all__ = ["LocalSolution", "curves", "local_solution", "moved"]
+__all__ = ["LocalSolution", "local_solution", "moved"]
 
 
 @dataclass(frozen=True)
@@ -44,31 +42,6 @@ class LocalSolution:
     x0: float
 
 
-def curves(
-    temperature: FloatArray, values: Mapping[str, float], *, angular_frequency: float, x0: float
-) -> tuple[FloatArray, FloatArray]:
-    """Return twice the fractional period drop, and the dissipation, of the dynamic theory.
-
-    Parameters
-    ----------
-    temperature : ndarray
-        K, > 0.
-    values : mapping of str to float
-        Every parameter of `FilmTransition.values`.
-    angular_frequency : float
-        1/s.
-    x0 : float
-        Bare start of the flow.
-    """
-    begin = fixed_start(temperature / values["transition_temperature"], b=values["b"], x0=x0)
-    stiffness = complex_stiffness(
-        begin, L=values["log_diffusivity"] - math.log(angular_frequency), F=values["F"],
-        panel_width=PANEL_WIDTH, order=ORDER, tail=TAIL,
-    )  # fmt: skip
-    ratio = values["scale"] * dynamic_areal_density(temperature, stiffness)
-    return ratio.real + values["drop_offset"], -ratio.imag + values["dissipation_offset"]
-
-
 def local_solution(
     found: FilmTransition,
     *,
@@ -89,18 +62,8 @@ def local_solution(
         As fitted.
     """
     free = found.fit.names
-    columns = []
-    for name in free:
-        # Cube root of the precision times the parameter's own uncertainty scale: the best step of a central difference.
-        size = max(abs(found.values[name]), 1e-3) if not name.endswith("offset") else 1e-9
-        step = float(np.finfo(float).eps) ** (1 / 3) * size
-        sides = [
-            curves(temperature, found.values | {name: found.values[name] + sign * step}, angular_frequency=angular_frequency, x0=x0)
-            for sign in (1, -1)
-        ]  # fmt: skip
-        drop, loss = ((up - down) / (2 * step) for up, down in zip(*sides, strict=True))
-        columns.append(np.concatenate([drop / u_drop, loss / u_dissipation]))
-    jacobian = np.column_stack(columns)
+    drop, loss = curve_slopes(temperature, found.values, free, angular_frequency=angular_frequency, x0=x0)
+    jacobian = np.concatenate([drop / u_drop[:, np.newaxis], loss / u_dissipation[:, np.newaxis]])
     norm = np.linalg.norm(jacobian, axis=0)
     gain = np.linalg.pinv(jacobian / norm) / norm[:, np.newaxis]
     return LocalSolution(dict(found.values), free, gain, u_drop, u_dissipation, x0)

@@ -27,6 +27,9 @@ RELATIVE_OFFSET = 1e-3
 ROUNDING = 1e-8
 """A gradient this small against the residuals' own gradient scale is rounding, square root of the precision."""
 
+TOLERANCE = 4 * float(np.finfo(float).eps)
+"""The edge of double precision: stopping early is what ruins ill-conditioned problems."""
+
 
 @dataclass(frozen=True)
 class Parameter:
@@ -182,6 +185,8 @@ def fit_residuals(
     absolute: bool,
     max_evaluations: int = 20_000,
     rounding: float = 0.0,
+    jacobian: Callable[[FloatArray], FloatArray] | None = None,
+    tolerance: float = TOLERANCE,
 ) -> FitResult:
     """Return the fit that makes the sum of squares of a residual function least.
 
@@ -193,6 +198,10 @@ def fit_residuals(
         As in `fit`.
     rounding : float
         Length of the residual vector that is rounding of the data alone.
+    jacobian : callable, optional
+        Takes the parameter values, returns the derivatives of the residuals, shape (residuals, parameters).
+    tolerance : float
+        Relative change of the parameters at which the search ends, or its square of the sum of squares.
 
     Returns
     -------
@@ -206,7 +215,7 @@ def fit_residuals(
 
     Notes
     -----
-    The Jacobian is a central difference. The Levenberg-Marquardt way is tried first if there are no bounds,
+    Without `jacobian` the derivatives are central differences. The Levenberg-Marquardt way is tried first if there are no bounds,
     then the trust-region way; the better end is kept. Convergence means that the relative offset (length of
     the residual vector's projection on the tangent plane against its length across it, each per degree of
     freedom) is below 0.001, or that the gradient has vanished to rounding.
@@ -221,7 +230,7 @@ def fit_residuals(
     start = np.array([parameter.start for parameter in parameters]) / scale
     lower = np.array([parameter.lower for parameter in parameters]) / scale
     upper = np.array([parameter.upper for parameter in parameters]) / scale
-    calls = _Counted(residuals, scale)
+    calls = _Counted(residuals, scale, jacobian)
     first = calls(start)
     if first.size < len(names):
         raise ValueError(
@@ -235,7 +244,7 @@ def fit_residuals(
     bounded = bool(np.isfinite(lower).any() or np.isfinite(upper).any())
     best, best_jacobian, offset = start, _jacobian(calls, start, lower, upper), math.inf
     for method in ("trf",) if bounded else ("lm", "trf"):
-        end = _solve(calls, best, lower, upper, method=method, budget=max_evaluations)
+        end = _solve(calls, best, lower, upper, method=method, budget=max_evaluations, tolerance=tolerance)
         if np.sum(calls(end) ** 2) <= np.sum(calls(best) ** 2):
             best = end
         best_jacobian = _jacobian(calls, best, lower, upper)
@@ -260,9 +269,15 @@ def fit_residuals(
 class _Counted:
     """The residual function in scaled parameters, with a count of calls."""
 
-    def __init__(self, residuals: Callable[[FloatArray], FloatArray], scale: FloatArray) -> None:
+    def __init__(
+        self,
+        residuals: Callable[[FloatArray], FloatArray],
+        scale: FloatArray,
+        slopes: Callable[[FloatArray], FloatArray] | None,
+    ) -> None:
         self.residuals = residuals
         self.scale = scale
+        self.slopes = slopes
         self.calls = 0
 
     def __call__(self, scaled: FloatArray) -> FloatArray:
@@ -301,7 +316,16 @@ def _checked_names(parameters: Sequence[Parameter]) -> tuple[str, ...]:
 
 
 def _jacobian(calls: _Counted, point: FloatArray, lower: FloatArray, upper: FloatArray) -> FloatArray:
-    """Return the central-difference Jacobian, one-sided where a bound is in the way."""
+    """Return the caller's Jacobian, or the central-difference one, one-sided where a bound is in the way."""
+    if calls.slopes is not None:
+        calls.calls += 1
+        with np.errstate(all="ignore"):
+            return np.nan_to_num(
+                np.asarray(calls.slopes(point * calls.scale)) * calls.scale,
+                nan=0.0,
+                posinf=1e100,
+                neginf=-1e100,
+            )
     columns = []
     for index, value in enumerate(point):
         # A value is counted in its parameter's own scale: a resonance frequency is many line widths, and a step of a part of
@@ -315,10 +339,15 @@ def _jacobian(calls: _Counted, point: FloatArray, lower: FloatArray, upper: Floa
 
 
 def _solve(
-    calls: _Counted, start: FloatArray, lower: FloatArray, upper: FloatArray, *, method: str, budget: int
+    calls: _Counted,
+    start: FloatArray,
+    lower: FloatArray,
+    upper: FloatArray,
+    *,
+    method: str,
+    budget: int,
+    tolerance: float,
 ) -> FloatArray:
-    # Tolerances at the edge of double precision: stopping early is what ruins ill-conditioned problems.
-    tolerance = 4 * np.finfo(float).eps
     if method == "lm":
         bounds: tuple[Any, Any] = (-np.inf, np.inf)
     else:
@@ -345,10 +374,11 @@ def _solve(
             bounds=bounds,
             method=method,  # type: ignore[arg-type]
             x_scale="jac",
-            ftol=tolerance,
+            # Near the best point the sum of squares goes as the square of the step.
+            ftol=max(tolerance**2, TOLERANCE),
             xtol=tolerance,
-            gtol=tolerance,
-            max_nfev=max(budget // (2 * start.size + 1), 10),
+            gtol=TOLERANCE,
+            max_nfev=max(budget // (2 if calls.slopes is not None else 2 * start.size + 1), 10),
         )
     return np.asarray(outcome.x, dtype=np.float64)
 

@@ -14,10 +14,11 @@ import numpy.typing as npt
 from pydantic import Field
 
 from archive.physics.constants import HBAR, MASS_HELIUM4, MOLAR_MASS_HELIUM4
+from archive.physics.film_curves import curves
 from archive.physics.film_dynamic import DEBYE
 from archive.physics.film_static import UNIVERSAL_JUMP
 from archive.physics.film_transition import FilmTransition, fit_film_transition
-from archive.physics.film_transition_local import LocalSolution, curves, local_solution, moved
+from archive.physics.film_transition_local import LocalSolution, local_solution, moved
 from archive.reduction.background_steps import known_rows, weights
 from archive.reduction.estimate import FloatArray
 from archive.reduction.row_choice import row_indices

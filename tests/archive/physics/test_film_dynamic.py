@@ -12,7 +12,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from scipy.integrate import solve_ivp
 
-from archive.physics import film_static
+from archive.physics import film_flow, film_static
 from archive.physics.film_dynamic import (
     FilmStart,
     complex_stiffness,
@@ -21,6 +21,7 @@ from archive.physics.film_dynamic import (
     free_vortex_length,
     oscillator_response,
     reduced_response,
+    stiffness_slopes,
     villain_start,
 )
 
@@ -128,14 +129,21 @@ def test_against_differential_equations(name, ratio, L):
     assert abs(found - expected) <= 1e-10 * abs(expected)
 
 
-def test_quadrature_of_the_fit_is_fine_enough():
-    ratio = np.linspace(0.7, 1.3, 61)
-    start = fixed_start(ratio, b=8.0)
-    fine, coarse = (
-        complex_stiffness(start, L=12.0),
-        complex_stiffness(start, L=12.0, panel_width=2.0, order=10, tail=9.0),
-    )
-    assert np.max(np.abs(fine - coarse)) < 1e-8
+def test_fewer_nodes_agree(monkeypatch):
+    """Two nodes more of a panel bring a digit: sixteen agree with the twenty-four in use to 1e-8, so those hold 1e-12."""
+    ratio = np.concatenate([np.linspace(0.7, 1.3, 61), 1 + np.geomspace(1e-6, 1e-2, 20)])
+    cases = [(fixed_start(ratio, b=b, x0=x0), L) for b in (1.0, 8.0, 20.0) for x0 in (-0.9, -0.5, -0.1) for L in (-4.0, 3.0, 12.0, 30.0)]  # fmt: skip
+    fine = [complex_stiffness(start, L=L) for start, L in cases]
+    x, w = np.polynomial.legendre.leggauss(16)
+    monkeypatch.setattr(film_flow, "ORDER", 16)
+    monkeypatch.setattr(film_flow, "NODES", np.append((x + 1) / 2, 1.0))
+    monkeypatch.setattr(film_flow, "WEIGHTS", w / 2)
+    monkeypatch.setattr(film_flow, "RUNNING", film_flow._running_integral(16))
+    for (start, L), expected in zip(cases, fine, strict=True):
+        found = complex_stiffness(start, L=L)
+        # The dissipation counts by itself: far below the transition it is many orders smaller.
+        np.testing.assert_allclose(found.real, expected.real, rtol=1e-8)
+        np.testing.assert_allclose(found.imag, expected.imag, rtol=1e-8, atol=1e-300)
 
 
 def test_free_vortices_do_nothing_below_the_transition():
@@ -223,8 +231,62 @@ def test_areal_density_at_the_jump():
         (lambda: fixed_start(1.0, b=0.0), "b: found"),
         (lambda: fixed_start(1.0, b=1.0, x0=0.1), "x0: found"),
         (lambda: complex_stiffness(fixed_start(np.array([1.0]), b=5.0), L=12.0, F=-1.0), "F: found"),
+        (lambda: complex_stiffness(fixed_start(np.array([1.0]), b=5.0), L=math.inf), "L: found"),
+        (lambda: complex_stiffness(FilmStart(np.array([0.1]), np.array([-1e-3])), L=12.0), r"start.x\[0\]"),
     ],
 )
 def test_refused(call, message):
     with pytest.raises(ValueError, match=message):
         call()
+
+
+@pytest.mark.parametrize("name", ["v", "b"])
+def test_slopes_of_the_stiffness(name):
+    """Against differences of the stiffness; F enters the inverse stiffness linearly, L and c smoothly."""
+    ratio = np.linspace(0.9, 1.1, 41)
+    start = STARTS[name](ratio)
+    found = stiffness_slopes(start, L=12.0, F=1.3)
+    np.testing.assert_allclose(found.stiffness, complex_stiffness(start, L=12.0, F=1.3), rtol=1e-12)
+
+    def difference(of, step):
+        return (8 * (of(step) - of(-step)) - (of(2 * step) - of(-2 * step))) / (12 * step)
+
+    for slope, expected in (
+        (found.by_log_diffusivity, difference(lambda h: complex_stiffness(start, L=12 + h, F=1.3), 1e-3)),
+        (found.by_prefactor, difference(lambda h: complex_stiffness(start, L=12.0, F=1.3 + h), 1e-2)),
+        (
+            found.by_invariant,
+            difference(
+                lambda h: complex_stiffness(FilmStart(start.x, start.invariant + h), L=12.0, F=1.3), 1e-6
+            ),
+        ),
+    ):
+        assert np.max(np.abs(slope - expected)) < 1e-7 * np.max(np.abs(expected))
+
+
+def test_what_is_not_a_number_stays_so_alone():
+    ratio = np.array([0.95, np.nan, 1.02])
+    found = complex_stiffness(fixed_start(ratio, b=5.5), L=12.0)
+    assert np.isnan(found[1])
+    np.testing.assert_allclose(
+        found[[0, 2]], complex_stiffness(fixed_start(ratio[[0, 2]], b=5.5), L=12.0), rtol=1e-13
+    )
+    assert np.isnan(complex_stiffness(fixed_start(ratio[[0, 2]], b=5.5), L=[np.nan, 12.0])[0])
+
+
+def test_more_temperatures_than_a_block():
+    ratio = np.linspace(0.9, 1.1, 3 * film_flow.BLOCK + 7)
+    L = np.linspace(10.0, 14.0, ratio.size)
+    found = complex_stiffness(fixed_start(ratio, b=5.5), L=L)
+    some = slice(5, None, 211)
+    np.testing.assert_allclose(
+        found[some], complex_stiffness(fixed_start(ratio[some], b=5.5), L=L[some]), rtol=1e-12
+    )
+
+
+def test_the_shape_of_the_temperatures_is_kept():
+    ratio = np.linspace(0.95, 1.05, 6)
+    found = complex_stiffness(fixed_start(ratio.reshape(2, 3), b=5.5), L=12.0)
+    np.testing.assert_allclose(
+        found, complex_stiffness(fixed_start(ratio, b=5.5), L=12.0).reshape(2, 3), rtol=1e-13
+    )

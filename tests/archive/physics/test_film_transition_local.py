@@ -7,9 +7,10 @@ import math
 import numpy as np
 import pytest
 
+from archive.physics.film_curves import curves
 from archive.physics.film_static import UNIVERSAL_JUMP
 from archive.physics.film_transition import fit_film_transition
-from archive.physics.film_transition_local import curves, local_solution, moved
+from archive.physics.film_transition_local import local_solution, moved
 
 OMEGA, SCALE = 2 * math.pi * 1000, 75.6
 TRUTH = {

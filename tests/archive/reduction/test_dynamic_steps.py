@@ -9,7 +9,7 @@ import numpy as np
 import pytest
 
 from archive.physics.constants import MOLAR_MASS_HELIUM4
-from archive.physics.film_transition_local import curves
+from archive.physics.film_curves import curves
 from archive.reduction.dynamic_steps import (
     FilmDynamicParameters,
     film_dynamic_fit,
