@@ -1,4 +1,4 @@
-"""Commands on an archive as a whole: make it, prove it, make its index anew."""
+"""Commands on an archive as a whole: make it, prove it, tell its acts, make its index anew."""
 
 from __future__ import annotations
 
@@ -11,10 +11,10 @@ from archive.commands import opening
 from archive.commands.failures import EXIT_WARNINGS
 from archive.commands.machine import write_json
 from archive.commands.opening import archive_option, json_option, strict_option
-from archive.commands.terminal import Progress, say, styled
+from archive.commands.terminal import Progress, say, styled, table
 from archive.errors import EXIT_DAMAGE
 
-__all__ = ["fixity", "init", "rebuild_index"]
+__all__ = ["fixity", "init", "journal", "rebuild_index"]
 
 
 @click.command(short_help="Make a new archive.")
@@ -49,7 +49,7 @@ def init(*, folder: Path, name: str | None, index: str | None, as_json: bool) ->
 @json_option
 @strict_option
 def fixity(*, archive_dir: Path | None, as_json: bool, strict: bool) -> None:
-    """Read every sealed file again and name what is damaged, missing, or there without being recorded.
+    """Read every sealed file again and name what is damaged, missing, or there without being recorded; follow the journal.
 
     \b
     Example:
@@ -91,6 +91,47 @@ def _verdict(files: int, hurt: int, stray: int) -> str:
             "above from a copy; the index is not the cause."
         )
     return f"All {files} recorded files are byte for byte as they were sealed{strays}."
+
+
+@click.command(short_help="Tell what was done to the archive.")
+@click.argument("address", required=False)
+@click.option("--last", type=click.IntRange(min=1), metavar="N", help="Only the last N acts.")
+@archive_option
+@json_option
+def journal(*, address: str | None, last: int | None, archive_dir: Path | None, as_json: bool) -> None:
+    """Tell what was done to the archive: when, by which role, to what, by which version of Stillroom.
+
+    With ADDRESS only acts on it or on a part of it. Each line of the journal holds the digest of the line before it, and
+    `stillroom fixity` follows that chain. Set STILLROOM_ROLE to your role, such as "data steward", before you write.
+
+    \b
+    Examples:
+      stillroom journal
+      stillroom journal 2026-03 --last 10
+    """
+    with opening.open_archive(archive_dir) as lab:
+        entries = lab.journal()
+    if address is not None:
+        entries = [each for each in entries if each.act.what.startswith(address)]
+    entries = entries[-last:] if last is not None else entries
+    if as_json:
+        write_json(entries)
+        return
+    table(
+        ("no.", "at", "act", "what", "by", "version", "note"),
+        [
+            (
+                str(each.number),
+                each.at,
+                each.act.act,
+                each.act.what,
+                each.act.by,
+                each.stillroom,
+                each.act.note or "",
+            )
+            for each in entries
+        ],
+    )
 
 
 @click.command("rebuild-index", short_help="Make the index anew from sealed files.")

@@ -47,6 +47,7 @@ _COMMANDS: Final = (
     compare_command.compare,
     report_commands.run_sheet,
     report_commands.appendix,
+    archive_commands.journal,
     archive_commands.fixity,
     archive_commands.rebuild_index,
     bench_commands.convert,

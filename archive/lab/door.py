@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import os
 from collections.abc import Callable, Iterator, Mapping, Sequence
-from contextlib import contextmanager
+from contextlib import contextmanager, nullcontext
 from datetime import UTC, datetime
 from pathlib import Path
 from types import TracebackType
@@ -26,16 +26,19 @@ from archive.lab import reducing, reporting, showing
 from archive.lab.checking import check_folder, earlier_runs, folder_report, require_folder
 from archive.lab.comparing import Comparison, compare
 from archive.lab.forward import forward as lineage_forward
+from archive.lab.journaling import AFTERWARDS, Acts
 from archive.lab.outcomes import CheckReport, IngestOutcome, ReduceOutcome, ReplayReport
 from archive.lab.place import find_root, made, unmade
 from archive.lab.replaying import replay_all
 from archive.lab.source import LabSource
 from archive.lab.tracing import backward
+from archive.reduction.monte_carlo import Request
 from archive.reduction.software import software
 from archive.reduction.trace import TraceNode
 from archive.store.durable import LOCK_NAME, archive_lock, write_whole
 from archive.store.fixity import fixity
 from archive.store.interface import Damage, SealedFile
+from archive.store.journal import Entry, Journal
 from archive.store.local import LocalStore, open_store
 from archive.store.staging import sweep_staging
 from schemas.address import parse_address
@@ -86,6 +89,7 @@ class Archive:
         self._index = index
         self._clock = clock
         self._source = LabSource(store, index)
+        self._acts = Acts(Journal(root), clock)
 
     # Opening and closing ------------------------------------------------------------------------------------------
 
@@ -136,6 +140,9 @@ class Archive:
                 raise BadRequest("another process has just made an archive here", file=str(root))
             try:
                 made(root, settings, settings_text(settings.name, index))
+                begun = Acts(Journal(root), clock)
+                begun.done("init", settings.name)
+                begun.enter()
             except BaseException:
                 unmade(root, settings)
                 raise
@@ -190,17 +197,20 @@ class Archive:
         """Sweep what an interrupted writer left, and complete the index from sealed files it does not know."""
         if not os.access(self.root, os.W_OK):
             return
-        unknown = set(self._store.keys()) - set(self._index.sealed_files())
+        recorded = self._index.sealed_files()
+        unknown = set(self._store.keys()) - set(recorded)
         staged = any((self.root / "staging").iterdir()) if (self.root / "staging").is_dir() else False
-        if not unknown and not staged:
+        if not unknown and not staged and not self._acts.behind(len(recorded)):
             return
         try:
             with archive_lock(self.root, wait_s=0.0):
                 self.notices += sweep_staging(self.root)
-                recorded = set(self._index.sealed_files())
+                known = set(self._index.sealed_files())
                 for key in sorted(self._store.keys(), key=_by_age(self._store)):
-                    if key not in recorded:
+                    if key not in known:
                         self._complete(key)
+                self._acts.enter()
+                self._enter_missing()
         except ArchiveBusy:
             self.notices.append("another process is writing; what it has not finished is not shown yet")
         except (ArchiveError, OSError) as problem:
@@ -214,24 +224,35 @@ class Archive:
             self.notices.append(f"{key} is sealed but not in the index, and it is damaged: {damage[0].what}")
             return
         try:
-            self._record(self._store.describe(key))
+            self._record(self._store.describe(key), note=AFTERWARDS)
         except ArchiveError as problem:
             self.notices.append(f"{key} is sealed, but cannot be recorded in the index: {problem}")
             return
         self.notices.append(f"{key} had been sealed but not indexed; its rows were made from the file itself")
 
-    def _record(self, sealed: SealedFile) -> None:
+    def _enter_missing(self) -> None:
+        recorded = {key: SealedFile(key, *row) for key, row in self._index.sealed_files().items()}
+        if self._acts.behind(len(recorded)):
+            order = sorted(set(recorded) & set(self._store.keys()), key=_by_age(self._store))
+            count = self._acts.caught_up(recorded, self._source.document, order)
+            self.notices += [f"{count} acts were entered in the journal afterwards"] if count else []
+
+    def _record(self, sealed: SealedFile, *, note: str | None = None) -> None:
         document = self._source.document(sealed.key)
         if isinstance(document, ReductionDocument):
             self._index.record_reduction(document, key=sealed.key, sha256=sealed.sha256, size=sealed.size)
         else:
             self._index.record_accession(document, key=sealed.key, sha256=sealed.sha256, size=sealed.size)
+        self._acts.sealed(document, sealed, note=note)
 
     @contextmanager
     def _writing(self) -> Iterator[None]:
         with archive_lock(self.root):
             self.notices += sweep_staging(self.root)
-            yield
+            try:
+                yield
+            finally:
+                self._acts.enter()
 
     # Coming in ----------------------------------------------------------------------------------------------------
 
@@ -294,6 +315,7 @@ class Archive:
         *,
         plan: str | Path | None = None,
         sweep: str | None = None,
+        monte_carlo: Request | None = None,
         progress: Progress = _quiet,
     ) -> list[ReduceOutcome]:
         """Carry out plans on the sweeps of a cooldown, in an order in which each finds what it rests on.
@@ -306,22 +328,32 @@ class Archive:
             Name of a shipped plan, or a plan file; else every plan that applies.
         sweep : str, optional
             Name of one sweep; else all.
+        monte_carlo : Request, optional
+            Repeat each plan with drawn inputs and seal what that finds with the reduction.
 
         Returns
         -------
         list of ReduceOutcome
             One per sweep and plan, in the order carried out; a problem stands in the outcome and stops no other.
         """
-        with self._writing():
+        # Trials may take an hour: they run without the lock, which is taken to seal.
+        with self._writing() if monte_carlo is None else nullcontext():
             return reducing.reduce(
                 self._source,
                 cooldown,
                 plan=plan,
                 sweep=sweep,
                 clock=self._clock,
-                seal=self._seal_reduction,
+                seal=self._seal_reduction if monte_carlo is None else self._seal_alone,
                 progress=progress,
+                request=monte_carlo,
             )
+
+    def _seal_alone(
+        self, document: ReductionDocument, arrays: Mapping[str, tuple[NDArray[Any], dict[str, str]]]
+    ) -> None:
+        with self._writing():
+            self._seal_reduction(document, arrays)
 
     def _seal_reduction(
         self, document: ReductionDocument, arrays: Mapping[str, tuple[NDArray[Any], dict[str, str]]]
@@ -446,7 +478,12 @@ class Archive:
         recorded = {
             key: SealedFile(key, sha256, size) for key, (sha256, size) in self._index.sealed_files().items()
         }
-        return fixity(self._store, recorded, progress)
+        digests = {key: sealed.sha256 for key, sealed in recorded.items()}
+        return [*fixity(self._store, recorded, progress), *self._acts.journal.damage(digests)]
+
+    def journal(self) -> list[Entry]:
+        """All acts on this archive, oldest first: who by role, when, what, by which version of Stillroom."""
+        return list(self._acts.journal.entries())
 
     @classmethod
     def rebuild_index(
@@ -466,7 +503,14 @@ class Archive:
         """
         root = find_root(None if start is None else Path(start))
         settings = read_settings(root)
-        return reducing.rebuilt_index(root, settings.index_address(root), open_store(root), progress=progress)
+        counts = reducing.rebuilt_index(
+            root, settings.index_address(root), open_store(root), progress=progress
+        )
+        acts = Acts(Journal(root), _now)
+        acts.done("rebuild-index", settings.name)
+        with archive_lock(root):
+            acts.enter()
+        return counts
 
 
 def _by_age(store: LocalStore) -> Callable[[str], tuple[bool, float, str]]:

@@ -11,6 +11,7 @@ from archive.errors import NotAnArchive
 from archive.index import Index
 from archive.intake.settings import SETTINGS_NAME, Settings
 from archive.store.durable import write_whole
+from archive.store.journal import JOURNAL_NAME
 
 __all__ = ["find_root", "made", "unmade"]
 
@@ -31,6 +32,7 @@ def unmade(root: Path, settings: Settings) -> None:
         for part in _PARTS:
             if (root / part).is_dir():
                 (root / part).rmdir()
+        (root / JOURNAL_NAME).unlink(missing_ok=True)
         index = Path(settings.index_address(root).removeprefix("sqlite:///"))
         for path in root.glob(f"{glob.escape(index.name)}*") if index.parent == root else ():
             path.unlink()

@@ -43,6 +43,7 @@ else:
 __all__ = [
     "LOCK_NAME",
     "STAGING_SUFFIX",
+    "append_lines",
     "archive_lock",
     "discard",
     "file_digest",
@@ -169,6 +170,36 @@ def write_whole(path: Path, content: bytes, *, replace: bool = False) -> None:
     finally:
         with contextlib.suppress(OSError):  # where it could not be made, it cannot be removed either
             discard(staged)
+
+
+def append_lines(path: Path, content: bytes, *, cut: int = 0) -> None:
+    """Append to a file that only grows, and bring it to the disk; the file is made if need be.
+
+    Parameters
+    ----------
+    path : Path
+    content : bytes
+    cut : int
+        So many bytes are taken off the end before: what an interrupted writer left of its line.
+
+    Raises
+    ------
+    OSError
+        If it cannot be written; a part of it may stand there then.
+    """
+    new = not path.exists()
+    descriptor = os.open(path, os.O_RDWR | os.O_CREAT | os.O_APPEND, 0o666)
+    try:
+        if cut:
+            os.ftruncate(descriptor, os.fstat(descriptor).st_size - cut)
+        left = memoryview(content)
+        while left:
+            left = left[os.write(descriptor, left) :]
+        _sync(descriptor)
+    finally:
+        os.close(descriptor)
+    if new:
+        sync_folder(path.parent)
 
 
 def _link_or_rename(staged: Path, final: Path) -> None:
