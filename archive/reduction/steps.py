@@ -17,6 +17,7 @@ from archive.reduction import (
     bulk_steps,
     calibration_steps,
     current_steps,
+    dead_volume_steps,
     dynamic_steps,
     film_steps,
     gas_steps,
@@ -26,10 +27,12 @@ from archive.reduction import (
     loading_steps,
     oscillator_steps,
     peak_steps,
+    pulse_steps,
     stability_steps,
     sweep_steps,
     thermometry_steps,
     third_sound_steps,
+    tracking_steps,
     transition_steps,
 )
 from archive.reduction.step import Port, Step
@@ -317,6 +320,7 @@ STEPS: tuple[Step, ...] = (
     ),
     *gathering.GATHERING_STEPS,
     *jump_steps.JUMP_STEPS,
+    *dead_volume_steps.DEAD_VOLUME_STEPS,
     *dynamic_steps.DYNAMIC_STEPS,
     *stability_steps.STABILITY_STEPS,
     *current_steps.CURRENT_STEPS,
@@ -324,6 +328,8 @@ STEPS: tuple[Step, ...] = (
     *bulk_steps.BULK_STEPS,
     *calibration_steps.CALIBRATION_STEPS,
     *heat_capacity_steps.HEAT_CAPACITY_STEPS,
+    *pulse_steps.PULSE_STEPS,
+    *tracking_steps.TRACKING_STEPS,
 )  # fmt: skip
 
 
