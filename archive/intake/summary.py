@@ -8,40 +8,17 @@ from datetime import UTC, datetime
 import numpy as np
 
 from archive.intake.reading import Reading, SweepTable
-from archive.reduction.digest import record_digest
-from schemas.cell import Cryostat
-from schemas.lineage import AnyRecord, ChannelEntry, RecordEntry, RecordKind, SweepEntry, Value
-from schemas.substrate import Sample, Substrate
+from archive.reduction.record_kinds import record_entry
+from schemas.lineage import ChannelEntry, RecordEntry, SweepEntry, Value
 from schemas.sweep import Channel, Sweep
-from schemas.thermometer import Calibration, Thermometer
 from schemas.units import ucum
 
-__all__ = ["record_entries", "record_kind", "sweep_entries"]
-
-
-def record_kind(record: AnyRecord) -> RecordKind:
-    """Kind of a record, as the index names it."""
-    kinds: tuple[tuple[type, RecordKind], ...] = (
-        (Cryostat, "cryostat"),
-        (Substrate, "substrate"),
-        (Sample, "sample"),
-        (Thermometer, "thermometer"),
-        (Calibration, "calibration"),
-    )
-    return next((kind for each, kind in kinds if isinstance(record, each)), "cell")
+__all__ = ["record_entries", "sweep_entries"]
 
 
 def record_entries(reading: Reading) -> tuple[RecordEntry, ...]:
     """Every record that holds in this accession, in order of address."""
-    return tuple(
-        RecordEntry(
-            kind=record_kind(record),
-            address=address,
-            digest=record_digest(record),
-            content=record.model_dump(mode="json"),
-        )
-        for address, record in sorted(reading.records.items())
-    )
+    return tuple(record_entry(record) for _, record in sorted(reading.records.items()))
 
 
 def sweep_entries(reading: Reading) -> tuple[SweepEntry, ...]:

@@ -5,7 +5,7 @@ The runner computes nothing itself and reads no clock but the one it is given: e
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass, field
 from datetime import datetime
 from typing import Any
@@ -328,7 +328,7 @@ def _finished(
         number=number,
         plan=plan,
         plan_digest=record_digest(plan),
-        inputs=tuple(work.inputs.values()),
+        inputs=_with_grounds(work.inputs.values(), work.resolver.source.grounds(facts.address)),
         steps=tuple(work.records),
         outputs=tuple(output_entry(each) for each in work.found),
         sources=tuple(used),
@@ -341,6 +341,16 @@ def _finished(
     )
     arrays = output_arrays(work.found, [each.name for each in used])
     return ReductionOutcome(document, arrays, work.repeatable.finished(work.resolver.sources))
+
+
+def _with_grounds(inputs: Iterable[InputEntry], grounds: Mapping[str, InputEntry]) -> tuple[InputEntry, ...]:
+    """Return inputs that say why another record was taken, followed by the accession and the amendments."""
+    taken = []
+    for each in inputs:
+        why = grounds.get(each.address)
+        said = {} if why is None else {"instead_of": why.instead_of, "because": why.because}
+        taken.append(each.model_copy(update=said))
+    return (*taken, *(each for each in grounds.values() if each.role in ("accession", "amendment")))
 
 
 def _used_sources(work: _Work) -> list[SourceEntry]:

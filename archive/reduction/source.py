@@ -11,7 +11,7 @@ from typing import Any, Protocol
 import numpy.typing as npt
 
 from archive.reduction.estimate import Estimate
-from schemas.lineage import AccessionDocument, AnyRecord, ReductionDocument
+from schemas.lineage import AccessionDocument, AnyRecord, InputEntry, ReductionDocument
 
 __all__ = ["ArrayReader", "Source"]
 
@@ -53,6 +53,14 @@ class Source(Protocol):
 
     def reduction(self, address: str) -> ReductionDocument:
         """Return one reduction's document."""
+        ...
+
+    def grounds(self, sweep_address: str) -> Mapping[str, InputEntry]:
+        """Return what a sweep is reduced by that its sheet does not say, by address.
+
+        These are the accession read, the amendments that bear on the sweep, and the records taken in the place of those
+        that the sheet names, each with the reason.
+        """
         ...
 
     def digest(self, address: str) -> str:
