@@ -31,6 +31,8 @@ SweepKind = Literal[
     "drive-sweep",
     "frequency-sweep",
     "ringdown",
+    "pulse-response",
+    "drive-pulse",
     "isotherm",
     "heat-capacity",
     "persistent-current",

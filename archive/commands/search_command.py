@@ -29,6 +29,8 @@ SWEEP_KINDS: Final = (
     "drive-sweep",
     "frequency-sweep",
     "ringdown",
+    "pulse-response",
+    "drive-pulse",
     "isotherm",
     "heat-capacity",
     "persistent-current",

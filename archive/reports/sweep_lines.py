@@ -25,6 +25,7 @@ SWEEP_HEADS = (
 )  # fmt: skip
 _KINDS = {
     "dose-run": "dose", "drive-sweep": "ampl. test", "frequency-sweep": "resonance", "heat-capacity": "heat cap.", "persistent-current": "current",
+    "pulse-response": "response", "drive-pulse": "pulse",
 }  # fmt: skip
 
 

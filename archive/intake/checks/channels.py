@@ -198,7 +198,10 @@ def constant_channel(reading: Reading, thresholds: Thresholds) -> Iterator[Findi
     for table in tables(reading):
         for name, channel in table.channels.items():
             facts = table.facts[name]
-            if channel.use and channel.quantity in _ALIVE and table.rows >= 10 and facts.low == facts.high:
+            # The rate of a record against time is one number.
+            meant = table.sweep.kind == "pulse-response" and channel.quantity == "frequency"
+            dead = channel.use and channel.quantity in _ALIVE and not meant
+            if dead and table.rows >= 10 and facts.low == facts.high:
                 yield on_sweep(
                     reading,
                     table,

@@ -186,6 +186,7 @@ def coverage_not_stated(reading: Reading, thresholds: Thresholds) -> Iterator[Fi
         "drive-sweep",
         "frequency-sweep",
         "ringdown",
+        "pulse-response",
         "heat-capacity",
         "persistent-current",
     ):

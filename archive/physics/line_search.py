@@ -1,0 +1,241 @@
+"""Lines in the response of a resonator: found by matched filters, fitted as complex Lorentzians, or refused.
+
+Rules: a line is looked for only where noise alone would not do as well; what a fit does not bear out is told without a number; a line
+narrower than the resolution is kept apart, because a steady tone that nobody drove looks the same.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass, replace
+from typing import Literal
+
+import numpy as np
+import numpy.typing as npt
+from scipy.signal import fftconvolve
+
+from archive.physics.arrays import ComplexArray, FloatArray
+from archive.physics.pulse_response import PulseResponse
+from archive.physics.resonance import Resonance, fit_resonance, resonance_curve
+
+__all__ = ["Line", "LineSearch", "resonance_lines"]
+
+IntArray = npt.NDArray[np.int64]
+
+UNRESOLVED_SHARE = 0.75
+"""Share of a line's power in two neighbouring points from which on it is narrower than one step: a Lorentzian as wide as a step
+has that share (derived by summing 1/(1 + 4 k^2))."""
+
+FIT_WIDTHS = 12
+"""Half widths on either side of a line that are fitted."""
+
+WILD = 5.0
+"""Residual, in standard deviations, from which on a point is another line's and left out of the fit once (no source)."""
+
+
+@dataclass(frozen=True)
+class Line:
+    """One line of a response.
+
+    Attributes
+    ----------
+    kind : str
+        "resonance": fitted, the numbers stand. "unresolved": narrower than the resolution, only the frequency stands, to a
+        step. "refused": there is something, and it is no resonance; `reason` says why.
+    frequency, frequency_uncertainty : float
+        Hz.
+    quality_factor : float
+        Not a number unless a resonance.
+    height : float
+        Diameter of the circle, unit of the response; not a number unless a resonance.
+    covariance : ndarray, shape (2, 2)
+        Of frequency and quality factor, from the fit.
+    statistic : float
+        Squared signal over noise of the matched filter that found it.
+    chance : float
+        Chance that noise alone does as well anywhere in the range.
+    reason : str
+    """
+
+    kind: Literal["resonance", "unresolved", "refused"]
+    frequency: float
+    frequency_uncertainty: float
+    quality_factor: float
+    height: float
+    covariance: FloatArray
+    statistic: float
+    chance: float
+    reason: str
+
+
+@dataclass(frozen=True)
+class LineSearch:
+    """Lines found, the strongest first.
+
+    Attributes
+    ----------
+    lines : tuple of Line
+    threshold : float
+        Statistic that noise alone reaches with the chance asked for.
+    complete : bool
+        False if the search ended because there were as many lines as asked for.
+    """
+
+    lines: tuple[Line, ...]
+    threshold: float
+    complete: bool
+
+
+def resonance_lines(response: PulseResponse, *, most: int = 12, false_alarm: float = 1e-3) -> LineSearch:
+    """Return the lines of a response, those that are no resonance included.
+
+    Parameters
+    ----------
+    response : PulseResponse
+    most : int
+        Lines to look for, >= 1, strongest first; those that are no resonance count.
+    false_alarm : float
+        Chance, 0 to 1, that noise alone gives one line.
+
+    Raises
+    ------
+    ValueError
+        `most` or `false_alarm` out of range.
+
+    Notes
+    -----
+    Filter: the correlation with ``1/(1 + i k/w)`` for half widths w of 1, 2, 4, ... steps, normalised; for noise alone its
+    squared magnitude is exponential with mean one, so that n trials exceed s with a chance below ``n exp(-s)`` (derived).
+    A line found and fitted is subtracted before the next one is looked for. A tone that is not at a frequency of the grid
+    leaks as one over the distance; that region is left out.
+    """
+    if most < 1:
+        raise ValueError(f"most: found {most}, expected at least 1")
+    if not 0 < false_alarm < 1:
+        raise ValueError(f"false_alarm: found {false_alarm}, expected between 0 and 1")
+    search = _Search(response)
+    threshold = math.log(search.trials / false_alarm)
+    lines: list[Line] = []
+    while len(lines) < most:
+        index, width, statistic = search.strongest()
+        if statistic < threshold:
+            break
+        chance = min(1.0, search.trials * math.exp(-statistic))
+        lines.append(replace(search.taken(index, width), statistic=statistic, chance=chance))
+    complete = len(lines) < most or search.strongest()[2] < threshold
+    return LineSearch(tuple(sorted(lines, key=lambda line: -line.statistic)), threshold, complete)
+
+
+class _Search:
+    """What is left of a response while lines are taken out of it."""
+
+    def __init__(self, response: PulseResponse) -> None:
+        self.response = response
+        self.scale = response.standard_uncertainty * math.sqrt(2)
+        self.left: ComplexArray = (response.response - response.feedthrough) / self.scale
+        self.free = np.ones(self.left.size, dtype=np.bool_)
+        widest = max(response.window // 12, 1)
+        self.filters = [_filter(2**power) for power in range(widest.bit_length())]
+        self.trials = self.left.size * len(self.filters)
+
+    def strongest(self) -> tuple[int, int, float]:
+        """Return index, half width in steps and statistic of the strongest line left."""
+        best = (0, 1, 0.0)
+        for power, kernel in enumerate(self.filters):
+            found = np.abs(fftconvolve(self.left, kernel, mode="same")) ** 2
+            index = int(np.argmax(np.where(self.free, found, 0.0)))
+            if found[index] > best[2] and self.free[index]:
+                best = (index, 2**power, float(found[index]))
+        return best
+
+    def taken(self, index: int, width: int) -> Line:
+        """Return the line at an index, and take it out of what is left."""
+        near = slice(max(index - 8, 0), index + 9)
+        power = np.maximum(np.abs(self.left[near]) ** 2 - 1, 0)
+        pairs = power[1:] + power[:-1]
+        if width <= 2 and float(pairs.max()) > UNRESOLVED_SHARE * float(power.sum()):
+            return self._unresolved(near, power)
+        half = max(FIT_WIDTHS * width, 24)
+        rows = np.arange(max(index - half, 0), min(index + half + 1, self.left.size))
+        found, used = self._fitted(rows)
+        if not found.found or found.fit is None:
+            self._blank(index, 2 * width + 2)
+            return _line("refused", float(self.response.frequency[index]), math.nan, found.reason)
+        curve = resonance_curve(
+            self.response.frequency, resonance_frequency=found.frequency, quality_factor=found.quality_factor,
+            height=found.fit.value("height"), phase=found.fit.value("phase"),
+        )  # fmt: skip
+        self.left = self.left - curve / self.scale
+        at = int(np.argmin(np.abs(self.response.frequency - found.frequency)))
+        # Where the model is off by a part of a strong line, the rest must not become a line of its own.
+        self._blank(at, math.ceil(2 * found.width / self.response.step))
+        self._blank(index, 2)
+        left_out = int(rows.size - used.size)
+        words = found.reason + (
+            f"; {left_out} points that belong to another line were left out" if left_out else ""
+        )
+        index_of = [found.fit.names.index(name) for name in ("frequency", "quality_factor")]
+        return Line(
+            kind="resonance",
+            frequency=found.frequency,
+            frequency_uncertainty=found.fit.standard_uncertainty("frequency"),
+            quality_factor=found.quality_factor,
+            height=found.fit.value("height"),
+            covariance=np.asarray(found.fit.covariance)[np.ix_(index_of, index_of)],
+            statistic=math.nan,
+            chance=math.nan,
+            reason=words,
+        )
+
+    def _fitted(self, rows: IntArray) -> tuple[Resonance, IntArray]:
+        """Return the fit of one resonance, repeated once without points far off it."""
+        found = self._fit(rows)
+        if not found.found or found.fit is None:
+            return found, rows
+        residual = np.abs(found.fit.residuals.reshape(2, -1)).max(axis=0)
+        order = np.argsort(self.response.frequency[rows], kind="stable")
+        wild = residual > WILD * max(
+            1.0, found.noise / float(np.median(self.response.standard_uncertainty[rows]))
+        )
+        if not wild.any() or np.count_nonzero(wild) > rows.size // 10:
+            return found, rows
+        fewer = rows[order][~wild]
+        again = self._fit(fewer)
+        return (again, fewer) if again.found else (found, rows)
+
+    def _fit(self, rows: IntArray) -> Resonance:
+        z = self.left[rows] * self.scale[rows]
+        return fit_resonance(
+            self.response.frequency[rows], z.real, z.imag,
+            standard_uncertainty=self.response.standard_uncertainty[rows],
+        )  # fmt: skip
+
+    def _unresolved(self, near: slice, power: FloatArray) -> Line:
+        frequency = self.response.frequency[near]
+        middle = int(np.argmax(power))
+        pair = slice(max(middle - 1, 0), middle + 2)
+        centre = float(np.average(frequency[pair], weights=power[pair]))
+        reach = max(8, math.ceil(math.sqrt(float(power.max()))))
+        self._blank(near.start + middle, reach)
+        # All places within a step alike (JCGM 100:2008, 4.3.7).
+        return _line(
+            "unresolved", centre, self.response.step / math.sqrt(12), "narrower than one step of frequency"
+        )
+
+    def _blank(self, index: int, reach: int) -> None:
+        part = slice(max(index - reach, 0), index + reach + 1)
+        self.left[part] = 0
+        self.free[part] = False
+
+
+def _line(kind: Literal["unresolved", "refused"], frequency: float, u: float, reason: str) -> Line:
+    nan = math.nan
+    return Line(kind, frequency, u, nan, nan, np.full((2, 2), nan), nan, nan, reason)
+
+
+def _filter(width: int) -> ComplexArray:
+    """Return the normalised matched filter of a Lorentzian of a half width in steps, to be convolved with."""
+    k = np.arange(-8 * width, 8 * width + 1)
+    curve = 1 / (1 + 1j * k / width)
+    curve = curve / np.sqrt(np.sum(np.abs(curve) ** 2))
+    return np.asarray(np.conj(curve)[::-1], dtype=np.complex128)
