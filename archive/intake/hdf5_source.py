@@ -25,7 +25,7 @@ import numpy.typing as npt
 if TYPE_CHECKING:  # the child needs no records, and starts in half the time without them
     from archive.intake.dialect import ColumnRequest
 
-__all__ = ["LARGEST", "MOST_PACKED", "RefusalError", "column_of", "hdf5_columns"]
+__all__ = ["LARGEST", "MOST_PACKED", "RefusalError", "column_of", "hdf5_columns", "row_of"]
 
 LARGEST: Final = 4 << 30
 """Bytes that one source may unpack to; a column of a billion doubles is no sweep."""
@@ -55,8 +55,9 @@ def hdf5_columns(path: Path, columns: Sequence[ColumnRequest]) -> tuple[Columns,
     path : pathlib.Path
         File from outside.
     columns : sequence of ColumnRequest
-        Asked for by path of a one-dimensional data set, by path and number or field (`run/table/3`), or by number
-        or field alone if the file has one data set.
+        Asked for by path of a one-dimensional data set, by path and number or field (`run/table/3`), by path and row
+        (`run/table/row/3`) of a table that lies on its side, or by number or field alone if the file has one data set. A data
+        set of one number without dimensions is returned as such: it holds for every row.
 
     Raises
     ------
@@ -127,6 +128,34 @@ def column_of(
     if names:
         return names[number - 1]
     return None if len(shape) == 1 else number - 1
+
+
+def row_of(shape: tuple[int, ...], names: Sequence[str] | None, rest: str | int | None) -> int | None:
+    """Return which row of an array, from 0, is the asked column; None if a row was not asked for.
+
+    Parameters
+    ----------
+    shape, names, rest
+        As in `column_of`; a row is asked for as `row/3`, from 1.
+
+    Raises
+    ------
+    RefusalError
+        If the array is no table of numbers, or has no such row.
+
+    Examples
+    --------
+    >>> row_of((2, 65536), None, "row/1"), row_of((65536, 2), None, 1)
+    (0, None)
+    """
+    if not isinstance(rest, str) or not rest.startswith("row/"):
+        return None
+    if len(shape) != 2 or names:
+        raise RefusalError("it is no table of numbers, so it has no rows that could be columns")
+    number = rest.removeprefix("row/")
+    if not (number.isascii() and number.isdigit() and 1 <= int(number) <= shape[0]):
+        raise RefusalError(f"it has {shape[0]} rows and no row {number[:20]}")
+    return int(number) - 1
 
 
 # What follows runs in the child.
@@ -208,7 +237,9 @@ def _audited(
 def _column(file: Any, h5py: Any, tables: dict[str, Any], column: str | int, budget: int) -> npt.NDArray[Any]:
     path, rest = _found(file, h5py, tables, column)
     data = tables[path]
-    which = column_of(data.shape or (), data.dtype.names, rest)
+    single = data.shape == () and rest is None and not data.dtype.names
+    row = row_of(data.shape or (), data.dtype.names, rest)
+    which = None if single or row is not None else column_of(data.shape or (), data.dtype.names, rest)
     _require_readable(data, budget)
     dtype = data.dtype if not isinstance(which, str) else data.dtype[which]
     if h5py.check_string_dtype(dtype) is not None:
@@ -216,16 +247,17 @@ def _column(file: Any, h5py: Any, tables: dict[str, Any], column: str | int, bud
             raise RefusalError(
                 "it is text in a structured data set, which is not read; write it as a data set of its own"
             )
-        text = (
-            data.asstr("utf-8", "strict")[...] if which is None else data.asstr("utf-8", "strict")[:, which]
-        )
-        return np.asarray(text, dtype=np.str_).reshape(-1)
+        words = data.asstr("utf-8", "strict")
+        text = words[row, :] if row is not None else words[...] if which is None else words[:, which]
+        return np.asarray(text, dtype=np.str_) if single else np.asarray(text, dtype=np.str_).reshape(-1)
     if dtype.hasobject or dtype.subdtype is not None:
         raise RefusalError(
             "it holds references, sequences or arrays in its cells; only numbers and text are read"
         )
+    if row is not None:
+        return np.asarray(data[row, :]).reshape(-1)
     values = data[which] if isinstance(which, str) else data[...] if which is None else data[:, which]
-    return np.asarray(values).reshape(-1)
+    return np.asarray(values) if single else np.asarray(values).reshape(-1)
 
 
 def _found(file: Any, h5py: Any, tables: dict[str, Any], column: str | int) -> tuple[str, str | int | None]:
@@ -237,6 +269,8 @@ def _found(file: Any, h5py: Any, tables: dict[str, Any], column: str | int) -> t
         before, _, last = path.rpartition("/")
         if before in tables:
             return before, last
+        if before.endswith("/row") and before.removesuffix("/row") in tables:
+            return before.removesuffix("/row"), f"row/{last}"
         parts = path.split("/")
         for end in range(1, len(parts) + 1):
             link = file.get("/".join(parts[:end]), getlink=True)

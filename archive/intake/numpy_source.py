@@ -21,7 +21,7 @@ import numpy as np
 import numpy.typing as npt
 
 from archive.intake.dialect import ColumnRequest
-from archive.intake.hdf5_source import LARGEST, MOST_PACKED, Columns, RefusalError, column_of
+from archive.intake.hdf5_source import LARGEST, MOST_PACKED, Columns, RefusalError, column_of, row_of
 
 __all__ = ["numpy_columns"]
 
@@ -52,7 +52,8 @@ def numpy_columns(path: Path, columns: Sequence[ColumnRequest]) -> tuple[Columns
         File from outside.
     columns : sequence of ColumnRequest
         In a `.npy` file a number from 1 or a field; in a `.npz` file the name of an array, name and number or field
-        (`table/3`), or a number or field alone if the file has one array.
+        (`table/3`), name and row (`table/row/3`) of a table that lies on its side, or a number or field alone if the file
+        has one array. An array of one number without dimensions is returned as such: it holds for every row.
 
     Raises
     ------
@@ -116,6 +117,11 @@ def _each(columns: Sequence[ColumnRequest], found: Any) -> tuple[Columns, dict[s
 
 
 def _column(table: npt.NDArray[Any], rest: str | int | None) -> npt.NDArray[Any]:
+    if table.ndim == 0 and rest is None and not table.dtype.names:
+        return table
+    row = row_of(table.shape, table.dtype.names, rest)
+    if row is not None:
+        return np.asarray(table[row])
     which = column_of(table.shape, table.dtype.names, rest)
     if which is None:
         return table.reshape(-1)
@@ -132,6 +138,8 @@ def _member(members: dict[str, zipfile.ZipInfo], column: str | int) -> tuple[str
         before, _, last = column.rpartition("/")
         if before in members:
             return before, last
+        if before.endswith("/row") and before.removesuffix("/row") in members:
+            return before.removesuffix("/row"), f"row/{last}"
     if len(members) == 1:
         return next(iter(members)), column
     some = ", ".join(sorted(members)[:8])

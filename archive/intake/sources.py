@@ -53,7 +53,7 @@ def read_array_source(path: Path, file: str, columns: Sequence[ColumnRequest]) -
         Name for messages.
     columns : sequence of ColumnRequest
         `column` is a number from 1, a field name, the path of a data set, or path and number or field
-        (`run/table/3`). Times are numbers of POSIX seconds, or ISO 8601 text with an offset.
+        (`run/table/3`), or path and row (`run/table/row/3`) of a table that lies on its side. Times are numbers of POSIX seconds, or ISO 8601 text with an offset.
 
     Returns
     -------
@@ -64,7 +64,8 @@ def read_array_source(path: Path, file: str, columns: Sequence[ColumnRequest]) -
     Notes
     -----
     A column that cannot be read is NaN (text: empty), like one that is shorter than the others from its end on.
-    Integers must be exact in a double. `datetime64` is refused, because it does not say in which zone it is.
+    One number without dimensions, such as a rate or a temperature that was written beside the columns, holds for every
+    row. Integers must be exact in a double. `datetime64` is refused, because it does not say in which zone it is.
     """
     bad = BadCells(file)
     arrays: Columns = {}
@@ -78,7 +79,8 @@ def read_array_source(path: Path, file: str, columns: Sequence[ColumnRequest]) -
     for number, request in enumerate(columns, start=1):
         if request.name in faults:
             bad.add(0, number, str(request.column), str(request.column), faults[request.name])
-    rows = max((len(array) for array in arrays.values()), default=0)
+    rows = max((len(array) for array in arrays.values() if array.ndim), default=1 if arrays else 0)
+    arrays = {name: array if array.ndim else np.full(rows, array) for name, array in arrays.items()}
     block = Block(first_line=1, columns={}, lines=np.arange(1, rows + 1, dtype=np.int64), sentinel={})
     for number, request in enumerate(columns, start=1):
         values, mask = _checked(request, arrays.get(request.name), number, bad)

@@ -395,3 +395,47 @@ def test_times_and_text_with_sentinels_of_a_numpy_file(tmp_path: Path) -> None:
     assert block.sentinel["n"].tolist() == [False, True, False]
     assert block.columns["b"].tolist() == ["", "", ""]
     assert [(cell.line, cell.column) for cell in block.bad_cells] == [(0, "b"), (0, "n")]
+
+
+@pytest.mark.parametrize("suffix", ["npz", "h5"])
+def test_a_table_on_its_side_and_one_number_for_all_rows(tmp_path: Path, suffix: str) -> None:
+    """Two channels as the rows of one array, with rate and temperature written once, as acquisition programs do."""
+    path = tmp_path / f"run.{suffix}"
+    content = {
+        "series": np.array([[1.0, 2.0, 3.0], [4.0, 5.0, 6.0]]),
+        "T": np.array(0.6),
+        "rate": np.array(8192),
+    }
+    if suffix == "npz":
+        np.savez(path, **content)
+    else:
+        with h5py.File(path, "w") as file:
+            for name, array in content.items():
+                file[name] = array
+    columns = [number("series/row/1", name="x"), number("series/row/2", name="y"), number("T", name="T")]
+    block = read_array_source(path, path.name, [*columns, number("rate", name="rate")])
+    assert whys(block) == ""
+    assert block.columns["x"].tolist() == [1.0, 2.0, 3.0]
+    assert block.columns["y"].tolist() == [4.0, 5.0, 6.0]
+    assert block.columns["T"].tolist() == [0.6] * 3
+    assert block.columns["rate"].tolist() == [8192.0] * 3
+    wrong = read_array_source(
+        path,
+        path.name,
+        [number("series/row/3", name="a"), number("T/row/1", name="b"), number("series/row/x", name="c")],
+    )
+    assert {cell.column: cell.why for cell in wrong.bad_cells if cell.column} == {
+        "series/row/3": "it has 2 rows and no row 3",
+        "T/row/1": "it is no table of numbers, so it has no rows that could be columns",
+        "series/row/x": "it has 2 rows and no row x",
+    }
+
+
+def test_one_number_alone_is_one_row(tmp_path: Path) -> None:
+    np.savez(tmp_path / "run.npz", T=np.array(0.6), name=np.array("10u"))
+    block = read_array_source(
+        tmp_path / "run.npz", "run.npz", [number("T", name="T"), ColumnRequest("w", "name", "text")]
+    )
+    assert whys(block) == ""
+    assert block.columns["T"].tolist() == [0.6]
+    assert block.columns["w"].tolist() == ["10u"]
