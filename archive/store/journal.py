@@ -3,7 +3,8 @@
 Rules
 -----
 * Lines are only ever appended, under the archive's lock, and synced before the act is reported.
-* A line is JSON with sorted keys; its digest is the SHA-256 of its bytes without the line end.
+* A line is JSON with sorted keys; its digest is the SHA-256 of its bytes without the line end. `own` in it is the digest of
+  the same line without `own`, so that a flipped bit in the last line is seen too.
 * What an interruption left of a line is taken off by the next writer, whose line holds the digest of what it took off.
 * The journal tells; it decides nothing. What an archive holds is what its sealed files say.
 """
@@ -142,7 +143,7 @@ class Journal:
             }  # fmt: skip
             if torn and not lines:
                 content["torn"] = _digest(torn)
-            line = json.dumps(content, sort_keys=True, ensure_ascii=False).encode()
+            line = _line({**content, "own": _digest(_line(content))})
             before = _digest(line)
             lines.append(line + b"\n")
         append_lines(self.path, b"".join(lines), cut=len(torn))
@@ -161,7 +162,7 @@ class Journal:
         for place, line in enumerate(self._lines(), 1):
             entry = _read(line)
             if entry is None:
-                found.append(_damaged(f"line {place} is no entry"))
+                found.append(_damaged(f"line {place} is not as it was written"))
             else:
                 sealed += entry.act.key is not None
                 if entry.before != before:
@@ -225,6 +226,10 @@ class Journal:
         return (lines[1:] if start else lines), torn
 
 
+def _line(content: Mapping[str, Any]) -> bytes:
+    return json.dumps(content, sort_keys=True, ensure_ascii=False).encode()
+
+
 def _digest(line: bytes) -> str:
     return hashlib.sha256(line).hexdigest()
 
@@ -232,6 +237,9 @@ def _digest(line: bytes) -> str:
 def _read(line: bytes) -> Entry | None:
     try:
         content = json.loads(line)
+        own = content.pop("own")
+        if own != _digest(_line(content)) or line != _line({**content, "own": own}):
+            return None
         return Entry(
             number=int(content["n"]), at=str(content["at"]),
             act=Act(
