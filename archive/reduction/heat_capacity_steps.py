@@ -191,6 +191,7 @@ HEAT_CAPACITY_STEPS: tuple[Step, ...] = (
             "amplitude_above": Port("molar_heat_capacity", "scalar", "amplitude above the transition"), "amplitude_ratio": Port("number", "scalar", "amplitude above over below"),
             "exponent": Port("number", "scalar", "exponent alpha"), "background": Port("molar_heat_capacity", "scalar", "background B, common to both sides"),
             "constant": Port("molar_heat_capacity", "scalar", "B + A/alpha below the transition"), "asymmetry": Port("number", "scalar", "(1 - A above/A below)/alpha"),
+            "first_correction": Port("number", "scalar", "a of the factor 1 + a t^Delta + b t^(2 Delta), common to both sides"), "second_correction": Port("number", "scalar", "b of that factor"),
             "logarithm_probability": Port("number", "scalar", "chance that the exponent gains as much where the logarithm is true"),
             "range_upper": Port("number", "array", "upper ends of the window that were tried"), "range_exponent": Port("number", "array", "exponent for each upper end"),
         },

@@ -93,6 +93,7 @@ def lambda_law(
             **outputs, "logarithm_probability": chance, "range_upper": highs, "range_exponent": exponents,
         },
         point={"range_exponent": spreads},
+        verdicts={name: "not fitted" for name in _NAMES[-2:] if math.isnan(float(outputs[name]))},
         covariance=covariance,
         held={"rows_below": numbers[0], "rows_above": numbers[1]},
         facts={
@@ -157,7 +158,8 @@ def _fitted(
 
 
 _NAMES = (
-    "amplitude_below", "amplitude_above", "amplitude_ratio", "exponent", "background", "constant", "asymmetry",
+    "amplitude_below", "amplitude_above", "amplitude_ratio", "exponent", "background", "constant", "asymmetry", "first_correction",
+    "second_correction",
 )  # fmt: skip
 
 
@@ -165,15 +167,20 @@ def _outputs(found: LambdaFit, inflation: float) -> tuple[dict[str, float | Floa
     """Return the numbers that are published, from those that were fitted, with their covariance."""
     law = found.law
     A, alpha, P, ratio = law.amplitude, law.exponent, law.asymmetry, law.amplitude_ratio
-    values = (A, A * ratio, ratio, alpha, law.background, law.constant, P)
+    E, G = law.first, law.second
+    values = (A, A * ratio, ratio, alpha, law.background, law.constant, P, alpha * E / A, alpha * G / A)
     slopes = {
-        "amplitude": (1, ratio, 0, 0, -1 / alpha, 0, 0),
-        "exponent": (0, -A * P, -P, 1, A / alpha**2, 0, 0),
-        "asymmetry": (0, -A * alpha, -alpha, 0, 0, 0, 1),
-        "constant": (0, 0, 0, 0, 1, 1, 0),
+        "amplitude": (1, ratio, 0, 0, -1 / alpha, 0, 0, -alpha * E / A**2, -alpha * G / A**2),
+        "exponent": (0, -A * P, -P, 1, A / alpha**2, 0, 0, E / A, G / A),
+        "asymmetry": (0, -A * alpha, -alpha, 0, 0, 0, 1, 0, 0),
+        "constant": (0, 0, 0, 0, 1, 1, 0, 0, 0),
+        "first": (0, 0, 0, 0, 0, 0, 0, alpha / A, 0),
+        "second": (0, 0, 0, 0, 0, 0, 0, 0, alpha / A),
     }
-    names = list(_NAMES)
-    columns = [list(slopes.get(name, (0,) * 7)) for name in found.names]
+    # A confluent term that is not fitted is zero, which says nothing of the liquid.
+    count = len(_NAMES) - 2 + sum(name in found.names for name in ("first", "second"))
+    names = list(_NAMES[:count])
+    columns = [list(slopes.get(name, (0,) * len(_NAMES)))[:count] for name in found.names]
     if "lambda_temperature" in found.names:
         names.append("lambda_temperature")
         columns = [
@@ -181,7 +188,8 @@ def _outputs(found: LambdaFit, inflation: float) -> tuple[dict[str, float | Floa
             for name, column in zip(found.names, columns, strict=True)
         ]
     jacobian = np.array(columns, dtype=np.float64).T
-    outputs: dict[str, float | FloatArray] = dict(zip(_NAMES, values, strict=True))
+    outputs: dict[str, float | FloatArray] = dict.fromkeys(_NAMES, math.nan)
+    outputs |= dict(zip(_NAMES[:count], values, strict=False))
     outputs["lambda_temperature"] = found.lambda_temperature
     return outputs, Covariance(tuple(names), jacobian @ (found.covariance * inflation) @ jacobian.T)
 

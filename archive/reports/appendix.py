@@ -18,7 +18,7 @@ from archive.errors import BadRequest
 from archive.reports.appendix_tables import Table, results_table, tables
 from archive.reports.bibliography import bibliography_of
 from archive.reports.checklist import Item, Said, completeness, sentence, told
-from archive.reports.figures import Drawn, figures
+from archive.reports.figures import Drawn, Undrawn, figures
 from archive.reports.items_cell import CELL_ITEMS
 from archive.reports.items_gas import GAS_ITEMS
 from archive.reports.items_measurement import MEASUREMENT_ITEMS
@@ -78,8 +78,10 @@ def methods_appendix(
     if not addresses:
         raise BadRequest("name the reductions that the appendix is about", expected="at least one address")
     scope = Scope(views, addresses)
-    drawn = list(figures(scope))
-    account = _account(scope, drawn, title=title or "Methods")
+    made_figures = list(figures(scope))
+    drawn = [each for each in made_figures if isinstance(each, Drawn)]
+    undrawn = [each for each in made_figures if isinstance(each, Undrawn)]
+    account = _account(scope, drawn, undrawn, title=title or "Methods")
     environment = tex_environment()
     shared = {
         "level": Tex(level),
@@ -104,17 +106,22 @@ def _citations(scope: Scope) -> list[str]:
     return [*dict.fromkeys(key for _, step in scope.steps() for key in step.citations), "jcgm-100"]
 
 
-def _account(scope: Scope, drawn: Sequence[Drawn], *, title: str) -> dict[str, Any]:
+def _account(
+    scope: Scope, drawn: Sequence[Drawn], undrawn: Sequence[Undrawn], *, title: str
+) -> dict[str, Any]:
     """Return all that the appendix says, section by section, in the order of the sections."""
     said = {item.code: told(item, scope) for item in ITEMS if item.applies(scope.experiments)}
     made = {each.label: each for each in tables(scope)}
     sections = [_section("scope", "Scope", _scope(scope, title, said))]
     for key, name, wanted in _SECTIONS:
         sections.append(_section(key, name, _of(key, said), [made[label] for label in wanted]))
+    fits = _of("fits", said) + [
+        ("FIG", sentence(f"There is no {each.what} of {each.address}: {each.why}.", each.address)) for each in undrawn
+    ]
     sections.append({**_section("reduction", "Reduction", [], [made["steps"]]), "steps": _steps(scope)})
     sections.append(
         {
-            **_section("fits", "Fits and results", _of("fits", said), [results_table(scope)]),
+            **_section("fits", "Fits and results", fits, [results_table(scope)]),
             "figures": list(drawn),
         }
     )

@@ -1,42 +1,54 @@
-"""One curve of a reduction that has no figure of its own kind: heat capacity, bulk density, stability, a laboratory's own plans."""
+"""One curve of a reduction that has no figure of its own kind: a laboratory's own plans."""
 
 from __future__ import annotations
 
 import numpy as np
-from matplotlib.figure import Figure
 
-from archive.reports.figure_style import WIDTH, Column, Drawn, column_of, name_of, saved
+from archive.reports.figure_plots import points, stacked
+from archive.reports.figure_style import HEIGHTS, Column, Drawn, NoFigure, name_of, saved
+from archive.reports.figure_values import column_of, spread_of
 from archive.reports.scope import Scope
 from archive.reports.small_plots import in_unit, symbol
 from schemas.lineage import OutputEntry, ReductionDocument
 from schemas.units import parse_unit
 
-__all__ = ["curve"]
+__all__ = ["curve", "shown_arrays"]
 
 # Along which output, and which one is shown, in order of liking.
-_ALONG = ("middle_temperature", "temperature", "averaging_time", "amount")
-_SHOWN = ("molar_heat_capacity", "heat_capacity", "superfluid_fraction", "allan_deviation", "dissipation")
+_ALONG = (
+    "middle_temperature", "temperature", "averaging_time", "coverage", "coverage_from_amount", "relative_pressure_of_rows", "amount",
+)  # fmt: skip
+_SHOWN = (
+    "superfluid_density", "molar_heat_capacity", "heat_capacity", "superfluid_fraction", "allan_deviation", "period_drop", "dissipation",
+)  # fmt: skip
 
 
-def curve(scope: Scope, reduction: ReductionDocument) -> Drawn | None:
-    """Return the curve of a reduction, or None where it has no two arrays of one length.
-
-    Notes
-    -----
-    Films are left to the figure that all films of a cell share. The band is the combined standard uncertainty.
-    """
+def shown_arrays(reduction: ReductionDocument) -> tuple[OutputEntry, OutputEntry] | None:
+    """Return the array that is shown of a reduction, after the one that it is shown along; None where no two have one length."""
     arrays = {each.name: each for each in reduction.outputs if each.rows}
-    if "superfluid_density" in arrays and arrays["superfluid_density"].quantity == "areal_mass_density":
-        return None
     along = next((arrays[name] for name in _ALONG if name in arrays), None)
     if along is None:
         return None
     alike = [each for each in arrays.values() if each.rows == along.rows and each.name not in _ALONG]
     shown = next((arrays[name] for name in _SHOWN if arrays.get(name) in alike), alike[-1] if alike else None)
-    x = column_of(scope, reduction, along.name)
-    y = None if shown is None else column_of(scope, reduction, shown.name)
-    if shown is None or x is None or y is None or x.shape != y.shape or not np.isfinite(x * y).any():
-        return None
+    return None if shown is None else (along, shown)
+
+
+def curve(scope: Scope, reduction: ReductionDocument) -> Drawn:
+    """Return the curve of a reduction whose plan has no figure of its own.
+
+    Raises
+    ------
+    NoFigure
+        No two arrays have one length, or nothing in them is a number.
+    """
+    found = shown_arrays(reduction)
+    if found is None:
+        raise NoFigure("its outputs are no two arrays of one length")
+    along, shown = found
+    x, y = column_of(scope, reduction, along.name), column_of(scope, reduction, shown.name)
+    if x is None or y is None or x.shape != y.shape or not np.isfinite(x * y).any():
+        raise NoFigure(f"the archive holds no values of {shown.name} along {along.name}")
     return _drawn(scope, reduction, along, shown, x, y)
 
 
@@ -45,25 +57,19 @@ def _drawn(
 ) -> Drawn:
     xs, x_unit = in_unit(x, along.unit, along.quantity)
     ys, y_unit = in_unit(y, shown.unit, shown.quantity)
-    figure = Figure(figsize=(WIDTH, 2.6), layout="constrained")
-    axes = figure.subplots()
-    order = np.argsort(xs)
-    axes.plot(xs[order], ys[order], "o", color="black", markerfacecolor="none", markeredgewidth=0.5)
-    spread = column_of(scope, reduction, f"{shown.name}.uncertainty")
-    if spread is not None and spread.shape == y.shape:
-        factor = float(np.nanmax(np.abs(ys)) / np.nanmax(np.abs(y)))
-        axes.fill_between(
-            xs[order],
-            (ys - spread * factor)[order],
-            (ys + spread * factor)[order],
-            color="black",
-            alpha=0.2,
-            linewidth=0,
-        )
-    if along.quantity == "time":
+    figure, (axes,) = stacked([1], height=HEIGHTS[0] + 0.4)
+    spread, common = spread_of(scope, reduction, shown.name)
+    size = float(np.nanmax(np.abs(y)))
+    factor = float(np.nanmax(np.abs(ys))) / size if size > 0 else 1.0
+    points(axes, xs, ys, None if spread is None or spread.shape != y.shape else spread * factor)
+    if along.quantity == "time" and bool((xs[np.isfinite(xs)] > 0).all() and (ys[np.isfinite(ys)] > 0).all()):
         axes.set(xscale="log", yscale="log")
     axes.set(xlabel=_label(along, x_unit), ylabel=_label(shown, y_unit))
-    caption = f"{shown.description[:1].upper()}{shown.description[1:]} against {along.description}, {reduction.sweep} by plan {reduction.plan.address}; band: combined standard uncertainty."
+    shared = f"; all points share {100 * common:.2g} per cent" if common > 0 else ""
+    caption = (
+        f"{shown.description[:1].upper()}{shown.description[1:]} against {along.description}, {reduction.sweep} by plan {reduction.plan.address}. "
+        f"Error bars: standard uncertainty of each point alone{shared}."
+    )
     return Drawn(name_of(reduction.plan.name, reduction), saved(figure), caption, (reduction.address,))
 
 

@@ -1,8 +1,8 @@
-"""How figures of the appendix look and are saved, and where their columns come from.
+"""How figures of the appendix look and are saved.
 
 Rules
 -----
-* Series differ by marker and line, not by colour alone; text is 8 pt at print size; axes are quantity over unit.
+* Series differ by marker and line, not by colour alone; text is at least 8 pt at print size; axes are quantity over unit.
 * The same data give the same bytes: no dates, fixed metadata.
 """
 
@@ -10,26 +10,25 @@ from __future__ import annotations
 
 import io
 from dataclasses import dataclass
-from typing import Any
+from typing import Any, Final
 
 import numpy as np
 from matplotlib.backends.backend_pdf import FigureCanvasPdf
 from matplotlib.figure import Figure
 from numpy.typing import NDArray
 
-from archive.reports.scope import Scope
 from schemas.lineage import ReductionDocument
-from schemas.quantity import unit_factor
 
-__all__ = ["LOOKS", "STYLE", "WIDTH", "Column", "Drawn", "channel_of", "column_of", "name_of", "saved"]
+__all__ = ["HEIGHTS", "LOOKS", "STYLE", "WIDTH", "Column", "Drawn", "NoFigure", "Undrawn", "name_of", "saved"]
 
 Column = NDArray[np.float64]
 
 STYLE: dict[str, Any] = {
-    "font.size": 8, "axes.labelsize": 8, "xtick.labelsize": 8, "ytick.labelsize": 8, "legend.fontsize": 8, "font.family": "DejaVu Sans",
+    "font.size": 9, "axes.labelsize": 9, "xtick.labelsize": 8.5, "ytick.labelsize": 8.5, "legend.fontsize": 8.5, "font.family": "STIXGeneral",
     "axes.linewidth": 0.5, "lines.linewidth": 0.8, "lines.markersize": 2.6, "xtick.direction": "in", "ytick.direction": "in", "xtick.top": True,
-    "ytick.right": True, "xtick.major.width": 0.5, "ytick.major.width": 0.5, "legend.frameon": False, "pdf.fonttype": 42, "pdf.compression": 6,
-    "axes.formatter.useoffset": False, "savefig.dpi": 300, "path.simplify": True,
+    "ytick.right": True, "xtick.major.width": 0.5, "ytick.major.width": 0.5, "xtick.minor.width": 0.3, "ytick.minor.width": 0.3, "legend.frameon": False,
+    "pdf.fonttype": 42, "pdf.compression": 6, "axes.formatter.useoffset": False, "savefig.dpi": 300, "path.simplify": True, "mathtext.fontset": "stix",
+    "legend.handlelength": 2.2, "legend.markerscale": 1.7, "legend.borderaxespad": 0.3, "figure.constrained_layout.h_pad": 0.02, "figure.constrained_layout.w_pad": 0.03,
 }  # fmt: skip
 LOOKS = (
     ("o", "-", "black"),
@@ -40,7 +39,17 @@ LOOKS = (
     ("x", "--", "#674ea7"),
     ("+", "-.", "#7f6000"),
 )
-WIDTH = 4.6  # inches: fits a text width of 120 mm
+"""Marker, line and colour of each series; marker and line alone tell them apart in grey."""
+
+WIDTH: Final = 4.6
+"""Inches: fits a text width of 120 mm without being scaled."""
+
+HEIGHTS: Final = (2.2, 3.4, 5.2)
+"""Inches: one panel, a panel with its residuals, two of those."""
+
+
+class NoFigure(Exception):
+    """A figure's numbers are not all there; the text ends the sentence "there is no figure of ...: "."""
 
 
 @dataclass(frozen=True)
@@ -53,23 +62,13 @@ class Drawn:
     sources: tuple[str, ...]
 
 
-def column_of(scope: Scope, reduction: ReductionDocument, name: str) -> Column | None:
-    """Return the values of an output, or None where the archive holds none."""
-    return scope.holdings_of(reduction).column(reduction.address, name)
+@dataclass(frozen=True)
+class Undrawn:
+    """A figure that could not be drawn: of which reduction, and why."""
 
-
-def channel_of(scope: Scope, reduction: ReductionDocument, quantity: str) -> Column | None:
-    """Return a recorded channel in SI units."""
-    entry = scope.taken_of(reduction).entry
-    found = (
-        None
-        if entry is None
-        else next((each for each in entry.channels if each.quantity == quantity and each.use), None)
-    )
-    values = None if found is None else scope.holdings_of(reduction).column(reduction.sweep, found.name)
-    if values is None or found is None:
-        return None
-    return np.asarray(values * (1.0 if quantity == "instant" else unit_factor(found.unit, quantity)))
+    address: str
+    why: str
+    what: str = "figure"
 
 
 def saved(figure: Figure) -> bytes:

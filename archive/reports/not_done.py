@@ -99,7 +99,7 @@ def data_sentences(scope: Scope, figures: int) -> Iterator[Said]:
         digest, size = held.view.sealed.get(f"{newest.cooldown}/{newest.address}", ("", 0))
         shown = grouped_digest(digest) if digest else "[nr]"
         yield sentence(
-            f"The records of {name} behind the {figures} figures and the tables are accession {newest.address} in the archive {held.view.archive_name}; "
+            f"The records of {name} behind the {figures} {'figure' if figures == 1 else 'figures'} and the tables are accession {newest.address} in the archive {held.view.archive_name}; "
             f"its sealed file ({size} bytes), which lists the SHA-256 of every raw file, has SHA-256 {shown}.",
             newest.address,
         )

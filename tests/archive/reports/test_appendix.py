@@ -226,7 +226,10 @@ def test_what_is_asked_for_must_be_there():
 
 def test_figures_are_vector_pdf_without_a_date():
     figures = {name: content for name, content in made().items() if name.startswith("figures/")}
-    assert list(figures) == ["figures/areal-density-TO-4-r2.pdf"]
+    assert list(figures) == [
+        "figures/film-transition-2026-03-s001.pdf",
+        "figures/areal-density-TO-4-r2.pdf",
+    ]
     for content in figures.values():
         assert content.startswith(b"%PDF")
         assert b"CreationDate" not in content
@@ -289,13 +292,41 @@ def test_a_plan_without_a_figure_of_its_kind_shows_its_curve():
         {"name": "temperature", "quantity": "temperature", "unit": "K", "description": "temperature of each row", "step": 1, "rows": 60, "scale": "PLTS-2000", "digest": "0" * 64},
         {"name": "period", "quantity": "period", "unit": "s", "description": "period of each row", "step": 1, "rows": 60, "digest": "1" * 64},
     ]  # fmt: skip
-    view = view_of(accession(), reductions=(reduction(outputs=outputs),))
+    own = {
+        "name": "own-plan",
+        "revision": 1,
+        "title": "Own",
+        "applies": {"sweep_kinds": ["temperature-sweep"]},
+        "step": [{"use": "static-transition", "take": {}, "give": {}}],
+    }
+    view = view_of(accession(), reductions=(reduction(outputs=outputs, plan=own),))
     files = made(view)
-    assert files["figures/film-transition-2026-03-s001.pdf"].startswith(b"%PDF")
+    assert files["figures/own-plan-2026-03-s001.pdf"].startswith(b"%PDF")
     figures = [each for section in companion(files)["sections"] for each in section["figures"]]
     assert figures[0]["caption"].startswith(
-        "Period of each row against temperature of each row, 2026-03/s001 by plan film-transition.r1"
+        "Period of each row against temperature of each row, 2026-03/s001 by plan own-plan.r1"
     )
+
+
+def test_where_a_figure_s_numbers_are_not_held_it_is_said_why():
+    outputs = [
+        {
+            "name": "T_KT",
+            "quantity": "temperature",
+            "unit": "K",
+            "description": "static transition temperature",
+            "step": 2,
+            "scale": "PLTS-2000",
+            "value": 0.7,
+            "uncertainty": 0.001,
+            "digest": "0" * 64,
+        }
+    ]
+    files = made(view_of(accession(), reductions=(reduction(outputs=outputs),)))
+    assert not [name for name in files if name.startswith("figures/")]
+    assert "There is no figure of 2026-03/s001@film-transition.1: the reduction has no temperature." in [
+        each["text"] for section in companion(files)["sections"] for each in section["sentences"]
+    ]
 
 
 def own_steps(*told):
