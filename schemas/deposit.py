@@ -9,7 +9,7 @@ from typing import Annotated
 
 from pydantic import Field, StringConstraints, model_validator
 
-from schemas.base import Record, Text
+from schemas.base import Record
 from schemas.identifiers import Doi, Licence, Orcid, Ror
 
 __all__ = ["Author", "Deposit"]
@@ -64,10 +64,12 @@ class Deposit(Record):
     supplement_to: tuple[Doi, ...] = Field(
         default=(), description="DOIs of the publications that rest on the data."
     )
-    funding: Text | None = Field(default=None, description="Who paid, in a sentence.")
+    funder: _Line | None = Field(default=None, description="Name of the body that paid.")
+    award: _Line | None = Field(default=None, description="Its number of the grant.")
 
     @model_validator(mode="after")
-    def _publisher_named(self) -> Deposit:
-        if self.publisher_ror is not None and self.publisher is None:
-            raise ValueError("publisher_ror needs the publisher that it stands for")
+    def _stands_for_something(self) -> Deposit:
+        for extra, named in (("publisher_ror", "publisher"), ("award", "funder")):
+            if getattr(self, extra) is not None and getattr(self, named) is None:
+                raise ValueError(f"{extra} needs the {named} that it stands for")
         return self

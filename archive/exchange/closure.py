@@ -9,7 +9,7 @@ Rules
 
 from __future__ import annotations
 
-from collections.abc import Callable, Collection, Iterator, Sequence
+from collections.abc import Callable, Collection, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from datetime import UTC, datetime
 from functools import cached_property
@@ -20,7 +20,7 @@ from schemas.address import Address, parse_address
 from schemas.base import Record
 from schemas.lineage import AccessionDocument, ReductionDocument
 
-__all__ = ["Holdings", "address_of_key", "closure", "in_order", "needs_of"]
+__all__ = ["ASKED", "Holdings", "address_of_key", "behind", "closure", "in_order", "needs_of"]
 
 _FIRST = datetime.min.replace(tzinfo=UTC)
 ASKED = "asked for"
@@ -165,10 +165,25 @@ def closure(asked: Sequence[str], holdings: Holdings) -> dict[str, str]:
     MissingFile
         Something that a file rests on is not there.
     """
+    return behind({key: ASKED for text in asked for key in _asked_for(text, holdings)}, holdings)
+
+
+def behind(start: Mapping[str, str], holdings: Holdings) -> dict[str, str]:
+    """Return keys and all that they rest on, each with the reason why it is there, in an order of recording.
+
+    Parameters
+    ----------
+    start : mapping of str to str
+        Keys, each with its reason.
+    holdings : Holdings
+
+    Raises
+    ------
+    MissingFile
+        Something that a file rests on is not there.
+    """
     reasons: dict[str, str] = {}
-    waiting: list[tuple[str, str]] = []
-    for text in asked:
-        waiting += [(key, ASKED) for key in _asked_for(text, holdings)]
+    waiting = list(start.items())
     while waiting:
         key, because = waiting.pop(0)
         if key in reasons:

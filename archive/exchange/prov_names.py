@@ -14,7 +14,14 @@ import re
 import uuid
 from typing import Final
 
-__all__ = ["CONTENT_PREFIX", "TERMS_PREFIX", "cooldown_namespace", "escaped", "fixed_namespaces"]
+__all__ = [
+    "CONTENT_PREFIX",
+    "TERMS_PREFIX",
+    "cooldown_namespace",
+    "escaped",
+    "fixed_namespaces",
+    "program_identifier",
+]
 
 TERMS_PREFIX: Final = "stillroom"
 CONTENT_PREFIX: Final = "content"
@@ -42,6 +49,11 @@ def cooldown_namespace(first_accession: str) -> str:
         SHA-256 of the sealed file of its first accession.
     """
     return f"urn:uuid:{uuid.uuid5(_ROOT, first_accession)}#"
+
+
+def program_identifier(version: str) -> str:
+    """Return the address that stands for a version of this program, which has none on the web."""
+    return f"urn:uuid:{uuid.uuid5(_ROOT, f'program {version}')}"
 
 
 def escaped(text: str) -> str:

@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
-from archive.exchange.closure import address_of_key
+from archive.exchange.closure import ASKED, address_of_key
 from schemas.base import Record
 
 __all__ = ["SealedDocument"]
@@ -22,8 +23,8 @@ class SealedDocument:
         Digest of all its bytes.
     size : int
         Number of bytes.
-    document : Record
-        What it says about itself.
+    read : callable
+        Reads the document of a key; whoever gives it decides how many are kept in memory.
     because : str
         Why it is here: asked for, or what rests on it.
     """
@@ -31,8 +32,13 @@ class SealedDocument:
     key: str
     sha256: str
     size: int
-    document: Record
-    because: str = "asked for"
+    read: Callable[[str], Record]
+    because: str = ASKED
+
+    @property
+    def document(self) -> Record:
+        """What the file says about itself."""
+        return self.read(self.key)
 
     @property
     def address(self) -> str:
