@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 import json
+import re
 from collections.abc import Container, Iterator
 from typing import Any
 
-from archive.reports.budget import percent
+from archive.reports.budget import headline_budgets, largest_shares
 from archive.reports.front_page import finding_line, grouped_digest
 from archive.reports.holdings import Holdings
+from archive.reports.lineage_graph import cooldown_graph
 from archive.reports.moments import clock_lines, full_time
 from archive.reports.numbers import CODES, shown_output, shown_value, words
 from archive.reports.prose import prose, symbol_of
@@ -21,12 +23,17 @@ from schemas.thermometer import Calibration
 
 __all__ = ["effect_states", "later_pages", "parameter_text"]
 
+_SIZES = re.compile(r'(?:width|height)="([0-9.]+)mm"')
+_PAGE = (180.0, 235.0)
+"""Largest width and height of a drawing on paper, mm."""
+
 
 def later_pages(held: Holdings, stands: Standing) -> dict[str, Any]:
     """Return everything that follows the front page."""
     zone = held.sheet.time_zone
     return {
         "plots": list(_plots(held)),
+        "lineage": _lineage(held),
         "doses": list(_doses(held)),
         "findings": [finding_line(flag, each) for flag, each in stands.open]
         + [finding_line(each.flag, each.finding) for each in stands.waived]
@@ -53,6 +60,22 @@ def later_pages(held: Holdings, stands: Standing) -> dict[str, Any]:
         ],
         "codes": CODES,
     }  # fmt: skip
+
+
+def _lineage(held: Holdings) -> dict[str, Any]:
+    current = held.view.current
+    drawn = cooldown_graph(held.view.newest.cooldown, held.view.newest.sweeps, current)
+    sizes = [] if drawn is None else [float(each) for each in _SIZES.findall(drawn)[:2]]
+    fitting = min((1.0, *(most / size for most, size in zip(_PAGE, sizes, strict=False))))
+    count = f"{len(current)} reduction{'' if len(current) == 1 else 's'}"
+    return {
+        "svg": drawn,
+        "width": sizes[0] * fitting if sizes else 0.0,
+        "legend": "nothing is reduced yet"
+        if drawn is None
+        else f"What {count} took: sweeps and what came from other runs (plain), records (dashed), reductions (round corners) with the "
+        "result that their plan shows first. Facts of the sheet are behind all of it and not drawn.",
+    }
 
 
 def _plots(held: Holdings) -> Iterator[dict[str, Any]]:
@@ -233,30 +256,20 @@ def reduction_block(held: Holdings, reduction: ReductionDocument) -> dict[str, A
         "sha256": held.view.sealed.get(reduction.address, ("[nr]", 0))[0][:16],
         "begin": full_time(reduction.begin, held.sheet.time_zone),
         "software": f"stillroom {reduction.software.stillroom}",
-        "results": [_result(each) for each in reduction.outputs if each.rows is None],
+        "results": [_result(each, reduction) for each in reduction.outputs if each.rows is None],
+        "budgets": headline_budgets(reduction),
         "steps": [_step(each, reduction) for each in reduction.steps],
     }
 
 
-def _result(output: OutputEntry) -> dict[str, Any]:
-    shares = _shares(output)
+def _result(output: OutputEntry, reduction: ReductionDocument) -> dict[str, Any]:
     return {
         "name": symbol_of(output.name),
         "what": output.description,
         "value": shown_output(output),
-        "shares": shares,
+        "shares": largest_shares(reduction, output),
         "step": output.step,
     }
-
-
-def _shares(output: OutputEntry) -> str:
-    """Return the largest shares of a result's variance, in per cent."""
-    if not output.uncertainty or output.value is None:
-        return ""
-    parts = [("own points", output.point or 0.0), *output.shared.items()]
-    shares = [(name, (part / output.uncertainty) ** 2) for name, part in parts]
-    large = sorted((each for each in shares if each[1] >= 0.05), key=lambda each: -each[1])[:3]
-    return ", ".join(f"{name} {percent(share)}\u00a0%" for name, share in large)
 
 
 def _step(step: StepRecord, reduction: ReductionDocument) -> dict[str, Any]:
