@@ -14,13 +14,15 @@ from numpy.typing import NDArray
 from pydantic import TypeAdapter, ValidationError
 
 from archive.errors import DamagedFile, UnknownAddress
-from archive.index import Index, SearchQuery, SweepRow
+from archive.index import Document, Index, SearchQuery, SweepRow
 from archive.reduction.digest import record_digest
 from archive.reduction.estimate import Estimate
 from archive.reduction.outputs import estimate_from
 from archive.store.interface import Store
+from schemas.acts import AmendmentDocument, RevisionDocument, WithdrawalDocument
 from schemas.address import parse_address
-from schemas.lineage import AccessionDocument, AnyRecord, ReductionDocument
+from schemas.lineage import AccessionDocument, AnyRecord, InputEntry, ReductionDocument
+from schemas.plan import Plan
 
 __all__ = ["LabSource", "document_of", "key_of"]
 
@@ -28,19 +30,42 @@ _LONG_AGO = datetime.min.replace(tzinfo=UTC)
 _RECORD: TypeAdapter[AnyRecord] = TypeAdapter(AnyRecord)
 
 
+# No cooldown can have a name with a dot, so nothing of a cooldown ever lies in this folder.
+_RECORDS = "lab.records"
+
+
 def key_of(address: str) -> str:
-    """Key of the sealed file that an accession's or reduction's address names.
+    """Key of the sealed file that an address names.
 
     Examples
     --------
-    >>> key_of("2026-03.a1"), key_of("2026-03/s017@film-transition.2")
-    ('2026-03/2026-03.a1', '2026-03/s017@film-transition.2')
+    >>> key_of("2026-03.a1"), key_of("2026-03/s017@film-transition.2"), key_of("2026-03.m1")
+    ('2026-03/2026-03.a1', '2026-03/s017@film-transition.2', '2026-03/2026-03.m1')
+    >>> key_of("RX-2-cal.r2"), key_of("RX-2-cal.r2.w1")
+    ('lab.records/RX-2-cal.r2', 'lab.records/RX-2-cal.r2.w1')
     """
     parsed = parse_address(address)
-    return f"{parsed.head}/{address}" if parsed.kind == "accession" else address
+    if parsed.kind == "record" or parsed.revision is not None:
+        return f"{_RECORDS}/{address}"
+    inside = parsed.kind in ("accession", "amendment", "withdrawal")
+    return f"{parsed.head}/{address}" if inside else address
 
 
-def document_of(key: str, text: str) -> AccessionDocument | ReductionDocument:
+def _model_of(key: str) -> type[Document]:
+    if "@" in key:
+        return ReductionDocument
+    try:
+        kind = parse_address(key.rpartition("/")[2]).kind
+    except ValueError:
+        kind = "accession"
+    return {
+        "record": RevisionDocument,
+        "amendment": AmendmentDocument,
+        "withdrawal": WithdrawalDocument,
+    }.get(kind, AccessionDocument)  # type: ignore[return-value]
+
+
+def document_of(key: str, text: str) -> Document:
     """Document that a sealed file carries about itself.
 
     Raises
@@ -48,9 +73,7 @@ def document_of(key: str, text: str) -> AccessionDocument | ReductionDocument:
     DamagedFile
         If the text is not such a document.
     """
-    model: type[AccessionDocument] | type[ReductionDocument] = (
-        ReductionDocument if "@" in key else AccessionDocument
-    )
+    model = _model_of(key)
     try:
         return model.model_validate_json(text)
     except ValidationError as error:
@@ -71,15 +94,15 @@ class LabSource:
     def __init__(self, store: Store, index: Index) -> None:
         self.store = store
         self.index = index
-        self._documents: dict[str, AccessionDocument | ReductionDocument] = {}
+        self._documents: dict[str, Document] = {}
 
-    def document(self, key: str) -> AccessionDocument | ReductionDocument:
+    def document(self, key: str) -> Document:
         """Document of a sealed file."""
         if key not in self._documents:
             self._documents[key] = document_of(key, self.store.document(key))
         return self._documents[key]
 
-    def remember(self, key: str, document: AccessionDocument | ReductionDocument) -> None:
+    def remember(self, key: str, document: Document) -> None:
         """Keep a document that was just sealed."""
         self._documents[key] = document
 
@@ -128,13 +151,40 @@ class LabSource:
         return found
 
     def find_record(self, reference: str) -> AnyRecord | None:
-        """Record by address, or the newest revision of a name; None if the archive holds none."""
+        """Record by address, or the newest revision of a name that is not withdrawn; None if there is none."""
         name, _, revision = reference.partition(".r")
-        rows = [row for row in self.index.records(name=name) if not revision or row.revision == int(revision)]
+        rows = self.index.records(name=name)
+        if revision:
+            rows = [row for row in rows if row.revision == int(revision)]
+        else:
+            withdrawn = {row.target for row in self.index.withdrawals()}
+            rows = [row for row in rows if row.address not in withdrawn]
         if not rows:
             return None
         newest = max(rows, key=lambda row: row.revision)
         return _RECORD.validate_json(json.dumps(newest.content))
+
+    def revision(self, address: str) -> RevisionDocument | None:
+        """Document of a revision that came in outside a cooldown; None if that is not how it came in."""
+        known = {row.address: row.key for row in self.index.revisions(name=address.partition(".r")[0])}
+        document = self.document(known[address]) if address in known else None
+        return document if isinstance(document, RevisionDocument) else None
+
+    def own_plans(self) -> list[Plan]:
+        """Plans that came in as revisions and are not withdrawn, by name and revision."""
+        rows = [row for row in self.index.revisions() if row.kind == "plan" and row.counts]
+        documents = [self.document(row.key) for row in rows]
+        return [
+            Plan.model_validate_json(json.dumps(each.content))
+            for each in documents
+            if isinstance(each, RevisionDocument)
+        ]
+
+    def amendments(self, cooldown: str, *, withdrawn_too: bool = False) -> list[AmendmentDocument]:
+        """Amendments of a cooldown that count, by number."""
+        rows = [row for row in self.index.amendments(cooldown) if row.counts or withdrawn_too]
+        documents = [self.document(row.key) for row in rows]
+        return [each for each in documents if isinstance(each, AmendmentDocument)]
 
     def reductions(self, plan: str, sweep_address: str) -> list[ReductionDocument]:
         """Reductions of a plan on a sweep, oldest first."""
@@ -161,6 +211,10 @@ class LabSource:
         return estimate_from(
             self.reduction(reduction_address), lambda path: self.store.column(key, path), name
         )
+
+    def grounds(self, sweep_address: str) -> dict[str, InputEntry]:
+        """Nothing: as sealed, a sweep is what its sheet says. See `archive.lab.effective`."""
+        return {}
 
     def digest(self, address: str) -> str:
         """SHA-256 of a record's content, or of a sealed file."""

@@ -167,7 +167,7 @@ def _home_of_record(source: LabSource, node: TraceNode, seen: dict[str, _Sheet])
     row = next(
         (each for each in source.index.records(name=parsed.head) if each.address == node.address), None
     )
-    if row is None or not _ACCESSION.search(row.accession or ""):
+    if row is None or row.accession is None or not _ACCESSION.search(row.accession):
         return []
     sheet = _sheet(source, row.accession, seen)
     written = getattr(sheet.content.record, row.kind, ())
