@@ -46,7 +46,7 @@ def virial_density(
 
     Examples
     --------
-    >>> round(float(virial_density(13332.2368, 295.0, second_virial=11.86e-6) * 10.0), 4)
+    >>> round(float(virial_density(13332.2, 295.0, second_virial=11.86e-6) * 10.0), 4)
     54.3523
     """
     p, B = np.asarray(pressure, dtype=np.float64), np.asarray(second_virial, dtype=np.float64)

@@ -4,9 +4,9 @@ from __future__ import annotations
 
 import math
 
-import CoolProp.CoolProp as coolprop
 import numpy as np
 import pytest
+from CoolProp.CoolProp import PropsSI
 
 from archive.physics.constants import GAS_CONSTANT
 from archive.physics.dead_volume import free_volume, virial_density
@@ -15,7 +15,7 @@ from archive.physics.helium_gas import molar_density, second_virial
 
 def density_elsewhere(pressure: float, temperature: float) -> float:
     """Molar density of helium by the equation of state that CoolProp carries."""
-    return float(coolprop.PropsSI("Dmolar", "P", pressure, "T", temperature, "Helium"))
+    return float(PropsSI("Dmolar", "P", pressure, "T", temperature, "Helium"))
 
 
 @pytest.mark.parametrize(
