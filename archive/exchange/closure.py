@@ -193,6 +193,8 @@ def behind(start: Mapping[str, str], holdings: Holdings) -> dict[str, str]:
         name, head = address_of_key(key), key.partition("/")[0]
         if getattr(document, "cooldown", None) == head:
             waiting += [(each, f"belongs to cooldown {head}") for each in holdings.account(head)]
+        else:
+            waiting += [(each, f"is about {name}") for each in holdings.folder(head) if f"/{name}." in each]
         for text, found in holdings.required(document):
             if not found:
                 raise MissingFile(

@@ -62,8 +62,9 @@ def crate(about: About, sealed: Sequence[SealedDocument], files: Mapping[str, tu
     described = {sealed_path(each.key): each for each in sealed}
     parts = [_file(path, *files[path], described.get(path)) for path in sorted(files)]
     programs: dict[str, Entity] = {}
+    holders = _holders(sealed)
     actions = [
-        _action(each, each.document, files, programs, described)
+        _action(each, each.document, files, programs, holders)
         for each in sealed
         if isinstance(each.document, ReductionDocument)
     ]
@@ -163,7 +164,7 @@ def _action(
     content: ReductionDocument,
     files: Mapping[str, tuple[int, str]],
     programs: dict[str, Entity],
-    described: Mapping[str, SealedDocument],
+    holders: Mapping[str, list[str]],
 ) -> Entity:
     """Return the action by which a reduction was made."""
     version = content.software.stillroom
@@ -176,12 +177,8 @@ def _action(
             "softwareVersion": version,
         },
     )
-    heads = {content.sweep.partition("/")[0], *(entry.address.partition("#")[0] for entry in content.inputs)}
-    taken = [
-        path
-        for path, each in described.items()
-        if path in files and (each.address in heads or _holds(each, content.sweep))
-    ]
+    heads = [content.sweep, *(entry.address.partition("#")[0] for entry in content.inputs)]
+    taken = dict.fromkeys(path for head in heads for path in holders.get(head, ()))
     plan = plan_path(content)
     objects = [*taken, *([plan] if plan in files else [])]
     return {
@@ -198,11 +195,16 @@ def _action(
     }
 
 
-def _holds(sealed: SealedDocument, sweep: str) -> bool:
-    content = sealed.document
-    return isinstance(content, AccessionDocument) and any(
-        f"{content.cooldown}/{entry.name}" == sweep for entry in content.sweeps
-    )
+def _holders(sealed: Sequence[SealedDocument]) -> dict[str, list[str]]:
+    """Return the paths of the files that hold a sweep, an accession or a reduction, by its address."""
+    found: dict[str, list[str]] = {}
+    for each in sealed:
+        content, path = each.document, sealed_path(each.key)
+        found.setdefault(each.address, []).append(path)
+        if isinstance(content, AccessionDocument):
+            for entry in content.sweeps:
+                found.setdefault(f"{content.cooldown}/{entry.name}", []).append(path)
+    return found
 
 
 def _moment(moment: datetime) -> str:

@@ -10,12 +10,12 @@ Rules
 from __future__ import annotations
 
 from collections.abc import Iterable, Iterator
-from contextlib import contextmanager
+from contextlib import contextmanager, suppress
 from pathlib import Path
 from types import TracebackType
 from typing import Any, Self
 
-from sqlalchemy import Engine
+from sqlalchemy import Connection, Engine
 from sqlalchemy.engine import URL
 
 from archive.errors import BadRequest, DamagedFile, MissingFile
@@ -212,13 +212,19 @@ class Index:
         """
         with writing(self._engine, self._url) as connection:
             clear(connection)
-            for key, sha256, size, document in entries:
-                if isinstance(document, AccessionDocument):
-                    add_accession(connection, document, key=key, sha256=sha256, size=size)
-                elif not isinstance(document, ReductionDocument):
-                    add_act(connection, document, key=key, sha256=sha256, size=size)
-                else:
-                    add_reduction(connection, document, key=key, sha256=sha256, size=size)
+            _add_all(connection, entries)
+
+    def rehearse(self, entries: Iterable[Entry]) -> None:
+        """Raise what recording sealed files would raise, and keep nothing of it.
+
+        Parameters
+        ----------
+        entries : iterable of (key, sha256, size, document)
+            In the order of recording.
+        """
+        with suppress(_RehearsedError), writing(self._engine, self._url) as connection:
+            _add_all(connection, entries)
+            raise _RehearsedError
 
     def rows(self) -> dict[str, list[tuple[Any, ...]]]:
         """Every row of every table, by key: equal indexes give equal rows, whatever the engine."""
@@ -416,6 +422,20 @@ class Index:
     def _sweeps(self, query: queries.Query) -> list[SweepRow]:
         with reading(self._engine, self._url) as connection:
             return sweep_rows(connection, query)
+
+
+class _RehearsedError(Exception):
+    """Ends the transaction of a rehearsal, so that nothing of it is kept."""
+
+
+def _add_all(connection: Connection, entries: Iterable[Entry]) -> None:
+    for key, sha256, size, document in entries:
+        if isinstance(document, AccessionDocument):
+            add_accession(connection, document, key=key, sha256=sha256, size=size)
+        elif isinstance(document, ReductionDocument):
+            add_reduction(connection, document, key=key, sha256=sha256, size=size)
+        else:
+            add_act(connection, document, key=key, sha256=sha256, size=size)
 
 
 @contextmanager
