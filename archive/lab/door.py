@@ -22,7 +22,7 @@ from archive.index import AccessionRow, CooldownRow, Index, RecordRow, ResultRow
 from archive.intake import ingest as intake_ingest
 from archive.intake.examine import examined
 from archive.intake.settings import SETTINGS_NAME, Settings, read_settings, settings_text
-from archive.lab import reducing, reporting, showing
+from archive.lab import exchanging, reducing, reporting, showing
 from archive.lab.checking import check_folder, earlier_runs, folder_report, require_folder
 from archive.lab.comparing import Comparison, compare
 from archive.lab.forward import forward as lineage_forward
@@ -52,6 +52,10 @@ Clock = Callable[[], datetime]
 
 
 def _quiet(sentence: str) -> None:
+    """Say nothing."""
+
+
+def _uncounted(done: int, of: int, what: str) -> None:
     """Say nothing."""
 
 
@@ -470,6 +474,40 @@ class Archive:
             write_whole(path, content, replace=True)
             written.append(path)
         return written
+
+    # Exchanging ---------------------------------------------------------------------------------------------------
+
+    def provenance(self, address: str, *, notation: str = "json") -> exchanging.Provenance:
+        """Provenance in the terms of W3C PROV, as `json` (PROV-JSON) or `provn` (PROV-N): a cooldown, or what lies behind a thing."""
+        return exchanging.provenance(self._source, address, notation=notation)
+
+    def export(
+        self,
+        addresses: Sequence[str],
+        target: Path | str,
+        *,
+        reports: bool = True,
+        appendix: bool = False,
+        progress: Callable[[int, int, str], None] = _uncounted,
+    ) -> exchanging.ExportOutcome:
+        """Write a package of some addresses, or of the whole archive when none is named, with all that they rest on."""
+        return exchanging.export(
+            self._source, self._store, addresses, Path(target), deposit=self.settings.exchange, archive_name=self.name,
+            software=f"Stillroom {software().stillroom}", now=self._clock(), reports=reports, appendix=appendix, progress=progress,
+        )  # fmt: skip
+
+    def import_package(
+        self,
+        folder: Path | str,
+        *,
+        dry_run: bool = False,
+        progress: Callable[[int, int, str], None] = _uncounted,
+    ) -> exchanging.ImportOutcome:
+        """Take a package that `export` made into this archive, byte for byte: all of it or nothing."""
+        with self._writing(), self._acts.entered_as("import"):
+            return exchanging.taken_in(
+                self._source, self._store, Path(folder), record=self._record, dry=dry_run, progress=progress
+            )
 
     # Keeping ------------------------------------------------------------------------------------------------------
 
