@@ -18,6 +18,7 @@ from archive import __version__
 from archive.commands import (
     archive_commands,
     bench_commands,
+    calibration_commands,
     compare_command,
     demo_command,
     exchange_commands,
@@ -46,6 +47,8 @@ _COMMANDS: Final = (
     lineage_commands.trace,
     lineage_commands.replay,
     compare_command.compare,
+    calibration_commands.calibration,
+    calibration_commands.drift,
     report_commands.run_sheet,
     report_commands.appendix,
     archive_commands.journal,

@@ -33,6 +33,10 @@ class Thresholds(Record):
         f"Nearer to an end of the calibration than this fraction of it (in T) is told ({_PRACTICE}).",
         below=0.5,
     )
+    calibration_drift_sigma: float = _limit(
+        3.0,
+        f"Difference of a calibration from the one before it, over the standard uncertainty of that difference ({_PRACTICE}).",
+    )
     thermal_lag_k: float = _limit(1e-3, f"Offset in K between sweeps up and down ({_PRACTICE}).")
     thermal_lag_fraction: float = _limit(
         1e-3, f"The same as a fraction of T; the larger one counts ({_PRACTICE})."

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
@@ -13,6 +14,7 @@ from archive.intake.examine import examined
 from archive.intake.folder import read_cooldown
 from archive.intake.reading import Reading
 from archive.intake.thresholds import Thresholds
+from archive.lab.calibrating import archived_calibrations, record_as_made
 from archive.lab.earlier import history
 from archive.lab.outcomes import CheckReport
 from archive.lab.source import LabSource
@@ -46,9 +48,15 @@ def require_folder(folder: Path) -> None:
 
 
 def earlier_runs(source: LabSource, reading: Reading) -> History:
-    """What the archive knows of earlier runs of the cells that a reading uses."""
+    """What the archive knows of earlier runs of the cells that a reading uses, and of the origin of its calibrations."""
     cells = {cell.name for sweep in reading.sheet.sweep if (cell := reading.cell_of(sweep)) is not None}
-    return history(source, reading.sheet.name, cells)
+    calibrations = reading.sheet.record.calibration
+    thermometers = {each.thermometer.partition(".r")[0] for each in calibrations}
+    return replace(
+        history(source, reading.sheet.name, cells),
+        calibrations={name: archived_calibrations(source, name) for name in thermometers},
+        made={each.address: record_as_made(source, each) for each in calibrations if each.made_from},
+    )
 
 
 def check_folder(

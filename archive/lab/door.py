@@ -22,7 +22,7 @@ from archive.index import AccessionRow, CooldownRow, Index, RecordRow, ResultRow
 from archive.intake import ingest as intake_ingest
 from archive.intake.examine import examined
 from archive.intake.settings import SETTINGS_NAME, Settings, read_settings, settings_text
-from archive.lab import exchanging, reducing, reporting, showing
+from archive.lab import calibrating, exchanging, reducing, reporting, showing
 from archive.lab.checking import check_folder, earlier_runs, folder_report, require_folder
 from archive.lab.comparing import Comparison, compare
 from archive.lab.forward import forward as lineage_forward
@@ -32,6 +32,7 @@ from archive.lab.place import find_root, made, unmade
 from archive.lab.replaying import replay_all
 from archive.lab.source import LabSource
 from archive.lab.tracing import backward
+from archive.reduction.calibration_comparison import Drift
 from archive.reduction.monte_carlo import Request
 from archive.reduction.software import software
 from archive.reduction.trace import TraceNode
@@ -44,6 +45,7 @@ from archive.store.staging import sweep_staging
 from schemas.address import parse_address
 from schemas.lineage import ReductionDocument
 from schemas.plan import Plan
+from schemas.thermometer import Calibration
 
 __all__ = ["Archive"]
 
@@ -243,10 +245,7 @@ class Archive:
 
     def _record(self, sealed: SealedFile, *, note: str | None = None) -> None:
         document = self._source.document(sealed.key)
-        if isinstance(document, ReductionDocument):
-            self._index.record_reduction(document, key=sealed.key, sha256=sealed.sha256, size=sealed.size)
-        else:
-            self._index.record_accession(document, key=sealed.key, sha256=sealed.sha256, size=sealed.size)
+        self._index.record(document, key=sealed.key, sha256=sealed.sha256, size=sealed.size)
         self._acts.sealed(document, sealed, note=note)
 
     @contextmanager
@@ -452,6 +451,16 @@ class Archive:
     def trace(self, address: str, *, forward: bool = False) -> TraceNode:
         """Lineage of a result, array, sentence or figure down to raw files and lines; or forward, to all that rests on it."""
         return lineage_forward(self._source, address) if forward else backward(self._source, address)
+
+    def calibration(
+        self, reduction: str, *, name: str | None = None, revision: int | None = None
+    ) -> Calibration:
+        """Calibration record that a reduction found, as a new record or the next revision of one; see `calibrating`."""
+        return calibrating.made_calibration(self._source, reduction, name=name, revision=revision)
+
+    def calibration_drift(self, thermometer: str) -> list[Drift]:
+        """Each calibration of a thermometer held against the one before it."""
+        return calibrating.calibration_drift(self._source, thermometer)
 
     # Telling ------------------------------------------------------------------------------------------------------
 

@@ -88,7 +88,7 @@ def gas_head(_: NoParameters, *, pressure: FloatArray, thermometer: Thermometer)
     return Outcome(
         {"pressure": found.value}, shared={"pressure": shared}, sources=tuple(entries),
         facts={
-            "height": height.format(), "largest": _largest(change), "share_percent": _share(change, pressure),
+            "height": height.format(), "largest": _largest(change), "share_percent": f"{_share(change, pressure):.2g}",
             "profile": "at the stated temperature" if tube.gas_temperature is not None else "on a straight profile of temperature, known to the size of the correction",
         },
     )  # fmt: skip

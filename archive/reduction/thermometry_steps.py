@@ -34,7 +34,7 @@ from schemas.thermometer import (
     VapourPressureForm,
 )
 
-__all__ = ["calibrated_temperature", "temperature_from_calibration"]
+__all__ = ["calibrated_temperature", "resistance_curve", "temperature_from_calibration"]
 
 
 def temperature_from_calibration(
@@ -150,7 +150,8 @@ def calibrated_temperature(calibration: Calibration, reading: FloatArray, factor
         )
     else:
         return np.asarray(
-            evaluate(_curve(calibration), reading, temperature_span=(low, high)).temperature, dtype=np.float64
+            evaluate(resistance_curve(calibration), reading, temperature_span=(low, high)).temperature,
+            dtype=np.float64,
         )
     with np.errstate(invalid="ignore"):
         # A part in 1e12 is the rounding of the ends.
@@ -176,7 +177,8 @@ def _within(pressure: FloatArray, span: tuple[float, float], function: object) -
 
 # A fit of points is the same for every column and every shifted evaluation.
 @lru_cache(maxsize=64)
-def _curve(calibration: Calibration) -> ResistanceCurve:
+def resistance_curve(calibration: Calibration) -> ResistanceCurve:
+    """Return the curve of a calibration of a resistance that does not state the readings of its points."""
     relation = calibration.relation
     span = (calibration.temperature_low.si, calibration.temperature_high.si)
     if isinstance(relation, ChebyshevForm):

@@ -11,7 +11,15 @@ from archive.errors import BadRequest, UnknownAddress
 from archive.reduction.facts import accession_of
 from archive.reduction.source import Source
 from schemas.address import Address, parse_address
-from schemas.lineage import AccessionDocument, OutputEntry, ReductionDocument, StepRecord, SweepEntry
+from schemas.lineage import (
+    AccessionDocument,
+    AnyRecord,
+    OutputEntry,
+    ReductionDocument,
+    StepRecord,
+    SweepEntry,
+)
+from schemas.thermometer import Calibration
 
 __all__ = ["TraceNode", "trace", "trace_step"]
 
@@ -136,9 +144,9 @@ class _Tracer:
                     children,
                 )
             case "channel" | "item":
-                return self._sweep(address)
+                return self._sweep(address, path)
             case "record":
-                return self._record(address)
+                return self._record(address, path)
         raise BadRequest(
             f"{address.text} has no lineage",
             expected="an output, a reduction, a channel, a sweep or a record",
@@ -198,7 +206,7 @@ class _Tracer:
             tuple(children),
         )
 
-    def _sweep(self, address: Address) -> TraceNode:
+    def _sweep(self, address: Address, path: tuple[str, ...]) -> TraceNode:
         accession, entry = accession_of(self.source, address.sweep or "")
         if address.part is None:
             return TraceNode(
@@ -216,7 +224,7 @@ class _Tracer:
             )
         label = f"{address.text}, {channel.quantity} in {channel.unit}, sha256 {channel.digest[:12]}"
         records = [
-            self._record(parse_address(each))
+            self._record(parse_address(each), path)
             for each in (channel.calibration, channel.thermometer)
             if each is not None
         ]
@@ -226,7 +234,7 @@ class _Tracer:
             address.text, "channel", label, {"digest": channel.digest, "unit": channel.unit}, (*records, *raw)
         )
 
-    def _record(self, address: Address) -> TraceNode:
+    def _record(self, address: Address, path: tuple[str, ...]) -> TraceNode:
         record = self.source.record(address.text)
         digest = self.source.digest(address.text)
         kind = type(record).__name__.lower()
@@ -235,7 +243,22 @@ class _Tracer:
             "record",
             f"{address.text}, {kind}, sha256 {digest[:12]}",
             {"digest": digest, "record": kind},
+            self._origin(record, path),
         )
+
+    def _origin(self, record: AnyRecord, path: tuple[str, ...]) -> tuple[TraceNode, ...]:
+        """Return the reduction that a calibration was made from, traced by its coefficients, or that it is not here."""
+        made_from = record.made_from if isinstance(record, Calibration) else None
+        if made_from is None:
+            return ()
+        try:
+            document = self.source.reduction(made_from)
+        except UnknownAddress:
+            return (TraceNode(made_from, "reduction", f"{made_from}, not in this archive"),)
+        planned = next((step for step in document.plan.step if step.use == "calibration-fit"), None)
+        if planned is None or "coefficients" not in planned.give:
+            return (self.node(parse_address(made_from), path),)
+        return (self.node(parse_address(f"{made_from}#{planned.give['coefficients']}"), path),)
 
 
 def _kind(entry: OutputEntry) -> str:

@@ -9,6 +9,7 @@ from typing import Any
 from archive.intake.reading import Reading
 from archive.intake.thresholds import Thresholds
 from schemas.finding import Finding
+from schemas.thermometer import Calibration
 
 __all__ = ["Check", "CheckFunction", "History"]
 
@@ -27,11 +28,17 @@ class History:
         SHA-256 of raw files of sweeps to the address that holds them.
     scatter : mapping of str to float
         Usual relative scatter of the period from row to row, by name of the cell.
+    calibrations : mapping of str to tuple of Calibration
+        Those that the archive holds, by name of the thermometer.
+    made : mapping of str to Calibration or str
+        For calibrations of the sheet that name a reduction: what that reduction found, or in words why that is not known, by address.
     """
 
     cooldown: str | None = None
     files: Mapping[str, str] = field(default_factory=dict)
     scatter: Mapping[str, float] = field(default_factory=dict)
+    calibrations: Mapping[str, tuple[Calibration, ...]] = field(default_factory=dict)
+    made: Mapping[str, Calibration | str] = field(default_factory=dict)
 
 
 @dataclass(frozen=True)

@@ -10,6 +10,7 @@ from importlib.metadata import entry_points
 
 from archive.intake.checks import (
     background,
+    calibrations,
     channels,
     drive,
     duplicates,
@@ -98,6 +99,23 @@ CHECKS: tuple[Check, ...] = (
         "temperature-near-calibration-end",
         "readings keep away from the ends of the calibration, calibration_end_fraction",
         temperatures.near_calibration_end,
+    ),
+    Check(
+        "calibrated-thermometer-missing",
+        "a channel under calibration says which thermometer it reads",
+        calibrations.calibration_without_thermometer,
+    ),
+    Check(
+        "calibration-differs",
+        "a calibration made in an archive is what its reduction found",
+        calibrations.calibration_as_made,
+        uses_history=True,
+    ),
+    Check(
+        "calibration-drift",
+        "a calibration agrees with the one before, calibration_drift_sigma",
+        calibrations.calibration_drifted,
+        uses_history=True,
     ),
     Check("scales-mixed", "temperatures of a cooldown are on one scale", temperatures.scales_mixed),
     Check(
