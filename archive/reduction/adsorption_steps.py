@@ -52,22 +52,21 @@ def relative_pressure(
     return Outcome({"relative_pressure": pressure / saturated})
 
 
-def _propagated(
-    x: FloatArray, n: FloatArray, u_n: FloatArray | None, *, cross_section: float, low: float, high: float
-) -> FloatArray:
-    """Return the variances of monolayer, constant and area that the amounts' own uncertainty makes, one by one."""
-    total = np.zeros(3)
+def _propagated(x: FloatArray, n: FloatArray, u_n: FloatArray | None, found: BetArea) -> FloatArray:
+    """Return the variances of monolayer, constant and area that the amounts' own uncertainty makes, to first order."""
     if u_n is None:
-        return total
-    for index in np.flatnonzero((x >= low) & (x <= high) & (u_n > 0)):
-        sides = []
-        for sign in (1.0, -1.0):
-            moved = n.copy()
-            moved[index] += sign * u_n[index]
-            each = bet_area(x, moved, cross_section=cross_section, bounds=(low, high))
-            sides.append((each.monolayer, each.constant, each.area))
-        total += np.square((np.array(sides[0]) - np.array(sides[1])) / 2)
-    return total
+        return np.zeros(3)
+    inside = (x >= found.low) & (x <= found.high)
+    px, pn, pu = x[inside], n[inside], u_n[inside]
+    ordinate = px / (pn * (1 - px))
+    # The line is unweighted, so slope and intercept are these sums over the ordinates.
+    by_slope = (px - px.mean()) / float(np.sum((px - px.mean()) ** 2))
+    by_intercept = 1 / px.size - px.mean() * by_slope
+    by_monolayer = -(found.monolayer**2) * (by_slope + by_intercept)
+    by_constant = (by_slope - (found.constant - 1) * by_intercept) / found.intercept
+    parts = np.array([by_monolayer, by_constant]) * (-ordinate / pn * pu)
+    monolayer, constant = np.sum(parts**2, axis=1)
+    return np.array([monolayer, constant, monolayer * (found.area / found.monolayer) ** 2])
 
 
 def _range_choice(x: FloatArray, n: FloatArray, found: BetArea) -> tuple[float, ...]:
@@ -145,10 +144,7 @@ def bet(
     if not found.accepted:
         raise ValueError(f"amount: no BET line can be given: {'; '.join(found.reasons)}")
     names: tuple[str, ...] = ("monolayer", "constant", "area")
-    own = _propagated(
-        x, n, u_amount[rows] if u_amount is not None else None,
-        cross_section=found.cross_section, low=found.low, high=found.high,
-    )  # fmt: skip
+    own = _propagated(x, n, u_amount[rows] if u_amount is not None else None, found)
     variances = np.maximum(np.square([found.u_monolayer, found.u_constant, found.u_area]), own)
     joint = np.diag(variances)
     # The area is the monolayer times a constant.

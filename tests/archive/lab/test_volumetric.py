@@ -2,9 +2,7 @@
 
 from __future__ import annotations
 
-import math
 from collections.abc import Iterator
-from pathlib import Path
 
 import numpy as np
 import pytest
@@ -14,9 +12,9 @@ from scipy.optimize import brentq
 from archive import Archive
 from archive.lab import ReduceOutcome
 
-DOSER, CELL, WARM = 50.0e-6, 8.0e-6, 12.0e-6
+DOSER, CELL, WARM = 50.0e-6, 3.0e-6, 12.0e-6
 ROOM, COLD, BATH = 295.0, 77.36, 4.2
-MONOLAYER, C = 400e-6, 120.0
+MONOLAYER, C = 12e-3, 120.0
 AREA_EACH = 0.0847e-18
 
 
@@ -199,7 +197,7 @@ def test_without_a_dead_volume_the_isotherm_counts_all_gas_and_says_so(lab: Arch
     (outcome,) = lab.reduce("2026-04", plan="isotherm-from-doses")
     assert outcome.document is not None
     monolayer, _ = number(outcome, "monolayer")
-    assert monolayer > 1.2 * MONOLAYER
+    assert monolayer > 1.15 * MONOLAYER
     (step,) = [each for each in outcome.document.steps if each.name == "adsorbed-amount"]
     assert step.facts["known_by"] == "the sheet"
 
@@ -208,14 +206,14 @@ def test_expansion_then_isotherm(lab: Archive) -> None:
     (expansion,) = lab.reduce("2026-03")
     volume, u = number(expansion, "dead_volume")
     assert abs(volume - CELL) < 3 * u
-    # Metering volume 0.3 %, over 8 + 12 * 77.36/295 cm^3, and the capillary's 0.06 cm^3 as 0.0157 cm^3 of cold cell.
+    # Metering volume 0.3 %, over 3 + 12 * 77.36/295 cm^3, and the capillary's 0.06 cm^3 as 0.0157 cm^3 of cold cell.
     assert 0.02e-6 < u < 0.06e-6
     offset, u_offset = number(expansion, "offset")
     assert abs(offset) < 3 * u_offset
     (found,) = lab.reduce("2026-04", plan="isotherm-from-doses")
     monolayer, u = number(found, "monolayer")
     assert abs(monolayer - MONOLAYER) < 3 * u
-    assert u < 0.02 * MONOLAYER
+    assert u < 0.005 * MONOLAYER
     area, u = number(found, "area")
     assert area == pytest.approx(monolayer * 6.02214076e23 * AREA_EACH, rel=1e-9)
     constant, u = number(found, "constant")
@@ -224,10 +222,9 @@ def test_expansion_then_isotherm(lab: Archive) -> None:
     # The metering volume is one source, in the dead volume and in the doses.
     shared = {each.name: each.shared for each in found.document.outputs}
     assert "volume of doser V1, 50.00(15) cm^3" in shared["monolayer"]
-    assert math.isclose(
-        abs(shared["monolayer"]["volume of doser V1, 50.00(15) cm^3"]) / monolayer, 0.003, rel_tol=0.1
-    )
-    assert [each.plan.name for each in [found.document]] == ["isotherm-from-doses"]
+    # The doser's 0.3 % would be the monolayer's too; the dead volume, which grows with it, takes a part back.
+    part = abs(shared["monolayer"]["volume of doser V1, 50.00(15) cm^3"]) / monolayer
+    assert 0.002 < part < 0.003
     assert lab.replay(found.address or "").identical
 
 
@@ -236,10 +233,8 @@ def test_the_trace_of_the_area_leads_to_the_expansions(lab: Archive) -> None:
     (found,) = lab.reduce("2026-04", plan="isotherm-from-doses")
     lines = "\n".join(lab.trace(f"{found.address}#area").lines())
     assert "2026-03/run@dead-volume.1#dead_volume" in lines
-    assert "2026-03.a1:raw/run.csv" in lines
+    assert "2026-03.a1:run.csv" in lines
 
 
-def test_folders_stay_as_they_were(lab: Archive, tmp_path: Path) -> None:
-    # No plan for isotherms with an amount channel takes these.
-    names = {outcome.plan for outcome in lab.reduce("2026-04")}
-    assert names == {"isotherm-from-doses.r1"}
+def test_a_run_of_doses_is_left_to_its_own_plan(lab: Archive) -> None:
+    assert {outcome.plan for outcome in lab.reduce("2026-04")} == {"isotherm-from-doses.r1"}
