@@ -70,7 +70,7 @@ def _run(folder: Path) -> int:
     from archive.lab import Archive
 
     folder.mkdir(parents=True, exist_ok=True)
-    _head("Raw data of three invented cooldowns")
+    _head("Raw data of invented cooldowns")
     with Progress("making raw data"):
         cooldowns = make_folders(folder / _DATA)
     for made in cooldowns:

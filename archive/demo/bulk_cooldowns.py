@@ -1,6 +1,6 @@
 """The invented cooldowns 2025-08 (stack of discs in bulk liquid) and 2025-11 (heat capacity).
 
-Rules: as in `first_cooldown`. They are not part of the three folders of `scenario`; `make_bulk_folders` writes them beside those.
+Rules: as in `first_cooldown`.
 """
 
 from __future__ import annotations

@@ -6,7 +6,32 @@ from typing import Final
 
 __all__ = ["CURRENT_SHEET"]
 
-CURRENT_SHEET: Final = """
+_EFFECTS: Final = """\
+effect = [
+  { effect = "vapour in dead volume", state = "considered", reason = "below 0.1 umol at 0.7 K; the cell is full of liquid later" },
+  { effect = "desorption in heat capacity", state = "not-applicable", reason = "no heat capacity was measured" },
+  { effect = "thermal transpiration", state = "not-applicable", reason = "no pressure was read" },
+  { effect = "hydrostatic head", state = "not-applicable", reason = "no vapour pressure thermometer" },
+  { effect = "self-heating", state = "considered", reason = "bridge power halved: no change" },
+  { effect = "sensor-film offset", state = "considered", reason = "thermometer on the lid of the ring; slow sweeps" },
+  { effect = "amplitude dependence", state = "not-applicable", reason = "precession is read, no oscillation" },
+  { effect = "finite ring time", state = "not-applicable", reason = "no oscillator" },
+  { effect = "elasticity of contents and of cell", state = "not-applicable", reason = "no oscillator" },
+  { effect = "slip", state = "considered", reason = "the normal liquid rests in the powder" },
+  { effect = "crossing modes", state = "not-applicable", reason = "no oscillator" },
+  { effect = "viscous drag of vapour", state = "considered", reason = "hardly any vapour" },
+  { effect = "drift of the resonance", state = "not-applicable", reason = "no oscillator" },
+  { effect = "remounting shift", state = "not-applicable", reason = "first cooldown of this cell" },
+  { effect = "isotopic content", state = "considered", reason = "purified gas, 0.001 ppm" },
+  { effect = "capillary condensation", state = "considered", reason = "films below 47 umol/m^2; none between the grains was looked for" },
+  { effect = "gravity rounding", state = "considered", reason = "no point is nearer to the lambda point than 5 mK" },
+  { effect = "ageing of the thermometer", state = "not-possible-to-know", reason = "not compared since the maker's calibration" },
+  { effect = "contamination by frozen air", state = "considered", reason = "line pumped for two days, gas through charcoal at 77 K" },
+]
+"""
+
+CURRENT_SHEET: Final = (
+    """
 # Cooldown 2026-06: persistent currents in a packed ring, first in films, then in liquid.
 # Invented data: made by the forward models of Stillroom's demonstration, no real apparatus.
 
@@ -24,6 +49,9 @@ cell = "RG-1"
 sample = "He4-ring"
 licence = "CC0-1.0"
 
+"""
+    + _EFFECTS
+    + """
 [[record.cryostat]]
 name = "HE3-2"
 revision = 1
@@ -121,3 +149,4 @@ thermometer = "temperature"
 direction = "both"
 notes = "Warmed to 2.165 K; part of the current was gone afterwards."
 """
+)

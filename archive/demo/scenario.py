@@ -1,4 +1,4 @@
-"""The demonstration: three invented cooldowns of one laboratory, and what is true in them.
+"""The demonstration: invented cooldowns of one laboratory, one for each kind of experiment, and what is true of its films.
 
 Rules: equal seeds give equal bytes; nothing is read but the seed.
 """
@@ -8,12 +8,17 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
+from typing import Final
 
+from archive.demo.bulk_cooldowns import calorimeter_cooldown, stack_cooldown
+from archive.demo.calibration_cooldown import calibration_cooldown
+from archive.demo.current_cooldown import current_cooldown
 from archive.demo.first_cooldown import FIRST_COVERAGES, first_cooldown, first_stated
 from archive.demo.forward import transition_temperature
 from archive.demo.porous_cooldown import POROUS_COVERAGES, porous_cooldown, porous_stated
 from archive.demo.second_cooldown import SECOND_COVERAGES, TO4_LATER, second_cooldown, second_stated
 from archive.demo.stated import Stated
+from archive.demo.third_sound_cooldown import third_sound_cooldown
 from archive.demo.truth import PG2, TO4, CellTruth
 
 __all__ = ["SEED", "CooldownTruth", "make_folders", "truth"]
@@ -51,7 +56,7 @@ class CooldownTruth:
 
 
 def truth(seed: int = SEED) -> dict[str, CooldownTruth]:
-    """Return what a reduction of the folders is compared with, by cooldown name.
+    """Return what a reduction of the films on oscillators is compared with, by cooldown name; the other cooldowns tell their own truth.
 
     Parameters
     ----------
@@ -65,13 +70,19 @@ def truth(seed: int = SEED) -> dict[str, CooldownTruth]:
     }
 
 
+_COOLDOWNS: Final = (
+    calibration_cooldown, first_cooldown, third_sound_cooldown, stack_cooldown, calorimeter_cooldown, second_cooldown, porous_cooldown, current_cooldown,
+)  # fmt: skip
+"""In the order of time, which is that of intake: what a later one rests on comes before it."""
+
+
 def make_folders(target: Path, *, seed: int = SEED) -> list[Path]:
-    """Write the three cooldown folders and return their paths, in the order in which they are to be taken in.
+    """Write the cooldown folders and return their paths, in the order in which they are to be taken in.
 
     Parameters
     ----------
     target : Path
-        Folder that gets `2025-03`, `2026-02` and `2026-05`; made if it is missing.
+        Folder that gets `2024-11` to `2026-06`; made if it is missing.
     seed : int
         Not negative.
 
@@ -80,7 +91,7 @@ def make_folders(target: Path, *, seed: int = SEED) -> list[Path]:
     FileExistsError
         If one of the folders is there already; none is written then.
     """
-    folders = [make(seed) for make in (first_cooldown, second_cooldown, porous_cooldown)]
+    folders = [make(seed) for make in _COOLDOWNS]
     for folder in folders:
         if (target / folder.name).exists():
             raise FileExistsError(f"{target / folder.name} is there already; choose another folder")

@@ -32,7 +32,7 @@ from archive.demo.second_sheet import SECOND_SHEET
 from archive.demo.stated import Stated, generator
 from archive.demo.truth import TO4, remounted
 
-__all__ = ["SECOND_COVERAGES", "TO4_LATER", "second_cooldown", "second_stated"]
+__all__ = ["NIGHT_DRIFT", "SECOND_COVERAGES", "TO4_LATER", "second_cooldown", "second_stated"]
 
 NAME: Final = "2026-02"
 
@@ -52,6 +52,11 @@ _DOSES: Final = (
     ("2026-02-24 10:00", 36.0e-6),
 )
 """Local time of each dose and true coverage after it."""
+
+NIGHT_DRIFT: Final = 0.4e-12 / 3600
+"""Drift of the period during the night of s006, s/s."""
+
+_NIGHT_ROWS: Final = 600
 
 _BREAK: Final = 190
 """Row of s004 at which the measuring program stopped."""
@@ -112,6 +117,10 @@ def _files(seed: int) -> dict[str, bytes]:
         name: film_sweep(cell, coverage, generator(seed, NAME, name))
         for name, coverage in SECOND_COVERAGES.items()
     }
+    night = oscillator_record(
+        cell, np.full(_NIGHT_ROWS, 0.100), SECOND_COVERAGES["s005"], generator(seed, NAME, "s006")
+    )
+    night.period[:] += NIGHT_DRIFT * 60.0 * np.arange(_NIGHT_ROWS)
     broken = oscillator_columns(sweeps["s004"], sensor="RX2")
     before = [replace(column, values=column.values[:_BREAK]) for column in broken]
     after = [replace(column, values=column.values[_BREAK:]) for column in broken]
@@ -131,6 +140,7 @@ def _files(seed: int) -> dict[str, bytes]:
             times_from(at("2026-02-21 03:00"), rows - _BREAK, cadence=60.0), after, zone=ZONE
         ),
         "raw/ts_d07.csv": sweep_bytes(sweeps["s005"], at("2026-02-25 20:00"), sensor="RX2"),
+        "raw/night_d07.csv": sweep_bytes(night, at("2026-02-27 20:00"), sensor="RX2"),
     }
 
 

@@ -184,6 +184,18 @@ thermometer = "thermometer"
 direction = "up"
 drive = "0.1 V rms"
 
+[[sweep]]
+name = "s006"
+kind = "log"
+files = ["raw/night_d07.csv"]
+layout = "counter"
+after_dose = "d07"
+thermometer = "thermometer"
+direction = "hold"
+drive = "0.1 V rms"
+settled = "six hours at 0.100 K"
+notes = "A quiet night, to see how long averaging helps."
+
 [[note]]
 at = 2026-02-13T17:00:00+11:00
 role = "graduate student"

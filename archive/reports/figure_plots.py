@@ -8,7 +8,7 @@ from collections.abc import Sequence
 import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
-from matplotlib.ticker import LogLocator, MaxNLocator, NullFormatter, ScalarFormatter
+from matplotlib.ticker import FuncFormatter, LogLocator, MaxNLocator, NullFormatter
 
 from archive.reports.figure_style import LOOKS, WIDTH, Column
 
@@ -37,6 +37,7 @@ _LADDERS: dict[str, tuple[tuple[float, str], ...]] = {
     "kg m^2/s": ((1e-12, "pJ s"), (1e-9, "nJ s"), (1e-6, "µJ s")),
     "kg/m^3": ((1e-3, "g m$^{-3}$"), (1.0, "kg m$^{-3}$")),
     "Hz": ((1e-9, "nHz"), (1e-6, "µHz"), (1e-3, "mHz"), (1.0, "Hz"), (1e3, "kHz")),
+    "H": ((1e-9, "nH"), (1e-6, "µH"), (1e-3, "mH"), (1.0, "H")),
     "Ohm": ((1e-3, "mΩ"), (1.0, "Ω"), (1e3, "kΩ"), (1e6, "MΩ")),
     "Pa": ((1e-3, "mPa"), (1.0, "Pa"), (1e3, "kPa"), (1e6, "MPa")),
     "m/s": ((1e-6, "µm s$^{-1}$"), (1e-3, "mm s$^{-1}$"), (1.0, "m s$^{-1}$")),
@@ -196,14 +197,25 @@ def letters(panels: Sequence[Axes]) -> None:
         )
 
 
-def logarithmic(panel: Axes) -> None:
-    """Make the ordinate logarithmic; where it spans little, its ticks are plain numbers and not powers of ten."""
-    panel.set_yscale("log")
-    low, high = panel.get_ylim()
-    if low > 0 and high < 30 * low:
-        panel.yaxis.set_major_locator(LogLocator(subs=(1.0, 2.0, 5.0)))
-        panel.yaxis.set_major_formatter(ScalarFormatter(useOffset=False))
-        panel.yaxis.set_minor_formatter(NullFormatter())
+def logarithmic(panel: Axes, *, across: bool = False) -> None:
+    """Make an axis logarithmic; over two decades or less its ticks are plain numbers and not powers of ten.
+
+    Parameters
+    ----------
+    panel : Axes
+        With all that is to be shown.
+    across : bool
+        The abscissa; else the ordinate.
+    """
+    (panel.set_xscale if across else panel.set_yscale)("log")
+    axis = panel.xaxis if across else panel.yaxis
+    low, high = axis.get_view_interval()
+    if low > 0 and high < 200 * low:
+        axis.set_major_locator(
+            LogLocator(subs=(1.0, 2.0, 5.0) if high > 8 * low else (1.0, 1.5, 2.0, 3.0, 4.0, 5.0, 6.0, 8.0))
+        )
+        axis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:g}"))
+        axis.set_minor_formatter(NullFormatter())
 
 
 def tight_to(panel: Axes, x: Column, *, margin: float = 0.02) -> None:

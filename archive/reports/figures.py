@@ -22,10 +22,12 @@ from archive.reports.figures_bulk import (
     heat_capacity_figure,
     superfluid_law_figure,
 )
+from archive.reports.figures_calibration import calibration_figure
 from archive.reports.figures_cell import cell_figures
 from archive.reports.figures_current import current_figure
 from archive.reports.figures_drive import linearity_figure, stability_figure
 from archive.reports.figures_film import dynamic_figure, porous_figure, sweep_figure, transition_figure
+from archive.reports.figures_jump import jump_figure
 from archive.reports.figures_oscillator import (
     background_figure,
     decay_figure,
@@ -54,7 +56,9 @@ MAKERS: Final[dict[str, Callable[[Scope, ReductionDocument], Drawn]]] = {
     "resonance": resonance_figure,
     "ringdown": decay_figure,
     "stability": stability_figure,
+    "thermometer-calibration": calibration_figure,
     "third-sound": third_sound_figure,
+    "universal-jump": jump_figure,
 }
 """Which figure a plan has, by the plan's name."""
 
