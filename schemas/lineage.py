@@ -237,6 +237,10 @@ class StepRecord(Record):
     effects: dict[str, str] = Field(
         default_factory=dict, description="Known effects that this step treats: effect, sentence."
     )
+    considered: dict[str, str] = Field(
+        default_factory=dict,
+        description="Known effects that this step looked for without correcting anything: effect, sentence.",
+    )
     begin: AwareDatetime
     end: AwareDatetime
     findings: tuple[Finding, ...] = ()

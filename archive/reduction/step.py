@@ -146,6 +146,8 @@ class Step:
         Keys of the bibliography.
     effects : mapping of str to str
         Known effects that the step treats, each with its sentence.
+    considered : mapping of str to str
+        Known effects that the step only looks for, and corrects nothing, each with its sentence.
     spread : str
         ``elementwise``: element i of an output depends on element i of the inputs alone, so the runner finds point
         uncertainties by shifting; ``refit``: the function takes them as weights and answers for them.
@@ -168,6 +170,7 @@ class Step:
     parameters: type[Record] = NoParameters
     citations: tuple[str, ...] = ()
     effects: Mapping[str, str] = field(default_factory=dict)
+    considered: Mapping[str, str] = field(default_factory=dict)
     spread: Literal["elementwise", "refit"] = "elementwise"
     weights: tuple[str, ...] = ()
     kinds: tuple[str, ...] = ()

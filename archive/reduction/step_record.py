@@ -67,6 +67,7 @@ def step_record(
         outputs=tuple(each.name for each in found),
         citations=step.citations,
         effects={effect: filled(sentence, words) for effect, sentence in step.effects.items()},
+        considered={effect: filled(sentence, words) for effect, sentence in step.considered.items()},
         begin=begin,
         end=end,
         findings=outcome.findings,

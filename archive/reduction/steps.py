@@ -24,11 +24,13 @@ from archive.reduction import (
     gathering,
     heat_capacity_steps,
     jump_steps,
+    linear_regime_steps,
     loading_steps,
     oscillator_steps,
     peak_steps,
     porous_steps,
     pulse_steps,
+    ringdown_steps,
     stability_steps,
     sweep_steps,
     thermometry_steps,
@@ -276,7 +278,7 @@ STEPS: tuple[Step, ...] = (
         yields={"departure": Port("fraction", "scalar", "largest departure from proportionality"), "period_change": Port("period", "scalar", "change of the period over the amplitudes used")},
         sentence="Changing the torque by a factor {factor} over {levels} levels moved the period by {period_change}; the amplitude departs from proportionality by {departure_percent} per cent of the largest.",
         spread="refit", weights=("amplitude", "period"),
-        effects={"amplitude dependence": "Linearity was tested by a drive sweep; nothing was corrected for it."},
+        considered={"amplitude dependence": "Linearity was tested by a drive sweep; nothing was corrected for it."},
     ),
     Step(
         name="resonance-fit", version=1, function=oscillator_steps.resonance_fit, parameters=oscillator_steps.ResonanceParameters,
@@ -331,6 +333,8 @@ STEPS: tuple[Step, ...] = (
     *calibration_steps.CALIBRATION_STEPS,
     *heat_capacity_steps.HEAT_CAPACITY_STEPS,
     *pulse_steps.PULSE_STEPS,
+    *ringdown_steps.RINGDOWN_STEPS,
+    *linear_regime_steps.LINEAR_REGIME_STEPS,
     *tracking_steps.TRACKING_STEPS,
 )  # fmt: skip
 

@@ -261,7 +261,11 @@ def fraction_from_line(
         fraction * TABLE_FRACTION / reference if reference < 1 else np.zeros(fraction.shape),
         fraction * elsewhere * 2 * TABLE_SPEED / math.sqrt(3),
     )
-    shared = {source.name: part for source, part in zip(sources, parts, strict=True) if np.any(part > 0)}
+    shared = {
+        source.name: np.where(rows, part, 0.0)
+        for source, part in zip(sources, parts, strict=True)
+        if np.any(part > 0)
+    }
     away = np.abs(fraction - table)
     return Outcome(
         {"fraction": fraction, "tabulated": np.asarray(table, dtype=np.float64), "difference": fraction - table},

@@ -209,7 +209,7 @@ def _records(held: Holdings) -> Iterator[dict[str, Any]]:
 
 
 def effect_states(held: Holdings, first: Container[str] = ()) -> Iterator[dict[str, Any]]:
-    """Yield every known effect with its one state: applied by a step, else what the sheet says, else not examined.
+    """Yield every known effect with its one state: applied by a step, else what the sheet says, else considered by a step, else not examined.
 
     Parameters
     ----------
@@ -218,10 +218,14 @@ def effect_states(held: Holdings, first: Container[str] = ()) -> Iterator[dict[s
         Addresses of the reductions whose steps are named before those of others.
     """
     treated: dict[str, tuple[str, str]] = {}
+    considered: dict[str, tuple[str, str]] = {}
     for reduction in sorted(held.view.current, key=lambda each: each.address not in first):
         for step in reduction.steps:
+            where = f"{reduction.address}, step {step.number}"
             for effect, sentence in step.effects.items():
-                treated.setdefault(effect, (sentence, f"{reduction.address}, step {step.number}"))
+                treated.setdefault(effect, (sentence, where))
+            for effect, sentence in step.considered.items():
+                considered.setdefault(effect, (sentence, where))
     said: dict[str, Effect] = {each.effect: each for each in held.sheet.effect}
     for effect in EFFECTS:
         found = said.get(effect)
@@ -236,6 +240,9 @@ def effect_states(held: Holdings, first: Container[str] = ()) -> Iterator[dict[s
                 "text": prose(found.reason),
                 "by": "sheet",
             }
+        elif effect in considered:
+            sentence, where = considered[effect]
+            yield {"effect": effect, "state": "considered", "bound": "", "text": prose(sentence), "by": where}
         else:
             yield {
                 "effect": effect,
