@@ -13,6 +13,7 @@ from archive.commands.failures import EXIT_WARNINGS
 from archive.commands.machine import plain, write_json
 from archive.commands.opening import archive_option, json_option, require_address, strict_option
 from archive.commands.terminal import Progress, clean, draw, say
+from archive.commands.uncertainty_tables import say_budget, say_monte_carlo
 from archive.errors import EXIT_BAD_INPUT, EXIT_DAMAGE, ArchiveError, BadRequest
 
 if TYPE_CHECKING:
@@ -45,8 +46,15 @@ def show(*, address: str, archive_dir: Path | None, as_json: bool) -> None:
         content = lab.show(address)
     if as_json:
         write_json(content)
-    else:
-        describe(content)
+        return
+    run = content.pop("monte_carlo", None)
+    rows = content.pop("budget", None)
+    describe({**content, "sources": None, "shared": None} if rows else content)
+    if rows:
+        say_budget({**content, "budget": rows})
+    if run is not None:
+        entries = content["outputs"] if content["what"] == "reduction" else [content]
+        say_monte_carlo(run, {each["name"]: each for each in entries})
 
 
 @click.command(short_help="Trace a number down to raw bytes, or what rests on it.")
@@ -188,7 +196,10 @@ def _say_replays(
     for report in told:
         if report.identical:
             if not everything:
-                say(f"All {report.outputs} outputs of {report.address} are bit for bit what was sealed.")
+                drawn = ", and so is its Monte Carlo run" if report.monte_carlo_identical else ""
+                say(
+                    f"All {report.outputs} outputs of {report.address} are bit for bit what was sealed{drawn}."
+                )
             continue
         say(f"Of {report.outputs} outputs of {report.address}, these differ from what was sealed:")
         beyond = report.moved(fraction)
@@ -196,6 +207,8 @@ def _say_replays(
             mark = f"  more than {fraction:g} of it" if name in beyond else ""
             far = _how_far(report.largest_difference.get(name), report.shifts.get(name))
             say(f"  {name}{far}{mark}")
+        if report.monte_carlo_identical is False:
+            say("  the Monte Carlo run did not find the same")
         if report.changed_inputs:
             say(f"  inputs that are not as they were: {', '.join(report.changed_inputs)}")
         for name, (before, now) in report.changed_software.items():

@@ -6,6 +6,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import click
+from click.core import ParameterSource
 
 from archive.commands import opening
 from archive.commands.failures import EXIT_WARNINGS
@@ -13,10 +14,12 @@ from archive.commands.machine import quantity, write_json
 from archive.commands.numbers import readable
 from archive.commands.opening import archive_option, json_option, strict_option
 from archive.commands.terminal import Progress, note, say, table
-from archive.errors import UnknownAddress
+from archive.commands.uncertainty_tables import say_monte_carlo
+from archive.errors import BadRequest, UnknownAddress
 
 if TYPE_CHECKING:
     from archive.lab import ReduceOutcome
+    from archive.reduction.monte_carlo import Request
     from schemas.lineage import OutputEntry
     from schemas.plan import Plan
 
@@ -116,6 +119,27 @@ def _show_plan(plan: Plan) -> None:
     "--plan", metavar="PLAN", help="Name of a plan, or a plan file (.toml); else every plan that applies."
 )
 @click.option("--sweep", metavar="SWEEP", help="Name of one sweep; else all.")
+@click.option(
+    "--monte-carlo",
+    "trials",
+    metavar="N|adaptive",
+    help="Repeat each plan N times with drawn inputs (JCGM 101), or as often as it needs; sealed with the reduction.",
+)
+@click.option("--seed", type=int, default=1, show_default=True, help="Of the drawn numbers.")
+@click.option(
+    "--digits",
+    type=click.IntRange(1, 2),
+    default=1,
+    show_default=True,
+    help="Digits of the uncertainty that first order is held to.",
+)
+@click.option(
+    "--workers",
+    type=click.IntRange(1, 1024),
+    default=1,
+    show_default=True,
+    help="Processes for the trials; the numbers do not depend on it.",
+)
 @archive_option
 @json_option
 @strict_option
@@ -124,6 +148,10 @@ def reduce(
     cooldown: str,
     plan: str | None,
     sweep: str | None,
+    trials: str | None,
+    seed: int,
+    digits: int,
+    workers: int,
     archive_dir: Path | None,
     as_json: bool,
     strict: bool,
@@ -138,13 +166,24 @@ def reduce(
       stillroom reduce 2026-03
       stillroom reduce 2026-03/s017 --plan film-transition
       stillroom reduce 2026-03 --plan our-film.toml
+      stillroom reduce 2026-03/s017 --plan film-transition --monte-carlo 20000 --workers 4
+
+    A reduction by Monte Carlo is a new one unless the newest has the same trials, seed and digits already. Anybody may read
+    and write the archive while trials run.
 
     Exit codes: 1 findings of warning level, with --strict; 2 if a plan could not be carried out (the others were).
     """
     name, _, part = cooldown.partition("/")
     chosen: str | Path | None = Path(plan) if plan is not None and plan.endswith(".toml") else plan
+    request = _request(trials, seed=seed, digits=digits, workers=workers)
     with opening.open_archive(archive_dir) as lab, Progress("reducing") as progress:
-        outcomes = lab.reduce(name, plan=chosen, sweep=sweep or part or None, progress=progress.sentence)
+        outcomes = lab.reduce(
+            name,
+            plan=chosen,
+            sweep=sweep or part or None,
+            monte_carlo=request,
+            progress=progress.sentence,
+        )
     if as_json:
         write_json([_content(outcome) for outcome in outcomes])
     else:
@@ -163,6 +202,29 @@ def reduce(
         context.exit(EXIT_WARNINGS)
 
 
+def _request(trials: str | None, *, seed: int, digits: int, workers: int) -> Request | None:
+    """Return what is asked for with --monte-carlo; nothing if it is not."""
+    from archive.reduction.monte_carlo import Request
+
+    if trials is None:
+        given = [
+            f"--{name}"
+            for name in ("seed", "digits", "workers")
+            if click.get_current_context().get_parameter_source(name) is ParameterSource.COMMANDLINE
+        ]
+        if given:
+            raise BadRequest(
+                f"{' and '.join(given)} mean nothing without --monte-carlo",
+                remedy="add --monte-carlo with a number of trials, or adaptive",
+            )
+        return None
+    if trials != "adaptive" and not (trials.isascii() and trials.isdigit()):
+        raise BadRequest(
+            "--monte-carlo takes a number of trials, or adaptive", found=trials, expected="such as 20000"
+        )
+    return Request(None if trials == "adaptive" else int(trials), seed=seed, digits=digits, workers=workers)
+
+
 def say_outcomes(outcomes: list[ReduceOutcome]) -> None:
     """Write what was reduced, and why something was not."""
     made = [outcome for outcome in outcomes if outcome.document is not None]
@@ -173,6 +235,14 @@ def say_outcomes(outcomes: list[ReduceOutcome]) -> None:
             (outcome.address or "", tuple(_shown(entry) for entry in headline(outcome))) for outcome in made
         ]
         table(("reduction", "results"), rows)
+    for outcome in made:
+        if outcome.document is not None and outcome.document.monte_carlo is not None:
+            say()
+            say(f"{outcome.address}")
+            say_monte_carlo(
+                outcome.document.monte_carlo.model_dump(mode="json"),
+                {entry.name: entry.model_dump(mode="json") for entry in outcome.document.outputs},
+            )
     for outcome in outcomes:
         if outcome.problem is not None:
             note(f"not reduced: {outcome.sweep} by {outcome.plan}: {outcome.problem}")
@@ -210,6 +280,8 @@ def _content(outcome: ReduceOutcome) -> dict[str, Any]:
             if entry.rows is None
         }
         content["findings"] = outcome.document.findings
+        if outcome.document.monte_carlo is not None:
+            content["monte_carlo"] = outcome.document.monte_carlo
     if outcome.problem is not None:
         content["problem"] = {"code": outcome.problem.code, "what": str(outcome.problem)}
     return content

@@ -94,6 +94,8 @@ class ReplayReport:
         Per scalar that differs, the change in units of its standard uncertainty.
     changed_inputs, changed_software
         What is not as it was when the reduction was made.
+    monte_carlo_identical : bool or None
+        The Monte Carlo run drew the same numbers and found the same; None if the reduction has none.
     """
 
     address: str
@@ -103,6 +105,7 @@ class ReplayReport:
     shifts: dict[str, float] = field(default_factory=dict)
     changed_inputs: tuple[str, ...] = ()
     changed_software: dict[str, tuple[str, str]] = field(default_factory=dict)
+    monte_carlo_identical: bool | None = None
 
     def moved(self, fraction: float) -> dict[str, float]:
         """Results that moved by more than a fraction of their standard uncertainty, or are lost: name to shift in that unit.

@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 import json
+from dataclasses import asdict
 from typing import Any
 
 from archive.errors import UnknownAddress
 from archive.lab.source import LabSource, key_of
+from archive.reduction.budget import budget
 from archive.reduction.planning import shipped_plans
 from schemas.address import Address, parse_address
 from schemas.base import Record
@@ -161,7 +163,23 @@ def _output(source: LabSource, address: Address) -> dict[str, Any]:
         **_plain(output),
         "sentence": step.sentence,
         "sources": [_plain(entry) for entry in document.sources if entry.name in output.shared],
+        **_uncertainty(document, output),
     }
+
+
+def _uncertainty(document: ReductionDocument, output: OutputEntry) -> dict[str, Any]:
+    """Budget of a result, and what a Monte Carlo run found of it."""
+    content: dict[str, Any] = {}
+    rows = budget(document, output)
+    if rows:
+        content["budget"] = [
+            {**asdict(row), "stated": None if row.stated is None else _plain(row.stated)} for row in rows
+        ]
+    run = document.monte_carlo
+    found = None if run is None else next((each for each in run.results if each.name == output.name), None)
+    if run is not None and found is not None:
+        content["monte_carlo"] = {**_plain(run), "results": [_plain(found)]}
+    return content
 
 
 def _named(document: ReductionDocument, address: Address) -> OutputEntry:

@@ -15,8 +15,8 @@ from archive.errors import BadRequest
 from archive.reduction.estimate import Estimate, FloatArray
 from archive.reduction.facts import SweepFacts
 from archive.reduction.source import Source
-from schemas.lineage import SourceEntry
-from schemas.quantity import Quantity, unit_factor
+from schemas.lineage import SourceEntry, Value
+from schemas.quantity import Quantity, canonical, unit_factor
 from schemas.sweep import Channel
 
 __all__ = ["CONVERTED", "channel_estimate", "channel_meant", "rms_factor", "rms_value"]
@@ -131,9 +131,16 @@ def channel_estimate(
         return Estimate(value, channel.quantity, point=part, scale=channel.scale), ()
     entry = SourceEntry(
         name=f"uncertainty of {place}", description=f"stated uncertainty of channel {name}, common to all rows", level="run",
-        address=place,
+        address=place, stated=_common(part, channel.quantity),
     )  # fmt: skip
     return Estimate(value, channel.quantity, shared={entry.name: part}, scale=channel.scale), (entry,)
+
+
+def _common(part: FloatArray, kind: str) -> Value | None:
+    """Return an uncertainty that is the same for all rows; None where it grows with the value."""
+    if np.ptp(part) > 0:
+        return None
+    return Value(value=None, uncertainty=float(part[0]), unit=canonical(kind))
 
 
 def rms_factor(facts: SweepFacts, channel: Channel) -> float:

@@ -25,7 +25,7 @@ from archive.reduction.row_choice import row_indices
 from archive.reduction.step import Covariance, NoParameters, Outcome, Port, Step
 from schemas.base import Record
 from schemas.finding import Finding
-from schemas.lineage import SourceEntry
+from schemas.lineage import SourceEntry, Value
 from schemas.substrate import Substrate
 
 __all__ = ["DYNAMIC_STEPS", "FilmDynamicParameters", "film_dynamic_fit", "transition_difference"]
@@ -281,8 +281,9 @@ def _held_vortices(
     )  # fmt: skip
     name = f"F = {parameters.free_vortices:g} of the dynamic theory, held"
     entry = SourceEntry(
-        name=name, description=f"standard uncertainty {u:g} of the held parameter", level="laboratory"
-    )
+        name=name, description=f"standard uncertainty {u:g} of the held parameter", level="laboratory",
+        stated=Value(value=parameters.free_vortices, uncertainty=u, unit="1"),
+    )  # fmt: skip
     return {key: {name: (float(up[key]) - float(down[key])) / 2} for key in up if key != "F"}, (entry,)
 
 

@@ -16,7 +16,7 @@ from archive.physics.helium_gas import molar_density
 from archive.reduction.estimate import Estimate
 from archive.reduction.facts import GasBook
 from schemas.gas import Dose, Doser, Gauge
-from schemas.lineage import SourceEntry
+from schemas.lineage import SourceEntry, Value
 from schemas.quantity import Quantity
 from schemas.substrate import Sample
 
@@ -58,6 +58,8 @@ class _Terms:
         self.values[term] = quantity.si
         u = spread if spread is not None else quantity.si_uncertainty
         if u:
+            stated = Value(value=quantity.si, uncertainty=u, unit=quantity.si_unit, scale=quantity.scale)
+            source = source.model_copy(update={"stated": stated})
             self.sources.setdefault(source.name, (source, {}))[1][term] = u
 
 
@@ -218,6 +220,7 @@ def _terms_of(book: GasBook, dose: Dose) -> _Terms:
                 name=f"gain of gauge {gauge.name} in {book.cooldown}",
                 description=f"relative standard uncertainty {gauge.relative_uncertainty:.3g}",
                 level="run",
+                stated=Value(value=1.0, uncertainty=gauge.relative_uncertainty, unit="1"),
             )
             terms.sources[entry.name] = (entry, {"gain": gauge.relative_uncertainty})
     return terms

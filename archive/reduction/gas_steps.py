@@ -16,7 +16,7 @@ from archive.reduction.gas_amounts import METHOD, DoseAmount, dose_amounts, heli
 from archive.reduction.step import NoParameters, Outcome
 from schemas.base import Record
 from schemas.finding import Finding
-from schemas.lineage import SourceEntry
+from schemas.lineage import SourceEntry, Value
 from schemas.quantity import Quantity
 from schemas.substrate import Sample, Substrate
 
@@ -211,6 +211,11 @@ def vapour_in_dead_volume(
                 name=f"dead volume {each.name}, {each.volume.format()}",
                 description="stated dead volume",
                 level="cell",
+                stated=Value(
+                    value=each.volume.si,
+                    uncertainty=each.volume.si_uncertainty,
+                    unit=each.volume.si_unit,
+                ),
             )
             sources.append(entry)
             shared[entry.name] = np.where(np.isnan(held), 0.0, held) * (
@@ -222,6 +227,7 @@ def vapour_in_dead_volume(
             name=f"vapour between none and saturation in {gas.cooldown}",
             description="no pressure was measured",
             level="run",
+            distribution="rectangular",
         )
         shared = {name: part / 2 for name, part in shared.items()} | {
             entry.name: np.where(np.isnan(total), 0.0, total) / math.sqrt(12)

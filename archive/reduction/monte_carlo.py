@@ -100,11 +100,13 @@ def monte_carlo(outcome: ReductionOutcome, request: Request, *, progress: Progre
     Raises
     ------
     BadRequest
-        The reduction has no scalar result with an uncertainty, or several processes are asked for and a step cannot be sent
+        The reduction has no scalar result, or several processes are asked for and a step cannot be sent
         to them.
 
     Notes
     -----
+    A result that no draw moves is exact and left out; one without a first-order uncertainty has no verdict.
+
     Sources are drawn from the distribution that their records state, normal where none is stated. Choices that steps hold
     are not made again. What a step states of its own, apart from the noise of its rows, is drawn as it is stated: to first
     order inside the step. Drawn noise comes on top of the noise that the data have already, so results that measure scatter
@@ -113,12 +115,12 @@ def monte_carlo(outcome: ReductionOutcome, request: Request, *, progress: Progre
     entries = [
         each
         for each in outcome.document.outputs
-        if each.rows is None and each.verdict is None and each.value is not None and each.uncertainty
+        if each.rows is None and each.verdict is None and each.value is not None
     ]
     if not entries:
         raise BadRequest(
-            f"{outcome.document.address} has no scalar result with an uncertainty to hold against drawn ones",
-            remedy="state uncertainties of its channels in the sheet, or leave out the Monte Carlo run",
+            f"{outcome.document.address} has no result that is one number, to draw again",
+            remedy="leave out the Monte Carlo run",
         )
     first = BLOCK if request.trials is None else request.trials
     drawing, beyond = _drawing(
@@ -130,12 +132,13 @@ def monte_carlo(outcome: ReductionOutcome, request: Request, *, progress: Progre
             if request.trials
             else _adaptive(run, entries, request.digits, progress)
         )
+    told = [_result(entry, values[:, k], request.digits) for k, entry in enumerate(entries)]
     counts = Counter(label for label, _ in failed)
     reasons = dict(reversed(failed))
     return MonteCarlo(
         trials=values.shape[0], seed=request.seed, generator=GENERATOR, adaptive=request.trials is None, probability=PROBABILITY,
         digits=request.digits, failed=len(failed), failures=dict(sorted(counts.items())), reasons=dict(sorted(reasons.items())),
-        beyond_noise=beyond, results=tuple(_result(entry, values[:, k], request.digits) for k, entry in enumerate(entries)),
+        beyond_noise=beyond, results=tuple(found for found in told if found.uncertainty != 0),
     )  # fmt: skip
 
 
@@ -252,10 +255,12 @@ def _adaptive(
         told.append([_sequence(values[:, k]) for k in range(len(entries))])
         if len(rows) > 1:
             spread = np.std(np.array(told), axis=0, ddof=1) / np.sqrt(len(rows))
+            # Without a first order there is nothing to hold it to, and a result that is lost in most trials can never be
+            # known; neither keeps the others waiting.
             allowed = [
-                numerical_tolerance(float(entry.uncertainty or 0.0), digits=digits) for entry in entries
+                numerical_tolerance(entry.uncertainty, digits=digits) if entry.uncertainty else np.inf
+                for entry in entries
             ]
-            # A result that is lost in most trials can never be known; it must not keep the others waiting.
             if all(
                 np.isnan(s).any() or 2 * float(s.max()) < delta
                 for s, delta in zip(spread, allowed, strict=True)
@@ -285,9 +290,13 @@ def _result(entry: OutputEntry, values: FloatArray, digits: int) -> MonteCarloRe
         shortest = shortest_interval(finite, probability=PROBABILITY)
     except ValueError:
         return MonteCarloResult(name=entry.name, values=int(finite.size), mean=mean, uncertainty=spread)
+    drawn = MonteCarloResult(
+        name=entry.name, values=int(finite.size), mean=mean, uncertainty=spread, symmetric=symmetric, shortest=shortest
+    )  # fmt: skip
+    if not entry.uncertainty or entry.value is None:
+        return drawn
     held = comparison(
-        finite, symmetric, value=float(entry.value or 0.0), standard_uncertainty=float(entry.uncertainty or 0.0), digits=digits,
-        probability=PROBABILITY,
+        finite, symmetric, value=entry.value, standard_uncertainty=entry.uncertainty, digits=digits, probability=PROBABILITY
     )  # fmt: skip
     return MonteCarloResult(
         name=entry.name, values=int(finite.size), mean=mean, uncertainty=spread, symmetric=symmetric, shortest=shortest,

@@ -20,7 +20,7 @@ from archive.reduction.sheet_values import quantity_estimate
 from archive.reduction.source import Source
 from archive.reduction.sweep_steps import CorrectionParameters, LeaveOutParameters
 from schemas.base import Record
-from schemas.lineage import SourceEntry
+from schemas.lineage import SourceEntry, Value
 from schemas.quantity import Quantity
 from schemas.sweep import Channel, Correction, LeftOut
 
@@ -154,6 +154,7 @@ def _gauge_zero(facts: SweepFacts, channel: Channel) -> list[Preliminary]:
             description=f"relative standard uncertainty {gauge.relative_uncertainty:.3g}",
             level="run",
             address=f"{facts.cooldown} gauge {gauge.name}",
+            stated=Value(value=1.0, uncertainty=gauge.relative_uncertainty, unit="1"),
         )
         # The doses multiply by the gain of this name and a correction divides by it: a gauge that reads low makes both larger.
         estimate = Estimate(np.asarray(1.0), "number", shared={name: np.asarray(-gauge.relative_uncertainty)})

@@ -14,7 +14,7 @@ from archive.reduction.channels import rms_value
 from archive.reduction.estimate import Estimate
 from archive.reduction.facts import SweepFacts
 from schemas.lineage import SourceEntry, Value
-from schemas.quantity import Quantity, unit_factor
+from schemas.quantity import Quantity, canonical, unit_factor
 
 __all__ = ["SheetValue", "quantity_estimate", "sheet_value"]
 
@@ -44,7 +44,10 @@ def quantity_estimate(
     spread = (quantity.si_uncertainty or 0.0) * rms
     if spread == 0:
         return Estimate(value, quantity.kind, scale=quantity.scale), ()
-    entry = SourceEntry(name=name, description=f"stated: {quantity.format()}", level=level, address=address)
+    stated = Value(value=float(value), uncertainty=spread, unit=quantity.si_unit, scale=quantity.scale)
+    entry = SourceEntry(
+        name=name, description=f"stated: {quantity.format()}", level=level, address=address, stated=stated
+    )
     return Estimate(value, quantity.kind, shared={name: np.asarray(spread)}, scale=quantity.scale), (entry,)
 
 
@@ -105,7 +108,11 @@ def _accession_value(facts: SweepFacts, head: str) -> SheetValue:
     if spread:
         sources = (
             SourceEntry(
-                name=name, description=f"{head} during the sweep", level="run", address=facts.address
+                name=name,
+                description=f"{head} during the sweep",
+                level="run",
+                address=facts.address,
+                stated=Value(value=stated.value * factor, uncertainty=spread, unit=canonical(head)),
             ),
         )
     return (

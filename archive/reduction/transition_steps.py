@@ -18,7 +18,7 @@ from archive.reduction.estimate import FloatArray
 from archive.reduction.step import Outcome
 from schemas.base import Record
 from schemas.finding import Finding
-from schemas.lineage import SourceEntry
+from schemas.lineage import SourceEntry, Value
 
 __all__ = ["DynamicParameters", "static_transition", "transition_from_peak", "universal_ratio"]
 
@@ -97,6 +97,11 @@ def _theory(
                     name=name,
                     description=f"standard uncertainty {u:g} of the held parameter",
                     level="laboratory",
+                    stated=Value(
+                        value=parameters.log_diffusivity if key == "L" else values[key],
+                        uncertainty=u,
+                        unit="1",
+                    ),
                 )
             )
     return float(function(**values)), parts, tuple(entries), values

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
-from archive.reports.budget import largest_share, percent
+from archive.reports.budget import largest_share, monte_carlo_sentence, percent
 from archive.reports.checklist import Item, Said, absence, sentence
 from archive.reports.items_gas import step_sentences
 from archive.reports.moments import full_time
@@ -117,13 +117,16 @@ def _budget(scope: Scope) -> Iterator[Said]:
     for reduction in scope.reductions:
         outputs = {each.name: each for each in reduction.outputs if each.rows is None}
         for name in reduction.plan.headline if reduction.address in scope.asked else ():
-            share = largest_share(outputs[name]) if name in outputs else None
+            share = largest_share(reduction, outputs[name]) if name in outputs else None
             if share is not None:
                 term, part = share
                 yield sentence(
                     f"Of the variance of {name} of {reduction.address} the largest share, {percent(part)} per cent, is {term}.",
                     f"{reduction.address}#{name}",
                 )
+                drawn = monte_carlo_sentence(reduction, outputs[name])
+                if drawn:
+                    yield sentence(f"{name} of {reduction.address} by {drawn}", f"{reduction.address}#{name}")
 
 
 def _repeat(scope: Scope) -> Iterator[Said]:
