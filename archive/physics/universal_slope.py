@@ -37,7 +37,7 @@ class Proportion:
     residuals : ndarray
         ``y - slope x`` over the standard uncertainty that the residual has, common sources and all.
     weights : ndarray
-        The slope is ``weights @ y``.
+        The slope is ``weights @ y``, and ``weights @ x`` is one.
     """
 
     slope: float
@@ -55,7 +55,6 @@ def proportion(
     *,
     contributions_x: npt.ArrayLike,
     contributions_y: npt.ArrayLike,
-    slope: float | None = None,
 ) -> Proportion:
     """Return the best factor between two columns that are proportional to each other.
 
@@ -66,8 +65,6 @@ def proportion(
     contributions_x, contributions_y : array_like, shape (sources, n)
         Signed standard uncertainty that each source brings to each abscissa and ordinate; one row may touch a single point (an
         error of its own) or all of them (a common one), and both coordinates at once.
-    slope : float, optional
-        Slope with which the covariance of the residuals is formed; found by iteration without it.
 
     Raises
     ------
@@ -98,12 +95,12 @@ def proportion(
         raise ValueError(
             f"contributions_x, contributions_y: found {parts[0].shape[0]} and {parts[1].shape[0]} sources, expected as many in both"
         )
-    beta = float(np.median(Y / X)) if slope is None else slope
+    beta = float(np.median(Y / X))
     for _ in range(_ROUNDS):
         covariance = _covariance(X, Y, parts, beta)
         weights = _weights(X, covariance)
         found = float(weights @ Y)
-        if slope is not None or abs(found / beta - 1) < 1e-12:
+        if abs(found / beta - 1) < 1e-12:
             break
         beta = found
     residual = Y - found * X

@@ -8,7 +8,7 @@ import numpy as np
 
 from archive.physics.arrays import BoolArray
 from archive.physics.film_static import UNIVERSAL_JUMP
-from archive.physics.universal_slope import proportion
+from archive.physics.universal_slope import Proportion, proportion
 from archive.reduction.background_steps import known_rows
 from archive.reduction.estimate import Estimate, FloatArray
 from archive.reduction.step import NoParameters, Outcome, Port, Step
@@ -22,12 +22,11 @@ UNLIKELY = 0.01
 
 
 class LineParameters(Record):
-    """How the line is weighed."""
+    """How the films are weighed."""
 
-    weighed_with: float | None = None
-    """Ratio of the slope to the universal one with which the residuals' covariance is formed; found by iteration when none."""
-    test: tuple[float, float] | None = None
-    """Chi squared and its chance; held while inputs are shifted, for a statistic of the readings has no uncertainty of its own."""
+    fitted: tuple[tuple[float, ...], ...] | None = None
+    """Weights, residuals, and chi squared with its chance, in place of what the films give: held while inputs are shifted, for a
+    statistic of the readings has no uncertainty of its own."""
 
 
 def density_of_fit(_: NoParameters, *, scale_ratio: FloatArray, transition: FloatArray) -> Outcome:
@@ -75,36 +74,46 @@ def universal_line(
         raise ValueError(
             "transition, density: no film has both a transition temperature and an areal density there"
         )
-    names = sorted({*transition_estimate.shared, *density_estimate.shared})
-    own = [np.diag(each.points[rows]) for each in (transition_estimate, density_estimate)]
-    nothing = np.zeros(own[0].shape)
-    held = None if parameters.weighed_with is None else parameters.weighed_with * UNIVERSAL_JUMP
-    found = proportion(
-        transition[rows], density[rows],
-        contributions_x=np.vstack([_shared(transition_estimate, names, rows), own[0], nothing]),
-        contributions_y=np.vstack([_shared(density_estimate, names, rows), nothing, own[1]]), slope=held,
-    )  # fmt: skip
+    x, y = transition[rows], density[rows]
+    lone, fitted = 0.0, parameters.fitted
+    if fitted is None:
+        found, own = _line(x, y, transition_estimate, density_estimate, rows)
+        fitted = (tuple(found.weights), tuple(found.residuals), (found.chi2, found.probability))
+        # Points that no source shares, if a laboratory's own step brings some; those of results are all named.
+        lone = float(np.hypot.reduce([*(found.weights * own[1]), *(found.slope * found.weights * own[0])]))
+    weights, (chi2, chance) = np.array(fitted[0]), fitted[2]
+    slope = float(weights @ y) / float(weights @ x)
     residual = np.full(transition.shape, math.nan)
-    residual[rows] = found.residuals
-    ratio = found.slope / UNIVERSAL_JUMP
-    # Points that no source shares, if a laboratory's own step brings some; those of results are all named.
-    lone = float(np.hypot.reduce([*(found.weights * own[1].diagonal()), *(found.slope * found.weights * own[0].diagonal())]))  # fmt: skip
-    count = int(np.count_nonzero(rows))
-    chi2, chance = parameters.test or (found.chi2, found.probability)
+    residual[rows] = fitted[1]
+    ratio = slope / UNIVERSAL_JUMP
+    count = int(x.size)
     return Outcome(
         {
             "ratio": ratio, "chi2": chi2, "probability": chance, "films": float(count),
-            "line_density": found.slope * np.where(rows, transition, math.nan), "residual": residual,
+            "line_density": slope * np.where(rows, transition, math.nan), "residual": residual,
         },
-        point={"ratio": lone / UNIVERSAL_JUMP},
-        held={"weighed_with": parameters.weighed_with or ratio, "test": (chi2, chance)},
+        point={"ratio": lone / UNIVERSAL_JUMP}, held={"fitted": fitted},
         verdicts={} if count > 1 else dict.fromkeys(("chi2", "probability"), "one film"),
         facts={
-            "count": count, "of": int(transition.size), "slope_kg_m2_K": found.slope, "dof": found.dof,
-            "low_K": float(transition[rows].min()), "high_K": float(transition[rows].max()), "chi2_is": chi2, "chance": chance,
+            "count": count, "of": int(transition.size), "slope_kg_m2_K": slope, "dof": count - 1,
+            "low_K": float(x.min()), "high_K": float(x.max()), "chi2_is": chi2, "chance": chance,
         },
         findings=_findings(count, chance),
     )  # fmt: skip
+
+
+def _line(
+    x: FloatArray, y: FloatArray, transition: Estimate, density: Estimate, rows: BoolArray
+) -> tuple[Proportion, list[FloatArray]]:
+    """Return the line, and the points' own uncertainty of either coordinate."""
+    names = sorted({*transition.shared, *density.shared})
+    own = [each.points[rows] for each in (transition, density)]
+    nothing = np.zeros((x.size, x.size))
+    found = proportion(
+        x, y, contributions_x=np.vstack([_shared(transition, names, rows), np.diag(own[0]), nothing]),
+        contributions_y=np.vstack([_shared(density, names, rows), nothing, np.diag(own[1])]),
+    )  # fmt: skip
+    return found, own
 
 
 def _shared(estimate: Estimate, names: list[str], rows: BoolArray) -> FloatArray:
