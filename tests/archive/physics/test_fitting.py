@@ -248,3 +248,115 @@ def test_no_degrees_of_freedom_give_no_uncertainty():
 def test_model_of_wrong_shape():
     with pytest.raises(ValueError, match="2 dimensions"):
         fit_residuals(lambda p: np.ones((3, 1)) * p[0], [Parameter("a", 1.0)], absolute=False)
+
+
+def rational(x, b):
+    numerator = b[0] + b[1] * x + b[2] * x**2 + b[3] * x**3
+    return numerator / (1 + b[4] * x + b[5] * x**2 + b[6] * x**3)
+
+
+HARD = {
+    # Curve, abscissae, parameters and scatter that the data are drawn with, and a start from which a single search is lost.
+    "level": (
+        lambda x, b: b[0] * (1 - np.exp(-b[1] * x)), np.array([1, 2, 3, 5, 7, 10.0]), (214, 0.55), 12.0, (1, 1),
+    ),
+    "ratio": (
+        lambda x, b: b[0] * (x**2 + x * b[1]) / (x**2 + x * b[2] + b[3]), np.array([4, 2, 1, 0.5, 0.25, 1 / 6, 0.125, 0.1, 1 / 12, 1 / 14, 1 / 16]),
+        (0.193, 0.191, 0.123, 0.136), 2e-3, (25, 39, 41.5, 39),
+    ),
+    "line": (
+        lambda x, b: b[0] / b[1] * np.exp(-0.5 * ((x - b[2]) / b[1]) ** 2), np.linspace(400, 500, 41), (1.55, 4.1, 451.5), 5e-3, (1, 10, 500),
+    ),
+    "growth": (
+        lambda x, b: b[0] / (1 + np.exp(b[1] - b[2] * x)) ** (1 / b[3]), np.arange(1, 16.0), (700, 5.3, 0.76, 1.28), 15.0, (100, 10, 1, 1),
+    ),
+    "cubics": (
+        rational, np.linspace(-3, 2.2, 37), (1288, 1491, 583, 75.4, 0.966, 0.398, 0.0497), 8.0, (1000, 1000, 400, 40, 0.7, 0.3, 0.03),
+    ),
+    "cubics of small numbers": (
+        rational, np.linspace(14, 850, 236), (1.08, -0.123, 4.09e-3, -1.43e-6, -5.76e-3, 2.41e-4, -1.23e-7), 0.08, (10, -1, 0.05, -1e-5, -0.05, 1e-3, -1e-6),
+    ),
+    "three decays": (
+        lanczos, np.arange(24) * 0.05, (0.0951, 1, 0.8607, 3, 1.5576, 5), 1e-13, (1.2, 0.3, 5.6, 5.5, 6.5, 7.6),
+    ),
+}  # fmt: skip
+
+
+@pytest.mark.parametrize("name", sorted(HARD))
+def test_hard_curves_from_far_starts(name):
+    """The same end from afar as from the parameters that the data were drawn with; never another one in silence."""
+    model, x, truth, scatter, far = HARD[name]
+    y = model(x, np.array(truth, dtype=float)) + np.random.default_rng(3).normal(0, scatter, x.size)
+    near, found = (
+        fit(model, [Parameter(f"b{i}", value) for i, value in enumerate(start)], x, y, absolute=False)
+        for start in (truth, far)
+    )
+    assert near.converged
+    assert found.converged, found.message
+    np.testing.assert_allclose(found.values, near.values, rtol=1e-5)
+    assert found.chi2 == pytest.approx(near.chi2, rel=1e-6)
+
+
+def test_a_new_start_is_told():
+    model, x, truth, scatter, far = HARD["level"]
+    y = model(x, truth) + np.random.default_rng(3).normal(0, scatter, x.size)
+    found = fit(model, [Parameter("level", far[0]), Parameter("rate", far[1])], x, y, absolute=False)
+    assert "from new start" in found.message
+
+
+def test_a_side_valley_is_left():
+    """A peak fitted beside the only line converges, and explains nothing; a start nearby explains all."""
+    x = np.linspace(400.0, 500.0, 101)
+    rng = np.random.default_rng(9)
+    y = np.exp(-0.5 * ((x - 451.5) / 4) ** 2) + rng.normal(0, 0.02, x.size)
+    start = [Parameter("height", 0.1), Parameter("centre", 493.0), Parameter("width", 8.0)]
+    found = fit(lambda x, p: p[0] * np.exp(-0.5 * ((x - p[1]) / p[2]) ** 2), start, x, y, absolute=False)
+    assert found.value("centre") == pytest.approx(451.5, abs=1.0)
+
+
+def test_signs_of_the_start_are_kept_where_they_cancel():
+    x = np.linspace(0.0, 2.0, 21)
+    y = 3 * np.cos(2 * x) + np.random.default_rng(1).normal(0, 0.01, x.size)
+    found = [
+        fit(
+            lambda x, p: p[0] * p[2] * np.cos(p[1] * x) + 0 * p[2] + (p[2] ** 2 - 1),
+            [Parameter("height", 1.0), Parameter("rate", rate), Parameter("side", 1.0)],
+            x,
+            y,
+            absolute=False,
+        ).value("rate")
+        for rate in (0.2, -0.2)
+    ]
+    assert found == pytest.approx([2.0, -2.0], abs=0.02)
+
+
+def test_given_derivatives_are_used():
+    """The same end in fewer calls; the derivatives are those of the residuals."""
+    x = np.linspace(0.0, 4.0, 30)
+    y = 3 * np.exp(-0.5 * x) + np.random.default_rng(1).normal(0, 0.01, x.size)
+    start = [Parameter("height", 1.0), Parameter("rate", 1.0)]
+
+    def residuals(p):
+        return y - p[0] * np.exp(-p[1] * x)
+
+    def slopes(p):
+        return np.column_stack([-np.exp(-p[1] * x), p[0] * x * np.exp(-p[1] * x)])
+
+    with_slopes, without = (
+        fit_residuals(residuals, start, absolute=False, jacobian=each) for each in (slopes, None)
+    )
+    np.testing.assert_allclose(with_slopes.values, without.values, rtol=1e-8)
+    np.testing.assert_allclose(with_slopes.covariance, without.covariance, rtol=1e-6)
+    assert with_slopes.evaluations < without.evaluations
+
+
+def test_a_quick_search_only_finds_a_start():
+    x = np.linspace(0.0, 4.0, 30)
+    y = 3 * np.exp(-0.5 * x) + np.random.default_rng(1).normal(0, 0.01, x.size)
+    start = [Parameter("height", 1.0), Parameter("rate", 1.0)]
+    quick, full = (
+        fit_residuals(lambda p: y - p[0] * np.exp(-p[1] * x), start, absolute=False, tolerance=each)
+        for each in (1e-2, 4e-16)
+    )
+    assert quick.evaluations < full.evaluations
+    np.testing.assert_allclose(quick.values, full.values, rtol=1e-2)
