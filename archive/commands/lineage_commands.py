@@ -84,6 +84,9 @@ def trace(
       stillroom trace --forward RX-2-cal.r1
       stillroom trace --forward 2026-03.a1:raw/ts05.csv --svg what-rests-on-it.svg
     """
+    if forward or not address.endswith((".pdf", ".png", ".svg")):
+        for part in address.rpartition("|")[2].split(";"):
+            require_address(part.strip().partition(" step ")[0])
     with opening.open_archive(archive_dir) as lab, Progress("tracing"):
         node = lab.trace(address, forward=forward)
     if picture is not None:
