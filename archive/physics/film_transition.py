@@ -154,15 +154,6 @@ def fit_film_transition(
     data = _Data(T, drop, loss, u_drop, u_loss, x0, angular_frequency)
     limits = _limits(data, scale=scale, scale_uncertainty=scale_uncertainty)
     values = _first_values(data, limits, free, F=F, scale=scale, given=start or {})
-    # F and the scale open false minima when they are free from the start, so they come last; not from another fit's end.
-    first = tuple(name for name in free if name not in {"F", "scale"})
-    if first and first != tuple(free) and not _complete(start):
-        values = _completed(
-            values,
-            data.fit(
-                values, limits, first, absolute=absolute, max_evaluations=max_evaluations, tolerance=NEAR
-            ),
-        )
     found = data.fit(
         values, limits, free, absolute=absolute, max_evaluations=max_evaluations, tolerance=CLOSE
     )
@@ -254,10 +245,6 @@ class _Data:
         )
 
 
-def _complete(start: dict[str, float] | None) -> bool:
-    return set(PARAMETERS) <= set(start or {})
-
-
 def _completed(values: dict[str, float], found: FitResult) -> dict[str, float]:
     return values | dict(zip(found.names, map(float, found.values), strict=True))
 
@@ -271,16 +258,19 @@ def _first_values(
     scale: float,
     given: dict[str, float],
 ) -> dict[str, float]:
-    """Return start values: the best of short fits to a thinned record from three values of b."""
-    if _complete(given):
+    """Return start values: the best of short fits to a thinned record from three values of b.
+
+    F and the scale open false minima when they are free from the start, so here they are held.
+    """
+    if set(PARAMETERS) <= set(given):
         return dict(given)
     first = tuple(name for name in free if name not in {"F", "scale"})
     candidates = [_start_values(data, b=b, F=F, scale=scale) | given for b in (3.0, 5.0, 9.0)]
-    if given or not first:
+    if not first:
         return candidates[1]
     few = data.thinned(40)
     trials = []
-    for values in candidates:
+    for values in candidates[1:2] if given else candidates:
         found = few.fit(values, limits, first, absolute=False, max_evaluations=200, tolerance=NEAR)
         trials.append((found.chi2, _completed(values, found)))
     return min(trials, key=lambda trial: trial[0])[1]
