@@ -399,9 +399,24 @@ class Index:
         rows = self._mappings(act_queries.replaced_records(cooldown))
         return {(row["cooldown"], row["instead_of"]): (row["address"], row["reduction"]) for row in rows}
 
+    def current_replacements(self) -> dict[str, dict[str, str]]:
+        """Return what each current reduction took instead of something: by reduction, what was named by what was taken."""
+        found: dict[str, dict[str, str]] = {}
+        for row in self._mappings(act_queries.replaced_records()):
+            found.setdefault(row["reduction"], {})[row["address"]] = row["instead_of"]
+        return found
+
+    def sweep_holders(self) -> dict[str, str]:
+        """Newest accession that holds a sweep and is not withdrawn, by the sweep's address."""
+        return {row["address"]: row["accession"] for row in self._mappings(queries.sweeps())}
+
     def current_inputs(self) -> list[InputRow]:
         """Return what the current reductions took from outside themselves, by reduction."""
         return [InputRow(**row) for row in self._mappings(act_queries.inputs())]
+
+    def resting_on(self, address: str) -> list[str]:
+        """Reductions that took something from a thing or a part of it, or followed it if it is a plan; not those behind."""
+        return [row["address"] for row in self._mappings(act_queries.resting_on(address))]
 
     def flagged(self) -> dict[str, tuple[str, ...]]:
         """Reductions that rest on something withdrawn, each with the addresses of what that is."""

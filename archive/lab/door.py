@@ -18,20 +18,36 @@ import numpy as np
 from numpy.typing import NDArray
 
 from archive.errors import ArchiveBusy, ArchiveError, BadRequest, UnknownAddress
-from archive.index import AccessionRow, CooldownRow, Index, RecordRow, ResultRow, SearchQuery, SweepRow
+from archive.index import (
+    AccessionRow,
+    CooldownRow,
+    Index,
+    RecordRow,
+    ResultRow,
+    SearchQuery,
+    SweepRow,
+    WithdrawalRow,
+)
+from archive.index.acts import ActDocument
 from archive.intake import ingest as intake_ingest
 from archive.intake.examine import examined
 from archive.intake.settings import SETTINGS_NAME, Settings, read_settings, settings_text
 from archive.lab import calibrating, exchanging, reducing, reporting, showing
+from archive.lab.act_outcomes import ActOutcome, WithdrawOutcome
+from archive.lab.amending import amend
 from archive.lab.checking import check_folder, earlier_runs, folder_report, require_folder
 from archive.lab.comparing import Comparison, compare
 from archive.lab.forward import forward as lineage_forward
 from archive.lab.journaling import AFTERWARDS, Acts
 from archive.lab.outcomes import CheckReport, IngestOutcome, ReduceOutcome, ReplayReport
 from archive.lab.place import find_root, made, unmade
+from archive.lab.renewing import reduce_stale
 from archive.lab.replaying import replay_all
-from archive.lab.source import LabSource
+from archive.lab.revising import revise
+from archive.lab.source import LabSource, key_of
+from archive.lab.stale import Stale, stale
 from archive.lab.tracing import backward
+from archive.lab.withdrawing import withdraw
 from archive.reduction.calibration_comparison import Drift
 from archive.reduction.monte_carlo import Request
 from archive.reduction.software import software
@@ -369,6 +385,60 @@ class Archive:
         self._source.remember(sealed.key, document)
         self._record(sealed)
 
+    # Afterwards ---------------------------------------------------------------------------------------------------
+
+    def stale(self, cooldown: str | None = None) -> list[Stale]:
+        """Current reductions that rest on something read otherwise now, those that others rest on first."""
+        return stale(self._source, cooldown=cooldown)
+
+    def reduce_stale(
+        self,
+        cooldown: str | None = None,
+        *,
+        monte_carlo: Request | None = None,
+        progress: Progress = _quiet,
+    ) -> list[ReduceOutcome]:
+        """Make stale reductions anew with the newest revisions that hold; see `archive.lab.renewing.reduce_stale`."""
+        with self._writing():
+            return reduce_stale(
+                self._source, cooldown, clock=self._clock, seal=self._seal_reduction, progress=progress,
+                request=monte_carlo,
+            )  # fmt: skip
+
+    def revise(self, sheet: Path | str, *, by: str | None = None, dry_run: bool = False) -> ActOutcome:
+        """Add the revision of a record or plan that a sheet describes, outside a cooldown; or show what it would do."""
+        with nullcontext() if dry_run else self._writing():
+            seal = None if dry_run else self._seal_act
+            return revise(self._source, Path(sheet), by=by, clock=self._clock, seal=seal)
+
+    def amend(self, sheet: Path | str, *, by: str | None = None, dry_run: bool = False) -> ActOutcome:
+        """Add the amendment of a sealed cooldown that a sheet describes; or show what it would do."""
+        with nullcontext() if dry_run else self._writing():
+            seal = None if dry_run else self._seal_act
+            return amend(self._source, Path(sheet), by=by, clock=self._clock, seal=seal)
+
+    def withdraw(self, address: str, *, why: str, by: str | None = None) -> WithdrawOutcome:
+        """Mark something as not to be used any more; it stays, and what rests on it is flagged."""
+        with self._writing():
+            return withdraw(self._source, address, why=why, by=by, clock=self._clock, seal=self._seal_act)
+
+    def withdrawals(self) -> list[WithdrawalRow]:
+        """What is withdrawn, why and by whom."""
+        return self._index.withdrawals()
+
+    def flagged(self) -> dict[str, tuple[str, ...]]:
+        """Reductions that rest on something withdrawn, each with the addresses of what that is."""
+        return self._index.flagged()
+
+    def _seal_act(self, document: ActDocument, name: str = "", content: bytes = b"") -> None:
+        with self._store.writer(key_of(document.address)) as writer:
+            if name:
+                writer.raw(name, [content], media_type="application/toml")
+            writer.document(document.model_dump_json(indent=1))
+            sealed = writer.seal()
+        self._source.remember(sealed.key, document)
+        self._record(sealed)
+
     def replay(self, address: str) -> ReplayReport:
         """Compute a reduction again from raw and compare it with what was sealed."""
         return reducing.replay(self._source, address, clock=self._clock)
@@ -406,10 +476,15 @@ class Archive:
         return self._index.records(name=name, kind=kind)
 
     def results(
-        self, name: str | None = None, *, cooldown: str | None = None, sweep: str | None = None
+        self,
+        name: str | None = None,
+        *,
+        cooldown: str | None = None,
+        sweep: str | None = None,
+        withdrawn: bool = False,
     ) -> list[ResultRow]:
-        """Scalar results of current reductions, as a table."""
-        return self._index.results(name=name, cooldown=cooldown, sweep=sweep)
+        """Scalar results of current reductions, as a table; withdrawn ones too, marked, if asked for."""
+        return self._index.results(name=name, cooldown=cooldown, sweep=sweep, withdrawn=withdrawn)
 
     def statistics(self) -> dict[str, int]:
         """Counts of what the archive holds."""

@@ -12,7 +12,6 @@ from archive.errors import BadRequest
 from archive.lab.revisions import Holding, Revisions
 from archive.lab.source import LabSource
 from archive.reduction.amending import amended_accession
-from archive.reduction.digest import record_digest
 from archive.reduction.estimate import Estimate
 from archive.reduction.record_kinds import record_kind
 from schemas.acts import AmendmentDocument
@@ -34,7 +33,9 @@ class EffectiveSource:
     recorded : ReductionDocument, optional
         A reduction whose own accession, amendments and revisions are to be read again, whatever came later.
     extra : AmendmentDocument, optional
-        An amendment that is not sealed yet, to see what it would do.
+        An amendment that does not count yet, to see what it would do.
+    passed_over : frozenset of str
+        Addresses of amendments that are not to count, to see what that would do.
     """
 
     def __init__(
@@ -44,8 +45,10 @@ class EffectiveSource:
         newest: bool = False,
         recorded: ReductionDocument | None = None,
         extra: AmendmentDocument | None = None,
+        passed_over: frozenset[str] = frozenset(),
     ) -> None:
         self.lab = lab
+        self._passed_over = passed_over
         self._recorded = recorded
         self._extra = extra
         pinned = None
@@ -94,9 +97,7 @@ class EffectiveSource:
         return [each for each in documents if each.address not in self.withdrawn]
 
     def _without_withdrawn(self, document: AccessionDocument) -> AccessionDocument:
-        gone = {
-            each.name for each in document.sweeps if f"{document.cooldown}/{each.name}" in self.withdrawn
-        }
+        gone = {each.name for each in document.sweeps if f"{document.cooldown}/{each.name}" in self.withdrawn}
         if not gone or self._recorded is not None:
             return document
         kept = tuple(each for each in document.sweeps if each.name not in gone)
@@ -110,7 +111,8 @@ class EffectiveSource:
             return [each for each in every if each.address in known]
         extra = self._extra
         more = [extra] if extra is not None and extra.cooldown == cooldown else []
-        return [*self.lab.amendments(cooldown), *more]
+        counting = [each for each in self.lab.amendments(cooldown) if each.address not in self._passed_over]
+        return sorted([*counting, *more], key=lambda each: each.number)
 
     def column(self, accession_address: str, sweep_name: str, channel: str) -> NDArray[Any]:
         """Return a channel as stored, in the unit of the file."""
@@ -183,7 +185,7 @@ class EffectiveSource:
         document = self.holding(parsed.head, parsed.item or "")
         found = {each.address: each for each in self._replacements(document, parsed.item or "")}
         found[document.address] = InputEntry(
-            address=document.address, role="accession", digest=record_digest(document.sheet)
+            address=document.address, role="accession", digest=self.lab.digest(document.address)
         )
         for amendment in self.amendments(parsed.head):
             if sweep_address in amendment.sweeps:

@@ -10,19 +10,23 @@ from typing import Any
 from numpy.typing import NDArray
 
 from archive.errors import ArchiveError, BadRequest, DamagedFile, MissingFile, UnknownAddress
-from archive.index import Index
+from archive.index import Entry, Index
+from archive.lab.effective import EffectiveSource
+from archive.lab.monte_carlo import answers, repeated, with_monte_carlo
 from archive.lab.outcomes import ReduceOutcome, ReplayReport
 from archive.lab.source import LabSource, document_of
+from archive.reduction.monte_carlo import Request
+from archive.reduction.needs import NeedAddresses
 from archive.reduction.planning import load_plan, plan_depth, plans_for, shipped_plans
 from archive.reduction.replay import replay as repeat
 from archive.reduction.runner import run
 from archive.store.durable import archive_lock
 from archive.store.local import LocalStore
 from schemas.address import parse_address
-from schemas.lineage import AccessionDocument, ReductionDocument
+from schemas.lineage import ReductionDocument
 from schemas.plan import Plan
 
-__all__ = ["plans", "rebuilt_index", "reduce", "replay"]
+__all__ = ["current_plans", "plans", "rebuilt_index", "reduce", "reduce_one", "replay"]
 
 Seal = Callable[[ReductionDocument, Mapping[str, tuple[NDArray[Any], dict[str, str]]]], None]
 
@@ -30,6 +34,8 @@ Seal = Callable[[ReductionDocument, Mapping[str, tuple[NDArray[Any], dict[str, s
 def plans(source: LabSource) -> list[Plan]:
     """Shipped plans, and those of this archive's reductions that are not shipped, by name and revision."""
     known = {plan.address: plan for plan in shipped_plans()}
+    for own in source.own_plans():
+        known.setdefault(own.address, own)
     for row in source.index.reductions():
         if row.plan not in known:
             plan = source.reduction(row.address).plan
@@ -37,9 +43,20 @@ def plans(source: LabSource) -> list[Plan]:
     return [known[address] for address in sorted(known)]
 
 
+def current_plans(source: LabSource) -> list[Plan]:
+    """The newest revision of each plan that is shipped or came in as a revision; withdrawn ones are passed over."""
+    withdrawn = {row.target for row in source.index.withdrawals()}
+    best: dict[str, Plan] = {}
+    for plan in [*shipped_plans(), *source.own_plans()]:
+        older = plan.name not in best or best[plan.name].revision < plan.revision
+        if plan.address not in withdrawn and older:
+            best[plan.name] = plan
+    return [best[name] for name in sorted(best)]
+
+
 def _chosen(source: LabSource, plan: str | Path | None) -> tuple[list[Plan], list[Plan]]:
     """Plans that may be carried out, and those that can serve needs."""
-    known = list(shipped_plans())
+    known = current_plans(source)
     if plan is None:
         return known, known
     path = Path(plan)
@@ -51,7 +68,12 @@ def _chosen(source: LabSource, plan: str | Path | None) -> tuple[list[Plan], lis
         own = load_plan(text, file=str(path))
         _check_revision(source, own)
         return [own], [*known, own]
+    withdrawn = {row.target: row.sentence() for row in source.index.withdrawals()}
     fitting = [each for each in plans(source) if str(plan) in (each.name, each.address)]
+    kept = [each for each in fitting if each.address not in withdrawn]
+    if fitting and not kept:
+        raise BadRequest(f"plan {fitting[-1].address} is withdrawn: {withdrawn[fitting[-1].address]}")
+    fitting = kept
     if not fitting:
         names = ", ".join(sorted({each.name for each in plans(source)}))
         raise BadRequest(
@@ -79,11 +101,17 @@ def reduce(
     clock: Callable[[], datetime],
     seal: Seal,
     progress: Callable[[str], None],
+    request: Request | None = None,
 ) -> list[ReduceOutcome]:
     """Plans carried out on the sweeps of a cooldown, each after what it rests on; see `Archive.reduce`."""
     if "/" in cooldown:
         cooldown, _, sweep = cooldown.partition("/")
+    reading = EffectiveSource(source)
     rows = source.index.sweeps(cooldown)
+    asked_for = cooldown if sweep is None else f"{cooldown}/{sweep.rpartition('/')[2]}"
+    why = reading.why_withdrawn(asked_for)
+    if why is not None:
+        raise BadRequest(f"{asked_for} is withdrawn: {why}", remedy="what is withdrawn is not reduced")
     if not rows:
         known = ", ".join(source.cooldowns()) or "none yet"
         raise UnknownAddress(f"there is no cooldown {cooldown} in this archive", expected=f"one of: {known}")
@@ -96,9 +124,11 @@ def reduce(
     work: list[tuple[int, int, str, Plan]] = []
     closing: dict[tuple[str, str | None], str] = {}
     for position, row in enumerate(rows):
-        written = next(each for each in source.accession(row.accession).sheet.sweep if each.name == row.name)
-        cell = None if row.cell is None else source.find_record(row.cell)
-        substrate = None if row.substrate is None else source.find_record(row.substrate)
+        document = reading.holding(cooldown, row.name)
+        written = next(each for each in document.sheet.sweep if each.name == row.name)
+        entry = next(each for each in document.sweeps if each.name == row.name)
+        cell = None if entry.cell is None else source.find_record(entry.cell)
+        substrate = None if entry.substrate is None else source.find_record(entry.substrate)
         fitting = plans_for(written, cell, substrate, allowed)
         work += [(plan_depth(each, known_plans), position, row.address, each) for each in fitting]
         closing |= {(each.name, row.cell): row.address for each in fitting}
@@ -120,30 +150,42 @@ def reduce(
     outcomes = []
     for number, (_, _, address, each) in enumerate(sorted(work, key=lambda item: item[:3]), 1):
         progress(f"{address} by {each.name} ({number} of {len(work)})")
-        outcomes.append(_one(source, address, each, clock, seal))
+        outcomes.append(reduce_one(reading, address, each, clock, seal, request, progress))
     return outcomes
 
 
-def _one(
-    source: LabSource, address: str, plan: Plan, clock: Callable[[], datetime], seal: Seal
+def reduce_one(
+    source: EffectiveSource,
+    address: str,
+    plan: Plan,
+    clock: Callable[[], datetime],
+    seal: Seal,
+    request: Request | None,
+    progress: Callable[[str], None],
+    needs: NeedAddresses | None = None,
 ) -> ReduceOutcome:
+    """One plan carried out on one sweep; nothing is sealed when it repeats the newest reduction that counts."""
     earlier = source.reductions(plan.name, address)
     newest = earlier[-1] if earlier else None
+    # A number is given once, also when the reduction that has it is withdrawn.
+    last = max((each.number for each in source.lab.reductions(plan.name, address)), default=0)
     try:
         made = run(
             plan,
             address,
             source,
-            number=1 if newest is None else newest.number + 1,
+            number=last + 1,
             clock=clock,
             supersedes=None if newest is None else newest.address,
+            needs=needs,
         )
-        if newest is not None and _same(newest, made.document):
+        if newest is not None and _same(newest, made.document) and answers(newest, request):
             return ReduceOutcome(address, plan.address, newest.address, newest, already=True)
-        seal(made.document, made.arrays)
+        document = with_monte_carlo(made, request, clock=clock, progress=progress)
+        seal(document, made.arrays)
     except ArchiveError as problem:
         return ReduceOutcome(sweep=address, plan=plan.address, problem=problem)
-    return ReduceOutcome(address, plan.address, made.document.address, made.document)
+    return ReduceOutcome(address, plan.address, document.address, document)
 
 
 def _same(old: ReductionDocument, new: ReductionDocument) -> bool:
@@ -162,11 +204,14 @@ def _same(old: ReductionDocument, new: ReductionDocument) -> bool:
 def replay(source: LabSource, address: str, *, clock: Callable[[], datetime]) -> ReplayReport:
     """A reduction computed again from raw and compared with what was sealed."""
     document = source.reduction(parse_address(address).reduction or address)
-    again = repeat(document, source, clock=clock)
+    again = repeat(document, EffectiveSource(source, recorded=document), clock=clock)
     unequal = [each for each in again.differences if not each.equal]
+    held = document.monte_carlo
+    drawn = None if held is None else repeated(again.outcome, held) == held
     return ReplayReport(
         address=document.address,
-        identical=not unequal,
+        identical=not unequal and drawn is not False,
+        monte_carlo_identical=drawn,
         outputs=len(again.differences),
         largest_difference={each.name: each.relative for each in unequal},
         shifts={each.name: each.in_uncertainties for each in unequal if each.in_uncertainties is not None},
@@ -182,7 +227,7 @@ def rebuilt_index(
     keys = store.keys()
     recorded: dict[str, tuple[str, int]] = {}
 
-    def entries() -> Iterator[tuple[str, str, int, AccessionDocument | ReductionDocument]]:
+    def entries() -> Iterator[Entry]:
         for number, key in enumerate(sorted(keys, key=lambda key: ("@" in key, key))):
             if progress is not None:
                 progress(number, len(keys), key)

@@ -18,8 +18,9 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from datetime import date
 
-from archive.index import RecordRow, RevisionRow
+from archive.index import RecordRow
 from archive.lab.source import LabSource
+from schemas.acts import RevisionDocument
 
 __all__ = ["Holding", "Revisions"]
 
@@ -42,21 +43,30 @@ class Revisions:
         Whether the newest revision is asked for.
     pinned : mapping, optional
         Revisions that a recorded reduction took in the place of others, by name; nothing else then counts.
+    extra : RevisionDocument, optional
+        A revision that is not sealed yet, to see what it would do.
     """
 
     def __init__(
-        self, source: LabSource, *, newest: bool = False, pinned: Mapping[str, Holding] | None = None
+        self,
+        source: LabSource,
+        *,
+        newest: bool = False,
+        pinned: Mapping[str, Holding] | None = None,
+        extra: RevisionDocument | None = None,
     ) -> None:
-        self._source, self._newest, self._pinned = source, newest, pinned
+        self._newest, self._pinned = newest, pinned
         self.withdrawn = {row.target: row.sentence() for row in source.index.withdrawals()}
-        self._superseding: dict[str, RevisionRow] = {}
+        self._superseding: dict[str, tuple[str, str]] = {}
         for row in source.index.revisions():
             if row.counts and row.supersedes is not None:
-                self._superseding[row.supersedes] = row
+                self._superseding[row.supersedes] = (row.address, row.because)
         self._carried = source.index.replaced_records()
         self._by_name: dict[str, list[RecordRow]] = {}
         for record in source.index.records():
             self._by_name.setdefault(record.name, []).append(record)
+        if extra is not None:
+            self._add(extra)
         self._times = {row.name: (row.begin, row.end) for row in source.index.cooldowns()}
 
     def holding(self, cooldown: str, address: str) -> Holding:
@@ -68,11 +78,24 @@ class Revisions:
             return self._newer(cooldown, found)
         return self._kept(cooldown, address, found)
 
+    def _add(self, extra: RevisionDocument) -> None:
+        name, _, number = extra.address.partition(".r")
+        if extra.supersedes is not None:
+            self._superseding[extra.supersedes] = (extra.address, extra.because)
+        if extra.kind != "plan":
+            row = RecordRow(
+                name, int(number), extra.kind, extra.address, extra.digest, dict(extra.content), None
+            )
+            self._by_name.setdefault(name, []).append(row)
+
     def _superseded(self, address: str) -> Holding:
         found, seen = Holding(address), {address}
-        while (row := self._superseding.get(found.address)) is not None and row.address not in seen:
-            seen.add(row.address)
-            found = Holding(row.address, f"{row.address} supersedes {row.supersedes}: {row.because}")
+        while found.address in self._superseding:
+            new, because = self._superseding[found.address]
+            if new in seen:
+                break
+            seen.add(new)
+            found = Holding(new, f"{new} supersedes {found.address}: {because}")
         return found
 
     def _newer(self, cooldown: str, found: Holding) -> Holding:

@@ -8,12 +8,13 @@ from __future__ import annotations
 
 import hashlib
 import json
+from dataclasses import fields, is_dataclass
 
 import numpy as np
 import numpy.typing as npt
 from pydantic import BaseModel
 
-__all__ = ["array_digest", "record_digest"]
+__all__ = ["array_digest", "record_digest", "value_digest"]
 
 
 def array_digest(values: npt.ArrayLike) -> str:
@@ -50,3 +51,25 @@ def record_digest(record: BaseModel) -> str:
         sort_keys=True, separators=(",", ":"), ensure_ascii=False,
     )  # fmt: skip
     return hashlib.sha256(text.encode()).hexdigest()
+
+
+def value_digest(value: object) -> str:
+    """Return the SHA-256 of what a sheet says in one place: a record, a group of records, a word or a number.
+
+    Examples
+    --------
+    >>> value_digest("up") == value_digest("up"), value_digest("up") == value_digest("down")
+    (True, False)
+    """
+    text = json.dumps(_plain(value), sort_keys=True, separators=(",", ":"), ensure_ascii=False)
+    return hashlib.sha256(text.encode()).hexdigest()
+
+
+def _plain(value: object) -> object:
+    if isinstance(value, BaseModel):
+        return value.model_dump(mode="json")
+    if is_dataclass(value) and not isinstance(value, type):
+        return {each.name: _plain(getattr(value, each.name)) for each in fields(value)}
+    if isinstance(value, tuple | list):
+        return [_plain(each) for each in value]
+    return value

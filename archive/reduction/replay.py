@@ -97,8 +97,15 @@ def replay(document: ReductionDocument, source: Source, *, clock: Callable[[], d
     differences = tuple(
         _difference(name, recorded.get(name), fresh.get(name), before, outcome) for name in names
     )
-    digests = {entry.address: entry.digest for entry in outcome.document.inputs}
-    changed = tuple(entry.address for entry in document.inputs if digests.get(entry.address) != entry.digest)
+    # One address may have been taken in several roles: an accession read, and the gas book of its sheet.
+    digests = {(entry.address, entry.role): entry.digest for entry in outcome.document.inputs}
+    changed = tuple(
+        dict.fromkeys(
+            entry.address
+            for entry in document.inputs
+            if digests.get((entry.address, entry.role)) != entry.digest
+        )
+    )
     return Replay(outcome, differences, changed, _software(document, outcome.document))
 
 

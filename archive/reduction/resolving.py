@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 from archive.errors import BadRequest
 from archive.reduction.channels import CONVERTED, channel_estimate, channel_meant
-from archive.reduction.digest import record_digest
+from archive.reduction.digest import value_digest
 from archive.reduction.estimate import Estimate
 from archive.reduction.facts import SweepFacts
 from archive.reduction.preparation import Preliminary, preliminary_steps
@@ -105,7 +105,7 @@ class Resolver:
         self.add_sources(sources)
         if isinstance(value, Estimate):
             return Given(address, value)
-        digest = self.source.digest(address) if ".r" in address else record_digest(self.facts.accession.sheet)
+        digest = self.source.digest(address) if ".r" in address else value_digest(value)
         return Given(address, record=value, digest=digest)
 
     def _need(self, name: str) -> Given | None:

@@ -1,0 +1,119 @@
+"""Stale reductions made anew, those that others rest on first."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from datetime import datetime
+
+from archive.errors import ArchiveError, BadRequest, UnknownAddress
+from archive.lab.effective import EffectiveSource
+from archive.lab.outcomes import ReduceOutcome
+from archive.lab.reducing import Seal, current_plans, reduce_one
+from archive.lab.source import LabSource
+from archive.lab.stale import Stale, stale
+from archive.reduction.monte_carlo import Request
+from archive.reduction.replay import recorded_needs
+from schemas.address import parse_address
+from schemas.lineage import ReductionDocument
+from schemas.plan import Plan
+
+__all__ = ["reduce_stale"]
+
+
+def reduce_stale(
+    source: LabSource,
+    cooldown: str | None,
+    *,
+    clock: Callable[[], datetime],
+    seal: Seal,
+    progress: Callable[[str], None],
+    request: Request | None = None,
+) -> list[ReduceOutcome]:
+    """Stale reductions of a cooldown, or of all, carried out anew with the newest revisions that hold.
+
+    Parameters
+    ----------
+    source : LabSource
+    cooldown : str or None
+        Name of a cooldown, or the address of a sweep; stale reductions that its own rest on are renewed with them.
+    clock, seal, progress, request
+        As in `archive.lab.reducing.reduce`.
+
+    Notes
+    -----
+    A reduction rests afterwards on the reductions of the same sweeps as before, each in its newest number.
+    """
+    every = stale(source)
+    chosen = _chosen(source, every, cooldown)
+    plans = {plan.name: plan for plan in current_plans(source)}
+    reading = EffectiveSource(source, newest=True)
+    outcomes = []
+    for number, each in enumerate(chosen, 1):
+        progress(f"{each.sweep} by {each.plan} ({number} of {len(chosen)})")
+        document = source.reduction(each.reduction)
+        plan = _newest(plans.get(each.plan), document.plan)
+        if plan.address in reading.withdrawn:
+            problem = BadRequest(f"plan {plan.address} is withdrawn: {reading.withdrawn[plan.address]}")
+            outcomes.append(ReduceOutcome(each.sweep, plan.address, problem=problem))
+            continue
+        try:
+            needs = _needs_now(reading, document, plan)
+        except ArchiveError as problem:
+            outcomes.append(ReduceOutcome(each.sweep, plan.address, problem=problem))
+            continue
+        outcomes.append(reduce_one(reading, each.sweep, plan, clock, seal, request, progress, needs))
+    return outcomes
+
+
+def _newest(current: Plan | None, recorded: Plan) -> Plan:
+    return recorded if current is None or current.revision < recorded.revision else current
+
+
+def _chosen(source: LabSource, every: list[Stale], cooldown: str | None) -> list[Stale]:
+    if cooldown is None:
+        return every
+    head, _, sweep = cooldown.partition("/")
+    if not source.index.sweeps(head, withdrawn=True):
+        known = ", ".join(source.cooldowns()) or "none yet"
+        raise UnknownAddress(f"there is no cooldown {head} in this archive", expected=f"one of: {known}")
+    if sweep and not any(row.name == sweep for row in source.index.sweeps(head, withdrawn=True)):
+        raise UnknownAddress(f"there is no sweep {cooldown} in this archive")
+    by_address = {each.reduction: each for each in every}
+    by_key = {(each.sweep, each.plan): each for each in every}
+    wanted: dict[str, None] = {}
+    waiting = [
+        each for each in every if (each.sweep == cooldown if sweep else each.sweep.startswith(f"{head}/"))
+    ]
+    while waiting:
+        each = waiting.pop()
+        if each.reduction in wanted:
+            continue
+        wanted[each.reduction] = None
+        for entry in source.reduction(each.reduction).inputs:
+            parsed = parse_address(entry.address)
+            below = by_address.get(parsed.reduction or "") or by_key.get(
+                (parsed.sweep or "", parsed.plan or "")
+            )
+            if below is not None:
+                waiting.append(below)
+    return [each for each in every if each.reduction in wanted]
+
+
+def _needs_now(
+    reading: EffectiveSource, document: ReductionDocument, plan: Plan
+) -> dict[str, str | list[str]]:
+    """For each need, the newest reduction of the sweep that served it before; needs that nothing serves are left open."""
+    found: dict[str, str | list[str]] = {}
+    try:
+        recorded = recorded_needs(document, reading)
+    except BadRequest:
+        recorded = {}
+    for name, address in recorded.items():
+        # A need of many is gathered anew, so that what came in meanwhile is taken along.
+        if name not in plan.needs or not isinstance(address, str) or plan.needs[name].many:
+            continue
+        parsed = parse_address(address)
+        newest = reading.reductions(parsed.plan or "", parsed.sweep or "")
+        if newest and newest[-1].plan.name == plan.needs[name].plan:
+            found[name] = newest[-1].address
+    return found
