@@ -73,21 +73,18 @@ def about(asked: Sequence[str], sealed: Sequence[SealedDocument], deposit: Depos
     accessions = [each.document for each in sealed if isinstance(each.document, AccessionDocument)]
     newest = {each.cooldown: each for each in sorted(accessions, key=lambda each: each.number)}
     reductions = [each.document for each in sealed if isinstance(each.document, ReductionDocument)]
-    names = ", ".join(sorted(newest))
-    title = f"Cooldowns {names}" if len(newest) > 1 else f"Cooldown {names}"
-    shown = [address for address in asked if address not in newest]
-    if shown:
-        title = f"Data behind {', '.join(shown[:3])}{' and others' if len(shown) > 3 else ''}"
-    purposes = " ".join(f"{name}: {_sentence(newest[name].sheet.purpose)}" for name in sorted(newest))
-    kinds = sorted({document.plan.title for document in reductions})
+    # What was asked for gives the name; what came along because something rests on it is told in the list of files.
+    named = {name: each for name, each in newest.items() if not asked or name in asked} or newest
+    kinds = sorted({document.plan.title for document in reductions if document.cooldown in named})
+    purposes = " ".join(f"{name}: {_sentence(named[name].sheet.purpose)}" for name in sorted(named))
     licences = {each.sheet.licence or deposit.licence for each in newest.values()}
     return About(
-        title=title,
+        title=_title(asked, sorted(named), sorted(newest)),
         description=f"{purposes} Low-temperature measurements with every raw byte, {len(reductions)} reductions"
         + (f" ({'; '.join(kinds)})" if kinds else "")
         + ", their uncertainties and their lineage.",
         issued=max(map(_day, sealed)),
-        collected=_collected(list(newest.values())),
+        collected=_collected(list(named.values())),
         authors=deposit.author,
         publisher=deposit.publisher,
         publisher_ror=deposit.publisher_ror,
@@ -99,6 +96,13 @@ def about(asked: Sequence[str], sealed: Sequence[SealedDocument], deposit: Depos
         missing=_missing(newest, deposit),
         size=sum(each.size for each in sealed),
     )
+
+
+def _title(asked: Sequence[str], named: Sequence[str], held: Sequence[str]) -> str:
+    parts = [address for address in asked if address not in held]
+    if parts:
+        return f"Data behind {', '.join(parts[:3])}{' and others' if len(parts) > 3 else ''}"
+    return f"Cooldown{'s' if len(named) > 1 else ''} {', '.join(named)}"
 
 
 def _sentence(text: str) -> str:

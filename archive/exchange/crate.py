@@ -13,7 +13,7 @@ from __future__ import annotations
 
 import json
 from collections.abc import Mapping, Sequence
-from datetime import datetime
+from datetime import UTC, datetime
 from typing import Any, Final
 
 from archive.exchange.about import About
@@ -208,7 +208,8 @@ def _holders(sealed: Sequence[SealedDocument]) -> dict[str, list[str]]:
 
 
 def _moment(moment: datetime) -> str:
-    return moment.isoformat().replace("+00:00", "Z")
+    # The profile's own check knows no "Z", and a fraction only of three digits.
+    return moment.astimezone(UTC).isoformat(timespec="milliseconds" if moment.microsecond else "seconds")
 
 
 def _person(number: int, author: Author) -> Entity:
