@@ -74,7 +74,8 @@ def fit_power_law(
 
     Notes
     -----
-    The window is applied with the start value, then with the fitted T_c, until the points in it stay the same. Give chi-squared
+    The window is applied with the start value, then with the fitted T_c, until the points in it stay the same; where it turns in a
+    circle, the points that are in it each time count. Give chi-squared
     beside that of the planar dynamic theory; a medium that follows a power law gets no test of the universal jump.
 
     References
@@ -101,6 +102,13 @@ def fit_power_law(
                 f"temperature: found {np.count_nonzero(used)} points in the window, expected at least 5"
             )
         if used.tobytes() in seen:
+            # Points at an edge that come and go with the fit are left out for good.
+            turns = seen[seen.index(used.tobytes()) :]
+            kept = np.logical_and.reduce([np.frombuffer(each, dtype=np.bool_) for each in turns])
+            if len(turns) > 1 and np.count_nonzero(kept) >= 5:
+                seen.append(kept.tobytes())
+                found = _fit(T[kept], rho[kept], Tc, None if u is None else u[kept], absolute=absolute)
+                used = kept
             break
         seen.append(used.tobytes())
         found = _fit(T[used], rho[used], Tc, None if u is None else u[used], absolute=absolute)
