@@ -73,3 +73,18 @@ def test_bulk_superfluid_fraction():
     assert float(found) == pytest.approx(2.403 * t**0.6717, rel=1e-3)
     assert float(bulk_superfluid_fraction(2.2, transition_temperature=2.1768)) == 0
     assert math.isnan(float(bulk_superfluid_fraction(2.0, transition_temperature=2.1768)))
+
+
+def test_points_at_the_edge_that_come_and_go_are_left_out():
+    """The window follows the fitted T_c; with this noise two sets of points alternate, and the common ones count."""
+    rng = np.random.default_rng(2)
+    T = np.linspace(0.2, 0.32, 60)
+    rho = np.maximum(1 - T / 0.3, 0) ** 0.67 + 2e-2 * rng.normal(size=T.size)
+    found = fit_power_law(T, rho, start_temperature=0.3, window=(0.01, 0.3))
+    assert found.converged
+    Tc = found.fit.value("transition_temperature")
+    reduced = 1 - T / Tc
+    inside = (reduced > 0.01) & (reduced < 0.3)
+    assert not (found.used & ~inside).any()
+    assert 0 < np.count_nonzero(inside & ~found.used) <= 2
+    assert abs(Tc - 0.3) < 4 * found.fit.standard_uncertainty("transition_temperature")
