@@ -23,6 +23,7 @@ from archive.commands import (
     demo_command,
     exchange_commands,
     intake_commands,
+    keeping_commands,
     lineage_commands,
     reduce_commands,
     report_commands,
@@ -57,6 +58,8 @@ _COMMANDS: Final = (
     exchange_commands.import_,
     archive_commands.fixity,
     archive_commands.rebuild_index,
+    keeping_commands.mirror,
+    keeping_commands.mend,
     bench_commands.convert,
     bench_commands.helium,
 )

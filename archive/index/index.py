@@ -9,8 +9,9 @@ Rules
 
 from __future__ import annotations
 
+import sqlite3
 from collections.abc import Iterable, Iterator
-from contextlib import contextmanager, suppress
+from contextlib import closing, contextmanager, suppress
 from pathlib import Path
 from types import TracebackType
 from typing import Any, Self
@@ -148,6 +149,24 @@ class Index:
             if (beside := path.with_name(path.name + suffix)).exists():
                 beside.rename(path.with_name(aside.name + suffix))
         return path.rename(aside)
+
+    def snapshot(self, path: Path) -> bool:
+        """Copy the index into a new file as it is at one moment; False for an index that is no SQLite file.
+
+        Parameters
+        ----------
+        path : Path
+            A name that is free.
+        """
+        if self._url.get_backend_name() != "sqlite":
+            return False
+        # SQLite's own copy holds what still stands in the write-ahead log; a copy of the file alone would not.
+        with (
+            closing(sqlite3.connect(str(self._url.database))) as source,
+            closing(sqlite3.connect(path)) as target,
+        ):
+            source.backup(target)
+        return True
 
     def close(self) -> None:
         """Let go of every connection."""

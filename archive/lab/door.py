@@ -32,13 +32,15 @@ from archive.index.acts import ActDocument
 from archive.intake import ingest as intake_ingest
 from archive.intake.examine import examined
 from archive.intake.settings import SETTINGS_NAME, Settings, read_settings, settings_text
-from archive.lab import calibrating, exchanging, reducing, reporting, showing
+from archive.lab import calibrating, exchanging, keeping, reducing, reporting, showing
 from archive.lab.act_outcomes import ActOutcome, WithdrawOutcome
 from archive.lab.amending import amend
 from archive.lab.checking import check_folder, earlier_runs, folder_report, require_folder
 from archive.lab.comparing import Comparison, compare
 from archive.lab.forward import forward as lineage_forward
 from archive.lab.journaling import AFTERWARDS, Acts
+from archive.lab.keeping import MirrorOutcome
+from archive.lab.marks import marked
 from archive.lab.outcomes import CheckReport, IngestOutcome, ReduceOutcome, ReplayReport
 from archive.lab.place import find_root, made, unmade
 from archive.lab.renewing import reduce_stale
@@ -57,6 +59,7 @@ from archive.store.fixity import fixity
 from archive.store.interface import Damage, SealedFile
 from archive.store.journal import Entry, Journal
 from archive.store.local import LocalStore, open_store
+from archive.store.mend import Mended
 from archive.store.staging import sweep_staging
 from schemas.address import parse_address
 from schemas.lineage import ReductionDocument
@@ -525,7 +528,8 @@ class Archive:
 
     def trace(self, address: str, *, forward: bool = False) -> TraceNode:
         """Lineage of a result, array, sentence or figure down to raw files and lines; or forward, to all that rests on it."""
-        return lineage_forward(self._source, address) if forward else backward(self._source, address)
+        found = lineage_forward(self._source, address) if forward else backward(self._source, address)
+        return marked(self._source, found)
 
     def calibration(
         self, reduction: str, *, name: str | None = None, revision: int | None = None
@@ -602,6 +606,44 @@ class Archive:
         }
         digests = {key: sealed.sha256 for key, sealed in recorded.items()}
         return [*fixity(self._store, recorded, progress), *self._acts.journal.damage(digests)]
+
+    def mend(
+        self, other: Path | str, *, progress: Callable[[int, int, str], None] | None = None
+    ) -> list[Mended]:
+        """Bring damaged or missing sealed files back from another copy of the archive; see `archive.store.mend`."""
+        with self._writing():
+            hurt = {each.key for each in self.fixity() if each.kind != "stray"}
+            outcomes = keeping.mend(
+                self._store,
+                [sealed for key, sealed in self._recorded().items() if key in hurt],
+                Path(other),
+                progress=progress,
+            )
+            for each in outcomes:
+                if each.mended:
+                    self._acts.done("mend", each.key, note=each.why)
+        return outcomes
+
+    def mirror(
+        self,
+        target: Path | str,
+        *,
+        thorough: bool = False,
+        progress: Callable[[int, int, str], None] | None = None,
+    ) -> MirrorOutcome:
+        """Bring a mirror of this archive in another folder up to date; see `archive.lab.keeping.mirror`."""
+        return keeping.mirror(
+            self._store,
+            self.settings,
+            self._recorded,
+            Path(target),
+            snapshot=self._index.snapshot,
+            thorough=thorough,
+            progress=progress,
+        )
+
+    def _recorded(self) -> dict[str, SealedFile]:
+        return {key: SealedFile(key, *row) for key, row in self._index.sealed_files().items()}
 
     def journal(self) -> list[Entry]:
         """All acts on this archive, oldest first: who by role, when, what, by which version of Stillroom."""

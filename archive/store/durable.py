@@ -48,6 +48,8 @@ __all__ = [
     "discard",
     "file_digest",
     "holds_lock",
+    "put_in_place",
+    "set_aside",
     "settle",
     "staging_path",
     "sync_file",
@@ -127,6 +129,37 @@ def take_name(staged: Path, final: Path, *, root: Path, key: str) -> None:
         ) from error
     sync_folder(final.parent)
     discard(staged)
+
+
+def put_in_place(staged: Path, final: Path) -> None:
+    """Bring a finished file to the disk and let it take the place of another: the one file or the other, never none."""
+    sync_file(staged)
+    os.replace(staged, final)  # noqa: PTH105 - crash tests replace this module's `os`
+    sync_folder(final.parent)
+
+
+def set_aside(path: Path, folder: Path, *, below: Path) -> Path | None:
+    """Move a damaged file out of the way, under a name that is free, and return where it is; None if it is not there.
+
+    Parameters
+    ----------
+    path : Path
+        The file, or a link in its place.
+    folder : Path
+        Where to; made if need be.
+    below : Path
+        Folder of the archive, which is there.
+    """
+    if not path.is_symlink() and not path.exists():
+        return None
+    _make_folders(folder, below=below)
+    number = 1
+    while (aside := folder / f"{path.stem}.{number}{path.suffix}").exists():
+        number += 1
+    os.rename(path, aside)  # noqa: PTH104 - as above; the archive's lock is held, so the name stays free
+    sync_folder(folder)
+    sync_folder(path.parent)
+    return aside
 
 
 def write_whole(path: Path, content: bytes, *, replace: bool = False) -> None:

@@ -1,0 +1,175 @@
+"""Keeping an archive alive: a mirror of it in another place, and damage mended from one."""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Callable, Iterable
+from contextlib import closing, nullcontext
+from dataclasses import dataclass
+from pathlib import Path
+
+from archive.errors import BadRequest
+from archive.index import Index
+from archive.intake.settings import SETTINGS_NAME, Settings, read_settings
+from archive.lab.reducing import rebuilt_index
+from archive.store.durable import archive_lock, put_in_place, write_whole
+from archive.store.interface import Damage, SealedFile
+from archive.store.journal import JOURNAL_NAME, Journal
+from archive.store.local import LocalStore, open_store
+from archive.store.mend import Mended, mended
+from archive.store.mirror import Copied, mirrored
+
+__all__ = ["MirrorOutcome", "mend", "mirror"]
+
+Progress = Callable[[int, int, str], None]
+
+
+@dataclass(frozen=True)
+class MirrorOutcome:
+    """What a mirror holds now.
+
+    Attributes
+    ----------
+    target : Path
+    copied : tuple of str
+        Keys that were copied this time.
+    present : int
+        How many were there already.
+    damage : tuple of Damage
+    index : str
+        How the mirror's index came to be.
+    """
+
+    target: Path
+    copied: tuple[str, ...]
+    present: int
+    damage: tuple[Damage, ...]
+    index: str
+
+
+def mend(
+    store: LocalStore, wanted: Iterable[SealedFile], other: Path, *, progress: Progress | None = None
+) -> list[Mended]:
+    """What became of each damaged or missing file; see `archive.store.mend.mended`."""
+    return mended(store, wanted, other, progress=progress)
+
+
+def mirror(
+    store: LocalStore,
+    settings: Settings,
+    recorded: Callable[[], dict[str, SealedFile]],
+    target: Path,
+    *,
+    snapshot: Callable[[Path], bool],
+    thorough: bool = False,
+    progress: Progress | None = None,
+) -> MirrorOutcome:
+    """Bring a mirror of an archive up to date.
+
+    Parameters
+    ----------
+    store : LocalStore
+        Sealed files of the archive.
+    settings : Settings
+        Its settings; the mirror's index is always a SQLite file of its own.
+    recorded : callable
+        Gives the sealed files that the index records, now.
+    target : Path
+        Folder of the mirror: new, empty, or a mirror that was made before.
+    snapshot : callable
+        Copies the index into a new file, as it is at one moment; False if this index cannot be copied so.
+    thorough : bool
+        Whether what is there already is read again.
+    progress : callable, optional
+
+    Raises
+    ------
+    BadRequest
+        If the target holds something that is no mirror of this archive.
+
+    Notes
+    -----
+    Most files are copied while others may write; then, under the lock of the archive, what came meanwhile, the index, the
+    journal and the settings, so that all of them are of one moment. Stopped anywhere, the next call goes on.
+    """
+    target = target.resolve()
+    if target == store.root.resolve() or store.root.resolve() in target.parents:
+        raise BadRequest(
+            "a mirror cannot lie in the archive itself", file=str(target), remedy="name another disk"
+        )
+    _fit_for_mirror(target, settings)
+    (target / "sealed").mkdir(parents=True, exist_ok=True)
+    (target / "staging").mkdir(exist_ok=True)
+    with archive_lock(target):
+        copy = open_store(target)
+        first = mirrored(store, recorded(), copy, thorough=thorough, progress=progress)
+        # What may only be read has no writer to keep out.
+        with archive_lock(store.root) if os.access(store.root, os.W_OK) else nullcontext():
+            last = mirrored(store, recorded(), copy)
+            how = _copied_index(copy, snapshot)
+            _copied_journal(store.root, target)
+        write_whole(target / SETTINGS_NAME, _settings_of_mirror(store.root), replace=True)
+    if how == "made anew":
+        rebuilt_index(target, read_settings(target).index_address(target), copy)
+    return MirrorOutcome(target, (*first.copied, *last.copied), first.present, _once(first, last), how)
+
+
+def _once(first: Copied, last: Copied) -> tuple[Damage, ...]:
+    return tuple(dict.fromkeys((*first.damage, *last.damage)))
+
+
+def _fit_for_mirror(target: Path, settings: Settings) -> None:
+    if not target.exists():
+        target.mkdir(parents=True)
+    if not target.is_dir():
+        raise BadRequest("this is no folder", file=str(target))
+    lying = {path.name for path in target.iterdir()} - {"archive.lock"}
+    if (target / SETTINGS_NAME).is_file():
+        other = read_settings(target)
+        if other.name != settings.name:
+            raise BadRequest(
+                "there is another archive in this folder", file=str(target), expected=settings.name, found=other.name,
+                remedy="name a new folder",
+            )  # fmt: skip
+    elif lying - {
+        "sealed",
+        "staging",
+        JOURNAL_NAME,
+        "index.sqlite3",
+        "index.sqlite3.new",
+        "index.sqlite3-wal",
+        "index.sqlite3-shm",
+    }:
+        raise BadRequest(
+            "this folder holds something that is no mirror", file=str(target), found=sorted(lying)[0],
+            remedy="name a new or an empty folder",
+        )  # fmt: skip
+
+
+def _copied_index(target: LocalStore, snapshot: Callable[[Path], bool]) -> str:
+    fresh = target.root / "index.sqlite3.new"
+    fresh.unlink(missing_ok=True)
+    if not snapshot(fresh):
+        return "made anew"
+    for suffix in ("-wal", "-shm"):  # of the index that is replaced: all that it held is in the archive
+        (target.root / f"index.sqlite3{suffix}").unlink(missing_ok=True)
+    put_in_place(fresh, target.root / "index.sqlite3")
+    with closing(Index.open(f"sqlite:///{target.root / 'index.sqlite3'}")) as index:
+        index.statistics()
+    return "copied"
+
+
+def _copied_journal(root: Path, target: Path) -> None:
+    if Journal(root).last() is not None:
+        write_whole(target / JOURNAL_NAME, (root / JOURNAL_NAME).read_bytes(), replace=True)
+
+
+def _settings_of_mirror(root: Path) -> bytes:
+    """Settings without the address of the index: a mirror never writes to the database of the archive."""
+    lines = (root / SETTINGS_NAME).read_text(encoding="utf-8").splitlines(keepends=True)
+    kept, in_table = [], False
+    for line in lines:
+        in_table = in_table or line.lstrip().startswith("[")
+        if in_table or line.partition("=")[0].strip() != "index":
+            kept.append(line)
+    return "".join(kept).encode()
