@@ -36,6 +36,8 @@ class EffectiveSource:
         An amendment that does not count yet, to see what it would do.
     passed_over : frozenset of str
         Addresses of amendments that are not to count, to see what that would do.
+    withdrawn_too : bool
+        Whether what is withdrawn is read, too, to be shown with its mark.
     """
 
     def __init__(
@@ -46,8 +48,10 @@ class EffectiveSource:
         recorded: ReductionDocument | None = None,
         extra: AmendmentDocument | None = None,
         passed_over: frozenset[str] = frozenset(),
+        withdrawn_too: bool = False,
     ) -> None:
         self.lab = lab
+        self._withdrawn_too = withdrawn_too or recorded is not None
         self._passed_over = passed_over
         self._recorded = recorded
         self._extra = extra
@@ -92,13 +96,15 @@ class EffectiveSource:
             read = [parse_address(e.address) for e in self._recorded.inputs if e.role == "accession"]
             last = {each.head: each.number or 0 for each in read}.get(cooldown)
             return [each for each in documents if last is None or each.number <= last]
+        if self._withdrawn_too:
+            return documents
         if cooldown in self.withdrawn:
             return []
         return [each for each in documents if each.address not in self.withdrawn]
 
     def _without_withdrawn(self, document: AccessionDocument) -> AccessionDocument:
         gone = {each.name for each in document.sweeps if f"{document.cooldown}/{each.name}" in self.withdrawn}
-        if not gone or self._recorded is not None:
+        if not gone or self._withdrawn_too:
             return document
         kept = tuple(each for each in document.sweeps if each.name not in gone)
         return document.model_copy(update={"sweeps": kept})
@@ -126,7 +132,7 @@ class EffectiveSource:
         BadRequest
             If it is withdrawn, and is not read again for a recorded reduction.
         """
-        if address in self.withdrawn and self._recorded is None:
+        if address in self.withdrawn and not self._withdrawn_too:
             raise BadRequest(
                 f"{address} is withdrawn: {self.withdrawn[address]}",
                 remedy="say what holds instead: stillroom amend with [[use]] or [[calibration]], "

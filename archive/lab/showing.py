@@ -7,12 +7,14 @@ from dataclasses import asdict
 from typing import Any
 
 from archive.errors import UnknownAddress
+from archive.lab.effective import EffectiveSource
+from archive.lab.marks import marks_of
+from archive.lab.reducing import plans
 from archive.lab.source import LabSource, key_of
 from archive.reduction.budget import budget
-from archive.reduction.planning import shipped_plans
 from schemas.address import Address, parse_address
 from schemas.base import Record
-from schemas.lineage import OutputEntry, ReductionDocument, SweepEntry
+from schemas.lineage import AccessionDocument, OutputEntry, ReductionDocument, SweepEntry
 
 __all__ = ["show"]
 
@@ -38,8 +40,10 @@ def show(source: LabSource, text: str) -> dict[str, Any]:
         "reduction": _reduction,
         "output": _output,
         "record": _record,
+        "amendment": _act,
+        "withdrawal": _act,
     }[address.kind](source, address)
-    return {"address": text, **shown}
+    return {"address": text, "what": shown["what"], **marks_of(source, address), **shown}
 
 
 def _plain(record: Record) -> dict[str, Any]:
@@ -47,8 +51,13 @@ def _plain(record: Record) -> dict[str, Any]:
     return content
 
 
+def _read(source: LabSource, cooldown: str) -> list[AccessionDocument]:
+    """Accessions of a cooldown as they are to be read; withdrawn ones too, since whatever has an address is shown."""
+    return EffectiveSource(source, withdrawn_too=True).accessions(cooldown)
+
+
 def _name(source: LabSource, address: Address) -> dict[str, Any]:
-    documents = source.accessions(address.head)
+    documents = _read(source, address.head)
     if not documents:
         return _record(source, address)
     newest = documents[-1]
@@ -62,7 +71,8 @@ def _name(source: LabSource, address: Address) -> dict[str, Any]:
         "cryostat": newest.sheet.cryostat,
         "gas_end": _plain(newest.sheet.gas_end),
         "accessions": [document.address for document in documents],
-        "sweeps": [f"{address.head}/{row.name}" for row in source.index.sweeps(address.head)],
+        "amendments": [row.address for row in source.index.amendments(address.head)],
+        "sweeps": [f"{address.head}/{row.name}" for row in source.index.sweeps(address.head, withdrawn=True)],
         "doses": [_plain(dose) for dose in newest.doses],
         "reductions": [
             row.address for row in source.index.reductions(cooldown=address.head, newest_only=True)
@@ -92,25 +102,29 @@ def _raw(source: LabSource, address: Address) -> dict[str, Any]:
     raise UnknownAddress(f"{accession} holds no raw file {address.raw}", expected=f"one of: {names}, ...")
 
 
-def _entry(source: LabSource, address: Address) -> tuple[str, SweepEntry]:
-    document = source.holding(address.head, address.item or "")
-    return document.address, next(entry for entry in document.sweeps if entry.name == address.item)
+def _entry(source: LabSource, address: Address) -> tuple[AccessionDocument, SweepEntry]:
+    for document in reversed(_read(source, address.head)):
+        for entry in document.sweeps:
+            if entry.name == address.item:
+                return document, entry
+    raise UnknownAddress(
+        f"there is no sweep {address.sweep} in this archive", remedy="list them with: stillroom search"
+    )
 
 
 def _item(source: LabSource, address: Address) -> dict[str, Any]:
-    documents = source.accessions(address.head)
+    documents = _read(source, address.head)
     for dose in documents[-1].doses if documents else ():
         if dose.name == address.item:
             written = next(each for each in documents[-1].sheet.dose if each.name == dose.name)
             return {"what": "dose", **_plain(dose), "sheet": _plain(written)}
-    accession, entry = _entry(source, address)
-    sheet = source.accession(accession).sheet
-    written_sweep = next(each for each in sheet.sweep if each.name == entry.name)
+    document, entry = _entry(source, address)
+    written_sweep = next(each for each in document.sheet.sweep if each.name == entry.name)
     reductions = source.index.reductions(sweep=f"{address.head}/{address.item}")
-    results = source.index.results(sweep=f"{address.head}/{address.item}")
+    results = source.index.results(sweep=f"{address.head}/{address.item}", withdrawn=True)
     return {
         "what": "sweep",
-        "accession": accession,
+        "accession": document.address,
         **_plain(entry),
         "sheet": _plain(written_sweep),
         "reductions": [row.address for row in reductions],
@@ -121,6 +135,8 @@ def _item(source: LabSource, address: Address) -> dict[str, Any]:
                 "uncertainty": row.uncertainty,
                 "unit": row.unit,
                 "verdict": row.verdict,
+                **({"withdrawn": True} if row.withdrawn else {}),
+                **({"rests_on_withdrawn": True} if row.flagged else {}),
             }
             for row in results
         ],
@@ -133,12 +149,12 @@ def _item(source: LabSource, address: Address) -> dict[str, Any]:
 
 
 def _channel(source: LabSource, address: Address) -> dict[str, Any]:
-    accession, entry = _entry(source, address)
+    document, entry = _entry(source, address)
     for channel in entry.channels:
         if channel.name == address.part:
             return {
                 "what": "channel",
-                "accession": accession,
+                "accession": document.address,
                 "sweep": address.sweep,
                 "rows": entry.rows,
                 **_plain(channel),
@@ -190,6 +206,17 @@ def _named(document: ReductionDocument, address: Address) -> OutputEntry:
     raise UnknownAddress(f"{document.address} has no output {address.part}", expected=f"one of: {names}")
 
 
+def _act(source: LabSource, address: Address) -> dict[str, Any]:
+    key = key_of(address.text)
+    if not source.store.contains(key):
+        raise UnknownAddress(f"there is no {address.kind} {address.text} in this archive")
+    sha256, size = source.index.sealed_files()[key]
+    content = _plain(source.document(key))
+    # How sweeps are found from now on is for the index; the differences say it to people.
+    content.pop("entries", None)
+    return {"what": address.kind, "sha256": sha256, "size": size, **content}
+
+
 def _record(source: LabSource, address: Address) -> dict[str, Any]:
     record = source.find_record(address.text)
     if record is not None:
@@ -199,9 +226,9 @@ def _record(source: LabSource, address: Address) -> dict[str, Any]:
             **_plain(record),
             "revisions": sorted(row.address for row in rows),
         }
-    for plan in shipped_plans():
-        if address.text in (plan.name, plan.address):
-            return {"what": "plan", **_plain(plan)}
+    fitting = [each for each in plans(source) if address.text in (each.name, each.address)]
+    if fitting:
+        return {"what": "plan", **_plain(max(fitting, key=lambda each: each.revision))}
     revisions = source.index.records(name=address.head)
     if revisions:
         held = ", ".join(sorted(row.address for row in revisions))

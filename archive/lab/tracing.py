@@ -14,7 +14,9 @@ from pathlib import Path
 
 from archive.errors import ArchiveError, BadRequest
 from archive.intake.sheet import LineMap
+from archive.lab.effective import EffectiveSource
 from archive.lab.source import LabSource, key_of
+from archive.reduction.source import Source
 from archive.reduction.trace import TraceNode, trace, trace_step
 from schemas.address import parse_address
 from schemas.lineage import AccessionDocument
@@ -121,8 +123,18 @@ def sources_of_figure(path: Path) -> list[str]:
 def _one(source: LabSource, text: str) -> TraceNode:
     step = _STEP.match(text)
     if step is not None:
-        return trace_step(step["reduction"], int(step["number"]), source)
-    return trace(text, source)
+        read = _as_recorded(source, step["reduction"])
+        return trace_step(step["reduction"], int(step["number"]), read)
+    return trace(text, _as_recorded(source, text))
+
+
+def _as_recorded(source: LabSource, text: str) -> Source:
+    """The archive as the reduction that an address names read it: with its own amendments and revisions."""
+    try:
+        reduction = parse_address(text).reduction
+    except ValueError:
+        return source
+    return source if reduction is None else EffectiveSource(source, recorded=source.reduction(reduction))
 
 
 def _led_home(source: LabSource, node: TraceNode, seen: dict[str, _Sheet]) -> TraceNode:
