@@ -35,7 +35,8 @@ class DrawnInput:
 class DrawnStep:
     """A step, with the choices that are held and what is drawn of its own uncertainty.
 
-    `known` is its outcome where nothing that it takes is drawn: a ledger of doses is not added up again in every trial.
+    `stated` are the contributions that it stated in the reduction: a fit that is only moved, with its choices held, may
+    state none. `known` is its outcome where nothing that it takes is drawn: a ledger of doses is not added up again in every trial.
     """
 
     label: str
@@ -45,6 +46,7 @@ class DrawnStep:
     held: dict[str, Any]
     renamed: dict[str, str]
     own: OwnParts
+    stated: dict[str, dict[str, FloatArray]]
     known: Outcome | None = None
 
 
@@ -147,7 +149,7 @@ def _given(step: DrawnStep, outcome: Outcome, z: _Numbers, rng: np.random.Genera
     """Return the outputs of a step, moved by what the step itself is uncertain about."""
     moved = {output: np.array(outcome.array(output)) for output in outcome.outputs}
     for output in moved:
-        for name, part in outcome.shared.get(output, {}).items():
+        for name, part in (outcome.shared.get(output) or step.stated.get(output, {})).items():
             factor = step.own.sources.get(name, 0.0 if name in step.renamed else 1.0)
             if factor:
                 moved[output] = moved[output] + factor * z[step.renamed.get(name, name)] * np.asarray(part)
