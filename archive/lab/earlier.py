@@ -6,7 +6,7 @@ from collections.abc import Collection
 
 import numpy as np
 
-from archive.intake.checks.check import History
+from archive.intake.checks.check import History, LinearRegime
 from archive.intake.checks.rows import noise
 from archive.lab.source import LabSource
 
@@ -31,6 +31,7 @@ def history(source: LabSource, cooldown: str, cells: Collection[str]) -> History
         cooldown=cooldown,
         files=files,
         scatter={cell: found for cell in cells if (found := _scatter(source, cooldown, cell))},
+        regimes={cell: regime for cell in cells if (regime := _regime(source, cooldown, cell))},
     )
 
 
@@ -49,3 +50,17 @@ def _scatter(source: LabSource, cooldown: str, cell: str) -> float | None:
         if np.isfinite(values).sum() > 2:
             found.append(noise(values) / float(np.nanmedian(values)))
     return float(np.median(found)) if found else None
+
+
+def _regime(source: LabSource, cooldown: str, cell: str) -> LinearRegime | None:
+    """Rim speed up to which the newest drive sweep of other cooldowns found a cell to be linear."""
+    for row in source.newest_sweeps(cell, kind="drive-sweep"):
+        documents = [] if row.cooldown == cooldown else source.reductions("drive-linearity", row.address)
+        if not documents:
+            continue
+        values = {output.name: output.value for output in documents[-1].outputs}
+        for name, found in (("linear_velocity", True), ("tested_velocity", False)):
+            value = values.get(name)
+            if value is not None and value > 0:
+                return LinearRegime(value, found, documents[-1].address)
+    return None

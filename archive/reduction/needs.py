@@ -48,6 +48,9 @@ def needed_reductions(
             (address,) = _addresses(given[name])
             found[name] = _given(source, plan, need, address)
             continue
+        if given is not None and need.optional:
+            # What a recorded reduction did without, its repetition does without, too.
+            continue
         best = _newest(need, facts, source)
         if best is not None:
             found[name] = best
@@ -84,6 +87,8 @@ def gathered_reductions(
             continue
         if given is not None and name in given:
             documents = [_given(source, plan, need, address) for address in _addresses(given[name])]
+        elif given is not None and need.optional:
+            continue
         else:
             documents = _newest_of_each(plan, name, need, facts, source)
         if documents:

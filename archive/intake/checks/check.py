@@ -11,9 +11,28 @@ from archive.intake.thresholds import Thresholds
 from schemas.finding import Finding
 from schemas.thermometer import Calibration
 
-__all__ = ["Check", "CheckFunction", "History"]
+__all__ = ["Check", "CheckFunction", "History", "LinearRegime"]
 
 CheckFunction = Callable[[Reading, Thresholds], Iterable[Finding]]
+
+
+@dataclass(frozen=True)
+class LinearRegime:
+    """Rim speed up to which a cell was seen to be linear.
+
+    Attributes
+    ----------
+    velocity : float
+        m/s, rms.
+    found : bool
+        True: beyond it period or dissipation had changed; False: nothing was tried beyond it.
+    address : str
+        Reduction that says so.
+    """
+
+    velocity: float
+    found: bool
+    address: str
 
 
 @dataclass(frozen=True)
@@ -28,6 +47,8 @@ class History:
         SHA-256 of raw files of sweeps to the address that holds them.
     scatter : mapping of str to float
         Usual relative scatter of the period from row to row, by name of the cell.
+    regimes : mapping of str to LinearRegime
+        Up to which rim speed the newest drive sweep found a cell to be linear, by name of the cell.
     calibrations : mapping of str to tuple of Calibration
         Those that the archive holds, by name of the thermometer.
     made : mapping of str to Calibration or str
@@ -37,6 +58,7 @@ class History:
     cooldown: str | None = None
     files: Mapping[str, str] = field(default_factory=dict)
     scatter: Mapping[str, float] = field(default_factory=dict)
+    regimes: Mapping[str, LinearRegime] = field(default_factory=dict)
     calibrations: Mapping[str, tuple[Calibration, ...]] = field(default_factory=dict)
     made: Mapping[str, Calibration | str] = field(default_factory=dict)
 

@@ -26,6 +26,7 @@ __all__ = [
     "PEAK",
     "amplitude_dependence",
     "diffusion_length_m",
+    "drive_beyond_regime",
     "drive_linearity",
     "period_scatter",
     "period_scatter_history",
@@ -143,6 +144,27 @@ def _film_sweeps(reading: Reading) -> Iterator[tuple[SweepTable, float, float]]:
         )
         if film and velocity is not None and frequency is not None:
             yield table, velocity, frequency
+
+
+def drive_beyond_regime(reading: Reading, thresholds: Thresholds, earlier: History) -> Iterator[Finding]:
+    """Find temperature sweeps driven beyond the rim speed up to which an earlier cooldown found the cell to be linear."""
+    for table in tables(reading, "temperature-sweep", "dose-run"):
+        cell, velocity = reading.cell_of(table.sweep), _rim_velocity(reading, table)
+        regime = None if cell is None else earlier.regimes.get(cell.name)
+        if cell is None or regime is None or velocity is None:
+            continue
+        limit = regime.velocity * PEAK["rms"]
+        if velocity > limit:
+            words = "is known to be linear" if regime.found else "was tried"
+            yield on_sweep(
+                reading,
+                table,
+                "drive-beyond-regime",
+                "warning" if regime.found else "note",
+                f"the rim of {table.name} moves at up to {number(1e3 * velocity, 'mm/s', 3)} (peak), faster than {cell.name} {words}",
+                expected=f"at most {number(1e3 * limit, 'mm/s', 3)} (peak), by {regime.address}",
+                remedy="drive less, take a drive sweep that reaches as far, or waive it with the reason",
+            )
 
 
 def velocity_film(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]:

@@ -154,6 +154,12 @@ CHECKS: tuple[Check, ...] = (
         "the period does not depend on the drive, amplitude_shift_sigma",
         drive.amplitude_dependence,
     ),
+    Check(
+        "drive-beyond-regime",
+        "the rim is no faster than the cell was found linear in earlier cooldowns",
+        drive.drive_beyond_regime,
+        uses_history=True,
+    ),
     Check("velocity-film", "the rim is slow for vortex pairs, film_velocity_fraction", drive.velocity_film),
     Check("velocity-critical", "the rim is slow for films, film_velocity_m_per_s", drive.velocity_critical),
     Check(

@@ -10,6 +10,7 @@ import numpy as np
 import pytest
 
 from archive.intake.checks import CHECKS, Check, History, registry, run_checks
+from archive.intake.checks.check import LinearRegime
 from archive.intake.reading import Reading
 from archive.intake.thresholds import Thresholds
 from archive.physics.helium_vapour import saturated_vapour_pressure
@@ -556,7 +557,7 @@ GOOD: dict[str, Build] = {
     ),
 }
 
-ELSEWHERE = {"files-not-named", "period-scatter-history", "file-archived"}
+ELSEWHERE = {"files-not-named", "period-scatter-history", "file-archived", "drive-beyond-regime"}
 """Checks of a folder on disk and of the archive's memory, tested on their own."""
 
 
@@ -904,6 +905,22 @@ def test_scatter_is_compared_with_the_cell_s_own() -> None:
     # 1.5 ps of 1 ms
     assert found(make_reading(), "period-scatter-history", history(scatter={"TO-4": 1.5e-10}))
     assert not found(make_reading(), "period-scatter-history", history(scatter={"TO-4": 1.5e-9}))
+
+
+@pytest.mark.parametrize(
+    ("velocity", "known", "severity"),
+    [(1e-9, True, "warning"), (1e-9, False, "note"), (1e3, True, None)],
+    ids=["beyond the linear regime", "beyond what was tried", "within"],
+)
+def test_a_sweep_beyond_the_linear_regime_of_earlier_cooldowns(
+    velocity: float,
+    known: bool,  # noqa: FBT001 - a table of cases
+    severity: str | None,
+) -> None:
+    regime = LinearRegime(velocity, known, "2025-03/s004@drive-linearity.1")
+    findings = found(make_reading(), "drive-beyond-regime", history(regimes={"TO-4": regime}))
+    assert {finding.severity for finding in findings} == ({severity} if severity else set())
+    assert all("2025-03/s004@drive-linearity.1" in (finding.expected or "") for finding in findings)
 
 
 # Running.
