@@ -37,6 +37,7 @@ _SUPERSCRIPT = str.maketrans("0123456789-", "⁰¹²³⁴⁵⁶⁷⁸⁹⁻")
 _WIDE = Context(prec=700, rounding=ROUND_HALF_EVEN)
 # A value without uncertainty is shown as a person wrote it; beyond these a power of ten reads better.
 _LARGE, _SMALL = 6, -4
+_POWER_TAKEN = 9.95
 # More digits than this come from converting units, not from a person or an instrument (common practice, no source).
 _MOST_DIGITS = 12
 
@@ -246,8 +247,10 @@ def in_preferred_unit(quantity: Quantity) -> Quantity:
     Returns
     -------
     Quantity
-        In the largest display unit that leaves at least one digit before the point; the smallest if none does, the
-        middle of the list for zero. Exact fractions convert, so the digits shown do not depend on the way.
+        In the largest display unit that leaves at least one digit before the point; where a standard uncertainty of 10
+        or more would take a power of ten out there, the next larger one, so that 60(140) nmol reads 0.06(14) umol. The
+        smallest if none leaves a digit, the middle of the list for zero. Exact fractions convert, so the digits shown do
+        not depend on the way.
     """
     units = [
         unit
@@ -258,5 +261,9 @@ def in_preferred_unit(quantity: Quantity) -> Quantity:
     size = [max(abs(one.value), one.uncertainty or 0.0) for one in shown]
     if size[0] == 0:
         return shown[len(shown) // 2]
-    good = [one for one, big in zip(shown, size, strict=True) if big >= 1]
-    return good[-1] if good else shown[0]
+    place = max((place for place, big in enumerate(size) if big >= 1), default=0)
+    spread = shown[place].uncertainty
+    # 9.95 rounds to 10, which takes a power of ten out as well.
+    if spread is not None and spread >= _POWER_TAKEN and place + 1 < len(shown):
+        place += 1
+    return shown[place]

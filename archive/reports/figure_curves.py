@@ -9,29 +9,11 @@ from archive.reports.figure_style import HEIGHTS, Column, Drawn, NoFigure, name_
 from archive.reports.figure_values import column_of, spread_of
 from archive.reports.scope import Scope
 from archive.reports.small_plots import in_unit, symbol
+from archive.reports.small_reductions import shown_arrays
 from schemas.lineage import OutputEntry, ReductionDocument
 from schemas.units import parse_unit
 
-__all__ = ["curve", "shown_arrays"]
-
-# Along which output, and which one is shown, in order of liking.
-_ALONG = (
-    "middle_temperature", "temperature", "averaging_time", "coverage", "coverage_from_amount", "relative_pressure_of_rows", "amount",
-)  # fmt: skip
-_SHOWN = (
-    "superfluid_density", "molar_heat_capacity", "heat_capacity", "superfluid_fraction", "allan_deviation", "period_drop", "dissipation",
-)  # fmt: skip
-
-
-def shown_arrays(reduction: ReductionDocument) -> tuple[OutputEntry, OutputEntry] | None:
-    """Return the array that is shown of a reduction, after the one that it is shown along; None where no two have one length."""
-    arrays = {each.name: each for each in reduction.outputs if each.rows}
-    along = next((arrays[name] for name in _ALONG if name in arrays), None)
-    if along is None:
-        return None
-    alike = [each for each in arrays.values() if each.rows == along.rows and each.name not in _ALONG]
-    shown = next((arrays[name] for name in _SHOWN if arrays.get(name) in alike), alike[-1] if alike else None)
-    return None if shown is None else (along, shown)
+__all__ = ["curve"]
 
 
 def curve(scope: Scope, reduction: ReductionDocument) -> Drawn:

@@ -28,6 +28,7 @@ from archive.reports.figures_current import current_figure
 from archive.reports.figures_drive import linearity_figure, stability_figure
 from archive.reports.figures_film import dynamic_figure, porous_figure, sweep_figure, transition_figure
 from archive.reports.figures_jump import jump_figure
+from archive.reports.figures_lines import pulse_figure, spectrum_figure, tracking_figure
 from archive.reports.figures_oscillator import (
     background_figure,
     decay_figure,
@@ -45,15 +46,20 @@ MAKERS: Final[dict[str, Callable[[Scope, ReductionDocument], Drawn]]] = {
     "bulk-superfluid-density": superfluid_law_figure,
     "dose-run": dose_figure,
     "drive-linearity": linearity_figure,
+    "drive-pulse": pulse_figure,
     "empty-calorimeter": addenda_figure,
     "empty-cell": background_figure,
     "film-dynamic": dynamic_figure,
     "film-transition": transition_figure,
     "heat-capacity": heat_capacity_figure,
     "isotherm-bet": isotherm_figure,
+    "isotherm-from-doses": isotherm_figure,
+    "line-tracking": tracking_figure,
     "persistent-current": current_figure,
     "porous-film": porous_figure,
+    "pulse-lines": spectrum_figure,
     "resonance": resonance_figure,
+    "resonance-tracking": tracking_figure,
     "ringdown": decay_figure,
     "stability": stability_figure,
     "thermometer-calibration": calibration_figure,

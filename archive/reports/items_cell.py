@@ -6,6 +6,7 @@ from collections.abc import Callable, Iterator
 
 from archive.reports.checklist import Item, Said, absence, sentence
 from archive.reports.numbers import shown
+from archive.reports.prose import article
 from archive.reports.scope import Scope
 from schemas.cell import Cell, TorsionalOscillator
 from schemas.quantity import Quantity
@@ -64,7 +65,7 @@ def _each_substrate(item: str, says: Callable[[Substrate], str | None]) -> Calla
 def _shape(cell: Cell) -> str | None:
     if not (cell.shape and cell.material and cell.seal):
         return None
-    return f"The cell, revision {cell.address}, is a {cell.shape} of {cell.material}, sealed by {cell.seal}."
+    return f"The cell, revision {cell.address}, is {article(cell.shape)} {cell.shape} of {cell.material}, sealed by {cell.seal}."
 
 
 def _volume(cell: Cell) -> str | None:

@@ -8,6 +8,7 @@ from archive.reports.checklist import Item, Said, absence, sentence
 from archive.reports.items_cell import plain
 from archive.reports.items_gas import step_sentences
 from archive.reports.numbers import shown_value
+from archive.reports.prose import article
 from archive.reports.scope import Scope
 from schemas.cell import Cryostat, ThirdSoundRing
 from schemas.lineage import SweepEntry, Value
@@ -172,7 +173,7 @@ def _clock(scope: Scope) -> Iterator[Said]:
         cryostat = held.named(held.sheet.cryostat)
         if isinstance(cryostat, Cryostat) and cryostat.frequency_reference:
             yield sentence(
-                f"Frequencies in {held.sheet.name} refer to a {cryostat.frequency_reference}.",
+                f"Frequencies in {held.sheet.name} refer to {article(cryostat.frequency_reference)} {cryostat.frequency_reference}.",
                 cryostat.address,
             )
         else:

@@ -16,6 +16,7 @@ from archive.reports.numbers import CODES, shown_output, shown_value, words
 from archive.reports.prose import prose, symbol_of
 from archive.reports.set_up import calibration_rows, record_rows
 from archive.reports.small_plots import sweep_plot
+from archive.reports.small_reductions import reduction_plot
 from archive.reports.standing import Standing
 from schemas.cooldown import EFFECTS, Effect
 from schemas.lineage import InputEntry, OutputEntry, ReductionDocument, StepRecord
@@ -82,6 +83,10 @@ def _plots(held: Holdings) -> Iterator[dict[str, Any]]:
     for taken in held.sweeps:
         drawn = sweep_plot(held, taken)
         yield {"name": taken.sheet.name, "kind": taken.sheet.kind.replace("-", " "), "svg": drawn}
+        for reduction in held.reductions_of(taken.sheet.name):
+            found = reduction_plot(held, reduction)
+            if found is not None:
+                yield {"name": reduction.address.partition("/")[2], "kind": found[1], "svg": found[0]}
 
 
 def _doses(held: Holdings) -> Iterator[dict[str, Any]]:

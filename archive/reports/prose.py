@@ -18,7 +18,7 @@ from schemas.kinds import KINDS
 from schemas.uncertain_text import RoundedText
 from schemas.units import parse_unit
 
-__all__ = ["Piece", "Prose", "breakable", "prose", "symbol_of"]
+__all__ = ["Piece", "Prose", "article", "breakable", "prose", "symbol_of"]
 
 # Words longer than this may break: names have up to 64 characters, addresses 200.
 _LONGEST_UNBROKEN = 20
@@ -112,8 +112,22 @@ def prose(sentence: str) -> Prose:
     return Prose(sentence, tuple(pieces))
 
 
+def article(words: str) -> str:
+    """Return the indefinite article that words of a record take.
+
+    Examples
+    --------
+    >>> article("annulus"), article("cylinder"), article("U-tube")
+    ('an', 'a', 'a')
+    """
+    return "an" if words[:1].lower() in "aeio" and words else "a"
+
+
 def symbol_of(name: str) -> Prose:
-    """Return the name of an output as a symbol (``T_KT``) or as words (``mass_sensitivity``)."""
+    """Return the name of an output as a symbol (``T_KT``), a symbol with words (``T_KT_by_fit``) or as words (``mass_sensitivity``)."""
+    begin = re.fullmatch(r"([A-Za-z]_[A-Za-z]{1,6})_([a-z].*)", name)
+    if begin:
+        return prose(f"{begin[1]} {begin[2].replace('_', ' ')}")
     found = prose(name)
     return found if found.pieces and found.pieces[0].style else prose(name.replace("_", " "))
 
