@@ -159,10 +159,11 @@ class Journal:
         found: list[Damage] = []
         before, number, sealed = BEGINNING, 0, 0
         entered: dict[str, str] = {}
+        spoilt: list[int] = []
         for place, line in enumerate(self._lines(), 1):
             entry = _read(line)
             if entry is None:
-                found.append(_damaged(f"line {place} is not as it was written"))
+                spoilt.append(place)
             else:
                 sealed += entry.act.key is not None
                 if entry.before != before:
@@ -179,6 +180,13 @@ class Journal:
                 if entry.act.key is not None and entry.act.sha256 is not None:
                     entered[entry.act.key] = entry.act.sha256
             before = _digest(line)
+        if spoilt:
+            where = (
+                f"line {spoilt[0]} is"
+                if len(spoilt) == 1
+                else f"{len(spoilt)} lines, the first of them line {spoilt[0]}, are"
+            )
+            found.insert(0, _damaged(f"{where} not as written"))
         for key in sorted(entered):
             if key not in recorded:
                 found.append(

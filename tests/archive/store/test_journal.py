@@ -72,7 +72,7 @@ def test_a_forged_line_does_not_fit_the_next(journal: Journal) -> None:
     forged["by"] = "nobody"
     journal.path.write_bytes(lines[0] + json.dumps(forged, sort_keys=True).encode() + b"\n" + lines[2])
     told = [each.what for each in journal.damage(RECORDED)]
-    assert any("line 2 is not as it was written" in each for each in told)
+    assert any("line 2 is not as written" in each for each in told)
     assert any("line 3 does not hold the digest" in each for each in told)
 
 
