@@ -39,7 +39,7 @@ _TIMES_TEN = re.compile(r"(?<=[0-9)]) ?[×x*] ?10 ?\^ ?\(?([+-]?[0-9]{1,3})\)?(?
 _COMMA = re.compile(r"[+-]?[0-9]+,[0-9]")
 _NOT_A_NUMBER = re.compile(r"[+-]?(?:nan|inf|infinity)\b", re.I)
 _EXACT = re.compile(r" ?\(?exact\)?\Z")
-_ON_SCALE = re.compile(r"(?:\A|(?<= ))on ([A-Za-z0-9][A-Za-z0-9 ._+-]{0,39})\Z")
+_ON_SCALE = re.compile(r"(?:\A|(?<= ))on ([A-Za-z0-9][A-Za-z0-9 :._+-]{0,45})\Z")
 _CONVENTION = re.compile(r"(?:\A| )(peak[- ]to[- ]peak|p-p|pk-pk|rms|peak|absolute|gauge)\Z")
 _SAME_WORD = {"peak to peak": "peak-to-peak", "p-p": "peak-to-peak", "pk-pk": "peak-to-peak"}
 

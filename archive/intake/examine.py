@@ -15,6 +15,7 @@ from archive.intake.folder import SHEET_NAME
 from archive.intake.reading import Reading, SweepTable
 from archive.intake.thresholds import Thresholds
 from archive.intake.waivers import apply_waivers
+from archive.reduction.calibration_sources import temperature_contributions
 from archive.reduction.ledger import gas_ledger
 from archive.reduction.thermometry_steps import calibrated_temperature
 from schemas.finding import Finding
@@ -85,12 +86,10 @@ def add_temperatures(reading: Reading, table: SweepTable) -> None:
         return
     table.scale, table.calibration = calibration.scale, calibration
     table.outside_calibration = np.isnan(table.temperature) & np.isfinite(table.columns[name])
-    spread = calibration.uncertainty
-    table.temperature_uncertainty = (
-        np.full(len(values), spread.si)
-        if spread is not None
-        else np.abs(table.temperature) * (calibration.relative_uncertainty or 0.0)
-    )
+    square = np.zeros(len(values))
+    for _, part in temperature_contributions(calibration, values, table.temperature):
+        square += part**2
+    table.temperature_uncertainty = np.sqrt(square)
 
 
 def _cannot(reading: Reading, table: SweepTable, name: str, channel: Channel, why: str) -> None:

@@ -43,6 +43,8 @@ _LARGEST_RATIO: Final = 1.0
 def dip_shape(bias: ArrayLike) -> Floats:
     """Return the shape of the dip, g(x) = (x sinh x - 4 sinh^2(x/2))/(8 sinh^4(x/2)), over its value at zero bias.
 
+    It is the second derivative of (x/2) coth(x/2) (derived), which the golden-rule rate of a junction brings in.
+
     Parameters
     ----------
     bias : float or array_like
