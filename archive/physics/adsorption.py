@@ -130,7 +130,11 @@ def bet_area(
         inside = (bounds[0] <= x) & (x <= bounds[1])
         return _evaluated(x, n, inside, cross_section, least_r_squared)
     best: BetArea | None = None
-    for inside in _candidates(x, n):
+    for first, last in _candidates(x, n, least_r_squared):
+        if best is not None and (last - first, x[last - 1] - x[first]) < _rank(best)[:2]:
+            break
+        inside = np.zeros(x.shape, dtype=np.bool_)
+        inside[first:last] = True
         result = _evaluated(x, n, inside, cross_section, least_r_squared)
         if result.accepted and (best is None or _rank(result) > _rank(best)):
             best = result
@@ -146,19 +150,35 @@ def _rank(result: BetArea) -> tuple[int, float, float]:
     return result.points, result.high - result.low, result.r_squared
 
 
-def _candidates(x: FloatArray, n: FloatArray) -> list[npt.NDArray[np.bool_]]:
-    """Return every run of points over which n(1 - x) rises; points at one x stay together."""
+def _candidates(x: FloatArray, n: FloatArray, least_r_squared: float) -> list[tuple[int, int]]:
+    """Return runs of points over which n(1 - x) rises and which may be straight, the largest first.
+
+    Points at one x stay together. The sums are rough: they leave out only runs that are clearly bent, all others are looked at in full.
+    """
     steps, mean = _means(x, n)
     rising = np.diff(mean * (1 - steps)) > 0
+    starts, ends = np.searchsorted(x, steps, side="left"), np.searchsorted(x, steps, side="right")
+    ordinate = x / (n * (1 - x))
     found = []
     for first in range(steps.size):
-        for last in range(first + 1, steps.size):
-            if not rising[last - 1]:
-                break
-            inside = (x >= steps[first]) & (x <= steps[last])
-            if np.count_nonzero(inside) >= LEAST_POINTS:
-                found.append(inside)
-    return found
+        falls = np.flatnonzero(~rising[first:])
+        stop = steps.size - 1 if falls.size == 0 else first + int(falls[0])
+        rows = slice(starts[first], ends[stop])
+        dx, dy = x[rows] - x[starts[first]], ordinate[rows] - ordinate[starts[first]]
+        count = np.arange(1, dx.size + 1)
+        sx, sy = np.cumsum(dx), np.cumsum(dy)
+        xx, yy, xy = (
+            np.cumsum(one * other) - a * b / count
+            for one, other, a, b in ((dx, dx, sx, sx), (dy, dy, sy, sy), (dx, dy, sx, sy))
+        )
+        with np.errstate(divide="ignore", invalid="ignore"):
+            straight = xy**2 / (xx * yy) > least_r_squared - 1e-6
+        found += [
+            (int(starts[first]), int(last))
+            for last in ends[first + 1 : stop + 1]
+            if last - starts[first] >= LEAST_POINTS and straight[last - 1 - starts[first]]
+        ]
+    return sorted(found, key=lambda run: (run[1] - run[0], x[run[1] - 1] - x[run[0]]), reverse=True)
 
 
 def _means(x: FloatArray, n: FloatArray) -> tuple[FloatArray, FloatArray]:
