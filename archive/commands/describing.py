@@ -6,8 +6,10 @@ import re
 from collections.abc import Mapping, Sequence
 from typing import Any, Final
 
+import click
+
 from archive.commands.numbers import shown_quantity
-from archive.commands.terminal import say, table
+from archive.commands.terminal import say, styled, table
 
 __all__ = ["describe"]
 
@@ -23,10 +25,11 @@ _COLUMNS: Final[dict[str, tuple[str, ...]]] = {
     "outputs": ("name", "quantity", "rows", "result", "description"),
     "inputs": ("role", "address"),
     "sources": ("name", "level", "description"),
+    "differences": ("field", "before", "after"),
     "findings": ("severity", "place", "what", "remedy"),
 }
 _FIELD: Final = re.compile(r"[a-z][a-z0-9_]*")
-_HIDDEN: Final = frozenset({"address", "what"})
+_HIDDEN: Final = frozenset({"address", "what", "withdrawn", "rests_on_withdrawn"})
 
 
 def describe(content: Mapping[str, Any]) -> None:
@@ -38,6 +41,12 @@ def describe(content: Mapping[str, Any]) -> None:
         As `Archive.show` gives it, with `address` and `what`.
     """
     say(f"{content['address']}: {content['what']}")
+    if content.get("withdrawn"):
+        click.echo(styled("WITHDRAWN", "red", bold=True) + ": ", nl=False)
+        say(str(content["withdrawn"]))
+    for each in content.get("rests_on_withdrawn") or ():
+        click.echo(styled("RESTS ON SOMETHING WITHDRAWN", "red", bold=True) + ": ", nl=False)
+        say(str(each))
     _lines({name: value for name, value in content.items() if name not in _HIDDEN}, "  ")
 
 

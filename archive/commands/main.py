@@ -16,6 +16,7 @@ from typing_extensions import override
 
 from archive import __version__
 from archive.commands import (
+    acts_commands,
     archive_commands,
     bench_commands,
     calibration_commands,
@@ -43,6 +44,10 @@ _COMMANDS: Final = (
     intake_commands.ingest,
     reduce_commands.plans,
     reduce_commands.reduce,
+    acts_commands.stale,
+    acts_commands.revise,
+    acts_commands.amend,
+    acts_commands.withdraw,
     search_command.search,
     lineage_commands.show,
     lineage_commands.trace,
@@ -96,6 +101,7 @@ def stillroom(archive_dir: Path | None) -> None:
     Describe a finished cooldown:   stillroom draft FOLDER, then fill in what it marks
     See every fault at once:        stillroom check FOLDER
     Take it in and reduce it:       stillroom ingest FOLDER, stillroom reduce 2026-03
+    Correct it afterwards:          stillroom amend SHEET.toml, stillroom stale, stillroom reduce --stale
     Find and cite:                  stillroom search --coverage "20:35 umol/m^2"
     At the bench:                   stillroom convert "31.4 umol/m^2" --to atoms/nm^2
 

@@ -114,7 +114,13 @@ def _show_plan(plan: Plan) -> None:
 
 
 @click.command(short_help="Carry out plans on a cooldown.")
-@click.argument("cooldown")
+@click.argument("cooldown", required=False)
+@click.option(
+    "--stale",
+    "stale_only",
+    is_flag=True,
+    help="Make anew what `stillroom stale` lists, with the newest revisions that hold; of COOLDOWN, or of all.",
+)
 @click.option(
     "--plan", metavar="PLAN", help="Name of a plan, or a plan file (.toml); else every plan that applies."
 )
@@ -145,7 +151,8 @@ def _show_plan(plan: Plan) -> None:
 @strict_option
 def reduce(
     *,
-    cooldown: str,
+    cooldown: str | None,
+    stale_only: bool,
     plan: str | None,
     sweep: str | None,
     trials: str | None,
@@ -166,6 +173,7 @@ def reduce(
       stillroom reduce 2026-03
       stillroom reduce 2026-03/s017 --plan film-transition
       stillroom reduce 2026-03 --plan our-film.toml
+      stillroom reduce --stale
       stillroom reduce 2026-03/s017 --plan film-transition --monte-carlo 20000 --workers 4
 
     A reduction by Monte Carlo is a new one unless the newest has the same trials, seed and digits already. Anybody may read
@@ -173,19 +181,26 @@ def reduce(
 
     Exit codes: 1 findings of warning level, with --strict; 2 if a plan could not be carried out (the others were).
     """
-    name, _, part = cooldown.partition("/")
+    _require_target(cooldown, stale_only=stale_only, plan=plan)
+    name, _, part = (cooldown or "").partition("/")
     chosen: str | Path | None = Path(plan) if plan is not None and plan.endswith(".toml") else plan
     request = _request(trials, seed=seed, digits=digits, workers=workers)
     with opening.open_archive(archive_dir) as lab, Progress("reducing") as progress:
-        outcomes = lab.reduce(
-            name,
-            plan=chosen,
-            sweep=sweep or part or None,
-            monte_carlo=request,
-            progress=progress.sentence,
-        )
+        if stale_only:
+            whose = "/".join(each for each in (name, sweep or part) if each) or None
+            outcomes = lab.reduce_stale(whose, monte_carlo=request, progress=progress.sentence)
+        else:
+            outcomes = lab.reduce(
+                name,
+                plan=chosen,
+                sweep=sweep or part or None,
+                monte_carlo=request,
+                progress=progress.sentence,
+            )
     if as_json:
         write_json([_content(outcome) for outcome in outcomes])
+    elif stale_only and not outcomes:
+        say("No reduction is stale.")
     else:
         say_outcomes(outcomes)
     problems = [outcome.problem for outcome in outcomes if outcome.problem is not None]
@@ -200,6 +215,18 @@ def reduce(
         context.exit(max(problem.exit_code for problem in problems))
     if warned and strict:
         context.exit(EXIT_WARNINGS)
+
+
+def _require_target(cooldown: str | None, *, stale_only: bool, plan: str | None) -> None:
+    if cooldown is None and not stale_only:
+        raise BadRequest(
+            "name the cooldown, or its sweep", field="COOLDOWN", remedy="or give --stale for all that is"
+        )
+    if stale_only and plan is not None:
+        raise BadRequest(
+            "--plan means nothing with --stale",
+            remedy="what is stale is made anew by its own plan; leave --plan out",
+        )
 
 
 def _request(trials: str | None, *, seed: int, digits: int, workers: int) -> Request | None:

@@ -97,6 +97,7 @@ def _is_unit(word: str) -> bool:
 @click.option("--sort", type=click.Choice(["date", "coverage", "temperature", "cell", "name"]), default="date",
               show_default=True, help="Order of the list.")  # fmt: skip
 @click.option("--descending", is_flag=True, help="Largest, or latest, first.")
+@click.option("--withdrawn", is_flag=True, help="Withdrawn sweeps too, marked.")
 @click.option("--limit", type=click.IntRange(min=1), default=200, show_default=True, help="At most so many.")
 @click.option("--offset", type=click.IntRange(min=0), default=0, help="After so many left out.")
 @click.option("--csv", "as_csv", is_flag=True, help="Write CSV, with units in the header.")

@@ -22,8 +22,11 @@ def say_sweeps(rows: Sequence[SweepRow]) -> None:
     """Write a table of sweeps, and how many there are."""
     wide = wide_output()
     columns = ["sweep", "kind", *(("begin", "cell") if wide else ()), "umol/m^2", "K", "results"]
+    marked = any(_marks(row) for row in rows)
+    columns += ["mark"] if marked else []
     if rows:
-        table(columns, (_line(row, wide=wide) for row in rows), right=("umol/m^2", "K"))
+        lines = (_line(row, wide=wide) + ([_marks(row)] if marked else []) for row in rows)
+        table(columns, lines, right=("umol/m^2", "K"))
     say(f"{len(rows) or 'No'} sweep{'' if len(rows) == 1 else 's'}.")
 
 
@@ -37,6 +40,14 @@ def _line(row: SweepRow, *, wide: bool) -> list[str | tuple[str, ...]]:
         _temperatures(row),
         tuple(_result(result) for result in row.results[:3]),
     ]
+
+
+def _marks(row: SweepRow) -> tuple[str, ...]:
+    """What was said of a sweep after it was sealed."""
+    marks = [f"WITHDRAWN: {row.withdrawn}"] if row.withdrawn else []
+    marks += [f"amended by {', '.join(row.amended)}"] if row.amended else []
+    marks += [f"{each} RESTS ON SOMETHING WITHDRAWN" for each in row.flagged]
+    return tuple(marks)
 
 
 def _coverage(row: SweepRow) -> str:
@@ -90,6 +101,9 @@ def _content(row: SweepRow) -> dict[str, Any]:
             }
             for result in row.results
         },
+        "withdrawn": row.withdrawn,
+        "amended_by": row.amended,
+        "rests_on_withdrawn": row.flagged,
     }
 
 
@@ -99,16 +113,19 @@ def write_sweeps_csv(rows: Sequence[SweepRow]) -> None:
     header = [
         "address", "cooldown", "kind", "cell", "substrate", "sample", "empty_cell", "begin", "end", "rows",
         "coverage (mol/m^2)", "u(coverage) (mol/m^2)", "temperature_low (K)", "temperature_high (K)", "scale",
+        *(("mark",) if any(_marks(row) for row in rows) else ()),
         *(text for name, unit in found for text in (f"{name} ({unit})", f"u({name}) ({unit})")),
     ]  # fmt: skip
-    write_csv(header, (_cells(row, found) for row in rows))
+    marked = "mark" in header
+    write_csv(header, (_cells(row, found, marked=marked) for row in rows))
 
 
-def _cells(row: SweepRow, found: Sequence[tuple[str, str]]) -> list[Cell]:
+def _cells(row: SweepRow, found: Sequence[tuple[str, str]], *, marked: bool) -> list[Cell]:
     results = {(result.name, result.unit): result for result in row.results}
     cells: list[Cell] = [
         row.address, row.cooldown, row.kind, row.cell, row.substrate, row.sample, row.empty_cell, row.begin, row.end,
         row.rows, row.coverage, row.coverage_uncertainty, row.temperature_low, row.temperature_high, row.scale,
+        *(("; ".join(_marks(row)),) if marked else ()),
     ]  # fmt: skip
     for key in found:
         result = results.get(key)
