@@ -156,7 +156,7 @@ def test_plans_come_in_the_order_in_which_they_need_each_other(tools: Any) -> No
     source, facts = _facts(tools)
     sheet = facts.accession.sheet
     names = [[plan.name for plan in plans_for(sweep, facts.cell, facts.substrate)] for sweep in sheet.sweep]
-    film = ["film-dynamic", "film-transition"]
+    film = ["film-dynamic", "film-transition", "universal-jump"]
     assert names == [["empty-cell"], ["dose-run"], film, film]
     assert plans_for(sheet.sweep[0], None, None) == []
     assert source.cooldowns() == ["2026-03"]
