@@ -119,6 +119,14 @@ def by_integration(x0, c, L, F):
     return (2 / math.pi) / (1 + x0 + real + 1j * (imaginary + 4 * math.pi * F / 7 * free))
 
 
+@pytest.mark.parametrize("ratio", [0.97, 1.01])
+@pytest.mark.parametrize("x0", [-0.97, -0.05])
+def test_far_and_near_starts_against_differential_equations(x0, ratio):
+    start = fixed_start(np.array([ratio]), b=5.5 if x0 < -0.5 else 1.0, x0=x0)
+    expected = by_integration(x0, float(start.invariant[0]), 12.0, 1.3)
+    assert abs(complex_stiffness(start, L=12.0, F=1.3)[0] - expected) <= 1e-10 * abs(expected)
+
+
 @pytest.mark.parametrize("L", [4.0, 12.0])
 @pytest.mark.parametrize("ratio", [0.95, 1.004, 1.02])
 @pytest.mark.parametrize("name", ["v", "b"])
