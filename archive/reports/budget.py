@@ -6,7 +6,7 @@ from typing import Any
 
 from archive.reduction.budget import BudgetRow, budget
 from archive.reports.numbers import shown_value
-from archive.reports.prose import symbol_of
+from archive.reports.prose import Prose, prose, symbol_of
 from schemas.interval_text import contribution_text, interval_text, preferred_unit
 from schemas.lineage import OutputEntry, ReductionDocument
 from schemas.monte_carlo import MonteCarlo, MonteCarloResult
@@ -69,7 +69,7 @@ def _quadratic(rows: list[BudgetRow]) -> float:
 
 def budget_block(
     reduction: ReductionDocument, output: OutputEntry, *, least: float = SMALL
-) -> list[dict[str, str]]:
+) -> list[dict[str, Prose | str]]:
     """Return the budget of a result as lines of a table: source, what is stated, level, sensitivity, contribution, share.
 
     Parameters
@@ -125,12 +125,12 @@ def _line(
     stated: str = "",
     level: str = "",
     sensitivity: str = "",
-) -> dict[str, str]:
+) -> dict[str, Prose | str]:
     return {
-        "source": source,
-        "stated": stated,
+        "source": prose(source),
+        "stated": prose(stated),
         "level": level,
-        "sensitivity": sensitivity,
+        "sensitivity": prose(sensitivity),
         "contribution": contribution,
         "share": f"{percent(share)} %",
     }
@@ -144,7 +144,7 @@ def _stated(row: BudgetRow) -> str:
         unit = "" if stated.unit == "1" else f" {stated.unit}"
         return f"u = {stated.uncertainty:.3g}{unit}"
     kind = "rectangular, " if row.distribution == "rectangular" else ""
-    return kind + shown_value(stated, "").text
+    return kind + shown_value(stated, "").plain
 
 
 def _sensitivity(row: BudgetRow, unit: str) -> str:
