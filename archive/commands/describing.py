@@ -23,7 +23,7 @@ _COLUMNS: Final[dict[str, tuple[str, ...]]] = {
     "sweeps": ("name", "kind", "rows", "cell", "coverage", "temperature_low", "temperature_high"),
     "steps": ("number", "name", "version", "sentence"),
     "outputs": ("name", "quantity", "rows", "result", "description"),
-    "inputs": ("role", "address"),
+    "inputs": ("role", "address", "instead_of", "because"),
     "sources": ("name", "level", "description"),
     "differences": ("field", "before", "after"),
     "findings": ("severity", "place", "what", "remedy"),

@@ -17,7 +17,9 @@ from archive.reduction.amending import bears_on
 from archive.reduction.software import software
 from schemas.acts import AmendmentDocument, Difference
 from schemas.differences import differences
-from schemas.lineage import AccessionDocument, SweepEntry
+from schemas.lineage import AccessionDocument, SweepEntry, Value
+from schemas.quantity import Quantity
+from schemas.uncertain_text import in_preferred_unit
 
 __all__ = ["amend", "sequence_of"]
 
@@ -137,7 +139,9 @@ def _ledger_differences(old: AccessionDocument, new: AccessionDocument) -> Itera
         now = doses.get(dose.name)
         if now is not None and now.amount != dose.amount:
             yield Difference(
-                field=f"{dose.name}.amount", before=_value(dose.amount), after=_value(now.amount)
+                field=f"{dose.name}.amount",
+                before=_value(dose.amount, "amount"),
+                after=_value(now.amount, "amount"),
             )
 
 
@@ -148,15 +152,13 @@ def _of_entry(entry: SweepEntry) -> dict[str, object]:
         "sample": entry.sample,
         "calibration": {each.name: each.calibration for each in entry.channels},
         "thermometer": {each.name: each.thermometer for each in entry.channels},
-        "amount": None if entry.amount is None else _value(entry.amount),
-        "coverage": None if entry.coverage is None else _value(entry.coverage),
+        "amount": _value(entry.amount, "amount"),
+        "coverage": _value(entry.coverage, "coverage"),
     }
 
 
-def _value(value: object) -> str | None:
-    number = getattr(value, "value", None)
-    if number is None:
+def _value(value: Value | None, kind: str) -> str | None:
+    if value is None or value.value is None:
         return None
-    spread = getattr(value, "uncertainty", None)
-    told = f"{number:.8g}" + ("" if spread is None else f" +/- {spread:.2g}")
-    return f"{told} {getattr(value, 'unit', '')}"
+    stated = Quantity(value=value.value, unit=value.unit, kind=kind, uncertainty=value.uncertainty)
+    return in_preferred_unit(stated).format()

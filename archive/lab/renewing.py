@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable
 from datetime import datetime
 
-from archive.errors import ArchiveError, BadRequest, UnknownAddress
+from archive.errors import BadRequest, UnknownAddress
 from archive.lab.effective import EffectiveSource
 from archive.lab.outcomes import ReduceOutcome
 from archive.lab.reducing import Seal, current_plans, reduce_one
@@ -47,22 +47,37 @@ def reduce_stale(
     chosen = _chosen(source, every, cooldown)
     plans = {plan.name: plan for plan in current_plans(source)}
     reading = EffectiveSource(source, newest=True)
-    outcomes = []
+    outcomes: list[ReduceOutcome] = []
+    failed: set[str] = set()
     for number, each in enumerate(chosen, 1):
         progress(f"{each.sweep} by {each.plan} ({number} of {len(chosen)})")
         document = source.reduction(each.reduction)
         plan = _newest(plans.get(each.plan), document.plan)
-        if plan.address in reading.withdrawn:
-            problem = BadRequest(f"plan {plan.address} is withdrawn: {reading.withdrawn[plan.address]}")
-            outcomes.append(ReduceOutcome(each.sweep, plan.address, problem=problem))
-            continue
-        try:
+        problem = _hindrance(reading, document, plan, failed)
+        if problem is None:
             needs = _needs_now(reading, document, plan)
-        except ArchiveError as problem:
+            outcomes.append(reduce_one(reading, each.sweep, plan, clock, seal, request, progress, needs))
+        else:
             outcomes.append(ReduceOutcome(each.sweep, plan.address, problem=problem))
-            continue
-        outcomes.append(reduce_one(reading, each.sweep, plan, clock, seal, request, progress, needs))
+        if outcomes[-1].problem is not None:
+            failed.add(f"{each.sweep}@{each.plan}")
     return outcomes
+
+
+def _hindrance(
+    reading: EffectiveSource, document: ReductionDocument, plan: Plan, failed: set[str]
+) -> BadRequest | None:
+    """Why a reduction cannot be made anew at all: its plan is withdrawn, or what it rests on could not be made anew."""
+    if plan.address in reading.withdrawn:
+        return BadRequest(f"plan {plan.address} is withdrawn: {reading.withdrawn[plan.address]}")
+    for entry in document.inputs:
+        parsed = parse_address(entry.address)
+        if f"{parsed.sweep}@{parsed.plan}" in failed:
+            return BadRequest(
+                f"it rests on {parsed.reduction}, which is stale and could not be made anew",
+                remedy="see why that one could not; this one stays as it is, stale",
+            )
+    return None
 
 
 def _newest(current: Plan | None, recorded: Plan) -> Plan:
@@ -114,6 +129,6 @@ def _needs_now(
             continue
         parsed = parse_address(address)
         newest = reading.reductions(parsed.plan or "", parsed.sweep or "")
-        if newest and newest[-1].plan.name == plan.needs[name].plan:
+        if newest and parsed.plan == plan.needs[name].plan:
             found[name] = newest[-1].address
     return found

@@ -7,7 +7,7 @@ Rules, in this order:
 3. A newer revision that a reduction of the cooldown took when it was renewed stays in force for the cooldown.
 4. When the newest is asked for (`reduce --stale`), the newest revision that can hold for the cooldown does: one whose first
    day of validity is not after the cooldown's end. A revision that came in with the sheet of another cooldown and names no
-   first day holds from that cooldown's begin on.
+   first day holds from that cooldown's begin on; one that supersedes another holds in the place of that one alone.
 
 A withdrawn revision takes nobody's place.
 """
@@ -100,11 +100,13 @@ class Revisions:
 
     def _newer(self, cooldown: str, found: Holding) -> Holding:
         name, _, number = found.address.partition(".r")
+        replacing = {new for new, _ in self._superseding.values()}
         able = [
             row
             for row in self._by_name.get(name, ())
             if row.revision > int(number or 0)
             and row.address not in self.withdrawn
+            and row.address not in replacing
             and self.can_hold(row, cooldown)
         ]
         if not able:
