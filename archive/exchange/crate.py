@@ -238,7 +238,8 @@ def _institutions(about: About) -> list[Entity]:
     for name, ror in named:
         if name is not None:
             identifier = _institution_id(name, ror)
-            found.setdefault(identifier, {"@id": identifier, "@type": "Organization", "name": name})
+            page = {"url": ror} if ror is not None else {}
+            found.setdefault(identifier, {"@id": identifier, "@type": "Organization", "name": name, **page})
     return list(found.values())
 
 
