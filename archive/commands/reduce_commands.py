@@ -241,7 +241,7 @@ def _request(trials: str | None, *, seed: int, digits: int, workers: int) -> Req
         ]
         if given:
             raise BadRequest(
-                f"{' and '.join(given)} mean nothing without --monte-carlo",
+                f"without --monte-carlo these mean nothing: {', '.join(given)}",
                 remedy="add --monte-carlo with a number of trials, or adaptive",
             )
         return None

@@ -71,7 +71,7 @@ def test_the_table_ends_with_the_combined_uncertainty_in_the_unit_of_the_result(
     assert str(lines[-2]["source"]).endswith("below 1 per cent each")
     area = next(line for line in lines if str(line["source"]) == "disc.r1 area")
     assert (str(area["stated"]), area["level"]) == ("1.500(30) m^2", "this cell")
-    assert "1.500(30) m²" in area["stated"].__html__()
+    assert "1.500(30)\u00a0m²" in area["stated"].__html__()
     assert str(area["sensitivity"]).endswith(" K/m^2")
 
 
