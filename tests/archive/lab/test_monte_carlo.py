@@ -3,9 +3,11 @@
 from __future__ import annotations
 
 import json
+import pickle
 import shutil
 from collections.abc import Callable, Iterator
 from pathlib import Path
+from typing import Any
 
 import pytest
 from click.testing import CliRunner, Result
@@ -114,8 +116,31 @@ def test_others_may_write_while_trials_run(drawn: Archive) -> None:
     assert any("trial 40 of 40" in each for each in told)
 
 
-@pytest.mark.slow
-def test_numbers_do_not_depend_on_the_number_of_processes(drawn: Archive) -> None:
+class OneByOne:
+    """Stands for a pool of processes: its workers are called here, with what was sent to them as bytes."""
+
+    def __init__(self, workers: int, *, mp_context: Any, initializer: Any, initargs: Any) -> None:
+        assert (workers, mp_context.get_start_method()) == (2, "spawn")
+        assert all(isinstance(each, bytes) for each in initargs)
+        initializer(*initargs)
+
+    def __enter__(self) -> OneByOne:
+        """Enter a `with` block."""
+        return self
+
+    def __exit__(self, *_: object) -> None:
+        """Leave it."""
+
+    def map(self, function: Any, indices: Any, *, chunksize: int) -> Any:
+        """Carry out, in order."""
+        assert chunksize >= 1
+        return map(pickle.loads(pickle.dumps(function)), indices)  # noqa: S301 - written here
+
+
+def test_numbers_do_not_depend_on_the_number_of_processes(
+    drawn: Archive, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setattr("archive.reduction.monte_carlo.ProcessPoolExecutor", OneByOne)
     (again,) = drawn.reduce(SWEEP, plan=PLAN, monte_carlo=Request(60, digits=2, workers=2))
     found = again.document.monte_carlo
     alone = drawn._source.reduction(f"{SWEEP}@{PLAN}.1").monte_carlo
