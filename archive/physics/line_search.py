@@ -157,7 +157,7 @@ class _Search:
             return self._unresolved(near, power)
         half = max(FIT_WIDTHS * width, 24)
         rows = np.arange(max(index - half, 0), min(index + half + 1, self.left.size))
-        found, used = self._fitted(rows)
+        found, used = self._fitted(rows, index, width)
         if not found.found or found.fit is None:
             self._blank(index, 2 * width + 2)
             return _line("refused", float(self.response.frequency[index]), math.nan, found.reason)
@@ -187,9 +187,10 @@ class _Search:
             reason=words,
         )
 
-    def _fitted(self, rows: IntArray) -> tuple[Resonance, IntArray]:
+    def _fitted(self, rows: IntArray, index: int, width: int) -> tuple[Resonance, IntArray]:
         """Return the fit of one resonance, repeated once without points far off it."""
-        found = self._fit(rows)
+        near = float(self.response.frequency[index]), 2 * width * self.response.step
+        found = self._fit(rows, near)
         if not found.found or found.fit is None:
             return found, rows
         residual = np.abs(found.fit.residuals.reshape(2, -1)).max(axis=0)
@@ -200,14 +201,15 @@ class _Search:
         if not wild.any() or np.count_nonzero(wild) > rows.size // 10:
             return found, rows
         fewer = rows[order][~wild]
-        again = self._fit(fewer)
+        again = self._fit(fewer, (found.frequency, found.width))
         return (again, fewer) if again.found else (found, rows)
 
-    def _fit(self, rows: IntArray) -> Resonance:
+    def _fit(self, rows: IntArray, near: tuple[float, float]) -> Resonance:
         z = self.left[rows] * self.scale[rows]
         return fit_resonance(
             self.response.frequency[rows], z.real, z.imag,
             standard_uncertainty=self.response.standard_uncertainty[rows],
+            near=near, over_noise=0.0,
         )  # fmt: skip
 
     def _unresolved(self, near: slice, power: FloatArray) -> Line:

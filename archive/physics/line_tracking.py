@@ -170,8 +170,8 @@ def track_lines(
     ordinate, the last point. Its standard deviation is the step that it predicts times `curvature`, with `least_step` (with fewer
     than three points `first_step`) and the uncertainty of the line in quadrature. Weights after the reference: candidate i has
     ``e_i/(b + sum e_j)`` with ``e_i = exp(-nu_i^2/(2 S))``, times ``exp(-(ln(h_i/h)/ln height_factor)^2/2)`` where heights are known, and ``b = lambda sqrt(2 pi S) (1 - P_D P_G)/P_D``, lambda the number of
-    lines that do not stay per Hz of the spectra. Where several tracks claim one line, the likeliest has it if its share of their
-    likelihoods is `confidence`; else it is ambiguous for all.
+    lines beyond one in each spectrum that do not stay, per Hz between the lowest and the highest. Where several tracks claim one line, the likeliest has it if its share of their
+    likelihoods is `confidence`; else it is ambiguous for all. Tracks of three lines and more go before shorter ones.
     A line seen only where nothing moves yet (all of the spectra within its uncertainty) counts as one that stays.
     """
     at = series("ordinate", ordinate, least=3)
@@ -264,9 +264,10 @@ class _Follower:
 
     def __init__(self, lines: _Lines, motion: Motion) -> None:
         self.lines, self.motion = lines, motion
-        free = np.array(lines.free, dtype=np.int64)
         span = float(np.ptp(lines.f)) if lines.f.size > 1 else 0.0
-        self.density = free.size / lines.at.size / span if span > 0 else 0.0
+        # One line of each spectrum is the one that is there; half a line more, for a count that may be zero.
+        extra = max(len(lines.free) - lines.at.size, 0) + 0.5
+        self.density = extra / lines.at.size / span if span > 0 else 0.0
         self.open: list[_Track] = []
 
     def tracks(self) -> list[LineTrack]:
@@ -292,10 +293,13 @@ class _Follower:
 
     def _settled(self, found: int, claims: list[tuple[_Track, float, float]]) -> bool:
         """Give a line to the likeliest of the tracks that claim it, if that is beyond doubt."""
-        total = sum(likelihood for *_, likelihood in claims)
+        # What has been followed for three spectra is not disturbed by what may have begun there by chance.
+        known = [likelihood for track, _, likelihood in claims if track.established]
+        total = sum(known) or sum(likelihood for *_, likelihood in claims)
         given = False
         for track, share, likelihood in claims:
-            if likelihood >= self.motion.confidence * total:
+            allowed = track.established or not known
+            if allowed and likelihood >= self.motion.confidence * total:
                 track.add(found, share * likelihood / total, "assigned")
                 given = True
             else:
@@ -334,6 +338,11 @@ class _Track:
         self.members.append(number)
         self.weights.append(weight)
         self.states.append(state)
+
+    @property
+    def established(self) -> bool:
+        """Whether at least three lines have been assigned."""
+        return sum(1 for number in self.members if number >= 0) >= 3
 
     @property
     def last(self) -> int:

@@ -119,6 +119,8 @@ def fit_resonance(
     background: Background = "constant",
     convention: Convention = "+",
     standard_uncertainty: npt.ArrayLike | None = None,
+    near: tuple[float, float] | None = None,
+    over_noise: float = AMPLITUDE_OVER_NOISE,
 ) -> Resonance:
     """Return the one resonance of a sweep, or that there is none in range.
 
@@ -134,6 +136,11 @@ def fit_resonance(
         Sign of i w t in the lock-in.
     standard_uncertainty : array_like, optional
         Of each point, for x and y alike; relative weights, the covariance is scaled by chi2/dof.
+    near : tuple of float, optional
+        Frequency and full width, Hz, > 0, to begin with where they are known roughly; other starts are then tried only if this
+        one does not converge.
+    over_noise : float
+        Least height over the residual of one point; zero where many points make up for it, as in a filtered spectrum.
 
     Returns
     -------
@@ -147,7 +154,7 @@ def fit_resonance(
     Notes
     -----
     No resonance in range: the fit did not converge, the frequency is at or over an edge, the width exceeds the range, the
-    height is below three times the residual of one point, a structured residual exceeds a tenth of the height (try a sloped
+    height is below three times (`over_noise`) the residual of one point, a structured residual exceeds a tenth of the height (try a sloped
     background), or the gain over the background alone is not decisive (F-test and information criterion). Start: circle fit; the resonance frequency is taken opposite the off-resonance point.
     """
     f = series("frequency", frequency, least=12, positive=True)
@@ -167,10 +174,13 @@ def fit_resonance(
     rounding = (1e-13 * float(np.max(np.abs(z) * weights))) ** 2 * f.size
     if alone <= rounding or float(np.ptp(f)) == 0:
         return _none("no resonance in range: the record does not change", None, sweep, convention)
-    found = min(
-        (sweep.fit(start) for start in sweep.starts()), key=lambda result: (not result.converged, result.chi2)
-    )
-    return _judged(found, sweep, alone=alone, convention=convention)
+    known = None if near is None else sweep.fit(sweep.start_near(*near))
+    if known is None or not known.converged:
+        known = min(
+            (sweep.fit(start) for start in sweep.starts()),
+            key=lambda result: (not result.converged, result.chi2),
+        )
+    return _judged(known, sweep, alone=alone, convention=convention, over_noise=over_noise)
 
 
 def frequency_of_largest_response(
@@ -222,6 +232,18 @@ class _Sweep:
             linear_fit(design, part, names=names, standard_uncertainty=u, absolute=False).chi2
             for part in parts
         )
+
+    def start_near(self, f0: float, width: float) -> tuple[float, float, float, float, complex]:
+        """Return start values for a known frequency and width; height, phase and background by linear least squares."""
+        if not (f0 > 0 and width > 0):
+            raise ValueError(f"near: found {f0:.6g} Hz and {width:.6g} Hz, expected two numbers > 0")
+        unit = resonance_curve(
+            self.frequency, resonance_frequency=f0, quality_factor=f0 / width, height=1.0, phase=0.0
+        )
+        design = np.column_stack([unit, np.ones_like(unit)]) * self.weights[:, np.newaxis]
+        solution, *_ = np.linalg.lstsq(design, self.z * self.weights, rcond=None)
+        height, off = complex(solution[0]), complex(solution[1])
+        return f0, f0 / width, abs(height), float(np.angle(height)), off
 
     def starts(self) -> list[tuple[float, float, float, float, complex]]:
         """Return start values (frequency, Q, height, phase, background)."""
@@ -327,7 +349,9 @@ def _none(
     )
 
 
-def _judged(raw: FitResult, sweep: _Sweep, *, alone: float, convention: Convention) -> Resonance:
+def _judged(
+    raw: FitResult, sweep: _Sweep, *, alone: float, convention: Convention, over_noise: float
+) -> Resonance:
     points = 2 * sweep.frequency.size
     full, plain = raw.values.size, 4 if sweep.background == "sloped" else 2
     probability = f_test(
@@ -342,7 +366,7 @@ def _judged(raw: FitResult, sweep: _Sweep, *, alone: float, convention: Conventi
     structured = min(chances) < DECISIVE_PROBABILITY
     numbers = {"noise": noise, "probability": probability, "aicc_gain": gain}
     fitted = _turned(raw)
-    reason = _refusal(raw, sweep, structured=structured, **numbers)
+    reason = _refusal(raw, sweep, structured=structured, over_noise=over_noise, **numbers)
     if reason:
         return _none(
             f"no resonance in range: {reason}", fitted, sweep, convention, structured=structured, **numbers
@@ -365,7 +389,14 @@ def _judged(raw: FitResult, sweep: _Sweep, *, alone: float, convention: Conventi
 
 
 def _refusal(
-    raw: FitResult, sweep: _Sweep, *, structured: bool, noise: float, probability: float, aicc_gain: float
+    raw: FitResult,
+    sweep: _Sweep,
+    *,
+    structured: bool,
+    over_noise: float,
+    noise: float,
+    probability: float,
+    aicc_gain: float,
 ) -> str:
     """Return why the numbers of a fit mean nothing, or an empty text."""
     f, f0 = sweep.frequency, float(raw.values[0])
@@ -385,7 +416,7 @@ def _refusal(
             min(f0 - f[0], f[-1] - f0) < width / 2,
             f"the fitted frequency {f0:.6g} Hz is within half a width of the edge of the sweep",
         ),
-        (height < AMPLITUDE_OVER_NOISE * noise, "the resonance is not above the noise"),
+        (height < over_noise * noise, "the resonance is not above the noise"),
         (
             structured and noise > STRUCTURED_RESIDUAL * height,
             f"resonance and {sweep.background} background do not describe the record",
