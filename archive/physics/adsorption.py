@@ -108,7 +108,8 @@ def bet_area(
     -----
     Criteria: (i) C > 0 by a positive intercept, (ii) n(1 - x) rises over the whole range, (iii) the x of the monolayer lies in the
     range, (iv) it agrees with 1/(sqrt C + 1) within 20 per cent; and at least five points and r^2 above its limit. Points at one x are real
-    and all count in the line; for (ii) and (iii) their mean stands. Unweighted line; uncertainties from its scatter.
+    and all count in the line; for (ii) and (iii) their mean stands. Unweighted line; uncertainties from
+    its scatter, for amounts that are all off by one fraction of themselves.
 
     References
     ----------
@@ -203,6 +204,7 @@ def _evaluated(
     # Order of the covariance: intercept, slope.
     by_monolayer = -(monolayer**2) * np.ones(2)
     by_constant = np.array([-slope / intercept**2, 1 / intercept]) if intercept != 0 else np.full(2, np.nan)
+    covariance = _covariance(px, ordinate, intercept + slope * px)
     steps, mean = _means(x, n)
     reached = _reached(steps, mean, monolayer)
     expected = 1 / (math.sqrt(constant) + 1) if 0 < constant < math.inf else math.nan
@@ -226,14 +228,14 @@ def _evaluated(
         )
     if not r_squared > least_r_squared:
         reasons.append(f"found r^2 = {r_squared:.6g}, expected above {least_r_squared:g}")
-    u_monolayer = math.sqrt(float(by_monolayer @ line.covariance @ by_monolayer))
+    u_monolayer = math.sqrt(float(by_monolayer @ covariance @ by_monolayer))
     return BetArea(
         accepted=not reasons,
         reasons=tuple(reasons),
         monolayer=monolayer,
         u_monolayer=u_monolayer,
         constant=constant,
-        u_constant=math.sqrt(float(by_constant @ line.covariance @ by_constant)),
+        u_constant=math.sqrt(float(by_constant @ covariance @ by_constant)),
         area=area,
         u_area=u_monolayer * AVOGADRO * cross_section,
         slope=slope,
@@ -246,6 +248,20 @@ def _evaluated(
         x_expected=expected,
         cross_section=cross_section,
     )
+
+
+def _covariance(x: FloatArray, ordinate: FloatArray, line: FloatArray) -> FloatArray:
+    """Return the covariance of intercept and slope of the unweighted line, for amounts that scatter by one fraction of themselves.
+
+    The ordinate x/(n (1 - x)) then scatters by that fraction of its own value, several times more at the upper end than at the
+    lower; taken as equal, the scatter would make the area's uncertainty too small.
+    """
+    design = np.column_stack([np.ones(x.size), x])
+    solution = np.linalg.pinv(design)
+    left = np.eye(x.size) - design @ solution
+    # The residuals' sum of squares is on average this many times the fraction squared.
+    fraction2 = np.sum((ordinate - line) ** 2) / np.sum((left * line) ** 2)
+    return np.asarray((solution * (fraction2 * line**2)) @ solution.T, dtype=np.float64)
 
 
 def _reached(steps: FloatArray, mean: FloatArray, monolayer: float) -> float:
