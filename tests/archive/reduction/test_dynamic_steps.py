@@ -18,7 +18,7 @@ from archive.reduction.dynamic_steps import (
 from archive.reduction.step import NoParameters
 from schemas.substrate import Substrate
 
-LABORATORIES = 60
+LABORATORIES = 200
 P, SLOPE, AREA, CHI = 1e-3, 0.042 * MOLAR_MASS_HELIUM4 / 1.5, 1.5, 0.10
 OMEGA = 2 * math.pi / P
 TRUTH = {
@@ -179,7 +179,7 @@ def test_a_difference_is_first_less_second() -> None:
 
 
 @pytest.mark.slow
-def test_sixty_films_pull_with_unit_width() -> None:
+def test_two_hundred_films_pull_with_unit_width() -> None:
     pulls: dict[str, list[float]] = {
         name: [] for name in ("transition_temperature", "b", "log_diffusivity", "scale_ratio")
     }
