@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING, Literal, cast
 
 from archive.errors import BadRequest, UnknownAddress
 from archive.intake.checks import CHECKS
+from archive.lab.report_reading import read_for_reports, withdrawn_in
 from archive.lab.source import LabSource
 from schemas.address import parse_address
 
@@ -30,11 +31,12 @@ def view(source: LabSource, archive_name: str, cooldown: str) -> CooldownView:
     """
     from archive.reports import CooldownView
 
-    accessions = source.accessions(cooldown)
+    accessions = read_for_reports(source, cooldown)
     if not accessions:
         known = ", ".join(source.cooldowns()) or "none yet"
         raise UnknownAddress(f"there is no cooldown {cooldown} in this archive", expected=f"one of: {known}")
     prefix = f"{cooldown}/"
+    withdrawn, resting = withdrawn_in(source, accessions)
     return CooldownView(
         archive_name=archive_name,
         accessions=tuple(accessions),
@@ -42,6 +44,9 @@ def view(source: LabSource, archive_name: str, cooldown: str) -> CooldownView:
         reductions=tuple(source.reduction(row.address) for row in source.index.reductions(cooldown=cooldown)),
         values=source.values,
         check_titles={check.code: check.title for check in CHECKS},
+        amendments=tuple(source.amendments(cooldown)),
+        withdrawn=withdrawn,
+        resting=resting,
     )
 
 

@@ -15,6 +15,7 @@ from collections.abc import Sequence
 from typing import Any
 
 from archive.errors import BadRequest
+from archive.reports.after_the_fact import act_sentences
 from archive.reports.appendix_tables import Table, results_table, tables
 from archive.reports.bibliography import bibliography_of
 from archive.reports.checklist import Item, Said, completeness, sentence, told
@@ -130,6 +131,7 @@ def _account(
         [("R52", each) for each in effect_sentences(scope)]
         + [("R53", each) for each in waiver_sentences(scope)]
         + [("R55", each) for each in replaced_sentences(scope)]
+        + [("R55", each) for each in act_sentences(scope)]
     )
     corrections = [table for label, table in made.items() if label.startswith("effects-")]
     sections.append(

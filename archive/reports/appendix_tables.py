@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
+from archive.reports.after_the_fact import flag_words, sweep_flags
 from archive.reports.budget import budget_rows, percent
 from archive.reports.holdings import Holdings
 from archive.reports.items_reduction import runs_not_used
@@ -190,13 +191,20 @@ def _runs(scope: Scope) -> Table:
         )
         low, high = (None, None) if entry is None else (entry.temperature_low, entry.temperature_high)
         rows.append((
-            prose(address), words(taken.sheet.kind.replace("-", " ")), value_in(None if entry is None else entry.coverage, "coverage", "umol/m^2"), _kelvin(low), _kelvin(high),
+            prose(f"{address}{_marks(held, taken.sheet.name)}"), words(taken.sheet.kind.replace("-", " ")), value_in(None if entry is None else entry.coverage, "coverage", "umol/m^2"), _kelvin(low), _kelvin(high),
             words(taken.sheet.direction), prose(", ".join(background) or "[na]"), prose(", ".join(each.plan.address for each in by)),
         ))  # fmt: skip
     heads = (
         (head("sweep"), 13), (head("kind"), 14), (head("coverage", "umol/m^2"), 13), (head("from", "K"), 9), (head("to", "K"), 9), (head("direction"), 9), (head("background"), 18), (head("used by"), 15),
     )  # fmt: skip
-    return Table("runs", "Runs used.", heads, tuple(rows))
+    flags = {code: said for held in scope.runs for code, said in flag_words(held.view).items()}
+    meaning = "".join(f" {code}: {said}." for code, said in flags.items())
+    return Table("runs", f"Runs used.{meaning}", heads, tuple(rows))
+
+
+def _marks(held: Holdings, sweep: str) -> str:
+    flags = sweep_flags(held.view, sweep)
+    return f" ({', '.join(flags)})" if flags else ""
 
 
 def _kelvin(value: Value | None) -> Shown:

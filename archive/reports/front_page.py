@@ -6,6 +6,7 @@ from collections.abc import Iterable, Iterator
 from typing import Any
 
 from archive.intake.cautions import FIXED_TEXT
+from archive.reports.after_the_fact import flag_words, result_mark, warnings_of_acts
 from archive.reports.holdings import Holdings
 from archive.reports.moments import full_time
 from archive.reports.numbers import Shown, shown_output, shown_value
@@ -38,7 +39,7 @@ def front_page(held: Holdings, stands: Standing) -> dict[str, Any]:
         "mind": _mind(held, stands),
         "set_up": {"left": _rows(left_column(held)), "right": _rows(right_column(held))},
         "strip": {"svg": drawing, "legend": legend},
-        "sweeps": {"heads": list(SWEEP_HEADS), "lines": sweep_lines(held, stands), "flags": _FLAGS},
+        "sweeps": {"heads": list(SWEEP_HEADS), "lines": sweep_lines(held, stands), "flags": {**_FLAGS, **flag_words(held.view)}},
         "origin": _origin(held),
     }
 
@@ -61,7 +62,7 @@ def _band(held: Holdings, stands: Standing, reasons: tuple[str, ...]) -> dict[st
         "cell": "[nr]" if cell is None else cell.address,
         "purpose": sheet.purpose,
         "operators": ", ".join(sheet.operators),
-        "state": "OPEN" if is_open else sheet.outcome.upper(),
+        "state": "WITHDRAWN" if sheet.name in held.view.withdrawn else "OPEN" if is_open else sheet.outcome.upper(),
         "state_words": f"run {sheet.outcome}, {_count(len(stands.open), 'warning')} open" if is_open else "",
         "draft": bool(reasons),
         "reasons": list(reasons),
@@ -99,7 +100,7 @@ def _results(held: Holdings, *, provisional: bool) -> Iterator[dict[str, Any]]:
             seen.add(reduction.plan.name)
             yield {
                 "name": symbol_of(best.name), "what": best.description, "value": shown_output(best), "where": _where(held, reduction),
-                "number": reduction.number, "address": f"{reduction.address}#{best.name}", "provisional": provisional,
+                "number": reduction.number, "address": f"{reduction.address}#{best.name}", "provisional": provisional, "mark": result_mark(held.view, reduction),
             }  # fmt: skip
 
 
@@ -117,6 +118,7 @@ def _mind(held: Holdings, stands: Standing) -> dict[str, Any]:
         "counts": f"{len(stands.open)} open, {len(stands.waived)} waived, {stands.cleared} cleared",
         "open": list(_alike(stands.open)),
         "waived": list(_alike([(each.flag, each.finding) for each in stands.waived])),
+        "acts": [prose(each) for each in warnings_of_acts(held.view)],
         "none_waived": "No warnings were waived." if not stands.waived else "",
         "gas": {
             "state": _GAS[end.state],

@@ -7,6 +7,7 @@ import re
 from collections.abc import Container, Iterator
 from typing import Any
 
+from archive.reports.after_the_fact import after_the_fact, dose_mark
 from archive.reports.budget import headline_budgets, largest_shares
 from archive.reports.front_page import finding_line, grouped_digest
 from archive.reports.holdings import Holdings
@@ -50,6 +51,7 @@ def later_pages(held: Holdings, stands: Standing) -> dict[str, Any]:
         ],
         "sweep_notes": list(_sweep_notes(held)),
         "differences": list(held.view.newest.differences),
+        "acts": after_the_fact(held),
         "records": list(_records(held)),
         "effects": list(effect_states(held)),
         "reductions": [reduction_block(held, each) for each in held.view.current],
@@ -101,6 +103,7 @@ def _doses(held: Holdings) -> Iterator[dict[str, Any]]:
                 f"crossed out: {sheet.crossed_out}" if sheet and sheet.crossed_out else "",
                 (sheet.annealing or "") if sheet else "",
                 sheet.notes if sheet else "",
+                dose_mark(held.view, each.name),
             )
             if part
         )
@@ -115,8 +118,9 @@ def replaced_results(held: Holdings) -> Iterator[dict[str, Any]]:
     """Yield each headline result that a later reduction replaced: was, is, both addresses, when."""
     current = {(each.sweep, each.plan.name): each for each in held.view.current}
     for old in sorted(held.view.reductions, key=lambda each: each.address):
-        new = current[(old.sweep, old.plan.name)]
-        if new.number == old.number:
+        new = current.get((old.sweep, old.plan.name))
+        # Where all are withdrawn, nothing replaces them; where the newest is, it does not replace the one before.
+        if new is None or new.number <= old.number:
             continue
         outputs = {each.name: each for each in new.outputs}
         for was in held.headline(old):

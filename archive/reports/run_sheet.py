@@ -71,6 +71,8 @@ def run_sheet_json(view: CooldownView) -> str:
         "shown": _plain(account(view)),
         "accessions": [each.model_dump(mode="json") for each in view.accessions],
         "reductions": [each.model_dump(mode="json") for each in view.current],
+        "amendments": [each.model_dump(mode="json") for each in view.amendments],
+        "withdrawn": dict(sorted(view.withdrawn.items())),
         "sealed": {key: {"sha256": row[0], "size": row[1]} for key, row in sorted(view.sealed.items())},
     }
     return json.dumps(told, indent=1, ensure_ascii=False, allow_nan=False) + "\n"

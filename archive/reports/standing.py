@@ -91,6 +91,8 @@ def draft_reasons(view: CooldownView, stands: Standing) -> tuple[str, ...]:
 def _reasons(view: CooldownView, stands: Standing) -> Iterator[str]:
     newest = view.newest
     sheet = newest.sheet
+    if newest.cooldown in view.withdrawn:
+        yield f"it is withdrawn: {view.withdrawn[newest.cooldown]}"
     if stands.open:
         count = len(stands.open)
         yield f"{count} warning{'s are' if count > 1 else ' is'} open"

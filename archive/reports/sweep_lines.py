@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 
+from archive.reports.after_the_fact import sweep_flags
 from archive.reports.holdings import Holdings, Taken
 from archive.reports.moments import clock_lines, span_text
 from archive.reports.numbers import Shown, absent, shown, shown_output, shown_value
@@ -45,6 +46,7 @@ def _line(held: Holdings, taken: Taken, stands: Standing, files: Mapping[str, st
     flags = stands.flags(sweep.name)
     flags += ["X"] if any(not channel.use for channel in held.sheet.channels_of(sweep).values()) else []
     flags += ["L"] if sweep.left_out else []
+    flags += sweep_flags(held.view, sweep.name)
     return {
         "no.": sweep.name,
         "kind": _kind(taken),

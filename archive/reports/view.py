@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 from numpy.typing import NDArray
 
+from schemas.acts import AmendmentDocument
 from schemas.lineage import AccessionDocument, ReductionDocument
 
 __all__ = ["CooldownView"]
@@ -22,7 +23,7 @@ class CooldownView:
     archive_name : str
         Name of the laboratory's archive.
     accessions : tuple of AccessionDocument
-        Oldest first; the newest sheet counts.
+        Oldest first; the newest sheet counts. As they are to be read: amended, with the records that hold.
     sealed : mapping
         Key of a sealed file (``2026-03/2026-03.a1``, ``2026-03/s017@film-transition.2``): SHA-256 and size in bytes.
     reductions : tuple of ReductionDocument
@@ -32,6 +33,12 @@ class CooldownView:
         ``"<name>.uncertainty"``) in the unit stored; raises ArchiveError where there are none.
     check_titles : mapping
         Code of a check: what it tests, in one line.
+    amendments : tuple of AmendmentDocument
+        Those that count.
+    withdrawn : mapping
+        Why each withdrawn thing of the cooldown, and each withdrawn record it uses, is withdrawn, by address.
+    resting : mapping
+        Reductions that rest on something withdrawn, and on what.
     """
 
     archive_name: str
@@ -40,6 +47,9 @@ class CooldownView:
     reductions: tuple[ReductionDocument, ...]
     values: Callable[[str, str], NDArray[np.float64]]
     check_titles: Mapping[str, str]
+    amendments: tuple[AmendmentDocument, ...] = ()
+    withdrawn: Mapping[str, str] = field(default_factory=dict)
+    resting: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
         """Refuse a view of nothing."""
@@ -53,9 +63,11 @@ class CooldownView:
 
     @property
     def current(self) -> tuple[ReductionDocument, ...]:
-        """The highest number of each sweep and plan, in the order of the sheet's sweeps, then of plan names."""
+        """The highest number of each sweep and plan that is not withdrawn, in the order of the sheet's sweeps, then of plans."""
         best: dict[tuple[str, str], ReductionDocument] = {}
         for each in self.reductions:
+            if each.address in self.withdrawn:
+                continue
             key = (each.sweep, each.plan.name)
             if key not in best or best[key].number < each.number:
                 best[key] = each

@@ -1,0 +1,168 @@
+"""What was said of a cooldown after it was sealed: amendments, records in place of others, withdrawals; nothing if nothing.
+
+Rules: an amended value is printed as amended, with a mark; the value before stands in the account of the amendment. What is
+withdrawn is said wherever it is told of.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from typing import Any
+
+from archive.reports.checklist import Said, sentence
+from archive.reports.holdings import Holdings
+from archive.reports.moments import full_time
+from archive.reports.prose import prose
+from archive.reports.scope import Scope
+from archive.reports.view import CooldownView
+from schemas.acts import AmendmentDocument, Difference
+from schemas.lineage import ReductionDocument
+
+__all__ = [
+    "AMENDED",
+    "WITHDRAWN",
+    "act_sentences",
+    "after_the_fact",
+    "dose_mark",
+    "flag_words",
+    "result_mark",
+    "sweep_flags",
+    "warnings_of_acts",
+]
+
+AMENDED, WITHDRAWN = "A", "WD"
+_WORDS = {
+    AMENDED: "amended after it was sealed",
+    WITHDRAWN: "withdrawn, or its result rests on something withdrawn",
+}
+
+
+def after_the_fact(held: Holdings) -> dict[str, Any]:
+    """Return every amendment, replaced record and withdrawal of a cooldown, for the page of its own.
+
+    Parameters
+    ----------
+    held : Holdings
+    """
+    zone = held.sheet.time_zone
+    return {
+        "amendments": [
+            {
+                "address": each.address, "by": each.by, "at": full_time(each.made, zone), "because": each.because,
+                "sweeps": ", ".join(sweep.partition("/")[2] for sweep in each.sweeps),
+                "lines": [_line(said) for said in each.differences],
+            }
+            for each in held.view.amendments
+        ],
+        "records": list(_records(held.view)),
+        "withdrawn": [{"address": address, "why": why} for address, why in sorted(held.view.withdrawn.items())],
+        "resting": [
+            {"address": address, "on": ", ".join(on)} for address, on in sorted(held.view.resting.items())
+        ],
+    }  # fmt: skip
+
+
+def _line(said: Difference) -> dict[str, Any]:
+    return {"field": said.field, "was": prose(said.before or "nothing"), "is": prose(said.after or "nothing")}
+
+
+def _records(view: CooldownView) -> Iterator[dict[str, str]]:
+    """Yield each record that a current reduction took in the place of another, once."""
+    found: dict[tuple[str, str], dict[str, str]] = {}
+    for reduction in view.current:
+        for entry in reduction.inputs:
+            if entry.instead_of is not None:
+                said = {"now": entry.address, "was": entry.instead_of, "because": entry.because or ""}
+                found.setdefault((entry.instead_of, entry.address), said)
+    yield from (found[key] for key in sorted(found))
+
+
+def flag_words(view: CooldownView) -> dict[str, str]:
+    """Return what the flags of this module mean, as far as they occur."""
+    found = {}
+    if view.amendments:
+        found[AMENDED] = _WORDS[AMENDED]
+    if view.withdrawn or view.resting:
+        found[WITHDRAWN] = _WORDS[WITHDRAWN]
+    return found
+
+
+def sweep_flags(view: CooldownView, sweep: str) -> list[str]:
+    """Return the flags of one sweep."""
+    address = f"{view.newest.cooldown}/{sweep}"
+    flags = [AMENDED] if any(address in each.sweeps for each in view.amendments) else []
+    gone = address in view.withdrawn or any(
+        each.sweep == address and result_mark(view, each) for each in view.current
+    )
+    return flags + ([WITHDRAWN] if gone else [])
+
+
+def result_mark(view: CooldownView, reduction: ReductionDocument) -> str:
+    """Return what is said beside a result of a reduction; nothing if it stands as it is."""
+    if reduction.address in view.resting:
+        return "RESTS ON SOMETHING WITHDRAWN"
+    return "amended" if any(reduction.sweep in each.sweeps for each in view.amendments) else ""
+
+
+def dose_mark(view: CooldownView, dose: str) -> str:
+    """Return which amendments speak of a dose, and what was said before."""
+    prefix = f"dose.{dose}."
+    said = [
+        f"amended by {each.address} ({line.field.removeprefix(prefix)} was {line.before or 'nothing'})"
+        for each in view.amendments
+        for line in each.differences
+        if line.field.startswith(prefix)
+    ]
+    return "; ".join(said)
+
+
+def warnings_of_acts(view: CooldownView) -> list[str]:
+    """Return what the front page says of acts, loudest first."""
+    cooldown = view.newest.cooldown
+    said = [f"WITHDRAWN: {view.withdrawn[cooldown]}"] if cooldown in view.withdrawn else []
+    said += [
+        f"{address} is WITHDRAWN: {why}"
+        for address, why in sorted(view.withdrawn.items())
+        if address != cooldown
+    ]
+    said += [f"{address} rests on {', '.join(on)}, WITHDRAWN" for address, on in sorted(view.resting.items())]
+    return said + [_amendment_words(each) for each in view.amendments]
+
+
+def _amendment_words(each: AmendmentDocument) -> str:
+    return (
+        f"{each.address} amends what was sealed ({each.because.rstrip('.')}); values marked {AMENDED} are amended, "
+        "and the checks were not run again"
+    )
+
+
+def act_sentences(scope: Scope) -> Iterator[Said]:
+    """Yield one sentence for each amendment, replaced record and withdrawal behind an appendix; none if there is none."""
+    for held in scope.runs:
+        view, name = held.view, held.sheet.name
+        for each in view.amendments:
+            lines = "; ".join(
+                f"{line.field} was {line.before or 'nothing'} and is {line.after or 'nothing'}"
+                for line in each.differences
+            )
+            yield sentence(
+                f"After {name} was sealed it was amended ({each.address}, {each.made.date()}, by the {each.by}) because: "
+                f"{each.because.rstrip('.')}. {lines}.",
+                each.address,
+            )
+        for said in _records(view):
+            yield sentence(
+                f"In {name}, {said['now']} was taken in the place of {said['was']}: {said['because'].rstrip('.')}.",
+                said["now"],
+            )
+        for address, why in sorted(view.withdrawn.items()):
+            yield sentence(f"{address} is withdrawn: {why}.", address)
+    for reduction in scope.reductions:
+        resting = scope.holdings_of(reduction).view.resting.get(reduction.address, ())
+        if resting:
+            yield sentence(
+                f"Reduction {reduction.address} rests on {', '.join(resting)}, withdrawn.", reduction.address
+            )
+        taken_back = scope.holdings_of(reduction).view.withdrawn.get(reduction.address)
+        if taken_back is not None:
+            yield sentence(f"Reduction {reduction.address} is withdrawn: {taken_back}.", reduction.address)
