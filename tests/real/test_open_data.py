@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from pathlib import Path
 
+import numpy as np
 import pytest
 
 from archive import Archive
@@ -25,10 +26,15 @@ def lab(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Archive]:
 
 @pytest.fixture(scope="module")
 def resonances(lab: Archive) -> dict[str, ReduceOutcome]:
-    """Reduce all sweeps of the resonator."""
+    """Reduce all sweeps of the resonator; the line followed through them is under its plan's name."""
     outcomes = lab.reduce("open-resonator")
     assert [str(each.problem) for each in outcomes if each.problem] == []
-    return {each.sweep.partition("/")[2]: each for each in outcomes}
+    return {
+        each.plan.partition(".")[0]
+        if each.plan.startswith("resonance-tracking")
+        else each.sweep.partition("/")[2]: each
+        for each in outcomes
+    }
 
 
 def result(outcome: ReduceOutcome, name: str) -> tuple[float | None, str | None]:
@@ -70,6 +76,20 @@ def test_up_and_down_differ_by_the_delay_of_the_detector(resonances: dict[str, R
     down = [result(resonances[f"s{number:03d}"], "resonance_frequency")[0] or 0 for number in range(9, 22, 2)]
     assert min(up) > max(down)
     assert sum(up) / len(up) - sum(down) / len(down) == pytest.approx(1.2, abs=0.5)
+
+
+def test_the_resonance_is_followed_in_the_order_of_the_sweeps(
+    lab: Archive, resonances: dict[str, ReduceOutcome]
+) -> None:
+    """SOURCE.md: none in data_0 to data_3, then one line; temperatures are not in the files. Row 0 is the narrow sweep elsewhere."""
+    outcome = resonances["resonance-tracking"]
+    followed = lab.array(f"{outcome.address}#line_frequency")
+    weight = lab.array(f"{outcome.address}#confidence")
+    assert np.isnan(followed[:5]).all()
+    assert followed[5:] == pytest.approx([LARGEST[number] for number in range(4, 22)], rel=0.015)
+    assert (weight[5:] >= 0.9).all()
+    assert outcome.document is not None
+    assert "in their order" in " ".join(step.sentence for step in outcome.document.steps)
 
 
 def test_the_isotherm_gives_monolayer_and_plateau_and_asks_for_the_cross_section(lab: Archive) -> None:
