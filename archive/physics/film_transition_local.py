@@ -16,6 +16,9 @@ from archive.physics.film_transition import FilmTransition
 
 __all__ = ["LocalSolution", "local_solution", "moved"]
 
+SMALL = 1e-7
+"""A step this small against the standard uncertainties is the last."""
+
 
 @dataclass(frozen=True)
 class LocalSolution:
@@ -89,7 +92,7 @@ def moved(
     angular_frequency : float
         1/s.
     steps : int
-        Steps with the one Jacobian; the first alone is first order.
+        Steps with the one Jacobian at most; the first alone is first order.
     F : float, optional
         Another value of a held free-vortex prefactor.
 
@@ -98,6 +101,8 @@ def moved(
     Good while the changes are small against the width of the transition; the weights stay those of the fit.
     """
     values = local.values | ({} if F is None else {"F": F})
+    # The length of a row of the gain is the parameter's standard uncertainty.
+    size = np.linalg.norm(local.gain, axis=1)
     for _ in range(steps):
         drop, loss = curves(temperature, values, angular_frequency=angular_frequency, x0=local.x0)
         residuals = np.concatenate(
@@ -107,4 +112,6 @@ def moved(
         values = values | {
             name: values[name] + float(each) for name, each in zip(local.free, change, strict=True)
         }
+        if np.max(np.abs(change) / size) < SMALL:
+            break
     return values
