@@ -10,7 +10,7 @@ from typing import Final
 
 import numpy as np
 
-from archive.demo.files import Column, compressed, latin_table, space_table
+from archive.demo.files import Column, comma_table, compressed, latin_table, space_table
 from archive.demo.first_cooldown import RUN_ROWS, dose_run
 from archive.demo.forward import (
     drive_sweep,
@@ -37,9 +37,12 @@ from archive.demo.recording import (
     times_from,
 )
 from archive.demo.stated import Stated, generator
-from archive.demo.truth import PG2
+from archive.demo.truth import PG2, PorousFilm
+from archive.physics.constants import MOLAR_MASS_HELIUM4
+from archive.physics.film_static import STIFFNESS_UNIT
+from archive.physics.porous_singularity import expected_amplitude, mean_shape
 
-__all__ = ["POROUS_COVERAGES", "POROUS_DOSES", "porous_cooldown", "porous_stated"]
+__all__ = ["POROUS_COVERAGES", "POROUS_DOSES", "porous_cooldown", "porous_stated", "singular_amplitude"]
 
 NAME: Final = "2026-05"
 
@@ -58,6 +61,12 @@ _CALIBRATION_SCATTER: Final = 1e-4
 
 _PORE_AMOUNT: Final = 5.4e-3
 """mol of N2 that fill the pores: area x diameter/4 over the molar volume 34.7 cm^3/mol of liquid nitrogen at 77 K."""
+
+HEAT_NOISE: Final = 1e-6
+"""Of one reading of the heat capacity, J/K."""
+
+VOLUME: Final = 1.062e-6
+"""Of the rod of glass, m^3."""
 
 _RECOVERED_UNCERTAINTY: Final = 6e-6
 
@@ -152,6 +161,35 @@ def _film_file(seed: int, sweep: str, begin: str) -> bytes:
     return compressed(sweep_bytes(record, at(begin), sensor="GE1"))
 
 
+def singular_amplitude() -> float:
+    """Return the amplitude of the heat capacity at the transition of s007 that two-scale-factor universality asks for, J/K."""
+    film = _film()
+    flowing = film.amplitude * (POROUS_COVERAGES["s007"] - film.inert) * (1 - film.chi)
+    density = MOLAR_MASS_HELIUM4 * flowing * film.area / VOLUME
+    T_c = film.transition_temperature(POROUS_COVERAGES["s007"])
+    return float(expected_amplitude(STIFFNESS_UNIT * T_c / density)) * VOLUME
+
+
+def _film() -> PorousFilm:
+    film = PG2.film
+    if not isinstance(film, PorousFilm):
+        raise TypeError("PG-2: found a planar film, expected one in pores")
+    return film
+
+
+def _heat_file(seed: int) -> bytes:
+    """Return the heat capacity of cell and film about the transition: a smooth part and the singularity of `singular_amplitude`."""
+    rng = generator(seed, NAME, "s010")
+    t = np.linspace(-0.11, 0.11, 220)
+    T = _film().transition_temperature(POROUS_COVERAGES["s007"]) * (1 + t)
+    x = T / 0.6
+    heat = 1.9e-3 * x + 1.1e-3 * x**2 + singular_amplitude() * mean_shape(t, width=0.22 / 219)
+    heat = heat + HEAT_NOISE * rng.standard_normal(T.size)
+    read = resistance(PG2.sensor, T) * (1 + PG2.sensor.reading * rng.standard_normal(T.size))
+    columns = [Column("R_GE1", "Ohm", read, 4), Column("C", "uJ/K", heat * 1e6, 3)]
+    return comma_table(times_from(at("2026-05-26 12:00"), T.size, cadence=60.0), columns, zone=ZONE)
+
+
 def _files(seed: int) -> dict[str, bytes]:
     empty = oscillator_record(
         PG2, np.linspace(1.03 * PG2.sensor.low, 0.975, 240), 0.0, generator(seed, NAME, "s002")
@@ -171,6 +209,7 @@ def _files(seed: int) -> dict[str, bytes]:
         "raw/ts_d15.csv.gz": _film_file(seed, "s006", "2026-05-21 20:00"),
         "raw/ts_d16.csv.gz": _film_file(seed, "s007", "2026-05-25 20:00"),
         "raw/ts_d17.csv.gz": _film_file(seed, "s008", "2026-05-28 20:00"),
+        "raw/heat_d16.csv": _heat_file(seed),
         "raw/drive_d17.txt": sweep_bytes(
             drive, at("2026-05-30 09:00"), sensor="GE1", cadence=20.0, program="semicolon"
         ),

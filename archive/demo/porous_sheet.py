@@ -65,6 +65,7 @@ area = { quantity = "$area m^2", known = "measured", source = "N2 isotherm on th
 area_method = "N2 at 77.3 K (BET), 0.162 nm^2 a molecule, sister piece of the same rod; s001 is the check in place"
 pore_diameter = "7.0(5) nm"
 porosity = "0.30(2)"
+volume = { quantity = "1.062(5) cm^3", known = "measured", source = "calliper, 2026-04" }
 outgassing = "390 K for three days"
 preplating = "none"
 
@@ -105,6 +106,16 @@ reference_drive = "0.2000 V rms"
 reference_quality_factor = "$quality"
 reference_period = "1.387052 ms"
 reference_rim_velocity = "$velocity mm/s peak"
+
+[layout.heat]
+[layout.heat.dialect]
+delimiter = ","
+header_rows = 2
+time_format = "iso8601"
+[layout.heat.channels]
+time          = { column = "time", quantity = "instant" }
+thermometer   = { column = "R_GE1", quantity = "resistance", unit = "Ohm", uncertainty = "0.002 %", thermometer = "GE-1", calibration = "GE-1-cal.r1", instrument = "ac bridge" }
+heat_capacity = { column = "C", quantity = "heat_capacity", unit = "uJ/K", uncertainty = "1 uJ/K", instrument = "relaxation, computed by the measuring program" }
 
 [layout.counter]               # compressed by the nightly script
 [layout.counter.dialect]
@@ -279,6 +290,17 @@ after_dose = "d17"
 thermometer = "thermometer"
 direction = "up"
 drive = "0.2 V rms"
+
+[[sweep]]
+name = "s010"
+kind = "heat-capacity"
+files = ["raw/heat_d16.csv"]
+layout = "heat"
+after_dose = "d16"
+thermometer = "thermometer"
+direction = "up"
+settled = "one night at 0.5 K"
+notes = "Relaxation through the weak link, small steps of 0.1 per cent."
 
 [[sweep]]
 name = "s009"

@@ -10,12 +10,14 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Final
 
+from archive.demo.adsorption_cooldowns import dead_volume_cooldown, helium_isotherm_cooldown
 from archive.demo.bulk_cooldowns import calorimeter_cooldown, stack_cooldown
 from archive.demo.calibration_cooldown import calibration_cooldown
 from archive.demo.current_cooldown import current_cooldown
 from archive.demo.first_cooldown import FIRST_COVERAGES, first_cooldown, first_stated
 from archive.demo.forward import transition_temperature
 from archive.demo.porous_cooldown import POROUS_COVERAGES, porous_cooldown, porous_stated
+from archive.demo.resonator_cooldown import resonator_cooldown
 from archive.demo.second_cooldown import SECOND_COVERAGES, TO4_LATER, second_cooldown, second_stated
 from archive.demo.stated import Stated
 from archive.demo.third_sound_cooldown import third_sound_cooldown
@@ -71,7 +73,8 @@ def truth(seed: int = SEED) -> dict[str, CooldownTruth]:
 
 
 _COOLDOWNS: Final = (
-    calibration_cooldown, first_cooldown, third_sound_cooldown, stack_cooldown, calorimeter_cooldown, second_cooldown, porous_cooldown, current_cooldown,
+    calibration_cooldown, first_cooldown, dead_volume_cooldown, third_sound_cooldown, helium_isotherm_cooldown, stack_cooldown, calorimeter_cooldown,
+    second_cooldown, porous_cooldown, current_cooldown, resonator_cooldown,
 )  # fmt: skip
 """In the order of time, which is that of intake: what a later one rests on comes before it."""
 
@@ -82,7 +85,7 @@ def make_folders(target: Path, *, seed: int = SEED) -> list[Path]:
     Parameters
     ----------
     target : Path
-        Folder that gets `2024-11` to `2026-06`; made if it is missing.
+        Folder that gets `2024-11` to `2026-07`; made if it is missing.
     seed : int
         Not negative.
 

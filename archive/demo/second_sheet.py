@@ -206,5 +206,6 @@ at = 2026-02-21T02:10:00+11:00
 what = "fault"
 text = "Measuring program stopped: disk full. Restarted at 03:00."
 sweeps = ["s004"]
-"""
+
+$waiver"""
 )

@@ -15,7 +15,7 @@ import matplotlib as mpl
 
 from archive.reports.figure_curves import curve
 from archive.reports.figure_style import STYLE, Drawn, NoFigure, Undrawn
-from archive.reports.figures_adsorption import isotherm_figure
+from archive.reports.figures_adsorption import dead_volume_figure, isotherm_figure
 from archive.reports.figures_bulk import (
     addenda_figure,
     fraction_figure,
@@ -35,6 +35,7 @@ from archive.reports.figures_oscillator import (
     dose_figure,
     resonance_figure,
 )
+from archive.reports.figures_porous_heat import porous_heat_figure
 from archive.reports.figures_third_sound import third_sound_figure
 from archive.reports.scope import Scope
 from schemas.lineage import ReductionDocument
@@ -44,6 +45,7 @@ __all__ = ["MAKERS", "Drawn", "Undrawn", "figures"]
 MAKERS: Final[dict[str, Callable[[Scope, ReductionDocument], Drawn]]] = {
     "bulk-oscillator": fraction_figure,
     "bulk-superfluid-density": superfluid_law_figure,
+    "dead-volume": dead_volume_figure,
     "dose-run": dose_figure,
     "drive-linearity": linearity_figure,
     "drive-pulse": pulse_figure,
@@ -57,6 +59,7 @@ MAKERS: Final[dict[str, Callable[[Scope, ReductionDocument], Drawn]]] = {
     "line-tracking": tracking_figure,
     "persistent-current": current_figure,
     "porous-film": porous_figure,
+    "porous-heat-capacity": porous_heat_figure,
     "pulse-lines": spectrum_figure,
     "resonance": resonance_figure,
     "resonance-tracking": tracking_figure,

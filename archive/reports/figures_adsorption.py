@@ -1,4 +1,4 @@
-"""Figures of adsorption: isotherm with the analysis by Brunauer, Emmett and Teller and its range."""
+"""Figures of adsorption: dead volume by expansion, and isotherm with the analysis by Brunauer, Emmett and Teller and its range."""
 
 from __future__ import annotations
 
@@ -7,13 +7,48 @@ from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 from numpy.typing import NDArray
 
-from archive.reports.figure_plots import enlarged, letters, line, points, residuals
-from archive.reports.figure_style import WIDTH, Column, Drawn, name_of, saved
-from archive.reports.figure_values import fact, scalar, step_of, taken, told
+from archive.reports.figure_plots import (
+    bar_of_all,
+    enlarged,
+    letters,
+    line,
+    points,
+    residuals,
+    stacked,
+)
+from archive.reports.figure_style import HEIGHTS, WIDTH, Column, Drawn, name_of, saved
+from archive.reports.figure_values import fact, scalar, spread_of, step_of, taken, told, wanted
 from archive.reports.scope import Scope
 from schemas.lineage import ReductionDocument
 
-__all__ = ["isotherm_figure"]
+__all__ = ["dead_volume_figure", "isotherm_figure"]
+
+
+def dead_volume_figure(scope: Scope, reduction: ReductionDocument) -> Drawn:
+    """Return the gas admitted against pressure with what the dead volume and the stated volumes hold, and the residuals."""
+    step = step_of(reduction, "dead-volume-fit")
+    p, n = taken(scope, reduction, step, "pressure"), taken(scope, reduction, step, "amount")
+    r = wanted(scope, reduction, "residual")
+    point, common = spread_of(scope, reduction, step.inputs["amount"].address.partition("#")[2])
+    order = np.argsort(p)
+    figure, panels = stacked([2.4, 1], height=HEIGHTS[1])
+    x, x_unit = enlarged(p, "Pa")
+    factor, unit = enlarged(n, "mol")
+    points(panels[0], p / x, n / factor, None if point is None else point / factor)
+    line(panels[0], p[order] / x, (n - r)[order] / factor)
+    panels[0].set(ylabel=f"$n$ / {unit}", ylim=(0, None))
+    top = float(np.nanmax(n)) / factor
+    bar_of_all(panels[0], 0.5 * top, 0.5 * common * top)
+    factor, unit = enlarged(r, "mol")
+    residuals(panels[1], p / x, r / factor, None if point is None else point / factor, name=f"$r$ / {unit}")
+    panels[1].set(xlabel=f"$p$ / {x_unit}", xlim=(0, None))
+    shared = f"; all points share {100 * common:.2g} per cent" if common > 0 else ""
+    results = told(scope, reduction, dead_volume="dead volume", offset="amount at zero pressure of a line whose offset is free")  # fmt: skip
+    caption = (
+        f"Expansions of gas into the cell, {reduction.sweep}: amount admitted against pressure, with what the dead volume found and the stated volumes hold (line); "
+        f"residuals below. Error bars: standard uncertainty of each point alone{shared}. {results}"
+    )
+    return Drawn(name_of("dead-volume", reduction), saved(figure), caption, (reduction.address,))
 
 
 def isotherm_figure(scope: Scope, reduction: ReductionDocument) -> Drawn:
