@@ -81,7 +81,9 @@ class Dialect(Record):
 class Channel(Record):
     """One column of a sweep: what it is, in which unit, from which instrument, how well known."""
 
-    column: str | int = Field(description="Column name in the file's header, or its number from 1.")
+    column: str | int = Field(
+        description="Column name in the file's header, or its number from 1; in a NumPy or HDF5 file an array, its column (`table/3`) or its row (`table/row/3`)."
+    )
     quantity: str = Field(
         description="Quantity kind, e.g. `period`, `resistance`, `pressure`, `instant` for a time stamp."
     )

@@ -268,7 +268,7 @@ def fraction_from_line(
     }
     away = np.abs(fraction - table)
     return Outcome(
-        {"fraction": fraction, "tabulated": np.asarray(table, dtype=np.float64), "difference": fraction - table},
+        {"fraction": fraction, "tabulated": np.asarray(table, dtype=np.float64), "difference": fraction - table, "rms_difference": float(np.sqrt(np.nanmean((fraction - table) ** 2)))},
         shared={"fraction": shared, "difference": shared},
         sources=tuple(source for source in sources if source.name in shared),
         findings=_scale_told(temperature_scale),
@@ -323,6 +323,7 @@ TRACKING_STEPS: tuple[Step, ...] = (
         yields={
             "fraction": Port("fraction", "array", "superfluid fraction"), "tabulated": Port("fraction", "array", "tabulated superfluid fraction at these temperatures"),
             "difference": Port("fraction", "array", "superfluid fraction minus the tabulated one"),
+            "rms_difference": Port("fraction", "scalar", "root mean square of that difference"),
         },
         sentence="Taking the frequency as that of fourth sound, proportional to the root of the superfluid fraction times the speed of first sound, and the fraction at "
         "{reference_K} K as the tabulated {reference}, {count} frequencies give superfluid fractions; the largest departure from the table is {largest}, at {largest_K} K.",
