@@ -98,7 +98,8 @@ def _show_plan(plan: Plan) -> None:
     say(f"For sweeps of kind {', '.join(plan.applies.sweep_kinds)}.")
     for name, need in plan.needs.items():
         word = "uses, where there is one," if need.optional else "needs"
-        say(f"It {word} a reduction by {need.plan} ({need.relation.replace('-', ' ')}), as {name}.")
+        which = "the newest reduction of every sweep" if need.many else "a reduction"
+        say(f"It {word} {which} by {need.plan} ({need.relation.replace('-', ' ')}), as {name}.")
     if plan.headline:
         say(f"Results shown first: {', '.join(plan.headline)}")
     say()

@@ -54,13 +54,15 @@ _GATHER = Step(
 )  # fmt: skip
 
 
-def gathering_step(count: int, *, quantity: str) -> Step:
+def gathering_step(count: int, *, output: str, quantity: str) -> Step:
     """Return the step that takes a result of a kind from so many reductions; its inputs are from_1, from_2 and so on.
 
     Parameters
     ----------
     count : int
         Of reductions, >= 1.
+    output : str
+        Name of the result.
     quantity : str
         Quantity kind of the result.
     """
@@ -68,7 +70,7 @@ def gathering_step(count: int, *, quantity: str) -> Step:
     return replace(
         _GATHER,
         takes={f"{_PORT}{k}": port for k in range(1, count + 1)},
-        yields={"values": Port(quantity, "array", "the result of each reduction")},
+        yields={"values": Port(quantity, "array", f"{output} of each reduction")},
     )
 
 

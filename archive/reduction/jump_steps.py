@@ -162,7 +162,7 @@ JUMP_STEPS: tuple[Step, ...] = (
             "probability": Port("number", "scalar", "chance of a larger chi squared if all films lie on the line"), "films": Port("count", "scalar", "films on the line"),
             "line_density": Port("areal_mass_density", "array", "areal density of the line at each transition"), "residual": Port("number", "array", "areal density less line, in standard uncertainties"),
         },
-        sentence="A line through the origin was fitted to {count} of {of} films with transitions from {low_K} K to {high_K} K, what they share kept apart from what each has alone: sigma_s(T_KT)/T_KT = {slope_kg_m2_K} kg m^-2 K^-1, {ratio} of the universal value; chi^2 = {chi2_is} with {dof} degrees of freedom (chance {chance}).",
+        sentence="A line through the origin was fitted to {count} of {of} films with transitions from {low_K} K to {high_K} K, what they share kept apart from what each has alone: sigma_s(T_KT)/T_KT is {ratio} of the universal value; chi^2 = {chi2_is} with {dof} degrees of freedom (chance {chance}).",
         citations=("nelson-kosterlitz-1977",), spread="refit", estimates=("transition", "density"),
     ),
 )  # fmt: skip

@@ -232,7 +232,7 @@ class _Work:
             self._note_input(each)
         estimate = next(iter(inputs.values())).estimate
         assert estimate is not None  # noqa: S101 - outputs of reductions are numbers
-        step = gathering_step(len(results), quantity=estimate.quantity)
+        step = gathering_step(len(results), output=output, quantity=estimate.quantity)
         documents = self.resolver.many[need]
         parameters = GatherParameters(output=output, reductions=tuple(each.address for each in documents))
         return self._inserted(step, parameters, inputs, "values", f"{need}_{output}")

@@ -131,7 +131,7 @@ def test_a_column_of_each_film_cannot_be_taken_together(films: Any, tools: Any) 
 
 
 def test_results_are_gathered_in_their_order() -> None:
-    step = gathering_step(3, quantity="temperature")
+    step = gathering_step(3, output="T_KT", quantity="temperature")
     assert list(step.takes) == ["from_1", "from_2", "from_3"]
     parameters = GatherParameters(output="T_KT", reductions=("a/b@p.1", "a/c@p.1", "a/d@q.1"))
     found = gathered(parameters, from_3=3.0, from_1=1.0, from_2=None)
