@@ -112,5 +112,7 @@ def _text(value: Any) -> str | None:
         text = str(value.get("text") or Quantity.read(dict(value), value["kind"]).format())
         source = value.get("source")
         value = f"{text} ({source})" if source else text
+    if isinstance(value, Mapping):
+        value = ", ".join(f"{name} {_text(each)}" for name, each in value.items() if not _empty(each))
     text = value if isinstance(value, str) else json.dumps(value, ensure_ascii=False)
     return text if len(text) <= _LONGEST else text[: _LONGEST - 3] + "..."

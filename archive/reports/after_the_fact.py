@@ -48,16 +48,16 @@ def after_the_fact(held: Holdings) -> dict[str, Any]:
     return {
         "amendments": [
             {
-                "address": each.address, "by": each.by, "at": full_time(each.made, zone), "because": each.because,
+                "address": each.address, "by": each.by, "at": full_time(each.made, zone), "because": f"{each.because.rstrip('.')}.",
                 "sweeps": ", ".join(sweep.partition("/")[2] for sweep in each.sweeps),
                 "lines": [_line(said) for said in each.differences],
             }
             for each in held.view.amendments
         ],
         "records": list(_records(held.view)),
-        "withdrawn": [{"address": address, "why": why} for address, why in sorted(held.view.withdrawn.items())],
+        "withdrawn": [{"address": address, "why": why} for address, why in _withdrawn(held.view)],
         "resting": [
-            {"address": address, "on": ", ".join(on)} for address, on in sorted(held.view.resting.items())
+            {"address": ", ".join(addresses), "on": on} for on, addresses in _resting(held.view).items()
         ],
     }  # fmt: skip
 
@@ -119,14 +119,31 @@ def dose_mark(view: CooldownView, dose: str) -> str:
 def warnings_of_acts(view: CooldownView) -> list[str]:
     """Return what the front page says of acts, loudest first."""
     cooldown = view.newest.cooldown
-    said = [f"WITHDRAWN: {view.withdrawn[cooldown]}"] if cooldown in view.withdrawn else []
-    said += [
-        f"{address} is WITHDRAWN: {why}"
-        for address, why in sorted(view.withdrawn.items())
-        if address != cooldown
-    ]
-    said += [f"{address} rests on {', '.join(on)}, WITHDRAWN" for address, on in sorted(view.resting.items())]
+    said = [f"{address} is WITHDRAWN: {why}" for address, why in _withdrawn(view)]
+    said.sort(key=lambda each: not each.startswith(f"{cooldown} "))
+    now = {each.address for each in view.current}
+    for on, addresses in _resting(view).items():
+        current = [each.partition("/")[2] for each in addresses if each in now]
+        if current:
+            said.append(f"on {on}, WITHDRAWN, rest results that count: {', '.join(current)}")
     return said + [_amendment_words(each) for each in view.amendments]
+
+
+def _withdrawn(view: CooldownView) -> list[tuple[str, str]]:
+    """What is withdrawn itself, and why; what is made of a withdrawn sweep goes with it."""
+    return [
+        (address, why)
+        for address, why in sorted(view.withdrawn.items())
+        if address.partition("@")[0] == address or address.partition("@")[0] not in view.withdrawn
+    ]
+
+
+def _resting(view: CooldownView) -> dict[str, list[str]]:
+    """Reductions that rest on something withdrawn, by what that is."""
+    found: dict[str, list[str]] = {}
+    for address, on in sorted(view.resting.items()):
+        found.setdefault(", ".join(on), []).append(address)
+    return found
 
 
 def _amendment_words(each: AmendmentDocument) -> str:
@@ -155,7 +172,7 @@ def act_sentences(scope: Scope) -> Iterator[Said]:
                 f"In {name}, {said['now']} was taken in the place of {said['was']}: {said['because'].rstrip('.')}.",
                 said["now"],
             )
-        for address, why in sorted(view.withdrawn.items()):
+        for address, why in _withdrawn(view):
             yield sentence(f"{address} is withdrawn: {why}.", address)
     for reduction in scope.reductions:
         resting = scope.holdings_of(reduction).view.resting.get(reduction.address, ())

@@ -137,13 +137,15 @@ def _why(old: ReductionDocument, new: ReductionDocument) -> str:
             f"plan {old.plan.address} became {new.plan.address}"
             + (f": {new.plan.changed}" if new.plan.changed else "")
         )
-    before = {each.address: each.digest for each in old.inputs}
+    before = {(each.address, each.role): each.digest for each in old.inputs}
     changed = [
-        each.address
+        each
         for each in new.inputs
-        if before.get(each.address, each.digest) != each.digest or each.address not in before
+        if (each.address, each.role) not in before or before[each.address, each.role] != each.digest
     ]
-    parts += [f"changed inputs: {', '.join(changed)}"] if changed else []
+    parts += list(dict.fromkeys(f"{each.address}: {each.because}" for each in changed if each.because))
+    bare = list(dict.fromkeys(each.address for each in changed if not each.because))
+    parts += [f"changed inputs: {', '.join(bare)}"] if bare else []
     if old.software != new.software and not parts:
         parts.append("the software changed")
     return "; ".join(parts) or "[nr]"
