@@ -27,7 +27,7 @@ CONVERTED = {"period": "frequency", "dissipation": "quality_factor"}
 _RMS = {"rms": 1.0, "peak": 1 / math.sqrt(2), "peak-to-peak": 1 / (2 * math.sqrt(2)), None: 1.0}
 """Factor to the rms value of a sine."""
 
-_OSCILLATING = frozenset({"amplitude", "drive", "voltage", "current"})
+_OSCILLATING = frozenset({"amplitude", "drive", "voltage", "current", "velocity"})
 _SHARE = re.compile(r"^\s*([0-9]+(?:\.[0-9]*)?(?:[eE][-+]?[0-9]+)?)\s*(%|ppm|ppb)\s*$")
 _SHARES = {"%": 1e-2, "ppm": 1e-6, "ppb": 1e-9}
 
