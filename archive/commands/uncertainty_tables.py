@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import Any
 
-from archive.commands.terminal import say, table
+from archive.commands.terminal import say, table, wide_output
 
 __all__ = ["say_budget", "say_monte_carlo"]
 
@@ -102,7 +102,7 @@ def say_monte_carlo(run: Mapping[str, Any], outputs: Mapping[str, Mapping[str, A
                 interval("symmetric"),
                 interval("shortest"),
                 str(trials - each["values"]) if each["values"] < trials else "",
-                each.get("agreement") or ("none stated" if each.get("symmetric") else "too few values"),
+                _verdict(each),
             )
         )
     columns = (
@@ -113,12 +113,19 @@ def say_monte_carlo(run: Mapping[str, Any], outputs: Mapping[str, Mapping[str, A
         "drawn",
         "shortest",
         "lost",
-        "first order...",
+        "verdict",
     )
-    lost = any(line[6] for line in lines)
-    keep = [k for k in range(len(columns)) if lost or columns[k] != "lost"]
+    left_out = set() if any(line[6] for line in lines) else {"lost"}
+    left_out |= set() if wide_output() else {"shortest"}
+    keep = [k for k in range(len(columns)) if columns[k] not in left_out]
     table([columns[k] for k in keep], [[line[k] for k in keep] for line in lines])
     _say_remarks(run)
+
+
+def _verdict(each: Mapping[str, Any]) -> str:
+    if each["values"] == 0:
+        return "not drawn"
+    return each.get("agreement") or ("none stated" if each.get("symmetric") else "too few values")
 
 
 def _say_remarks(run: Mapping[str, Any]) -> None:

@@ -42,7 +42,8 @@ BLOCK = 10_000
 REPETITIONS = (200, 1000)
 """Least and most repetitions with noise alone: their variance is known to 10 and to 4.5 per cent (common practice, no source)."""
 MOST = 1_000_000
-"""Trials after which the adaptive procedure gives up (common practice, no source)."""
+"""Trials after which the adaptive procedure gives up, and that may be asked for: their results fit in memory (common practice, no
+source)."""
 GENERATOR = "numpy PCG64, trial k from SeedSequence(seed, spawn_key=(k,))"
 
 Progress = Callable[[int, int], None]
@@ -72,7 +73,7 @@ class Request:
     def __post_init__(self) -> None:
         """Refuse what cannot be done."""
         for name, value, low, high in (
-            ("trials", 2 if self.trials is None else self.trials, 2, 10_000_000), ("seed", self.seed, 0, 2**63 - 1),
+            ("trials", 2 if self.trials is None else self.trials, 2, MOST), ("seed", self.seed, 0, 2**63 - 1),
             ("digits", self.digits, 1, 2), ("workers", self.workers, 1, 1024),
         ):  # fmt: skip
             if not low <= value <= high:

@@ -146,6 +146,8 @@ def _why(old: ReductionDocument, new: ReductionDocument) -> str:
     parts += list(dict.fromkeys(f"{each.address}: {each.because}" for each in changed if each.because))
     bare = list(dict.fromkeys(each.address for each in changed if not each.because))
     parts += [f"changed inputs: {', '.join(bare)}"] if bare else []
+    if new.monte_carlo is not None and new.monte_carlo != old.monte_carlo:
+        parts.append(f"the plan was repeated with drawn inputs ({new.monte_carlo.trials} trials)")
     if old.software != new.software and not parts:
         parts.append("the software changed")
     return "; ".join(parts) or "[nr]"
