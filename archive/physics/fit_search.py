@@ -95,8 +95,18 @@ class Residuals:
             above, below = point.copy(), point.copy()
             above[index] = min(value + step, self.upper[index])
             below[index] = max(value - step, self.lower[index])
-            columns.append((self.tame(above) - self.tame(below)) / (above[index] - below[index]))
+            columns.append(self._difference(above, below, point, index))
         return np.column_stack(columns)
+
+    def _difference(self, above: FloatArray, below: FloatArray, point: FloatArray, index: int) -> FloatArray:
+        up, down = self(above), self(below)
+        # Beside the edge of a model's domain only one side tells its slope.
+        if not np.isfinite(up).all():
+            above, up = point, self(point)
+        if not np.isfinite(down).all():
+            below, down = point, self(point)
+        width = above[index] - below[index]
+        return _tame((up - down) / width) if width > 0 else np.full(up.shape, 1e100)
 
     def rescaled(self, point: FloatArray) -> tuple[Residuals, FloatArray]:
         """Return the same function with the sizes of the parameters at a point as their scale, and that point."""
@@ -140,14 +150,13 @@ class End:
 
     @property
     def chi2(self) -> float:
-        """Sum of squares; infinite where the model is not finite."""
-        total = float(np.sum(_tame(self.values) ** 2))
-        return total if np.isfinite(self.values).all() else math.inf
+        """Sum of squares; finite, since a search ends no higher than it began."""
+        return float(np.sum(self.values**2))
 
     @property
     def good(self) -> bool:
         """Whether the search converged on parameters that the data determine."""
-        return self.offset < RELATIVE_OFFSET and math.isfinite(self.chi2) and self.determined
+        return self.offset < RELATIVE_OFFSET and self.determined
 
     @property
     def determined(self) -> bool:
@@ -156,7 +165,7 @@ class End:
         norm = np.linalg.norm(columns, axis=0)
         if columns.shape[1] == 0:
             return True
-        if not np.isfinite(columns).all() or (norm == 0).any():
+        if not (norm < 1e99).all() or (norm == 0).any():
             return False
         singular = np.linalg.svd(columns / norm, compute_uv=False)
         # Columns come from central differences, good to about 1e-10.
@@ -203,28 +212,25 @@ def best_end(calls: Residuals, start: FloatArray, terms: Terms) -> End:
     ways = ("trf",) if calls.bounded else ("lm", "trf")
     share = terms.budget // (2 * len(ways))
     quick = terms.tolerance > QUICK
-    best: End | None = None
-    scaled = calls
-    for again in (False,) if quick else (False, True):
-        point = start
-        if again and best is not None:
-            # The first scale was a guess from the start; where the search has come to, the parameters tell better.
-            scaled, point = best.calls.rescaled(best.point)
-        for method in ways:
-            if again and scaled.calls >= terms.budget:
-                break
-            end = _searched(scaled, point, method, share, terms)
-            if best is None or end.chi2 <= best.chi2:
-                best, point = end, end.point
-            if best.good:
-                break
-        if best is not None and best.good:
-            break
-    assert best is not None  # noqa: S101 - there is always a way
+    best = _by_ways(calls, start, ways, share, terms)
+    if not best.good and not quick:
+        # The first scale was a guess from the start; where the search has come to, the parameters tell better.
+        scaled, point = best.calls.rescaled(best.point)
+        again = _by_ways(scaled, point, ways, share, terms)
+        best, calls.calls = (again if again.chi2 <= best.chi2 else best), scaled.calls
     if not quick and (not best.good or best.chi2 > terms.doubt):
-        calls.calls = scaled.calls
         best = _from_new_starts(best, calls, start, ways[0], terms)
     return _with_signs_of(start, best, terms)
+
+
+def _by_ways(calls: Residuals, start: FloatArray, ways: tuple[str, ...], share: int, terms: Terms) -> End:
+    best = _searched(calls, start, ways[0], share, terms)
+    for method in ways[1:]:
+        if best.good or calls.calls >= terms.budget:
+            break
+        end = _searched(calls, best.point, method, share, terms)
+        best = end if end.chi2 <= best.chi2 else best
+    return best
 
 
 def _from_new_starts(best: End, calls: Residuals, start: FloatArray, method: str, terms: Terms) -> End:
@@ -249,7 +255,7 @@ def _from_new_starts(best: End, calls: Residuals, start: FloatArray, method: str
 def _with_signs_of(start: FloatArray, end: End, terms: Terms) -> End:
     """Return the mirrored end if the signs of the start serve as well: two signs of a model often cancel."""
     turned = (start * end.point < 0) & ~end.held
-    if not turned.any() or not math.isfinite(end.chi2):
+    if not turned.any():
         return end
     point = np.where(turned, -end.point, end.point)
     if np.any((point < end.calls.lower) | (point > end.calls.upper)):
@@ -355,7 +361,8 @@ def _relative_offset(values: FloatArray, jacobian: FloatArray, held: BoolArray, 
     norm = np.linalg.norm(free, axis=0)
     if free.shape[1] == 0:
         return 0.0
-    if not np.isfinite(free).all() or (norm == 0).any() or not np.isfinite(values).all():
+    # A column of 1e100 has no slope: the model is not finite on either side.
+    if not (norm < 1e99).all() or (norm == 0).any():
         return math.inf
     q, _ = np.linalg.qr(free / norm)
     along = float(np.linalg.norm(q.T @ values))

@@ -289,9 +289,7 @@ def _result(names: tuple[str, ...], end: End, *, absolute: bool, budget: int) ->
         covariance = covariance * (chi2 / dof) if dof > 0 else np.full_like(covariance, np.inf)
     covariance = covariance * np.outer(scale, scale)
     at_bound = tuple(name for name, flag in zip(names, end.held, strict=True) if flag)
-    if not np.isfinite(end.values).all():
-        converged, message = False, "not converged: the model is not finite where the search ended"
-    elif not end.determined:
+    if not end.determined:
         converged, message = False, "not converged: the data do not determine all parameters"
     elif end.offset >= RELATIVE_OFFSET:
         spent = f" after {evaluations} evaluations" if evaluations >= budget else ""

@@ -74,6 +74,11 @@ def test_free_scale_tests_the_universal_jump():
     assert found.values["scale"] / SCALE == pytest.approx(1.0, abs=0.005)
 
 
+def test_the_scale_alone_may_be_fitted():
+    found, _ = fitted(2, free=("scale",), arguments={"scale": 1.05 * SCALE})
+    assert found.fit.names == ("scale",)
+
+
 def test_free_vortex_prefactor():
     found, _ = fitted(3, free=(*FREE_BY_DEFAULT, "F"), F=1.5)
     assert found.fit.converged

@@ -360,3 +360,52 @@ def test_a_quick_search_only_finds_a_start():
     )
     assert quick.evaluations < full.evaluations
     np.testing.assert_allclose(quick.values, full.values, rtol=1e-2)
+
+
+def test_a_start_on_the_other_side_of_nought_is_left():
+    """The mirrored end lies outside the bounds, and the end itself is right."""
+    x = np.linspace(0.0, 1.0, 11)
+    found = fit(lambda x, p: p[0] * x, [Parameter("slope", -0.5, -1.0, 5.0)], x, 3 * x, absolute=False)
+    assert found.value("slope") == pytest.approx(3.0)
+
+
+def test_a_search_that_ends_at_the_edge_of_the_domain_is_not_called_converged():
+    """The root's branch point keeps the search from the least sum of squares at b = 0.5; slopes there have one side only."""
+    x = np.linspace(0.0, 1.0, 12)
+    found = fit(lambda x, p: 0 * np.sqrt(p[0] - x) + p[0], [Parameter("b", 1.05)], x, x, absolute=False)
+    assert found.value("b") == pytest.approx(1.0, abs=1e-3)
+    assert not found.converged
+    assert found.message.startswith("not converged: relative offset")
+
+
+def test_a_model_that_is_finite_at_one_point_only():
+    x = np.linspace(0.0, 1.0, 12)
+    found = fit_residuals(lambda p: np.where(p[0] == 1.0, x, np.nan), [Parameter("a", 1.0)], absolute=False)
+    assert not found.converged
+    assert np.isinf(found.covariance).all()
+
+
+def test_as_many_points_as_parameters_and_no_exact_fit():
+    found = fit_residuals(
+        lambda p: p**2 + 1, [Parameter("a", 1.0), Parameter("b", 2.0)], absolute=False, max_evaluations=200
+    )
+    assert not found.converged
+
+
+def test_a_quick_search_may_say_no():
+    x = np.linspace(0.0, 1.0, 12)
+    found = fit_residuals(
+        lambda p: x - (p[0] + p[1]),
+        [Parameter("a", 1.0), Parameter("b", 1.0)],
+        absolute=False,
+        tolerance=1e-3,
+    )
+    assert not found.converged
+
+
+def test_a_start_that_is_best_and_on_its_bound_is_kept():
+    """The solver must begin inside the bounds, so it ends a little higher than the start itself."""
+    x = np.linspace(0.0, 1.0, 11)
+    found = fit(lambda x, p: p[0] * x, [Parameter("slope", 0.0, 0.0, 1.0)], x, 0 * x, absolute=False)
+    assert found.value("slope") == 0.0
+    assert found.converged
