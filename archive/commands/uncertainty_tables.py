@@ -26,9 +26,7 @@ def say_budget(content: Mapping[str, Any]) -> None:
     rows = content.get("budget") or []
     if not rows:
         return
-    unit, factor = preferred_unit(
-        content["value"], content["unit"], content["quantity"], content.get("uncertainty")
-    )
+    unit, factor = preferred_unit(content["uncertainty"], content["unit"], content["quantity"])
     lines = []
     for row in rows:
         stated = row["stated"]
@@ -48,9 +46,15 @@ def say_budget(content: Mapping[str, Any]) -> None:
         ("combined standard uncertainty", "", "", "", total, _percent(sum(row["share"] for row in rows)))
     )
     say("  budget:")
+    columns = ("source", "stated", "common to", "sensitivity (SI)", "contribution", "share")
+    keep = [
+        k
+        for k, name in enumerate(columns)
+        if any(line[k] for line in lines) and (wide_output() or name not in {"stated", "sensitivity (SI)"})
+    ]
     table(
-        ("source", "stated", "common to", "sensitivity (SI)", "contribution", "share"),
-        lines,
+        [columns[k] for k in keep],
+        [[line[k] for k in keep] for line in lines],
         right=("sensitivity (SI)", "contribution", "share"),
     )
 
@@ -83,9 +87,9 @@ def say_monte_carlo(run: Mapping[str, Any], outputs: Mapping[str, Mapping[str, A
     for each in run["results"]:
         output = outputs[each["name"]]
         unit, factor = preferred_unit(
-            output["value"], output["unit"], output["quantity"], output["uncertainty"]
+            output["value"], output["unit"], output["quantity"], output.get("uncertainty")
         )
-        u = output["uncertainty"]
+        u = output.get("uncertainty")
 
         def interval(
             name: str, each: Any = each, u: Any = u, unit: str = unit, factor: float = factor
@@ -93,11 +97,12 @@ def say_monte_carlo(run: Mapping[str, Any], outputs: Mapping[str, Mapping[str, A
             return interval_text(each.get(name), uncertainty=u, unit=unit, factor=factor)
 
         spread = each.get("uncertainty")
+        unit_u, factor_u = preferred_unit(u or spread or 0.0, output["unit"], output["quantity"])
         lines.append(
             (
                 each["name"],
-                contribution_text(u, unit=unit, factor=factor) if u else "-",
-                "-" if spread is None else contribution_text(spread, unit=unit, factor=factor),
+                contribution_text(u, unit=unit_u, factor=factor_u) if u else "-",
+                "-" if spread is None else contribution_text(spread, unit=unit_u, factor=factor_u),
                 interval("first_order"),
                 interval("symmetric"),
                 interval("shortest"),

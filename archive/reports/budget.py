@@ -87,7 +87,7 @@ def budget_block(
     rows = budget(reduction, output)
     if not rows or output.value is None or not output.uncertainty:
         return []
-    unit, factor = preferred_unit(output.value, output.unit, output.quantity, output.uncertainty)
+    unit, factor = preferred_unit(output.uncertainty, output.unit, output.quantity)
     large, rest = _parted(rows, least)
     lines = [
         _line(
@@ -173,8 +173,9 @@ def monte_carlo_sentence(reduction: ReductionDocument, output: OutputEntry) -> s
     if found.symmetric is None:
         return f"{head}: too few values for an interval."
     u = output.uncertainty
+    unit_u, factor_u = preferred_unit(u or found.uncertainty or 0.0, output.unit, output.quantity)
     return (
-        f"{head}: u = {contribution_text(found.uncertainty or 0.0, unit=unit, factor=factor)}; {p} in "
+        f"{head}: u = {contribution_text(found.uncertainty or 0.0, unit=unit_u, factor=factor_u)}; {p} in "
         f"{interval_text(found.symmetric, uncertainty=u, unit=unit, factor=factor)} (shortest {interval_text(found.shortest, uncertainty=u, unit=unit, factor=factor)}); "
         f"first order {interval_text(found.first_order, uncertainty=u, unit=unit, factor=factor)} {_verdict(run, found)}."
     )

@@ -66,7 +66,7 @@ def test_the_table_ends_with_the_combined_uncertainty_in_the_unit_of_the_result(
     lines = budget_block(film, output, least=0.01)
     assert str(lines[-1]["source"]) == "combined standard uncertainty"
     assert lines[-1]["share"] == "100 %"
-    unit, factor = preferred_unit(output.value, output.unit, output.quantity, output.uncertainty)
+    unit, factor = preferred_unit(output.uncertainty, output.unit, output.quantity)
     assert lines[-1]["contribution"] == f"{output.uncertainty * factor:.3g} {unit}"
     assert str(lines[-2]["source"]).endswith("below 1 per cent each")
     area = next(line for line in lines if str(line["source"]) == "disc.r1 area")
