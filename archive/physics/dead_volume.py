@@ -119,26 +119,29 @@ def free_volume(
     a = w * rho / float(w @ rho**2)
     volume = float(a @ n)
     residuals = n - volume * rho
-    dof = n.size - 1
-    variance = 1 / w
-    scatter = float(w @ residuals**2) / dof if dof else 0.0
-    variance = variance * (scatter if u is None else max(scatter, 1.0))
+    factor = _scatter(w, residuals, n.size - 1, stated=u is not None)
     offset, u_offset, covariance = math.nan, math.nan, math.nan
     total, first, second = float(w.sum()), float(w @ rho), float(w @ rho**2)
     determinant = total * second - first**2
     # Expansions to one and the same pressure say nothing of an offset.
     if n.size > 2 and determinant > 1e-9 * total * second:
         b = w * (second - rho * first) / determinant
-        offset, u_offset, covariance = (
-            float(b @ n),
-            math.sqrt(float(b**2 @ variance)),
-            float((a * b) @ variance),
-        )
+        offset = float(b @ n)
+        slope = float((w * (rho * total - first) / determinant) @ n)
+        own = _scatter(w, n - offset - slope * rho, n.size - 2, stated=u is not None)
+        u_offset = math.sqrt(own * float(b**2 @ (1 / w)))
+        covariance = math.sqrt(own * factor) * float((a * b) @ (1 / w))
     return FreeVolume(
         volume=volume,
-        u_volume=math.sqrt(float(a**2 @ variance)),
+        u_volume=math.sqrt(factor * float(a**2 @ (1 / w))),
         offset=offset,
         u_offset=u_offset,
         covariance=covariance,
         residuals=residuals,
     )
+
+
+def _scatter(w: FloatArray, residuals: FloatArray, dof: int, *, stated: bool) -> float:
+    """Return the factor on the variances: what the residuals ask for, and at least one where uncertainties are stated."""
+    found = float(w @ residuals**2) / dof if dof else 0.0
+    return max(found, 1.0) if stated else found

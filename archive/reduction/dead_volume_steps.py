@@ -7,110 +7,23 @@ as far as it does in truth.
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
 
 import numpy as np
 
-from archive.physics.dead_volume import free_volume, virial_density
-from archive.physics.helium_gas import second_virial, second_virial_uncertainty
+from archive.physics.dead_volume import free_volume
 from archive.physics.helium_vapour import saturated_vapour_pressure
 from archive.reduction.background_steps import known_rows
+from archive.reduction.cell_gas import GasParameters, cell_gas, stated_volumes
 from archive.reduction.estimate import FloatArray
 from archive.reduction.facts import GasBook
 from archive.reduction.step import Covariance, NoParameters, Outcome, Port, Step
-from schemas.base import Record
 from schemas.finding import Finding
-from schemas.lineage import SourceEntry
-from schemas.quantity import Quantity
-from schemas.substrate import Isotope, Sample
+from schemas.substrate import Sample
 
-__all__ = ["DEAD_VOLUME_STEPS", "GasParameters"]
+__all__ = ["DEAD_VOLUME_STEPS"]
 
 OFFSET_SHARE = 0.005
 """Part of the largest amount below which an offset is passed over (common practice, no source)."""
-
-
-class GasParameters(Record):
-    """Second virial coefficient of a gas that is not helium; that of helium is known, no other is assumed."""
-
-    second_virial_cm3_mol: float | None = None
-    second_virial_uncertainty_cm3_mol: float = 0.0
-
-
-@dataclass(frozen=True)
-class _Virial:
-    """Second virial coefficient at each temperature, its uncertainty, and of what."""
-
-    parameters: GasParameters
-    isotope: Isotope
-
-    def at(self, temperature: FloatArray) -> tuple[FloatArray, FloatArray]:
-        """Return B and its standard uncertainty, m^3/mol."""
-        if self.isotope == "4He" or self.isotope == "3He":  # noqa: PLR1714 - narrows the type
-            return second_virial(temperature, self.isotope), second_virial_uncertainty(
-                temperature, self.isotope
-            )
-        given = self.parameters.second_virial_cm3_mol
-        if given is None:
-            raise ValueError(
-                f"sample: the second virial coefficient of {self.isotope} is not known here; set second_virial_cm3_mol at the cell's temperature in a copy of the plan"
-            )
-        spread = self.parameters.second_virial_uncertainty_cm3_mol
-        return np.full(temperature.shape, given * 1e-6), np.full(temperature.shape, spread * 1e-6)
-
-    def density(self, pressure: FloatArray, temperature: FloatArray, sign: float = 0.0) -> FloatArray:
-        """Return the molar density with B moved by so many standard uncertainties; NaN outside the equation's range."""
-        known = np.isfinite(pressure) & np.isfinite(temperature)
-        found = np.full(np.shape(pressure), math.nan)
-        if known.any():
-            B, u = self.at(temperature[known])
-            # Below zero is noise of the gauge about no gas at all.
-            found[known] = virial_density(
-                np.maximum(pressure[known], 0.0), temperature[known], second_virial=B + sign * u
-            )
-        return found
-
-    def source(self, temperature: FloatArray) -> SourceEntry:
-        """Return the source of its uncertainty; equal gas and temperature have equal names."""
-        T = float(np.nanmedian(temperature))
-        return SourceEntry(
-            name=f"second virial coefficient of {self.isotope} near {T:.2g} K",
-            description="of the gas in the cell", level="laboratory",
-        )  # fmt: skip
-
-
-def _virial(parameters: GasParameters, sample: Sample | None) -> _Virial:
-    if sample is None:
-        raise ValueError("sample: the gas of the run is not recorded; name the sample in the sheet")
-    return _Virial(parameters, sample.isotope)
-
-
-@dataclass(frozen=True)
-class _Warm:
-    """A stated volume at a temperature of its own."""
-
-    name: str
-    volume: float
-    u_volume: float
-    temperature: float
-    stated: str
-
-    @property
-    def source(self) -> SourceEntry:
-        return SourceEntry(
-            name=f"dead volume {self.name}, {self.stated}", description="stated dead volume", level="cell"
-        )
-
-
-def _stated(gas: GasBook) -> tuple[list[_Warm], float, float, list[_Warm]]:
-    """Return the volumes with a temperature of their own, the stated sum of those at the cell's and its uncertainty, and these."""
-    warm: list[_Warm] = []
-    cold: list[_Warm] = []
-    for each in gas.dead_volumes:
-        at = each.temperature.si if isinstance(each.temperature, Quantity) else math.nan
-        found = _Warm(each.name, each.volume.si, each.volume.si_uncertainty or 0.0, at, each.volume.format())
-        (cold if math.isnan(at) else warm).append(found)
-    return warm, sum(each.volume for each in cold), math.hypot(*(each.u_volume for each in cold)), cold
 
 
 def _column(value: float | FloatArray, like: FloatArray) -> FloatArray:
@@ -152,7 +65,7 @@ def dead_volume_fit(
     The gas must not be adsorbed: helium at 77 K or above. Thermomolecular pressure differences are not in it.
     """
     T = _column(temperature, pressure)
-    virial = _virial(parameters, sample)
+    virial = cell_gas(parameters, sample)
     rows = known_rows(amount, pressure, T) & (np.nan_to_num(pressure) > 0)
     density = virial.density(pressure, T)
     rows &= np.isfinite(density) & (np.nan_to_num(amount) > 0)
@@ -160,7 +73,7 @@ def dead_volume_fit(
         raise ValueError(
             "pressure: no row has an amount, a pressure above zero and a temperature in the range of the virial equation"
         )
-    warm, stated, u_stated, _ = _stated(gas)
+    warm, stated, u_stated, _ = stated_volumes(gas)
     held = [virial.density(pressure, _column(each.temperature, pressure))[rows] for each in warm]
     inside = amount[rows] - sum((each.volume * rho for each, rho in zip(warm, held, strict=True)), np.zeros(int(rows.sum())))  # fmt: skip
     # An error of the pressure moves the density that goes with an amount.
@@ -267,8 +180,8 @@ def adsorbed_amount(
     The excess amount (Gibbs): the volume of the film itself is not taken off the dead volume.
     """
     T = _column(temperature, pressure)
-    virial = _virial(parameters, sample)
-    warm, stated, _, cold = _stated(gas)
+    virial = cell_gas(parameters, sample)
+    warm, stated, _, cold = stated_volumes(gas)
     if volume is None and not gas.dead_volumes:
         raise ValueError(
             "volume: no dead volume was measured or stated; expand helium into the cell and reduce that run by the plan dead-volume, or state it in the sheet"

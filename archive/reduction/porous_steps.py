@@ -1,24 +1,20 @@
-"""Steps of helium in porous media: coherence length, the singularity of the heat capacity that goes with it, and what a measurement bounds."""
+"""Steps of helium in porous media: coherence length, and the singularity of the heat capacity that goes with it."""
 
 from __future__ import annotations
 
 import math
 
-import numpy as np
-
 from archive.physics import helium_liquid, porous_singularity
 from archive.physics.constants import MOLAR_MASS_HELIUM4, T_LAMBDA
-from archive.physics.porous_singularity import expected_amplitude, singular_part, upper_bound
+from archive.physics.porous_singularity import expected_amplitude
 from archive.physics.power_law import transverse_correlation_length
-from archive.reduction.background_steps import known_rows, weights
-from archive.reduction.estimate import Estimate, FloatArray
 from archive.reduction.film_steps import DensityParameters
-from archive.reduction.step import Covariance, Outcome, Port, Step
+from archive.reduction.step import Outcome, Port, Step
 from schemas.base import Record
 from schemas.finding import Finding
 from schemas.lineage import SourceEntry
 
-__all__ = ["POROUS_STEPS", "BoundParameters", "ExpectedParameters", "SingularityParameters"]
+__all__ = ["POROUS_STEPS", "ExpectedParameters", "bulk_per_volume"]
 
 
 class ExpectedParameters(Record):
@@ -29,23 +25,6 @@ class ExpectedParameters(Record):
 
     combination: float = porous_singularity.COMBINATION
     combination_uncertainty: float = porous_singularity.COMBINATION_UNCERTAINTY
-
-
-class SingularityParameters(Record):
-    """Where the singularity is looked for."""
-
-    transition_temperature_kelvin: float | None = None
-    """In place of that of the film at the same filling."""
-    window: float = 0.1
-    """Greatest distance from the transition, in its temperature; that of work on films in porous glass."""
-    order: int = 3
-    """Degree of the background."""
-
-
-class BoundParameters(Record):
-    """How sure the bound is."""
-
-    probability: float = 0.95
 
 
 def coherence_length(
@@ -115,7 +94,8 @@ def coherence_length(
     )  # fmt: skip
 
 
-def _bulk_per_volume() -> float:
+def bulk_per_volume() -> float:
+    """Return the amplitude of bulk liquid at saturated vapour pressure, per volume, J/(K m^3)."""
     return porous_singularity.BULK_AMPLITUDE * float(helium_liquid.density(T_LAMBDA)) / MOLAR_MASS_HELIUM4
 
 
@@ -141,7 +121,7 @@ def expected_singularity(parameters: ExpectedParameters, *, length: float, volum
     per_volume = float(expected_amplitude(length, combination=parameters.combination))
     u = parameters.combination_uncertainty
     relative = 3 * u / parameters.combination
-    ratio = per_volume / _bulk_per_volume()
+    ratio = per_volume / bulk_per_volume()
     source = SourceEntry(
         name=f"two-scale-factor combination {parameters.combination:g}",
         description=f"standard uncertainty {u:g}", level="laboratory",
@@ -153,121 +133,6 @@ def expected_singularity(parameters: ExpectedParameters, *, length: float, volum
     )  # fmt: skip
 
 
-def heat_capacity_singularity(
-    parameters: SingularityParameters,
-    *,
-    temperature: FloatArray,
-    heat_capacity: FloatArray,
-    rise: FloatArray | None,
-    transition: float | None,
-    transition_estimate: Estimate | None,
-    u_heat_capacity: FloatArray | None,
-) -> Outcome:
-    """Return the amplitude of a singularity of the heat capacity at a transition that is known from elsewhere.
-
-    Parameters
-    ----------
-    temperature, heat_capacity : ndarray
-        K (middle of each step), J/K, of the whole cell: addenda are part of the smooth background.
-    rise : ndarray or None
-        Step of each reading, K.
-    transition : float or None
-        K.
-    transition_estimate : Estimate or None
-        The same with its uncertainty, over which the singularity is blurred.
-    u_heat_capacity : ndarray or None
-        Point uncertainty.
-
-    Raises
-    ------
-    ValueError
-        No transition temperature, or too few readings on a side of it.
-    """
-    at = parameters.transition_temperature_kelvin or transition
-    if at is None:
-        raise ValueError(
-            "transition: no film at the same filling is reduced; reduce its temperature sweep by porous-film first, or set transition_temperature_kelvin in a plan of your own"
-        )
-    rows = known_rows(temperature, heat_capacity, rise)
-    T, C = temperature[rows], heat_capacity[rows]
-    if T.size < 2:
-        raise ValueError(f"heat_capacity: found {T.size} readings")
-    own = parameters.transition_temperature_kelvin is not None
-    spread = 0.0 if own or transition_estimate is None else float(transition_estimate.uncertainty)
-    # A distance of readings blurs too: nothing is known of what lies between them.
-    steps = np.full(T.shape, float(np.median(np.diff(np.sort(T))))) if rise is None else np.abs(rise[rows])
-    width = np.maximum(np.hypot(steps, math.sqrt(12) * spread), 1e-9 * at)
-    found = singular_part(
-        T, C, transition_temperature=at, width=width, window=parameters.window, order=parameters.order,
-        standard_uncertainty=weights(u_heat_capacity, rows),
-    )  # fmt: skip
-    smooth, residual = (np.full(temperature.shape, math.nan) for _ in range(2))
-    chosen = np.flatnonzero(rows)[found.used]
-    smooth[chosen], residual[chosen] = found.smooth, found.residuals
-    return Outcome(
-        {"amplitude": found.amplitude, "scatter": found.scatter, "background": smooth, "residual": residual},
-        covariance=Covariance(("amplitude",), np.array([[found.standard_uncertainty**2]])),
-        facts={
-            "points": int(chosen.size), "at_K": at, "blur_mK": float(np.median(width)) * 1e3, "alpha": porous_singularity.ALPHA,
-            "shape_ratio": porous_singularity.AMPLITUDE_RATIO, "reduced_chi2": found.reduced_chi2,
-        },
-    )  # fmt: skip
-
-
-def singularity_bound(
-    parameters: BoundParameters,
-    *,
-    amplitude: float,
-    amplitude_estimate: Estimate,
-    expected: float | None,
-    volume: float | None,
-) -> Outcome:
-    """Return the amplitude that the singularity does not exceed, over the expected one and over that of bulk liquid.
-
-    Parameters
-    ----------
-    amplitude : float
-        As fitted, J/K; what counts is its estimate, so that the uncertainty, which is in the bound, is not counted again.
-    amplitude_estimate : Estimate
-        The same with its uncertainty from all sources.
-    expected : float or None
-        Amplitude by two-scale-factor universality, J/K.
-    volume : float or None
-        Of the sample, m^3.
-
-    Raises
-    ------
-    ValueError
-        An amplitude without uncertainty.
-    """
-    del amplitude
-    value, u = float(amplitude_estimate.value), float(amplitude_estimate.uncertainty)
-    limit = upper_bound(value, standard_uncertainty=u, probability=parameters.probability)
-    outputs = {"bound": limit, "over_expected": math.nan, "over_bulk": math.nan}
-    verdicts = {}
-    findings: tuple[Finding, ...] = ()
-    if expected is None:
-        verdicts["over_expected"] = "no coherence length at this filling"
-    else:
-        outputs["over_expected"] = limit / expected
-        if limit < expected:
-            findings = (
-                Finding(
-                    code="singularity-smaller-than-expected", severity="note",
-                    what=f"the bound is {limit / expected:.2g} of what the coherence length asks for by two-scale-factor universality",
-                ),
-            )  # fmt: skip
-    if volume is None:
-        verdicts["over_bulk"] = "no volume of the sample is recorded"
-    else:
-        outputs["over_bulk"] = limit / volume / _bulk_per_volume()
-    return Outcome(
-        outputs, verdicts=verdicts, findings=findings,
-        facts={"percent": parameters.probability * 100, "significance": value / u},
-    )  # fmt: skip
-
-
-_T = Port("temperature", "array", "temperature of each reading")
 _VOLUME = Port("volume", "scalar", "outer volume of the sample")
 _LENGTH = Port("length", "scalar", "amplitude of the coherence length below the transition")
 
@@ -297,33 +162,6 @@ POROUS_STEPS: tuple[Step, ...] = (
         },
         sentence="Two-scale-factor universality, xi_0T (A^-/k_B)^(1/3) = {combination}, asks for a singularity of the heat capacity with the amplitude {amplitude} in the sample, {below_bulk} times smaller than that of bulk liquid in the same volume.",
         citations=("stroesser-2000",),
-    ),
-    Step(
-        name="heat-capacity-singularity", version=1, function=heat_capacity_singularity, parameters=SingularityParameters,
-        takes={
-            "temperature": _T, "heat_capacity": Port("heat_capacity", "array", "heat capacity of cell and helium"),
-            "rise": Port("temperature_difference", "array", "step of temperature of each reading", optional=True),
-            "transition": Port("temperature", "scalar", "transition temperature of the superfluid", optional=True),
-        },
-        yields={
-            "amplitude": Port("heat_capacity", "scalar", "amplitude of the singularity below the transition"), "scatter": Port("heat_capacity", "scalar", "rms of the residuals"),
-            "background": Port("heat_capacity", "array", "smooth background"), "residual": Port("heat_capacity", "array", "heat capacity less fit"),
-        },
-        sentence="At the transition of the superfluid, {at_K} K, a singularity (A/alpha)|t|^-alpha (alpha = {alpha}, A above/A below = {shape_ratio}, blurred over {blur_mK} mK) on a polynomial of order {order} was fitted to {points} readings within |t| = {window}: A = {amplitude}, rms of the residuals {scatter}.",
-        citations=("lipa-2003",), spread="refit", weights=("heat_capacity",), estimates=("transition",),
-    ),
-    Step(
-        name="singularity-bound", version=1, function=singularity_bound, parameters=BoundParameters,
-        takes={
-            "amplitude": Port("heat_capacity", "scalar", "amplitude of the singularity as fitted"),
-            "expected": Port("heat_capacity", "scalar", "expected amplitude", optional=True), "volume": Port("volume", "scalar", "outer volume of the sample", optional=True),
-        },
-        yields={
-            "bound": Port("heat_capacity", "scalar", "amplitude that the singularity does not exceed"), "over_expected": Port("number", "scalar", "bound over the expected amplitude"),
-            "over_bulk": Port("number", "scalar", "bound over the amplitude of bulk liquid, per volume"),
-        },
-        sentence="No singularity with an amplitude above {bound} is there ({percent} per cent); that is {over_expected} of the amplitude expected for the coherence length, and {over_bulk} of that of bulk liquid in the same volume.",
-        citations=("lipa-2003",), estimates=("amplitude",),
     ),
 )  # fmt: skip
 """Steps of this module."""

@@ -134,6 +134,8 @@ def _terms(plan: Plan) -> str:
         parts.append("in a " + " or ".join(terms.cell_kinds))
     if terms.gas is not None:
         parts.append(f"gas {terms.gas}")
+    if terms.doses is not None:
+        parts.append("during which doses were admitted" if terms.doses else "without doses during it")
     if terms.has_pores is not None:
         parts.append("with a recorded pore size" if terms.has_pores else "without a recorded pore size")
     if terms.has_substrate is not None:

@@ -12,15 +12,13 @@ from archive.physics.porous_singularity import expected_amplitude, mean_shape
 from archive.reduction.estimate import Estimate
 from archive.reduction.film_steps import DensityParameters
 from archive.reduction.planning import plans_for
-from archive.reduction.porous_steps import (
+from archive.reduction.porous_heat_steps import (
     BoundParameters,
-    ExpectedParameters,
     SingularityParameters,
-    coherence_length,
-    expected_singularity,
     heat_capacity_singularity,
     singularity_bound,
 )
+from archive.reduction.porous_steps import ExpectedParameters, coherence_length, expected_singularity
 from schemas.quantity import Quantity
 
 TC, AMPLITUDE, ZETA = 0.30, 2.0e-8, 0.6717
