@@ -58,6 +58,9 @@ class Applies(Record):
         default=False,
         description="True: it sums up a cell's sweeps in a cooldown, so it is carried out once, on the last that the other terms admit; on another one when that is named.",
     )
+    least: int = Field(
+        default=1, ge=1, description="With `last`: how many such sweeps of the cell the cooldown must have."
+    )
 
 
 class Need(Record):

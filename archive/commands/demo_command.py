@@ -48,7 +48,8 @@ def demo(*, folder: Path) -> None:
     _refuse_full(folder)
     problems = _run(folder)
     if problems:
-        note(f"{problems} steps of the demonstration failed, as told above")
+        steps = "1 step" if problems == 1 else f"{problems} steps"
+        note(f"{steps} of the demonstration failed, as told above")
         click.get_current_context().exit(EXIT_BAD_INPUT)
 
 

@@ -61,7 +61,7 @@ class PackedTruth:
     tone: float = 1000.0
     rate: float = 8192.0
     points: int = 8192
-    noise: float = 2.5e-4
+    noise: float = 1e-4
 
 
 PACKED: Final = PackedTruth()

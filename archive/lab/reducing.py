@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Callable, Collection, Iterator, Mapping
 from datetime import datetime
 from pathlib import Path
@@ -123,6 +124,7 @@ def reduce(
     allowed, known_plans = _chosen(source, plan)
     work: list[tuple[int, int, str, Plan]] = []
     closing: dict[tuple[str, str | None], str] = {}
+    count: Counter[tuple[str, str | None]] = Counter()
     for position, row in enumerate(rows):
         document = reading.holding(cooldown, row.name)
         written = next(each for each in document.sheet.sweep if each.name == row.name)
@@ -132,14 +134,22 @@ def reduce(
         fitting = plans_for(written, cell, substrate, allowed)
         work += [(plan_depth(each, known_plans), position, row.address, each) for each in fitting]
         closing |= {(each.name, row.cell): row.address for each in fitting}
+        count.update((each.name, row.cell) for each in fitting)
     cells = {row.address: row.cell for row in rows}
-    # A plan that sums up a cell's sweeps is carried out on the last of them, unless it is asked for elsewhere by name.
+    # A plan that sums up a cell's sweeps is carried out on the last of them where there are enough, unless it is asked for by name.
     asked = name is not None and plan is not None
     work = [
         item
         for item in work
         if (name is None or item[2] == f"{cooldown}/{name}")
-        and (not item[3].applies.last or asked or closing[item[3].name, cells[item[2]]] == item[2])
+        and (
+            not item[3].applies.last
+            or asked
+            or (
+                closing[key := (item[3].name, cells[item[2]])] == item[2]
+                and count[key] >= item[3].applies.least
+            )
+        )
     ]
     if not work:
         raise BadRequest(
