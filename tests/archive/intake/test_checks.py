@@ -414,6 +414,22 @@ BAD: dict[str, tuple[str, Build]] = {
         "warning",
         lambda: sheet(put("record.calibration.0.temperature_high", "1.001 K")),
     ),
+    "calibrated-thermometer-missing": (
+        "warning",
+        lambda: sheet(
+            extra(
+                "cal",
+                "calibration",
+                {
+                    "reference": {"column": 1, "quantity": "temperature", "unit": "K", "scale": "ITS-90"},
+                    "sensor": {"column": 2, "quantity": "resistance", "unit": "Ohm"},
+                },
+                thermometer="reference",
+                calibrates="sensor",
+            ),
+            added("cal", {"reference": temperatures(), "sensor": 100.0 / temperatures()}),
+        ),
+    ),
     "scales-mixed": (
         "warning",
         lambda: sheet(
@@ -557,7 +573,9 @@ GOOD: dict[str, Build] = {
     ),
 }
 
-ELSEWHERE = {"files-not-named", "period-scatter-history", "file-archived", "drive-beyond-regime"}
+ELSEWHERE = {
+    "files-not-named", "period-scatter-history", "file-archived", "drive-beyond-regime", "calibration-differs", "calibration-drift",
+}  # fmt: skip
 """Checks of a folder on disk and of the archive's memory, tested on their own."""
 
 
