@@ -127,11 +127,25 @@ class Holdings:
             else []
         )
 
+    def covering(self, address: Address) -> list[str]:
+        """Return the keys of the files that hold what an address names; none if they do not hold that very thing."""
+        keys = self.holding(address)
+        if not keys or address.kind in (
+            "name",
+            "record",
+            "amendment",
+            "withdrawal",
+            "accession",
+            "reduction",
+        ):
+            return keys
+        return keys if any(_holds(self.document(key), address) for key in keys) else []
+
     def required(self, document: Record) -> Iterator[tuple[str, list[str]]]:
         """Yield each address that a document rests on and that a file of its own must hold, with the keys found."""
         for text in needs_of(document):
             address = parse_address(text)
-            keys = self.holding(address)
+            keys = self.covering(address)
             # A record stands in the accession too, and a text of an unknown kind may only look like an address.
             certain = isinstance(document, AccessionDocument | ReductionDocument) and address.kind not in (
                 "record",
@@ -139,6 +153,27 @@ class Holdings:
             )
             if keys or certain:
                 yield text, keys
+
+
+def _holds(document: Record, address: Address) -> bool:
+    """Whether a document is that of what an address names a part of."""
+    if isinstance(document, ReductionDocument):
+        return document.address == address.reduction and any(
+            each.name == address.part for each in document.outputs
+        )
+    if not isinstance(document, AccessionDocument):
+        return False
+    if address.kind == "raw":
+        return document.number == address.number and any(
+            each.name == address.raw for each in document.raw_files
+        )
+    if address.part is None and any(each.name == address.item for each in document.doses):
+        return True
+    return any(
+        each.name == address.item
+        and (address.part is None or any(one.name == address.part for one in each.channels))
+        for each in document.sweeps
+    )
 
 
 def closure(asked: Sequence[str], holdings: Holdings) -> dict[str, str]:
@@ -211,10 +246,10 @@ def _asked_for(text: str, holdings: Holdings) -> list[str]:
         address = parse_address(text)
     except ValueError as error:
         raise BadRequest(str(error)) from None
-    found = holdings.holding(address)
+    found = holdings.covering(address)
     if address.kind == "name":
         found += holdings.folder(address.head)
-    elif address.kind == "item":
+    elif address.kind == "item" and found:
         found += [key for key in holdings.folder(address.head) if key.startswith(f"{text}@")]
     if found:
         return sorted(set(found))

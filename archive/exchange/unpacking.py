@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Callable, Mapping
 
 from archive.exchange.bag_reading import Bag, blocks_of
 from archive.exchange.closure import Holdings, address_of_key
@@ -198,7 +198,7 @@ def unmet_needs(documents: Mapping[str, Record], holdings: Holdings) -> list[Fin
     """
     found: list[Finding] = []
     for key, document in documents.items():
-        lacking = [text for text, keys in holdings.required(document) if not _covered(text, keys, holdings)]
+        lacking = [text for text, keys in holdings.required(document) if not keys]
         if lacking:
             some = ", ".join(lacking[:8]) + (f" and {len(lacking) - 8} more" if len(lacking) > 8 else "")
             found.append(
@@ -211,23 +211,3 @@ def unmet_needs(documents: Mapping[str, Record], holdings: Holdings) -> list[Fin
                 )
             )
     return found
-
-
-def _covered(text: str, keys: Sequence[str], holdings: Holdings) -> bool:
-    """Whether one of the files holds what an address names, not only something of the same cooldown."""
-    if not keys:
-        return False
-    head, _, part = text.partition("#")
-    item = head.partition("@")[0].partition("/")[2]
-    documents = [holdings.document(key) for key in keys]
-    if "@" in head:
-        return not part or any(
-            part in {entry.name for entry in each.outputs}
-            for each in documents
-            if isinstance(each, ReductionDocument)
-        )
-    if not item:
-        return True
-    accessions = [each for each in documents if isinstance(each, AccessionDocument)]
-    names = {entry.name for each in accessions for entry in each.sweeps}
-    return item in names | {entry.name for each in accessions for entry in each.doses}

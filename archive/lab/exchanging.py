@@ -353,7 +353,9 @@ def _adopted(
             continue
         findings += document_faults(key, documents[key], adopted.digests(key))
         findings += _misplaced(key, documents[key], paths[key])
-    findings += record_faults(documents, lambda address: _record_digest(source, address))
+    # Digests under which records were sealed here; not made anew, since a later version may know more fields.
+    sealed = {row.address: row.digest for row in source.index.records()}
+    findings += record_faults(documents, sealed.get)
     if not findings:
         read = _reader(source)
         together = Holdings(
@@ -387,8 +389,3 @@ def _rehearsed(
     except DamagedFile as problem:
         return [_finding("package-document", problem)]
     return []
-
-
-def _record_digest(source: LabSource, address: str) -> str | None:
-    """Digest under which a record was sealed here; not made anew, since a later version may know more fields."""
-    return next((row.digest for row in source.index.records(name=address) if row.address == address), None)

@@ -106,7 +106,9 @@ def _act_of(document: Any, sealed: SealedFile, act: str | None, note: str | None
     told = act or _ACTS.get(document.format)
     if told is None:
         told = "ingest" if getattr(document, "number", 1) == 1 else "supplement"
-    by = acting_role() or getattr(document, "by", None) or _operators(document) or UNKNOWN_ROLE
+    # Whoever imports a file need not be one of those whom its document names.
+    named = None if act is not None else getattr(document, "by", None) or _operators(document)
+    by = acting_role() or named or UNKNOWN_ROLE
     return Act(told, document.address, by, sealed.key, sealed.sha256, note)
 
 

@@ -125,9 +125,12 @@ def sweep_staging(root: Path) -> list[str]:
         return []
     plans = sorted(path for path in folder.iterdir() if path.name.endswith(_BATCH_SUFFIX) and path.is_file())
     sentences = [_finished(root, plan) for plan in plans]
-    # What belongs to a plan that could not be finished is not swept: it is all there is of it.
+    # What belongs to a plan that could not be finished is not swept: it is all there is of it. Where a plan cannot even be
+    # read, anything may belong to it.
     kept = {plan for plan in plans if plan.exists()}
-    kept |= {folder / name for plan in kept for name in _names(plan)}
+    for plan in list(kept):
+        names = _names(plan)
+        kept |= set(folder.iterdir()) if names is None else {folder / name for name in names}
     return sentences + [_swept(root, path) for path in sorted(folder.iterdir()) if path not in kept]
 
 
@@ -139,11 +142,11 @@ def _finished(root: Path, plan: Path) -> str:
     return f"staging/{plan.name}: an import had been decided and was finished: {', '.join(keys)}"
 
 
-def _names(plan: Path) -> list[str]:
+def _names(plan: Path) -> list[str] | None:
     try:
         return [name for name, _ in _planned(plan)]
     except DamagedFile:
-        return []
+        return None
 
 
 def _swept(root: Path, staged: Path) -> str:

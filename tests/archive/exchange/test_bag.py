@@ -14,6 +14,7 @@ import pytest
 from archive.errors import BadRequest, DamagedFile, NotAnArchive
 from archive.exchange.bag_reading import BagLimits, read_bag
 from archive.exchange.bag_writing import new_bag
+from tests.archive.exchange.forging import retagged
 from tests.outside import missing
 
 FILES = {
@@ -39,28 +40,6 @@ def listed(bag: Path, name: str) -> dict[str, str]:
     """Digest by spelled path."""
     lines = (bag / name).read_text(encoding="utf-8").splitlines()
     return {path: digest for digest, path in (line.split("  ", 1) for line in lines)}
-
-
-def resealed(bag: Path) -> None:
-    """Make manifests, tag manifests and the count of the payload anew, as a forger would."""
-    payload = sorted(p for p in (bag / "data").rglob("*") if p.is_file())
-    for name in ("sha256", "sha512"):
-        lines = [
-            f"{hashlib.new(name, p.read_bytes()).hexdigest()}  {p.relative_to(bag).as_posix().replace('%', '%25')}\n"
-            for p in payload
-        ]
-        (bag / f"manifest-{name}.txt").write_text("".join(lines), encoding="utf-8")
-    size = sum(p.stat().st_size for p in payload)
-    (bag / "bag-info.txt").write_text(f"Payload-Oxum: {size}.{len(payload)}\n")
-    retagged(bag)
-
-
-def retagged(bag: Path) -> None:
-    """Make the tag manifests anew."""
-    tags = sorted(p for p in bag.iterdir() if p.is_file() and not p.name.startswith("tagmanifest"))
-    for name in ("sha256", "sha512"):
-        lines = [f"{hashlib.new(name, p.read_bytes()).hexdigest()}  {p.name}\n" for p in tags]
-        (bag / f"tagmanifest-{name}.txt").write_text("".join(lines))
 
 
 def test_a_written_bag_is_read_back_whole(bag: Path) -> None:

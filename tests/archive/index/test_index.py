@@ -93,6 +93,15 @@ def test_a_document_that_contradicts_itself_leaves_no_row(index: Index) -> None:
     assert not any(index.rows().values())
 
 
+def test_a_rehearsal_raises_what_recording_would_and_keeps_nothing(index: Index) -> None:
+    _record(index, make.accession())
+    before = index.rows()
+    index.rehearse([make.entry(make.accession("2026-04")), make.entry(make.reduction())])
+    with pytest.raises(DamagedFile, match="contradicts"):
+        index.rehearse([make.entry(make.accession("2026-04", sweeps=(make.sweep(), make.sweep())))])
+    assert index.rows() == before
+
+
 def test_a_rebuild_that_fails_half_way_keeps_the_old_rows(index: Index) -> None:
     _record(index, make.accession())
     before = index.rows()
