@@ -17,7 +17,6 @@ from archive.physics.arrays import FloatArray, same_length, series
 
 __all__ = ["Proportion", "proportion"]
 
-_ROUNDS = 20
 _SINGULAR = 1e-10
 """Least eigenvalue of the correlation matrix of the residuals below which its inverse would be rounding."""
 
@@ -95,14 +94,11 @@ def proportion(
         raise ValueError(
             f"contributions_x, contributions_y: found {parts[0].shape[0]} and {parts[1].shape[0]} sources, expected as many in both"
         )
-    beta = float(np.median(Y / X))
-    for _ in range(_ROUNDS):
-        covariance = _covariance(X, Y, parts, beta)
-        weights = _weights(X, covariance)
-        found = float(weights @ Y)
-        if abs(found / beta - 1) < 1e-12:
-            break
-        beta = found
+    # Over the slope itself, which scales all residuals alike, so that the weights do not depend on it.
+    relative = _covariance(parts[1] * (X / Y) - parts[0])
+    weights = _weights(X, relative)
+    found = float(weights @ Y)
+    covariance = found**2 * relative
     residual = Y - found * X
     dof = X.size - 1
     chi2 = float(residual @ np.linalg.solve(covariance, residual)) if dof else np.nan
@@ -117,8 +113,7 @@ def proportion(
     )
 
 
-def _covariance(X: FloatArray, Y: FloatArray, parts: list[FloatArray], beta: float) -> FloatArray:
-    moved = parts[1] * (beta * X / Y) - beta * parts[0]
+def _covariance(moved: FloatArray) -> FloatArray:
     covariance = np.asarray(moved.T @ moved)
     spread = np.sqrt(np.diag(covariance))
     if not (spread > 0).all():
