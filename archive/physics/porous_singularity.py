@@ -86,7 +86,7 @@ def expected_amplitude(length_amplitude: npt.ArrayLike, *, combination: float = 
 def mean_shape(
     reduced: npt.ArrayLike, *, width: npt.ArrayLike, alpha: float = ALPHA, ratio: float = AMPLITUDE_RATIO
 ) -> FloatArray:
-    """Return ``(r/alpha) |t|^-alpha`` averaged over a width in t, with r = 1 below and `ratio` above the transition.
+    """Return ``(r |t|^-alpha - 1)/alpha`` averaged over a width in t, with r = 1 below and `ratio` above the transition.
 
     Parameters
     ----------
@@ -99,7 +99,8 @@ def mean_shape(
 
     Notes
     -----
-    The integral is finite and continuous at the transition, so a reading on T_c itself has a value.
+    The constant -1/alpha makes it about -ln|t| and leaves the background what it looks like; it changes no amplitude. The integral
+    is finite and continuous at the transition, so a reading on T_c itself has a value.
     """
     t, half = np.asarray(reduced, dtype=np.float64), np.asarray(width, dtype=np.float64) / 2
 
@@ -107,7 +108,7 @@ def mean_shape(
         size = np.abs(at) ** (1 - alpha) / (alpha * (1 - alpha))
         return np.where(at < 0, -size, ratio * size)
 
-    return np.asarray((integral(t + half) - integral(t - half)) / (2 * half))
+    return np.asarray((integral(t + half) - integral(t - half)) / (2 * half) - 1 / alpha)
 
 
 @dataclass(frozen=True)

@@ -45,11 +45,16 @@ def test_the_mean_shape_is_the_integral(t):
     width = 2e-3
 
     def law(at):
-        return (1 if at < 0 else AMPLITUDE_RATIO) / ALPHA * abs(at) ** -ALPHA
+        return ((1 if at < 0 else AMPLITUDE_RATIO) * abs(at) ** -ALPHA - 1) / ALPHA
 
     pieces = sorted({t - width / 2, t + width / 2, *([0.0] if abs(t) < width / 2 else [])})
     total = sum(quad(law, a, b, epsrel=1e-11)[0] for a, b in pairwise(pieces))
     assert float(mean_shape(t, width=width)) == pytest.approx(total / width, rel=1e-9)
+
+
+def test_the_shape_is_nearly_a_logarithm_below():
+    """(|t|^-alpha - 1)/alpha for t = -1e-4: -ln(1e-4) = 9.21, less by half alpha times its square, 0.52."""
+    assert float(mean_shape(-1e-4, width=1e-9)) == pytest.approx(9.21 - 0.0127 * 9.21**2 / 2, abs=0.03)
 
 
 def record(rng, amplitude, noise, rows=160):
