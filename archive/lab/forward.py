@@ -253,7 +253,17 @@ class _Forward:
 
     def _dependents(self, document: ReductionDocument, touched: set[str]) -> tuple[TraceNode, ...]:
         taken = [f"{document.address}#{name}" for name in sorted(touched)]
-        return self._reductions(taken) if taken else ()
+        return (*self._reductions(taken), *self._made(document, touched)) if taken else ()
+
+    def _made(self, document: ReductionDocument, touched: set[str]) -> tuple[TraceNode, ...]:
+        """Return the calibration records whose coefficients this reduction found, with all that used them."""
+        fits = [step for step in document.steps if step.name == "calibration-fit"]
+        if not any(touched.intersection(step.outputs) for step in fits):
+            return ()
+        rows = self.source.index.records(kind="calibration")
+        return tuple(
+            self._record(row.address) for row in rows if row.content.get("made_from") == document.address
+        )
 
 
 def affected(document: ReductionDocument, taken: Iterable[str], *, port: str | None = None) -> set[str]:

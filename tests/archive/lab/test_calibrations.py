@@ -132,6 +132,12 @@ def test_a_trace_leads_through_the_calibration_to_its_raw_lines(lab: Archive, se
     assert any("2024-11.a1:raw/germanium.csv, data from line 3" in line for line in below)
 
 
+def test_what_rests_on_the_raw_file_of_a_calibration_is_found_through_it(lab: Archive, second: dict[str, Any]) -> None:  # fmt: skip
+    lines = list(lab.trace("2024-11.a1:raw/germanium.csv", forward=True).lines())
+    at = next(k for k, line in enumerate(lines) if "GE-7-cal.r1, calibration" in line)
+    assert any(f"{second['address']}#temperature_high" in line for line in lines[at:])
+
+
 def test_a_record_that_was_changed_is_told(lab: Archive, text: str, tmp_path: Path) -> None:
     (first,) = [line for line in text.splitlines() if line.startswith("relation")]
     changed = text.replace(first, first.replace("coefficients = [0.7", "coefficients = [0.8"))
