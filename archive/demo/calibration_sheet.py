@@ -22,6 +22,28 @@ outcome = "complete"
 temperature_scale = "ITS-90"
 licence = "CC0-1.0"
 
+effect = [
+  { effect = "vapour in dead volume", state = "not-applicable", reason = "no sample gas was admitted" },
+  { effect = "desorption in heat capacity", state = "not-applicable", reason = "no heat capacity was measured" },
+  { effect = "thermal transpiration", state = "applied", reason = "as a step, by the diameter of the tube; the melting pressure line is filled with liquid and solid" },
+  { effect = "hydrostatic head", state = "applied", reason = "gas in the tube as a step; the bulb stands beside the sensor, so no liquid is above it" },
+  { effect = "self-heating", state = "bounded", bound = "0.01 mK", reason = "power doubled at three temperatures of each sensor, no change seen" },
+  { effect = "sensor-film offset", state = "not-applicable", reason = "no film" },
+  { effect = "amplitude dependence", state = "not-applicable", reason = "no oscillator" },
+  { effect = "finite ring time", state = "not-applicable", reason = "no oscillator" },
+  { effect = "elasticity of contents and of cell", state = "not-applicable", reason = "no oscillator" },
+  { effect = "slip", state = "not-applicable", reason = "no oscillator" },
+  { effect = "crossing modes", state = "not-applicable", reason = "no oscillator" },
+  { effect = "viscous drag of vapour", state = "not-applicable", reason = "no oscillator" },
+  { effect = "drift of the resonance", state = "not-applicable", reason = "no oscillator" },
+  { effect = "remounting shift", state = "not-applicable", reason = "no oscillator" },
+  { effect = "isotopic content", state = "considered", reason = "the bulb holds well gas; 0.2 ppm of 3He lowers no pressure that was read" },
+  { effect = "capillary condensation", state = "not-applicable", reason = "no film" },
+  { effect = "gravity rounding", state = "considered", reason = "no point of the vapour pressure lies within a millikelvin of the lambda point" },
+  { effect = "ageing of the thermometer", state = "not-applicable", reason = "the sensors are calibrated here" },
+  { effect = "contamination by frozen air", state = "considered", reason = "both lines pumped for two days and filled through a trap at 4 K" },
+]
+
 [[record.cryostat]]
 name = "CB-1"
 revision = 1
@@ -117,22 +139,6 @@ pressure = { column = "p", quantity = "pressure", unit = "MPa", convention = "ab
 [gas_end]
 state = "never-admitted"
 notes = "The melting pressure cell is permanently filled and has its own line; no sample gas was admitted."
-
-[[effect]]
-effect = "thermal transpiration"
-state = "applied"
-reason = "as a step, by the diameter of the tube; the melting pressure line is filled with liquid and solid"
-
-[[effect]]
-effect = "hydrostatic head"
-state = "applied"
-reason = "gas in the tube as a step; the bulb stands beside the sensor, so no liquid is above it"
-
-[[effect]]
-effect = "self-heating"
-state = "bounded"
-bound = "0.01 mK"
-reason = "power doubled at three temperatures of each sensor, no change seen"
 
 [[sweep]]
 name = "c01"

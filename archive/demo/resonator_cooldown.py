@@ -55,7 +55,7 @@ class PackedTruth:
     """
 
     frequency: float = 2080.0
-    quality_factor: float = 420.0
+    quality_factor: float = 600.0
     spurious: float = 2712.0
     spurious_quality: float = 260.0
     tone: float = 1000.0
@@ -70,7 +70,7 @@ PACKED: Final = PackedTruth()
 def _line(temperature: float) -> tuple[float, float]:
     """Return frequency and quality factor of the mode of fourth sound."""
     ratio = float(fourth_sound_ratio(temperature, reference_temperature=TEMPERATURES[0]))
-    return PACKED.frequency * ratio, PACKED.quality_factor * ratio**4
+    return PACKED.frequency * ratio, PACKED.quality_factor * ratio
 
 
 def resonator_truth() -> Mapping[str, Floats]:
