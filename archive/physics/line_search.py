@@ -15,7 +15,7 @@ import numpy.typing as npt
 from scipy.signal import fftconvolve
 
 from archive.physics.arrays import ComplexArray, FloatArray
-from archive.physics.pulse_response import PulseResponse
+from archive.physics.pulse_response import PulseResponse, smooth_part
 from archive.physics.resonance import Resonance, fit_resonance, resonance_curve
 
 __all__ = ["Line", "LineSearch", "resonance_lines"]
@@ -106,8 +106,9 @@ def resonance_lines(response: PulseResponse, *, most: int = 12, false_alarm: flo
     -----
     Filter: the correlation with ``1/(1 + i k/w)`` for half widths w of 1, 2, 4, ... steps, normalised; for noise alone its
     squared magnitude is exponential with mean one, so that n trials exceed s with a chance below ``n exp(-s)`` (derived).
-    A line found and fitted is subtracted before the next one is looked for. A tone that is not at a frequency of the grid
-    leaks as one over the distance; that region is left out.
+    A line found and fitted, on a background that slopes, is subtracted before the feedthrough is estimated anew and the next
+    line is looked for; at the end each resonance is fitted once more with all others subtracted. A tone that is not at a
+    frequency of the grid leaks as one over the distance; that region is left out.
     """
     if most < 1:
         raise ValueError(f"most: found {most}, expected at least 1")
@@ -115,15 +116,23 @@ def resonance_lines(response: PulseResponse, *, most: int = 12, false_alarm: flo
         raise ValueError(f"false_alarm: found {false_alarm}, expected between 0 and 1")
     search = _Search(response)
     threshold = math.log(search.trials / false_alarm)
-    lines: list[Line] = []
-    while len(lines) < most:
+    while len(search.found) < most:
         index, width, statistic = search.strongest()
         if statistic < threshold:
             break
-        chance = min(1.0, search.trials * math.exp(-statistic))
-        lines.append(replace(search.taken(index, width), statistic=statistic, chance=chance))
-    complete = len(lines) < most or search.strongest()[2] < threshold
-    return LineSearch(tuple(sorted(lines, key=lambda line: -line.statistic)), threshold, complete)
+        search.take(index, width, statistic)
+    complete = len(search.found) < most or search.strongest()[2] < threshold
+    search.refine()
+    lines = sorted((each.line for each in search.found), key=lambda line: -line.statistic)
+    return LineSearch(tuple(lines), threshold, complete)
+
+
+@dataclass
+class _Taken:
+    """A line that was taken out, and its curve if it has one."""
+
+    line: Line
+    curve: ComplexArray | None = None
 
 
 class _Search:
@@ -132,11 +141,16 @@ class _Search:
     def __init__(self, response: PulseResponse) -> None:
         self.response = response
         self.scale = response.standard_uncertainty * math.sqrt(2)
-        self.left: ComplexArray = (response.response - response.feedthrough) / self.scale
+        self.data: ComplexArray = response.response.copy()
+        self.left: ComplexArray = (self.data - response.feedthrough) / self.scale
         self.free = np.ones(self.left.size, dtype=np.bool_)
+        """Where lines are still looked for."""
+        self.clean = self.free.copy()
+        """What is fitted: not where a tone is."""
         widest = max(response.window // 12, 1)
         self.filters = [_filter(2**power) for power in range(widest.bit_length())]
         self.trials = self.left.size * len(self.filters)
+        self.found: list[_Taken] = []
 
     def strongest(self) -> tuple[int, int, float]:
         """Return index, half width in steps and statistic of the strongest line left."""
@@ -148,68 +162,87 @@ class _Search:
                 best = (index, 2**power, float(found[index]))
         return best
 
-    def taken(self, index: int, width: int) -> Line:
-        """Return the line at an index, and take it out of what is left."""
+    def take(self, index: int, width: int, statistic: float) -> None:
+        """Take the line at an index out of what is left, and keep it."""
         near = slice(max(index - 8, 0), index + 9)
         power = np.maximum(np.abs(self.left[near]) ** 2 - 1, 0)
         pairs = power[1:] + power[:-1]
         if width <= 2 and float(pairs.max()) > UNRESOLVED_SHARE * float(power.sum()):
-            return self._unresolved(near, power)
-        half = max(FIT_WIDTHS * width, 24)
-        rows = np.arange(max(index - half, 0), min(index + half + 1, self.left.size))
-        found, used = self._fitted(rows, index, width)
+            taken = _Taken(self._unresolved(near, power))
+        else:
+            taken = self._resonance(float(self.response.frequency[index]), 2 * width * self.response.step)
+            self._blank(index, 2 if taken.curve is not None else 2 * width + 2)
+            if taken.curve is not None:
+                self.data = self.data - taken.curve
+                # Where the model is off by a part of a strong line, the rest must not become a line of its own.
+                at = int(np.argmin(np.abs(self.response.frequency - taken.line.frequency)))
+                wide = taken.line.frequency / taken.line.quality_factor
+                self._blank(at, math.ceil(2 * wide / self.response.step))
+                smooth = smooth_part(self.data, self.response) / self.scale
+                self.left = np.where(self.free, self.data / self.scale - smooth, 0.0)
+        chance = min(1.0, self.trials * math.exp(-statistic))
+        taken.line = replace(taken.line, statistic=statistic, chance=chance)
+        self.found.append(taken)
+
+    def refine(self) -> None:
+        """Fit each resonance once more, with all others subtracted."""
+        resonances = [each for each in self.found if each.curve is not None]
+        for each in resonances if len(resonances) > 1 else ():
+            assert each.curve is not None  # noqa: S101 - chosen so above
+            self.data = self.data + each.curve
+            line = each.line
+            again = self._resonance(line.frequency, line.frequency / line.quality_factor)
+            if again.curve is not None:
+                each.line = replace(again.line, statistic=line.statistic, chance=line.chance)
+                each.curve = again.curve
+            self.data = self.data - each.curve
+
+    def _resonance(self, frequency: float, width: float) -> _Taken:
+        """Return the resonance that is fitted near a frequency, or that there is none."""
+        half = max(FIT_WIDTHS * width / 2, 24 * self.response.step)
+        rows = np.flatnonzero((np.abs(self.response.frequency - frequency) <= half) & self.clean)
+        found, used = self._fitted(rows, (frequency, width))
         if not found.found or found.fit is None:
-            self._blank(index, 2 * width + 2)
-            return _line("refused", float(self.response.frequency[index]), math.nan, found.reason)
+            return _Taken(_line("refused", frequency, math.nan, found.reason))
         curve = resonance_curve(
             self.response.frequency, resonance_frequency=found.frequency, quality_factor=found.quality_factor,
             height=found.fit.value("height"), phase=found.fit.value("phase"),
         )  # fmt: skip
-        self.left = self.left - curve / self.scale
-        at = int(np.argmin(np.abs(self.response.frequency - found.frequency)))
-        # Where the model is off by a part of a strong line, the rest must not become a line of its own.
-        self._blank(at, math.ceil(2 * found.width / self.response.step))
-        self._blank(index, 2)
         left_out = int(rows.size - used.size)
-        words = found.reason + (
-            f"; {left_out} points that belong to another line were left out" if left_out else ""
-        )
-        index_of = [found.fit.names.index(name) for name in ("frequency", "quality_factor")]
-        return Line(
+        words = f"; {left_out} points that belong to another line were left out" if left_out else ""
+        index = [found.fit.names.index(name) for name in ("frequency", "quality_factor")]
+        line = Line(
             kind="resonance",
             frequency=found.frequency,
             frequency_uncertainty=found.fit.standard_uncertainty("frequency"),
             quality_factor=found.quality_factor,
             height=found.fit.value("height"),
-            covariance=np.asarray(found.fit.covariance)[np.ix_(index_of, index_of)],
+            covariance=np.asarray(found.fit.covariance)[np.ix_(index, index)],
             statistic=math.nan,
             chance=math.nan,
-            reason=words,
+            reason=found.reason + words,
         )
+        return _Taken(line, curve)
 
-    def _fitted(self, rows: IntArray, index: int, width: int) -> tuple[Resonance, IntArray]:
+    def _fitted(self, rows: IntArray, near: tuple[float, float]) -> tuple[Resonance, IntArray]:
         """Return the fit of one resonance, repeated once without points far off it."""
-        near = float(self.response.frequency[index]), 2 * width * self.response.step
         found = self._fit(rows, near)
         if not found.found or found.fit is None:
             return found, rows
         residual = np.abs(found.fit.residuals.reshape(2, -1)).max(axis=0)
-        order = np.argsort(self.response.frequency[rows], kind="stable")
         wild = residual > WILD * max(
             1.0, found.noise / float(np.median(self.response.standard_uncertainty[rows]))
         )
         if not wild.any() or np.count_nonzero(wild) > rows.size // 10:
             return found, rows
-        fewer = rows[order][~wild]
-        again = self._fit(fewer, (found.frequency, found.width))
-        return (again, fewer) if again.found else (found, rows)
+        again = self._fit(rows[~wild], (found.frequency, found.width))
+        return (again, rows[~wild]) if again.found else (found, rows)
 
     def _fit(self, rows: IntArray, near: tuple[float, float]) -> Resonance:
-        z = self.left[rows] * self.scale[rows]
+        z = self.data[rows]
         return fit_resonance(
-            self.response.frequency[rows], z.real, z.imag,
-            standard_uncertainty=self.response.standard_uncertainty[rows],
-            near=near, over_noise=0.0,
+            self.response.frequency[rows], z.real, z.imag, background="sloped",
+            standard_uncertainty=self.response.standard_uncertainty[rows], near=near, over_noise=0.0,
         )  # fmt: skip
 
     def _unresolved(self, near: slice, power: FloatArray) -> Line:
@@ -219,6 +252,7 @@ class _Search:
         centre = float(np.average(frequency[pair], weights=power[pair]))
         reach = max(8, math.ceil(math.sqrt(float(power.max()))))
         self._blank(near.start + middle, reach)
+        self.clean[max(near.start + middle - reach, 0) : near.start + middle + reach + 1] = False
         # All places within a step alike (JCGM 100:2008, 4.3.7).
         return _line(
             "unresolved", centre, self.response.step / math.sqrt(12), "narrower than one step of frequency"

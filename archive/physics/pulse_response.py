@@ -15,7 +15,7 @@ from scipy.ndimage import median_filter
 
 from archive.physics.arrays import ComplexArray, FloatArray, series
 
-__all__ = ["PulseResponse", "pulse_response"]
+__all__ = ["PulseResponse", "pulse_response", "smooth_part"]
 
 DRIVEN_SHARE = 0.1
 """Least spectral amplitude of the pulse, over its largest, at which it still drives (common practice, no source)."""
@@ -43,6 +43,8 @@ class PulseResponse:
         Distance of two frequencies, one over the length of the record, Hz.
     window : int
         Points of the running medians.
+    driven : bool
+        Whether a pulse was divided out; without one there is no feedthrough.
     """
 
     frequency: FloatArray
@@ -51,6 +53,7 @@ class PulseResponse:
     standard_uncertainty: FloatArray
     step: float
     window: int
+    driven: bool
 
 
 def pulse_response(
@@ -148,7 +151,23 @@ def _with_noise(
         standard_uncertainty=np.sqrt(power) / np.abs(divisor),
         step=step,
         window=window,
+        driven=driven,
     )
+
+
+def smooth_part(response: ComplexArray, like: PulseResponse) -> ComplexArray:
+    """Return the running median of both components of a response, or zeros where nothing was driven.
+
+    Parameters
+    ----------
+    response : array_like of complex128
+        At the frequencies of `like`, for instance after lines were subtracted.
+    like : PulseResponse
+        Tells window, and whether there can be any feedthrough.
+    """
+    if not like.driven:
+        return np.zeros_like(response)
+    return _median(response.real, like.window) + 1j * _median(response.imag, like.window)
 
 
 def _median(values: FloatArray, window: int) -> FloatArray:
