@@ -58,7 +58,6 @@ def prov(*, address: str, target: Path | None, notation: str, archive_dir: Path 
     for sentence in found.contradictions:
         note(f"warning: {sentence}")
     if target is None:
-        # Written as it is: PROV-JSON escapes what could steer a terminal only where JSON does.
         say(found.text.rstrip("\n"))
     else:
         say(str(target))

@@ -48,7 +48,9 @@ def needs_of(document: Record) -> tuple[str, ...]:
             document.supersedes,
         ]
     elif isinstance(document, AccessionDocument):
-        found = [document.supplements]
+        # A calibration made in an archive rests on the reduction that found it.
+        made_from = (entry.content.get("made_from") for entry in document.records)
+        found = [document.supplements, *(each for each in made_from if isinstance(each, str))]
     else:
         found = list(_texts(document.model_dump(mode="json")))
     own = str(getattr(document, "address", ""))

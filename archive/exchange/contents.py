@@ -5,7 +5,7 @@
     stillroom-package.json      the sealed files with their digests and why each is there
     sealed/<key>.h5             as they lie in the archive, byte for byte
     documents/<key>.json        what each says about itself, taken out of it
-    sheets/<accession>.toml     the sheet, as the person wrote it
+    sheets/<address>.toml       the sheet of an accession, amendment or revision, as the person wrote it
     plans/<plan>.json           the plans that were carried out
     results.csv                 every scalar result
     provenance/<cooldown>.*     PROV-JSON and PROV-N of each cooldown and all that it rests on
@@ -28,6 +28,8 @@ from archive.exchange.closure import ASKED, Holdings, behind
 from archive.exchange.prov_lineage import Lineage
 from archive.exchange.prov_notations import prov_json, prov_n
 from archive.exchange.sealed_document import SealedDocument
+from archive.exchange.withdrawn import reasons_of_withdrawal
+from schemas.acts import AmendmentDocument, RevisionDocument
 from schemas.base import Record
 from schemas.lineage import AccessionDocument, ReductionDocument, Sha256
 
@@ -42,6 +44,19 @@ __all__ = [
 ]
 
 PACKAGE_NAME = "stillroom-package.json"
+
+
+_COLUMNS = (
+    "address",
+    "quantity",
+    "value",
+    "standard_uncertainty",
+    "unit",
+    "scale",
+    "words",
+    "description",
+    "withdrawn_because",
+)
 
 
 class PackedFile(Record):
@@ -146,6 +161,8 @@ def sidecars(
         if isinstance(content, AccessionDocument):
             if content.sheet_file in {entry.name for entry in content.raw_files}:
                 yield f"sheets/{content.address}.toml", b"".join(raw(each.key, content.sheet_file))
+        elif isinstance(content, RevisionDocument | AmendmentDocument):
+            yield f"sheets/{content.address}.toml", b"".join(raw(each.key, content.sheet_file))
         elif isinstance(content, ReductionDocument) and (path := plan_path(content)) not in plans:
             plans.add(path)
             plan = json.dumps(content.plan.model_dump(mode="json"), indent=1, ensure_ascii=False) + "\n"
@@ -176,19 +193,28 @@ def _results(sealed: Sequence[SealedDocument]) -> str:
     """Return every scalar result as comma-separated values by RFC 4180, numbers with all their digits."""
     stream = io.StringIO(newline="")
     writer = csv.writer(stream, lineterminator="\r\n")
-    writer.writerow(
-        ["address", "quantity", "value", "standard_uncertainty", "unit", "scale", "words", "description"]
-    )
+    writer.writerow(_COLUMNS)
+    withdrawn = reasons_of_withdrawal(sealed)
     for each in sealed:
-        if not isinstance(each.document, ReductionDocument):
+        content = each.document
+        if not isinstance(content, ReductionDocument):
             continue
-        for entry in each.document.outputs:
+        why = next(
+            (
+                withdrawn[name]
+                for name in (each.address, content.sweep, content.cooldown)
+                if name in withdrawn
+            ),
+            "",
+        )
+        for entry in content.outputs:
             if entry.rows is None:
                 numbers = [
                     "" if number is None else repr(number) for number in (entry.value, entry.uncertainty)
                 ]
                 words = [
-                    _no_formula(text) for text in (entry.scale or "", entry.verdict or "", entry.description)
+                    _no_formula(text)
+                    for text in (entry.scale or "", entry.verdict or "", entry.description, why)
                 ]
                 writer.writerow(
                     [f"{each.address}#{entry.name}", entry.quantity, *numbers, entry.unit, *words]

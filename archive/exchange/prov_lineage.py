@@ -69,6 +69,7 @@ class Lineage:
         self._names: dict[str, str] = {}
         self._channels: dict[tuple[str, str], str] = {}
         self._revisions: dict[str, dict[int, str]] = {}
+        self._ended: list[tuple[str, str, str, datetime]] = []
         for each in sealed:
             content = each.document
             if isinstance(content, AccessionDocument):
@@ -81,6 +82,7 @@ class Lineage:
                 self._withdrawal(content, each)
             elif isinstance(content, ReductionDocument):
                 self._reduction(content, each)
+        self._invalidations()
         for numbers in self._revisions.values():
             ordered = sorted(numbers)
             for earlier, later in itertools.pairwise(ordered):
@@ -292,11 +294,14 @@ class Lineage:
             content.address, f"{home}:{local}", "Withdrawal", {"sha256": sealed.sha256, "why": content.why}
         )
         self.document.relate("wasGeneratedBy", name, act, content.made)
-        self._withdrawn(content.target, act, content.made)
+        self._ended.append((content.address, content.target, act, content.made))
 
-    def _withdrawn(self, target: str, act: str, moment: datetime) -> None:
-        if (name := self._names.get(target)) is not None:
-            self.document.relate("wasInvalidatedBy", name, act, moment)
+    def _invalidations(self) -> None:
+        """Tell what is withdrawn, now that everything has its name; a withdrawal that was taken back ends nothing."""
+        taken_back = {target for _, target, _, _ in self._ended}
+        for address, target, act, moment in self._ended:
+            if address not in taken_back and (name := self._names.get(target)) is not None:
+                self.document.relate("wasInvalidatedBy", name, act, moment)
 
     # Reductions ---------------------------------------------------------------------------------------------------
 

@@ -26,6 +26,7 @@ def prov_json(document: ProvDocument) -> str:
     Notes
     -----
     Relations without a name of their own are numbered in the order of the document, as blank nodes.
+    ASCII alone: readable in any code page of a pipe, and nothing in it can steer a terminal.
     """
     content: dict[str, Any] = {"prefix": dict(document.prefixes)}
     for kind in ("entity", "activity", "agent"):
@@ -35,7 +36,7 @@ def prov_json(document: ProvDocument) -> str:
     for number, relation in enumerate(document.relations, 1):
         name = relation.identifier or f"_:n{number}"
         content.setdefault(relation.kind, {})[name] = _relation(relation)
-    return json.dumps(content, indent=1, ensure_ascii=False, allow_nan=False) + "\n"
+    return json.dumps(content, indent=1, ensure_ascii=True, allow_nan=False) + "\n"
 
 
 def _element(element: Element) -> dict[str, Any]:

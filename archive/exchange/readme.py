@@ -6,6 +6,7 @@ from collections.abc import Sequence
 
 from archive.exchange.about import About
 from archive.exchange.sealed_document import SealedDocument
+from archive.exchange.withdrawn import reasons_of_withdrawal
 
 __all__ = ["readme"]
 
@@ -46,7 +47,7 @@ proves without any other program that nothing changed. `stillroom import` takes 
 Rights
 ------
 {rights}
-{missing}
+{missing}{withdrawn}
 Sealed files
 ------------
 {files}
@@ -69,6 +70,8 @@ def readme(about: About, sealed: Sequence[SealedDocument], example: str) -> str:
         else "No licence is stated; this package grants no right to use the data again."
     )
     missing = "".join(f"\nNot stated: {each}" for each in about.missing)
+    reasons = reasons_of_withdrawal(sealed)
+    withdrawn = "".join(f"{target}: {' '.join(why.split())}\n" for target, why in sorted(reasons.items()))
     width = max(len(each.address) for each in sealed)
     return _TEXT.format(
         title=about.title,
@@ -77,5 +80,8 @@ def readme(about: About, sealed: Sequence[SealedDocument], example: str) -> str:
         example=example,
         rights=rights,
         missing=f"{missing}\n" if missing else "",
+        withdrawn=f"\nWithdrawn; it stays, and is not to be relied on\n{'-' * 47}\n{withdrawn}"
+        if withdrawn
+        else "",
         files="\n".join(f"{each.address:<{width}}  {each.size:>10} bytes  {each.because}" for each in sealed),
     )

@@ -228,13 +228,22 @@ def test_what_is_amended_or_withdrawn_afterwards_is_told(lab: Archive) -> None:
         format="stillroom-withdrawal/1", address="2026-04.w1", target=DROP, cooldown="2026-04", number=1, sequence=2,
         why="made with the wrong plan", by="data steward", made=LATER, software=SOFTWARE,
     )  # fmt: skip
-    sealed = sealed_documents(lab, "2026-04")
-    for each in (amended, withdrawn):
-        sealed.append(SealedDocument(f"2026-04/{each.address}", "c" * 64, 10, lambda key, each=each: each))
+    acts = [
+        SealedDocument(f"2026-04/{each.address}", "c" * 64, 10, lambda key, each=each: each)
+        for each in (amended, withdrawn)
+    ]
+    found = sealed_documents(lab, "2026-04")
+    sealed = [*found[:2], *acts, *found[2:]]
     lineage = Lineage(sealed)
     told = json.loads(prov_json(lineage.document))
     (ended,) = told["wasInvalidatedBy"].values()
     assert ended["prov:entity"] == lineage.identifier(DROP)
+    back = withdrawn.model_copy(update={"address": "2026-04.w2", "target": "2026-04.w1", "number": 2})
+    restored = Lineage([*sealed, SealedDocument("2026-04/2026-04.w2", "d" * 64, 10, lambda key: back)])
+    (ended,) = json.loads(prov_json(restored.document))["wasInvalidatedBy"].values()
+    assert ended["prov:entity"] == restored.identifier("2026-04.w1"), (
+        "taken back, so the reduction stands again"
+    )
     assert (
         told["entity"][lineage.identifier("2026-04.m1")]["stillroom:because"] == "the gauge was read wrongly"
     )
