@@ -14,6 +14,7 @@ from archive import Archive
 from archive.demo.calibration_cooldown import make_calibration_folders
 from archive.demo.calibration_forward import germanium_resistance
 from archive.errors import BadRequest, UnknownAddress
+from archive.exchange.closure import needs_of
 from archive.reduction.calibration_record import calibration_text
 
 MADE = "2024-11/c01@thermometer-calibration.1"
@@ -211,3 +212,10 @@ def test_what_is_no_calibration_is_refused(lab: Archive, second: dict[str, Any])
     with pytest.raises(UnknownAddress, match="expected one of: GE-7"):
         lab.calibration_drift("XX-1")
     assert lab.calibration(second["address"]).name == "RX-8-cal"
+
+
+@pytest.mark.usefixtures("second")
+def test_an_accession_rests_on_the_reduction_behind_its_calibration(lab: Archive) -> None:
+    """So that a package of it takes the calibration's rows along."""
+    assert MADE in needs_of(lab._source.accession("2025-02.a1"))
+    assert MADE not in needs_of(lab._source.accession("2024-11.a1"))
