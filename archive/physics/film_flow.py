@@ -154,7 +154,8 @@ def _flow_pair(c: FloatArray, v: FloatArray) -> tuple[FloatArray, FloatArray]:
     angle = 2 * root * v
     below = int(np.searchsorted(c[:, 0], 0.0, side="right"))
     even, odd = np.empty(angle.shape), np.empty(angle.shape)
-    np.sinh(np.minimum(angle[:below], 350.0), out=odd[:below])
+    # Past this the fugacity is below 1e-120 of its start, and squares do not overflow.
+    np.sinh(np.minimum(angle[:below], 150.0), out=odd[:below])
     np.sqrt(1 + odd[:below] * odd[:below], out=even[:below])
     # By the half angle: one tangent is many times quicker than a sine and a cosine.
     half = np.tan(angle[below:] / 2)

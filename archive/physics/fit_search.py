@@ -7,7 +7,7 @@ in the same order, so nothing is random.
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Iterator
+from collections.abc import Iterator
 from dataclasses import dataclass, replace
 from typing import Any
 
@@ -15,8 +15,9 @@ import numpy as np
 from scipy.optimize import least_squares
 
 from archive.physics.arrays import BoolArray, FloatArray
+from archive.physics.fit_calls import NO_SLOPE, Residuals
 
-__all__ = ["RELATIVE_OFFSET", "TOLERANCE", "End", "Residuals", "Terms", "best_end"]
+__all__ = ["RELATIVE_OFFSET", "TOLERANCE", "End", "Terms", "best_end"]
 
 RELATIVE_OFFSET = 1e-3
 """Bates and Watts (1981): at 0.001 the remaining step is about a thousandth of the confidence region."""
@@ -38,89 +39,6 @@ SPREADS = (0.05, 0.3, 1.0)
 
 PRIMES = (2, 3, 5, 7, 11, 13, 17, 19, 23, 29, 31, 37, 41, 43, 47)
 """Bases of the points of J. H. Halton, Numerische Mathematik 2, 84 (1960), for the new starts; they repeat past the last."""
-
-
-class Residuals:
-    """The residual function in scaled parameters, with its derivatives and a count of calls."""
-
-    def __init__(
-        self,
-        function: Callable[[FloatArray], FloatArray],
-        slopes: Callable[[FloatArray], FloatArray] | None,
-        *,
-        scale: FloatArray,
-        lower: FloatArray,
-        upper: FloatArray,
-    ) -> None:
-        self.function, self.slopes = function, slopes
-        self.scale, self.lower, self.upper = scale, lower / scale, upper / scale
-        self.calls = 0
-        self.last: tuple[bytes, FloatArray] = (b"", np.empty(0))
-
-    @property
-    def bounded(self) -> bool:
-        """Whether any parameter has a bound."""
-        return bool(np.isfinite(self.lower).any() or np.isfinite(self.upper).any())
-
-    def __call__(self, point: FloatArray) -> FloatArray:
-        """Return the weighted residuals."""
-        key = point.tobytes()
-        # The solver and the judgement ask for one point in turn.
-        if self.last[0] == key:
-            return self.last[1]
-        self.calls += 1
-        # A trial step may overflow an exponential; the solver sees a huge residual and steps back.
-        with np.errstate(all="ignore"):
-            values = np.asarray(self.function(point * self.scale), dtype=np.float64)
-        if values.ndim != 1:
-            raise ValueError(f"model: found {values.ndim} dimensions, expected one")
-        self.last = key, values
-        return values
-
-    def tame(self, point: FloatArray) -> FloatArray:
-        """Return residuals with what is not finite made very large."""
-        return _tame(self(point))
-
-    def jacobian(self, point: FloatArray) -> FloatArray:
-        """Return the caller's derivatives, or central differences, one-sided where a bound is in the way."""
-        if self.slopes is not None:
-            self.calls += 1
-            with np.errstate(all="ignore"):
-                return _tame(np.asarray(self.slopes(point * self.scale), dtype=np.float64) * self.scale)
-        columns = []
-        for index, value in enumerate(point):
-            # A value is counted in its parameter's own scale: a resonance frequency is many line widths, and a step of a part
-            # of it would leap over the line.
-            step = np.finfo(float).eps ** (1 / 3) * max(min(abs(value), 1.0), 1e-4)
-            above, below = point.copy(), point.copy()
-            above[index] = min(value + step, self.upper[index])
-            below[index] = max(value - step, self.lower[index])
-            columns.append(self._difference(above, below, point, index))
-        return np.column_stack(columns)
-
-    def _difference(self, above: FloatArray, below: FloatArray, point: FloatArray, index: int) -> FloatArray:
-        up, down = self(above), self(below)
-        # Beside the edge of a model's domain only one side tells its slope.
-        if not np.isfinite(up).all():
-            above, up = point, self(point)
-        if not np.isfinite(down).all():
-            below, down = point, self(point)
-        width = above[index] - below[index]
-        return _tame((up - down) / width) if width > 0 else np.full(up.shape, 1e100)
-
-    def rescaled(self, point: FloatArray) -> tuple[Residuals, FloatArray]:
-        """Return the same function with the sizes of the parameters at a point as their scale, and that point."""
-        value = point * self.scale
-        scale = np.where(np.abs(point) > 1e-8, np.abs(value), self.scale)
-        other = Residuals(
-            self.function,
-            self.slopes,
-            scale=scale,
-            lower=self.lower * self.scale,
-            upper=self.upper * self.scale,
-        )
-        other.calls = self.calls
-        return other, value / scale
 
 
 @dataclass(frozen=True)
@@ -165,7 +83,7 @@ class End:
         norm = np.linalg.norm(columns, axis=0)
         if columns.shape[1] == 0:
             return True
-        if not (norm < 1e99).all() or (norm == 0).any():
+        if not (norm < NO_SLOPE).all() or (norm == 0).any():
             return False
         singular = np.linalg.svd(columns / norm, compute_uv=False)
         # Columns come from central differences, good to about 1e-10.
@@ -317,10 +235,6 @@ def _judged(calls: Residuals, point: FloatArray, terms: Terms) -> End:
     )
 
 
-def _tame(values: FloatArray) -> FloatArray:
-    return np.nan_to_num(values, nan=1e100, posinf=1e100, neginf=-1e100).clip(-1e100, 1e100)
-
-
 def _solved(calls: Residuals, start: FloatArray, *, method: str, budget: int, tolerance: float) -> FloatArray:
     if method == "lm":
         bounds: tuple[Any, Any] = (-np.inf, np.inf)
@@ -361,8 +275,7 @@ def _relative_offset(values: FloatArray, jacobian: FloatArray, held: BoolArray, 
     norm = np.linalg.norm(free, axis=0)
     if free.shape[1] == 0:
         return 0.0
-    # A column of 1e100 has no slope: the model is not finite on either side.
-    if not (norm < 1e99).all() or (norm == 0).any():
+    if not (norm < NO_SLOPE).all() or (norm == 0).any():
         return math.inf
     q, _ = np.linalg.qr(free / norm)
     along = float(np.linalg.norm(q.T @ values))

@@ -16,7 +16,8 @@ import numpy as np
 import numpy.typing as npt
 
 from archive.physics.arrays import FloatArray, series
-from archive.physics.fit_search import RELATIVE_OFFSET, TOLERANCE, End, Residuals, Terms, best_end
+from archive.physics.fit_calls import Residuals
+from archive.physics.fit_search import RELATIVE_OFFSET, TOLERANCE, End, Terms, best_end
 from archive.physics.linear_fit import reciprocal_uncertainty
 
 __all__ = ["FitResult", "Parameter", "fit", "fit_residuals"]
