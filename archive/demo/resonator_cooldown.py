@@ -29,10 +29,10 @@ __all__ = ["TEMPERATURES", "make_resonator_folders", "resonator_cooldown", "reso
 
 NAME: Final = "2026-07"
 
-TEMPERATURES: Final = (1.20, 1.30, 1.40, 1.50, 1.58, 1.65, 1.72, 1.78, 1.83, 1.88)
+TEMPERATURES: Final = (1.20, 1.32, 1.44, 1.55, 1.65, 1.73, 1.80)
 """True temperature of each record, K."""
 
-_SWEPT: Final = 6
+_SWEPT: Final = 4
 """How many of them were swept over as well."""
 
 
