@@ -14,6 +14,9 @@ from archive.commands.opening import archive_option, json_option, strict_option
 from archive.commands.terminal import Progress, say, styled, table
 from archive.errors import EXIT_DAMAGE
 
+# Damaged things that are no sealed files.
+_BESIDE = {"index", "journal.jsonl"}
+
 __all__ = ["fixity", "init", "journal", "rebuild_index"]
 
 
@@ -69,7 +72,8 @@ def fixity(*, archive_dir: Path | None, as_json: bool, strict: bool) -> None:
             colour = "yellow" if each.kind == "stray" else "red"
             click.echo(styled(each.kind, colour, bold=True) + " ", nl=False)
             say(f"{place}: {each.what}{_differing(each.expected, each.found)}")
-        say(_verdict(files, len(hurt), len(damage) - len(hurt)))
+        sealed = sum(each.key not in _BESIDE for each in hurt)
+        say(_verdict(files, sealed, len(hurt) - sealed, len(damage) - len(hurt)))
     context = click.get_current_context()
     if hurt:
         context.exit(EXIT_DAMAGE)
@@ -83,14 +87,15 @@ def _differing(expected: str | None, found: str | None) -> str:
     )
 
 
-def _verdict(files: int, hurt: int, stray: int) -> str:
+def _verdict(files: int, hurt: int, beside: int, stray: int) -> str:
     strays = f"; {stray} not recorded" if stray else ""
     if hurt:
         return (
-            f"{hurt} faults in {files} recorded files{strays}. Keep this archive as it is and restore the files named "
-            "above from a copy; the index is not the cause."
+            f"{hurt} faults in {files} recorded files{strays}. Keep this archive as it is and bring the files named above back "
+            "from a copy: stillroom mend --from COPY. The index is not the cause."
         )
-    return f"All {files} recorded files are byte for byte as they were sealed{strays}."
+    whole = f"All {files} recorded files are byte for byte as they were sealed{strays}."
+    return f"{whole} The faults named above are in the index or the journal." if beside else whole
 
 
 @click.command(short_help="Tell what was done to the archive.")

@@ -96,7 +96,7 @@ def _add_amendment(connection: Connection, document: AmendmentDocument, held: di
         "cooldown": document.cooldown,
         "number": document.number,
         "because": document.because,
-        "differences": [each.model_dump(mode="json") for each in document.differences],
+        "differences": [each.model_dump(mode="json", exclude_defaults=True) for each in document.differences],
     }
     add_rows(connection, Amendment, [{**held, **said}])
     borne = ({"amendment": document.address, "sweep": sweep} for sweep in document.sweeps)

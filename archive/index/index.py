@@ -12,11 +12,12 @@ from __future__ import annotations
 import sqlite3
 from collections.abc import Iterable, Iterator
 from contextlib import closing, contextmanager, suppress
+from itertools import zip_longest
 from pathlib import Path
 from types import TracebackType
 from typing import Any, Self
 
-from sqlalchemy import Connection, Engine
+from sqlalchemy import Connection, Engine, Table
 from sqlalchemy.engine import URL
 
 from archive.errors import BadRequest, DamagedFile, MissingFile
@@ -253,6 +254,27 @@ class Index:
                 for name, table in sorted(Base.metadata.tables.items())
             }
 
+    def disagreements(self, other: Index) -> list[str]:
+        """What another index has otherwise, one sentence for each table that differs; rows are read one by one.
+
+        Raises
+        ------
+        DamagedFile
+            If a row of either cannot be read.
+        """
+        found = []
+        with reading(self._engine, self._url) as one, reading(other._engine, other._url) as two:
+            for name, table in sorted(Base.metadata.tables.items()):
+                query = queries.all_rows(table)
+                pairs = zip_longest(
+                    map(tuple, one.execution_options(yield_per=1000).execute(query)),
+                    map(tuple, two.execution_options(yield_per=1000).execute(query)),
+                )
+                first = next(((mine, its) for mine, its in pairs if mine != its), None)
+                if first is not None:
+                    found.append(f"table {name}: {_unequal(table, *first)}")
+        return found
+
     def sealed_files(self) -> dict[str, tuple[str, int]]:
         """SHA-256 and size of every sealed file, by key."""
         with reading(self._engine, self._url) as connection:
@@ -470,6 +492,20 @@ def _add_all(connection: Connection, entries: Iterable[Entry]) -> None:
             add_reduction(connection, document, key=key, sha256=sha256, size=size)
         else:
             add_act(connection, document, key=key, sha256=sha256, size=size)
+
+
+def _unequal(table: Table, mine: tuple[Any, ...] | None, its: tuple[Any, ...] | None) -> str:
+    """What the first two unequal rows of a table tell."""
+    row = mine if its is None else its
+    key = (
+        ", ".join(str(row[table.columns.keys().index(column.name)]) for column in table.primary_key)
+        if row
+        else ""
+    )
+    if mine is None or its is None:
+        return f"the row of {key} is {'missing' if mine is None else 'one too many'}"
+    columns = [name for name, a, b in zip(table.columns.keys(), mine, its, strict=True) if a != b]
+    return f"the row of {key} differs in {', '.join(columns)}"
 
 
 @contextmanager

@@ -153,7 +153,8 @@ def add_reduction(
                     "name": plan.name,
                     "revision": plan.revision,
                     "title": plan.title,
-                    "content": plan.model_dump(mode="json"),
+                    # Defaults are left out, so that a field which a later version adds changes no row.
+                    "content": plan.model_dump(mode="json", exclude_defaults=True),
                 }
             ],
         )
@@ -285,7 +286,7 @@ def _finding_rows(key: str, step: int, findings: Iterable[Finding]) -> Iterable[
             "what": finding.what,
             "place": finding.place,
             "waived": finding.waived is not None,
-            "content": finding.model_dump(mode="json"),
+            "content": finding.model_dump(mode="json", exclude_defaults=True),
         }
 
 

@@ -38,6 +38,7 @@ from archive.lab.amending import amend
 from archive.lab.checking import check_folder, earlier_runs, folder_report, require_folder
 from archive.lab.comparing import Comparison, compare
 from archive.lab.forward import forward as lineage_forward
+from archive.lab.index_check import index_damage
 from archive.lab.journaling import AFTERWARDS, Acts
 from archive.lab.keeping import MirrorOutcome
 from archive.lab.marks import marked
@@ -57,7 +58,7 @@ from archive.reduction.trace import TraceNode
 from archive.store.durable import LOCK_NAME, archive_lock, write_whole
 from archive.store.fixity import fixity
 from archive.store.interface import Damage, SealedFile
-from archive.store.journal import Entry, Journal
+from archive.store.journal import Entry
 from archive.store.local import LocalStore, open_store
 from archive.store.mend import Mended
 from archive.store.staging import sweep_staging
@@ -114,7 +115,7 @@ class Archive:
         self._index = index
         self._clock = clock
         self._source = LabSource(store, index)
-        self._acts = Acts(Journal(root), clock)
+        self._acts = Acts(root, clock)
 
     # Opening and closing ------------------------------------------------------------------------------------------
 
@@ -165,7 +166,7 @@ class Archive:
                 raise BadRequest("another process has just made an archive here", file=str(root))
             try:
                 made(root, settings, settings_text(settings.name, index))
-                begun = Acts(Journal(root), clock)
+                begun = Acts(root, clock)
                 begun.done("init", settings.name)
                 begun.enter()
             except BaseException:
@@ -601,11 +602,14 @@ class Archive:
 
     def fixity(self, *, progress: Callable[[int, int, str], None] | None = None) -> list[Damage]:
         """Re-read everything and name what is damaged, missing or stray."""
-        recorded = {
-            key: SealedFile(key, sha256, size) for key, (sha256, size) in self._index.sealed_files().items()
-        }
-        digests = {key: sealed.sha256 for key, sealed in recorded.items()}
-        return [*fixity(self._store, recorded, progress), *self._acts.journal.damage(digests)]
+        recorded = self._recorded()
+        damage = fixity(self._store, recorded, progress)
+        hurt = {each.key for each in damage if each.kind != "stray"}
+        return [
+            *damage,
+            *index_damage(self._index, self._store, recorded, hurt),
+            *self._acts.damage({key: sealed.sha256 for key, sealed in recorded.items()}),
+        ]
 
     def mend(
         self, other: Path | str, *, progress: Callable[[int, int, str], None] | None = None
@@ -670,7 +674,7 @@ class Archive:
         counts = reducing.rebuilt_index(
             root, settings.index_address(root), open_store(root), progress=progress
         )
-        acts = Acts(Journal(root), _now)
+        acts = Acts(root, _now)
         acts.done("rebuild-index", settings.name)
         with archive_lock(root):
             acts.enter()

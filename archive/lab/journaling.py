@@ -10,11 +10,14 @@ import os
 from collections.abc import Callable, Iterable, Iterator, Mapping
 from contextlib import contextmanager
 from datetime import datetime
+from pathlib import Path
 from typing import Any
 
 from archive.errors import BadRequest
+from archive.intake.settings import SETTINGS_NAME
 from archive.reduction.software import software
-from archive.store.interface import SealedFile
+from archive.store.durable import file_digest
+from archive.store.interface import Damage, SealedFile
 from archive.store.journal import Act, Journal
 
 __all__ = ["AFTERWARDS", "UNKNOWN_ROLE", "Acts", "acting_role"]
@@ -40,12 +43,14 @@ class Acts:
 
     Parameters
     ----------
-    journal : Journal
+    root : Path
+        Folder of the archive.
     clock : callable
     """
 
-    def __init__(self, journal: Journal, clock: Callable[[], datetime]) -> None:
-        self.journal = journal
+    def __init__(self, root: Path, clock: Callable[[], datetime]) -> None:
+        self.journal = Journal(root)
+        self._settings = root / SETTINGS_NAME
         self._clock = clock
         self._gathered: list[Act] = []
         self._as: str | None = None
@@ -77,13 +82,31 @@ class Acts:
         """
         gathered, self._gathered = self._gathered, []
         try:
-            self.journal.append(gathered, at=self._clock(), stillroom=software().stillroom)
+            self.journal.append(
+                gathered, at=self._clock(), stillroom=software().stillroom, settings=self._settings_digest()
+            )
         except OSError as error:
             raise BadRequest(
                 f"what was done is sealed, but the journal cannot be written: {error.strerror}",
                 file=str(self.journal.path),
                 remedy="free space, or correct the permissions; the next opening enters what is missing",
             ) from error
+
+    def damage(self, recorded: Mapping[str, str]) -> list[Damage]:
+        """Return what is wrong with the journal, and whether the settings are those of the last act."""
+        last = self.journal.last()
+        found = self.journal.damage(recorded)
+        if last is not None and last.settings not in (None, self._settings_digest()):
+            found.append(
+                Damage(
+                    SETTINGS_NAME, "stray", "the settings are not those of the last act; if nobody changed them, compare them with a copy",
+                    expected=last.settings, found=self._settings_digest(),
+                )
+            )  # fmt: skip
+        return found
+
+    def _settings_digest(self) -> str | None:
+        return file_digest(self._settings)[0] if self._settings.is_file() else None
 
     def behind(self, count: int) -> bool:
         """Whether the journal tells of fewer sealed files than there are."""

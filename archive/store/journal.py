@@ -79,6 +79,8 @@ class Entry:
         How many sealed files have been entered, this one included.
     digest : str
         Digest of this line.
+    settings : str or None
+        Digest of the settings then.
     """
 
     number: int
@@ -88,6 +90,7 @@ class Entry:
     before: str
     sealed: int
     digest: str
+    settings: str | None = None
 
 
 class Journal:
@@ -118,8 +121,19 @@ class Journal:
             if entry is not None:
                 yield entry
 
-    def append(self, acts: Sequence[Act], *, at: datetime, stillroom: str) -> None:
+    def append(
+        self, acts: Sequence[Act], *, at: datetime, stillroom: str, settings: str | None = None
+    ) -> None:
         """Enter acts at the end and bring them to the disk; the caller holds the archive's lock.
+
+        Parameters
+        ----------
+        acts : sequence of Act
+        at : datetime
+        stillroom : str
+            Version that did them.
+        settings : str, optional
+            Digest of the archive's settings then.
 
         Raises
         ------
@@ -139,6 +153,7 @@ class Journal:
             content: dict[str, Any] = {
                 "n": number, "at": at.isoformat(), "act": act.act, "what": act.what, "by": act.by,
                 "stillroom": stillroom, "before": before, "sealed": sealed,
+                **({} if settings is None else {"settings": settings}),
                 **{name: value for name in ("key", "sha256", "note") if (value := getattr(act, name)) is not None},
             }  # fmt: skip
             if torn and not lines:
@@ -255,7 +270,7 @@ def _read(line: bytes) -> Entry | None:
                 content.get("note"),
             ),
             stillroom=str(content["stillroom"]), before=str(content["before"]), sealed=int(content["sealed"]),
-            digest=_digest(line),
+            digest=_digest(line), settings=content.get("settings"),
         )  # fmt: skip
     except (ValueError, KeyError, TypeError, AttributeError, RecursionError):
         return None
