@@ -15,7 +15,12 @@ from archive.demo.calibration_cooldown import make_calibration_folders
 from archive.demo.calibration_forward import germanium_resistance
 from archive.errors import BadRequest, UnknownAddress
 from archive.exchange.closure import needs_of
-from archive.reduction.calibration_record import calibration_text
+from archive.reduction import planning
+from archive.reduction.calibration_comparison import compared
+from archive.reduction.calibration_record import calibration_from, calibration_text
+from archive.reduction.calibration_sources import temperature_contributions
+from archive.reduction.thermometry_steps import calibrated_temperature
+from schemas.lineage import ReductionDocument
 
 MADE = "2024-11/c01@thermometer-calibration.1"
 
@@ -150,6 +155,9 @@ def test_a_record_that_was_changed_is_told(lab: Archive, text: str, tmp_path: Pa
     assert "calibration-differs" not in {
         f.code for f in lab.check(folder_of(tmp_path, narrower, "2025-03-b")).findings
     }
+    lower = text.replace("temperature_low = ", 'temperature_low = "1.2 K" # ')
+    report = lab.check(folder_of(tmp_path, lower, "2025-03-d"))
+    assert "temperature_low differs" in next(f.what for f in report.findings if f.code == "calibration-differs")  # fmt: skip
     wider = text.replace("temperature_high = ", 'temperature_high = "4.3 K" # ')
     report = lab.check(folder_of(tmp_path, wider, "2025-03-c"))
     assert "temperature_high differs" in next(
@@ -219,3 +227,100 @@ def test_an_accession_rests_on_the_reduction_behind_its_calibration(lab: Archive
     """So that a package of it takes the calibration's rows along."""
     assert MADE in needs_of(lab._source.accession("2025-02.a1"))
     assert MADE not in needs_of(lab._source.accession("2024-11.a1"))
+
+
+@pytest.mark.parametrize("form", ["chebyshev", "spline"])
+def test_another_form_is_a_record_too(lab: Archive, form: str, tmp_path: Path) -> None:
+    shipped = (Path(planning.__file__).parent / "plans" / "thermometer-calibration.toml").read_text(encoding="utf-8")  # fmt: skip
+    own = shipped.replace('name = "thermometer-calibration"', f'name = "my-{form}"').replace(
+        'use = "calibration-fit"\n', f'use = "calibration-fit"\nset = {{ form = "{form}" }}\n'
+    )
+    (tmp_path / "plan.toml").write_text(own, encoding="utf-8")
+    (outcome,) = lab.reduce("2024-11", sweep="c01", plan=tmp_path / "plan.toml")
+    assert outcome.problem is None
+    record = lab.calibration(outcome.address or "", revision=7)
+    assert (record.relation.form, record.address) == (form, "GE-7-cal.r7")
+    T = np.linspace(1.4, 4.1, 15)
+    reading = germanium_resistance(T)
+    found = calibrated_temperature(record, reading, 1.0)
+    u = np.sqrt(sum(part**2 for _, part in temperature_contributions(record, reading, found)))
+    # The errors of the demonstration's laboratory are drawn once: all 15 lie on one side.
+    assert np.all(np.abs(found - T) < 3.5 * u)
+    drift = compared(lab.calibration(MADE), record)
+    assert drift.found is not None
+    assert drift.found.significance < 4
+
+
+class Changed:
+    """An archive in which one reduction reads otherwise."""
+
+    def __init__(self, lab: Archive, document: ReductionDocument) -> None:
+        self._source, self._document = lab._source, document
+
+    def reduction(self, address: str) -> ReductionDocument:
+        """Return the changed reduction."""
+        return self._document
+
+    def __getattr__(self, name: str) -> Any:
+        """Return everything else as it is."""
+        return getattr(self._source, name)
+
+
+def without(document: ReductionDocument, what: str) -> ReductionDocument:
+    """Return a reduction that lacks its fit, an output, or its scale."""
+    if what == "fit":
+        return document.model_copy(update={"steps": document.steps[:-1]})
+    if what == "output":
+        return document.model_copy(
+            update={"outputs": tuple(each for each in document.outputs if each.name != "centre")}
+        )
+    return document.model_copy(
+        update={"outputs": tuple(each.model_copy(update={"scale": None}) for each in document.outputs)}
+    )
+
+
+@pytest.mark.parametrize(
+    ("what", "sentence"),
+    [("fit", "fits no calibration"), ("output", "keeps no centre"), ("scale", "on no named scale")],
+)
+def test_a_reduction_that_lacks_what_a_record_needs_is_refused(lab: Archive, what: str, sentence: str) -> None:  # fmt: skip
+    document = without(lab._source.reduction(MADE), what)
+    with pytest.raises(BadRequest, match=sentence):
+        calibration_from(MADE, Changed(lab, document), name="x", revision=1)  # type: ignore[arg-type]
+
+
+NO_CALIBRATION = """
+[sweep.channels]
+reference  = {{ column = "GE", quantity = "temperature", unit = "K", scale = "ITS-90" }}
+resistance = {{ column = "RX", quantity = "resistance", unit = "Ohm"{thermometer} }}
+"""
+
+
+def test_a_reference_that_is_a_temperature_needs_no_calibration(lab: Archive, tmp_path: Path) -> None:
+    for name, thermometer in (("2025-08", ', thermometer = "RX-8"'), ("2025-09", "")):
+        folder = folder_of(tmp_path, "", name)
+        sheet = (folder / "cooldown.toml").read_text(encoding="utf-8")
+        sheet = sheet[: sheet.index("[sweep.channels]")] + NO_CALIBRATION.format(thermometer=thermometer)
+        (folder / "cooldown.toml").write_text(sheet, encoding="utf-8")
+        T = np.linspace(1.4, 4.0, 20) + 1e-4 * len(name + thermometer)
+        rows = "\n".join(f"{t:.6f},{1450 * np.exp((2.1 / t) ** 0.345):.5f}" for t in T)
+        (folder / "c01.csv").write_text(f"GE,RX\n{rows}\n", encoding="utf-8")
+        outcome = lab.ingest(folder)
+        assert outcome.state == "ingested"
+        missing = [f for f in outcome.report.findings if f.code == "calibrated-thermometer-missing"]
+        assert bool(missing) == (thermometer == "")
+        (reduced,) = lab.reduce(name)
+        if missing:
+            with pytest.raises(BadRequest, match="does not say which thermometer its channel resistance reads"):  # fmt: skip
+                lab.calibration(reduced.address or "")
+        else:
+            record = lab.calibration(reduced.address or "")
+            assert record.against == "temperatures of channel reference in 2025-08/c01"
+
+
+def test_a_channel_under_calibration_must_exist(lab: Archive, tmp_path: Path) -> None:
+    folder = folder_of(tmp_path, "", "2025-10")
+    sheet = (folder / "cooldown.toml").read_text(encoding="utf-8")
+    (folder / "cooldown.toml").write_text(sheet.replace('calibrates = "resistance"', 'calibrates = "resitance"'), encoding="utf-8")  # fmt: skip
+    found = [f for f in lab.check(folder).findings if f.code == "unknown-name" and "resitance" in f.what]
+    assert found[0].expected == "one of reference, resistance"

@@ -2,14 +2,16 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from typing import Any
 
 import numpy as np
 import pytest
 from scipy.optimize import curve_fit
 
+from archive.physics import calibration_fit
 from archive.physics.calibration_fit import fit_calibration
-from archive.physics.paramagnetic import curie_weiss_inductance
+from archive.physics.paramagnetic import curie_weiss_inductance, fit_curie_weiss
 
 LAW = {"offset": 12.5, "constant": 0.34, "theta": 0.4e-3}
 
@@ -140,6 +142,16 @@ def test_a_spline_goes_through_its_points_in_any_order() -> None:
     np.testing.assert_allclose(fit.curve.temperature(R), T, rtol=1e-12)
     np.testing.assert_allclose(fit.standard_uncertainty(R), 1e-3 * T, rtol=1e-9)
     assert fit.interpolation < 1e-3
+
+
+def test_a_search_that_does_not_end_is_no_calibration(monkeypatch: pytest.MonkeyPatch) -> None:
+    M, t, _, _ = noisy(np.random.default_rng(8), "curie-weiss")
+    ended = fit_curie_weiss(M, t)
+    monkeypatch.setattr(
+        calibration_fit, "fit_curie_weiss", lambda *_, **__: replace(ended, converged=False, message="no end")
+    )
+    with pytest.raises(ValueError, match="did not end properly: no end"):
+        fit_calibration("curie-weiss", M, t)
 
 
 @pytest.mark.parametrize(

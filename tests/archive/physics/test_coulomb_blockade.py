@@ -66,6 +66,15 @@ def test_a_dip_is_found_again_with_its_uncertainty() -> None:
     assert np.mean(pulls, axis=0) == pytest.approx(0, abs=0.45)
 
 
+def test_a_search_that_does_not_end_is_no_number(monkeypatch: pytest.MonkeyPatch) -> None:
+    def endless(*_: object, **__: object) -> None:
+        raise RuntimeError("no end")
+
+    monkeypatch.setattr(cbt, "curve_fit", endless)
+    with pytest.raises(ValueError, match="did not end: no end"):
+        cbt.fit_dip(np.linspace(-1e-3, 1e-3, 20), np.full(20, 2e-5))
+
+
 def test_no_dip_is_no_number() -> None:
     rng = np.random.default_rng(1)
     V = np.linspace(-1e-3, 1e-3, 101)

@@ -90,6 +90,23 @@ def test_order_stops_where_neither_test_asks_for_more() -> None:
     assert fit.trials[1].aicc > fit.trials[0].aicc
 
 
+def test_a_next_order_that_turns_says_nothing_of_the_form() -> None:
+    """The curve ln R = 8 - 0.1 x + 0.5 x^2 turns within the points: the line stands, and nothing is compared with it."""
+    T = np.geomspace(0.3, 3.0, 12)
+    x = np.log(T)
+    fit = resistance_fit.fit_inverse_log_polynomial(np.exp(8 - 0.1 * x + 0.5 * x**2), T, largest_order=1)
+    assert fit.interpolation == 0.0
+
+
+def test_interpolation_is_the_distance_to_the_next_order() -> None:
+    """The curve ln T = 3 - 0.6 z + 0.02 z^2 held at the line: the next order is exact, so the distance is the misfit itself."""
+    R = np.geomspace(50, 5000, 60)
+    T = np.exp(3 - 0.6 * np.log(R) + 0.02 * np.log(R) ** 2)
+    fit = resistance_fit.fit_log_polynomial(R, T, order=1)
+    away = np.log(evaluate(fit.curve, R).temperature / T)
+    assert fit.interpolation == pytest.approx(float(np.sqrt(np.mean(away**2))), rel=0.05)
+
+
 def test_order_leaves_two_points_for_each_parameter() -> None:
     R, T = _points("germanium_like")
     fit = resistance_fit.fit_log_polynomial(R[::3], T[::3], largest_order=9)

@@ -153,6 +153,13 @@ def test_what_has_nothing_in_common_is_not_compared(more: dict[str, Any], text: 
 )  # fmt: skip
 def test_definitions_do_not_drift(relation: dict[str, Any], unit: str, scale: str) -> None:
     span = {"temperature_low": "1.3 K", "temperature_high": "4.2 K"} if unit == "kPa" else {"temperature_low": "5 mK", "temperature_high": "0.3 K"}  # fmt: skip
+    # The law of Curie and Weiss, without the readings of its points, is no definition but repeats itself as well.
+    salt = record(
+        "curie-weiss", contribution=[], readings=None, interpolation_uncertainty=None, temperature_low="5 mK"
+    )
+    again = compared(salt.model_copy(update={"revision": 1}), salt)
+    assert again.found is not None
+    assert np.max(np.abs(again.found.difference)) == 0.0
     common = {"relation": relation, "scale": scale, "contribution": [], "readings": None, "interpolation_uncertainty": None, **span}  # fmt: skip
     first = record("log-polynomial", revision=1, date="2020-01-05", reading_unit="Pa", **common)
     drift = compared(first, record("log-polynomial", reading_unit=unit, **common))
