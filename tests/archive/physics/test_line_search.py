@@ -61,7 +61,7 @@ def test_two_resonances_and_a_tone_come_back() -> None:
     assert math.isnan(quality)
 
 
-@pytest.mark.parametrize(("sigma", "count"), [(1.5, 60), (0.05, 40)], ids=["weak", "strong"])
+@pytest.mark.parametrize(("sigma", "count"), [(1.5, 50), (0.05, 30)], ids=["weak", "strong"])
 def test_the_uncertainty_is_honest(sigma: float, count: int) -> None:
     """Pulls of frequency and Q: mean 0 and width 1 within four standard errors; in strong lines the feedthrough could bias them."""
     pulse = _pulse()
