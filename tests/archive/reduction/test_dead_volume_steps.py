@@ -9,11 +9,15 @@ import numpy as np
 import pytest
 
 from archive.physics.constants import GAS_CONSTANT
+from archive.physics.helium_gas import molar_density
 from archive.reduction.cell_gas import GasParameters
 from archive.reduction.dead_volume_steps import adsorbed_amount, dead_volume_fit, saturated_pressure
+from archive.reduction.estimate import Estimate
 from archive.reduction.facts import GasBook
+from archive.reduction.gas_steps import amount_from_doses
+from archive.reduction.propagation import propagate
 from archive.reduction.step import NoParameters
-from schemas.gas import DeadVolume
+from schemas.gas import DeadVolume, Dose, Doser, Gauge
 from schemas.substrate import Sample
 
 HELIUM = Sample(name="gas", revision=1, isotope="4He", gas_source="invented")
@@ -139,3 +143,67 @@ def test_the_saturated_pressure_is_that_of_helium_alone() -> None:
     for sample, words in ((None, "not recorded"), (NITROGEN, "found N2")):
         with pytest.raises(ValueError, match=words):
             saturated_pressure(NoParameters(), temperature=4.2, sample=sample)
+
+
+def _expansions(rng: np.random.Generator) -> tuple[GasBook, np.ndarray, np.ndarray]:
+    """Return the gas book of four expansions of an invented panel as its instruments read them, with times and pressures.
+
+    Truth: 3 cm^3 at 77.36 K, and a doser, a capillary and a gauge that are off by draws of what the sheet states.
+    """
+    doser, capillary, gain = (
+        50e-6 + 0.15e-6 * rng.normal(),
+        12e-6 + 0.06e-6 * rng.normal(),
+        1 + 2e-3 * rng.normal(),
+    )
+    full, cell, doses, pressures = 1.2e5, 0.0, [], []
+    for k in range(4):
+        # Ideal gas but for 1e-3: one linear balance, corrected once.
+        warm, cold = doser + capillary, 3e-6 * 295.0 / 77.36
+        p = (doser * full + (capillary + cold) * cell) / (warm + cold)
+        for _ in range(2):
+            gained = 3e-6 * (molar_density(p, 77.36) - molar_density(cell, 77.36)) + capillary * (
+                molar_density(p, 295.0) - molar_density(cell, 295.0)
+            )
+            left = doser * (molar_density(full, 295.0) - molar_density(p, 295.0)) - gained
+            p += float(left) * GAS_CONSTANT * 295.0 / (warm + cold)
+        before, after = (gain * each + 3 * rng.normal() for each in (full, p))
+        doses.append(
+            {
+                "name": f"d{k}", "at": f"2026-03-02T{10 + k}:00:00Z", "doser": "V1", "gauge": "G1", "pressure_before": f"{before:.3f} Pa",
+                "pressure_after": f"{after:.3f} Pa", "temperature_before": "295.0 K",
+            }
+        )  # fmt: skip
+        # The cell's own gauge is a good one.
+        pressures.append(p + 3 * rng.normal())
+        cell = p
+    panel = GasBook(
+        "2026-03", tuple(Dose.model_validate_json(json.dumps(each)) for each in doses),
+        dosers=(Doser.model_validate_json('{"name": "V1", "volume": "50.00(15) cm^3", "how": "invented"}'),),
+        gauges=(Gauge.model_validate_json('{"name": "G1", "range": "2 bar", "uncertainty": "3 Pa", "relative_uncertainty": 0.002}'),),
+        dead_volumes=book(("12.00(6) cm^3", "295 K")).dead_volumes, during=tuple(each["name"] for each in doses),
+    )  # fmt: skip
+    times = np.array([each.at.timestamp() + 1800 for each in panel.doses])
+    return panel, times, np.array(pressures)
+
+
+def test_pulls_of_a_dead_volume_with_all_that_is_shared() -> None:
+    rng = np.random.default_rng(23)
+    pulls = []
+    for _ in range(60):
+        panel, times, pressures = _expansions(rng)
+        metered = amount_from_doses(NoParameters(), gas=panel, sample=HELIUM, time=times)
+        inputs = {
+            "amount": Estimate(metered.array("amount"), "amount", shared={n: np.asarray(p) for n, p in metered.shared["amount"].items()}),
+            "pressure": Estimate(pressures, "pressure", point=np.full(4, 3.0)),
+        }  # fmt: skip
+
+        def call(values: Any, _: Any, panel: GasBook = panel) -> Any:
+            return dead_volume_fit(GasParameters(), **values, temperature=77.36, gas=panel, sample=HELIUM, u_pressure=np.full(4, 3.0))  # fmt: skip
+
+        found = propagate(call, inputs, elementwise=False)
+        assert found.outcome.covariance is not None
+        variance = sum(float(part) ** 2 for part in found.shared["volume"].values())
+        u = np.sqrt(variance + found.outcome.covariance.matrix[0, 0])
+        pulls.append((float(found.outcome.outputs["volume"]) - 3e-6) / u)
+    assert np.mean(pulls) == pytest.approx(0, abs=4 / np.sqrt(60))
+    assert np.std(pulls) == pytest.approx(1, abs=4 / np.sqrt(120))
