@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from functools import cache, lru_cache
 
 from sqlalchemy import and_, exists, or_, select
 
@@ -25,6 +26,7 @@ __all__ = [
 ]
 
 
+@cache
 def withdrawals(*, counting: bool) -> Query:
     """Withdrawals by target and number; only those that were not themselves withdrawn, or all."""
     found = select(
@@ -41,6 +43,7 @@ def withdrawals(*, counting: bool) -> Query:
     return found.where(withdrawal_counts()) if counting else found
 
 
+@lru_cache(maxsize=64)
 def amendments(cooldown: str | None) -> Query:
     """Amendments by cooldown and number; `counts` when not withdrawn."""
     found = select(
@@ -67,6 +70,7 @@ def amendments_of_sweeps(sweeps: Sequence[str] | None = None) -> Query:
     return found if sweeps is None else found.where(AmendmentSweep.sweep.in_(sweeps))
 
 
+@lru_cache(maxsize=64)
 def revisions(name: str | None) -> Query:
     """Revisions that came in outside a cooldown, by name and number; `counts` when not withdrawn."""
     found = select(
@@ -85,6 +89,7 @@ def revisions(name: str | None) -> Query:
     return found if name is None else found.where(Revision.name == name)
 
 
+@lru_cache(maxsize=64)
 def replaced_records(cooldown: str | None = None) -> Query:
     """What the current reductions took in place of what the sheet names, the newest reduction last."""
     found = (
@@ -98,6 +103,7 @@ def replaced_records(cooldown: str | None = None) -> Query:
     return found if cooldown is None else found.where(Reduction.cooldown == cooldown)
 
 
+@cache
 def inputs() -> Query:
     """Inputs of the current reductions, by reduction and place."""
     return (

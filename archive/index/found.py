@@ -1,11 +1,13 @@
 """Sweeps as they are found: with the values that amendments left, and without what is withdrawn.
 
 Rules: an act bears on the accession that was the newest when it was made and on older ones; a later accession of the same
-sweep has the last word in a search. A withdrawal counts unless it was itself withdrawn.
+sweep has the last word in a search. A withdrawal counts unless it was itself withdrawn. Conditions are built once: building one costs
+more than asking a small archive.
 """
 
 from __future__ import annotations
 
+from functools import cache
 from typing import Any
 
 from sqlalchemy import ColumnElement, and_, case, exists, or_
@@ -21,9 +23,11 @@ __all__ = [
     "newest_sweep",
     "withdrawal_counts",
     "withdrawn",
+    "withdrawn_reduction",
 ]
 
 
+@cache
 def withdrawal_counts() -> ColumnElement[bool]:
     """Whether a row of `withdrawal` is not itself withdrawn."""
     back = aliased(Withdrawal)
@@ -39,6 +43,7 @@ def withdrawn(*addresses: Any) -> ColumnElement[bool]:
     )
 
 
+@cache
 def newest_sweep(*, withdrawn_too: bool = False) -> ColumnElement[bool]:
     """Whether a row of `sweep` is held by the newest accession that has that sweep.
 
@@ -58,6 +63,13 @@ def newest_sweep(*, withdrawn_too: bool = False) -> ColumnElement[bool]:
     )
 
 
+@cache
+def withdrawn_reduction() -> ColumnElement[bool]:
+    """Whether a reduction is withdrawn, by itself or with its sweep or cooldown."""
+    return withdrawn(Reduction.address, Reduction.sweep, Reduction.cooldown)
+
+
+@cache
 def newest_reduction() -> ColumnElement[bool]:
     """Whether a reduction counts, no later one of this plan on this sweep does, and none that does supersedes it."""
     later, replacing = aliased(Reduction), aliased(Reduction)
@@ -69,10 +81,11 @@ def newest_reduction() -> ColumnElement[bool]:
             ~withdrawn(later.address),
         ),
         ~exists().where(replacing.supersedes == Reduction.address, ~withdrawn(replacing.address)),
-        ~withdrawn(Reduction.address, Reduction.sweep, Reduction.cooldown),
+        ~withdrawn_reduction(),
     )
 
 
+@cache
 def last_amended() -> ColumnElement[bool]:
     """Whether a row of `amended_sweep` says how a row of `sweep` is found; to join the two by."""
     later = aliased(AmendedSweep)

@@ -7,6 +7,7 @@ the version of the newest (for records: with the earliest) accession that holds 
 from __future__ import annotations
 
 from collections.abc import Sequence
+from functools import lru_cache
 from typing import Any
 
 from sqlalchemy import Select, Table, and_, cast, exists, func, null, or_, select, union_all
@@ -15,7 +16,13 @@ from sqlalchemy.orm import InstrumentedAttribute, aliased
 from archive.index.act_tables import AmendedSweep, Revision
 from archive.index.answers import SearchQuery
 from archive.index.conditions import named, part_of, search_conditions
-from archive.index.found import column_found, last_amended, newest_reduction, newest_sweep, withdrawn
+from archive.index.found import (
+    column_found,
+    last_amended,
+    newest_reduction,
+    newest_sweep,
+    withdrawn_reduction,
+)
 from archive.index.tables import (
     Accession,
     Channel,
@@ -59,6 +66,8 @@ __all__ = [
     "sweeps",
     "thermometers",
 ]
+
+_BUILT = 512  # statements kept, since building one costs more than asking a small archive
 
 Query = Select[*tuple[Any, ...]]
 """A SELECT of any columns."""
@@ -131,6 +140,7 @@ def search(query: SearchQuery, *, amended: bool = False) -> Query:
     return found.limit(query.limit).offset(query.offset or None)
 
 
+@lru_cache(maxsize=_BUILT)
 def sweeps(
     *,
     cooldown: str | None = None,
@@ -253,6 +263,7 @@ def cooldowns() -> Query:
     )
 
 
+@lru_cache(maxsize=_BUILT)
 def records(name: str | None, kind: str | None) -> Query:
     """Revisions of records, each with the earliest accession that holds it, by kind, name and revision.
 
@@ -286,6 +297,7 @@ def records(name: str | None, kind: str | None) -> Query:
     return select(both).order_by(both.c.kind, both.c.name, both.c.revision, both.c.digest)
 
 
+@lru_cache(maxsize=_BUILT)
 def reductions(
     *,
     cooldown: str | None = None,
@@ -310,7 +322,7 @@ def reductions(
             Reduction.stillroom,
             newest_reduction().label("newest"),
             Plan.title,
-            withdrawn(Reduction.address, Reduction.sweep, Reduction.cooldown).label("withdrawn"),
+            withdrawn_reduction().label("withdrawn"),
         )
         .join(Plan, and_(Plan.address == Reduction.plan_address, Plan.digest == Reduction.plan_digest))
         .order_by(Reduction.sweep, Reduction.plan, Reduction.number)
@@ -326,6 +338,7 @@ def reductions(
     return found.where(newest_reduction()) if newest_only else found
 
 
+@lru_cache(maxsize=_BUILT)
 def results(
     *,
     name: str | None,
@@ -336,7 +349,7 @@ def results(
     withdrawn_too: bool = False,
 ) -> Query:
     """Scalar results with cell and coverage of their sweep, by sweep, plan, number and place in the plan."""
-    taken_back = withdrawn(Reduction.address, Reduction.sweep, Reduction.cooldown)
+    taken_back = withdrawn_reduction()
     found = (
         select(
             Output.reduction,

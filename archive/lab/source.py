@@ -95,6 +95,7 @@ class LabSource:
         self.store = store
         self.index = index
         self._documents: dict[str, Document] = {}
+        self._records: dict[str, AnyRecord] = {}
 
     def document(self, key: str) -> Document:
         """Document of a sealed file."""
@@ -152,6 +153,8 @@ class LabSource:
 
     def find_record(self, reference: str) -> AnyRecord | None:
         """Record by address, or the newest revision of a name that is not withdrawn; None if there is none."""
+        if reference in self._records:
+            return self._records[reference]
         name, _, revision = reference.partition(".r")
         rows = self.index.records(name=name)
         if revision:
@@ -162,7 +165,9 @@ class LabSource:
         if not rows:
             return None
         newest = max(rows, key=lambda row: row.revision)
-        return _RECORD.validate_json(json.dumps(newest.content))
+        found = _RECORD.validate_json(json.dumps(newest.content))
+        self._records[found.address] = found
+        return found
 
     def revision(self, address: str) -> RevisionDocument | None:
         """Document of a revision that came in outside a cooldown; None if that is not how it came in."""
