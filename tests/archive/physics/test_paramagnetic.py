@@ -2,7 +2,7 @@
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from archive.physics.paramagnetic import curie_weiss_inductance, curie_weiss_temperature, fit_curie_weiss
@@ -15,6 +15,7 @@ def test_by_hand() -> None:
     assert curie_weiss_temperature(29.5, **LAW) == pytest.approx(0.0204)
 
 
+@settings(deadline=None)
 @given(st.floats(1e-3, 5.0), st.sampled_from([1.0, -1.0]))
 def test_round_trip(temperature: float, sign: float) -> None:
     law = {**LAW, "constant": sign * LAW["constant"]}

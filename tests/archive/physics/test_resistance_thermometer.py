@@ -6,7 +6,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 from scipy.interpolate import CubicSpline
 
@@ -127,6 +127,7 @@ def test_sensitivity_is_the_slope(curve) -> None:
 
 
 @pytest.mark.parametrize("curve", CURVES.values(), ids=CURVES.keys())
+@settings(deadline=None)
 @given(where=st.floats(0.0, 1.0))
 def test_round_trip(curve, where: float) -> None:
     low, high = np.log(curve.resistance_span)
