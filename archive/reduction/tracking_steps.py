@@ -266,10 +266,20 @@ def fraction_from_line(
         for source, part in zip(sources, parts, strict=True)
         if np.any(part > 0)
     }
-    away = np.abs(fraction - table)
+    difference = fraction - table
+    away = np.abs(difference)
+    rms = float(np.sqrt(np.nanmean(difference**2)))
+    # d(rms) is the sum of difference times its change, over n rms.
+    moved = {
+        name: float(np.nansum(difference * part)) / (int(rows.sum()) * rms) if rms > 0 else 0.0
+        for name, part in shared.items()
+    }
     return Outcome(
-        {"fraction": fraction, "tabulated": np.asarray(table, dtype=np.float64), "difference": fraction - table, "rms_difference": float(np.sqrt(np.nanmean((fraction - table) ** 2)))},
-        shared={"fraction": shared, "difference": shared},
+        {
+            "fraction": fraction, "tabulated": np.asarray(table, dtype=np.float64), "difference": difference,
+            "rms_difference": rms,
+        },
+        shared={"fraction": shared, "difference": shared, "rms_difference": moved},
         sources=tuple(source for source in sources if source.name in shared),
         findings=_scale_told(temperature_scale),
         held={"reference_row": row},

@@ -176,6 +176,14 @@ def test_the_fraction_is_told_beside_the_table() -> None:
     shared = np.asarray(outcome.shared["fraction"]["tabulated speed of first sound"])
     assert shared[:2] == pytest.approx([0.0, fraction[1] * 0.01 / math.sqrt(3)])
     assert not outcome.findings
+    difference = outcome.array("difference")[:6]
+    assert float(outcome.outputs["rms_difference"]) == pytest.approx(math.sqrt(np.mean(difference**2)))
+    # Moving the source by a small part of its size moves the rms as it says.
+    part = 1e-4 * shared[:6]
+    moved = math.sqrt(np.mean((difference + part) ** 2)) - math.sqrt(np.mean(difference**2))
+    assert moved == pytest.approx(
+        1e-4 * float(outcome.shared["rms_difference"]["tabulated speed of first sound"]), rel=0.01
+    )
     other = fraction_from_line(
         FractionParameters(reference_row=4),
         frequency=MOVING,
