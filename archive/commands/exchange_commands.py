@@ -196,6 +196,6 @@ def _say_import(outcome: ImportOutcome) -> None:
             "imported": f"Taken in: {len(outcome.taken)} sealed files{held}.",
             "would-import": f"Would be taken in: {len(outcome.taken)} sealed files{held}. Nothing was written.",
             "already": f"The archive holds all {len(outcome.held)} sealed files of this package already; nothing was done.",
-            "refused": f"Refused: {len(outcome.findings)} faults. Nothing was stored.",
+            "refused": f"Refused: {len(outcome.findings)} fault{'s' * (len(outcome.findings) != 1)}. Nothing was stored.",
         }[outcome.state]
     )

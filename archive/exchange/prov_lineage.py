@@ -69,6 +69,7 @@ class Lineage:
         self._names: dict[str, str] = {}
         self._channels: dict[tuple[str, str], str] = {}
         self._revisions: dict[str, dict[int, str]] = {}
+        self._sheets: dict[str, str] = {}
         self._ended: list[tuple[str, str, str, datetime]] = []
         for each in sealed:
             content = each.document
@@ -136,6 +137,8 @@ class Lineage:
                 relate("wasGeneratedBy", name, run)
             for role in content.sheet.operators if raw.role == "sheet" else ():
                 relate("wasAttributedTo", name, self._operator(home, role))
+            if raw.name == content.sheet_file:
+                self._sheets[content.address] = name
             use = relate("used", act, name, content.accessioned, identifier=f"{home}:use.raw.{local}")
             relate("wasDerivedFrom", accession, name, act, made, use)
             raws[raw.name] = name, use
@@ -383,6 +386,8 @@ class Lineage:
 
     def _input(self, entry: InputEntry, home: str) -> str:
         """Return the entity that a step took: in the version whose digest the step wrote down, else the newest."""
+        if entry.address in self._sheets:  # what a step takes from an accession is the sheet in it
+            return self._sheets[entry.address]
         if entry.digest is not None and (entry.address, entry.digest) in self._channels:
             return self._channels[entry.address, entry.digest]
         if entry.address in self._names:

@@ -90,7 +90,7 @@ def test_a_damaged_archive_does_not_export(fake: Fake, run: Run) -> None:
         (ImportOutcome("already", held=("2026-04.a1",)), "holds all 1 sealed files", 0),
         (
             ImportOutcome("refused", findings=(FAULT,), damaged=True),
-            "Refused: 1 faults. Nothing was stored.",
+            "Refused: 1 fault. Nothing was stored.",
             3,
         ),
         (ImportOutcome("refused", findings=(FAULT,)), "the bytes are others", 2),

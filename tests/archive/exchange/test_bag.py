@@ -245,6 +245,23 @@ def test_a_spoiled_bag_is_refused_for_what_is_wrong(
     assert all(finding.severity == "error" for finding in found)
 
 
+def test_a_file_that_grew_is_named_beside_the_size(bag: Path) -> None:
+    with (bag / "data" / "a.txt").open("ab") as stream:
+        stream.write(b"!")
+    assert [(finding.code, finding.file) for finding in read_bag(bag).findings] == [
+        ("bag-size", "bag-info.txt"),
+        ("bag-file-damaged", "data/a.txt"),
+        ("bag-file-damaged", "data/a.txt"),
+    ]
+
+
+def test_a_bag_far_larger_than_it_says_is_not_read(bag: Path) -> None:
+    with (bag / "data" / "a.txt").open("r+b") as stream:
+        stream.truncate(1 << 40)  # a hole that takes no room, and a day to read
+    (finding,) = read_bag(bag).findings
+    assert finding.code == "bag-size"
+
+
 def test_all_faults_are_told_at_once(bag: Path) -> None:
     _append("manifest-sha256.txt", f"{ZERO}  data/../x\n{ZERO}  /y\n")(bag)
     _put("fetch.txt", b"x")(bag)
