@@ -24,7 +24,14 @@ from archive.reports.figure_values import (
 from archive.reports.scope import Scope
 from schemas.lineage import ReductionDocument
 
-__all__ = ["addenda_figure", "fraction_figure", "heat_capacity_figure", "superfluid_law_figure"]
+__all__ = [
+    "addenda_figure",
+    "fitted_law",
+    "fraction_figure",
+    "heat_capacity_figure",
+    "mean_law",
+    "superfluid_law_figure",
+]
 
 
 def fraction_figure(scope: Scope, reduction: ReductionDocument) -> Drawn:
@@ -111,11 +118,11 @@ def heat_capacity_figure(scope: Scope, reduction: ReductionDocument) -> Drawn:
     rise = taken(scope, reduction, step, "rise") if "rise" in step.inputs else np.zeros(T.shape)
     u = spread_of(scope, reduction, "molar_heat_capacity")[0]
     T_lambda = scalar(reduction, "T_lambda")
-    law = _law(reduction, fact(step, "delta"))
+    law = fitted_law(reduction, fact(step, "delta"))
     t = np.abs(1 - T / T_lambda)
     inside = (t > fact(step, "low")) & (t < fact(step, "high"))
     u = u if u is not None and u.shape == C.shape else None
-    expected = _mean(law, T, rise, T_lambda)
+    expected = mean_law(law, T, rise, T_lambda)
     figure, panels = stacked([2.5, 1, 1.2], height=4.8, shared=False)
     grid = np.geomspace(np.nanmin(t[inside]), np.nanmax(t[inside]), 300)
     for k, (side, name) in enumerate(((T_lambda > T, "below"), (T_lambda < T, "above"))):
@@ -142,7 +149,8 @@ def heat_capacity_figure(scope: Scope, reduction: ReductionDocument) -> Drawn:
     return Drawn(name_of("heat-capacity", reduction), saved(figure), caption, (reduction.address,))
 
 
-def _law(reduction: ReductionDocument, delta: float) -> LambdaLaw:
+def fitted_law(reduction: ReductionDocument, delta: float) -> LambdaLaw:
+    """Return the law of a reduction's results; `delta` is the confluent exponent that was held."""
     A, alpha = scalar(reduction, "amplitude_below"), scalar(reduction, "exponent")
     a, b = (_or_zero(reduction, name) for name in ("first_correction", "second_correction"))
     return LambdaLaw(
@@ -150,7 +158,7 @@ def _law(reduction: ReductionDocument, delta: float) -> LambdaLaw:
     )  # fmt: skip
 
 
-def _mean(law: LambdaLaw, T: Column, rise: Column, T_lambda: float) -> Column:
+def mean_law(law: LambdaLaw, T: Column, rise: Column, T_lambda: float) -> Column:
     """Return the law averaged over each step, as it was fitted."""
     nodes, weights = np.polynomial.legendre.leggauss(6)
     each = T[:, np.newaxis] + rise[:, np.newaxis] / 2 * nodes

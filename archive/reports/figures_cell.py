@@ -21,10 +21,15 @@ def cell_figures(scope: Scope) -> Iterator[Drawn]:
     """Yield, for each cell with films, their areal densities in one plane."""
     groups: dict[str, dict[str, list[ReductionDocument]]] = {}
     for reduction in scope.reductions:
-        if any(
-            each.name == "superfluid_density" and each.rows and each.quantity == "areal_mass_density"
+        # Third sound gives a density too, at one temperature.
+        if scope.taken_of(reduction).sheet.kind == "temperature-sweep" and {
+            "temperature",
+            "superfluid_density",
+        } <= {
+            each.name
             for each in reduction.outputs
-        ) and any(each.name == "temperature" and each.rows for each in reduction.outputs):
+            if each.rows and each.quantity in ("temperature", "areal_mass_density")
+        }:
             films = groups.setdefault(scope.cell_of(reduction), {})
             films.setdefault(reduction.sweep, []).append(reduction)
     for cell, films in sorted(groups.items()):
