@@ -6,11 +6,11 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import click
-from click.core import ParameterSource
 
 from archive.commands import opening
 from archive.commands.failures import EXIT_WARNINGS
 from archive.commands.machine import quantity, write_json
+from archive.commands.monte_carlo_options import monte_carlo_options, requested
 from archive.commands.numbers import readable
 from archive.commands.opening import archive_option, json_option, strict_option
 from archive.commands.terminal import Progress, note, say, table
@@ -19,7 +19,6 @@ from archive.errors import BadRequest, UnknownAddress
 
 if TYPE_CHECKING:
     from archive.lab import ReduceOutcome
-    from archive.reduction.monte_carlo import Request
     from schemas.lineage import OutputEntry
     from schemas.plan import Plan
 
@@ -126,27 +125,7 @@ def _show_plan(plan: Plan) -> None:
     "--plan", metavar="PLAN", help="Name of a plan, or a plan file (.toml); else every plan that applies."
 )
 @click.option("--sweep", metavar="SWEEP", help="Name of one sweep; else all.")
-@click.option(
-    "--monte-carlo",
-    "trials",
-    metavar="N|adaptive",
-    help="Repeat each plan N times with drawn inputs (JCGM 101), or as often as it needs; sealed with the reduction.",
-)
-@click.option("--seed", type=int, default=1, show_default=True, help="Of the drawn numbers.")
-@click.option(
-    "--digits",
-    type=click.IntRange(1, 2),
-    default=1,
-    show_default=True,
-    help="Digits of the uncertainty that first order is held to.",
-)
-@click.option(
-    "--workers",
-    type=click.IntRange(1, 1024),
-    default=1,
-    show_default=True,
-    help="Processes for the trials; the numbers do not depend on it.",
-)
+@monte_carlo_options
 @archive_option
 @json_option
 @strict_option
@@ -185,7 +164,7 @@ def reduce(
     _require_target(cooldown, stale_only=stale_only, plan=plan)
     name, _, part = (cooldown or "").partition("/")
     chosen: str | Path | None = Path(plan) if plan is not None and plan.endswith(".toml") else plan
-    request = _request(trials, seed=seed, digits=digits, workers=workers)
+    request = requested(trials, seed=seed, digits=digits, workers=workers)
     with opening.open_archive(archive_dir) as lab, Progress("reducing") as progress:
         if stale_only:
             whose = "/".join(each for each in (name, sweep or part) if each) or None
@@ -228,29 +207,6 @@ def _require_target(cooldown: str | None, *, stale_only: bool, plan: str | None)
             "--plan means nothing with --stale",
             remedy="what is stale is made anew by its own plan; leave --plan out",
         )
-
-
-def _request(trials: str | None, *, seed: int, digits: int, workers: int) -> Request | None:
-    """Return what is asked for with --monte-carlo; nothing if it is not."""
-    from archive.reduction.monte_carlo import Request
-
-    if trials is None:
-        given = [
-            f"--{name}"
-            for name in ("seed", "digits", "workers")
-            if click.get_current_context().get_parameter_source(name) is ParameterSource.COMMANDLINE
-        ]
-        if given:
-            raise BadRequest(
-                f"without --monte-carlo these mean nothing: {', '.join(given)}",
-                remedy="add --monte-carlo with a number of trials, or adaptive",
-            )
-        return None
-    if trials != "adaptive" and not (trials.isascii() and trials.isdigit()):
-        raise BadRequest(
-            "--monte-carlo takes a number of trials, or adaptive", found=trials, expected="such as 20000"
-        )
-    return Request(None if trials == "adaptive" else int(trials), seed=seed, digits=digits, workers=workers)
 
 
 def say_outcomes(outcomes: list[ReduceOutcome]) -> None:

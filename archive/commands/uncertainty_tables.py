@@ -151,5 +151,5 @@ def _say_remarks(run: Mapping[str, Any]) -> None:
         )
     if any(each.get("agreement") == "differs" for each in run["results"]):
         say(
-            "differs: quote the drawn interval for these results, not value and uncertainty (JCGM 101:2008, 8)"
+            "differs: quote the drawn interval for these results, not value and uncertainty (JCGM 101:2008, 8); but a result that measures scatter itself, such as chi-squared or an Allan deviation, only grows with noise drawn on top of that of the data"
         )

@@ -15,8 +15,8 @@ import numpy as np
 
 from archive.reduction.estimate import FloatArray
 from archive.reduction.own_scatter import OwnParts
-from archive.reduction.performing import StepCall
 from archive.reduction.step import Outcome
+from archive.reduction.step_call import StepCall
 
 __all__ = ["Drawing", "DrawnInput", "DrawnStep", "Trial", "trial"]
 

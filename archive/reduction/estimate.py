@@ -21,6 +21,7 @@ from types import MappingProxyType
 
 import numpy as np
 import numpy.typing as npt
+from typing_extensions import override
 
 __all__ = ["Estimate", "covariance_between"]
 
@@ -72,6 +73,7 @@ class Estimate:
             self, "shared", MappingProxyType({n: p for n, p in shared.items() if np.any(p != 0)})
         )
 
+    @override
     def __reduce__(self) -> tuple[type[Estimate], tuple[object, ...]]:
         """Return what makes it again in another process, which cannot be sent a read-only mapping."""
         return Estimate, (self.value, self.quantity, self.point, dict(self.shared), self.scale)

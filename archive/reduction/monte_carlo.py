@@ -8,14 +8,8 @@ using a Monte Carlo method; 7 (the method, 7.9 the adaptive one), 8 (comparison 
 
 from __future__ import annotations
 
-import multiprocessing
-import pickle
 from collections import Counter
-from collections.abc import Callable, Iterator
-from concurrent.futures import ProcessPoolExecutor
-from contextlib import contextmanager
 from dataclasses import dataclass
-from functools import partial
 
 import numpy as np
 
@@ -26,11 +20,12 @@ from archive.physics.coverage_interval import (
     shortest_interval,
     symmetric_interval,
 )
-from archive.reduction.drawing import Drawing, DrawnInput, DrawnStep, Trial, trial
+from archive.reduction.drawing import Drawing, DrawnInput, DrawnStep
 from archive.reduction.estimate import FloatArray
 from archive.reduction.own_scatter import own_parts
 from archive.reduction.repeatable import Repeated
 from archive.reduction.runner import ReductionOutcome
+from archive.reduction.trials import Failed, Progress, Run, carried_out, running
 from schemas.lineage import OutputEntry
 from schemas.monte_carlo import MonteCarlo, MonteCarloResult
 
@@ -45,9 +40,6 @@ MOST = 1_000_000
 """Trials after which the adaptive procedure gives up, and that may be asked for: their results fit in memory (common practice, no
 source)."""
 GENERATOR = "numpy PCG64, trial k from SeedSequence(seed, spawn_key=(k,))"
-
-Progress = Callable[[int, int], None]
-"""Called with trials done and trials in all."""
 
 
 @dataclass(frozen=True)
@@ -129,9 +121,9 @@ def monte_carlo(outcome: ReductionOutcome, request: Request, *, progress: Progre
     drawing, beyond = _drawing(
         outcome.repeated, outcome.document.address, entries, seed=request.seed, repetitions=min(max(first // 10, REPETITIONS[0]), REPETITIONS[1])
     )  # fmt: skip
-    with _mapping(drawing, request.workers) as run:
+    with running(drawing, request.workers) as run:
         values, failed = (
-            _all(run, first, progress)
+            carried_out(run, first, progress)
             if request.trials
             else _adaptive(run, entries, request.digits, progress)
         )
@@ -187,55 +179,6 @@ def _drawing(
     ), beyond
 
 
-Run = Callable[[range], Iterator[Trial]]
-_drawing_here: list[Drawing] = []
-
-
-def _receive(packed: bytes) -> None:
-    """Take the drawing once in each worker."""
-    _drawing_here[:] = [pickle.loads(packed)]  # noqa: S301 - from the parent process
-
-
-def _there(index: int) -> Trial:
-    return trial(_drawing_here[0], index)
-
-
-@contextmanager
-def _mapping(drawing: Drawing, workers: int) -> Iterator[Run]:
-    """Give what carries out trials, in order, here or in several processes."""
-    if workers == 1:
-        yield lambda indices: map(partial(trial, drawing), indices)
-        return
-    try:
-        packed = pickle.dumps(drawing)
-    except (pickle.PicklingError, AttributeError, TypeError) as error:
-        raise BadRequest(
-            f"a step of this plan cannot be sent to another process: {error}", remedy="use one process"
-        ) from None
-    # A fresh process each: a copy of one that already has threads may hang.
-    context = multiprocessing.get_context("spawn")
-    with ProcessPoolExecutor(workers, mp_context=context, initializer=_receive, initargs=(packed,)) as pool:
-        yield lambda indices: pool.map(
-            _there, indices, chunksize=max(1, min(100, len(indices) // (4 * workers)))
-        )
-
-
-Failed = list[tuple[str, str]]
-
-
-def _all(run: Run, count: int, progress: Progress, *, begin: int = 0) -> tuple[FloatArray, Failed]:
-    """Return the results of some trials, one row each, and the failures."""
-    rows, failed = [], []
-    often = max(1, count // 200)
-    for k, each in enumerate(run(range(begin, begin + count)), 1):
-        rows.append(each.values)
-        if each.failed is not None:
-            failed.append((each.failed, each.reason))
-        if k % often == 0 or k == count:
-            progress(begin + k, begin + count)
-    return np.array(rows), failed
-
-
 def _adaptive(
     run: Run, entries: list[OutputEntry], digits: int, progress: Progress
 ) -> tuple[FloatArray, Failed]:
@@ -250,7 +193,7 @@ def _adaptive(
     failed: Failed = []
     told: list[list[tuple[float, ...]]] = []
     while len(rows) * BLOCK < MOST:
-        values, more = _all(run, BLOCK, progress, begin=len(rows) * BLOCK)
+        values, more = carried_out(run, BLOCK, progress, begin=len(rows) * BLOCK)
         rows.append(values)
         failed += more
         told.append([_sequence(values[:, k]) for k in range(len(entries))])

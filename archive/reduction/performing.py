@@ -12,16 +12,17 @@ import numpy as np
 from pydantic import ValidationError
 
 from archive.errors import BadRequest, StepFailed
-from archive.reduction.estimate import Estimate, FloatArray
+from archive.reduction.estimate import Estimate
 from archive.reduction.outputs import Found, value_of
 from archive.reduction.propagation import Propagated, fit_contributions, propagate
 from archive.reduction.step import Covariance, Given, Outcome, Step
+from archive.reduction.step_call import StepCall, step_call
 from archive.reduction.step_record import step_record
 from schemas.base import Record
 from schemas.kinds import kind_of
 from schemas.lineage import SourceEntry, StepRecord
 
-__all__ = ["Performed", "StepCall", "perform", "step_parameters"]
+__all__ = ["Performed", "perform", "step_parameters"]
 
 
 @dataclass(frozen=True)
@@ -49,31 +50,6 @@ class Performed:
     outcome: Outcome
     call: StepCall
     covariance: dict[str, Any] = field(default_factory=dict)
-
-
-@dataclass(frozen=True)
-class StepCall:
-    """A step's function with its parameters, records and weights fixed, so that only numbers are left to be given.
-
-    Attributes
-    ----------
-    step : Step
-    parameters : Record
-    fixed : dict
-        Records, weights, kinds and scales, by argument.
-    """
-
-    step: Step
-    parameters: Record
-    fixed: dict[str, object]
-
-    def __call__(self, values: Mapping[str, FloatArray], held: Mapping[str, Any]) -> Outcome:
-        """Return the outcome for input values and held choices."""
-        chosen = self.parameters.model_copy(update=dict(held)) if held else self.parameters
-        numbers = {
-            port: _number(value) for port, value in values.items() if self.step.takes[port].form != "record"
-        }
-        return self.step.function(chosen, **numbers, **self.fixed)
 
 
 def step_parameters(step: Step, chosen: Mapping[str, Any], *, place: str) -> Record:
@@ -141,7 +117,7 @@ def perform(
         if output not in step.yields:
             raise BadRequest(f"{place} has no output {output!r}", expected=f"one of {', '.join(step.yields)}")
     estimates = {port: each.estimate for port, each in given.items() if each.estimate is not None}
-    call = _call(step, parameters, given, estimates)
+    call = step_call(step, parameters, given, estimates)
     try:
         spread = propagate(call, estimates, elementwise=step.spread == "elementwise")
         joint = _joint_covariance(spread)
@@ -259,32 +235,6 @@ def _check_inputs(step: Step, given: Mapping[str, Given], place: str) -> None:
                 f"{place}: input {name} ({each.address}) is {'one number' if estimate.scalar else 'a column'}",
                 expected=port.form,
             )
-
-
-def _call(
-    step: Step, parameters: Record, given: Mapping[str, Given], estimates: Mapping[str, Estimate]
-) -> StepCall:
-    fixed: dict[str, object] = {}
-    for port, declared in step.takes.items():
-        each = given.get(port)
-        if declared.form == "record" or each is None:
-            fixed[port] = (
-                None if each is None else (each.record if each.record is not None else each.estimate)
-            )
-    for port in step.weights:
-        fixed[f"u_{port}"] = estimates[port].points if port in estimates else None
-    for port in step.kinds:
-        fixed[f"{port}_kind"] = estimates[port].quantity if port in estimates else None
-
-    for port in step.scales:
-        fixed[f"{port}_scale"] = estimates[port].scale if port in estimates else None
-    for port in step.estimates:
-        fixed[f"{port}_estimate"] = estimates.get(port)
-    return StepCall(step, parameters, fixed)
-
-
-def _number(value: FloatArray) -> float | FloatArray:
-    return float(value) if value.ndim == 0 else value
 
 
 def _add_axes(spread: Propagated, axes: list[dict[str, float]], names: list[str]) -> None:

@@ -14,8 +14,9 @@ from itertools import count
 import numpy as np
 
 from archive.reduction.estimate import Estimate
-from archive.reduction.performing import Performed, StepCall
+from archive.reduction.performing import Performed
 from archive.reduction.step import Given, Outcome
+from archive.reduction.step_call import StepCall
 from schemas.lineage import SourceEntry
 
 __all__ = ["Evaluation", "Repeatable", "Repeated"]

@@ -140,7 +140,7 @@ class OneByOne:
 def test_numbers_do_not_depend_on_the_number_of_processes(
     drawn: Archive, monkeypatch: pytest.MonkeyPatch
 ) -> None:
-    monkeypatch.setattr("archive.reduction.monte_carlo.ProcessPoolExecutor", OneByOne)
+    monkeypatch.setattr("archive.reduction.trials.ProcessPoolExecutor", OneByOne)
     (again,) = drawn.reduce(SWEEP, plan=PLAN, monte_carlo=Request(60, digits=2, workers=2))
     found = again.document.monte_carlo
     alone = drawn._source.reduction(f"{SWEEP}@{PLAN}.1").monte_carlo
