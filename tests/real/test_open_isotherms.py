@@ -18,7 +18,7 @@ REAL = Path(__file__).parent
 def outcomes(tmp_path_factory: pytest.TempPathFactory) -> Iterator[dict[str, ReduceOutcome]]:
     """Give the reductions of both sets by sweep."""
     with Archive.create(tmp_path_factory.mktemp("open") / "lab", name="Open isotherms") as lab:
-        found = {}
+        found: dict[str, ReduceOutcome] = {}
         for folder, name in (
             ("n2-bet-isotherms-betsi", "open-bet-windows"),
             ("n2-bet-isotherms-pygaps", "open-bet-stated"),

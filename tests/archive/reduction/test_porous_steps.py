@@ -199,7 +199,9 @@ def test_the_expected_amplitude_carries_that_of_the_combination() -> None:
     assert float(found.outputs["amplitude"]) == pytest.approx(7.474e-6, rel=1e-3)
     assert float(found.outputs["ratio"]) == pytest.approx(7.474 / 2.0649e5, rel=2e-3)
     (part,) = found.shared["amplitude"].values()
-    assert float(part) / float(found.outputs["amplitude"]) == pytest.approx(3 * 0.010 / 0.815, rel=1e-12)
+    assert float(np.asarray(part)) / float(found.outputs["amplitude"]) == pytest.approx(
+        3 * 0.010 / 0.815, rel=1e-12
+    )
 
 
 def test_a_transition_of_ones_own_or_none() -> None:
