@@ -41,7 +41,11 @@ def _told(source: LabSource, sealed: AccessionDocument, read: AccessionDocument)
             "sample": _holding(read, "sample", read.sheet.sample),
         }
     )
-    found = read.model_copy(update={"sheet": sheet})
+    sweeps = tuple(
+        each if each.cell is None else each.model_copy(update={"cell": _holding(read, "cell", each.cell)})
+        for each in sheet.sweep
+    )
+    found = read.model_copy(update={"sheet": sheet.model_copy(update={"sweep": sweeps})})
     return found.model_copy(update={"cautions": _cautions(source, found)})
 
 

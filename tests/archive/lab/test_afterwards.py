@@ -11,7 +11,11 @@ import pytest
 from archive import Archive
 from archive.errors import BadRequest, UnknownAddress
 from archive.index import Index, SearchQuery
+from archive.lab import reporting
 from archive.lab.source import document_of
+from archive.reports import run_sheet_html
+from archive.reports.after_the_fact import act_sentences
+from archive.reports.scope import Scope
 from tests.revisable_cooldown import PLAN, amendment, calibration, substrate, write_calibrated
 
 EMPTY, FILLING = "2026-03/s001@empty-cell", "2026-03/s002@filling"
@@ -466,7 +470,8 @@ def test_reports_tell_what_was_said_afterwards(lab: Archive, sheet) -> None:
     lab.amend(sheet(amendment(DOSE)))
     lab.reduce_stale()
     lab.withdraw(f"{EMPTY}.1", why="fitted over a crossing mode", by="data steward")
-    page = lab.run_sheet("2026-03")["run-sheet-2026-03.html"].decode()
+    view = reporting.view(lab._source, lab.name, "2026-03")
+    page = run_sheet_html(view)
     for said in (
         "Said after it was sealed",
         "Amendment 2026-03.m1",
@@ -475,6 +480,55 @@ def test_reports_tell_what_was_said_afterwards(lab: Archive, sheet) -> None:
         "fitted over a crossing mode",
     ):
         assert said in page, said
-    text = lab.appendix([f"{FILLING}.2"])["appendix.json"].decode()
-    assert "dose.d02.amount was 8.0(1) umol and is 16.0(1) umol" in text
-    assert f"Reduction {FILLING}.2 rests on {EMPTY}.1, withdrawn." in text
+    told = [each.text for each in act_sentences(Scope([view], [f"{FILLING}.2"]))]
+    assert any("dose.d02.amount was 8.0(1) umol and is 16.0(1) umol" in each for each in told)
+    assert f"Reduction {FILLING}.2 rests on {EMPTY}.1, withdrawn." in told
+
+
+CELL = """
+[[record.cell]]
+name = "bob"
+revision = 2
+kind = "torsional-oscillator"
+rod_material = "Al5056"
+rim_radius = "7.5(1) mm"
+empty_period = "1.000000(1) ms"
+mass_sensitivity = "168(3) ns/mmol"
+substrate = "plastic.r1"
+free_volume = "2.1(1) cm^3"
+closable_volume = "3.0(1) cm^3"
+"""
+
+
+GAS_END = """
+[[change]]
+address = "2026-03"
+field = "gas_end.state"
+value = "left-in-cell"
+[[change]]
+address = "2026-03"
+field = "gas_end.valve_open"
+value = false
+"""
+
+
+def test_a_caution_is_worked_out_from_what_was_said_afterwards(lab: Archive, sheet) -> None:
+    def caution() -> dict:
+        (found,) = [
+            each
+            for each in reporting.view(lab._source, "", "2026-03").newest.cautions
+            if each["subject"].startswith("trapped gas")
+        ]
+        return found
+
+    assert caution()["state"] == "not assessed"
+    head = 'by = "data steward"\nbecause = "the valve volume was measured"\nsupersedes = "bob.r1"'
+    lab.revise(sheet(revision(CELL, head=head)))
+    lab.amend(sheet(amendment(GAS_END)))
+    first = caution()
+    assert (first["state"], first["subject"]) == ("caution", "trapped gas in bob.r2")
+    lab.amend(sheet(amendment(DOSE)))
+    second = caution()
+    # 48 umol became 56 umol; each caution takes the unfavourable end of its own amount.
+    ratio = second["numbers"]["amount"]["value"] / first["numbers"]["amount"]["value"]
+    assert ratio == pytest.approx(56 / 48, rel=0.01)
