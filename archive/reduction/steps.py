@@ -20,6 +20,7 @@ from archive.reduction import (
     dead_volume_steps,
     dynamic_steps,
     film_steps,
+    fourth_sound_steps,
     gas_steps,
     gathering,
     heat_capacity_steps,
@@ -338,6 +339,7 @@ STEPS: tuple[Step, ...] = (
     *ringdown_steps.RINGDOWN_STEPS,
     *linear_regime_steps.LINEAR_REGIME_STEPS,
     *tracking_steps.TRACKING_STEPS,
+    *fourth_sound_steps.FOURTH_SOUND_STEPS,
 )  # fmt: skip
 
 

@@ -9,6 +9,7 @@ import numpy as np
 import pytest
 
 from archive.reduction.estimate import Estimate
+from archive.reduction.fourth_sound_steps import FractionParameters, fraction_from_line
 from archive.reduction.linear_regime_steps import RegimeParameters, drive_within_regime, linear_regime
 from archive.reduction.planning import shipped_plans
 from archive.reduction.pulse_steps import PulseLineParameters, mean_temperature, pulse_as_sent, pulse_lines
@@ -21,12 +22,7 @@ from archive.reduction.ringdown_steps import (
 )
 from archive.reduction.step import NoParameters
 from archive.reduction.steps import all_steps
-from archive.reduction.tracking_steps import (
-    FractionParameters,
-    TrackParameters,
-    followed_line,
-    fraction_from_line,
-)
+from archive.reduction.tracking_steps import TrackParameters, followed_line
 from schemas.sweep import Detection
 
 T = np.arange(4096) / 2048.0
