@@ -83,7 +83,9 @@ def isotherm_figure(scope: Scope, reduction: ReductionDocument) -> Drawn:
     line(plot, ends, (1 / C + (C - 1) / C * ends) / (monolayer / factor))
     plot.set(xlabel="$p/p_0$", ylabel=f"$x/[n(1-x)]$ / ({label})$^{{-1}}$", ylim=(0, None), xlim=(0, 1.3 * high))  # fmt: skip
     _rouquerol(transform, x, n / factor, inside, label)
-    percent = 100 * (n / law(x) - 1)
+    with np.errstate(invalid="ignore", divide="ignore"):
+        # A first row in vacuum has neither an amount nor a law.
+        percent = 100 * (n / law(x) - 1)
     residuals(below, used, percent, name="$r$ / %")
     below.set(xlabel="$p/p_0$", xlim=(0, 1.05 * high))
     letters([whole, plot, transform, below])
