@@ -160,7 +160,7 @@ def complex_stiffness(start: FilmStart, *, L: npt.ArrayLike, F: float = 1.0) -> 
     Notes
     -----
     2/(pi K) = 1 + x_0 + integral of 2 Y^2/(1 - i exp(2(l - l_D))) dl + i (4 pi F/7) exp(2(l_D - l_+)), with
-    l_D = (L + ln 14)/2. Good for any temperature, to some parts in 10^12; the shape far from the peak is only fairly that of
+    l_D = (L + ln 14)/2. Good for any temperature, to some parts in 10^12 of either part; the shape far from the peak is only fairly that of
     measured films.
 
     References

@@ -24,17 +24,20 @@ X_END = 1.0
 
 EDGE = math.sqrt(2 * (X_END - math.log1p(X_END)))
 
-ORDER = 22
-"""Nodes of a panel. With the two rules below, two nodes more bring a digit, and these reach 4e-12 of either part of the
-stiffness by itself."""
+ORDER = 20
+"""Nodes of a panel. With the rules below, two nodes more bring a digit, and these reach 4e-12 of either part of the stiffness
+by itself."""
 
-GROWTH = 4.0
-"""Distances of a panel's ends from a pole on the axis have this ratio at most: the ellipse through the pole then has the
-half axes' sum (sqrt(4) + 1)/(sqrt(4) - 1) = 3."""
+GROWTH = 4.5
+"""Distances of a panel's ends from the flow's own poles, before its start and past its end, have this ratio at most: the
+ellipse through such a pole has the half axes' sum (sqrt(4.5) + 1)/(sqrt(4.5) - 1) = 2.8."""
 
-CORE = 0.9
-"""Half width of the panel across l_D. The kernel's pole is pi/4 off the axis, for a half axes' sum of 2.2; and 2.2 to the
-power -2 `ORDER` is below double precision."""
+CORE = 0.85
+"""Half width of the panel across l_D. The kernel's pole is pi/4 off the axis, for a half axes' sum of 2.3."""
+
+APPROACH, RETREAT = 6.0, 11.0
+"""Ratio of the distances from l_D of a panel's ends, before and past it; the pole is off the axis, so they may be larger. Past
+l_D the kernel falls as exp(-2 l), and one panel reaches beyond `TAIL`."""
 
 TAIL = 8.5
 """Length beyond l_D up to which the flow is followed below the transition; the rest is a series."""
@@ -260,8 +263,8 @@ class _March:
         before = self.l_D[rows] - length
         width = np.where(
             before > CORE * 1.3,
-            before - np.maximum(before / GROWTH, CORE),
-            np.maximum(before + CORE, -(GROWTH - 1) * before),
+            before - np.maximum(before / APPROACH, CORE),
+            np.maximum(before + CORE, -(RETREAT - 1) * before),
         )
         # g runs towards one on the way to s = 0.
         width *= 2 / (1 + rate)
