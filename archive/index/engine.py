@@ -212,6 +212,11 @@ def translated(url: URL) -> Iterator[None]:
         yield
     except UnreadableError as fault:
         raise DamagedFile(f"the index is damaged: {fault}", file=index_name(url), remedy=REBUILD) from fault
+    except UnicodeDecodeError as fault:
+        # SQLite's own words for a damaged schema quote it, and what it quotes is no text any more.
+        raise DamagedFile(
+            "the index is damaged: it holds text that is none", file=index_name(url), remedy=REBUILD
+        ) from fault
     except UnicodeEncodeError as fault:
         # Bytes of the command line that were no text in its code page come as lone surrogates.
         raise BadRequest(

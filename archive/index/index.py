@@ -254,6 +254,14 @@ class Index:
                 for name, table in sorted(Base.metadata.tables.items())
             }
 
+    def faults(self) -> list[str]:
+        """What the database itself finds wrong with its pages and its search trees; PostgreSQL has no such check."""
+        if self._url.get_backend_name() != "sqlite":
+            return []
+        with reading(self._engine, self._url) as connection:
+            said = [str(row[0]) for row in connection.exec_driver_sql("PRAGMA integrity_check(20)")]
+        return [] if said == ["ok"] else said
+
     def disagreements(self, other: Index) -> list[str]:
         """What another index has otherwise, one sentence for each table that differs; rows are read one by one.
 

@@ -50,7 +50,7 @@ def index_damage(
             Index.create(f"sqlite:///{Path(folder) / 'index.sqlite3'}") as fresh,
         ):
             fresh.rebuild(entries())
-            unequal = index.disagreements(fresh)
+            unequal = [*index.faults(), *index.disagreements(fresh)]
     except ArchiveError as problem:
         return [Damage(INDEX, "damaged", f"the index cannot be held against the sealed files: {problem}")]
     return [
