@@ -73,7 +73,10 @@ def contribution_text(contribution: float, *, unit: str, factor: float = 1.0) ->
 
     Examples
     --------
-    >>> contribution_text(-0.00012345, unit="mK", factor=1000.0)
-    '-0.123 mK'
+    >>> contribution_text(-0.00012345, unit="mK", factor=1000.0), contribution_text(999.7, unit="uK")
+    ('-0.123 mK', '1000 uK')
     """
-    return f"{contribution * factor:.3g}" + ("" if unit == "1" else f" {unit}")
+    number = contribution * factor
+    # What rounds up to a thousand, or stands beside what does, needs no power of ten.
+    text = f"{number:.0f}" if 999.5 <= abs(number) < 1e6 else f"{number:.3g}"
+    return text + ("" if unit == "1" else f" {unit}")
