@@ -23,6 +23,7 @@ __all__ = ["calibration", "drift"]
 @click.option("-o", "--output", "target", metavar="FILE", type=click.Path(path_type=Path), help="New file; else stdout.")  # fmt: skip
 @click.option("--name", help="Name of the record; the thermometer's with -cal behind it if left out.")
 @click.option("--revision", type=click.IntRange(min=1), help="One more than the newest in the archive if left out.")  # fmt: skip
+@click.option("--alone", is_flag=True, help="As a sheet of its own, which stillroom revise takes in at once.")
 @archive_option
 @json_option
 def calibration(
@@ -31,6 +32,7 @@ def calibration(
     target: Path | None,
     name: str | None,
     revision: int | None,
+    alone: bool,
     archive_dir: Path | None,
     as_json: bool,
 ) -> None:
@@ -42,7 +44,7 @@ def calibration(
     \b
     Examples:
       stillroom calibration 2024-11/c01@thermometer-calibration.1
-      stillroom calibration 2024-11/c01@thermometer-calibration.1 -o GE-7-cal.toml
+      stillroom calibration 2024-11/c01@thermometer-calibration.1 -o GE-7-cal.toml --alone
     """
     require_address(address)
     with opening.open_archive(archive_dir) as lab:
@@ -52,7 +54,9 @@ def calibration(
     if as_json and target is None:
         write_json(record.model_dump(mode="json", exclude_none=True))
         return
-    text = f"# {record.address}: made from {address} by Stillroom; put it into cooldown.toml as it is.\n{calibration_text(record)}"
+    use = "take it in with `stillroom revise`" if alone else "put it into cooldown.toml as it is"
+    head = 'format = "stillroom-revision/1"\n\n' if alone else ""
+    text = f"# {record.address}: made from {address} by Stillroom; {use}.\n{head}{calibration_text(record)}"
     if target is None:
         click.echo(text, nl=False)
         return
@@ -60,7 +64,7 @@ def calibration(
     if as_json:
         write_json({"written": [str(target)]})
     else:
-        say(f"{record.address} stands in {target}; put it into the sheet of a cooldown that uses {record.thermometer}.")  # fmt: skip
+        say(f"{record.address} stands in {target}; {use}.")
 
 
 def _write_new(target: Path, text: str) -> None:

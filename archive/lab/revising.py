@@ -9,7 +9,9 @@ from typing import Literal
 
 from archive.errors import ArchiveError
 from archive.intake.act_sheets import ActReading, read_revision
+from archive.intake.checks.calibrations import differing_fields
 from archive.lab.act_outcomes import ActOutcome
+from archive.lab.calibrating import record_as_made
 from archive.lab.journaling import acting_role
 from archive.lab.reducing import plans
 from archive.lab.source import LabSource
@@ -25,6 +27,7 @@ from schemas.differences import differences
 from schemas.finding import Finding
 from schemas.lineage import AnyRecord, RecordKind
 from schemas.plan import Plan
+from schemas.thermometer import Calibration
 
 __all__ = ["revise"]
 
@@ -127,6 +130,8 @@ class _Check:
         yield from self._references()
         if isinstance(self.thing, Plan):
             yield from self._steps(self.thing)
+        if isinstance(self.thing, Calibration) and self.thing.made_from is not None:
+            yield from self._origin(self.thing)
 
     def _number(self) -> Iterator[Finding]:
         newest = self.newest
@@ -174,6 +179,19 @@ class _Check:
                     f"there is no {name} {stated} in this archive", *self.path, name, found=stated,
                     remedy=f"revise or ingest the {name} first",
                 )  # fmt: skip
+
+    def _origin(self, written: Calibration) -> Iterator[Finding]:
+        made = record_as_made(self.source, written)
+        if not isinstance(made, Calibration):
+            yield self.reading.fault(
+                f"this archive cannot say that {written.made_from} found it: {made}", *self.path, "made_from",
+                found=written.made_from, remedy="reduce the calibration sweep first, or leave made_from out",
+            )  # fmt: skip
+        elif differing := differing_fields(written, made):
+            yield self.reading.fault(
+                f"it is not what {written.made_from} found: {', '.join(differing)}", *self.path, "made_from",
+                remedy=f"take the output of `stillroom calibration {written.made_from}` as it is, or leave made_from out",
+            )  # fmt: skip
 
     def _steps(self, plan: Plan) -> Iterator[Finding]:
         for number, planned in enumerate(plan.step):

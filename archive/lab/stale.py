@@ -101,6 +101,11 @@ class _Known:
         self.inputs: dict[str, list[InputRow]] = defaultdict(list)
         for each in index.current_inputs():
             self.inputs[each.reduction].append(each)
+        self.made_from = {
+            each.address: str(each.content["made_from"])
+            for each in index.records(kind="calibration")
+            if each.content.get("made_from")
+        }
         self.holders = index.sweep_holders()
         self.borne = dict(index.amended_sweeps())
         self.plans = {plan.name: plan for plan in current_plans(source)}
@@ -122,7 +127,10 @@ class _Known:
         for each in self.inputs[row.address]:
             parsed = parse_address(each.address)
             if parsed.kind == "record":
-                found += self._record(row, each.address)
+                found += [
+                    *self._record(row, each.address),
+                    *self._origin(each.address, stale_now),
+                ]
             elif each.role == "accession":
                 found += self._accession(row, each.address)
             elif parsed.reduction is not None:
@@ -159,6 +167,16 @@ class _Known:
             return self._gone(address)
         because = holding.because or f"{holding.address} holds now"
         return [StaleReason("record", address, holding.address, because)]
+
+    def _origin(self, address: str, stale_now: dict[str, list[StaleReason]]) -> list[StaleReason]:
+        """Why the reduction that a calibration was made from is another one now."""
+        made_from = self.made_from.get(address)
+        if made_from is None:
+            return []
+        return [
+            StaleReason(each.kind, address, None, f"calibration {address} was made from it: {each.text}")
+            for each in self._reduction(made_from, stale_now)
+        ]
 
     def _accession(self, row: ReductionRow, address: str) -> list[StaleReason]:
         gone, now = self._gone(address), self.holders.get(row.sweep)

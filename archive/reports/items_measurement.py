@@ -93,8 +93,9 @@ def _calibrations(scope: Scope) -> Iterator[Said]:
             if each.relative_uncertainty is not None
             else plain(each.uncertainty, setting=True)
         )
+        origin = "" if each.made_from is None else f" (found by the reduction {each.made_from})"
         yield sentence(
-            f"The calibration {each.address} is on {each.scale} against {each.against} {points}from {low} to {high} ({each.date}), form "
+            f"The calibration {each.address} is on {each.scale} against {each.against}{origin} {points}from {low} to {high} ({each.date}), form "
             f"{each.relation.form}, standard uncertainty {spread}; outside this range no temperature is given.",
             each.address,
         )

@@ -174,4 +174,5 @@ def calibration_rows(calibration: Calibration) -> list[Row]:
         ("thermometer", words(calibration.thermometer)), ("scale", words(calibration.scale)), ("date", words(str(calibration.date))),
         ("against", words(calibration.against)), ("relation", words(calibration.relation.form)), ("points", words(str(len(calibration.points)) if calibration.points else "[nr]")),
         ("range", words(ends)), ("standard uncertainty", spread), ("changed", said(calibration.changed)),
+        *([] if calibration.made_from is None else [("found by", words(calibration.made_from))]),
     ]  # fmt: skip

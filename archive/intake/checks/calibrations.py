@@ -13,7 +13,12 @@ from archive.reduction.calibration_record import FREE_FIELDS
 from schemas.finding import Finding
 from schemas.thermometer import Calibration
 
-__all__ = ["calibration_as_made", "calibration_drifted", "calibration_without_thermometer"]
+__all__ = [
+    "calibration_as_made",
+    "calibration_drifted",
+    "calibration_without_thermometer",
+    "differing_fields",
+]
 
 
 def calibration_as_made(reading: Reading, thresholds: Thresholds, earlier: History) -> Iterator[Finding]:
@@ -31,7 +36,7 @@ def calibration_as_made(reading: Reading, thresholds: Thresholds, earlier: Histo
                 remedy="ingest and reduce the calibration sweep first, or leave made_from out and say in `against` where the calibration is from",
             )  # fmt: skip
             continue
-        differing = _differing(written, made)
+        differing = differing_fields(written, made)
         if differing:
             yield on_sheet(
                 reading, "calibration-differs", "error",
@@ -41,7 +46,8 @@ def calibration_as_made(reading: Reading, thresholds: Thresholds, earlier: Histo
             )  # fmt: skip
 
 
-def _differing(written: Calibration, made: Calibration) -> list[str]:
+def differing_fields(written: Calibration, made: Calibration) -> list[str]:
+    """Return the fields in which a calibration is not what its reduction found; what a person may choose is not compared."""
     # A thermometer may be cited with its revision.
     same = written.model_copy(update={"thermometer": written.thermometer.partition(".r")[0]})
     found = [

@@ -44,6 +44,9 @@ def test_the_record_is_printed_or_written_once(tmp_path: Path, run: Run, fake: F
     target = tmp_path / "ge7.toml"
     assert run("calibration", ADDRESS, "-o", str(target)).exit_code == 0
     assert target.read_text(encoding="utf-8") == shown.stdout
+    alone = run("calibration", ADDRESS, "--alone").stdout
+    assert tomllib.loads(alone)["format"] == "stillroom-revision/1"
+    assert alone.endswith(shown.stdout.partition("\n")[2])
     other = tmp_path / "again.toml"
     assert parsed(run("calibration", ADDRESS, "-o", str(other), "--json")) == {"written": [str(other)]}
     assert parsed(run("calibration", ADDRESS, "--json"))["made_from"] == ADDRESS

@@ -318,6 +318,32 @@ def test_a_reference_that_is_a_temperature_needs_no_calibration(lab: Archive, tm
             assert record.against == "temperatures of channel reference in 2025-08/c01"
 
 
+def test_a_record_may_come_in_alone_and_goes_stale_with_its_reduction(tmp_path: Path) -> None:
+    (folder,) = make_calibration_folders(tmp_path / "folders", 2)
+    with Archive.create(tmp_path / "lab", name="Test laboratory") as lab:
+        assert lab.ingest(folder).state == "ingested"
+        assert [each.problem for each in lab.reduce("2024-11", sweep="c01")] == [None]
+        head = 'format = "stillroom-revision/1"\nby = "data steward"\n'
+        text = calibration_text(lab.calibration(MADE))
+        changed = tmp_path / "changed.toml"
+        changed.write_text(head + text.replace("interpolation_uncertainty = ", "interpolation_uncertainty = 1e-3 # "), encoding="utf-8")  # fmt: skip
+        (fault,) = lab.revise(changed).findings
+        assert "interpolation_uncertainty" in fault.what
+        changed.write_text(head + text.replace("@thermometer-calibration.1\"", "@thermometer-calibration.9\"", 1), encoding="utf-8")  # fmt: skip
+        (fault,) = lab.revise(changed).findings
+        assert "there is no reduction" in fault.what
+        (tmp_path / "alone.toml").write_text(head + text, encoding="utf-8")
+        assert lab.revise(tmp_path / "alone.toml").state == "sealed"
+        # The next sheet names the record without describing it.
+        assert lab.ingest(folder_of(tmp_path, "")).state == "ingested"
+        (reduced,) = lab.reduce("2025-02")
+        assert reduced.problem is None
+        assert lab.stale() == []
+        lab.withdraw(MADE, why="the gauge had been read wrongly", by="data steward")
+        (found,) = [each for each in lab.stale() if each.reduction == reduced.address]
+        assert any("calibration GE-7-cal.r1 was made from it" in reason.text for reason in found.reasons)
+
+
 def test_a_channel_under_calibration_must_exist(lab: Archive, tmp_path: Path) -> None:
     folder = folder_of(tmp_path, "", "2025-10")
     sheet = (folder / "cooldown.toml").read_text(encoding="utf-8")
