@@ -14,7 +14,7 @@ from archive.intake.thresholds import Thresholds
 from schemas.base import Record, Text
 from schemas.deposit import Deposit
 
-__all__ = ["SETTINGS_NAME", "Settings", "read_settings", "settings_text"]
+__all__ = ["SETTINGS_NAME", "Settings", "read_settings", "settings_text", "settings_without_index"]
 
 SETTINGS_NAME = "stillroom.toml"
 
@@ -98,3 +98,13 @@ def read_settings(root: Path) -> Settings:
     if settings is None:
         raise InvalidSheet("; ".join(finding.sentence() for finding in findings))
     return settings
+
+
+def settings_without_index(root: Path) -> bytes:
+    """Text of the settings but for the address of the index, which says where this copy of the archive has its own."""
+    kept, in_table = [], False
+    for line in (root / SETTINGS_NAME).read_bytes().splitlines(keepends=True):
+        in_table = in_table or line.lstrip().startswith(b"[")
+        if in_table or line.partition(b"=")[0].strip() != b"index":
+            kept.append(line)
+    return b"".join(kept)

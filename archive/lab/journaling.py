@@ -6,6 +6,7 @@ opening, from the sealed files themselves, and says so.
 
 from __future__ import annotations
 
+import hashlib
 import os
 from collections.abc import Callable, Iterable, Iterator, Mapping
 from contextlib import contextmanager
@@ -14,9 +15,8 @@ from pathlib import Path
 from typing import Any
 
 from archive.errors import BadRequest
-from archive.intake.settings import SETTINGS_NAME
+from archive.intake.settings import SETTINGS_NAME, settings_without_index
 from archive.reduction.software import software
-from archive.store.durable import file_digest
 from archive.store.interface import Damage, SealedFile
 from archive.store.journal import Act, Journal
 
@@ -106,7 +106,9 @@ class Acts:
         return found
 
     def _settings_digest(self) -> str | None:
-        return file_digest(self._settings)[0] if self._settings.is_file() else None
+        if not self._settings.is_file():
+            return None
+        return hashlib.sha256(settings_without_index(self._settings.parent)).hexdigest()
 
     def behind(self, count: int) -> bool:
         """Whether the journal tells of fewer sealed files than there are."""

@@ -10,7 +10,7 @@ from pathlib import Path
 
 from archive.errors import BadRequest
 from archive.index import Index
-from archive.intake.settings import SETTINGS_NAME, Settings, read_settings
+from archive.intake.settings import SETTINGS_NAME, Settings, read_settings, settings_without_index
 from archive.lab.reducing import rebuilt_index
 from archive.store.durable import archive_lock, put_in_place, write_whole
 from archive.store.interface import Damage, SealedFile
@@ -108,7 +108,8 @@ def mirror(
             last = mirrored(store, recorded(), copy)
             how = _copied_index(copy, snapshot)
             _copied_journal(store.root, target)
-        write_whole(target / SETTINGS_NAME, _settings_of_mirror(store.root), replace=True)
+        # A mirror never writes to the database of the archive.
+        write_whole(target / SETTINGS_NAME, settings_without_index(store.root), replace=True)
     if how == "made anew":
         rebuilt_index(target, read_settings(target).index_address(target), copy)
     return MirrorOutcome(target, (*first.copied, *last.copied), first.present, _once(first, last), how)
@@ -162,14 +163,3 @@ def _copied_index(target: LocalStore, snapshot: Callable[[Path], bool]) -> str:
 def _copied_journal(root: Path, target: Path) -> None:
     if Journal(root).last() is not None:
         write_whole(target / JOURNAL_NAME, (root / JOURNAL_NAME).read_bytes(), replace=True)
-
-
-def _settings_of_mirror(root: Path) -> bytes:
-    """Settings without the address of the index: a mirror never writes to the database of the archive."""
-    lines = (root / SETTINGS_NAME).read_text(encoding="utf-8").splitlines(keepends=True)
-    kept, in_table = [], False
-    for line in lines:
-        in_table = in_table or line.lstrip().startswith("[")
-        if in_table or line.partition("=")[0].strip() != "index":
-            kept.append(line)
-    return "".join(kept).encode()
