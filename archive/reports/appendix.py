@@ -18,6 +18,7 @@ from archive.errors import BadRequest
 from archive.reports.after_the_fact import act_sentences
 from archive.reports.appendix_tables import Table, results_table, tables
 from archive.reports.bibliography import bibliography_of
+from archive.reports.budget import largest_share, monte_carlo_sentence
 from archive.reports.checklist import Item, Said, completeness, sentence, told
 from archive.reports.figures import Drawn, Undrawn, figures
 from archive.reports.items_cell import CELL_ITEMS
@@ -104,7 +105,14 @@ def methods_appendix(
 
 def _citations(scope: Scope) -> list[str]:
     # The notation for uncertainty is that of the GUM, on every page.
-    return [*dict.fromkeys(key for _, step in scope.steps() for key in step.citations), "jcgm-100"]
+    drawn = any(
+        monte_carlo_sentence(each, output)
+        for each in scope.reductions
+        for output in each.outputs
+        if each.address in scope.asked and output.name in each.plan.headline and largest_share(each, output)
+    )
+    steps = dict.fromkeys(key for _, step in scope.steps() for key in step.citations)
+    return [*steps, "jcgm-100", *(["jcgm-101"] if drawn else [])]
 
 
 def _account(
@@ -117,7 +125,8 @@ def _account(
     for key, name, wanted in _SECTIONS:
         sections.append(_section(key, name, _of(key, said), [made[label] for label in wanted]))
     fits = _of("fits", said) + [
-        ("FIG", sentence(f"There is no {each.what} of {each.address}: {each.why}.", each.address)) for each in undrawn
+        ("FIG", sentence(f"There is no {each.what} of {each.address}: {each.why}.", each.address))
+        for each in undrawn
     ]
     sections.append({**_section("reduction", "Reduction", [], [made["steps"]]), "steps": _steps(scope)})
     sections.append(
@@ -227,16 +236,18 @@ def _line(code: str, said: Said, cited: Sequence[str] = ()) -> dict[str, Tex]:
     return {"group": Tex(group), "code": Tex(code), "record": _comment(said.record), "latex": latex}
 
 
+def _cited(said: Said) -> tuple[str, ...]:
+    """Return what a sentence rests on that no step cites."""
+    if "Monte Carlo (JCGM 101)" in said.text:
+        return ("jcgm-101",)
+    return ("jcgm-100",) if said.record == "the notation" and "brackets" in said.text else ()
+
+
 def _printed(account: dict[str, Any]) -> dict[str, Any]:
     prefix = account["prefix"]
     sections = []
     for each in account["sections"]:
-        lines = [
-            _line(
-                code, said, ("jcgm-100",) if said.record == "the notation" and "brackets" in said.text else ()
-            )
-            for code, said in each["sentences"]
-        ]
+        lines = [_line(code, said, _cited(said)) for code, said in each["sentences"]]
         steps = [
             {
                 "title": prose(block["title"]).latex,

@@ -216,3 +216,11 @@ def test_the_run_sheet_prints_budget_and_trials(drawn: Archive) -> None:
     assert "Uncertainty budget of empty period" in page
     assert "Monte Carlo (JCGM 101), 60 trials, seed 1" in page
     assert "Monte Carlo (JCGM 101), 60 trials" in files["run-sheet-2026-03.json"].decode()
+
+
+def test_the_appendix_tells_and_cites(drawn: Archive) -> None:
+    files = drawn.appendix([f"{SWEEP}@{PLAN}.1"])
+    text = files["appendix.tex"].decode()
+    assert "Monte Carlo (JCGM 101), 60 trials, seed 1" in text
+    assert r"\cite{jcgm-101}" in text
+    assert "@techreport{jcgm-101," in files["methods.bib"].decode()
