@@ -97,7 +97,8 @@ def _close(one: float | None, other: float | None) -> bool:
 
 
 def _same(before: Any, after: Any) -> bool:
-    numbers = isinstance(before, int | float) and isinstance(after, int | float)
+    # In Python True equals 1.
+    numbers = all(isinstance(each, int | float) and not isinstance(each, bool) for each in (before, after))
     return bool(before == after and (numbers or type(before) is type(after)))
 
 
