@@ -34,7 +34,7 @@ from archive.reports.figure_values import (
 from archive.reports.scope import Scope
 from schemas.lineage import ReductionDocument
 
-__all__ = ["dynamic_figure", "porous_figure", "sweep_figure", "transition_figure"]
+__all__ = ["dynamic_figure", "fitted_theory", "porous_figure", "sweep_figure", "transition_figure"]
 
 _SIGMA = r"$\sigma_\mathrm{s}$"
 
@@ -113,7 +113,7 @@ def dynamic_figure(scope: Scope, reduction: ReductionDocument) -> Drawn:
         raise NoFigure("no row lies where the theory was fitted")
     fitted = np.isfinite(wanted(scope, reduction, "drop_residual"))
     grid = np.linspace(low, high, 400)
-    theory = _theory(reduction, grid, period=period, x0=x0 if isinstance(x0 := step.parameters.get("x0"), float) else -0.5, scale=fact(step, "scale_stated"))  # fmt: skip
+    theory = fitted_theory(reduction, grid, period=period, x0=x0 if isinstance(x0 := step.parameters.get("x0"), float) else -0.5, scale=fact(step, "scale_stated"))  # fmt: skip
     figure, panels = stacked([2.4, 1, 2.4, 1], height=HEIGHTS[2])
     for k, (y, name, unit, curve, of_what) in enumerate(
         ((drop, r"$\Delta P$", "s", theory[0], "drop"), (loss, r"$\Delta Q^{-1}$", "1", theory[1], "dissipation"))
@@ -153,10 +153,24 @@ def dynamic_figure(scope: Scope, reduction: ReductionDocument) -> Drawn:
     return Drawn(name_of("film-dynamic", reduction), saved(figure), caption, (reduction.address,))
 
 
-def _theory(
+def fitted_theory(
     reduction: ReductionDocument, T: Column, *, period: float, x0: float, scale: float
 ) -> tuple[Column, Column]:
-    """Return period drop (s) and dissipation of the fitted theory."""
+    """Return period drop (s) and dissipation of the theory with a reduction's results.
+
+    Parameters
+    ----------
+    reduction : ReductionDocument
+        By the plan film-dynamic.
+    T : ndarray
+        K.
+    period : float
+        Of the oscillator, s.
+    x0 : float
+        Bare start of the flow, as it was held.
+    scale : float
+        Twice the fractional drop per areal density, as the records state it, m^2/kg.
+    """
     omega = 2 * math.pi / period
     F = output_of(reduction, "F")
     stiffness = complex_stiffness(

@@ -4,13 +4,21 @@ from __future__ import annotations
 
 import csv
 import io
+import json
 import subprocess
 from collections.abc import Callable
 from pathlib import Path
 
+import numpy as np
 import pytest
 from click.testing import Result
 
+from archive import Archive
+from archive.lab.reporting import view
+from archive.reduction.planning import shipped_plans
+from archive.reports.figure_values import fact, step_of, taken
+from archive.reports.figures_film import fitted_theory
+from archive.reports.scope import Scope
 from tests.archive.commands.support import child, parsed
 
 Demonstration = tuple[Path, "subprocess.CompletedProcess[str]"]
@@ -50,6 +58,40 @@ def test_the_demonstration_runs_and_says_what_it_made(demonstration: Demonstrati
     again = child("demo", str(folder))
     assert again.returncode == 2
     assert "earlier demonstration" in again.stderr
+
+
+@pytest.mark.slow
+def test_every_shipped_plan_is_carried_out_and_drawn(demonstration: Demonstration) -> None:
+    folder, _ = demonstration
+    with Archive.open(folder / "archive") as lab:
+        plans = {row.address.partition("@")[2].partition(".")[0] for row in lab._index.reductions()}
+    assert plans == {plan.name for plan in shipped_plans()}
+    appendix = json.loads((folder / "reports" / "appendix" / "appendix.json").read_text(encoding="utf-8"))
+    figures = [each for section in appendix["sections"] for each in section["figures"]]
+    sentences = [each["text"] for section in appendix["sections"] for each in section["sentences"]]
+    assert [text for text in sentences if text.startswith("There is no figure")] == []
+    drawn = {name.partition("@")[2].partition(".")[0] for each in figures for name in each["reductions"]}
+    assert drawn == plans
+    assert len({each["file"] for each in figures}) == len(figures)
+
+
+@pytest.mark.slow
+def test_the_drawn_theory_is_the_fitted_one(demonstration: Demonstration) -> None:
+    address = "2025-03/s006@film-dynamic.1"
+    with Archive.open(demonstration[0] / "archive") as lab:
+        scope = Scope([view(lab._source, "Test", "2025-03")], [address])
+        document = next(each for each in scope.reductions if each.address == address)
+        step = step_of(document, "film-dynamic-fit")
+        T, drop = (taken(scope, document, step, port) for port in ("temperature", "period_drop"))
+        period = float(np.nanmedian(taken(scope, document, step, "period")))
+        r = lab.array(f"{address}#drop_residual")
+        u = lab.array(f"{address}#period_drop.point")
+        fitted = np.isfinite(r)
+        curve, _ = fitted_theory(
+            document, T[fitted], period=period, x0=-0.5, scale=fact(step, "scale_stated")
+        )
+    # The step weighs with what is stated of each point; its residuals are what the curve leaves, in those units.
+    assert np.max(np.abs((drop[fitted] - curve) / u[fitted] - r[fitted])) < 0.02
 
 
 @pytest.mark.slow
@@ -118,5 +160,5 @@ def test_the_index_is_rebuilt_and_nothing_is_lost(demonstration: Demonstration) 
     archive = ["--archive", str(demonstration[0] / "archive")]
     before = child(*archive, "search", "--json").stdout
     counts = parsed(child(*archive, "rebuild-index", "--json"))
-    assert counts["accessions"] == 3
+    assert counts["accessions"] == 11
     assert child(*archive, "search", "--json").stdout == before
