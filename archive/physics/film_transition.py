@@ -127,7 +127,7 @@ def fit_film_transition(
     Notes
     -----
     A single frequency separates T_KT, b and ln(D/a^2) badly: read the covariance. Start values: the transition from the
-    temperature of the dissipation peak divided by the model's, b = 5, L = 13.
+    temperature of the dissipation peak divided by the model's, b = 3, 5 and 9, L = 13; the best of short fits from the three.
 
     References
     ----------
