@@ -62,7 +62,7 @@ def fixity(*, archive_dir: Path | None, as_json: bool, strict: bool) -> None:
     """
     with opening.open_archive(archive_dir) as lab, Progress("reading sealed files") as progress:
         files = lab.statistics()["sealed_files"]
-        damage = lab.fixity(progress=progress.count)
+        damage = lab.fixity(enter=True, progress=progress.count)
     hurt = [each for each in damage if each.kind != "stray"]
     if as_json:
         write_json({"sealed_files": files, "whole": not hurt, "damage": damage})

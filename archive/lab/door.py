@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import os
 from collections.abc import Callable, Iterator, Mapping, Sequence
-from contextlib import contextmanager, nullcontext
+from contextlib import contextmanager, nullcontext, suppress
 from datetime import UTC, datetime
 from pathlib import Path
 from types import TracebackType
@@ -600,16 +600,28 @@ class Archive:
 
     # Keeping ------------------------------------------------------------------------------------------------------
 
-    def fixity(self, *, progress: Callable[[int, int, str], None] | None = None) -> list[Damage]:
-        """Re-read everything and name what is damaged, missing or stray."""
+    def fixity(
+        self, *, enter: bool = False, progress: Callable[[int, int, str], None] | None = None
+    ) -> list[Damage]:
+        """Re-read everything and name what is damaged, missing or stray; index, journal and settings too.
+
+        Parameters
+        ----------
+        enter : bool
+            Whether the outcome is entered in the journal, where the archive can be written to.
+        progress : callable, optional
+        """
         recorded = self._recorded()
         damage = fixity(self._store, recorded, progress)
         hurt = {each.key for each in damage if each.kind != "stray"}
-        return [
-            *damage,
-            *index_damage(self._index, self._store, recorded, hurt),
-            *self._acts.damage({key: sealed.sha256 for key, sealed in recorded.items()}),
-        ]
+        damage += index_damage(self._index, self._store, recorded, hurt)
+        damage += self._acts.damage({key: sealed.sha256 for key, sealed in recorded.items()})
+        if enter and os.access(self.root, os.W_OK):
+            faults = sum(each.kind != "stray" for each in damage)
+            self._acts.done("fixity", self.name, note=f"{len(recorded)} sealed files read, {faults} faults")
+            with suppress(ArchiveBusy), archive_lock(self.root, wait_s=0.0):
+                self._acts.enter()
+        return damage
 
     def mend(
         self, other: Path | str, *, progress: Callable[[int, int, str], None] | None = None
