@@ -47,17 +47,26 @@ def in_this_process(monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setattr(examine, "_inside_apart", lambda path, key, size: examine._inside(path, key))
 
 
+def assert_sound(lab: Archive) -> int:
+    """See that every recorded file is there, byte for byte, and nothing else; return how many there are."""
+    recorded = lab._index.sealed_files()
+    assert sorted(recorded) == lab._store.keys()
+    assert [
+        damage for key, (sha256, _) in recorded.items() for damage in lab._store.verify(key, sha256)
+    ] == []
+    assert lab._store.strays() == []
+    return len(recorded)
+
+
 def assert_all_or_nothing(root: Path, package: Path) -> str:
     """Open, look, try again, and look again; return what the second try was."""
     with Archive.open(root) as lab:
-        assert lab.fixity() == []
-        held = lab.statistics()["sealed_files"]
+        held = assert_sound(lab)
         assert held in (0, len(ALL))
         outcome = lab.import_package(package)
         assert outcome.state == ("already" if held else "imported")
         assert sorted(outcome.held or outcome.taken) == ALL
-        assert lab.fixity() == []
-        assert not list((root / "staging").iterdir())
+        assert assert_sound(lab) == len(ALL)
         return outcome.state
 
 

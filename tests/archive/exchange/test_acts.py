@@ -59,7 +59,7 @@ def test_every_kind_of_sealed_file_moves(
     there = other()
     assert there.import_package(tmp_path / "all").state == "imported"
     assert there._index.rows() == acted._index.rows()
-    assert there.fixity() == []
+    assert there._store.strays() == []
     assert (tmp_path / "all" / "data" / "sheets" / "2026-04.m1.toml").read_text(encoding="utf-8") == AMENDMENT
     assert (tmp_path / "all" / "data" / "sheets" / "plastic.r2.toml").read_text(encoding="utf-8") == REVISION
 
