@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from functools import cache, lru_cache
 
-from sqlalchemy import and_, exists, or_, select
+from sqlalchemy import and_, or_, select
 
 from archive.index.act_tables import Amendment, AmendmentSweep, ReplacedRecord, Revision, Withdrawal
 from archive.index.conditions import part_of
@@ -125,7 +125,8 @@ def resting_on(address: str) -> Query:
     elif parsed.kind == "name":
         # "/" follows "." and "0" follows "/": everything of a cooldown.
         condition = and_(column >= f"{address}.", column < f"{address}0")
-    took = exists().where(ReductionInput.reduction == Reduction.address, condition)
+    # A set made once; asked for each reduction anew it would be gone through as often as there are reductions.
+    took = Reduction.address.in_(select(ReductionInput.reduction).where(condition))
     return (
         select(Reduction.address)
         .where(or_(took, Reduction.plan_address == address) if parsed.kind == "record" else took)
