@@ -85,8 +85,10 @@ class CalibrationCurve:
         return result
 
     def is_monotonic(self, points: int = 2000) -> bool:
-        """Return whether dT/d(reading) keeps one sign over the whole span, on a fine grid."""
+        """Return whether dT/d(reading) keeps one sign over the whole span, on a fine grid, and T has no pole in it."""
         low, high = self.reading_span
+        if self.form == "curie-weiss" and low <= self.coefficients[0] <= high:
+            return False
         grid = np.linspace(low, high, points) if low <= 0 else np.geomspace(low, high, points)
         slope = self._slope(grid[1:-1])
         return bool(np.all(slope > 0) or np.all(slope < 0))

@@ -30,6 +30,7 @@ __all__ = ["CalibrationFit", "fit_calibration"]
 _LEAST = {"chebyshev": 6, "log-polynomial": 6, "spline": 7, "curie-weiss": 5}
 _MOST_KNOTS = 60
 _SIGNIFICANT = 0.05
+_USELESS = 0.10  # of T: no thermometer (common practice, no source)
 
 
 @dataclass(frozen=True)
@@ -112,7 +113,7 @@ def fit_calibration(
     ------
     ValueError
         Too few points, values that are not finite or not above 0, two spline points at one reading, more than 60 spline
-        points, or a curve that turns within the points.
+        points, a curve that misses its points by a tenth of T, or one that turns within them.
 
     Notes
     -----
@@ -138,6 +139,12 @@ def fit_calibration(
         slope = np.abs(fitted(u_T).curve.slope(R))
         u = slope * u_R if u_T is None else np.hypot(u_T, slope * u_R)
     found = fitted(u)
+    miss = _rms(found.residuals / T)
+    if miss > _USELESS:
+        raise ValueError(
+            f"temperature: the fitted {form} misses its points by {100 * miss:.3g} per cent (rms), so they do not follow it; "
+            "leave out points that do not belong, or take another form"
+        )
     if not found.curve.is_monotonic():
         raise ValueError(
             f"reading: the fitted {form} of order {found.order} turns within the points, so that two temperatures fit one "

@@ -79,6 +79,10 @@ def test_a_curve_that_turns_is_not_monotonic() -> None:
     assert not turning.is_monotonic()
 
 
+def test_a_law_with_its_pole_among_the_readings_is_not_monotonic() -> None:
+    assert not CalibrationCurve("curie-weiss", (20.0, 0.34, 0.0), (13.0, 80.0)).is_monotonic()
+
+
 def test_contributions_of_several_sources_come_at_once() -> None:
     curve = CURVES["curie-weiss"]
     shifts = np.array([[1e-3, 0.0, 0.0], [0.0, 0.0, 1e-5]])

@@ -164,6 +164,8 @@ def test_a_search_that_does_not_end_is_no_calibration(monkeypatch: pytest.Monkey
         pytest.param("curie-weiss", R, T[:-1], {}, "shape", id="shapes"),
         pytest.param("log-polynomial", R, T, {"temperature_uncertainty": np.r_[0.0, T[1:]]}, r"temperature_uncertainty\[0\]", id="one zero"),
         pytest.param("log-polynomial", np.geomspace(1, 100, 12), 1 + np.linspace(-1, 1, 12) ** 2, {"order": 4}, "turns within", id="turning"),
+        pytest.param("curie-weiss", 1000 + (np.arange(40.0) - 18) ** 2, np.geomspace(8e-3, 0.2, 40), {}, "misses its points", id="no law"),
+        pytest.param("chebyshev", np.geomspace(10, 1000, 12), np.r_[np.full(10, 1.0), 0.02, 0.01], {"order": 1}, "misses its points", id="below zero"),
     ],
 )  # fmt: skip
 def test_what_cannot_be_fitted_is_refused(
