@@ -139,6 +139,7 @@ class Lineage:
                 relate("wasAttributedTo", name, self._operator(home, role))
             if raw.name == content.sheet_file:
                 self._sheets[content.address] = name
+                self._names |= {f"{content.cooldown}/{dose.name}": name for dose in content.doses}
             use = relate("used", act, name, content.accessioned, identifier=f"{home}:use.raw.{local}")
             relate("wasDerivedFrom", accession, name, act, made, use)
             raws[raw.name] = name, use

@@ -220,8 +220,9 @@ def _reports(
             f"{name}.json": run_sheet_json(within).encode(),
         }
     if appendix:
-        named = asked or cooldowns
-        files = reporting.appendix(source, archive_name, named, title=None, level="section")
+        reduced = {key.partition("/")[0] for key in keys if "@" in key}
+        named = asked or [cooldown for cooldown in cooldowns if cooldown in reduced]
+        files = reporting.appendix(source, archive_name, named, title=None, level="section") if named else {}
         found |= {f"appendix/{name}": content for name, content in files.items()}
     return found
 

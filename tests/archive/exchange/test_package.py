@@ -134,6 +134,30 @@ def test_the_readable_files_are_what_is_sealed(lab: Archive, package: Path) -> N
     assert float(line.split(",")[2]) == pytest.approx(result.value, rel=0, abs=0)
 
 
+@pytest.mark.parametrize(
+    ("asked", "about"),
+    [((DROP,), (DROP,)), ((), ["2026-03", "2026-04"])],
+    ids=["a reduction", "everything"],
+)
+def test_the_appendix_of_what_is_asked_for_lies_beside(
+    lab: Archive,
+    tmp_path: Path,
+    monkeypatch: pytest.MonkeyPatch,
+    asked: tuple[str, ...],
+    about: Sequence[str],
+) -> None:
+    seen: list[Sequence[str]] = []
+
+    def appendix(source: object, name: str, addresses: Sequence[str], **_: object) -> dict[str, bytes]:
+        seen.append(addresses)
+        return {"appendix.tex": b"tex", "figures/a.pdf": b"pdf"}
+
+    monkeypatch.setattr("archive.lab.reporting.appendix", appendix)
+    lab.export(asked, tmp_path / "p", reports=False, appendix=True)
+    assert seen == [about]
+    assert (tmp_path / "p" / "data" / "reports" / "appendix" / "figures" / "a.pdf").read_bytes() == b"pdf"
+
+
 # What is refused ---------------------------------------------------------------------------------------------------
 
 

@@ -104,7 +104,17 @@ def test_a_result_is_told_down_to_raw_files_and_programs(lab: Archive) -> None:
 
 
 @pytest.mark.parametrize(
-    "address", ["2026-04", "2026-04.a1", "2026-04/s002", "2026-04/s002#period", DROP, f"{DROP}#shift"]
+    "address",
+    [
+        "2026-04",
+        "2026-04.a1",
+        "2026-04/s002",
+        "2026-04/s002#period",
+        "2026-04/d02",
+        "2026-04.a1:film.csv",
+        DROP,
+        f"{DROP}#shift",
+    ],
 )
 def test_what_lies_behind_a_thing_is_whole(lab: Archive, address: str) -> None:
     found = lab.provenance(address)
