@@ -20,6 +20,7 @@ from archive.intake.paths import path_inside
 from archive.intake.reading import Reading
 from archive.intake.sheet import SheetReading, read_sheet
 from archive.intake.summary import record_entries, sweep_entries
+from archive.reduction.sheet_of_sweep import sheet_of_sweep
 from archive.store.interface import Column, SealedFile, Store, TableWriter, Writer
 from schemas.cooldown import CooldownSheet
 from schemas.finding import Finding
@@ -232,8 +233,10 @@ def _plan(folder: Path, reading: SheetReading, documents: Sequence[AccessionDocu
     for sweep in sheet.sweep:
         if sweep.name not in before:
             differences.append(f"sweep {sweep.name} added")
-        elif _definition(sheet, sweep.name) != before[sweep.name]:
-            differences.append(f"sweep {sweep.name}: its description in the sheet changed")
+        elif changed := _changed(before[sweep.name], _definition(sheet, sweep.name)):
+            differences.append(
+                f"sweep {sweep.name}: its description in the sheet changed ({', '.join(changed)})"
+            )
         elif not files.intersection(sweep.files):
             continue
         sweeps.add(sweep.name)
@@ -247,11 +250,17 @@ def _plan(folder: Path, reading: SheetReading, documents: Sequence[AccessionDocu
     return _Plan(documents[-1].number + 1, tuple(differences), frozenset(files), frozenset(sweeps))
 
 
-def _definition(sheet: CooldownSheet, name: str) -> str:
-    sweep = next(sweep for sweep in sheet.sweep if sweep.name == name)
-    channels = {key: channel.model_dump(mode="json") for key, channel in sheet.channels_of(sweep).items()}
-    parts = [sweep.model_dump(mode="json"), channels, sheet.dialect_of(sweep).model_dump(mode="json")]
-    return json.dumps(parts, sort_keys=True)
+def _definition(sheet: CooldownSheet, name: str) -> dict[str, str]:
+    """All that a sheet says of a sweep, doses that it has seen too, as texts to be compared."""
+    return {
+        what: json.dumps(said, sort_keys=True, default=lambda record: record.model_dump(mode="json"))
+        for what, said in sheet_of_sweep(sheet, name).items()
+    }
+
+
+def _changed(before: Mapping[str, str], now: Mapping[str, str]) -> list[str]:
+    """What is said otherwise, in words."""
+    return [what.replace("_", " ") for what in now if now[what] != before[what]]
 
 
 def _file_digest(folder: Path, name: str) -> str | None:

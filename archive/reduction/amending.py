@@ -18,6 +18,7 @@ from archive.reduction.field_paths import Content, changed_content, value_at
 from archive.reduction.ledger import gas_ledger
 from archive.reduction.record_kinds import record_entry
 from archive.reduction.rows_meant import digest_of_rows
+from archive.reduction.sheet_of_sweep import sheet_of_sweep
 from schemas.acts import AmendmentDocument, Change, LeftOutRows
 from schemas.address import parse_address
 from schemas.cooldown import CooldownSheet
@@ -174,32 +175,6 @@ def bears_on(before: AccessionDocument, after: AccessionDocument) -> list[str]:
     return [
         entry.name
         for entry in before.sweeps
-        if _told(before, entry.name, entry) != _told(after, entry.name, entries[entry.name])
+        if (entry, sheet_of_sweep(before.sheet, entry.name))
+        != (entries[entry.name], sheet_of_sweep(after.sheet, entry.name))
     ]
-
-
-def _told(accession: AccessionDocument, name: str, entry: object) -> tuple[object, ...]:
-    sheet = accession.sheet
-    sweep = next(each for each in sheet.sweep if each.name == name)
-    gauges = {each.gauge for each in sheet.channels_of(sweep).values()}
-    seen = _doses_seen(sheet, name)
-    gas = (seen, sheet.doser, sheet.dead_volume, sheet.gauge) if seen else sheet.dead_volume
-    return (
-        entry,
-        sweep,
-        sheet.channels_of(sweep),
-        sheet.detection_of(sweep),
-        sheet.temperature_scale,
-        [each for each in sheet.gauge if each.name in gauges],
-        gas,
-    )
-
-
-def _doses_seen(sheet: CooldownSheet, name: str) -> list[object]:
-    """Doses that a sweep has seen: those before it, and those during it."""
-    sweep = next(each for each in sheet.sweep if each.name == name)
-    if sweep.empty_cell or sweep.gas != "helium":
-        return []
-    named = {*sweep.doses, sweep.after_dose}
-    last = max((each.at for each in sheet.dose if each.name in named), default=None)
-    return [] if last is None else [each for each in sheet.dose if each.at <= last]

@@ -359,6 +359,21 @@ def test_a_later_sheet_that_says_something_else_has_the_last_word(
     assert "accession" in stale_now(lab)[f"{FILLING}.1"]
 
 
+def test_a_supplement_that_corrects_a_dose_reaches_the_sweeps_that_saw_it(
+    lab: Archive, tmp_path: Path
+) -> None:
+    folder = write_calibrated(tmp_path / "again")
+    text = (folder / "cooldown.toml").read_text(encoding="utf-8")
+    (folder / "cooldown.toml").write_text(text.replace("8.0(1) umol", "16.0(1) umol"), encoding="utf-8")
+    outcome = lab.ingest(folder)
+    assert outcome.differences[1:] == ("sweep s002: its description in the sheet changed (doses)",)
+    assert [row.coverage for row in lab.search(SearchQuery(sort="name"))] == pytest.approx([0, 35e-6])
+    assert stale_now(lab) == {f"{FILLING}.1": {"accession"}}
+    addresses(lab.reduce_stale())
+    assert value(lab, "coverage") == pytest.approx(35e-6, rel=1e-12)
+    assert lab.replay(f"{FILLING}.1").identical
+
+
 def test_a_withdrawn_sweep_is_left_out_shown_with_its_mark_and_not_reduced(lab: Archive) -> None:
     outcome = lab.withdraw("2026-03/s001", why="the magnet was ramped", by="data steward")
     assert outcome.resting == (f"{EMPTY}.1", f"{FILLING}.1")
