@@ -32,6 +32,9 @@ DETECTED = 0.9
 GATE = 4.0
 """Standard deviations of the prediction within which a line is a candidate; a normal deviate is outside with 6e-5."""
 
+SLOPE_SPAN = 0.1
+"""Least distance of the two points that give a slope, over the distance to which it is carried on (no source)."""
+
 SAME = 4.0
 """Standard uncertainties within which two frequencies are the same."""
 
@@ -276,12 +279,13 @@ class _Track:
         known = [(index, number) for index, number in enumerate(self.members) if number >= 0]
         last, line = known[-1]
         f = float(lines.f[line])
+        ahead = float(lines.at[place] - lines.at[last])
+        # Of two spectra at one temperature, swept up and down, the difference is no slope.
+        earlier = [(at, number) for at, number in known if lines.at[last] - lines.at[at] > SLOPE_SPAN * ahead]
         step = 0.0
-        if len(known) > 1:
-            before, earlier = known[-2]
-            run = float(lines.at[last] - lines.at[before])
-            if run > 0:
-                step = (f - float(lines.f[earlier])) / run * float(lines.at[place] - lines.at[last])
+        if earlier and ahead > 0:
+            before, other = earlier[-1]
+            step = (f - float(lines.f[other])) / float(lines.at[last] - lines.at[before]) * ahead
         floor = (motion.first_step if len(known) < 3 else motion.least_step) * f
         return f + step, math.hypot(motion.curvature * step, floor)
 

@@ -75,8 +75,8 @@ def track_lines(
 
     Notes
     -----
-    Prediction: a straight line through the last two assigned points, against the ordinate; where two spectra have the same
-    ordinate, the last point. Its standard deviation is the step that it predicts times `curvature`, with `least_step` (with fewer
+    Prediction: a straight line through the last two assigned points, against the ordinate; of spectra that have nearly the same
+    ordinate the last one counts. Its standard deviation is the step that it predicts times `curvature`, with `least_step` (with fewer
     than three points `first_step`) and the uncertainty of the line in quadrature. Weights after the reference: candidate i has
     ``e_i/(b + sum e_j)`` with ``e_i = exp(-nu_i^2/(2 S))``, times ``exp(-(ln(h_i/h)/ln height_factor)^2/2)`` where heights are known, and ``b = lambda sqrt(2 pi S) (1 - P_D P_G)/P_D``, lambda the number of
     lines beyond one in each spectrum that do not stay, per Hz between the lowest and the highest. Where several tracks claim one line, the likeliest has it if its share of their

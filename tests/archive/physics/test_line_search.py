@@ -145,3 +145,18 @@ def test_refusals_name_the_argument(change, why: str) -> None:
 def test_a_search_without_sense_is_refused(change) -> None:
     with pytest.raises(ValueError, match=next(iter(change))):
         resonance_lines(pulse_response(_noise(1, 1.0), rate=RATE), **change)
+
+
+def test_a_tone_on_a_line_is_left_out_of_its_fit() -> None:
+    """The tone stands within the width of the line, too close to be a line of its own."""
+    pulse = _pulse()
+    signal = 8 * _resonator(pulse, 700.3, 150.0) + 0.2 * np.cos(2 * np.pi * 702.5 * T)
+    lines = resonance_lines(
+        pulse_response(signal + _noise(6, 0.2), rate=RATE, pulse=pulse, low=500.0, high=900.0)
+    ).lines
+    line = lines[0]
+    assert line.kind == "resonance"
+    assert "left out" in line.reason
+    u = np.sqrt(np.diag(line.covariance))
+    assert abs(line.frequency - 700.3) < 4 * u[0]
+    assert abs(line.quality_factor - 150.0) < 4 * u[1]

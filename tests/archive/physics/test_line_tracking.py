@@ -172,3 +172,11 @@ def test_the_fraction_is_the_inverse_of_the_ratio_and_refuses() -> None:
         fraction_from_frequency(1.0, temperature=1.0, reference_frequency=0.0, reference_temperature=0.6)
     with pytest.raises(ValueError, match="temperature"):
         fourth_sound_ratio(0.01, reference_temperature=0.6)
+
+
+def test_spectra_at_one_temperature_are_followed_from_the_last_point() -> None:
+    """Sweeps up and down at the same temperature, as they are often taken."""
+    T = np.array([1.0, 1.0, 1.1, 1.1, 1.2, 1.2])
+    frequency = np.array([2000.0, 2000.5, 1988.0, 1988.5, 1970.0, 1970.5])
+    found = track_lines(T, spectrum=np.arange(6), frequency=frequency, standard_uncertainty=np.full(6, 0.1))
+    assert found.tracks[0].members == tuple(range(6))

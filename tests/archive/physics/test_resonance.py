@@ -162,3 +162,17 @@ def test_refused_words(arguments, message):
     f = np.linspace(1.0, 2.0, 20)
     with pytest.raises(ValueError, match=message):
         fit_resonance(f, f, f, **arguments)
+
+
+def test_a_start_that_is_known_gives_the_same_resonance() -> None:
+    """And one without sense is refused; one that does not converge falls back on the search."""
+    f = np.linspace(990.0, 1010.0, 201)
+    z = resonance_curve(f, resonance_frequency=1000.3, quality_factor=400.0, height=1.0, phase=0.4)
+    noise = np.random.default_rng(8).normal(0, 0.02, (2, f.size))
+    x, y = z.real + noise[0], z.imag + noise[1]
+    searched = fit_resonance(f, x, y)
+    near = fit_resonance(f, x, y, near=(1000.0, 3.0))
+    assert near.frequency == pytest.approx(searched.frequency, abs=1e-4)
+    assert near.quality_factor == pytest.approx(searched.quality_factor, rel=1e-4)
+    with pytest.raises(ValueError, match="near: found"):
+        fit_resonance(f, x, y, near=(1000.0, 0.0))
