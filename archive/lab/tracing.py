@@ -179,6 +179,8 @@ def _home_of_record(source: LabSource, node: TraceNode, seen: dict[str, _Sheet])
     row = next(
         (each for each in source.index.records(name=parsed.head) if each.address == node.address), None
     )
+    if row is not None and row.accession is None:
+        return _home_of_revision(source, row.address)
     if row is None or row.accession is None or not _ACCESSION.search(row.accession):
         return []
     sheet = _sheet(source, row.accession, seen)
@@ -187,3 +189,14 @@ def _home_of_record(source: LabSource, node: TraceNode, seen: dict[str, _Sheet])
         if (each.name, each.revision) == (row.name, row.revision):
             return [sheet.node(row.kind, [sheet.lines.line(("record", row.kind, place))])]
     return []
+
+
+def _home_of_revision(source: LabSource, address: str) -> list[TraceNode]:
+    """The sheet that a revision came in with, outside a cooldown, kept in the revision's own sealed file."""
+    document = source.revision(address)
+    if document is None:
+        return []
+    key = key_of(address)
+    sha256 = source.store.raw_digest(key, document.sheet_file)
+    label = f"{key}, raw/{document.sheet_file}, by the {document.by}, {document.made.date()}, sha256 {sha256}"
+    return [TraceNode(f"{address} {document.sheet_file}", "raw-file", label, {"sha256": sha256})]

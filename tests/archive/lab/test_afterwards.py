@@ -154,6 +154,9 @@ def test_a_revised_calibration_makes_stale_what_rests_on_it_and_is_then_taken(la
         f"{EMPTY}.2"
     }
     assert lab.show(f"{EMPTY}.1")["superseded_by"] == f"{EMPTY}.2"
+    assert any(
+        "lab.records/RX-cal.r2, raw/sheet.toml" in line for line in lab.trace(f"{EMPTY}.2#period_low").lines()
+    )
     assert stale_now(lab) == {}
     # What was taken anew stays in force; the older reductions stay and are computed again from what they took.
     assert [each.already for each in lab.reduce("2026-03", plan="filling")] == [True]
