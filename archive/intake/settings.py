@@ -57,8 +57,14 @@ def settings_text(name: str, index: str | None) -> str:
         "# Limits of the checks, where this laboratory sets its own:",
         "# [thresholds]",
         "",
-        "# Who made the data, for packages that leave the archive (stillroom export):",
+        "# Who made the data, for packages that leave the archive (stillroom export); what is not stated is left out:",
         "# [exchange]",
+        '# publisher = ""          # the laboratory or repository that makes the data available',
+        '# licence = "CC-BY-4.0"   # SPDX identifier, for cooldowns whose sheet states none',
+        "# [[exchange.author]]     # one for each author, in their order",
+        '# family = ""',
+        '# given = ""',
+        '# orcid = ""              # and affiliation, affiliation_ror',
         "",
     ]
     return "\n".join(lines)
