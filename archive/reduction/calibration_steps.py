@@ -169,7 +169,11 @@ def calibration_fit(
         largest_order=parameters.largest_order, order=parameters.order, centre_and_half_width=scaled,
     )  # fmt: skip
     curve = fit.curve
-    ends = np.sort(curve.temperature(curve.reading_span))
+    order = np.argsort(curve.temperature(curve.reading_span))
+    ends = curve.temperature(curve.reading_span)[order]
+    # The outermost readings are single ones, each with its own noise.
+    u_ends = np.array([u_reading[np.argmin(reading)], u_reading[np.argmax(reading)]], dtype=np.float64)
+    u_T = (np.abs(curve.slope(curve.reading_span)) * u_ends)[order]
     in_order = fit.residuals[np.argsort(temperature)]
     names = tuple(f"coefficients[{k}]" for k in range(len(curve.coefficients)))
     held: dict[str, object] = {"form": form, "centre": curve.centre, "half_width": curve.half_width}
@@ -185,6 +189,7 @@ def calibration_fit(
             "interpolation": fit.interpolation, "fit_uncertainty": fit.standard_uncertainty(reading),
             "reduced_chi2": nan if fit.reduced_chi2 is None else fit.reduced_chi2,
         },
+        point={"reading_low": u_ends[0], "reading_high": u_ends[1], "temperature_low": u_T[0], "temperature_high": u_T[1]},
         covariance=Covariance(names, fit.covariance),
         held=held,
         verdicts={} if fit.reduced_chi2 is not None else {"reduced_chi2": "no uncertainty stated"},

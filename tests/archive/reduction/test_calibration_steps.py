@@ -151,6 +151,19 @@ def test_the_fit_says_what_it_chose_and_holds_it() -> None:
     np.testing.assert_allclose(again.array("coefficients"), found.array("coefficients"), rtol=1e-12)
 
 
+def test_the_ends_carry_the_noise_of_the_outermost_readings() -> None:
+    """dT/T = (dR/R)/S; S = d ln R/d ln T = -1.9 + 0.7 x - 0.15 x^2, x = ln T, at 0.3 K and 5 K."""
+    T = np.geomspace(0.3, 5.0, 40)
+    x = np.log(T)
+    R = np.exp(6.9 - 1.9 * x + 0.35 * x**2 - 0.05 * x**3)
+    found = fitted(steps.FitParameters(order=5), u_reading=1e-4 * R)
+    S = -1.9 + 0.7 * x - 0.15 * x**2
+    for name, end in (("temperature_low", 0), ("temperature_high", -1)):
+        expected = 1e-4 * T[end] / abs(S[end])
+        assert float(np.asarray(found.point[name])) == pytest.approx(expected, rel=0.02)
+    assert float(np.asarray(found.point["reading_low"])) == pytest.approx(1e-4 * R.min())
+
+
 def test_a_poor_fit_is_warned_of() -> None:
     found = fitted(steps.FitParameters(largest_order=2))
     assert {f.code for f in found.findings} == {"calibration-fit-poor", "calibration-residuals-structured"}
