@@ -10,7 +10,7 @@ from typing import Annotated
 
 from pydantic import AfterValidator
 
-__all__ = ["Doi", "Licence", "Orcid", "Ror", "doi", "licence", "orcid", "ror"]
+__all__ = ["Doi", "Licence", "Orcid", "Ror", "doi", "is_listed_licence", "licence", "orcid", "ror"]
 
 _ORCID = re.compile(r"(?:https?://orcid\.org/)?([0-9]{4})-?([0-9]{4})-?([0-9]{4})-?([0-9]{3}[0-9X])")
 _ROR = re.compile(r"(?:https://)?ror\.org/(0([a-hj-km-np-tv-z0-9]{6})([0-9]{2}))")
@@ -126,6 +126,17 @@ def licence(text: str) -> str:
             f"a licence is written as its SPDX identifier, such as CC-BY-4.0, or LicenseRef-NAME; found {text!r}"
         )
     return text
+
+
+def is_listed_licence(text: str) -> bool:
+    """Return whether a text has the form of an identifier of the SPDX list; a sheet may state a licence in words.
+
+    Examples
+    --------
+    >>> is_listed_licence("CC-BY-4.0"), is_listed_licence("LicenseRef-ours"), is_listed_licence("ask the laboratory")
+    (True, False, False)
+    """
+    return _LICENCE.fullmatch(text) is not None and not text.startswith("LicenseRef-")
 
 
 Orcid = Annotated[str, AfterValidator(orcid)]

@@ -16,6 +16,7 @@ from typing import Any
 
 from archive.exchange.about import About
 from schemas.deposit import Author
+from schemas.identifiers import is_listed_licence
 
 __all__ = ["citation_cff", "datacite_json"]
 
@@ -116,7 +117,7 @@ def _creator(author: Author) -> dict[str, Any]:
 
 
 def _rights(identifier: str) -> dict[str, str]:
-    if identifier.startswith("LicenseRef-"):
+    if not is_listed_licence(identifier):
         return {"rights": identifier}
     return {
         "rights": identifier,

@@ -21,6 +21,7 @@ from archive.exchange.contents import plan_path, sealed_path
 from archive.exchange.prov_names import program_identifier
 from archive.exchange.sealed_document import SealedDocument
 from schemas.deposit import Author
+from schemas.identifiers import is_listed_licence
 from schemas.lineage import AccessionDocument, ReductionDocument
 
 __all__ = ["CRATE_NAME", "crate"]
@@ -70,7 +71,7 @@ def crate(about: About, sealed: Sequence[SealedDocument], files: Mapping[str, tu
     ]
     people = [_person(number, author) for number, author in enumerate(about.authors, 1)]
     institutions = _institutions(about)
-    licences = [_licence(each) for each in about.licences] or [_no_licence()]
+    licences = [_licence(number, each) for number, each in enumerate(about.licences, 1)] or [_no_licence()]
     root: Entity = {
         "@id": "./",
         "@type": "Dataset",
@@ -243,16 +244,18 @@ def _institutions(about: About) -> list[Entity]:
     return list(found.values())
 
 
-def _licence(identifier: str) -> Entity:
-    own = identifier.startswith("LicenseRef-")
-    return {
-        "@id": f"#{identifier}" if own else f"https://spdx.org/licenses/{identifier}.html",
-        "@type": "CreativeWork",
-        "name": identifier,
-        "description": f"Licence with the SPDX identifier {identifier}"
-        if not own
-        else f"Terms of the laboratory, {identifier}; ask whoever gave you this package",
-    }
+def _licence(number: int, text: str) -> Entity:
+    if is_listed_licence(text):
+        identifier, what = (
+            f"https://spdx.org/licenses/{text}.html",
+            f"Licence with the SPDX identifier {text}",
+        )
+    else:
+        identifier, what = (
+            f"#licence-{number}",
+            "Terms as the laboratory states them; ask whoever gave you this package",
+        )
+    return {"@id": identifier, "@type": "CreativeWork", "name": text, "description": what}
 
 
 def _no_licence() -> Entity:

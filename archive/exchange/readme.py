@@ -65,7 +65,7 @@ def readme(about: About, sealed: Sequence[SealedDocument], example: str) -> str:
         Path of a sealed file in the package.
     """
     rights = (
-        "Licence, by SPDX identifier: " + ", ".join(about.licences)
+        "Licence: " + ", ".join(about.licences)
         if about.licences
         else "No licence is stated; this package grants no right to use the data again."
     )

@@ -16,6 +16,7 @@ import pytest
 from archive import Archive
 from archive.exchange.about import About
 from archive.exchange.citation import citation_cff, datacite_json
+from archive.exchange.crate import crate
 from schemas.deposit import Author, Deposit
 from tests.outside import missing
 
@@ -137,6 +138,12 @@ def test_nothing_is_invented_where_nothing_is_stated(lab: Archive, package: Path
     assert "Not stated: authors" in text
 
 
+def test_terms_in_words_are_no_address() -> None:
+    content = json.loads(crate(stated(licences=("ask us", "CC0-1.0")), [], {}))
+    root = next(each for each in content["@graph"] if each["@id"] == "./")
+    assert root["license"] == [{"@id": "#licence-1"}, {"@id": "https://spdx.org/licenses/CC0-1.0.html"}]
+
+
 def test_another_program_reads_the_crate(named: Path) -> None:
     """Against the package rocrate 0.16, the reader and writer of the RO-Crate community."""
     try:
@@ -221,11 +228,12 @@ def test_the_record_for_catalogues_is_valid_by_its_schema() -> None:
     except ImportError:
         missing("the package datacite is not installed")
     for about in (stated(), stated(collected=None, licences=(), keywords=(), supplement_to=(), funder=None, publisher_ror=None),
-                  stated(licences=("LicenseRef-ours", "CC0-1.0"), award=None)):  # fmt: skip
+                  stated(licences=("ask us", "LicenseRef-ours", "CC0-1.0"), award=None)):  # fmt: skip
         record = json.loads(datacite_json(about, ["2026-04.a1"]))
         schema45.validator.validate(record)
         assert record["publicationYear"] == record["dates"][0]["date"][:4]
     assert record["rightsList"] == [
+        {"rights": "ask us"},
         {"rights": "LicenseRef-ours"},
         {
             "rights": "CC0-1.0", "rightsUri": "https://spdx.org/licenses/CC0-1.0.html", "rightsIdentifier": "CC0-1.0",
