@@ -64,7 +64,6 @@ class EffectiveSource:
             }
         self.revisions = Revisions(lab, newest=newest, pinned=pinned)
         self._read: dict[str, list[AccessionDocument]] = {}
-        self._borne = lab.index.amended_sweeps()
 
     @property
     def withdrawn(self) -> Mapping[str, str]:

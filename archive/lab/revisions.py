@@ -58,11 +58,13 @@ class Revisions:
         self._newest, self._pinned = newest, pinned
         self.withdrawn = {row.target: row.sentence() for row in source.index.withdrawals()}
         self._superseding: dict[str, tuple[str, str]] = {}
+        self._by_name: dict[str, list[RecordRow]] = {}
+        if pinned is not None:
+            return
         for row in source.index.revisions():
             if row.counts and row.supersedes is not None:
                 self._superseding[row.supersedes] = (row.address, row.because)
         self._carried = source.index.replaced_records()
-        self._by_name: dict[str, list[RecordRow]] = {}
         for record in source.index.records():
             self._by_name.setdefault(record.name, []).append(record)
         if extra is not None:
