@@ -11,10 +11,11 @@ __all__ = ["Bounds", "joined_units", "named_range", "point_in_time", "si_bounds"
 Bounds = tuple[float | None, float | None]
 
 _END = re.compile(
-    r"\s*(?P<number>[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]+)?)?\s*(?P<unit>.*?)\s*$"
+    # Possessive, and matched without blanks around: a long text that is no range must not take minutes.
+    r"(?P<number>[+-]?(?:[0-9]++\.?[0-9]*+|\.[0-9]++)(?:[eE][+-]?[0-9]++)?+)?+\s*+(?P<unit>.*)$"
 )
 _BARE = re.compile(r"[-+0-9.eE ]*:[-+0-9.eE ]*")
-_NAMED = re.compile(r"\s*(?P<name>[A-Za-z][A-Za-z0-9_]{0,63})\s*(?:=\s*(?P<range>.*\S)\s*)?$")
+_NAMED = re.compile(r"(?P<name>[A-Za-z][A-Za-z0-9_]{0,63})\s*+(?:=\s*+(?P<range>.*\S))?$")
 _DAY = re.compile(r"[0-9]{4}-[0-9]{2}-[0-9]{2}$")
 _EXAMPLE = "a range such as 20:35 umol/m^2; one end may be left open, as in 20: umol/m^2"
 
@@ -39,7 +40,7 @@ def si_bounds(text: str, to_si: Callable[[str, str], float]) -> Bounds:
     >>> si_bounds("400:800 mK", lambda number, unit: float(number) * {"mK": 1e-3}[unit])
     (0.4, 0.8)
     """
-    ends = [_END.match(part) for part in text.split(":")]
+    ends = [_END.match(part.strip()) for part in text.split(":", 2)]
     if len(ends) != 2 or ends[0] is None or ends[1] is None:
         raise ValueError(f"found {text!r}; expected {_EXAMPLE}")
     units = [end["unit"] for end in ends if end is not None]
@@ -69,7 +70,7 @@ def named_range(text: str) -> tuple[str, str | None]:
     >>> named_range("T_KT=0.4:0.6 K"), named_range("T_KT")
     (('T_KT', '0.4:0.6 K'), ('T_KT', None))
     """
-    found = _NAMED.match(text)
+    found = _NAMED.match(text.strip())
     if found is None:
         raise ValueError(f"found {text!r}; expected the name of a result and a range, such as T_KT=0.4:0.6 K")
     return found["name"], found["range"]

@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import re
-import tomllib
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any, Generic, TypeVar
@@ -13,6 +11,7 @@ from schemas.acts import AmendmentSheet, RevisionSheet
 from schemas.base import Record
 from schemas.finding import Finding
 from schemas.plan import Plan
+from schemas.toml_text import TomlFault, tables_of
 
 __all__ = ["ActReading", "read_amendment", "read_revision"]
 
@@ -116,17 +115,14 @@ def _tables(
         line = data[: error.start].count(b"\n") + 1
         return file, data, None, refused("this is not UTF-8 text", "save it as UTF-8", line=line), empty
     try:
-        return file, data, tomllib.loads(text), (), LineMap(text)
-    except (tomllib.TOMLDecodeError, RecursionError) as error:
-        message = str(error) if isinstance(error, tomllib.TOMLDecodeError) else "tables nested too deeply"
-        place = re.search(r"\(at line (\d+), column (\d+)\)", message)
-        what = re.sub(r"\s*\(at .*\)$", "", message)
-        where: dict[str, Any] = {"line": int(place[1]) if place else max(1, len(text.splitlines()))}
-        where |= {"column": place[2]} if place else {}
+        return file, data, tables_of(text), (), LineMap(text)
+    except TomlFault as fault:
+        where: dict[str, Any] = {"line": fault.line}
+        where |= {} if fault.column is None else {"column": str(fault.column)}
         return (
             file,
             data,
             None,
-            refused(f"this is not valid TOML: {what}", "correct the line", **where),
+            refused(f"this is not valid TOML: {fault}", "correct the line", **where),
             empty,
         )

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import json
-import tomllib
 from pathlib import Path
 
 from pydantic import Field
@@ -13,6 +12,7 @@ from archive.intake.sheet import LineMap, validated
 from archive.intake.thresholds import Thresholds
 from schemas.base import Record, Text
 from schemas.deposit import Deposit
+from schemas.toml_text import TomlFault, tables_of
 
 __all__ = ["SETTINGS_NAME", "Settings", "read_settings", "settings_text", "settings_without_index"]
 
@@ -95,11 +95,11 @@ def read_settings(root: Path) -> Settings:
     except (OSError, UnicodeDecodeError) as error:
         raise InvalidSheet("the settings cannot be read", file=str(path), found=str(error)) from None
     try:
-        tables = tomllib.loads(text)
-    except tomllib.TOMLDecodeError as error:
-        raise InvalidSheet(f"the settings are not valid TOML: {error}", file=str(path)) from None
-    except RecursionError:
-        raise InvalidSheet("the settings are nested too deeply", file=str(path)) from None
+        tables = tables_of(text)
+    except TomlFault as fault:
+        raise InvalidSheet(
+            f"the settings are not valid TOML: {fault}", file=str(path), line=fault.line, column=fault.column
+        ) from None
     settings, findings = validated(Settings, tables, file=str(path), lines=LineMap(text))
     if settings is None:
         raise InvalidSheet("; ".join(finding.sentence() for finding in findings))

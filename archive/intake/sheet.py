@@ -9,7 +9,6 @@ from __future__ import annotations
 import difflib
 import json
 import re
-import tomllib
 from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from datetime import date, datetime, time
@@ -24,6 +23,7 @@ from schemas.cooldown import CooldownSheet
 from schemas.finding import Finding
 from schemas.sweep import CHANNEL_PATTERN, FILE_PATTERN
 from schemas.thermometer import MADE_FROM_PATTERN
+from schemas.toml_text import TomlFault, tables_of
 
 __all__ = ["LineMap", "SheetReading", "read_sheet", "validated"]
 
@@ -45,7 +45,9 @@ _FORMS = {
 }
 _WITH_OFFSET = "write it with its offset, e.g. 2026-03-02T09:10:00+02:00"
 _NO_TIME = {"datetime_type", "datetime_parsing", "datetime_from_date_parsing", "datetime_object_invalid"}
-_HEADER = re.compile(r"^\s*\[(\[)?\s*(?P<path>[^\[\]]+?)\s*\]")
+# Possessive where a line could be split in many ways: a long line that fits nothing must not take minutes.
+_HEADER = re.compile(r"^\s*+\[(\[)?(?P<path>[^\[\]]++)\]")
+_STRING = re.compile(r""""(?:[^"\\]|\\.)*+"?|'[^']*+'?""")
 _ASSIGNMENT = re.compile(
     r"""^\s*(?P<path>(?:[A-Za-z0-9_-]+|"[^"]*"|'[^']*')(?:\s*\.\s*(?:[A-Za-z0-9_-]+|"[^"]*"|'[^']*'))*)\s*="""
 )
@@ -112,7 +114,7 @@ def _logical_lines(text: str) -> Iterator[tuple[int, str]]:
             if line.count(mark) % 2 == 1:
                 closing = mark
         if closing is None and (depth > 0 or _ASSIGNMENT.match(line)):
-            bare = re.sub(r"\"(?:[^\"\\]|\\.)*\"|'[^']*'", "", line)
+            bare = _STRING.sub("", line)
             bare = bare.partition("#")[0]
             depth = max(0, depth + bare.count("[") + bare.count("{") - bare.count("]") - bare.count("}"))
 
@@ -170,18 +172,15 @@ def read_sheet(path: Path) -> SheetReading:
         return _unreadable(file, "the sheet is not UTF-8 text", "save it as UTF-8", line=line)
     lines = LineMap(text)
     try:
-        tables = tomllib.loads(text)
-    except (tomllib.TOMLDecodeError, RecursionError) as error:
-        message = str(error) if isinstance(error, tomllib.TOMLDecodeError) else "tables nested too deeply"
-        place = re.search(r"\(at line (\d+), column (\d+)\)", message)
-        what = re.sub(r"\s*\(at .*\)$", "", message)
+        tables = tables_of(text)
+    except TomlFault as fault:
         finding = Finding(
             code="sheet-syntax",
             severity="error",
-            what=f"this is not valid TOML: {what}",
+            what=f"this is not valid TOML: {fault}",
             file=file,
-            line=int(place[1]) if place else max(1, len(text.splitlines())),
-            column=place[2] if place else None,
+            line=fault.line,
+            column=None if fault.column is None else str(fault.column),
             remedy="correct the line and check again",
         )
         return SheetReading(file, text, None, (finding,), lines)

@@ -3,11 +3,9 @@
 from __future__ import annotations
 
 import json
-import tomllib
 from collections.abc import Iterable
 from functools import cache
 from importlib import resources
-from typing import Any
 
 from pydantic import ValidationError
 
@@ -16,6 +14,7 @@ from schemas.lineage import AnyRecord, SweepEntry
 from schemas.plan import Applies, Plan
 from schemas.substrate import Substrate
 from schemas.sweep import Sweep
+from schemas.toml_text import TomlFault, tables_of
 
 __all__ = ["applies", "load_plan", "plan_depth", "plans_for", "shipped_plans"]
 
@@ -46,10 +45,13 @@ def load_plan(text: str, *, file: str | None = None) -> Plan:
         The text is no TOML or no plan; the first fault is named with its place.
     """
     try:
-        tables: dict[str, Any] = tomllib.loads(text)
-        return Plan.model_validate_json(json.dumps(tables, default=str))
-    except tomllib.TOMLDecodeError as error:
-        raise InvalidSheet(f"the plan is no valid TOML: {error}", file=file) from None
+        return Plan.model_validate_json(json.dumps(tables_of(text), default=str))
+    except TomlFault as fault:
+        raise InvalidSheet(
+            f"the plan is no valid TOML: {fault}", file=file, line=fault.line, column=fault.column
+        ) from None
+    except RecursionError:
+        raise InvalidSheet("the plan is nested too deeply", file=file) from None
     except ValidationError as error:
         faults = error.errors()
         place = ".".join(str(part) for part in faults[0]["loc"])

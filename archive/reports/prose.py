@@ -81,7 +81,8 @@ def _pattern() -> re.Pattern[str]:
     return re.compile(
         rf"{_DIGEST}|(?<![A-Za-z0-9_.#@/-]){_NUMBER}(?:(?P<space> ?)(?P<unit>{units})(?![A-Za-z0-9_^/]))?(?![A-Za-z0-9_]|\.\d)"
         rf"|(?<![A-Za-z0-9_.#@-]){_SYMBOL}"
-        r"|(?<=\))\^(?P<power_of>[A-Za-z0-9]+)"
+        r"|(?<=\))\^(?P<power_of>[A-Za-z0-9]+)",
+        re.ASCII,  # digits of other scripts are no numbers here, and LaTeX lacks them
     )
 
 
@@ -137,11 +138,19 @@ def _text(text: str) -> Piece:
 
 
 def breakable(text: str, most: int = _LONGEST_UNBROKEN, piece: int = _PIECE) -> str:
-    """Return a text in which long words may break: a zero-width space every few characters."""
-    return " ".join(
-        word if len(word) <= most else "\u200b".join(word[k : k + piece] for k in range(0, len(word), piece))
-        for word in text.split(" ")
-    )
+    """Return a text in which long words may break: a zero-width space after the marks of an address, and every few characters of what is between.
+
+    Examples
+    --------
+    >>> breakable("2025-11/s001@empty-calorimeter.1").split("\u200b")
+    ['2025-', '11/', 's001@', 'empty-', 'calorimete', 'r.', '1']
+    """
+    return " ".join(word if len(word) <= most else _broken(word, piece) for word in text.split(" "))
+
+
+def _broken(word: str, piece: int) -> str:
+    parts = re.findall(r"[^/@#._-]*[/@#._-]|[^/@#._-]+", word)
+    return "\u200b".join(part[k : k + piece] for part in parts for k in range(0, len(part), piece))
 
 
 def _number(found: re.Match[str]) -> list[Piece] | None:
