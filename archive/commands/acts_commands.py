@@ -172,8 +172,6 @@ def stale(*, cooldown: str | None, archive_dir: Path | None, as_json: bool) -> N
       stillroom stale 2026-03 --json
     """
     with opening.open_archive(archive_dir) as lab:
-        if cooldown is not None:
-            lab.show(cooldown)
         found = lab.stale(cooldown)
     if as_json:
         write_json([_stale_content(each) for each in found])

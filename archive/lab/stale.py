@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections import defaultdict
 from dataclasses import dataclass, field
 
+from archive.errors import UnknownAddress
 from archive.index import InputRow, ReductionRow
 from archive.lab.reducing import current_plans
 from archive.lab.revisions import Revisions
@@ -62,7 +63,17 @@ def stale(
         Only reductions of this cooldown.
     extra : RevisionDocument or AmendmentDocument, optional
         An act that is not sealed, to see what it would do.
+
+    Raises
+    ------
+    UnknownAddress
+        If there is no such cooldown.
     """
+    if cooldown is not None and cooldown not in (names := source.cooldowns()):
+        raise UnknownAddress(
+            f"there is no cooldown {cooldown} in this archive",
+            expected=f"one of: {', '.join(names) or 'none yet'}",
+        )
     known = _Known(source, extra)
     reasons: dict[str, list[StaleReason]] = {}
     # What rests on a stale reduction is stale, too; the rows are gone through until nothing is added.

@@ -127,8 +127,11 @@ def test_the_index_is_made_anew_with_every_act(lab: Archive, sheet) -> None:
 
 
 def test_nothing_is_stale_when_nothing_was_said_afterwards(lab: Archive) -> None:
-    assert lab.stale() == []
+    assert lab.stale() == lab.stale("2026-03") == []
     assert lab.reduce_stale() == []
+    for ask in (lab.stale, lab.reduce_stale):
+        with pytest.raises(UnknownAddress, match="no cooldown 2027-01"):
+            ask("2027-01")
 
 
 def test_a_revised_calibration_makes_stale_what_rests_on_it_and_is_then_taken(lab: Archive, sheet) -> None:
