@@ -35,7 +35,7 @@ def cell_figures(scope: Scope) -> Iterator[Drawn]:
     for cell, films in sorted(groups.items()):
         # One reduction of each sweep: they have the same density, and the last has the most to say of it.
         members = [each[-1] for _, each in sorted(films.items())]
-        planar = any(output_of(each, "crossing_temperature") is not None for each in members)
+        planar = all(output_of(each, "amplitude_of_power_law") is None for each in members)
         made = _densities(scope, cell, members, universal=planar)
         if made is not None:
             yield made

@@ -143,13 +143,14 @@ def breakable(text: str, most: int = _LONGEST_UNBROKEN, piece: int = _PIECE) -> 
     Examples
     --------
     >>> breakable("2025-11/s001@empty-calorimeter.1").split("\u200b")
-    ['2025-', '11/', 's001@', 'empty-', 'calorimete', 'r.', '1']
+    ['2025-11/', 's001@', 'empty-', 'calorimete', 'r.', '1']
     """
     return " ".join(word if len(word) <= most else _broken(word, piece) for word in text.split(" "))
 
 
 def _broken(word: str, piece: int) -> str:
-    parts = re.findall(r"[^/@#._-]*[/@#._-]|[^/@#._-]+", word)
+    # Not within a date or a range of numbers.
+    parts = [part for part in re.split(r"(?<=[/@#._])|(?<=-)(?=[A-Za-z])", word) if part]
     return "\u200b".join(part[k : k + piece] for part in parts for k in range(0, len(part), piece))
 
 
