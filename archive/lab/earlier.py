@@ -8,6 +8,7 @@ import numpy as np
 
 from archive.intake.checks.check import History, LinearRegime
 from archive.intake.checks.rows import noise
+from archive.lab.effective import EffectiveSource
 from archive.lab.source import LabSource
 
 __all__ = ["history"]
@@ -54,8 +55,9 @@ def _scatter(source: LabSource, cooldown: str, cell: str) -> float | None:
 
 def _regime(source: LabSource, cooldown: str, cell: str) -> LinearRegime | None:
     """Rim speed up to which the newest drive sweep of other cooldowns found a cell to be linear."""
+    reading = EffectiveSource(source)
     for row in source.newest_sweeps(cell, kind="drive-sweep"):
-        documents = [] if row.cooldown == cooldown else source.reductions("drive-linearity", row.address)
+        documents = [] if row.cooldown == cooldown else reading.reductions("drive-linearity", row.address)
         if not documents:
             continue
         values = {output.name: output.value for output in documents[-1].outputs}
