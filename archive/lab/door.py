@@ -50,6 +50,8 @@ from archive.lab.revising import revise
 from archive.lab.source import LabSource, key_of
 from archive.lab.stale import Stale, stale
 from archive.lab.tracing import backward
+from archive.lab.viewing import archive_html, reduction_view, result, sweep_view
+from archive.lab.views import ReductionView, Result, RowList, SweepView
 from archive.lab.withdrawing import withdraw
 from archive.reduction.calibration_comparison import Drift
 from archive.reduction.monte_carlo import Request
@@ -463,13 +465,13 @@ class Archive:
 
     # Finding and showing ------------------------------------------------------------------------------------------
 
-    def search(self, query: SearchQuery) -> list[SweepRow]:
+    def search(self, query: SearchQuery) -> RowList[SweepRow]:
         """Sweeps that a query finds."""
-        return self._index.search(query)
+        return RowList(self._index.search(query))
 
-    def cooldowns(self) -> list[CooldownRow]:
+    def cooldowns(self) -> RowList[CooldownRow]:
         """All cooldowns."""
-        return self._index.cooldowns()
+        return RowList(self._index.cooldowns())
 
     def accessions(self, cooldown: str | None = None) -> list[AccessionRow]:
         """All accessions, or those of one cooldown."""
@@ -486,33 +488,34 @@ class Archive:
         cooldown: str | None = None,
         sweep: str | None = None,
         withdrawn: bool = False,
-    ) -> list[ResultRow]:
+    ) -> RowList[ResultRow]:
         """Scalar results of current reductions, as a table; withdrawn ones too, marked, if asked for."""
-        return self._index.results(name=name, cooldown=cooldown, sweep=sweep, withdrawn=withdrawn)
+        return RowList(self._index.results(name=name, cooldown=cooldown, sweep=sweep, withdrawn=withdrawn))
 
     def statistics(self) -> dict[str, int]:
         """Counts of what the archive holds."""
         return self._index.statistics()
 
-    def sweep(self, address: str) -> dict[str, NDArray[np.float64]]:
-        """Channels of a sweep as stored; `show` tells their units.
+    def sweep(self, address: str) -> SweepView:
+        """Channels of a sweep as stored: arrays by name, with their units beside them; see `archive.lab.views.ArrayView`.
 
         Parameters
         ----------
         address : str
             Such as `2026-03/s017`.
         """
-        parsed = parse_address(address)
-        if parsed.kind != "item" or parsed.item is None:
-            raise UnknownAddress(f"{address} is no sweep", expected="an address such as 2026-03/s017")
-        document = self._source.holding(parsed.head, parsed.item)
-        entry = next(entry for entry in document.sweeps if entry.name == parsed.item)
-        return {
-            channel.name: np.asarray(
-                self._source.column(document.address, parsed.item, channel.name), dtype=np.float64
-            )
-            for channel in entry.channels
-        }
+        return sweep_view(self._source, address)
+
+    def reduction(self, address: str) -> ReductionView:
+        """Arrays of a reduction by name, with uncertainties and units beside them, and its results."""
+        return reduction_view(self._source, address)
+
+    def result(self, address: str) -> Result:
+        """One number with uncertainty and unit, by an address such as `2026-03/s017@film-transition.2#T_KT`."""
+        return result(self._source, address)
+
+    def _repr_html_(self) -> str:
+        return archive_html(self.name, str(self.root), self.statistics(), self.cooldowns())
 
     def array(self, address: str) -> NDArray[np.float64]:
         """Array that an address names: a channel of a sweep or an output of a reduction, in its stored unit."""

@@ -1,0 +1,235 @@
+"""Columns of a sweep or a reduction: a mapping of names to plain arrays, and with one more word their units.
+
+Rules: `view["period"]` is the array as stored and stays one; everything else is beside it. A view holds what it shows, so
+that it outlives the archive it came from.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping, Sequence
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+from typing_extensions import override
+
+from archive.errors import UnknownAddress
+from archive.lab.views.choice import hours, pair
+from archive.lab.views.column import Column
+from archive.lab.views.frames import as_dataframe, as_dataset
+from archive.lab.views.html import fragment, grid
+from archive.lab.views.pint_units import pint_quantity
+from archive.lab.views.result import Result
+from archive.reports.numbers import shown_output
+from archive.reports.svg import Series, axis_of, plot
+
+if TYPE_CHECKING:
+    import pandas as pd
+    import pint
+    import xarray as xr
+
+__all__ = ["ArrayView", "ReductionView", "SweepView"]
+
+
+class ArrayView(Mapping[str, NDArray[np.float64]]):
+    """Columns of equal length, by name.
+
+    Parameters
+    ----------
+    address : str
+        What they belong to.
+    kind : str
+        Kind of the sweep.
+    columns : sequence of Column
+    marks : sequence of str
+        What was said of it later: withdrawn, amended, superseded.
+
+    Examples
+    --------
+    >>> T = Column("temperature", "K", "temperature", np.array([0.1, 0.2]), scale="PLTS-2000")
+    >>> P = Column("period", "us", "period", np.array([1000.5, 1000.25]))
+    >>> view = SweepView("2026-03/s017", "temperature-sweep", [T, P])
+    >>> view["period"].tolist(), view.units
+    ([1000.5, 1000.25], {'temperature': 'K', 'period': 'us'})
+    >>> print(view.quantity("period").to("ms"))
+    [1.0005 1.00025] millisecond
+    """
+
+    what = "columns"
+
+    def __init__(self, address: str, kind: str, columns: Sequence[Column], marks: Sequence[str] = ()) -> None:
+        self.address = address
+        self.kind = kind
+        self.columns: dict[str, Column] = {column.name: column for column in columns}
+        self.marks = tuple(marks)
+
+    @override
+    def __getitem__(self, name: str) -> NDArray[np.float64]:
+        return self.columns[name].values
+
+    @override
+    def __iter__(self) -> Iterator[str]:
+        return iter(self.columns)
+
+    @override
+    def __len__(self) -> int:
+        return len(self.columns)
+
+    def column(self, name: str) -> Column:
+        """Column with all that stands beside it.
+
+        Raises
+        ------
+        UnknownAddress
+            If there is none of that name; the message lists those there are.
+        """
+        try:
+            return self.columns[name]
+        except KeyError:
+            raise UnknownAddress(
+                f"{self.address} has no column {name}", expected=f"one of: {', '.join(self.columns)}"
+            ) from None
+
+    @property
+    def units(self) -> dict[str, str]:
+        """Unit of each column."""
+        return {name: column.unit for name, column in self.columns.items()}
+
+    @property
+    def rows(self) -> int:
+        """Number of rows."""
+        return next((column.values.size for column in self.columns.values()), 0)
+
+    def quantity(self, name: str) -> pint.Quantity[NDArray[np.float64]]:
+        """Column as a quantity of pint, e.g. `view.quantity("period").to("ms")`."""
+        column = self.column(name)
+        return pint_quantity(column.values, column.unit)
+
+    def uncertainty(self, name: str) -> NDArray[np.float64] | None:
+        """Combined standard uncertainty of a column in its unit, or None if none is stored with it."""
+        return self.column(name).uncertainty
+
+    def to_pandas(self, *, units_in_names: bool = False) -> pd.DataFrame:
+        """Table of pandas, uncertainties in columns `NAME_uncertainty`, instants as UTC times.
+
+        Parameters
+        ----------
+        units_in_names : bool
+            Headings such as `period/us`, which survive what loses `DataFrame.attrs["units"]`, such as writing CSV.
+
+        Raises
+        ------
+        BadRequest
+            If pandas is not installed.
+        """
+        return as_dataframe(self._listed, units_in_names=units_in_names, about=self._about)
+
+    def to_xarray(self) -> xr.Dataset:
+        """Data set of xarray along `row`, with units as attributes; time and temperature are its coordinates.
+
+        Raises
+        ------
+        BadRequest
+            If xarray is not installed.
+        """
+        along = [each.name for each in self._listed if each.kind in ("instant", "temperature")]
+        return as_dataset(self._listed, coordinates=along, about=self._about)
+
+    @property
+    def _listed(self) -> list[Column]:
+        return list(self.columns.values())
+
+    @property
+    def _about(self) -> dict[str, str]:
+        told = {"address": self.address, "kind": self.kind}
+        return {**told, "marks": "; ".join(self.marks)} if self.marks else told
+
+    @override
+    def __repr__(self) -> str:
+        names = ", ".join(column.label for column in self.columns.values())
+        told = f" [{'; '.join(self.marks)}]" if self.marks else ""
+        return f"<{self.what} {self.address}, {self.kind}, {self.rows} rows: {names}>{told}"
+
+    def _repr_html_(self) -> str:
+        title = f"{self.what} {self.address}: {self.kind}, {self.rows} rows"
+        return fragment(title, self._table(), self._picture(), marks=self.marks)
+
+    def _table(self) -> str:
+        heads = ("column", "unit", "kind", "from", "to", "missing")
+        return grid(heads, [_line(column) for column in self.columns.values()])
+
+    def _picture(self) -> str:
+        chosen = pair(self.kind, self.columns)
+        if chosen is None:
+            return ""
+        x, y = hours(chosen[0]), chosen[1]
+        across, up = axis_of(x.label, [x.values]), axis_of(y.label, [y.values])
+        if across is None or up is None:
+            return ""
+        label = f"{y.label} against {x.label} of {self.address}"
+        return plot(
+            across, up, [Series(x.values, y.values, marks=True)], label=label, width=110.0, height=64.0
+        )
+
+
+def _line(column: Column) -> tuple[str, ...]:
+    known = column.values[np.isfinite(column.values)]
+    missing = str(column.values.size - known.size) if known.size < column.values.size else ""
+    if column.kind == "instant":
+        ends = [str(np.datetime64(round(float(each)), "s")) + "Z" for each in _ends(known)]
+    else:
+        ends = [f"{each:.6g}" for each in _ends(known)]
+    scale = f" on {column.scale}" if column.scale else ""
+    low, high = ends or ("", "")
+    return column.name, column.unit, column.kind.replace("_", " ") + scale, low, high, missing
+
+
+def _ends(known: NDArray[np.float64]) -> list[float]:
+    return [float(known.min()), float(known.max())] if known.size else []
+
+
+class SweepView(ArrayView):
+    """Channels of a sweep as stored, in the units of its file; see `ArrayView`."""
+
+    what = "sweep"
+
+
+class ReductionView(ArrayView):
+    """Arrays of a reduction with their uncertainties, in SI units, and its scalar results; see `ArrayView`.
+
+    Parameters
+    ----------
+    results : sequence of Result
+    """
+
+    what = "reduction"
+
+    def __init__(
+        self,
+        address: str,
+        kind: str,
+        columns: Sequence[Column],
+        marks: Sequence[str] = (),
+        *,
+        results: Sequence[Result] = (),
+    ) -> None:
+        super().__init__(address, kind, columns, marks)
+        self.results: dict[str, Result] = {result.name: result for result in results}
+
+    @override
+    def _table(self) -> str:
+        rows = [
+            (each.name, shown_output(each.entry).text, each.description) for each in self.results.values()
+        ]
+        found = grid(("result", "value", "what"), rows) if rows else ""
+        return found + (super()._table() if self.columns else "")
+
+    @override
+    def __repr__(self) -> str:
+        return f"{super().__repr__()[:-1]}; results: {', '.join(self.results) or 'none'}>"
+
+    @property
+    @override
+    def _listed(self) -> list[Column]:
+        """Only columns of one length go into one table."""
+        return [column for column in self.columns.values() if column.values.size == self.rows]
