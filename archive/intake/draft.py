@@ -17,7 +17,7 @@ from archive.errors import ArchiveError, BadRequest
 from archive.intake.draft_layouts import BLANK, GUESSED, layout_lines, layouts_of
 from archive.intake.folder import SHEET_NAME
 from archive.intake.guess import TableGuess, guess_table
-from archive.intake.paths import folder_files
+from archive.intake.paths import folder_files, path_inside
 from archive.intake.sources import is_array_source
 from schemas.cooldown import CooldownSheet
 from schemas.gas import GasEnd
@@ -131,8 +131,12 @@ def _look_at(folder: Path, name: str, guesses: dict[str, TableGuess], others: di
     if is_array_source(name):
         others[name] = "a NumPy or HDF5 file: describe its columns as a sweep of its own if it holds one"
         return
+    path = path_inside(folder, name)
+    if isinstance(path, str):
+        others[name] = f"not looked at: it {path}"
+        return
     try:
-        guess = guess_table(folder.joinpath(*name.split("/")))
+        guess = guess_table(path)
     except (ArchiveError, OSError, ValueError) as error:
         reason = error.what if isinstance(error, ArchiveError) else str(error)
         others[name] = f"not taken for a table: {reason}"

@@ -25,18 +25,19 @@ import numpy.typing as npt
 if TYPE_CHECKING:  # the child needs no records, and starts in half the time without them
     from archive.intake.dialect import ColumnRequest
 
-__all__ = ["LARGEST", "MOST_PACKED", "RefusalError", "column_of", "hdf5_columns", "row_of"]
+__all__ = ["LARGEST", "MOST_PACKED", "RefusalError", "column_of", "hdf5_columns", "row_of", "weight"]
 
-LARGEST: Final = 4 << 30
-"""Bytes that one source may unpack to; a column of a billion doubles is no sweep."""
+LARGEST: Final = 1 << 30
+"""Bytes that one source may unpack to, as `weight` counts them; a column of a hundred million doubles is no sweep."""
 
 MOST_PACKED: Final = 1100
 """Deflate packs at most 1032 to 1 (zlib's technical notes, 'Maximum Compression Factor'); more was never stored."""
 
 MOST_OBJECTS: Final = 10_000
 DEEPEST: Final = 32
-CHILD_SECONDS: Final = 600
-_MEMORY: Final = LARGEST + (2 << 30)
+CHILD_SECONDS: Final = 300
+# The values, the answer made of them, and what the libraries claim without using it.
+_MEMORY: Final = 3 * LARGEST + (1 << 30)
 # Registered identifiers of HDF5's own filters: deflate, shuffle, fletcher32, szip, nbit, scale-offset (H5Zpublic.h).
 _OWN_FILTERS: Final = frozenset({1, 2, 3, 4, 5, 6})
 
@@ -45,6 +46,17 @@ Columns = dict[str, npt.NDArray[Any]]
 
 class RefusalError(Exception):
     """The whole source, or a column of it, is not read; the sentence says why."""
+
+
+def weight(dtype: np.dtype[Any]) -> int:
+    """Return the bytes that one value comes to once it is read: a double, or text of four bytes a character.
+
+    Examples
+    --------
+    >>> weight(np.dtype("i1")), weight(np.dtype("S6"))
+    (8, 24)
+    """
+    return max(8, dtype.itemsize * (4 if dtype.kind == "S" else 1))
 
 
 def hdf5_columns(path: Path, columns: Sequence[ColumnRequest]) -> tuple[Columns, dict[str, str]]:
@@ -153,7 +165,7 @@ def row_of(shape: tuple[int, ...], names: Sequence[str] | None, rest: str | int 
     if len(shape) != 2 or names:
         raise RefusalError("it is no table of numbers, so it has no rows that could be columns")
     number = rest.removeprefix("row/")
-    if not (number.isascii() and number.isdigit() and 1 <= int(number) <= shape[0]):
+    if not (number.isascii() and number.isdigit() and len(number) < 20 and 1 <= int(number) <= shape[0]):
         raise RefusalError(f"it has {shape[0]} rows and no row {number[:20]}")
     return int(number) - 1
 
@@ -192,7 +204,7 @@ def _answer(asked: dict[str, Any]) -> dict[str, npt.NDArray[Any]]:
                 except RefusalError as refusal:
                     said["faults"][name] = str(refusal)
                 else:
-                    budget -= array.nbytes
+                    budget -= array.size * weight(array.dtype)
                     arrays[str(index)], said["arrays"][name] = array, str(index)
     except (RefusalError, OSError, RuntimeError, ValueError, KeyError, TypeError, MemoryError) as error:
         said["refused"] = (
@@ -249,6 +261,11 @@ def _column(file: Any, h5py: Any, tables: dict[str, Any], column: str | int, bud
             )
         words = data.asstr("utf-8", "strict")
         text = words[row, :] if row is not None else words[...] if which is None else words[:, which]
+        longest = max(map(len, np.ravel(text)), default=0)
+        if np.size(text) * longest * 4 > budget:
+            raise RefusalError(
+                f"its longest text has {longest} characters, too many for its {np.size(text)} rows"
+            )
         return np.asarray(text, dtype=np.str_) if single else np.asarray(text, dtype=np.str_).reshape(-1)
     if dtype.hasobject or dtype.subdtype is not None:
         raise RefusalError(
@@ -291,9 +308,12 @@ def _found(file: Any, h5py: Any, tables: dict[str, Any], column: str | int) -> t
 
 
 def _require_readable(data: Any, budget: int) -> None:
-    declared = int(data.size or 0) * data.dtype.itemsize
-    if declared > budget:
-        raise RefusalError(f"it declares {declared} bytes, more than are read ({LARGEST})")
+    values = int(data.size or 0)
+    declared = values * data.dtype.itemsize
+    if values * weight(data.dtype) > budget:
+        raise RefusalError(
+            f"it declares {declared} bytes in {values} values, more than are read ({LARGEST} bytes in all)"
+        )
     stored = data.id.get_storage_size()
     if declared > (1 << 20) + MOST_PACKED * stored:
         raise RefusalError(f"it declares {declared} bytes and stores {stored}; most of it was never written")

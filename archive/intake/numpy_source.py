@@ -9,7 +9,9 @@ The format is that of NumPy Enhancement Proposal 1 (Kern, 2007), versions 1.0 an
 from __future__ import annotations
 
 import io
+import lzma
 import math
+import struct
 import tokenize
 import zipfile
 import zlib
@@ -21,7 +23,15 @@ import numpy as np
 import numpy.typing as npt
 
 from archive.intake.dialect import ColumnRequest
-from archive.intake.hdf5_source import LARGEST, MOST_PACKED, Columns, RefusalError, column_of, row_of
+from archive.intake.hdf5_source import (
+    LARGEST,
+    MOST_PACKED,
+    Columns,
+    RefusalError,
+    column_of,
+    row_of,
+    weight,
+)
 
 __all__ = ["numpy_columns"]
 
@@ -40,6 +50,11 @@ _BROKEN: Final = (
     TypeError,
     zipfile.BadZipFile,
     zlib.error,
+    lzma.LZMAError,
+    struct.error,
+    IndexError,
+    AttributeError,
+    OverflowError,
 )
 
 
@@ -161,9 +176,14 @@ def _array(stream: BinaryIO, size: int) -> npt.NDArray[Any]:
         raise RefusalError(
             "it holds Python objects (a pickle), which are never read; save plain numbers or text"
         )
-    declared = math.prod(shape) * dtype.itemsize
-    if declared > LARGEST:
-        raise RefusalError(f"it declares {declared} bytes; more than {LARGEST} are not read")
+    values = math.prod(shape)
+    if values and not dtype.itemsize:
+        raise RefusalError(f"it declares {values} values that take no room")
+    declared = values * dtype.itemsize
+    if values * weight(dtype) > LARGEST:
+        raise RefusalError(
+            f"it declares {declared} bytes in {values} values; more than {LARGEST} bytes are not read"
+        )
     if declared != size - stream.tell():
         raise RefusalError(f"it declares {declared} bytes of data and has {size - stream.tell()}")
     stream.seek(0)

@@ -9,7 +9,10 @@ __all__ = ["folder_files", "path_inside"]
 
 
 def folder_files(folder: Path) -> Iterator[str]:
-    """Names of the files below a folder, relative with forward slashes, sorted; hidden ones are left out."""
+    """Names of the files below a folder, relative with forward slashes, sorted; hidden ones are left out.
+
+    Links that lead out of the folder are listed too; before such a file is opened, `path_inside` has to be asked.
+    """
     for path in sorted(folder.rglob("*")):
         relative = path.relative_to(folder)
         if path.is_file() and not any(part.startswith(".") for part in relative.parts):
@@ -36,7 +39,10 @@ def _file_at(path: Path, folder: Path) -> Path | str:
         return "is a link that leads out of the cooldown folder"
     if not resolved.is_file():
         return "is not a file"
-    # On a file system that folds case, a sheet could name one file in two spellings.
-    if path.name not in {entry.name for entry in path.parent.iterdir()}:
-        return "is spelled differently on disk"
+    # On a file system that folds case or normal forms, a sheet could name one file in two spellings.
+    for part in (path, *path.parents):
+        if part == folder:
+            break
+        if part.name not in {entry.name for entry in part.parent.iterdir()}:
+            return "is spelled differently on disk"
     return path

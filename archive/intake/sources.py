@@ -16,7 +16,7 @@ import pyarrow as pa
 
 from archive.intake.cells import parsed_number
 from archive.intake.dialect import BadCells, Block, ColumnRequest
-from archive.intake.hdf5_source import Columns, RefusalError, hdf5_columns
+from archive.intake.hdf5_source import LARGEST, Columns, RefusalError, hdf5_columns, weight
 from archive.intake.numpy_source import numpy_columns
 from archive.intake.timestamps import EARLIEST, LATEST, TimeStamps
 
@@ -73,8 +73,9 @@ def read_array_source(path: Path, file: str, columns: Sequence[ColumnRequest]) -
         kind = _kind(path)
         read = hdf5_columns if kind == "hdf5" else numpy_columns
         arrays, faults = read(path, columns)
+        _require_room(arrays)
     except RefusalError as refusal:
-        faults = {}
+        arrays, faults = {}, {}
         bad.add(0, 0, "", path.name, f"this source is refused: {refusal}")
     for number, request in enumerate(columns, start=1):
         if request.name in faults:
@@ -97,6 +98,16 @@ def read_array_source(path: Path, file: str, columns: Sequence[ColumnRequest]) -
     bad.settle()
     block.bad_cells, block.bad_cell_count = bad.detailed, bad.count
     return block
+
+
+def _require_room(arrays: Columns) -> None:
+    """Refuse columns that fit one by one but not together: one may be asked for many times, and one value fills all rows."""
+    rows = max((len(array) for array in arrays.values() if array.ndim), default=1)
+    needed = sum(rows * weight(array.dtype) for array in arrays.values())
+    if needed > LARGEST:
+        raise RefusalError(
+            f"its columns come to {needed} bytes over {rows} rows; more than {LARGEST} are not read"
+        )
 
 
 def _kind(path: Path) -> str:
