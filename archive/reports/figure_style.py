@@ -54,7 +54,7 @@ class NoFigure(Exception):
 
 @dataclass(frozen=True)
 class Drawn:
-    """A figure: its file name, bytes, caption as plain text, and the reductions it shows."""
+    """A figure: its file name, bytes, caption as plain text, and the addresses of the reductions or records it shows."""
 
     name: str
     content: bytes

@@ -22,7 +22,7 @@ from archive.reports.figures_bulk import (
     heat_capacity_figure,
     superfluid_law_figure,
 )
-from archive.reports.figures_calibration import calibration_figure
+from archive.reports.figures_calibration import calibration_figure, drift_figures
 from archive.reports.figures_cell import cell_figures
 from archive.reports.figures_current import current_figure
 from archive.reports.figures_drive import linearity_figure, stability_figure
@@ -73,7 +73,7 @@ MAKERS: Final[dict[str, Callable[[Scope, ReductionDocument], Drawn]]] = {
 
 
 def figures(scope: Scope) -> Iterator[Drawn | Undrawn]:
-    """Yield the figures of the reductions at hand, why there is none of the others, and those over all films of a cell."""
+    """Yield the figures of the reductions at hand, why there is none of the others, those over all films of a cell, and the drift of thermometers."""
     with mpl.rc_context(STYLE):  # type: ignore[arg-type]
         told: set[str] = set()
         for reduction in scope.reductions:
@@ -84,6 +84,7 @@ def figures(scope: Scope) -> Iterator[Drawn | Undrawn]:
                 told.add(cell)
                 yield _made(sweep_figure, scope, reduction, "figure of the whole way from signal to amount")
         yield from cell_figures(scope)
+        yield from drift_figures(scope)
 
 
 def _made(

@@ -1,17 +1,21 @@
-"""Figure of a calibration: reference temperature against reading with the fitted curve, and the residuals in mK with their bands."""
+"""Figures of thermometers: a calibration with its residuals and their bands, and the drift from one calibration to the next."""
 
 from __future__ import annotations
 
+from collections.abc import Iterator
+
 import numpy as np
 
+from archive.reduction.calibration_comparison import Drift, drifts
 from archive.reports.figure_plots import enlarged, letters, line, logarithmic, points, residuals, stacked
 from archive.reports.figure_style import HEIGHTS, Drawn, name_of, saved
 from archive.reports.figure_values import column_of, output_of, spread_of, step_of, told, wanted
 from archive.reports.scope import Scope
 from schemas.lineage import ReductionDocument
 from schemas.quantity import Quantity
+from schemas.thermometer import Calibration
 
-__all__ = ["calibration_figure"]
+__all__ = ["calibration_figure", "drift_figures"]
 
 _SYMBOLS = {"resistance": "$R$", "mutual_inductance": "$M$", "voltage": "$U$", "pressure": "$p$"}
 
@@ -57,3 +61,40 @@ def calibration_figure(scope: Scope, reduction: ReductionDocument) -> Drawn:
         f"Error bars: standard uncertainty of each point alone; grey band: standard uncertainty of the fit with that of the form between the points{shared}. {results}"
     )
     return Drawn(name_of("calibration", reduction), saved(figure), caption, (reduction.address,))
+
+
+def drift_figures(scope: Scope) -> Iterator[Drawn]:
+    """Yield, for each thermometer in use with several calibrations at hand, the difference of each from the one before it."""
+    used = {each.thermometer for each in scope.calibrations}
+    known: dict[str, dict[str, Calibration]] = {}
+    for held in scope.cooldowns.values():
+        for record in held.of_type(Calibration):
+            if record.thermometer in used:
+                known.setdefault(record.thermometer, {})[record.address] = record
+    for thermometer, records in sorted(known.items()):
+        found = [each for each in drifts(records.values()) if each.found is not None]
+        if found:
+            yield _drift(thermometer, found)
+
+
+def _drift(thermometer: str, found: list[Drift]) -> Drawn:
+    figure, (axes,) = stacked([1], height=HEIGHTS[0] + 0.4)
+    axes.axhline(0, color="black", linewidth=0.5)
+    ends = []
+    for k, each in enumerate(found):
+        if each.found is None:
+            continue
+        T, difference, u = each.found.temperature, each.found.difference, each.found.uncertainty
+        line(axes, T, difference * 1e3, look=k, label=f"{each.later} less {each.earlier}")
+        axes.fill_between(T, (difference - u) * 1e3, (difference + u) * 1e3, color="0.8", linewidth=0, zorder=1)  # fmt: skip
+        ends += [float(T.min()), float(T.max())]
+    axes.set(xlabel="$T$ / K", ylabel=r"$\Delta T$ / mK", xlim=(min(ends), max(ends)))
+    logarithmic(axes, across=True)
+    axes.legend(loc="best")
+    scales = ", ".join(sorted({each.scale for each in found}))
+    sources = tuple(dict.fromkeys(side for each in found for side in (each.earlier, each.later)))
+    caption = (
+        f"Drift of thermometer {thermometer}: temperature by each calibration less that by the one before it, for the same readings, on {scales}. "
+        "Band: standard uncertainty of the difference, in which what both calibrations share cancels."
+    )
+    return Drawn(f"figures/drift-{thermometer}.pdf", saved(figure), caption, sources)

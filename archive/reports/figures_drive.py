@@ -10,7 +10,7 @@ from matplotlib.axes import Axes
 from archive.physics.linear_fit import linear_fit, straight_line
 from archive.reports.figure_plots import enlarged, letters, line, points, residuals, stacked, tight_to
 from archive.reports.figure_style import Column, Drawn, NoFigure, name_of, saved
-from archive.reports.figure_values import fact, scalar, spread_of, step_of, taken, told, wanted
+from archive.reports.figure_values import fact, output_of, scalar, spread_of, step_of, taken, told, wanted
 from archive.reports.scope import Scope
 from schemas.lineage import ReductionDocument
 
@@ -48,9 +48,15 @@ def linearity_figure(scope: Scope, reduction: ReductionDocument) -> Drawn:
     parts = ["(a) amplitude against torque, with proportionality (line) and the departure from it below"]
     if P is not None:
         _period_against(panels[2], A, P, factor, unit)
-        parts.append("(b) period against amplitude, with a straight line")
+        for name, dash in (("tested_amplitude", ":"), ("linear_amplitude", "--")):
+            found = output_of(reduction, name)
+            if found is not None and found.value is not None:
+                panels[2].axvline(found.value / factor, color="black", linewidth=0.6, linestyle=dash)
+        parts.append(
+            "(b) period against amplitude, with a straight line; dotted: the amplitude up to which period and dissipation were seen to be constant, dashed: that at which one has changed by its limit, where it was reached"
+        )
     letters([panels[0], *panels[2:]])
-    results = told(scope, reduction, departure="largest departure over largest amplitude", period_change="change of the period over the amplitudes")  # fmt: skip
+    results = told(scope, reduction, departure="largest departure over largest amplitude", period_change="change of the period over the amplitudes", tested_amplitude="constant up to", linear_amplitude="changed at")  # fmt: skip
     caption = f"Drive sweep {reduction.sweep}: {'; '.join(parts)}. {results}"
     return Drawn(name_of("linearity", reduction), saved(figure), caption, (reduction.address,))
 

@@ -137,7 +137,13 @@ def decay_figure(scope: Scope, reduction: ReductionDocument) -> Drawn:
     residuals(panels[1], t, (A - fitted) / r_factor, name=f"$r$ / {r_unit}")
     panels[1].set_xlabel("$t$ / s")
     tight_to(panels[1], t)
-    results = told(scope, reduction, quality_factor="Q", decay_time="decay time")
+    results = told(
+        scope,
+        reduction,
+        quality_factor="Q",
+        decay_time="decay time",
+        dissipation_change="dissipation at the start over that at rest, less one",
+    )
     caption = (
         f"Free decay {reduction.sweep}: amplitude (points) with the exponential of the decay time found (line), whose height and floor were set to these "
         f"points anew; residuals below. {results}"
