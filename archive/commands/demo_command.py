@@ -36,7 +36,7 @@ def demo(*, folder: Path) -> None:
     """Show the whole way of the data on invented cooldowns: raw files, check, ingest, reduce, search, reports.
 
     Makes DIR (default ./stillroom-demo) with the raw data in DIR/cooldowns, an archive in DIR/archive and reports in
-    DIR/reports. Laboratory and numbers are invented; the same every time. Takes less than a minute.
+    DIR/reports. Laboratory and numbers are invented; the same every time. Takes a minute or two.
 
     \b
     Examples:
@@ -74,9 +74,8 @@ def _run(folder: Path) -> int:
     _head("Raw data of invented cooldowns")
     with Progress("making raw data"):
         cooldowns = make_folders(folder / _DATA)
-    for made in cooldowns:
-        files = sum(each.is_file() for each in made.rglob("*"))
-        say(f"  {made}: {files} files")
+    files = sum(each.is_file() for made in cooldowns for each in made.rglob("*"))
+    say(f"  {len(cooldowns)} cooldowns, {files} files, in {folder / _DATA}")
     with Archive.create(folder / _ARCHIVE, name="Invented low-temperature group") as lab:
         problems = _take_in(lab, cooldowns) + _reduce(lab)
         _search(lab)
@@ -96,7 +95,6 @@ def _take_in(lab: Archive, cooldowns: list[Path]) -> int:
     for made in cooldowns:
         with Progress(f"reading {made.name}") as progress:
             report = lab.check(made, progress=progress.sentence)
-        say(f"  {made.name}: {counts(report)}; see them with: stillroom check {_quoted(made)}")
         with Progress(f"taking in {made.name}") as progress:
             outcome = lab.ingest(made, progress=progress.sentence)
         if outcome.address is None:
@@ -105,7 +103,8 @@ def _take_in(lab: Archive, cooldowns: list[Path]) -> int:
                 if finding.severity == "error":
                     note(f"error: {finding.sentence()}")
         else:
-            say(f"  {made.name}: {outcome.state} as {outcome.address}")
+            say(f"  {made.name}: {counts(report)}; {outcome.state} as {outcome.address}")
+    say(f"  See what was found with: stillroom check {_quoted(cooldowns[0].parent / 'NAME')}")
     return refused
 
 
@@ -140,6 +139,7 @@ def _report(lab: Archive, target: Path) -> int:
         (f"run sheet of {name}", target, partial(lab.run_sheet, name)) for name in names
     ]
     jobs.append(("methods appendix", target / "appendix", partial(lab.appendix, names)))
+    made: dict[Path, list[str]] = {}
     for what, place, make in jobs:
         try:
             with Progress(what):
@@ -148,8 +148,10 @@ def _report(lab: Archive, target: Path) -> int:
             problems += 1
             note(f"{what}: {error}")
         else:
-            say(f"  {what}: {', '.join(path.relative_to(place).as_posix() for path in written[:3])}"
-                f"{f' and {len(written) - 3} more' if len(written) > 3 else ''} in {place}")  # fmt: skip
+            made.setdefault(place, []).extend(path.relative_to(place).as_posix() for path in written)
+    for place, files in made.items():
+        what = f"run sheets of {len(names)} cooldowns" if place == target else "methods appendix"
+        say(f"  {what}: {', '.join(files[:3])} and {len(files) - 3} more in {place}")
     return problems
 
 
