@@ -17,7 +17,7 @@ from archive.errors import EXIT_DAMAGE
 # Damaged things that are no sealed files.
 _BESIDE = {"index", "journal.jsonl"}
 
-__all__ = ["fixity", "init", "journal", "rebuild_index"]
+__all__ = ["fixity", "init", "journal", "rebuild_index", "roles"]
 
 
 @click.command(short_help="Make a new archive.")
@@ -45,6 +45,19 @@ def init(*, folder: Path, name: str | None, index: str | None, as_json: bool) ->
         say(
             f"Next: stillroom --archive {quote(str(lab.root))} ingest FOLDER, or set STILLROOM_ARCHIVE to that folder."
         )
+
+
+@click.command(short_help="Print the database roles of a shared index.")
+def roles() -> None:
+    """Print the SQL that makes roles for an index in PostgreSQL: one that reads, one that also records.
+
+    \b
+    Example:
+      stillroom roles | psql "postgresql://owner@server/stillroom"
+    """
+    from importlib.resources import files
+
+    say((files("archive.index") / "roles.sql").read_text(encoding="utf-8").rstrip("\n"))
 
 
 @click.command(short_help="Prove that every sealed byte is as it was.")

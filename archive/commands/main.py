@@ -63,6 +63,7 @@ _COMMANDS: Final = (
     exchange_commands.import_,
     archive_commands.fixity,
     archive_commands.rebuild_index,
+    archive_commands.roles,
     keeping_commands.mirror,
     keeping_commands.mend,
     bench_commands.convert,

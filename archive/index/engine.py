@@ -50,11 +50,12 @@ _DAMAGE = (
     "unsupported file format",
 )
 # PostgreSQL, appendix A of its manual: class 55 lock_not_available, class 40 serialization_failure and deadlock_detected,
-# class 23 integrity_constraint_violation, 42P01 undefined_table, 53100 disk_full.
+# class 23 integrity_constraint_violation, 42P01 undefined_table, 42501 insufficient_privilege, 53100 disk_full.
 _BUSY_STATES = ("55P03", "40001", "40P01")
 _CONTRADICTION = "23"
 _NO_TABLE = "42P01"
 _DISK_FULL = "53100"
+_NO_PRIVILEGE = "42501"
 
 
 def index_url(text_url: str) -> URL:
@@ -114,6 +115,9 @@ def _sqlite(url: URL, *, mode: str, wait: float) -> Engine:
 
     def connection_to_file() -> sqlite3.Connection:
         # Asked anew for every connection, as a writer may have come or gone.
+        if mode == "rwc":
+            # SQLite makes its files for their owner alone to write; in a shared archive the umask is to say who may.
+            os.close(os.open(path, os.O_RDWR | os.O_CREAT, 0o666))
         how = f"?mode={mode}" + ("&immutable=1" if mode == "ro" and _at_rest_and_out_of_reach(path) else "")
         return sqlite3.connect(path.as_uri() + how, uri=True, timeout=wait, check_same_thread=False)
 
@@ -255,4 +259,10 @@ def _refusal(said: str, low: str, state: str, name: str) -> ArchiveError:
         )
     if "readonly database" in low or "read-only transaction" in low:
         return BadRequest("the index is open for reading only", file=name)
+    if state == _NO_PRIVILEGE:
+        return BadRequest(
+            f"your role in the database of the index may not do this ({said})",
+            file=name,
+            remedy="ask the owner of the index for the role stillroom_writer; see: stillroom roles",
+        )
     return ArchiveError(f"the database of the index refused ({said})", file=name)

@@ -27,7 +27,7 @@ Fake = Callable[..., FakeArchive]
 COMMANDS = (
     "demo", "init", "schema", "draft", "check", "ingest", "plans", "reduce", "stale", "revise", "amend", "withdraw",
     "search", "show", "trace", "replay", "compare", "calibration", "drift", "run-sheet", "appendix", "journal",
-    "prov", "export", "import", "fixity", "rebuild-index", "mirror", "mend", "convert", "helium",
+    "prov", "export", "import", "fixity", "rebuild-index", "roles", "mirror", "mend", "convert", "helium",
 )  # fmt: skip
 HEAVY = (
     "numpy",
@@ -78,8 +78,8 @@ def test_each_help_teaches_by_example(name: str, run: Run) -> None:
 @pytest.mark.parametrize("name", COMMANDS)
 def test_each_command_that_prints_data_offers_json(name: str) -> None:
     options = {option for parameter in stillroom.commands[name].params for option in parameter.opts}
-    # The schema and the lineage are a format of their own already; a draft is TOML; the demonstration is a story.
-    assert ("--json" in options) == (name not in ("schema", "draft", "demo", "prov"))
+    # Schema, lineage and roles are a format of their own already; a draft is TOML; the demonstration is a story.
+    assert ("--json" in options) == (name not in ("schema", "draft", "demo", "prov", "roles"))
 
 
 @pytest.mark.parametrize(
