@@ -6,6 +6,7 @@ that it outlives the archive it came from.
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Iterator, Mapping, Sequence
 from typing import TYPE_CHECKING
 
@@ -97,8 +98,9 @@ class ArrayView(Mapping[str, NDArray[np.float64]]):
 
     @property
     def rows(self) -> int:
-        """Number of rows."""
-        return next((column.values.size for column in self.columns.values()), 0)
+        """Number of rows; where a reduction holds columns of several lengths, that of most of them."""
+        sizes = Counter(column.values.size for column in self.columns.values())
+        return sizes.most_common(1)[0][0] if sizes else 0
 
     def quantity(self, name: str) -> pint.Quantity[NDArray[np.float64]]:
         """Column as a quantity of pint, e.g. `view.quantity("period").to("ms")`."""
@@ -112,6 +114,8 @@ class ArrayView(Mapping[str, NDArray[np.float64]]):
     def to_pandas(self, *, units_in_names: bool = False) -> pd.DataFrame:
         """Table of pandas, uncertainties in columns `NAME_uncertainty`, instants as UTC times.
 
+        A column that has other rows than most, such as a fitted curve, is not in it; take it by its name.
+
         Parameters
         ----------
         units_in_names : bool
@@ -122,22 +126,23 @@ class ArrayView(Mapping[str, NDArray[np.float64]]):
         BadRequest
             If pandas is not installed.
         """
-        return as_dataframe(self._listed, units_in_names=units_in_names, about=self._about)
+        columns = list(self.columns.values())
+        same = [column for column in columns if column.values.size == self.rows]
+        return as_dataframe(same, units_in_names=units_in_names, about=self._about)
 
     def to_xarray(self) -> xr.Dataset:
         """Data set of xarray along `row`, with units as attributes; time and temperature are its coordinates.
+
+        A column that has other rows than most lies along a dimension of its own, such as `row_200`.
 
         Raises
         ------
         BadRequest
             If xarray is not installed.
         """
-        along = [each.name for each in self._listed if each.kind in ("instant", "temperature")]
-        return as_dataset(self._listed, coordinates=along, about=self._about)
-
-    @property
-    def _listed(self) -> list[Column]:
-        return list(self.columns.values())
+        columns = list(self.columns.values())
+        along = [each.name for each in columns if each.kind in ("instant", "temperature")]
+        return as_dataset(columns, rows=self.rows, coordinates=along, about=self._about)
 
     @property
     def _about(self) -> dict[str, str]:
@@ -227,9 +232,3 @@ class ReductionView(ArrayView):
     @override
     def __repr__(self) -> str:
         return f"{super().__repr__()[:-1]}; results: {', '.join(self.results) or 'none'}>"
-
-    @property
-    @override
-    def _listed(self) -> list[Column]:
-        """Only columns of one length go into one table."""
-        return [column for column in self.columns.values() if column.values.size == self.rows]

@@ -57,13 +57,20 @@ def pair(kind: str, columns: Mapping[str, Column], name: str | None = None) -> t
     """
     full = [each for each in columns.values() if np.count_nonzero(np.isfinite(each.values)) > 1]
     asked = None if name is None else columns.get(name)
-    others = [each for each in full if each is not asked]
+    others = [each for each in full if asked is None or (each is not asked and _beside(each, asked))]
     abscissa = _first(others, _ABSCISSAE.get(kind, _OTHERWISE)) or _first(others, _OTHERWISE)
     if abscissa is None:
         return None
-    rest = [each for each in full if each is not abscissa and each.kind != "instant"]
+    rest = [
+        each for each in full if each is not abscissa and each.kind != "instant" and _beside(each, abscissa)
+    ]
     ordinate = asked or _first(rest, _ORDINATES) or next(iter(rest), None)
     return None if ordinate is None or not np.isfinite(ordinate.values).any() else (abscissa, ordinate)
+
+
+def _beside(first: Column, second: Column) -> bool:
+    """Whether two columns have the same rows: a reduction may hold a curve beside them."""
+    return first.values.size == second.values.size
 
 
 def _first(columns: list[Column], kinds: tuple[str, ...]) -> Column | None:

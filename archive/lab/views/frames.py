@@ -74,14 +74,15 @@ def as_dataframe(
 
 
 def as_dataset(
-    columns: Sequence[Column], *, coordinates: Sequence[str], about: Mapping[str, str]
+    columns: Sequence[Column], *, rows: int, coordinates: Sequence[str], about: Mapping[str, str]
 ) -> xr.Dataset:
-    """Data set along one dimension, `row`, with units as attributes.
+    """Data set along the dimension `row`, with units as attributes.
 
     Parameters
     ----------
     columns : sequence of Column
-        Of equal length.
+    rows : int
+        Length of `row`; columns of n other rows lie along `row_n`.
     coordinates : sequence of str
         Names of columns that become coordinates along `row`.
     about : mapping of str to str
@@ -99,9 +100,10 @@ def as_dataset(
     xarray = _library("xarray")
     held: dict[str, Any] = {}
     for column in columns:
+        along_it = "row" if column.values.size == rows else f"row_{column.values.size}"
         described = {"long_name": column.description or column.name, "quantity": column.kind}
         if column.kind == "instant":
-            held[column.name] = ("row", instants(column.values), {**described, "time_zone": "UTC"})
+            held[column.name] = (along_it, instants(column.values), {**described, "time_zone": "UTC"})
             continue
         described["units"] = column.unit
         if column.scale:
@@ -109,9 +111,9 @@ def as_dataset(
         if column.uncertainty is not None:
             beside = column.name + UNCERTAINTY
             told = {"long_name": f"standard uncertainty of {column.name}", "units": column.unit}
-            held[beside] = ("row", column.uncertainty, told)
+            held[beside] = (along_it, column.uncertainty, told)
             described["ancillary_variables"] = beside
-        held[column.name] = ("row", column.values, described)
+        held[column.name] = (along_it, column.values, described)
     along = {name: held.pop(name) for name in coordinates if name in held}
     data: xr.Dataset = xarray.Dataset(held, coords=along, attrs=dict(about))
     return data

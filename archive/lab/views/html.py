@@ -37,10 +37,16 @@ def grid(heads: Sequence[str], rows: Iterable[Sequence[object]], *, more: int = 
     """Table as HTML; `more` counts rows that are not shown."""
     top = "".join(f'<th scope="col" style="{_CELL}">{_text(head)}</th>' for head in heads)
     body = "".join(
-        "<tr>" + "".join(f'<td style="{_CELL}">{_text(cell)}</td>' for cell in row) + "</tr>" for row in rows
+        "<tr>" + "".join(_cell(cell, whole=place == 0) for place, cell in enumerate(row)) + "</tr>"
+        for row in rows
     )
     left = f"<div>and {more} more</div>" if more > 0 else ""
     return f"<table><thead><tr>{top}</tr></thead><tbody>{body}</tbody></table>{left}"
+
+
+def _cell(content: object, *, whole: bool) -> str:
+    """Cell; what stands first is an address or a name, and is not broken."""
+    return f'<td style="{_CELL}{";white-space:nowrap" if whole else ""}">{_text(content)}</td>'
 
 
 def described(content: Mapping[str, object]) -> str:

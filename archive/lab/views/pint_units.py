@@ -70,8 +70,8 @@ def pint_quantity(values: Any, unit: str) -> pint.Quantity[Any]:
 
     Examples
     --------
-    >>> print(pint_quantity(2.0, "umol/m^2").to("nmol/cm^2"))
-    0.2 nanomole / centimeter ** 2
+    >>> print(pint_quantity(2.0, "umol/m^2"))
+    2.0 micromole / meter ** 2
     """
     import pint
 

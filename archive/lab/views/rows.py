@@ -18,6 +18,8 @@ Row = TypeVar("Row", SweepRow, ResultRow, CooldownRow)
 
 # A notebook is read, not scrolled through.
 _MOST = 40
+# Headline results stand first in a row.
+_FEW = 3
 
 
 class RowList(list[Row], Generic[Row]):
@@ -66,8 +68,9 @@ def _sweep(row: SweepRow) -> Sequence[str]:
     spread = None if row.coverage_uncertainty is None else row.coverage_uncertainty * 1e6
     results = "; ".join(
         f"{each.name} = {each.verdict or _number(each.value, each.uncertainty)} {'' if each.unit == '1' else each.unit}".strip()
-        for each in row.results
+        for each in row.results[:_FEW]
     )
+    results += f"; {len(row.results) - _FEW} more" if len(row.results) > _FEW else ""
     marks = "; ".join(
         [
             *([f"withdrawn: {row.withdrawn}"] if row.withdrawn else []),
