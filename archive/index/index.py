@@ -36,7 +36,16 @@ from archive.index.answers import (
     SearchQuery,
     SweepRow,
 )
-from archive.index.engine import REBUILD, WAIT_SECONDS, engine_of, index_name, index_url, reading, writing
+from archive.index.engine import (
+    REBUILD,
+    WAIT_SECONDS,
+    engine_of,
+    index_name,
+    index_url,
+    reading,
+    translated,
+    writing,
+)
 from archive.index.flags import flagged
 from archive.index.record import add_accession, add_reduction, clear
 from archive.index.revision import make, raise_to_head
@@ -163,6 +172,7 @@ class Index:
             return False
         # SQLite's own copy holds what still stands in the write-ahead log; a copy of the file alone would not.
         with (
+            translated(self._url),
             closing(sqlite3.connect(str(self._url.database))) as source,
             closing(sqlite3.connect(path)) as target,
         ):

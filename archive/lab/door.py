@@ -43,7 +43,7 @@ from archive.lab.journaling import AFTERWARDS, Acts
 from archive.lab.keeping import MirrorOutcome
 from archive.lab.marks import marked
 from archive.lab.outcomes import CheckReport, IngestOutcome, ReduceOutcome, ReplayReport
-from archive.lab.place import find_root, made, unmade
+from archive.lab.place import find_root, made, make_root, unmade
 from archive.lab.renewing import reduce_stale
 from archive.lab.replaying import replay_all
 from archive.lab.revising import revise
@@ -57,7 +57,7 @@ from archive.reduction.calibration_comparison import Drift
 from archive.reduction.monte_carlo import Request
 from archive.reduction.software import software
 from archive.reduction.trace import TraceNode
-from archive.store.durable import LOCK_NAME, archive_lock, write_whole
+from archive.store.durable import archive_lock, write_whole
 from archive.store.fixity import fixity
 from archive.store.interface import Damage, SealedFile
 from archive.store.journal import Entry
@@ -146,11 +146,6 @@ class Archive:
             raise BadRequest(
                 "there is an archive here already", file=str(root), remedy="use it, or name another folder"
             )
-        # The lock file is all that an attempt leaves that could not be finished.
-        if root.exists() and (not root.is_dir() or any(path.name != LOCK_NAME for path in root.iterdir())):
-            raise BadRequest(
-                "this folder is not empty", file=str(root), remedy="name a new or an empty folder"
-            )
         try:
             settings = Settings.model_validate(
                 {"name": name or root.name, **({"index": index} if index else {})}
@@ -162,10 +157,11 @@ class Archive:
                 expected="text of at most 20000 characters",
                 remedy="give it another with --name",
             ) from None
-        root.mkdir(parents=True, exist_ok=True)
+        make_root(root)
         with archive_lock(root):
             if (root / SETTINGS_NAME).exists():
                 raise BadRequest("another process has just made an archive here", file=str(root))
+            unmade(root, settings)
             try:
                 made(root, settings, settings_text(settings.name, index))
                 begun = Acts(root, clock)

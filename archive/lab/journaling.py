@@ -87,9 +87,9 @@ class Acts:
             )
         except OSError as error:
             raise BadRequest(
-                f"what was done is sealed, but the journal cannot be written: {error.strerror}",
+                f"the journal cannot be written: {error.strerror}",
                 file=str(self.journal.path),
-                remedy="free space, or correct the permissions; the next opening enters what is missing",
+                remedy="free space, or correct the permissions; what was sealed is sealed, and the next opening enters it",
             ) from error
 
     def damage(self, recorded: Mapping[str, str]) -> list[Damage]:

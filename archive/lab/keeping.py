@@ -3,16 +3,16 @@
 from __future__ import annotations
 
 import os
-from collections.abc import Callable, Iterable
-from contextlib import closing, nullcontext
+from collections.abc import Callable, Iterable, Iterator
+from contextlib import closing, contextmanager, nullcontext
 from dataclasses import dataclass
 from pathlib import Path
 
-from archive.errors import BadRequest
+from archive.errors import ArchiveError, BadRequest
 from archive.index import Index
 from archive.intake.settings import SETTINGS_NAME, Settings, read_settings, settings_without_index
 from archive.lab.reducing import rebuilt_index
-from archive.store.durable import archive_lock, put_in_place, write_whole
+from archive.store.durable import archive_lock, make_folder, put_in_place, write_whole
 from archive.store.interface import Damage, SealedFile
 from archive.store.journal import JOURNAL_NAME, Journal
 from archive.store.local import LocalStore, open_store
@@ -86,6 +86,8 @@ def mirror(
     ------
     BadRequest
         If the target holds something that is no mirror of this archive.
+    ArchiveError
+        If it cannot be written to.
 
     Notes
     -----
@@ -97,6 +99,36 @@ def mirror(
         raise BadRequest(
             "a mirror cannot lie in the archive itself", file=str(target), remedy="name another disk"
         )
+    with _told(target):
+        return _mirror(
+            store, settings, recorded, target, snapshot=snapshot, thorough=thorough, progress=progress
+        )
+
+
+@contextmanager
+def _told(target: Path) -> Iterator[None]:
+    """Tell a failed write as a sentence."""
+    try:
+        yield
+    except OSError as error:
+        raise ArchiveError(
+            "the mirror could not be written to",
+            file=str(error.filename or target),
+            found=error.strerror,
+            remedy="make room or mend the disk there, then mirror again; it goes on from there",
+        ) from error
+
+
+def _mirror(
+    store: LocalStore,
+    settings: Settings,
+    recorded: Callable[[], dict[str, SealedFile]],
+    target: Path,
+    *,
+    snapshot: Callable[[Path], bool],
+    thorough: bool,
+    progress: Progress | None,
+) -> MirrorOutcome:
     _fit_for_mirror(target, settings)
     (target / "sealed").mkdir(parents=True, exist_ok=True)
     (target / "staging").mkdir(exist_ok=True)
@@ -121,7 +153,7 @@ def _once(first: Copied, last: Copied) -> tuple[Damage, ...]:
 
 def _fit_for_mirror(target: Path, settings: Settings) -> None:
     if not target.exists():
-        target.mkdir(parents=True)
+        make_folder(target)
     if not target.is_dir():
         raise BadRequest("this is no folder", file=str(target))
     lying = {path.name for path in target.iterdir()} - {"archive.lock"}

@@ -13,7 +13,7 @@ from pathlib import Path
 
 import h5py
 
-from archive.errors import AlreadySealed, BadRequest, DamagedFile
+from archive.errors import AlreadySealed, ArchiveError, BadRequest, DamagedFile
 from archive.store import durable
 from archive.store.audit import READ_ERRORS, datasets, text_of
 from archive.store.examine import examined_apart
@@ -139,13 +139,23 @@ class Adoption:
         if not self._staged:
             return []
         first = next(iter(self._staged))
-        with writing(self._store.path(first)):
-            plan = new_plan(self._store.root)
-            try:
-                decide(plan, [(path, key) for key, (path, _) in self._staged.items()])
-            finally:
-                self._decided = plan.exists()
-            name_all(self._store.root, plan)
+        plan = new_plan(self._store.root)
+        try:
+            with writing(self._store.path(first)):
+                try:
+                    decide(plan, [(path, key) for key, (path, _) in self._staged.items()])
+                finally:
+                    self._decided = plan.exists()
+                name_all(self._store.root, plan)
+        except ArchiveError as problem:
+            if not self._decided or isinstance(problem, AlreadySealed):
+                raise
+            raise ArchiveError(
+                "the import was decided, but not everything of it could be written yet",
+                file=problem.file,
+                found=problem.found,
+                remedy="make room or mend the disk; the next opening of the archive finishes it",
+            ) from problem
         return [sealed for _, sealed in self._staged.values()]
 
     def abandon(self) -> None:
@@ -153,7 +163,10 @@ class Adoption:
         if self._decided:
             return
         for path, _ in self._staged.values():
-            durable.discard(path)
+            with contextlib.suppress(
+                OSError
+            ):  # what is left in staging is swept at the next opening, and told
+                durable.discard(path)
         self._staged.clear()
 
     def _found(self, key: str) -> tuple[Path, SealedFile]:

@@ -48,6 +48,7 @@ __all__ = [
     "discard",
     "file_digest",
     "holds_lock",
+    "make_folder",
     "put_in_place",
     "set_aside",
     "settle",
@@ -56,6 +57,7 @@ __all__ = [
     "sync_folder",
     "take_folder_name",
     "take_name",
+    "take_place",
     "write_whole",
 ]
 
@@ -114,6 +116,8 @@ def take_name(staged: Path, final: Path, *, root: Path, key: str) -> None:
     ------
     AlreadySealed
         If the name is taken.
+    ArchiveError
+        If it has its name, but the disk did not confirm it: the next opening of the archive sees what became of it.
     """
     _make_folders(final.parent, below=root)
     try:
@@ -127,8 +131,23 @@ def take_name(staged: Path, final: Path, *, root: Path, key: str) -> None:
             file=str(final),
             remedy="a correction is a new accession or revision that names what it supersedes",
         ) from error
+    try:
+        sync_folder(final.parent)
+        discard(staged)
+    except OSError as error:
+        raise ArchiveError(
+            f"{key} has its name, but the disk did not confirm it",
+            file=str(final),
+            found=error.strerror,
+            remedy="make room or mend the disk; the next opening of the archive puts it in order",
+        ) from error
+
+
+def take_place(staged: Path, final: Path, *, below: Path) -> None:
+    """Let a settled file take the place of a damaged or missing one, of which `set_aside` has kept what there was."""
+    _make_folders(final.parent, below=below)
+    os.replace(staged, final)  # noqa: PTH105 - crash tests replace this module's `os`
     sync_folder(final.parent)
-    discard(staged)
 
 
 def put_in_place(staged: Path, final: Path) -> None:
@@ -139,7 +158,7 @@ def put_in_place(staged: Path, final: Path) -> None:
 
 
 def set_aside(path: Path, folder: Path, *, below: Path) -> Path | None:
-    """Move a damaged file out of the way, under a name that is free, and return where it is; None if it is not there.
+    """Give a damaged file a second name, one that is free, and return it; None if the file is not there.
 
     Parameters
     ----------
@@ -149,6 +168,12 @@ def set_aside(path: Path, folder: Path, *, below: Path) -> Path | None:
         Where to; made if need be.
     below : Path
         Folder of the archive, which is there.
+
+    Notes
+    -----
+    Its own name stays with it until another file takes that, so that nothing is ever missing that was there. What cannot
+    have two names (a link or a folder in its place, a file system without them, Windows, where the read-only mark would keep
+    the first from being replaced) is moved.
     """
     if not path.is_symlink() and not path.exists():
         return None
@@ -156,10 +181,25 @@ def set_aside(path: Path, folder: Path, *, below: Path) -> Path | None:
     number = 1
     while (aside := folder / f"{path.stem}.{number}{path.suffix}").exists():
         number += 1
-    os.rename(path, aside)  # noqa: PTH104 - as above; the archive's lock is held, so the name stays free
+    # The archive's lock is held, so the name stays free.
+    if path.is_symlink() or not path.is_file() or not _second_name(path, aside):
+        os.rename(path, aside)  # noqa: PTH104 - as above
+        sync_folder(path.parent)
     sync_folder(folder)
-    sync_folder(path.parent)
     return aside
+
+
+def _second_name(path: Path, other: Path) -> bool:
+    """Give a file another name beside its own; False where it cannot have two."""
+    if sys.platform == "win32":  # pragma: no cover - the other system
+        return False
+    try:
+        os.link(path, other)  # not Path.hardlink_to, as above
+    except OSError as error:
+        if error.errno not in _NO_LINKS:
+            raise
+        return False
+    return True
 
 
 def write_whole(path: Path, content: bytes, *, replace: bool = False) -> None:
@@ -249,6 +289,12 @@ def discard(staged: Path) -> None:
     """Remove a staging file if it is there."""
     with contextlib.suppress(FileNotFoundError):
         os.unlink(staged)  # noqa: PTH108 - as above
+
+
+def make_folder(folder: Path) -> None:
+    """Make a folder and those above it, as far as they are missing, each synced into the one that holds it."""
+    there = next((each for each in folder.parents if each.is_dir()), folder)
+    _make_folders(folder, below=there)
 
 
 def _make_folders(folder: Path, *, below: Path) -> None:
@@ -361,18 +407,21 @@ def archive_lock(root: Path, *, wait_s: float = 5.0) -> Iterator[None]:
             time.sleep(0.05)
         _held[path] = descriptor
         now = datetime.datetime.now(datetime.UTC).isoformat(timespec="seconds")
-        os.ftruncate(descriptor, 0)
-        # Byte 0 is what Windows locks, and locked bytes cannot be read there; the text begins after it.
-        os.lseek(descriptor, 0, os.SEEK_SET)
         with contextlib.suppress(OSError):  # on a full disk the lock holds all the same
+            os.ftruncate(descriptor, 0)
+            # Byte 0 is what Windows locks, and locked bytes cannot be read there; the text begins after it.
+            os.lseek(descriptor, 0, os.SEEK_SET)
             os.write(descriptor, f"\nprocess {owner}, since {now}\n".encode())
         yield
     finally:
         if os.getpid() == owner:  # a forked child that leaves this block has no lock to give back
-            if _held.pop(path, None) is not None:
-                os.ftruncate(descriptor, 0)
-                _unlock(descriptor)
-            os.close(descriptor)
+            try:
+                if _held.pop(path, None) is not None:
+                    with contextlib.suppress(OSError):  # a name left in it harms nobody; a lock left would
+                        os.ftruncate(descriptor, 0)
+                    _unlock(descriptor)
+            finally:
+                os.close(descriptor)
 
 
 def _locked(descriptor: int) -> bool:

@@ -82,7 +82,8 @@ class _LocalWriter(SealedWriter):
     def abandon(self) -> None:
         """Leave no trace."""
         self.close()
-        durable.discard(self.path)
+        with contextlib.suppress(OSError):  # what is left in staging is swept at the next opening, and told
+            durable.discard(self.path)
 
 
 class LocalStore:

@@ -73,8 +73,8 @@ def mended(
 
     Notes
     -----
-    Each file is brought back on its own: copied into staging, synced, read back, then the damaged one is set aside and the
-    copy takes its name. Stopped between the two, the file is missing and its damaged form set aside; mending again goes on.
+    Each file is brought back on its own: copied into staging, synced, read back; then the damaged one gets a second name, and
+    the copy takes its first. Stopped anywhere, one or the other stands there, and mending again goes on.
     """
     folder = other / "sealed" if (other / "sealed").is_dir() else other
     if not folder.is_dir():
@@ -114,7 +114,7 @@ def _one(store: LocalStore, sealed: SealedFile, copy: Path) -> Mended:
                     sealed.key, mended=False, why="the disk gave back other bytes than it was given"
                 )
             aside = durable.set_aside(final, store.root / SET_ASIDE / final.parent.name, below=store.root)
-            durable.take_name(staged, final, root=store.root, key=sealed.key)
+            durable.take_place(staged, final, below=store.root)
         finally:
             durable.discard(staged)
     place = None if aside is None else aside.relative_to(store.root).as_posix()

@@ -56,11 +56,14 @@ def writing(path: Path) -> Iterator[None]:
     """Return a context that turns a failed write to disk into a sentence."""
     try:
         yield
-    except OSError as error:
+    except (OSError, RuntimeError, ValueError, KeyError) as error:
+        # HDF5 tells the same failed write in several ways, the more so when it closes a file.
+        if not isinstance(error, OSError) and "errno = " not in str(error):
+            raise
         raise ArchiveError(
             "the archive could not be written to; nothing of this file was kept",
             file=str(path),
-            found=error.strerror or _system_message(str(error)),
+            found=getattr(error, "strerror", None) or _system_message(str(error)),
             remedy="make room or mend the disk, then try again",
         ) from error
 

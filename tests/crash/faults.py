@@ -22,7 +22,7 @@ from archive.store import Column, SealedFile, durable, open_store
 __all__ = ["KEY", "StoppedError", "faulty", "run_child", "seal"]
 
 KEY = "2026-03/2026-03.a1"
-COUNTED = ("mkdir", "chmod", "fsync", "link", "rename", "unlink")
+COUNTED = ("mkdir", "chmod", "fsync", "link", "rename", "replace", "unlink", "write", "ftruncate")
 
 
 class StoppedError(Exception):
