@@ -246,11 +246,11 @@ STEPS: tuple[Step, ...] = (
         citations=("ahns-1980",),
     ),
     Step(
-        name="universal-ratio", version=1, function=transition_steps.universal_ratio, parameters=transition_steps.DynamicParameters,
+        name="universal-ratio", version=1, function=transition_steps.universal_ratio, parameters=transition_steps.RatioParameters,
         takes={"temperature": _TEMPERATURE, "superfluid_density": _DENSITY, "transition": Port("temperature", "scalar", "static transition temperature"), "period": _ANY_PERIOD},
         yields={"ratio": Port("number", "scalar", "sigma_s(T_KT)/T_KT over the universal constant"), "density_at_transition": Port("areal_mass_density", "scalar", "static areal superfluid density at the transition")},
         sentence="At a static transition of {transition} sigma_s/T is {ratio} of the universal value, after division by {dynamic_excess} for the finite frequency.",
-        citations=("nelson-kosterlitz-1977", "ahns-1980"), spread="refit",
+        citations=("nelson-kosterlitz-1977", "ahns-1980"), spread="refit", estimates=("transition",),
     ),
     Step(
         name="power-law-transition", version=1, function=film_steps.power_law_transition, parameters=film_steps.PowerLawParameters,

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import math
 from typing import Any
 
 import numpy as np
@@ -11,6 +12,7 @@ import pytest
 from archive.errors import BadRequest
 from archive.reduction.background_steps import AlignmentParameters, period_drop
 from archive.reduction.channels import channel_estimate
+from archive.reduction.estimate import Estimate
 from archive.reduction.facts import GasBook, sweep_facts
 from archive.reduction.film_steps import (
     CrossingParameters,
@@ -33,6 +35,7 @@ from archive.reduction.runner import run
 from archive.reduction.sheet_values import sheet_value
 from archive.reduction.step import NoParameters
 from archive.reduction.steps import step_named
+from archive.reduction.transition_steps import BEYOND, RatioParameters, universal_ratio
 from schemas.lineage import Value
 from schemas.substrate import Sample
 
@@ -457,3 +460,54 @@ def test_a_row_that_there_is_not_is_refused_wherever_rows_are_named(rows: tuple[
             dissipation=np.exp(-(((T - 0.3) / 0.05) ** 2)),
             u_dissipation=None,
         )
+
+
+def density_of_shape(z: np.ndarray, *, slope: float, curve: float) -> np.ndarray:
+    """Areal density that is a parabola in the standard uncertainties by which the temperature differs from the transition."""
+    return 1e-8 * (1 + slope * z + curve * z**2)  # type: ignore[no-any-return]
+
+
+@pytest.mark.parametrize(("slope", "curve"), [(-0.05, 0.0), (-0.05, -0.02), (-0.02, -0.04), (-0.05, 0.03)])
+def test_a_curved_density_at_the_transition_adds_its_second_order(slope: float, curve: float) -> None:
+    """A parabola of a normal number has the variance slope^2 + 2 curve^2 (JCGM 100:2008, 5.1.2 note)."""
+    T, u = 0.5, 0.002
+    temperature = np.linspace(0.47, 0.53, 601)
+    density = density_of_shape((temperature - T) / u, slope=slope, curve=curve)
+    found = universal_ratio(
+        RatioParameters(),
+        temperature=temperature,
+        superfluid_density=density,
+        transition=T,
+        period=1e-3,
+        transition_estimate=Estimate(np.asarray(T), "temperature", np.asarray(u)),
+    )
+    added = float(np.asarray(found.shared["density_at_transition"][BEYOND]))
+    excess = found.facts["dynamic_excess"]
+    assert added * excess == pytest.approx(1e-8 * math.sqrt(2) * abs(curve), rel=1e-4, abs=1e-14)
+    assert [each.code for each in found.findings if each.code == "skewed"] == (
+        ["skewed"] if abs(curve) > abs(slope) / 3 else []
+    )
+    # Where the transition is moved or drawn, the call says nothing of it a second time.
+    assert found.held == {"beyond_first_order": False}
+    again = universal_ratio(
+        RatioParameters(beyond_first_order=False), temperature=temperature, superfluid_density=density, transition=T, period=1e-3,
+        transition_estimate=Estimate(np.asarray(T), "temperature", np.asarray(u)),
+    )  # fmt: skip
+    assert BEYOND not in again.shared["density_at_transition"]
+
+
+def test_a_record_that_ends_near_the_transition_says_that_only_first_order_is_known() -> None:
+    temperature = np.linspace(0.47, 0.503, 331)
+    found = universal_ratio(
+        RatioParameters(),
+        temperature=temperature,
+        superfluid_density=density_of_shape((temperature - 0.5) / 0.004, slope=-0.05, curve=-0.02),
+        transition=0.5,
+        period=1e-3,
+        transition_estimate=Estimate(np.asarray(0.5), "temperature", np.asarray(0.004)),
+    )
+    (said,) = [each for each in found.findings if each.code == "first-order-only"]
+    assert said.severity == "warning"
+    assert "found 0 rows within one per cent of 0.51143 K" in said.what
+    assert "more rows on both sides" in (said.remedy or "")
+    assert BEYOND not in found.shared["ratio"]
