@@ -11,6 +11,7 @@ from archive.commands import opening
 from archive.commands.machine import write_json
 from archive.commands.opening import archive_option, json_option, require_address
 from archive.commands.terminal import note, say, table
+from schemas.visible_text import visible
 
 if TYPE_CHECKING:
     from archive.reduction.calibration_comparison import Drift
@@ -58,7 +59,7 @@ def calibration(
     head = 'format = "stillroom-revision/1"\n\n' if alone else ""
     text = f"# {record.address}: made from {address} by Stillroom; {use}.\n{head}{calibration_text(record)}"
     if target is None:
-        click.echo(text, nl=False)
+        click.echo(visible(text), nl=False)
         return
     _write_new(target, text)
     if as_json:

@@ -14,6 +14,7 @@ from archive.commands.machine import write_json
 from archive.commands.opening import archive_option, json_option, strict_option
 from archive.commands.terminal import Progress, note, say
 from archive.errors import EXIT_BAD_INPUT
+from schemas.visible_text import visible
 
 __all__ = ["check", "draft", "ingest", "schema"]
 
@@ -56,7 +57,7 @@ def draft(*, folder: Path, only_print: bool) -> None:
         else:
             path, drafted = write_draft(folder, progress=progress.sentence)
     if only_print:
-        click.echo(drafted.text, nl=False)
+        click.echo(visible(drafted.text), nl=False)
         return
     say(f"{path} is written, with {drafted.tables} tables described and {drafted.blanks} places to fill in.")
     for doubt in drafted.doubts:

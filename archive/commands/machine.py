@@ -18,6 +18,8 @@ from typing import Any
 
 import click
 
+from schemas.visible_text import visible
+
 __all__ = ["csv_text", "plain", "quantity", "write_csv", "write_json"]
 
 _FORMULA = ("=", "+", "-", "@", "\t", "\r")
@@ -102,5 +104,5 @@ def _cell(cell: Cell) -> str | int | float:
         return "true" if cell else "false"
     if isinstance(cell, int | float):
         return cell if math.isfinite(cell) else ""
-    text = cell.isoformat() if isinstance(cell, datetime) else cell
+    text = cell.isoformat() if isinstance(cell, datetime) else visible(cell)
     return f"'{text}" if text.startswith(_FORMULA) else text

@@ -25,6 +25,7 @@ from pathlib import Path
 from archive.errors import ArchiveError, BadRequest, DamagedFile
 from archive.exchange.bag_names import encoded, look_alikes, path_fault
 from archive.store import durable
+from schemas.visible_text import visible
 
 __all__ = ["ALGORITHMS", "BagWriter", "new_bag"]
 
@@ -202,4 +203,4 @@ def _manifest(files: Mapping[str, tuple[int, dict[str, str]]], name: str) -> str
 
 def _info(lines: Sequence[tuple[str, str]]) -> str:
     # A value is one line here: a line end in it would begin a new element.
-    return "".join(f"{label}: {' '.join(value.split())}\n" for label, value in lines)
+    return "".join(f"{label}: {' '.join(visible(value).split())}\n" for label, value in lines)

@@ -17,6 +17,7 @@ from typing import Any
 from archive.exchange.about import About
 from schemas.deposit import Author
 from schemas.identifiers import is_listed_licence
+from schemas.visible_text import json_escaped
 
 __all__ = ["citation_cff", "datacite_json"]
 
@@ -86,7 +87,7 @@ def datacite_json(about: About, addresses: Sequence[str]) -> str:
     if about.funder is not None:
         award = {} if about.award is None else {"awardNumber": about.award}
         record["fundingReferences"] = [{"funderName": about.funder, **award}]
-    return json.dumps(record, indent=1, ensure_ascii=False, allow_nan=False) + "\n"
+    return json_escaped(json.dumps(record, indent=1, ensure_ascii=False, allow_nan=False)) + "\n"
 
 
 def _creator(author: Author) -> dict[str, Any]:
@@ -174,4 +175,4 @@ def _author(author: Author) -> list[str]:
 
 
 def _quoted(text: str) -> str:
-    return json.dumps(text, ensure_ascii=False)
+    return json_escaped(json.dumps(text, ensure_ascii=False))

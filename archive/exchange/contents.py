@@ -32,6 +32,7 @@ from archive.exchange.withdrawn import reasons_of_withdrawal
 from schemas.acts import AmendmentDocument, RevisionDocument
 from schemas.base import Record
 from schemas.lineage import AccessionDocument, ReductionDocument, Sha256
+from schemas.visible_text import visible
 
 __all__ = [
     "PACKAGE_NAME",
@@ -213,7 +214,7 @@ def _results(sealed: Sequence[SealedDocument]) -> str:
                     "" if number is None else repr(number) for number in (entry.value, entry.uncertainty)
                 ]
                 words = [
-                    _no_formula(text)
+                    _no_formula(visible(text))
                     for text in (entry.scale or "", entry.verdict or "", entry.description, why)
                 ]
                 writer.writerow(

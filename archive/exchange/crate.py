@@ -23,6 +23,7 @@ from archive.exchange.sealed_document import SealedDocument
 from schemas.deposit import Author
 from schemas.identifiers import is_listed_licence
 from schemas.lineage import AccessionDocument, ReductionDocument
+from schemas.visible_text import json_escaped
 
 __all__ = ["CRATE_NAME", "crate"]
 
@@ -115,7 +116,9 @@ def crate(about: About, sealed: Sequence[SealedDocument], files: Mapping[str, tu
         *parts,
     ]
     return (
-        json.dumps({"@context": _CONTEXT, "@graph": graph}, indent=1, ensure_ascii=False, allow_nan=False)
+        json_escaped(
+            json.dumps({"@context": _CONTEXT, "@graph": graph}, indent=1, ensure_ascii=False, allow_nan=False)
+        )
         + "\n"
     )
 

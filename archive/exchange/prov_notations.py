@@ -13,6 +13,7 @@ from datetime import UTC, datetime
 from typing import Any
 
 from archive.exchange.prov_model import RELATIONS, Attribute, Element, ProvDocument, Qualified, Relation
+from schemas.visible_text import visible
 
 __all__ = ["prov_json", "prov_n"]
 
@@ -89,7 +90,8 @@ def prov_n(document: ProvDocument) -> str:
     lines.append("")
     lines += [f"  {_statement(each)}" for each in document.elements.values()]
     lines += [f"  {_related(each)}" for each in document.relations]
-    return "\n".join([*lines, "endDocument", ""])
+    # PROV-N has no escape for a control character.
+    return visible("\n".join([*lines, "endDocument", ""]))
 
 
 def _statement(element: Element) -> str:

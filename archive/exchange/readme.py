@@ -7,6 +7,7 @@ from collections.abc import Sequence
 from archive.exchange.about import About
 from archive.exchange.sealed_document import SealedDocument
 from archive.exchange.withdrawn import reasons_of_withdrawal
+from schemas.visible_text import visible
 
 __all__ = ["readme"]
 
@@ -73,7 +74,7 @@ def readme(about: About, sealed: Sequence[SealedDocument], example: str) -> str:
     reasons = reasons_of_withdrawal(sealed)
     withdrawn = "".join(f"{target}: {' '.join(why.split())}\n" for target, why in sorted(reasons.items()))
     width = max(len(each.address) for each in sealed)
-    return _TEXT.format(
+    text = _TEXT.format(
         title=about.title,
         line="=" * len(about.title),
         description=about.description,
@@ -85,3 +86,4 @@ def readme(about: About, sealed: Sequence[SealedDocument], example: str) -> str:
         else "",
         files="\n".join(f"{each.address:<{width}}  {each.size:>10} bytes  {each.because}" for each in sealed),
     )
+    return visible(text)

@@ -31,6 +31,7 @@ from archive.reports.prose import breakable, prose
 from archive.reports.scope import Scope
 from archive.reports.tex import Tex, tex, tex_environment
 from archive.reports.view import CooldownView
+from schemas.visible_text import json_escaped
 
 __all__ = ["ITEMS", "methods_appendix"]
 
@@ -97,7 +98,9 @@ def methods_appendix(
         "appendix-preamble.tex": environment.get_template("appendix-preamble.tex.j2").render(),
         "results.tex": environment.get_template("results.tex.j2").render(table=results),
         "methods.bib": bibliography_of(_citations(scope)),
-        "appendix.json": json.dumps(_companion(scope, account), indent=1, ensure_ascii=False, allow_nan=False)
+        "appendix.json": json_escaped(
+            json.dumps(_companion(scope, account), indent=1, ensure_ascii=False, allow_nan=False)
+        )
         + "\n",
     }
     return {name: text.encode() for name, text in made.items()} | {each.name: each.content for each in drawn}

@@ -23,6 +23,7 @@ from archive.reports.numbers import Shown
 from archive.reports.prose import Prose, breakable
 from archive.reports.standing import standing
 from archive.reports.view import CooldownView
+from schemas.visible_text import json_escaped, visible
 
 __all__ = ["run_sheet_html", "run_sheet_json", "run_sheet_pdf"]
 
@@ -34,7 +35,7 @@ def run_sheet_html(view: CooldownView) -> str:
     ----------
     view : CooldownView
     """
-    return _environment().get_template("run_sheet.html.j2").render(**account(view))
+    return visible(_environment().get_template("run_sheet.html.j2").render(**account(view)))
 
 
 def run_sheet_pdf(view: CooldownView, *, paper: Literal["a4", "us-letter"] = "a4") -> bytes:
@@ -75,7 +76,7 @@ def run_sheet_json(view: CooldownView) -> str:
         "withdrawn": dict(sorted(view.withdrawn.items())),
         "sealed": {key: {"sha256": row[0], "size": row[1]} for key, row in sorted(view.sealed.items())},
     }
-    return json.dumps(told, indent=1, ensure_ascii=False, allow_nan=False) + "\n"
+    return json_escaped(json.dumps(told, indent=1, ensure_ascii=False, allow_nan=False)) + "\n"
 
 
 def account(view: CooldownView) -> dict[str, Any]:
@@ -106,7 +107,7 @@ def _plain(told: Any) -> Any:
 
 def _for_paper(told: Any, name: str = "") -> Any:
     if isinstance(told, Prose):
-        return {"prose": [[breakable(piece.text), piece.style] for piece in told.pieces]}
+        return {"prose": [[breakable(visible(piece.text)), piece.style] for piece in told.pieces]}
     if isinstance(told, Shown):
         return breakable(told.text)
     if isinstance(told, dict):
@@ -115,4 +116,4 @@ def _for_paper(told: Any, name: str = "") -> Any:
         return [_for_paper(each) for each in told]
     if name == "no.":
         return breakable(told, 6, 6)
-    return breakable(told) if isinstance(told, str) and name not in ("svg", "sha256") else told
+    return breakable(visible(told)) if isinstance(told, str) and name not in ("svg", "sha256") else told

@@ -10,6 +10,7 @@ import argparse
 import hashlib
 import random
 import resource
+import signal
 import sys
 import time
 import traceback
@@ -24,6 +25,7 @@ from tests.fuzz.targets import BYTES, TEXTS
 
 _MEMORY = 6 << 30
 _SLOW_S = 5.0
+_HANG_S = 120
 _A_ROUND = 300
 
 
@@ -37,6 +39,10 @@ def _kept(folder: Path, name: str, data: bytes, why: str) -> None:
     stem = folder / f"{name}-{hashlib.sha256(data).hexdigest()[:12]}"
     stem.with_suffix(".bin").write_bytes(data)
     stem.with_suffix(".txt").write_text(why, encoding="utf-8", errors="backslashreplace")
+
+
+def _hung(_number: int, _frame: object) -> None:
+    raise TimeoutError(f"no end after {_HANG_S} s")
 
 
 def _round(name: str, number: int, folder: Path) -> bool:
@@ -57,7 +63,11 @@ def _round(name: str, number: int, folder: Path) -> bool:
         nonlocal last
         last = data if isinstance(data, bytes) else data.encode("utf-8", "surrogatepass")
         begin = time.process_time()
-        target(data)
+        signal.alarm(_HANG_S)
+        try:
+            target(data)
+        finally:
+            signal.alarm(0)
         took = time.process_time() - begin
         assert took < _SLOW_S, f"took {took:.1f} s"
 
@@ -93,6 +103,7 @@ def main() -> int:
     reader.add_argument("--finds", type=Path, default=Path("fuzz-finds"), help="folder for what is found")
     reader.add_argument("--guided", choices=sorted(BYTES), help="one target, guided by coverage")
     asked = reader.parse_args()
+    signal.signal(signal.SIGALRM, _hung)
     resource.setrlimit(resource.RLIMIT_AS, (_MEMORY, _MEMORY))
     if asked.guided:
         _guided(asked.guided, round(asked.minutes * 60))
