@@ -41,11 +41,12 @@ def plans(*, name: str | None, as_toml: bool, archive_dir: Path | None, as_json:
       stillroom plans film-transition
       stillroom plans film-transition --toml > our-film.toml
     """
+    from archive.reduction.added_plans import added_plans
     from archive.reduction.planning import shipped_plans
 
     lab = opening.archive_or_none(archive_dir)
     if lab is None:
-        known = list(shipped_plans())
+        known = [*shipped_plans(), *added_plans()]
     else:
         with lab:
             known = lab.plans()

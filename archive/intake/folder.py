@@ -14,10 +14,11 @@ from archive.errors import BadRequest
 from archive.intake.bad_cells import report_cells
 from archive.intake.dialect import ColumnRequest
 from archive.intake.gather import Gatherer, stored_columns
+from archive.intake.own_readers import own_reader
 from archive.intake.paths import path_inside
 from archive.intake.reading import Reading
 from archive.intake.sheet import read_sheet
-from archive.intake.sources import read_array_source
+from archive.intake.sources import is_array_source, read_array_source
 from archive.intake.tables import TableReader
 from archive.store.interface import Writer
 from archive.store.names import is_key
@@ -31,7 +32,6 @@ __all__ = ["SHEET_NAME", "read_cooldown"]
 
 SHEET_NAME = "cooldown.toml"
 _CHUNK = 1 << 20
-_ARRAY_SUFFIXES = (".npy", ".npz", ".h5", ".hdf5")
 
 Archived = Callable[[str], AnyRecord | None]
 Progress = Callable[[str], None]
@@ -322,6 +322,23 @@ def _read_sweep(reading: Reading, number: int, sweep: Sweep, sink: Writer | None
         reading.tables[sweep.name].first_lines = first_lines
 
 
+def _tell_reader(reading: Reading, sweep: Sweep, name: str) -> None:
+    """Keep with what was read that the laboratory's own code read it, and which: only with it the file is read again."""
+    reader = own_reader(name)
+    if reader is not None:
+        reading.findings.append(
+            Finding(
+                code="own-reader",
+                severity="note",
+                what=f"this file was read by the laboratory's reader {reader.name} version {reader.version}",
+                file=name,
+                place=sweep.name,
+                found=reader.package or None,
+                remedy="keep the package that brings the reader; the raw bytes are kept here",
+            )
+        )
+
+
 def _read_file(
     reading: Reading,
     sweep: Sweep,
@@ -333,7 +350,8 @@ def _read_file(
 ) -> bool:
     """Rows of one file into the gatherer; whether every cell was as it should be."""
     requests = _requests(gatherer.channels)
-    if path.name.lower().endswith(_ARRAY_SUFFIXES):
+    if is_array_source(name):
+        _tell_reader(reading, sweep, name)
         block = read_array_source(path, name, requests)
         first_lines[name] = int(block.lines[0]) if len(block.lines) else 1
         gatherer.add(block, file_number)

@@ -18,6 +18,7 @@ from archive.intake.cells import parsed_number
 from archive.intake.dialect import BadCells, Block, ColumnRequest
 from archive.intake.hdf5_source import LARGEST, Columns, RefusalError, hdf5_columns, weight
 from archive.intake.numpy_source import numpy_columns
+from archive.intake.own_readers import own_reader
 from archive.intake.timestamps import EARLIEST, LATEST, TimeStamps
 
 __all__ = ["is_array_source", "read_array_source"]
@@ -34,12 +35,15 @@ _SIGNATURES: Final = {"hdf5": b"\x89HDF\r\n\x1a\n", "npy": b"\x93NUMPY", "npz": 
 def is_array_source(file: str) -> bool:
     """Whether a file of this name is read by `read_array_source` (otherwise it is a text table).
 
+    So are the formats for which the laboratory has a reader of its own.
+
     Examples
     --------
     >>> is_array_source("raw/s017.h5"), is_array_source("raw/s017.csv.gz")
     (True, False)
     """
-    return any(Path(file).suffix.lower() in suffixes for suffixes in _SUFFIXES.values())
+    suffix = Path(file).suffix.lower()
+    return any(suffix in suffixes for suffixes in _SUFFIXES.values()) or own_reader(file) is not None
 
 
 def read_array_source(path: Path, file: str, columns: Sequence[ColumnRequest]) -> Block:
@@ -70,9 +74,7 @@ def read_array_source(path: Path, file: str, columns: Sequence[ColumnRequest]) -
     bad = BadCells(file)
     arrays: Columns = {}
     try:
-        kind = _kind(path)
-        read = hdf5_columns if kind == "hdf5" else numpy_columns
-        arrays, faults = read(path, columns)
+        arrays, faults = _own_columns(path, file, columns) or _columns(path, columns)
         _require_room(arrays)
     except RefusalError as refusal:
         arrays, faults = {}, {}
@@ -108,6 +110,38 @@ def _require_room(arrays: Columns) -> None:
         raise RefusalError(
             f"its columns come to {needed} bytes over {rows} rows; more than {LARGEST} are not read"
         )
+
+
+def _columns(path: Path, columns: Sequence[ColumnRequest]) -> tuple[Columns, dict[str, str]]:
+    return (hdf5_columns if _kind(path) == "hdf5" else numpy_columns)(path, columns)
+
+
+def _own_columns(
+    path: Path, file: str, columns: Sequence[ColumnRequest]
+) -> tuple[Columns, dict[str, str]] | None:
+    """Return what the laboratory's reader for such a file gives, and why a column is none; None without a reader."""
+    reader = own_reader(file)
+    if reader is None:
+        return None
+    try:
+        given = reader.columns(path)
+    except ValueError as error:
+        raise RefusalError(str(error)) from None
+    names = ", ".join(given) or "none"
+    arrays: Columns = {}
+    faults: dict[str, str] = {}
+    for request in columns:
+        number = request.column if isinstance(request.column, int) else None
+        name = list(given)[number - 1] if number is not None and 0 < number <= len(given) else request.column
+        if name not in given:
+            faults[request.name] = f"the reader {reader.name} gives no such column; it gives: {names}"
+        elif given[str(name)].ndim > 1:
+            faults[request.name] = (
+                f"the reader {reader.name} gives {given[str(name)].ndim} dimensions, not a column"
+            )
+        else:
+            arrays[request.name] = given[str(name)]
+    return arrays, faults
 
 
 def _kind(path: Path) -> str:

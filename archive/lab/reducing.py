@@ -16,6 +16,7 @@ from archive.lab.effective import EffectiveSource
 from archive.lab.monte_carlo import answers, repeated, with_monte_carlo
 from archive.lab.outcomes import ReduceOutcome, ReplayReport
 from archive.lab.source import LabSource, document_of
+from archive.reduction.added_plans import added_plans
 from archive.reduction.monte_carlo import Request
 from archive.reduction.needs import NeedAddresses
 from archive.reduction.planning import load_plan, plan_depth, plans_for, shipped_plans
@@ -33,7 +34,7 @@ Seal = Callable[[ReductionDocument, Mapping[str, tuple[NDArray[Any], dict[str, s
 
 
 def plans(source: LabSource) -> list[Plan]:
-    """Shipped plans, and those of this archive's reductions that are not shipped, by name and revision."""
+    """Shipped plans, those of this archive's reductions, and those of the laboratory's packages, by name and revision."""
     known = {plan.address: plan for plan in shipped_plans()}
     for own in source.own_plans():
         known.setdefault(own.address, own)
@@ -41,14 +42,24 @@ def plans(source: LabSource) -> list[Plan]:
         if row.plan not in known:
             plan = source.reduction(row.address).plan
             known.setdefault(plan.address, plan)
+    for added in added_plans():
+        known.setdefault(added.address, added)
     return [known[address] for address in sorted(known)]
 
 
 def current_plans(source: LabSource) -> list[Plan]:
-    """The newest revision of each plan that is shipped or came in as a revision; withdrawn ones are passed over."""
+    """The newest revision of each plan that is shipped, came in as a revision or is added; withdrawn ones are passed over.
+
+    Raises
+    ------
+    BadRequest
+        If a plan of the laboratory's packages is not what this archive knows under its name and revision.
+    """
     withdrawn = {row.target for row in source.index.withdrawals()}
     best: dict[str, Plan] = {}
-    for plan in [*shipped_plans(), *source.own_plans()]:
+    for added in added_plans():
+        _check_revision(source, added)
+    for plan in [*shipped_plans(), *source.own_plans(), *added_plans()]:
         older = plan.name not in best or best[plan.name].revision < plan.revision
         if plan.address not in withdrawn and older:
             best[plan.name] = plan

@@ -271,10 +271,14 @@ def all_checks() -> tuple[tuple[Check, ...], list[Finding]]:
         except Exception as error:  # noqa: BLE001 - foreign code may fail in any way, and the other checks go on
             faults.append(_failed(entry.name, error))
             continue
-        if isinstance(loaded, Check):
-            own.append(loaded)
-        else:
+        if not isinstance(loaded, Check):
             faults.append(_failed(entry.name, TypeError("the entry point names no Check")))
+        elif loaded.code in {check.code for check in (*CHECKS, *own)}:
+            faults.append(
+                _failed(entry.name, ValueError(f"its code, {loaded.code}, is taken by another check"))
+            )
+        else:
+            own.append(loaded)
     return (*CHECKS, *own), faults
 
 

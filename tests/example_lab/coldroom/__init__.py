@@ -1,0 +1,1 @@
+"""An invented low-temperature group's own steps, checks, readers and plans."""
