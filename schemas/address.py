@@ -102,24 +102,34 @@ def parse_address(text: str) -> Address:
             "a reduction (2026-03/s017@film-transition.2), one of its outputs (...#T_KT) or a record (TO-4.r2)"
         )
     group = match.groupdict()
-    head = group["head"]
-    if group["raw"] is not None:
-        return Address(text, "raw", head, number=int(group["accession"]), raw=group["raw"])
-    if group["accession"] is not None:
-        return Address(text, "accession", head, number=int(group["accession"]))
-    if group["amendment"] is not None:
-        return Address(text, "amendment", head, number=int(group["amendment"]))
-    if group["withdrawal"] is not None:
-        return Address(text, "withdrawal", head, number=int(group["withdrawal"]))
-    if group["taken_back"] is not None:
-        number, revision = int(group["taken_back"]), int(group["revision"])
-        return Address(text, "withdrawal", head, number=number, revision=revision)
-    if group["revision"] is not None:
-        return Address(text, "record", head, number=int(group["revision"]))
-    if group["item"] is None:
-        return Address(text, "name", head)
+    return _of_thing(text, group) if group["item"] is None else _of_item(text, group)
+
+
+def _of_thing(text: str, group: dict[str, str | None]) -> Address:
+    """Address of a cooldown, a record, or something with a number of its own."""
+    head = group["head"] or ""
+    kinds: tuple[tuple[str, AddressKind], ...] = (
+        ("accession", "accession"),
+        ("amendment", "amendment"),
+        ("withdrawal", "withdrawal"),
+        ("taken_back", "withdrawal"),
+        ("revision", "record"),
+    )
+    for name, kind in kinds:
+        number = group[name]
+        if number is not None:
+            revision = int(group["revision"] or 0) if name == "taken_back" else None
+            raw = group["raw"]
+            return Address(
+                text, kind if raw is None else "raw", head, number=int(number), raw=raw, revision=revision
+            )
+    return Address(text, "name", head)
+
+
+def _of_item(text: str, group: dict[str, str | None]) -> Address:
+    """Address of a sweep or dose, or of something inside it."""
+    head, part = group["head"] or "", group["part"]
     if group["plan"] is not None:
-        kind: AddressKind = "reduction" if group["part"] is None else "output"
-        return Address(text, kind, head, group["item"], group["plan"], int(group["number"]), group["part"])
-    kind = "item" if group["part"] is None else "channel"
-    return Address(text, kind, head, group["item"], part=group["part"])
+        kind: AddressKind = "reduction" if part is None else "output"
+        return Address(text, kind, head, group["item"], group["plan"], int(group["number"] or 0), part)
+    return Address(text, "item" if part is None else "channel", head, group["item"], part=part)
