@@ -126,7 +126,7 @@ def article(words: str) -> str:
 
 def symbol_of(name: str) -> Prose:
     """Return the name of an output as a symbol (``T_KT``), a symbol with words (``T_KT_by_fit``) or as words (``mass_sensitivity``)."""
-    begin = re.fullmatch(r"([A-Za-z]_[A-Za-z]{1,6})_([a-z].*)", name)
+    begin = re.fullmatch(r"([A-Z]_[A-Za-z]{1,6})_([a-z].*)", name)
     if begin:
         return prose(f"{begin[1]} {begin[2].replace('_', ' ')}")
     found = prose(name)

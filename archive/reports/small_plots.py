@@ -35,7 +35,8 @@ _LIKED: dict[str, tuple[tuple[str, ...], tuple[str, ...]]] = {
     "frequency-sweep": (("frequency",), ("amplitude", "voltage", "current")),
     "ringdown": (("time",), ("amplitude", "voltage", "current")),
     "isotherm": (("relative_pressure", "pressure_ratio", "pressure"), ("specific_amount", "amount")),
-    "heat-capacity": (("temperature",), ("heat_capacity", "molar_heat_capacity", "specific_heat")),
+    "heat-capacity": (("temperature",), ("heat_capacity", "molar_heat_capacity", "specific_heat", "temperature_difference")),
+    "persistent-current": (("time",), ("angular_momentum",)),
 }  # fmt: skip
 
 
