@@ -56,7 +56,7 @@ class SyncedOnly:
         """Return whether a change of names is kept."""
         return False
 
-    def kept(self, place: int, data: bytes) -> bytes:  # noqa: ARG002 - the shape of `Chance`
+    def kept(self, place: int, data: bytes) -> bytes:
         """Return what is kept of a write."""
         return b""
 

@@ -27,7 +27,7 @@ def outcome(operation: str, root: Path, beside: Path) -> dict[str, str]:
         OPERATIONS[operation].do(root, beside)
     except ArchiveError as problem:
         return {"state": "told", "what": str(problem)}
-    except BaseException:
+    except BaseException:  # noqa: BLE001 - told as what it is
         return {"state": "traceback", "what": traceback.format_exc()}
     return {"state": "done", "what": ""}
 
