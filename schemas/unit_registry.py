@@ -4,13 +4,17 @@ Rules
 -----
 * pint is loaded at the first question, so that importing the schemas stays quick.
 * The registry's disk cache only saves time; whatever is wrong with it, the answer is the same.
+* The cache holds pickles, which can run code: it is used only where nobody else can write, whatever the umask was.
 """
 
 from __future__ import annotations
 
+import os
 import pickle
+import stat
 from fractions import Fraction
 from functools import cache
+from pathlib import Path
 from typing import Any
 
 __all__ = ["Dimension", "root"]
@@ -57,6 +61,14 @@ _CACHE_FAULTS = (
 )
 
 
+def _is_private(folder: Path) -> bool:
+    """Return whether nobody else can have put a file here; on Windows the user's own profile sees to that."""
+    if not hasattr(os, "getuid"):  # pragma: no cover - the other system
+        return True
+    about = folder.lstat()
+    return stat.S_ISDIR(about.st_mode) and about.st_uid == os.getuid() and not about.st_mode & 0o022
+
+
 @cache
 def _registry() -> Any:
     """Return the one pint registry of the process, from its disk cache where there is one."""
@@ -72,8 +84,8 @@ def _registry() -> Any:
 
     try:
         folder = user_cache_path("stillroom") / f"units-{pint.__version__}"
-        folder.mkdir(parents=True, exist_ok=True)
-        return built(str(folder))
+        folder.mkdir(mode=0o700, parents=True, exist_ok=True)
+        return built(str(folder) if _is_private(folder) else None)
     except _CACHE_FAULTS:
         # The cache only saves time: a folder that cannot be written, or a file another process is just
         # writing, must not stop anybody.

@@ -63,8 +63,76 @@ _TABLE = (
     b'# made\ntime,T (K),note\n2026-03-02T09:10:00+02:00,0.5,"a, b"\n2026-03-02T09:11:00+02:00,9.9E37,-\n'
 )
 
+_RICH = (
+    SHEET.replace("NAME", "2026-03")
+    + """
+    thermometer = "temperature"
+
+[sweep.channels.r]
+column = 3
+quantity = "resistance"
+unit = "ohm"
+thermometer = "RX.r1"
+calibration = "RX-cal.r1"
+sentinels = ["9.9E37"]
+full_scale = "10 kohm"
+
+[[gauge]]
+name = "g1"
+range = "10 Torr"
+relative_uncertainty = 0.001
+
+[[doser]]
+name = "v1"
+volume = "10.0(1) cm^3"
+how = "expansion"
+
+[[dose]]
+name = "d03"
+at = 2026-03-07T10:00:00+02:00
+pressure_before = "10 Torr"
+pressure_after = "2 Torr"
+temperature_before = "295 K on ITS-90"
+doser = "v1"
+gauge = "g1"
+
+[[record.thermometer]]
+name = "RX"
+revision = 1
+kind = "ruthenium-oxide"
+place = "cell"
+
+[[record.calibration]]
+name = "RX-cal"
+revision = 1
+thermometer = "RX.r1"
+scale = "PLTS-2000"
+against = "melting curve"
+reading_unit = "ohm"
+date = 2026-01-10
+relation = { form = "spline" }
+points = [[1.0, 0.9], [1.000003, 0.5], [1.000006, 0.4], [1.000009, 0.3], [1.00002, 0.2]]
+temperature_low = "0.2 K"
+temperature_high = "0.9 K"
+relative_uncertainty = 0.01
+
+[[effect]]
+effect = "self-heating"
+state = "bounded"
+bound = "1 mK"
+reason = "drive swept"
+
+[[waiver]]
+check = "helium3-content"
+place = "well-helium.r1"
+reason = "known to be small"
+role = "data steward"
+date = 2026-04-01
+"""
+).encode()
+
 SEEDS: dict[str, tuple[bytes, ...]] = {
-    "sheet": (SHEET.replace("NAME", "2026-03").encode(),),
+    "sheet": (SHEET.replace("NAME", "2026-03").encode(), _RICH),
     "act-sheet": (
         b'format = "stillroom-amendment/1"\ncooldown = "2026-03"\nwhy = "wrong gauge"\nrole = "data steward"\n\n'
         b'[[change]]\nat = "dose[d01].amount"\nfrom = "40.0(1) umol"\nto = "41.0(1) umol"\n',

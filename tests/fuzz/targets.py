@@ -78,13 +78,15 @@ def sheet(data: bytes) -> None:
     """Check a cooldown folder of which the sheet is given; its findings must be printable and in order."""
     with _folder() as folder:
         (folder / "cooldown.toml").write_bytes(data)
-        (folder / "empty.csv").write_text(
-            "time,T (K),P (ms)\n2026-03-03T10:00:00+02:00,0.2,1.0\n2026-03-03T10:02:00+02:00,0.3,1.0\n"
-        )
+        for name, day in (("empty.csv", 3), ("film.csv", 8)):
+            rows = [
+                f"2026-03-{day:02d}T10:{k:02d}:00+02:00,{0.2 + 0.01 * k},{1 + 1e-6 * k}" for k in range(9)
+            ]
+            (folder / name).write_text("\n".join(["time,T (K),P (ms)", *rows]) + "\n")
         report = check_folder(folder)
         for finding in report.findings:
             finding.sentence().encode("utf-8", "backslashreplace")
-        assert {path.name for path in folder.iterdir()} == {"cooldown.toml", "empty.csv"}
+        assert {path.name for path in folder.iterdir()} == {"cooldown.toml", "empty.csv", "film.csv"}
 
 
 def act_sheet(data: bytes) -> None:
