@@ -129,7 +129,5 @@ def write_calibrated(folder: Path, *, name: str = "2026-03", year: int = 2026) -
     sheet = sheet.replace("[layout.bridge]", _THERMOMETER + calibration(1) + "\n[layout.bridge]", 1)
     files = {"cooldown.toml": sheet, "empty.csv": _table(3, 0.0), "film.csv": _table(8, 8e-6)}
     for file, text in files.items():
-        (folder / file).write_text(
-            text.replace("2026-03", f"{year}-03"), encoding="utf-8"
-        )
+        (folder / file).write_text(text.replace("2026-03", f"{year}-03"), encoding="utf-8")
     return folder
