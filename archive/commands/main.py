@@ -21,6 +21,7 @@ from archive.commands import (
     bench_commands,
     calibration_commands,
     compare_command,
+    completion,
     demo_command,
     exchange_commands,
     intake_commands,
@@ -31,6 +32,7 @@ from archive.commands import (
     search_command,
 )
 from archive.commands.failures import EXIT_INTERRUPTED, GuardedGroup
+from archive.commands.offered import offer
 from archive.commands.terminal import note
 
 __all__ = ["main", "stillroom"]
@@ -68,6 +70,7 @@ _COMMANDS: Final = (
     keeping_commands.mend,
     bench_commands.convert,
     bench_commands.helium,
+    completion.completion,
 )
 
 
@@ -112,6 +115,7 @@ def stillroom(archive_dir: Path | None) -> None:
 
 for _command in _COMMANDS:
     stillroom.add_command(_command)
+offer(stillroom)
 
 
 def main() -> None:
@@ -123,6 +127,8 @@ def main() -> None:
         # A sign that the terminal's code page lacks is written as an escape, never as a traceback.
         if hasattr(stream, "reconfigure"):
             stream.reconfigure(errors="backslashreplace")
+    if completion.VARIABLE in os.environ:
+        completion.prepare()
     try:
         stillroom(prog_name="stillroom")
     except KeyboardInterrupt:

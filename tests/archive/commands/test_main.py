@@ -27,7 +27,7 @@ Fake = Callable[..., FakeArchive]
 COMMANDS = (
     "demo", "init", "schema", "draft", "check", "ingest", "plans", "reduce", "stale", "revise", "amend", "withdraw",
     "search", "show", "trace", "replay", "compare", "calibration", "drift", "run-sheet", "appendix", "journal",
-    "prov", "export", "import", "fixity", "rebuild-index", "roles", "mirror", "mend", "convert", "helium",
+    "prov", "export", "import", "fixity", "rebuild-index", "roles", "mirror", "mend", "convert", "helium", "completion",
 )  # fmt: skip
 HEAVY = (
     "numpy",
