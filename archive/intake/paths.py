@@ -33,7 +33,8 @@ def path_inside(folder: Path, name: str) -> Path | str:
 def _file_at(path: Path, folder: Path) -> Path | str:
     try:
         resolved = path.resolve(strict=True)
-    except (OSError, RuntimeError):  # RuntimeError: a link that leads to itself, before Python 3.13
+    except (OSError, RuntimeError, ValueError):
+        # RuntimeError: a link that leads to itself, before Python 3.13; ValueError: NUL, or a lone surrogate.
         return "is not there"
     if not resolved.is_relative_to(folder.resolve()):
         return "is a link that leads out of the cooldown folder"

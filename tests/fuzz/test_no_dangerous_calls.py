@@ -9,14 +9,32 @@ _ROOT = Path(__file__).parents[2]
 _SOURCES = sorted(
     path for folder in ("archive", "schemas", "migrations", "templates") for path in (_ROOT / folder).rglob("*.py")
 )  # fmt: skip
-_MODULES = {"pickle", "cPickle", "marshal", "shelve", "dill", "cloudpickle", "joblib", "yaml", "ruamel", "code", "pty"}
+_MODULES = {
+    "pickle",
+    "cPickle",
+    "marshal",
+    "shelve",
+    "dill",
+    "cloudpickle",
+    "joblib",
+    "yaml",
+    "ruamel",
+    "code",
+    "pty",
+}
 _CALLS = {"eval", "exec", "compile", "__import__", "input"}
 _METHODS = {("os", "system"), ("os", "popen"), ("yaml", "load"), ("np", "load"), ("numpy", "load")}
 
 # Each with the reason why it may stand.
 _EXCEPTED = {
-    ("schemas/unit_registry.py", "pickle"): "the units library keeps its own cache so; only its faults are named",
-    ("archive/reduction/trials.py", "pickle"): "from one process to its own children, as the standard library does",
+    (
+        "schemas/unit_registry.py",
+        "pickle",
+    ): "the units library keeps its own cache so; only its faults are named",
+    (
+        "archive/reduction/trials.py",
+        "pickle",
+    ): "from one process to its own children, as the standard library does",
     ("archive/intake/hdf5_source.py", "np.load"): "the answer of our own child, with allow_pickle=False",
 }
 
@@ -43,7 +61,9 @@ def _called(node: ast.Call) -> set[str]:
             found.add(".".join(name))
     for keyword in node.keywords:
         given = keyword.value.value if isinstance(keyword.value, ast.Constant) else None
-        if (keyword.arg == "shell" and given is not False) or (keyword.arg == "allow_pickle" and given is not False):
+        if (keyword.arg == "shell" and given is not False) or (
+            keyword.arg == "allow_pickle" and given is not False
+        ):
             found.add(f"{keyword.arg}={given}")
     return found
 
