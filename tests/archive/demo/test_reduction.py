@@ -9,7 +9,9 @@ import pytest
 
 from archive.demo.first_cooldown import first_cooldown
 from archive.demo.forward import background_period
+from archive.demo.porous_cooldown import singular_amplitude
 from archive.demo.scenario import make_folders, truth
+from archive.demo.second_cooldown import NIGHT_DRIFT, TO4_LATER
 from archive.errors import UnknownAddress
 from archive.intake.folder import read_cooldown
 from archive.intake.summary import record_entries, sweep_entries
@@ -100,6 +102,10 @@ class Laboratory:
         outcome = self.outcomes[reduction_address]
         return estimate_from(outcome.document, lambda path: outcome.arrays[path][0], name)
 
+    def grounds(self, sweep_address):
+        """Return that nothing is read otherwise than the sheet says."""
+        return {}
+
     def digest(self, address):
         """Return the digest of a record or a reduction."""
         return record_digest(
@@ -182,6 +188,20 @@ def test_the_frequency_sweep_and_the_ringdown_agree_with_the_truth_and_with_each
     assert abs(pull(resonance["quality_factor"], quality)) < 4
     # The decay gives Q to about 1 part in 10 000; the period that it is computed with is stated much better.
     assert decay["quality_factor"].value == pytest.approx(quality, rel=6e-4)
+
+
+def test_the_heat_capacity_of_the_glass_has_the_singularity_that_its_coherence_length_asks_for(laboratory):
+    film = laboratory.reduce("porous-film", "2026-05/s007")
+    heat = laboratory.reduce("porous-heat-capacity", "2026-05/s010")
+    assert abs(pull(film["expected_singularity"], singular_amplitude())) < 4
+    assert abs(pull(heat["singularity"], singular_amplitude())) < 4
+    assert heat["singularity"].value > 20 * heat["singularity"].uncertainty
+
+
+def test_a_quiet_night_tells_its_drift(laboratory):
+    found = laboratory.reduce("stability", "2026-02/s006")
+    assert abs(pull(found["drift_per_hour"], 3600 * NIGHT_DRIFT)) < 4
+    assert found["resolution"].value < TO4_LATER.oscillator.noise / 3
 
 
 def first_pulls(seed, folder):
