@@ -13,6 +13,7 @@ from archive.commands.failures import EXIT_WARNINGS
 from archive.commands.machine import plain, write_json
 from archive.commands.opening import archive_option, json_option, require_address, strict_option
 from archive.commands.terminal import Progress, clean, draw, say
+from archive.commands.terminal_plot import say_plot, view_of
 from archive.commands.uncertainty_tables import say_budget, say_monte_carlo
 from archive.errors import EXIT_BAD_INPUT, EXIT_DAMAGE, ArchiveError, BadRequest
 
@@ -27,23 +28,29 @@ __all__ = ["replay", "show", "trace"]
 
 @click.command(short_help="Show whatever has an address.")
 @click.argument("address")
+@click.option(
+    "--plot", is_flag=True, help="Draw a small plot of a sweep, channel or reduction behind the text."
+)
 @archive_option
 @json_option
-def show(*, address: str, archive_dir: Path | None, as_json: bool) -> None:
+def show(*, address: str, plot: bool, archive_dir: Path | None, as_json: bool) -> None:
     """Show everything the archive knows of whatever has ADDRESS.
 
     \b
     Examples:
       stillroom show 2026-03                              a cooldown
       stillroom show 2026-03/s017                         a sweep, or a dose
-      stillroom show 2026-03/s017#period                  a channel
+      stillroom show --plot 2026-03/s017#period           a channel, drawn
       stillroom show 2026-03/s017@film-transition.2       a reduction
       stillroom show 2026-03/s017@film-transition.2#T_KT  a result
       stillroom show TO-4.r2                              a record, or a plan
       stillroom show 2026-03.a1:raw/ts05.csv              a raw file
     """
+    if plot and as_json:
+        raise click.UsageError("--plot and --json exclude each other")
     with opening.open_archive(archive_dir) as lab:
         content = lab.show(address)
+        drawn = view_of(lab, address) if plot else None
     if as_json:
         write_json(content)
         return
@@ -55,6 +62,9 @@ def show(*, address: str, archive_dir: Path | None, as_json: bool) -> None:
     if run is not None:
         entries = content["outputs"] if content["what"] == "reduction" else [content]
         say_monte_carlo(run, {each["name"]: each for each in entries})
+    if drawn is not None:
+        say()
+        say_plot(*drawn)
 
 
 @click.command(short_help="Trace a number down to raw bytes, or what rests on it.")

@@ -14,7 +14,8 @@ from archive.commands.layers import LAYER_WORDS, NO_SUBSTRATE, layer_of
 from archive.commands.opening import archive_option, json_option
 from archive.commands.ranges import Bounds, joined_units, named_range, point_in_time, si_bounds
 from archive.commands.sweep_lists import say_sweeps, write_sweeps_csv, write_sweeps_json
-from archive.commands.terminal import note
+from archive.commands.terminal import note, say
+from archive.commands.terminal_plot import say_plot
 from archive.errors import BadRequest
 
 if TYPE_CHECKING:
@@ -39,6 +40,9 @@ SWEEP_KINDS: Final = (
 )
 """The kinds of `schemas.sweep`, written out here so that the help needs no schemas."""
 
+_PLOTTED: Final = 6
+# Lines with points of each of several plots.
+_LINES: Final = 7
 _RANGES: Final = frozenset({"--coverage", "--temperature", "--result"})
 
 
@@ -101,10 +105,18 @@ def _is_unit(word: str) -> bool:
 @click.option("--limit", type=click.IntRange(min=1), default=200, show_default=True, help="At most so many.")
 @click.option("--offset", type=click.IntRange(min=0), default=0, help="After so many left out.")
 @click.option("--csv", "as_csv", is_flag=True, help="Write CSV, with units in the header.")
+@click.option("--plot", is_flag=True, help=f"Draw small plots of the first {_PLOTTED} sweeps, as recorded.")
 @archive_option
 @json_option
 def search(
-    *, words: tuple[str, ...], limit: int, as_csv: bool, as_json: bool, archive_dir: Path | None, **asked: Any
+    *,
+    words: tuple[str, ...],
+    limit: int,
+    as_csv: bool,
+    plot: bool,
+    as_json: bool,
+    archive_dir: Path | None,
+    **asked: Any,
 ) -> None:
     """Find sweeps; everything that is given must hold. WORDS are looked for in names, notes and descriptions.
 
@@ -119,9 +131,12 @@ def search(
     """
     if as_csv and as_json:
         raise click.UsageError("--csv and --json exclude each other")
+    if plot and (as_csv or as_json):
+        raise click.UsageError("--plot goes with the table only, not with --csv or --json")
     with opening.open_archive(archive_dir) as lab:
         # One more than is shown, to know whether there are more.
         found = lab.search(_query(lab, words, limit + 1, asked))
+        views = [lab.sweep(row.address) for row in found[: min(limit, _PLOTTED)]] if plot else []
     more, rows = len(found) > limit, found[:limit]
     if as_json:
         write_sweeps_json(rows)
@@ -129,6 +144,9 @@ def search(
         write_sweeps_csv(rows)
     else:
         say_sweeps(rows)
+        for view in views:
+            say()
+            say_plot(view, height=_LINES)
     if more:
         note(f"note: only the first {limit} are listed; ask for more with --limit or --offset")
 
