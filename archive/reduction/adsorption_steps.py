@@ -196,31 +196,36 @@ def _findings(gas: str, each: float | None) -> tuple[Finding, ...]:
 
 
 def plateau(parameters: PlateauParameters, *, relative_pressure: FloatArray, amount: FloatArray) -> Outcome:
-    """Return the mean amount on the plateau of an isotherm: filled pores.
+    """Return the mean amount on the plateau of an isotherm: filled pores; a verdict where there is none.
 
-    Raises
-    ------
-    ValueError
-        Fewer than three points in the range, or amounts that rise too much over it.
+    Notes
+    -----
+    Many isotherms have no plateau, or end before it: fewer than three points in the range, or amounts that rise too much over it,
+    give a verdict and a note.
     """
     rows = known_rows(relative_pressure, amount) & (
         np.nan_to_num(relative_pressure, nan=-1.0) > parameters.low
     )
     rows &= np.nan_to_num(relative_pressure, nan=2.0) < parameters.high
     chosen = amount[rows]
+    within = f"between p/p0 = {parameters.low:g} and {parameters.high:g}"
     if chosen.size < 3:
-        raise ValueError(
-            f"relative_pressure: found {chosen.size} points between {parameters.low:g} and {parameters.high:g}, expected at least 3"
-        )
+        return _no_plateau(f"has {chosen.size} points there, 3 at least are wanted", within)
     mean = float(np.mean(chosen))
     rise = float(np.ptp(chosen)) / mean
     if rise > parameters.largest_rise:
-        raise ValueError(
-            f"amount: it rises by {rise:.0%} between {parameters.low:g} and {parameters.high:g}; that is no plateau"
-        )
+        return _no_plateau(f"rises by {rise:.0%}, at most {parameters.largest_rise:.0%} is a plateau", within)
     u = float(np.std(chosen, ddof=1)) / math.sqrt(chosen.size)
     return Outcome(
         {"plateau_amount": mean},
         point={"plateau_amount": u},
-        facts={"points": int(chosen.size), "rise": rise},
+        facts={"points": int(chosen.size), "shape": f"is flat within {rise:.2g}"},
     )
+
+
+def _no_plateau(shape: str, within: str) -> Outcome:
+    what = f"{within} the isotherm {shape}: no plateau"
+    return Outcome(
+        {"plateau_amount": math.nan}, verdicts={"plateau_amount": "no plateau"}, facts={"shape": shape},
+        findings=(Finding(code="no-plateau", severity="note", what=what),),
+    )  # fmt: skip

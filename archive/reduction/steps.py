@@ -321,7 +321,7 @@ STEPS: tuple[Step, ...] = (
         name="isotherm-plateau", version=1, function=adsorption_steps.plateau, parameters=adsorption_steps.PlateauParameters,
         takes={"relative_pressure": Port("relative_pressure|pressure_ratio", "array", "relative pressure"), "amount": Port("amount|specific_amount", "array", "amount adsorbed")},
         yields={"plateau_amount": Port("same:amount", "scalar", "amount on the plateau: filled pores")},
-        sentence="Between p/p0 = {low} and {high} the isotherm is flat within {rise}, at {plateau_amount}.", spread="refit",
+        sentence="Between p/p0 = {low} and {high} the isotherm {shape}; amount on the plateau: {plateau_amount}.", spread="refit",
     ),
     *gathering.GATHERING_STEPS,
     *jump_steps.JUMP_STEPS,

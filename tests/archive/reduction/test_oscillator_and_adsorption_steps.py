@@ -192,10 +192,22 @@ def test_the_published_bet_example_and_its_counterexample() -> None:
         )
 
 
-def test_what_rises_is_no_plateau() -> None:
+@pytest.mark.parametrize(
+    ("reached", "said"), [(0.9, "rises by 76%"), (0.25, "has 0 points there")], ids=["rises", "ends before"]
+)
+def test_what_rises_or_ends_before_is_no_plateau(reached: float, said: str) -> None:
+    x = np.linspace(0.1, reached, 20)
+    # From 0.311 to 0.689 about a mean of 0.5, where the amount is the pressure.
+    found = plateau(PlateauParameters(), relative_pressure=x, amount=x)
+    assert found.verdicts == {"plateau_amount": "no plateau"}
+    assert np.isnan(found.outputs["plateau_amount"])
+    (note,) = found.findings
+    assert note.severity == "note"
+    assert said in note.what
+
+
+def test_a_saturated_pressure_is_above_nought() -> None:
     x = np.linspace(0.1, 0.9, 20)
-    with pytest.raises(ValueError, match="no plateau"):
-        plateau(PlateauParameters(), relative_pressure=x, amount=x)
     with pytest.raises(ValueError, match="not above 0"):
         relative_pressure(NoParameters(), pressure=x, saturated_pressure=0.0)
 
