@@ -46,6 +46,7 @@ from archive.lab.outcomes import CheckReport, IngestOutcome, ReduceOutcome, Repl
 from archive.lab.place import find_root, made, make_root, unmade
 from archive.lab.renewing import reduce_stale
 from archive.lab.replaying import replay_all
+from archive.lab.report_files import written_reports
 from archive.lab.revising import revise
 from archive.lab.source import LabSource, key_of
 from archive.lab.stale import Stale, stale
@@ -57,7 +58,7 @@ from archive.reduction.calibration_comparison import Drift
 from archive.reduction.monte_carlo import Request
 from archive.reduction.software import software
 from archive.reduction.trace import TraceNode
-from archive.store.durable import archive_lock, write_whole
+from archive.store.durable import archive_lock
 from archive.store.fixity import fixity
 from archive.store.interface import Damage, SealedFile
 from archive.store.journal import Entry
@@ -554,14 +555,8 @@ class Archive:
         return reporting.appendix(self._source, self.name, addresses, title=title, level=level)
 
     def write_reports(self, files: dict[str, bytes], target: Path | str) -> list[Path]:
-        """Write reports into a folder; each file whole or not at all."""
-        written = []
-        for name, content in files.items():
-            path = Path(target) / name
-            path.parent.mkdir(parents=True, exist_ok=True)
-            write_whole(path, content, replace=True)
-            written.append(path)
-        return written
+        """Write reports into a folder; each file whole or not at all, and when one fails, those written are named."""
+        return written_reports(files, Path(target))
 
     # Exchanging ---------------------------------------------------------------------------------------------------
 

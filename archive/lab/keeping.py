@@ -12,7 +12,14 @@ from archive.errors import ArchiveError, BadRequest
 from archive.index import Index
 from archive.intake.settings import SETTINGS_NAME, Settings, read_settings, settings_without_index
 from archive.lab.reducing import rebuilt_index
-from archive.store.durable import archive_lock, make_folder, put_in_place, write_whole
+from archive.store.durable import (
+    LOCK_NAME,
+    STAGING_SUFFIX,
+    archive_lock,
+    make_folder,
+    put_in_place,
+    write_whole,
+)
 from archive.store.interface import Damage, SealedFile
 from archive.store.journal import JOURNAL_NAME, Journal
 from archive.store.local import LocalStore, open_store
@@ -156,7 +163,8 @@ def _fit_for_mirror(target: Path, settings: Settings) -> None:
         make_folder(target)
     if not target.is_dir():
         raise BadRequest("this is no folder", file=str(target))
-    lying = {path.name for path in target.iterdir()} - {"archive.lock"}
+    # What a mirror that was stopped left of its small files is no stranger's.
+    lying = {path.name for path in target.iterdir() if not path.match(f".*{STAGING_SUFFIX}")} - {LOCK_NAME}
     if (target / SETTINGS_NAME).is_file():
         other = read_settings(target)
         if other.name != settings.name:
@@ -170,6 +178,7 @@ def _fit_for_mirror(target: Path, settings: Settings) -> None:
         JOURNAL_NAME,
         "index.sqlite3",
         "index.sqlite3.new",
+        "index.sqlite3.new-journal",
         "index.sqlite3-wal",
         "index.sqlite3-shm",
     }:
@@ -181,7 +190,11 @@ def _fit_for_mirror(target: Path, settings: Settings) -> None:
 
 def _copied_index(target: LocalStore, snapshot: Callable[[Path], bool]) -> str:
     fresh = target.root / "index.sqlite3.new"
-    fresh.unlink(missing_ok=True)
+    for suffix in (
+        "",
+        "-journal",
+    ):  # what a mirror that was stopped left; its journal would be taken for the new one's
+        fresh.with_name(fresh.name + suffix).unlink(missing_ok=True)
     if not snapshot(fresh):
         return "made anew"
     for suffix in ("-wal", "-shm"):  # of the index that is replaced: all that it held is in the archive

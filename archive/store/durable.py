@@ -66,6 +66,7 @@ STAGING_SUFFIX = ".partial"
 # What a file system answers that knows no second names (Linux link(2), ERRORS; macOS answers ENOTSUP).
 _NO_LINKS = {errno.EPERM, errno.ENOSYS, errno.EOPNOTSUPP, errno.ENOTSUP, errno.EMLINK}
 _BLOCK = 1 << 20
+_POLL_S = 0.003
 _held: dict[Path, int] = {}  # lock files held by this process, so that sweeping can insist on one
 
 
@@ -404,7 +405,8 @@ def archive_lock(root: Path, *, wait_s: float = 5.0) -> Iterator[None]:
                     found=_holder(path),
                     remedy="wait for it to end and try again; the lock ends with its process",
                 )
-            time.sleep(0.05)
+            # Short beside the moment between two acts of one writer, or that writer would keep the others out for minutes.
+            time.sleep(_POLL_S)
         _held[path] = descriptor
         now = datetime.datetime.now(datetime.UTC).isoformat(timespec="seconds")
         with contextlib.suppress(OSError):  # on a full disk the lock holds all the same

@@ -1,7 +1,7 @@
 """Many processes that write to one archive and search it, at once; run as a program.
 
 Arguments: the project's folder, the archive, the folder with the cooldowns of each writer, how many writers, how many readers.
-A writer that finds the archive busy tries again, for a minute at most. Every process says what it did in a line of JSON.
+A writer that finds the archive busy tries again, for two minutes at most. Every process says what it did in a line of JSON.
 """
 
 from __future__ import annotations
@@ -16,7 +16,7 @@ from pathlib import Path
 
 __all__: list[str] = []
 
-LONGEST_S = 60.0
+LONGEST_S = 120.0
 """How long a writer tries; far beyond the wait for a lock, 5 s, times the writers that may stand before it."""
 
 

@@ -23,7 +23,7 @@ from collections.abc import Callable, Iterable
 from dataclasses import dataclass, field
 from pathlib import Path
 
-__all__ = ["Chance", "Disk", "SyncedOnly"]
+__all__ = ["Chance", "Disk", "Everything", "Power", "SyncedOnly"]
 
 _SECTOR = 512
 _LINE = re.compile(r"(\w+)\((.*)\) += (-?\d+)(?:<(.*?)>)?")
@@ -47,6 +47,18 @@ class _Name:
     path: str
     inode: int | None
     source: str | None = None  # of a rename: the name that goes
+
+
+class Everything:
+    """The disk of a process that was killed: the system goes on and forgets nothing."""
+
+    def keeps(self) -> bool:
+        """Return whether a change of names is kept."""
+        return True
+
+    def kept(self, place: int, data: bytes) -> bytes:
+        """Return what is kept of a write."""
+        return data
 
 
 class SyncedOnly:
@@ -82,6 +94,10 @@ class Chance:
             sectors = int(self._draw() * (len(data) // _SECTOR + 1))
             return data[: max(0, sectors * _SECTOR - place % _SECTOR)]
         return bytes(len(data))
+
+
+Power = SyncedOnly | Chance | Everything
+"""What becomes of what was not synced."""
 
 
 class Disk:
@@ -198,7 +214,7 @@ class Disk:
         _apply(change, self._live)
         self._pending.append(change)
 
-    def laid(self, target: Path, power: SyncedOnly | Chance) -> None:
+    def laid(self, target: Path, power: Power) -> None:
         """Lay what is left when the power goes now into a folder, with the paths below the parent of the first folder."""
         names = dict(self._sure)
         for change in self._pending:
@@ -227,7 +243,7 @@ def _apply(change: _Name, names: dict[str, int]) -> None:
         names[change.path] = change.inode
 
 
-def _content(inode: _Inode, power: SyncedOnly | Chance | None) -> bytearray:
+def _content(inode: _Inode, power: Power | None) -> bytearray:
     """Return the bytes of a file when everything is kept (no power given), or what power leaves."""
     content = bytearray(inode.sure)
     for place, data in inode.pending:

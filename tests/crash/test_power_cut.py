@@ -1,4 +1,4 @@
-"""The power goes: at any point of any operation, whatever the disk has kept of what was not synced, the archive is whole.
+"""The power goes, or the process is killed: at any point of any operation, whatever the disk has kept of what was not synced, the archive is whole.
 
 The system calls of an undisturbed run are carried out on a model of a disk (`tests.crash.disk`), which is then laid out as a
 power cut would leave it. Only a part of the points is drawn in an ordinary run; `STILLROOM_CRASH_SAMPLES` says how many.
@@ -16,7 +16,7 @@ import pytest
 
 from archive.errors import ArchiveError
 from archive.index.engine import engine_of, index_url
-from tests.crash.disk import Chance, Disk, SyncedOnly
+from tests.crash.disk import Chance, Disk, Everything, SyncedOnly
 from tests.crash.operations import OPERATIONS, begun, prepared, require_whole_or_nothing, vault
 from tests.crash.traced import Warm, warm
 
@@ -55,8 +55,8 @@ def test_the_power_goes(name: str, beside: Path, child: Warm, tmp_path: Path) ->
     for number, line in enumerate(lines):
         disk.call(line)
         if number in points:
-            how = chance.choice(["synced only", "drawn", "drawn"])
-            power = SyncedOnly() if how == "synced only" else Chance(chance.random)
+            how = chance.choice(["synced only", "drawn", "drawn", "everything"])
+            power = {"synced only": SyncedOnly(), "everything": Everything()}.get(how, Chance(chance.random))
             target = tmp_path / f"{number}-{how}"
             target.mkdir()
             disk.laid(target, power)
