@@ -30,6 +30,7 @@ from archive.commands import (
     reduce_commands,
     report_commands,
     search_command,
+    tour_command,
 )
 from archive.commands.failures import EXIT_INTERRUPTED, GuardedGroup
 from archive.commands.offered import offer
@@ -39,6 +40,7 @@ __all__ = ["main", "stillroom"]
 
 _COMMANDS: Final = (
     demo_command.demo,
+    tour_command.tour,
     archive_commands.init,
     intake_commands.schema,
     intake_commands.draft,
@@ -100,7 +102,7 @@ def stillroom(archive_dir: Path | None) -> None:
     """Archive of a low-temperature laboratory: finished cooldowns, kept whole, reduced with uncertainties, found again.
 
     \b
-    See it work on invented data:   stillroom demo
+    See it work on invented data:   stillroom demo, or be shown around: stillroom tour
     Begin an archive:               stillroom init lab-archive
     Describe a finished cooldown:   stillroom draft FOLDER, then fill in what it marks
     See every fault at once:        stillroom check FOLDER

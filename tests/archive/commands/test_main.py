@@ -25,7 +25,7 @@ Run = Callable[..., Result]
 Fake = Callable[..., FakeArchive]
 
 COMMANDS = (
-    "demo", "init", "schema", "draft", "check", "ingest", "plans", "reduce", "stale", "revise", "amend", "withdraw",
+    "demo", "tour", "init", "schema", "draft", "check", "ingest", "plans", "reduce", "stale", "revise", "amend", "withdraw",
     "search", "show", "trace", "replay", "compare", "calibration", "drift", "run-sheet", "appendix", "journal",
     "prov", "export", "import", "fixity", "rebuild-index", "roles", "mirror", "mend", "convert", "helium", "completion",
 )  # fmt: skip
