@@ -78,8 +78,10 @@ def test_each_help_teaches_by_example(name: str, run: Run) -> None:
 @pytest.mark.parametrize("name", COMMANDS)
 def test_each_command_that_prints_data_offers_json(name: str) -> None:
     options = {option for parameter in stillroom.commands[name].params for option in parameter.opts}
-    # Schema, lineage and roles are a format of their own already; a draft is TOML; the demonstration is a story.
-    assert ("--json" in options) == (name not in ("schema", "draft", "demo", "prov", "roles"))
+    # Schema, lineage and roles are a format of their own already; a draft is TOML; demonstration and tour are stories; a script is for a shell.
+    assert ("--json" in options) == (
+        name not in ("schema", "draft", "demo", "tour", "completion", "prov", "roles")
+    )
 
 
 @pytest.mark.parametrize(
