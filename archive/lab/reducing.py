@@ -121,7 +121,10 @@ def reduce(
     reading = EffectiveSource(source)
     rows = source.index.sweeps(cooldown)
     asked_for = cooldown if sweep is None else f"{cooldown}/{sweep.rpartition('/')[2]}"
-    why = reading.why_withdrawn(asked_for)
+    try:
+        why = reading.why_withdrawn(asked_for)
+    except ValueError:
+        why = None  # what is no address is told below, as what is not here
     if why is not None:
         raise BadRequest(f"{asked_for} is withdrawn: {why}", remedy="what is withdrawn is not reduced")
     if not rows:

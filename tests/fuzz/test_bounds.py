@@ -204,6 +204,12 @@ def test_toml_that_cannot_be_read_is_one_kind_of_fault(tmp_path: Path, text: str
     }
 
 
+def test_a_dotted_word_in_a_string_is_no_key() -> None:
+    """Found by the long run: a heading of sixty-six parts, which a draft quotes."""
+    word = "a." * 80 + "a"
+    assert tables_of(f'column = "{word}"  # {word}') == {"column": word}
+
+
 def test_the_line_of_a_long_number_is_told() -> None:
     with pytest.raises(TomlFault) as caught:
         tables_of("b = 1\na = " + "9" * 5000)
