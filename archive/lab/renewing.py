@@ -11,7 +11,9 @@ from archive.lab.outcomes import ReduceOutcome
 from archive.lab.reducing import Seal, current_plans, reduce_one
 from archive.lab.source import LabSource
 from archive.lab.stale import Stale, stale
+from archive.reduction.facts import sweep_facts
 from archive.reduction.monte_carlo import Request
+from archive.reduction.needs import gathered_reductions
 from archive.reduction.replay import recorded_needs
 from schemas.address import parse_address
 from schemas.lineage import ReductionDocument
@@ -131,4 +133,11 @@ def _needs_now(
         newest = reading.reductions(parsed.plan or "", parsed.sweep or "")
         if newest and parsed.plan == plan.needs[name].plan:
             found[name] = newest[-1].address
-    return found
+    # Told or left out: an optional need of many that is not told would be taken for one that nothing served.
+    try:
+        every = gathered_reductions(plan, sweep_facts(reading, document.sweep), reading)
+    except BadRequest:
+        return found
+    return found | {
+        name: [each.address for each in many] for name, many in every.items() if plan.needs[name].optional
+    }
