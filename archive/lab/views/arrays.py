@@ -21,8 +21,6 @@ from archive.lab.views.frames import as_dataframe, as_dataset
 from archive.lab.views.html import fragment, grid
 from archive.lab.views.pint_units import pint_quantity
 from archive.lab.views.result import Result
-from archive.reports.numbers import shown_output
-from archive.reports.svg import Series, axis_of, plot
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -168,6 +166,8 @@ class ArrayView(Mapping[str, NDArray[np.float64]]):
         if chosen is None:
             return ""
         x, y = hours(chosen[0]), chosen[1]
+        from archive.reports.svg import Series, axis_of, plot  # as below
+
         across, up = axis_of(x.label, [x.values]), axis_of(y.label, [y.values])
         if across is None or up is None:
             return ""
@@ -223,6 +223,10 @@ class ReductionView(ArrayView):
 
     @override
     def _table(self) -> str:
+        from archive.reports.numbers import (
+            shown_output,
+        )  # what draws takes longer to import than a search to answer
+
         rows = [
             (each.name, shown_output(each.entry).text, each.description) for each in self.results.values()
         ]

@@ -9,7 +9,6 @@ from typing_extensions import override
 
 from archive.lab.views.html import described, fragment
 from archive.lab.views.pint_units import pint_quantity
-from archive.reports.numbers import shown_output
 from schemas.lineage import OutputEntry
 
 if TYPE_CHECKING:
@@ -90,10 +89,16 @@ class Result:
 
     @override
     def __repr__(self) -> str:
+        from archive.reports.numbers import (
+            shown_output,
+        )  # what draws takes longer to import than a search to answer
+
         told = f" [{'; '.join(self.marks)}]" if self.marks else ""
         return f"<{self.address}: {shown_output(self.entry).plain}{told}>"
 
     def _repr_html_(self) -> str:
+        from archive.reports.numbers import shown_output  # as above
+
         content = {
             "value": shown_output(self.entry).text,
             "what": self.description,
