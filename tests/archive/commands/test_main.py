@@ -62,6 +62,18 @@ def test_help_imports_nothing_heavy(words: list[str]) -> None:
     assert json.loads(ended.stderr) == []
 
 
+def test_the_door_imports_nothing_that_draws() -> None:
+    program = "import sys, archive.lab; print([name for name in ('matplotlib', 'typst', 'jinja2') if name in sys.modules])"
+    ended = subprocess.run(
+        [sys.executable, "-c", program],
+        capture_output=True,
+        text=True,
+        check=True,
+        cwd=Path(__file__).parents[3],
+    )
+    assert ended.stdout == "[]\n"
+
+
 def test_the_commands_are_those_of_the_contract(run: Run) -> None:
     assert tuple(stillroom.commands) == COMMANDS
     listed = re.findall(r"^  ([a-z-]+)  +\S", run("--help").stdout.partition("Commands:")[2], re.MULTILINE)
