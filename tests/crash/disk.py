@@ -21,6 +21,7 @@ import os
 import re
 from collections.abc import Callable, Iterable
 from dataclasses import dataclass, field
+from itertools import count
 from pathlib import Path
 
 __all__ = ["Chance", "Disk", "Everything", "Power", "SyncedOnly"]
@@ -114,6 +115,7 @@ class Disk:
         self._folders = [str(folder) for folder in folders]
         self._live: dict[str, int] = {}
         self._pending: list[_Name] = []
+        self._numbers = count(1_000_000)
         known: dict[int, int] = {}
         for top in map(Path, self._folders):
             for path in [top, *top.rglob("*")] if top.is_dir() else []:
@@ -170,7 +172,7 @@ class Disk:
         if path not in self._live:
             if "O_CREAT" not in how:
                 return False
-            number = len(self._inodes) + len(self._live) + len(self._pending) + 1000
+            number = next(self._numbers)
             self._inodes[number] = _Inode()
             self._named(_Name(path, number))
             return True
@@ -221,7 +223,7 @@ class Disk:
             if power.keeps():
                 _apply(change, names)
         origin = Path(self._folders[0]).parent
-        contents: dict[int, bytes] = {}
+        laid: dict[int, Path] = {}
         for path in sorted(names):
             number, place = names[path], target / Path(path).relative_to(origin)
             if not place.parent.is_dir() or path.endswith("-shm"):
@@ -229,9 +231,11 @@ class Disk:
             if number < 0:
                 place.mkdir()
                 continue
-            if number not in contents:
-                contents[number] = bytes(_content(self._inodes[number], power))
-            place.write_bytes(contents[number])
+            if number in laid:
+                place.hardlink_to(laid[number])
+            else:
+                laid[number] = place
+                place.write_bytes(_content(self._inodes[number], power))
 
 
 def _apply(change: _Name, names: dict[str, int]) -> None:
