@@ -1,7 +1,7 @@
 """A long random run against every target, kept out of CI: `python -m tests.fuzz.long_run --minutes 10`.
 
-Guided by coverage where the package atheris is installed (`--guided TARGET`), otherwise by hypothesis, which shrinks what
-it finds. Each find is written to a file beside the others, with the name of its target, so that it can become a test.
+Hypothesis makes and shrinks the examples. Each find is written to a file beside the others, with the name of its target,
+so that it can become a test.
 """
 
 from __future__ import annotations
@@ -81,17 +81,6 @@ def _round(name: str, number: int, folder: Path) -> bool:
     return True
 
 
-def _guided(name: str, seconds: int) -> None:
-    """Let atheris look for inputs that reach new code; it ends at the first find."""
-    import atheris  # an extra tool, not needed by any test
-
-    atheris.instrument_all()
-    atheris.Setup(
-        [sys.argv[0], f"-max_total_time={seconds}", "-rss_limit_mb=4096", "-timeout=30"], BYTES[name]
-    )
-    atheris.Fuzz()
-
-
 def main() -> int:
     """Run for some minutes; exit code 1 if anything was found."""
     reader = argparse.ArgumentParser(description=__doc__)
@@ -101,13 +90,9 @@ def main() -> int:
     )
     reader.add_argument("--seed", type=int, default=None, help="first round's number; random if left out")
     reader.add_argument("--finds", type=Path, default=Path("fuzz-finds"), help="folder for what is found")
-    reader.add_argument("--guided", choices=sorted(BYTES), help="one target, guided by coverage")
     asked = reader.parse_args()
     signal.signal(signal.SIGALRM, _hung)
     resource.setrlimit(resource.RLIMIT_AS, (_MEMORY, _MEMORY))
-    if asked.guided:
-        _guided(asked.guided, round(asked.minutes * 60))
-        return 0
     number = asked.seed if asked.seed is not None else random.SystemRandom().randrange(1 << 30)
     begin, rounds, found = time.monotonic(), 0, 0
     while time.monotonic() - begin < asked.minutes * 60:
