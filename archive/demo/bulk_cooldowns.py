@@ -130,7 +130,7 @@ def calorimeter_cooldown(seed: int) -> CooldownFolder:
         "modes": "no oscillator",
         "drift": "drift of the temperature extrapolated to the middle of each pulse",
         "gravity_state": "applied",
-        "gravity": "points that gravity rounds over 3 mm are not fitted",
+        "gravity": "the law is averaged over the 3 mm of height",
     }
     begin, rise = pulse_begins()
     empty = np.linspace(2.10, 2.25, 60)

@@ -1,7 +1,7 @@
 """Fit of the heat capacity on both sides of the lambda point, with the logarithm as its nested special case.
 
-Rules: alpha is never fitted with B fixed; a step of temperature is compared with the law's mean over that step, not with its value in the middle;
-a step that holds the transition is never used.
+Rules: alpha is never fitted with B fixed; a step of temperature is compared with the law's mean over that step and over the height of the cell, not
+with its value in the middle; a step during which some part of the cell passes the transition is never used.
 """
 
 from __future__ import annotations
@@ -21,6 +21,9 @@ __all__ = ["LambdaFit", "Sides", "fit_lambda_law", "sides_of_transition"]
 
 _NODES, _WEIGHTS = np.polynomial.legendre.leggauss(6)
 """Six points give the mean of a logarithm over a step as wide as its distance from the transition to 1e-7."""
+
+_HEIGHT_NODES, _HEIGHT_WEIGHTS = np.polynomial.legendre.leggauss(5)
+"""Five points give the mean of a logarithm over the height to 1e-5 where the spread is as wide as the distance from the transition."""
 
 NAMES = ("amplitude", "constant", "asymmetry", "first", "second", "exponent", "lambda_temperature")
 
@@ -151,6 +154,7 @@ def fit_lambda_law(
     confluent_exponent: float = CONFLUENT_EXPONENT,
     standard_uncertainty: npt.ArrayLike | None = None,
     temperature_uncertainty: npt.ArrayLike | None = None,
+    spread: float = 0.0,
     absolute: bool = False,
 ) -> LambdaFit:
     """Return the fit of the law on both sides of the transition, and of the logarithm.
@@ -171,6 +175,8 @@ def fit_lambda_law(
         Delta, held.
     standard_uncertainty, temperature_uncertainty : array_like, optional
         Of each row; the second counts through the slope of the logarithm, A/(t T_lambda).
+    spread : float
+        Difference of T_lambda between top and bottom of the cell, K, >= 0 (`lambda_gravity.lambda_spread`); the cell is as wide at each height.
     absolute : bool
         As in `fitting.fit`.
 
@@ -181,7 +187,7 @@ def fit_lambda_law(
 
     Notes
     -----
-    The rows of the window are chosen anew with each fitted T_lambda until they stay.
+    The rows of the window are chosen anew with each fitted T_lambda until they stay. With gravity T_lambda is that at half the height.
     """
     T = series("temperature", temperature, positive=True)
     C = series("heat_capacity", heat_capacity)
@@ -189,6 +195,8 @@ def fit_lambda_law(
     same_length(temperature=T, heat_capacity=C, rise=step)
     if not 0 <= window[0] < window[1] < 1:
         raise ValueError(f"window: found {window}, expected 0 <= low < high < 1")
+    if not 0 <= spread < np.inf:
+        raise ValueError(f"spread: found {spread}, expected >= 0 K")
     if corrections not in (0, 1, 2):
         raise ValueError(f"corrections: found {corrections}, expected 0, 1 or 2")
     chosen = sides.below | sides.above
@@ -201,13 +209,17 @@ def fit_lambda_law(
         else np.asarray(temperature_uncertainty, dtype=np.float64)
     )
     problem = _Problem(T, C, step, sides, corrections, confluent_exponent, weight, np.broadcast_to(u_T, T.shape),
-                       standard_uncertainty is not None)  # fmt: skip
+                       standard_uncertainty is not None, spread)  # fmt: skip
     centre = (sides.low + sides.high) / 2
     seen: list[BoolArray] = []
     settled = False
     for _ in range(20):
         t = np.abs(1 - T / centre)
         used = chosen if rows is not None or settled else chosen & (t > window[0]) & (t < window[1])
+        # Of a step that is used the whole cell is on one side.
+        used = used & (
+            (np.abs(T - centre) - np.abs(step) / 2 > spread / 2) | (rows is not None) | (spread == 0)
+        )
         again = next((k for k, each in enumerate(seen) if np.array_equal(each, used)), None)
         if again is not None:
             if settled or again == len(seen) - 1:
@@ -245,6 +257,19 @@ class _Problem:
     weight: FloatArray
     temperature_spread: FloatArray
     stated: bool
+    height_spread: float = 0.0
+
+    @property
+    def _heights(self) -> tuple[FloatArray, FloatArray]:
+        """Return T_lambda at nodes of height, less that at half the height, and the nodes' weights."""
+        if self.height_spread == 0:
+            return np.zeros(1), np.ones(1)
+        return self.height_spread / 2 * _HEIGHT_NODES, _HEIGHT_WEIGHTS / 2
+
+    @property
+    def _shares(self) -> FloatArray:
+        """Return the weights of all nodes of a row; their sum is one."""
+        return np.outer(_WEIGHTS / 2, self._heights[1]).ravel()
 
     def fitted(self, used: BoolArray, centre: float, *, absolute: bool, logarithm: bool) -> FitResult:
         start = self._start(used, centre)
@@ -286,23 +311,21 @@ class _Problem:
 
     def _nodes(self, T_lambda: float, used: BoolArray) -> FloatArray:
         nodes = self.T[used, np.newaxis] + self.step[used, np.newaxis] / 2 * _NODES
+        distance = 1 - nodes[:, :, np.newaxis] / (T_lambda + self._heights[0])
         # A row that a shift of its temperature carries across the transition is kept finite; its residual is then very large.
-        return np.asarray(
-            np.maximum(
-                np.where(self.sides.below[used, np.newaxis], 1.0, -1.0) * (1 - nodes / T_lambda), 1e-12
-            )
-        )
+        signed = np.where(self.sides.below[used, np.newaxis, np.newaxis], 1.0, -1.0) * distance
+        return np.asarray(np.maximum(signed, 1e-12).reshape(nodes.shape[0], -1))
 
     def _mean(self, law: LambdaLaw, T_lambda: float, used: BoolArray) -> FloatArray:
         values = law.value(self._nodes(T_lambda, used), below=self.sides.below[used, np.newaxis])
-        return np.asarray(values @ _WEIGHTS / 2)
+        return np.asarray(values @ self._shares)
 
     def _start(self, used: BoolArray, centre: float) -> dict[str, float]:
         """Return the logarithm by linear least squares."""
         t = self._nodes(centre, used)
         above = np.where(self.sides.below[used], 0.0, -1.0)
-        columns = [singular_term(t, exponent=0.0) @ _WEIGHTS / 2, np.ones(above.shape), above]
-        columns += [t ** (self.delta * power) @ _WEIGHTS / 2 for power in range(1, self.corrections + 1)]
+        columns = [singular_term(t, exponent=0.0) @ self._shares, np.ones(above.shape), above]
+        columns += [t ** (self.delta * power) @ self._shares for power in range(1, self.corrections + 1)]
         w = self.weight[used]
         found = np.linalg.lstsq(np.column_stack(columns) * w[:, np.newaxis], self.C[used] * w, rcond=None)[0]
         start = dict(zip(NAMES, map(float, found), strict=False))
@@ -311,6 +334,6 @@ class _Problem:
         return start
 
     def _weight(self, used: BoolArray, centre: float, amplitude: float) -> FloatArray:
-        t = np.mean(self._nodes(centre, used), axis=1)
+        t = self._nodes(centre, used) @ self._shares
         through_slope = amplitude * self.temperature_spread[used] / (t * centre)
         return np.asarray(1 / np.hypot(1 / self.weight[used], through_slope))

@@ -300,7 +300,7 @@ BULK_STEPS: tuple[Step, ...] = (
         },
         sentence="Over a height of {height} gravity spreads the lambda temperature by {spread_uK} uK, so that nothing inside a reduced temperature of {limit_is} is sharp.",
         citations=("ahlers-1968",),
-        effects={"gravity rounding": "Gravity spreads the lambda temperature over the cell by {spread_uK} uK; rows that it rounds are not fitted."},
+        effects={"gravity rounding": "Gravity spreads the lambda temperature over the cell by {spread_uK} uK; a heat capacity is compared with the mean of the law over the height, and rows inside the spread are not fitted."},
     ),
     Step(
         name="two-scale-factor", version=1, function=two_scale,

@@ -195,7 +195,7 @@ HEAT_CAPACITY_STEPS: tuple[Step, ...] = (
             "logarithm_probability": Port("number", "scalar", "chance that the exponent gains as much where the logarithm is true"),
             "range_upper": Port("number", "array", "upper ends of the window that were tried"), "range_exponent": Port("number", "array", "exponent for each upper end"),
         },
-        sentence="C = (A/alpha) t^-alpha + B, with {confluent_terms} confluent terms (Delta = {delta}) and alpha and B common to both sides, was fitted to {points_below} points below and {points_above} above T_lambda = {lambda_temperature} ({treated}) with t from {low} to {high}, averaged over each step: alpha = {exponent}, A above/A below = {amplitude_ratio}, A below = {amplitude_below}, B + A/alpha = {constant}; chi^2 per degree of freedom {reduced_chi2}. Against the logarithm the F-test gives a probability of {chance}. Range dependence of alpha: {ranges}.",
+        sentence="C = (A/alpha) t^-alpha + B, with {confluent_terms} confluent terms (Delta = {delta}) and alpha and B common to both sides, was fitted to {points_below} points below and {points_above} above T_lambda = {lambda_temperature} ({treated}) with t from {low} to {high}, averaged {gravity}: alpha = {exponent}, A above/A below = {amplitude_ratio}, A below = {amplitude_below}, B + A/alpha = {constant}; chi^2 per degree of freedom {reduced_chi2}. Against the logarithm the F-test gives a probability of {chance}. Range dependence of alpha: {ranges}.",
         citations=("lipa-2003",), spread="refit", weights=("molar_heat_capacity", "temperature"),
     ),
 )  # fmt: skip

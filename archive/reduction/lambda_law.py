@@ -6,7 +6,7 @@ Rule: the exponent is never fitted with the background held; the great terms A/a
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import numpy.typing as npt
@@ -34,9 +34,9 @@ class LambdaLawParameters(Record):
     confluent_exponent: float = 0.529
     lambda_temperature_kelvin: float | None = None
     """Held; fitted when none."""
-    clear_of_gravity: float = 3.0
-    """Rows closer to the transition than this many times the limit of gravity are not fitted; at three, a mean over the height differs from the
-    value in the middle by 0.005 of the amplitude."""
+    clear_of_gravity: float = 1.0
+    """Rows closer to the transition than this many times the limit of gravity are not fitted. The law is averaged over the height; at one half,
+    part of the cell is on the other side."""
     rows_below: tuple[int, ...] | None = None
     """The rows to fit below the transition, from 1, in place of the window."""
     rows_above: tuple[int, ...] | None = None
@@ -79,6 +79,8 @@ def lambda_law(
         weights(u_molar_heat_capacity, known), weights(u_temperature, known),
     )  # fmt: skip
     sides, rows = _sides(parameters, data, temperature.size)
+    if limit is not None:
+        data = replace(data, spread=limit * (sides.low + sides.high) / 2)
     found = _fitted(parameters, data, sides, (low, parameters.high), rows)
     if not found.converged:
         raise ValueError(f"molar_heat_capacity: the law was not fitted: {found.message}")
@@ -97,7 +99,7 @@ def lambda_law(
         covariance=covariance,
         held={"rows_below": numbers[0], "rows_above": numbers[1]},
         facts={
-            "points_below": len(numbers[0]), "points_above": len(numbers[1]), "low": low, "high": parameters.high, "confluent_terms": parameters.corrections,
+            "points_below": len(numbers[0]), "points_above": len(numbers[1]), "low": low, "gravity": "over its step" if limit is None else "over its step and the height of the cell", "high": parameters.high, "confluent_terms": parameters.corrections,
             "reduced_chi2": found.fit.reduced_chi2 if data.u is not None else math.nan, "chance": chance, "delta": parameters.confluent_exponent,
             "treated": "held" if sides.low == sides.high else "fitted",
             "ranges": ", ".join(f"{a:.4f}({s:.4f}) up to {h:.3g} ({n} points)" for h, a, s, n in zip(highs, exponents, spreads, counts, strict=True)),
@@ -116,6 +118,8 @@ class _Data:
     rise: FloatArray | None
     u: FloatArray | None
     temperature_spread: FloatArray | None
+    spread: float = 0.0
+    """Difference of T_lambda over the height of the cell, K."""
 
 
 def _spread(known: npt.NDArray[np.bool_], mask: npt.NDArray[np.bool_]) -> npt.NDArray[np.bool_]:
@@ -153,7 +157,7 @@ def _fitted(
     return fit_lambda_law(
         data.T, data.C, sides=sides, rise=data.rise, window=window, rows=rows, corrections=parameters.corrections,
         confluent_exponent=parameters.confluent_exponent, standard_uncertainty=data.u, temperature_uncertainty=data.temperature_spread,
-        absolute=data.u is not None,
+        spread=data.spread, absolute=data.u is not None,
     )  # fmt: skip
 
 
@@ -229,7 +233,7 @@ def _findings(parameters: LambdaLawParameters, limit: float | None, chance: floa
         findings.append(
             Finding(
                 code="gravity-not-known", severity="note",
-                what="the height of the liquid is not known, so no rows were left out for gravity",
+                what="the height of the liquid is not known, so gravity was not counted",
                 remedy="record the cell's height",
             )
         )  # fmt: skip

@@ -68,6 +68,36 @@ def test_the_middle_of_a_step_is_not_its_mean():
     assert found.fit.chi2 > 10
 
 
+def rounded_logarithm(T, spread):
+    """Return -ln t averaged over a height that spreads T_lambda, in closed form: the integral of ln x is x ln x - x."""
+    low, high = (np.abs(T - T_LAMBDA) + side * spread / 2 for side in (-1, 1))
+    whole = (high * np.log(high) - high - low * np.log(low) + low) / spread
+    return np.log(T_LAMBDA) - whole
+
+
+def test_gravity_is_averaged_out():
+    """Rows down to one spread from the transition give back the law of a cell 2 cm high; taken as if it were thin they do not."""
+    spread = 1.273e-6 * 2  # K; Ahlers, Physical Review 171, 275 (1968), number from memory
+    t = np.geomspace(1.05 * spread / T_LAMBDA, 1e-3, 40)
+    T = T_LAMBDA * np.concatenate([1 - t, 1 + t])
+    C = 5.4 * rounded_logarithm(T, spread) + 15 - 5.4 * 4.1 * (T > T_LAMBDA)
+    sides = sides_of_transition(T, C, lambda_temperature=T_LAMBDA)
+    given = {
+        "sides": sides,
+        "window": (spread / T_LAMBDA, 1e-2),
+        "corrections": 0,
+        "standard_uncertainty": 1e-3,
+        "absolute": True,
+    }
+    found = fit_lambda_law(T, C, spread=spread, **given)
+    assert found.logarithm.value("amplitude") == pytest.approx(5.4, rel=1e-5)
+    assert found.logarithm.value("asymmetry") == pytest.approx(4.1, rel=1e-4)
+    assert found.logarithm.chi2 < 0.1
+    assert fit_lambda_law(T, C, **given).logarithm.chi2 > 100
+    with pytest.raises(ValueError, match=r"spread: found -1e-06, expected >= 0 K"):
+        fit_lambda_law(T, C, spread=-1e-6, **given)
+
+
 @pytest.mark.slow
 @pytest.mark.parametrize(
     ("law", "free"),

@@ -87,7 +87,7 @@ def test_held_rows_give_the_same_numbers():
             np.testing.assert_allclose(again.array(name), value, rtol=1e-6, err_msg=name)
 
 
-def test_gravity_keeps_rows_out():
+def test_gravity_keeps_rows_out_and_is_averaged():
     begin, rise = pulse_begins()
     T = begin + rise / 2
     t = np.abs(1 - T / T_LAMBDA)
@@ -98,8 +98,9 @@ def test_gravity_keeps_rows_out():
     )  # fmt: skip
     assert [finding.code for finding in found.findings] == ["gravity-limit"]
     kept = np.array([*found.held["rows_below"], *found.held["rows_above"]]) - 1
-    assert t[kept].min() > 6e-6
-    assert kept.size == np.count_nonzero((t > 6e-6) & (t < 1e-2))
+    assert t[kept].min() > 2e-6
+    assert kept.size == np.count_nonzero((t > 2e-6) & (t < 1e-2))
+    assert found.facts["gravity"] == "over its step and the height of the cell"
 
 
 def test_a_logarithm_is_said_to_serve():
