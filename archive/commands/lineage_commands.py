@@ -95,8 +95,10 @@ def trace(
       stillroom trace --forward 2026-03.a1:raw/ts05.csv --svg what-rests-on-it.svg
     """
     if forward or not address.endswith((".pdf", ".png", ".svg")):
-        for part in address.rpartition("|")[2].split(";"):
-            require_address(part.strip().partition(" step ")[0])
+        from archive.lab.tracing import parts_of
+
+        for part in [address] if forward else parts_of(address) or [address]:
+            require_address(part.partition(" step ")[0])
     with opening.open_archive(archive_dir) as lab, Progress("tracing"):
         node = lab.trace(address, forward=forward)
     if picture is not None:

@@ -170,6 +170,7 @@ class Index:
         """
         if self._url.get_backend_name() != "sqlite":
             return False
+        path.touch(mode=0o666)  # SQLite itself would leave the group out, whatever the umask says
         # SQLite's own copy holds what still stands in the write-ahead log; a copy of the file alone would not.
         with (
             translated(self._url),

@@ -21,7 +21,7 @@ from archive.reduction.trace import TraceNode, trace, trace_step
 from schemas.address import parse_address
 from schemas.lineage import AccessionDocument
 
-__all__ = ["backward", "sources_of_figure"]
+__all__ = ["backward", "parts_of", "sources_of_figure"]
 
 _STEP = re.compile(r"^(?P<reduction>\S+@\S+?) step (?P<number>[1-9][0-9]{0,3})$")
 _CITED = re.compile(r"^\s*%\s*R[0-9]+\s*\|\s*")
@@ -72,7 +72,7 @@ def backward(source: LabSource, text: str) -> TraceNode:
         cited = sources_of_figure(Path(text))
         label = f"figure {Path(text).name}"
     else:
-        cited = [part.strip() for part in _CITED.sub("", text).split(";") if part.strip()]
+        cited = parts_of(text)
         label = f"{len(cited)} sources"
     nodes = [_led_home(source, _one(source, each), {}) for each in cited]
     if len(nodes) == 1:
@@ -82,6 +82,23 @@ def backward(source: LabSource, text: str) -> TraceNode:
             "nothing is asked for", expected="an address such as 2026-03/s017@film-transition.2#T_KT"
         )
     return TraceNode("", "citation", label, {}, tuple(nodes))
+
+
+def parts_of(text: str) -> list[str]:
+    """Addresses and steps that a text cites; a raw file may have a semicolon in its name.
+
+    Examples
+    --------
+    >>> parts_of("% R21 | 2026-03/s017@film-transition.2 step 4; 2026-03/s001@empty-cell.1 step 1")
+    ['2026-03/s017@film-transition.2 step 4', '2026-03/s001@empty-cell.1 step 1']
+    >>> parts_of("2026-03.a1:raw/first;second.csv")
+    ['2026-03.a1:raw/first;second.csv']
+    """
+    try:
+        parse_address(text)
+    except ValueError:
+        return [part.strip() for part in _CITED.sub("", text).split(";") if part.strip()]
+    return [text]
 
 
 def sources_of_figure(path: Path) -> list[str]:

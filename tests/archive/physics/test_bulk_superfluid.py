@@ -44,6 +44,34 @@ def test_published_coefficients_come_back(fixed):
     np.testing.assert_array_equal(found.used, (t > 1e-4) & (t < 0.03))
 
 
+@pytest.mark.parametrize(
+    ("transition", "amplitude"),
+    [(2.1768, 2.403), (2.0, 2.22), (1.8, 1.96)],
+    ids=["svp", "second pressure", "third pressure"],
+)
+def test_each_pressure_has_its_own_law_and_one_exponent(transition, amplitude):
+    """Along the lambda line amplitude and transition change and the exponent does not (universality); amplitudes past svp invented."""
+    law = TRUTH | {"transition_temperature": transition, "amplitude": amplitude}
+    T = transition * (1 - np.geomspace(1.1e-4, 0.029, 120))
+    # The law at saturated vapour pressure, at the same reduced temperatures and with another amplitude.
+    held = bulk_superfluid_fraction(T, transition_temperature=transition) * amplitude / TRUTH["amplitude"]
+    noisy = held + 5e-5 * np.random.default_rng(4).normal(size=T.size)
+    found = fit_superfluid_law(
+        T,
+        noisy,
+        start_temperature=transition_estimate(T, noisy),
+        fixed=False,
+        standard_uncertainty=5e-5,
+        absolute=True,
+    )
+    assert found.converged, found.message
+    for name in ("amplitude", "exponent", "transition_temperature"):
+        index = found.fit.names.index(name)
+        assert abs(found.fit.values[index] - law[name]) < 4 * np.sqrt(found.fit.covariance[index, index]), (
+            name
+        )
+
+
 @pytest.mark.slow
 @pytest.mark.parametrize("fixed", [True, False], ids=["T_lambda held", "T_lambda free"])
 def test_uncertainty_is_honest(fixed):
