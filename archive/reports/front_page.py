@@ -39,7 +39,11 @@ def front_page(held: Holdings, stands: Standing) -> dict[str, Any]:
         "mind": _mind(held, stands),
         "set_up": {"left": _rows(left_column(held)), "right": _rows(right_column(held))},
         "strip": {"svg": drawing, "legend": legend},
-        "sweeps": {"heads": list(SWEEP_HEADS), "lines": sweep_lines(held, stands), "flags": {**_FLAGS, **flag_words(held.view)}},
+        "sweeps": {
+            "heads": list(SWEEP_HEADS),
+            "lines": sweep_lines(held, stands),
+            "flags": {**_FLAGS, **flag_words(held.view)},
+        },
         "origin": _origin(held),
     }
 
@@ -62,7 +66,11 @@ def _band(held: Holdings, stands: Standing, reasons: tuple[str, ...]) -> dict[st
         "cell": "[nr]" if cell is None else cell.address,
         "purpose": sheet.purpose,
         "operators": ", ".join(sheet.operators),
-        "state": "WITHDRAWN" if sheet.name in held.view.withdrawn else "OPEN" if is_open else sheet.outcome.upper(),
+        "state": "WITHDRAWN"
+        if sheet.name in held.view.withdrawn
+        else "OPEN"
+        if is_open
+        else sheet.outcome.upper(),
         "state_words": f"run {sheet.outcome}, {_count(len(stands.open), 'warning')} open" if is_open else "",
         "draft": bool(reasons),
         "reasons": list(reasons),

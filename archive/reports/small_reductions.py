@@ -70,7 +70,9 @@ def reduction_plot(held: Holdings, reduction: ReductionDocument) -> tuple[str, s
             continue
         # What was gathered from many reductions has no description of its own.
         gathered = any(each.many for each in reduction.plan.needs.values())
-        return _plotted(reduction, along, shown, x, y), reduction.plan.title if gathered else shown.description
+        return _plotted(
+            reduction, along, shown, x, y
+        ), reduction.plan.title if gathered else shown.description
     return None
 
 

@@ -22,7 +22,9 @@ def _factor(cache: Path) -> str:
     return ended.stdout.strip()
 
 
-@pytest.mark.skipif(sys.platform != "linux", reason="where the cache lies is told by an environment variable here")
+@pytest.mark.skipif(
+    sys.platform != "linux", reason="where the cache lies is told by an environment variable here"
+)
 def test_a_cache_that_others_can_write_to_is_not_read(tmp_path: Path) -> None:
     assert _factor(tmp_path) == str(root("pascal")[0])
     (folder,) = (tmp_path / "stillroom").iterdir()
@@ -39,4 +41,6 @@ def test_a_cache_that_others_can_write_to_is_not_read(tmp_path: Path) -> None:
     assert not mark.exists()
     folder.chmod(0o700)
     _factor(tmp_path)
-    assert mark.exists(), "the pickle of this test is not read even where it may be, so the test shows nothing"
+    assert mark.exists(), (
+        "the pickle of this test is not read even where it may be, so the test shows nothing"
+    )

@@ -15,7 +15,9 @@ AT = datetime(2026, 3, 2, 9, 0, tzinfo=UTC)
 ACTS = [
     Act("init", "Test laboratory", "data steward"),
     Act("ingest", "2026-03.a1", "graduate student", "2026-03/2026-03.a1", "a" * 64),
-    Act("reduce", "2026-03/s001@empty-cell.1", "postdoc", "2026-03/s001@empty-cell.1", "b" * 64, "zusätzlich"),
+    Act(
+        "reduce", "2026-03/s001@empty-cell.1", "postdoc", "2026-03/s001@empty-cell.1", "b" * 64, "zusätzlich"
+    ),
 ]
 RECORDED = {act.key: act.sha256 for act in ACTS if act.key is not None and act.sha256 is not None}
 
@@ -81,7 +83,9 @@ def test_what_the_index_records_otherwise_is_told(journal: Journal) -> None:
     told = {(each.key, each.kind) for each in journal.damage(other)}
     assert told == {("2026-03/2026-03.a1", "damaged"), (JOURNAL_NAME, "damaged")}
     gone = {"2026-03/2026-03.a1": "a" * 64}
-    assert [(each.key, each.kind) for each in journal.damage(gone)] == [("2026-03/s001@empty-cell.1", "missing")]
+    assert [(each.key, each.kind) for each in journal.damage(gone)] == [
+        ("2026-03/s001@empty-cell.1", "missing")
+    ]
 
 
 def test_an_interrupted_line_is_taken_off_and_told(journal: Journal) -> None:
