@@ -12,7 +12,6 @@ from typing import Literal
 
 import numpy as np
 import numpy.typing as npt
-from scipy.signal import fftconvolve
 
 from archive.physics.arrays import ComplexArray, FloatArray
 from archive.physics.pulse_response import PulseResponse, smooth_part
@@ -154,6 +153,8 @@ class _Search:
 
     def strongest(self) -> tuple[int, int, float]:
         """Return index, half width in steps and statistic of the strongest line left."""
+        from scipy.signal import fftconvolve  # a second of imports that few commands need
+
         best = (0, 1, 0.0)
         for power, kernel in enumerate(self.filters):
             found = np.abs(fftconvolve(self.left, kernel, mode="same")) ** 2

@@ -11,8 +11,6 @@ from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
-from scipy.stats import chi2 as chi2_distribution
-from scipy.stats import f as f_distribution
 
 from archive.physics.arrays import BoolArray, FloatArray, same_length, series
 from archive.physics.constants import MASS_HELIUM4, PLANCK
@@ -306,6 +304,9 @@ def _fitted(
 
 def _chance(before: float, after: float, parameters: int, dof: int, *, absolute: bool) -> float:
     """Return the probability that parameters without meaning lower the sum of squares as much."""
+    from scipy.stats import chi2 as chi2_distribution  # a second of imports that few commands need
+    from scipy.stats import f as f_distribution
+
     gain = max(before - after, 0.0)
     if absolute:
         # Scatter larger than stated must not pass for a decay.

@@ -11,7 +11,6 @@ from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
-from scipy.stats import norm
 
 from archive.physics.arrays import FloatArray, same_length, series
 from archive.physics.constants import BOLTZMANN
@@ -238,6 +237,8 @@ def upper_bound(value: float, *, standard_uncertainty: float, probability: float
     >>> round(upper_bound(0.0, standard_uncertainty=1.0), 2)
     1.96
     """
+    from scipy.stats import norm  # a second of imports that few commands need
+
     if not (standard_uncertainty > 0 and 0 < probability < 1):
         raise ValueError(
             f"standard_uncertainty, probability: found {standard_uncertainty}, {probability}, expected > 0 and in (0, 1)"

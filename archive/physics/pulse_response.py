@@ -11,7 +11,6 @@ from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
-from scipy.ndimage import median_filter
 
 from archive.physics.arrays import ComplexArray, FloatArray, series
 
@@ -171,4 +170,6 @@ def smooth_part(response: ComplexArray, like: PulseResponse) -> ComplexArray:
 
 
 def _median(values: FloatArray, window: int) -> FloatArray:
+    from scipy.ndimage import median_filter  # a second of imports that few commands need
+
     return np.asarray(median_filter(values, window, mode="reflect"), dtype=np.float64)

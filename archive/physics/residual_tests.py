@@ -10,7 +10,6 @@ from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
-from scipy import stats
 
 from archive.physics.arrays import series
 
@@ -68,6 +67,8 @@ def runs_test(residuals: npt.ArrayLike) -> RunsTest:
     >>> runs_test([1, 2, 1, -1, -2, -1]).runs
     2
     """
+    from scipy import stats  # a second of imports that few commands need
+
     values = series("residuals", residuals)
     signs = values[values != 0] > 0
     n = int(signs.size)
@@ -89,6 +90,8 @@ def runs_test(residuals: npt.ArrayLike) -> RunsTest:
 
 def chi2_probability(chi2: float, dof: int) -> float:
     """Return the chance that chi-squared is this large or larger with `dof` degrees of freedom."""
+    from scipy import stats  # a second of imports that few commands need
+
     if dof < 1:
         return math.nan
     return float(stats.chi2.sf(chi2, dof))
@@ -119,6 +122,8 @@ def f_test(*, chi2_simple: float, dof_simple: int, chi2_full: float, dof_full: i
     P. R. Bevington, "Data Reduction and Error Analysis for the Physical Sciences" (1969), test of an
     additional term (from memory).
     """
+    from scipy import stats  # a second of imports that few commands need
+
     if not dof_simple > dof_full >= 1:
         raise ValueError(f"dof_full: found {dof_full}, expected 1 to {dof_simple - 1}")
     if chi2_full <= 0:

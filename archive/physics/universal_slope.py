@@ -11,7 +11,6 @@ from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
-from scipy.stats import chi2 as chi2_distribution
 
 from archive.physics.arrays import FloatArray, same_length, series
 
@@ -82,6 +81,8 @@ def proportion(
     JCGM 100:2008, 5.2 (correlated input quantities). G. D'Agostini, "On the use of the covariance matrix to fit correlated data",
     Nuclear Instruments and Methods A 346, 306 (1994) (the effect of a common factor; from memory).
     """
+    from scipy.stats import chi2 as chi2_distribution  # a second of imports that few commands need
+
     X, Y = series("x", x, positive=True), series("y", y, positive=True)
     same_length(x=X, y=Y)
     parts = []

@@ -1,0 +1,20 @@
+"""The order of the tests: files that take minutes come first, so that no worker is left alone with one at the end."""
+
+from __future__ import annotations
+
+import pytest
+
+LONGEST = (
+    "tests/archive/commands/test_demo_command.py",
+    "tests/archive/demo/test_reduction.py",
+    "tests/crash/test_ingest_crash.py",
+    "tests/archive/reduction/test_dynamic_steps.py",
+    "tests/crash/test_system_calls.py",
+    "tests/crash/test_power_cut.py",
+)
+
+
+def pytest_collection_modifyitems(items: list[pytest.Item]) -> None:
+    """Bring the longest files to the front; all else keeps its order."""
+    ranks = {name: place for place, name in enumerate(LONGEST)}
+    items.sort(key=lambda item: ranks.get(item.nodeid.partition("::")[0], len(LONGEST)))
