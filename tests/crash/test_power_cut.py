@@ -20,7 +20,7 @@ from tests.crash.disk import Chance, Disk, Everything, SyncedOnly
 from tests.crash.operations import OPERATIONS, begun, prepared, require_whole_or_nothing, vault
 from tests.crash.traced import Warm, warm
 
-SAMPLES = int(os.environ.get("STILLROOM_CRASH_SAMPLES", "2"))
+SAMPLES = int(os.environ.get("STILLROOM_CRASH_SAMPLES", "1"))
 
 
 @pytest.fixture(scope="module")
