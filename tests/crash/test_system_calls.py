@@ -19,7 +19,7 @@ from archive.store.local import open_store
 from tests.crash.operations import OPERATIONS, begun, prepared, require_whole_or_nothing
 from tests.crash.traced import Call, Warm, warm
 
-SAMPLES = int(os.environ.get("STILLROOM_CRASH_SAMPLES", "1"))
+SAMPLES = int(os.environ.get("STILLROOM_CRASH_SAMPLES", "2"))
 
 
 @pytest.fixture(scope="module")
