@@ -3,13 +3,16 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
-from archive.errors import UnknownAddress
+import numpy as np
+
+from archive.errors import ArchiveError, UnknownAddress
 from archive.index import InputRow, ReductionRow
 from archive.lab.reducing import current_plans
 from archive.lab.revisions import Revisions
 from archive.lab.source import LabSource
+from archive.reduction.estimate import Estimate
 from schemas.acts import AmendmentDocument, RevisionDocument
 from schemas.address import parse_address
 
@@ -107,6 +110,8 @@ class _Known:
 
     def __init__(self, source: LabSource, extra: RevisionDocument | AmendmentDocument | None) -> None:
         index = source.index
+        self._source = source
+        self._compared: dict[tuple[str, str, str], bool] = {}
         self.rows = index.reductions(newest_only=True)
         self.newest = {(row.sweep, row.plan): row.address for row in self.rows}
         self.inputs: dict[str, list[InputRow]] = defaultdict(list)
@@ -145,7 +150,7 @@ class _Known:
             elif each.role == "accession":
                 found += self._accession(row, each.address)
             elif parsed.reduction is not None:
-                found += self._reduction(parsed.reduction, stale_now)
+                found += self._reduction(parsed.reduction, stale_now, parsed.part)
         return list(dict.fromkeys(found))
 
     def _plan(self, row: ReductionRow) -> list[StaleReason]:
@@ -195,16 +200,42 @@ class _Known:
             return gone
         return [StaleReason("accession", address, now, f"{now} holds {row.sweep} anew")]
 
-    def _reduction(self, address: str, stale_now: dict[str, list[StaleReason]]) -> list[StaleReason]:
+    def _reduction(
+        self, address: str, stale_now: dict[str, list[StaleReason]], output: str | None = None
+    ) -> list[StaleReason]:
         parsed = parse_address(address)
         now = self.newest.get((parsed.sweep or "", parsed.plan or ""))
         if now is not None and now != address:
-            return [StaleReason("reduction", address, now, f"{address} became {now}")]
+            if address in self.withdrawn or not self._repeats(address, now, output):
+                return [StaleReason("reduction", address, now, f"{address} became {now}")]
+            address = now
         if now is None:
             return [StaleReason("withdrawn", address, None, f"{address} does not count any more")]
         if address in stale_now:
             return [StaleReason("reduction", address, None, f"{address}, on which it rests, is stale")]
         return []
+
+    def _repeats(self, old: str, now: str, output: str | None) -> bool:
+        """Whether a newer reduction gave to the bit what was taken from an older one, uncertainties and what they share too."""
+        if output is None:
+            return False
+        if (old, now, output) not in self._compared:
+            try:
+                one, other = (self._source.output(each, output) for each in (old, now))
+            except ArchiveError:
+                return False
+            # Parameters of a fit are sources of uncertainty under the name of the reduction that fitted them.
+            named = {name.replace(f"{old} ", f"{now} "): part for name, part in one.shared.items()}
+            self._compared[old, now, output] = _equal(replace(one, shared=named), other)
+        return self._compared[old, now, output]
+
+
+def _equal(one: Estimate, other: Estimate) -> bool:
+    if (one.quantity, one.scale, one.shared.keys()) != (other.quantity, other.scale, other.shared.keys()):
+        return False
+    pairs = [(one.value, other.value), (one.points, other.points)]
+    pairs += [(one.shared[name], other.shared[name]) for name in one.shared]
+    return all(np.array_equal(left, right, equal_nan=True) for left, right in pairs)
 
 
 def _ordered(rows: list[ReductionRow], known: _Known) -> list[ReductionRow]:

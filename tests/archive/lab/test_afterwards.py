@@ -13,6 +13,7 @@ from archive.errors import BadRequest, UnknownAddress
 from archive.index import Index, SearchQuery
 from archive.lab import reporting
 from archive.lab.source import document_of
+from archive.reduction.monte_carlo import Request
 from archive.reports import run_sheet_html
 from archive.reports.after_the_fact import act_sentences
 from archive.reports.scope import Scope
@@ -452,6 +453,63 @@ def test_a_withdrawn_cooldown_accession_or_plan_is_passed_over(lab: Archive, tmp
     with pytest.raises(BadRequest, match="wrong cell"):
         lab.reduce("2026-03")
     assert_derivable(lab)
+
+
+GATHERING = """
+name = "gathering"
+revision = 1
+title = "Lowest temperatures of the empty cell, beside the sweep's own"
+
+[applies]
+sweep_kinds = ["temperature-sweep"]
+empty_cell = false
+
+[needs.empties]
+plan = "empty-cell"
+relation = "same-cell"
+many = true
+optional = true
+
+[[step]]
+use = "temperature-from-calibration"
+take = { reading = "channel:@thermometer", calibration = "calibration:@thermometer" }
+give = { temperature = "temperature" }
+
+[[step]]
+use = "temperature-on-scale"
+set = { source = "ITS-90", target = "ITS-90" }
+optional = true
+take = { temperature = "need:empties#period_low" }
+give = { temperature = "lowest" }
+"""
+
+
+def test_an_optional_need_of_many_is_kept_when_a_stale_reduction_is_made_anew(lab: Archive, sheet) -> None:
+    assert lab.revise(sheet(GATHERING), by="graduate student").findings == ()
+    (first,) = lab.reduce("2026-03/s002", plan="gathering")
+    lab.amend(sheet(amendment('[[left_out]]\nsweep = "s001"\nrows = [5, 9]\nreason = "a door was slammed"')))
+    assert "2026-03/s002@gathering.2" in addresses(lab.reduce_stale())
+    for number, address in enumerate((first.address, "2026-03/s002@gathering.2"), 1):
+        assert address is not None
+        inputs = [each["address"] for each in lab.show(address)["inputs"]]
+        assert f"{EMPTY}.{number}#period_low" in inputs
+        assert "empties_period_low" in {each["name"] for each in lab.show(address)["outputs"]}
+
+
+def test_what_rests_on_a_repetition_of_equal_outputs_is_not_stale(lab: Archive, sheet) -> None:
+    (repeated,) = lab.reduce("2026-03/s001", plan="empty-cell", monte_carlo=Request(trials=2))
+    assert repeated.address == f"{EMPTY}.2"
+    assert stale_now(lab) == {}
+    assert lab.reduce_stale() == []
+    # A repetition that is stale itself, or of which the older one was withdrawn, is another matter.
+    lab.withdraw(f"{EMPTY}.1", why="fitted over a crossing mode", by="data steward")
+    assert stale_now(lab) == {f"{FILLING}.1": {"reduction"}}
+    lab.withdraw("2026-03.w1", why="no mode crossed after all", by="data steward")
+    assert stale_now(lab) == {}
+    lab.amend(sheet(amendment('[[left_out]]\nsweep = "s001"\nrows = [5, 9]\nreason = "a door was slammed"')))
+    assert stale_now(lab) == {f"{EMPTY}.2": {"amendment"}, f"{FILLING}.1": {"reduction"}}
+    assert addresses(lab.reduce_stale()) == [f"{EMPTY}.3", f"{FILLING}.2"]
+    assert stale_now(lab) == {}
 
 
 @pytest.mark.parametrize(
