@@ -130,7 +130,10 @@ def journal(*, address: str | None, last: int | None, archive_dir: Path | None, 
     with opening.open_archive(archive_dir) as lab:
         entries = lab.journal()
     if address is not None:
-        entries = [each for each in entries if each.act.what.startswith(address)]
+        # What was given away may be several things.
+        entries = [
+            each for each in entries if any(one.startswith(address) for one in each.act.what.split(", "))
+        ]
     entries = entries[-last:] if last is not None else entries
     if as_json:
         write_json(entries)

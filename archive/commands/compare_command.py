@@ -48,7 +48,9 @@ def compare(*, first: str, second: str, target: Path | None, archive_dir: Path |
     with opening.open_archive(archive_dir) as lab, Progress("comparing"):
         found = lab.compare(first, second)
         if target is not None:
-            lab.write_reports({target.name: lab.compare_figure(found, kind=target.suffix[1:])}, target.parent)
+            figure = lab.compare_figure(found, kind=target.suffix[1:])
+            lab.write_reports({target.name: figure}, target.parent, of=[first, second])
+            opening.say_notices(lab)
     if as_json:
         write_json(found)
         return

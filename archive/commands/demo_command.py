@@ -135,15 +135,15 @@ def _report(lab: Archive, target: Path) -> int:
     _head("Reports")
     problems = 0
     names = [row.name for row in lab.cooldowns()]
-    jobs: list[tuple[str, Path, Callable[[], dict[str, bytes]]]] = [
-        (f"run sheet of {name}", target, partial(lab.run_sheet, name)) for name in names
+    jobs: list[tuple[str, Path, list[str], Callable[[], dict[str, bytes]]]] = [
+        (f"run sheet of {name}", target, [name], partial(lab.run_sheet, name)) for name in names
     ]
-    jobs.append(("methods appendix", target / "appendix", partial(lab.appendix, names)))
+    jobs.append(("methods appendix", target / "appendix", names, partial(lab.appendix, names)))
     made: dict[Path, list[str]] = {}
-    for what, place, make in jobs:
+    for what, place, told, make in jobs:
         try:
             with Progress(what):
-                written = lab.write_reports(make(), place)
+                written = lab.write_reports(make(), place, of=told)
         except ArchiveError as error:
             problems += 1
             note(f"{what}: {error}")

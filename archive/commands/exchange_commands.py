@@ -54,7 +54,8 @@ def prov(*, address: str, target: Path | None, notation: str, archive_dir: Path 
     with opening.open_archive(archive_dir) as lab, Progress("tracing"):
         found = lab.provenance(address, notation=notation)
         if target is not None:
-            lab.write_reports({target.name: found.text.encode()}, target.parent)
+            lab.write_reports({target.name: found.text.encode()}, target.parent, of=[address])
+            opening.say_notices(lab)
     for sentence in found.contradictions:
         note(f"warning: {sentence}")
     if target is None:
@@ -115,6 +116,7 @@ def export(
         outcome = lab.export(
             addresses, target, reports=not without_reports, appendix=appendix, progress=progress.count
         )
+        opening.say_notices(lab)
     if as_json:
         write_json(
             {
@@ -123,6 +125,7 @@ def export(
                 "sealed_files": outcome.files,
                 "bytes": outcome.size,
                 "files": outcome.number,
+                "sha256": outcome.sha256,
                 "missing": outcome.missing,
             }
         )
@@ -134,6 +137,7 @@ def _say_export(outcome: ExportOutcome) -> None:
     say(
         f"{outcome.path}: {len(outcome.files)} sealed files, {outcome.number} files in all, {_bytes(outcome.size)}"
     )
+    say(f"sha256 of its manifest-sha256.txt, to cite it by: {outcome.sha256}")
     also = outcome.also
     if also:
         say("In it because something rests on them:")
@@ -168,9 +172,7 @@ def import_(*, folder: Path, dry_run: bool, archive_dir: Path | None, as_json: b
     """
     with opening.open_archive(archive_dir) as lab, Progress("reading the package") as progress:
         outcome = lab.import_package(folder, dry_run=dry_run, progress=progress.count)
-        notices = list(lab.notices)
-    for sentence in notices:
-        note(f"note: {sentence}")
+        opening.say_notices(lab)
     if as_json:
         write_json(
             {

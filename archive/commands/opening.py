@@ -70,10 +70,15 @@ def open_archive(folder: Path | None) -> Archive:
     from archive.lab import Archive
 
     lab = Archive.open(folder)
+    say_notices(lab)
+    return lab
+
+
+def say_notices(lab: Archive) -> None:
+    """Tell on stderr what the archive has to say beside its answers, once."""
     for sentence in lab.notices:
         note(f"note: {sentence}")
     lab.notices.clear()
-    return lab
 
 
 def require_address(text: str) -> None:

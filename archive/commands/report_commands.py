@@ -45,7 +45,8 @@ def run_sheet(*, cooldown: str, target: Path, paper: str, archive_dir: Path | No
       stillroom run-sheet 2026-03 -o reports
     """
     with opening.open_archive(archive_dir) as lab, Progress(f"run sheet of {cooldown}"):
-        written = lab.write_reports(lab.run_sheet(cooldown, paper=paper), target)
+        written = lab.write_reports(lab.run_sheet(cooldown, paper=paper), target, of=[cooldown])
+        opening.say_notices(lab)
     _say_written(written, as_json=as_json)
 
 
@@ -80,7 +81,9 @@ def appendix(
     for address in addresses:
         require_address(address)
     with opening.open_archive(archive_dir) as lab, Progress("writing the appendix"):
-        written = lab.write_reports(lab.appendix(addresses, title=title, level=level), target)
+        files = lab.appendix(addresses, title=title, level=level)
+        written = lab.write_reports(files, target, of=addresses)
+        opening.say_notices(lab)
     _say_written(written, as_json=as_json)
 
 

@@ -46,7 +46,7 @@ from archive.lab.outcomes import CheckReport, IngestOutcome, ReduceOutcome, Repl
 from archive.lab.place import find_root, made, make_root, unmade
 from archive.lab.renewing import reduce_stale
 from archive.lab.replaying import replay_all
-from archive.lab.report_files import written_reports
+from archive.lab.report_files import manifest_digest, written_reports
 from archive.lab.revising import revise
 from archive.lab.source import LabSource, key_of
 from archive.lab.stale import Stale, stale
@@ -554,9 +554,22 @@ class Archive:
         """Methods appendix behind cooldowns, sweeps or reductions: LaTeX, bibliography, figures, by file name."""
         return reporting.appendix(self._source, self.name, addresses, title=title, level=level)
 
-    def write_reports(self, files: dict[str, bytes], target: Path | str) -> list[Path]:
-        """Write reports into a folder; each file whole or not at all, and when one fails, those written are named."""
-        return written_reports(files, Path(target))
+    def write_reports(
+        self, files: dict[str, bytes], target: Path | str, *, of: Sequence[str] = ()
+    ) -> list[Path]:
+        """Write reports into a folder and enter that in the journal; each file whole or not at all, and when one fails, those written are named.
+
+        Parameters
+        ----------
+        files : dict of str to bytes
+            Contents by name below the folder.
+        target : Path
+        of : sequence of str
+            Addresses of what they tell, for the journal; left out: the names of the files.
+        """
+        written = written_reports(files, Path(target))
+        self._given_away("report", of or sorted(files), manifest_digest(files), f"{len(files)} files")
+        return written
 
     # Exchanging ---------------------------------------------------------------------------------------------------
 
@@ -574,10 +587,31 @@ class Archive:
         progress: Callable[[int, int, str], None] = _uncounted,
     ) -> exchanging.ExportOutcome:
         """Write a package of some addresses, or of the whole archive when none is named, with all that they rest on."""
-        return exchanging.export(
+        outcome = exchanging.export(
             self._source, self._store, addresses, Path(target), deposit=self.settings.exchange, archive_name=self.name,
             software=f"Stillroom {software().stillroom}", now=self._clock(), reports=reports, appendix=appendix, progress=progress,
         )  # fmt: skip
+        what = outcome.asked or (f"all of {self.name}",)
+        self._given_away(
+            "export", what, outcome.sha256, f"{outcome.number} files, {len(outcome.files)} of them sealed"
+        )
+        return outcome
+
+    def _given_away(self, act: str, of: Sequence[str], sha256: str, note: str) -> None:
+        """Enter in the journal what left the archive, with the digest of the list of what it consists of."""
+        if not os.access(self.root, os.W_OK):
+            self.notices.append(
+                f"the journal does not tell of this {act}: the archive cannot be written to here"
+            )
+            return
+        try:
+            with archive_lock(self.root):
+                self._acts.done(act, ", ".join(of), sha256=sha256, note=note)
+                self._acts.enter()
+        except ArchiveBusy:
+            self.notices.append(
+                f"the journal does not tell of this {act}: another process was writing all the while"
+            )
 
     def import_package(
         self,

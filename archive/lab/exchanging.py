@@ -5,6 +5,7 @@ The exchange is imported where it is used: a search has no need of it.
 
 from __future__ import annotations
 
+import hashlib
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
 from datetime import datetime
@@ -60,6 +61,8 @@ class ExportOutcome:
         Bytes and files of the payload.
     missing : tuple of str
         What is not stated and therefore not in it, each with the place where it can be stated.
+    sha256 : str
+        Digest of its `manifest-sha256.txt`, which holds that of every file of the payload; the journal keeps it.
     """
 
     path: Path
@@ -68,6 +71,7 @@ class ExportOutcome:
     size: int
     number: int
     missing: tuple[str, ...] = ()
+    sha256: str = ""
 
     @property
     def also(self) -> dict[str, str]:
@@ -185,7 +189,8 @@ def export(
         progress=progress,
     )
     files = {each.address: each.because for each in sealed}
-    return ExportOutcome(target, tuple(asked), files, size, number, about.missing)
+    sha256 = hashlib.sha256((target / "manifest-sha256.txt").read_bytes()).hexdigest()
+    return ExportOutcome(target, tuple(asked), files, size, number, about.missing, sha256)
 
 
 def _reports(

@@ -59,9 +59,17 @@ class Acts:
         """Gather the act that a sealed file stands for."""
         self._gathered.append(_act_of(document, sealed, self._as, note))
 
-    def done(self, act: str, what: str, *, by: str | None = None, note: str | None = None) -> None:
-        """Gather an act that seals nothing, such as `mend`."""
-        self._gathered.append(Act(act, what, by or acting_role() or UNKNOWN_ROLE, note=note))
+    def done(
+        self,
+        act: str,
+        what: str,
+        *,
+        by: str | None = None,
+        sha256: str | None = None,
+        note: str | None = None,
+    ) -> None:
+        """Gather an act that seals nothing, such as `mend`, or `export` with the digest of what was given away."""
+        self._gathered.append(Act(act, what, by or acting_role() or UNKNOWN_ROLE, sha256=sha256, note=note))
 
     @contextmanager
     def entered_as(self, act: str) -> Iterator[None]:

@@ -2,13 +2,26 @@
 
 from __future__ import annotations
 
+import hashlib
 from collections.abc import Mapping
 from pathlib import Path
 
 from archive.errors import BadRequest
 from archive.store.durable import write_whole
 
-__all__ = ["written_reports"]
+__all__ = ["manifest_digest", "written_reports"]
+
+
+def manifest_digest(files: Mapping[str, bytes]) -> str:
+    """SHA-256 of the list of files by name, one line each: digest, two spaces, name, as `sha256sum` writes it.
+
+    Examples
+    --------
+    >>> manifest_digest({"a.txt": b""}) == manifest_digest({"a.txt": b"x"})
+    False
+    """
+    lines = (f"{hashlib.sha256(files[name]).hexdigest()}  {name}\n" for name in sorted(files))
+    return hashlib.sha256("".join(lines).encode()).hexdigest()
 
 
 def written_reports(files: Mapping[str, bytes], target: Path) -> list[Path]:

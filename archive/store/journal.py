@@ -47,7 +47,7 @@ class Act:
     by : str
         The role of whom.
     key, sha256 : str, optional
-        The sealed file that came of it, with its digest.
+        The sealed file that came of it, with its digest; of what left the archive, the digest of its list of files alone.
     note : str, optional
         What else there is to say.
     """

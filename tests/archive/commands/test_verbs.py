@@ -179,7 +179,7 @@ def test_reports_name_the_files_they_wrote(run: Run, fake: Fake) -> None:
         "run-sheet", "2026-03", "-o", "reports", "--paper", "us-letter"
     ).stdout == "reports/a\n".replace("/", str(Path("/"))[-1])
     assert archive.asked[0] == ("run_sheet", ("2026-03",), {"paper": "us-letter"})
-    assert archive.asked[1] == ("write_reports", ({"a.html": b""}, Path("reports")), {})
+    assert archive.asked[1] == ("write_reports", ({"a.html": b""}, Path("reports")), {"of": ["2026-03"]})
     assert parsed(run("appendix", "a", "b", "-o", "out", "--title", "T", "--level", "chapter", "--json")) == {
         "written": [str(Path("reports/a"))]
     }

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import math
+import subprocess
 from collections.abc import Iterator
 from pathlib import Path
 from xml.etree import ElementTree
@@ -12,7 +13,7 @@ import numpy as np
 import pytest
 
 from archive import Archive
-from archive.errors import ArchiveError, BadRequest, UnknownAddress
+from archive.errors import ArchiveBusy, ArchiveError, BadRequest, UnknownAddress
 from archive.lab.forward import affected
 from archive.lab.journaling import AFTERWARDS
 from archive.reduction.planning import shipped_plans
@@ -254,6 +255,38 @@ def test_acts_are_entered_as_they_are_done(tmp_path: Path, monkeypatch: pytest.M
     with Archive.open(tmp_path / "lab") as lab:
         assert lab.journal()[-1].act.act == "rebuild-index"
         assert lab.fixity() == []
+
+
+def test_what_is_given_away_is_entered_with_its_digest(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setenv("STILLROOM_ROLE", "postdoc")
+    with Archive.create(tmp_path / "lab", name="Test laboratory") as lab:
+        lab.ingest(write_folder(tmp_path / "2026-03"))
+        lab.export(["2026-03"], tmp_path / "bag", reports=False)
+        prov = lab.provenance("2026-03").text.encode()
+        lab.write_reports({"it.prov.json": prov}, tmp_path, of=["2026-03"])
+        exported, reported = lab.journal()[-2:]
+        assert (exported.act.act, exported.act.what, exported.act.by) == ("export", "2026-03", "postdoc")
+        assert (reported.act.act, reported.act.what, reported.act.by) == ("report", "2026-03", "postdoc")
+        # coreutils made both digests from the files as they lie there.
+        for command, folder, act in (
+            ("sha256sum < manifest-sha256.txt", tmp_path / "bag", exported.act),
+            ("sha256sum it.prov.json | sha256sum", tmp_path, reported.act),
+        ):
+            said = subprocess.run(["sh", "-c", command], cwd=folder, capture_output=True, check=True)
+            assert act.sha256 == said.stdout.decode().split()[0]
+        assert lab.fixity() == []
+
+        def busy(*_: object) -> None:
+            raise ArchiveBusy("another process is writing")
+
+        monkeypatch.setattr("archive.lab.door.archive_lock", busy)
+        lab.write_reports({"again.json": prov}, tmp_path, of=["2026-03"])
+        assert lab.notices == [
+            "the journal does not tell of this report: another process was writing all the while"
+        ]
+        assert lab.journal()[-1] == reported
 
 
 def test_a_lost_journal_is_written_again_and_says_so(tmp_path: Path) -> None:
