@@ -2,7 +2,7 @@
 
 Rules: the common part is never thrown in with the points' own scatter: each source moves its points together; what a source
 does to an ordinate is scaled to the fitted line, so that a common factor (an area, a mass sensitivity) neither pulls the slope
-down nor spoils chi squared.
+down nor spoils chi squared; only what a point has alone weighs it, so that the slope lies among the slopes of the points.
 """
 
 from __future__ import annotations
@@ -72,14 +72,19 @@ def proportion(
 
     Notes
     -----
-    Generalised least squares of ``y - slope x`` with its covariance ``V = sum c c^T``, ``c = (slope x/y) c_y - slope c_x`` for each
-    source. A source that multiplies all y by one factor then lies along the line: it is in the uncertainty of the slope and in no
-    residual. With V formed from the measured y instead, such a source makes the fit prefer low points.
+    A point's weight is its abscissa over the variance that it has alone: the sources that touch no other point, ``c = (slope x/y) c_y -
+    slope c_x``. All weights are positive, so the slope is a mean of the points' own slopes. Every source, common ones too, is then propagated
+    through these weights. Weights from the whole covariance would make the uncertainty a little smaller where the model of the common
+    part is exact; where common parts are strong and not quite equal among the points they are large and of both signs, and the line
+    then leaves all of its points, by an extrapolation that rests on how well the correlations are known.
+
+    Chi squared is that of the n - 1 combinations of points from which a common slope drops out, with the covariance of those; it depends on
+    no weights. A source that multiplies all y by one factor is in the uncertainty of the slope and in no residual.
 
     References
     ----------
     JCGM 100:2008, 5.2 (correlated input quantities). G. D'Agostini, "On the use of the covariance matrix to fit correlated data",
-    Nuclear Instruments and Methods A 346, 306 (1994) (the effect of a common factor; from memory).
+    Nuclear Instruments and Methods A 346, 306 (1994) (a fit that leaves its points where their errors are strongly common; from memory).
     """
     from scipy.stats import chi2 as chi2_distribution  # a second of imports that few commands need
 
@@ -96,13 +101,14 @@ def proportion(
             f"contributions_x, contributions_y: found {parts[0].shape[0]} and {parts[1].shape[0]} sources, expected as many in both"
         )
     # Over the slope itself, which scales all residuals alike, so that the weights do not depend on it.
-    relative = _covariance(parts[1] * (X / Y) - parts[0])
-    weights = _weights(X, relative)
+    moved = parts[1] * (X / Y) - parts[0]
+    relative = _covariance(moved)
+    weights = _weights(X, _alone(moved))
     found = float(weights @ Y)
     covariance = found**2 * relative
     residual = Y - found * X
     dof = X.size - 1
-    chi2 = float(residual @ np.linalg.solve(covariance, residual)) if dof else np.nan
+    chi2 = _scatter(X, Y, covariance) if dof else np.nan
     return Proportion(
         slope=found,
         standard_uncertainty=float(np.sqrt(weights @ covariance @ weights)),
@@ -126,6 +132,25 @@ def _covariance(moved: FloatArray) -> FloatArray:
     return covariance
 
 
-def _weights(X: FloatArray, covariance: FloatArray) -> FloatArray:
-    solved = np.linalg.solve(covariance, X)
-    return np.asarray(solved / float(X @ solved))
+def _alone(moved: FloatArray) -> FloatArray:
+    """Return the variance of each residual from the sources that touch no other point."""
+    lone = np.count_nonzero(moved, axis=1) == 1
+    variance = np.asarray(np.sum(np.square(moved[lone]), axis=0))
+    if moved.shape[1] > 1 and not (variance > 0).all():
+        raise ValueError(
+            f"y[{int(np.argmax(variance <= 0))}]: no source is this point's alone, so nothing says how much it weighs"
+        )
+    # A single point weighs what it weighs.
+    return variance if moved.shape[1] > 1 else np.ones(1)
+
+
+def _weights(X: FloatArray, variance: FloatArray) -> FloatArray:
+    share = X / variance
+    return np.asarray(share / float(share @ X))
+
+
+def _scatter(X: FloatArray, Y: FloatArray, covariance: FloatArray) -> float:
+    """Return chi squared of the combinations of points in which a common slope has no part."""
+    contrasts = np.linalg.qr(X[:, np.newaxis], mode="complete")[0][:, 1:]
+    found = contrasts.T @ Y
+    return float(found @ np.linalg.solve(contrasts.T @ covariance @ contrasts, found))

@@ -65,7 +65,7 @@ def universal_line(
     Notes
     -----
     The density must come from a transition temperature that does not itself rest on the universal line, or there is nothing to
-    test. Common sources (area, mass sensitivity, chi, thermometer, held parameters) stay in the uncertainty of the slope and are
+    test. A film's weight comes from the sources that are its alone, so the slope lies among those of the films. Common sources (area, mass sensitivity, chi, thermometer, held parameters) stay in the uncertainty of the slope and are
     not made smaller by many films. Scatter beyond the stated uncertainty does not enlarge the slope's: whether the films share a
     line is the result, told as chi squared.
     """
@@ -155,14 +155,14 @@ JUMP_STEPS: tuple[Step, ...] = (
         citations=("nelson-kosterlitz-1977",),
     ),
     Step(
-        name="universal-line", version=1, function=universal_line, parameters=LineParameters,
+        name="universal-line", version=2, function=universal_line, parameters=LineParameters,
         takes={"transition": _T, "density": _DENSITY},
         yields={
             "ratio": Port("number", "scalar", "slope of the line through the origin over the universal one"), "chi2": Port("number", "scalar", "chi squared of the films about the line"),
             "probability": Port("number", "scalar", "chance of a larger chi squared if all films lie on the line"), "films": Port("count", "scalar", "films on the line"),
             "line_density": Port("areal_mass_density", "array", "areal density of the line at each transition"), "residual": Port("number", "array", "areal density less line, in standard uncertainties"),
         },
-        sentence="A line through the origin was fitted to {count} of {of} films with transitions from {low_K} K to {high_K} K, what they share kept apart from what each has alone: sigma_s(T_KT)/T_KT is {ratio} of the universal value; chi^2 = {chi2_is} with {dof} degrees of freedom (chance {chance}).",
+        sentence="A line through the origin was fitted to {count} of {of} films with transitions from {low_K} K to {high_K} K, each weighed by what it has alone, what they share propagated through these weights: sigma_s(T_KT)/T_KT is {ratio} of the universal value; chi^2 = {chi2_is} with {dof} degrees of freedom (chance {chance}).",
         citations=("nelson-kosterlitz-1977",), spread="refit", estimates=("transition", "density"),
     ),
 )  # fmt: skip

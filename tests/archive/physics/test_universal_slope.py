@@ -60,21 +60,47 @@ def test_one_film_has_a_slope_and_no_test():
     assert math.isnan(found.probability)
 
 
+def test_the_line_stays_among_its_points():
+    """Common parts of 8 % that grow with coverage, own parts of 0.3 %: by the whole covariance the line leaves its points.
+
+    The effect: G. D'Agostini, Nuclear Instruments and Methods A 346, 306 (1994), from memory. The two lines are worked out here by hand.
+    """
+    each = np.array([0.998, 0.9985, 0.999, 0.9992, 0.9998, 1.000])
+    y, common = UNIVERSAL_JUMP * T * each, np.linspace(0.06, 0.10, 6)
+    found = proportion(
+        T, y, contributions_x=np.zeros((7, 6)), contributions_y=np.vstack([own(0.003 * y), common * y])
+    )
+    ratio = found.slope / UNIVERSAL_JUMP
+    # Own shares are equal, so every slope counts once: the mean.
+    assert ratio == pytest.approx(float(np.mean(each)), rel=1e-5)
+    # A source that all points share is propagated with the same weights: its mean share.
+    assert found.standard_uncertainty / found.slope == pytest.approx(
+        math.hypot(0.003 / math.sqrt(6), float(np.mean(common))), rel=1e-3
+    )
+    inverse = np.linalg.inv(0.003**2 * np.eye(6) + np.outer(common, common))
+    of_all = float(np.sum(inverse @ each) / np.sum(inverse))
+    assert not each.min() <= of_all <= each.max()
+    # Chi squared is that of the whole covariance, by its own best slope: it depends on no weights.
+    apart = each - of_all
+    assert found.chi2 == pytest.approx(float(apart @ inverse @ apart), rel=5e-3)
+
+
 def test_pulls_of_two_hundred_sets_of_films():
-    """Area and mass sensitivity common (4 %), thermometer common (1 mK), each film's own 2 % and 3 mK, both in one source each."""
+    """Area and mass sensitivity common (4 %), chi more at high coverage, thermometer common (1 mK), own 2 % and 3 mK in one source each."""
     rng = np.random.default_rng(17)
     truth = UNIVERSAL_JUMP * T
+    chi = np.linspace(0.01, 0.05, 6)
     pulls, sums, chances = [], [], []
     for _ in range(200):
         common, warm, lone_y, lone_x = rng.normal(), rng.normal(), rng.normal(size=6), rng.normal(size=6)
-        held = rng.normal()
+        held, drag = rng.normal(), rng.normal()
         # `held` is a parameter of theory that moves temperature and density of all films together.
         x = T + 1e-3 * warm + 3e-3 * lone_x + 0.004 * held * T
-        y = truth * (1 + 0.04 * common) * (1 + 0.02 * lone_y) * (1 + 0.01 * held)
+        y = truth * (1 + 0.04 * common) * (1 + 0.02 * lone_y) * (1 + 0.01 * held) * (1 + chi * drag)
         part_x = np.vstack(
-            [np.zeros(6), np.full(6, 1e-3), own(np.full(6, 3e-3)), np.zeros((6, 6)), 0.004 * x]
+            [np.zeros(6), np.full(6, 1e-3), own(np.full(6, 3e-3)), np.zeros((6, 6)), 0.004 * x, np.zeros(6)]
         )
-        part_y = np.vstack([0.04 * y, np.zeros(6), np.zeros((6, 6)), own(0.02 * y), 0.01 * y])
+        part_y = np.vstack([0.04 * y, np.zeros(6), np.zeros((6, 6)), own(0.02 * y), 0.01 * y, chi * y])
         found = proportion(x, y, contributions_x=part_x, contributions_y=part_y)
         pulls.append((found.slope / UNIVERSAL_JUMP - 1) / (found.standard_uncertainty / UNIVERSAL_JUMP))
         sums.append(found.chi2)
@@ -101,8 +127,9 @@ def test_films_off_the_line_are_told_by_chi_squared():
         ([0.5, 0.6], np.zeros((3, 2)), own([0.1, 0.1]), "as many in both"),
         ([0.5, 0.6], np.zeros((2, 2)), own([0.1, 0.0]), r"y\[1\]: its residual has no uncertainty"),
         ([0.5, 0.6], np.zeros((1, 2)), [[0.1, 0.2]], "all sources are common"),
+        ([0.5, 0.6], np.zeros((2, 2)), [[0.1, 0.2], [0.0, 0.1]], r"y\[0\]: no source is this point's alone"),
     ],
-    ids=["zero", "shape", "sources", "none", "common only"],
+    ids=["zero", "shape", "sources", "none", "common only", "nothing alone"],
 )
 def test_refused_arguments(x, part_x, part_y, words):
     with pytest.raises(ValueError, match=words):
