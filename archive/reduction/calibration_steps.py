@@ -52,6 +52,8 @@ class FitParameters(Record):
     centre: float | None = None
     half_width: float | None = Field(default=None, gt=0)
     """Of the logarithm of the reading; left out: those of the outermost points."""
+    reduced_chi2: float | None = None
+    """In place of what the points give: held while inputs are shifted or drawn, for a statistic of the readings has no uncertainty of its own."""
 
 
 def calibration_points(
@@ -176,7 +178,8 @@ def calibration_fit(
     u_T = (np.abs(curve.slope(curve.reading_span)) * u_ends)[order]
     in_order = fit.residuals[np.argsort(temperature)]
     names = tuple(f"coefficients[{k}]" for k in range(len(curve.coefficients)))
-    held: dict[str, object] = {"form": form, "centre": curve.centre, "half_width": curve.half_width}
+    chi2 = fit.reduced_chi2 if parameters.reduced_chi2 is None else parameters.reduced_chi2
+    held: dict[str, object] = {"form": form, "centre": curve.centre, "half_width": curve.half_width, "reduced_chi2": chi2}  # fmt: skip
     if form in ("chebyshev", "log-polynomial"):
         held["order"] = fit.order
     nan = math.nan
@@ -187,7 +190,7 @@ def calibration_fit(
             "temperature_low": float(ends[0]), "temperature_high": float(ends[1]),
             "fitted": temperature - fit.residuals, "residual": fit.residuals, "residual_rms": fit.rms, "leave_one_out": fit.leave_one_out,
             "interpolation": fit.interpolation, "fit_uncertainty": fit.standard_uncertainty(reading),
-            "reduced_chi2": nan if fit.reduced_chi2 is None else fit.reduced_chi2,
+            "reduced_chi2": nan if chi2 is None else chi2,
         },
         point={"reading_low": u_ends[0], "reading_high": u_ends[1], "temperature_low": u_T[0], "temperature_high": u_T[1]},
         covariance=Covariance(names, fit.covariance),
@@ -248,7 +251,7 @@ CALIBRATION_STEPS: tuple[Step, ...] = (
         spread="refit", weights=("temperature", "reading"),
     ),
     Step(
-        name="calibration-fit", version=1, function=calibration_fit, parameters=FitParameters,
+        name="calibration-fit", version=2, function=calibration_fit, parameters=FitParameters,
         takes={"temperature": _TEMPERATURE, "reading": Port("any", "array", "reading of each point")},
         yields={
             "coefficients": Port("number", "array", "coefficients of the form, with readings in their SI unit and temperatures in K"),

@@ -181,7 +181,7 @@ HEAT_CAPACITY_STEPS: tuple[Step, ...] = (
         sentence="The heat capacity of the empty cell {subtracted} (at most {largest_share} of the whole), and the rest divided by {amount}.",
     ),
     Step(
-        name="lambda-heat-capacity", version=1, function=lambda_law, parameters=LambdaLawParameters,
+        name="lambda-heat-capacity", version=2, function=lambda_law, parameters=LambdaLawParameters,
         takes={
             "temperature": _TEMPERATURE, "molar_heat_capacity": _MOLAR, "rise": _STEP,
             "limit": Port("number", "scalar", "reduced temperature inside which gravity rounds the transition", optional=True),

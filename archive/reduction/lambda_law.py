@@ -40,6 +40,9 @@ class LambdaLawParameters(Record):
     rows_below: tuple[int, ...] | None = None
     """The rows to fit below the transition, from 1, in place of the window."""
     rows_above: tuple[int, ...] | None = None
+    chance: float | None = None
+    """Of the F-test, in place of what the readings give: held while inputs are shifted or drawn, for a statistic of the readings has no
+    uncertainty of its own."""
 
 
 def lambda_law(
@@ -89,7 +92,7 @@ def lambda_law(
     highs, exponents, spreads, counts = _ranges(parameters, data, sides, low, rows, found)
     used = found.used & sides.below, found.used & sides.above
     numbers = [row_numbers(_spread(known, mask)) for mask in used]
-    chance = found.probability
+    chance = found.probability if parameters.chance is None else parameters.chance
     return Outcome(
         {
             **outputs, "logarithm_probability": chance, "range_upper": highs, "range_exponent": exponents,
@@ -97,7 +100,7 @@ def lambda_law(
         point={"range_exponent": spreads},
         verdicts={name: "not fitted" for name in _NAMES[-2:] if math.isnan(float(outputs[name]))},
         covariance=covariance,
-        held={"rows_below": numbers[0], "rows_above": numbers[1]},
+        held={"rows_below": numbers[0], "rows_above": numbers[1], "chance": chance},
         facts={
             "points_below": len(numbers[0]), "points_above": len(numbers[1]), "low": low, "gravity": "over its step" if limit is None else "over its step and the height of the cell", "high": parameters.high, "confluent_terms": parameters.corrections,
             "reduced_chi2": found.fit.reduced_chi2 if data.u is not None else math.nan, "chance": chance, "delta": parameters.confluent_exponent,

@@ -149,6 +149,9 @@ def test_the_fit_says_what_it_chose_and_holds_it() -> None:
     again = fitted(steps.FitParameters(**found.held))
     assert again.facts["chosen"] == "held"
     np.testing.assert_allclose(again.array("coefficients"), found.array("coefficients"), rtol=1e-12)
+    # Chi squared is of the one fit: what is shifted or drawn has no chi squared of its own.
+    wider = fitted(steps.FitParameters(**found.held), u_temperature=2e-4 * np.geomspace(0.3, 5.0, 40))
+    assert wider.outputs["reduced_chi2"] == found.outputs["reduced_chi2"]
 
 
 def test_the_ends_carry_the_noise_of_the_outermost_readings() -> None:

@@ -83,8 +83,15 @@ def test_held_rows_give_the_same_numbers():
     first = run(3)
     again = run(3, **first.held)
     for name, value in first.outputs.items():
-        if name != "logarithm_probability":
-            np.testing.assert_allclose(again.array(name), value, rtol=1e-6, err_msg=name)
+        np.testing.assert_allclose(again.array(name), value, rtol=1e-6, err_msg=name)
+
+
+def test_the_chance_of_the_readings_is_not_drawn():
+    """With what is held, other readings give another law and the same chance: it has no uncertainty of its own."""
+    first = run(3)
+    other = run(4, **first.held)
+    assert other.outputs["logarithm_probability"] == first.outputs["logarithm_probability"]
+    assert other.outputs["exponent"] != first.outputs["exponent"]
 
 
 def test_gravity_keeps_rows_out_and_is_averaged():
