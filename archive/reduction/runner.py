@@ -174,7 +174,9 @@ class _Work:
             found = None if text is None else self._given(text, declared.quantity)
             if found is not None:
                 given[port] = found
-            elif not declared.optional:
+            elif not declared.optional or (
+                step.one_of and port == step.one_of[-1] and given.keys().isdisjoint(step.one_of)
+            ):
                 why = self.resolver.why_missing(text, port, self.missing)
                 if not planned.optional:
                     raise BadRequest(

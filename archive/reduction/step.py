@@ -159,6 +159,8 @@ class Step:
         Temperature inputs whose scale is handed over as ``NAME_scale``.
     estimates : tuple of str
         Inputs whose estimate is handed over as ``NAME_estimate``, unshifted: for a fit that weighs with what its rows share.
+    one_of : tuple of str
+        Optional inputs of which one at least must exist; without any the step lacks an input.
     """
 
     name: str
@@ -176,3 +178,4 @@ class Step:
     kinds: tuple[str, ...] = ()
     scales: tuple[str, ...] = ()
     estimates: tuple[str, ...] = ()
+    one_of: tuple[str, ...] = ()

@@ -155,6 +155,13 @@ def test_a_film_gives_back_its_transition_and_the_universal_jump(laboratory, nam
     assert worst < 4
 
 
+def test_a_cooldown_without_a_drive_sweep_is_a_note(laboratory):
+    """No drive sweep was taken in 2026-02: the step that compares with one is left out, which is no failure."""
+    findings = laboratory.reduction("2026-02/s001@empty-cell.1").findings
+    (told,) = [each for each in findings if "drive-within-regime" in each.what]
+    assert (told.code, told.severity) == ("step-left-out", "note")
+
+
 @pytest.mark.parametrize("sweep", ["s006", "s007", "s008"])
 def test_the_glass_gives_back_its_power_law(laboratory, sweep):
     results = laboratory.reduce("porous-film", f"2026-05/{sweep}")
