@@ -43,27 +43,23 @@ def noisy(rng: np.random.Generator, form: str) -> tuple[np.ndarray, np.ndarray, 
     )
 
 
-@pytest.mark.parametrize(
-    ("form", "low", "high"),
-    [("chebyshev", 0.7, 1.15), ("log-polynomial", 0.7, 1.3), ("spline", 0.7, 1.15), ("curie-weiss", 0.7, 1.2)],
-)  # fmt: skip
-def test_temperatures_pull_as_their_uncertainty_says(form: Any, low: float, high: float) -> None:
-    """Truth at 25 temperatures between the points over 50 seeds; fit and interpolation in quadrature."""
+@pytest.mark.parametrize(("form", "low", "high"), [("chebyshev", 0.7, 1.15), ("log-polynomial", 0.7, 1.3)])
+def test_a_form_that_only_comes_near_the_law_says_how_near(form: Any, low: float, high: float) -> None:
+    """The law is of neither form: what the chosen order leaves of it stays within fit and interpolation uncertainty together.
+
+    At 25 temperatures between the points, 30 seeds; laws of the form itself: `test_pulls`.
+    """
     rng = np.random.default_rng(20241104)
-    at = np.geomspace(6e-3, 0.9, 25) if form == "curie-weiss" else np.geomspace(0.31, 4.9, 25)
-    reading = np.asarray(curie_weiss_inductance(at, **LAW)) if form == "curie-weiss" else germanium(at)
+    at = np.geomspace(0.31, 4.9, 25)
     squares, reduced = [], []
-    for _ in range(50):
+    for _ in range(30):
         r, t, u_T, u_R = noisy(rng, form)
         fit = fit_calibration(form, r, t, temperature_uncertainty=u_T, reading_uncertainty=u_R)
-        u = np.hypot(fit.standard_uncertainty(reading), fit.interpolation * at)
-        pull = (fit.curve.temperature(reading) - at) / u
-        squares.append(np.nanmean(pull**2))
-        if fit.reduced_chi2 is not None:
-            reduced.append(fit.reduced_chi2)
+        u = np.hypot(fit.standard_uncertainty(germanium(at)), fit.interpolation * at)
+        squares.append(np.nanmean(((fit.curve.temperature(germanium(at)) - at) / u) ** 2))
+        reduced.append(fit.reduced_chi2)
     assert low < np.sqrt(np.mean(squares)) < high
-    if reduced:
-        assert np.mean(reduced) == pytest.approx(1.0, abs=0.15)
+    assert np.mean(reduced) == pytest.approx(1.0, abs=0.15)
 
 
 def test_a_polynomial_is_that_of_numpy_with_its_covariance() -> None:

@@ -16,16 +16,21 @@ import math
 import numpy as np
 import pytest
 
-from archive.physics import resistance_fit
+from archive.physics import coulomb_blockade, resistance_fit
 from archive.physics.adsorption import bet_area
 from archive.physics.allan_deviation import allan_deviation
 from archive.physics.allan_uncertainty import relative_uncertainty
+from archive.physics.calibration_fit import fit_calibration
 from archive.physics.constants import AVOGADRO
+from archive.physics.line_search import resonance_lines
 from archive.physics.loading import fit_loading
+from archive.physics.paramagnetic import curie_weiss_inductance
 from archive.physics.power_law import fit_power_law
+from archive.physics.pulse_response import pulse_response
 from archive.physics.resistance_thermometer import evaluate
 from archive.physics.resonance import fit_resonance, resonance_curve
 from archive.physics.ringdown import ringdown
+from archive.physics.ringdown_components import component_ringdown
 
 SEEDS = 200
 
@@ -126,9 +131,76 @@ def resistance_calibration(rng):
     return pulls
 
 
+def component_ringdowns(rng):
+    """A decay in both components, off the frequency of the detector."""
+    t, tau, offset = np.linspace(0.0, 300.0, 400), 60.0, 0.05
+    z = 1.3 * np.exp(0.4j) * np.exp((2j * np.pi * offset - 1 / tau) * t) + (0.05 - 0.02j)
+    z = z + 0.01 * (rng.normal(size=t.size) + 1j * rng.normal(size=t.size))
+    found = component_ringdown(t, z.real, z.imag, frequency=1000.0)
+    assert found.found, found.reason
+    u = np.sqrt(np.diag(found.covariance))
+    return {
+        "offset": (found.frequency_offset - offset) / u[0],
+        "Q": (found.quality_factor - math.pi * 1000 * tau) / u[1],
+    }
+
+
+def pulse_lines(rng):
+    """A resonator struck by a pulse of random phases, with feedthrough, weak and strong."""
+    rate, points, truth = 4096.0, 8192, (700.3, 150.0)
+    t, f = np.arange(points) / rate, np.fft.rfftfreq(points, 1 / rate)
+    pulse = np.random.default_rng(1).normal(size=points) * ((t > 0.1) & (t < 1.0))
+    r = f / truth[0]
+    driven = np.fft.irfft(np.fft.rfft(pulse) / truth[1] / (1 - r * r + 1j * r / truth[1]), points)
+    pulls = {}
+    for strength, noise in (("weak", 1.5), ("strong", 0.05)):
+        signal = 8 * driven + 0.5 * np.roll(pulse, 3) + rng.normal(0, noise, points)
+        response = pulse_response(signal, rate=rate, pulse=pulse, low=500.0, high=900.0)
+        line = next(each for each in resonance_lines(response, most=2).lines if each.kind == "resonance")
+        u = np.sqrt(np.diag(line.covariance))
+        pulls[f"frequency, {strength}"] = (line.frequency - truth[0]) / u[0]
+        pulls[f"Q, {strength}"] = (line.quality_factor - truth[1]) / u[1]
+    return pulls
+
+
+def coulomb_dip(rng):
+    """The dip of a chain of junctions, off zero bias."""
+    V, width = np.linspace(-1e-3, 1e-3, 301), coulomb_blockade.half_width(0.02, junctions=32)
+    # 5.43917 N k T/e is the full width at half depth, from g(x) = 1/12.
+    clean = 2.1e-5 * (1 - 0.02 * coulomb_blockade.dip_shape((V - 5e-6) / width * 5.4391699))
+    found = coulomb_blockade.fit_dip(V, clean + 2e-8 * rng.standard_normal(V.size), standard_uncertainty=2e-8)
+    u = np.sqrt(np.diag(found.covariance))
+    return {"depth": (found.depth - 0.02) / u[1], "width": (found.width - width) / u[2]}
+
+
+def _law_of_form(form):
+    """Return readings of forty points, their temperatures, and the law between them, which is of the form."""
+    if form == "curie-weiss":
+        T = np.geomspace(5e-3, 1.0, 40)
+        return (lambda at: curie_weiss_inductance(at, offset=12.5, constant=0.34, theta=4e-4)), T
+    y = np.linspace(1.0, -1.0, 40)
+    T = 2 - 1.5 * y + 0.35 * y**2 - 0.1 * y**3 if form == "chebyshev" else np.exp(0.5 - 1.5 * y + 0.2 * y**2 - 0.05 * y**3)  # fmt: skip
+    return (lambda at: 1000 * 10 ** np.interp(at, T, y)), T
+
+
+def calibrations(rng):
+    """Each form of calibration on a law of that form, at its points: reading and temperature scatter, and the order is chosen."""
+    pulls = {}
+    for form in ("chebyshev", "log-polynomial", "spline", "curie-weiss"):
+        law, T = _law_of_form(form)
+        R = np.asarray(law(T))
+        u_T, u_R = 1e-3 * T, 3e-4 * np.abs(R - (12.5 if form == "curie-weiss" else 0.0))
+        fit = fit_calibration(form, R + u_R * rng.normal(size=T.size), T + u_T * rng.normal(size=T.size), temperature_uncertainty=u_T, reading_uncertainty=u_R)  # fmt: skip
+        for index in (2, 20, 37):
+            at = R[index : index + 1]
+            u = math.hypot(float(fit.standard_uncertainty(at)[0]), fit.interpolation * T[index])
+            pulls[f"{form}, {index}"] = (float(fit.curve.temperature(at)[0]) - T[index]) / u
+    return pulls
+
+
 SYSTEMS = (
-    dose_run, isotherm, porous_film, ringdowns, resonance,
-    stability, resistance_calibration,
+    dose_run, isotherm, porous_film, ringdowns, component_ringdowns, resonance, pulse_lines,
+    stability, resistance_calibration, calibrations, coulomb_dip,
 )  # fmt: skip
 
 

@@ -48,18 +48,6 @@ def test_backgrounds(background, signal, level, height):
         assert found.fit.value(level) == pytest.approx(0.05 * height, rel=1e-5)
 
 
-def test_uncertainty_is_honest():
-    rng = np.random.default_rng(4)
-    pulls = []
-    for _ in range(100):
-        found = ringdown(
-            T, np.exp(-T / TAU) + rng.normal(0, 0.01, T.size), frequency=1000.0, convention="amplitude"
-        )
-        pulls.append((found.quality_factor - math.pi * 1000 * TAU) / found.standard_uncertainty)
-    assert np.std(pulls) == pytest.approx(1.0, abs=0.2)
-    assert abs(np.mean(pulls)) < 0.4
-
-
 def test_two_rates_are_called_curved():
     assert ringdown(
         T, np.exp(-T / TAU) + np.exp(-T / 30), frequency=1e3, convention="amplitude", background="none"

@@ -33,17 +33,6 @@ def test_an_exact_decay_comes_back(offset: float, convention) -> None:
     assert found.quality_factor == pytest.approx(Q, rel=1e-7)
 
 
-def test_the_uncertainty_is_honest() -> None:
-    pulls = []
-    for seed in range(60):
-        found = component_ringdown(T, *_record(0.05, seed), frequency=1000.0)
-        u = np.sqrt(np.diag(found.covariance))
-        pulls.append([(found.frequency_offset - 0.05) / u[0], (found.quality_factor - Q) / u[1]])
-    mean, width = np.mean(pulls, axis=0), np.std(pulls, axis=0)
-    assert (np.abs(mean) < 4 / math.sqrt(60)).all()
-    assert (np.abs(width - 1) < 4 / math.sqrt(120)).all()
-
-
 def test_no_decay_gives_no_number() -> None:
     rng = np.random.default_rng(1)
     noise = component_ringdown(T, rng.normal(size=T.size), rng.normal(size=T.size), frequency=1000.0)
