@@ -7,6 +7,8 @@ import math
 import numpy as np
 import pytest
 from CoolProp.CoolProp import PropsSI
+from scipy.integrate import quad
+from scipy.stats import chi2
 
 from archive.physics.constants import GAS_CONSTANT
 from archive.physics.dead_volume import free_volume, virial_density
@@ -59,17 +61,30 @@ def test_an_offset_is_told_and_not_fitted_into_the_volume():
     assert math.isnan(same.offset)
 
 
+def width_of_pulls(dof):
+    """Return the width of pulls whose uncertainty is the stated one, or the scatter of `dof` degrees of freedom where that is larger."""
+    mean, _ = quad(lambda x: chi2.pdf(x, dof) / max(1.0, x / dof), 0, 20 * dof, points=[dof])
+    return math.sqrt(mean)
+
+
 def test_pulls_of_volume_and_offset():
     rng = np.random.default_rng(11)
     rho = np.linspace(5.0, 60.0, 8)
     u = 2e-8 * (1 + rho / 30)
-    pulls = []
-    for _ in range(400):
-        found = free_volume(8e-6 * rho + u * rng.normal(size=8), rho, standard_uncertainty=u)
-        pulls.append(((found.volume - 8e-6) / found.u_volume, found.offset / found.u_offset))
-    # Scatter that happens to be larger than stated enlarges the uncertainty, so the width is a little below one.
-    assert np.mean(pulls, axis=0) == pytest.approx([0, 0], abs=4 / math.sqrt(400))
-    assert np.std(pulls, axis=0) == pytest.approx([0.92, 0.92], abs=0.14)
+    runs = 2000
+    found = [
+        free_volume(8e-6 * rho + u * rng.normal(size=8), rho, standard_uncertainty=u) for _ in range(runs)
+    ]
+    pulls = np.array([[(each.volume - 8e-6) / each.u_volume, each.offset / each.u_offset] for each in found])
+    assert np.mean(pulls, axis=0) == pytest.approx([0, 0], abs=4 / math.sqrt(runs))
+    # Chi squared and the estimates of a linear fit are independent, so the width is known: 7 and 6 degrees of freedom are left.
+    assert np.std(pulls, axis=0) == pytest.approx(
+        [width_of_pulls(7), width_of_pulls(6)], abs=4 / math.sqrt(2 * runs)
+    )
+    # The correlation of the two is that of the estimates over the runs, (1 - r^2)/sqrt(N) uncertain.
+    r = np.corrcoef([each.volume for each in found], [each.offset for each in found])[0, 1]
+    stated = np.mean([each.covariance / (each.u_volume * each.u_offset) for each in found])
+    assert stated == pytest.approx(r, abs=4 * (1 - r * r) / math.sqrt(runs))
 
 
 @pytest.mark.parametrize(

@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import csv
 import math
+from pathlib import Path
 
 import numpy as np
 import pytest
@@ -23,6 +25,8 @@ from archive.physics.film_static import (
     x_minus_log1p,
     x_of_s,
 )
+
+TABLE = Path(__file__).parents[2] / "published" / "film-tables" / "dynamic-b.csv"
 
 
 def test_universal_jump():
@@ -68,6 +72,15 @@ def test_cusp_near_the_transition():
     ratio = static_areal_density(1 - t, transition_temperature=1.0, b=b) / (UNIVERSAL_JUMP * (1 - t))
     assert float(ratio) - 1 == pytest.approx(b / 4 * math.sqrt(t), rel=1e-3)
     assert float(static_areal_density(1.0001, transition_temperature=1.0, b=b)) == 0
+
+
+def test_static_areal_density_is_that_of_the_table():
+    """Every row of the start with c = (b/4)^2 t exactly, to half a unit of its last digit."""
+    rows = list(csv.DictReader(TABLE.read_text(encoding="utf-8").splitlines()))
+    assert len(rows) == 15
+    for row in rows:
+        found = static_areal_density(float(row["ratio"]), transition_temperature=1.0, b=5.5) / UNIVERSAL_JUMP
+        assert float(found) == pytest.approx(float(row["S_static"]), abs=5.1e-7), row["ratio"]
 
 
 @given(st.floats(-2.4, 1.5))

@@ -67,6 +67,17 @@ def test_one_level_off_by_itself_is_not_the_limit() -> None:
     assert 8.0 < found.amplitude < 9.0
 
 
+def test_each_level_counts_by_its_distance_from_the_crossing() -> None:
+    """By hand: the change rises from 0 at level 8 to 0.3 at level 9, the limit is a third of the way; the base is three levels' mean."""
+    amplitude = np.linspace(1.0, 10.0, 10)
+    value = np.where(amplitude > 8, 1.3, 1.0)
+    u = np.select([amplitude == 8, amplitude == 9], [0.02, 0.04], 0.01)
+    found = linear_limit(level_means(amplitude, amplitude, value, standard_uncertainty=u), limit=0.1)
+    assert found.amplitude == pytest.approx(8 + 1 / 3, rel=1e-12)
+    parts = (2 / 3 * 0.02, 1 / 3 * 0.04, 0.01 / math.sqrt(3))
+    assert found.standard_uncertainty == pytest.approx(math.hypot(*parts) / 0.3, rel=1e-12)
+
+
 @pytest.mark.parametrize(
     ("call", "why"),
     [

@@ -2,8 +2,14 @@
 
 import numpy as np
 import pytest
+from scipy.integrate import quad
 
-from archive.physics.pressure_head import aerostatic_head, liquid_head, liquid_head_temperature
+from archive.physics.pressure_head import (
+    aerostatic_head,
+    liquid_head,
+    liquid_head_temperature,
+    straight_profile,
+)
 
 
 @pytest.mark.parametrize(("T", "millikelvin"), [(4.2, 0.131), (3.0, 0.385), (2.5, 0.708)], ids=str)
@@ -29,3 +35,9 @@ def test_gas_column() -> None:
     light = aerostatic_head(100.0, height=1.0, temperature=4.0, isotope="3He")
     assert light / heavy == pytest.approx(3.0160293 / 4.0026033, rel=1e-7)
     np.testing.assert_allclose(aerostatic_head([0.0, 200.0], height=1.0, temperature=4.0), [0.0, 2 * heavy])
+
+
+def test_a_straight_profile_weighs_as_the_mean_of_the_inverse_temperature() -> None:
+    """Against quadrature of 1/T from a bath at 4 K to a room at 295 K."""
+    mean, _ = quad(lambda x: 1 / (4.0 + 291.0 * x), 0, 1, epsrel=1e-12)
+    assert straight_profile(4.0, 295.0) == pytest.approx(1 / mean, rel=1e-10)

@@ -59,3 +59,9 @@ def test_mean_superfluid_fraction():
     """At T -> 0 half a layer is inert: (1 - 0.5/d)."""
     assert float(mean_superfluid_fraction(5.0, temperature=0.0, bulk_fraction=1.0)) == pytest.approx(0.9)
     assert math.isnan(float(mean_superfluid_fraction(1.0, temperature=1.0, bulk_fraction=0.99)))
+
+
+def test_mean_superfluid_fraction_of_a_warm_film():
+    """By hand, coefficients of Scholtz, McLean and Rudnick (1974) from memory: D = 0.5 + 1.13 x 1.5/0.889 = 2.40664 layers of five."""
+    found = mean_superfluid_fraction(5.0, temperature=1.5, bulk_fraction=0.889)
+    assert float(found) == pytest.approx(0.889 * (1 - 2.40664 / 5), abs=1e-6)
