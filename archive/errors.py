@@ -6,7 +6,10 @@ stops an operation is raised. Both speak in the same terms: what, where, found, 
 
 from __future__ import annotations
 
+import tempfile
+import traceback
 from dataclasses import dataclass
+from datetime import UTC, datetime
 
 from typing_extensions import override
 
@@ -21,6 +24,7 @@ __all__ = [
     "NotAnArchive",
     "StepFailed",
     "UnknownAddress",
+    "kept_traceback",
 ]
 
 EXIT_BAD_INPUT = 2
@@ -133,3 +137,22 @@ class NotAnArchive(ArchiveError):
 
     code = "not-an-archive"
     exit_code = EXIT_BUSY
+
+
+def kept_traceback(error: BaseException) -> str:
+    """Return the name of a file that holds the details of a fault that nobody expected, for whoever mends it."""
+    now = datetime.now(UTC).strftime("%Y%m%dT%H%M%SZ")
+    text = "".join(traceback.format_exception(error))
+    try:
+        with tempfile.NamedTemporaryFile(
+            "w",
+            prefix=f"stillroom-traceback-{now}-",
+            suffix=".txt",
+            delete=False,
+            encoding="utf-8",
+            errors="backslashreplace",
+        ) as stream:
+            stream.write(text)
+            return stream.name
+    except OSError:
+        return f"no file, since none could be written: {type(error).__name__}: {error}"

@@ -12,7 +12,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 from difflib import get_close_matches
 
-__all__ = ["KINDS", "Kind", "kind_of"]
+__all__ = ["KINDS", "Kind", "kind_of", "kind_of_si"]
 
 _OSCILLATING = ("rms", "peak", "peak-to-peak")
 _PURE = frozenset({"1"})
@@ -199,3 +199,14 @@ def kind_of(name: str) -> Kind:
             f"found quantity kind {name[:64]!r}; expected one of {len(KINDS)} kinds such as coverage{hint}"
         )
     return found
+
+
+def kind_of_si(unit: str) -> str | None:
+    """Return the first kind whose SI unit this is, for a number of which no more than its unit is known.
+
+    Examples
+    --------
+    >>> kind_of_si("mol/m^2"), kind_of_si("furlong")
+    ('coverage', None)
+    """
+    return next((name for name, each in KINDS.items() if unit in each.si), None)

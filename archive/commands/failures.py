@@ -14,18 +14,15 @@ from __future__ import annotations
 
 import os
 import sys
-import tempfile
-import traceback
 from collections.abc import Iterator
 from contextlib import contextmanager
-from datetime import UTC, datetime
 from typing import Any
 
 import click
 from typing_extensions import override
 
 from archive.commands.terminal import note, styled
-from archive.errors import EXIT_BAD_INPUT, ArchiveError, BadRequest
+from archive.errors import EXIT_BAD_INPUT, ArchiveError, BadRequest, kept_traceback
 
 __all__ = ["EXIT_INTERRUPTED", "EXIT_WARNINGS", "GuardedGroup", "stopped", "told"]
 
@@ -69,7 +66,7 @@ def stopped(error: BaseException) -> int:
         place = f"{error.filename}: " if error.filename else ""
         _say(f"{place}{error.strerror[:1].lower()}{error.strerror[1:]}")
         return EXIT_BAD_INPUT
-    _say(f"this is a fault of Stillroom, not yours; the details are in {_traceback_file(error)}")
+    _say(f"this is a fault of Stillroom, not yours; the details are in {kept_traceback(error)}")
     return EXIT_BAD_INPUT
 
 
@@ -121,21 +118,3 @@ def _quieten() -> None:
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
     except (OSError, ValueError):
         return
-
-
-def _traceback_file(error: BaseException) -> str:
-    now = datetime.now(UTC).strftime("%Y%m%dT%H%M%SZ")
-    text = "".join(traceback.format_exception(error))
-    try:
-        with tempfile.NamedTemporaryFile(
-            "w",
-            prefix=f"stillroom-traceback-{now}-",
-            suffix=".txt",
-            delete=False,
-            encoding="utf-8",
-            errors="backslashreplace",
-        ) as stream:
-            stream.write(text)
-            return stream.name
-    except OSError:
-        return f"no file, since none could be written: {type(error).__name__}: {error}"

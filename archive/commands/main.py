@@ -30,6 +30,7 @@ from archive.commands import (
     reduce_commands,
     report_commands,
     search_command,
+    serve_command,
     tour_command,
 )
 from archive.commands.failures import EXIT_INTERRUPTED, GuardedGroup
@@ -53,6 +54,7 @@ _COMMANDS: Final = (
     acts_commands.amend,
     acts_commands.withdraw,
     search_command.search,
+    serve_command.serve,
     lineage_commands.show,
     lineage_commands.trace,
     lineage_commands.replay,
@@ -109,6 +111,7 @@ def stillroom(archive_dir: Path | None) -> None:
     Take it in and reduce it:       stillroom ingest FOLDER, stillroom reduce 2026-03
     Correct it afterwards:          stillroom amend SHEET.toml, stillroom stale, stillroom reduce --stale
     Find and cite:                  stillroom search --coverage "20:35 umol/m^2"
+    Look at it in a browser:        stillroom serve --open
     At the bench:                   stillroom convert "31.4 umol/m^2" --to atoms/nm^2
 
     `stillroom COMMAND --help` explains each, with examples.

@@ -37,11 +37,11 @@ def readable(value: float | None, uncertainty: float | None, unit: str) -> str:
     >>> readable(0.00100321409, 2.9e-13, "s"), readable(4.8213e-6, 5.5e-9, "mol"), readable(0.4587, 0.0011, "K")
     ('1.00321409000(29) ms', '4.8213(55) umol', '0.4587(11) K')
     """
-    from schemas.kinds import KINDS
+    from schemas.kinds import kind_of_si
     from schemas.quantity import Quantity
     from schemas.uncertain_text import in_preferred_unit
 
-    kind = next((name for name, each in KINDS.items() if unit in each.si), None)
+    kind = kind_of_si(unit)
     if kind is not None and unit not in _KEPT and value is not None and math.isfinite(value):
         known = (
             uncertainty

@@ -118,6 +118,8 @@ def _sqlite(url: URL, *, mode: str, wait: float) -> Engine:
         if mode == "rwc":
             # SQLite makes its files for their owner alone to write; in a shared archive the umask is to say who may.
             os.close(os.open(path, os.O_RDWR | os.O_CREAT, 0o666))
+        elif not path.exists():
+            raise MissingFile("the index is not there", file=str(path), remedy=REBUILD)
         how = f"?mode={mode}" + ("&immutable=1" if mode == "ro" and _at_rest_and_out_of_reach(path) else "")
         return sqlite3.connect(path.as_uri() + how, uri=True, timeout=wait, check_same_thread=False)
 

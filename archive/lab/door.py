@@ -23,6 +23,7 @@ from archive.index import (
     CooldownRow,
     Index,
     RecordRow,
+    ReductionRow,
     ResultRow,
     SearchQuery,
     SweepRow,
@@ -174,26 +175,33 @@ class Archive:
         return cls.open(root, clock=clock)
 
     @classmethod
-    def open(cls, start: Path | str | None = None, *, clock: Clock = _now) -> Archive:
+    def open(
+        cls, start: Path | str | None = None, *, read_only: bool = False, clock: Clock = _now
+    ) -> Archive:
         """Open an archive.
 
         Parameters
         ----------
         start : Path, optional
             Folder of the archive; else `STILLROOM_ARCHIVE`, else the current folder and its parents are looked at.
+        read_only : bool
+            Only look: the database itself refuses writes, and what an interruption left is not put in order.
 
         Raises
         ------
         NotAnArchive
             If there is none.
+        BadRequest
+            If it is to be read only and an older Stillroom wrote its index.
         """
         root = find_root(None if start is None else Path(start))
         settings = read_settings(root)
         # A copy on a read-only medium, or another person's archive, can be read all the same.
-        index = Index.open(settings.index_address(root), read_only=not os.access(root, os.W_OK))
+        index = Index.open(settings.index_address(root), read_only=read_only or not os.access(root, os.W_OK))
         archive = cls(root, settings, open_store(root), index, clock)
         try:
-            archive._put_in_order()
+            if not read_only:
+                archive._put_in_order()
         except BaseException:
             index.close()
             raise
@@ -477,6 +485,16 @@ class Archive:
     def records(self, name: str | None = None, kind: str | None = None) -> list[RecordRow]:
         """Cells, substrates, thermometers, ... with their revisions."""
         return self._index.records(name=name, kind=kind)
+
+    def sweeps(self, cooldown: str, *, withdrawn: bool = False) -> RowList[SweepRow]:
+        """Sweeps of a cooldown by name, each in its newest version; withdrawn ones too, marked, if asked for."""
+        return RowList(self._index.sweeps(cooldown, withdrawn=withdrawn))
+
+    def reductions(
+        self, *, cooldown: str | None = None, sweep: str | None = None, newest_only: bool = False
+    ) -> list[ReductionRow]:
+        """Reductions by sweep, plan and number; withdrawn ones are marked."""
+        return self._index.reductions(cooldown=cooldown, sweep=sweep, newest_only=newest_only)
 
     def results(
         self,

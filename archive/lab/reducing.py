@@ -39,7 +39,7 @@ def plans(source: LabSource) -> list[Plan]:
     for own in source.own_plans():
         known.setdefault(own.address, own)
     for row in source.index.reductions():
-        if row.plan not in known:
+        if row.plan_address not in known:
             plan = source.reduction(row.address).plan
             known.setdefault(plan.address, plan)
     for added in added_plans():

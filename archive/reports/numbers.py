@@ -15,7 +15,7 @@ from dataclasses import dataclass
 from typing_extensions import override
 
 from archive.reports.tex import Tex, tex
-from schemas.kinds import KINDS
+from schemas.kinds import KINDS, kind_of_si
 from schemas.lineage import OutputEntry, Value
 from schemas.quantity import Quantity
 from schemas.uncertain_text import html_text, in_preferred_unit, latex_text, plain_text, rounded
@@ -27,6 +27,7 @@ __all__ = [
     "Shown",
     "absent",
     "shown",
+    "shown_number",
     "shown_output",
     "shown_value",
     "words",
@@ -126,6 +127,25 @@ def shown_output(output: OutputEntry | None) -> Shown:
     if output.value is None or not math.isfinite(output.value):
         return words(output.verdict) if output.verdict else LOST
     return _of(output.value, output.uncertainty, output.unit, output.quantity, output.scale)
+
+
+def shown_number(
+    value: float | None, uncertainty: float | None, unit: str, *, setting: bool = False
+) -> Shown:
+    """Return a number of which only the unit is known, as a list of the index has it, in the unit people like to read.
+
+    Examples
+    --------
+    >>> shown_number(0.00100321409, 2.9e-13, "s").plain
+    '1.00321409000(29) ms'
+    """
+    if value is None or not math.isfinite(value):
+        return LOST
+    kind = kind_of_si(unit)
+    if unit == "K":
+        # Temperatures of one table are compared with each other, so they keep one unit.
+        return _of(value, uncertainty, unit, "temperature", None, setting=setting, unit_shown="K")
+    return _of(value, uncertainty, unit, kind or "", None, setting=setting)
 
 
 def _of(

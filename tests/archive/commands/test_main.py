@@ -26,10 +26,12 @@ Fake = Callable[..., FakeArchive]
 
 COMMANDS = (
     "demo", "tour", "init", "schema", "draft", "check", "ingest", "plans", "reduce", "stale", "revise", "amend", "withdraw",
-    "search", "show", "trace", "replay", "compare", "calibration", "drift", "run-sheet", "appendix", "journal",
+    "search", "serve", "show", "trace", "replay", "compare", "calibration", "drift", "run-sheet", "appendix", "journal",
     "prov", "export", "import", "fixity", "rebuild-index", "roles", "mirror", "mend", "convert", "helium", "completion",
 )  # fmt: skip
 HEAVY = (
+    "starlette",
+    "uvicorn",
     "numpy",
     "scipy",
     "h5py",
@@ -90,9 +92,9 @@ def test_each_help_teaches_by_example(name: str, run: Run) -> None:
 @pytest.mark.parametrize("name", COMMANDS)
 def test_each_command_that_prints_data_offers_json(name: str) -> None:
     options = {option for parameter in stillroom.commands[name].params for option in parameter.opts}
-    # Schema, lineage and roles are a format of their own already; a draft is TOML; demonstration and tour are stories; a script is for a shell.
+    # Pages are for people. Schema, lineage and roles are a format of their own already; a draft is TOML; demonstration and tour are stories; a script is for a shell.
     assert ("--json" in options) == (
-        name not in ("schema", "draft", "demo", "tour", "completion", "prov", "roles")
+        name not in ("schema", "draft", "demo", "tour", "completion", "prov", "roles", "serve")
     )
 
 
