@@ -2,20 +2,17 @@
 
 from __future__ import annotations
 
-import io
 import re
 from collections.abc import Callable, Sequence
-from typing import Any
+from contextlib import nullcontext
 
 import matplotlib as mpl
 import numpy as np
 from matplotlib.axes import Axes
-from matplotlib.backends.backend_pdf import FigureCanvasPdf
-from matplotlib.backends.backend_svg import FigureCanvasSVG
 from matplotlib.figure import Figure
 
-from archive.reports.figure_style import LOOKS, STYLE, WIDTH, Column
-from archive.reports.small_plots import in_unit, symbol
+from archive.reports.axis_units import in_unit, symbol
+from archive.reports.figure_style import LOOKS, STYLE, WIDTH, Column, as_svg, saved
 from schemas.lineage import OutputEntry, ReductionDocument
 from schemas.quantity import unit_factor
 from schemas.units import parse_unit
@@ -65,23 +62,15 @@ def comparison_figure(
         rows.append(("results", 0.5 + 0.17 * len(shifts)))
     if not rows:
         raise ValueError("there is neither a curve nor a result that both reductions have")
-    style: dict[str, Any] = {**STYLE, "svg.hashsalt": "stillroom", "svg.fonttype": "path"}
-    with mpl.rc_context(style):  # type: ignore[arg-type]
+    with mpl.rc_context(STYLE):  # type: ignore[arg-type]
         figure = Figure(figsize=(WIDTH, sum(size for _, size in rows) + 0.3), layout="constrained")
         axes = figure.subplots(len(rows), 1, height_ratios=[size for _, size in rows], squeeze=False)[:, 0]
         if chosen is not None:
             _draw_curve(axes[0], axes[1], first, second, chosen, read)
         if shifts:
             _draw_shifts(axes[-1], shifts)
-        buffer = io.BytesIO()
-        if kind == "svg":
-            FigureCanvasSVG(figure)
-            figure.savefig(buffer, format="svg", metadata={"Date": None, "Creator": "stillroom"})
-        else:
-            FigureCanvasPdf(figure)
-            told = {"CreationDate": None, "Producer": "stillroom", "Creator": "stillroom"}
-            figure.savefig(buffer, format="pdf", metadata=told)
-    return buffer.getvalue()
+        with as_svg() if kind == "svg" else nullcontext():
+            return saved(figure)
 
 
 def _curve(first: ReductionDocument, second: ReductionDocument) -> tuple[OutputEntry, OutputEntry] | None:

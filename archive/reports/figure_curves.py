@@ -4,11 +4,11 @@ from __future__ import annotations
 
 import numpy as np
 
+from archive.reports.axis_units import in_unit, symbol
 from archive.reports.figure_plots import points, stacked
 from archive.reports.figure_style import HEIGHTS, Column, Drawn, NoFigure, name_of, saved
 from archive.reports.figure_values import column_of, spread_of
 from archive.reports.scope import Scope
-from archive.reports.small_plots import in_unit, symbol
 from archive.reports.small_reductions import shown_arrays
 from schemas.lineage import OutputEntry, ReductionDocument
 from schemas.units import parse_unit

@@ -9,17 +9,35 @@ Rules
 from __future__ import annotations
 
 import io
+import re
+from collections.abc import Iterator
+from contextlib import contextmanager
+from contextvars import ContextVar
 from dataclasses import dataclass
 from typing import Any, Final
 
+import matplotlib as mpl
 import numpy as np
 from matplotlib.backends.backend_pdf import FigureCanvasPdf
+from matplotlib.backends.backend_svg import FigureCanvasSVG
 from matplotlib.figure import Figure
 from numpy.typing import NDArray
 
 from schemas.lineage import ReductionDocument
 
-__all__ = ["HEIGHTS", "LOOKS", "STYLE", "WIDTH", "Column", "Drawn", "NoFigure", "Undrawn", "name_of", "saved"]
+__all__ = [
+    "HEIGHTS",
+    "LOOKS",
+    "STYLE",
+    "WIDTH",
+    "Column",
+    "Drawn",
+    "NoFigure",
+    "Undrawn",
+    "as_svg",
+    "name_of",
+    "saved",
+]
 
 Column = NDArray[np.float64]
 
@@ -40,6 +58,10 @@ LOOKS = (
     ("+", "-.", "#7f6000"),
 )
 """Marker, line and colour of each series; marker and line alone tell them apart in grey."""
+
+_SVG: ContextVar[bool] = ContextVar("figures as SVG", default=False)
+_SHEET: Final = re.compile(r"<style\b[^>]*>[^<]*</style>")
+_STYLED: Final = re.compile(r'\bstyle="([^"]*)"')
 
 WIDTH: Final = 4.6
 """Inches: fits a text width of 120 mm without being scaled."""
@@ -71,14 +93,46 @@ class Undrawn:
     what: str = "figure"
 
 
+@contextmanager
+def as_svg() -> Iterator[None]:
+    """Return a context in which `saved` gives SVG instead of PDF."""
+    token = _SVG.set(True)
+    try:
+        yield
+    finally:
+        _SVG.reset(token)
+
+
 def saved(figure: Figure) -> bytes:
-    """Return a figure as PDF without dates."""
-    FigureCanvasPdf(figure)
+    """Return a figure as PDF without dates; as SVG within `as_svg`."""
     buffer = io.BytesIO()
-    figure.savefig(
-        buffer, format="pdf", metadata={"CreationDate": None, "Producer": "stillroom", "Creator": "stillroom"}
-    )
-    return buffer.getvalue()
+    if not _SVG.get():
+        FigureCanvasPdf(figure)
+        figure.savefig(
+            buffer,
+            format="pdf",
+            metadata={"CreationDate": None, "Producer": "stillroom", "Creator": "stillroom"},
+        )
+        return buffer.getvalue()
+    FigureCanvasSVG(figure)
+    with mpl.rc_context({"svg.hashsalt": "stillroom", "svg.fonttype": "path"}):
+        figure.savefig(buffer, format="svg", metadata={"Date": None, "Creator": "stillroom"})
+    return _unstyled(buffer.getvalue().decode()).encode()
+
+
+def _unstyled(svg: str) -> str:
+    """SVG with presentation attributes in the place of style sheets and style attributes, which many a page forbids."""
+    bare = _SHEET.sub("", svg)
+    if bare != svg:
+        # The sheet that was taken out says this of everything.
+        bare = bare.replace("<svg ", '<svg stroke-linejoin="round" stroke-linecap="butt" ', 1)
+    return _STYLED.sub(lambda found: " ".join(_attributes(found[1])), bare)
+
+
+def _attributes(style: str) -> Iterator[str]:
+    for each in filter(None, map(str.strip, style.split(";"))):
+        name, _, value = each.partition(":")
+        yield f'{name.strip()}="{value.strip()}"'
 
 
 def name_of(kind: str, reduction: ReductionDocument) -> str:

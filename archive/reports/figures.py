@@ -9,12 +9,13 @@ Rules
 from __future__ import annotations
 
 from collections.abc import Callable, Iterator
+from contextlib import nullcontext
 from typing import Final
 
 import matplotlib as mpl
 
 from archive.reports.figure_curves import curve
-from archive.reports.figure_style import STYLE, Drawn, NoFigure, Undrawn
+from archive.reports.figure_style import STYLE, Drawn, NoFigure, Undrawn, as_svg
 from archive.reports.figures_adsorption import dead_volume_figure, isotherm_figure
 from archive.reports.figures_bulk import (
     addenda_figure,
@@ -40,7 +41,7 @@ from archive.reports.figures_third_sound import third_sound_figure
 from archive.reports.scope import Scope
 from schemas.lineage import ReductionDocument
 
-__all__ = ["MAKERS", "Drawn", "Undrawn", "figures"]
+__all__ = ["MAKERS", "Drawn", "Undrawn", "figure_of", "figures"]
 
 MAKERS: Final[dict[str, Callable[[Scope, ReductionDocument], Drawn]]] = {
     "bulk-oscillator": fraction_figure,
@@ -85,6 +86,21 @@ def figures(scope: Scope) -> Iterator[Drawn | Undrawn]:
                 yield _made(sweep_figure, scope, reduction, "figure of the whole way from signal to amount")
         yield from cell_figures(scope)
         yield from drift_figures(scope)
+
+
+def figure_of(scope: Scope, reduction: ReductionDocument, *, kind: str = "pdf") -> Drawn | Undrawn:
+    """Return the figure of one reduction, or why there is none.
+
+    Parameters
+    ----------
+    scope : Scope
+        That holds the reduction.
+    reduction : ReductionDocument
+    kind : {"pdf", "svg"}
+    """
+    maker = MAKERS.get(reduction.plan.name, curve)
+    with mpl.rc_context(STYLE), as_svg() if kind == "svg" else nullcontext():  # type: ignore[arg-type]
+        return _made(maker, scope, reduction)
 
 
 def _made(

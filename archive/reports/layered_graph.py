@@ -118,7 +118,7 @@ def drawn(
     width, height = (high - low, deep) if downward else (deep, high - low)
     parts = [
         f'<svg xmlns="http://www.w3.org/2000/svg" role="img" width="{width:.1f}mm" height="{height:.1f}mm" '
-        f'viewBox="0 0 {width:.1f} {height:.1f}" style="max-width:100%;height:auto"><title>{escape(title)}</title>',
+        f'viewBox="0 0 {width:.1f} {height:.1f}"><title>{escape(title)}</title>',
         f'<g fill="none" stroke="currentColor" stroke-width="0.2" font-family="{_FONT}" font-size="{_TEXT}">',
     ]
     for (start, end), chain in sorted(chains.items()):

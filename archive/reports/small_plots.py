@@ -2,31 +2,20 @@
 
 from __future__ import annotations
 
-import math
-
 import numpy as np
 from numpy.typing import NDArray
 
+from archive.reports.axis_units import axis_name, in_unit, offset_unit, symbol
 from archive.reports.holdings import Holdings, Taken
 from archive.reports.svg import Series, axis_of, plot
 from schemas.kinds import KINDS
 from schemas.lineage import ChannelEntry
-from schemas.quantity import Quantity, canonical, unit_factor
-from schemas.uncertain_text import in_preferred_unit
-from schemas.units import parse_unit
+from schemas.quantity import unit_factor
 
-__all__ = ["Column", "in_unit", "sweep_plot", "symbol", "temperature_of", "unit_text"]
+__all__ = ["Column", "sweep_plot", "temperature_of"]
 
 Column = NDArray[np.float64]
 
-_SYMBOLS = {
-    "temperature": "T", "period": "P", "dissipation": "1/Q", "amplitude": "A", "drive": "drive", "frequency": "f", "time": "t", "pressure": "p",
-    "amount": "n", "specific_amount": "n per mass", "relative_pressure": "p/p\u2080", "pressure_ratio": "p/p\u2080", "coverage": "n/A",
-    "areal_mass_density": "\u03c3\u209b", "resistance": "R", "voltage": "U", "current": "I", "heat_capacity": "C", "quality_factor": "Q",
-    "molar_heat_capacity": "C", "temperature_difference": "\u0394T", "density": "\u03c1", "angular_momentum": "L", "length": "d", "speed": "c", "mutual_inductance": "M",
-}  # fmt: skip
-# Small differences of a quantity are read in these, smallest first.
-_FINE_UNITS: dict[str, tuple[str, ...]] = {"period": ("ps", "ns"), "frequency": ("uHz", "mHz")}
 # Along which kind, and which kinds are worth seeing, in order of liking.
 _LIKED: dict[str, tuple[tuple[str, ...], tuple[str, ...]]] = {
     "temperature-sweep": (("temperature",), ("period", "frequency", "dissipation", "amplitude", "resistance")),
@@ -38,33 +27,6 @@ _LIKED: dict[str, tuple[tuple[str, ...], tuple[str, ...]]] = {
     "heat-capacity": (("temperature",), ("heat_capacity", "molar_heat_capacity", "specific_heat", "temperature_difference")),
     "persistent-current": (("time",), ("angular_momentum",)),
 }  # fmt: skip
-
-
-def symbol(kind: str) -> str:
-    """Return the symbol of a quantity kind on an axis."""
-    return _SYMBOLS.get(kind, kind.replace("_", " "))
-
-
-def unit_text(unit: str) -> str:
-    """Return a unit as an axis shows it; "" for a pure number."""
-    return "" if unit == "1" else parse_unit(unit).typographic
-
-
-def in_unit(values: Column, unit: str, kind: str) -> tuple[Column, str]:
-    """Return values in the unit that reads best for their largest one, and that unit."""
-    finite = values[np.isfinite(values)]
-    if finite.size == 0 or kind not in KINDS:
-        return values, unit
-    si = values * unit_factor(unit, kind)
-    biggest = float(np.max(np.abs(si[np.isfinite(si)])))
-    shown = in_preferred_unit(
-        Quantity(value=biggest, unit=canonical(kind) if kind != "drive" else _si_of(unit, kind), kind=kind)
-    ).unit
-    return np.asarray(si / unit_factor(shown, kind)), shown
-
-
-def _si_of(unit: str, kind: str) -> str:
-    return Quantity(value=1.0, unit=unit, kind=kind).si_unit
 
 
 def temperature_of(held: Holdings, taken: Taken) -> tuple[Column, str] | None:
@@ -143,7 +105,7 @@ def sweep_plot(held: Holdings, taken: Taken) -> str | None:
         ys.append(values * factor)
     ys, name = _less_offset(ys, pairs[0][0].quantity, unit)
     log = taken.sheet.kind == "ringdown" and all(bool((each[np.isfinite(each)] > 0).all()) for each in ys)
-    x_axis, y_axis = axis_of(_name(x[2], x_unit), [xs]), axis_of(name, ys, log=log)
+    x_axis, y_axis = axis_of(axis_name(x[2], x_unit), [xs]), axis_of(name, ys, log=log)
     if x_axis is None or y_axis is None:
         return None
     marks = taken.sheet.kind in ("drive-sweep", "dose-run", "isotherm")
@@ -163,24 +125,11 @@ def sweep_plot(held: Holdings, taken: Taken) -> str | None:
 def _less_offset(columns: list[Column], kind: str, unit: str) -> tuple[list[Column], str]:
     """Return values less a round offset, in the unit that suits what is left, where they hardly differ; and the axis."""
     every = np.concatenate([each[np.isfinite(each)] for each in columns])
-    span = float(np.ptp(every)) if every.size else 0.0
-    if kind not in KINDS or span == 0 or span > 2e-3 * float(np.max(np.abs(every))):
-        return columns, _name(kind, unit)
-    places = max(0, -math.floor(math.log10(span)) - 1)
-    offset = math.floor(float(every.min()) * 10**places) / 10**places
-    left = [each - offset for each in columns]
-    most = float(np.max(np.abs(every - offset))) * unit_factor(unit, kind)
-    able = [each for each in _FINE_UNITS.get(kind, ()) if most >= unit_factor(each, kind)]
-    shown = able[-1] if able else in_unit(np.array([most / unit_factor(unit, kind)]), unit, kind)[1]
-    factor = unit_factor(unit, kind) / unit_factor(shown, kind)
-    between = f"({symbol(kind)} \u2212 {offset:.{places}f} {unit_text(unit)})".replace(" )", ")")
-    return [each * factor for each in left], f"{between} / {unit_text(shown)}".removesuffix(" / ")
+    if not every.size:
+        return columns, axis_name(kind, unit)
+    axis = offset_unit(float(every.min()), float(every.max()), kind, unit)
+    return [(each - axis.offset) * axis.factor for each in columns], axis.name
 
 
 def _channels(channels: tuple[ChannelEntry, ...], kind: str) -> list[ChannelEntry]:
     return [each for each in channels if each.quantity == kind and each.use]
-
-
-def _name(kind: str, unit: str) -> str:
-    shown = unit_text(unit)
-    return f"{symbol(kind)} / {shown}" if shown else symbol(kind)

@@ -7,8 +7,9 @@ from typing import Final
 import numpy as np
 
 from archive.physics.film_static import UNIVERSAL_JUMP
+from archive.reports.axis_units import in_unit, symbol, unit_text
 from archive.reports.holdings import Holdings
-from archive.reports.small_plots import Column, in_unit, symbol, unit_text
+from archive.reports.small_plots import Column
 from archive.reports.svg import Series, axis_of, plot
 from schemas.lineage import OutputEntry, ReductionDocument
 from schemas.quantity import unit_factor

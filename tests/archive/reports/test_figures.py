@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+import xml.etree.ElementTree as ET
 import zlib
 
 import matplotlib as mpl
@@ -19,7 +20,7 @@ from archive.reports import figures_bulk
 from archive.reports.figure_plots import enlarged
 from archive.reports.figure_style import STYLE, NoFigure
 from archive.reports.figure_values import fact, scalar, step_of, taken
-from archive.reports.figures import MAKERS, Drawn, Undrawn, figures
+from archive.reports.figures import MAKERS, Drawn, Undrawn, figure_of, figures
 from archive.reports.scope import Scope
 from tests.archive.reports.factories import accession, film_view, reduction, view_of
 
@@ -70,6 +71,21 @@ def test_each_reduction_is_drawn_once(drawn, scope):
     assert sorted(drawn) == NAMES
     sources = sorted(source for each in drawn.values() for source in each.sources)
     assert sources == sorted(each.address for each in scope.reductions)
+
+
+def test_a_figure_as_svg_says_how_it_looks_in_attributes(scope):
+    """What forbids style sheets shows it all the same: nothing is left to a default that would fill every line."""
+    document = of(scope, "2025-08/s001@empty-cell.1")
+    made = figure_of(scope, document, kind="svg")
+    assert isinstance(made, Drawn)
+    root = ET.fromstring(made.content)  # noqa: S314 - our own
+    assert (root.get("stroke-linejoin"), root.get("stroke-linecap")) == ("round", "butt")
+    every = list(root.iter())
+    assert not [each for each in every if each.tag.endswith("}style") or "style" in each.attrib]
+    lines = [each for each in every if each.get("fill") == "none"]
+    assert lines
+    assert all("stroke" in each.attrib for each in lines)
+    assert figure_of(scope, document).content.startswith(b"%PDF")
 
 
 def streams(content):
