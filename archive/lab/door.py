@@ -12,7 +12,7 @@ from contextlib import contextmanager, nullcontext, suppress
 from datetime import UTC, datetime
 from pathlib import Path
 from types import TracebackType
-from typing import Any, Self
+from typing import TYPE_CHECKING, Any, Self
 
 import numpy as np
 from numpy.typing import NDArray
@@ -45,6 +45,7 @@ from archive.lab.keeping import MirrorOutcome
 from archive.lab.marks import marked
 from archive.lab.outcomes import CheckReport, IngestOutcome, ReduceOutcome, ReplayReport
 from archive.lab.place import find_root, made, make_root, unmade
+from archive.lab.plan_figure import PlanFigure, plan_figure
 from archive.lab.renewing import reduce_stale
 from archive.lab.replaying import replay_all
 from archive.lab.report_files import manifest_digest, written_reports
@@ -70,6 +71,10 @@ from schemas.address import parse_address
 from schemas.lineage import ReductionDocument
 from schemas.plan import Plan
 from schemas.thermometer import Calibration
+
+if TYPE_CHECKING:
+    from archive.lab.curves.chart import Asked, Chart
+    from archive.lab.curves.leaf import Leaf
 
 __all__ = ["Archive"]
 
@@ -544,6 +549,34 @@ class Archive:
     def show(self, address: str) -> dict[str, Any]:
         """Everything the archive knows of a thing, as JSON-able content with `address` and `what`."""
         return showing.show(self._source, address)
+
+    def chart(self, asked: Asked) -> Chart:
+        """Curves of a sweep or a reduction and of others laid over, thinned to what can be seen; see `archive.lab.curves`."""
+        from archive.lab.curves.chart import chart
+
+        return chart(self._source, asked)
+
+    def leaf(self, address: str) -> Leaf:
+        """Columns that a sweep or a reduction has to draw, without reading them."""
+        from archive.lab.curves.leaf import leaf_of
+
+        return leaf_of(self._source, address)
+
+    def shown_csv(self, asked: Asked) -> Iterator[str]:
+        """Rows that a chart shows, all of them, as pieces of CSV."""
+        from archive.lab.curves.taking import csv_blocks
+
+        return csv_blocks(self._source, asked)
+
+    def shown_hdf5(self, asked: Asked, path: Path) -> None:
+        """Write the rows that a chart shows, all of them, as an HDF5 file that describes itself."""
+        from archive.lab.curves.taking import hdf5_file
+
+        hdf5_file(self._source, asked, path)
+
+    def plan_figure(self, address: str, *, kind: str = "svg") -> PlanFigure:
+        """Figure that the plan of a reduction has, as SVG or PDF, with its caption; or why there is none."""
+        return plan_figure(self._source, address, kind=kind)
 
     def trace(self, address: str, *, forward: bool = False) -> TraceNode:
         """Lineage of a result, array, sentence or figure down to raw files and lines; or forward, to all that rests on it."""

@@ -19,7 +19,15 @@ from schemas.lineage import SourceEntry, Value
 from schemas.quantity import Quantity, canonical, unit_factor
 from schemas.sweep import Channel
 
-__all__ = ["CONVERTED", "channel_estimate", "channel_meant", "rms_factor", "rms_value"]
+__all__ = [
+    "CONVERTED",
+    "channel_estimate",
+    "channel_meant",
+    "rms_factor",
+    "rms_value",
+    "stated_convention",
+    "stated_uncertainty",
+]
 
 CONVERTED = {"period": "frequency", "dissipation": "quality_factor"}
 """A kind that a plan asks for, and the kind whose inverse serves as well."""
@@ -147,11 +155,43 @@ def rms_factor(facts: SweepFacts, channel: Channel) -> float:
     """Return the factor that takes a channel's readings to rms values; 1 for a channel that does not oscillate."""
     if channel.quantity not in _OSCILLATING:
         return 1.0
+    return _RMS.get(stated_convention(facts, channel), 1.0)
+
+
+def stated_convention(facts: SweepFacts, channel: Channel) -> str | None:
+    """Return what a channel's readings are (``rms``, ``peak``, ``gauge``, ...) as the sheet says it; None if it does not."""
     detection = facts.accession.sheet.detection_of(facts.sweep)
-    stated = channel.convention
-    if stated is None and channel.quantity == "amplitude" and detection is not None:
-        stated = detection.amplitude_convention
-    return _RMS.get(stated, 1.0)
+    if channel.convention is None and channel.quantity == "amplitude" and detection is not None:
+        return detection.amplitude_convention
+    return channel.convention
+
+
+def stated_uncertainty(facts: SweepFacts, name: str, readings: FloatArray) -> FloatArray | None:
+    """Return the standard uncertainty that the sheet states of a channel's readings, in the unit they are stored in.
+
+    Parameters
+    ----------
+    facts : SweepFacts
+    name : str
+        A channel with a unit.
+    readings : ndarray
+        As stored.
+
+    Returns
+    -------
+    ndarray or None
+        None where none is stated.
+
+    Raises
+    ------
+    BadRequest
+        The uncertainty cannot be read.
+    """
+    channel = facts.channels[name]
+    if channel.uncertainty is None:
+        return None
+    factor = unit_factor(facts.stored(name).unit, channel.quantity) * rms_factor(facts, channel)
+    return _uncertainty(channel, readings * factor, factor, f"{facts.address}#{name}") / factor
 
 
 def rms_value(quantity: Quantity, unstated: str | None = None) -> float:

@@ -8,7 +8,7 @@ import numpy as np
 
 from archive.lab.views.column import Column
 
-__all__ = ["hours", "pair"]
+__all__ = ["abscissa_kinds", "hours", "pair"]
 
 # What a sweep of a kind is read against; by kind of quantity, the first that is there.
 _ABSCISSAE: dict[str, tuple[str, ...]] = {
@@ -37,6 +37,11 @@ _ORDINATES = (
 )
 
 
+def abscissa_kinds(kind: str) -> tuple[str, ...]:
+    """Kinds of quantity that a sweep of a kind is read against, in order of liking."""
+    return (*_ABSCISSAE.get(kind, ()), *_OTHERWISE)
+
+
 def pair(kind: str, columns: Mapping[str, Column], name: str | None = None) -> tuple[Column, Column] | None:
     """Abscissa and ordinate for a plot, or None if there are not two columns with numbers.
 
@@ -58,7 +63,7 @@ def pair(kind: str, columns: Mapping[str, Column], name: str | None = None) -> t
     full = [each for each in columns.values() if np.count_nonzero(np.isfinite(each.values)) > 1]
     asked = None if name is None else columns.get(name)
     others = [each for each in full if asked is None or (each is not asked and _beside(each, asked))]
-    abscissa = _first(others, _ABSCISSAE.get(kind, _OTHERWISE)) or _first(others, _OTHERWISE)
+    abscissa = _first(others, abscissa_kinds(kind))
     if abscissa is None:
         return None
     rest = [
