@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Mapping
 
 from archive.exchange.bag_reading import Bag, blocks_of
 from archive.exchange.closure import Holdings, address_of_key
@@ -12,7 +12,7 @@ from schemas.base import Record
 from schemas.finding import Finding
 from schemas.lineage import AccessionDocument, ReductionDocument
 
-__all__ = ["account", "document_faults", "record_faults", "unmet_needs"]
+__all__ = ["account", "document_faults", "fault", "unmet_needs"]
 
 
 def account(bag: Bag) -> PackageDocument | None:
@@ -86,7 +86,7 @@ def document_faults(key: str, document: Record, digests: Mapping[str, str]) -> l
     says = str(getattr(document, "address", ""))
     if says != address_of_key(key):
         found.append(
-            _error(
+            fault(
                 "package-document",
                 "the document says that it is another",
                 file,
@@ -97,7 +97,7 @@ def document_faults(key: str, document: Record, digests: Mapping[str, str]) -> l
     cooldown = getattr(document, "cooldown", None)
     if cooldown is not None and cooldown != key.partition("/")[0]:
         found.append(
-            _error("package-document", "the document is of another cooldown", file, found=str(cooldown))
+            fault("package-document", "the document is of another cooldown", file, found=str(cooldown))
         )
     promised: dict[str, str] = {}
     if isinstance(document, AccessionDocument):
@@ -112,7 +112,7 @@ def document_faults(key: str, document: Record, digests: Mapping[str, str]) -> l
     for path, digest in promised.items():
         if digests.get(path) != digest:
             found.append(
-                _error(
+                fault(
                     "package-document",
                     f"the document promises other content of {path}",
                     file,
@@ -123,7 +123,7 @@ def document_faults(key: str, document: Record, digests: Mapping[str, str]) -> l
     return found
 
 
-def _error(
+def fault(
     code: str,
     what: str,
     file: str,
@@ -133,6 +133,7 @@ def _error(
     found: str | None = None,
     remedy: str | None = None,
 ) -> Finding:
+    """Return a fault of a package as a finding."""
     return Finding(
         code=code,
         severity="error",
@@ -143,47 +144,6 @@ def _error(
         found=found,
         remedy=remedy,
     )
-
-
-def record_faults(documents: Mapping[str, Record], known: Callable[[str], str | None]) -> list[Finding]:
-    """Return records that mean one thing in the package and another in it, or in the archive, under one revision.
-
-    Parameters
-    ----------
-    documents : mapping of str to Record
-        Documents by key.
-    known : callable
-        Digest of a record of the archive by address; None if the archive has none.
-    """
-    found: list[Finding] = []
-    seen: dict[str, tuple[str, str]] = {}
-    for key, document in documents.items():
-        for address, digest in _records(document):
-            held = seen.setdefault(
-                address, (known(address) or digest, "the archive" if known(address) else address_of_key(key))
-            )
-            if held[0] != digest:
-                found.append(
-                    _error(
-                        "package-record",
-                        f"this revision has another content in {held[1]}",
-                        f"data/{sealed_path(key)}",
-                        place=address,
-                        expected=f"sha256 {held[0]}",
-                        found=f"sha256 {digest}",
-                        remedy="two laboratories, or two copies of one, have given one name to two things; they cannot be in one archive",
-                    )
-                )
-    return found
-
-
-def _records(document: Record) -> list[tuple[str, str]]:
-    if isinstance(document, AccessionDocument):
-        return [(each.address, each.digest) for each in document.records]
-    kind, digest = getattr(document, "kind", None), getattr(document, "digest", None)
-    if kind is not None and digest is not None and kind != "plan":
-        return [(str(getattr(document, "address", "")), str(digest))]
-    return []
 
 
 def unmet_needs(documents: Mapping[str, Record], holdings: Holdings) -> list[Finding]:
@@ -202,7 +162,7 @@ def unmet_needs(documents: Mapping[str, Record], holdings: Holdings) -> list[Fin
         if lacking:
             some = ", ".join(lacking[:8]) + (f" and {len(lacking) - 8} more" if len(lacking) > 8 else "")
             found.append(
-                _error(
+                fault(
                     "package-incomplete",
                     f"{address_of_key(key)} rests on what is neither here nor in the archive",
                     f"data/{sealed_path(key)}",

@@ -16,6 +16,7 @@ from typing import TYPE_CHECKING, Literal
 from archive.errors import ArchiveError, BadRequest, DamagedFile, UnknownAddress
 from archive.index import Document
 from archive.lab import reporting
+from archive.lab.reducing import plans
 from archive.lab.source import LabSource, document_of, key_of
 from archive.store.adopting import Adoption, adoption
 from archive.store.interface import SealedFile
@@ -328,7 +329,8 @@ def _adopted(
     """Everything wrong with the files in staging."""
     from archive.exchange.bag_reading import blocks_of
     from archive.exchange.closure import Holdings
-    from archive.exchange.unpacking import document_faults, record_faults, unmet_needs
+    from archive.exchange.meanings import content_faults, plan_faults, record_faults
+    from archive.exchange.unpacking import document_faults, unmet_needs
 
     findings: list[Finding] = []
     for done, each in enumerate(fresh):
@@ -361,7 +363,11 @@ def _adopted(
         findings += _misplaced(key, documents[key], paths[key])
     # Digests under which records were sealed here; not made anew, since a later version may know more fields.
     sealed = {row.address: row.digest for row in source.index.records()}
-    findings += record_faults(documents, sealed.get)
+    findings += content_faults(documents)
+    if not findings:
+        findings += record_faults(documents, sealed.get)
+        known = [*plans(source), *source.own_plans(withdrawn_too=True)]
+        findings += plan_faults(documents, {plan.address: plan for plan in known})
     if not findings:
         read = _reader(source)
         together = Holdings(

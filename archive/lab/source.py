@@ -175,9 +175,10 @@ class LabSource:
         document = self.document(known[address]) if address in known else None
         return document if isinstance(document, RevisionDocument) else None
 
-    def own_plans(self) -> list[Plan]:
+    def own_plans(self, *, withdrawn_too: bool = False) -> list[Plan]:
         """Plans that came in as revisions and are not withdrawn, by name and revision."""
-        rows = [row for row in self.index.revisions() if row.kind == "plan" and row.counts]
+        every = [row for row in self.index.revisions() if row.kind == "plan"]
+        rows = [row for row in every if row.counts or withdrawn_too]
         documents = [self.document(row.key) for row in rows]
         return [
             Plan.model_validate_json(json.dumps(each.content))

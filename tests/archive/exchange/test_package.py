@@ -14,7 +14,9 @@ import pytest
 from archive import Archive
 from archive.errors import ArchiveBusy, BadRequest, DamagedFile, NotAnArchive, UnknownAddress
 from archive.exchange.bag_reading import read_bag
+from archive.exchange.meanings import content_faults
 from archive.store import Damage, SealedFile, archive_lock, examine, open_store
+from tests.archive.exchange.conftest import PLAN
 from tests.archive.exchange.forging import account, contents, refused, resealed, rewrite, swap, without
 from tests.small_cooldown import write_folder
 
@@ -185,6 +187,34 @@ def test_a_record_that_means_something_else_here_is_refused(
     sheet.write_text(sheet.read_text().replace("7.5(1) mm", "7.6(1) mm"))
     there.ingest(folder)
     assert refused(there, package) == {"package-record"}
+
+
+def test_a_plan_that_is_another_one_here_is_refused(package: Path, other: Make, tmp_path: Path) -> None:
+    there = other()
+    mine = tmp_path / "drop.toml"
+    mine.write_text(PLAN.replace("Period drop of a film", "Another drop"), encoding="utf-8")
+    assert there.revise(mine, by="data steward").state == "sealed"
+    before = there._index.rows()
+    assert refused(there, package) == {"package-plan"}
+    (finding,) = there.import_package(package).findings
+    assert "plan drop.r1 is another one in the archive" in finding.what
+    assert finding.found == "they differ in title"
+    assert there._index.rows() == before
+    assert there.fixity() == []
+
+
+def test_records_and_plans_must_be_what_their_entries_say(lab: Archive) -> None:
+    document = lab._source.accession("2026-04.a1")
+    first = document.records[0]
+    for update, said in (
+        ({"content": {}}, "Field required"),
+        ({"address": "other.r1"}, f"the content is that of {first.address}"),
+        ({"digest": "0" * 64}, f"the content has sha256 {first.digest}"),
+    ):
+        spoilt = (first.model_copy(update=update), *document.records[1:])
+        (finding,) = content_faults({"2026-04/2026-04.a1": document.model_copy(update={"records": spoilt})})
+        assert said in (finding.found or ""), finding
+    assert content_faults({"2026-04/2026-04.a1": document}) == []
 
 
 def test_what_something_rests_on_must_be_there(copy: Path, lab: Archive, other: Make, tmp_path: Path) -> None:
