@@ -13,6 +13,7 @@ from pydantic import AwareDatetime, Field, JsonValue, StringConstraints, model_v
 
 from schemas.base import Name, Record, Reference, Text
 from schemas.cooldown import Records
+from schemas.finding import Finding
 from schemas.lineage import DoseEntry, RecordKind, Sha256, Software, SweepEntry
 from schemas.plan import Plan
 
@@ -83,6 +84,10 @@ class RevisionDocument(Record):
     made: AwareDatetime
     previous: str | None = Field(default=None, description="The newest revision before this one.")
     differences: tuple[Difference, ...] = ()
+    findings: dict[str, tuple[Finding, ...]] = Field(
+        default_factory=dict,
+        description="What the checks found with it and had not found before, by each cooldown that is read otherwise.",
+    )
     sheet_file: str
     software: Software
 
@@ -179,6 +184,10 @@ class AmendmentDocument(Record):
         default=(), description="These sweeps as they are found from now on."
     )
     doses: tuple[DoseEntry, ...] = Field(default=(), description="The gas ledger as it stands from now on.")
+    findings: tuple[Finding, ...] | None = Field(
+        default=None,
+        description="What the checks found with it and had not found before; none: they were not run again.",
+    )
     sheet_file: str
     software: Software
 

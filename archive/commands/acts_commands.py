@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from archive.commands import opening
+from archive.commands.findings import say_findings
 from archive.commands.machine import write_json
 from archive.commands.opening import archive_option, json_option, require_address
 from archive.commands.terminal import note, say, table
@@ -208,6 +209,7 @@ def _tell(outcome: ActOutcome, *, as_json: bool) -> None:
                 "sweeps": outcome.sweeps,
                 "stale": [_stale_content(each) for each in outcome.stale],
                 "findings": outcome.findings,
+                "raised": outcome.raised,
             }
         )
     else:
@@ -233,6 +235,11 @@ def _tell_people(outcome: ActOutcome) -> None:
         _stale_table(outcome.stale)
     else:
         say("No reduction becomes stale by it.")
+    for cooldown, found in outcome.raised.items():
+        say(
+            f"The checks of {cooldown}, run again, found {'what they had not found before:' if found else 'nothing new.'}"
+        )
+        say_findings(found)
     if outcome.state == "shown":
         say(f"This would be {outcome.address}; nothing was written.")
         return

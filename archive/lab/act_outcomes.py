@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Literal
 
 from archive.index.acts import ActDocument
@@ -33,6 +33,8 @@ class ActOutcome:
     stale : tuple of Stale
         Reductions that it makes stale.
     document : RevisionDocument or AmendmentDocument, optional
+    raised : dict of str to tuple of Finding
+        What the checks, run again, found that they had not found before, by cooldown.
     """
 
     state: Literal["sealed", "shown", "refused"]
@@ -43,6 +45,7 @@ class ActOutcome:
     sweeps: tuple[str, ...] = ()
     stale: tuple[Stale, ...] = ()
     document: ActDocument | None = None
+    raised: dict[str, tuple[Finding, ...]] = field(default_factory=dict)
 
 
 @dataclass(frozen=True)

@@ -8,8 +8,10 @@ from pathlib import Path
 
 from archive.errors import ArchiveError
 from archive.intake.act_sheets import read_amendment
+from archive.intake.thresholds import Thresholds
 from archive.lab.act_outcomes import ActOutcome
 from archive.lab.amendment_checks import AmendmentCheck
+from archive.lab.checking_again import new_findings
 from archive.lab.effective import EffectiveSource
 from archive.lab.source import LabSource
 from archive.lab.stale import newly_stale
@@ -27,7 +29,13 @@ Seal = Callable[[AmendmentDocument, str, bytes], None]
 
 
 def amend(
-    source: LabSource, path: Path, *, by: str | None, clock: Callable[[], datetime], seal: Seal | None
+    source: LabSource,
+    path: Path,
+    *,
+    by: str | None,
+    clock: Callable[[], datetime],
+    seal: Seal | None,
+    thresholds: Thresholds,
 ) -> ActOutcome:
     """Amendment that a sheet describes; see `Archive.amend`.
 
@@ -41,6 +49,8 @@ def amend(
     clock : callable
     seal : callable or None
         Seals the document with the sheet's name and bytes; None: only show what it would do.
+    thresholds : Thresholds
+        Limits of the checks, which are run again.
     """
     reading = read_amendment(path)
     sheet = reading.sheet
@@ -79,6 +89,9 @@ def amend(
             "nothing is read otherwise with this amendment", remedy="the sheet says all of it already"
         )
         return ActOutcome("refused", findings=(said,))
+    before, after = EffectiveSource(source), EffectiveSource(source, extra=document)
+    raised = new_findings(before, after, sheet.cooldown, thresholds)
+    document = document.model_copy(update={"findings": raised})
     resting = tuple(newly_stale(source, document))
     if seal is not None:
         seal(document, reading.file, reading.data)
@@ -89,6 +102,7 @@ def amend(
         sweeps=document.sweeps,
         stale=resting,
         document=document,
+        raised={sheet.cooldown: raised},
     )
 
 

@@ -425,13 +425,19 @@ class Archive:
         """Add the revision of a record or plan that a sheet describes, outside a cooldown; or show what it would do."""
         with nullcontext() if dry_run else self._writing():
             seal = None if dry_run else self._seal_act
-            return revise(self._source, Path(sheet), by=by, clock=self._clock, seal=seal)
+            return revise(
+                self._source, Path(sheet), by=by, clock=self._clock, seal=seal,
+                thresholds=self.settings.thresholds,
+            )  # fmt: skip
 
     def amend(self, sheet: Path | str, *, by: str | None = None, dry_run: bool = False) -> ActOutcome:
         """Add the amendment of a sealed cooldown that a sheet describes; or show what it would do."""
         with nullcontext() if dry_run else self._writing():
             seal = None if dry_run else self._seal_act
-            return amend(self._source, Path(sheet), by=by, clock=self._clock, seal=seal)
+            return amend(
+                self._source, Path(sheet), by=by, clock=self._clock, seal=seal,
+                thresholds=self.settings.thresholds,
+            )  # fmt: skip
 
     def withdraw(self, address: str, *, why: str, by: str | None = None) -> WithdrawOutcome:
         """Mark something as not to be used any more; it stays, and what rests on it is flagged."""

@@ -14,7 +14,7 @@ from archive.lab.source import LabSource
 from archive.reduction.amending import amended_accession
 from archive.reduction.estimate import Estimate
 from archive.reduction.record_kinds import record_kind
-from schemas.acts import AmendmentDocument
+from schemas.acts import AmendmentDocument, RevisionDocument
 from schemas.address import parse_address
 from schemas.lineage import AccessionDocument, AnyRecord, InputEntry, ReductionDocument, SweepEntry
 
@@ -32,8 +32,8 @@ class EffectiveSource:
         Whether records are taken in their newest revision; see `archive.lab.revisions`.
     recorded : ReductionDocument, optional
         A reduction whose own accession, amendments and revisions are to be read again, whatever came later.
-    extra : AmendmentDocument, optional
-        An amendment that does not count yet, to see what it would do.
+    extra : AmendmentDocument or RevisionDocument, optional
+        An act that does not count yet, to see what it would do; the record of a revision must be known to `lab`.
     passed_over : frozenset of str
         Addresses of amendments that are not to count, to see what that would do.
     withdrawn_too : bool
@@ -46,7 +46,7 @@ class EffectiveSource:
         *,
         newest: bool = False,
         recorded: ReductionDocument | None = None,
-        extra: AmendmentDocument | None = None,
+        extra: AmendmentDocument | RevisionDocument | None = None,
         passed_over: frozenset[str] = frozenset(),
         withdrawn_too: bool = False,
     ) -> None:
@@ -54,7 +54,7 @@ class EffectiveSource:
         self._withdrawn_too = withdrawn_too or recorded is not None
         self._passed_over = passed_over
         self._recorded = recorded
-        self._extra = extra
+        self._extra = extra if isinstance(extra, AmendmentDocument) else None
         pinned = None
         if recorded is not None:
             pinned = {
@@ -62,7 +62,8 @@ class EffectiveSource:
                 for entry in recorded.inputs
                 if entry.instead_of is not None
             }
-        self.revisions = Revisions(lab, newest=newest, pinned=pinned)
+        revision = extra if isinstance(extra, RevisionDocument) else None
+        self.revisions = Revisions(lab, newest=newest, pinned=pinned, extra=revision)
         self._read: dict[str, list[AccessionDocument]] = {}
 
     @property

@@ -45,6 +45,7 @@ def view(source: LabSource, archive_name: str, cooldown: str) -> CooldownView:
         values=source.values,
         check_titles={check.code: check.title for check in CHECKS},
         amendments=tuple(source.amendments(cooldown)),
+        revisions=tuple(each for each in source.own_revisions() if each.findings.get(cooldown)),
         withdrawn=withdrawn,
         resting=resting,
     )

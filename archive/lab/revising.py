@@ -10,8 +10,10 @@ from typing import Literal
 from archive.errors import ArchiveError
 from archive.intake.act_sheets import ActReading, read_revision
 from archive.intake.checks.calibrations import differing_fields
+from archive.intake.thresholds import Thresholds
 from archive.lab.act_outcomes import ActOutcome
 from archive.lab.calibrating import record_as_made
+from archive.lab.checking_again import findings_of_revision
 from archive.lab.journaling import acting_role
 from archive.lab.reducing import plans
 from archive.lab.source import LabSource
@@ -37,7 +39,13 @@ _NOT_COMPARED = ("name", "revision")
 
 
 def revise(
-    source: LabSource, path: Path, *, by: str | None, clock: Callable[[], datetime], seal: Seal | None
+    source: LabSource,
+    path: Path,
+    *,
+    by: str | None,
+    clock: Callable[[], datetime],
+    seal: Seal | None,
+    thresholds: Thresholds,
 ) -> ActOutcome:
     """Revision that a sheet describes; see `Archive.revise`.
 
@@ -51,6 +59,8 @@ def revise(
     clock : callable
     seal : callable or None
         Seals the document with the sheet's name and bytes; None: only show what it would do.
+    thresholds : Thresholds
+        Limits of the checks, which are run again on the cooldowns that are read otherwise.
     """
     reading = read_revision(path)
     if reading.sheet is None:
@@ -85,11 +95,14 @@ def revise(
         sheet_file=reading.file,
         software=software(),
     )
+    if not isinstance(check.thing, Plan):
+        raised = findings_of_revision(source, document, check.thing, thresholds)
+        document = document.model_copy(update={"findings": raised})
     resting = tuple(newly_stale(source, document))
     if seal is not None:
         seal(document, reading.file, reading.data)
     state = "shown" if seal is None else "sealed"
-    return ActOutcome(state, address, (), previous, found, (), resting, document)  # type: ignore[arg-type]
+    return ActOutcome(state, address, (), previous, found, (), resting, document, document.findings)  # type: ignore[arg-type]
 
 
 class _Check:

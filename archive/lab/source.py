@@ -169,6 +169,13 @@ class LabSource:
         self._records[found.address] = found
         return found
 
+    def with_record(self, record: AnyRecord) -> LabSource:
+        """The same archive, knowing a record that is not sealed yet by its address."""
+        found = LabSource(self.store, self.index)
+        found._documents = self._documents
+        found._records = {**self._records, record.address: record}
+        return found
+
     def revision(self, address: str) -> RevisionDocument | None:
         """Document of a revision that came in outside a cooldown; None if that is not how it came in."""
         known = {row.address: row.key for row in self.index.revisions(name=address.partition(".r")[0])}
@@ -185,6 +192,12 @@ class LabSource:
             for each in documents
             if isinstance(each, RevisionDocument)
         ]
+
+    def own_revisions(self) -> list[RevisionDocument]:
+        """Revisions of records that came in outside a cooldown and are not withdrawn."""
+        rows = [row for row in self.index.revisions() if row.kind != "plan" and row.counts]
+        documents = [self.document(row.key) for row in rows]
+        return [each for each in documents if isinstance(each, RevisionDocument)]
 
     def amendments(self, cooldown: str, *, withdrawn_too: bool = False) -> list[AmendmentDocument]:
         """Amendments of a cooldown that count, by number."""

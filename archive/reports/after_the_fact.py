@@ -6,16 +6,17 @@ withdrawn is said wherever it is told of.
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from typing import Any
 
 from archive.reports.checklist import Said, sentence
 from archive.reports.holdings import Holdings
 from archive.reports.moments import full_time
-from archive.reports.prose import prose
+from archive.reports.prose import Prose, prose
 from archive.reports.scope import Scope
 from archive.reports.view import CooldownView
 from schemas.acts import AmendmentDocument, Difference
+from schemas.finding import Finding
 from schemas.lineage import ReductionDocument
 
 __all__ = [
@@ -50,9 +51,13 @@ def after_the_fact(held: Holdings) -> dict[str, Any]:
             {
                 "address": each.address, "by": each.by, "at": full_time(each.made, zone), "because": f"{each.because.rstrip('.')}.",
                 "sweeps": ", ".join(sweep.partition("/")[2] for sweep in each.sweeps),
-                "lines": [_line(said) for said in each.differences],
+                "lines": [_line(said) for said in each.differences], "checks": _checks(each.findings), "findings": _raised(each.findings),
             }
             for each in held.view.amendments
+        ],
+        "revisions": [
+            {"address": each.address, "by": each.by, "at": full_time(each.made, zone), "findings": _raised(each.findings[held.sheet.name])}
+            for each in held.view.revisions
         ],
         "records": list(_records(held.view)),
         "withdrawn": [{"address": address, "why": why} for address, why in _withdrawn(held.view)],
@@ -60,6 +65,18 @@ def after_the_fact(held: Holdings) -> dict[str, Any]:
             {"address": ", ".join(addresses), "on": on} for on, addresses in _resting(held.view).items()
         ],
     }  # fmt: skip
+
+
+def _checks(findings: Sequence[Finding] | None) -> str:
+    if findings is None:
+        return "the checks were not run again"
+    if not findings:
+        return "the checks, run again, found nothing new"
+    return f"the checks, run again, found {len(findings)} thing{'s' * (len(findings) > 1)} that they had not found before"
+
+
+def _raised(findings: Sequence[Finding] | None) -> list[Prose]:
+    return [prose(f"{each.severity}: {each.sentence()}") for each in findings or ()]
 
 
 def _line(said: Difference) -> dict[str, Any]:
@@ -126,6 +143,7 @@ def warnings_of_acts(view: CooldownView) -> list[str]:
         current = [each.partition("/")[2] for each in addresses if each in now]
         if current:
             said.append(f"on {on}, WITHDRAWN, rest results that count: {', '.join(current)}")
+    said += [f"with {each.address} {_checks(each.findings[cooldown])}" for each in view.revisions]
     return said + [_amendment_words(each) for each in view.amendments]
 
 
@@ -149,7 +167,13 @@ def _resting(view: CooldownView) -> dict[str, list[str]]:
 def _amendment_words(each: AmendmentDocument) -> str:
     return (
         f"{each.address} amends what was sealed ({each.because.rstrip('.')}); values marked {AMENDED} are amended, "
-        "and the checks were not run again"
+        f"and {_checks(each.findings)}"
+    )
+
+
+def _raised_sentence(cooldown: str, act: str, found: Finding) -> Said:
+    return sentence(
+        f"With {act} the checks of {cooldown} found ({found.severity}): {found.sentence().rstrip('.')}.", act
     )
 
 
@@ -167,6 +191,9 @@ def act_sentences(scope: Scope) -> Iterator[Said]:
                 f"{each.because.rstrip('.')}. {lines}.",
                 each.address,
             )
+            yield from (_raised_sentence(name, each.address, one) for one in each.findings or ())
+        for revision in view.revisions:
+            yield from (_raised_sentence(name, revision.address, one) for one in revision.findings[name])
         for said in _records(view):
             yield sentence(
                 f"In {name}, {said['now']} was taken in the place of {said['was']}: {said['because'].rstrip('.')}.",

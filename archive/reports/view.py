@@ -8,7 +8,7 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import NDArray
 
-from schemas.acts import AmendmentDocument
+from schemas.acts import AmendmentDocument, RevisionDocument
 from schemas.lineage import AccessionDocument, ReductionDocument
 
 __all__ = ["CooldownView"]
@@ -35,6 +35,8 @@ class CooldownView:
         Code of a check: what it tests, in one line.
     amendments : tuple of AmendmentDocument
         Those that count.
+    revisions : tuple of RevisionDocument
+        Of records: those with which the checks of the cooldown found something new.
     withdrawn : mapping
         Why each withdrawn thing of the cooldown, and each withdrawn record it uses, is withdrawn, by address.
     resting : mapping
@@ -48,6 +50,7 @@ class CooldownView:
     values: Callable[[str, str], NDArray[np.float64]]
     check_titles: Mapping[str, str]
     amendments: tuple[AmendmentDocument, ...] = ()
+    revisions: tuple[RevisionDocument, ...] = ()
     withdrawn: Mapping[str, str] = field(default_factory=dict)
     resting: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
 

@@ -455,6 +455,37 @@ def test_a_withdrawn_cooldown_accession_or_plan_is_passed_over(lab: Archive, tmp
     assert_derivable(lab)
 
 
+def test_the_checks_run_again_and_what_is_new_is_told_and_kept(lab: Archive, sheet) -> None:
+    path = sheet(amendment('[[change]]\naddress = "2026-03/s002"\nfield = "after_dose"\nvalue = "d01"'))
+    assert [each.code for each in lab.amend(path, dry_run=True).raised["2026-03"]] == ["dose-order"]
+    (found,) = lab.amend(path).raised["2026-03"]
+    assert "d02 was given before it began" in found.what
+    # T = 0.20, 0.21, ... K in both sweeps, so ten rows of each lie below 0.3 K.
+    raised = lab.revise(sheet(revision(calibration(2, low="300 mK")))).raised["2026-03"]
+    outside = [each for each in raised if each.code == "temperature-outside-calibration"]
+    assert [(each.place, each.what.split()[0]) for each in outside] == [("s001", "10"), ("s002", "10")]
+    assert "dose-order" not in {each.code for each in raised}
+    assert lab.amend(sheet(amendment(DOSE))).raised == {"2026-03": ()}
+    sealed = [lab._source.document(key) for key in ("2026-03/2026-03.m1", "lab.records/RX-cal.r2")]
+    assert sealed[0].findings == (found,)
+    assert sealed[1].findings == {"2026-03": raised}
+    files = lab.run_sheet("2026-03")
+    page = files["run-sheet-2026-03.html"].decode()
+    for said in (
+        "found 1 thing that they had not found before",
+        "d02 was given before it began",
+        "the checks, run again, found nothing new",
+        "10 reading(s) of s001 lie outside calibration RX-cal.r2",
+    ):
+        assert said in page, said
+    assert files["run-sheet-2026-03.pdf"].startswith(b"%PDF")
+    view = reporting.view(lab._source, lab.name, "2026-03")
+    told = [each.text for each in act_sentences(Scope([view], [f"{FILLING}.1"]))]
+    assert any("With 2026-03.m1 the checks of 2026-03 found (warning):" in each for each in told)
+    lab.withdraw("RX-cal.r2", why="the range was stated wrongly", by="data steward")
+    assert "outside calibration RX-cal.r2" not in run_sheet_html(reporting.view(lab._source, "", "2026-03"))
+
+
 GATHERING = """
 name = "gathering"
 revision = 1
