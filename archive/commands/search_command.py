@@ -12,11 +12,11 @@ from archive.commands import opening
 from archive.commands.failures import told
 from archive.commands.layers import LAYER_WORDS, NO_SUBSTRATE, layer_of
 from archive.commands.opening import archive_option, json_option
-from archive.commands.ranges import Bounds, joined_units, named_range, point_in_time, si_bounds
 from archive.commands.sweep_lists import say_sweeps, write_sweeps_csv, write_sweeps_json
 from archive.commands.terminal import note, say
 from archive.commands.terminal_plot import say_plot
 from archive.errors import BadRequest
+from schemas.ranges import Bounds, joined_units, named_range, point_in_time, si_bounds
 
 if TYPE_CHECKING:
     from archive.index import ResultCondition, SearchQuery

@@ -25,7 +25,7 @@ _INSTRUMENTED = (
     "schemas.toml_text", "schemas.address", "schemas.quantity_text", "schemas.quantity_value", "schemas.uncertain_text", "schemas.interval_text",
     "schemas.cooldown", "schemas.sweep", "schemas.gas", "schemas.plan", "schemas.acts", "schemas.visible_text", "archive.intake.sheet",
     "archive.intake.act_sheets", "archive.intake.settings", "archive.intake.tables", "archive.intake.sources", "archive.intake.draft",
-    "archive.intake.folder", "archive.intake.reading", "archive.intake.hdf5_source", "archive.intake.numpy_source", "archive.intake.guess", "archive.commands.ranges", "archive.reduction.planning", "archive.exchange.bag_reading",
+    "archive.intake.folder", "archive.intake.reading", "archive.intake.hdf5_source", "archive.intake.numpy_source", "archive.intake.guess", "schemas.ranges", "archive.reduction.planning", "archive.exchange.bag_reading",
     "archive.exchange.bag_names", "archive.exchange.unpacking", "archive.reports.prose", "archive.reports.tex",
 )  # fmt: skip
 _SLOWEST_S, _MEMORY_MB, _LONGEST = 60, 4096, 20_000

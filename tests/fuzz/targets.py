@@ -13,7 +13,6 @@ from pathlib import Path
 
 import numpy as np
 
-from archive.commands.ranges import named_range, point_in_time, si_bounds
 from archive.errors import ArchiveError
 from archive.exchange.bag_reading import read_bag
 from archive.exchange.unpacking import account
@@ -30,6 +29,7 @@ from archive.reports.tex import tex
 from schemas.address import parse_address
 from schemas.kinds import KINDS
 from schemas.quantity import Quantity
+from schemas.ranges import named_range, point_in_time, si_bounds
 from schemas.sweep import Dialect
 
 __all__ = [

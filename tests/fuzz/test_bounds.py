@@ -15,7 +15,6 @@ import h5py
 import numpy as np
 import pytest
 
-from archive.commands.ranges import named_range, si_bounds
 from archive.errors import ArchiveError
 from archive.intake.dialect import Block, ColumnRequest
 from archive.intake.draft import draft_text
@@ -25,6 +24,7 @@ from archive.intake.sources import read_array_source
 from archive.intake.tables import TableReader
 from archive.reduction.planning import load_plan
 from archive.reports.prose import prose
+from schemas.ranges import named_range, si_bounds
 from schemas.sweep import Dialect
 from schemas.toml_text import TomlFault, tables_of
 

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import pytest
 
-from archive.commands.ranges import joined_units, named_range, point_in_time, si_bounds
+from schemas.ranges import joined_units, named_range, point_in_time, si_bounds
 
 OPTIONS = frozenset({"--coverage", "--result"})
 

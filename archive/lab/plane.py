@@ -1,0 +1,269 @@
+"""The plane of an archive: its sweeps as bars over temperature, with the transitions that were found in them."""
+
+from __future__ import annotations
+
+from collections import Counter, defaultdict
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import replace
+from typing import Literal, NamedTuple
+
+from archive.index import Index, PlaneResult, PlaneSweep, SearchQuery
+from archive.lab.plane_lines import NO_CELL, cell_name, universal_lines
+from archive.lab.plane_window import (
+    MOST_BARS,
+    first_window,
+    inside,
+    strips_of,
+    thinned_points,
+    whole_of,
+)
+from archive.lab.source import LabSource
+from archive.lab.stale import stale
+from archive.reports.plane_layout import logarithmic
+from archive.reports.plane_view import Bar, Line, PlaneAxis, PlaneView, Point, Window
+from archive.reports.plane_words import result_words
+from schemas.quantity import unit_factor
+
+__all__ = ["TRANSITIONS", "PlaneState", "plane"]
+
+PlaneState = Literal["any", "reduced", "not reduced", "stale", "withdrawn"]
+"""Which sweeps by their state; withdrawn ones are there only if they are asked for."""
+
+TRANSITIONS = ("T_KT", "T_KT_by_fit", "T_KT_by_peak", "T_c", "T_lambda")
+"""Results that are temperatures of a transition; the foremost of a reduction's headline is its point."""
+
+_AT_COVERAGE = "transition_coverage"
+"""Result that is the coverage of a transition, at the temperature of its sweep."""
+
+# Headline results stand first.
+_FEW = 3
+
+
+class _Place(NamedTuple):
+    bottom: float
+    top: float
+    uncertainty: float | None
+
+
+def plane(
+    source: LabSource,
+    query: SearchQuery,
+    *,
+    axis: PlaneAxis = "coverage",
+    state: PlaneState = "any",
+    window: Window | None = None,
+    most: int = MOST_BARS,
+) -> PlaneView:
+    """Return a window of the plane.
+
+    Parameters
+    ----------
+    source : LabSource
+    query : SearchQuery
+        Which sweeps; its order and limits do not count.
+    axis : {"coverage", "pressure", "cell"}
+        What stands against temperature.
+    state : {"any", "reduced", "not reduced", "stale", "withdrawn"}
+    window : Window, optional
+        Else all sweeps but for a few that lie far from all others.
+    most : int
+        Bars, and points, that are shown one by one.
+    """
+    index, log = source.index, logarithmic(axis)
+    wanted = replace(query, withdrawn=True) if state == "withdrawn" else query
+    rows, stale_ones = _of_state(source, index.plane_sweeps(wanted), state)
+    looks = _looks(index)
+    bars, unplaced = _bars(rows, _places(index, rows, axis), looks, stale_ones, log=log)
+    # Runs of empty cells, bulk ones too, are no reason to show more than the films.
+    filled = [bar for bar in bars if bar.top > 0] or bars
+    seen = window or first_window(filled, log=log)
+    shown = [bar for bar in bars if inside(bar, seen)]
+    points = _points(index, bars, rows, axis, seen)
+    kept = thinned_points(points, seen, most=most, log=log)
+    merged = len(shown) > most
+    strips = strips_of(shown, seen, most=most, log=log) if merged else ()
+    lines, in_pores = _lines(index, rows, bars, looks) if axis == "coverage" else ((), ())
+    names = {cell_name(row.cell) for row in rows}
+    return PlaneView(
+        axis=axis,
+        cells=tuple((name, looks[name]) for name in looks if name in names),
+        window=seen,
+        whole=whole_of(bars, log=log),
+        bars=() if merged else _with_results(index, shown),
+        points=kept,
+        strips=strips,
+        lines=lines,
+        sweeps=len(rows),
+        outside=len(bars) - len(shown),
+        unplaced=tuple(sorted(unplaced.items())),
+        merged=len(shown) if merged else 0,
+        thinned=len(points) - len(kept),
+        in_pores=in_pores,
+        lanes=tuple((name, looks[name]) for name in sorted(names, reverse=True)) if axis == "cell" else (),
+    )
+
+
+def _of_state(
+    source: LabSource, rows: Sequence[PlaneSweep], state: PlaneState
+) -> tuple[list[PlaneSweep], frozenset[str]]:
+    if state == "stale":
+        found = frozenset(each.sweep for each in stale(source))
+        return [row for row in rows if row.address in found], found
+    if state == "withdrawn":
+        return [row for row in rows if row.withdrawn], frozenset()
+    if state == "any":
+        return list(rows), frozenset()
+    return [row for row in rows if row.reduced == (state == "reduced")], frozenset()
+
+
+def _looks(index: Index) -> dict[str, int]:
+    """Look of every cell of the archive in the order of first use: no filter changes it, nor do later cooldowns."""
+    first: dict[str, str] = {}
+    for use in index.cells_and_substrates():
+        since = "~" if use.since is None else use.since.isoformat()
+        name = cell_name(use.cell)
+        first[name] = min(since, first.get(name, since))
+    names = sorted(set(first) - {NO_CELL}, key=lambda name: (first[name], name))
+    return {name: look for look, name in enumerate([*names, NO_CELL])}
+
+
+def _places(index: Index, rows: Sequence[PlaneSweep], axis: PlaneAxis) -> dict[str, _Place]:
+    """Where each sweep stands on the axis, by its address."""
+    if axis == "coverage":
+        places = {
+            span.sweep: _Place(span.low, span.high, None)
+            for span in index.dosed_spans()
+            if span.low is not None
+        }
+        known = ((row.address, row.coverage, row.coverage_uncertainty) for row in rows)
+        return places | {address: _Place(value, value, u) for address, value, u in known if value is not None}
+    if axis == "pressure":
+        return _pressures(index)
+    return _lanes(rows)
+
+
+def _pressures(index: Index) -> dict[str, _Place]:
+    """Pressure found by a reduction, else what the sweep's channels reach over."""
+    places: dict[str, _Place] = {}
+    for span in index.spans("pressure"):
+        if span.sweep not in places:
+            factor = unit_factor(span.unit, "pressure")
+            places[span.sweep] = _Place(span.low * factor, span.high * factor, None)
+    for result in index.plane_results(("pressure",), headline=False):
+        places[result.sweep] = _Place(result.value, result.value, result.uncertainty)
+    return {address: place for address, place in places.items() if place.bottom > 0}
+
+
+def _lanes(rows: Sequence[PlaneSweep]) -> dict[str, _Place]:
+    """A lane of height one for each cell, from the top in the order of names; within it sweeps from below by time."""
+    lanes: dict[str, list[PlaneSweep]] = defaultdict(list)
+    for row in rows:
+        lanes[cell_name(row.cell)].append(row)
+    places = {}
+    for lane, name in enumerate(sorted(lanes, reverse=True)):
+        ordered = sorted(lanes[name], key=lambda row: (row.begin is None, row.begin, row.address))
+        for place, row in enumerate(ordered, start=1):
+            height = lane + place / (len(ordered) + 1)
+            places[row.address] = _Place(height, height, None)
+    return places
+
+
+def _bars(
+    rows: Sequence[PlaneSweep],
+    places: Mapping[str, _Place],
+    looks: Mapping[str, int],
+    stale_ones: frozenset[str],
+    *,
+    log: tuple[bool, bool],
+) -> tuple[list[Bar], Counter[str]]:
+    bars, unplaced = [], Counter[str]()
+    for row in rows:
+        ends = [end for end in (row.temperature_low, row.temperature_high) if end is not None]
+        place = places.get(row.address)
+        if place is None or not ends or (log[0] and min(ends) <= 0):
+            unplaced["a temperature" if place is not None else "a place on this axis"] += 1
+            continue
+        name = cell_name(row.cell)
+        bars.append(
+            Bar(
+                address=row.address,
+                kind=row.kind,
+                cell=name,
+                look=looks[name],
+                begin=row.begin,
+                cold=min(ends),
+                warm=max(ends),
+                bottom=place.bottom,
+                top=place.top,
+                uncertainty=place.uncertainty,
+                marks=tuple(_marks(row, stale_ones)),
+            )
+        )
+    return bars, unplaced
+
+
+def _marks(row: PlaneSweep, stale_ones: frozenset[str]) -> Iterable[str]:
+    if row.withdrawn:
+        yield "withdrawn"
+    if row.empty_cell:
+        yield "empty cell"
+    if row.address in stale_ones:
+        yield "stale"
+    elif not row.reduced:
+        yield "not reduced"
+
+
+def _lines(
+    index: Index, rows: Sequence[PlaneSweep], bars: Sequence[Bar], looks: Mapping[str, int]
+) -> tuple[tuple[Line, ...], tuple[str, ...]]:
+    filled = {bar.address for bar in bars if bar.top > 0}
+    films = {cell_name(row.cell): row.substrate for row in rows if row.address in filled}
+    return universal_lines(index, films, looks)
+
+
+def _with_results(index: Index, bars: Sequence[Bar]) -> tuple[Bar, ...]:
+    found = index.sweep_results([bar.address for bar in bars])
+    return tuple(
+        replace(bar, results=tuple(map(result_words, found.get(bar.address, ())[:_FEW]))) for bar in bars
+    )
+
+
+def _points(
+    index: Index, bars: Sequence[Bar], rows: Sequence[PlaneSweep], axis: PlaneAxis, seen: Window
+) -> list[Point]:
+    by_sweep = {bar.address: bar for bar in bars}
+    found: list[Point] = []
+    reductions: set[str] = set()
+    for result in index.plane_results(TRANSITIONS, low=seen.cold, high=seen.warm):
+        bar = by_sweep.get(result.sweep)
+        if bar is None or result.reduction in reductions or result.quantity != "temperature":
+            continue
+        reductions.add(result.reduction)
+        height = (bar.bottom + bar.top) / 2
+        point = _point(result, bar, (result.value, result.uncertainty), (height, bar.uncertainty))
+        found.append(point)
+    if axis == "coverage":
+        for result in index.plane_results((_AT_COVERAGE,)):
+            bar = by_sweep.get(result.sweep)
+            if bar is not None:
+                at = ((bar.cold + bar.warm) / 2, (bar.warm - bar.cold) / 2 or None)
+                found.append(_point(result, bar, at, (result.value, result.uncertainty)))
+    return [
+        point
+        for point in found
+        if seen.cold <= point.temperature <= seen.warm and seen.bottom <= point.height <= seen.top
+    ]
+
+
+def _point(
+    result: PlaneResult, bar: Bar, temperature: tuple[float, float | None], height: tuple[float, float | None]
+) -> Point:
+    return Point(
+        f"{result.reduction}#{result.name}",
+        bar.address,
+        result.name,
+        bar.cell,
+        bar.look,
+        *temperature,
+        *height,
+    )
