@@ -16,10 +16,12 @@ from archive.index.answers import (
     SweepRow,
 )
 from archive.index.index import Document, Entry, Index
+from archive.index.plane_answers import CellUse, PlaneResult, PlaneSweep, Span
 
 __all__ = [
     "AccessionRow",
     "AmendmentRow",
+    "CellUse",
     "CooldownRow",
     "Document",
     "DoseRow",
@@ -27,6 +29,8 @@ __all__ = [
     "FindingRow",
     "Index",
     "InputRow",
+    "PlaneResult",
+    "PlaneSweep",
     "RawFileRow",
     "RecordRow",
     "ReductionRow",
@@ -34,6 +38,7 @@ __all__ = [
     "ResultRow",
     "RevisionRow",
     "SearchQuery",
+    "Span",
     "SweepResult",
     "SweepRow",
     "WithdrawalRow",

@@ -10,7 +10,7 @@ Rules
 from __future__ import annotations
 
 import sqlite3
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable, Iterator, Sequence
 from contextlib import closing, contextmanager, suppress
 from itertools import zip_longest
 from pathlib import Path
@@ -34,6 +34,7 @@ from archive.index.answers import (
     ReductionRow,
     ResultRow,
     SearchQuery,
+    SweepResult,
     SweepRow,
 )
 from archive.index.engine import (
@@ -47,9 +48,17 @@ from archive.index.engine import (
     writing,
 )
 from archive.index.flags import flagged
+from archive.index.plane_answers import CellUse, PlaneResult, PlaneSweep, Span
+from archive.index.plane_queries import (
+    cells_and_substrates,
+    dosed_spans,
+    plane_results,
+    plane_spans,
+    plane_sweeps,
+)
 from archive.index.record import add_accession, add_reduction, clear
 from archive.index.revision import make, raise_to_head
-from archive.index.sweep_rows import sweep_rows
+from archive.index.sweep_rows import results_of, sweep_rows
 from archive.index.tables import Base
 from schemas.lineage import AccessionDocument, ReductionDocument
 
@@ -320,6 +329,51 @@ class Index:
                     "a search cannot count so", field=field, found=str(number), expected=f"0 to {_LARGEST}"
                 )
         return self._sweeps(queries.search(query, amended=self._is_amended()))
+
+    def plane_sweeps(self, query: SearchQuery) -> list[PlaneSweep]:
+        """All sweeps that satisfy a search, by coverage and address, in slim rows; its order and limit do not count."""
+        amended, anything = self._is_amended(), bool(self.withdrawals())
+        asked = plane_sweeps(query, amended=amended, anything_withdrawn=anything)
+        with reading(self._engine, self._url) as connection:
+            if anything:
+                return [
+                    PlaneSweep._make((*row[:-2], bool(row[-2]), bool(row[-1])))
+                    for row in connection.execute(asked)
+                ]
+            return [PlaneSweep._make((*row[:-1], bool(row[-1]), False)) for row in connection.execute(asked)]
+
+    def plane_results(
+        self,
+        names: Sequence[str],
+        *,
+        low: float | None = None,
+        high: float | None = None,
+        headline: bool = True,
+    ) -> list[PlaneResult]:
+        """Results of some names between two values, of current reductions, in SI, by sweep and reduction."""
+        with reading(self._engine, self._url) as connection:
+            asked = plane_results(names, low=low, high=high, headline=headline)
+            return [PlaneResult(*row) for row in connection.execute(asked)]
+
+    def sweep_results(self, addresses: Sequence[str]) -> dict[str, list[SweepResult]]:
+        """Results of the newest reductions of some sweeps, headline ones first, by sweep."""
+        with reading(self._engine, self._url) as connection:
+            return results_of(connection, addresses)
+
+    def spans(self, quantity: str) -> list[Span]:
+        """Range of each channel in use of one quantity kind, by sweep; the newest version of each sweep."""
+        with reading(self._engine, self._url) as connection:
+            return [Span(*row) for row in connection.execute(plane_spans(quantity))]
+
+    def cells_and_substrates(self) -> list[CellUse]:
+        """Every pair of cell and substrate that a sweep names, by name, and when the first such sweep began."""
+        with reading(self._engine, self._url) as connection:
+            return [CellUse(*row) for row in connection.execute(cells_and_substrates())]
+
+    def dosed_spans(self) -> list[Span]:
+        """Range of coverage over the doses taken during each sweep that states no coverage itself, by sweep."""
+        with reading(self._engine, self._url) as connection:
+            return [Span(*row) for row in connection.execute(dosed_spans())]
 
     def sweeps(self, cooldown: str, *, withdrawn: bool = False) -> list[SweepRow]:
         """Sweeps of a cooldown by name, each as the newest accession that has it holds it; withdrawn ones if asked for."""

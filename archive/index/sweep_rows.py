@@ -12,7 +12,7 @@ from archive.index.act_answers import WithdrawalRow
 from archive.index.answers import SweepResult, SweepRow
 from archive.index.flags import flagged_now
 
-__all__ = ["sweep_rows"]
+__all__ = ["results_of", "sweep_rows"]
 
 # Below every engine's bound on values in one statement (SQLite before 3.32: 999).
 _AT_ONCE = 500
@@ -32,7 +32,7 @@ def sweep_rows(connection: Connection, query: queries.Query) -> list[SweepRow]:
     addresses = [row["address"] for row in found]
     thermometers: dict[tuple[str, str], list[str]] = defaultdict(list)
     channels: dict[tuple[str, str], list[str]] = defaultdict(list)
-    results: dict[str, list[SweepResult]] = defaultdict(list)
+    results = results_of(connection, addresses)
     amended: dict[str, list[str]] = defaultdict(list)
     withdrawn = _withdrawn(connection)
     flagged = flagged_now(connection) if withdrawn else {}
@@ -41,8 +41,6 @@ def sweep_rows(connection: Connection, query: queries.Query) -> list[SweepRow]:
             thermometers[accession, address].append(thermometer)
         for accession, address, channel in connection.execute(queries.channel_names(some)):
             channels[accession, address].append(channel)
-        for address, *result in connection.execute(queries.sweep_results(some)):
-            results[address].append(SweepResult(*result))
         for address, amendment in connection.execute(act_queries.amendments_of_sweeps(some)):
             amended[address].append(amendment)
     return [
@@ -50,7 +48,7 @@ def sweep_rows(connection: Connection, query: queries.Query) -> list[SweepRow]:
             **{str(name): value for name, value in row.items()},
             thermometers=tuple(thermometers[row["accession"], row["address"]]),
             channels=tuple(channels[row["accession"], row["address"]]),
-            results=tuple(results[row["address"]]),
+            results=tuple(results.get(row["address"], ())),
             amended=tuple(amended[row["address"]]),
             flagged=tuple(flagged.get(row["address"], ())),
             withdrawn=next(
@@ -64,6 +62,22 @@ def sweep_rows(connection: Connection, query: queries.Query) -> list[SweepRow]:
         )
         for row in found
     ]
+
+
+def results_of(connection: Connection, addresses: Sequence[str]) -> dict[str, list[SweepResult]]:
+    """Results of the newest reductions of some sweeps, headline ones first, by sweep.
+
+    Parameters
+    ----------
+    connection : Connection
+        In a reading transaction.
+    addresses : sequence of str
+    """
+    results: dict[str, list[SweepResult]] = defaultdict(list)
+    for some in _pieces(addresses):
+        for address, *result in connection.execute(queries.sweep_results(some)):
+            results[address].append(SweepResult(*result))
+    return dict(results)
 
 
 def _withdrawn(connection: Connection) -> dict[str, str]:

@@ -20,6 +20,7 @@ from numpy.typing import NDArray
 from archive.errors import ArchiveBusy, ArchiveError, BadRequest, UnknownAddress
 from archive.index import (
     AccessionRow,
+    CellUse,
     CooldownRow,
     Index,
     RecordRow,
@@ -75,6 +76,8 @@ from schemas.thermometer import Calibration
 if TYPE_CHECKING:
     from archive.lab.curves.chart import Asked, Chart
     from archive.lab.curves.leaf import Leaf
+    from archive.lab.plane import PlaneState
+    from archive.reports.plane_view import PlaneAxis, PlaneView, Window
 
 __all__ = ["Archive"]
 
@@ -484,6 +487,40 @@ class Archive:
     def search(self, query: SearchQuery) -> RowList[SweepRow]:
         """Sweeps that a query finds."""
         return RowList(self._index.search(query))
+
+    def plane(
+        self,
+        query: SearchQuery | None = None,
+        *,
+        axis: PlaneAxis = "coverage",
+        state: PlaneState = "any",
+        window: Window | None = None,
+    ) -> PlaneView:
+        """Sweeps as bars over temperature, transitions as points, the universal jump as lines; see `archive.lab.plane.plane`.
+
+        Parameters
+        ----------
+        query : SearchQuery, optional
+            Which sweeps; else all that are not withdrawn.
+        axis : {"coverage", "pressure", "cell"}
+            What stands against temperature.
+        state : {"any", "reduced", "not reduced", "stale", "withdrawn"}
+        window : Window, optional
+            Part of the plane, in SI; else all sweeps but for a few that lie far from all others.
+        """
+        from archive.lab.plane import plane
+
+        return plane(self._source, query or SearchQuery(), axis=axis, state=state, window=window)
+
+    def plane_figure(self, view: PlaneView, *, kind: str = "pdf") -> bytes:
+        """Figure of the plane for a talk, as PDF or SVG."""
+        from archive.reports.plane_figure import plane_figure
+
+        return plane_figure(view, kind=kind)
+
+    def cells_and_substrates(self) -> list[CellUse]:
+        """Every pair of cell and substrate that a sweep names, and since when."""
+        return self._index.cells_and_substrates()
 
     def cooldowns(self) -> RowList[CooldownRow]:
         """All cooldowns."""
