@@ -8,6 +8,8 @@ from __future__ import annotations
 
 import tempfile
 import traceback
+from collections.abc import Iterator
+from contextlib import contextmanager
 from dataclasses import dataclass
 from datetime import UTC, datetime
 
@@ -25,6 +27,7 @@ __all__ = [
     "StepFailed",
     "UnknownAddress",
     "kept_traceback",
+    "told",
 ]
 
 EXIT_BAD_INPUT = 2
@@ -156,3 +159,33 @@ def kept_traceback(error: BaseException) -> str:
             return stream.name
     except OSError:
         return f"no file, since none could be written: {type(error).__name__}: {error}"
+
+
+@contextmanager
+def told(option: str | None = None) -> Iterator[None]:
+    """Turn a ValueError about what a person asked for into a refusal that names where it was asked.
+
+    Parameters
+    ----------
+    option : str, optional
+        Option, argument or field that holds the text.
+
+    Raises
+    ------
+    BadRequest
+        With the sentence of the ValueError; of several faults the first.
+    """
+    try:
+        yield
+    except ValueError as error:
+        raise BadRequest(_sentence(error), field=option) from None
+
+
+def _sentence(error: ValueError) -> str:
+    faults = getattr(error, "errors", None)
+    if faults is None:
+        return str(error)
+    first = faults(include_url=False)[0]
+    place = ".".join(str(part) for part in first["loc"])
+    text = str(first.get("ctx", {}).get("error", first["msg"]))
+    return f"{place}: {text}" if place else text

@@ -6,7 +6,7 @@ import re
 from collections.abc import Callable
 from datetime import UTC, datetime, time, timedelta
 
-__all__ = ["Bounds", "joined_units", "named_range", "point_in_time", "si_bounds"]
+__all__ = ["Bounds", "named_range", "point_in_time", "si_bounds"]
 
 Bounds = tuple[float | None, float | None]
 
@@ -14,7 +14,6 @@ _END = re.compile(
     # Possessive, and matched without blanks around: a long text that is no range must not take minutes.
     r"(?P<number>[+-]?(?:[0-9]++\.?[0-9]*+|\.[0-9]++)(?:[eE][+-]?[0-9]++)?+)?+\s*+(?P<unit>.*)$"
 )
-_BARE = re.compile(r"[-+0-9.eE ]*:[-+0-9.eE ]*")
 _NAMED = re.compile(r"(?P<name>[A-Za-z][A-Za-z0-9_]{0,63})\s*+(?:=\s*+(?P<range>.*\S))?$")
 _DAY = re.compile(r"[0-9]{4}-[0-9]{2}-[0-9]{2}$")
 _EXAMPLE = "a range such as 20:35 umol/m^2; one end may be left open, as in 20: umol/m^2"
@@ -74,45 +73,6 @@ def named_range(text: str) -> tuple[str, str | None]:
     if found is None:
         raise ValueError(f"found {text!r}; expected the name of a result and a range, such as T_KT=0.4:0.6 K")
     return found["name"], found["range"]
-
-
-def joined_units(arguments: list[str], options: frozenset[str], is_unit: Callable[[str], bool]) -> list[str]:
-    """Arguments in which a unit that stands as a word of its own is joined to the range before it.
-
-    Parameters
-    ----------
-    arguments : list of str
-        Words as the shell gives them, e.g. `--coverage 20:35 umol/m^2` without quotes.
-    options : frozenset of str
-        Options whose value is a range.
-    is_unit : callable
-        Whether a word is a unit.
-
-    Examples
-    --------
-    >>> joined_units(["--coverage", "20:35", "umol/m^2", "film"], frozenset({"--coverage"}), "umol/m^2".__eq__)
-    ['--coverage', '20:35 umol/m^2', 'film']
-    """
-    joined: list[str] = []
-    words = iter(range(len(arguments)))
-    for place in words:
-        word = arguments[place]
-        option, equals, value = word.partition("=")
-        if word == "--":
-            return joined + arguments[place:]
-        if option in options and not equals and place + 1 < len(arguments):
-            joined.append(word)
-            place = next(words)
-            word = value = arguments[place]
-        elif option not in options:
-            joined.append(word)
-            continue
-        follows = arguments[place + 1] if place + 1 < len(arguments) else ""
-        if _BARE.fullmatch(value.partition("=")[2] or value) and follows and is_unit(follows):
-            word = f"{word} {follows}"
-            next(words)
-        joined.append(word)
-    return joined
 
 
 def point_in_time(text: str, *, end_of_day: bool = False) -> datetime:

@@ -7,14 +7,15 @@ from typing import TYPE_CHECKING, Any
 
 import click
 
-from archive.commands.failures import told
+from archive.commands import opening
 from archive.commands.machine import quantity, write_json
 from archive.commands.opening import archive_option, json_option
 from archive.commands.terminal import say, table
-from archive.errors import BadRequest
+from archive.errors import BadRequest, told
 
 if TYPE_CHECKING:
     from archive.commands.conversion import Converted
+    from schemas.layers import Layer
 
 __all__ = ["convert", "helium"]
 
@@ -66,7 +67,7 @@ def convert(
     if any(word.startswith("--") for word in words):
         raise click.UsageError(f"there is no option {next(word for word in words if word.startswith('--'))}")
     from archive.commands.conversion import converted, in_display_units
-    from archive.commands.layers import LAYER_WORDS, layer_of
+    from schemas.layers import LAYER_WORDS
 
     if target is None:
         if scale is not None or text.endswith(tuple(LAYER_WORDS)):
@@ -74,7 +75,7 @@ def convert(
         with told():
             results = in_display_units(text, kind=kind)
     else:
-        layer = None if substrate is None else lambda: layer_of(substrate, archive_dir)
+        layer = None if substrate is None else lambda: _layer(substrate, archive_dir)
         with told():
             results = [converted(text, target, scale=scale, kind=kind, layer=layer)]
     if as_json:
@@ -85,6 +86,13 @@ def convert(
         say(f"{result.before} = {result.after}")
     for method in dict.fromkeys(result.method for result in results if result.method):
         say(f"  {method}")
+
+
+def _layer(substrate: str, folder: Path | None) -> Layer:
+    from archive.lab.layers import layer_of
+
+    with opening.open_archive(folder) as lab:
+        return layer_of(substrate, lab)
 
 
 def _content(result: Converted) -> dict[str, Any]:

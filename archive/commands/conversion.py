@@ -12,9 +12,9 @@ from collections.abc import Callable
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING, Final, Literal, cast
 
-from archive.commands.layers import LAYER_WORDS, NO_SUBSTRATE, Layer
 from schemas.kind_units import accepted_unit
 from schemas.kinds import KINDS, kind_of
+from schemas.layers import LAYER_WORDS, Layer, no_substrate
 from schemas.quantity import Quantity
 from schemas.quantity_text import StatedText, stated_text
 from schemas.units import parse_unit
@@ -294,7 +294,7 @@ def _slope(function: Callable[[float], float], at: float) -> float:
 
 def _layers(text: str, stated: StatedText, goal: str, layer: Callable[[], Layer] | None) -> Converted:
     if layer is None:
-        raise ValueError(NO_SUBSTRATE)
+        raise ValueError(no_substrate("--substrate NAME"))
     both = stated.unit in LAYER_WORDS and goal in LAYER_WORDS
     if not both:
         accepted_unit(goal if stated.unit in LAYER_WORDS else stated.unit, "coverage")

@@ -14,17 +14,15 @@ from __future__ import annotations
 
 import os
 import sys
-from collections.abc import Iterator
-from contextlib import contextmanager
 from typing import Any
 
 import click
 from typing_extensions import override
 
 from archive.commands.terminal import note, styled
-from archive.errors import EXIT_BAD_INPUT, ArchiveError, BadRequest, kept_traceback
+from archive.errors import EXIT_BAD_INPUT, ArchiveError, kept_traceback
 
-__all__ = ["EXIT_INTERRUPTED", "EXIT_WARNINGS", "GuardedGroup", "stopped", "told"]
+__all__ = ["EXIT_INTERRUPTED", "EXIT_WARNINGS", "GuardedGroup", "stopped"]
 
 EXIT_WARNINGS = 1
 EXIT_INTERRUPTED = 130
@@ -68,36 +66,6 @@ def stopped(error: BaseException) -> int:
         return EXIT_BAD_INPUT
     _say(f"this is a fault of Stillroom, not yours; the details are in {kept_traceback(error)}")
     return EXIT_BAD_INPUT
-
-
-@contextmanager
-def told(option: str | None = None) -> Iterator[None]:
-    """Turn a ValueError about what a person asked for into a refusal that names where it was asked.
-
-    Parameters
-    ----------
-    option : str, optional
-        Option or argument that holds the text.
-
-    Raises
-    ------
-    BadRequest
-        With the sentence of the ValueError; of several faults the first.
-    """
-    try:
-        yield
-    except ValueError as error:
-        raise BadRequest(_sentence(error), field=option) from None
-
-
-def _sentence(error: ValueError) -> str:
-    faults = getattr(error, "errors", None)
-    if faults is None:
-        return str(error)
-    first = faults(include_url=False)[0]
-    place = ".".join(str(part) for part in first["loc"])
-    text = str(first.get("ctx", {}).get("error", first["msg"]))
-    return f"{place}: {text}" if place else text
 
 
 def _say(sentence: str) -> None:

@@ -9,8 +9,8 @@ from typing import TYPE_CHECKING, Any
 
 import click
 
-from archive.commands.failures import told
 from archive.commands.terminal import note
+from archive.errors import told
 
 if TYPE_CHECKING:
     from archive.lab import Archive

@@ -73,6 +73,8 @@ class SearchQuery:
         Largest first.
     limit, offset : int
         At most so many sweeps (None: all), after so many left out.
+    after : str, optional
+        Only sweeps that stand behind the one with this address, in the order that is asked for: the next page of a list.
     withdrawn : bool
         Withdrawn sweeps too, marked.
     """
@@ -97,6 +99,7 @@ class SearchQuery:
     limit: int | None = 200
     offset: int = 0
     withdrawn: bool = False
+    after: str | None = None
 
 
 class SweepResult(NamedTuple):

@@ -328,7 +328,15 @@ class Index:
                 raise BadRequest(
                     "a search cannot count so", field=field, found=str(number), expected=f"0 to {_LARGEST}"
                 )
-        return self._sweeps(queries.search(query, amended=self._is_amended()))
+        last = None if query.after is None else self.sweep(query.after)
+        if query.after is not None and last is None:
+            raise BadRequest(
+                "the list cannot go on behind a sweep that is not there",
+                field="after",
+                found=query.after[:200],
+                remedy="begin the list anew",
+            )
+        return self._sweeps(queries.search(query, amended=self._is_amended(), last=last))
 
     def plane_sweeps(self, query: SearchQuery) -> list[PlaneSweep]:
         """All sweeps that satisfy a search, by coverage and address, in slim rows; its order and limit do not count."""

@@ -10,11 +10,11 @@ from collections.abc import Sequence
 from functools import lru_cache
 from typing import Any
 
-from sqlalchemy import Select, Table, and_, cast, exists, func, null, or_, select, union_all
+from sqlalchemy import ColumnElement, Select, Table, and_, cast, exists, func, null, or_, select, union_all
 from sqlalchemy.orm import InstrumentedAttribute, aliased
 
 from archive.index.act_tables import AmendedSweep, Revision
-from archive.index.answers import SearchQuery
+from archive.index.answers import SearchQuery, SweepRow
 from archive.index.conditions import named, part_of, search_conditions
 from archive.index.found import (
     column_found,
@@ -127,8 +127,17 @@ def _sweeps(*, amended: bool) -> Query:
     return found.outerjoin(AmendedSweep, last_amended()) if amended else found
 
 
-def search(query: SearchQuery, *, amended: bool = False) -> Query:
-    """Sweeps that satisfy a search; `amended` says whether anything is amended at all."""
+def search(query: SearchQuery, *, amended: bool = False, last: SweepRow | None = None) -> Query:
+    """Sweeps that satisfy a search.
+
+    Parameters
+    ----------
+    query : SearchQuery
+    amended : bool
+        Whether anything is amended at all.
+    last : SweepRow, optional
+        The sweep behind which the answer begins.
+    """
     order: list[Any] = []
     for name in SORTS[query.sort]:
         column = column_found(name, amended=amended)
@@ -136,8 +145,26 @@ def search(query: SearchQuery, *, amended: bool = False) -> Query:
         order += [column.is_(None), column.desc() if query.descending else column.asc()]
     conditions = search_conditions(query, amended=amended)
     found = _sweeps(amended=amended).where(*conditions).order_by(*order, Sweep.address)
+    if last is not None:
+        found = found.where(_behind(query, last, amended=amended))
     # SQLite has no offset without a limit; SQLAlchemy then writes the limit -1.
     return found.limit(query.limit).offset(query.offset or None)
+
+
+def _behind(query: SearchQuery, last: SweepRow, *, amended: bool) -> ColumnElement[bool]:
+    """Whether a sweep stands behind another in the order of a search: by the first column in which the two differ."""
+    shown = {column: label for label, column in _SWEEP.items()}
+    behind: ColumnElement[bool] = Sweep.address > last.address
+    for name in reversed(SORTS[query.sort]):
+        column = column_found(name, amended=amended)
+        value = getattr(last, shown[name])
+        if value is None:
+            # It stands among those without a value, which come last.
+            behind = and_(column.is_(None), behind)
+            continue
+        further = column < value if query.descending else column > value
+        behind = or_(further, column.is_(None), and_(column == value, behind))
+    return behind
 
 
 @lru_cache(maxsize=_BUILT)

@@ -15,9 +15,8 @@ import pytest
 from click.testing import Result
 
 from archive.commands import opening
-from archive.commands.failures import told
 from archive.commands.main import stillroom
-from archive.errors import ArchiveBusy, BadRequest, DamagedFile, NotAnArchive, UnknownAddress
+from archive.errors import ArchiveBusy, BadRequest, DamagedFile, NotAnArchive, UnknownAddress, told
 from schemas.cooldown import Event
 from tests.archive.commands.support import FakeArchive, child
 

@@ -13,8 +13,8 @@ from typing import get_args
 import pytest
 from click.testing import Result
 
-from archive.commands.search_command import SWEEP_KINDS
 from archive.index import ResultCondition, SearchQuery
+from schemas.search_fields import SWEEP_KINDS
 from schemas.sweep import SweepKind
 from tests.archive.commands.support import ROW, FakeArchive, parsed
 

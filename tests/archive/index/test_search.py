@@ -352,3 +352,25 @@ def test_many_sweeps_get_their_own_parts(index: Index) -> None:
     )
     rows = index.search(SearchQuery(limit=None, sort="name"))
     assert [row.channels for row in rows] == [(f"c{n}",) for n in range(count)]
+
+
+@pytest.mark.parametrize("descending", [False, True])
+@pytest.mark.parametrize("sort", ["date", "coverage", "temperature", "cell", "name"])
+def test_a_list_goes_on_behind_its_last_sweep(filled: Index, sort: Any, descending: bool) -> None:  # noqa: FBT001 - a parameter
+    """One by one, behind sweeps without a value too, gives the list in one piece."""
+    whole = [row.address for row in filled.search(SearchQuery(sort=sort, descending=descending))]
+    after, paged = None, []
+    for _ in range(len(whole) + 1):
+        query = SearchQuery(sort=sort, descending=descending, limit=1, after=after)
+        found = filled.search(query)
+        if not found:
+            break
+        after = found[0].address
+        paged.append(after)
+    assert paged == whole
+    assert len(whole) > 3
+
+
+def test_a_list_cannot_go_on_behind_nothing(filled: Index) -> None:
+    with pytest.raises(BadRequest, match="begin the list anew"):
+        filled.search(SearchQuery(after="2026-03/s999"))
