@@ -272,10 +272,10 @@ CURRENT_STEPS: tuple[Step, ...] = (
         takes={"time": Port("time", "array", "time of each row"), "angular_momentum": _L, "temperature": Port("temperature", "array", "temperature of each row", optional=True), "coverage": Port("coverage|length", "array", "coverage or thickness of each row", optional=True)},
         yields={
             "initial_angular_momentum": Port("angular_momentum", "scalar", "angular momentum at the first reading"), "decay_time": Port("time", "scalar", "one over the relative rate of decay at the first reading"),
-            "exponent": Port("number", "scalar", "m of dv/dt ~ -v^(1 + m)"), "stiffness_ratio": Port("number", "scalar", "stiffness of a film over the universal one, m/2"),
+            "exponent": Port("number", "scalar", "m of -dv/dt ~ v^(1 + m)"), "stiffness_ratio": Port("number", "scalar", "stiffness of a film over the universal one, m/2"),
             "areal_density_from_decay": Port("areal_mass_density", "scalar", "areal superfluid density of a film by its decay"),
         },
-        sentence="Decay at one temperature as a power law in time, dv/dt ~ -v^(1 + m), over {points} points: {reason}. m: {exponent}; decay time at the first reading: {decay_time}; "
+        sentence="Decay at one temperature as a power law in time, -dv/dt ~ v^(1 + m), over {points} points: {reason}. m: {exponent}; decay time at the first reading: {decay_time}; "
         "chi^2: {chi2_power}, of an exponential {chi2_exponential}.",
         citations=("ahns-1980",), spread="refit", weights=("angular_momentum",),
     ),

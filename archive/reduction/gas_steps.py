@@ -73,7 +73,7 @@ def amount_from_doses(
     counted = [each for each in doses if each.counted]
     facts: dict[str, object] = {
         "crossed_out": [each.dose.name for each in doses if not each.counted],
-        "method": METHOD if any(each.dose.amount is None for each in counted) else "as stated in the notebook",
+        "method": f"by {METHOD}" if any(each.dose.amount is None for each in counted) else "as stated in the notebook",
     }  # fmt: skip
     if gas.during:
         if time is None:

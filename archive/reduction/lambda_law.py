@@ -18,6 +18,7 @@ from archive.reduction.row_choice import chosen_rows, row_numbers
 from archive.reduction.step import Covariance, Outcome
 from schemas.base import Record
 from schemas.finding import Finding
+from schemas.uncertain_text import rounded
 
 __all__ = ["LambdaLawParameters", "lambda_law"]
 
@@ -102,13 +103,19 @@ def lambda_law(
         covariance=covariance,
         held={"rows_below": numbers[0], "rows_above": numbers[1], "chance": chance},
         facts={
-            "points_below": len(numbers[0]), "points_above": len(numbers[1]), "low": low, "gravity": "over its step" if limit is None else "over its step and the height of the cell", "high": parameters.high, "confluent_terms": parameters.corrections,
+            "points_below": len(numbers[0]), "points_above": len(numbers[1]), "low": low, "gravity": "over each step" if limit is None else "over each step and the height of the cell", "high": parameters.high, "confluent_terms": parameters.corrections,
             "reduced_chi2": found.fit.reduced_chi2 if data.u is not None else math.nan, "chance": chance, "delta": parameters.confluent_exponent,
             "treated": "held" if sides.low == sides.high else "fitted",
-            "ranges": ", ".join(f"{a:.4f}({s:.4f}) up to {h:.3g} ({n} points)" for h, a, s, n in zip(highs, exponents, spreads, counts, strict=True)),
+            "ranges": ", ".join(_range(*each) for each in zip(highs, exponents, spreads, counts, strict=True)),
         },
         findings=_findings(parameters, limit, chance),
     )  # fmt: skip
+
+
+def _range(high: float, exponent: float, spread: float, count: int) -> str:
+    known = math.isfinite(exponent) and spread > 0
+    said = rounded(float(exponent), float(spread)).plain() if known else "not found"
+    return f"{said} up to {high:.3g} ({count} points)"
 
 
 @dataclass(frozen=True)

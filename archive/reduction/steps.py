@@ -95,7 +95,7 @@ STEPS: tuple[Step, ...] = (
         name="amount-from-doses", version=1, function=gas_steps.amount_from_doses,
         takes={"gas": _GAS, "sample": _SAMPLE, "time": Port("time", "array", "instant of each row", optional=True)},
         yields={"amount": Port("amount", "number", "gas in the cell's system")},
-        sentence="{count} gave a total of {amount}, by {method}.", spread="refit", citations=("cencek-2012",),
+        sentence="{count} gave a total of {amount}, {method}.", spread="refit", citations=("cencek-2012",),
     ),
     Step(
         name="vapour-in-dead-volume", version=1, function=gas_steps.vapour_in_dead_volume, parameters=gas_steps.VapourParameters,

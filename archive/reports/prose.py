@@ -25,7 +25,8 @@ _LONGEST_UNBROKEN = 20
 _PIECE = 10
 
 _GREEK = {
-    "chi": "χ", "sigma": "σ", "zeta": "ζ", "rho": "ρ", "tau": "τ", "kappa": "κ", "omega": "ω", "lambda": "λ", "theta": "θ",
+    "alpha": "α", "chi": "χ", "sigma": "σ", "zeta": "ζ", "rho": "ρ", "tau": "τ", "kappa": "κ", "omega": "ω", "lambda": "λ", "theta": "θ", "xi": "ξ",
+    "Gamma": "Γ", "Delta": "Δ", "hbar": "ħ",
 }  # fmt: skip
 # With a power of ten one digit stands before the point: that keeps hexadecimal digests apart from numbers.
 _NUMBER = (
@@ -33,7 +34,9 @@ _NUMBER = (
     r"|(?P<digits>[+-]?\d+(?:\.\d+)?)(?:\((?P<bracket>\d+(?:\.\d+)?)\))?)"
 )
 _DIGEST = r"(?P<digest>(?<![0-9A-Za-z])(?:(?:[0-9a-f]{4} ){3,15}[0-9a-f]{4}|[0-9a-f]{16,64})(?![0-9A-Za-z]))"
-_SYMBOL = rf"(?P<base>{'|'.join(_GREEK)}|[A-Za-z])(?:_(?P<sub>[A-Za-z0-9]{{1,6}}))?(?:\^(?P<sup>[A-Za-z0-9]+))?(?![A-Za-z0-9_]|\.[A-Za-z0-9])"
+# A name or number with its sign, a sign alone (the side of a transition), or a short sum or ratio in brackets, which are not printed.
+_RAISED = r"-?(?:\d+\.\d+|[A-Za-z0-9]+)|[+-](?![A-Za-z0-9])|\([A-Za-z0-9+/ -]{1,12}\)"
+_SYMBOL = rf"(?P<base>{'|'.join(_GREEK)}|[A-Za-z])(?:_(?P<sub>[A-Za-z0-9]{{1,6}}))?(?:\^(?P<sup>{_RAISED}))?(?![A-Za-z0-9_]|\.[A-Za-z0-9])"
 
 
 @dataclass(frozen=True)
@@ -75,13 +78,13 @@ class Prose:
 @cache
 def _pattern() -> re.Pattern[str]:
     names = set(chain.from_iterable((*kind.display, *kind.si, *kind.examples) for kind in KINDS.values()))
-    names |= {"ns m^2/kg", "ns/mmol", "min", "d"}
+    names |= {"ns m^2/kg", "ns/mmol", "min", "d", "cm^3/mol"}
     names -= {"1", "A", "T"}
     units = "|".join(re.escape(name) for name in sorted(names, key=lambda name: (-len(name), name)))
     return re.compile(
         rf"{_DIGEST}|(?<![A-Za-z0-9_.#@/-]){_NUMBER}(?:(?P<space> ?)(?P<unit>{units})(?![A-Za-z0-9_^/]))?(?![A-Za-z0-9_]|\.\d)"
         rf"|(?<![A-Za-z0-9_.#@-]){_SYMBOL}"
-        r"|(?<=\))\^(?P<power_of>[A-Za-z0-9]+)",
+        rf"|(?:(?<=[)|])|(?<=layer))\^(?P<power_of>{_RAISED})",
         re.ASCII,  # digits of other scripts are no numbers here, and LaTeX lacks them
     )
 
@@ -173,7 +176,7 @@ def _number(found: re.Match[str]) -> list[Piece] | None:
 def _symbol(found: re.Match[str]) -> list[Piece] | None:
     if found["power_of"]:
         raised = found["power_of"]
-        return [Piece(_GREEK.get(raised, raised), "sup", Tex(rf"\ensuremath{{^{{{_inner(raised)}}}}}"))]
+        return [Piece(_spoken(raised), "sup", Tex(rf"\ensuremath{{^{{{_inner(raised)}}}}}"))]
     base, sub, sup = found["base"], found["sub"], found["sup"]
     if sub is None and sup is None and base not in _GREEK:
         return None
@@ -182,11 +185,22 @@ def _symbol(found: re.Match[str]) -> list[Piece] | None:
     latex = letter + (f"_{{{_inner(sub)}}}" if sub else "") + (f"^{{{_inner(sup)}}}" if sup else "")
     pieces = [Piece(_GREEK.get(base, base), "i", Tex(rf"\ensuremath{{{latex}}}"))]
     pieces += [Piece(_GREEK.get(sub, sub), "sub", Tex(""))] if sub else []
-    pieces += [Piece(_GREEK.get(sup, sup), "sup", Tex(""))] if sup else []
+    pieces += [Piece(_spoken(sup), "sup", Tex(""))] if sup else []
     return pieces
 
 
+def _spoken(raised: str) -> str:
+    """Return what is raised, as it stands on a page."""
+    words = re.findall(r"[A-Za-z0-9.]+|[^A-Za-z0-9.()]", raised)
+    return "".join("\u2212" if word == "-" else _GREEK.get(word, word) for word in words)
+
+
 def _inner(text: str) -> str:
-    if text in _GREEK:
-        return rf"\{text}"
-    return text if len(text) == 1 or text.isdigit() else rf"\mathrm{{{text}}}"
+    """Return what is raised or lowered, as LaTeX within maths."""
+    words = re.findall(r"[A-Za-z0-9.]+|[^A-Za-z0-9.()]", text)
+    return "".join(
+        rf"\{word}" if word in _GREEK
+        else word if len(word) == 1 or word.replace(".", "").isdigit()
+        else rf"\mathrm{{{word}}}"
+        for word in words
+    )  # fmt: skip

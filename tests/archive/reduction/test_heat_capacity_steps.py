@@ -107,7 +107,7 @@ def test_gravity_keeps_rows_out_and_is_averaged():
     kept = np.array([*found.held["rows_below"], *found.held["rows_above"]]) - 1
     assert t[kept].min() > 2e-6
     assert kept.size == np.count_nonzero((t > 2e-6) & (t < 1e-2))
-    assert found.facts["gravity"] == "over its step and the height of the cell"
+    assert found.facts["gravity"] == "over each step and the height of the cell"
 
 
 def test_a_logarithm_is_said_to_serve():
