@@ -66,6 +66,9 @@ _STYLED: Final = re.compile(r'\bstyle="([^"]*)"')
 WIDTH: Final = 4.6
 """Inches: fits a text width of 120 mm without being scaled."""
 
+POINTS_PER_INCH: Final = 72
+"""In which PDF and SVG measure, and the layout must."""
+
 HEIGHTS: Final = (2.2, 3.4, 5.2)
 """Inches: one panel, a panel with its residuals, two of those."""
 
@@ -108,6 +111,7 @@ def saved(figure: Figure) -> bytes:
     buffer = io.BytesIO()
     if not _SVG.get():
         FigureCanvasPdf(figure)
+        _lay_out(figure)
         figure.savefig(
             buffer,
             format="pdf",
@@ -115,6 +119,7 @@ def saved(figure: Figure) -> bytes:
         )
         return buffer.getvalue()
     FigureCanvasSVG(figure)
+    _lay_out(figure)
     with mpl.rc_context({"svg.hashsalt": "stillroom", "svg.fonttype": "path"}):
         figure.savefig(buffer, format="svg", metadata={"Date": None, "Creator": "stillroom"})
     return _unstyled(buffer.getvalue().decode()).encode()
@@ -133,6 +138,15 @@ def _attributes(style: str) -> Iterator[str]:
     for each in filter(None, map(str.strip, style.split(";"))):
         name, _, value = each.partition(":")
         yield f'{name.strip()}="{value.strip()}"'
+
+
+def _lay_out(figure: Figure) -> None:
+    """Place the panels here: a figure that still has its layout engine is drawn twice by ``savefig``, the first time for nothing else."""
+    engine = figure.get_layout_engine()
+    if engine is not None:
+        figure.set_dpi(POINTS_PER_INCH)
+        engine.execute(figure)
+        figure.set_layout_engine(None)
 
 
 def name_of(kind: str, reduction: ReductionDocument) -> str:
