@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import platform
+from functools import cache
 from importlib import metadata
 
 from schemas.lineage import Software
@@ -13,8 +14,9 @@ PACKAGES = ("numpy", "scipy", "pint", "pydantic", "h5py")
 """Libraries that can change a number or the reading of one."""
 
 
+@cache
 def software() -> Software:
-    """Return the versions in use."""
+    """Return the versions in use; what is imported does not change while a process runs."""
     return Software(
         stillroom=metadata.version("stillroom"),
         python=platform.python_version(),
