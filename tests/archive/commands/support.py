@@ -88,7 +88,9 @@ class FakeArchive:
         return ask
 
 
-def child(*words: str, folder: Path | None = None, **variables: str) -> subprocess.CompletedProcess[str]:
+def child(
+    *words: str, folder: Path | None = None, seconds: float = 300, **variables: str
+) -> subprocess.CompletedProcess[str]:
     """Run a command line in a process of its own."""
     environment = {name: value for name, value in os.environ.items() if name != "STILLROOM_ARCHIVE"}
     return subprocess.run(
@@ -104,7 +106,7 @@ def child(*words: str, folder: Path | None = None, **variables: str) -> subproce
             "PYTHONIOENCODING": "utf-8",
             **variables,
         },
-        timeout=300,
+        timeout=seconds,
     )
 
 

@@ -1,4 +1,4 @@
-"""The demonstration from end to end, each command on the archive it made, all in processes of their own."""
+"""The demonstration from end to end in a process of its own, and commands on the archive it made."""
 
 from __future__ import annotations
 
@@ -19,12 +19,13 @@ from archive.reduction.planning import shipped_plans
 from archive.reports.figure_values import fact, step_of, taken
 from archive.reports.figures_film import fitted_theory
 from archive.reports.scope import Scope
-from tests.archive.commands.support import child, parsed
+from tests.archive.commands.support import parsed
 
 Demonstration = tuple[Path, "subprocess.CompletedProcess[str]"]
+Run = Callable[..., Result]
 
 
-def test_a_folder_that_is_not_empty_is_refused(tmp_path: Path, run: Callable[..., Result]) -> None:
+def test_a_folder_that_is_not_empty_is_refused(tmp_path: Path, run: Run) -> None:
     (tmp_path / "thesis.tex").write_text("x", encoding="utf-8")
     result = run("demo", str(tmp_path))
     assert result.exit_code == 2
@@ -32,9 +33,7 @@ def test_a_folder_that_is_not_empty_is_refused(tmp_path: Path, run: Callable[...
     assert [path.name for path in tmp_path.iterdir()] == ["thesis.tex"]
 
 
-def test_an_earlier_demonstration_is_left_and_what_to_do_is_said(
-    tmp_path: Path, run: Callable[..., Result]
-) -> None:
+def test_an_earlier_demonstration_is_left_and_what_to_do_is_said(tmp_path: Path, run: Run) -> None:
     (tmp_path / "cooldowns").mkdir()
     result = run("demo", str(tmp_path))
     assert result.exit_code == 2
@@ -43,7 +42,7 @@ def test_an_earlier_demonstration_is_left_and_what_to_do_is_said(
 
 
 @pytest.mark.slow
-def test_the_demonstration_runs_and_says_what_it_made(demonstration: Demonstration) -> None:
+def test_the_demonstration_runs_and_says_what_it_made(demonstration: Demonstration, run: Run) -> None:
     folder, ended = demonstration
     assert ended.returncode == 0, ended.stderr
     assert "Traceback" not in ended.stderr
@@ -55,8 +54,8 @@ def test_the_demonstration_runs_and_says_what_it_made(demonstration: Demonstrati
     assert "T_KT = " in ended.stdout
     assert (folder / "reports" / "run-sheet-2025-03.pdf").read_bytes().startswith(b"%PDF")
     assert (folder / "reports" / "appendix" / "appendix.tex").stat().st_size > 0
-    again = child("demo", str(folder))
-    assert again.returncode == 2
+    again = run("demo", str(folder))
+    assert again.exit_code == 2
     assert "earlier demonstration" in again.stderr
 
 
@@ -101,70 +100,70 @@ def test_the_drawn_theory_is_the_fitted_one(demonstration: Demonstration) -> Non
 
 
 @pytest.mark.slow
-def test_what_the_demonstration_advises_works(demonstration: Demonstration) -> None:
+def test_what_the_demonstration_advises_works(demonstration: Demonstration, run: Run) -> None:
     _, ended = demonstration
     advice = [
         line.split()[1:] for line in ended.stdout.splitlines() if line.startswith("  stillroom --archive")
     ]
     assert len(advice) >= 4
     for words in advice:
-        assert child(*words).returncode == 0, words
+        assert run(*words).exit_code == 0, words
 
 
 @pytest.mark.slow
-def test_coverage_in_any_unit_finds_the_same_sweeps(demonstration: Demonstration) -> None:
+def test_coverage_in_any_unit_finds_the_same_sweeps(demonstration: Demonstration, run: Run) -> None:
     archive = ["--archive", str(demonstration[0] / "archive")]
     # 28 and 33 umol/m^2 times 6.02214076e23 per mol, in nm^-2.
     ranges = ["28:33 umol/m^2", "16.862:19.873 atoms/nm^2", "0.028:0.033 mmol/m^2"]
     found = [
-        [row["address"] for row in parsed(child(*archive, "search", "--coverage", text, "--json"))]
+        [row["address"] for row in parsed(run(*archive, "search", "--coverage", text, "--json"))]
         for text in ranges
     ]
     assert found[0]
     assert found[0] == found[1] == found[2]
-    split = child(*archive, "search", "--coverage", "28:33", "umol/m^2", "--json")
+    split = run(*archive, "search", "--coverage", "28:33", "umol/m^2", "--json")
     assert [row["address"] for row in parsed(split)] == found[0]
 
 
 @pytest.mark.slow
-def test_results_are_found_shown_traced_and_replayed(demonstration: Demonstration) -> None:
+def test_results_are_found_shown_traced_and_replayed(demonstration: Demonstration, run: Run) -> None:
     archive = ["--archive", str(demonstration[0] / "archive")]
-    rows = parsed(child(*archive, "search", "--result", "T_KT=0.4:0.5 K", "--cell", "TO-4", "--json"))
+    rows = parsed(run(*archive, "search", "--result", "T_KT=0.4:0.5 K", "--cell", "TO-4", "--json"))
     assert rows
     assert all(0.4 <= row["results"]["T_KT"]["value"] <= 0.5 for row in rows)
-    sweep = parsed(child(*archive, "show", rows[0]["address"], "--json"))
+    sweep = parsed(run(*archive, "show", rows[0]["address"], "--json"))
     address = next(each["address"] for each in sweep["results"] if each["address"].endswith("#T_KT"))
-    shown = parsed(child(*archive, "show", address, "--json"))
+    shown = parsed(run(*archive, "show", address, "--json"))
     assert (shown["address"], shown["what"]) == (address, "result")
     assert shown["value"] == rows[0]["results"]["T_KT"]["value"]
-    tree = child(*archive, "trace", address)
+    tree = run(*archive, "trace", address)
     assert ":raw/" in tree.stdout
     assert "sha256" in tree.stdout
-    replayed = parsed(child(*archive, "replay", address.partition("#")[0], "--strict", "--json"))
+    replayed = parsed(run(*archive, "replay", address.partition("#")[0], "--strict", "--json"))
     assert replayed["identical"] is True
 
 
 @pytest.mark.slow
-def test_csv_and_layers_and_fixity_on_the_demonstration(demonstration: Demonstration) -> None:
+def test_csv_and_layers_and_fixity_on_the_demonstration(demonstration: Demonstration, run: Run) -> None:
     archive = ["--archive", str(demonstration[0] / "archive")]
-    table = child(*archive, "search", "--kind", "temperature-sweep", "--csv")
+    table = run(*archive, "search", "--kind", "temperature-sweep", "--csv")
     header, *rows = csv.reader(io.StringIO(table.stdout))
     assert len(rows) > 5
     assert "T_KT (K)" in header
     layers = parsed(
-        child(*archive, "convert", "2 layers", "--substrate", "PI-2200", "--to", "umol/m^2", "--json")
+        run(*archive, "convert", "2 layers", "--substrate", "PI-2200", "--to", "umol/m^2", "--json")
     )
     assert layers["value"] == pytest.approx(
         2 * 12.97, rel=1e-12
     )  # the layer that the demonstration's sheet states
-    whole = child(*archive, "fixity", "--json")
-    assert (whole.returncode, parsed(whole)["whole"]) == (0, True)
+    whole = run(*archive, "fixity", "--json")
+    assert (whole.exit_code, parsed(whole)["whole"]) == (0, True)
 
 
 @pytest.mark.slow
-def test_the_index_is_rebuilt_and_nothing_is_lost(demonstration: Demonstration) -> None:
+def test_the_index_is_rebuilt_and_nothing_is_lost(demonstration: Demonstration, run: Run) -> None:
     archive = ["--archive", str(demonstration[0] / "archive")]
-    before = child(*archive, "search", "--json").stdout
-    counts = parsed(child(*archive, "rebuild-index", "--json"))
+    before = run(*archive, "search", "--json").stdout
+    counts = parsed(run(*archive, "rebuild-index", "--json"))
     assert counts["accessions"] == 11
-    assert child(*archive, "search", "--json").stdout == before
+    assert run(*archive, "search", "--json").stdout == before
