@@ -178,6 +178,24 @@ def test_a_difference_is_first_less_second() -> None:
     ) == pytest.approx(0.01)
 
 
+def test_the_thermometer_s_scatter_counts_where_the_dissipation_is_steep(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    """Twenty times the usual scatter of 0.02 mK: on the flanks of the peak it is all there is, and residuals are one there, too."""
+    monkeypatch.setitem(globals(), "U_T", 4e-4)
+    flanks = []
+    for seed in range(2):
+        given = record(seed, rows=600)
+        T, h = given["temperature"], 1e-6
+        low, high = (curves(T + h * sign, TRUTH, angular_frequency=OMEGA, x0=-0.5)[1] for sign in (-1, 1))
+        steep = np.abs(high - low) / (2 * h) * U_T > 5 * U_Q
+        flanks.append(film_dynamic_fit(FilmDynamicParameters(), **given).array("dissipation_residual")[steep])
+    together = np.concatenate(flanks)
+    together = together[np.isfinite(together)]
+    assert together.size > 60
+    assert np.std(together) == pytest.approx(1, abs=4 / math.sqrt(2 * together.size))
+
+
 @pytest.mark.slow
 def test_two_hundred_films_pull_with_unit_width() -> None:
     pulls: dict[str, list[float]] = {

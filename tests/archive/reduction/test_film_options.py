@@ -36,6 +36,7 @@ from archive.reduction.sheet_values import sheet_value
 from archive.reduction.step import NoParameters
 from archive.reduction.steps import step_named
 from archive.reduction.transition_steps import BEYOND, RatioParameters, universal_ratio
+from schemas.gas import DeadVolume
 from schemas.lineage import Value
 from schemas.substrate import Sample
 
@@ -198,6 +199,19 @@ def test_alignment_above_the_transition_finds_the_constant() -> None:
     for found in (_drop(AlignmentParameters()), _drop(AlignmentParameters(), peak=0.6)):
         assert float(found.outputs["shift"]) == pytest.approx(5e-9, abs=1e-15)
         assert found.array("period_drop")[0] == pytest.approx(1e-9, rel=1e-6)
+
+
+def test_the_scatter_of_an_alignment_is_that_of_its_mean() -> None:
+    """Without a stated uncertainty: the standard deviation of the rows over the root of their number, by numpy."""
+    T = np.linspace(0.3, 0.9, 200)
+    noise = 1e-12 * np.random.default_rng(6).normal(size=200)
+    rows = tuple(range(151, 201))
+    found = period_drop(
+        AlignmentParameters(rows=rows), temperature=T, period=1e-3 + noise, background=np.array([1e-3]), low=0.2, high=1.0, peak=None,
+        u_period=None, u_temperature=None,
+    )  # fmt: skip
+    expected = np.std(noise[150:], ddof=1) / np.sqrt(50)
+    assert float(found.shared["shift"]["own alignment"]) == pytest.approx(expected, rel=1e-6)
 
 
 def test_alignment_at_the_coldest_rows_forces_zero_there() -> None:
@@ -365,6 +379,25 @@ def test_without_a_dead_volume_nothing_is_vapour_and_a_finding_says_so() -> None
     )
     assert found.array("vapour")[0] == 0.0
     assert found.findings[0].code == "dead-volume-not-recorded"
+
+
+def test_vapour_that_nobody_measured_is_half_of_saturation_give_or_take_a_rectangle() -> None:
+    """1.87506 umol in a saturated cm^3 at 1 K; a rectangle of full width w has the standard deviation w/sqrt(12) (JCGM 100:2008, 4.3.7)."""
+    volume = DeadVolume.model_validate_json(
+        '{"name": "v", "volume": "1.000(10) cm^3", "temperature": "cell"}'
+    )
+    found = vapour_in_dead_volume(
+        VapourParameters(),
+        gas=GasBook("c", (), dead_volumes=(volume,)),
+        temperature=np.array([1.0]),
+        pressure=None,
+        sample=Sample(name="gas", revision=1, isotope="4He", gas_source="invented"),
+    )
+    assert found.array("vapour")[0] == pytest.approx(1.87506e-6 / 2, rel=5e-4)
+    parts = {
+        name.partition(" ")[0]: float(np.asarray(part)[0]) for name, part in found.shared["vapour"].items()
+    }
+    assert parts == pytest.approx({"dead": 0.01 * 1.87506e-6 / 2, "vapour": 1.87506e-6 / 12**0.5}, rel=5e-4)
 
 
 def test_a_given_break_gives_the_same_lines_as_the_search() -> None:
