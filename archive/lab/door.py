@@ -495,6 +495,7 @@ class Archive:
         axis: PlaneAxis = "coverage",
         state: PlaneState = "any",
         window: Window | None = None,
+        most: int | None = None,
     ) -> PlaneView:
         """Sweeps as bars over temperature, transitions as points, the universal jump as lines; see `archive.lab.plane.plane`.
 
@@ -507,10 +508,12 @@ class Archive:
         state : {"any", "reduced", "not reduced", "stale", "withdrawn"}
         window : Window, optional
             Part of the plane, in SI; else all sweeps but for a few that lie far from all others.
+        most : int, optional
+            Bars, and points, that are told one by one; of more, strips of bars are told.
         """
         from archive.lab.plane import plane
 
-        return plane(self._source, query or SearchQuery(), axis=axis, state=state, window=window)
+        return plane(self._source, query or SearchQuery(), axis=axis, state=state, window=window, most=most)
 
     def plane_figure(self, view: PlaneView, *, kind: str = "pdf") -> bytes:
         """Figure of the plane for a talk, as PDF or SVG."""

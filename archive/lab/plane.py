@@ -35,6 +35,13 @@ TRANSITIONS = ("T_KT", "T_KT_by_fit", "T_KT_by_peak", "T_c", "T_lambda")
 _AT_COVERAGE = "transition_coverage"
 """Result that is the coverage of a transition, at the temperature of its sweep."""
 
+# What is shown where there is nothing: the usual part of such a plane.
+_EMPTY: dict[PlaneAxis, Window] = {
+    "coverage": Window(0.0, 1.0, 0.0, 60e-6),
+    "pressure": Window(0.01, 10.0, 1.0, 1e6),
+    "cell": Window(0.01, 10.0, 0.0, 1.0),
+}
+
 # Headline results stand first.
 _FEW = 3
 
@@ -52,7 +59,7 @@ def plane(
     axis: PlaneAxis = "coverage",
     state: PlaneState = "any",
     window: Window | None = None,
-    most: int = MOST_BARS,
+    most: int | None = None,
 ) -> PlaneView:
     """Return a window of the plane.
 
@@ -66,17 +73,19 @@ def plane(
     state : {"any", "reduced", "not reduced", "stale", "withdrawn"}
     window : Window, optional
         Else all sweeps but for a few that lie far from all others.
-    most : int
-        Bars, and points, that are shown one by one.
+    most : int, optional
+        Bars, and points, that are shown one by one; 2,000 if left out. Of more bars than that no results are told.
     """
+    most = MOST_BARS if most is None else most
     index, log = source.index, logarithmic(axis)
     wanted = replace(query, withdrawn=True) if state == "withdrawn" else query
     rows, stale_ones = _of_state(source, index.plane_sweeps(wanted), state)
     looks = _looks(index)
     bars, unplaced = _bars(rows, _places(index, rows, axis), looks, stale_ones, log=log)
-    # Runs of empty cells, bulk ones too, are no reason to show more than the films.
-    filled = [bar for bar in bars if bar.top > 0] or bars
-    seen = window or first_window(filled, log=log)
+    # An empty cell is worth showing beside its films; that of a calorimeter full of liquid is not.
+    films = {bar.cell for bar in bars if bar.top > 0}
+    shown_first = [bar for bar in bars if bar.cell in films] or bars
+    seen = window or (first_window(shown_first, log=log) if bars else _EMPTY[axis])
     shown = [bar for bar in bars if inside(bar, seen)]
     points = _points(index, bars, rows, axis, seen)
     kept = thinned_points(points, seen, most=most, log=log)
@@ -88,7 +97,7 @@ def plane(
         axis=axis,
         cells=tuple((name, looks[name]) for name in looks if name in names),
         window=seen,
-        whole=whole_of(bars, log=log),
+        whole=whole_of(bars, log=log) if bars else _EMPTY[axis],
         bars=() if merged else _with_results(index, shown),
         points=kept,
         strips=strips,
@@ -222,6 +231,8 @@ def _lines(
 
 
 def _with_results(index: Index, bars: Sequence[Bar]) -> tuple[Bar, ...]:
+    if len(bars) > MOST_BARS:
+        return tuple(bars)
     found = index.sweep_results([bar.address for bar in bars])
     return tuple(
         replace(bar, results=tuple(map(result_words, found.get(bar.address, ())[:_FEW]))) for bar in bars

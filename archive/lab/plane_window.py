@@ -19,17 +19,18 @@ MOST_BARS = 2000
 _FAR = 4.0
 _FEW = 0.2
 _MARGIN = 0.06
+_BELOW = 0.04
 _CELLS_ACROSS = 400
 """Places of one point each along either side, about as many as a screen can tell apart."""
 
 
 def whole_of(bars: Sequence[Bar], *, log: tuple[bool, bool]) -> Window:
-    """Return a window that holds all bars, with a margin; linear sides begin at zero."""
-    if not bars:
-        return Window(0.01 if log[0] else 0.0, 1.0, 1.0 if log[1] else 0.0, 1e5 if log[1] else 1.0)
+    """Return a window that holds all bars, of which there are some, with a margin; linear sides begin at zero."""
     cold, warm = min(bar.cold for bar in bars), max(bar.warm for bar in bars)
     bottom, top = min(bar.bottom for bar in bars), max(bar.top for bar in bars)
-    return Window(*_side(cold, warm, log=log[0]), *_side(bottom, top, log=log[1]))
+    low, high = _side(bottom, top, log=log[1])
+    # Bars at zero (empty cells) are not to lie on the edge.
+    return Window(*_side(cold, warm, log=log[0]), low - _BELOW * high if bottom == 0 else low, high)
 
 
 def _side(low: float, high: float, *, log: bool) -> tuple[float, float]:

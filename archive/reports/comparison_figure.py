@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import re
 from collections.abc import Callable, Sequence
 from contextlib import nullcontext
 
@@ -12,7 +11,7 @@ from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 
 from archive.reports.axis_units import in_unit, symbol
-from archive.reports.figure_style import LOOKS, STYLE, WIDTH, Column, as_svg, saved
+from archive.reports.figure_style import LOOKS, STYLE, WIDTH, Column, as_svg, raised, saved
 from schemas.lineage import OutputEntry, ReductionDocument
 from schemas.quantity import unit_factor
 from schemas.units import parse_unit
@@ -25,9 +24,6 @@ _SHOWN = (
     "superfluid_density", "superfluid_fraction", "molar_heat_capacity", "heat_capacity", "period_drop",
     "added_dissipation", "allan_deviation",
 )  # fmt: skip
-
-_RAISED = re.compile("[\u207b\u2070\u00b9\u00b2\u00b3\u2074-\u2079]+")
-_LOWERED = str.maketrans("\u207b\u2070\u00b9\u00b2\u00b3\u2074\u2075\u2076\u2077\u2078\u2079", "-0123456789")
 
 Reader = Callable[[str, str], Column]
 
@@ -144,8 +140,7 @@ def _draw_curve(
 def _label(name: str, unit: str) -> str:
     if unit == "1":
         return symbol(name)
-    # The text font has no superscript minus; mathematics has.
-    written = _RAISED.sub(lambda run: f"$^{{{run[0].translate(_LOWERED)}}}$", parse_unit(unit).typographic)
+    written = raised(parse_unit(unit).typographic)
     return f"{symbol(name)} / {written}"
 
 

@@ -36,6 +36,7 @@ __all__ = [
     "Undrawn",
     "as_svg",
     "name_of",
+    "raised",
     "saved",
 ]
 
@@ -71,6 +72,10 @@ POINTS_PER_INCH: Final = 72
 
 HEIGHTS: Final = (2.2, 3.4, 5.2)
 """Inches: one panel, a panel with its residuals, two of those."""
+
+
+_RAISED = re.compile("[\u207b\u2070\u00b9\u00b2\u00b3\u2074-\u2079]+")
+_LEVEL = str.maketrans("\u207b\u2070\u00b9\u00b2\u00b3\u2074\u2075\u2076\u2077\u2078\u2079", "-0123456789")
 
 
 class NoFigure(Exception):
@@ -152,3 +157,14 @@ def _lay_out(figure: Figure) -> None:
 def name_of(kind: str, reduction: ReductionDocument) -> str:
     """Return the file name of the figure of one reduction."""
     return f"figures/{kind}-{reduction.cooldown}-{reduction.sweep.partition('/')[2]}.pdf"
+
+
+def raised(text: str) -> str:
+    """Return a text with its superscripts as mathematics: the text font has few of them, and no superscript minus.
+
+    Examples
+    --------
+    >>> raised("µmol·m⁻²")
+    'µmol·m$^{-2}$'
+    """
+    return _RAISED.sub(lambda run: f"$^{{{run[0].translate(_LEVEL)}}}$", text)

@@ -2,31 +2,30 @@
 
 from __future__ import annotations
 
-import io
+from contextlib import nullcontext
 from typing import Any
 
 import matplotlib as mpl
 from matplotlib.axes import Axes
-from matplotlib.backends.backend_pdf import FigureCanvasPdf
-from matplotlib.backends.backend_svg import FigureCanvasSVG
 from matplotlib.figure import Figure
 from matplotlib.lines import Line2D
 from matplotlib.patches import Rectangle
-from matplotlib.ticker import FixedLocator, FuncFormatter, NullLocator
+from matplotlib.ticker import FixedFormatter, FixedLocator, NullLocator
 from matplotlib.transforms import ScaledTranslation
 
 from archive.physics.film_static import onset_coverage
-from archive.reports.figure_style import LOOKS, STYLE
+from archive.reports.axis_units import axis_name
+from archive.reports.figure_style import LOOKS, STYLE, as_svg, raised, saved
 from archive.reports.plane_layout import (
-    axis_unit,
+    height_unit,
     is_short,
     logarithmic,
     mark_and_shade,
     round_values,
     side_by_side,
+    value_texts,
 )
 from archive.reports.plane_view import Bar, PlaneView
-from archive.reports.plane_words import LABELS
 
 __all__ = ["plane_figure"]
 
@@ -43,8 +42,7 @@ def plane_figure(view: PlaneView, *, kind: str = "pdf") -> bytes:
     view : PlaneView
     kind : {"pdf", "svg"}
     """
-    style: dict[str, Any] = {**STYLE, "svg.hashsalt": "stillroom", "svg.fonttype": "path"}
-    with mpl.rc_context(style):  # type: ignore[arg-type]
+    with mpl.rc_context(STYLE):  # type: ignore[arg-type]
         figure = Figure(figsize=_SIZE, layout="constrained")
         axes = figure.subplots()
         _sides(axes, view)
@@ -53,15 +51,8 @@ def plane_figure(view: PlaneView, *, kind: str = "pdf") -> bytes:
         _bars(axes, view)
         _points(axes, view)
         _legend(figure, view)
-        buffer = io.BytesIO()
-        if kind == "svg":
-            FigureCanvasSVG(figure)
-            figure.savefig(buffer, format="svg", metadata={"Date": None, "Creator": "stillroom"})
-        else:
-            FigureCanvasPdf(figure)
-            told = {"CreationDate": None, "Producer": "stillroom", "Creator": "stillroom"}
-            figure.savefig(buffer, format="pdf", metadata=told)
-    return buffer.getvalue()
+        with as_svg() if kind == "svg" else nullcontext():
+            return saved(figure)
 
 
 def _shade(look: int) -> str:
@@ -69,15 +60,16 @@ def _shade(look: int) -> str:
 
 
 def _sides(axes: Axes, view: PlaneView) -> None:
-    window, unit, log = view.window, axis_unit(view.axis), logarithmic(view.axis)
+    window, unit, log = view.window, height_unit(view.axis), logarithmic(view.axis)
     axes.set_xscale("log" if log[0] else "linear")
     axes.set_yscale("log" if log[1] else "linear")
     axes.set_xlim(window.cold, window.warm)
     bottom, top = window.bottom * unit.per_si, window.top * unit.per_si
     axes.set_ylim(bottom, top)
-    axes.set_xlabel("$T$ / K")
-    axes.xaxis.set_major_locator(FixedLocator(round_values(window.cold, window.warm, log=log[0])))
-    axes.xaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:g}"))
+    axes.set_xlabel(axis_name("temperature", "K"))
+    values = round_values(window.cold, window.warm, log=log[0])
+    axes.xaxis.set_major_locator(FixedLocator(values))
+    axes.xaxis.set_major_formatter(FixedFormatter(list(map(raised, value_texts(values)))))
     axes.xaxis.set_minor_locator(NullLocator())
     axes.yaxis.set_minor_locator(NullLocator())
     if view.axis == "cell":
@@ -87,13 +79,14 @@ def _sides(axes: Axes, view: PlaneView) -> None:
             axes.axhline(lane, color="#bbbbbb", linewidth=0.4, zorder=0)
         axes.tick_params(axis="y", length=0)
         return
-    axes.yaxis.set_major_locator(FixedLocator(round_values(bottom, top, log=log[1])))
-    axes.yaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:g}"))
-    axes.set_ylabel(LABELS[view.axis])
+    values = round_values(bottom, top, log=log[1])
+    axes.yaxis.set_major_locator(FixedLocator(values))
+    axes.yaxis.set_major_formatter(FixedFormatter(list(map(raised, value_texts(values)))))
+    axes.set_ylabel(raised(axis_name(view.axis, unit.plain)))
 
 
 def _lines(axes: Axes, view: PlaneView) -> None:
-    scale = axis_unit("coverage").per_si
+    scale = height_unit("coverage").per_si
     for line in view.lines:
         ends = (max(view.window.cold, 0.0), view.window.warm)
         heights = onset_coverage(ends, inert_coverage=line.inert) * scale
@@ -105,7 +98,7 @@ def _lines(axes: Axes, view: PlaneView) -> None:
 
 
 def _strips(axes: Axes, view: PlaneView) -> None:
-    scale = axis_unit(view.axis).per_si
+    scale = height_unit(view.axis).per_si
     most = max((strip.count for strip in view.strips), default=1)
     for strip in view.strips:
         box = Rectangle(
@@ -116,12 +109,16 @@ def _strips(axes: Axes, view: PlaneView) -> None:
 
 
 def _bars(axes: Axes, view: PlaneView) -> None:
-    places, scale = side_by_side(view.bars), axis_unit(view.axis).per_si
+    places, scale = side_by_side(view.bars), height_unit(view.axis).per_si
     for bar in view.bars:
-        short = bar.bottom == bar.top and is_short(bar, view.window, log=logarithmic(view.axis)[0])
+        narrow = is_short(bar, view.window, log=logarithmic(view.axis)[0])
+        x, y = [bar.cold, bar.warm], [bar.bottom * scale, bar.top * scale]
+        if bar.bottom != bar.top and not narrow:
+            # Which temperature went with which height is not known here: a box, not a slanted line.
+            x, y = [x[0], x[1], x[1], x[0], x[0]], [y[0], y[0], y[1], y[1], y[0]]
         (drawn,) = axes.plot(
-            (bar.cold, bar.warm), (bar.bottom * scale, bar.top * scale), linestyle=_line_of(bar), marker="|" if short else "",
-            markersize=5, markeredgewidth=1.2, color=_shade(bar.look), linewidth=1.3, alpha=0.75, solid_capstyle="butt", zorder=2,
+            x, y, linestyle=_line_of(bar), marker="|" if narrow and bar.bottom == bar.top else "", markersize=5, markeredgewidth=1.2,
+            color=_shade(bar.look), linewidth=1.3, alpha=0.75, solid_capstyle="butt", zorder=2,
         )  # fmt: skip
         drawn.set_transform(_shifted(axes, places[bar.address] * _POINTS_APART))
 
@@ -141,7 +138,7 @@ def _line_of(bar: Bar) -> str | tuple[int, tuple[float, ...]]:
 
 
 def _points(axes: Axes, view: PlaneView) -> None:
-    scale = axis_unit(view.axis).per_si
+    scale = height_unit(view.axis).per_si
     for point in view.points:
         marker = mark_and_shade(point.look)[0]
         u = (point.temperature_uncertainty or 0.0, (point.height_uncertainty or 0.0) * scale)

@@ -5,15 +5,17 @@ from __future__ import annotations
 import math
 from collections import defaultdict
 from collections.abc import Sequence
+from itertools import pairwise
 from typing import NamedTuple
 
 from archive.reports.figure_style import LOOKS
 from archive.reports.plane_view import Bar, PlaneAxis, Window
+from schemas.uncertain_text import rounded
 from schemas.units import parse_unit
 
 __all__ = [
-    "AxisUnit",
-    "axis_unit",
+    "HeightUnit",
+    "height_unit",
     "is_short",
     "logarithmic",
     "mark_and_shade",
@@ -23,9 +25,11 @@ __all__ = [
 
 # Share of the width of a picture.
 _SHORT = 0.008
+# From here on a number beside an axis is written as a power of ten.
+_LARGE = 1e6
 
 
-class AxisUnit(NamedTuple):
+class HeightUnit(NamedTuple):
     """Factor from the SI unit to the unit that is shown, and its names: plain, and as it is printed."""
 
     per_si: float
@@ -33,14 +37,14 @@ class AxisUnit(NamedTuple):
     text: str
 
 
-_UNITS: dict[PlaneAxis, AxisUnit] = {
-    "coverage": AxisUnit(1e6, "umol/m^2", parse_unit("umol/m^2").typographic),
-    "pressure": AxisUnit(1.0, "Pa", "Pa"),
-    "cell": AxisUnit(1.0, "", ""),
+_UNITS: dict[PlaneAxis, HeightUnit] = {
+    "coverage": HeightUnit(1e6, "umol/m^2", parse_unit("umol/m^2").typographic),
+    "pressure": HeightUnit(1e-3, "kPa", "kPa"),
+    "cell": HeightUnit(1.0, "", ""),
 }
 
 
-def axis_unit(axis: PlaneAxis) -> AxisUnit:
+def height_unit(axis: PlaneAxis) -> HeightUnit:
     """Return the unit in which an axis is shown."""
     return _UNITS[axis]
 
@@ -139,3 +143,28 @@ def _round_logarithmic(low: float, high: float, most: int) -> list[float]:
 
 def _inside(values: Sequence[float], low: float, high: float) -> list[float]:
     return [value for value in values if low <= value <= high]
+
+
+def value_texts(values: Sequence[float]) -> list[str]:
+    """Return round values as they are written beside an axis: evenly spaced ones to the same place.
+
+    Parameters
+    ----------
+    values : sequence of float
+
+    Examples
+    --------
+    >>> value_texts([0.0, 0.5, 1.0]), value_texts([0.01, 0.1, 1.0]), value_texts([1e6, 1e7, 1e8])
+    (['0.0', '0.5', '1.0'], ['0.01', '0.1', '1'], ['10⁶', '10⁷', '10⁸'])
+    """
+    steps = [high - low for low, high in pairwise(values)]
+    if steps and max(steps) < 1.01 * min(steps) and max(map(abs, values)) < _LARGE:
+        places = max(0, -math.floor(math.log10(min(steps)) + 1e-9))
+        return [f"{value:.{places}f}".replace("-", "\N{MINUS SIGN}") for value in values]
+    return [_alone(value) for value in values]
+
+
+def _alone(value: float) -> str:
+    if value == 0 or 1e-4 <= abs(value) < _LARGE:
+        return f"{value:g}".replace("-", "\N{MINUS SIGN}")
+    return rounded(float(f"{value:.2g}"), None).typographic().removeprefix("1\N{THIN SPACE}×\N{THIN SPACE}")

@@ -8,16 +8,17 @@ from collections.abc import Iterator
 
 from archive.index import SweepResult
 from archive.physics.film_static import onset_coverage
-from archive.reports.plane_layout import axis_unit
+from archive.reports.plane_layout import height_unit
 from archive.reports.plane_view import Bar, Line, PlaneAxis, PlaneView, Point, Strip
 from schemas.quantity import Quantity
 from schemas.uncertain_text import html_text, in_preferred_unit, rounded
 from schemas.units import parse_unit
 
 __all__ = [
-    "LABELS",
     "TITLES",
     "bar_words",
+    "height_words",
+    "line_remarks",
     "line_words",
     "point_words",
     "remarks",
@@ -32,9 +33,6 @@ TITLES: dict[PlaneAxis, str] = {
     "pressure": "Pressure against temperature",
     "cell": "Cells against temperature",
 }
-
-LABELS: dict[PlaneAxis, str] = {"coverage": "$n$ / µmol m$^{-2}$", "pressure": "$p$ / Pa", "cell": ""}
-"""Label of the axis in a figure."""
 
 _DASH = "\N{EN DASH}"
 _SPACE = "\N{NO-BREAK SPACE}"
@@ -127,9 +125,9 @@ def line_words(line: Line) -> str:
 def remarks(view: PlaneView) -> Iterator[str]:
     """Yield sentences on what is shown, what is merged, and what is left out."""
     shown = len(view.bars) + view.merged
-    yield f"{_count(view.sweeps, 'sweep')}, {shown} of them in this picture."
+    yield f"{_count(view.sweeps, 'sweep')}, {shown} of them shown."
     if view.outside:
-        yield f"{_count(view.outside, 'sweep')} beyond its edges."
+        yield f"{_count(view.outside, 'sweep')} beyond the edges."
     for what, count in view.unplaced:
         yield f"{_count(count, 'sweep')} without {what}."
     if view.merged:
@@ -139,10 +137,14 @@ def remarks(view: PlaneView) -> Iterator[str]:
         )
     if view.thinned:
         yield f"{_count(view.thinned, 'transition')} left out where others of the same cell stand at the same place; the outermost are all here."
+
+
+def line_remarks(view: PlaneView) -> Iterator[str]:
+    """Yield sentences on the lines: what they are, what they rest on, and which cells have none."""
     if view.lines:
-        per_kelvin = float(onset_coverage(1.0, inert_coverage=0.0)) * axis_unit("coverage").per_si
+        per_kelvin = float(onset_coverage(1.0, inert_coverage=0.0)) * height_unit("coverage").per_si
         yield (
-            f"Broken lines: the coverage at which a flat film becomes superfluid by the universal jump alone, {per_kelvin:.3f} {axis_unit('coverage').text} per kelvin "
+            f"Broken lines: the coverage at which a flat film becomes superfluid by the universal jump alone, {per_kelvin:.3f} {height_unit('coverage').text} per kelvin "
             "above its inert layer (Nelson and Kosterlitz, Phys. Rev. Lett. 39, 1201, 1977). What thermal excitations take away is not in it, so that "
             "films are expected above their line."
         )

@@ -5,7 +5,6 @@ from __future__ import annotations
 import math
 from collections.abc import Iterator
 from datetime import UTC, datetime, timedelta
-from pathlib import Path
 from typing import Any
 
 import pytest
@@ -21,77 +20,20 @@ from archive.physics.film_static import onset_coverage
 from archive.reports.plane_figure import plane_figure
 from archive.reports.plane_layout import round_values, side_by_side
 from archive.reports.plane_view import Bar, PlaneView, Point, Window
-from archive.reports.plane_words import remarks
+from archive.reports.plane_words import line_remarks, remarks
 from archive.store.memory import MemoryStore
 from tests.archive.index import documents as make
+from tests.plane_archive import planed
 
 LINEAR = (False, False)
 
 
-def _sweep(
-    name: str, cold: float | None, warm: float | None, coverage: float | None, **said: Any
-) -> dict[str, Any]:
-    kelvin = {
-        "temperature_low": None if cold is None else make.number(cold, "K"),
-        "temperature_high": None if warm is None else make.number(warm, "K"),
-    }
-    n = None if coverage is None else make.number(coverage, "umol/m^2", uncertainty=0.5)
-    return make.sweep(name, coverage=n, **{"cell": "TO-4.r1", **kelvin, **said})
-
-
-def _dose(name: str, hours: float, coverage: float) -> dict[str, Any]:
-    return {
-        "name": name, "at": make.moment(hours), "act": "add", "counted": True, "method": "pV = nRT",
-        "running_coverage": make.number(coverage, "umol/m^2"), "amount": make.number(1e-6, "mol"), "running_amount": make.number(1e-5, "mol"),
-    }  # fmt: skip
-
-
-def _coverage(name: str, value: float, u: float) -> dict[str, Any]:
-    shown = make.number(value * 1e-6, "mol/m^2", uncertainty=u * 1e-6)
-    return make.output(name, quantity="coverage", ucum="mol/m2", **{**shown, "scale": None})
-
-
 @pytest.fixture(scope="module")
 def source(tmp_path_factory: pytest.TempPathFactory) -> Iterator[LabSource]:
-    """Give an archive's index of three cells with films, one without, and one with a film in pores."""
-    path: Path = tmp_path_factory.mktemp("plane") / "index.sqlite3"
-    pressure = make.channel("p", quantity="pressure", unit="kPa", ucum="kPa", low=2.0, high=30.0)
-    first = make.accession(
-        "2025-01",
-        sweeps=(
-            _sweep("e1", 0.02, 1.0, 0.0, empty_cell=True),
-            _sweep("s1", 0.05, 0.6, 30.0),
-            _sweep("s2", 0.05, 0.7, 33.0, cell="TO-4.r2"),
-            _sweep("d1", 0.02, 0.02, None, kind="dose-run", begin=make.moment(10), end=make.moment(20)),
-            _sweep("s3", 0.1, 0.9, 31.0, cell="PG-2.r1", substrate="glass.r1", begin=make.moment(30)),
-            _sweep("t1", 0.6, 0.6, None, kind="dose-run", cell="TS-1.r1", begin=make.moment(40), end=make.moment(50)),
-            _sweep("s4", 0.1, None, 40.0, cell="NEW-1.r1", begin=make.moment(60)),
-            _sweep("i1", 4.2, 4.2, None, kind="isotherm", cell="AC-1.r1", begin=None, end=None, channels=[pressure]),
-            _sweep("none", None, None, 40.0, kind="log"),
-        ),
-        doses=[_dose("d01", 11, 5.0), _dose("d02", 15, 28.0), _dose("d03", 41, 30.0), _dose("d04", 49, 50.0), _dose("d05", 70, 90.0)],
-        records=[make.record("TO-4.r1"), make.record("glass.r1", kind="substrate", pore_diameter={"value": 7.0, "unit": "nm"})],
-    )  # fmt: skip
-    both = (
-        make.output(value=0.41, uncertainty=0.002),
-        make.output("T_KT_by_peak", value=0.42),
-        make.output("crossing_temperature", value=0.43),
-    )
-    reductions = (
-        make.reduction("2025-01/s1", outputs=(make.output(value=0.3),)),
-        make.reduction("2025-01/s1", reduction_number=2, outputs=both),
-        make.reduction("2025-01/s3", plan="porous-film", outputs=(make.output("T_c", value=0.5),)),
-        make.reduction("2025-01/d1", plan="dose-run", outputs=(_coverage("onset_coverage", 24.0, 0.4),)),
-        make.reduction("2025-01/t1", plan="third-sound", outputs=(_coverage("transition_coverage", 29.0, 0.1),)),
-    )  # fmt: skip
-    documents = [_headlined(each, "T_KT", "T_KT_by_peak", "T_c", "onset_coverage", "transition_coverage") for each in reductions]  # fmt: skip
-    with Index.create(f"sqlite:///{path}") as index:
-        index.rebuild([make.entry(document) for document in (first, *documents)])
+    """Give what the plane is read from."""
+    root = planed(tmp_path_factory.mktemp("plane") / "lab")
+    with Index.open(f"sqlite:///{root}/index.sqlite3") as index:
         yield LabSource(MemoryStore(), index)
-
-
-def _headlined(document: Any, *names: str) -> Any:
-    return document.model_copy(update={"plan": document.plan.model_copy(update={"headline": names})})
 
 
 def _names(view: PlaneView) -> list[str]:
@@ -177,7 +119,7 @@ def test_each_cell_has_its_line_from_its_own_inert_layer_else_from_zero(source: 
         pytest.param({"cooldown": "2025-01", "until": make.BEGIN + timedelta(hours=5)}, "any", ["e1", "s1", "s2"], id="until"),
         pytest.param({}, "reduced", ["d1", "s1", "s3", "t1"], id="reduced"),
         pytest.param({"kind": "temperature-sweep"}, "not reduced", ["e1", "s2", "s4"], id="not reduced"),
-        pytest.param({}, "withdrawn", [], id="nothing is withdrawn"),
+        pytest.param({}, "withdrawn", ["w1"], id="withdrawn"),
         pytest.param({"coverage": (30.5e-6, 34e-6)}, "any", ["s2", "s3"], id="coverage"),
     ],
 )  # fmt: skip
@@ -293,9 +235,10 @@ def test_the_figure_is_made_twice_the_same(source: LabSource, axis: Any) -> None
 
 
 def test_the_picture_says_what_it_leaves_out_and_assumes(source: LabSource) -> None:
-    said = " ".join(remarks(plane(source, SearchQuery()))).replace("\N{NO-BREAK SPACE}", " ")
+    view = plane(source, SearchQuery())
+    said = " ".join((*remarks(view), *line_remarks(view))).replace("\N{NO-BREAK SPACE}", " ")
     for words in (
-        "9 sweeps, 7 of them in this picture",
+        "9 sweeps, 7 of them shown",
         "1 sweep without a temperature",
         "8.723 µmol·m⁻² per kelvin",
         "Thermal excitations",
@@ -304,3 +247,12 @@ def test_the_picture_says_what_it_leaves_out_and_assumes(source: LabSource) -> N
         "PG-2: no line, since a film on the walls of pores has no universal jump",
     ):
         assert words.casefold() in said.casefold(), words
+
+
+def test_withdrawn_sweeps_say_so(source: LabSource) -> None:
+    (bar,) = plane(source, SearchQuery(), state="withdrawn").bars
+    assert bar.marks == ("withdrawn", "not reduced")
+    marks = {
+        bar.address.partition("/")[2]: bar.marks for bar in plane(source, SearchQuery(withdrawn=True)).bars
+    }
+    assert (marks["w1"], marks["s1"], marks["e1"]) == (bar.marks, (), ("empty cell", "not reduced"))
