@@ -21,14 +21,20 @@ __all__ = ["check", "draft", "ingest", "schema"]
 _FOLDER = click.Path(path_type=Path)
 
 
-@click.command(short_help="Print the JSON Schema of the sheet.")
-@click.argument("thing", type=click.Choice(["sheet", "plan"]), default="sheet", metavar="[sheet|plan]")
+_SHEETS = ("sheet", "plan", "revision", "amendment", "calibration")
+
+
+@click.command(short_help="Print the JSON Schema of the sheet, or of another.")
+@click.argument("thing", type=click.Choice(_SHEETS), default="sheet", metavar=f"[{'|'.join(_SHEETS)}]")
 def schema(*, thing: str) -> None:
-    """Print the JSON Schema (2020-12) of the cooldown sheet, or of a plan, for editors that complete and check TOML.
+    """Print the JSON Schema (2020-12) of the cooldown sheet, for editors that complete and check TOML.
+
+    Or that of a plan, of what `stillroom revise` and `stillroom amend` take, or of what `stillroom calibration` writes.
 
     \b
-    Example:
+    Examples:
       stillroom schema > cooldown.schema.json
+      stillroom schema amendment > amendment.schema.json
     """
     from archive.intake.json_schema import json_schema
 

@@ -11,9 +11,12 @@ import pytest
 from click.testing import Result
 
 from archive.intake.cautions import FIXED_TEXT
+from archive.intake.json_schema import THINGS
 from archive.lab import CheckReport, IngestOutcome
 from schemas.finding import Finding, Severity, Waiver
 from tests.archive.commands.support import FakeArchive, child, parsed
+from tests.outside import missing
+from tests.revisable_cooldown import PLAN, amendment, calibration
 
 Run = Callable[..., Result]
 Fake = Callable[..., FakeArchive]
@@ -129,13 +132,43 @@ def test_ingest_says_what_it_did(state: str, code: int, sentence: str, run: Run,
 
 
 def test_the_schema_is_json_schema_2020_12(run: Run) -> None:
-    for thing in ("sheet", "plan"):
+    for thing in THINGS:
         schema = parsed(run("schema", thing))
         assert schema["$schema"] == "https://json-schema.org/draft/2020-12/schema"
         assert schema["$id"].startswith("tag:")
         jsonschema.Draft202012Validator.check_schema(schema)
     validator = jsonschema.Draft202012Validator(parsed(run("schema")))
     assert {error.validator for error in validator.iter_errors({"format": "x"})} >= {"const", "required"}
+
+
+@pytest.mark.parametrize(
+    ("thing", "text"),
+    [
+        ("amendment", amendment(
+            '[[change]]\naddress = "2026-03/d02"\nfield = "amount"\nvalue = "16.0(1) umol"\n'
+            '[[calibration]]\nthermometer = "RX"\nuse = "RX-cal.r2"\nsweeps = ["s002"]\n'
+            '[[left_out]]\nsweep = "s001"\nrows = [5, 9]\nreason = "a door was slammed"'
+        )),
+        ("revision", 'format = "stillroom-revision/1"\n' + calibration(2, more="valid_from = 2026-03-01")),
+        ("calibration", calibration(2)),
+        ("plan", PLAN.replace("REVISION", "1").replace("CHANGED", "")),
+    ],
+)  # fmt: skip
+def test_another_program_checks_sheets_of_acts_by_their_schema(
+    thing: str, text: str, run: Run, tmp_path: Path
+) -> None:
+    try:
+        from check_jsonschema import main
+    except ImportError:
+        missing("the package check-jsonschema is not installed")
+    schema, good, bad = tmp_path / "schema.json", tmp_path / "good.toml", tmp_path / "bad.toml"
+    schema.write_text(run("schema", thing).stdout, encoding="utf-8")
+    good.write_text(text, encoding="utf-8")
+    bad.write_text(f"an_unknown_word = 1\n{text}", encoding="utf-8")
+    for path, code in ((good, 0), (bad, 1)):
+        with pytest.raises(SystemExit) as ended:
+            main(["--schemafile", str(schema), str(path)])
+        assert ended.value.code == code
 
 
 def test_the_next_command_can_be_pasted_into_a_shell(run: Run, fake: Fake) -> None:
