@@ -83,20 +83,26 @@ def trace(
 ) -> None:
     """Trace a result, array, sentence or figure down to raw files, their digests and lines; or forwards.
 
-    ADDRESS is anything that `stillroom show` knows; a step as an appendix cites it, or the whole comment above a sentence
-    of an appendix; or the file of a figure beside its appendix.json.
+    ADDRESS is anything that `stillroom show` knows; the mark behind a sentence or figure of an appendix, with the folder of
+    the appendix before it; a step as an appendix cites it, or the whole comment above a sentence; or the file of a figure
+    beside its appendix.json.
 
     \b
     Examples:
       stillroom trace 2026-03/s017@film-transition.2#T_KT
       stillroom trace "2026-03/s017@film-transition.2 step 4"
+      stillroom trace "thesis/appendix#s17"
       stillroom trace appendix/figures/background-2026-03-s001.pdf
       stillroom trace --forward RX-2-cal.r1
       stillroom trace --forward 2026-03.a1:raw/ts05.csv --svg what-rests-on-it.svg
     """
-    if forward or not address.endswith((".pdf", ".png", ".svg")):
-        from archive.lab.tracing import parts_of
+    from archive.lab.cited import is_mark, parts_of
 
+    # What is pasted out of an appendix is told apart there; anything else must be an address.
+    pasted = (
+        address.endswith((".pdf", ".png", ".svg")) or address.lstrip().startswith("%") or is_mark(address)
+    )
+    if forward or not pasted:
         for part in [address] if forward else parts_of(address) or [address]:
             require_address(part.partition(" step ")[0])
     with opening.open_archive(archive_dir) as lab, Progress("tracing"):

@@ -6,7 +6,6 @@ raw sheet they stand in.
 
 from __future__ import annotations
 
-import json
 import re
 from collections.abc import Iterable
 from dataclasses import replace
@@ -14,17 +13,18 @@ from pathlib import Path
 
 from archive.errors import ArchiveError, BadRequest
 from archive.intake.sheet import LineMap
+from archive.lab.cited import is_mark, parts_of, sources_of_figure, sources_of_mark
 from archive.lab.effective import EffectiveSource
 from archive.lab.source import LabSource, key_of
 from archive.reduction.source import Source
 from archive.reduction.trace import TraceNode, trace, trace_step
 from schemas.address import parse_address
-from schemas.lineage import AccessionDocument
+from schemas.lineage import AccessionDocument, RawFileEntry
 
-__all__ = ["backward", "parts_of", "sources_of_figure"]
+__all__ = ["backward"]
 
 _STEP = re.compile(r"^(?P<reduction>\S+@\S+?) step (?P<number>[1-9][0-9]{0,3})$")
-_CITED = re.compile(r"^\s*%\s*R[0-9]+\s*\|\s*")
+_NAME = re.compile(r"^[A-Za-z0-9][A-Za-z0-9_-]{0,63}$")
 _ACCESSION = re.compile(r"\.a[1-9][0-9]*$")
 
 
@@ -39,6 +39,14 @@ class _Sheet:
         self.lines = LineMap(text)
         self.content = document.sheet
         self.sha256 = source.store.raw_digest(key_of(document.address), document.sheet_file)
+
+    def where(self, about: str) -> list[int]:
+        """Lines of the known effect or the waiver that is meant; the first line if it is neither."""
+        word, _, rest = about.partition(" ")
+        effects, waivers = self.content.effect, self.content.waiver
+        found = [("effect", n) for n, each in enumerate(effects) if (word, each.effect) == ("effect", rest)]
+        found += [("waiver", n) for n, each in enumerate(waivers) if (each.check, each.place) == (word, rest)]
+        return [self.lines.line(each) for each in found] or [1]
 
     def node(self, what: str, lines: Iterable[int]) -> TraceNode:
         """Return the raw file with the lines where something stands."""
@@ -59,7 +67,8 @@ def backward(source: LabSource, text: str) -> TraceNode:
     source : LabSource
     text : str
         An address, a step (``2026-03/s017@film-transition.2 step 4``), or several of them with `;` between, as the comment
-        before each sentence of a methods appendix gives them; or the path of a figure beside its ``appendix.json``.
+        before each sentence of a methods appendix gives them; the mark behind a sentence or figure with the folder of the
+        appendix before it (``appendix#s17``); or the path of a figure beside its ``appendix.json``.
 
     Raises
     ------
@@ -68,6 +77,10 @@ def backward(source: LabSource, text: str) -> TraceNode:
     UnknownAddress
         If the archive does not hold it.
     """
+    if is_mark(text):
+        said = sources_of_mark(text)
+        below = tuple(_led_home(source, _one(source, each), {}) for each in said.sources)
+        return TraceNode(text, "citation", f"{text.rpartition('#')[2]}: {said.text}", {}, below)
     if text.endswith((".pdf", ".png", ".svg")):
         cited = sources_of_figure(Path(text))
         label = f"figure {Path(text).name}"
@@ -84,65 +97,46 @@ def backward(source: LabSource, text: str) -> TraceNode:
     return TraceNode("", "citation", label, {}, tuple(nodes))
 
 
-def parts_of(text: str) -> list[str]:
-    """Addresses and steps that a text cites; a raw file may have a semicolon in its name.
-
-    Examples
-    --------
-    >>> parts_of("% R21 | 2026-03/s017@film-transition.2 step 4; 2026-03/s001@empty-cell.1 step 1")
-    ['2026-03/s017@film-transition.2 step 4', '2026-03/s001@empty-cell.1 step 1']
-    >>> parts_of("2026-03.a1:raw/first;second.csv")
-    ['2026-03.a1:raw/first;second.csv']
-    """
-    try:
-        parse_address(text)
-    except ValueError:
-        return [part.strip() for part in _CITED.sub("", text).split(";") if part.strip()]
-    return [text]
-
-
-def sources_of_figure(path: Path) -> list[str]:
-    """Addresses of the reductions that a figure of a methods appendix was drawn from.
-
-    Parameters
-    ----------
-    path : Path
-        The figure's file, in the folder of its ``appendix.json`` or one below.
-
-    Raises
-    ------
-    BadRequest
-        If no ``appendix.json`` is there, it cannot be read, or it does not tell of the figure.
-    """
-    folder = path.resolve().parent
-    listing = next(
-        (each / "appendix.json" for each in (folder, folder.parent) if (each / "appendix.json").is_file()),
-        None,
-    )
-    if listing is None:
-        raise BadRequest(
-            "this figure's appendix is not there", file=str(path), expected="appendix.json beside it or one folder up",
-            remedy="give the figure's path inside the folder that `stillroom appendix` wrote, or an address",
-        )  # fmt: skip
-    try:
-        sections = json.loads(listing.read_text(encoding="utf-8"))["sections"]
-        figures = [figure for section in sections for figure in section["figures"]]
-        told = next(
-            (figure["reductions"] for figure in figures if Path(figure["file"]).name == path.name), None
-        )
-    except (OSError, ValueError, KeyError, TypeError) as error:
-        raise BadRequest("this is no appendix of Stillroom", file=str(listing), found=str(error)) from None
-    if not told:
-        raise BadRequest("the appendix does not tell of this figure", file=str(listing), found=path.name)
-    return [str(each) for each in told]
-
-
 def _one(source: LabSource, text: str) -> TraceNode:
     step = _STEP.match(text)
     if step is not None:
         read = _as_recorded(source, step["reduction"])
         return trace_step(step["reduction"], int(step["number"]), read)
-    return trace(text, _as_recorded(source, text))
+    return _told_by_sheets(source, text) or trace(text, _as_recorded(source, text))
+
+
+def _told_by_sheets(source: LabSource, text: str) -> TraceNode | None:
+    """What an appendix says of a whole cooldown, of one of its known effects or findings, or of a thing in any revision."""
+    if text.startswith("the "):
+        return TraceNode("", "citation", f"{text}, all of them; ask for a sentence about one thing", {})
+    head, _, about = text.partition(" ")
+    if head in source.cooldowns():
+        sheets = [_Sheet(source, each) for each in source.accessions(head)]
+        below = [each.node(about or "the whole sheet", each.where(about)) for each in sheets]
+        place = about.rpartition(" ")[2]
+        return TraceNode(head, "cooldown", text, {}, (*below, *_place(source, head, place)))
+    if text in {row.address for row in source.index.accessions(text.rpartition(".a")[0])}:
+        sheet = _Sheet(source, source.accession(text))
+        files = [each for each in sheet.document.raw_files if each.name != sheet.document.sheet_file]
+        below = [sheet.node("the whole sheet", [1]), *(_raw(text, each) for each in files)]
+        return TraceNode(text, "accession", text, {}, tuple(below))
+    record = None if about or not _NAME.match(head) else source.find_record(head)
+    return None if record is None else trace(record.address, source)
+
+
+def _raw(accession: str, entry: RawFileEntry) -> TraceNode:
+    address = f"{accession}:{entry.name}"
+    return TraceNode(address, "raw-file", f"{address}, sha256 {entry.sha256}", {"sha256": entry.sha256})
+
+
+def _place(source: LabSource, cooldown: str, place: str) -> list[TraceNode]:
+    """The lineage of the sweep, channel or record that a finding is about, if it is one."""
+    for address in (f"{cooldown}/{place}", place):
+        try:
+            return [_led_home(source, trace(address, source), {})]
+        except (ArchiveError, ValueError):
+            continue
+    return []
 
 
 def _as_recorded(source: LabSource, text: str) -> Source:

@@ -16,6 +16,7 @@ from typing import Any
 
 from archive.errors import BadRequest
 from archive.reports.after_the_fact import act_sentences
+from archive.reports.appendix_marks import marks_table, with_marks
 from archive.reports.appendix_tables import Table, results_table, tables
 from archive.reports.bibliography import bibliography_of
 from archive.reports.budget import largest_share, monte_carlo_sentence
@@ -151,6 +152,8 @@ def _account(
     )
     data = [*_of("data", said), *(("R58", each) for each in data_sentences(scope, len(drawn)))]
     sections.append(_section("data", "Data and code", data))
+    sections = with_marks(sections)
+    sections[-1]["tables"] = [*sections[-1]["tables"], marks_table(sections)]
     prefix = "stillroom-" + re.sub(r"[^A-Za-z0-9]+", "-", scope.asked[0]).strip("-").lower()
     return {
         "title": title,
@@ -228,7 +231,7 @@ def _comment(text: str) -> Tex:
     return Tex("".join(each if " " <= each <= "~" else "?" for each in text))
 
 
-def _line(code: str, said: Said, cited: Sequence[str] = ()) -> dict[str, Tex]:
+def _line(code: str, said: Said, mark: str, cited: Sequence[str] = ()) -> dict[str, Tex]:
     citation = rf"~\cite{{{','.join(cited)}}}" if cited else ""
     latex = prose(said.text).latex
     if citation and latex.endswith("."):
@@ -236,7 +239,13 @@ def _line(code: str, said: Said, cited: Sequence[str] = ()) -> dict[str, Tex]:
     elif citation:
         latex = Tex(latex + citation)
     group = f"{code} {said.record.split()[0]}" if code in ("R52", "R53") else code
-    return {"group": Tex(group), "code": Tex(code), "record": _comment(said.record), "latex": latex}
+    return {
+        "group": Tex(group),
+        "code": Tex(code),
+        "record": _comment(said.record),
+        "latex": latex,
+        "mark": Tex(mark),
+    }
 
 
 def _cited(said: Said) -> tuple[str, ...]:
@@ -250,12 +259,18 @@ def _printed(account: dict[str, Any]) -> dict[str, Any]:
     prefix = account["prefix"]
     sections = []
     for each in account["sections"]:
-        lines = [_line(code, said, _cited(said)) for code, said in each["sentences"]]
+        lines = [
+            _line(code, said, mark, _cited(said))
+            for mark, (code, said) in zip(each["marks"], each["sentences"], strict=True)
+        ]
         steps = [
             {
                 "title": prose(block["title"]).latex,
                 "record": _comment(block["record"]),
-                "sentences": [_line(*line) for line in block["lines"]],
+                "sentences": [
+                    _line(code, said, mark, cited)
+                    for mark, (code, said, cited) in zip(block["marks"], block["lines"], strict=True)
+                ],
             }
             for block in each["steps"]
         ]
@@ -265,8 +280,9 @@ def _printed(account: dict[str, Any]) -> dict[str, Any]:
                 "caption": prose(drawn.caption).latex,
                 "source": tex(breakable(", ".join(drawn.sources))),
                 "label": Tex(f"{prefix}-fig-{number}"),
+                "mark": Tex(mark),
             }
-            for number, drawn in enumerate(each["figures"], 1)
+            for number, (mark, drawn) in enumerate(zip(each["figure_marks"], each["figures"], strict=True), 1)
         ]
         sections.append({
             "key": Tex(each["key"]), "title": each["title"], "sentences": lines, "steps": steps, "tables": [_for_tex(table, prefix) for table in each["tables"]], "figures": shown,
@@ -294,10 +310,10 @@ def _companion(scope: Scope, account: dict[str, Any]) -> dict[str, Any]:
     """Return everything printed, as plain strings, beside the numbers with full precision."""
     sections = [
         {
-            "key": each["key"], "title": each["title"], "sentences": [{"item": code, "record": said.record, "present": said.present, "text": said.text} for code, said in each["sentences"]],
-            "steps": [{"reduction": block["record"], "title": block["title"], "sentences": [line[1].text for line in block["lines"]]} for block in each["steps"]],
+            "key": each["key"], "title": each["title"], "sentences": [{"mark": mark, "item": code, "record": said.record, "present": said.present, "text": said.text} for mark, (code, said) in zip(each["marks"], each["sentences"], strict=True)],
+            "steps": [{"reduction": block["record"], "title": block["title"], "marks": block["marks"], "sentences": [line[1].text for line in block["lines"]]} for block in each["steps"]],
             "tables": [{"name": table.label, "caption": table.caption, "heads": [str(text) for text, _ in table.heads], "rows": [[cell.plain for cell in row] for row in table.rows]} for table in each["tables"]],
-            "figures": [{"file": drawn.name, "caption": drawn.caption, "reductions": list(drawn.sources)} for drawn in each["figures"]],
+            "figures": [{"mark": mark, "file": drawn.name, "caption": drawn.caption, "reductions": list(drawn.sources)} for mark, drawn in zip(each["figure_marks"], each["figures"], strict=True)],
         }
         for each in account["sections"]
     ]  # fmt: skip

@@ -80,6 +80,26 @@ def test_a_step_and_a_sentence_of_an_appendix_are_led_down(reduced: Archive) -> 
         reduced.trace(f"{EMPTY} step 9")
 
 
+def test_every_mark_of_an_appendix_is_led_home(reduced: Archive, tmp_path: Path) -> None:
+    reduced.write_reports(reduced.appendix([EMPTY]), tmp_path / "thesis")
+    sections = json.loads((tmp_path / "thesis" / "appendix.json").read_text(encoding="utf-8"))["sections"]
+    said = {each["mark"]: each for section in sections for each in section["sentences"]}
+    for mark, each in said.items():
+        node = reduced.trace(f"{tmp_path / 'thesis'}#{mark}")
+        assert node.label == f"{mark}: {each['text']}"
+        rests_on_raw = any(below.kind == "raw-file" for below in every(node))
+        assert rests_on_raw == (not each["record"].startswith("the ")), each
+    (block,) = [block for section in sections for block in section["steps"]]
+    step = reduced.trace(f"{tmp_path / 'thesis' / 'appendix.json'}#{block['marks'][0]}")
+    assert [below.address for below in step.children] == [f"{EMPTY} step 1"]
+    figure = reduced.trace(f"{tmp_path / 'thesis'}#f1")
+    assert [below.address for below in figure.children] == [EMPTY]
+    last = f"s{len(said) + len(block['marks'])}"
+    with pytest.raises(BadRequest, match=f"no such mark.*found s9999; expected s1 to {last} and f1 to f"):
+        reduced.trace(f"{tmp_path / 'thesis'}#s9999")
+    assert reduced.trace(f"% ST | {EMPTY} step 1").kind == "step"
+
+
 def test_a_figure_is_led_to_its_reductions(reduced: Archive, tmp_path: Path) -> None:
     told = {"sections": [{"figures": [{"file": "figures/background.pdf", "reductions": [EMPTY]}]}]}
     (tmp_path / "figures").mkdir()

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import re
+from dataclasses import replace
 
 import pytest
 
@@ -12,6 +13,8 @@ from archive.reduction.steps import STEPS
 from archive.reports import methods_appendix
 from archive.reports.appendix import ITEMS
 from archive.reports.bibliography import bibliography_of, known_keys
+from archive.reports.figures import figures
+from archive.reports.scope import Scope
 from tests.archive.reports.factories import accession, film_view, finding, moment, reduction, view_of
 
 ADDRESS = "2026-03/s001@film-transition.1"
@@ -243,6 +246,34 @@ def test_it_compiles_alone_at_every_level(compiled, level):
     assert "Films on polyimide" in text
     assert "731.2(1.2)" in text
     assert "Undefined control sequence" not in log
+
+
+def test_every_sentence_and_figure_is_printed_with_its_mark_and_what_it_rests_on(compiled):
+    files = made()
+    (fits,) = [each for each in companion(files)["sections"] if each["key"] == "fits"]
+    text = files["appendix.tex"].decode()
+    log, pages = compiled(files)
+    assert "Undefined control sequence" not in log
+    page = "".join("".join(pages).split())
+    told = companion(files)["sections"]
+    marks = [each["mark"] for section in told for each in section["sentences"]]
+    marks += [mark for section in told for block in section["steps"] for mark in block["marks"]]
+    assert sorted(marks, key=lambda each: int(each[1:])) == [f"s{k}" for k in range(1, len(marks) + 1)]
+    assert [each["mark"] for each in fits["figures"]] == ["f1", "f2"]
+    for mark in [*marks, "f1", "f2"]:
+        assert f"#{mark}" in page, mark
+        assert text.count(f"\\stillmark{{{mark}}}") == 1
+    (table,) = [each for each in told[-1]["tables"] if each["name"] == "marks"]
+    steps = next(each for each in told if each["steps"])["steps"][0]["marks"]
+    assert [f"{ADDRESS}, one mark a step", f"#{steps[0]} to #{steps[-1]}"] in table["rows"]
+
+
+def test_figures_do_not_pile_up_before_their_places(compiled, monkeypatch):
+    """LaTeX lets eighteen figures wait and no more; a chapter may have many."""
+    drawn = next(figures(Scope([film_view()], [ADDRESS])))
+    many = [replace(drawn, name=f"figures/f-{number}.pdf") for number in range(30)]
+    monkeypatch.setattr("archive.reports.appendix.figures", lambda scope: many)
+    compiled(made())
 
 
 def test_it_compiles_without_siunitx(compiled):
