@@ -14,7 +14,7 @@ from matplotlib.ticker import FixedFormatter, FixedLocator, NullLocator
 from matplotlib.transforms import ScaledTranslation
 
 from archive.physics.film_static import onset_coverage
-from archive.reports.axis_units import axis_name
+from archive.reports.axis_units import symbol
 from archive.reports.figure_style import LOOKS, STYLE, as_svg, raised, saved
 from archive.reports.plane_layout import (
     height_unit,
@@ -66,7 +66,7 @@ def _sides(axes: Axes, view: PlaneView) -> None:
     axes.set_xlim(window.cold, window.warm)
     bottom, top = window.bottom * unit.per_si, window.top * unit.per_si
     axes.set_ylim(bottom, top)
-    axes.set_xlabel(axis_name("temperature", "K"))
+    axes.set_xlabel(f"${symbol('temperature')}$ / K")
     values = round_values(window.cold, window.warm, log=log[0])
     axes.xaxis.set_major_locator(FixedLocator(values))
     axes.xaxis.set_major_formatter(FixedFormatter(list(map(raised, value_texts(values)))))
@@ -82,7 +82,7 @@ def _sides(axes: Axes, view: PlaneView) -> None:
     values = round_values(bottom, top, log=log[1])
     axes.yaxis.set_major_locator(FixedLocator(values))
     axes.yaxis.set_major_formatter(FixedFormatter(list(map(raised, value_texts(values)))))
-    axes.set_ylabel(raised(axis_name(view.axis, unit.plain)))
+    axes.set_ylabel(f"${symbol(view.axis)}$ / {raised(unit.text)}")
 
 
 def _lines(axes: Axes, view: PlaneView) -> None:

@@ -5,16 +5,13 @@ The browser is the one of the system: nothing is downloaded.
 
 from __future__ import annotations
 
-import os
-import signal
-import subprocess
-import sys
 from collections.abc import Iterator
 from pathlib import Path
 
 import pytest
 from playwright.sync_api import Browser, ConsoleMessage, Page, sync_playwright
 
+from tests.browser.served import served
 from tests.filled_archive import filled
 from tests.outside import program
 
@@ -39,16 +36,8 @@ def archive_root(tmp_path_factory: pytest.TempPathFactory) -> Path:
 @pytest.fixture(scope="session")
 def server(archive_root: Path) -> Iterator[str]:
     """Give the address of a server of that archive, without a solidus at its end."""
-    command = [sys.executable, "-c", "from archive.commands.main import main; main()", "serve", "--port", "0"]
-    environment = {**os.environ, "STILLROOM_ARCHIVE": str(archive_root), "PYTHONUNBUFFERED": "1"}
-    with subprocess.Popen(command, stdout=subprocess.PIPE, env=environment, text=True) as process:
-        assert process.stdout is not None
-        said = process.stdout.readline()
-        try:
-            yield said.rpartition(" ")[2].strip().rstrip("/")
-        finally:
-            process.send_signal(signal.SIGINT)
-            assert process.wait(timeout=15) == 0
+    with served(archive_root) as address:
+        yield address
 
 
 @pytest.fixture

@@ -25,7 +25,7 @@ Fake = Callable[..., FakeArchive]
 
 COMMANDS = (
     "demo", "tour", "init", "schema", "draft", "check", "ingest", "plans", "reduce", "stale", "revise", "amend", "withdraw",
-    "search", "serve", "show", "trace", "replay", "compare", "calibration", "drift", "run-sheet", "appendix", "journal",
+    "search", "plane", "serve", "show", "trace", "replay", "compare", "calibration", "drift", "run-sheet", "appendix", "journal",
     "prov", "export", "import", "fixity", "rebuild-index", "roles", "mirror", "mend", "convert", "helium", "completion",
 )  # fmt: skip
 HEAVY = (
