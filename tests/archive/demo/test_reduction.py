@@ -232,6 +232,7 @@ def first_pulls(seed, folder):
 
 
 @pytest.mark.slow
+@pytest.mark.no_cover
 def test_two_hundred_laboratories_pull_with_unit_width(tmp_path):
     each = [first_pulls(seed, tmp_path) for seed in range(LABORATORIES)]
     pulls = {name: np.array([one[name] for one in each]) for name in each[0]}

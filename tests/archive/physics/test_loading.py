@@ -30,6 +30,7 @@ def test_exact_curve_returns_its_input(chi, onset):
     assert found.value("period_at_zero") == pytest.approx(1e-3, rel=1e-12)
 
 
+@pytest.mark.no_cover
 def test_covariance_is_honest():
     """Scatter of the four values over many noisy runs agrees with the covariance, correlation included."""
     rng = np.random.default_rng(11)

@@ -49,6 +49,7 @@ def decay_of(seed, *, rows=120, noise=2e-12):
 
 
 @pytest.mark.slow
+@pytest.mark.no_cover
 def test_two_hundred_decays_pull_with_unit_width():
     pulls = {"initial": [], "rate": [], "exponent": []}
     truth = {"initial": 6e-10, "rate": 1 / 2000, "exponent": 3.6}

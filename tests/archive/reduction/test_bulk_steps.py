@@ -65,6 +65,7 @@ def test_without_the_gap_the_fraction_is_off():
 
 
 @pytest.mark.slow
+@pytest.mark.no_cover
 def test_pulls_of_fraction_and_law():
     """200 runs: fractions, scale, and every parameter of the power law lie where their uncertainties say."""
     T, u = stack_temperatures(), BULK.period_noise

@@ -186,6 +186,7 @@ def _expansions(rng: np.random.Generator) -> tuple[GasBook, np.ndarray, np.ndarr
     return panel, times, np.array(pressures)
 
 
+@pytest.mark.no_cover
 def test_pulls_of_a_dead_volume_with_all_that_is_shared() -> None:
     rng = np.random.default_rng(23)
     pulls = []

@@ -197,6 +197,7 @@ def test_the_thermometer_s_scatter_counts_where_the_dissipation_is_steep(
 
 
 @pytest.mark.slow
+@pytest.mark.no_cover
 def test_two_hundred_films_pull_with_unit_width() -> None:
     pulls: dict[str, list[float]] = {
         name: [] for name in ("transition_temperature", "b", "log_diffusivity", "scale_ratio")

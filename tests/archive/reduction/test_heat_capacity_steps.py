@@ -33,6 +33,7 @@ def test_every_step_is_in_the_list():
 
 
 @pytest.mark.slow
+@pytest.mark.no_cover
 def test_pulls():
     """200 runs: exponent, amplitudes, constant and asymmetry lie where their uncertainties say, through pulses and gravity."""
     law = BULK.law

@@ -7,6 +7,8 @@ import re
 from dataclasses import replace
 
 import pytest
+from matplotlib.figure import Figure
+from matplotlib.layout_engine import ConstrainedLayoutEngine
 
 from archive.errors import BadRequest, UnknownAddress
 from archive.reduction.steps import STEPS
@@ -19,6 +21,19 @@ from tests.archive.reports.factories import accession, film_view, finding, momen
 
 ADDRESS = "2026-03/s001@film-transition.1"
 HOSTILE = '50 % of \\input{/etc/passwd} \\write18{id} \\catcode`\\%=12 ^^5cinput{x} {unbalanced $y_1 & z# ~ <a|b> "q" مرحبا 氦 é'
+
+
+@pytest.fixture
+def drawn():
+    """Ask for figures that are written out."""
+
+
+@pytest.fixture(autouse=True)
+def undrawn(request, monkeypatch):
+    """Make figures without writing them out, which takes most of the time, for a test that neither compiles nor asks for `drawn`."""
+    if not {"compiled", "drawn"} & set(request.fixturenames):
+        monkeypatch.setattr(ConstrainedLayoutEngine, "execute", lambda *_: None)
+        monkeypatch.setattr(Figure, "savefig", lambda _, file, **__: file.write(b"not drawn"))
 
 
 def made(view=None, **options):
@@ -119,7 +134,7 @@ def test_a_changed_result_changes_its_numbers_everywhere():
     assert "731.2(1.2)" not in tex
 
 
-def test_the_same_data_give_the_same_bytes():
+def test_the_same_data_give_the_same_bytes(drawn):
     assert made() == made()
 
 
@@ -227,7 +242,7 @@ def test_what_is_asked_for_must_be_there():
         made(level="part")
 
 
-def test_figures_are_vector_pdf_without_a_date():
+def test_figures_are_vector_pdf_without_a_date(drawn):
     figures = {name: content for name, content in made().items() if name.startswith("figures/")}
     assert list(figures) == [
         "figures/film-transition-2026-03-s001.pdf",
@@ -318,7 +333,7 @@ def test_text_of_the_author_survives_in_its_slot(compiled):
     assert "The section fits carries text written by hand" in text
 
 
-def test_a_plan_without_a_figure_of_its_kind_shows_its_curve():
+def test_a_plan_without_a_figure_of_its_kind_shows_its_curve(drawn):
     outputs = [
         {"name": "temperature", "quantity": "temperature", "unit": "K", "description": "temperature of each row", "step": 1, "rows": 60, "scale": "PLTS-2000", "digest": "0" * 64},
         {"name": "period", "quantity": "period", "unit": "s", "description": "period of each row", "step": 1, "rows": 60, "digest": "1" * 64},
