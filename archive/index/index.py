@@ -303,10 +303,16 @@ class Index:
                     found.append(f"table {name}: {_unequal(table, *first)}")
         return found
 
-    def sealed_files(self) -> dict[str, tuple[str, int]]:
-        """SHA-256 and size of every sealed file, by key."""
+    def sealed_files(self, *, under: str = "") -> dict[str, tuple[str, int]]:
+        """SHA-256 and size of every sealed file, by key; of those alone whose key begins with `under`, such as `2026-03/`."""
         with reading(self._engine, self._url) as connection:
-            return {row.key: (row.sha256, row.size) for row in connection.execute(queries.sealed_files())}
+            found = connection.execute(queries.sealed_files(under))
+            return {row.key: (row.sha256, row.size) for row in found}
+
+    def finding_counts(self) -> list[tuple[str, str, bool, int]]:
+        """Severity and code of findings, whether they are waived, and how many there are of each."""
+        with reading(self._engine, self._url) as connection:
+            return [tuple(row) for row in connection.execute(queries.finding_counts())]
 
     def search(self, query: SearchQuery) -> list[SweepRow]:
         """Sweeps that satisfy a search, each once, in its newest version.

@@ -52,6 +52,7 @@ __all__ = [
     "cooldowns",
     "dependents",
     "doses",
+    "finding_counts",
     "findings",
     "plan_known",
     "raw_files",
@@ -101,9 +102,11 @@ def all_rows(table: Table) -> Query:
     return select(table).order_by(*table.primary_key.columns)
 
 
-def sealed_files() -> Query:
-    """Key, digest and size of every sealed file."""
-    return select(SealedFile.key, SealedFile.sha256, SealedFile.size).order_by(SealedFile.key)
+def sealed_files(under: str = "") -> Query:
+    """Key, digest and size of every sealed file whose key begins so."""
+    found = select(SealedFile.key, SealedFile.sha256, SealedFile.size).order_by(SealedFile.key)
+    # A range, since a pattern could not use the key's own order; a prefix ends with a solidus, and "0" follows it.
+    return found.where(SealedFile.key >= under, SealedFile.key < f"{under[:-1]}0") if under else found
 
 
 def sealed_file(key: str) -> Query:
@@ -482,6 +485,12 @@ def findings(*, address: str | None, code: str | None, severity: str | None) -> 
         if value is not None:
             found = found.where(column == value)
     return found
+
+
+def finding_counts() -> Query:
+    """Return how many findings there are of each severity and code, waived and not."""
+    kinds = (Finding.severity, Finding.code, Finding.waived)
+    return select(*kinds, func.count()).group_by(*kinds).order_by(*kinds)
 
 
 def dependents(address: str) -> Query:

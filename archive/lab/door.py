@@ -22,6 +22,7 @@ from archive.index import (
     AccessionRow,
     CellUse,
     CooldownRow,
+    FindingRow,
     Index,
     RecordRow,
     ReductionRow,
@@ -77,6 +78,7 @@ if TYPE_CHECKING:
     from archive.lab.curves.chart import Asked, Chart
     from archive.lab.curves.leaf import Leaf
     from archive.lab.plane import PlaneState
+    from archive.reports import CooldownView
     from archive.reports.plane_view import PlaneAxis, PlaneView, Window
 
 __all__ = ["Archive"]
@@ -536,6 +538,37 @@ class Archive:
     def records(self, name: str | None = None, kind: str | None = None) -> list[RecordRow]:
         """Cells, substrates, thermometers, ... with their revisions."""
         return self._index.records(name=name, kind=kind)
+
+    def cooldown(self, name: str) -> CooldownView:
+        """What was taken in of a cooldown and said of it since, as it is to be read; its reductions have answers of their own.
+
+        Raises
+        ------
+        UnknownAddress
+            If there is none.
+        """
+        return reporting.view(self._source, self.name, name, reductions=False)
+
+    def findings(self, address: str) -> list[FindingRow]:
+        """Findings of an accession or a reduction."""
+        return self._index.findings(address=address)
+
+    def finding_counts(self) -> list[tuple[str, str, bool, int]]:
+        """Severity and code of findings, whether they are waived, and how many there are of each."""
+        return self._index.finding_counts()
+
+    def sweep_row(self, address: str) -> SweepRow:
+        """What the index knows of a sweep, in its newest version.
+
+        Raises
+        ------
+        UnknownAddress
+            If there is none.
+        """
+        row = self._index.sweep(address)
+        if row is None:
+            raise UnknownAddress(f"there is no sweep {address} in this archive")
+        return row
 
     def sweeps(self, cooldown: str, *, withdrawn: bool = False) -> RowList[SweepRow]:
         """Sweeps of a cooldown by name, each in its newest version; withdrawn ones too, marked, if asked for."""

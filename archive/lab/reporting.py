@@ -21,8 +21,8 @@ if TYPE_CHECKING:
 __all__ = ["appendix", "comparison", "run_sheet", "view"]
 
 
-def view(source: LabSource, archive_name: str, cooldown: str) -> CooldownView:
-    """Everything that reports may tell of one cooldown.
+def view(source: LabSource, archive_name: str, cooldown: str, *, reductions: bool = True) -> CooldownView:
+    """Everything that reports may tell of one cooldown; without its reductions if they are not asked for.
 
     Raises
     ------
@@ -35,13 +35,14 @@ def view(source: LabSource, archive_name: str, cooldown: str) -> CooldownView:
     if not accessions:
         known = ", ".join(source.cooldowns()) or "none yet"
         raise UnknownAddress(f"there is no cooldown {cooldown} in this archive", expected=f"one of: {known}")
-    prefix = f"{cooldown}/"
     withdrawn, resting = withdrawn_in(source, accessions)
     return CooldownView(
         archive_name=archive_name,
         accessions=tuple(accessions),
-        sealed={key: row for key, row in source.index.sealed_files().items() if key.startswith(prefix)},
-        reductions=tuple(source.reduction(row.address) for row in source.index.reductions(cooldown=cooldown)),
+        sealed=source.index.sealed_files(under=f"{cooldown}/"),
+        reductions=tuple(source.reduction(row.address) for row in source.index.reductions(cooldown=cooldown))
+        if reductions
+        else (),
         values=source.values,
         check_titles={check.code: check.title for check in CHECKS},
         amendments=tuple(source.amendments(cooldown)),

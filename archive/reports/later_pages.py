@@ -23,7 +23,7 @@ from schemas.cooldown import EFFECTS, Effect
 from schemas.lineage import InputEntry, OutputEntry, ReductionDocument, StepRecord
 from schemas.thermometer import Calibration
 
-__all__ = ["effect_states", "later_pages", "parameter_text"]
+__all__ = ["dose_lines", "effect_states", "later_pages", "parameter_text"]
 
 _SIZES = re.compile(r'(?:width|height)="([0-9.]+)mm"')
 _PAGE = (180.0, 235.0)
@@ -36,7 +36,7 @@ def later_pages(held: Holdings, stands: Standing) -> dict[str, Any]:
     return {
         "plots": list(_plots(held)),
         "lineage": _lineage(held),
-        "doses": list(_doses(held)),
+        "doses": list(dose_lines(held)),
         "findings": [finding_line(flag, each) for flag, each in stands.open]
         + [finding_line(each.flag, each.finding) for each in stands.waived]
         + [finding_line("", each) for each in stands.notes],
@@ -91,7 +91,8 @@ def _plots(held: Holdings) -> Iterator[dict[str, Any]]:
                 yield {"name": reduction.address.partition("/")[2], "kind": found[1], "svg": found[0]}
 
 
-def _doses(held: Holdings) -> Iterator[dict[str, Any]]:
+def dose_lines(held: Holdings) -> Iterator[dict[str, Any]]:
+    """Yield the lines of the gas ledger, each with what is remarked on it."""
     entries = held.view.newest.doses
     told = {each.name: each for each in held.sheet.dose}
     starts = clock_lines([each.at for each in entries], held.sheet.time_zone)

@@ -26,6 +26,7 @@ __all__ = [
     "NOT_RECORDED",
     "Shown",
     "absent",
+    "grouped",
     "shown",
     "shown_number",
     "shown_output",
@@ -72,6 +73,17 @@ class Shown:
 def words(text: str) -> Shown:
     """Return words as they are."""
     return Shown(text, text, tex(text))
+
+
+def grouped(count: int) -> str:
+    r"""Return a count with thin spaces between groups of three digits, from five digits on.
+
+    Examples
+    --------
+    >>> grouped(1234), grouped(75736).split("\u2009")
+    ('1234', ['75', '736'])
+    """
+    return f"{count:,}".replace(",", "\u2009") if count >= 10000 else str(count)
 
 
 def absent(code: str) -> Shown:
@@ -141,6 +153,9 @@ def shown_number(
     """
     if value is None or not math.isfinite(value):
         return LOST
+    if unit == "1":
+        # A pure number may be of any kind: it is shown as it is.
+        return _of(value, uncertainty, unit, "", None, setting=setting)
     kind = kind_of_si(unit)
     if unit == "K":
         # Temperatures of one table are compared with each other, so they keep one unit.

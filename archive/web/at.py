@@ -8,6 +8,7 @@ from starlette.requests import Request
 from starlette.responses import Response
 
 from archive.errors import UnknownAddress
+from archive.web.cooldown import cooldown
 from archive.web.links import address_at
 from archive.web.site import lab_of
 from archive.web.thing import thing
@@ -15,7 +16,9 @@ from schemas.address import Address, AddressKind, parse_address
 
 __all__ = ["AT", "at"]
 
-AT: dict[AddressKind | str, Callable[[Request, Address], Response]] = {}
+AT: dict[AddressKind | str, Callable[[Request, Address], Response]] = {
+    "cooldown": cooldown,
+}
 """The page of each kind of address, and of each kind of record by its word; what is not here is shown by `thing`."""
 
 

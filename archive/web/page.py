@@ -11,10 +11,11 @@ from starlette.requests import Request
 from starlette.responses import HTMLResponse, Response
 
 from archive.reports.moments import full_time, span_text
-from archive.reports.numbers import shown_number, shown_output, shown_value
+from archive.reports.numbers import grouped, shown_number, shown_output, shown_value
 from archive.reports.prose import prose, symbol_of
 from archive.web.links import path_of
 from archive.web.static import static_path
+from archive.web.sweep_words import marks_of_row, shown_coverage, temperature_span
 from schemas.visible_text import visible
 
 __all__ = ["NAVIGATION", "Pages", "page"]
@@ -45,7 +46,8 @@ class Pages:
         )  # fmt: skip
         self._environment.globals.update(
             navigation=NAVIGATION, path_of=path_of, static=static_path, full_time=full_time, span_text=span_text,
-            shown_number=shown_number, shown_output=shown_output, shown_value=shown_value, prose=prose, symbol_of=symbol_of,
+            grouped=grouped, shown_number=shown_number, shown_output=shown_output, shown_value=shown_value, prose=prose, symbol_of=symbol_of,
+            marks_of_row=marks_of_row, shown_coverage=shown_coverage, temperature_span=temperature_span,
         )  # fmt: skip
 
     def text(self, template: str, content: Mapping[str, Any]) -> str:

@@ -10,7 +10,9 @@ from tests.filled_archive import HOSTILE, NAME, PLAIN
 
 pytestmark = pytest.mark.browser
 
-PAGES = ("/", "/cooldowns", f"/at/{PLAIN}", f"/at/{HOSTILE}", "/at/nowhere")
+PAGES = (
+    "/", "/search", "/search?coverage=20", "/cooldowns", "/cells", "/thermometers", "/state", f"/at/{PLAIN}", f"/at/{HOSTILE}", "/at/nowhere",
+)  # fmt: skip
 
 _SHIFT = """() => new Promise(done => {
   let sum = 0;
@@ -62,6 +64,31 @@ def test_keys_alone_lead_to_a_cooldown(page: Page) -> None:
     page.wait_for_url(f"**/at/{PLAIN}/s002")
 
 
+def test_a_search_is_written_found_and_opened(page: Page) -> None:
+    page.goto("/search")
+    page.get_by_label("coverage").fill("20:40 umol/m^2")
+    page.get_by_label("cell", exact=True).fill("TO-1")
+    page.get_by_role("button", name="find").click()
+    assert "coverage=20" in page.url
+    pictures = page.locator("img.thumb")
+    assert pictures.count() == 1
+    pictures.first.scroll_into_view_if_needed()
+    page.wait_for_function("document.querySelector('img.thumb').naturalWidth === 132")
+    page.get_by_role("link", name=f"{PLAIN}/s002").click()
+    page.wait_for_url(f"**/at/{PLAIN}/s002")
+    page.go_back()
+    assert page.get_by_label("coverage").input_value() == "20:40 umol/m^2"
+
+
+def test_a_stroke_of_the_time_line_opens_its_sweep(page: Page) -> None:
+    page.goto(f"/at/{PLAIN}")
+    stroke = page.locator(f'.timeline a[href="/at/{PLAIN}/s002"]')
+    assert "temperature sweep" in (stroke.locator("title").text_content() or "")
+    stroke.focus()
+    page.keyboard.press("Enter")
+    page.wait_for_url(f"**/at/{PLAIN}/s002")
+
+
 def test_hostile_names_are_text(page: Page) -> None:
     page.on("dialog", lambda _: pytest.fail("a name opened a dialog"))
     page.goto("/cooldowns")
@@ -69,7 +96,10 @@ def test_hostile_names_are_text(page: Page) -> None:
     page.goto(f"/at/{HOSTILE}")
     body = page.locator("main")
     assert "<script>alert(1)</script>" in body.inner_text()
-    assert page.evaluate("document.querySelectorAll('main script, main img, main [onload]').length") == 0
+    assert (
+        page.evaluate("document.querySelectorAll('main script, main img:not(.thumb), main [onload]').length")
+        == 0
+    )
 
 
 def test_what_is_not_there_says_where_else_to_look(page: Page) -> None:
