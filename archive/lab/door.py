@@ -40,11 +40,13 @@ from archive.lab.act_outcomes import ActOutcome, WithdrawOutcome
 from archive.lab.amending import amend
 from archive.lab.checking import check_folder, earlier_runs, folder_report, require_folder
 from archive.lab.comparing import Comparison, compare
+from archive.lab.curves.columns import facts_of
 from archive.lab.forward import forward as lineage_forward
 from archive.lab.index_check import index_damage
 from archive.lab.journaling import AFTERWARDS, Acts
 from archive.lab.keeping import MirrorOutcome
-from archive.lab.marks import marked
+from archive.lab.lineage_pictures import lineage_picture, sweep_picture
+from archive.lab.marks import marked, marks_of
 from archive.lab.outcomes import CheckReport, IngestOutcome, ReduceOutcome, ReplayReport
 from archive.lab.place import find_root, made, make_root, unmade
 from archive.lab.plan_figure import PlanFigure, plan_figure
@@ -59,6 +61,7 @@ from archive.lab.viewing import archive_html, reduction_view, result, sweep_view
 from archive.lab.views import ReductionView, Result, RowList, SweepView
 from archive.lab.withdrawing import withdraw
 from archive.reduction.calibration_comparison import Drift
+from archive.reduction.facts import SweepFacts
 from archive.reduction.monte_carlo import Request
 from archive.reduction.software import software
 from archive.reduction.trace import TraceNode
@@ -75,7 +78,7 @@ from schemas.plan import Plan
 from schemas.thermometer import Calibration
 
 if TYPE_CHECKING:
-    from archive.lab.curves.chart import Asked, Chart
+    from archive.lab.curves.chart import Asked, Chart, Outline
     from archive.lab.curves.leaf import Leaf
     from archive.lab.plane import PlaneState
     from archive.reports import CooldownView
@@ -635,6 +638,12 @@ class Archive:
 
         return chart(self._source, asked)
 
+    def chart_outline(self, asked: Asked) -> Outline:
+        """What a chart is made of and what is to be said of it, without reading its numbers."""
+        from archive.lab.curves.chart import outline
+
+        return outline(self._source, asked)
+
     def leaf(self, address: str) -> Leaf:
         """Columns that a sweep or a reduction has to draw, without reading them."""
         from archive.lab.curves.leaf import leaf_of
@@ -656,6 +665,28 @@ class Archive:
     def plan_figure(self, address: str, *, kind: str = "svg") -> PlanFigure:
         """Figure that the plan of a reduction has, as SVG or PDF, with its caption; or why there is none."""
         return plan_figure(self._source, address, kind=kind)
+
+    def sweep_facts(self, address: str) -> SweepFacts:
+        """A sweep with what its sheet and the records say of it, as it is to be read: amended, shown even if withdrawn."""
+        return facts_of(self._source, address)
+
+    def reduction_document(self, address: str) -> ReductionDocument:
+        """What the sealed file of a reduction says about itself."""
+        return self._source.reduction(address)
+
+    def marks(self, address: str) -> dict[str, Any]:
+        """What was said of a thing after it was sealed: withdrawn, amended, superseded, resting on something withdrawn."""
+        return marks_of(self._source, parse_address(address))
+
+    def sweep_picture(self, facts: SweepFacts, *, link: Callable[[str], str | None]) -> str | None:
+        """A sweep, its current reductions and what these took, as SVG; None where nothing is reduced."""
+        return sweep_picture(self._source, facts, link=link)
+
+    def lineage_picture(
+        self, address: str, *, forward: bool = False, link: Callable[[str], str | None]
+    ) -> str:
+        """Lineage of a thing down to raw files, or forward to all that rests on it, as SVG."""
+        return lineage_picture(self._source, address, forwards=forward, link=link)
 
     def trace(self, address: str, *, forward: bool = False) -> TraceNode:
         """Lineage of a result, array, sentence or figure down to raw files and lines; or forward, to all that rests on it."""

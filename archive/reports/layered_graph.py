@@ -116,8 +116,10 @@ def drawn(
         return (x - low, y + 1) if downward else (y + 1, x - low)
 
     width, height = (high - low, deep) if downward else (deep, high - low)
+    # A picture holds nothing that can be chosen; with links it is a group of them.
+    role = "img" if link is None else "group"
     parts = [
-        f'<svg xmlns="http://www.w3.org/2000/svg" role="img" width="{width:.1f}mm" height="{height:.1f}mm" '
+        f'<svg xmlns="http://www.w3.org/2000/svg" role="{role}" width="{width:.1f}mm" height="{height:.1f}mm" '
         f'viewBox="0 0 {width:.1f} {height:.1f}"><title>{escape(title)}</title>',
         f'<g fill="none" stroke="currentColor" stroke-width="0.2" font-family="{_FONT}" font-size="{_TEXT}">',
     ]

@@ -10,7 +10,9 @@ from starlette.responses import Response
 from archive.errors import UnknownAddress
 from archive.web.cooldown import cooldown
 from archive.web.links import address_at
+from archive.web.reduction import reduction
 from archive.web.site import lab_of
+from archive.web.sweep import sweep
 from archive.web.thing import thing
 from schemas.address import Address, AddressKind, parse_address
 
@@ -18,6 +20,10 @@ __all__ = ["AT", "at"]
 
 AT: dict[AddressKind | str, Callable[[Request, Address], Response]] = {
     "cooldown": cooldown,
+    "item": sweep,
+    "channel": sweep,
+    "reduction": reduction,
+    "output": reduction,
 }
 """The page of each kind of address, and of each kind of record by its word; what is not here is shown by `thing`."""
 

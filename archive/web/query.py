@@ -40,7 +40,8 @@ def asked(request: Request, model: type[Model]) -> Model:
     values: dict[str, list[str]] = defaultdict(list)
     for name, value in given:
         values[name].append(value)
-    several = {name for name, field in model.model_fields.items() if "tuple" in str(field.annotation)}
+    fields = {field.alias or name: field for name, field in model.model_fields.items()}
+    several = {name for name, field in fields.items() if "tuple" in str(field.annotation)}
     for name, found in values.items():
         if len(found) > 1 and name not in several:
             raise BadRequest(f"{name} is given {len(found)} times", field=name[:80], expected="once")
@@ -51,7 +52,7 @@ def asked(request: Request, model: type[Model]) -> Model:
     except ValidationError as error:
         first = error.errors(include_url=False)[0]
         place = ".".join(str(part) for part in first["loc"])[:80]
-        known = ", ".join(model.model_fields)
+        known = ", ".join(fields)
         if first["type"] == "extra_forbidden":
             raise BadRequest("there is no such field", field=place, expected=f"one of: {known}") from None
         said = str(first.get("ctx", {}).get("error", first["msg"]))

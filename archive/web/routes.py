@@ -6,7 +6,9 @@ from starlette.routing import Route
 
 from archive.web.at import at
 from archive.web.cooldowns import cooldowns
+from archive.web.drawings import download, plan_figure, points, svg
 from archive.web.endpoint import Endpoint
+from archive.web.lineage import lineage
 from archive.web.plane import plane, plane_part, plane_pdf, plane_svg
 from archive.web.records import cells, thermometers
 from archive.web.run_sheet import run_sheet
@@ -32,6 +34,11 @@ ROUTES = [
     Route("/to", Endpoint(to)),
     Route("/at/{address:path}", Endpoint(at)),
     Route("/thumb/{address:path}", Endpoint(thumb)),
+    Route("/lineage/{address:path}", Endpoint(lineage)),
+    Route("/points/{address:path}", Endpoint(points)),
+    Route("/picture/{address:path}", Endpoint(svg)),
+    Route("/figure/{address:path}", Endpoint(plan_figure)),
+    Route("/download/{address:path}", Endpoint(download)),
     Route("/style/{version}/{name:path}", static_file),
     Route("/scripts/{version}/{name:path}", static_file),
     Route("/vendor/{version}/{name:path}", static_file),

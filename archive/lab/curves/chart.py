@@ -20,7 +20,7 @@ from archive.lab.curves.reading import ends, points
 from archive.lab.source import LabSource
 from archive.reports.axis_units import AxisUnit, axis_unit, symbol
 
-__all__ = ["Asked", "Chart", "Curve", "Member", "Panel", "chart", "members_of"]
+__all__ = ["Asked", "Chart", "Curve", "Member", "Outline", "Panel", "chart", "outline"]
 
 FloatArray = NDArray[np.float64]
 
@@ -175,6 +175,30 @@ class Member:
     look: int
 
 
+@dataclass(frozen=True)
+class Outline:
+    """What a chart is made of.
+
+    Attributes
+    ----------
+    members : tuple of Member
+        The pile, the first at the bottom.
+    panels : tuple of (str, tuple)
+        Name of each ordinate, and the members that have it, each with its column and the factor to the first one's unit.
+    told : tuple of str
+    """
+
+    members: tuple[Member, ...]
+    panels: tuple[tuple[str, tuple[tuple[Member, DrawnColumn, float], ...]], ...]
+    told: tuple[str, ...]
+
+    @property
+    def against(self) -> str:
+        """Name of the abscissa."""
+        first = self.members[0]
+        return _name_in(first.leaf, first.x)
+
+
 def chart(source: LabSource, asked: Asked) -> Chart:
     """Draw what is asked for.
 
@@ -190,18 +214,11 @@ def chart(source: LabSource, asked: Asked) -> Chart:
     BadRequest
         If columns have different rows, the view is empty, or too much is laid over.
     """
-    told: list[str] = []
-    members, names = members_of(source, asked, told)
-    absent: dict[str, list[str]] = {}
+    found = outline(source, asked)
+    members, view = found.members, _view(asked)
     first = members[0]
     x_low, x_high = _ends_of(members)
     across = _clock(x_high - x_low) if first.x.kind == "instant" else _axis(x_low, x_high, first.x)
-    view = _view(asked)
-    panels = tuple(_panel(members, name, across, view, asked.most, told, absent) for name in names)
-    told += [
-        f"{address} has nothing that answers to {', '.join(what)}: not laid over there."
-        for address, what in absent.items()
-    ]
     return Chart(
         address=first.leaf.address,
         against=_name_in(first.leaf, first.x),
@@ -212,34 +229,67 @@ def chart(source: LabSource, asked: Asked) -> Chart:
         low=(x_low - across.offset) * across.factor,
         high=(x_high - across.offset) * across.factor,
         view=view,
-        panels=panels,
+        panels=tuple(_panel(first, name, drawn, across, view, asked.most) for name, drawn in found.panels),
         owners=tuple(each.leaf.address for each in members),
-        told=tuple(dict.fromkeys(told)),
+        told=found.told,
     )
 
 
-def members_of(source: LabSource, asked: Asked, told: list[str]) -> tuple[list[Member], list[str]]:
-    """Leaves of the pile with their abscissae, and the names of the ordinates.
+def outline(source: LabSource, asked: Asked) -> Outline:
+    """Work out which columns stand in which panel, and what is to be said of them; no column of numbers is read for it.
 
     Parameters
     ----------
     source : LabSource
     asked : Asked
-    told : list of str
-        Sentences are added to it.
+
+    Raises
+    ------
+    UnknownAddress, BadRequest
+        As `chart`.
     """
+    told: list[str] = []
+    members, names = _members(source, asked, told)
+    absent: dict[str, list[str]] = {}
+    panels = tuple((name, _matched(members, name, told, absent)) for name in names)
+    told += [
+        f"{address} has nothing that answers to {', '.join(what)}: not laid over there."
+        for address, what in absent.items()
+    ]
+    return Outline(tuple(members), panels, tuple(dict.fromkeys(told)))
+
+
+def _matched(
+    members: Sequence[Member], name: str, told: list[str], absent: dict[str, list[str]]
+) -> tuple[tuple[Member, DrawnColumn, float], ...]:
+    """Members of one panel, each with its column and the factor to the unit of the first."""
+    first = members[0].leaf.column(name)
+    drawn: list[tuple[Member, DrawnColumn, float]] = []
+    for each in members:
+        y = first if each.look == 0 else partner(each.leaf, name, first)
+        if y is None or y.rows != each.x.rows:
+            absent.setdefault(each.leaf.address, []).append(first.words)
+            continue
+        fits = laid(first, y)
+        if fits.told:
+            told.append(fits.told)
+        if fits.factor is not None:
+            drawn.append((each, y, fits.factor))
+    return tuple(drawn)
+
+
+def _members(source: LabSource, asked: Asked, told: list[str]) -> tuple[list[Member], list[str]]:
+    """Leaves of the pile with their abscissae, and the names of the ordinates."""
     first = leaf_of(source, asked.address)
-    along = first.column(asked.against or usual_abscissa(first))
+    named = list(dict.fromkeys(asked.columns)) or _parts(first, asked)
+    beside = first.column(named[0]) if named else None
+    along = first.column(asked.against or usual_abscissa(first, beside))
     if len(asked.over) > _MOST_OVER or len(asked.columns) > _MOST_PANELS:
         raise BadRequest(
             f"{len(asked.over)} sweeps are to be laid over, with {len(asked.columns)} panels",
             expected=f"at most {_MOST_OVER} sweeps and {_MOST_PANELS} panels",
         )
-    names = (
-        list(dict.fromkeys(asked.columns))
-        or _parts(first, asked)
-        or usual_ordinates(first, _name_in(first, along))
-    )
+    names = named or usual_ordinates(first, _name_in(first, along))
     for name in names:
         if first.column(name).rows != along.rows:
             raise BadRequest(
@@ -318,38 +368,25 @@ def _view(asked: Asked) -> tuple[float, float] | None:
 
 
 def _panel(
-    members: Sequence[Member],
+    member: Member,
     name: str,
+    drawn: Sequence[tuple[Member, DrawnColumn, float]],
     across: AxisUnit,
     view: tuple[float, float] | None,
     most: int,
-    told: list[str],
-    absent: dict[str, list[str]],
 ) -> Panel:
-    first = members[0].leaf.column(name)
-    drawn: list[tuple[Member, DrawnColumn, float]] = []
-    for each in members:
-        y = first if each.look == 0 else partner(each.leaf, name, first)
-        if y is None or y.rows != each.x.rows:
-            absent.setdefault(each.leaf.address, []).append(first.words)
-            continue
-        fits = laid(first, y)
-        if fits.told:
-            told.append(fits.told)
-        if fits.factor is not None:
-            drawn.append((each, y, fits.factor))
+    first = member.leaf.column(name)
     spans = np.array([np.array(ends(y, each.x)) * factor for each, y, factor in drawn])
     known = spans[np.isfinite(spans).all(axis=1)]
     low, high = (float(known.min()), float(known.max())) if known.size else (math.nan, math.nan)
     axis = _axis(low, high, first)
-    log = members[0].leaf.kind == "ringdown" and low > 0 and high > 10 * low
     return Panel(
         name=name,
         words=first.words,
         axis=axis,
         low=(low - axis.offset) * axis.factor,
         high=(high - axis.offset) * axis.factor,
-        log=log,
+        log=member.leaf.kind == "ringdown" and low > 0 and high > 10 * low,
         scale=first.scale,
         curves=tuple(_curve(each, y, factor, across, axis, view, most) for each, y, factor in drawn),
     )

@@ -5,6 +5,7 @@ A column knows what its numbers mean and where they lie; nothing is read before 
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Callable
 from dataclasses import dataclass, field
 
@@ -78,12 +79,17 @@ class DrawnColumn:
     @property
     def address(self) -> str:
         """What to cite."""
-        return self.owner if self.name == ROW else f"{self.owner}#{self.name}"
+        return self.owner if self.counts else f"{self.owner}#{self.name}"
+
+    @property
+    def counts(self) -> bool:
+        """Whether it is no column of the archive but the number of the row."""
+        return not self.digest
 
     @property
     def words(self) -> str:
         """The name for people, such as `superfluid density`."""
-        return self.name.replace("_", " ")
+        return self.description if self.counts else self.name.replace("_", " ")
 
     def read(self, start: int, stop: int) -> FloatArray:
         """Values of the rows from `start` to before `stop`, as stored."""
@@ -114,7 +120,7 @@ def columns_of_sweep(source: LabSource, facts: SweepFacts) -> dict[str, DrawnCol
     facts : SweepFacts
     """
     columns = {each.name: _channel(source, facts, each) for each in facts.entry.channels}
-    columns.setdefault(ROW, _counted(facts.address, facts.entry.rows))
+    columns.setdefault(ROW, _counted(facts.address, ROW, facts.entry.rows))
     return columns
 
 
@@ -150,25 +156,30 @@ def _channel(source: LabSource, facts: SweepFacts, entry: ChannelEntry) -> Drawn
     )
 
 
-def _counted(owner: str, rows: int) -> DrawnColumn:
+def _counted(owner: str, name: str, rows: int) -> DrawnColumn:
     return DrawnColumn(
-        owner, ROW, "number", "1", "number of the row, from 1", rows, digest="",
+        owner, name, "number", "1", "number of the row", rows, digest="",
         low=1.0 if rows else None, high=float(rows) if rows else None, missing=0,
         _read=lambda start, stop: np.arange(start + 1, stop + 1, dtype=np.float64),
     )  # fmt: skip
 
 
 def columns_of_reduction(source: LabSource, document: ReductionDocument) -> dict[str, DrawnColumn]:
-    """Arrays of a reduction, by name.
+    """Arrays of a reduction, by name, then the number of the row, once for each length that they have.
 
     Parameters
     ----------
     source : LabSource
     document : ReductionDocument
     """
-    return {
+    columns = {
         each.name: _array(source, document, each.name) for each in document.outputs if each.rows is not None
     }
+    lengths = Counter(each.rows for each in columns.values() if each.rows > 1)
+    for place, (rows, _) in enumerate(lengths.most_common()):
+        name = f"{ROW}-{rows}" if place else ROW
+        columns.setdefault(name, _counted(document.address, name, rows))
+    return columns
 
 
 def _array(source: LabSource, document: ReductionDocument, name: str) -> DrawnColumn:

@@ -1,6 +1,7 @@
 """Colours and marks of curves, for light paper and dark; told apart by mark and line in grey.
 
-Colours are those of the appendix's figures; on dark paper each has a lighter one of its hue. Each is at least 4.5 to 1 against
+Colours are those of the appendix's figures and of the style sheet of the pages (`--look-0` to `--look-6`, the grey one last);
+on dark paper each has a lighter one of its hue. Each is at least 4.5 to 1 against
 its paper (WCAG 2.2, success criterion 1.4.3), which `tests/archive/lab/curves/test_picture.py` works out.
 """
 
@@ -33,19 +34,19 @@ class Ink:
 
 
 INKS: Final[dict[InkName, Ink]] = {
-    "light": Ink("#ffffff", "#1a1a1a", "#d4d4d0",
+    "light": Ink("#fdfcf8", "#1c1b19", "#dad5c8",
                  ("#000000", "#0b5394", "#a61c00", "#38761d", "#674ea7", "#7f6000", "#444444")),
-    "dark": Ink("#16181a", "#e8e6e1", "#3a3d40",
-                ("#f4f2ec", "#8ab4e8", "#f0957f", "#93c47d", "#b4a7d6", "#d9b84a", "#b0b0b0")),
+    "dark": Ink("#171817", "#e8e4da", "#3a3833",
+                ("#f0ece2", "#8fbbe8", "#ff9d86", "#93cf77", "#c3aef0", "#d9b95c", "#b9b4a8")),
 }  # fmt: skip
 
 LOOKS: Final[tuple[tuple[str, str], ...]] = (
     ("circle", ""),
-    ("square", "7 3"),
     ("triangle", "9 3 2 3"),
     ("down", "2 3"),
     ("diamond", "12 3"),
     ("cross", "5 2"),
     ("plus", "9 2 2 2 2 2"),
+    ("square", "7 3"),
 )
 """Mark and dashes of each curve, in the order of the pile; they begin again after the last."""

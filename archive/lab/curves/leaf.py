@@ -10,7 +10,7 @@ from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 
 from archive.errors import UnknownAddress
-from archive.lab.curves.columns import ROW, DrawnColumn, columns_of_reduction, columns_of_sweep, facts_of
+from archive.lab.curves.columns import DrawnColumn, columns_of_reduction, columns_of_sweep, facts_of
 from archive.lab.source import LabSource
 from archive.lab.views.choice import abscissa_kinds
 from schemas.address import Address, parse_address
@@ -20,6 +20,8 @@ __all__ = ["Leaf", "leaf_of", "usual_abscissa", "usual_ordinates"]
 
 _MOST_CHANNELS = 2
 _MOST_ARRAYS = 3
+# What a reduction may have made to be read against, where nothing that was recorded serves.
+_MADE = ("time", "amount")
 # They describe the state of the cell row by row; nobody looks at them first.
 _STATE = frozenset({"temperature", "amount", "coverage", "number", "length", "time", "instant"})
 
@@ -87,6 +89,8 @@ def leaf_of(source: LabSource, address: str) -> Leaf:
     for document in _current(source, parsed.sweep):
         tail = document.address.partition("@")[2]
         for name, column in columns_of_reduction(source, document).items():
+            if column.counts:
+                continue
             if column.rows == facts.entry.rows:
                 columns[f"{name}@{tail}"] = column
             else:
@@ -108,21 +112,32 @@ def _current(source: LabSource, sweep: str) -> list[ReductionDocument]:
     return sorted(found, key=lambda each: (-len(each.plan.needs), each.plan.name))
 
 
-def usual_abscissa(leaf: Leaf) -> str:
+def usual_abscissa(leaf: Leaf, beside: DrawnColumn | None = None) -> str:
     """Name of the column that a sweep of this kind is usually read against; the number of the row where there is none.
+
+    Parameters
+    ----------
+    leaf : Leaf
+    beside : DrawnColumn, optional
+        What is to be drawn against it: only columns of as many rows are looked at.
 
     Raises
     ------
     UnknownAddress
         If there is no column at all.
     """
-    for kind in abscissa_kinds(leaf.kind):
-        for name, column in leaf.columns.items():
+    able = {
+        name: column
+        for name, column in leaf.columns.items()
+        if column is not beside and (beside is None or column.rows == beside.rows)
+    }
+    for kind in (*abscissa_kinds(leaf.kind), *_MADE):
+        for name, column in able.items():
             if column.kind == kind and column.rows > 1 and not column.why_not and not _flat(column):
                 return name
-    if not leaf.columns:
+    if not able:
         raise UnknownAddress(f"{leaf.address} has no columns to draw")
-    return ROW if ROW in leaf.columns else next(iter(leaf.columns))
+    return next((name for name, column in able.items() if column.counts), next(iter(able)))
 
 
 def usual_ordinates(leaf: Leaf, abscissa: str) -> list[str]:
@@ -131,7 +146,7 @@ def usual_ordinates(leaf: Leaf, abscissa: str) -> list[str]:
     able = [
         name
         for name in leaf.beside(along)
-        if not leaf.columns[name].why_not and not _flat(leaf.columns[name]) and name != ROW
+        if not leaf.columns[name].why_not and not _flat(leaf.columns[name]) and not leaf.columns[name].counts
     ]
     channels = [
         name for name in able if "#" in leaf.columns[name].address and leaf.columns[name].owner == leaf.sweep
@@ -147,7 +162,7 @@ def usual_ordinates(leaf: Leaf, abscissa: str) -> list[str]:
     ]
     residuals = [name for name in own if "residual" in name]
     chosen = (made + [name for name in residuals if name not in made])[-_MOST_ARRAYS:]
-    return [*told, *chosen] or _liked(leaf, able, along)[:1]
+    return [*told, *chosen] or _liked(leaf, able, along)[:1] or able[:1]
 
 
 def _liked(leaf: Leaf, names: Iterable[str], along: DrawnColumn) -> list[str]:

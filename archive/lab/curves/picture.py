@@ -46,8 +46,6 @@ def across_name(chart: Chart) -> str:
     """Name of the abscissa with its unit and, of a temperature, its scale."""
     if chart.since:
         return f"{chart.across.name}, since the first row{' of each' if len(chart.since) > 1 else ''}"
-    if chart.against == "row":
-        return "number of the row"
     return chart.across.name + (f" ({chart.scale})" if chart.scale else "")
 
 

@@ -17,9 +17,8 @@ from pathlib import Path
 import numpy as np
 from numpy.typing import NDArray
 
-from archive.lab.curves.chart import Asked, Chart, Member, chart, members_of
-from archive.lab.curves.columns import ROW, DrawnColumn
-from archive.lab.curves.laying import laid, partner
+from archive.lab.curves.chart import Asked, Chart, Member, chart, outline
+from archive.lab.curves.columns import DrawnColumn
 from archive.lab.source import LabSource
 from archive.store.interface import Column
 from archive.store.sealed import SealedWriter
@@ -66,20 +65,16 @@ class _Table:
 
 
 def _tables(source: LabSource, asked: Asked) -> tuple[Chart, list[_Table]]:
-    drawn = chart(source, asked)
-    members, names = members_of(source, asked, [])
-    first = members[0]
-    called = _called([drawn.against, *names])
+    drawn, found = chart(source, asked), outline(source, asked)
+    first = found.members[0]
+    called = _called([drawn.against, *(name for name, _ in found.panels)])
+    view = drawn.view or (-math.inf, math.inf)
     tables = []
-    for member in members:
+    for member in found.members:
         taken = [_Taken(member.x, member.factor, first.x.unit, called[drawn.against])]
-        for name in names:
-            own = first.leaf.column(name)
-            y = own if member.look == 0 else partner(member.leaf, name, own)
-            factor = None if y is None or y.rows != member.x.rows else laid(own, y).factor
-            if y is not None and factor is not None:
-                taken.append(_Taken(y, factor, own.unit, called[name]))
-        view = drawn.view or (-math.inf, math.inf)
+        for name, panel in found.panels:
+            unit = first.leaf.column(name).unit
+            taken += [_Taken(y, factor, unit, called[name]) for each, y, factor in panel if each is member]
         low, high = (
             (end / drawn.across.factor + drawn.across.offset) / member.factor + member.origin for end in view
         )
@@ -196,7 +191,7 @@ def _comments(drawn: Chart, tables: Sequence[_Table]) -> Iterator[str]:
         for each in table.columns:
             column = each.column
             said = [
-                f"{each.name}: {column.address}" if column.name != ROW else f"{each.name}: number of the row"
+                f"{each.name}: {column.address}" if not column.counts else f"{each.name}: number of the row"
             ]
             said += [f"on {column.scale}"] if column.scale else []
             said += [column.convention] if column.convention else []
