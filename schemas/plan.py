@@ -73,10 +73,15 @@ class Need(Record):
 
     plan: Name
     relation: Literal[
-        "same-cell", "same-sweep", "same-dose", "same-cell-any-cooldown", "same-sample-any-cooldown"
+        "same-cell",
+        "same-sweep",
+        "same-dose",
+        "same-cell-any-cooldown",
+        "same-sample-any-cooldown",
+        "same-liquid-any-cooldown",
     ] = Field(
         default="same-cell",
-        description="`same-dose`: same cell and cooldown, after the same dose, so at the same filling.",
+        description="`same-dose`: same cell and cooldown, after the same dose, so at the same filling. `same-liquid-any-cooldown`: same gas, as bulk liquid at the same pressure.",
     )
     many: bool = Field(default=False, description="True: every related sweep's, taken together.")
     optional: bool = Field(default=False, description="True: without it, inputs that name it do not exist.")

@@ -7,6 +7,7 @@ from typing import Annotated, Literal
 from pydantic import AwareDatetime, Field, StringConstraints, model_validator
 
 from schemas.base import Name, Record, Reference, Text
+from schemas.liquid import Liquid
 from schemas.quantity import OfKind, Quantity
 from schemas.thermometer import ScaleName
 
@@ -237,6 +238,10 @@ class Sweep(Record):
         default=None,
         description="Depth of the thermometers below the liquid surface whose vapour pressure was read.",
     )
+    liquid: Liquid | None = Field(
+        default=None,
+        description="Bulk liquid under pressure; left out: at its own vapour pressure, or no bulk liquid.",
+    )
     gas: Literal["helium", "adsorptive"] = Field(
         default="helium",
         description="`adsorptive`: an isotherm with another gas (N2, Ar) that is no part of the helium bookkeeping.",
@@ -270,6 +275,8 @@ class Sweep(Record):
             raise ValueError(
                 "empty_cell = true and after_dose contradict each other; keep the one that is true"
             )
+        if self.empty_cell and self.liquid is not None:
+            raise ValueError("empty_cell = true and liquid contradict each other; keep the one that is true")
         if self.calibrates is not None:
             if self.kind != "calibration":
                 raise ValueError('calibrates belongs to a sweep of kind "calibration"')

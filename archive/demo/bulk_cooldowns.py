@@ -1,4 +1,4 @@
-"""The invented cooldowns 2025-08 (stack of discs in bulk liquid) and 2025-11 (heat capacity).
+"""The invented cooldowns 2025-08 (stack of discs in bulk liquid) and 2025-11 (heat capacity), both at three pressures.
 
 Rules: as in `first_cooldown`.
 """
@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING, Final
 
 import numpy as np
 
+from archive.demo.bulk_liquids import SATURATED, UNDER_PRESSURE, LiquidTruth
 from archive.demo.bulk_sheets import CALORIMETER_SHEET, STACK_SHEET
 from archive.demo.bulk_truth import BULK, bulk_period, pulse_readings
 from archive.demo.files import Column, comma_table
@@ -31,6 +32,8 @@ CALORIMETER: Final = "2025-11"
 _GAP_UNCERTAINTY: Final = 0.03e-6
 _GAUGE_NOISE: Final = 6.0
 _AMOUNT_UNCERTAINTY: Final = 0.0005
+_PRESSURE_UNCERTAINTY: Final = 1e3
+_DENSITY_UNCERTAINTY: Final = 0.3
 
 
 def stack_temperatures() -> Floats:
@@ -39,22 +42,52 @@ def stack_temperatures() -> Floats:
     return np.concatenate([np.arange(1.5, 2.11, 0.01), near, np.linspace(2.1795, 2.3, 60)])
 
 
-def pulse_begins() -> tuple[Floats, Floats]:
+def pressed_temperatures(liquid: LiquidTruth) -> Floats:
+    """Return the true temperatures of a sweep under pressure, as far from its transition as those in saturated liquid."""
+    near = 1 - np.geomspace(0.03, 1.2e-4, 120)
+    return liquid.lambda_temperature * np.concatenate(
+        [np.arange(0.8, 0.97, 0.01), near, np.linspace(1.012, 1.05, 60)]
+    )
+
+
+def pulse_begins(
+    lambda_temperature: float = T_LAMBDA, *, pulses: int = 56, nearest: float = 1.2e-6
+) -> tuple[Floats, Floats]:
     """Return temperature before each pulse and its step: each a fifth of its distance from the transition, which none holds."""
-    t = np.geomspace(8e-3, 1.2e-6, 56)
-    below, above = T_LAMBDA * (1 - t), T_LAMBDA * (1 + t[::-1])
-    rise = 0.2 * T_LAMBDA * np.concatenate([t, t[::-1]])
+    t = np.geomspace(8e-3, nearest, pulses)
+    below, above = lambda_temperature * (1 - t), lambda_temperature * (1 + t[::-1])
+    rise = 0.2 * lambda_temperature * np.concatenate([t, t[::-1]])
     return np.concatenate([below, above]) - rise / 2, rise
 
 
-def _sweep_file(seed: int, sweep: str, begin: str, temperature: Floats, *, filled_cell: bool) -> bytes:
+def _stated(seed: int, cooldown: str) -> dict[str, str]:
+    """Return what the laboratory believes of the liquid under pressure: the truth and one draw for each value."""
+    values = {}
+    for number, (sweep, liquid) in enumerate(UNDER_PRESSURE.items(), 1):
+        random = generator(seed, cooldown, sweep, "liquid")
+        p = (liquid.pressure or 0.0) + _PRESSURE_UNCERTAINTY * random.standard_normal()
+        rho = liquid.density + _DENSITY_UNCERTAINTY * random.standard_normal()
+        values[f"pressure_{number}"] = concise(p * 1e-6, _PRESSURE_UNCERTAINTY * 1e-6, 4)
+        values[f"density_{number}"] = concise(rho, _DENSITY_UNCERTAINTY, 1)
+    return values
+
+
+def _sweep_file(
+    seed: int,
+    sweep: str,
+    begin: str,
+    temperature: Floats,
+    *,
+    filled_cell: bool,
+    liquid: LiquidTruth = SATURATED,
+) -> bytes:
     random = generator(seed, STACK, sweep)
-    period = bulk_period(temperature, filled=filled_cell)
+    period = bulk_period(temperature, filled=filled_cell, liquid=liquid)
     columns = [
         Column("T", "K", temperature + BULK.temperature_noise * random.standard_normal(temperature.size), 7),
         Column("P", "us", (period + BULK.period_noise * random.standard_normal(temperature.size)) * 1e6, 9),
     ]
-    if filled_cell:
+    if filled_cell and liquid.pressure is None:
         pressure = pressure_its90(temperature) + _GAUGE_NOISE * random.standard_normal(temperature.size)
         columns.append(Column("p", "Pa", pressure, 1))
     return comma_table(times_from(at(begin), temperature.size, cadence=240.0), columns, zone=ZONE)
@@ -70,6 +103,7 @@ def stack_cooldown(seed: int) -> CooldownFolder:
     """
     gap = BULK.gap + _GAP_UNCERTAINTY * generator(seed, "SD-1").standard_normal()
     values = {
+        **_stated(seed, STACK),
         "gap": concise(gap * 1e6, _GAP_UNCERTAINTY * 1e6, 2),
         "head_state": "considered",
         "head": "the level stands 4 cm above the stack: 57 Pa, which is 5 uK of the lambda point",
@@ -92,12 +126,26 @@ def stack_cooldown(seed: int) -> CooldownFolder:
         "raw/ts_full.csv": _sweep_file(
             seed, "s002", "2025-08-11 18:00", stack_temperatures(), filled_cell=True
         ),
-    }
+        **{
+            f"raw/ts_{sweep}.csv": _sweep_file(seed, sweep, begin, pressed_temperatures(liquid), filled_cell=True, liquid=liquid)
+            for begin, (sweep, liquid) in zip(("2025-08-12 18:00", "2025-08-13 18:00"), UNDER_PRESSURE.items(), strict=True)
+        },
+    }  # fmt: skip
     return CooldownFolder(STACK, filled(STACK_SHEET, values), files)
 
 
-def _pulse_file(seed: int, sweep: str, time: str, begin: Floats, rise: Floats, *, filled_cell: bool) -> bytes:
-    power, read = pulse_readings(begin, rise, filled=filled_cell, random=generator(seed, CALORIMETER, sweep))
+def _pulse_file(
+    seed: int,
+    sweep: str,
+    time: str,
+    pulses: tuple[Floats, Floats],
+    *,
+    filled_cell: bool,
+    liquid: LiquidTruth = SATURATED,
+) -> bytes:
+    begin, rise = pulses
+    random = generator(seed, CALORIMETER, sweep)
+    power, read = pulse_readings(begin, rise, filled=filled_cell, random=random, liquid=liquid)
     columns = [
         Column("T", "K", begin, 10),
         Column("dT", "uK", read * 1e6, 7),
@@ -117,6 +165,7 @@ def calorimeter_cooldown(seed: int) -> CooldownFolder:
     """
     amount = BULK.amount + _AMOUNT_UNCERTAINTY * generator(seed, "CAL-2").standard_normal()
     values = {
+        **_stated(seed, CALORIMETER),
         "amount": concise(amount, _AMOUNT_UNCERTAINTY, 4),
         "head_state": "not-applicable",
         "head": "no pressure was read",
@@ -132,14 +181,27 @@ def calorimeter_cooldown(seed: int) -> CooldownFolder:
         "gravity_state": "applied",
         "gravity": "the law is averaged over the 3 mm of height",
     }
-    begin, rise = pulse_begins()
-    empty = np.linspace(2.10, 2.25, 60)
+    empty = np.linspace(1.90, 2.25, 71)
+    for number, (sweep, liquid) in enumerate(UNDER_PRESSURE.items(), 1):
+        held = (
+            BULK.amount_of(liquid) + _AMOUNT_UNCERTAINTY * generator(seed, "CAL-2", sweep).standard_normal()
+        )
+        values[f"amount_{number}"] = concise(held, _AMOUNT_UNCERTAINTY, 4)
+        values[f"added_{number}"] = concise(held - amount, _AMOUNT_UNCERTAINTY, 4)
+        amount = held
+    values["recovered"] = concise(amount, _AMOUNT_UNCERTAINTY, 4)
     files = {
         "raw/pulses_empty.csv": _pulse_file(
-            seed, "s001", "2025-11-05 09:00", empty, np.full(empty.size, 1e-3), filled_cell=False
+            seed, "s001", "2025-11-05 09:00", (empty, np.full(empty.size, 1e-3)), filled_cell=False
         ),
-        "raw/pulses_full.csv": _pulse_file(seed, "s002", "2025-11-12 09:00", begin, rise, filled_cell=True),
-    }
+        "raw/pulses_full.csv": _pulse_file(seed, "s002", "2025-11-12 09:00", pulse_begins(), filled_cell=True),
+        **{
+            f"raw/pulses_{sweep}.csv": _pulse_file(
+                seed, sweep, begin, pulse_begins(liquid.lambda_temperature, pulses=40, nearest=3e-6), filled_cell=True, liquid=liquid
+            )
+            for begin, (sweep, liquid) in zip(("2025-11-14 09:00", "2025-11-18 09:00"), UNDER_PRESSURE.items(), strict=True)
+        },
+    }  # fmt: skip
     return CooldownFolder(CALORIMETER, filled(CALORIMETER_SHEET, values), files)
 
 

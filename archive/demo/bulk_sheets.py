@@ -42,7 +42,7 @@ begin = 2025-08-04T09:00:00+10:00
 end = 2025-08-15T17:00:00+10:00
 time_zone = "Australia/Hobart"
 operators = ["graduate student"]
-purpose = "Normal and superfluid fraction of the bulk, and the exponent of the superfluid density."
+purpose = "Normal and superfluid fraction of the bulk, and the exponent of the superfluid density, at three pressures."
 outcome = "complete"
 temperature_scale = "ITS-90"
 cell = "SD-1"
@@ -71,9 +71,9 @@ shape = "cylinder"
 free_volume = "1.9(1) cm^3"
 closable_volume = "12(1) cm^3"
 closing_valve = "V3"
-rated_pressure = "0.35 MPa gauge"
+rated_pressure = "3.5 MPa gauge"
 rating_document = "workshop sheet SD-1, pressure test 2025-06-12"
-relief_device = "RV-1, set 0.20 MPa gauge, last test 2025-06-12"
+relief_device = "RV-1, set 2.5 MPa gauge, last test 2025-06-12"
 rod_material = "BeCu"
 rod = "18 mm long, 1.5 mm diameter, 0.4 mm bore"
 torsion_constant = "8.1(1) N m/rad"
@@ -112,10 +112,21 @@ amount = "69.3(7) mmol"
 notes = "Condensed until the level stood in the filling line."
 
 [[dose]]
+name = "d02"
+at = 2025-08-12T14:00:00+10:00
+amount = "5.6(3) mmol"
+notes = "The filling line closed and the cell pressed through the capillary."
+
+[[dose]]
+name = "d03"
+at = 2025-08-13T12:00:00+10:00
+amount = "5.7(3) mmol"
+
+[[dose]]
 name = "e01"
 at = 2025-08-14T16:00:00+10:00
 act = "recover"
-amount = "69.4(7) mmol"
+amount = "80.7(8) mmol"
 
 [[sweep]]
 name = "s001"
@@ -137,6 +148,28 @@ direction = "up"
 settled = "a night at 1.5 K"
 channels = { pressure = { column = "p", quantity = "pressure", unit = "Pa", convention = "absolute", uncertainty = "6 Pa", description = "over the liquid in the filling line" } }
 
+[[sweep]]
+name = "s003"
+kind = "temperature-sweep"
+files = ["raw/ts_s003.csv"]
+layout = "counter"
+after_dose = "d02"
+thermometer = "temperature"
+direction = "up"
+settled = "six hours at the pressure"
+liquid = { pressure = "$pressure_1 MPa absolute", density = "$density_1 kg/m^3", source = "equation of state of the normal liquid at that pressure" }
+
+[[sweep]]
+name = "s004"
+kind = "temperature-sweep"
+files = ["raw/ts_s004.csv"]
+layout = "counter"
+after_dose = "d03"
+thermometer = "temperature"
+direction = "up"
+settled = "six hours at the pressure"
+liquid = { pressure = "$pressure_2 MPa absolute", density = "$density_2 kg/m^3", source = "equation of state of the normal liquid at that pressure" }
+
 [[note]]
 role = "graduate student"
 text = "The period stops rising at the lambda point, as it must."
@@ -155,7 +188,7 @@ begin = 2025-11-03T09:00:00+11:00
 end = 2025-11-21T17:00:00+11:00
 time_zone = "Australia/Hobart"
 operators = ["postdoc", "graduate student"]
-purpose = "Heat capacity on both sides of the lambda point, by heat pulses."
+purpose = "Heat capacity on both sides of the lambda point, by heat pulses, at three pressures."
 outcome = "complete"
 temperature_scale = "ITS-90"
 cell = "CAL-2"
@@ -176,9 +209,9 @@ shape = "flat cylinder"
 free_volume = "6.1(1) cm^3"
 closable_volume = "6.2(1) cm^3"
 closing_valve = "VC, at the cell"
-rated_pressure = "2.0 MPa gauge"
+rated_pressure = "3.5 MPa gauge"
 rating_document = "workshop sheet CAL-2, pressure test 2025-09-30"
-relief_device = "burst disc BD-2, 1.5 MPa gauge, fitted 2025-09-30"
+relief_device = "burst disc BD-2, 2.5 MPa gauge, fitted 2025-09-30"
 helium_amount = "$amount mol"
 height = "3.0(1) mm"
 addenda = "run of the empty cell, s001"
@@ -208,10 +241,21 @@ at = 2025-11-10T10:00:00+11:00
 amount = "$amount mol"
 
 [[dose]]
+name = "d02"
+at = 2025-11-13T14:00:00+11:00
+amount = "$added_1 mol"
+notes = "Pressed through the capillary, the cell's valve closed behind it."
+
+[[dose]]
+name = "d03"
+at = 2025-11-17T14:00:00+11:00
+amount = "$added_2 mol"
+
+[[dose]]
 name = "e01"
 at = 2025-11-20T16:00:00+11:00
 act = "recover"
-amount = "$amount mol"
+amount = "$recovered mol"
 
 [[sweep]]
 name = "s001"
@@ -231,5 +275,27 @@ after_dose = "d01"
 thermometer = "temperature"
 direction = "up"
 settled = "a night at 2.0 K"
+
+[[sweep]]
+name = "s003"
+kind = "heat-capacity"
+files = ["raw/pulses_s003.csv"]
+layout = "pulses"
+after_dose = "d02"
+thermometer = "temperature"
+direction = "up"
+settled = "six hours at the pressure"
+liquid = { pressure = "$pressure_1 MPa absolute", density = "$density_1 kg/m^3", amount = "$amount_1 mol", source = "helium metered into the volume of the cell" }
+
+[[sweep]]
+name = "s004"
+kind = "heat-capacity"
+files = ["raw/pulses_s004.csv"]
+layout = "pulses"
+after_dose = "d03"
+thermometer = "temperature"
+direction = "up"
+settled = "six hours at the pressure"
+liquid = { pressure = "$pressure_2 MPa absolute", density = "$density_2 kg/m^3", amount = "$amount_2 mol", source = "helium metered into the volume of the cell" }
 """
 )

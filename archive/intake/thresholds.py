@@ -118,6 +118,9 @@ class Thresholds(Record):
         2e-3,
         f"Distance of a bulk feature from T_lambda = 2.1768 K ({_PRACTICE}; T_lambda: Preston-Thomas, Metrologia 27, 3, 1990).",
     )
+    liquid_pressure_fraction: float = _limit(
+        0.02, f"Stated and read pressure of bulk liquid may differ by this share ({_PRACTICE})."
+    )
     same_data_fraction: float = _limit(
         1e-6, f"Two tables that differ less than this are one data set ({_PRACTICE})."
     )

@@ -26,6 +26,7 @@ from archive.physics.helium_table import (
     rows_below,
     two_sides,
 )
+from archive.physics.lambda_line import LAMBDA_PRESSURE, LAMBDA_SLOPE
 from archive.physics.ranges import Floats, within
 
 __all__ = [
@@ -234,10 +235,6 @@ def specific_heat(temperature: ArrayLike) -> Floats:
     )
 
 
-# K/Pa: -8.88 mK/bar at saturated vapour pressure, by two routes: the gravity shift 1.273 uK per centimetre (G. Ahlers,
-# Phys. Rev. 171, 275 (1968), number from memory), and the Pippard-Buckingham-Fairbank relation with the table above.
-_LAMBDA_SLOPE: Final = -8.88e-8
-_LAMBDA_PRESSURE: Final = 5042.0  # Pa, ITS-90
 _LARGEST_LAMBDA_PRESSURE: Final = 1e5
 
 
@@ -264,6 +261,6 @@ def lambda_temperature_estimate(pressure: ArrayLike) -> Floats:
     >>> round(float(lambda_temperature_estimate(1e5)), 4)
     2.1684
     """
-    p = within(pressure, "pressure", low=_LAMBDA_PRESSURE, high=_LARGEST_LAMBDA_PRESSURE, unit="Pa",
+    p = within(pressure, "pressure", low=LAMBDA_PRESSURE, high=_LARGEST_LAMBDA_PRESSURE, unit="Pa",
                formula="the lambda line estimate")  # fmt: skip
-    return (T_LAMBDA + _LAMBDA_SLOPE * (p - _LAMBDA_PRESSURE))[()]
+    return (T_LAMBDA + LAMBDA_SLOPE * (p - LAMBDA_PRESSURE))[()]

@@ -1,29 +1,26 @@
 """Gravity at the lambda point: the transition temperature falls with depth, so a cell of some height has no sharp one.
 
-Rule: the slope of the lambda line is the local one at saturated vapour pressure; a parabola through the whole line is 23 per cent off there.
+Rule: the slope of the lambda line is the local one; a parabola through the whole line is 23 per cent off at saturated vapour pressure.
 """
 
 from __future__ import annotations
-
-from typing import Final
 
 import numpy as np
 import numpy.typing as npt
 
 from archive.physics.arrays import FloatArray
 from archive.physics.constants import STANDARD_GRAVITY
+from archive.physics.lambda_line import LAMBDA_SLOPE
 
-__all__ = ["LAMBDA_SLOPE", "lambda_spread", "reduced_temperature_limit"]
-
-LAMBDA_SLOPE: Final = -8.88e-8
-"""dT_lambda/dp at saturated vapour pressure, K/Pa, good to about 2 per cent.
-
-By two routes: 1.273 uK per centimetre of liquid (G. Ahlers, Physical Review 171, 275 (1968), number from memory), and the relation of Pippard,
-Buckingham and Fairbank between heat capacity and expansion with the values of Donnelly and Barenghi (1998)."""
+__all__ = ["lambda_spread", "reduced_temperature_limit"]
 
 
 def lambda_spread(
-    height: npt.ArrayLike, *, density: npt.ArrayLike, gravity: float = STANDARD_GRAVITY
+    height: npt.ArrayLike,
+    *,
+    density: npt.ArrayLike,
+    gravity: float = STANDARD_GRAVITY,
+    slope: npt.ArrayLike = LAMBDA_SLOPE,
 ) -> FloatArray:
     """Return how much lower T_lambda is at the bottom of a column of liquid than at its top, K.
 
@@ -35,6 +32,8 @@ def lambda_spread(
         Of the liquid, kg/m^3.
     gravity : float
         m/s^2.
+    slope : array_like
+        dT_lambda/dp at the pressure of the liquid, K/Pa, < 0; left out: at saturated vapour pressure.
 
     Raises
     ------
@@ -43,7 +42,7 @@ def lambda_spread(
 
     Notes
     -----
-    ``rho g h |dT_lambda/dp|``, for a cell that is filled to its height at about saturated vapour pressure.
+    ``rho g h |dT_lambda/dp|``, for a cell that is filled to its height.
 
     Examples
     --------
@@ -53,7 +52,9 @@ def lambda_spread(
     h = np.asarray(height, dtype=np.float64)
     if np.any(h < 0):
         raise ValueError(f"height: found {float(np.nanmin(h))} m, expected >= 0")
-    return np.asarray(-LAMBDA_SLOPE * np.asarray(density, dtype=np.float64) * gravity * h)
+    return np.asarray(
+        -np.asarray(slope, dtype=np.float64) * np.asarray(density, dtype=np.float64) * gravity * h
+    )
 
 
 def reduced_temperature_limit(
@@ -62,12 +63,13 @@ def reduced_temperature_limit(
     density: npt.ArrayLike,
     lambda_temperature: float,
     gravity: float = STANDARD_GRAVITY,
+    slope: npt.ArrayLike = LAMBDA_SLOPE,
 ) -> FloatArray:
     """Return the |1 - T/T_lambda| inside which parts of the cell lie on both sides of the transition.
 
     Parameters
     ----------
-    height, density, gravity
+    height, density, gravity, slope
         As in `lambda_spread`.
     lambda_temperature : float
         K, > 0.
@@ -89,4 +91,6 @@ def reduced_temperature_limit(
     """
     if not lambda_temperature > 0:
         raise ValueError(f"lambda_temperature: found {lambda_temperature} K, expected > 0")
-    return np.asarray(lambda_spread(height, density=density, gravity=gravity) / lambda_temperature)
+    return np.asarray(
+        lambda_spread(height, density=density, gravity=gravity, slope=slope) / lambda_temperature
+    )

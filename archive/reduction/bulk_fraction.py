@@ -1,6 +1,7 @@
 """Normal and superfluid fraction of bulk liquid between the plates of an oscillator.
 
-Rule: properties of the liquid are those of Donnelly and Barenghi (1998) at saturated vapour pressure, against temperatures on ITS-90.
+Rules: properties of the liquid are those of Donnelly and Barenghi (1998) at saturated vapour pressure, against temperatures on ITS-90; under
+pressure the density is the stated one, held over the run, and the viscosity the tabulated one at the same T/T_lambda.
 """
 
 from __future__ import annotations
@@ -11,7 +12,7 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-from archive.physics import helium_liquid, helium_viscosity
+from archive.physics import helium_viscosity
 from archive.physics.bulk_oscillator import (
     added_inertia,
     dragged_fraction,
@@ -22,6 +23,7 @@ from archive.physics.constants import T_LAMBDA
 from archive.physics.vapour_pressure import pressure_its90
 from archive.reduction.background_steps import background_value, known_rows
 from archive.reduction.estimate import FloatArray
+from archive.reduction.liquid_state import LiquidState
 from archive.reduction.row_choice import chosen_rows, row_numbers
 from archive.reduction.step import Outcome
 from schemas.base import Record
@@ -40,12 +42,14 @@ LEAST_ABOVE = 5
 class BulkParameters(Record):
     """How the fractions follow from the period."""
 
-    normal_above_kelvin: float = 2.18
-    """From here on all the liquid is normal, and the rows set the scale."""
+    normal_above_kelvin: float | None = None
+    """From here on all the liquid is normal, and the rows set the scale; left out: 2.18 K, and under a stated pressure 20 mK above where the
+    coarse lambda line has the transition, which is good to 15 mK."""
     drag_factor: float = 0.0
     """Part of the superfluid that the body displaces; 0 for smooth flat discs that turn about their own axis."""
     density_kg_m3: float | None = None
-    """Density of the liquid, constant over the run, for a run under pressure; none: at saturated vapour pressure."""
+    """Density of the liquid, constant over the run, in place of what the sheet states for a run under pressure; none and nothing stated: at
+    saturated vapour pressure."""
     rows: tuple[int, ...] | None = None
     """The rows that set the scale, from 1, in place of those above a temperature."""
 
@@ -73,6 +77,8 @@ def normal_fraction(
     gap: float,
     pressure: FloatArray | None,
     u_period: FloatArray | None,
+    liquid_pressure: float | None = None,
+    liquid_density: float | None = None,
 ) -> Outcome:
     """Return normal and superfluid density and fraction of bulk liquid between plates, from the period.
 
@@ -88,6 +94,8 @@ def normal_fraction(
         Of the liquid, Pa; only looked at.
     u_period : ndarray or None
         Point uncertainty.
+    liquid_pressure, liquid_density : float or None
+        Stated for a run under pressure, Pa and kg/m^3 at the lambda point.
 
     Raises
     ------
@@ -98,12 +106,20 @@ def normal_fraction(
     -----
     The inertia that the liquid adds is (P/P_empty)^2 - 1, in a scale that the rows above the lambda point set, where all of the liquid is
     normal. Between plates a distance 2h apart a part Re tanh(kh)/(kh) of the normal component moves, k = (1 - i)/depth; it is solved for
-    with the normal density that results, row by row. Liquid outside the stack counts as if it were inside.
+    with the normal density that results, row by row. Liquid outside the stack counts as if it were inside. Under pressure the density's own
+    change with temperature goes into the fraction; it is about proportional to the reduced temperature close below the lambda point, where the
+    regular term of the power law takes it up (at saturated vapour pressure it is 0.17 per cent at 1 - T/T_lambda = 0.03, from the table).
     """
     size = temperature.size
-    liquid = _liquid(parameters, temperature, period, background_value(temperature, background, low, high))
+    state = LiquidState.of(
+        liquid_pressure,
+        liquid_density,
+        held_density=parameters.density_kg_m3,
+        normal_above=parameters.normal_above_kelvin,
+    )
+    liquid = _liquid(state, temperature, period, background_value(temperature, background, low, high))
     rows = liquid.rows
-    scale, u_scale, above = _scale(parameters, liquid, temperature, gap, u_period)
+    scale, u_scale, above = _scale(parameters, state, liquid, temperature, gap, u_period)
     rho_n, ratio = np.full(size, np.nan), np.full(size, np.nan)
     rho_n[rows] = normal_density_from_inertia(
         liquid.inertia[rows] / scale, density=liquid.density[rows], viscosity=liquid.viscosity[rows],
@@ -121,7 +137,7 @@ def normal_fraction(
     part = np.nan_to_num(-rho_n * u_scale / scale)
     share = np.nan_to_num(part / liquid.density)
     own = "own coupling of the liquid"
-    lambda_density = _density(parameters, np.array([T_LAMBDA]))[0]
+    lambda_density = state.densities(np.array([T_LAMBDA]))[0]
     entry = SourceEntry(name=own, description="scale from the rows above the lambda point", level="run")
     worst = float(np.nanmax(ratio))
     return Outcome(
@@ -143,28 +159,26 @@ def normal_fraction(
         facts={
             "rows_above": int(np.count_nonzero(above)), "largest_gap_over_depth": worst, "half_gap_um": gap * 5e5,
             "missing_inertia": float(1 - dragged_fraction(worst, depth=1.0).real), "chi": parameters.drag_factor,
-            "density_from": "the plan" if parameters.density_kg_m3 is not None else "tables at saturated vapour pressure",
+            "density_from": state.origin,
+            **({} if liquid_pressure is None else {"pressure_kPa": liquid_pressure / 1e3, "stated_density": state.density}),
         },
-        findings=(*_gap_findings(worst), *_pressure_findings(parameters, temperature, pressure), *_outside(temperature, period, rows)),
+        findings=(
+            *_gap_findings(worst), *_pressure_findings(state, temperature, pressure), *_viscosity_findings(state, worst), *_outside(temperature, period, rows),
+        ),
     )  # fmt: skip
 
 
-def _density(parameters: BulkParameters, temperature: FloatArray) -> FloatArray:
-    if parameters.density_kg_m3 is not None:
-        return np.full(temperature.shape, parameters.density_kg_m3)
-    return np.atleast_1d(helium_liquid.density(temperature))
-
-
-def _liquid(parameters: BulkParameters, T: FloatArray, period: FloatArray, empty: FloatArray) -> _Liquid:
-    inside = (np.nan_to_num(T, nan=-1.0) >= LOWEST) & (np.nan_to_num(T, nan=-1.0) <= HIGHEST)
+def _liquid(state: LiquidState, T: FloatArray, period: FloatArray, empty: FloatArray) -> _Liquid:
+    tabulated = state.saturated_equivalent(T)
+    inside = (np.nan_to_num(tabulated, nan=-1.0) >= LOWEST) & (np.nan_to_num(tabulated, nan=-1.0) <= HIGHEST)
     rows = known_rows(T, period, empty) & inside
     if not rows.any():
         raise ValueError(
             f"temperature: found no row between {LOWEST} K and {HIGHEST} K inside the range of the empty cell's background"
         )
     density, viscosity = np.full(T.shape, np.nan), np.full(T.shape, np.nan)
-    density[rows] = _density(parameters, T[rows])
-    viscosity[rows] = helium_viscosity.viscosity(T[rows])
+    density[rows] = state.densities(T[rows])
+    viscosity[rows] = helium_viscosity.viscosity(tabulated[rows])
     return _Liquid(
         rows,
         added_inertia(period, empty_period=empty),
@@ -176,17 +190,22 @@ def _liquid(parameters: BulkParameters, T: FloatArray, period: FloatArray, empty
 
 
 def _scale(
-    parameters: BulkParameters, liquid: _Liquid, T: FloatArray, gap: float, u_period: FloatArray | None
+    parameters: BulkParameters,
+    state: LiquidState,
+    liquid: _Liquid,
+    T: FloatArray,
+    gap: float,
+    u_period: FloatArray | None,
 ) -> tuple[float, float, npt.NDArray[np.bool_]]:
     """Return the inertia per density of liquid that is wholly dragged along, its uncertainty, and the rows it is from."""
     if parameters.rows is not None:
         above = chosen_rows(parameters.rows, T.size) & liquid.rows
     else:
-        above = liquid.rows & (np.nan_to_num(T) >= parameters.normal_above_kelvin)
+        above = liquid.rows & (np.nan_to_num(T) >= state.normal_above)
     count = int(np.count_nonzero(above))
     if count < LEAST_ABOVE:
         raise ValueError(
-            f"temperature: found {count} rows from {parameters.normal_above_kelvin} K up, where all the liquid is normal, expected at least "
+            f"temperature: found {count} rows from {state.normal_above:.5g} K up, where all the liquid is normal, expected at least "
             f"{LEAST_ABOVE}; they set the scale, so measure on into the normal liquid, or set normal_above_kelvin"
         )
     rho = liquid.density[above]
@@ -222,10 +241,20 @@ def _gap_findings(ratio: float) -> tuple[Finding, ...]:
     )  # fmt: skip
 
 
-def _pressure_findings(
-    parameters: BulkParameters, T: FloatArray, pressure: FloatArray | None
-) -> tuple[Finding, ...]:
-    if pressure is None or parameters.density_kg_m3 is not None or not np.isfinite(pressure).any():
+def _viscosity_findings(state: LiquidState, ratio: float) -> tuple[Finding, ...]:
+    if state.pressure is None:
+        return ()
+    lost = 1 - float(dragged_fraction(ratio, depth=1.0).real)
+    return (
+        Finding(
+            code="viscosity-under-pressure", severity="note",
+            what=f"no viscosity under pressure is tabulated here; that of saturated liquid at the same T/T_lambda was taken, which bears on {lost:.2g} of the inertia",
+        ),
+    )  # fmt: skip
+
+
+def _pressure_findings(state: LiquidState, T: FloatArray, pressure: FloatArray | None) -> tuple[Finding, ...]:
+    if pressure is None or state.density is not None or not np.isfinite(pressure).any():
         return ()
     warmest = min(float(np.nanmax(T)), HIGHEST)
     typical, saturated = float(np.nanmedian(pressure)), float(pressure_its90(max(warmest, 1.25)))
@@ -235,7 +264,7 @@ def _pressure_findings(
         Finding(
             code="pressure-above-saturation", severity="warning",
             what=f"the liquid was at {typical / 1e3:.4g} kPa, and its density was taken at saturated vapour pressure",
-            remedy="copy the plan and set density_kg_m3, and normal_above_kelvin to a temperature above the lambda point at that pressure",
+            remedy="state pressure and density of the liquid for the sweep, and supplement the cooldown",
         ),
     )  # fmt: skip
 

@@ -1,4 +1,4 @@
-"""Steps of bulk liquid near the lambda point: fractions from an oscillator, their power law, gravity, the two-scale-factor combination."""
+"""Steps of bulk liquid near the lambda point: fractions from an oscillator, their power law, the two-scale-factor combination."""
 
 from __future__ import annotations
 
@@ -9,28 +9,18 @@ import numpy as np
 from archive.physics import helium_liquid
 from archive.physics.bulk_superfluid import fit_superfluid_law, transition_estimate
 from archive.physics.constants import MOLAR_MASS_HELIUM4, T_LAMBDA
-from archive.physics.lambda_gravity import lambda_spread
-from archive.physics.linear_fit import straight_line
 from archive.physics.power_law import transverse_correlation_length
 from archive.physics.two_scale_factor import two_scale_factor
 from archive.reduction.background_steps import known_rows, weights
 from archive.reduction.bulk_fraction import BulkParameters, normal_fraction
 from archive.reduction.estimate import FloatArray
+from archive.reduction.lambda_line_steps import LIQUID_PORTS
 from archive.reduction.row_choice import chosen_rows, row_numbers
 from archive.reduction.step import Covariance, NoParameters, Outcome, Port, Step
 from schemas.base import Record
 from schemas.finding import Finding
 
-__all__ = ["BULK_STEPS", "GravityParameters", "LawParameters", "LineParameters"]
-
-LAMBDA_PRESSURE = 5042.0
-"""Pa: saturated vapour pressure at the lambda point on ITS-90."""
-
-HIGHEST_LINE_PRESSURE = 1e5
-"""Pa; the linear form of the lambda line ends there."""
-
-LINE_UNCERTAINTY = 1e-3
-"""K, of that form."""
+__all__ = ["BULK_STEPS", "LawParameters"]
 
 
 class LawParameters(Record):
@@ -44,18 +34,6 @@ class LawParameters(Record):
     """Held; fitted when none."""
     rows: tuple[int, ...] | None = None
     """The rows to fit, from 1, in place of the window."""
-
-
-class LineParameters(Record):
-    """Which rows tell the pressure at the lambda point."""
-
-    within_kelvin: float = 0.01
-
-
-class GravityParameters(Record):
-    """Local gravity."""
-
-    gravity_m_s2: float = 9.80665
 
 
 def superfluid_law(
@@ -132,93 +110,29 @@ def superfluid_law(
     )  # fmt: skip
 
 
-def lambda_line(
-    parameters: LineParameters, *, temperature: FloatArray, pressure: FloatArray, lambda_temperature: float
+def two_scale(
+    _: NoParameters,
+    *,
+    heat_capacity_amplitude: float,
+    coherence_length: float,
+    liquid_density: float | None = None,
 ) -> Outcome:
-    """Return the pressure at the lambda point, the lambda temperature expected there, and how far the measured one is above it.
+    """Return the two-scale-factor combination, with a warning outside 0.80 to 0.88.
 
     Parameters
     ----------
-    temperature, pressure : ndarray
-        K, Pa.
-    lambda_temperature : float
-        As measured, K on ITS-90.
-
-    Raises
-    ------
-    ValueError
-        Fewer than three rows near the lambda point.
-
-    Notes
-    -----
-    The line is known here near saturated vapour pressure only, to about a millikelvin and up to 1 bar; above it there is a pressure and no
-    expectation.
-    """
-    rows = known_rows(temperature, pressure) & (
-        np.abs(np.nan_to_num(temperature) - lambda_temperature) < parameters.within_kelvin
-    )
-    count = int(np.count_nonzero(rows))
-    if count < 3:
-        raise ValueError(
-            f"temperature: found {count} rows with a pressure within {parameters.within_kelvin} K of the lambda point, expected at least 3"
-        )
-    # A saturated liquid's pressure rises by 12 Pa in a millikelvin: a line is read at the lambda point, not a mean.
-    line = straight_line(temperature[rows] - lambda_temperature, pressure[rows], absolute=False)
-    p, u_p = line.value("intercept"), line.standard_uncertainty("intercept")
-    expected, verdicts = math.nan, {}
-    if p > HIGHEST_LINE_PRESSURE:
-        verdicts = dict.fromkeys(("expected", "difference"), "no equation of the lambda line above 1 bar")
-    else:
-        # A gauge may read a little less than the liquid's own vapour pressure.
-        expected = float(helium_liquid.lambda_temperature_estimate(max(p, LAMBDA_PRESSURE)))
-    difference = lambda_temperature - expected
-    findings: tuple[Finding, ...] = ()
-    if abs(difference) > 2e-3:
-        findings = (
-            Finding(
-                code="lambda-temperature",
-                severity="warning",
-                what=f"the lambda point lies {difference * 1e3:.3g} mK from where the lambda line has it at {p / 1e3:.4g} kPa",
-                expected="2 mK at most",
-                remedy="look at the scale, the calibration and the gauge",
-            ),
-        )
-    spread = 0.0 if math.isnan(expected) else LINE_UNCERTAINTY
-    return Outcome(
-        {"pressure": p, "expected": expected, "difference": difference},
-        point={"pressure": u_p, "expected": spread, "difference": spread},
-        facts={"rows": count},
-        verdicts=verdicts,
-        findings=findings,
-    )
-
-
-def gravity(parameters: GravityParameters, *, height: float) -> Outcome:
-    """Return over how much gravity spreads the lambda point of a cell, and the reduced temperature inside which it is rounded.
-
-    Raises
-    ------
-    ValueError
-        A height below zero.
-    """
-    rho = float(helium_liquid.density(T_LAMBDA))
-    spread = float(lambda_spread(height, density=rho, gravity=parameters.gravity_m_s2))
-    limit = spread / T_LAMBDA
-    return Outcome(
-        {"spread": spread, "limit": limit},
-        facts={"spread_uK": spread * 1e6, "limit_is": limit, "density": rho},
-    )
-
-
-def two_scale(_: NoParameters, *, heat_capacity_amplitude: float, coherence_length: float) -> Outcome:
-    """Return the two-scale-factor combination at saturated vapour pressure, with a warning outside 0.80 to 0.88.
+    heat_capacity_amplitude, coherence_length : float
+        J/(mol K), m.
+    liquid_density : float or None
+        At the lambda point, as stated for a run under pressure, kg/m^3; else that of saturated liquid.
 
     Raises
     ------
     ValueError
         An amplitude that is not above zero.
     """
-    volume = MOLAR_MASS_HELIUM4 / float(helium_liquid.density(T_LAMBDA))
+    rho = float(helium_liquid.density(T_LAMBDA)) if liquid_density is None else liquid_density
+    volume = MOLAR_MASS_HELIUM4 / rho
     R = float(
         two_scale_factor(
             coherence_length, heat_capacity_amplitude=heat_capacity_amplitude, molar_volume=volume
@@ -248,7 +162,7 @@ BULK_STEPS: tuple[Step, ...] = (
             "background": Port("period", "array", "coefficients of the empty cell's period"),
             "low": Port("temperature", "scalar", "lower end of the background"), "high": Port("temperature", "scalar", "upper end of the background"),
             "gap": Port("length", "scalar", "distance of neighbouring plates"),
-            "pressure": Port("pressure", "array", "pressure of the liquid", optional=True),
+            "pressure": Port("pressure", "array", "pressure of the liquid", optional=True), **LIQUID_PORTS,
         },
         yields={
             "normal_density": Port("density", "array", "density of the normal component"),
@@ -278,35 +192,11 @@ BULK_STEPS: tuple[Step, ...] = (
         citations=("singsaas-1984", "josephson-1966"), spread="refit", weights=("superfluid_fraction", "temperature"),
     ),
     Step(
-        name="lambda-line", version=1, function=lambda_line, parameters=LineParameters,
-        takes={
-            "temperature": _TEMPERATURE, "pressure": Port("pressure", "array", "pressure of the liquid"),
-            "lambda_temperature": Port("temperature", "scalar", "lambda temperature as measured"),
-        },
-        yields={
-            "pressure": Port("pressure", "scalar", "pressure of the liquid at the lambda point"),
-            "expected": Port("temperature", "scalar", "lambda temperature expected at that pressure"),
-            "difference": Port("temperature_difference", "scalar", "measured less expected"),
-        },
-        sentence="At the lambda point the liquid was at {pressure} ({rows} rows); the lambda line near saturated vapour pressure has it at {expected}, so the measured one differs by {difference}.",
-        citations=("ahlers-1968",), spread="refit",
-    ),
-    Step(
-        name="lambda-gravity", version=1, function=gravity, parameters=GravityParameters,
-        takes={"height": Port("length", "scalar", "height of the liquid")},
-        yields={
-            "spread": Port("temperature_difference", "scalar", "difference of the lambda temperature between top and bottom"),
-            "limit": Port("number", "scalar", "reduced temperature inside which gravity rounds the transition"),
-        },
-        sentence="Over a height of {height} gravity spreads the lambda temperature by {spread_uK} uK, so that nothing inside a reduced temperature of {limit_is} is sharp.",
-        citations=("ahlers-1968",),
-        effects={"gravity rounding": "Gravity spreads the lambda temperature over the cell by {spread_uK} uK; a heat capacity is compared with the mean of the law over the height, and rows inside the spread are not fitted."},
-    ),
-    Step(
         name="two-scale-factor", version=1, function=two_scale,
         takes={
             "heat_capacity_amplitude": Port("molar_heat_capacity", "scalar", "amplitude of the heat capacity below the transition"),
             "coherence_length": Port("length", "scalar", "amplitude of the transverse correlation length"),
+            "liquid_density": LIQUID_PORTS["liquid_density"],
         },
         yields={"combination": Port("number", "scalar", "two-scale-factor combination")},
         sentence="The two-scale-factor combination xi_0T (A^-/k_B)^(1/3), with {molar_volume_cm3} cm^3/mol, is {combination}.",

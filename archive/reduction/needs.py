@@ -9,9 +9,13 @@ from archive.reduction.facts import SweepFacts
 from archive.reduction.planning import applies, shipped_plans
 from archive.reduction.source import Source
 from schemas.lineage import AccessionDocument, ReductionDocument, SweepEntry
+from schemas.liquid import Liquid
 from schemas.plan import Need, Plan
 
 __all__ = ["NeedAddresses", "gathered_reductions", "needed_reductions"]
+
+SAME_PRESSURE = 0.02
+"""Share by which two pressures may differ and still be the same for bulk liquid (common practice, no source)."""
 
 NeedAddresses = Mapping[str, str | Sequence[str]]
 """Addresses of reductions by the plan's name for a need; several for a need of many."""
@@ -151,11 +155,12 @@ def _related(need: Need, facts: SweepFacts, source: Source) -> Iterator[list[str
             if _same(entry, facts) and _same_filling(entry, facts)
         ]
         return
-    same = _same_sample if need.relation == "same-sample-any-cooldown" else _same
-    same_elsewhere = _same_sample if need.relation == "same-sample-any-cooldown" else _same_name
+    of_gas = need.relation in ("same-sample-any-cooldown", "same-liquid-any-cooldown")
+    same = _same_sample if of_gas else _same
+    same_elsewhere = _same_sample if of_gas else _same_name
     yield [
         f"{facts.cooldown}/{entry.name}"
-        for entry in _sweeps(source.accessions(facts.cooldown))
+        for entry in _of_liquid(need, facts, source.accessions(facts.cooldown))
         if same(entry, facts)
     ]
     if need.relation.endswith("-any-cooldown"):
@@ -163,7 +168,7 @@ def _related(need: Need, facts: SweepFacts, source: Source) -> Iterator[list[str
             if cooldown != facts.cooldown:
                 yield [
                     f"{cooldown}/{entry.name}"
-                    for entry in _sweeps(source.accessions(cooldown))
+                    for entry in _of_liquid(need, facts, source.accessions(cooldown))
                     if same_elsewhere(entry, facts)
                 ]
 
@@ -171,6 +176,22 @@ def _related(need: Need, facts: SweepFacts, source: Source) -> Iterator[list[str
 def _sweeps(accessions: list[AccessionDocument]) -> list[SweepEntry]:
     newest = {entry.name: entry for accession in accessions for entry in accession.sweeps}
     return [newest[name] for name in sorted(newest)]
+
+
+def _of_liquid(need: Need, facts: SweepFacts, accessions: list[AccessionDocument]) -> list[SweepEntry]:
+    """Return the sweeps; where the need is of the same liquid, those whose liquid was under the same pressure."""
+    entries = _sweeps(accessions)
+    if need.relation != "same-liquid-any-cooldown":
+        return entries
+    stated = {sweep.name: sweep.liquid for accession in accessions for sweep in accession.sheet.sweep}
+    return [each for each in entries if _same_pressure(stated.get(each.name), facts.sweep.liquid)]
+
+
+def _same_pressure(one: Liquid | None, other: Liquid | None) -> bool:
+    """Whether both are at about the same pressure, or both at their own vapour pressure."""
+    if one is None or other is None:
+        return one is other
+    return abs(one.pressure.si - other.pressure.si) <= SAME_PRESSURE * abs(other.pressure.si)
 
 
 def _same(entry: SweepEntry, facts: SweepFacts) -> bool:
@@ -206,7 +227,8 @@ def _missing(plan: Plan, need: Need, facts: SweepFacts, source: Source) -> BadRe
     ]
     if need.relation == "same-sweep":
         candidates = [facts.address]
-    thing = "gas" if need.relation == "same-sample-any-cooldown" else "cell"
+    things = {"same-sample-any-cooldown": "gas", "same-liquid-any-cooldown": "gas at the same pressure"}
+    thing = things.get(need.relation, "cell")
     remedy = (
         f"run `stillroom reduce {candidates[0]} --plan {need.plan}` first"
         if candidates

@@ -58,8 +58,8 @@ def sheet_value(facts: SweepFacts, name: str) -> SheetValue:
     ----------
     facts : SweepFacts
     name : str
-        ``gas``, ``sheet``, ``sweep``, ``detection``, ``cell``, ``substrate``, ``sample`` (records); a field of one of the
-        last five, e.g. ``cell.gap``; ``amount`` or ``coverage`` as the accession computed them.
+        ``gas``, ``sheet``, ``sweep``, ``liquid``, ``detection``, ``cell``, ``substrate``, ``sample`` (records); a field of one of the
+        last six, e.g. ``cell.gap``; ``amount`` or ``coverage`` as the accession computed them.
     """
     head, _, field = name.partition(".")
     if head in ("amount", "coverage") and not field:
@@ -89,6 +89,7 @@ def _holder(facts: SweepFacts, head: str) -> tuple[object | None, str, Level]:
         "gas": (facts.gas_book, facts.accession.address, "run"),
         "sheet": (sheet, facts.accession.address, "run"),
         "sweep": (facts.sweep, facts.address, "run"),
+        "liquid": (facts.sweep.liquid, facts.address, "run"),
         "detection": (sheet.detection_of(facts.sweep), facts.accession.address, "run"),
         "cell": (facts.cell, entry.cell or facts.address, "cell"),
         "substrate": (facts.substrate, entry.substrate or facts.address, "cell"),

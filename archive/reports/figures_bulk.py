@@ -35,42 +35,52 @@ __all__ = [
 
 
 def fraction_figure(scope: Scope, reduction: ReductionDocument) -> Drawn:
-    """Return normal and superfluid fraction against temperature with the tabulated ones, and the difference from these."""
+    """Return normal and superfluid fraction against temperature with the tabulated ones and the difference from these, or under pressure alone."""
     T = wanted(scope, reduction, "temperature")
     fractions = [(name, wanted(scope, reduction, f"{name}_fraction")) for name in ("superfluid", "normal")]
     depth, step = column_of(scope, reduction, "penetration_depth"), step_of(reduction, "bulk-normal-fraction")
     half = fact(step, "half_gap_um") * 1e-6
-    figure, panels = stacked([2.4, 1] + ([1] if depth is not None else []), height=4.4 if depth is not None else HEIGHTS[1])  # fmt: skip
-    grid = np.linspace(float(np.nanmin(T)), float(np.nanmax(T)), 400)
-    table = np.nan_to_num(helium_liquid.superfluid_fraction(np.minimum(grid, T_LAMBDA)))
+    # The tables are of liquid at its own vapour pressure.
+    pressed = step.facts.get("pressure_kPa")
+    shares = [2.4] + ([1] if pressed is None else []) + ([1] if depth is not None else [])
+    figure, panels = stacked(shares, height=4.4 if len(shares) == 3 else HEIGHTS[1])
     for k, (name, values) in enumerate(fractions):
         points(panels[0], T, values, spread_of(scope, reduction, f"{name}_fraction")[0], look=k, label=name)
-        line(panels[0], grid, table if k == 0 else 1 - table, look=k)
     panels[0].set_ylabel("fraction")
     panels[0].set_ylim(-0.05, 1.05)
+    if pressed is None:
+        _tabulated(panels, T, fractions[0][1], spread_of(scope, reduction, "superfluid_fraction")[0])
     panels[0].legend(loc="center left")
-    values = fractions[0][1]
+    if depth is not None:
+        points(panels[-1], T, half / depth)
+        panels[-1].set_ylabel(r"$d/2\delta$")
+        panels[-1].set_ylim(0, 1.25 * float(np.nanmax(half / depth)))
+    panels[-1].set_xlabel("$T$ / K")
+    tight_to(panels[-1], T)
+    letters([panels[0], *([panels[-1]] if depth is not None else [])])
+    gap = f"; (b) half the gap, {half * 1e6:.3g} um, over the viscous penetration depth" if depth is not None else ""  # fmt: skip
+    results = told(scope, reduction, coupled_inertia="inertia of the liquid wholly coupled, over that of the cell")  # fmt: skip
+    shown = (
+        "superfluid and normal fraction (points) and the tabulated ones (lines; Donnelly and Barenghi 1998), below them the superfluid fraction less the tabulated one"
+        if pressed is None
+        else f"superfluid and normal fraction at {pressed:.5g} kPa"
+    )
+    caption = f"Liquid between plates, {reduction.sweep}: (a) {shown}{gap}. Error bars: standard uncertainty of each point alone. {results}"
+    return Drawn(name_of("bulk-oscillator", reduction), saved(figure), caption, (reduction.address,))
+
+
+def _tabulated(panels: list[Axes], T: Column, values: Column, u: Column | None) -> None:
+    """Draw the tabulated fractions of saturated liquid, and what was found less these."""
+    grid = np.linspace(float(np.nanmin(T)), float(np.nanmax(T)), 400)
+    table = np.nan_to_num(helium_liquid.superfluid_fraction(np.minimum(grid, T_LAMBDA)))
+    line(panels[0], grid, table, look=0)
+    line(panels[0], grid, 1 - table, look=1)
     below = T < T_LAMBDA
     difference = np.where(
         below, values - np.nan_to_num(helium_liquid.superfluid_fraction(np.minimum(T, T_LAMBDA))), values
     )
     factor, unit = enlarged(difference, "1")
-    u = spread_of(scope, reduction, "superfluid_fraction")[0]
     residuals(panels[1], T, difference / factor, None if u is None else u / factor, name=f"$r$ / {unit}" if unit else "$r$")  # fmt: skip
-    if depth is not None:
-        points(panels[2], T, half / depth)
-        panels[2].set_ylabel(r"$d/2\delta$")
-        panels[2].set_ylim(0, 1.25 * float(np.nanmax(half / depth)))
-    panels[-1].set_xlabel("$T$ / K")
-    tight_to(panels[-1], T)
-    letters([panels[0], *panels[2:]])
-    gap = f"; (b) half the gap, {half * 1e6:.3g} um, over the viscous penetration depth" if depth is not None else ""  # fmt: skip
-    results = told(scope, reduction, coupled_inertia="inertia of the liquid wholly coupled, over that of the cell")  # fmt: skip
-    caption = (
-        f"Liquid between plates, {reduction.sweep}: (a) superfluid and normal fraction (points) and the tabulated ones (lines; Donnelly and Barenghi 1998), below them the superfluid fraction less "
-        f"the tabulated one{gap}. Error bars: standard uncertainty of each point alone. {results}"
-    )
-    return Drawn(name_of("bulk-oscillator", reduction), saved(figure), caption, (reduction.address,))
 
 
 def superfluid_law_figure(scope: Scope, reduction: ReductionDocument) -> Drawn:

@@ -196,6 +196,10 @@ def _sweep_notes(held: Holdings) -> Iterator[dict[str, str]]:
     for taken in held.sweeps:
         sweep = taken.sheet
         said = [f"settled: {sweep.settled}"] if sweep.settled else []
+        if sweep.liquid is not None:
+            said.append(
+                f"liquid at {sweep.liquid.pressure.format()}, {sweep.liquid.density.format()} at its lambda point ({sweep.liquid.source})"
+            )
         said += [
             f"{full_time(each.at, zone)}: {each.what}" + (" (new segment)" if each.new_segment else "")
             for each in sweep.disturbances

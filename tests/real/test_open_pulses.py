@@ -89,7 +89,14 @@ def test_the_tracked_line_is_the_helium(lab: Archive, outcomes: dict[str, Reduce
 
 
 def test_the_frequency_is_that_of_fourth_sound(lab: Archive, outcomes: dict[str, ReduceOutcome]) -> None:
-    """f(T)/f(0.6 K) = sqrt(rho_s/rho) c1(T)/c1(0.6 K) within 0.5 % up to 1.4 K, tabulated values from liquid-helium-svp and heprops."""
+    """f(T)/f(0.6 K) = sqrt(rho_s/rho) c1(T)/c1(0.6 K) within 0.5 % up to 1.4 K, tabulated values from liquid-helium-svp and heprops.
+
+    So is the tabulated speed of fourth sound itself. The superfluid fraction goes with the square of the frequency, and is within 0.75 %
+    of the tabulated one, not within 0.5 %: the departure is below 0.08 % up to 1.0 K, then -0.22, -0.51, -0.60 and -0.69 % at 1.10, 1.20, 1.30
+    and 1.40 K. Another normalisation (the mean of the two coldest) takes 0.02 % off; the second term of fourth sound, the normal fraction times
+    the square of second sound, adds up to 0.05 % in the wrong direction; the density changes by 0.014 %. As an error of temperature it would be
+    20 to 32 mK, and the files do not tell how good their thermometer is.
+    """
     address = outcomes["r09 line-tracking"].address or ""
     T, f, fraction = (
         lab.array(f"{address}#{name}")[:8]
@@ -104,13 +111,48 @@ def test_the_frequency_is_that_of_fourth_sound(lab: Archive, outcomes: dict[str,
     )
     expected = np.sqrt(carried / carried[0]) * speed / speed[0]
     assert f / f[0] == pytest.approx(expected, rel=5e-3)
+    fourth = np.array([float(liquid_helium_svp.sound_velocity_fourth(each)) for each in T])
+    assert f / f[0] == pytest.approx(fourth / fourth[0], rel=5e-3)
     # The square of the frequency: twice that.
-    assert fraction == pytest.approx(carried / carried[0], rel=1e-2)
+    assert fraction == pytest.approx(carried / carried[0], rel=7.5e-3)
     other = np.array([float(heprops_helium.superfluid_fraction_SVP(each)) for each in T[:7]])
-    assert fraction[:7] == pytest.approx(other, rel=1e-2)
+    assert fraction[:7] == pytest.approx(other, rel=7.5e-3)
     # SOURCE.md: the root of the fraction alone is visibly off, 2009 Hz against 1998 at 1.197 K.
     assert f[0] * np.sqrt(carried[5]) == pytest.approx(2009, abs=3)
     assert abs(f[5] - f[0] * np.sqrt(carried[5])) > 8
+
+
+def test_the_superfluid_density_is_that_of_second_sound_and_heat_capacity(
+    lab: Archive, outcomes: dict[str, ReduceOutcome]
+) -> None:
+    """Within 0.5 % up to 1.4 K of the superfluid density that the tabulated second sound and specific heat ask for.
+
+    Two-fluid hydrodynamics, u_2^2 = (rho_s/rho_n) T s^2/c, with s from the specific heat: tables after Donnelly and Barenghi (1998) from
+    liquid-helium-svp. The tabulated fraction itself departs from this by up to 0.4 %, in the direction in which the pulses do.
+    """
+    address = outcomes["r09 line-tracking"].address or ""
+    T, fraction = (
+        lab.array(f"{address}#{name}")[:8] for name in ("spectra_temperature", "superfluid_fraction")
+    )
+    grid = np.geomspace(0.1, 1.45, 4000)
+    heat = np.asarray(liquid_helium_svp.specific_heat_SVP(grid))
+    # Below the table the heat capacity is that of phonons, T^3: the entropy is a third of it.
+    steps = np.diff(np.log(grid)) * (heat[1:] + heat[:-1]) / 2
+    entropy = np.interp(T, grid, heat[0] / 3 + np.concatenate([[0.0], np.cumsum(steps)]))
+    speed = np.asarray(liquid_helium_svp.sound_velocity_second(T))
+    normal_over_superfluid = T * entropy**2 / np.interp(T, grid, heat) / speed**2
+    asked = 1 / (1 + normal_over_superfluid)
+    assert fraction == pytest.approx(asked / asked[0], rel=5e-3)
+    carried = np.array(
+        [
+            float(liquid_helium_svp.density_superfluid(each)) / float(liquid_helium_svp.density(each))
+            for each in T
+        ]
+    )
+    warm = T > 1.05
+    assert (carried[warm] > asked[warm]).all()
+    assert (carried[warm] > fraction[warm]).all()
+    assert carried == pytest.approx(asked, rel=5e-3)
 
 
 def test_it_replays_to_the_bit_and_leads_back_to_the_files(

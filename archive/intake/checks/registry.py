@@ -17,6 +17,7 @@ from archive.intake.checks import (
     film,
     gas,
     isotherm,
+    liquid,
     names,
     quality,
     sheet,
@@ -127,6 +128,16 @@ CHECKS: tuple[Check, ...] = (
         "lambda-temperature",
         "a bulk lambda point lies at its temperature, lambda_temperature_k",
         temperatures.lambda_temperature,
+    ),
+    Check(
+        "liquid-state",
+        "liquid under pressure is as its gauge and the lambda line have it, liquid_pressure_fraction",
+        liquid.liquid_state,
+    ),
+    Check(
+        "liquid-above-rating",
+        "liquid under pressure stays within the rating of its cell",
+        liquid.liquid_above_rating,
     ),
     Check(
         "rod-below-200-mk",

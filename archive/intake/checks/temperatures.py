@@ -12,6 +12,7 @@ from archive.intake.checks.telling import listed, number, on_row, on_sweep
 from archive.intake.reading import Reading, SweepTable
 from archive.intake.thresholds import Thresholds
 from archive.physics.constants import T_LAMBDA
+from archive.physics.lambda_line import COARSE_UNCERTAINTY, coarse_lambda_temperature
 from schemas.cell import TorsionalOscillator
 from schemas.finding import Finding
 
@@ -157,9 +158,10 @@ def lambda_temperature(reading: Reading, thresholds: Thresholds) -> Iterator[Fin
         if np.isfinite(heat).sum() < 5:
             continue
         row = int(np.nanargmax(heat))
-        away = float(T[row]) - T_LAMBDA
+        at, least, where = _lambda_point(table, thresholds)
+        away = float(T[row]) - at
         spacing = float(np.median(np.abs(np.diff(np.sort(T[np.isfinite(heat)])))))
-        limit = max(thresholds.lambda_temperature_k, spacing)
+        limit = max(least, spacing)
         # Farther away the largest value is another feature, or the peak was not reached.
         if limit < abs(away) < 0.05 and 0 < row < len(heat) - 1:
             yield on_row(
@@ -169,9 +171,21 @@ def lambda_temperature(reading: Reading, thresholds: Thresholds) -> Iterator[Fin
                 f"the peak of the heat capacity in {table.name} lies {number(1e3 * away, 'mK', 3)} from T_lambda",
                 row,
                 found=number(float(T[row]), "K", 6),
-                expected=f"{T_LAMBDA} K on ITS-90 within {number(1e3 * limit, 'mK', 2)} (lambda_temperature_k), in bulk at saturated vapour pressure",
-                remedy="look at the scale and the calibration; under pressure or in pores waive it with the reason",
+                expected=f"{at:.6g} K within {number(1e3 * limit, 'mK', 2)}, {where}",
+                remedy="look at the scale and the calibration; state the liquid of a sweep under pressure; in pores waive it with the reason",
             )
+
+
+def _lambda_point(table: SweepTable, thresholds: Thresholds) -> tuple[float, float, str]:
+    """Return where the lambda point is expected (K), how well that is known (K), and why there."""
+    saturated = T_LAMBDA, thresholds.lambda_temperature_k, "on ITS-90 (lambda_temperature_k), in bulk at saturated vapour pressure"  # fmt: skip
+    if table.sweep.liquid is None:
+        return saturated
+    try:
+        coarse = float(coarse_lambda_temperature(table.sweep.liquid.pressure.si))
+    except ValueError:  # told of by the check of the liquid's state
+        return saturated
+    return coarse, max(COARSE_UNCERTAINTY, thresholds.lambda_temperature_k), "as the coarse lambda line has it at the stated pressure"  # fmt: skip
 
 
 def rod_below_200_mk(reading: Reading, thresholds: Thresholds) -> Iterator[Finding]:

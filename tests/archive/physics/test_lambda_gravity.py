@@ -7,7 +7,8 @@ import math
 import pytest
 
 from archive.physics import helium_liquid
-from archive.physics.lambda_gravity import LAMBDA_SLOPE, lambda_spread, reduced_temperature_limit
+from archive.physics.lambda_gravity import lambda_spread, reduced_temperature_limit
+from archive.physics.lambda_line import LAMBDA_SLOPE
 
 
 def test_one_centimetre():

@@ -5,20 +5,19 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from archive.demo.bulk_cooldowns import stack_temperatures
+from archive.demo.bulk_cooldowns import pressed_temperatures, stack_temperatures
+from archive.demo.bulk_liquids import UNDER_PRESSURE
 from archive.demo.bulk_truth import BULK, bulk_period, superfluid_fraction
 from archive.physics import helium_liquid
 from archive.physics.constants import T_LAMBDA
 from archive.reduction.bulk_fraction import BulkParameters, normal_fraction
-from archive.reduction.bulk_steps import (
-    BULK_STEPS,
+from archive.reduction.bulk_steps import BULK_STEPS, LawParameters, superfluid_law, two_scale
+from archive.reduction.lambda_line_steps import (
+    LAMBDA_LINE_STEPS,
     GravityParameters,
-    LawParameters,
     LineParameters,
     gravity,
     lambda_line,
-    superfluid_law,
-    two_scale,
 )
 from archive.reduction.step import NoParameters
 from archive.reduction.steps import STEPS
@@ -30,16 +29,18 @@ BACKGROUND = np.array([
 ])  # fmt: skip
 
 
-def fractions(T, period, *, gap=BULK.gap, u=None, pressure=None, **parameters):
+def fractions(
+    T, period, *, gap=BULK.gap, u=None, pressure=None, liquid_pressure=None, liquid_density=None, **parameters
+):
     """Return the outcome of the step on a run."""
     return normal_fraction(
         BulkParameters(**parameters), temperature=T, period=period, background=BACKGROUND, low=LOW, high=HIGH, gap=gap,
-        pressure=pressure, u_period=u,
+        pressure=pressure, u_period=u, liquid_pressure=liquid_pressure, liquid_density=liquid_density,
     )  # fmt: skip
 
 
 def test_every_step_is_in_the_list():
-    assert {step.name for step in BULK_STEPS} <= {step.name for step in STEPS}
+    assert {step.name for step in (*BULK_STEPS, *LAMBDA_LINE_STEPS)} <= {step.name for step in STEPS}
 
 
 def test_true_fractions_come_back():
@@ -133,6 +134,23 @@ def test_pressure_is_looked_at(pressure, more, warned):
     assert ("pressure-above-saturation" in [finding.code for finding in found.findings]) is warned
 
 
+@pytest.mark.parametrize("liquid", UNDER_PRESSURE.values(), ids=UNDER_PRESSURE)
+def test_fractions_under_a_stated_pressure(liquid):
+    """Without noise they are what was put in: the sheet's density, and the scale from rows 20 mK above the coarse lambda line."""
+    T = pressed_temperatures(liquid)
+    found = fractions(T, bulk_period(T, filled=True, liquid=liquid), liquid_pressure=liquid.pressure, liquid_density=liquid.density)  # fmt: skip
+    np.testing.assert_allclose(found.array("superfluid_fraction"), superfluid_fraction(T, liquid), atol=1e-9)
+    assert float(found.outputs["lambda_density"]) == liquid.density
+    assert T[np.array(found.held["rows"]) - 1].min() > liquid.lambda_temperature + 0.02
+    assert [each.code for each in found.findings] == [
+        "gap-over-penetration-depth",
+        "viscosity-under-pressure",
+    ]
+    # Taken for saturated liquid, the rows above 2.18 K are too few, or the density is off.
+    with pytest.raises(ValueError, match=r"rows from 2\.18 K up"):
+        fractions(T[T < 2.18], bulk_period(T[T < 2.18], filled=True, liquid=liquid))
+
+
 def test_transition_held():
     T = T_LAMBDA * (1 - np.geomspace(1.2e-4, 0.029, 60))
     found = superfluid_law(
@@ -163,9 +181,11 @@ def test_fewer_terms_have_no_value_for_the_others():
         # -8.88 mK/bar from 5.042 kPa: 2.1768 - 0.93958 bar x 8.88e-3 K/bar by hand.
         (99.0, 2.1684, 2.168457, []),
         (99.0, 2.1768, 2.168457, ["lambda-temperature"]),
-        (1500.0, 2.05, None, []),
+        # 14.80 atm: Swenson's points at 14.72 and 18.18 atm give 1.9988 K, less the 9.2 mK by which his lambda point is above 2.1768 K.
+        (1500.0, 1.990, None, []),
+        (1500.0, 2.05, None, ["lambda-temperature"]),
     ],
-    ids=["saturated", "99 kPa", "99 kPa, off by 8 mK", "15 bar"],
+    ids=["saturated", "99 kPa", "99 kPa, off by 8 mK", "15 bar", "15 bar, off by 60 mK"],
 )
 def test_lambda_line(kilopascal, measured, expected, codes):
     """The pressure counts at the lambda point itself: it rises with temperature, and rows far away do not count."""
@@ -197,6 +217,23 @@ def test_gravity():
     found = gravity(GravityParameters(), height=0.02)
     assert float(found.outputs["limit"]) == pytest.approx(2 * 5.8e-7, rel=0.02)
     assert float(found.outputs["spread"]) == pytest.approx(2 * 1.273e-6, rel=0.02)
+
+
+def test_gravity_under_pressure():
+    """2 cm at 7.356 bar: Swenson's neighbours of 7.26 atm have secants of -12.09 and -12.85 mK/bar by hand; good to 5 per cent."""
+    found = gravity(GravityParameters(), height=0.02, liquid_pressure=7.356e5, liquid_density=157.8)
+    spread = 12.47e-8 * 157.8 * 9.80665 * 0.02
+    assert float(found.outputs["spread"]) == pytest.approx(spread, rel=0.03)
+    assert float(found.outputs["limit"]) == pytest.approx(spread / 2.0908, rel=0.03)
+    assert found.shared["spread"]["slope of the lambda line"] == pytest.approx(0.05 * spread, rel=0.03)
+    with pytest.raises(ValueError, match="coarse lambda line"):
+        gravity(GravityParameters(), height=0.02, liquid_pressure=3.2e6, liquid_density=180.0)
+
+
+def test_two_scale_factor_under_pressure():
+    """3.386 angstrom, 5.3 J/(mol K) and 4.0026e-3/157.8 m^3/mol: (5.3/2.53651e-5/1.380649e-23)^(1/3) = 2.47354e9 per metre by hand."""
+    found = two_scale(NoParameters(), heat_capacity_amplitude=5.3, coherence_length=3.386e-10, liquid_density=157.8)  # fmt: skip
+    assert float(found.outputs["combination"]) == pytest.approx(3.386e-10 * 2.47354e9, rel=2e-5)
 
 
 @pytest.mark.parametrize(("angstrom", "warned"), [(3.43, False), (3.1, True)])

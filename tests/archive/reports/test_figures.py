@@ -62,7 +62,8 @@ def test_every_shipped_plan_has_a_figure():
 
 
 NAMES = [
-    "background-2025-08-s001", "bulk-oscillator-2025-08-s002", "bulk-superfluid-density-2025-08-s002", "empty-calorimeter-2025-11-s001", "heat-capacity-2025-11-s002",
+    "background-2025-08-s001", *(f"{plan}-2025-08-s00{k}" for plan in ("bulk-oscillator", "bulk-superfluid-density") for k in (2, 3, 4)),
+    "empty-calorimeter-2025-11-s001", *(f"heat-capacity-2025-11-s00{k}" for k in (2, 3, 4)),
     "persistent-current-2026-06-s001", "persistent-current-2026-06-s002", "persistent-current-2026-06-s003", "persistent-current-2026-06-s004", "third-sound-2025-06-s001",
 ]  # fmt: skip
 
