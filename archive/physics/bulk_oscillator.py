@@ -2,6 +2,10 @@
 
 Rules: the inertia comes from the square of the period, since bulk liquid changes it by more than a straight line bears; the part of the
 normal liquid that the plates fail to drag along is counted, never assumed away. Time goes as exp(-i w t).
+
+References
+----------
+Derived here: rigid oscillator, and the wave of shear in a liquid between two plates that move alike. Viscosity and densities: the caller's.
 """
 
 from __future__ import annotations

@@ -2,6 +2,10 @@
 
 Rules: amplitude, exponent and confluent term are strongly correlated, so their covariance goes with them and none is taken from another
 publication; the exponent of the confluent term is held.
+
+References
+----------
+A. Singsaas, G. Ahlers, Phys. Rev. B 30, 5103 (1984), as reproduced by R. J. Donnelly, C. F. Barenghi, J. Phys. Chem. Ref. Data 27, 1217 (1998).
 """
 
 from __future__ import annotations

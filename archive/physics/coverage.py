@@ -1,6 +1,11 @@
 """Coverage in its several languages: mol/m^2, atoms, areal mass, thickness, layers.
 
 Rules: mol and m^2 are stored, the rest is derived; "one layer" has no fixed meaning, so the convention is always named.
+
+References
+----------
+Units of the SI; the density of the bulk liquid from R. J. Donnelly, C. F. Barenghi, J. Phys. Chem. Ref. Data 27, 1217 (1998). Conventions of a layer:
+common practice, no source.
 """
 
 from __future__ import annotations

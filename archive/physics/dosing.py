@@ -2,6 +2,10 @@
 
 Rules: the second virial coefficient and molar densities are arguments (see `helium_gas`); each volume counts at its own
 temperature; pressures are absolute.
+
+References
+----------
+The virial equation to first order and the balance of amounts, derived here.
 """
 
 from __future__ import annotations

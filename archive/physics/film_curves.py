@@ -1,6 +1,11 @@
 """The two curves of an oscillator that carries a film, period drop and dissipation, and how they follow the parameters.
 
 Rules: the trajectory is the one with fixed x_0; only ln(D/a^2) counts, never D and a; one accuracy everywhere.
+
+References
+----------
+V. Ambegaokar, B. I. Halperin, D. R. Nelson, E. D. Siggia, Phys. Rev. B 21, 1806 (1980); D. J. Bishop, J. D. Reppy, Phys. Rev. B 22, 5171
+(1980): content from memory, the equations derived anew and held against two independent integrations.
 """
 
 from __future__ import annotations

@@ -3,6 +3,11 @@
 Rules: responses carry exp(-i w t), so a passive film has Im(1/epsilon) < 0; the free-vortex density is
 ``F xi_+^-2`` with xi_+ where ``x = 1`` (stiffness 1/pi), and F means nothing without that; L = ln(D/(a^2 w)).
 The flow is integrated in closed form by `film_flow`.
+
+References
+----------
+V. Ambegaokar, B. I. Halperin, D. R. Nelson, E. D. Siggia, Phys. Rev. B 21, 1806 (1980); D. J. Bishop, J. D. Reppy, Phys. Rev. B 22, 5171
+(1980): content from memory, the equations derived anew and held against two independent integrations.
 """
 
 from __future__ import annotations

@@ -1,6 +1,11 @@
 """Where the features of the dynamic theory lie: the dissipation peak, and the crossing of the universal line.
 
 Rules: the static transition lies below every feature of an oscillator record; these functions say how far.
+
+References
+----------
+V. Ambegaokar, B. I. Halperin, D. R. Nelson, E. D. Siggia, Phys. Rev. B 21, 1806 (1980); D. J. Bishop, J. D. Reppy, Phys. Rev. B 22, 5171
+(1980): content from memory, the equations derived anew and held against two independent integrations.
 """
 
 from __future__ import annotations

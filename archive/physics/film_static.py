@@ -2,6 +2,11 @@
 
 Rules: `x = 2/(pi K) - 1` measures the distance of the stiffness K from its universal value, `c` is the invariant of
 the flow; `c < 0` is superfluid, `c = 0` the transition, `c > 0` normal. The small-x hyperbola is never used.
+
+References
+----------
+J. M. Kosterlitz, J. Phys. C 7, 1046 (1974); D. R. Nelson, J. M. Kosterlitz, Phys. Rev. Lett. 39, 1201 (1977); Phys. Rev. B 21, 1806 (1980)
+(all from memory); the invariant and its inverse by the Lambert function are derived here.
 """
 
 from __future__ import annotations

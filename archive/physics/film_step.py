@@ -2,6 +2,11 @@
 
 Rules: never fitted with. The period is right to about 1e-4 of the jump up to the transition; the dissipation is low by
 up to a third far below it and by 15 per cent on the rise to the peak. Use `film_dynamic`.
+
+References
+----------
+V. Ambegaokar, B. I. Halperin, D. R. Nelson, E. D. Siggia, Phys. Rev. B 21, 1806 (1980); D. J. Bishop, J. D. Reppy, Phys. Rev. B 22, 5171
+(1980): content from memory, the equations derived anew and held against two independent integrations.
 """
 
 from __future__ import annotations

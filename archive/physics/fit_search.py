@@ -2,6 +2,10 @@
 
 Rules: the stopping reason of the solver is not believed; several ways are tried before a fit is given up, always the same ones
 in the same order, so nothing is random.
+
+References
+----------
+The project's own; the judgement is that of `fitting`.
 """
 
 from __future__ import annotations

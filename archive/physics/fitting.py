@@ -3,6 +3,11 @@
 Rules: parameters are scaled before they reach the solver; the stopping reason of the solver is not believed,
 convergence is judged by the relative offset (Bates and Watts); whether uncertainties are absolute is always said by
 the caller; nothing is random.
+
+References
+----------
+D. M. Bates, D. G. Watts, Technometrics 23, 179 (1981) (relative offset; from memory). Certified values in the tests: NIST
+Statistical Reference Datasets.
 """
 
 from __future__ import annotations

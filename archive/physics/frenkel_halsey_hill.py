@@ -2,6 +2,10 @@
 
 Rules: Gamma in kelvin times a length cubed; thickness comes in that same length (layers, angstrom, metre); Gamma is the
 substrate's attraction minus helium's own.
+
+References
+----------
+The slab equation in its usual form (common practice, no source); units and the saturated film derived here.
 """
 
 from __future__ import annotations

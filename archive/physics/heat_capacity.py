@@ -2,6 +2,11 @@
 
 Rules: the two great terms A/alpha and B of the law cancel nearly, so they never stand alone; the law is written with
 ``S = (t^-alpha - 1)/alpha``, which becomes the logarithm -ln t when alpha goes to zero; both sides share alpha and B.
+
+References
+----------
+J. A. Lipa, J. A. Nissen, D. A. Stricker, D. R. Swanson, T. C. P. Chui, Phys. Rev. B 68, 174518 (2003) (the law); a pulse's heat over its step is the
+definition.
 """
 
 from __future__ import annotations

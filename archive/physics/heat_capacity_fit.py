@@ -2,6 +2,11 @@
 
 Rules: alpha is never fitted with B fixed; a step of temperature is compared with the law's mean over that step and over the height of the cell, not
 with its value in the middle; a step during which some part of the cell passes the transition is never used.
+
+References
+----------
+J. A. Lipa, J. A. Nissen, D. A. Stricker, D. R. Swanson, T. C. P. Chui, Phys. Rev. B 68, 174518 (2003) (the law); the means over step and height
+are derived here.
 """
 
 from __future__ import annotations

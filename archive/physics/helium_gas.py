@@ -1,6 +1,10 @@
 """Gaseous helium: second virial coefficient, molar density, amounts.
 
 Rules: the virial equation is cut after B, so it is refused where the next term would matter. Amounts are in mol.
+
+References
+----------
+The virial equation, solved for the density (derived here); sources of B at `second_virial`.
 """
 
 from __future__ import annotations

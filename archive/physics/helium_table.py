@@ -1,6 +1,10 @@
 """Interpolation in the table of liquid 4He at saturated vapour pressure: ranges, and the two sides of the lambda point.
 
 Rule: the two sides are interpolated separately; nothing is fitted across the lambda point.
+
+References
+----------
+R. J. Donnelly, C. F. Barenghi, J. Phys. Chem. Ref. Data 27, 1217 (1998). Temperatures are T90.
 """
 
 from __future__ import annotations

@@ -1,6 +1,11 @@
 """Saturated vapour of 4He, and the vapour pressure at which it condenses in a pore.
 
 Rule: below 1.25 K these corrections rest on the vapour pressure estimate; a thermometer never does.
+
+References
+----------
+H. Preston-Thomas, Metrologia 27, 3 (1990) (pressure from 1.25 K); R. J. Donnelly, C. F. Barenghi, J. Phys. Chem. Ref. Data 27, 1217 (1998) (heat of
+evaporation, surface tension, density); Kelvin's equation for a curved surface, elementary.
 """
 
 from __future__ import annotations

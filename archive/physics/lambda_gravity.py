@@ -1,6 +1,10 @@
 """Gravity at the lambda point: the transition temperature falls with depth, so a cell of some height has no sharp one.
 
 Rule: the slope of the lambda line is the local one; a parabola through the whole line is 23 per cent off at saturated vapour pressure.
+
+References
+----------
+Hydrostatics with the slope of the lambda line, whose sources stand at `LAMBDA_SLOPE`.
 """
 
 from __future__ import annotations

@@ -3,6 +3,10 @@
 Rules: a line that stays at one frequency in most spectra is set apart before anything is followed; a line is assigned to a track only
 with a stated confidence; where two would do, or none does, the track has no value there and says so. The physics of what moves is no
 part of the assignment, so that a comparison with it afterwards is one.
+
+References
+----------
+The assignment of `line_association`; what stays apart from what moves is the project's own.
 """
 
 from __future__ import annotations

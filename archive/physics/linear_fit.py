@@ -2,6 +2,10 @@
 
 Rules: columns are scaled before the decomposition, so that units do not decide whether a fit succeeds; whether
 uncertainties are absolute is always said by the caller.
+
+References
+----------
+Weighted linear least squares and its covariance: JCGM 100:2008, H.3, and any text on statistics; held against GTC in the tests.
 """
 
 from __future__ import annotations

@@ -2,6 +2,10 @@
 
 Rules: no model of the dependence; what is not resolved, or not reached, is said in place of a number; the level that the small-amplitude
 value rests on is told.
+
+References
+----------
+The project's own; the straight line between two levels and its uncertainty are derived here.
 """
 
 from __future__ import annotations

@@ -2,6 +2,11 @@
 
 Rules: amplitudes of angle are peak values; the torsion constant does not change when helium enters, so dissipation at
 constant torque has no frequency factor but that of the transducer.
+
+References
+----------
+Driven harmonic oscillator, derived here. Use for films: D. J. Bishop, J. D. Reppy, Phys. Rev. Lett. 40, 1727 (1978), Phys. Rev. B 22, 5171 (1980)
+(from memory).
 """
 
 from __future__ import annotations

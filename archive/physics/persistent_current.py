@@ -2,6 +2,11 @@
 
 Rules: the circulation is N quanta h/m round a thin annulus; while N is kept, the angular momentum follows the superfluid
 density alone; what is lost for good is decay and no density.
+
+References
+----------
+J. D. Reppy, D. Depatie, Phys. Rev. Lett. 12, 187 (1964) (from memory); decay of films: V. Ambegaokar, B. I. Halperin, D. R. Nelson, E. D. Siggia,
+Phys. Rev. B 21, 1806 (1980) (from memory). The closed form of the decay and the ratio of two branches are derived here.
 """
 
 from __future__ import annotations

@@ -2,6 +2,10 @@
 
 Rules: Chebyshev polynomials on the scaled temperature range; never extrapolated: outside the range the answer is not a number
 and is flagged.
+
+References
+----------
+Least squares in Chebyshev polynomials; the order by the runs test and the F-test of `residual_tests`, the rule itself the project's own.
 """
 
 from __future__ import annotations

@@ -1,6 +1,10 @@
 """Hydrostatic and aerostatic corrections of vapour pressure thermometry.
 
 Rule: in He II the bath is isothermal, so a liquid head is a pressure there and never a temperature.
+
+References
+----------
+Hydrostatics, derived here; that helium II shows no head as a temperature is common practice, no source.
 """
 
 from __future__ import annotations

@@ -2,6 +2,10 @@
 
 Rules: the noise is estimated from the record itself, beside every frequency; a drive that was recorded is divided out, so
 that its own spectrum is never taken for a line.
+
+References
+----------
+Linear response, derived here: the spectrum of the record over that of the pulse.
 """
 
 from __future__ import annotations

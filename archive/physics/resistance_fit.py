@@ -1,6 +1,11 @@
 """Fit of each calibration form to the points of a resistance thermometer.
 
 Rule: the fitted curve covers the points and no more.
+
+References
+----------
+The forms of the trade: F. Pobell, Matter and Methods at Low Temperatures, 3rd ed., Springer (2007); carbon: J. R. Clement, E. H. Quinnell, Rev. Sci.
+Instrum. 23, 213 (1952) (from memory).
 """
 
 from __future__ import annotations

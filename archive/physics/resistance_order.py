@@ -4,6 +4,10 @@ Rules: weights are the temperature-equivalent uncertainty of each point. The ord
 ask for it and stops at the first order that neither supports. What the form leaves open between the points is the rms
 distance to the curve of the next order, with the scatter beyond the stated uncertainties where chi-squared (5 per cent)
 asks for it (the project's own estimate; the covariance of a fit cannot know that the form is only an approximation).
+
+References
+----------
+F-test and AICc: see `residual_tests`.
 """
 
 from __future__ import annotations

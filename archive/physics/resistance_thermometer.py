@@ -2,6 +2,10 @@
 
 Rule: nothing is extrapolated. A resistance outside the span of the calibration gives NaN and a mark, so that a long
 sweep keeps the rest.
+
+References
+----------
+The forms of the trade: F. Pobell, Matter and Methods at Low Temperatures, 3rd ed., Springer (2007); slopes and inverses derived here.
 """
 
 from __future__ import annotations

@@ -2,6 +2,10 @@
 
 Rules: whether the record is an amplitude or an energy is said by the caller, never guessed; a magnitude channel has a noise
 floor that adds in quadrature.
+
+References
+----------
+Free decay of a damped harmonic oscillator, derived here.
 """
 
 from __future__ import annotations

@@ -1,6 +1,10 @@
 """Free decay of an oscillator whose dissipation depends on its amplitude: is there such a dependence, and what is Q at rest.
 
 Rule: the dependence is a number with its uncertainty, found or not; that it is there is said only when the simple decay is refused.
+
+References
+----------
+Free decay with a dissipation linear in the amplitude, derived here.
 """
 
 from __future__ import annotations

@@ -1,6 +1,10 @@
 """Speed of third sound, and the superfluid areal density read from it.
 
 Rules: thickness is the whole film, and the mean superfluid fraction is over the whole film with its inert layers.
+
+References
+----------
+K. R. Atkins, Phys. Rev. 113, 962 (1959); its inverse is derived here.
 """
 
 from __future__ import annotations

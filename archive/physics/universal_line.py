@@ -2,6 +2,10 @@
 
 Rules: the crossing is read from a local polynomial through several points, with its uncertainty; it lies above the static
 transition, by what `film_features.shift_of_crossing` says.
+
+References
+----------
+D. R. Nelson, J. M. Kosterlitz, Phys. Rev. Lett. 39, 1201 (1977) (the line); the reading of the crossing is the project's own.
 """
 
 from __future__ import annotations
