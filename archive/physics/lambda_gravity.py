@@ -4,7 +4,7 @@ Rule: the slope of the lambda line is the local one; a parabola through the whol
 
 References
 ----------
-Hydrostatics with the slope of the lambda line, whose sources stand at `LAMBDA_SLOPE`.
+Hydrostatics with the slope of the lambda line, whose sources stand at `lambda_line.LAMBDA_SLOPE`.
 """
 
 from __future__ import annotations

@@ -38,7 +38,20 @@ def gathered(parameters: GatherParameters, **results: float | None) -> Outcome:
             "known": int(np.count_nonzero(np.isfinite(values))),
             "total": values.size,
             "plans": " and ".join(dict.fromkeys(_plan(each) for each in parameters.reductions)),
+            "what": _words(parameters.output),
         },
+    )
+
+
+def _words(output: str) -> str:
+    """Return the name of a result as it is read: a symbol such as T_KT stays one."""
+    symbol, _, rest = output.partition("_by_")
+    return (
+        f"{symbol} by {rest.replace('_', ' ')}"
+        if rest
+        else output.replace("_", " ")
+        if output[1:2] != "_"
+        else output
     )
 
 
@@ -50,7 +63,7 @@ _GATHER = Step(
     name="gather-results", version=1, function=gathered, parameters=GatherParameters,
     takes={f"{_PORT}1": Port("any", "scalar", "result of a reduction", optional=True)},
     yields={"values": Port("any", "array", "the result of each reduction")},
-    sentence="{output} was taken from {known} of {total} reductions by {plans}.",
+    sentence="Taken from {known} of {total} reductions by {plans}: {what}.",
 )  # fmt: skip
 
 

@@ -227,7 +227,7 @@ def _not_used(scope: Scope) -> Table:
 
 def narrow(text: str) -> Shown:
     """Return words for a narrow column: they may break every few characters."""
-    return Shown(text, text, tex(breakable(text, 12, 8)))
+    return Shown(text, text, tex(breakable(text, 13, 12)))
 
 
 def _steps(scope: Scope) -> Table:

@@ -22,7 +22,7 @@ __all__ = ["Piece", "Prose", "article", "breakable", "prose", "symbol_of"]
 
 # Words longer than this may break: names have up to 64 characters, addresses 200.
 _LONGEST_UNBROKEN = 20
-_PIECE = 10
+_PIECE = 12
 
 _GREEK = {
     "alpha": "α", "chi": "χ", "sigma": "σ", "zeta": "ζ", "rho": "ρ", "tau": "τ", "kappa": "κ", "omega": "ω", "lambda": "λ", "theta": "θ", "xi": "ξ",
@@ -146,7 +146,7 @@ def breakable(text: str, most: int = _LONGEST_UNBROKEN, piece: int = _PIECE) -> 
     Examples
     --------
     >>> breakable("2025-11/s001@empty-calorimeter.1").split("\u200b")
-    ['2025-11/', 's001@', 'empty-', 'calorimete', 'r.', '1']
+    ['2025-11/', 's001@', 'empty-', 'calorimeter.', '1']
     """
     return " ".join(word if len(word) <= most else _broken(word, piece) for word in text.split(" "))
 

@@ -138,6 +138,10 @@ def test_results_are_gathered_in_their_order() -> None:
     np.testing.assert_array_equal(found.array("values"), [1.0, np.nan, 3.0])
     assert found.facts["known"] == 2
     assert found.facts["plans"] == "p and q"
+    assert found.facts["what"] == "T_KT"
+    for output, words in (("T_KT_by_peak", "T_KT by peak"), ("quality_factor_1", "quality factor 1")):
+        named = gathered(parameters.model_copy(update={"output": output}), from_1=1.0)
+        assert named.facts["what"] == words
 
 
 def _estimates(count: int, off: float = 1.0) -> dict[str, Any]:
