@@ -9,10 +9,13 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+from CoolProp.CoolProp import PropsSI
 from hypothesis import given
 from hypothesis import strategies as st
+from scipy.stats import linregress
 
 from archive.physics.adsorption import bet_area
+from archive.physics.constants import AVOGADRO
 
 TESTS = Path(__file__).parents[2]
 NITROGEN = 0.162e-18
@@ -210,6 +213,40 @@ def test_the_standard_isotherm_of_macroporous_silica():
     for high, area in ((0.20, 26.4), (0.30, 25.8)):
         fixed = bet_area(*rows.T, cross_section=NITROGEN, bounds=(0.05, high))
         assert fixed.area / 1000 == pytest.approx(area, abs=0.06)
+
+
+def argon():
+    """Pressure, stated saturated pressure (kPa) and mol/kg of the adsorption branch of the .aif file."""
+    branch = (IACOMI / "ar_test_77k.aif").read_text(encoding="utf-8").split("loop_")[1]
+    rows = [line.split() for line in branch.splitlines() if line[:1].isdigit()]
+    p, p0, volume = np.array(rows, dtype=float).T
+    return p, p0, volume / 22.414
+
+
+def test_argon_against_a_line_by_scipy():
+    """SOURCE.md states no area; on the range found, scipy's line through the same points has the same monolayer and constant."""
+    p, p0, n = argon()
+    assert p.size == 98
+    found = bet_area(p / p0, n, cross_section=0.142e-18)
+    assert found.accepted, found.reasons
+    assert found.low <= found.x_at_monolayer <= found.high
+    x = p / p0
+    inside = (x >= found.low) & (x <= found.high)
+    line = linregress(x[inside], x[inside] / (n[inside] * (1 - x[inside])))
+    assert found.monolayer == pytest.approx(1 / (line.slope + line.intercept), rel=1e-9)
+    assert found.constant == pytest.approx(1 + line.slope / line.intercept, rel=1e-7)
+    assert found.area == pytest.approx(found.monolayer * AVOGADRO * 0.142e-18, rel=1e-12)
+
+
+def test_a_saturated_pressure_and_a_temperature_that_disagree_cost_a_few_per_cent():
+    """The file says 87.00 K and 101.3 kPa; argon boils at 101.3 kPa at 87.30 K, and at 87.00 K it has 98.1 kPa (CoolProp)."""
+    p, p0, n = argon()
+    assert PropsSI("P", "T", 87.302, "Q", 0, "Argon") / 1e3 == pytest.approx(p0[0], abs=0.1)
+    cold = PropsSI("P", "T", 87.0, "Q", 0, "Argon") / 1e3
+    assert cold == pytest.approx(98.13, abs=0.01)
+    stated, computed = (bet_area(p / each, n, cross_section=0.142e-18) for each in (101.3, cold))
+    assert computed.accepted, computed.reasons
+    assert abs(computed.area / stated.area - 1) < 0.03
 
 
 @given(st.floats(20.0, 500.0), st.floats(1e-6, 1e3))

@@ -49,6 +49,30 @@ def test_against_the_open_reference_code(source: str, T: float, millikelvin: flo
     assert 1e3 * (convert(T, source=source).temperature - T) == pytest.approx(millikelvin, abs=tolerance)
 
 
+@pytest.mark.parametrize("row", _rows("scale_equations.csv"), ids=lambda r: r["scale"])
+def test_equations_are_the_published_ones(row: dict[str, str]) -> None:
+    """Ln p of the published coefficients, written out, over the range of the conversion."""
+    c = {name: float(text) for name, text in row.items() if name.startswith("c")}
+    scale = next(each for each in SCALES if each.name == row["scale"])
+    T = np.linspace(scale.low, scale.high, 50)
+    powers = sum(c[f"c{k}"] * T**k for k in range(5))
+    ours = {"T62": scales._t62, "PTB-2006": scales._ptb}[row["scale"]]
+    np.testing.assert_allclose(ours(T)[0], c["c_invT"] / T + powers + c["c_lnT"] * np.log(T), rtol=1e-13)
+
+
+@pytest.mark.parametrize("row", _rows("plts2000_to_its90_difference.csv"), ids=lambda r: r["T2000_K"])
+def test_measured_differences_of_the_two_official_scales(row: dict[str, str]) -> None:
+    """C. Pan et al. (2021), each of their points; between them a straight line."""
+    T = float(row["T2000_K"])
+    if scales.SCALES[1].low <= T <= scales.SCALES[1].high:
+        assert 1e3 * (convert(T, source="PLTS-2000").temperature - T) == pytest.approx(
+            float(row["T90_minus_T2000_mK"]), abs=1e-9
+        )
+    else:
+        with pytest.raises(ValueError, match="conversion of PLTS-2000"):
+            convert(T, source="PLTS-2000")
+
+
 def test_t58_table_is_the_published_one() -> None:
     rows = _rows("t58_vapour_pressure.csv")
     assert [float(row["p_micrometre_Hg_0C"]) for row in rows] == list(tables_t58.PRESSURE_MICROMETRE_MERCURY)
