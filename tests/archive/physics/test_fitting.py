@@ -294,7 +294,8 @@ def test_hard_curves_from_far_starts(name):
     assert near.converged
     assert found.converged, found.message
     np.testing.assert_allclose(found.values, near.values, rtol=1e-5)
-    assert found.chi2 == pytest.approx(near.chi2, rel=1e-6)
+    # Residuals of 1e-13 are rounded to 3e-16 where the curve is two and a half.
+    assert found.chi2 == pytest.approx(near.chi2, rel=1e-6 + 3e-16 / scatter)
 
 
 def test_a_new_start_is_told():

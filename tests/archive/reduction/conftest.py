@@ -26,6 +26,9 @@ from archive.reduction.runner import run
 from schemas.cooldown import CooldownSheet
 from schemas.lineage import AccessionDocument, AnyRecord, ChannelEntry, RecordEntry, SweepEntry
 from schemas.units import ucum
+from tests.relative import relative_tolerances
+
+__all__ = ["relative_tolerances"]
 
 T_KT, B, LOG_D, CHI, AREA = 0.6, 5.5, 20.9, 0.10, 1.5
 PERIOD, SLOPE = 1e-3, 0.042 * MOLAR_MASS_HELIUM4 / 1.5
