@@ -14,6 +14,7 @@ import numpy as np
 import numpy.typing as npt
 
 from archive.physics.arrays import ComplexArray, FloatArray
+from archive.physics.fitting import FitResult
 from archive.physics.pulse_response import PulseResponse, smooth_part
 from archive.physics.resonance import Resonance, fit_resonance, resonance_curve
 
@@ -205,10 +206,7 @@ class _Search:
         found, used = self._fitted(rows, (frequency, width))
         if not found.found or found.fit is None:
             return _Taken(_line("refused", frequency, math.nan, found.reason))
-        curve = resonance_curve(
-            self.response.frequency, resonance_frequency=found.frequency, quality_factor=found.quality_factor,
-            height=found.fit.value("height"), phase=found.fit.value("phase"),
-        )  # fmt: skip
+        curve = self._curve(found, found.fit)
         left_out = int(rows.size - used.size)
         words = f"; {left_out} points that belong to another line were left out" if left_out else ""
         index = [found.fit.names.index(name) for name in ("frequency", "quality_factor")]
@@ -224,6 +222,17 @@ class _Search:
             reason=found.reason + words,
         )
         return _Taken(line, curve)
+
+    def _curve(self, found: Resonance, fit: FitResult) -> ComplexArray:
+        """Return a fitted resonance at all frequencies, what the record's end cut off included."""
+        unit = resonance_curve(
+            self.response.frequency, resonance_frequency=found.frequency, quality_factor=found.quality_factor, height=1.0, phase=0.0
+        )  # fmt: skip
+        size = fit.value("height") * np.exp(1j * fit.value("phase"))
+        if not self.response.driven:
+            return np.asarray(size * unit)
+        after = fit.value("ending_x") + 1j * fit.value("ending_y")
+        return np.asarray((size + after / self.response.divisor) * unit)
 
     def _fitted(self, rows: IntArray, near: tuple[float, float]) -> tuple[Resonance, IntArray]:
         """Return the fit of one resonance, repeated once without points far off it."""
@@ -244,6 +253,7 @@ class _Search:
         return fit_resonance(
             self.response.frequency[rows], z.real, z.imag, background="sloped",
             standard_uncertainty=self.response.standard_uncertainty[rows], near=near, over_noise=0.0,
+            ending=1 / self.response.divisor[rows] if self.response.driven else None,
         )  # fmt: skip
 
     def _unresolved(self, near: slice, power: FloatArray) -> Line:

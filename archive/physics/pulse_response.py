@@ -48,6 +48,8 @@ class PulseResponse:
         Points of the running medians.
     driven : bool
         Whether a pulse was divided out; without one there is no feedthrough.
+    divisor : ndarray of complex128
+        What the spectrum of the record was divided by.
     """
 
     frequency: FloatArray
@@ -57,6 +59,7 @@ class PulseResponse:
     step: float
     window: int
     driven: bool
+    divisor: ComplexArray
 
 
 def pulse_response(
@@ -91,7 +94,7 @@ def pulse_response(
     Noise: for complex normal noise of standard deviation s in each component, the squared magnitude is exponential with
     median 2 s^2 ln 2 (derived); the running median hardly sees a line narrower than a tenth of its window. Without a pulse
     nothing is subtracted as feedthrough. No window function is applied: a decay that has not died down by the end of the
-    record leaks, and a steady tone fills a few frequencies beside its own.
+    record leaks, which the fit of a line counts, and a steady tone fills a few frequencies beside its own.
 
     References
     ----------
@@ -155,6 +158,7 @@ def _with_noise(
         step=step,
         window=window,
         driven=driven,
+        divisor=divisor,
     )
 
 

@@ -121,6 +121,7 @@ def fit_resonance(
     standard_uncertainty: npt.ArrayLike | None = None,
     near: tuple[float, float] | None = None,
     over_noise: float = AMPLITUDE_OVER_NOISE,
+    ending: npt.ArrayLike | None = None,
 ) -> Resonance:
     """Return the one resonance of a sweep, or that there is none in range.
 
@@ -141,6 +142,9 @@ def fit_resonance(
         one does not converge.
     over_noise : float
         Least height over the residual of one point; zero where many points make up for it, as in a filtered spectrum.
+    ending : array_like of complex, optional
+        One over the spectrum of the drive at each frequency, where a record may end before the resonator has come to rest: a part
+        proportional to it is fitted, too, as ``ending_x`` and ``ending_y`` (see Notes).
 
     Returns
     -------
@@ -156,6 +160,10 @@ def fit_resonance(
     No resonance in range: the fit did not converge, the frequency is at or over an edge, the width exceeds the range, the
     height is below three times (`over_noise`) the residual of one point, a structured residual exceeds a tenth of the height (try a sloped
     background), or the gain over the background alone is not decisive (F-test and information criterion). Start: circle fit; the resonance frequency is taken opposite the off-resonance point.
+
+    A record that is cut while the resonator rings lacks the free decay from there on. At the frequencies of the record's own Fourier
+    series that decay is the same curve once more, with an amplitude and phase of its own, and without the drive's spectrum (the
+    transform of a decay that begins where the record ends, derived); over the drive's spectrum it is no smooth background.
     """
     f = series("frequency", frequency, least=12, positive=True)
     z = series("x", x) + 1j * series("y", y)
@@ -169,7 +177,9 @@ def fit_resonance(
     )
     weights = 1 / series("standard_uncertainty", spread, positive=True)
     order = np.argsort(f, kind="stable")
-    sweep = _Sweep(f[order], z[order] if convention == "+" else np.conj(z[order]), weights[order], background)
+    turn = np.asarray if convention == "+" else np.conj
+    after = None if ending is None else turn(np.asarray(ending, dtype=np.complex128)[order])
+    sweep = _Sweep(f[order], turn(z[order]), weights[order], background, after)
     alone = sweep.background_sum()
     rounding = (1e-13 * float(np.max(np.abs(z) * weights))) ** 2 * f.size
     if alone <= rounding or float(np.ptp(f)) == 0:
@@ -219,6 +229,7 @@ class _Sweep:
     z: ComplexArray
     weights: FloatArray
     background: Background
+    ending: ComplexArray | None = None
 
     def background_sum(self) -> float:
         """Return the weighted sum of squares of the best background without a resonance."""
@@ -285,6 +296,9 @@ class _Sweep:
         ]
         if self.background == "sloped":
             parameters += [Parameter(name, 0.0, scale=size / span) for name in ("slope_x", "slope_y")]
+        if self.ending is not None:
+            usual = size / float(np.median(np.abs(self.ending)))
+            parameters += [Parameter(name, 0.0, scale=usual) for name in ("ending_x", "ending_y")]
 
         def residuals(p: FloatArray) -> FloatArray:
             difference = (z - self.curve(p)) * self.weights
@@ -305,6 +319,15 @@ class _Sweep:
         total = self.resonance(p) + (p[4] + 1j * p[5])
         if self.background == "sloped":
             total = total + (p[6] + 1j * p[7]) * (self.frequency - p[0])
+        if self.ending is not None:
+            alone = resonance_curve(
+                self.frequency,
+                resonance_frequency=p[0],
+                quality_factor=math.exp(p[1]),
+                height=1.0,
+                phase=0.0,
+            )
+            total = total + (p[-2] + 1j * p[-1]) * alone * self.ending
         return np.asarray(total, dtype=np.complex128)
 
 

@@ -126,6 +126,7 @@ def pulse_lines(
     facts = {
         "low_Hz": f"{response.frequency[0]:.5g}", "high_Hz": f"{response.frequency[-1]:.5g}", "points": int(response.frequency.size),
         "step_Hz": response.step, "origin": "The spectrum of the record" + (" over that of the pulse" if pulse is not None else ""),
+        "cut": ", with the free decay that the end of the record cut off" if pulse is not None else "",
         "resonances_at": _listed(resonances), "unresolved": _listed(tones),
         "refused": [f"{line.frequency:.5g} Hz: {line.reason}" for line in search.lines if line.kind == "refused"],
     }  # fmt: skip
@@ -229,14 +230,14 @@ PULSE_STEPS: tuple[Step, ...] = (
         sentence="The temperature of the record is {temperature}; its drift over {range_mK} mK is taken as a rectangular distribution.", spread="refit",
     ),
     Step(
-        name="pulse-lines", version=1, function=pulse_lines, parameters=PulseLineParameters,
+        name="pulse-lines", version=2, function=pulse_lines, parameters=PulseLineParameters,
         takes={
             "signal": Port("amplitude|voltage|current", "array", "response against time"), "rate": Port("frequency", "number", "readings per time"),
             "pulse": Port("drive|voltage|current|number", "array", "pulse over the same time", optional=True),
         },
         yields={"resonances": Port("count", "scalar", "lines that are resonances"), **_YIELDS},
         sentence="{origin} from {low_Hz} Hz to {high_Hz} Hz was searched by matched filters for lines that noise alone gives with a chance of {false_alarm}; "
-        "each was fitted by a complex Lorentzian on a constant background. Resonances: {resonances_at}; narrower than the resolution of {step_Hz} Hz: {unresolved}.",
+        "each was fitted by a complex Lorentzian on a background that slopes{cut}. Resonances: {resonances_at}; narrower than the resolution of {step_Hz} Hz: {unresolved}.",
         spread="refit",
     ),
 )  # fmt: skip

@@ -61,6 +61,31 @@ def test_two_resonances_and_a_tone_come_back() -> None:
     assert math.isnan(quality)
 
 
+def test_a_record_that_ends_while_it_rings_gives_no_broader_line() -> None:
+    """The pulse lasts as long as the record, so the free decay after it is cut off; the truth is the same system in a record four times as long."""
+    count, long = 30, 4 * POINTS
+    t = np.arange(long) / RATE
+    pulse = np.random.default_rng(1).normal(size=long) * (t < 2.0)
+    r = np.fft.rfftfreq(long, 1 / RATE) / 700.3
+    rung = np.fft.irfft(np.fft.rfft(pulse) / 300.0 / (1 - r * r + 1j * r / 300.0), long)
+    clean, sent = 8 * rung[:POINTS], pulse[:POINTS]
+    # It still rings at the end.
+    assert np.abs(clean[-100:]).max() > 0.3 * np.abs(clean).max()
+    pulls, relative = [], []
+    for seed in range(count):
+        response = pulse_response(
+            clean + _noise(100 + seed, 0.1), rate=RATE, pulse=sent, low=500.0, high=900.0
+        )
+        line = next(each for each in resonance_lines(response, most=2).lines if each.kind == "resonance")
+        u = np.sqrt(np.diag(line.covariance))
+        pulls.append([(line.frequency - 700.3) / u[0], (line.quality_factor - 300.0) / u[1]])
+        relative.append(u[1] / 300.0)
+    assert (np.abs(np.mean(pulls, axis=0)) < 4 / math.sqrt(count)).all()
+    assert (np.abs(np.std(pulls, axis=0) - 1) < 4 / math.sqrt(2 * count)).all()
+    # Without what was cut off the width comes out some per cent too large.
+    assert max(relative) < 0.015
+
+
 def test_noise_alone_has_no_line() -> None:
     """Of sixty records of noise about 0.06 are expected to show a line at a false alarm of one in a thousand."""
     pulse = _pulse()
