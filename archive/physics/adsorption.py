@@ -43,6 +43,8 @@ class BetArea:
         Monolayer capacity in the unit of the amounts (mol, mol/kg), and its standard uncertainty.
     constant, u_constant : float
         C, and its standard uncertainty.
+    correlation : float
+        Of monolayer and constant; 0 if there was no range at all.
     area, u_area : float
         m^2 for amounts in mol, m^2/kg for mol/kg; the uncertainty does not contain the molecule's area.
     slope, intercept, r_squared : float
@@ -63,6 +65,7 @@ class BetArea:
     u_monolayer: float
     constant: float
     u_constant: float
+    correlation: float
     area: float
     u_area: float
     slope: float
@@ -229,13 +232,16 @@ def _evaluated(
     if not r_squared > least_r_squared:
         reasons.append(f"found r^2 = {r_squared:.6g}, expected above {least_r_squared:g}")
     u_monolayer = math.sqrt(float(by_monolayer @ covariance @ by_monolayer))
+    u_constant = math.sqrt(float(by_constant @ covariance @ by_constant))
+    together = float(by_monolayer @ covariance @ by_constant)
     return BetArea(
         accepted=not reasons,
         reasons=tuple(reasons),
         monolayer=monolayer,
         u_monolayer=u_monolayer,
         constant=constant,
-        u_constant=math.sqrt(float(by_constant @ covariance @ by_constant)),
+        u_constant=u_constant,
+        correlation=together / (u_monolayer * u_constant) if u_monolayer * u_constant > 0 else 0.0,
         area=area,
         u_area=u_monolayer * AVOGADRO * cross_section,
         slope=slope,
@@ -293,5 +299,11 @@ def _nothing(count: int, cross_section: float) -> BetArea:
     )
     places = dict.fromkeys(("low", "high", "x_at_monolayer", "x_expected"), nan)
     return BetArea(
-        accepted=False, reasons=reasons, points=count, cross_section=cross_section, **numbers, **places
+        accepted=False,
+        reasons=reasons,
+        points=count,
+        cross_section=cross_section,
+        correlation=0.0,
+        **numbers,
+        **places,
     )

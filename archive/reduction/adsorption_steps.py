@@ -53,9 +53,9 @@ def relative_pressure(
 
 
 def _propagated(x: FloatArray, n: FloatArray, u_n: FloatArray | None, found: BetArea) -> FloatArray:
-    """Return the variances of monolayer, constant and area that the amounts' own uncertainty makes, to first order."""
+    """Return the covariance of monolayer and constant that the amounts' own uncertainty makes, to first order."""
     if u_n is None:
-        return np.zeros(3)
+        return np.zeros((2, 2))
     inside = (x >= found.low) & (x <= found.high)
     px, pn, pu = x[inside], n[inside], u_n[inside]
     ordinate = px / (pn * (1 - px))
@@ -65,8 +65,19 @@ def _propagated(x: FloatArray, n: FloatArray, u_n: FloatArray | None, found: Bet
     by_monolayer = -(found.monolayer**2) * (by_slope + by_intercept)
     by_constant = (by_slope - (found.constant - 1) * by_intercept) / found.intercept
     parts = np.array([by_monolayer, by_constant]) * (-ordinate / pn * pu)
-    monolayer, constant = np.sum(parts**2, axis=1)
-    return np.array([monolayer, constant, monolayer * (found.area / found.monolayer) ** 2])
+    return np.asarray(parts @ parts.T, dtype=np.float64)
+
+
+def _joint(scatter: FloatArray, own: FloatArray, per_area: float) -> FloatArray:
+    """Return the covariance of monolayer, constant and area: the larger variances, with the correlation of the greater monolayer's."""
+    spread = np.sqrt(np.maximum(np.diag(scatter), np.diag(own)))
+    taken = scatter if scatter[0, 0] >= own[0, 0] else own
+    size = math.sqrt(taken[0, 0] * taken[1, 1])
+    r = taken[0, 1] / size if size > 0 else 0.0
+    joint = np.array([[1.0, r], [r, 1.0]]) * np.outer(spread, spread)
+    # The area is the monolayer times a constant.
+    turn = np.array([[1.0, 0.0], [0.0, 1.0], [per_area, 0.0]])
+    return np.asarray(turn @ joint @ turn.T, dtype=np.float64)
 
 
 def _range_choice(x: FloatArray, n: FloatArray, found: BetArea) -> tuple[float, ...]:
@@ -145,10 +156,9 @@ def bet(
         raise ValueError(f"amount: no BET line can be given: {'; '.join(found.reasons)}")
     names: tuple[str, ...] = ("monolayer", "constant", "area")
     own = _propagated(x, n, u_amount[rows] if u_amount is not None else None, found)
-    variances = np.maximum(np.square([found.u_monolayer, found.u_constant, found.u_area]), own)
-    joint = np.diag(variances)
-    # The area is the monolayer times a constant.
-    joint[0, 2] = joint[2, 0] = math.sqrt(variances[0] * variances[2])
+    both = found.correlation * found.u_monolayer * found.u_constant
+    scatter = np.array([[found.u_monolayer**2, both], [both, found.u_constant**2]])
+    joint = _joint(scatter, own, found.area / found.monolayer)
     choice = _range_choice(x, n, found)
     source = SourceEntry(
         name="own range of the BET line", description="choice of the range of relative pressure", level="run"

@@ -302,7 +302,7 @@ STEPS: tuple[Step, ...] = (
         yields={"relative_pressure": Port("relative_pressure", "array", "pressure over saturated pressure")}, sentence="Pressures are given over the saturated pressure {saturated_pressure}.",
     ),
     Step(
-        name="bet-area", version=1, function=adsorption_steps.bet, parameters=adsorption_steps.BetParameters,
+        name="bet-area", version=2, function=adsorption_steps.bet, parameters=adsorption_steps.BetParameters,
         takes={
             "relative_pressure": Port("relative_pressure|pressure_ratio", "array", "relative pressure"), "amount": Port("amount|specific_amount", "array", "amount adsorbed"), "sample": _SAMPLE,
             "cross_section": Port("atoms_area", "scalar", "area of one molecule", optional=True),
