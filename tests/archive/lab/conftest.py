@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import shutil
 import uuid
 from collections.abc import Iterator
 from pathlib import Path
@@ -27,10 +28,18 @@ def folder(tmp_path: Path) -> Path:
     return write_folder(tmp_path / "2026-03")
 
 
+@pytest.fixture(scope="session")
+def empty(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """Give the folder of an empty archive; copying it takes a fifteenth of the time that its migrations take."""
+    root = tmp_path_factory.mktemp("empty") / "lab"
+    Archive.create(root, name="Test laboratory").close()
+    return root
+
+
 @pytest.fixture
-def sqlite_lab(tmp_path: Path) -> Iterator[Archive]:
+def sqlite_lab(empty: Path, tmp_path: Path) -> Iterator[Archive]:
     """Give an empty archive with its index beside it."""
-    with Archive.create(tmp_path / "lab", name="Test laboratory") as lab:
+    with Archive.open(shutil.copytree(empty, tmp_path / "lab")) as lab:
         yield lab
 
 
@@ -38,8 +47,7 @@ def sqlite_lab(tmp_path: Path) -> Iterator[Archive]:
 def lab(request: pytest.FixtureRequest, tmp_path: Path) -> Iterator[Archive]:
     """Give an empty archive on each engine."""
     if request.param == "sqlite":
-        with Archive.create(tmp_path / "lab", name="Test laboratory") as lab:
-            yield lab
+        yield request.getfixturevalue("sqlite_lab")
         return
     with (
         own_schema(request.getfixturevalue("postgresql"), f"t{uuid.uuid4().hex}") as address,
