@@ -55,6 +55,8 @@ from archive.index.plane_queries import (
     plane_results,
     plane_spans,
     plane_sweeps,
+    record_contents,
+    sealed_count,
 )
 from archive.index.record import add_accession, add_reduction, clear
 from archive.index.revision import make, raise_to_head
@@ -344,17 +346,37 @@ class Index:
             )
         return self._sweeps(queries.search(query, amended=self._is_amended(), last=last))
 
-    def plane_sweeps(self, query: SearchQuery) -> list[PlaneSweep]:
-        """All sweeps that satisfy a search, by coverage and address, in slim rows; its order and limit do not count."""
-        amended, anything = self._is_amended(), bool(self.withdrawals())
-        asked = plane_sweeps(query, amended=amended, anything_withdrawn=anything)
+    def plane_sweeps(
+        self,
+        query: SearchQuery,
+        *,
+        cells: Sequence[str] | None = None,
+        between: tuple[float, float] | None = None,
+    ) -> list[PlaneSweep]:
+        """All sweeps that satisfy a search, by coverage and address, in slim rows; its order and limit do not count.
+
+        Parameters
+        ----------
+        query : SearchQuery
+        cells, between : optional
+            All cells that there are, to ask only for coverages between two ends or, without ends, for sweeps that state none.
+        """
+        asked = plane_sweeps(
+            query, amended=self._is_amended(), anything_withdrawn=bool(self.withdrawals()), cells=cells, between=between
+        )  # fmt: skip
         with reading(self._engine, self._url) as connection:
-            if anything:
-                return [
-                    PlaneSweep._make((*row[:-2], bool(row[-2]), bool(row[-1])))
-                    for row in connection.execute(asked)
-                ]
-            return [PlaneSweep._make((*row[:-1], bool(row[-1]), False)) for row in connection.execute(asked)]
+            return list(map(PlaneSweep._make, connection.execute(asked).all()))
+
+    def stamp(self) -> tuple[str, int]:
+        """What tells one state of this index from every other: its address, and how many files it knows."""
+        with reading(self._engine, self._url) as connection:
+            return index_name(self._url), int(connection.execute(sealed_count()).scalar_one())
+
+    def record_contents(self, addresses: Sequence[str]) -> dict[str, dict[str, Any]]:
+        """Content of some records, by address; those that are not there are left out."""
+        with reading(self._engine, self._url) as connection:
+            rows = connection.execute(record_contents(addresses)).all()
+        return {row.address: row.content for row in rows}
 
     def plane_results(
         self,
@@ -367,7 +389,7 @@ class Index:
         """Results of some names between two values, of current reductions, in SI, by sweep and reduction."""
         with reading(self._engine, self._url) as connection:
             asked = plane_results(names, low=low, high=high, headline=headline)
-            return [PlaneResult(*row) for row in connection.execute(asked)]
+            return list(map(PlaneResult._make, connection.execute(asked).all()))
 
     def sweep_results(self, addresses: Sequence[str]) -> dict[str, list[SweepResult]]:
         """Results of the newest reductions of some sweeps, headline ones first, by sweep."""

@@ -15,8 +15,9 @@ class PlaneSweep(NamedTuple):
     kind: str
     cell: str | None
     substrate: str | None
-    begin: datetime | None
-    empty_cell: bool
+    begin: str | None
+    """UTC as text that sorts; a hundred thousand are not made instants in vain."""
+    empty_cell: int
     coverage: float | None
     coverage_uncertainty: float | None
     temperature_low: float | None

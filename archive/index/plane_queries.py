@@ -6,12 +6,15 @@ The rules are those of `archive.index.queries`.
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 from functools import cache
+from typing import Any
 
-from sqlalchemy import and_, exists, func, literal, select
+from sqlalchemy import ColumnElement, and_, exists, false, func, literal, or_, select, type_coerce, union
 
-from archive.index.act_tables import AmendedSweep
+from archive.index.act_tables import AmendedSweep, Revision
 from archive.index.answers import SearchQuery
+from archive.index.columns import COUNT, TEXT
 from archive.index.conditions import search_conditions
 from archive.index.found import (
     column_found,
@@ -22,25 +25,41 @@ from archive.index.found import (
     withdrawn_reduction,
 )
 from archive.index.queries import Query
-from archive.index.tables import Channel, Dose, Output, Reduction, Sweep
+from archive.index.tables import Channel, Dose, Output, Record, Reduction, SealedFile, Sweep
 
-__all__ = ["cells_and_substrates", "dosed_spans", "plane_results", "plane_spans", "plane_sweeps"]
+__all__ = [
+    "cells_and_substrates",
+    "dosed_spans",
+    "plane_results",
+    "plane_spans",
+    "plane_sweeps",
+    "record_contents",
+    "sealed_count",
+]
 
-_COLUMNS = (
-    "address",
-    "kind",
-    "cell",
-    "substrate",
-    "begin",
-    "empty_cell",
-    "coverage_mol_per_m2",
-    "coverage_uncertainty_mol_per_m2",
-    "temperature_low_K",
-    "temperature_high_K",
-)
+_COLUMNS: dict[str, Any] = {
+    "address": None,
+    "kind": None,
+    "cell": None,
+    "substrate": None,
+    # As they are stored: a hundred thousand conversions take longer than the rest of the answer.
+    "begin": TEXT,
+    "empty_cell": COUNT,
+    "coverage_mol_per_m2": None,
+    "coverage_uncertainty_mol_per_m2": None,
+    "temperature_low_K": None,
+    "temperature_high_K": None,
+}
 
 
-def plane_sweeps(query: SearchQuery, *, amended: bool, anything_withdrawn: bool) -> Query:
+def plane_sweeps(
+    query: SearchQuery,
+    *,
+    amended: bool,
+    anything_withdrawn: bool,
+    cells: Sequence[str] | None = None,
+    between: tuple[float, float] | None = None,
+) -> Query:
     """Sweeps that satisfy a search, by coverage and address; order, limit and offset of the search do not count.
 
     Parameters
@@ -50,20 +69,41 @@ def plane_sweeps(query: SearchQuery, *, amended: bool, anything_withdrawn: bool)
         Whether anything is amended at all.
     anything_withdrawn : bool
         Whether anything is withdrawn at all; asking each sweep takes longer than all the rest.
+    cells : sequence of str, optional
+        All cells that any sweep names; only those sweeps of them, and of none, whose coverage lies between two ends, or that state
+        none, where no ends are given.
+    between : (float, float), optional
+        Coverages in mol/m^2, ends included.
     """
-    reduced = exists().where(Reduction.sweep == Sweep.address)
+    reduced: Any = exists().where(Reduction.sweep == Sweep.address)
+    taken_back: Any = false()
     if anything_withdrawn:
         reduced = reduced.where(~withdrawn_reduction())
         taken_back = withdrawn(Sweep.accession, Sweep.address, Sweep.cooldown)
-    found = select(
-        *(column_found(name, amended=amended).label(name) for name in _COLUMNS),
-        reduced.label("reduced"),
-        *((taken_back.label("withdrawn"),) if anything_withdrawn else ()),
-    ).where(*search_conditions(query, amended=amended))
+    else:
+        query = replace(query, withdrawn=True)
+    columns = [
+        column if kind is None else type_coerce(column, kind)
+        for name, kind in _COLUMNS.items()
+        for column in (column_found(name, amended=amended),)
+    ]
+    found = select(*columns, reduced, taken_back).where(*search_conditions(query, amended=amended))
     coverage = column_found("coverage_mol_per_m2", amended=amended)
+    if cells is not None:
+        found = found.where(_looked_up(coverage, cells, between, amended=amended))
     if amended:
         found = found.outerjoin(AmendedSweep, last_amended())
     return found.order_by(coverage.is_(None), coverage, Sweep.address)
+
+
+def _looked_up(
+    coverage: Any, cells: Sequence[str], between: tuple[float, float] | None, *, amended: bool
+) -> ColumnElement[bool]:
+    """Condition that the index of cell and coverage answers: without a cell, SQLite goes through every sweep."""
+    condition: ColumnElement[bool] = coverage.is_(None) if between is None else coverage.between(*between)
+    if amended:
+        return condition
+    return or_(and_(Sweep.cell.in_(cells), condition), and_(Sweep.cell.is_(None), condition))
 
 
 def plane_results(
@@ -118,6 +158,20 @@ def plane_spans(quantity: str) -> Query:
         )
         .order_by(Sweep.address, Channel.position)
     )
+
+
+@cache
+def sealed_count() -> Query:
+    """How many sealed files there are: none is ever taken away, so this tells whether anything has come in."""
+    return select(func.count(SealedFile.key))
+
+
+def record_contents(addresses: Sequence[str]) -> Query:
+    """Address and content of some records, wherever they came in."""
+    held = select(Record.address, Record.content).where(Record.address.in_(addresses))
+    outside = select(Revision.address, Revision.content).where(Revision.address.in_(addresses))
+    both = union(held, outside).subquery()
+    return select(both).order_by(both.c.address)
 
 
 @cache

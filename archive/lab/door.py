@@ -500,6 +500,7 @@ class Archive:
         axis: PlaneAxis = "coverage",
         state: PlaneState = "any",
         window: Window | None = None,
+        everything: bool = False,
         most: int | None = None,
     ) -> PlaneView:
         """Sweeps as bars over temperature, transitions as points, the universal jump as lines; see `archive.lab.plane.plane`.
@@ -513,12 +514,16 @@ class Archive:
         state : {"any", "reduced", "not reduced", "stale", "withdrawn"}
         window : Window, optional
             Part of the plane, in SI; else all sweeps but for a few that lie far from all others.
+        everything : bool
+            Those few, too.
         most : int, optional
             Bars, and points, that are told one by one; of more, strips of bars are told.
         """
         from archive.lab.plane import plane
 
-        return plane(self._source, query or SearchQuery(), axis=axis, state=state, window=window, most=most)
+        return plane(
+            self._source, query or SearchQuery(), axis=axis, state=state, window=window, everything=everything, most=most
+        )  # fmt: skip
 
     def plane_figure(self, view: PlaneView, *, kind: str = "pdf") -> bytes:
         """Figure of the plane for a talk, as PDF or SVG."""
@@ -528,7 +533,9 @@ class Archive:
 
     def cells_and_substrates(self) -> list[CellUse]:
         """Every pair of cell and substrate that a sweep names, and since when."""
-        return self._index.cells_and_substrates()
+        from archive.lab.plane_lines import cell_uses
+
+        return cell_uses(self._index)
 
     def cooldowns(self) -> RowList[CooldownRow]:
         """All cooldowns."""

@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 from collections import Counter, defaultdict
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import replace
+from functools import cache
 from typing import Literal, NamedTuple
 
 from archive.index import Index, PlaneResult, PlaneSweep, SearchQuery
-from archive.lab.plane_lines import NO_CELL, cell_name, universal_lines
+from archive.lab.curves.kept import Kept
+from archive.lab.plane_lines import NO_CELL, cell_name, cell_uses, inert_layers, universal_lines
 from archive.lab.plane_window import (
     MOST_BARS,
     first_window,
@@ -42,6 +44,11 @@ _EMPTY: dict[PlaneAxis, Window] = {
     "cell": Window(0.01, 10.0, 0.0, 1.0),
 }
 
+# A view takes about a kilobyte for each bar, and is the same until something comes in.
+_KEPT: Kept[PlaneView] = Kept(
+    most=2**25, size=lambda view: 2**10 * (1 + len(view.bars) + len(view.strips) + len(view.points))
+)
+
 # Headline results stand first.
 _FEW = 3
 
@@ -59,6 +66,7 @@ def plane(
     axis: PlaneAxis = "coverage",
     state: PlaneState = "any",
     window: Window | None = None,
+    everything: bool = False,
     most: int | None = None,
 ) -> PlaneView:
     """Return a window of the plane.
@@ -73,43 +81,87 @@ def plane(
     state : {"any", "reduced", "not reduced", "stale", "withdrawn"}
     window : Window, optional
         Else all sweeps but for a few that lie far from all others.
+    everything : bool
+        Those few, too, where no window is given.
     most : int, optional
         Bars, and points, that are shown one by one; 2,000 if left out. Of more bars than that no results are told.
+
+    Notes
+    -----
+    What was looked at is kept in memory, but for views of another `most`, until a file comes into the archive.
     """
-    most = MOST_BARS if most is None else most
+    if most is not None:
+        return _made(source, query, axis=axis, state=state, window=window, everything=everything, most=most)
+    key = (source.index.stamp(), query, axis, state, window, everything)
+    return _KEPT.get(
+        key,
+        lambda: _made(
+            source, query, axis=axis, state=state, window=window, everything=everything, most=MOST_BARS
+        ),
+    )
+
+
+def _made(
+    source: LabSource,
+    query: SearchQuery,
+    *,
+    axis: PlaneAxis,
+    state: PlaneState,
+    window: Window | None,
+    everything: bool,
+    most: int,
+) -> PlaneView:
     index, log = source.index, logarithmic(axis)
     wanted = replace(query, withdrawn=True) if state == "withdrawn" else query
-    rows, stale_ones = _of_state(source, index.plane_sweeps(wanted), state)
+    part = window if axis == "coverage" else None
+    rows, stale_ones = _of_state(source, _rows(index, wanted, part), state)
     looks = _looks(index)
-    bars, unplaced = _bars(rows, _places(index, rows, axis), looks, stale_ones, log=log)
+    bars, unplaced = _bars(
+        rows, _places(index, rows, axis), looks, stale_ones, log=log, stated=axis == "coverage"
+    )
     # An empty cell is worth showing beside its films; that of a calorimeter full of liquid is not.
     films = {bar.cell for bar in bars if bar.top > 0}
-    shown_first = [bar for bar in bars if bar.cell in films] or bars
-    seen = window or (first_window(shown_first, log=log) if bars else _EMPTY[axis])
+    seen = window or _window(
+        [bar for bar in bars if everything or bar.cell in films] or bars, axis, everything=everything
+    )
     shown = [bar for bar in bars if inside(bar, seen)]
-    points = _points(index, bars, rows, axis, seen)
+    points = _points(index, bars, axis, seen)
     kept = thinned_points(points, seen, most=most, log=log)
     merged = len(shown) > most
-    strips = strips_of(shown, seen, most=most, log=log) if merged else ()
-    lines, in_pores = _lines(index, rows, bars, looks) if axis == "coverage" else ((), ())
-    names = {cell_name(row.cell) for row in rows}
+    lines, in_pores = _lines(index, rows, query, looks, part) if axis == "coverage" else ((), ())
+    names = {bar.cell for bar in bars} if axis == "cell" else {bar.cell for bar in shown}
     return PlaneView(
         axis=axis,
         cells=tuple((name, looks[name]) for name in looks if name in names),
         window=seen,
-        whole=whole_of(bars, log=log) if bars else _EMPTY[axis],
         bars=() if merged else _with_results(index, shown),
         points=kept,
-        strips=strips,
+        strips=strips_of(shown, seen, most=most, log=log) if merged else (),
         lines=lines,
-        sweeps=len(rows),
-        outside=len(bars) - len(shown),
-        unplaced=tuple(sorted(unplaced.items())),
+        sweeps=len(rows) if part is None else len(shown),
+        outside=len(bars) - len(shown) if part is None else None,
+        unplaced=tuple(sorted(unplaced.items())) if part is None else (),
         merged=len(shown) if merged else 0,
         thinned=len(points) - len(kept),
         in_pores=in_pores,
         lanes=tuple((name, looks[name]) for name in sorted(names, reverse=True)) if axis == "cell" else (),
     )
+
+
+def _rows(index: Index, query: SearchQuery, part: Window | None) -> list[PlaneSweep]:
+    """Sweeps of a search; where only a part of the plane is looked at, no others are asked for."""
+    if part is None:
+        return index.plane_sweeps(query)
+    warm = replace(query, temperature=(part.cold, part.warm))
+    cells = sorted({use.cell for use in cell_uses(index) if use.cell is not None})
+    stated = index.plane_sweeps(warm, cells=cells, between=(part.bottom, part.top))
+    return stated + index.plane_sweeps(warm, cells=cells)
+
+
+def _window(bars: Sequence[Bar], axis: PlaneAxis, *, everything: bool) -> Window:
+    if not bars:
+        return _EMPTY[axis]
+    return (whole_of if everything else first_window)(bars, log=logarithmic(axis))
 
 
 def _of_state(
@@ -128,7 +180,7 @@ def _of_state(
 def _looks(index: Index) -> dict[str, int]:
     """Look of every cell of the archive in the order of first use: no filter changes it, nor do later cooldowns."""
     first: dict[str, str] = {}
-    for use in index.cells_and_substrates():
+    for use in cell_uses(index):
         since = "~" if use.since is None else use.since.isoformat()
         name = cell_name(use.cell)
         first[name] = min(since, first.get(name, since))
@@ -139,13 +191,12 @@ def _looks(index: Index) -> dict[str, int]:
 def _places(index: Index, rows: Sequence[PlaneSweep], axis: PlaneAxis) -> dict[str, _Place]:
     """Where each sweep stands on the axis, by its address."""
     if axis == "coverage":
-        places = {
+        # Where a sweep states its coverage, it stands there; see `_bars`.
+        return {
             span.sweep: _Place(span.low, span.high, None)
             for span in index.dosed_spans()
             if span.low is not None
         }
-        known = ((row.address, row.coverage, row.coverage_uncertainty) for row in rows)
-        return places | {address: _Place(value, value, u) for address, value, u in known if value is not None}
     if axis == "pressure":
         return _pressures(index)
     return _lanes(rows)
@@ -184,50 +235,47 @@ def _bars(
     stale_ones: frozenset[str],
     *,
     log: tuple[bool, bool],
+    stated: bool,
 ) -> tuple[list[Bar], Counter[str]]:
     bars, unplaced = [], Counter[str]()
     for row in rows:
-        ends = [end for end in (row.temperature_low, row.temperature_high) if end is not None]
-        place = places.get(row.address)
-        if place is None or not ends or (log[0] and min(ends) <= 0):
+        cold, warm = row.temperature_low, row.temperature_high
+        place: tuple[float, float, float | None] | None = places.get(row.address)
+        if stated and row.coverage is not None:
+            place = (row.coverage, row.coverage, row.coverage_uncertainty)
+        cold, warm = warm if cold is None else cold, cold if warm is None else warm
+        if place is None or cold is None or warm is None or (log[0] and cold <= 0):
             unplaced["a temperature" if place is not None else "a place on this axis"] += 1
             continue
         name = cell_name(row.cell)
-        bars.append(
-            Bar(
-                address=row.address,
-                kind=row.kind,
-                cell=name,
-                look=looks[name],
-                begin=row.begin,
-                cold=min(ends),
-                warm=max(ends),
-                bottom=place.bottom,
-                top=place.top,
-                uncertainty=place.uncertainty,
-                marks=tuple(_marks(row, stale_ones)),
-            )
-        )
+        marks = _marks(row.withdrawn, row.empty_cell, row.reduced, row.address in stale_ones)
+        bars.append(Bar(row.address, row.kind, name, looks[name], row.begin, cold, warm, *place, marks))
     return bars, unplaced
 
 
-def _marks(row: PlaneSweep, stale_ones: frozenset[str]) -> Iterable[str]:
-    if row.withdrawn:
-        yield "withdrawn"
-    if row.empty_cell:
-        yield "empty cell"
-    if row.address in stale_ones:
-        yield "stale"
-    elif not row.reduced:
-        yield "not reduced"
+@cache
+def _marks(withdrawn: bool, empty: int, reduced: bool, stale: bool) -> tuple[str, ...]:  # noqa: FBT001 - of a row
+    manner = "stale" if stale else "" if reduced else "not reduced"
+    return tuple(
+        mark for mark in ("withdrawn" if withdrawn else "", "empty cell" if empty else "", manner) if mark
+    )
 
 
 def _lines(
-    index: Index, rows: Sequence[PlaneSweep], bars: Sequence[Bar], looks: Mapping[str, int]
+    index: Index,
+    rows: Sequence[PlaneSweep],
+    query: SearchQuery,
+    looks: Mapping[str, int],
+    part: Window | None,
 ) -> tuple[tuple[Line, ...], tuple[str, ...]]:
-    filled = {bar.address for bar in bars if bar.top > 0}
-    films = {cell_name(row.cell): row.substrate for row in rows if row.address in filled}
-    return universal_lines(index, films, looks)
+    """Lines for the cells whose films are in the picture, and in a part of it for those whose sweeps are beside it, too."""
+    films = {cell_name(row.cell): row.substrate for row in rows if row.coverage is None or row.coverage > 0}
+    known = inert_layers(index)
+    if part is not None and query.cell is None and query.substrate is None:
+        for use in cell_uses(index):
+            if cell_name(use.cell) in known:
+                films.setdefault(cell_name(use.cell), use.substrate)
+    return universal_lines(index, films, known, looks)
 
 
 def _with_results(index: Index, bars: Sequence[Bar]) -> tuple[Bar, ...]:
@@ -235,13 +283,11 @@ def _with_results(index: Index, bars: Sequence[Bar]) -> tuple[Bar, ...]:
         return tuple(bars)
     found = index.sweep_results([bar.address for bar in bars])
     return tuple(
-        replace(bar, results=tuple(map(result_words, found.get(bar.address, ())[:_FEW]))) for bar in bars
+        bar._replace(results=tuple(map(result_words, found.get(bar.address, ())[:_FEW]))) for bar in bars
     )
 
 
-def _points(
-    index: Index, bars: Sequence[Bar], rows: Sequence[PlaneSweep], axis: PlaneAxis, seen: Window
-) -> list[Point]:
+def _points(index: Index, bars: Sequence[Bar], axis: PlaneAxis, seen: Window) -> list[Point]:
     by_sweep = {bar.address: bar for bar in bars}
     found: list[Point] = []
     reductions: set[str] = set()

@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
+from functools import lru_cache
 
-from archive.index import Index, ResultRow
+from archive.index import CellUse, Index, ResultRow
+from archive.lab.curves.kept import Kept
 from archive.physics.film_static import onset_coverage
 from archive.reports.plane_view import Line
 
-__all__ = ["NO_CELL", "cell_name", "inert_layers", "universal_lines"]
+__all__ = ["NO_CELL", "cell_name", "cell_uses", "inert_layers", "universal_lines"]
 
 NO_CELL = "no cell"
 
@@ -18,6 +20,7 @@ _INERT = "onset_coverage"
 _ONSET = "transition_coverage"
 
 
+@lru_cache(maxsize=4096)
 def cell_name(address: str | None) -> str:
     """Name of a cell, whatever its revision.
 
@@ -29,6 +32,15 @@ def cell_name(address: str | None) -> str:
     if address is None:
         return NO_CELL
     return address.rpartition(".r")[0] or address
+
+
+# A few hundred bytes each; to find them, every sweep is looked at.
+_USES: Kept[list[CellUse]] = Kept(most=2**22, size=lambda uses: 2**8 * (1 + len(uses)))
+
+
+def cell_uses(index: Index) -> list[CellUse]:
+    """Every pair of cell and substrate that a sweep names; kept until a file comes in."""
+    return _USES.get(index.stamp(), index.cells_and_substrates)
 
 
 def inert_layers(index: Index) -> dict[str, Line]:
@@ -60,7 +72,7 @@ def _less_jump(index: Index, row: ResultRow, value: float) -> float | None:
 
 
 def universal_lines(
-    index: Index, films: Mapping[str, str | None], looks: Mapping[str, int]
+    index: Index, films: Mapping[str, str | None], inert: Mapping[str, Line], looks: Mapping[str, int]
 ) -> tuple[tuple[Line, ...], tuple[str, ...]]:
     """Return the lines for some cells with films, and the cells that get none because their films are in pores.
 
@@ -69,6 +81,8 @@ def universal_lines(
     index : Index
     films : mapping
         Cells by name, with the address of their substrate.
+    inert : mapping
+        From `inert_layers`.
     looks : mapping
         Look of each cell.
 
@@ -78,9 +92,8 @@ def universal_lines(
     inert layer plus the universal jump, no more (D. R. Nelson, J. M. Kosterlitz, Physical Review Letters 39, 1201 (1977)); depletion by
     thermal excitations is not in it. A film that covers the walls of pores has no jump, so its cell gets no line.
     """
-    porous = _porous(index)
+    porous = _porous(index, [each for each in set(films.values()) if each is not None])
     in_pores = tuple(sorted(cell for cell, substrate in films.items() if substrate in porous))
-    inert = inert_layers(index)
     flat = [cell for cell in sorted(films) if cell not in in_pores and cell != NO_CELL]
     lines = [
         Line(cell, looks[cell], inert[cell].inert, inert[cell].inert_uncertainty, inert[cell].source)
@@ -93,10 +106,11 @@ def universal_lines(
     return tuple(lines), in_pores
 
 
-def _porous(index: Index) -> frozenset[str]:
-    """Addresses of the substrates whose record states pores."""
+def _porous(index: Index, substrates: Sequence[str]) -> frozenset[str]:
+    """Addresses of those substrates whose record states pores."""
+    contents = index.record_contents(sorted(substrates))
     return frozenset(
-        row.address
-        for row in index.records(kind="substrate")
-        if row.content.get("pore_diameter") is not None or row.content.get("porosity") is not None
+        address
+        for address, content in contents.items()
+        if content.get("pore_diameter") is not None or content.get("porosity") is not None
     )

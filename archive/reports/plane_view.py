@@ -9,8 +9,7 @@ Rules
 from __future__ import annotations
 
 from dataclasses import dataclass
-from datetime import datetime
-from typing import Literal
+from typing import Literal, NamedTuple
 
 __all__ = ["Bar", "Line", "PlaneAxis", "PlaneView", "Point", "Strip", "Window"]
 
@@ -28,15 +27,15 @@ class Window:
     top: float
 
 
-@dataclass(frozen=True)
-class Bar:
+class Bar(NamedTuple):
     """A sweep: its temperatures, and where it stands on the axis (a dose run spans from `bottom` to `top`)."""
 
     address: str
     kind: str
     cell: str
     look: int
-    begin: datetime | None
+    begin: str | None
+    """UTC, as text that sorts."""
     cold: float
     warm: float
     bottom: float
@@ -48,8 +47,7 @@ class Bar:
     """The first headline results, each as `name = value`."""
 
 
-@dataclass(frozen=True)
-class Point:
+class Point(NamedTuple):
     """A transition that a current reduction found, with standard uncertainties where they are known."""
 
     address: str
@@ -100,13 +98,13 @@ class PlaneView:
     axis : PlaneAxis
     cells : tuple of (str, int)
         Names of all cells that the filters leave, with their looks.
-    window, whole : Window
-        What is shown, and what all sweeps that can be placed reach over.
+    window : Window
+        What is shown.
     bars, points, strips, lines : tuple
     sweeps : int
-        Sweeps that the filters leave.
-    outside : int
-        Those of them beyond the window.
+        Sweeps that the filters leave; of a part that was asked for, those in it.
+    outside : int or None
+        Those of them beyond the window; None where a part was asked for, and nobody counted.
     unplaced : tuple of (str, int)
         Those without a place on the plane, by what they lack.
     merged : int
@@ -122,13 +120,12 @@ class PlaneView:
     axis: PlaneAxis
     cells: tuple[tuple[str, int], ...]
     window: Window
-    whole: Window
     bars: tuple[Bar, ...] = ()
     points: tuple[Point, ...] = ()
     strips: tuple[Strip, ...] = ()
     lines: tuple[Line, ...] = ()
     sweeps: int = 0
-    outside: int = 0
+    outside: int | None = 0
     unplaced: tuple[tuple[str, int], ...] = ()
     merged: int = 0
     thinned: int = 0

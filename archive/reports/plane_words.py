@@ -125,7 +125,11 @@ def line_words(line: Line) -> str:
 def remarks(view: PlaneView) -> Iterator[str]:
     """Yield sentences on what is shown, what is merged, and what is left out."""
     shown = len(view.bars) + view.merged
-    yield f"{_count(view.sweeps, 'sweep')}, {shown} of them shown."
+    yield (
+        f"{_count(view.sweeps, 'sweep')}, {shown} of them shown."
+        if view.outside is not None
+        else f"{_count(shown, 'sweep')} in this part of the plane."
+    )
     if view.outside:
         yield f"{_count(view.outside, 'sweep')} beyond the edges."
     for what, count in view.unplaced:

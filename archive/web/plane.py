@@ -132,8 +132,8 @@ def _steps(view: PlaneView, wanted: PlaneRequest) -> list[tuple[str, str]]:
     return [
         ("closer", "/" + wanted.at(about(0.5))),
         ("wider", "/" + wanted.at(about(2.0))),
-        ("everything", "/" + wanted.at(view.whole)),
-        ("as at first", "/" + wanted.at(None)),
+        ("everything", "/" + wanted.at(None, everything=True)),
+        ("as at first", "/" + wanted.at(None, everything=None)),
     ]
 
 
@@ -170,6 +170,6 @@ def _order(bar: Bar, sort: Sort) -> tuple[Any, ...]:
         "temperature": (bar.cold, bar.warm),
         "cell": (bar.cell, bar.bottom),
         "address": (),
-        "begin": ("" if bar.begin is None else bar.begin.isoformat(),),
+        "begin": (bar.begin or "",),
     }
     return (*keys[sort], bar.address)

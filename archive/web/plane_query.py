@@ -48,6 +48,7 @@ class PlaneRequest(BaseModel):
     coverage: str | None = None
     pressure: str | None = None
     lanes: str | None = None
+    everything: bool = False
     view: Literal["picture", "table"] = "picture"
     sort: Sort = "height"
     descending: bool = False
@@ -68,7 +69,7 @@ class PlaneRequest(BaseModel):
     def at(self, window: Window | None = None, **changes: object) -> str:
         """Return the address of the same plane with another window (None: the first one) and other fields."""
         fields = self.model_dump(exclude_defaults=True, exclude=set(_WINDOW))
-        fields |= {} if window is None else window_fields(window, self.axis)
+        fields |= {} if window is None else {**window_fields(window, self.axis), "everything": None}
         return _query({**fields, **changes})
 
     def here(self, **changes: object) -> str:

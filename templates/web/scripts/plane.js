@@ -69,6 +69,7 @@ function ask() {
   const now = state.moving;
   const query = new URLSearchParams(location.search);
   const height = axis === "cell" ? "lanes" : axis;
+  query.delete("everything");
   query.set("temperature", `${digits(at(x, now.x))}:${digits(at(x, now.x + now.width))} K`);
   query.set(height, `${digits(at(y, now.y))}:${digits(at(y, now.y + now.height))} ${unit}`.trim());
   go(`/?${query}`, true);

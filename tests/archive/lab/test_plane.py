@@ -5,14 +5,17 @@ from __future__ import annotations
 import math
 from collections.abc import Iterator
 from datetime import UTC, datetime, timedelta
+from pathlib import Path
 from typing import Any
 
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from scipy import constants
+from sqlalchemy.dialects import sqlite
 
 from archive.index import Index, SearchQuery
+from archive.index.plane_queries import plane_results, plane_sweeps
 from archive.lab.plane import plane
 from archive.lab.plane_window import first_window, inside, strips_of, thinned_points, whole_of
 from archive.lab.source import LabSource
@@ -127,12 +130,26 @@ def test_filters(source: LabSource, query: dict[str, Any], state: Any, expected:
     assert _names(plane(source, SearchQuery(**query), state=state)) == expected
 
 
-def test_a_window_shows_what_reaches_into_it_and_counts_the_rest(source: LabSource) -> None:
-    view = plane(source, SearchQuery(), window=Window(0.65, 0.8, 29e-6, 34e-6))
+def test_a_part_shows_what_reaches_into_it_and_nothing_else_is_asked_for(source: LabSource) -> None:
+    part = Window(0.65, 0.8, 29e-6, 34e-6)
+    view = plane(source, SearchQuery(), window=part)
     assert _names(view) == ["s2", "s3"]
-    assert view.outside == 5
-    assert view.points == ()
-    assert view.window == Window(0.65, 0.8, 29e-6, 34e-6)
+    assert (view.sweeps, view.outside, view.points, view.window) == (2, None, (), part)
+    assert next(remarks(view)) == "2 sweeps in this part of the plane."
+    assert {"TO-4", "TS-1"} <= {line.cell for line in view.lines}, (
+        "lines go through a part where no bar of theirs is"
+    )
+    dosed = plane(source, SearchQuery(), window=Window(0.0, 0.03, 4e-6, 6e-6))
+    assert _names(dosed) == ["d1"], "a dose run states no coverage, its doses do"
+
+
+def test_what_was_looked_at_is_kept_until_something_comes_in(tmp_path: Path) -> None:
+    with Index.create(f"sqlite:///{tmp_path}/index.sqlite3") as index:
+        empty = plane(LabSource(MemoryStore(), index), SearchQuery())
+        assert empty.sweeps == 0
+        assert plane(LabSource(MemoryStore(), index), SearchQuery()) is empty
+        index.rebuild([make.entry(make.accession())])
+        assert plane(LabSource(MemoryStore(), index), SearchQuery()).sweeps == 1
 
 
 def test_other_axes(source: LabSource) -> None:
@@ -256,3 +273,16 @@ def test_withdrawn_sweeps_say_so(source: LabSource) -> None:
         bar.address.partition("/")[2]: bar.marks for bar in plane(source, SearchQuery(withdrawn=True)).bars
     }
     assert (marks["w1"], marks["s1"], marks["e1"]) == (bar.marks, (), ("empty cell", "not reduced"))
+
+
+def test_a_part_is_looked_up_and_not_sought(source: LabSource) -> None:
+    """No table is gone through from end to end for the sweeps and transitions between some edges."""
+    sweeps = plane_sweeps(
+        SearchQuery(temperature=(0.1, 0.2)), amended=False, anything_withdrawn=False, cells=["TO-4.r1"], between=(1e-6, 2e-6)
+    )  # fmt: skip
+    for asked in (sweeps, plane_results(("T_KT", "T_c"), low=0.1, high=0.2)):
+        sql = asked.compile(dialect=sqlite.dialect(), compile_kwargs={"literal_binds": True})  # type: ignore[no-untyped-call]
+        with source.index._engine.connect() as connection:
+            plan = [str(row[3]) for row in connection.exec_driver_sql(f"EXPLAIN QUERY PLAN {sql}")]
+        assert any("SEARCH" in line for line in plan)
+        assert [line for line in plan if line.startswith("SCAN")] == []
