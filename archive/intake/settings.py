@@ -7,9 +7,10 @@ from pathlib import Path
 
 from pydantic import Field
 
-from archive.errors import InvalidSheet, NotAnArchive
+from archive.errors import BadRequest, InvalidSheet, NotAnArchive
 from archive.intake.sheet import LineMap, validated
 from archive.intake.thresholds import Thresholds
+from archive.store.plain_text import plain_text
 from schemas.base import Record, Text
 from schemas.deposit import Deposit
 from schemas.toml_text import TomlFault, tables_of
@@ -17,6 +18,7 @@ from schemas.toml_text import TomlFault, tables_of
 __all__ = ["SETTINGS_NAME", "Settings", "read_settings", "settings_text", "settings_without_index"]
 
 SETTINGS_NAME = "stillroom.toml"
+_LARGEST = 5_000_000  # bytes, as for a sheet
 
 
 class Settings(Record):
@@ -87,12 +89,12 @@ def read_settings(root: Path) -> Settings:
     """
     path = root / SETTINGS_NAME
     try:
-        text = path.read_text(encoding="utf-8")
+        text = plain_text(path, at_most=_LARGEST)
     except FileNotFoundError:
         raise NotAnArchive(
             "there is no archive in this folder", file=str(root), remedy="make one with: stillroom init DIR"
         ) from None
-    except (OSError, UnicodeDecodeError) as error:
+    except (OSError, UnicodeDecodeError, BadRequest) as error:
         raise InvalidSheet("the settings cannot be read", file=str(path), found=str(error)) from None
     try:
         tables = tables_of(text)

@@ -9,11 +9,13 @@ from pathlib import Path
 from typing import Any
 
 from archive.errors import BadRequest
+from archive.store.plain_text import plain_text
 from schemas.address import parse_address
 
 __all__ = ["Cited", "is_mark", "parts_of", "sources_of_figure", "sources_of_mark"]
 
 _LISTING = "appendix.json"
+_LARGEST = 100_000_000  # bytes; that of sixty-seven reductions has two million
 _CITED = re.compile(r"^\s*%\s*[A-Za-z]+[0-9]*\s*\|\s*")
 _MARK = re.compile(r"^(?P<folder>.*)#(?P<mark>[sf][1-9][0-9]{0,5})$", re.DOTALL)
 
@@ -56,7 +58,7 @@ def sources_of_mark(text: str) -> Cited:
     mark = found["mark"]
     if mark in told["figures"]:
         figure = told["figures"][mark]
-        return Cited(f"figure {figure['file']}", tuple(map(str, figure["reductions"])))
+        return Cited(f"figure {figure['file']}", tuple(figure["reductions"]))
     if mark not in told["sentences"]:
         counts = [f"{kind}1 to {kind}{len(told[name])}" for kind, name in (("s", "sentences"), ("f", "figures"))]  # fmt: skip
         raise BadRequest(
@@ -77,7 +79,7 @@ def _read(listing: Path) -> dict[str, dict[str, Any]]:
     sentences: dict[str, Any] = {}
     figures: dict[str, Any] = {}
     try:
-        for section in json.loads(listing.read_text(encoding="utf-8"))["sections"]:
+        for section in json.loads(plain_text(listing, at_most=_LARGEST))["sections"]:
             for said in section.get("sentences", ()):
                 sentences[str(said.get("mark"))] = (str(said["record"]), str(said["text"]))
             for block in section.get("steps", ()):
@@ -85,7 +87,11 @@ def _read(listing: Path) -> dict[str, dict[str, Any]]:
                 for number, (mark, text) in enumerate(told, 1):
                     sentences[str(mark)] = (f"{block['reduction']} step {number}", str(text))
             for figure in section["figures"]:
-                figures[str(figure.get("mark", figure["file"]))] = figure
+                known = {
+                    "file": str(figure["file"]),
+                    "reductions": [str(each) for each in figure["reductions"]],
+                }
+                figures[str(figure.get("mark", figure["file"]))] = known
     except (OSError, ValueError, KeyError, TypeError, AttributeError, RecursionError) as error:
         raise BadRequest("this is no appendix of Stillroom", file=str(listing), found=str(error)) from None
     sentences.pop("None", None)

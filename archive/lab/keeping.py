@@ -163,6 +163,13 @@ def _fit_for_mirror(target: Path, settings: Settings) -> None:
         make_folder(target)
     if not target.is_dir():
         raise BadRequest("this is no folder", file=str(target))
+    # Whoever prepared the folder could have led the copy to anywhere by a link in it.
+    links = [path for path in (*target.iterdir(), *(target / "sealed").glob("*")) if path.is_symlink()]
+    if links:
+        raise BadRequest(
+            "there is a link in this folder, and a mirror is not written through links", file=str(min(links)),
+            remedy="name another folder, or put a folder in the place of the link",
+        )  # fmt: skip
     # What a mirror that was stopped left of its small files is no stranger's.
     lying = {path.name for path in target.iterdir() if not path.match(f".*{STAGING_SUFFIX}")} - {LOCK_NAME}
     if (target / SETTINGS_NAME).is_file():

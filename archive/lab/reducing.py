@@ -24,6 +24,7 @@ from archive.reduction.replay import replay as repeat
 from archive.reduction.runner import run
 from archive.store.durable import archive_lock
 from archive.store.local import LocalStore
+from archive.store.plain_text import plain_text
 from schemas.address import parse_address
 from schemas.lineage import ReductionDocument
 from schemas.plan import Plan
@@ -31,6 +32,9 @@ from schemas.plan import Plan
 __all__ = ["current_plans", "plans", "rebuilt_index", "reduce", "reduce_one", "replay"]
 
 Seal = Callable[[ReductionDocument, Mapping[str, tuple[NDArray[Any], dict[str, str]]]], None]
+
+
+_LARGEST_PLAN = 5_000_000  # bytes, as for a sheet
 
 
 def plans(source: LabSource) -> list[Plan]:
@@ -74,7 +78,7 @@ def _chosen(source: LabSource, plan: str | Path | None) -> tuple[list[Plan], lis
     path = Path(plan)
     if path.suffix == ".toml":
         try:
-            text = path.read_text(encoding="utf-8")
+            text = plain_text(path, at_most=_LARGEST_PLAN)
         except (OSError, UnicodeDecodeError) as error:
             raise BadRequest("the plan file cannot be read", file=str(path), found=str(error)) from None
         own = load_plan(text, file=str(path))

@@ -19,8 +19,9 @@ from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from datetime import datetime
 from pathlib import Path
-from typing import Any
+from typing import Any, BinaryIO
 
+from archive.errors import DamagedFile
 from archive.store.durable import append_lines
 from archive.store.interface import Damage
 
@@ -227,8 +228,16 @@ class Journal:
         """Return the keys of all sealed files that the journal tells of."""
         return {entry.act.key for entry in self.entries() if entry.act.key is not None}
 
+    def _opened(self) -> BinaryIO:
+        if self.path.exists() and not self.path.is_file():
+            # A pipe would be waited for without end.
+            raise DamagedFile(
+                "this is not a plain file", file=str(self.path), remedy="bring the journal back from a copy"
+            )
+        return self.path.open("rb")
+
     def _lines(self) -> Iterator[bytes]:
-        with contextlib.suppress(FileNotFoundError), self.path.open("rb") as stream:
+        with contextlib.suppress(FileNotFoundError), self._opened() as stream:
             while line := stream.readline(_LONGEST):
                 if line.endswith(b"\n"):
                     yield line[:-1]
@@ -238,7 +247,7 @@ class Journal:
     def _end(self) -> tuple[list[bytes], bytes]:
         """Return whole lines near the end, and what stands after the last line end."""
         try:
-            with self.path.open("rb") as stream:
+            with self._opened() as stream:
                 size = stream.seek(0, os.SEEK_END)
                 start = max(0, size - _TAIL)
                 stream.seek(start)

@@ -20,9 +20,11 @@ from pathlib import Path
 from archive.errors import AlreadySealed, BadRequest, DamagedFile, MissingFile
 from archive.store import durable
 from archive.store.names import is_key
+from archive.store.plain_text import plain_text
 
 __all__ = ["decide", "name_all", "new_plan", "sweep_staging"]
 
+_LARGEST_PLAN = 500_000_000  # bytes; some hundred for each file of an import
 _BATCH_SUFFIX = ".batch"
 _FORMAT = "stillroom-batch/1"
 _UNFINISHED_PLAN = re.compile(r"\.[0-9a-f]{16}\.batch\.[0-9a-f]{8}\.partial")
@@ -68,13 +70,13 @@ def name_all(root: Path, plan: Path) -> list[str]:
 
 def _planned(plan: Path) -> list[tuple[str, str]]:
     try:
-        content = json.loads(plan.read_text(encoding="utf-8"))
+        content = json.loads(plain_text(plan, at_most=_LARGEST_PLAN))
         files = [(str(name), str(key)) for name, key in content["files"]]
         sound = content["format"] == _FORMAT and all(
             is_key(key) and name.endswith(durable.STAGING_SUFFIX) and Path(name).name == name
             for name, key in files
         )
-    except (OSError, ValueError, KeyError, TypeError) as error:
+    except (OSError, ValueError, KeyError, TypeError, RecursionError, BadRequest) as error:
         raise DamagedFile("the plan of an import cannot be read", file=str(plan), found=str(error)) from error
     if not sound:
         raise DamagedFile("this is no plan of an import", file=str(plan))

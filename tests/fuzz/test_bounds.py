@@ -3,25 +3,32 @@
 from __future__ import annotations
 
 import io
+import os
+import shutil
 import struct
 import time
 import tracemalloc
 import unicodedata
 import zipfile
 import zlib
+from collections.abc import Callable
 from pathlib import Path
 
 import h5py
 import numpy as np
 import pytest
 
-from archive.errors import ArchiveError
+from archive import Archive
+from archive.errors import ArchiveError, BadRequest, DamagedFile, InvalidSheet
 from archive.intake.dialect import Block, ColumnRequest
 from archive.intake.draft import draft_text
 from archive.intake.paths import path_inside
+from archive.intake.settings import read_settings
 from archive.intake.sheet import LineMap, read_sheet
 from archive.intake.sources import read_array_source
 from archive.intake.tables import TableReader
+from archive.lab.cited import sources_of_mark
+from archive.lab.reducing import _chosen
 from archive.reduction.planning import load_plan
 from archive.reports.prose import prose
 from schemas.ranges import named_range, si_bounds
@@ -254,3 +261,100 @@ def test_a_draft_looks_at_no_link_that_leads_out(folder: Path) -> None:
     assert "leads out of the cooldown folder" in text
     assert 'files = ["link.csv"]' not in text
     assert 'files = ["raw/a.csv"]' in text
+
+
+def _pipe(path: Path) -> None:
+    os.mkfifo(path)
+
+
+def _endless(path: Path) -> None:
+    path.symlink_to("/dev/zero")
+
+
+def _enormous(path: Path) -> None:
+    with path.open("wb") as stream:
+        stream.truncate(3_000_000_000)
+
+
+def _deep(path: Path) -> None:
+    path.write_text("[" * 200_000)
+
+
+@pytest.fixture(scope="module")
+def bare(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """Give an empty archive."""
+    root = tmp_path_factory.mktemp("bare") / "lab"
+    Archive.create(root).close()
+    return root
+
+
+def _plan(root: Path) -> str:
+    with Archive.open(root) as lab, pytest.raises(BadRequest) as refused:
+        _chosen(lab._source, root / "plan.toml")
+    return str(refused.value)
+
+
+def _settings(root: Path) -> str:
+    with pytest.raises(InvalidSheet) as refused:
+        read_settings(root)
+    return str(refused.value)
+
+
+def _mark(root: Path) -> str:
+    with pytest.raises(BadRequest) as refused:
+        sources_of_mark(f"{root}#s1")
+    return str(refused.value)
+
+
+def _journal(root: Path) -> str:
+    with pytest.raises(DamagedFile) as refused:
+        Archive.open(root)
+    return str(refused.value)
+
+
+def _batch(root: Path) -> str:
+    with Archive.open(root) as lab:
+        return " ".join(lab.notices)
+
+
+@pytest.mark.parametrize(
+    ("name", "made", "read", "said"),
+    [
+        ("plan.toml", _pipe, _plan, "not a plain file"),
+        ("plan.toml", _endless, _plan, "not a plain file"),
+        ("plan.toml", _enormous, _plan, "at most 5000000 bytes"),
+        ("stillroom.toml", _enormous, _settings, "at most 5000000 bytes"),
+        ("appendix.json", _enormous, _mark, "at most 100000000 bytes"),
+        ("appendix.json", _deep, _mark, "no appendix of Stillroom"),
+        ("journal.jsonl", _pipe, _journal, "not a plain file"),
+        ("staging/0123456789abcdef.batch", _deep, _batch, "the plan of an import cannot be read"),
+    ],
+)
+def test_a_pipe_a_device_or_an_enormous_file_is_refused_in_little_memory(
+    bare: Path,
+    tmp_path: Path,
+    name: str,
+    made: Callable[[Path], None],
+    read: Callable[[Path], str],
+    said: str,
+) -> None:
+    """Each was waited for without end, read into gigabytes, or ended in a traceback."""
+    root = Path(shutil.copytree(bare, tmp_path / "lab"))
+    (root / name).parent.mkdir(exist_ok=True)
+    (root / name).unlink(missing_ok=True)
+    made(root / name)
+    tracemalloc.start()
+    try:
+        assert said in read(root)
+        assert tracemalloc.get_traced_memory()[1] < 50_000_000
+    finally:
+        tracemalloc.stop()
+
+
+@pytest.mark.parametrize(
+    "figure", ['{"mark": "f1", "file": "x"}', '{"mark": "f1", "file": "x", "reductions": 5}']
+)
+def test_a_figure_of_which_nothing_is_told_is_no_figure(tmp_path: Path, figure: str) -> None:
+    (tmp_path / "appendix.json").write_text(f'{{"sections": [{{"figures": [{figure}]}}]}}', encoding="utf-8")
+    with pytest.raises(BadRequest, match="no appendix of Stillroom"):
+        sources_of_mark(f"{tmp_path}#f1")

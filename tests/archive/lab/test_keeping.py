@@ -108,6 +108,17 @@ def test_damage_is_not_mirrored_and_damage_of_a_mirror_is_told(lab: Archive, tmp
     assert {each.key for each in told} == {ACCESSION, REDUCTION}
 
 
+@pytest.mark.parametrize("name", ["sealed", "sealed/2026-03"])
+def test_a_mirror_is_not_written_through_a_link(lab: Archive, tmp_path: Path, name: str) -> None:
+    (tmp_path / "elsewhere").mkdir()
+    link = tmp_path / "vault" / name
+    link.parent.mkdir(parents=True)
+    link.symlink_to(tmp_path / "elsewhere")
+    with pytest.raises(BadRequest, match="not written through links"):
+        lab.mirror(tmp_path / "vault")
+    assert list((tmp_path / "elsewhere").iterdir()) == []
+
+
 def test_a_folder_that_is_no_mirror_is_left_alone(lab: Archive, tmp_path: Path) -> None:
     (tmp_path / "full").mkdir()
     (tmp_path / "full" / "thesis.tex").write_text("x", encoding="utf-8")
