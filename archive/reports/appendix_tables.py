@@ -108,10 +108,10 @@ def results_table(scope: Scope) -> Table:
         ]  # fmt: skip
     heads = (
         (head("result"), 17),
-        (head("reduction"), 26),
-        (head("coverage", "umol/m^2"), 14),
+        (head("reduction"), 24),
+        (head("coverage", "umol/m^2"), 12),
         (head("value"), 19),
-        (head("unit"), 11),
+        (head("unit"), 15),
         (head("scale"), 13),
     )
     return Table(
