@@ -9,6 +9,7 @@ from archive.web.cooldowns import cooldowns
 from archive.web.drawings import download, plan_figure, points, svg
 from archive.web.endpoint import Endpoint
 from archive.web.lineage import lineage
+from archive.web.over import over
 from archive.web.plane import plane, plane_part, plane_pdf, plane_svg
 from archive.web.records import cells, thermometers
 from archive.web.run_sheet import run_sheet
@@ -35,6 +36,7 @@ ROUTES = [
     Route("/at/{address:path}", Endpoint(at)),
     Route("/thumb/{address:path}", Endpoint(thumb)),
     Route("/lineage/{address:path}", Endpoint(lineage)),
+    Route("/over", Endpoint(over)),
     Route("/points/{address:path}", Endpoint(points)),
     Route("/picture/{address:path}", Endpoint(svg)),
     Route("/figure/{address:path}", Endpoint(plan_figure)),

@@ -227,7 +227,7 @@ class Chart {
       ],
       series: [{}, { show: true, paths: () => null, points: { show: false } }],
       hooks: {
-        draw: [u => { const { ctx, bbox } = u; ctx.save(); ctx.beginPath(); ctx.rect(bbox.left, bbox.top, bbox.width, bbox.height); ctx.clip(); for (const curve of strip.panel.curves) drawCurve(u, curve); ctx.restore(); ctx.strokeStyle = style("--ink"); ctx.lineWidth = devicePixelRatio || 1; ctx.strokeRect(bbox.left, bbox.top, bbox.width, bbox.height); }],
+        draw: [u => { const { ctx, bbox } = u; ctx.save(); ctx.beginPath(); ctx.rect(bbox.left, bbox.top, bbox.width, bbox.height); ctx.clip(); for (const curve of strip.panel.curves) drawCurve(u, curve); ctx.restore(); ctx.save(); ctx.strokeStyle = style("--ink"); ctx.lineWidth = devicePixelRatio || 1; ctx.strokeRect(bbox.left, bbox.top, bbox.width, bbox.height); ctx.restore(); }],
         setSelect: [u => { if (u.select.width > 5) this.show(u.posToVal(u.select.left, "x"), u.posToVal(u.select.left + u.select.width, "x")); u.setSelect({ left: 0, width: 0, top: 0, height: 0 }, false); }],
         setCursor: [u => { if (u.cursor.event || u.cursor.left >= 0) this.read(strip); }],
       },

@@ -200,3 +200,19 @@ def test_what_cannot_be_laid_over_is_told_on_the_page(client: TestClient) -> Non
 def test_points_of_a_hostile_archive_are_json_and_its_picture_is_xml(client: TestClient) -> None:
     assert json.loads(client.get(f"/points/{HOSTILE}/s001").text)["panels"]
     ET.fromstring(client.get(f"/picture/{HOSTILE}/s001").text)  # noqa: S314 - our own
+
+
+def test_what_is_ticked_in_a_list_is_laid_over_on_the_page_of_the_first(client: TestClient) -> None:
+    ticks = [
+        each["value"] for each in Seen(client.get("/search").text).all("input") if each.get("name") == "with"
+    ]
+    assert f"{PLAIN}/s001" in ticks
+    answer = client.get("/over", params={"with": [f"{PLAIN}/s002", f"{PLAIN}/s001"]})
+    assert answer.status_code == 200
+    assert answer.url.path == f"/at/{PLAIN}/s002"
+    assert answer.url.query == f"with={PLAIN}%2Fs001".encode()
+    assert "with 2025-11/s001 laid over" in answer.text
+    assert client.get("/over").status_code == 400
+    for elsewhere in ("//elsewhere.example/", "https://elsewhere.example", "\\\\elsewhere.example"):
+        led = client.get("/over", params={"with": elsewhere}, follow_redirects=False).headers["location"]
+        assert led.startswith("/at/")
