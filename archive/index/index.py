@@ -436,6 +436,18 @@ class Index:
         """Cooldowns by begin."""
         return [CooldownRow(**row) for row in self._mappings(queries.cooldowns())]
 
+    def cooldown_names(self) -> list[str]:
+        """Names of all cooldowns, without their counts."""
+        return [str(row["name"]) for row in self._mappings(queries.cooldown_names())]
+
+    def plans(self) -> list[dict[str, Any]]:
+        """Content of every plan that a reduction followed."""
+        return [row["content"] for row in self._mappings(queries.plans())]
+
+    def result_quantities(self, name: str) -> list[str]:
+        """Quantities that scalar results of a name have, also those of reductions that do not count any more."""
+        return [str(row["quantity"]) for row in self._mappings(queries.result_quantities(name))]
+
     def records(self, name: str | None = None, kind: str | None = None) -> list[RecordRow]:
         """Return records by kind, name and revision; `name` is a name (all revisions) or an address (`TO-4.r2`)."""
         return [RecordRow(**row) for row in self._mappings(queries.records(name, kind))]

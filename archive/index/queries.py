@@ -48,6 +48,7 @@ __all__ = [
     "all_rows",
     "anything_amended",
     "channel_names",
+    "cooldown_names",
     "cooldown_newest",
     "cooldowns",
     "dependents",
@@ -55,9 +56,11 @@ __all__ = [
     "finding_counts",
     "findings",
     "plan_known",
+    "plans",
     "raw_files",
     "records",
     "reductions",
+    "result_quantities",
     "results",
     "sealed_file",
     "sealed_files",
@@ -269,6 +272,10 @@ def _total(column: InstrumentedAttribute[int], *where: Any) -> Any:
 
 def cooldowns() -> Query:
     """Cooldowns with their counts, by begin."""
+    # Counted for all at once: asked for each cooldown anew, SQLite goes through every reduction each time.
+    accessions = _by_cooldown(Accession, func.count())
+    sweeps = _by_cooldown(Sweep, func.count(func.distinct(Sweep.name)))
+    reductions = _by_cooldown(Reduction, func.count())
     return (
         select(
             Cooldown.name,
@@ -281,15 +288,39 @@ def cooldowns() -> Query:
             Cooldown.cryostat,
             Cooldown.cell,
             Cooldown.licence,
-            _counted(Accession, Accession.address),
-            select(func.count(func.distinct(Sweep.name)))
-            .where(Sweep.cooldown == Cooldown.name)
-            .scalar_subquery()
-            .label("sweeps"),
-            _counted(Reduction, Reduction.address),
+            func.coalesce(accessions.c.many, 0).label("accessions"),
+            func.coalesce(sweeps.c.many, 0).label("sweeps"),
+            func.coalesce(reductions.c.many, 0).label("reductions"),
         )
         .outerjoin(Accession, and_(Accession.cooldown == Cooldown.name, Accession.number == Cooldown.newest))
+        .outerjoin(accessions, accessions.c.cooldown == Cooldown.name)
+        .outerjoin(sweeps, sweeps.c.cooldown == Cooldown.name)
+        .outerjoin(reductions, reductions.c.cooldown == Cooldown.name)
         .order_by(Cooldown.begin.is_(None), Cooldown.begin, Cooldown.name)
+    )
+
+
+def _by_cooldown(table: type[Accession | Sweep | Reduction], many: Any) -> Any:
+    return select(table.cooldown, many.label("many")).group_by(table.cooldown).subquery()
+
+
+def cooldown_names() -> Query:
+    """Names of cooldowns."""
+    return select(Cooldown.name).order_by(Cooldown.name)
+
+
+def plans() -> Query:
+    """Content of every plan that a reduction followed, by address."""
+    return select(Plan.content).order_by(Plan.address, Plan.digest)
+
+
+def result_quantities(name: str) -> Query:
+    """Quantities that scalar results of a name have."""
+    return (
+        select(Output.quantity)
+        .where(Output.name == name, Output.rows.is_(None))
+        .distinct()
+        .order_by(Output.quantity)
     )
 
 
@@ -358,7 +389,7 @@ def reductions(
         .order_by(Reduction.sweep, Reduction.plan, Reduction.number)
     )
     if cooldown is not None:
-        found = found.where(Reduction.cooldown == cooldown)
+        found = found.where(_of_cooldown(cooldown))
     if sweep is not None:
         found = found.where(Reduction.sweep == sweep)
     if plan is not None:
@@ -366,6 +397,11 @@ def reductions(
     if step is not None:
         found = found.where(exists().where(Step.reduction == Reduction.address, Step.name == step))
     return found.where(newest_reduction()) if newest_only else found
+
+
+def _of_cooldown(cooldown: str) -> ColumnElement[bool]:
+    """Whether a reduction is of a cooldown: a range of sweeps, which have an index. "0" follows the solidus."""
+    return and_(Reduction.sweep >= f"{cooldown}/", Reduction.sweep < f"{cooldown}0")
 
 
 @lru_cache(maxsize=_BUILT)
@@ -412,7 +448,7 @@ def results(
     if name is not None:
         found = found.where(Output.name == name)
     if cooldown is not None:
-        found = found.where(Reduction.cooldown == cooldown)
+        found = found.where(_of_cooldown(cooldown))
     if sweep is not None:
         found = found.where(Reduction.sweep == sweep)
     if amended:
@@ -525,16 +561,6 @@ def statistics() -> Query:
 def _record_addresses() -> Any:
     outside = select(Revision.address).where(Revision.kind != "plan")
     return select(Record.address).union(outside).subquery()
-
-
-def _counted(table: type[Accession | Reduction], column: InstrumentedAttribute[str]) -> Any:
-    counted = aliased(table)
-    return (
-        select(func.count(getattr(counted, column.key)))
-        .where(counted.cooldown == Cooldown.name)
-        .scalar_subquery()
-        .label(f"{table.__tablename__}s")
-    )
 
 
 def _counted_all(column: InstrumentedAttribute[Any], label: str) -> Any:

@@ -99,7 +99,9 @@ def _coverage(lab: Archive, text: str, substrate: str | None, spelt: Spelt) -> B
 def _condition(lab: Archive, text: str, spelt: Spelt) -> ResultCondition:
     with told(spelt("result")):
         name, bounds = named_range(text)
-    known = {row.quantity for row in lab.results(name)}
+    known = set(lab.result_quantities(name))
+    if len(known) > 1:
+        known = {row.quantity for row in lab.results(name)}
     if not known:
         others = ", ".join(sorted({row.name for row in lab.results()})) or "none yet"
         raise BadRequest(

@@ -541,6 +541,14 @@ class Archive:
         """All cooldowns."""
         return RowList(self._index.cooldowns())
 
+    def cooldown_names(self) -> list[str]:
+        """Names of all cooldowns."""
+        return self._index.cooldown_names()
+
+    def result_quantities(self, name: str) -> list[str]:
+        """Quantities that results of a name have, also those of reductions that do not count any more."""
+        return self._index.result_quantities(name)
+
     def accessions(self, cooldown: str | None = None) -> list[AccessionRow]:
         """All accessions, or those of one cooldown."""
         return self._index.accessions(cooldown)

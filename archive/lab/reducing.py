@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 from collections import Counter
 from collections.abc import Callable, Collection, Iterator, Mapping
 from datetime import datetime
@@ -42,10 +43,9 @@ def plans(source: LabSource) -> list[Plan]:
     known = {plan.address: plan for plan in shipped_plans()}
     for own in source.own_plans():
         known.setdefault(own.address, own)
-    for row in source.index.reductions():
-        if row.plan_address not in known:
-            plan = source.reduction(row.address).plan
-            known.setdefault(plan.address, plan)
+    for content in source.index.plans():
+        plan = Plan.model_validate_json(json.dumps(content))
+        known.setdefault(plan.address, plan)
     for added in added_plans():
         known.setdefault(added.address, added)
     return [known[address] for address in sorted(known)]

@@ -18,6 +18,9 @@ from schemas.lineage import AccessionDocument, OutputEntry, ReductionDocument, S
 
 __all__ = ["show"]
 
+# Cooldowns that a sentence names, the latest ones.
+_NAMED = 12
+
 
 def show(source: LabSource, text: str) -> dict[str, Any]:
     """Content of whatever an address names, with `address` and `what`.
@@ -234,5 +237,6 @@ def _record(source: LabSource, address: Address) -> dict[str, Any]:
         held = ", ".join(sorted(row.address for row in revisions))
         raise UnknownAddress(f"there is no {address.text} in this archive", expected=f"one of: {held}")
     known = source.cooldowns()
-    hint = f"cooldowns here: {', '.join(known)}" if known else "this archive is empty"
+    more = f" and {len(known) - _NAMED} more" if len(known) > _NAMED else ""
+    hint = f"cooldowns here: {', '.join(known[-_NAMED:])}{more}" if known else "this archive is empty"
     raise UnknownAddress(f"there is nothing at {address.text} in this archive", expected=hint)

@@ -49,7 +49,7 @@ def _kind(request: Request, address: Address) -> str:
     if address.kind not in ("name", "record"):
         return address.kind
     lab = lab_of(request)
-    if address.kind == "name" and any(row.name == address.head for row in lab.cooldowns()):
+    if address.kind == "name" and address.head in lab.cooldown_names():
         return "cooldown"
     rows = lab.records(name=address.head)
     return rows[0].kind if rows else "record"

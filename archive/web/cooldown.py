@@ -26,6 +26,9 @@ from schemas.quantity import unit_factor
 
 __all__ = ["cooldown"]
 
+_MOST_ROWS = 200
+"""Sweeps in the table; the drawing has all of them, and so has a search."""
+
 
 def cooldown(request: Request, address: Address) -> Response:
     """Answer with the page of a cooldown."""
@@ -43,7 +46,8 @@ def cooldown(request: Request, address: Address) -> Response:
         line=timeline(held.sheet, rows, [_dosed(address.head, each) for each in view.newest.doses]),
         moments=moments_of(held.sheet),
         undated=[each for each in held.sheet.note if each.at is None],
-        rows=rows,
+        rows=rows[:_MOST_ROWS],
+        left_out=max(0, len(rows) - _MOST_ROWS),
         doses=list(dose_lines(held)),
         open=[finding_line("", each) for each in findings if each.severity != "note" and each.waived is None],
         waived=[

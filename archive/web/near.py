@@ -29,7 +29,7 @@ def near(lab: Archive, path: str) -> list[str]:
         return []
     try:
         head, _, item = address.partition("/")
-        names = {*(row.name for row in lab.cooldowns()), *(row.name for row in lab.records())}
+        names = {*lab.cooldown_names(), *(row.name for row in lab.records())}
         if not item or head not in names:
             records = [row.address for row in lab.records()] if "." in head else []
             return _close(head, [*names, *records])

@@ -77,7 +77,7 @@ def search(request: Request) -> Response:
         from_first=_without_after(request),
         suggested=_suggested(lab),
         thumb_path=thumb_path,
-        empty=not rows and problem is None and not lab.statistics()["sweeps"],
+        empty=not rows and problem is None and not lab.cooldown_names(),
     )
 
 

@@ -5,9 +5,15 @@ To add one: a module beside this one with a `BENCHMARK`, and its line in the lis
 
 from __future__ import annotations
 
-from tests.benchmarks import dynamic_curve, picture, plane
+from tests.benchmarks import dynamic_curve, pages, picture, plane
 from tests.benchmarks.harness import Benchmark
 
 __all__ = ["BENCHMARKS"]
 
-BENCHMARKS: tuple[Benchmark, ...] = (dynamic_curve.BENCHMARK, plane.BENCHMARK, picture.FIRST, picture.ZOOM)
+BENCHMARKS: tuple[Benchmark, ...] = (
+    dynamic_curve.BENCHMARK,
+    pages.BENCHMARK,
+    plane.BENCHMARK,
+    picture.FIRST,
+    picture.ZOOM,
+)

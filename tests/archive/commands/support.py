@@ -57,6 +57,7 @@ class FakeArchive:
             "results": lambda name="T_KT": (
                 [SimpleNamespace(name="T_KT", quantity="temperature")] * (name == "T_KT")
             ),
+            "result_quantities": lambda name="T_KT": ["temperature"] * (name == "T_KT"),
             "records": [
                 SimpleNamespace(
                     name="PI-2200",

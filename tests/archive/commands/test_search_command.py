@@ -110,9 +110,10 @@ def test_what_cannot_be_searched_for_is_refused(
 
 def test_a_result_that_is_two_quantities_is_asked_about(run: Run, fake: Fake) -> None:
     fake(
+        result_quantities=["frequency", "temperature"],
         results=[
             SimpleNamespace(name="width", quantity=quantity) for quantity in ("temperature", "frequency")
-        ]
+        ],
     )
     result = run("search", "--result", "width=1:2 K")
     assert result.exit_code == 2

@@ -129,6 +129,18 @@ def test_a_long_list_goes_on(client: TestClient, monkeypatch: pytest.MonkeyPatch
     assert seen == ["s002", "s001"]
 
 
+def test_a_list_of_cooldowns_goes_on(client: TestClient, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("archive.web.cooldowns.ROWS", 1)
+    first = client.get("/cooldowns").text
+    assert re.findall(r'<th scope="row"><a class="address" href="/at/([^"]*)"', first) == [HOSTILE]
+    following = re.search(r'href="([^"]*)">the earlier ones', first)
+    assert following is not None
+    second = client.get(following[1]).text
+    assert re.findall(r'<th scope="row"><a class="address" href="/at/([^"]*)"', second) == [PLAIN]
+    assert "the earlier ones" not in second
+    assert client.get("/cooldowns?after=2020-01").status_code == 400
+
+
 def test_a_picture_of_a_sweep_may_be_kept_as_long_as_it_holds(client: TestClient) -> None:
     page = client.get("/search?cell=TO-1").text
     path = re.findall(r'src="(/thumb/[^"]*)"', page)[1]
