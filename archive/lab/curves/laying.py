@@ -41,8 +41,8 @@ def laid(first: DrawnColumn, other: DrawnColumn) -> Laid:
 
     Examples
     --------
-    >>> P = DrawnColumn("2026-03/s017", "period", "period", "us", "", 3, "")
-    >>> f = DrawnColumn("2025-11/s003", "frequency", "frequency", "Hz", "", 3, "")
+    >>> P = DrawnColumn("2026-03/s017", "period", "period", "us", "", 3, "5f")
+    >>> f = DrawnColumn("2025-11/s003", "frequency", "frequency", "Hz", "", 3, "a0")
     >>> print(laid(P, f).told)
     2025-11/s003#frequency is a frequency, 2026-03/s017#period a period: not laid over.
     """
