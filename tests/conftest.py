@@ -1,8 +1,15 @@
-"""The order of the tests: files that take minutes come first, so that no worker is left alone with one at the end."""
+"""The order of the tests: files that take minutes come first, so that no worker is left alone with one at the end.
+
+No drawn example has a time limit: on a machine that others use, a pause of a second is no fault of the code.
+"""
 
 from __future__ import annotations
 
 import pytest
+from hypothesis import settings
+
+settings.register_profile("shared machine", deadline=None)
+settings.load_profile("shared machine")
 
 LONGEST = (
     "tests/archive/commands/test_demo_command.py",

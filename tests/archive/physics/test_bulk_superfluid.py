@@ -74,7 +74,6 @@ def test_each_pressure_has_its_own_law_and_one_exponent(transition, amplitude):
 
 @pytest.mark.slow
 @pytest.mark.parametrize("fixed", [True, False], ids=["T_lambda held", "T_lambda free"])
-@pytest.mark.no_cover
 def test_uncertainty_is_honest(fixed):
     """200 runs: pulls of every parameter have mean 0 within 4/sqrt(200), width 1 within 4/sqrt(400)."""
     T, f = rows()

@@ -104,7 +104,6 @@ def test_gravity_is_averaged_out():
     [(LAW, False), (LAW, True), (LOGARITHM, False)],
     ids=["law", "law, T_lambda free", "logarithm"],
 )
-@pytest.mark.no_cover
 def test_uncertainty_is_honest(law, free):
     """200 runs of 0.1 per cent: pulls have mean 0 within 4/sqrt(200) and width 1 within 4/sqrt(400)."""
     T, rise, C = steps(law)
