@@ -14,7 +14,7 @@ from archive.intake.cautions import FIXED_TEXT
 from archive.intake.json_schema import THINGS
 from archive.lab import CheckReport, IngestOutcome
 from schemas.finding import Finding, Severity, Waiver
-from tests.archive.commands.support import FakeArchive, child, parsed
+from tests.archive.commands.support import FakeArchive, parsed
 from tests.outside import missing
 from tests.revisable_cooldown import PLAN, amendment, calibration
 
@@ -176,17 +176,21 @@ def test_the_next_command_can_be_pasted_into_a_shell(run: Run, fake: Fake) -> No
     assert "Next: stillroom ingest 'run $(id) 7'" in run("check", "run $(id) 7").stdout
 
 
-def test_draft_writes_once_and_check_leads_on(tmp_path: Path) -> None:
+def test_draft_writes_once_and_check_leads_on(
+    tmp_path: Path, run: Run, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.chdir(tmp_path)
+    monkeypatch.delenv("STILLROOM_ARCHIVE", raising=False)
     (tmp_path / "a.csv").write_text("T (K),P (us)\n0.5,1003.1\n0.6,1003.2\n", encoding="utf-8")
-    first = child("draft", str(tmp_path))
-    assert first.returncode == 0, first.stderr
+    first = run("draft", str(tmp_path))
+    assert first.exit_code == 0, first.stderr
     assert "cooldown.toml is written, with 1 tables described" in first.stdout
     text = (tmp_path / "cooldown.toml").read_text(encoding="utf-8")
-    again = child("draft", str(tmp_path))
-    assert again.returncode == 2
+    again = run("draft", str(tmp_path))
+    assert again.exit_code == 2
     assert "not overwritten" in again.stderr
     assert (tmp_path / "cooldown.toml").read_text(encoding="utf-8") == text
-    checked = child("check", str(tmp_path), folder=tmp_path)
-    assert checked.returncode == 2
+    checked = run("check", str(tmp_path))
+    assert checked.exit_code == 2
     blank = text.splitlines().index('outcome = ""  # to fill in: complete or aborted or open') + 1
     assert f"line {blank}, outcome" in checked.stdout

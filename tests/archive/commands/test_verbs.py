@@ -14,20 +14,24 @@ from archive.lab import ReduceOutcome, ReplayReport
 from archive.reduction.planning import load_plan, shipped_plans
 from archive.reduction.trace import TraceNode
 from archive.store.interface import Damage
-from tests.archive.commands.support import FakeArchive, child, parsed
+from tests.archive.commands.support import FakeArchive, parsed
 
 Run = Callable[..., Result]
 Fake = Callable[..., FakeArchive]
 
 
-def test_init_makes_an_archive_that_the_next_command_finds(tmp_path: Path) -> None:
-    made = child("init", str(tmp_path / "lab"), "--name", "Cold room", "--json")
+def test_init_makes_an_archive_that_the_next_command_finds(
+    tmp_path: Path, run: Run, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    made = run("init", str(tmp_path / "lab"), "--name", "Cold room", "--json")
     assert parsed(made) == {"root": str((tmp_path / "lab").resolve()), "name": "Cold room"}
     (tmp_path / "lab" / "deep").mkdir()
-    found = child("search", folder=tmp_path / "lab" / "deep")
-    assert (found.returncode, found.stdout) == (0, "No sweeps.\n")
-    again = child("init", str(tmp_path / "lab"))
-    assert again.returncode == 2
+    monkeypatch.chdir(tmp_path / "lab" / "deep")
+    monkeypatch.delenv("STILLROOM_ARCHIVE", raising=False)
+    found = run("search")
+    assert (found.exit_code, found.stdout) == (0, "No sweeps.\n")
+    again = run("init", str(tmp_path / "lab"))
+    assert again.exit_code == 2
     assert "archive here already" in again.stderr
 
 
