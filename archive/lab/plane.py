@@ -128,7 +128,7 @@ def _made(
     points = _points(index, bars, axis, seen)
     kept = thinned_points(points, seen, most=most, log=log)
     merged = len(shown) > most
-    lines, in_pores = _lines(index, rows, query, looks, part) if axis == "coverage" else ((), ())
+    lines, in_pores = _lines(index, rows, bars, query, looks, part) if axis == "coverage" else ((), ())
     names = {bar.cell for bar in bars} if axis == "cell" else {bar.cell for bar in shown}
     return PlaneView(
         axis=axis,
@@ -264,12 +264,14 @@ def _marks(withdrawn: bool, empty: int, reduced: bool, stale: bool) -> tuple[str
 def _lines(
     index: Index,
     rows: Sequence[PlaneSweep],
+    bars: Sequence[Bar],
     query: SearchQuery,
     looks: Mapping[str, int],
     part: Window | None,
 ) -> tuple[tuple[Line, ...], tuple[str, ...]]:
     """Lines for the cells whose films are in the picture, and in a part of it for those whose sweeps are beside it, too."""
-    films = {cell_name(row.cell): row.substrate for row in rows if row.coverage is None or row.coverage > 0}
+    filled = {bar.address for bar in bars if bar.top > 0}
+    films = {cell_name(row.cell): row.substrate for row in rows if row.address in filled}
     known = inert_layers(index)
     if part is not None and query.cell is None and query.substrate is None:
         for use in cell_uses(index):

@@ -210,7 +210,7 @@ def _strips(view: PlaneView, x: Place, y: Place, closer: Callable[[Window], str]
             kind="strip",
             shade=mark_and_shade(strip.look)[1],
             box=_box((x(strip.cold), x(strip.warm)), (y(strip.bottom), y(strip.top))),
-            weight=f"{0.2 + 0.6 * strip.count / most:.2f}",
+            weight=f"{0.12 + 0.48 * strip.count / most:.2f}",
         )
 
 

@@ -49,6 +49,9 @@ def test_pointing_tells_and_a_click_opens(page: Page) -> None:
     expect(page.locator(".reading")).to_contain_text("2025-01/s1: temperature-sweep, TO-4; 30.00(50)")
     page.mouse.move(*_place(page, 0.41, 0.5))
     expect(page.locator(".reading")).to_contain_text("film-transition.2#T_KT: 410.0(2.0)")
+    shades = page.evaluate("""() => ["a.bar[href$='/s1'] .ink", "a.point[href*='/s1@'] path"]
+        .map(each => getComputedStyle(document.querySelector(".plane-field " + each)).stroke)""")
+    assert shades[0] == shades[1], "a transition has the shade of its cell"
     page.mouse.click(*_place(page, 0.2, 0.5))
     page.wait_for_url("**/at/2025-01/s1")
 

@@ -105,6 +105,7 @@ def test_each_cell_has_its_line_from_its_own_inert_layer_else_from_zero(source: 
     )
     assert (lines["TO-4"].inert, lines["TO-4"].inert_uncertainty) == pytest.approx((24e-6, 0.4e-6))
     assert (lines["NEW-1"].inert, lines["NEW-1"].source, lines["NEW-1"].look) == (0.0, None, None)
+    assert set(lines) == {"TO-4", "NEW-1"}, "no other cell has a film in the picture"
     assert view.in_pores == ("PG-2",)
     assert "PG-2" not in lines
     third_sound = {line.cell: line for line in plane(source, SearchQuery()).lines}["TS-1"]
