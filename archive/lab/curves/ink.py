@@ -1,6 +1,6 @@
 """Colours and marks of curves, for light paper and dark; told apart by mark and line in grey.
 
-Colours are those of the appendix's figures and of the style sheet of the pages (`--look-0` to `--look-6`, the grey one last);
+Colours are those of the appendix's figures and of the style sheet of the pages (`--look-0` to `--look-6`);
 on dark paper each has a lighter one of its hue. Each is at least 4.5 to 1 against
 its paper (WCAG 2.2, success criterion 1.4.3), which `tests/archive/lab/curves/test_picture.py` works out.
 """
@@ -36,8 +36,8 @@ class Ink:
 INKS: Final[dict[InkName, Ink]] = {
     "light": Ink("#fdfcf8", "#1c1b19", "#dad5c8",
                  ("#000000", "#0b5394", "#a61c00", "#38761d", "#674ea7", "#7f6000", "#444444")),
-    "dark": Ink("#171817", "#e8e4da", "#3a3833",
-                ("#f0ece2", "#8fbbe8", "#ff9d86", "#93cf77", "#c3aef0", "#d9b95c", "#b9b4a8")),
+    "dark": Ink("#16181a", "#e8e4da", "#3a3833",
+                ("#f4f2ec", "#8ab4e8", "#f0957f", "#93c47d", "#b4a7d6", "#d9b84a", "#b0b0b0")),
 }  # fmt: skip
 
 LOOKS: Final[tuple[tuple[str, str], ...]] = (

@@ -3,11 +3,10 @@
 
 const MARKS = ["circle", "triangle", "down", "diamond", "cross", "plus", "square"];
 const DASHES = [[], [9, 3, 2, 3], [2, 3], [12, 3], [5, 2], [9, 2, 2, 2, 2, 2], [7, 3]];
-const ORDER = [0, 2, 3, 4, 5, 6, 1]; // the grey of the style sheet comes last
 const MOST_MARKS = 400, MOST_BARS = 120, WAIT_MS = 90;
 
 const style = name => getComputedStyle(document.documentElement).getPropertyValue(name).trim();
-const colour = look => style(`--look-${ORDER[look % ORDER.length]}`);
+const colour = look => style(`--look-${look % MARKS.length}`);
 
 function digits(step) {
   return Math.min(12, Math.max(0, -Math.floor(Math.log10(step) + 1e-9)));

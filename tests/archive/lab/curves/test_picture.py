@@ -2,7 +2,10 @@
 
 from __future__ import annotations
 
+import json
+import re
 import xml.etree.ElementTree as ET
+from importlib.resources import files
 
 import pytest
 
@@ -32,6 +35,26 @@ def test_every_curve_and_letter_stands_out_from_its_paper(ink: str) -> None:
     for each in (colours.text, *colours.curves):
         assert _contrast(each, colours.paper) >= 4.5, each
     assert len(colours.curves) == len(LOOKS) == len(set(LOOKS)) == len({mark for mark, _ in LOOKS})
+
+
+def test_pictures_and_pages_have_the_same_colours() -> None:
+    """The style sheet names those of light paper first, then those of dark; a script reads them there."""
+    sheet = files("templates").joinpath("web", "style", "stillroom.css").read_text(encoding="utf-8")
+    for ink, colours in INKS.items():
+        part = sheet[sheet.index("prefers-color-scheme: dark") if ink == "dark" else 0 :]
+        looks = [re.search(rf"--look-{number}: (#[0-9a-f]{{6}})", part)[1] for number in range(len(LOOKS))]
+        assert tuple(looks) == colours.curves
+        assert [re.search(rf"--{name}: (#[0-9a-f]{{6}})", part)[1] for name in ("paper", "ink")] == [
+            colours.paper,
+            colours.text,
+        ]
+
+
+def test_a_script_knows_the_marks_and_dashes() -> None:
+    script = files("templates").joinpath("web", "scripts", "chart.js").read_text(encoding="utf-8")
+    marks = json.loads(re.search(r"MARKS = (\[.*?\]);", script)[1])
+    dashes = json.loads(re.search(r"DASHES = (\[.*\]);", script)[1])
+    assert [(mark, " ".join(map(str, dash))) for mark, dash in zip(marks, dashes, strict=True)] == list(LOOKS)
 
 
 def test_a_picture_is_plain_svg_of_the_size_that_was_said(lab: Archive) -> None:
