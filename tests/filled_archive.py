@@ -5,7 +5,7 @@ from __future__ import annotations
 from pathlib import Path
 
 from archive import Archive
-from tests.fuzz.hostile import hostile_folder
+from tests.fuzz.hostile import EVIL, hostile_folder
 from tests.small_cooldown import write_folder
 
 __all__ = ["HOSTILE", "NAME", "PLAIN", "filled"]
@@ -23,6 +23,7 @@ def filled(folder: Path) -> Path:
         lab.ingest(_plain(folder / PLAIN))
         lab.reduce(PLAIN)
         lab.ingest(hostile_folder(folder / HOSTILE))
+        lab.withdraw(f"{HOSTILE}/s001", why=EVIL, by=EVIL)
         return lab.root
 
 

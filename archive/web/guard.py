@@ -131,7 +131,7 @@ def _with_headers(send: Send) -> Send:
             headers = MutableHeaders(scope=message)
             for name, value in HEADERS.items():
                 headers[name] = value
-            headers.setdefault("Cache-Control", "no-cache")
+            headers.setdefault("Cache-Control", "private, no-cache")
         await send(message)
 
     return guarded

@@ -211,3 +211,51 @@ def test_a_busy_index_says_when_to_come_again(client: TestClient, monkeypatch: p
     answer = client.get("/cooldowns")
     assert (answer.status_code, answer.headers["retry-after"]) == (503, "5")
     assert "in a moment" in answer.text
+
+
+@pytest.mark.parametrize(
+    "begin",
+    [
+        "/at/",
+        "/thumb/",
+        "/run-sheet/",
+        "/style/0/",
+        "/to?address=",
+        "/search?words=",
+        "/search?coverage=",
+        "/search?result=",
+        "/search?since=",
+        "/search?after=",
+        "/cooldowns?after=",
+        "/search?",
+    ],
+)
+def test_nothing_that_is_asked_is_a_fault_of_ours(client: TestClient, begin: str) -> None:
+    for end in (
+        "%00",
+        "%ff%fe",
+        "%ed%a0%80",
+        "..%2f..%2f",
+        "%0d%0aSet-Cookie:x",
+        "a" * 3000,
+        "%25s%7B%7B7*7%7D%7D",
+        "'%20OR%201=1--",
+        "1:2:3",
+        "9e999:%20K",
+        ":%20:",
+        "=",
+        "%5B",
+        "2025-11/s001@x.9/y",
+    ):
+        answer = client.get(begin + end)
+        assert answer.status_code < 500, begin + end
+        assert "set-cookie" not in answer.headers
+
+
+def test_what_was_said_afterwards_is_told(client: TestClient) -> None:
+    text = client.get(f"/at/{HOSTILE}").text
+    assert "Said after it was sealed" in text
+    assert f"<b>{HOSTILE}/s001 is withdrawn:</b>" in text
+    assert "withdrawn: =HYPERLINK(" in text
+    assert f'href="/at/{HOSTILE}/s001"' not in client.get("/search?cell=bob").text
+    assert f'href="/at/{HOSTILE}/s001"' in client.get("/search?cell=bob&withdrawn=true").text
