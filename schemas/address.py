@@ -35,7 +35,7 @@ _PATTERN = re.compile(
       | \.w(?P<withdrawal>[1-9][0-9]{{0,5}})
       | \.r(?P<revision>[1-9][0-9]{{0,5}})(?:\.w(?P<taken_back>[1-9][0-9]{{0,5}}))?
       | /(?P<item>{_NAME})(?:@(?P<plan>{_NAME})\.(?P<number>[1-9][0-9]{{0,5}}))?(?:\#(?P<part>[A-Za-z0-9_][A-Za-z0-9_.-]{{0,99}}))?
-    )?$""",
+    )?\Z""",
     re.VERBOSE,
 )
 

@@ -17,7 +17,7 @@ __all__ = ["Cited", "is_mark", "parts_of", "sources_of_figure", "sources_of_mark
 _LISTING = "appendix.json"
 _LARGEST = 100_000_000  # bytes; that of sixty-seven reductions has two million
 _CITED = re.compile(r"^\s*%\s*[A-Za-z]+[0-9]*\s*\|\s*")
-_MARK = re.compile(r"^(?P<folder>.*)#(?P<mark>[sf][1-9][0-9]{0,5})$", re.DOTALL)
+_MARK = re.compile(r"^(?P<folder>.*)#(?P<mark>[sf][1-9][0-9]{0,5})\Z", re.DOTALL)
 
 
 @dataclass(frozen=True)

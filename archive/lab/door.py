@@ -763,6 +763,10 @@ class Archive:
         progress: Callable[[int, int, str], None] = _uncounted,
     ) -> exchanging.ExportOutcome:
         """Write a package of some addresses, or of the whole archive when none is named, with all that they rest on."""
+        if self.root in (place := Path(target).resolve(), *place.parents):
+            raise BadRequest(
+                "a package cannot lie in the archive itself", file=str(target), remedy="name another folder"
+            )
         outcome = exchanging.export(
             self._source, self._store, addresses, Path(target), deposit=self.settings.exchange, archive_name=self.name,
             software=f"Stillroom {software().stillroom}", now=self._clock(), reports=reports, appendix=appendix, progress=progress,

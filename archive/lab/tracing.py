@@ -23,8 +23,8 @@ from schemas.lineage import AccessionDocument, RawFileEntry
 
 __all__ = ["backward"]
 
-_STEP = re.compile(r"^(?P<reduction>\S+@\S+?) step (?P<number>[1-9][0-9]{0,3})$")
-_NAME = re.compile(r"^[A-Za-z0-9][A-Za-z0-9_-]{0,63}$")
+_STEP = re.compile(r"^(?P<reduction>\S+@\S+?) step (?P<number>[1-9][0-9]{0,3})\Z")
+_NAME = re.compile(r"^[A-Za-z0-9][A-Za-z0-9_-]{0,63}\Z")
 _ACCESSION = re.compile(r"\.a[1-9][0-9]*$")
 
 

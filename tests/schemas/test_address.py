@@ -34,7 +34,17 @@ def test_an_address_names_its_thing(
 
 @pytest.mark.parametrize(
     "text",
-    ["2026-03.m0", "2026-03.w", "2026-03.m1.w1", "RX-2-cal.w1.r2", "RX-2-cal.r2.m1", "2026-03/s1.m1", ".m1"],
+    [
+        "2026-03.m0",
+        "2026-03.w",
+        "2026-03.m1.w1",
+        "RX-2-cal.w1.r2",
+        "RX-2-cal.r2.m1",
+        "2026-03/s1.m1",
+        ".m1",
+        "2026-03\n",
+        "2026-03/s1#T\n",
+    ],
 )
 def test_what_is_no_address_is_refused(text: str) -> None:
     with pytest.raises(ValueError, match="is no address"):

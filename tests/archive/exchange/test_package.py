@@ -381,6 +381,13 @@ def test_what_is_not_there_cannot_be_exported(
     assert list(tmp_path.iterdir()) == []
 
 
+def test_a_package_is_not_written_into_the_archive(lab: Archive) -> None:
+    for place in (lab.root, lab.root / "sealed" / "x"):
+        with pytest.raises(BadRequest, match="cannot lie in the archive itself"):
+            lab.export(["2026-03"], place, reports=False)
+    assert lab.fixity() == []
+
+
 def test_an_empty_archive_has_nothing_to_export(other: Make, tmp_path: Path) -> None:
     with pytest.raises(BadRequest, match="empty"):
         other().export([], tmp_path / "p")
