@@ -12,6 +12,7 @@ Rules
 from __future__ import annotations
 
 import os
+import shutil
 import sqlite3
 from collections.abc import Iterator
 from contextlib import contextmanager
@@ -30,9 +31,11 @@ __all__ = [
     "WAIT_SECONDS",
     "connected",
     "engine_of",
+    "for_reading_only",
     "index_name",
     "index_url",
     "reading",
+    "sqlite_address",
     "translated",
     "writing",
 ]
@@ -91,6 +94,9 @@ def index_name(url: URL) -> str:
     return url.render_as_string(hide_password=True)
 
 
+_ROOM = 1 << 16  # bytes: the log's index takes 32 KiB, and its first pages as much
+
+
 def engine_of(url: URL, *, read_only: bool, new: bool = False, wait: float = WAIT_SECONDS) -> Engine:
     """Return an engine with the rules of this module.
 
@@ -120,8 +126,8 @@ def _sqlite(url: URL, *, mode: str, wait: float) -> Engine:
             os.close(os.open(path, os.O_RDWR | os.O_CREAT, 0o666))
         elif not path.exists():
             raise MissingFile("the index is not there", file=str(path), remedy=REBUILD)
-        how = f"?mode={mode}" + ("&immutable=1" if mode == "ro" and _at_rest_and_out_of_reach(path) else "")
-        return sqlite3.connect(path.as_uri() + how, uri=True, timeout=wait, check_same_thread=False)
+        address = sqlite_address(path, mode=mode)
+        return sqlite3.connect(address, uri=True, timeout=wait, check_same_thread=False)
 
     engine = create_engine(
         "sqlite+pysqlite://", creator=connection_to_file, poolclass=NullPool if mode == "ro" else QueuePool
@@ -144,9 +150,19 @@ def _sqlite(url: URL, *, mode: str, wait: float) -> Engine:
     return engine
 
 
-def _at_rest_and_out_of_reach(path: Path) -> bool:
+def sqlite_address(path: Path, *, mode: str) -> str:
+    """Return the address by which SQLite opens a file; what may only be read is opened as it lies there."""
+    return path.as_uri() + f"?mode={mode}" + ("&immutable=1" if mode == "ro" and _at_rest(path) else "")
+
+
+def for_reading_only(folder: Path) -> bool:
+    """Whether an SQLite file in a folder can only be read: no right to write there, or no room for the log's own index."""
+    return not os.access(folder, os.W_OK) or shutil.disk_usage(folder).free < _ROOM
+
+
+def _at_rest(path: Path) -> bool:
     """Return whether nobody writes to a file, in a folder where this process could not lay the log's own index."""
-    return not path.with_name(f"{path.name}-wal").exists() and not os.access(path.parent, os.W_OK)
+    return not path.with_name(f"{path.name}-wal").exists() and for_reading_only(path.parent)
 
 
 def _postgresql(url: URL, *, read_only: bool, wait: float) -> Engine:
@@ -267,4 +283,5 @@ def _refusal(said: str, low: str, state: str, name: str) -> ArchiveError:
             file=name,
             remedy="ask the owner of the index for the role stillroom_writer; see: stillroom roles",
         )
-    return ArchiveError(f"the database of the index refused ({said})", file=name)
+    remedy = "see whether the disk is full or failing, then try again" if "disk i/o error" in low else None
+    return ArchiveError(f"the database of the index refused ({said})", file=name, remedy=remedy)

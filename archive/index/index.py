@@ -41,9 +41,11 @@ from archive.index.engine import (
     REBUILD,
     WAIT_SECONDS,
     engine_of,
+    for_reading_only,
     index_name,
     index_url,
     reading,
+    sqlite_address,
     translated,
     writing,
 )
@@ -181,11 +183,13 @@ class Index:
         """
         if self._url.get_backend_name() != "sqlite":
             return False
+        file = Path(str(self._url.database)).absolute()
+        mode = "ro" if for_reading_only(file.parent) else "rw"
         path.touch(mode=0o666)  # SQLite itself would leave the group out, whatever the umask says
         # SQLite's own copy holds what still stands in the write-ahead log; a copy of the file alone would not.
         with (
             translated(self._url),
-            closing(sqlite3.connect(str(self._url.database))) as source,
+            closing(sqlite3.connect(sqlite_address(file, mode=mode), uri=True)) as source,
             closing(sqlite3.connect(path)) as target,
         ):
             source.backup(target)

@@ -32,6 +32,7 @@ from archive.index import (
     WithdrawalRow,
 )
 from archive.index.acts import ActDocument
+from archive.index.engine import for_reading_only
 from archive.intake import ingest as intake_ingest
 from archive.intake.examine import examined
 from archive.intake.settings import SETTINGS_NAME, Settings, read_settings, settings_text
@@ -210,7 +211,8 @@ class Archive:
         root = find_root(None if start is None else Path(start))
         settings = read_settings(root)
         # A copy on a read-only medium, or another person's archive, can be read all the same.
-        index = Index.open(settings.index_address(root), read_only=read_only or not os.access(root, os.W_OK))
+        # So it can when the disk is full: whoever only looks is not kept out by that.
+        index = Index.open(settings.index_address(root), read_only=read_only or for_reading_only(root))
         archive = cls(root, settings, open_store(root), index, clock)
         try:
             if not read_only:

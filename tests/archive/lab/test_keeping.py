@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
+import sqlite3
+from collections import namedtuple
 from collections.abc import Callable, Iterator
 from itertools import count
 from pathlib import Path
+from typing import Any
 
 import pytest
 
@@ -106,6 +109,33 @@ def test_damage_is_not_mirrored_and_damage_of_a_mirror_is_told(lab: Archive, tmp
     assert ACCESSION not in {each.key for each in lab.mirror(tmp_path / "vault").damage}
     told = lab.mirror(tmp_path / "vault", thorough=True).damage
     assert {each.key for each in told} == {ACCESSION, REDUCTION}
+
+
+def test_on_a_full_disk_everything_is_read_and_mirrored_elsewhere(
+    lab: Archive, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """SQLite lays an index of its log beside a file that it opens for writing; where no room is left it refuses even to read."""
+    lab.close()
+    full = namedtuple("full", "total used free")(1 << 30, 1 << 30, 0)
+    monkeypatch.setattr("archive.index.engine.shutil.disk_usage", lambda folder: full)
+    opened: list[str] = []
+    connect = sqlite3.connect
+
+    def noted(address: object, *arguments: Any, **options: Any) -> sqlite3.Connection:
+        opened.append(str(address))
+        return connect(address, *arguments, **options)  # type: ignore[arg-type]
+
+    monkeypatch.setattr("archive.index.engine.sqlite3.connect", noted)
+    with Archive.open(lab.root) as full_lab:
+        assert full_lab.fixity() == []
+        assert len(full_lab.results()) > 0
+        full_lab.mirror(tmp_path / "vault")
+    of_the_archive = [each for each in opened if f"{lab.root}/" in each]
+    assert of_the_archive
+    assert all(each.endswith("?mode=ro&immutable=1") for each in of_the_archive)
+    monkeypatch.undo()
+    with Archive.open(tmp_path / "vault") as copy:
+        assert copy.fixity() == []
 
 
 @pytest.mark.parametrize("name", ["sealed", "sealed/2026-03"])
