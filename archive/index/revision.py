@@ -18,7 +18,7 @@ from typing import TYPE_CHECKING
 from sqlalchemy import Column, Connection, Engine, MetaData, Table, Text, inspect, select, text
 from sqlalchemy.engine import URL
 
-from archive.errors import ArchiveError, BadRequest, MissingFile
+from archive.errors import ArchiveBusy, ArchiveError, BadRequest, DamagedFile, MissingFile
 from archive.index.engine import REBUILD, connected, index_name, reading, translated
 
 if TYPE_CHECKING:
@@ -107,22 +107,10 @@ def migration_config(connection: Connection | None = None) -> Config:
 
 
 def upgrade(connection: Connection, to: str = "head") -> None:
-    """Make or raise the tables, inside the transaction of a connection.
-
-    Raises
-    ------
-    ArchiveError
-        If a migration cannot be carried out; the transaction must then be rolled back.
-    """
+    """Make or raise the tables, inside the transaction of a connection, which must be rolled back if it raises."""
     from alembic import command
-    from alembic.util import CommandError
 
-    try:
-        command.upgrade(migration_config(connection), to)
-    except CommandError as fault:
-        raise ArchiveError(
-            f"the tables of the index could not be raised to revision {to} ({fault})"
-        ) from fault
+    command.upgrade(migration_config(connection), to)
 
 
 def make(engine: Engine, url: URL) -> None:
@@ -164,14 +152,55 @@ def raise_to_head(engine: Engine, url: URL, *, read_only: bool) -> None:
             file=name,
             remedy="open it once for writing; it is then raised, and a copy of the old one kept",
         )
-    if url.get_backend_name() == "sqlite":
-        with translated(url):
-            _copied_beside(Path(name), revision=revision)
-    with connected(engine, url, writes=True) as connection:
-        if connection.dialect.name == "postgresql":
-            # A second program that wants to raise the tables waits here, and then finds nothing left to do.
-            connection.execute(text("LOCK TABLE alembic_version IN SHARE ROW EXCLUSIVE MODE"))
+    # Whatever a migration raises is told by this program, as what it means to the index.
+    try:
+        with connected(engine, url, writes=True) as connection:
+            _raised(connection, url, name=name)
+    except ArchiveBusy:
+        raise
+    except Exception as fault:
+        raise _not_raised(fault, revision=revision, name=name) from fault
+
+
+def _raised(connection: Connection, url: URL, *, name: str) -> None:
+    """Raise older tables inside the one writing transaction; a copy is kept if it comes to its end."""
+    if connection.dialect.name == "postgresql":
+        # A second program that wants to raise the tables waits here, and then finds nothing left to do.
+        connection.execute(text("LOCK TABLE alembic_version IN SHARE ROW EXCLUSIVE MODE"))
+    revision = _revision_of(connection, name=name)
+    if not _is_older(revision, name=name):
+        return
+    if connection.dialect.name != "sqlite":
         upgrade(connection)
+        return
+    with translated(url):
+        copy = _copied_beside(Path(name), revision=revision)
+    try:
+        upgrade(connection)
+    except BaseException:
+        copy.unlink()  # the index itself is still the old one
+        raise
+
+
+def _not_raised(fault: Exception, *, revision: str, name: str) -> ArchiveError:
+    """Return what it means to the index that its tables could not be raised."""
+    remedy = (
+        "go on with the Stillroom that wrote it; or move the index away, with the files whose names begin as its own, and "
+        "make it anew from the sealed files: stillroom rebuild-index"
+    )
+    said = (str(fault).strip().splitlines() or [type(fault).__name__])[0]
+    if isinstance(fault, ArchiveError):
+        said = fault.what
+        # A full disk or a missing right is mended and tried again; a table that is missing to a migration is not.
+        if not isinstance(fault, MissingFile | DamagedFile) and fault.remedy is not None:
+            remedy = fault.remedy
+    elif isinstance(fault, OSError) and fault.strerror:
+        said, remedy = fault.strerror, "make room or mend the disk, and open the archive again"
+    return ArchiveError(
+        f"the tables of the index could not be raised from revision {revision} to {HEAD}, and are as they were ({said})",
+        file=name,
+        remedy=remedy,
+    )
 
 
 def _copied_beside(path: Path, *, revision: str) -> Path:
@@ -180,19 +209,21 @@ def _copied_beside(path: Path, *, revision: str) -> Path:
     Parameters
     ----------
     path : Path
-        The index.
+        The index; the caller is the one who writes to it.
     revision : str
         Revision it has now.
     """
-    for attempt in count(1):
-        copy = path.with_name(f"{path.name}.before-{revision}" + (f".{attempt}" if attempt > 1 else ""))
-        try:
-            # Two programs may raise one index at once; each takes a name of its own.
-            copy.touch(exist_ok=False)
-        except FileExistsError:
-            continue
-        break
+    # Under a name of its own until it is whole; what lies there was left by a program that was stopped.
+    staged = path.with_name(f"{path.name}.before-{revision}.partial")
+    for suffix in ("", "-journal"):
+        staged.with_name(staged.name + suffix).unlink(missing_ok=True)
+    staged.touch(mode=0o666)  # SQLite itself would leave the group out, whatever the umask says
     # SQLite's own copy holds what still stands in the write-ahead log; a copy of the file alone would not.
-    with closing(sqlite3.connect(path)) as source, closing(sqlite3.connect(copy)) as target:
+    with closing(sqlite3.connect(path)) as source, closing(sqlite3.connect(staged)) as target:
         source.backup(target)
-    return copy
+    free = (
+        path.with_name(f"{path.name}.before-{revision}" + (f".{attempt}" if attempt > 1 else ""))
+        for attempt in count(1)
+    )
+    copy = next(each for each in free if not each.exists())
+    return staged.rename(copy)
