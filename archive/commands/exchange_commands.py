@@ -117,6 +117,8 @@ def export(
             addresses, target, reports=not without_reports, appendix=appendix, progress=progress.count
         )
         opening.say_notices(lab)
+    for sentence in outcome.swept:
+        note(f"note: {sentence}")
     if as_json:
         write_json(
             {

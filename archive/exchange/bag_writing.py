@@ -15,6 +15,7 @@ References
 from __future__ import annotations
 
 import hashlib
+import re
 import secrets
 import shutil
 from collections.abc import Iterable, Iterator, Mapping, Sequence
@@ -32,6 +33,8 @@ __all__ = ["ALGORITHMS", "BagWriter", "new_bag"]
 ALGORITHMS = ("sha256", "sha512")
 _DECLARATION = "BagIt-Version: 1.0\nTag-File-Character-Encoding: UTF-8\n"
 _BLOCK = 1 << 20
+_UNFINISHED = re.compile(r"\..{1,100}\.[0-9a-f]{8}\.partial")
+_PART = re.compile(r"data|bagit\.txt|bag-info\.txt|(?:tag)?manifest-sha(?:256|512)\.txt")
 
 
 @contextmanager
@@ -56,17 +59,37 @@ def new_bag(target: Path) -> Iterator[BagWriter]:
         raise BadRequest(
             "this name is taken", file=str(target), expected="a new or an empty folder", remedy="name another"
         )
-    beside = target.parent / f".{target.name[:100]}.{secrets.token_hex(4)}.partial"
+    swept = _swept(target.parent)
     try:
-        beside.mkdir()
+        with durable.folder_in_hand(
+            lambda: target.parent / f".{target.name[:100]}.{secrets.token_hex(4)}.partial"
+        ) as beside:
+            try:
+                yield BagWriter(beside, target, swept)
+            finally:
+                shutil.rmtree(beside, ignore_errors=True)  # after finishing, nothing of that name is left
     except OSError as error:
         raise _unwritable(target, error) from error
-    try:
-        yield BagWriter(beside, target)
-    except OSError as error:
-        raise _unwritable(target, error) from error
-    finally:
-        shutil.rmtree(beside, ignore_errors=True)  # after finishing, nothing of that name is left
+
+
+def _swept(folder: Path) -> tuple[str, ...]:
+    """Remove what writers of bags left in a folder that were stopped, and return a sentence about each."""
+    return tuple(
+        sentence for path in sorted(folder.glob(".*.partial")) if (sentence := _removed(path)) is not None
+    )
+
+
+def _removed(path: Path) -> str | None:
+    if not _UNFINISHED.fullmatch(path.name) or path.is_symlink() or not path.is_dir():
+        return None
+    with durable.unheld(path) as left:
+        # Named as only an unfinished bag is, and with nothing in it but the parts of one.
+        if not left or any(not _PART.fullmatch(each.name) for each in path.iterdir()):
+            return None
+        number = sum(each.is_file() for each in path.rglob("*"))
+        shutil.rmtree(path, ignore_errors=True)
+    what = "could not be removed; remove it by hand" if path.exists() else "was removed"
+    return f"{path}: the writing of a package had not finished; what there was of it (files: {number}) {what}"
 
 
 def _unwritable(target: Path, error: OSError) -> ArchiveError:
@@ -87,10 +110,13 @@ class BagWriter:
         Where it lies while it is written.
     target : Path
         Where it is to stand.
+    swept : tuple of str
+        What writers that were stopped had left beside it, as sentences.
     """
 
     folder: Path
     target: Path
+    swept: tuple[str, ...] = ()
     _payload: dict[str, tuple[int, dict[str, str]]] = field(default_factory=dict)
 
     @property

@@ -50,8 +50,8 @@ def packed(
     raw: Callable[[str, str], Iterator[bytes]],
     reports: Mapping[str, bytes],
     progress: Callable[[int, int, str], None],
-) -> tuple[About, int, int]:
-    """Return what was packed into a new bag at `target`: what it is about, its bytes, its number of files.
+) -> tuple[About, int, int, tuple[str, ...]]:
+    """Return what was packed into a new bag at `target`: what it is about, its bytes and number of files, and what was swept.
 
     Parameters
     ----------
@@ -103,4 +103,4 @@ def packed(
                 ("Bag-Software-Agent", origin.software),
             ]
         )
-    return told, size, number
+    return told, size, number, bag.swept

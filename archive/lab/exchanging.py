@@ -64,6 +64,8 @@ class ExportOutcome:
         What is not stated and therefore not in it, each with the place where it can be stated.
     sha256 : str
         Digest of its `manifest-sha256.txt`, which holds that of every file of the payload; the journal keeps it.
+    swept : tuple of str
+        What an export that was stopped had left beside it and was removed, as sentences.
     """
 
     path: Path
@@ -73,6 +75,7 @@ class ExportOutcome:
     number: int
     missing: tuple[str, ...] = ()
     sha256: str = ""
+    swept: tuple[str, ...] = ()
 
     @property
     def also(self) -> dict[str, str]:
@@ -177,7 +180,7 @@ def export(
     sealed = _sealed(source, asked, whole=not asked)
     if not sealed:
         raise BadRequest("this archive is empty; there is nothing to export")
-    about, size, number = packed(
+    about, size, number, swept = packed(
         target,
         asked,
         sealed,
@@ -191,7 +194,7 @@ def export(
     )
     files = {each.address: each.because for each in sealed}
     sha256 = hashlib.sha256((target / "manifest-sha256.txt").read_bytes()).hexdigest()
-    return ExportOutcome(target, tuple(asked), files, size, number, about.missing, sha256)
+    return ExportOutcome(target, tuple(asked), files, size, number, about.missing, sha256, swept)
 
 
 def _reports(

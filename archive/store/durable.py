@@ -30,7 +30,7 @@ import os
 import secrets
 import sys
 import time
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from pathlib import Path
 
 from archive.errors import AlreadySealed, ArchiveBusy, ArchiveError, BadRequest
@@ -47,6 +47,7 @@ __all__ = [
     "archive_lock",
     "discard",
     "file_digest",
+    "folder_in_hand",
     "holds_lock",
     "make_folder",
     "put_in_place",
@@ -58,6 +59,7 @@ __all__ = [
     "take_folder_name",
     "take_name",
     "take_place",
+    "unheld",
     "write_whole",
 ]
 
@@ -226,6 +228,7 @@ def write_whole(path: Path, content: bytes, *, replace: bool = False) -> None:
             stream.write(content)
             stream.flush()
             _sync(stream.fileno())
+        _require_kept(staged, content)
         if replace:
             os.replace(staged, path)  # noqa: PTH105 - as above
         else:
@@ -244,6 +247,11 @@ def write_whole(path: Path, content: bytes, *, replace: bool = False) -> None:
     finally:
         with contextlib.suppress(OSError):  # where it could not be made, it cannot be removed either
             discard(staged)
+
+
+def _require_kept(staged: Path, content: bytes) -> None:
+    if staged.read_bytes() != content:
+        raise OSError(errno.EIO, "the disk gave back other bytes than it was given")
 
 
 def append_lines(path: Path, content: bytes, *, cut: int = 0) -> None:
@@ -482,6 +490,65 @@ def _holder(path: Path) -> str:
         stream.seek(1)
         text = stream.read(200).decode("utf-8", "replace").strip()
     return text or "a process that did not say which"
+
+
+@contextlib.contextmanager
+def folder_in_hand(name: Callable[[], Path]) -> Iterator[Path]:
+    """Return a context with a new folder that is held as long as its maker lives, so that `unheld` knows one that was left.
+
+    Parameters
+    ----------
+    name : callable
+        Gives a free name, another one each time.
+    """
+    while True:
+        folder = name()
+        os.mkdir(folder)  # noqa: PTH102 - as above
+        with _waited_for(folder):
+            if folder.is_dir():  # whoever sweeps may have been there between the two
+                yield folder
+                return
+
+
+@contextlib.contextmanager
+def _waited_for(folder: Path) -> Iterator[None]:
+    if sys.platform == "win32":  # pragma: no cover - the other system
+        yield
+        return
+    try:
+        descriptor = os.open(folder, os.O_RDONLY)
+    except FileNotFoundError:
+        yield
+        return
+    try:
+        with contextlib.suppress(
+            OSError
+        ):  # some network shares know no lock on a folder; nothing is swept there
+            fcntl.flock(descriptor, fcntl.LOCK_EX)
+        yield
+    finally:
+        os.close(descriptor)
+
+
+@contextlib.contextmanager
+def unheld(folder: Path) -> Iterator[bool]:
+    """Return a context that yields whether the maker of a folder is gone; False where that cannot be told."""
+    if sys.platform == "win32":  # pragma: no cover - the other system
+        yield False
+        return
+    try:
+        descriptor = os.open(folder, os.O_RDONLY)
+    except OSError:
+        yield False
+        return
+    try:
+        try:
+            free = _locked(descriptor)
+        except OSError:
+            free = False
+        yield free
+    finally:
+        os.close(descriptor)
 
 
 def _release_in_child() -> None:

@@ -1,27 +1,18 @@
-"""An import that is stopped anywhere is in the archive whole or has left no trace; an export leaves no half package."""
+"""The plan by which an import gives names, full disks, and what an export leaves that was stopped; all other points: `test_stopped.py`."""
 
 from __future__ import annotations
 
 import shutil
-from collections.abc import Callable, Sequence
+from collections.abc import Callable
 from pathlib import Path
 
 import pytest
 
 from archive import Archive
-from archive.index import Index
-from archive.store import Damage, SealedFile, archive_lock, durable, examine, open_store, staging
+from archive.exchange.bag_writing import new_bag
+from archive.store import archive_lock, durable, open_store, staging
 from tests.crash import faults
 from tests.small_cooldown import write_folder
-
-CHILD = """
-from pathlib import Path
-from archive import Archive
-lab = Archive.open(Path(sys.argv[1]))
-with faults.faulty(int(sys.argv[3]), faults.by_exit):
-    lab.import_package(Path(sys.argv[2]))
-"""
-ALL = ["2026-03.a1", "2026-03/s001@empty-cell.1"]
 
 
 @pytest.fixture(scope="module")
@@ -34,123 +25,6 @@ def places(tmp_path_factory: pytest.TempPathFactory) -> tuple[Path, Path, Path]:
         lab.export(["2026-03"], folder / "package", reports=False)
     Archive.create(folder / "empty").close()
     return folder / "lab", folder / "package", folder / "empty"
-
-
-@pytest.fixture(autouse=True)
-def in_this_process(monkeypatch: pytest.MonkeyPatch) -> None:
-    """Let files be read in this process; what stops here is durable calls, not reading."""
-
-    def read(files: Sequence[tuple[Path, SealedFile]]) -> list[Damage]:
-        return [damage for path, sealed in files for damage in examine._inside(path, sealed.key)]
-
-    monkeypatch.setattr("archive.store.adopting.examined_apart", read)
-    monkeypatch.setattr(examine, "_inside_apart", lambda path, key, size: examine._inside(path, key))
-
-
-def assert_sound(lab: Archive) -> int:
-    """See that every recorded file is there, byte for byte, and nothing else; return how many there are."""
-    recorded = lab._index.sealed_files()
-    assert sorted(recorded) == lab._store.keys()
-    assert [
-        damage for key, (sha256, _) in recorded.items() for damage in lab._store.verify(key, sha256)
-    ] == []
-    assert lab._store.strays() == []
-    return len(recorded)
-
-
-def assert_all_or_nothing(root: Path, package: Path) -> str:
-    """Open, look, try again, and look again; return what the second try was."""
-    with Archive.open(root) as lab:
-        held = assert_sound(lab)
-        assert held in (0, len(ALL))
-        outcome = lab.import_package(package)
-        assert outcome.state == ("already" if held else "imported")
-        assert sorted(outcome.held or outcome.taken) == ALL
-        assert assert_sound(lab) == len(ALL)
-        return outcome.state
-
-
-def test_an_import_stopped_by_an_exception_at_every_durable_call(
-    places: tuple[Path, Path, Path], tmp_path: Path
-) -> None:
-    _, package, empty = places
-    with Archive.open(shutil.copytree(empty, tmp_path / "count")) as lab, faults.faulty(None) as calls:
-        lab.import_package(package)
-    assert len(calls) >= 15
-    ended = []
-    for stop_at in range(1, len(calls) + 1):
-        root = shutil.copytree(empty, tmp_path / f"exception-{stop_at}")
-        with (
-            Archive.open(root) as lab,
-            pytest.raises(faults.StoppedError),
-            faults.faulty(stop_at, faults.by_exception),
-        ):
-            lab.import_package(package)
-        ended.append(assert_all_or_nothing(root, package))
-    # Before the plan of the names is on disk nothing stays, from then on everything; never in turns.
-    assert ended == sorted(ended, key=["imported", "already"].index)
-    assert set(ended) == {"imported", "already"}
-
-
-@pytest.mark.slow
-def test_an_import_stopped_dead_after_its_decision(places: tuple[Path, Path, Path], tmp_path: Path) -> None:
-    _, package, empty = places
-    with Archive.open(shutil.copytree(empty, tmp_path / "count")) as lab, faults.faulty(None) as calls:
-        lab.import_package(package)
-    stop_at = calls.index("link") + 5  # the plan is on disk, the first file has its name, the second has not
-    root = shutil.copytree(empty, tmp_path / "dead")
-    ended = faults.run_child(CHILD, root, package, stop_at)
-    assert ended.returncode == 77, ended.stderr
-    assert assert_all_or_nothing(root, package) == "already"
-
-
-@pytest.mark.parametrize("moment", ["before the first row", "after the first file"])
-def test_an_import_stopped_at_the_index(
-    places: tuple[Path, Path, Path], tmp_path: Path, moment: str, monkeypatch: pytest.MonkeyPatch
-) -> None:
-    lab_root, package, empty = places
-    root = shutil.copytree(empty, tmp_path / "lab")
-    real = Index.record
-    calls: list[str] = []
-
-    def stopped(self: Index, *arguments: object, **options: object) -> None:
-        calls.append("record")
-        if moment == "before the first row" or len(calls) > 1:
-            raise faults.StoppedError
-        real(self, *arguments, **options)  # type: ignore[arg-type]
-
-    with Archive.open(root) as lab:
-        monkeypatch.setattr(Index, "record", stopped)
-        with pytest.raises(faults.StoppedError):
-            lab.import_package(package)
-        monkeypatch.setattr(Index, "record", real)
-    with Archive.open(root) as lab, Archive.open(lab_root) as origin:
-        assert any("sealed but not indexed" in sentence for sentence in lab.notices)
-        assert lab._index.rows() == origin._index.rows()
-    assert assert_all_or_nothing(root, package) == "already"
-
-
-def test_an_export_stopped_at_every_durable_call_leaves_nothing_under_its_name(
-    places: tuple[Path, Path, Path], tmp_path: Path
-) -> None:
-    lab_root, _, empty = places
-    folder = tmp_path / "out"
-    folder.mkdir()
-    with Archive.open(lab_root) as lab:
-        with faults.faulty(None) as calls:
-            lab.export(["2026-03"], folder / "count", reports=False)
-        shutil.rmtree(folder / "count")
-        last = calls.index("rename") + 1
-        for stop_at in range(1, len(calls) + 1):
-            with pytest.raises(faults.StoppedError), faults.faulty(stop_at, faults.by_exception):
-                lab.export(["2026-03"], folder / "package", reports=False)
-            if stop_at <= last:
-                assert list(folder.iterdir()) == []
-            else:  # the name was taken, and only the word of the disk about it is missing
-                shutil.rmtree(folder / "package")
-        lab.export(["2026-03"], folder / "package", reports=False)
-    with Archive.open(shutil.copytree(empty, tmp_path / "lab")) as there:
-        assert there.import_package(folder / "package").state == "imported"
 
 
 def full_disk(calls_before: int) -> Callable[[], None]:
@@ -183,6 +57,31 @@ def test_a_full_disk_is_told_in_a_sentence_and_leaves_nothing(
         with pytest.raises(ArchiveError, match="No space left"), faults.faulty(settling, full_disk(0)):
             lab.import_package(package)
         assert not list((root / "staging").iterdir())
+
+
+def test_what_a_killed_export_left_is_swept_by_the_next_one_and_a_living_one_is_left(
+    places: tuple[Path, Path, Path], tmp_path: Path
+) -> None:
+    dead = tmp_path / ".package.0123abcd.partial"
+    others = [tmp_path / ".thesis.0123abcd.partial", tmp_path / ".package.partial"]
+    for other in others:  # named alike or made of other things: somebody else's
+        other.mkdir()
+        (other / "thesis.tex").touch()
+    with Archive.open(places[0]) as lab:
+        with new_bag(tmp_path / "other") as living:
+            living.add("a.txt", [b"a"])
+            (dead / "data" / "sealed").mkdir(parents=True)
+            (dead / "data" / "sealed" / "a.h5").write_bytes(b"half")
+            outcome = lab.export(["2026-03"], tmp_path / "package", reports=False)
+            assert living.folder.is_dir()
+            living.finish([])
+        assert outcome.swept == (
+            f"{dead}: the writing of a package had not finished; what there was of it (files: 1) was removed",
+        )
+        assert lab.export(["2026-03"], tmp_path / "again", reports=False).swept == ()
+    assert sorted(path.name for path in tmp_path.iterdir()) == sorted(
+        [*(other.name for other in others), "again", "other", "package"]
+    )
 
 
 # The plan of the names -------------------------------------------------------------------------------------------------
@@ -230,6 +129,25 @@ def test_a_plan_without_hard_links_is_finished_too(tmp_path: Path) -> None:
     with archive_lock(tmp_path):
         staging.sweep_staging(tmp_path)
     assert final.read_bytes() == b"whole"
+
+
+def test_a_plan_outlasts_no_file_that_it_names(tmp_path: Path) -> None:
+    """A power cut may keep one name of a folder and lose an older one, so the older ones are synced first."""
+    files = [(staged(tmp_path, key), key) for key in ("2026-03/a", "2026-03/b")]
+    plan = staging.new_plan(tmp_path)
+    with faults.faulty(None) as calls:
+        staging.decide(plan, files)
+    assert calls == [
+        "fsync",
+        "fsync",
+        "link",
+        "fsync",
+        "unlink",
+    ]  # the folder; the plan, its name, the folder again
+    durable.discard(files[1][0])
+    with archive_lock(tmp_path):
+        assert "could not be finished" in staging.sweep_staging(tmp_path)[0]
+    assert open_store(tmp_path).keys() == []
 
 
 @pytest.mark.parametrize("what", ["taken", "gone", "unreadable", "another"])
