@@ -208,6 +208,11 @@ def changed_datasets(path: Path, digests: dict[str, str]) -> list[str]:
     digests : dict
         What its writer kept: SHA-256 of the values by path of the dataset.
     """
-    with h5py.File(path, "r", locking="best-effort") as file:
-        found = {where: _digest(dataset) for where, dataset in datasets(file)}
+    try:
+        with h5py.File(path, "r", locking="best-effort") as file:
+            found = {where: _digest(dataset) for where, dataset in datasets(file)}
+    except READ_ERRORS as error:
+        if getattr(error, "errno", None) or "errno = " in str(error):
+            raise  # the system's own words tell more
+        found = {}  # HDF5 stumbled over other bytes than it wrote
     return sorted(where for where in digests.keys() | found.keys() if digests.get(where) != found.get(where))

@@ -45,6 +45,8 @@ def decide(plan: Path, files: Sequence[tuple[Path, str]]) -> None:
     files : sequence of (path, key)
         Staging files and the keys that they are to have, in the order of naming.
     """
+    # The plan must not outlast a name that it tells of: a power cut may keep one name of a folder and lose an older one.
+    durable.sync_folder(plan.parent)
     content = {"format": _FORMAT, "files": [[staged.name, key] for staged, key in files]}
     durable.write_whole(plan, json.dumps(content, indent=1).encode())
 
@@ -62,6 +64,10 @@ def name_all(root: Path, plan: Path) -> list[str]:
         If the plan cannot be read.
     """
     files = _planned(plan)
+    for name, key in files:  # all of them, before the first is given its name
+        staged, final = root / "staging" / name, root / "sealed" / f"{key}.h5"
+        if not staged.exists() and not final.exists():
+            raise MissingFile(f"{key} was to be sealed and its staging file is gone", file=str(staged))
     for name, key in files:
         _give_name(root, root / "staging" / name, key)
     durable.discard(plan)
@@ -86,8 +92,6 @@ def _planned(plan: Path) -> list[tuple[str, str]]:
 def _give_name(root: Path, staged: Path, key: str) -> None:
     final = root / "sealed" / f"{key}.h5"
     if not staged.exists():
-        if not final.exists():
-            raise MissingFile(f"{key} was to be sealed and its staging file is gone", file=str(staged))
         return
     if final.exists() and final.samefile(staged):
         durable.sync_folder(final.parent)

@@ -24,7 +24,7 @@ from dataclasses import dataclass, field
 from itertools import count
 from pathlib import Path
 
-__all__ = ["Chance", "Disk", "Everything", "Power", "SyncedOnly"]
+__all__ = ["Chance", "Disk", "Everything", "NewestName", "Power", "SyncedOnly"]
 
 _SECTOR = 512
 _LINE = re.compile(r"(\w+)\((.*)\) += (-?\d+)(?:<(.*?)>)?")
@@ -53,7 +53,7 @@ class _Name:
 class Everything:
     """The disk of a process that was killed: the system goes on and forgets nothing."""
 
-    def keeps(self) -> bool:
+    def keeps(self, *, newest: bool = False) -> bool:
         """Return whether a change of names is kept."""
         return True
 
@@ -65,7 +65,7 @@ class Everything:
 class SyncedOnly:
     """The worst disk: nothing is kept that was not synced."""
 
-    def keeps(self) -> bool:
+    def keeps(self, *, newest: bool = False) -> bool:
         """Return whether a change of names is kept."""
         return False
 
@@ -74,13 +74,25 @@ class SyncedOnly:
         return b""
 
 
+class NewestName:
+    """A disk that was busy with the last thing only: the newest name was kept, those before it were not; all bytes are there."""
+
+    def keeps(self, *, newest: bool = False) -> bool:
+        """Return whether a change of names is kept."""
+        return newest
+
+    def kept(self, place: int, data: bytes) -> bytes:
+        """Return what is kept of a write."""
+        return data
+
+
 class Chance:
     """Any part is kept, as drawn."""
 
     def __init__(self, draw: Callable[[], float]) -> None:
         self._draw = draw
 
-    def keeps(self) -> bool:
+    def keeps(self, *, newest: bool = False) -> bool:
         """Return whether a change of names is kept."""
         return self._draw() < 0.5
 
@@ -97,7 +109,7 @@ class Chance:
         return bytes(len(data))
 
 
-Power = SyncedOnly | Chance | Everything
+Power = SyncedOnly | NewestName | Chance | Everything
 """What becomes of what was not synced."""
 
 
@@ -220,7 +232,7 @@ class Disk:
         """Lay what is left when the power goes now into a folder, with the paths below the parent of the first folder."""
         names = dict(self._sure)
         for change in self._pending:
-            if power.keeps():
+            if power.keeps(newest=change is self._pending[-1]):
                 _apply(change, names)
         origin = Path(self._folders[0]).parent
         laid: dict[int, Path] = {}

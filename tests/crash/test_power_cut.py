@@ -16,7 +16,7 @@ import pytest
 
 from archive.errors import ArchiveError
 from archive.index.engine import engine_of, index_url
-from tests.crash.disk import Chance, Disk, Everything, SyncedOnly
+from tests.crash.disk import Chance, Disk, Everything, NewestName, SyncedOnly
 from tests.crash.operations import OPERATIONS, begun, prepared, require_whole_or_nothing, vault
 from tests.crash.traced import Warm, warm
 
@@ -55,8 +55,10 @@ def test_the_power_goes(name: str, beside: Path, child: Warm, tmp_path: Path) ->
     for number, line in enumerate(lines):
         disk.call(line)
         if number in points:
-            how = chance.choice(["synced only", "drawn", "drawn", "everything"])
-            power = {"synced only": SyncedOnly(), "everything": Everything()}.get(how, Chance(chance.random))
+            how = chance.choice(["synced only", "newest name", "drawn", "drawn", "everything"])
+            power = {
+                "synced only": SyncedOnly(), "newest name": NewestName(), "everything": Everything(),
+            }.get(how, Chance(chance.random))  # fmt: skip
             target = tmp_path / f"{number}-{how}"
             target.mkdir()
             disk.laid(target, power)

@@ -1,4 +1,7 @@
-"""All or nothing: whatever stops a writer, the file is in the archive whole, or has left no trace."""
+"""All or nothing: whatever stops a writer, the file is in the archive whole, or has left no trace.
+
+The end of the process at each call, as part of whole operations: `test_stopped.py`.
+"""
 
 from __future__ import annotations
 
@@ -14,6 +17,7 @@ import pytest
 from archive.errors import AlreadySealed, ArchiveError
 from archive.store import SealedFile, archive_lock, open_store, sweep_staging
 from archive.store.chunks import ChunkStream
+from archive.store.sealed import SealedWriter
 from tests.crash import faults
 
 
@@ -63,21 +67,6 @@ def test_stopped_by_an_exception_at_every_durable_call(tmp_path: Path) -> None:
             faults.seal(root)
         if number < len(calls):  # the last call is the clean-up itself
             assert not list((root / "staging").glob("*"))
-        ends.append(require_all_or_nothing(root, sealed))
-    assert ends == [number > calls.index("link") + 1 for number in range(1, len(calls) + 1)]
-
-
-def test_stopped_dead_at_every_durable_call(tmp_path: Path) -> None:
-    calls, sealed = undisturbed(tmp_path / "good")
-    program = (
-        "from pathlib import Path\n"
-        "with faults.faulty(int(sys.argv[2]), faults.by_exit): faults.seal(Path(sys.argv[1]))"
-    )
-    ends = []
-    for number in range(1, len(calls) + 1):
-        root = tmp_path / str(number)
-        root.mkdir()
-        assert faults.run_child(program, root, number).returncode == 77
         ends.append(require_all_or_nothing(root, sealed))
     assert ends == [number > calls.index("link") + 1 for number in range(1, len(calls) + 1)]
 
@@ -139,20 +128,52 @@ def test_a_file_that_the_system_will_not_let_grow_leaves_no_trace(tmp_path: Path
     assert not require_all_or_nothing(root, sealed)
 
 
+@pytest.mark.parametrize("spot", [0, 64, 320, 832, -3600, 300_000])
+@pytest.mark.parametrize("moment", ["before the first look", "after it"])
 def test_a_disk_that_gives_back_other_bytes_seals_nothing(
-    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, spot: int, moment: str
 ) -> None:
-    settle = faults.durable.settle
+    """Some bytes are lost: in marks, in what leads to the data, in the data; before anybody has a digest of them, or later."""
+    finish, settle = SealedWriter.finish, faults.durable.settle
 
-    def flip(staged: Path) -> None:
+    def spoil(staged: Path) -> None:
         data = bytearray(staged.read_bytes())
-        data[len(data) // 2] ^= 1
+        place = spot % len(data)
+        assert any(data[place : place + 64])
+        data[place : place + 64] = bytes(64)
         staged.write_bytes(data)
+
+    def finished(writer: SealedWriter) -> dict[str, str]:
+        digests = finish(writer)
+        spoil(writer.path)
+        return digests
+
+    def settled(staged: Path) -> None:
+        spoil(staged)
         settle(staged)
 
     with monkeypatch.context() as patch:
-        patch.setattr(faults.durable, "settle", flip)
+        if moment == "after it":
+            patch.setattr(faults.durable, "settle", settled)
+        else:
+            patch.setattr(SealedWriter, "finish", finished)
         with pytest.raises(ArchiveError, match="gave back other bytes"):
             faults.seal(tmp_path)
     store = open_store(tmp_path)
     assert (store.keys(), store.strays()) == ([], [])
+
+
+def test_a_small_file_that_comes_back_otherwise_takes_no_name(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    sync = faults.durable._sync
+
+    def spoil(descriptor: int) -> None:
+        os.ftruncate(descriptor, 1)
+        sync(descriptor)
+
+    with monkeypatch.context() as patch:
+        patch.setattr(faults.durable, "_sync", spoil)
+        with pytest.raises(ArchiveError, match="gave back other bytes"):
+            faults.durable.write_whole(tmp_path / "stillroom.toml", b"name = 1")
+    assert list(tmp_path.iterdir()) == []
