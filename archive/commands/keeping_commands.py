@@ -9,7 +9,7 @@ import click
 from archive.commands import opening
 from archive.commands.machine import write_json
 from archive.commands.opening import archive_option, json_option
-from archive.commands.terminal import Progress, say
+from archive.commands.terminal import Progress, note, say
 from archive.errors import EXIT_DAMAGE
 
 __all__ = ["mend", "mirror"]
@@ -38,6 +38,8 @@ def mirror(*, target: Path, thorough: bool, archive_dir: Path | None, as_json: b
     """
     with opening.open_archive(archive_dir) as lab, Progress("mirroring") as progress:
         outcome = lab.mirror(target, thorough=thorough, progress=progress.count)
+    for sentence in outcome.swept:
+        note(f"note: {sentence}")
     if as_json:
         write_json(outcome)
     else:

@@ -16,6 +16,7 @@ from archive.store.durable import (
     LOCK_NAME,
     STAGING_SUFFIX,
     archive_lock,
+    discard,
     make_folder,
     put_in_place,
     write_whole,
@@ -25,6 +26,7 @@ from archive.store.journal import JOURNAL_NAME, Journal
 from archive.store.local import LocalStore, open_store
 from archive.store.mend import Mended, mended
 from archive.store.mirror import Copied, mirrored
+from archive.store.staging import sweep_staging
 
 __all__ = ["MirrorOutcome", "mend", "mirror"]
 
@@ -45,6 +47,8 @@ class MirrorOutcome:
     damage : tuple of Damage
     index : str
         How the mirror's index came to be.
+    swept : tuple of str
+        What a mirror that was stopped had left there, as sentences.
     """
 
     target: Path
@@ -52,6 +56,7 @@ class MirrorOutcome:
     present: int
     damage: tuple[Damage, ...]
     index: str
+    swept: tuple[str, ...] = ()
 
 
 def mend(
@@ -140,6 +145,7 @@ def _mirror(
     (target / "sealed").mkdir(parents=True, exist_ok=True)
     (target / "staging").mkdir(exist_ok=True)
     with archive_lock(target):
+        swept = (*sweep_staging(target), *_swept_beside(target))
         copy = open_store(target)
         first = mirrored(store, recorded(), copy, thorough=thorough, progress=progress)
         # What may only be read has no writer to keep out.
@@ -151,7 +157,21 @@ def _mirror(
         write_whole(target / SETTINGS_NAME, settings_without_index(store.root), replace=True)
     if how == "made anew":
         rebuilt_index(target, read_settings(target).index_address(target), copy)
-    return MirrorOutcome(target, (*first.copied, *last.copied), first.present, _once(first, last), how)
+    copied = (*first.copied, *last.copied)
+    return MirrorOutcome(target, copied, first.present, _once(first, last), how, swept)
+
+
+def _swept_beside(target: Path) -> list[str]:
+    """Remove what was to become the mirror's journal or settings, and return a sentence about each."""
+    left = [
+        path
+        for name in (JOURNAL_NAME, SETTINGS_NAME)
+        for path in sorted(target.glob(f".{name}.*{STAGING_SUFFIX}"))
+        if path.is_file()
+    ]
+    for path in left:
+        discard(path)
+    return [f"{path}: the writing of it had not finished; it was removed" for path in left]
 
 
 def _once(first: Copied, last: Copied) -> tuple[Damage, ...]:
