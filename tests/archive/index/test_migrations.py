@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import errno
 import os
 import sqlite3
 import subprocess
@@ -231,6 +232,23 @@ def test_a_migration_that_fails_leaves_the_old_index(
         assert old.rows() == before
     with _connection(url) as connection:
         assert not inspect(connection).has_table("added")
+
+
+def test_a_disk_too_full_for_the_copy_is_told_with_what_to_do(
+    tmp_path: Path, later: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    def full(*_: object, **__: object) -> None:
+        raise OSError(errno.ENOSPC, os.strerror(errno.ENOSPC))
+
+    url = f"sqlite:///{tmp_path / 'index.sqlite3'}"
+    (tmp_path / "index.sqlite3").touch()
+    with _connection(url) as connection:
+        revision.upgrade(connection, "0002")
+    monkeypatch.setattr(revision, "_copied_beside", full)
+    with pytest.raises(ArchiveError, match=r"No space left on device\); make room"):
+        Index.open(url)
+    monkeypatch.undo()
+    Index.open(url).close()
 
 
 def test_an_index_of_a_newer_program_is_left_alone(index: Index, url: str) -> None:
