@@ -40,6 +40,7 @@ from archive.index.answers import (
 from archive.index.engine import (
     REBUILD,
     WAIT_SECONDS,
+    connected,
     engine_of,
     for_reading_only,
     index_name,
@@ -114,6 +115,20 @@ class Index:
         engine = engine_of(place, read_only=False, new=True, wait=wait)
         with _disposed_on_failure(engine):
             make(engine, place)
+        return cls(engine, place)
+
+    @classmethod
+    def passing(cls, folder: Path) -> Self:
+        """Return a new index that is to be held against another one and then goes with its folder.
+
+        Notes
+        -----
+        Its tables are made by the models, which the migrations equal and which need no Alembic.
+        """
+        place = index_url(f"sqlite:///{folder / 'index.sqlite3'}")
+        engine = engine_of(place, read_only=False, new=True)
+        with _disposed_on_failure(engine), connected(engine, place, writes=True) as connection:
+            Base.metadata.create_all(connection, checkfirst=False)
         return cls(engine, place)
 
     @classmethod

@@ -47,7 +47,7 @@ def index_damage(
     try:
         with (
             tempfile.TemporaryDirectory(prefix="stillroom-") as folder,
-            Index.create(f"sqlite:///{Path(folder) / 'index.sqlite3'}") as fresh,
+            Index.passing(Path(folder)) as fresh,
         ):
             fresh.rebuild(entries())
             unequal = [*index.faults(), *index.disagreements(fresh)]
