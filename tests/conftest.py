@@ -14,7 +14,7 @@ settings.load_profile("shared machine")
 LONGEST = (
     "tests/archive/commands/test_demo_command.py",
     "tests/archive/demo/test_reduction.py",
-    "tests/crash/test_ingest_crash.py",
+    "tests/crash/test_stopped.py",
     "tests/archive/reduction/test_dynamic_steps.py",
     "tests/crash/test_system_calls.py",
     "tests/crash/test_power_cut.py",

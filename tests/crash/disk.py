@@ -253,6 +253,10 @@ class Disk:
 def _apply(change: _Name, names: dict[str, int]) -> None:
     if change.source is not None:
         names.pop(change.source, None)
+        below = [
+            path for path in names if path.startswith(f"{change.source}/")
+        ]  # what is in a folder goes with it
+        names.update({change.path + path.removeprefix(change.source): names.pop(path) for path in below})
     if change.inode is None:
         names.pop(change.path, None)
     else:

@@ -1,8 +1,8 @@
 """Stopping a writer at its critical moments.
 
-Everything that makes a file last goes through `archive.store.durable`, and there through its `os`. A stand-in for that
-module counts the calls that matter and stops at the n-th: by an exception, after which clean-up still runs, or by the
-end of the process, after which nothing does.
+Every call that matters is counted, and the n-th stops: by an exception, after which clean-up still runs, or by the end of
+the process, after which nothing does. `faulty` counts what goes through `archive.store.durable`; `Watch`, in a child of
+its own, counts what anybody does below a folder, and the commits of the index before and after.
 """
 
 from __future__ import annotations
@@ -11,18 +11,20 @@ import contextlib
 import os
 import subprocess
 import sys
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterable, Iterator
 from pathlib import Path
 from typing import Any
 
 import numpy as np
+from sqlalchemy import Connection, Engine, event
+from sqlalchemy.engine.default import DefaultDialect
 
 from archive.store import Column, SealedFile, durable, open_store
 
-__all__ = ["KEY", "StoppedError", "faulty", "run_child", "seal"]
+__all__ = ["KEY", "StoppedError", "Watch", "by_exception", "by_exit", "faulty", "run_child", "seal"]
 
 KEY = "2026-03/2026-03.a1"
-COUNTED = ("mkdir", "chmod", "fsync", "link", "rename", "replace", "unlink", "write", "ftruncate")
+COUNTED = ("mkdir", "rmdir", "chmod", "fsync", "link", "rename", "replace", "unlink", "write", "ftruncate")
 
 
 class StoppedError(Exception):
@@ -69,6 +71,72 @@ def faulty(stop_at: int | None, stop: Callable[[], None] = by_exception) -> Iter
         yield stand_in.calls
     finally:
         durable.os = os
+
+
+class Watch:
+    """A watch over this process, for good: each call below a folder is counted, and one of them stops.
+
+    Parameters
+    ----------
+    stop : callable
+        How: `by_exception` or `by_exit`.
+
+    Notes
+    -----
+    Through `os` go `durable`, `pathlib` and `shutil`. A writing transaction of the index counts twice: before its commit, and
+    after it.
+    """
+
+    def __init__(self, stop: Callable[[], None]) -> None:
+        self._stop, self._stop_at, self._top = stop, None, Path()
+        self._calls: list[str] = []
+        for name in COUNTED:
+            setattr(os, name, self._watched(name, getattr(os, name)))
+        self._commit, self._writes = DefaultDialect.do_commit, False
+        event.listen(Engine, "commit", self._before)
+        DefaultDialect.do_commit = lambda _, connection: self._committed(_, connection)  # type: ignore[method-assign]
+
+    def begin(self, top: Path, stop_at: int | None) -> list[str]:
+        """Count anew, below another folder; return the list that the calls made go into."""
+        self._top, self._stop_at, self._calls, self._writes = top, stop_at, [], False
+        return self._calls
+
+    def _met(self, what: str) -> None:
+        self._calls.append(what)
+        if len(self._calls) == self._stop_at:
+            self._stop()
+
+    def _watched(self, name: str, real: Callable[..., Any]) -> Callable[..., Any]:
+        def call(*arguments: Any, **options: Any) -> Any:
+            place = _below(self._top, (*arguments[:2], *options.values()))
+            if place is not None:
+                self._met(f"{name} {place}")
+            return real(*arguments, **options)
+
+        return call
+
+    def _before(self, connection: Connection) -> None:
+        if connection.get_execution_options().get("writes"):
+            self._writes = True
+            self._met("commit")
+
+    def _committed(self, dialect: DefaultDialect, connection: Any) -> None:
+        self._commit(dialect, connection)
+        if self._writes:
+            self._writes = False
+            self._met("committed")
+
+
+def _below(top: Path, arguments: Iterable[Any]) -> str | None:
+    """Return where below a folder a call is about, as far as its paths and open files say so."""
+    for each in arguments:
+        path = each
+        if isinstance(each, int):
+            with contextlib.suppress(OSError):
+                path = Path(f"/proc/self/fd/{each}").readlink()
+        if isinstance(path, str | Path) and Path(path).is_relative_to(top):
+            return str(Path(path).relative_to(top))
+    return None
 
 
 def seal(root: Path) -> SealedFile:

@@ -1,7 +1,7 @@
 """Bits that flip and files that are cut short: whatever lies in an archive, `fixity` tells of it or it carried nothing.
 
-More than two thousand changes in all: sealed files, index and settings here; every byte of a journal in
-`tests/archive/store/test_journal.py`.
+More than two thousand changes of sealed files of every kind, three hundred of the index, every byte of the settings here; every
+byte of a journal in `tests/archive/store/test_journal.py`.
 """
 
 from __future__ import annotations
@@ -22,9 +22,11 @@ from archive.lab.journaling import Acts
 from archive.store import open_store
 from archive.store.examine import examined_apart
 from archive.store.interface import Damage, SealedFile
+from tests.crash.operations import AMENDMENT, REVISION
 from tests.small_cooldown import write_folder
 
 ACCESSION, REDUCTION = "2026-03/2026-03.a1", "2026-03/s001@empty-cell.1"
+KINDS = (ACCESSION, REDUCTION, "lab.records/well-helium.r2", "2026-03/2026-03.m1", "2026-03/2026-03.w1")
 
 
 @pytest.fixture(scope="module")
@@ -34,7 +36,13 @@ def root(tmp_path_factory: pytest.TempPathFactory) -> Path:
     with Archive.create(folder / "lab", name="Test laboratory") as lab:
         lab.ingest(write_folder(folder / "2026-03"))
         lab.reduce("2026-03", plan="empty-cell")
+        for name, text in (("revision", REVISION), ("amendment", AMENDMENT)):
+            (folder / f"{name}.toml").write_text(text, encoding="utf-8")
+        lab.revise(folder / "revision.toml")
+        lab.amend(folder / "amendment.toml")
+        lab.withdraw("2026-03/s002", why="the magnet was ramped", by="data steward")
         assert lab.fixity() == []
+        assert sorted(lab._store.keys()) == sorted(KINDS)
     return folder / "lab"
 
 
@@ -65,7 +73,7 @@ def no_child(monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setattr("archive.store.examine._inside_apart", lambda *_: [])
 
 
-@pytest.mark.parametrize("key", [ACCESSION, REDUCTION])
+@pytest.mark.parametrize("key", KINDS)
 def test_every_change_of_a_sealed_file_is_told_with_its_name(
     root: Path, tmp_path: Path, key: str, no_child: None
 ) -> None:
@@ -74,7 +82,7 @@ def test_every_change_of_a_sealed_file_is_told_with_its_name(
     path = store.path(key)
     content = path.read_bytes()
     path.chmod(0o644)
-    for what, changed in changes(content, 500, seed=len(key)):
+    for what, changed in changes(content, 420, seed=len(key)):
         path.write_bytes(changed)
         assert [each.key for each in store.verify(key, sealed.sha256) if each.kind == "damaged"] == [key], (
             what
@@ -96,10 +104,14 @@ def test_a_change_inside_a_dataset_is_told_with_the_dataset(root: Path, tmp_path
         file.visititems(place)
     assert len(places) > 10
     chance, copies, meant = random.Random(5), [], []  # noqa: S311 - no secret
-    for number, (name, where) in enumerate(sorted(places.items())):
-        spot = chance.choice(where)
+    names = sorted(places)
+    for number in range(200):  # each dataset at least once
+        name = names[number] if number < len(names) else chance.choice(names)
+        spot = chance.choice(places[name])
         copy = tmp_path / f"{number}.h5"
-        copy.write_bytes(content[:spot] + bytes([content[spot] ^ 1]) + content[spot + 1 :])
+        copy.write_bytes(
+            content[:spot] + bytes([content[spot] ^ 1 << chance.randrange(8)]) + content[spot + 1 :]
+        )
         copies.append((copy, SealedFile(f"2026-03/2026-03.a{number + 1}", sealed.sha256, sealed.size)))
         meant.append((f"2026-03/2026-03.a{number + 1}", name))
     told = {(each.key, f"/{(each.dataset or '').lstrip('/')}") for each in examined_apart(copies)}

@@ -120,6 +120,6 @@ def test_what_is_drawn_covers_every_kind_of_call() -> None:
 
 def test_the_archive_of_each_operation_is_what_it_says(beside: Path) -> None:
     starts = {operation.start for operation in OPERATIONS.values()} - {""}
-    assert starts == {"empty", "filled", "reduced", "without an index", "older", "damaged"}
+    assert starts == {"empty", "filled", "reduced", "without an index", "older", "damaged", "half imported"}
     with Archive.open(beside / "damaged") as lab:
         assert len(lab.fixity()) > 0

@@ -51,8 +51,14 @@ class Call:
 class Warm:
     """The warm process."""
 
-    def __init__(self, process: subprocess.Popen[str], strace: str) -> None:
-        self._process, self._strace = process, strace
+    def __init__(self, process: subprocess.Popen[str]) -> None:
+        self._process = process
+
+    def stopped(self, operation: str, how: str, folder: Path, beside: Path) -> list[dict[str, Any]]:
+        """Return what became of an operation that was stopped at each of its durable calls; see `tests.crash.warm.stopped`."""
+        asked = {"stopped": operation, "how": how, "folder": str(folder), "beside": str(beside)}
+        found: list[dict[str, Any]] = json.loads(self._ask(asked))
+        return found
 
     def run(
         self,
@@ -114,7 +120,7 @@ class Warm:
         return self._process.stdout.readline()
 
     def _attached(self, child: int, options: Sequence[str]) -> subprocess.Popen[str]:
-        command = [self._strace, "-q", "-s", "0", *options, "-p", str(child)]
+        command = [program("strace"), "-q", "-s", "0", *options, "-p", str(child)]
         tracer = subprocess.Popen(command, stdout=subprocess.DEVNULL, stderr=subprocess.PIPE, text=True)
         for _ in range(600):
             status = Path(f"/proc/{child}/status").read_text(encoding="utf-8")
@@ -140,8 +146,7 @@ def _place(line: str, root: Path) -> str:
 
 @contextlib.contextmanager
 def warm() -> Iterator[Warm]:
-    """Return a context that yields a warm process; a test that needs it is skipped where nothing can be traced."""
-    strace = program("strace")
+    """Return a context that yields a warm process; a test that lets it be traced is skipped where nothing can be."""
     project = Path(__file__).parents[2]
     quiet = {name: value for name, value in os.environ.items() if not name.startswith("COVERAGE_")}
     with subprocess.Popen(
@@ -151,7 +156,7 @@ def warm() -> Iterator[Warm]:
         assert process.stdout is not None
         assert process.stdout.readline() == "ready\n"
         try:
-            yield Warm(process, strace)
+            yield Warm(process)
         finally:
             assert process.stdin is not None
             process.stdin.close()

@@ -5,7 +5,6 @@ from __future__ import annotations
 import sqlite3
 from collections import namedtuple
 from collections.abc import Callable, Iterator
-from itertools import count
 from pathlib import Path
 from typing import Any
 
@@ -15,7 +14,6 @@ from archive import Archive
 from archive.errors import BadRequest
 from archive.lab.keeping import MirrorOutcome
 from archive.store.mend import SET_ASIDE
-from tests.crash import faults
 from tests.small_cooldown import write_folder
 
 ACCESSION, REDUCTION = "2026-03/2026-03.a1", "2026-03/s001@empty-cell.1"
@@ -170,20 +168,6 @@ def test_a_folder_that_is_no_mirror_is_left_alone(lab: Archive, tmp_path: Path) 
     assert not (lab.root / "deep").exists()
 
 
-def test_a_mirror_that_was_stopped_goes_on(lab: Archive, tmp_path: Path) -> None:
-    with faults.faulty(None) as calls:
-        lab.mirror(tmp_path / "count")
-    assert len(calls) > 12
-    for stop_at in {*range(1, len(calls) + 1, 3), len(calls)}:
-        target = tmp_path / f"stopped-{stop_at}"
-        with pytest.raises(faults.StoppedError), faults.faulty(stop_at):
-            lab.mirror(target)
-        lab.mirror(target)
-        with Archive.open(target) as copy:
-            assert copy.fixity() == []
-            assert copy._index.rows() == lab._index.rows()
-
-
 @pytest.mark.parametrize(
     "spoil",
     [spoilt, lambda lab, key: (lab.root / "sealed" / f"{key}.h5").unlink()],
@@ -227,20 +211,3 @@ def test_mending_from_nothing_or_from_itself_is_refused(lab: Archive, tmp_path: 
     for other in (lab.root, tmp_path / "nowhere"):
         with pytest.raises(BadRequest):
             lab.mend(other)
-
-
-def test_mending_that_was_stopped_anywhere_goes_on(lab: Archive, tmp_path: Path) -> None:
-    lab.mirror(tmp_path / "vault")
-    path = lab.root / "sealed" / f"{REDUCTION}.h5"
-    whole = path.read_bytes()
-    for stop_at in count(1):
-        spoilt(lab, REDUCTION)
-        try:
-            with faults.faulty(stop_at):
-                lab.mend(tmp_path / "vault")
-            break
-        except faults.StoppedError:
-            lab.mend(tmp_path / "vault")
-        assert path.read_bytes() == whole
-    assert stop_at > 6
-    assert lab.fixity() == []
