@@ -9,7 +9,6 @@ from __future__ import annotations
 import os
 import random
 import sqlite3
-from collections.abc import Iterator
 from pathlib import Path
 
 import pytest
@@ -17,23 +16,10 @@ import pytest
 from archive.errors import ArchiveError
 from archive.index.engine import engine_of, index_url
 from tests.crash.disk import Chance, Disk, Everything, NewestName, SyncedOnly
-from tests.crash.operations import OPERATIONS, begun, prepared, require_whole_or_nothing, vault
-from tests.crash.traced import Warm, warm
+from tests.crash.operations import OPERATIONS, begun, require_whole_or_nothing, vault
+from tests.crash.traced import Warm
 
 SAMPLES = int(os.environ.get("STILLROOM_CRASH_SAMPLES", "1"))
-
-
-@pytest.fixture(scope="module")
-def beside(tmp_path_factory: pytest.TempPathFactory) -> Path:
-    """Give a folder with the archives that operations begin from."""
-    return prepared(tmp_path_factory.mktemp("beside"))
-
-
-@pytest.fixture(scope="module")
-def child() -> Iterator[Warm]:
-    """Give the warm process."""
-    with warm() as process:
-        yield process
 
 
 @pytest.mark.slow

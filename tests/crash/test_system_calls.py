@@ -8,7 +8,6 @@ from __future__ import annotations
 
 import os
 import random
-from collections.abc import Iterator
 from pathlib import Path
 
 import pytest
@@ -16,23 +15,10 @@ import pytest
 from archive import Archive
 from archive.errors import ArchiveError, DamagedFile
 from archive.store.local import open_store
-from tests.crash.operations import OPERATIONS, begun, prepared, require_whole_or_nothing
-from tests.crash.traced import Call, Warm, warm
+from tests.crash.operations import OPERATIONS, begun, require_whole_or_nothing
+from tests.crash.traced import Call, Warm
 
 SAMPLES = int(os.environ.get("STILLROOM_CRASH_SAMPLES", "2"))
-
-
-@pytest.fixture(scope="module")
-def beside(tmp_path_factory: pytest.TempPathFactory) -> Path:
-    """Give a folder with the archives that operations begin from."""
-    return prepared(tmp_path_factory.mktemp("beside"))
-
-
-@pytest.fixture(scope="module")
-def child() -> Iterator[Warm]:
-    """Give the warm process."""
-    with warm() as process:
-        yield process
 
 
 def drawn(calls: list[Call], chance: random.Random) -> list[Call]:

@@ -91,8 +91,8 @@ class Warm:
             if name not in WRITING:
                 continue
             counts[name] = counts.get(name, 0) + 1
-            if str(root) in line:
-                found.append(Call(name, counts[name], _place(line, root)))
+            if (place := _place(line, root)) is not None:
+                found.append(Call(name, counts[name], place))
         return found
 
     def written(self, operation: str, root: Path, beside: Path, log: Path) -> list[str]:
@@ -135,12 +135,18 @@ class Warm:
         return tracer
 
 
-def _place(line: str, root: Path) -> str:
-    """Return what kind of file a line of the list is about."""
-    path = re.findall(rf"{re.escape(str(root))}(-vault)?/?([^\">]*)", line)[-1][1]
+def _place(line: str, root: Path) -> str | None:
+    """Return what kind of file a line of the list is about: of an archive, its mirror or a package of it; else None."""
+    beside = r"(?:-vault|-package)?(?:\.[0-9a-f]{8}\.partial)?"
+    paths = re.findall(
+        rf"{re.escape(str(root.parent))}/\.?{re.escape(root.name)}{beside}(?![-\w])/?([^\">]*)", line
+    )
+    if not paths:
+        return None
+    path = paths[-1]
     name = path.rpartition("/")[2]
-    if path.startswith(("staging", "sealed", "set-aside")):
-        return path.partition("/")[0]
+    if path.startswith(("staging", "sealed", "set-aside", "data")):
+        return str(path.partition("/")[0])
     return re.sub(r"^\.|\.[0-9a-f]{8}\.partial$", "", name) or "folder"
 
 
