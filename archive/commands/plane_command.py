@@ -80,7 +80,7 @@ def plane(
         )
     from archive.lab.asking import search_query
     from archive.lab.plane_asking import HEIGHTS, plane_window
-    from archive.reports.plane_words import line_remarks, remarks
+    from archive.reports.plane_remarks import line_remarks, remarks
 
     ranges = {field: asked.pop(field) for field in HEIGHTS.values()}
     for field, text in ranges.items():

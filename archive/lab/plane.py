@@ -2,14 +2,13 @@
 
 from __future__ import annotations
 
-from collections import Counter, defaultdict
 from collections.abc import Mapping, Sequence
 from dataclasses import replace
-from functools import cache
-from typing import Literal, NamedTuple
+from typing import Literal
 
 from archive.index import Index, PlaneResult, PlaneSweep, SearchQuery
 from archive.lab.curves.kept import Kept
+from archive.lab.plane_bars import bars_of, places_of
 from archive.lab.plane_lines import NO_CELL, cell_name, cell_uses, inert_layers, universal_lines
 from archive.lab.plane_window import (
     MOST_BARS,
@@ -24,7 +23,6 @@ from archive.lab.stale import stale
 from archive.reports.plane_layout import logarithmic
 from archive.reports.plane_view import Bar, Line, PlaneAxis, PlaneView, Point, Window
 from archive.reports.plane_words import result_words
-from schemas.quantity import unit_factor
 
 __all__ = ["TRANSITIONS", "PlaneState", "plane"]
 
@@ -51,12 +49,6 @@ _KEPT: Kept[PlaneView] = Kept(
 
 # Headline results stand first.
 _FEW = 3
-
-
-class _Place(NamedTuple):
-    bottom: float
-    top: float
-    uncertainty: float | None
 
 
 def plane(
@@ -116,8 +108,8 @@ def _made(
     part = window if axis == "coverage" else None
     rows, stale_ones = _of_state(source, _rows(index, wanted, part), state)
     looks = _looks(index)
-    bars, unplaced = _bars(
-        rows, _places(index, rows, axis), looks, stale_ones, log=log, stated=axis == "coverage"
+    bars, unplaced = bars_of(
+        rows, places_of(index, rows, axis), looks, stale_ones, log=log, stated=axis == "coverage"
     )
     # An empty cell is worth showing beside its films; that of a calorimeter full of liquid is not.
     films = {bar.cell for bar in bars if bar.top > 0}
@@ -186,79 +178,6 @@ def _looks(index: Index) -> dict[str, int]:
         first[name] = min(since, first.get(name, since))
     names = sorted(set(first) - {NO_CELL}, key=lambda name: (first[name], name))
     return {name: look for look, name in enumerate([*names, NO_CELL])}
-
-
-def _places(index: Index, rows: Sequence[PlaneSweep], axis: PlaneAxis) -> dict[str, _Place]:
-    """Where each sweep stands on the axis, by its address."""
-    if axis == "coverage":
-        # Where a sweep states its coverage, it stands there; see `_bars`.
-        return {
-            span.sweep: _Place(span.low, span.high, None)
-            for span in index.dosed_spans()
-            if span.low is not None
-        }
-    if axis == "pressure":
-        return _pressures(index)
-    return _lanes(rows)
-
-
-def _pressures(index: Index) -> dict[str, _Place]:
-    """Pressure found by a reduction, else what the sweep's channels reach over."""
-    places: dict[str, _Place] = {}
-    for span in index.spans("pressure"):
-        if span.sweep not in places:
-            factor = unit_factor(span.unit, "pressure")
-            places[span.sweep] = _Place(span.low * factor, span.high * factor, None)
-    for result in index.plane_results(("pressure",), headline=False):
-        places[result.sweep] = _Place(result.value, result.value, result.uncertainty)
-    return {address: place for address, place in places.items() if place.bottom > 0}
-
-
-def _lanes(rows: Sequence[PlaneSweep]) -> dict[str, _Place]:
-    """A lane of height one for each cell, from the top in the order of names; within it sweeps from below by time."""
-    lanes: dict[str, list[PlaneSweep]] = defaultdict(list)
-    for row in rows:
-        lanes[cell_name(row.cell)].append(row)
-    places = {}
-    for lane, name in enumerate(sorted(lanes, reverse=True)):
-        ordered = sorted(lanes[name], key=lambda row: (row.begin is None, row.begin, row.address))
-        for place, row in enumerate(ordered, start=1):
-            height = lane + place / (len(ordered) + 1)
-            places[row.address] = _Place(height, height, None)
-    return places
-
-
-def _bars(
-    rows: Sequence[PlaneSweep],
-    places: Mapping[str, _Place],
-    looks: Mapping[str, int],
-    stale_ones: frozenset[str],
-    *,
-    log: tuple[bool, bool],
-    stated: bool,
-) -> tuple[list[Bar], Counter[str]]:
-    bars, unplaced = [], Counter[str]()
-    for row in rows:
-        cold, warm = row.temperature_low, row.temperature_high
-        place: tuple[float, float, float | None] | None = places.get(row.address)
-        if stated and row.coverage is not None:
-            place = (row.coverage, row.coverage, row.coverage_uncertainty)
-        cold, warm = warm if cold is None else cold, cold if warm is None else warm
-        if place is None or cold is None or warm is None or (log[0] and cold <= 0):
-            unplaced["a temperature" if place is not None else "a place on this axis"] += 1
-            continue
-        name = cell_name(row.cell)
-        marks = _marks(row.withdrawn, row.empty_cell, row.reduced, row.address in stale_ones)
-        bars.append(Bar(row.address, row.kind, name, looks[name], row.begin, cold, warm, *place, marks))
-    return bars, unplaced
-
-
-@cache
-def _marks(withdrawn: bool, empty: int, reduced: bool, stale: bool) -> tuple[str, ...]:  # noqa: FBT001 - of a row
-    manner = "stale" if stale else "" if reduced else "not reduced"
-    return tuple(
-        mark for mark in ("withdrawn" if withdrawn else "", "empty cell" if empty else "", manner) if mark
-    )
 
 
 def _lines(

@@ -16,15 +16,8 @@ from matplotlib.transforms import ScaledTranslation
 from archive.physics.film_static import onset_coverage
 from archive.reports.axis_units import symbol
 from archive.reports.figure_style import LOOKS, STYLE, as_svg, raised, saved
-from archive.reports.plane_layout import (
-    height_unit,
-    is_short,
-    logarithmic,
-    mark_and_shade,
-    round_values,
-    side_by_side,
-    value_texts,
-)
+from archive.reports.plane_layout import height_unit, is_short, logarithmic, mark_and_shade, side_by_side
+from archive.reports.plane_ticks import round_values, value_texts
 from archive.reports.plane_view import Bar, PlaneView
 
 __all__ = ["plane_figure"]

@@ -12,8 +12,10 @@ from starlette.responses import HTMLResponse, Response
 from archive.lab.plane import PlaneState
 from archive.lab.plane_lines import NO_CELL, cell_name
 from archive.reports.plane_layout import height_unit, logarithmic, mark_and_shade
+from archive.reports.plane_remarks import TITLES, jump_words, pore_words, remarks
+from archive.reports.plane_values import height_words, span_words
 from archive.reports.plane_view import Bar, PlaneAxis, PlaneView, Window
-from archive.reports.plane_words import TITLES, height_words, line_remarks, point_words, remarks, span_words
+from archive.reports.plane_words import line_words, point_words
 from archive.web.page import page
 from archive.web.plane_drawing import MARKS, drawing
 from archive.web.plane_query import SORTS, PlaneRequest, Sort
@@ -72,7 +74,9 @@ def _content(request: Request, wanted: PlaneRequest) -> dict[str, Any]:
         "view": view,
         "title": TITLES[wanted.axis],
         "remarks": list(remarks(view)),
-        "line_remarks": list(line_remarks(view)),
+        "line_words": line_words,
+        "jump_words": jump_words,
+        "pore_words": pore_words,
         "unit": height_unit(wanted.axis),
         "choices": _choices(request),
     }

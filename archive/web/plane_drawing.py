@@ -11,15 +11,8 @@ from dataclasses import dataclass
 from typing import Any
 
 from archive.physics.film_static import onset_coverage
-from archive.reports.plane_layout import (
-    height_unit,
-    is_short,
-    logarithmic,
-    mark_and_shade,
-    round_values,
-    side_by_side,
-    value_texts,
-)
+from archive.reports.plane_layout import height_unit, is_short, logarithmic, mark_and_shade, side_by_side
+from archive.reports.plane_ticks import round_values, value_texts
 from archive.reports.plane_view import Bar, PlaneView, Window
 from archive.reports.plane_words import bar_words, line_words, point_words, strip_words
 from archive.web.links import path_of
@@ -266,7 +259,7 @@ def _lines(view: PlaneView, x: Place, y: Place) -> Iterator[Shape]:
         )
         yield Shape(
             href="" if line.source is None else path_of(line.source),
-            words=f"universal jump, {line_words(line)}",
+            words=f"universal jump, {line_words(line)}{line.source or ''}",
             kind="universal",
             shade=0 if line.look is None else mark_and_shade(line.look)[1],
             stroke=_unclipped((x(ends[0]), x(ends[1])), (y(heights[0]), y(heights[1]))),

@@ -21,9 +21,10 @@ from archive.lab.plane_window import first_window, inside, strips_of, thinned_po
 from archive.lab.source import LabSource
 from archive.physics.film_static import onset_coverage
 from archive.reports.plane_figure import plane_figure
-from archive.reports.plane_layout import round_values, side_by_side
+from archive.reports.plane_layout import side_by_side
+from archive.reports.plane_remarks import line_remarks, remarks
+from archive.reports.plane_ticks import round_values
 from archive.reports.plane_view import Bar, PlaneView, Point, Window
-from archive.reports.plane_words import line_remarks, remarks
 from archive.store.memory import MemoryStore
 from tests.archive.index import documents as make
 from tests.plane_archive import planed
