@@ -165,4 +165,5 @@ def plan_figure(request: Request) -> Response:
     found = lab_of(request).plan_figure(address_at(request.path_params["address"]))
     if found.content is None:
         raise UnknownAddress(found.caption)
-    return Response(found.content, media_type=_SVG, headers={"Cache-Control": "no-cache"})
+    # It takes a second to draw, and what it shows is sealed.
+    return Response(found.content, media_type=_SVG, headers={"Cache-Control": "private, max-age=600"})

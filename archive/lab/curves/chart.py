@@ -27,6 +27,8 @@ FloatArray = NDArray[np.float64]
 # More curves than this on one axis are told apart by nobody.
 _MOST_OVER = 12
 _MOST_PANELS = 12
+# Beyond these the place of a point on an axis is no number any more, or that of the point beside it.
+_FARTHEST, _NARROWEST = 1e100, 1e-12
 _PURE = ("number", "fraction")
 
 
@@ -364,6 +366,12 @@ def _view(asked: Asked) -> tuple[float, float] | None:
     high = math.inf if asked.high is None else asked.high
     if not low < high:
         raise BadRequest(f"the view from {low:g} to {high:g} is empty", expected="from less than to")
+    given = [abs(each) for each in (low, high) if math.isfinite(each)]
+    if max(given) > _FARTHEST or high - low < _NARROWEST * max(given):
+        raise BadRequest(
+            f"the view from {low:g} to {high:g} cannot be drawn",
+            expected="ends that a double can tell apart, along the axis as it is written",
+        )
     return low, high
 
 

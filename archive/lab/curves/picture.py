@@ -91,10 +91,16 @@ def _across(chart: Chart) -> Axis:
     margin = 0.02 * (high - low) if high > low else max(abs(high) * 0.05, 1.0)
     if math.isnan(low):
         low, high, margin = 0.0, 1.0, 0.0
-    ends = [low - margin, high + margin]
+    begin, end = low - margin, high + margin
     if chart.view is not None:
-        ends = [end if math.isfinite(end) else ends[k] for k, end in enumerate(chart.view)]
-    return Axis(across_name(chart), ends[0], ends[1])
+        # An end that is not given is that of the rows, or beyond the one that is.
+        first, last = chart.view
+        width = max(end - begin, *(1e-6 * abs(each) for each in chart.view if math.isfinite(each)))
+        begin, end = (
+            first if math.isfinite(first) else min(begin, last - width),
+            last if math.isfinite(last) else max(end, first + width),
+        )
+    return Axis(across_name(chart), begin, end)
 
 
 def _up(panel: Panel) -> Axis:

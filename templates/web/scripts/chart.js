@@ -126,6 +126,7 @@ class Chart {
     const margin = 0.02 * (this.whole[1] - this.whole[0]) || Math.max(Math.abs(this.whole[1]) * 0.05, 1);
     this.whole = [this.whole[0] - margin, this.whole[1] + margin];
     this.view = given ? [given[0] ?? this.whole[0], given[1] ?? this.whole[1]] : [...this.whole];
+    if (!(this.view[1] > this.view[0])) this.view = [...this.whole]; // one end alone, beyond all rows
     this.across = found[0].across;
     this.lay(found.map(each => each.panels[0]));
   }

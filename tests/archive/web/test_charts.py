@@ -14,6 +14,8 @@ import h5py
 import numpy as np
 import pandas as pd
 import pytest
+from hypothesis import HealthCheck, given, settings
+from hypothesis import strategies as st
 from starlette.testclient import TestClient
 
 from archive import Archive
@@ -187,6 +189,44 @@ def test_nonsense_is_told_as_a_page(client: TestClient, path: str, status: int, 
     assert answer.status_code == status
     assert said in answer.text
     assert "Traceback" not in answer.text
+
+
+NAMES = st.one_of(
+    st.sampled_from(["time", "temperature", "period", "row", "temperature@empty-cell.1", "", "@", "=1+1"]),
+    st.text(max_size=12),
+)
+OVER = st.one_of(
+    st.sampled_from(
+        [f"{PLAIN}/s001", REDUCTION, f"{HOSTILE}/s001", "TO-1.r1", f"{PLAIN}/s002#period", PLAIN]
+    ),
+    st.text(max_size=12),
+)
+NUMBERS = st.one_of(
+    st.sampled_from(["300", "-1e308", "1e308", "inf", "nan", "1e-320", "0x10", "\u0663"]),
+    st.floats().map(str),
+)
+
+
+@settings(max_examples=40, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
+@given(
+    st.sampled_from(["points", "picture", "at", "download"]),
+    st.sampled_from([SWEEP, REDUCTION, f"{HOSTILE}/s001", f"{SWEEP}/period"]),
+    st.lists(
+        st.one_of(
+            st.tuples(st.just("y"), NAMES),
+            st.tuples(st.just("against"), NAMES),
+            st.tuples(st.just("with"), OVER),
+            st.tuples(st.sampled_from(["from", "to", "width"]), NUMBERS),
+        ),
+        max_size=6,
+    ),
+)
+def test_no_question_is_a_fault_of_the_server(
+    client: TestClient, page: str, address: str, question: list[tuple[str, str]]
+) -> None:
+    asked = [*question, ("as", "csv")] if page == "download" else question
+    answer = client.get(f"/{page}/{address}", params=asked)
+    assert answer.status_code in (200, 400, 404), answer.text
 
 
 def test_what_cannot_be_laid_over_is_told_on_the_page(client: TestClient) -> None:
