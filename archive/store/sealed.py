@@ -63,7 +63,7 @@ def writing(path: Path) -> Iterator[None]:
         raise ArchiveError(
             "the archive could not be written to; nothing of this file was kept",
             file=str(path),
-            found=getattr(error, "strerror", None) or _system_message(str(error)),
+            found=_system_message(getattr(error, "strerror", None) or str(error)),
             remedy="make room or mend the disk, then try again",
         ) from error
 

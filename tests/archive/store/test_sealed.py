@@ -155,3 +155,13 @@ def test_a_full_disk_is_told_in_the_words_of_the_system(tmp_path: Path) -> None:
     said = "Can't write chunk (file write failed: errno = 28, error message = 'No space left on device', buf = 0x55)"
     with pytest.raises(ArchiveError, match="found No space left on device; make room"), writing(tmp_path):
         raise OSError(said)
+
+
+def test_of_a_failed_write_the_words_of_the_system_are_told(tmp_path: Path) -> None:
+    """As HDF5 told it on a full tmpfs."""
+    told = "Can't write data (file write failed: errno = 28, error message = 'No space left on device', buf = 0x5624491783d8)"
+    with (
+        pytest.raises(ArchiveError, match=r"found No space left on device; make room"),
+        writing(tmp_path / "x.h5"),
+    ):
+        raise OSError(28, told)
