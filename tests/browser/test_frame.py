@@ -26,10 +26,12 @@ _OVERFLOW = "() => document.documentElement.scrollWidth - document.documentEleme
 def test_everybody_can_read_every_page(browser: Browser, server: str) -> None:
     """Between light and dark nothing differs but colours."""
     everything = {"runOnly": ["wcag2a", "wcag2aa", "wcag21a", "wcag21aa", "wcag22aa", "best-practice"]}
-    for scheme, rules in (("light", everything), ("dark", {"runOnly": ["color-contrast"]})):
+    dark = ("/search?coverage=20", "/state", f"/at/{PLAIN}", f"/at/{HOSTILE}")
+    colours = {"runOnly": ["color-contrast"]}
+    for scheme, rules, paths in (("light", everything, PAGES), ("dark", colours, dark)):
         context = browser.new_context(base_url=server, color_scheme=scheme)
         page = context.new_page()
-        for path in PAGES:
+        for path in paths:
             page.goto(path)
             found = Axe().run(page, options=rules)
             assert found.violations_count == 0, f"{path} {scheme}: {found.generate_report()}"
