@@ -36,7 +36,6 @@ HEADERS = {
 }
 """On every answer."""
 
-_COOKIE = "stillroom-token"
 ANY_ADDRESS = "*"
 """In `hosts`: any number of an address is welcome too, since a number cannot be given another meaning."""
 
@@ -91,7 +90,7 @@ class Guard:
         return name in self._hosts or (ANY_ADDRESS in self._hosts and _is_number(name))
 
     def _without_token(self, request: Request, token: str) -> Response | None:
-        if _equal(request.cookies.get(_COOKIE, ""), token):
+        if _equal(request.cookies.get(_cookie(request), ""), token):
             return None
         given = list(_query(request))
         if any(name == "token" and _equal(value, token) for name, value in given):
@@ -99,7 +98,7 @@ class Guard:
             # Without a host: back to where the browser came from, with the token out of its history.
             path = "/" + request.scope["raw_path"].decode("ascii", "replace").lstrip("/")
             answer = RedirectResponse(f"{path}?{rest}" if rest else path, 303)
-            answer.set_cookie(_COOKIE, token, httponly=True, samesite="strict", path="/")
+            answer.set_cookie(_cookie(request), token, httponly=True, samesite="strict", path="/")
             answer.headers["Cache-Control"] = "no-store"
             return answer
         return PlainTextResponse(
@@ -107,6 +106,12 @@ class Guard:
             401,
             headers={"WWW-Authenticate": "stillroom-token", "Cache-Control": "no-store"},
         )
+
+
+def _cookie(request: Request) -> str:
+    """Return the name of the cookie: browsers do not keep those of two ports of one machine apart."""
+    server = request.scope.get("server") or ("", 0)
+    return f"stillroom-token-{server[1] or 0}"
 
 
 def _query(request: Request) -> Iterator[tuple[str, str]]:

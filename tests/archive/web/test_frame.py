@@ -11,7 +11,7 @@ from starlette.testclient import TestClient
 from archive.web import application
 from archive.web.links import address_at, path_of
 from archive.web.serving import is_loopback
-from tests.filled_archive import filled
+from tests.filled_archive import PLAIN, filled
 
 
 @pytest.mark.parametrize("path", ["/", "/cooldowns", "/at/2025-11", "/nowhere", "/at/2026-04", "/to"])
@@ -137,3 +137,19 @@ def test_a_lost_or_damaged_index_has_its_page(tmp_path: Path) -> None:
         (lab / "index.sqlite3").write_bytes(b"no database" * 1000)
         damaged = visitor.get("/cooldowns")
         assert (damaged.status_code, "Something is damaged" in damaged.text) == (500, True)
+
+
+def test_a_damaged_sealed_file_is_named_and_the_rest_goes_on(tmp_path: Path) -> None:
+    lab = filled(tmp_path)
+    hurt = lab / "sealed" / PLAIN / f"{PLAIN}.a1.h5"
+    content = bytearray(hurt.read_bytes())
+    content[: len(content) // 2] = bytes(len(content) // 2)
+    hurt.chmod(0o644)
+    hurt.write_bytes(content)
+    (lab / "journal.jsonl").unlink()
+    with TestClient(application(lab), base_url="http://localhost") as visitor:
+        damaged = visitor.get(f"/at/{PLAIN}")
+        assert (damaged.status_code, f"{PLAIN}.a1" in damaged.text) == (500, True)
+        assert "stillroom mend --from COPY" in damaged.text
+        assert visitor.get("/search").status_code == 200
+        assert "No fixity pass is on record" in visitor.get("/state").text
