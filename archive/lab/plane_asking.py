@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import math
 from collections.abc import Callable
 from typing import Final
 
@@ -25,6 +24,9 @@ _EXAMPLES = {
 }
 # Relative to the larger end: closer, and rounding shows.
 _NARROWEST = 1e-9
+# In SI units: beyond what any laboratory has, and far from where numbers of a computer end.
+_FARTHEST = 1e12
+_LEAST = 1e-15
 
 
 def plane_window(
@@ -74,9 +76,9 @@ def _ends(name: str, text: str | None, kind: str, *, log: bool, field: str) -> t
         low, high = si_bounds(text, to_si)
     except ValueError as error:
         raise BadRequest(str(error), field=field, expected=expected) from None
-    if low is None or high is None or not math.isfinite(high - low) or (log and low <= 0):
+    if low is None or high is None or not -_FARTHEST <= low <= high <= _FARTHEST or (log and low < _LEAST):
         raise BadRequest("the plane has no such part", field=field, found=text, expected=expected)
-    if not high - low > _NARROWEST * max(abs(low), abs(high)):
+    if not high - low > max(_NARROWEST * max(abs(low), abs(high)), _LEAST):
         raise BadRequest(
             "there is nothing to see between these ends", field=field, found=text, expected=expected
         )

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 import math
 import re
 from collections.abc import Iterator
@@ -9,10 +10,16 @@ from pathlib import Path
 from xml.etree import ElementTree as ET
 
 import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
 from starlette.testclient import TestClient
 
 from archive import Archive
+from archive.errors import BadRequest
+from archive.lab.plane_asking import plane_window, window_fields
+from archive.reports.plane_view import PlaneAxis, PlaneView
 from archive.web import application
+from archive.web.plane_drawing import drawing
 from tests.plane_archive import planed
 
 
@@ -210,3 +217,36 @@ def test_an_empty_archive_says_what_to_do_next(tmp_path: Path) -> None:
         assert "plane-field" not in text
         assert client.get("/plane.svg").status_code == 200
         assert "No sweep has a place here" in client.get("/?state=stale").text
+
+
+_ends = st.tuples(
+    st.floats(allow_nan=False, allow_infinity=False), st.floats(allow_nan=False, allow_infinity=False)
+)
+_axes = st.sampled_from(["coverage", "pressure", "cell"])
+
+
+@settings(max_examples=300)
+@given(axis=_axes, warm=_ends, height=_ends)
+def test_every_part_that_can_be_asked_for_can_be_drawn(
+    *, axis: PlaneAxis, warm: tuple[float, float], height: tuple[float, float]
+) -> None:
+    """However far or close two ends are, they are refused with a sentence, or the sides get their ticks."""
+    unit = {"coverage": "mol/m^2", "pressure": "Pa", "cell": ""}[axis]
+    texts = [f"{min(ends)!r}:{max(ends)!r}" for ends in (warm, height)]
+    try:
+        window = plane_window(axis, temperature=f"{texts[0]} K", height=f"{texts[1]} {unit}".strip())
+    except BadRequest:
+        return
+    assert window is not None
+    view = PlaneView(axis=axis, cells=(), window=window, lanes=(("C", 0),) if axis == "cell" else ())
+    drawn = drawing(view, lambda _: "")
+    assert len(drawn.across) < 20
+    assert len(drawn.upright) < 20
+    assert plane_window(axis, **{"temperature" if name == "temperature" else "height": text for name, text in window_fields(window, axis).items()}) is not None  # fmt: skip
+
+
+@settings(max_examples=300)
+@given(axis=_axes, temperature=st.text(max_size=30), height=st.text(max_size=30))
+def test_any_text_for_a_part_is_answered(*, axis: PlaneAxis, temperature: str, height: str) -> None:
+    with contextlib.suppress(BadRequest):
+        assert plane_window(axis, temperature=temperature, height=height) is not None
