@@ -1,4 +1,4 @@
-"""Run benchmarks: ``python -m tests.benchmarks [NAME ...] [--size small|default] [--rounds N] [--json FILE]``."""
+"""Run benchmarks: ``python -m tests.benchmarks [NAME ...] [--size small|default|full] [--rounds N] [--json FILE]``."""
 
 from __future__ import annotations
 
@@ -22,7 +22,7 @@ def main(arguments: list[str] | None = None) -> int:
         epilog="benchmarks: " + "; ".join(f"{each.name}: {each.description}" for each in BENCHMARKS),
     )
     parser.add_argument("names", nargs="*", metavar="NAME", help=f"of {', '.join(names)}; all without")
-    parser.add_argument("--size", choices=("small", "default"), default="default")
+    parser.add_argument("--size", choices=("small", "default", "full"), default="default")
     parser.add_argument(
         "--rounds", type=int, default=ROUNDS, help=f"turns of each side, at least {ROUNDS} (the default)"
     )
@@ -55,13 +55,23 @@ def main(arguments: list[str] | None = None) -> int:
 
 def _lines(result: Measured) -> str:
     benchmark = result.benchmark
+    timed = benchmark.cost == "s"
+    unit, scale = ("s", 1.0) if timed else ("MB", 1e-6)
     rows = "".join(
-        f"  {statistics.median(times):12.6f} s  ({min(times):.6f} to {max(times):.6f})  {words}\n"
-        for times, words in ((result.subject_s, benchmark.subject), (result.baseline_s, benchmark.baseline))
+        f"  {scale * statistics.median(costs):12.6f} {unit}  ({scale * min(costs):.6f} to {scale * max(costs):.6f})  {words}\n"
+        for costs, words in (
+            (result.subject_cost, benchmark.subject),
+            (result.baseline_cost, benchmark.baseline),
+        )
+    )
+    last = (
+        f"times as fast; the results differ by {result.difference:.1e} of the largest value"
+        if timed
+        else "times as much costs the baseline"
     )
     return (
-        f"{benchmark.name}: {benchmark.description} ({result.amount} {benchmark.unit}, {len(result.subject_s)} rounds, medians)\n"
-        f"{rows}  {result.ratio:12.1f} times as fast; the results differ by {result.difference:.1e} of the largest value\n"
+        f"{benchmark.name}: {benchmark.description} ({result.amount} {benchmark.unit}, {len(result.subject_cost)} rounds, medians)\n"
+        f"{rows}  {result.ratio:12.2f} {last}\n"
     )
 
 

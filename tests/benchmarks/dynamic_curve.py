@@ -22,7 +22,7 @@ B, L, F, X0 = 5.5, 12.0, 1.0, -0.5
 
 
 def _prepare(size: Size) -> Work:
-    ratio = np.linspace(0.9, 1.1, 2000 if size == "default" else 12)
+    ratio = np.linspace(0.9, 1.1, 2000 if size != "small" else 12)
 
     def subject() -> np.ndarray:
         return complex_stiffness(fixed_start(ratio, b=B, x0=X0), L=L, F=F)

@@ -23,7 +23,7 @@ import numpy.typing as npt
 
 __all__ = ["ROUNDS", "Benchmark", "Disagreement", "Measured", "Size", "Work", "document", "measured", "write"]
 
-Size = Literal["small", "default"]
+Size = Literal["small", "default", "full"]
 
 ROUNDS = 5
 """Rounds at the least; the middle of five is not moved by two that something disturbed."""
@@ -36,7 +36,8 @@ class Work:
     Attributes
     ----------
     subject, baseline : callable
-        Do the work on that input and return its result: numbers, in an order that both share.
+        Do the work on that input and return its result: numbers, in an order that both share, or something that
+        gives them when `numpy.asarray` asks, which is not timed. Where not seconds but bytes are the cost, they return it.
     amount : int
         How much was done, in the benchmark's `unit`.
     close : callable, optional
@@ -67,6 +68,9 @@ class Benchmark:
         Takes the size, returns the work.
     tolerance : float
         By how much the two results may differ, as a fraction of the largest value of the baseline's.
+    cost : {"s", "bytes"}
+        What the two sides are held against each other by: seconds, or bytes of memory or of a file, which each side
+        returns; those are no results, so they are not compared.
     """
 
     name: str
@@ -76,18 +80,20 @@ class Benchmark:
     unit: str
     prepare: Callable[[Size], Work]
     tolerance: float = 0.0
+    cost: Literal["s", "bytes"] = "s"
 
 
 @dataclass(frozen=True)
 class Measured:
-    """Times of both sides, s, round by round, and how far the results were apart.
+    """Costs of both sides, round by round, and how far the results were apart.
 
     Attributes
     ----------
     benchmark : Benchmark
     size : str
     amount : int
-    subject_s, baseline_s : tuple of float
+    subject_cost, baseline_cost : tuple of float
+        In seconds, or in the benchmark's own `cost`.
     difference : float
         Largest difference of the two results, as a fraction of the largest value.
     """
@@ -95,14 +101,14 @@ class Measured:
     benchmark: Benchmark
     size: Size
     amount: int
-    subject_s: tuple[float, ...]
-    baseline_s: tuple[float, ...]
+    subject_cost: tuple[float, ...]
+    baseline_cost: tuple[float, ...]
     difference: float
 
     @property
     def ratio(self) -> float:
-        """How many times longer the baseline takes, by the medians."""
-        return statistics.median(self.baseline_s) / statistics.median(self.subject_s)
+        """How many times as much the baseline costs, by the medians."""
+        return statistics.median(self.baseline_cost) / statistics.median(self.subject_cost)
 
 
 class Disagreement(Exception):
@@ -110,12 +116,12 @@ class Disagreement(Exception):
 
 
 def measured(benchmark: Benchmark, *, size: Size = "default", rounds: int = ROUNDS) -> Measured:
-    """Return the times of both sides, taken in turns.
+    """Return the costs of both sides, taken in turns.
 
     Parameters
     ----------
     benchmark : Benchmark
-    size : {"small", "default"}
+    size : {"small", "default", "full"}
     rounds : int
         At least one; below `ROUNDS` only to try whether a benchmark runs.
 
@@ -127,15 +133,18 @@ def measured(benchmark: Benchmark, *, size: Size = "default", rounds: int = ROUN
     work = benchmark.prepare(size)
     try:
         # This first round also loads what either side imports; its times do not count.
-        difference = _difference(benchmark, work)
-        times: tuple[list[float], list[float]] = ([], [])
+        difference = _difference(benchmark, work) if benchmark.cost == "s" else 0.0
+        costs: tuple[list[float], list[float]] = ([], [])
         for number in range(rounds):
             # Who goes first changes: what one leaves in the processor's cache is no one's gain.
             for side in (0, 1) if number % 2 == 0 else (1, 0):
-                times[side].append(_seconds((work.subject, work.baseline)[side]))
+                function = (work.subject, work.baseline)[side]
+                costs[side].append(
+                    _seconds(function) if benchmark.cost == "s" else float(np.asarray(function()))
+                )
     finally:
         work.close()
-    return Measured(benchmark, size, work.amount, tuple(times[0]), tuple(times[1]), difference)
+    return Measured(benchmark, size, work.amount, tuple(costs[0]), tuple(costs[1]), difference)
 
 
 def _seconds(function: Callable[[], Any]) -> float:
@@ -161,7 +170,7 @@ def _difference(benchmark: Benchmark, work: Work) -> float:
 
 
 def document(results: list[Measured]) -> dict[str, Any]:
-    """Return what was measured, and where, ready for JSON; times in seconds."""
+    """Return what was measured, and where, ready for JSON; costs in seconds or bytes, as their names end."""
     return {
         "schema": 1,
         "python": platform.python_version(),
@@ -178,10 +187,10 @@ def document(results: list[Measured]) -> dict[str, Any]:
                 "size": each.size,
                 "amount": each.amount,
                 "unit": each.benchmark.unit,
-                "subject_s": list(each.subject_s),
-                "baseline_s": list(each.baseline_s),
-                "subject_median_s": statistics.median(each.subject_s),
-                "baseline_median_s": statistics.median(each.baseline_s),
+                f"subject_{each.benchmark.cost}": list(each.subject_cost),
+                f"baseline_{each.benchmark.cost}": list(each.baseline_cost),
+                f"subject_median_{each.benchmark.cost}": statistics.median(each.subject_cost),
+                f"baseline_median_{each.benchmark.cost}": statistics.median(each.baseline_cost),
                 "ratio": each.ratio,
                 "largest_relative_difference": each.difference,
                 "tolerance": each.benchmark.tolerance,

@@ -5,12 +5,33 @@ To add one: a module beside this one with a `BENCHMARK`, and its line in the lis
 
 from __future__ import annotations
 
-from tests.benchmarks import dynamic_curve, pages, picture, plane
+from tests.benchmarks import (
+    bad_cells,
+    dynamic_curve,
+    ingest,
+    ingest_memory,
+    pages,
+    picture,
+    plane,
+    sealed_files,
+)
 from tests.benchmarks.harness import Benchmark
 
 __all__ = ["BENCHMARKS"]
 
 BENCHMARKS: tuple[Benchmark, ...] = (
+    ingest.LOG,
+    ingest.LOG_BARE,
+    ingest_memory.BENCHMARK,
+    ingest.SMALL,
+    ingest.SMALL_SIZE,
+    ingest.MANY,
+    bad_cells.ONE,
+    bad_cells.MANY,
+    sealed_files.WRITE,
+    sealed_files.WRITE_SIZE,
+    sealed_files.READ,
+    sealed_files.FIXITY,
     dynamic_curve.BENCHMARK,
     pages.BENCHMARK,
     plane.BENCHMARK,

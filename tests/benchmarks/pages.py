@@ -50,7 +50,7 @@ _BASE = "http://localhost"
 def _prepare(size: Size) -> Work:
     folder = Path(tempfile.mkdtemp(prefix="stillroom-pages-"))
     Archive.create(folder / "lab").close()
-    made = wide_index(folder, 100_000 if size == "default" else 200)
+    made = wide_index(folder, 100_000 if size != "small" else 200)
     shutil.move(made, folder / "lab" / made.name)
     held = ExitStack()
     client = held.enter_context(TestClient(application(folder / "lab"), base_url=_BASE))

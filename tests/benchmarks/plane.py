@@ -38,7 +38,7 @@ _TRANSITIONS = """
 
 def _prepare(size: Size) -> Work:
     folder = tempfile.TemporaryDirectory(prefix="stillroom-plane-")
-    sweeps = 100_000 if size == "default" else 3_000
+    sweeps = 100_000 if size != "small" else 3_000
     path = wide_index(Path(folder.name), sweeps)
     index = Index.open(f"sqlite:///{path}", read_only=True)
     source = LabSource(MemoryStore(), index)
