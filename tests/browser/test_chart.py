@@ -103,6 +103,15 @@ def test_a_pointer_is_told_the_nearest_point(page: Page) -> None:
     assert " ± 0.1" in said
 
 
+def test_ticks_say_what_they_stand_at(page: Page) -> None:
+    """A step of a quarter has two places: rounded to one, 0.25 would be told as 0.3."""
+    page.goto(f"{SWEEP}?against=temperature&y=period")
+    page.wait_for_selector(_READY)
+    script = page.locator("script[type=module]").get_attribute("src")
+    told = "async script => { const { digits } = await import(script); return [0.25, 0.5, 1, 2.5, 20, 0.002, 2.5e-7].map(digits); }"
+    assert page.evaluate(told, script) == [2, 1, 0, 1, 0, 3, 8]
+
+
 def test_two_sweeps_are_laid_over_and_one_taken_off(page: Page) -> None:
     page.goto(f"{SWEEP}?against=temperature&y=period")
     page.get_by_label("lay over").fill(f"{PLAIN}/s001")

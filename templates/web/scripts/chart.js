@@ -8,9 +8,15 @@ const MOST_MARKS = 400, MOST_BARS = 120, WAIT_MS = 90;
 const style = name => getComputedStyle(document.documentElement).getPropertyValue(name).trim();
 const colour = look => style(`--look-${look % MARKS.length}`);
 
-function digits(step) {
-  return Math.min(12, Math.max(0, -Math.floor(Math.log10(step) + 1e-9)));
+// Places after the point in which every multiple of a step can be told, 0.25 as 0.25.
+export function digits(step) {
+  let places = Math.max(0, -Math.floor(Math.log10(step) + 1e-9));
+  while (places < 12 && Math.abs(step * 10 ** places - Math.round(step * 10 ** places)) > 1e-6) places++;
+  return Math.min(12, places);
 }
+
+// Texts grow with those of the page.
+const size = () => parseFloat(getComputedStyle(document.documentElement).fontSize) / 16 || 1;
 
 function tickTexts(values, step) {
   const places = digits(step);
@@ -164,7 +170,7 @@ class Chart {
     this.picture.after(live);
     this.live = live;
     const left = height - (live.firstChild ? live.firstChild.offsetHeight : 0);
-    this.strips = panels.map((panel, number) => this.strip(panel, Math.floor((left - 30) / panels.length) + (number === panels.length - 1 ? 30 : 0), number === panels.length - 1));
+    this.strips = panels.map((panel, number) => this.strip(panel, Math.floor((left - 38 * size()) / panels.length) + (number === panels.length - 1 ? Math.floor(38 * size()) : 0), number === panels.length - 1));
     this.fill(this.figure.querySelector(".move"));
     live.addEventListener("keydown", event => this.pressed(event));
     live.addEventListener("wheel", event => this.turned(event), { passive: false });
@@ -210,11 +216,11 @@ class Chart {
     this.live.append(box);
     const strip = { panel, plot: null, box };
     const ink = () => style("--ink"), rule = () => style("--rule");
-    const wide = this.width >= 600 ? 84 : 66;
+    const grown = size(), wide = (this.width >= 600 ? 84 : 66) * grown;
     of.style.left = `${wide}px`;
-    const axis = { stroke: ink, font: "13px Georgia, serif", labelFont: "13px Georgia, serif", grid: { stroke: rule, width: 0.7 }, ticks: { show: false } };
+    const axis = { stroke: ink, font: `${13 * grown}px Georgia, serif`, labelFont: `${13 * grown}px Georgia, serif`, grid: { stroke: rule, width: 0.7 }, ticks: { show: false } };
     strip.plot = new uPlot({
-      width: this.width, height, padding: [22, 14, 0, 0],
+      width: this.width, height, padding: [22 * grown, 14, 0, 0],
       legend: { show: false },
       cursor: { sync: { key: this.figure.dataset.points, setSeries: false }, drag: { x: true, y: false, dist: 6 }, points: { show: false } },
       scales: {
@@ -222,8 +228,8 @@ class Chart {
         y: { distr: panel.log ? 3 : 1, range: () => reach(strip.panel.curves, this.view[0], this.view[1], panel.log) },
       },
       axes: [
-        { ...axis, size: last ? 44 : 8, label: last ? this.across : undefined, labelSize: last ? 20 : 0, space: 90, values: last ? (u, splits, _a, _s, step) => tickTexts(splits, step) : (u, splits) => splits.map(() => "") },
-        { ...axis, size: wide - 22, label: panel.axis, labelSize: 22, space: 36, ...(panel.log ? {} : { values: (u, splits, _a, _s, step) => tickTexts(splits, step) }) },
+        { ...axis, size: last ? 24 * grown : 8, label: last ? this.across : undefined, labelSize: last ? 22 * grown : 0, labelGap: 0, space: 90 * grown, values: last ? (u, splits, _a, _s, step) => tickTexts(splits, step) : (u, splits) => splits.map(() => "") },
+        { ...axis, size: wide - 22 * grown, label: panel.axis, labelSize: 22 * grown, space: 36 * grown, ...(panel.log ? {} : { values: (u, splits, _a, _s, step) => tickTexts(splits, step) }) },
       ],
       series: [{}, { show: true, paths: () => null, points: { show: false } }],
       hooks: {
