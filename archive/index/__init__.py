@@ -16,6 +16,7 @@ from archive.index.answers import (
     SweepRow,
 )
 from archive.index.index import Document, Entry, Index
+from archive.index.life_answers import LifeResult, Resting, Use
 from archive.index.plane_answers import CellUse, PlaneResult, PlaneSweep, Span
 
 __all__ = [
@@ -29,11 +30,13 @@ __all__ = [
     "FindingRow",
     "Index",
     "InputRow",
+    "LifeResult",
     "PlaneResult",
     "PlaneSweep",
     "RawFileRow",
     "RecordRow",
     "ReductionRow",
+    "Resting",
     "ResultCondition",
     "ResultRow",
     "RevisionRow",
@@ -41,5 +44,6 @@ __all__ = [
     "Span",
     "SweepResult",
     "SweepRow",
+    "Use",
     "WithdrawalRow",
 ]

@@ -15,7 +15,7 @@ from contextlib import closing, contextmanager, suppress
 from itertools import zip_longest
 from pathlib import Path
 from types import TracebackType
-from typing import Any, Self
+from typing import Any, Literal, Self
 
 from sqlalchemy import Connection, Engine, Table
 from sqlalchemy.engine import URL
@@ -51,6 +51,8 @@ from archive.index.engine import (
     writing,
 )
 from archive.index.flags import flagged
+from archive.index.life_answers import LifeResult, Resting, Use
+from archive.index.life_queries import Role, life_results, resting_reductions, uses
 from archive.index.plane_answers import CellUse, PlaneResult, PlaneSweep, Span
 from archive.index.plane_queries import (
     cells_and_substrates,
@@ -598,6 +600,26 @@ class Index:
     def resting_on(self, address: str) -> list[str]:
         """Reductions that took something from a thing or a part of it, or followed it if it is a plan; not those behind."""
         return [row["address"] for row in self._mappings(act_queries.resting_on(address))]
+
+    def life_results(
+        self, role: Literal["cell", "substrate"], name: str, results: Sequence[str]
+    ) -> list[LifeResult]:
+        """Headline results of some names that current reductions found of a cell's or a substrate's sweeps, in order of time."""
+        amended = self._is_amended()
+        with reading(self._engine, self._url) as connection:
+            asked = life_results(role, name, results, amended=amended)
+            return list(map(LifeResult._make, connection.execute(asked).all()))
+
+    def uses(self, role: Role, name: str) -> list[Use]:
+        """Cooldowns with the revisions of a thing that their sweeps name, in order of time."""
+        amended = self._is_amended()
+        with reading(self._engine, self._url) as connection:
+            return list(map(Use._make, connection.execute(uses(role, name, amended=amended)).all()))
+
+    def resting_reductions(self, address: str) -> list[Resting]:
+        """Reductions that took a record, or followed it if it is a plan; older and withdrawn ones are marked."""
+        with reading(self._engine, self._url) as connection:
+            return list(map(Resting._make, connection.execute(resting_reductions(address)).all()))
 
     def flagged(self) -> dict[str, tuple[str, ...]]:
         """Reductions that rest on something withdrawn, each with the addresses of what that is."""

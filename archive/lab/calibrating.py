@@ -4,11 +4,17 @@ from __future__ import annotations
 
 from archive.errors import ArchiveError, BadRequest, UnknownAddress
 from archive.lab.source import LabSource
-from archive.reduction.calibration_comparison import Drift, drifts
+from archive.reduction.calibration_comparison import Drift, compared, drifts
 from archive.reduction.calibration_record import calibration_from, calibration_thermometer
 from schemas.thermometer import Calibration, Thermometer
 
-__all__ = ["archived_calibrations", "calibration_drift", "made_calibration", "record_as_made"]
+__all__ = [
+    "archived_calibrations",
+    "calibration_drift",
+    "calibrations_against_last",
+    "made_calibration",
+    "record_as_made",
+]
 
 
 def made_calibration(
@@ -70,10 +76,28 @@ def calibration_drift(source: LabSource, thermometer: str) -> list[Drift]:
     UnknownAddress
         The archive holds no thermometer of that name.
     """
+    return drifts(archived_calibrations(source, _thermometer(source, thermometer)))
+
+
+def calibrations_against_last(
+    source: LabSource, thermometer: str
+) -> tuple[tuple[Calibration, ...], list[Drift]]:
+    """Return every calibration of a thermometer, oldest first, and the last one held against each before it.
+
+    Raises
+    ------
+    UnknownAddress
+        The archive holds no thermometer of that name.
+    """
+    every = archived_calibrations(source, _thermometer(source, thermometer))
+    return every, [compared(each, every[-1]) for each in every[:-1]]
+
+
+def _thermometer(source: LabSource, thermometer: str) -> str:
     name = thermometer.partition(".r")[0]
     if not isinstance(source.find_record(name), Thermometer):
         known = ", ".join(sorted({row.name for row in source.index.records(kind="thermometer")})) or "none yet"  # fmt: skip
         raise UnknownAddress(
             f"there is no thermometer {thermometer} in this archive", expected=f"one of: {known}"
         )
-    return drifts(archived_calibrations(source, name))
+    return name

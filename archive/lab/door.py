@@ -46,6 +46,7 @@ from archive.lab.forward import forward as lineage_forward
 from archive.lab.index_check import index_damage
 from archive.lab.journaling import AFTERWARDS, Acts
 from archive.lab.keeping import MirrorOutcome
+from archive.lab.life import Life, Rests, life, resting
 from archive.lab.lineage_pictures import lineage_picture, sweep_picture
 from archive.lab.marks import marked, marks_of
 from archive.lab.outcomes import CheckReport, IngestOutcome, ReduceOutcome, ReplayReport
@@ -719,6 +720,18 @@ class Archive:
     def calibration_drift(self, thermometer: str) -> list[Drift]:
         """Each calibration of a thermometer held against the one before it."""
         return calibrating.calibration_drift(self._source, thermometer)
+
+    def calibrations_against_last(self, thermometer: str) -> tuple[tuple[Calibration, ...], list[Drift]]:
+        """Every calibration of a thermometer, oldest first, and the last one held against each before it."""
+        return calibrating.calibrations_against_last(self._source, thermometer)
+
+    def life(self, name: str) -> Life:
+        """Life story of a cell, substrate, thermometer, calibration, sample, cryostat or plan over all cooldowns."""
+        return life(self._source, name)
+
+    def resting(self, address: str) -> Rests:
+        """Reductions that rest on a revision of a record or plan, directly or through others, up to 300 of them."""
+        return resting(self._source, address)
 
     # Telling ------------------------------------------------------------------------------------------------------
 

@@ -22,7 +22,7 @@ from archive.reduction.thermometry_steps import calibrated_temperature, resistan
 from schemas.quantity import unit_factor
 from schemas.thermometer import Calibration, CurieWeissForm, MeltingCurveForm, VapourPressureForm
 
-__all__ = ["Drift", "compared", "drifts"]
+__all__ = ["Drift", "compared", "drifts", "readings_at"]
 
 _POINTS = 25
 _GRID = 400
@@ -109,7 +109,7 @@ def _common(earlier: Calibration, later: Calibration) -> tuple[FloatArray, float
     if not low < high:
         raise ValueError("they have no temperatures in common")
     wanted = np.geomspace(low, high, _POINTS)
-    reading = _readings(earlier, wanted)
+    reading = readings_at(earlier, wanted)
     return reading, factor, calibrated_temperature(earlier, reading, unit_factor_of(earlier))
 
 
@@ -132,8 +132,20 @@ def _ratio(earlier: str, later: str) -> float:
     raise ValueError(f"their readings are in {earlier} and in {later}")
 
 
-def _readings(calibration: Calibration, temperature: FloatArray) -> FloatArray:
-    """Return readings at which a calibration gives about these temperatures; they need not be exact."""
+def readings_at(calibration: Calibration, temperature: FloatArray) -> FloatArray:
+    """Return readings at which a calibration gives about these temperatures; they need not be exact.
+
+    Parameters
+    ----------
+    calibration : Calibration
+    temperature : ndarray, shape (n,)
+        K, on its scale and in its range.
+
+    Returns
+    -------
+    ndarray, shape (n,)
+        In its `reading_unit`.
+    """
     relation = calibration.relation
     if isinstance(relation, CurieWeissForm):
         return np.asarray(relation.offset + relation.constant / (temperature - relation.theta))

@@ -9,6 +9,7 @@ from starlette.responses import Response
 
 from archive.errors import UnknownAddress
 from archive.web.cooldown import cooldown
+from archive.web.life import life
 from archive.web.links import address_at
 from archive.web.reduction import reduction
 from archive.web.site import lab_of
@@ -24,6 +25,9 @@ AT: dict[AddressKind | str, Callable[[Request, Address], Response]] = {
     "channel": sweep,
     "reduction": reduction,
     "output": reduction,
+    **dict.fromkeys(
+        ("cell", "substrate", "sample", "thermometer", "calibration", "cryostat", "plan", "record"), life
+    ),
 }
 """The page of each kind of address, and of each kind of record by its word; what is not here is shown by `thing`."""
 

@@ -12,6 +12,7 @@ pytestmark = pytest.mark.browser
 
 PAGES = (
     "/", "/search", "/search?coverage=20", "/cooldowns", "/cells", "/thermometers", "/state", f"/at/{PLAIN}", f"/at/{HOSTILE}", "/at/nowhere",
+    "/at/TO-1", "/at/SALT-1", "/at/empty-cell.r1", f"/at/{PLAIN}/s001@empty-cell.1/empty_period",
 )  # fmt: skip
 
 _SHIFT = """() => new Promise(done => {
@@ -89,6 +90,14 @@ def test_a_stroke_of_the_time_line_opens_its_sweep(page: Page) -> None:
     stroke.focus()
     page.keyboard.press("Enter")
     page.wait_for_url(f"**/at/{PLAIN}/s002")
+
+
+def test_a_point_of_a_life_story_opens_its_result(page: Page) -> None:
+    page.goto("/at/TO-1")
+    point = page.locator(".timeline a[href$='/empty_period']")
+    point.focus()
+    page.keyboard.press("Enter")
+    page.wait_for_url(f"**/at/{PLAIN}/s001@empty-cell.1/empty_period")
 
 
 def test_hostile_names_are_text(page: Page) -> None:

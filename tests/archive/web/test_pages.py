@@ -23,7 +23,7 @@ PAGES = (
     "/", "/search", "/search?cell=TO-1&sort=coverage&descending=true", "/search?words=nothing-like-it", "/search?coverage=20", "/cooldowns",
     "/cells", "/thermometers", "/state", f"/at/{PLAIN}", f"/at/{HOSTILE}", f"/at/{PLAIN}/s002", f"/at/{PLAIN}/s001@empty-cell.1",
     f"/at/{PLAIN}/s001@empty-cell.1/period_low", f"/at/{PLAIN}/s002/period", f"/at/{PLAIN}/d01", f"/at/{PLAIN}.a1", f"/at/{HOSTILE}.a1",
-    f"/at/{PLAIN}.a1:film.csv", "/at/TO-1", "/at/TO-1.r1", "/at/bob", "/at/PI-1", "/at/W-4", "/at/2025-12", "/at/x y", "/nowhere",
+    f"/at/{PLAIN}.a1:film.csv", "/at/TO-1", "/at/TO-1.r1", "/at/bob", "/at/PI-1", "/at/W-4", "/at/TO-1.r2", "/at/SALT-1", "/at/SALT-1-cal", "/at/DR-1", "/at/empty-cell.r1", "/at/2025-12", "/at/x y", "/nowhere",
 )  # fmt: skip
 _HANDLERS = re.compile(r"<[^>]*\s(?:on[a-z]+|style)\s*=", re.IGNORECASE)
 
