@@ -374,3 +374,24 @@ def test_a_list_goes_on_behind_its_last_sweep(filled: Index, sort: Any, descendi
 def test_a_list_cannot_go_on_behind_nothing(filled: Index) -> None:
     with pytest.raises(BadRequest, match="begin the list anew"):
         filled.search(SearchQuery(after="2026-03/s999"))
+
+
+def test_short_answers_agree_with_the_long_ones(filled: Index) -> None:
+    """What pages ask for without reading all of it is what reading all of it gives."""
+    assert filled.cooldown_names() == sorted(row.name for row in filled.cooldowns())
+    assert {row.name: row.reductions for row in filled.cooldowns()} == {
+        name: len(filled.reductions(cooldown=name)) for name in filled.cooldown_names()
+    }
+    assert {row.name: row.sweeps for row in filled.cooldowns()} == {"2026-03": 4, "2026-04": 1}
+    assert filled.sealed_files(under="2026-03/") == {
+        key: row for key, row in filled.sealed_files().items() if key.startswith("2026-03/")
+    }
+    everything = filled.findings()
+    counts = filled.finding_counts()
+    assert sum(count for *_, count in counts) == len(everything)
+    assert {(each.severity, each.code, each.waived) for each in everything} == {
+        (severity, code, bool(waived)) for severity, code, waived, _ in counts
+    }
+    assert {plan["name"] for plan in filled.plans()} == {row.plan for row in filled.reductions()}
+    assert filled.result_quantities("T_KT") == ["temperature"]
+    assert filled.result_quantities("nothing") == []
