@@ -79,6 +79,7 @@ def _content(request: Request, wanted: PlaneRequest) -> dict[str, Any]:
         "pore_words": pore_words,
         "unit": height_unit(wanted.axis),
         "choices": _choices(request),
+        "empty": not lab_of(request).cells_and_substrates(),
     }
     if table:
         return {**shared, **_table(view, wanted)}

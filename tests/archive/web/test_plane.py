@@ -216,7 +216,14 @@ def test_an_empty_archive_says_what_to_do_next(tmp_path: Path) -> None:
         assert "stillroom ingest" in text
         assert "plane-field" not in text
         assert client.get("/plane.svg").status_code == 200
-        assert "No sweep has a place here" in client.get("/?state=stale").text
+        assert "stillroom ingest" in client.get("/?state=stale").text
+
+
+def test_a_part_where_nothing_is_still_shows_the_way_out(client: TestClient) -> None:
+    text = client.get("/?temperature=0.3:0.4+K&coverage=50:60+umol/m^2").text
+    assert "No sweep has a place here" in text
+    assert ">as at first</a>" in text
+    assert "0 sweeps in this part of the plane." in text
 
 
 _ends = st.tuples(
