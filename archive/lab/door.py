@@ -81,7 +81,6 @@ from schemas.thermometer import Calibration
 
 if TYPE_CHECKING:
     from archive.lab.curves.chart import Asked, Chart, Outline
-    from archive.lab.curves.leaf import Leaf
     from archive.lab.plane import PlaneState
     from archive.reports import CooldownView
     from archive.reports.plane_view import PlaneAxis, PlaneView, Window
@@ -661,12 +660,6 @@ class Archive:
         from archive.lab.curves.chart import outline
 
         return outline(self._source, asked)
-
-    def leaf(self, address: str) -> Leaf:
-        """Columns that a sweep or a reduction has to draw, without reading them."""
-        from archive.lab.curves.leaf import leaf_of
-
-        return leaf_of(self._source, address)
 
     def shown_csv(self, asked: Asked) -> Iterator[str]:
         """Rows that a chart shows, all of them, as pieces of CSV."""

@@ -33,8 +33,8 @@ def reduction(request: Request, address: Address) -> Response:
     lab = lab_of(request)
     own = address.reduction or ""
     document = lab.reduction_document(own)
-    arrays = [each for each in document.outputs if each.rows is not None]
-    if address.part is not None and address.part not in {each.name for each in arrays}:
+    arrays = {each.name for each in document.outputs if each.rows is not None}
+    if address.part is not None and address.part not in arrays:
         return thing(request, address)
     stale = next((each.reasons for each in lab.stale(document.cooldown) if each.reduction == own), ())
     return page(
@@ -48,7 +48,6 @@ def reduction(request: Request, address: Address) -> Response:
         drawn=_drawn(request, document),
         steps=[(step, list(_parameters(step))) for step in document.steps],
         results=[each for each in document.outputs if each.rows is None],
-        arrays=arrays,
         covariances=list(_covariances(document)),
         lineage=lab.lineage_picture(own, link=path_of),
     )

@@ -30,7 +30,7 @@ _STEP_S = 0.1
 
 
 def _rows(size: Size) -> int:
-    return 10_000_000 if size != "small" else 2_000_000
+    return 10_000_000 if size != "small" else 1_200_000
 
 
 def _sealed(root: Path, rows: int) -> LocalStore:

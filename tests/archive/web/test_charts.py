@@ -21,6 +21,7 @@ from starlette.testclient import TestClient
 from archive import Archive
 from archive.web import application
 from tests.filled_archive import HOSTILE, PLAIN
+from tests.revisable_cooldown import calibration, write_calibrated
 
 SWEEP, REDUCTION = f"{PLAIN}/s002", f"{PLAIN}/s001@empty-cell.1"
 
@@ -121,19 +122,38 @@ def test_a_reduction_tells_steps_results_and_how_to_repeat_it(client: TestClient
     ET.fromstring(figure.text)  # noqa: S314 - our own
 
 
-def test_what_is_withdrawn_or_stale_says_so_first(tmp_path: Path) -> None:
-    from tests.small_cooldown import write_folder
-
+def test_what_is_stale_superseded_or_withdrawn_says_so_first(tmp_path: Path) -> None:
+    first, second = "2026-03/s001@empty-cell.1", "2026-03/s001@empty-cell.2"
+    sheet = tmp_path / "calibration.toml"
+    head = 'format = "stillroom-revision/1"\nby = "data steward"\nbecause = "measured again"\n'
+    sheet.write_text(head + calibration(2, first=3.01), encoding="utf-8")
     with Archive.create(tmp_path / "lab", name="Test laboratory") as lab:
-        lab.ingest(write_folder(tmp_path / "2026-03"))
-        made = [each.address for each in lab.reduce("2026-03") if each.address]
-        lab.withdraw("2026-03/s001", why="the bath was pumped", by="postdoc")
-    with TestClient(application(tmp_path / "lab"), base_url="http://localhost") as client:
-        for address in ("2026-03/s001", made[0]):
-            text = client.get(f"/at/{address}").text
-            assert text.index("<strong>withdrawn</strong>: the bath was pumped") < text.index("<h2")
-        laid = client.get("/at/2026-03/s002", params={"with": "2026-03/s001"})
-        assert "2026-03/s001" in laid.text
+        lab.ingest(write_calibrated(tmp_path / "2026-03"))
+        lab.reduce("2026-03", plan="empty-cell")
+        lab.revise(sheet)
+    stale = _text(tmp_path, first)
+    with Archive.open(tmp_path / "lab") as lab:
+        lab.reduce_stale()
+    superseded = _text(tmp_path, first)
+    with Archive.open(tmp_path / "lab") as lab:
+        lab.withdraw(second, why="the relation was copied wrongly", by="postdoc")
+    withdrawn, sweep = _text(tmp_path, second), _text(tmp_path, "2026-03/s001")
+    for text, said in (
+        (stale, "<strong>stale</strong>: RX-cal.r2 is the newest"),
+        (superseded, f'<strong>superseded by</strong>: <a class="address" href="/at/{second}">'),
+        (withdrawn, "<strong>withdrawn</strong>: the relation was copied wrongly"),
+    ):
+        assert text.count("<strong>", 0, text.index("<h2")) == 1
+        assert text.index(said) < text.index("<h2")
+    # The second one is withdrawn, so that the first counts again.
+    assert re.search(rf"{first}</a>.*?<td>current</td>", sweep, flags=re.DOTALL)
+    assert re.search(rf"{second}</a>.*?<td>withdrawn</td>", sweep, flags=re.DOTALL)
+
+
+def _text(folder: Path, address: str) -> str:
+    """A page of the archive in a folder as it is now."""
+    with TestClient(application(folder / "lab"), base_url="http://localhost") as client:
+        return client.get(f"/at/{address}").text
 
 
 @pytest.mark.parametrize(
