@@ -11,6 +11,7 @@ from archive.lab.stale import StaleReason
 from archive.web.charting import Charting, charting
 from archive.web.links import path_of
 from archive.web.page import page
+from archive.web.result import result
 from archive.web.site import lab_of
 from archive.web.thing import thing
 from schemas.address import Address
@@ -23,7 +24,7 @@ _DIGITS = 3
 
 
 def reduction(request: Request, address: Address) -> Response:
-    """Answer with the page of a reduction or of one of its arrays; a scalar result is shown as the thing that it is.
+    """Answer with the page of a reduction or of one of its arrays; a scalar result has one of its own.
 
     Parameters
     ----------
@@ -35,7 +36,9 @@ def reduction(request: Request, address: Address) -> Response:
     document = lab.reduction_document(own)
     arrays = {each.name for each in document.outputs if each.rows is not None}
     if address.part is not None and address.part not in arrays:
-        return thing(request, address)
+        # What is no output at all is refused there, with a word on what there is.
+        scalar = any(each.name == address.part for each in document.outputs)
+        return (result if scalar else thing)(request, address)
     stale = next((each.reasons for each in lab.stale(document.cooldown) if each.reduction == own), ())
     return page(
         request,

@@ -74,3 +74,22 @@ def test_a_revision_that_is_not_there_says_which_are(client: TestClient) -> None
     answer = client.get("/at/TO-1.r7")
     assert answer.status_code == 404
     assert "TO-1.r2" in answer.text
+
+
+def test_a_result_tells_its_budget_its_use_and_how_it_stands(client: TestClient, root: Path) -> None:
+    own = f"{PLAIN}/s001@empty-cell.1"
+    text = client.get(f"/at/{own}/empty_period").text
+    assert re.search(r'class="value">empty period = 1\.000000\d*\(\d+\)', text)
+    table = text[text.index('<table class="budget">') :]
+    table = table[: table.index("</table>")]
+    shares = [float(each) for each in re.findall(r">([0-9.e-]+) %</td>", table)]
+    assert sum(shares[:-1]) == pytest.approx(shares[-1], abs=1.0)
+    assert shares[-1] == 100
+    # A bar for each share, and every bar of the budget as long as its share of 159 px.
+    bars = [float(each) for each in re.findall(r'y="2" width="([0-9.]+)"', table)]
+    assert bars == pytest.approx([1.59 * each for each in shares], abs=1.0)
+    assert f'href="/at/{PLAIN}.a1:empty.csv"' in text
+    assert "Nothing rests on it" in text
+    assert client.get(f"/at/{own}/no_such_thing").status_code == 404
+    with Archive.open(root, read_only=True) as lab:
+        assert lab.trace(f"{own}#empty_period", forward=True).children == ()
