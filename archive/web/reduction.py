@@ -9,6 +9,7 @@ from starlette.responses import Response
 
 from archive.lab.stale import StaleReason
 from archive.web.charting import Charting, charting
+from archive.web.correlations import correlations
 from archive.web.links import path_of
 from archive.web.page import page
 from archive.web.result import result
@@ -18,9 +19,6 @@ from schemas.address import Address
 from schemas.lineage import ReductionDocument, StepRecord
 
 __all__ = ["reduction"]
-
-# More digits of a correlation say nothing (common practice, no source).
-_DIGITS = 3
 
 
 def reduction(request: Request, address: Address) -> Response:
@@ -51,7 +49,7 @@ def reduction(request: Request, address: Address) -> Response:
         drawn=_drawn(request, document),
         steps=[(step, list(_parameters(step))) for step in document.steps],
         results=[each for each in document.outputs if each.rows is None],
-        covariances=list(_covariances(document)),
+        covariances=list(correlations(document)),
         lineage=lab.lineage_picture(own, link=path_of),
     )
 
@@ -82,23 +80,3 @@ def _text(value: object) -> str:
             else "; ".join(f"{key} {_text(each)}" for key, each in value.items())
         )
     return f"{value:.12g}" if isinstance(value, float) else str(value)
-
-
-def _covariances(document: ReductionDocument) -> Iterator[tuple[str, list[str], list[list[str]]]]:
-    """Step, names, and the correlations of what it fitted: a covariance over the roots of its diagonal."""
-    for step, found in document.covariances.items():
-        names, matrix = found["names"], found["matrix"]
-        roots = [matrix[k][k] ** 0.5 if (matrix[k][k] or 0) > 0 else 0.0 for k in range(len(names))]
-        yield (
-            step,
-            names,
-            [
-                [
-                    f"{matrix[i][j] / (roots[i] * roots[j]):.{_DIGITS}f}".replace("-", "\u2212")
-                    if roots[i] and roots[j]
-                    else "[na]"
-                    for j in range(len(names))
-                ]
-                for i in range(len(names))
-            ],
-        )

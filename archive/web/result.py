@@ -12,6 +12,7 @@ from archive.lab import Archive
 from archive.reduction.trace import TraceNode
 from archive.reports.budget import budget_block, budget_rows, monte_carlo_sentence
 from archive.reports.numbers import Shown, shown_value
+from archive.web.correlations import correlations
 from archive.web.links import path_of
 from archive.web.page import page
 from archive.web.site import lab_of
@@ -88,18 +89,10 @@ def _budget(document: ReductionDocument, output: OutputEntry) -> Iterator[tuple[
 
 def _fitted(document: ReductionDocument, output: OutputEntry) -> Iterator[tuple[str, str]]:
     """What was fitted together with it, with the correlation."""
-    for found in document.covariances.values():
-        names, matrix = found["names"], found["matrix"]
-        if output.name not in names:
-            continue
-        k = names.index(output.name)
-        for j, name in enumerate(names):
-            root = ((matrix[k][k] or 0.0) * (matrix[j][j] or 0.0)) ** 0.5
-            if j != k:
-                yield (
-                    name,
-                    f"{matrix[k][j] / root:.3f}".replace("-", "\u2212") if root > 0 else "[na]",
-                )
+    for _, names, rows in correlations(document):
+        if output.name in names:
+            row = rows[names.index(output.name)]
+            yield from ((name, each) for name, each in zip(names, row, strict=True) if name != output.name)
 
 
 def _using(node: TraceNode, own: str) -> Iterator[_Using]:
