@@ -38,6 +38,7 @@ def mirror(*, target: Path, thorough: bool, archive_dir: Path | None, as_json: b
     """
     with opening.open_archive(archive_dir) as lab, Progress("mirroring") as progress:
         outcome = lab.mirror(target, thorough=thorough, progress=progress.count)
+        opening.say_notices(lab)
     for sentence in outcome.swept:
         note(f"note: {sentence}")
     if as_json:

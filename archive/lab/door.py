@@ -10,6 +10,7 @@ import os
 from collections.abc import Callable, Iterator, Mapping, Sequence
 from contextlib import contextmanager, nullcontext, suppress
 from datetime import UTC, datetime
+from functools import partial
 from pathlib import Path
 from types import TracebackType
 from typing import TYPE_CHECKING, Any, Self
@@ -870,9 +871,18 @@ class Archive:
             self._recorded,
             Path(target),
             snapshot=self._index.snapshot,
+            entered=partial(self._mirror_entered, Path(target)),
             thorough=thorough,
             progress=progress,
         )
+
+    def _mirror_entered(self, target: Path, note: str) -> None:
+        self._acts.done("mirror", str(target.resolve()), note=note)
+        try:
+            self._acts.enter()
+        except BadRequest as problem:
+            # A full disk is a reason to mirror, not to refuse it.
+            self.notices.append(f"the journal does not tell of this mirror: {problem}")
 
     def _recorded(self) -> dict[str, SealedFile]:
         return {key: SealedFile(key, *row) for key, row in self._index.sealed_files().items()}

@@ -73,6 +73,7 @@ def mirror(
     target: Path,
     *,
     snapshot: Callable[[Path], bool],
+    entered: Callable[[str], None],
     thorough: bool = False,
     progress: Progress | None = None,
 ) -> MirrorOutcome:
@@ -90,6 +91,8 @@ def mirror(
         Folder of the mirror: new, empty, or a mirror that was made before.
     snapshot : callable
         Copies the index into a new file, as it is at one moment; False if this index cannot be copied so.
+    entered : callable
+        Enters in the journal of the archive, under its lock, what was mirrored; not called where nothing can be written.
     thorough : bool
         Whether what is there already is read again.
     progress : callable, optional
@@ -113,8 +116,8 @@ def mirror(
         )
     with _told(target):
         return _mirror(
-            store, settings, recorded, target, snapshot=snapshot, thorough=thorough, progress=progress
-        )
+            store, settings, recorded, target, snapshot=snapshot, entered=entered, thorough=thorough, progress=progress,
+        )  # fmt: skip
 
 
 @contextmanager
@@ -138,6 +141,7 @@ def _mirror(
     target: Path,
     *,
     snapshot: Callable[[Path], bool],
+    entered: Callable[[str], None],
     thorough: bool,
     progress: Progress | None,
 ) -> MirrorOutcome:
@@ -149,9 +153,14 @@ def _mirror(
         copy = open_store(target)
         first = mirrored(store, recorded(), copy, thorough=thorough, progress=progress)
         # What may only be read has no writer to keep out.
-        with archive_lock(store.root) if os.access(store.root, os.W_OK) else nullcontext():
+        writable = os.access(store.root, os.W_OK)
+        with archive_lock(store.root) if writable else nullcontext():
             last = mirrored(store, recorded(), copy)
             how = _copied_index(copy, snapshot)
+            if writable:
+                # Before the journal is copied, so that the mirror itself tells when it was made.
+                many, faults = len(first.copied) + len(last.copied), len(_once(first, last))
+                entered(f"{many} sealed files copied, {first.present} there before, {faults} faults")
             _copied_journal(store.root, target)
         # A mirror never writes to the database of the archive.
         write_whole(target / SETTINGS_NAME, settings_without_index(store.root), replace=True)

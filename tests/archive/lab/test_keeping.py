@@ -53,6 +53,28 @@ def test_a_mirror_is_searched_replayed_and_proved(lab: Archive, tmp_path: Path) 
         assert (tmp_path / "vault" / path.relative_to(lab.root)).read_bytes() == path.read_bytes()
 
 
+def test_a_mirror_is_entered_and_one_that_cannot_be_is_made_all_the_same(
+    lab: Archive, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    lab.mirror(tmp_path / "vault")
+    act = lab.journal()[-1].act
+    assert (act.act, act.what, act.note) == (
+        "mirror",
+        str(tmp_path / "vault"),
+        "2 sealed files copied, 0 there before, 0 faults",
+    )
+
+    def full(*_: object, **__: object) -> None:
+        raise OSError(28, "No space left on device")
+
+    monkeypatch.setattr("archive.store.journal.append_lines", full)
+    assert lab.mirror(tmp_path / "vault").present == 2
+    assert "the journal does not tell of this mirror" in lab.notices[-1]
+    assert lab.journal()[-1].act == act
+    with Archive.open(tmp_path / "vault") as copy:
+        assert copy.journal() == lab.journal()
+
+
 def test_only_what_is_new_is_copied(lab: Archive, tmp_path: Path) -> None:
     lab.mirror(tmp_path / "vault")
     before = (tmp_path / "vault" / "sealed" / f"{ACCESSION}.h5").stat()
