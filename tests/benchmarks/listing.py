@@ -13,7 +13,11 @@ from tests.benchmarks import (
     pages,
     picture,
     plane,
+    rebuild,
     sealed_files,
+    search,
+    starting,
+    words_and_counts,
 )
 from tests.benchmarks.harness import Benchmark
 
@@ -35,6 +39,14 @@ BENCHMARKS: tuple[Benchmark, ...] = (
     dynamic_curve.BENCHMARK,
     pages.BENCHMARK,
     plane.BENCHMARK,
+    search.MIDDLE,
+    search.SLOWEST,
+    words_and_counts.WORDS,
+    words_and_counts.COUNTS,
+    rebuild.BENCHMARK,
+    starting.HELP,
+    starting.VERSION,
+    starting.SEARCH,
     picture.FIRST,
     picture.ZOOM,
 )
