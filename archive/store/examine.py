@@ -13,6 +13,7 @@ import json
 import subprocess
 import sys
 from collections.abc import Iterator, Sequence
+from concurrent.futures import Executor, ThreadPoolExecutor
 from pathlib import Path
 
 import h5py
@@ -21,12 +22,13 @@ if sys.platform != "win32":
     import resource
 
 from archive.store.audit import READ_ERRORS, datasets, mark_faults, structure_faults, text_of
+from archive.store.cores import usable_cores
 from archive.store.durable import file_digest
 from archive.store.interface import Damage, SealedFile
+from archive.store.unpacking import parts_of
 
 __all__ = ["changed_datasets", "examined", "examined_apart", "main"]
 
-_BLOCK_BYTES = 1 << 22
 # Reading is far faster than 1 MB/s on anything an archive lies on; the minute is for starting Python on a busy machine.
 _BYTES_A_SECOND, _START_S = 1_000_000, 60
 # A chunk and its copies need some megabytes; the rest is what the libraries claim without using it.
@@ -130,19 +132,23 @@ def main() -> None:
     sys.stdout.write(json.dumps(damage))
 
 
-def _inside(path: Path, key: str) -> list[Damage]:
+def _workers(jobs: int | None) -> ThreadPoolExecutor:
+    return ThreadPoolExecutor(jobs or usable_cores(), "stillroom-unpacking")
+
+
+def _inside(path: Path, key: str, jobs: int | None = None) -> list[Damage]:
     """Return what the file itself shows: marks, structure, checksums, digests, its own name."""
     damage = [Damage(key, "damaged", sentence) for sentence in mark_faults(path)]
     if damage:
         return damage
     try:
-        with h5py.File(path, "r", locking="best-effort") as file:
+        with _workers(jobs) as workers, h5py.File(path, "r", locking="best-effort") as file:
             structure = structure_faults(file)
             damage += [Damage(key, "damaged", sentence, dataset=where) for where, sentence in structure]
             suspect = {where for where, _ in structure}
             for where, dataset in datasets(file):
                 if where not in suspect:
-                    damage += _dataset_damage(key, where, dataset)
+                    damage += _dataset_damage(key, where, dataset, workers)
             damage += _identity_damage(key, file)
     except READ_ERRORS as error:
         damage.append(Damage(key, "damaged", "HDF5 cannot open the file", found=str(error)))
@@ -157,10 +163,10 @@ def _identity_damage(key: str, file: h5py.File) -> Iterator[Damage]:
         yield Damage(key, "damaged", "the document is not in the file", dataset="document")
 
 
-def _dataset_damage(key: str, where: str, dataset: h5py.Dataset) -> Iterator[Damage]:
+def _dataset_damage(key: str, where: str, dataset: h5py.Dataset, workers: Executor) -> Iterator[Damage]:
     try:
         recorded = text_of(dataset.attrs.get("sha256", "none"))
-        found = _digest(dataset)
+        found = _digest(dataset, workers)
         size = dataset.attrs.get("size", dataset.size) if where.startswith("raw/") else dataset.size
     except READ_ERRORS as error:
         yield Damage(key, "damaged", "the dataset cannot be read", dataset=where, found=str(error))
@@ -185,20 +191,15 @@ def _dataset_damage(key: str, where: str, dataset: h5py.Dataset) -> Iterator[Dam
         )
 
 
-def _digest(dataset: h5py.Dataset) -> str:
-    """Return the SHA-256 of a dataset's stored values, read in blocks of whole chunks."""
-    if dataset.shape == () or dataset.size == 0:
-        return hashlib.sha256(dataset[()].tobytes()).hexdigest()
+def _digest(dataset: h5py.Dataset, workers: Executor) -> str:
+    """Return the SHA-256 of a dataset's stored values."""
     digest = hashlib.sha256()
-    chunk = dataset.chunks[0]
-    row_bytes = max(1, dataset.nbytes // dataset.shape[0])
-    step = chunk * max(1, _BLOCK_BYTES // (row_bytes * chunk))
-    for start in range(0, dataset.shape[0], step):
-        digest.update(dataset[start : start + step].tobytes())
+    for part in parts_of(dataset, workers):
+        digest.update(part.tobytes())
     return digest.hexdigest()
 
 
-def changed_datasets(path: Path, digests: dict[str, str]) -> list[str]:
+def changed_datasets(path: Path, digests: dict[str, str], *, jobs: int | None = None) -> list[str]:
     """Return the paths of datasets that do not read back as they were written.
 
     Parameters
@@ -207,10 +208,12 @@ def changed_datasets(path: Path, digests: dict[str, str]) -> list[str]:
         A finished file.
     digests : dict
         What its writer kept: SHA-256 of the values by path of the dataset.
+    jobs : int, optional
+        Threads that unpack; as many as this process may use processors if left out.
     """
     try:
-        with h5py.File(path, "r", locking="best-effort") as file:
-            found = {where: _digest(dataset) for where, dataset in datasets(file)}
+        with _workers(jobs) as workers, h5py.File(path, "r", locking="best-effort") as file:
+            found = {where: _digest(dataset, workers) for where, dataset in datasets(file)}
     except READ_ERRORS as error:
         if getattr(error, "errno", None) or "errno = " in str(error):
             raise  # the system's own words tell more

@@ -28,6 +28,7 @@ from archive.store.examine import changed_datasets, examined
 from archive.store.interface import Attributes, Damage, SealedFile, Writer
 from archive.store.names import checked_key, is_key
 from archive.store.sealed import SealedWriter, writing
+from archive.store.unpacking import rows_of
 
 __all__ = ["LocalStore", "open_store"]
 
@@ -193,8 +194,7 @@ class LocalStore:
             dataset = _node(file, key, path)
             if not isinstance(dataset, h5py.Dataset):
                 raise UnknownAddress("this is a group, not a column or array", file=key, field=path)
-            whole = dataset.shape == () or (start is None and stop is None)
-            values = np.asarray(dataset[()] if whole else dataset[start:stop])
+            values = rows_of(dataset, start, stop)
             return np.strings.decode(values, "utf-8") if values.dtype.kind == "S" else values
 
     def attributes(self, key: str, path: str) -> Attributes:

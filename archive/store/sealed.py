@@ -25,6 +25,7 @@ import contextlib
 import hashlib
 import re
 from collections.abc import Iterable, Iterator, Mapping, Sequence
+from concurrent.futures import Executor, ThreadPoolExecutor
 from pathlib import Path
 from typing import Any
 
@@ -43,6 +44,7 @@ from archive.store.blocks import (
     column_attributes,
 )
 from archive.store.chunks import ChunkStream, mark, write_whole
+from archive.store.cores import usable_cores
 from archive.store.interface import Column, TableWriter
 from archive.store.names import checked_raw_name
 
@@ -83,7 +85,13 @@ class SealedTableWriter:
     """
 
     def __init__(
-        self, file: h5py.File, path: Path, group: str, columns: tuple[Column, ...], index: str | None
+        self,
+        file: h5py.File,
+        path: Path,
+        group: str,
+        columns: tuple[Column, ...],
+        index: str | None,
+        packers: Executor,
     ) -> None:
         self._path, self._group, self._columns, self._index = path, group, columns, index
         self._node = file.create_group(group, track_order=True)
@@ -92,7 +100,7 @@ class SealedTableWriter:
             mark(self._node, "index", index)
         kinds = {"float64": np.dtype("<f8"), "int64": np.dtype("<i8")}
         self._streams = {
-            column.name: ChunkStream(self._node, column.name, kinds[column.dtype])
+            column.name: ChunkStream(self._node, column.name, kinds[column.dtype], packers=packers)
             for column in columns
             if column.dtype != "str"
         }
@@ -154,14 +162,17 @@ class SealedWriter:
         A path where nothing lies yet.
     key : str
         Written into the file, so that it can say what it is when it is found somewhere else.
+    jobs : int, optional
+        Threads that pack; as many as this process may use processors if left out. The bytes do not depend on it.
     """
 
-    def __init__(self, path: Path, key: str) -> None:
+    def __init__(self, path: Path, key: str, *, jobs: int | None = None) -> None:
         self.path, self.key = path, key
         self._tables: list[SealedTableWriter] = []
         self._digests: dict[str, str] = {}
         self._documented = False
         self._open = True
+        self._packers = ThreadPoolExecutor(jobs or usable_cores(), "stillroom-packing")
         with writing(path):
             self._file = h5py.File(
                 path, "x", libver=("v110", "v110"), track_order=True, track_times=False, locking="best-effort"
@@ -175,7 +186,7 @@ class SealedWriter:
         self._require_free(path)
         attributes = checked_attributes(path, {"file_name": name, "media_type": media_type})
         digest = hashlib.sha256()
-        stream = ChunkStream(self._file, path, np.dtype("u1"))
+        stream = ChunkStream(self._file, path, np.dtype("u1"), packers=self._packers)
         for block in blocks:  # outside `writing`: what fails here is the source, not the archive
             digest.update(block)
             with writing(self.path):
@@ -192,7 +203,7 @@ class SealedWriter:
         checked = checked_columns(group, columns, index=index)
         self._require_free(group)
         with writing(self.path):
-            table = SealedTableWriter(self._file, self.path, group, checked, index)
+            table = SealedTableWriter(self._file, self.path, group, checked, index, self._packers)
         self._tables.append(table)
         return table
 
@@ -229,11 +240,13 @@ class SealedWriter:
                 self._digests |= table.finish()
             self._open = False
             self._file.close()
+        self._packers.shutdown()
         return self._digests
 
     def close(self) -> None:
         """Let go of the file, whatever state it is in; it is to be thrown away."""
         self._open = False
+        self._packers.shutdown(cancel_futures=True)
         # On a full disk HDF5 cannot flush and says so in several ways; the file is removed all the same.
         with contextlib.suppress(OSError, RuntimeError, ValueError):
             self._file.close()
