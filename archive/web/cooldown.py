@@ -11,10 +11,10 @@ from archive.intake.cautions import FIXED_TEXT
 from archive.lab import Archive
 from archive.reports import CooldownView
 from archive.reports.after_the_fact import after_the_fact
-from archive.reports.front_page import finding_line
 from archive.reports.holdings import Holdings
 from archive.reports.later_pages import dose_lines
 from archive.reports.prose import prose
+from archive.web.finding_groups import finding_groups
 from archive.web.page import page
 from archive.web.site import lab_of
 from archive.web.thumb import thumb_path
@@ -49,11 +49,13 @@ def cooldown(request: Request, address: Address) -> Response:
         rows=rows[:_MOST_ROWS],
         left_out=max(0, len(rows) - _MOST_ROWS),
         doses=list(dose_lines(held)),
-        open=[finding_line("", each) for each in findings if each.severity != "note" and each.waived is None],
-        waived=[
-            finding_line("", each) for each in findings if each.severity != "note" and each.waived is not None
-        ],
-        remarks=[finding_line("", each) for each in findings if each.severity == "note"],
+        open=finding_groups(each for each in findings if each.severity != "note" and each.waived is None),
+        waived=finding_groups(
+            each for each in findings if each.severity != "note" and each.waived is not None
+        ),
+        remarks=finding_groups(each for each in findings if each.severity == "note"),
+        remark_count=sum(each.severity == "note" for each in findings),
+        swept={row.name for row in rows},
         cautions=[{**each, "text": prose(str(each.get("text", "")))} for each in view.newest.cautions],
         fixed_text=FIXED_TEXT,
         acts=after_the_fact(held),

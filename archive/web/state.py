@@ -4,12 +4,14 @@ from __future__ import annotations
 
 from collections import defaultdict
 from collections.abc import Iterable
+from datetime import datetime
 
 from starlette.requests import Request
 from starlette.responses import Response
 
 from archive.intake.checks import CHECKS
 from archive.lab import Archive, Stale
+from archive.reports.moments import full_time
 from archive.store.journal import Entry
 from archive.web.page import page
 from archive.web.site import lab_of
@@ -34,6 +36,7 @@ def state(request: Request) -> Response:
         counts=counts,
         sealed=_size(counts["sealed_bytes"]),
         raw=_size(counts["raw_bytes"]),
+        when=_when,
         fixity=_last(entries, "fixity"),
         last=list(reversed(entries[-_LAST:])),
         stale=_stale(lab, counts["reductions"]),
@@ -41,6 +44,14 @@ def state(request: Request) -> Response:
         titles={check.code: check.title for check in CHECKS},
         withdrawals=lab.withdrawals(),
     )
+
+
+def _when(text: str) -> str:
+    """Return the time of an entry as other pages have times; an entry that somebody wrote by hand as it stands."""
+    try:
+        return full_time(datetime.fromisoformat(text), "UTC")
+    except ValueError:
+        return text
 
 
 def _last(entries: Iterable[Entry], act: str) -> Entry | None:

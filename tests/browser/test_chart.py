@@ -55,6 +55,7 @@ def test_a_drag_draws_closer_and_everything_follows(page: Page, tmp_path: Path) 
     page.mouse.up()
     page.wait_for_url("**from=*")
     page.wait_for_selector(_READY)
+    assert page.locator("#in-unit").inner_text() == "as T / mK (ITS-90)"
     low, high = map(float, _view(page))
     # 200 to 790 mK with 2 % to spare on both sides.
     assert low == pytest.approx(200 - 11.8 + 0.25 * 613.6, abs=3)
@@ -166,7 +167,7 @@ def test_everybody_can_read_charts(browser: Browser, server: str) -> None:
 def test_nothing_jumps_when_a_script_takes_over_and_a_small_screen_is_enough(page: Page) -> None:
     for width in (1280, 360):
         page.set_viewport_size({"width": width, "height": 800})
-        for path in PAGES:
+        for path in (*PAGES, f"/at/{PLAIN}/s001"):
             page.goto(path)
             if not path.startswith("/lineage"):
                 page.wait_for_selector(_READY)

@@ -134,6 +134,8 @@ class Chart {
     this.view = given ? [given[0] ?? this.whole[0], given[1] ?? this.whole[1]] : [...this.whole];
     if (!(this.view[1] > this.view[0])) this.view = [...this.whole]; // one end alone, beyond all rows
     this.across = found[0].across;
+    const unit = document.getElementById("in-unit");
+    if (unit) unit.textContent = `as ${this.across}`;
     this.lay(found.map(each => each.panels[0]));
   }
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 import warnings
+from datetime import date
 from itertools import pairwise
 from pathlib import Path
 
@@ -12,6 +13,8 @@ from starlette.testclient import TestClient
 
 from archive import Archive
 from archive.web import application
+from archive.web.finding_groups import finding_groups
+from schemas.finding import Finding, Waiver
 from schemas.search_fields import SEARCH_FIELDS
 from tests.filled_archive import HOSTILE, NAME, PLAIN
 
@@ -172,7 +175,31 @@ def test_an_archive_tells_of_its_last_fixity_pass(tmp_path: Path) -> None:
         with TestClient(application(root), base_url="http://localhost") as visitor:
             assert "No fixity pass is on record" in visitor.get("/state").text
             lab.fixity(enter=True)
-            assert "0 sealed files read, 0 faults" in visitor.get("/state").text
+            text = visitor.get("/state").text
+            assert "0 sealed files read, 0 faults" in text
+            assert re.search(r"read again at \d{4}-\d\d-\d\d \d\d:\d\d \+00:", text)
+
+
+def test_what_one_check_says_of_several_sweeps_is_one_entry() -> None:
+    accepted = Waiver(
+        check="cold", place="s001", reason="it was meant", role="postdoc", date=date(2026, 3, 1)
+    )
+    findings = [
+        Finding(code=code, severity="warning", what=f"{place} is cold", place=place, waived=waiver)
+        for code, place, waiver in (
+            ("cold", "s001", accepted),
+            ("warm", "s001", None),
+            ("cold", "s002", accepted.model_copy(update={"place": "s002"})),
+            ("cold", "s003", None),
+            ("cold", "s002", accepted),
+        )
+    ]
+    groups = finding_groups(findings)
+    assert [(each.first["code"], each.places, len(each.others)) for each in groups] == [
+        ("cold", ["s001", "s002"], 2),
+        ("warm", ["s001"], 0),
+        ("cold", ["s003"], 0),
+    ]
 
 
 def test_run_sheets_are_handed_over(client: TestClient) -> None:
