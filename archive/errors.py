@@ -25,6 +25,7 @@ __all__ = [
     "MissingFile",
     "NotAnArchive",
     "StepFailed",
+    "Stopped",
     "UnknownAddress",
     "kept_traceback",
     "told",
@@ -140,6 +141,10 @@ class NotAnArchive(ArchiveError):
 
     code = "not-an-archive"
     exit_code = EXIT_BUSY
+
+
+class Stopped(KeyboardInterrupt):
+    """The person stopped the operation; says how far it had come."""
 
 
 def kept_traceback(error: BaseException) -> str:

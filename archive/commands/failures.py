@@ -55,7 +55,10 @@ def stopped(error: BaseException) -> int:
         _quieten()
         return 0
     if isinstance(error, KeyboardInterrupt):
-        note("stopped; nothing half-written counts: the next command on this archive sweeps it away")
+        how_far = f": {error}" if str(error) else ""
+        note(
+            f"stopped{how_far}; nothing half-written counts: the next command on this archive sweeps it away"
+        )
         return EXIT_INTERRUPTED
     if isinstance(error, ArchiveError):
         _say(str(error))

@@ -11,7 +11,7 @@ from archive.commands import opening
 from archive.commands.describing import describe
 from archive.commands.failures import EXIT_WARNINGS
 from archive.commands.machine import plain, write_json
-from archive.commands.opening import archive_option, json_option, require_address, strict_option
+from archive.commands.opening import archive_option, jobs_option, json_option, require_address, strict_option
 from archive.commands.terminal import Progress, clean, draw, say
 from archive.commands.terminal_plot import say_plot, view_of
 from archive.commands.uncertainty_tables import say_budget, say_monte_carlo
@@ -147,6 +147,7 @@ def _tree(node: TraceNode, above: Tree | None = None) -> Tree:
     metavar="FRACTION",
     help="How far a result may move, as a fraction of its standard uncertainty.",
 )
+@jobs_option
 @archive_option
 @json_option
 @strict_option
@@ -155,6 +156,7 @@ def replay(
     address: str | None,
     everything: bool,
     fraction: float,
+    jobs: int,
     archive_dir: Path | None,
     as_json: bool,
     strict: bool,
@@ -166,7 +168,7 @@ def replay(
     \b
     Examples:
       stillroom replay 2026-03/s017@film-transition.2
-      stillroom replay --all --within 0.01
+      stillroom replay --all --within 0.01 --jobs 4
 
     Exit code: 3 if a result moves by more than FRACTION of its standard uncertainty, or is there no more; 2 if a reduction
     cannot be computed again; with --strict 1 if any output differs at all.
@@ -183,7 +185,7 @@ def replay(
             require_address(address)
             told.append(lab.replay(address))
         else:
-            for each, outcome in lab.replay_all(progress=progress.count):
+            for each, outcome in lab.replay_all(jobs=jobs, progress=progress.count):
                 if isinstance(outcome, ArchiveError):
                     failed.append((each, outcome))
                 else:

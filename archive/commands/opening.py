@@ -18,6 +18,7 @@ if TYPE_CHECKING:
 __all__ = [
     "archive_option",
     "archive_or_none",
+    "jobs_option",
     "json_option",
     "open_archive",
     "require_address",
@@ -56,6 +57,18 @@ def strict_option(function: Callable[..., Any]) -> Callable[..., Any]:
     """Add `--strict`."""
     return click.option(
         "--strict", is_flag=True, help="Exit with 1 if there are warnings that nobody waived."
+    )(function)
+
+
+def jobs_option(function: Callable[..., Any]) -> Callable[..., Any]:
+    """Add `--jobs N`."""
+    return click.option(
+        "--jobs",
+        type=click.IntRange(1, 1024),
+        default=1,
+        show_default=True,
+        metavar="N",
+        help="Processes that compute; what comes out does not depend on it.",
     )(function)
 
 

@@ -12,7 +12,7 @@ from archive.commands.failures import EXIT_WARNINGS
 from archive.commands.machine import quantity, write_json
 from archive.commands.monte_carlo_options import monte_carlo_options, requested
 from archive.commands.numbers import readable
-from archive.commands.opening import archive_option, json_option, strict_option
+from archive.commands.opening import archive_option, jobs_option, json_option, strict_option
 from archive.commands.terminal import Progress, note, say, table
 from archive.commands.uncertainty_tables import say_monte_carlo
 from archive.errors import BadRequest, UnknownAddress
@@ -127,6 +127,7 @@ def _show_plan(plan: Plan) -> None:
 )
 @click.option("--sweep", metavar="SWEEP", help="Name of one sweep; else all.")
 @monte_carlo_options
+@jobs_option
 @archive_option
 @json_option
 @strict_option
@@ -140,6 +141,7 @@ def reduce(
     seed: int,
     digits: int,
     workers: int,
+    jobs: int,
     archive_dir: Path | None,
     as_json: bool,
     strict: bool,
@@ -154,7 +156,7 @@ def reduce(
       stillroom reduce 2026-03
       stillroom reduce 2026-03/s017 --plan film-transition
       stillroom reduce 2026-03 --plan our-film.toml
-      stillroom reduce --stale
+      stillroom reduce --stale --jobs 4
       stillroom reduce 2026-03/s017 --plan film-transition --monte-carlo 20000 --workers 4
 
     A reduction by Monte Carlo is a new one unless the newest has the same trials, seed and digits already. Anybody may read
@@ -165,17 +167,23 @@ def reduce(
     _require_target(cooldown, stale_only=stale_only, plan=plan)
     name, _, part = (cooldown or "").partition("/")
     chosen: str | Path | None = Path(plan) if plan is not None and plan.endswith(".toml") else plan
+    if jobs > 1 and workers > 1:
+        raise BadRequest(
+            "--jobs and --workers exclude each other",
+            remedy="--jobs for many reductions at once, --workers for the trials of one",
+        )
     request = requested(trials, seed=seed, digits=digits, workers=workers)
     with opening.open_archive(archive_dir) as lab, Progress("reducing") as progress:
         if stale_only:
             whose = "/".join(each for each in (name, sweep or part) if each) or None
-            outcomes = lab.reduce_stale(whose, monte_carlo=request, progress=progress.sentence)
+            outcomes = lab.reduce_stale(whose, monte_carlo=request, jobs=jobs, progress=progress.sentence)
         else:
             outcomes = lab.reduce(
                 name,
                 plan=chosen,
                 sweep=sweep or part or None,
                 monte_carlo=request,
+                jobs=jobs,
                 progress=progress.sentence,
             )
     if as_json:

@@ -42,6 +42,7 @@ from archive.lab.act_outcomes import ActOutcome, WithdrawOutcome
 from archive.lab.amending import amend
 from archive.lab.checking import check_folder, earlier_runs, folder_report, require_folder
 from archive.lab.comparing import Comparison, compare
+from archive.lab.crew import Crew
 from archive.lab.curves.columns import facts_of
 from archive.lab.forward import forward as lineage_forward
 from archive.lab.index_check import index_damage
@@ -362,6 +363,7 @@ class Archive:
         plan: str | Path | None = None,
         sweep: str | None = None,
         monte_carlo: Request | None = None,
+        jobs: int = 1,
         progress: Progress = _quiet,
     ) -> list[ReduceOutcome]:
         """Carry out plans on the sweeps of a cooldown, in an order in which each finds what it rests on.
@@ -376,6 +378,8 @@ class Archive:
             Name of one sweep; else all.
         monte_carlo : Request, optional
             Repeat each plan with drawn inputs and seal what that finds with the reduction.
+        jobs : int
+            Processes that compute; what is sealed does not depend on it.
 
         Returns
         -------
@@ -392,6 +396,7 @@ class Archive:
                 clock=self._clock,
                 seal=self._seal_reduction if monte_carlo is None else self._seal_alone,
                 progress=progress,
+                crew=Crew(self.root, jobs),
                 request=monte_carlo,
             )
 
@@ -423,13 +428,14 @@ class Archive:
         cooldown: str | None = None,
         *,
         monte_carlo: Request | None = None,
+        jobs: int = 1,
         progress: Progress = _quiet,
     ) -> list[ReduceOutcome]:
         """Make stale reductions anew with the newest revisions that hold; see `archive.lab.renewing.reduce_stale`."""
         with self._writing():
             return reduce_stale(
                 self._source, cooldown, clock=self._clock, seal=self._seal_reduction, progress=progress,
-                request=monte_carlo,
+                crew=Crew(self.root, jobs), request=monte_carlo,
             )  # fmt: skip
 
     def revise(self, sheet: Path | str, *, by: str | None = None, dry_run: bool = False) -> ActOutcome:
@@ -477,10 +483,10 @@ class Archive:
         return reducing.replay(self._source, address, clock=self._clock)
 
     def replay_all(
-        self, *, progress: Callable[[int, int, str], None] | None = None
+        self, *, jobs: int = 1, progress: Callable[[int, int, str], None] | None = None
     ) -> Iterator[tuple[str, ReplayReport | ArchiveError]]:
-        """Every reduction computed again, one after the other; see `archive.lab.replaying.replay_all`."""
-        return replay_all(self._source, clock=self._clock, progress=progress)
+        """Every reduction computed again by some processes; see `archive.lab.replaying.replay_all`."""
+        return replay_all(self._source, clock=self._clock, crew=Crew(self.root, jobs), progress=progress)
 
     def compare(self, first: str, second: str) -> Comparison:
         """Two reductions side by side: parameters, inputs, results with the significance of their change, arrays."""

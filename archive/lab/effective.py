@@ -38,6 +38,8 @@ class EffectiveSource:
         Addresses of amendments that are not to count, to see what that would do.
     withdrawn_too : bool
         Whether what is withdrawn is read, too, to be shown with its mark.
+    revisions : Revisions, optional
+        Those that hold, where another process has worked them out.
     """
 
     def __init__(
@@ -49,6 +51,7 @@ class EffectiveSource:
         extra: AmendmentDocument | RevisionDocument | None = None,
         passed_over: frozenset[str] = frozenset(),
         withdrawn_too: bool = False,
+        revisions: Revisions | None = None,
     ) -> None:
         self.lab = lab
         self._withdrawn_too = withdrawn_too or recorded is not None
@@ -63,7 +66,7 @@ class EffectiveSource:
                 if entry.instead_of is not None
             }
         revision = extra if isinstance(extra, RevisionDocument) else None
-        self.revisions = Revisions(lab, newest=newest, pinned=pinned, extra=revision)
+        self.revisions = revisions or Revisions(lab, newest=newest, pinned=pinned, extra=revision)
         self._read: dict[str, list[AccessionDocument]] = {}
 
     @property

@@ -4,36 +4,29 @@ from __future__ import annotations
 
 import json
 from collections import Counter
-from collections.abc import Callable, Collection, Iterator, Mapping
+from collections.abc import Callable, Collection, Iterator
 from datetime import datetime
 from pathlib import Path
-from typing import Any
 
-from numpy.typing import NDArray
-
-from archive.errors import ArchiveError, BadRequest, DamagedFile, MissingFile, UnknownAddress
+from archive.errors import BadRequest, DamagedFile, MissingFile, UnknownAddress
 from archive.index import Entry, Index
+from archive.lab.carrying import Seal, Task, counted, sealed, waves
+from archive.lab.crew import Crew
 from archive.lab.effective import EffectiveSource
-from archive.lab.monte_carlo import answers, repeated, with_monte_carlo
+from archive.lab.monte_carlo import repeated
 from archive.lab.outcomes import ReduceOutcome, ReplayReport
 from archive.lab.source import LabSource, document_of
 from archive.reduction.added_plans import added_plans
 from archive.reduction.monte_carlo import Request
-from archive.reduction.needs import NeedAddresses
 from archive.reduction.planning import load_plan, plan_depth, plans_for, shipped_plans
 from archive.reduction.replay import replay as repeat
-from archive.reduction.runner import run
 from archive.store.durable import archive_lock
 from archive.store.local import LocalStore
 from archive.store.plain_text import plain_text
 from schemas.address import parse_address
-from schemas.lineage import ReductionDocument
 from schemas.plan import Plan
 
-__all__ = ["current_plans", "plans", "rebuilt_index", "reduce", "reduce_one", "replay"]
-
-Seal = Callable[[ReductionDocument, Mapping[str, tuple[NDArray[Any], dict[str, str]]]], None]
-
+__all__ = ["current_plans", "plans", "rebuilt_index", "reduce", "replay"]
 
 _LARGEST_PLAN = 5_000_000  # bytes, as for a sheet
 
@@ -117,6 +110,7 @@ def reduce(
     clock: Callable[[], datetime],
     seal: Seal,
     progress: Callable[[str], None],
+    crew: Crew,
     request: Request | None = None,
 ) -> list[ReduceOutcome]:
     """Plans carried out on the sweeps of a cooldown, each after what it rests on; see `Archive.reduce`."""
@@ -175,58 +169,20 @@ def reduce(
             found="" if plan is None else str(plan),
             remedy="stillroom plans tells what each plan is for",
         )
-    outcomes = []
-    for number, (_, _, address, each) in enumerate(sorted(work, key=lambda item: item[:3]), 1):
-        progress(f"{address} by {each.name} ({number} of {len(work)})")
-        outcomes.append(reduce_one(reading, address, each, clock, seal, request, progress))
+    below = {
+        each.name: {need.plan for need in each.needs.values()}
+        for each in [*known_plans, *(item[3] for item in work)]
+    }
+    ordered = [(address, each) for _, _, address, each in sorted(work, key=lambda item: item[:3])]
+    outcomes: list[ReduceOutcome] = []
+    with counted(outcomes, len(ordered)), crew.at_work(reading) as hands:
+        for wave in waves(ordered, name=lambda item: item[1].name, below=below):
+            tasks = [Task(address, each, clock, request) for address, each in wave]
+            for outcome in sealed(
+                hands, tasks, seal=seal, progress=progress, already=len(outcomes), of=len(ordered)
+            ):
+                outcomes.append(outcome)  # noqa: PERF402 - counted while it grows
     return outcomes
-
-
-def reduce_one(
-    source: EffectiveSource,
-    address: str,
-    plan: Plan,
-    clock: Callable[[], datetime],
-    seal: Seal,
-    request: Request | None,
-    progress: Callable[[str], None],
-    needs: NeedAddresses | None = None,
-) -> ReduceOutcome:
-    """One plan carried out on one sweep; nothing is sealed when it repeats the newest reduction that counts."""
-    earlier = source.reductions(plan.name, address)
-    newest = earlier[-1] if earlier else None
-    # A number is given once, also when the reduction that has it is withdrawn.
-    last = max((each.number for each in source.lab.reductions(plan.name, address)), default=0)
-    try:
-        made = run(
-            plan,
-            address,
-            source,
-            number=last + 1,
-            clock=clock,
-            supersedes=None if newest is None else newest.address,
-            needs=needs,
-        )
-        if newest is not None and _same(newest, made.document) and answers(newest, request):
-            return ReduceOutcome(address, plan.address, newest.address, newest, already=True)
-        document = with_monte_carlo(made, request, clock=clock, progress=progress)
-        seal(document, made.arrays)
-    except ArchiveError as problem:
-        return ReduceOutcome(sweep=address, plan=plan.address, problem=problem)
-    return ReduceOutcome(address, plan.address, document.address, document)
-
-
-def _same(old: ReductionDocument, new: ReductionDocument) -> bool:
-    """Whether a reduction repeats the one before: same plan, same inputs, same outputs to the bit."""
-    return (
-        old.plan_digest == new.plan_digest
-        and [(entry.address, entry.digest) for entry in old.inputs]
-        == [(entry.address, entry.digest) for entry in new.inputs]
-        and [(entry.name, entry.digest, entry.uncertainty) for entry in old.outputs]
-        == [(entry.name, entry.digest, entry.uncertainty) for entry in new.outputs]
-        and [(step.name, step.version) for step in old.steps]
-        == [(step.name, step.version) for step in new.steps]
-    )
 
 
 def replay(source: LabSource, address: str, *, clock: Callable[[], datetime]) -> ReplayReport:

@@ -2,13 +2,17 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections import defaultdict
+from collections.abc import Callable, Mapping
 from datetime import datetime
+from functools import partial
 
 from archive.errors import BadRequest, UnknownAddress
+from archive.lab.carrying import Seal, Task, counted, sealed, waves
+from archive.lab.crew import Crew
 from archive.lab.effective import EffectiveSource
 from archive.lab.outcomes import ReduceOutcome
-from archive.lab.reducing import Seal, current_plans, reduce_one
+from archive.lab.reducing import current_plans
 from archive.lab.source import LabSource
 from archive.lab.stale import Stale, stale
 from archive.reduction.facts import sweep_facts
@@ -29,6 +33,7 @@ def reduce_stale(
     clock: Callable[[], datetime],
     seal: Seal,
     progress: Callable[[str], None],
+    crew: Crew,
     request: Request | None = None,
 ) -> list[ReduceOutcome]:
     """Stale reductions of a cooldown, or of all, carried out anew with the newest revisions that hold.
@@ -38,7 +43,7 @@ def reduce_stale(
     source : LabSource
     cooldown : str or None
         Name of a cooldown, or the address of a sweep; stale reductions that its own rest on are renewed with them.
-    clock, seal, progress, request
+    clock, seal, progress, crew, request
         As in `archive.lab.reducing.reduce`.
 
     Notes
@@ -49,21 +54,44 @@ def reduce_stale(
     chosen = _chosen(source, every, cooldown)
     plans = {plan.name: plan for plan in current_plans(source)}
     reading = EffectiveSource(source, newest=True)
+    work = [_Renewal(each, source, plans) for each in chosen]
+    below: dict[str, set[str]] = defaultdict(set)
+    for each in work:
+        below[each.plan.name] |= each.below()
     outcomes: list[ReduceOutcome] = []
     failed: set[str] = set()
-    for number, each in enumerate(chosen, 1):
-        progress(f"{each.sweep} by {each.plan} ({number} of {len(chosen)})")
-        document = source.reduction(each.reduction)
-        plan = _newest(plans.get(each.plan), document.plan)
-        problem = _hindrance(reading, document, plan, failed)
-        if problem is None:
-            needs = _needs_now(reading, document, plan)
-            outcomes.append(reduce_one(reading, each.sweep, plan, clock, seal, request, progress, needs))
-        else:
-            outcomes.append(ReduceOutcome(each.sweep, plan.address, problem=problem))
-        if outcomes[-1].problem is not None:
-            failed.add(f"{each.sweep}@{each.plan}")
+    with counted(outcomes, len(work)), crew.at_work(reading) as hands:
+        for wave in waves(work, name=lambda each: each.plan.name, below=below):
+            tasks = []
+            for each in wave:
+                problem = _hindrance(reading, each.document, each.plan, failed)
+                if problem is None:
+                    needs = partial(_needs_now, each.document.address, each.plan)
+                    tasks.append(Task(each.document.sweep, each.plan, clock, request, needs))
+                else:
+                    failed.add(each.key)
+                    outcomes.append(ReduceOutcome(each.document.sweep, each.plan.address, problem=problem))
+            for outcome in sealed(
+                hands, tasks, seal=seal, progress=progress, already=len(outcomes), of=len(work)
+            ):
+                outcomes.append(outcome)
+                if outcome.problem is not None:
+                    failed.add(f"{outcome.sweep}@{outcome.plan.partition('.r')[0]}")
     return outcomes
+
+
+class _Renewal:
+    """A stale reduction, and the plan by which it is made anew."""
+
+    def __init__(self, old: Stale, source: LabSource, plans: Mapping[str, Plan]) -> None:
+        self.document = source.reduction(old.reduction)
+        self.plan = _newest(plans.get(old.plan), self.document.plan)
+        self.key = f"{old.sweep}@{old.plan}"
+
+    def below(self) -> set[str]:
+        """Return names of plans that it rested on, or may rest on now."""
+        used = {parse_address(each.address).plan for each in self.document.inputs}
+        return {need.plan for need in self.plan.needs.values()} | {name for name in used if name is not None}
 
 
 def _hindrance(
@@ -116,10 +144,9 @@ def _chosen(source: LabSource, every: list[Stale], cooldown: str | None) -> list
     return [each for each in every if each.reduction in wanted]
 
 
-def _needs_now(
-    reading: EffectiveSource, document: ReductionDocument, plan: Plan
-) -> dict[str, str | list[str]]:
+def _needs_now(old: str, plan: Plan, reading: EffectiveSource) -> dict[str, str | list[str]]:
     """For each need, the newest reduction of the sweep that served it before; needs that nothing serves are left open."""
+    document = reading.reduction(old)
     found: dict[str, str | list[str]] = {}
     try:
         recorded = recorded_needs(document, reading)
