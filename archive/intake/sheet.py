@@ -23,6 +23,7 @@ from schemas.cooldown import CooldownSheet
 from schemas.finding import Finding
 from schemas.sweep import CHANNEL_PATTERN, FILE_PATTERN
 from schemas.thermometer import MADE_FROM_PATTERN
+from schemas.time_faults import time_fault
 from schemas.toml_text import TomlFault, tables_of
 
 __all__ = ["LineMap", "SheetReading", "read_sheet", "validated"]
@@ -43,8 +44,6 @@ _FORMS = {
     MADE_FROM_PATTERN: "the address of a reduction, e.g. 2024-11/c01@thermometer-calibration.1",
     REFERENCE_PATTERN: "the name of a record, with or without its revision, e.g. TO-4 or TO-4.r2",
 }
-_WITH_OFFSET = "write it with its offset, e.g. 2026-03-02T09:10:00+02:00"
-_NO_TIME = {"datetime_type", "datetime_parsing", "datetime_from_date_parsing", "datetime_object_invalid"}
 # Possessive where a line could be split in many ways: a long line that fits nothing must not take minutes.
 _HEADER = re.compile(r"^\s*+\[(\[)?(?P<path>[^\[\]]++)\]")
 _STRING = re.compile(r""""(?:[^"\\]|\\.)*+"?|'[^']*+'?""")
@@ -300,13 +299,8 @@ def _finding(
         )
     elif kind == "value_error":
         what = str(context.get("error", error["msg"]))
-    elif kind == "timezone_aware":
-        what, remedy = (
-            "this time has no offset from UTC",
-            _WITH_OFFSET,
-        )
-    elif kind in _NO_TIME:
-        what, remedy = "this is not a date with a time of day", _WITH_OFFSET
+    elif (of_time := time_fault(kind)) is not None:
+        what, remedy = of_time
     elif kind in {"literal_error", "union_tag_invalid"}:
         what = "this word is not one of those that can stand here"
         expected = str(context.get("expected") or context.get("expected_tags"))

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 from collections.abc import Callable, Iterator
 from datetime import datetime
 from pathlib import Path
@@ -82,7 +83,13 @@ def amend(
     try:
         document = _with_effect(source, document)
     except ArchiveError as problem:
-        said = reading.fault(problem.what, "change", 0, field=problem.field, remedy="correct the amendment")
+        number = _refused_change(source, document)
+        wrong = None if number is None else sheet.change[number].value
+        said = reading.fault(
+            problem.what, *(("change", 0) if number is None else ("change", number, "value")),
+            field=problem.field if number is None else f"change[{number + 1}].value",
+            found=None if wrong is None else json.dumps(wrong, ensure_ascii=False)[:80], remedy="correct the amendment",
+        )  # fmt: skip
         return ActOutcome("refused", findings=(said,))
     if not document.sweeps and not document.differences:
         said = reading.fault(
@@ -111,6 +118,17 @@ def sequence_of(source: LabSource, cooldown: str) -> int:
     withdrawals = source.index.withdrawals(counting=False)
     made = [row for row in withdrawals if row.cooldown == cooldown]
     return len(source.index.amendments(cooldown)) + len(made) + 1
+
+
+def _refused_change(source: LabSource, document: AmendmentDocument) -> int | None:
+    """Which change of an amendment is refused alone, too, from 0; None if it is all of them together."""
+    for number, change in enumerate(document.change):
+        alone = {"change": (change,), "calibration": (), "use": (), "left_out": ()}
+        try:
+            _with_effect(source, document.model_copy(update=alone))
+        except ArchiveError:
+            return number
+    return None
 
 
 def _with_effect(source: LabSource, document: AmendmentDocument) -> AmendmentDocument:

@@ -24,6 +24,7 @@ from schemas.address import parse_address
 from schemas.cooldown import CooldownSheet
 from schemas.lineage import AccessionDocument, AnyRecord, DoseEntry
 from schemas.substrate import Sample, Substrate
+from schemas.time_faults import time_fault
 
 __all__ = ["Find", "amended_accession", "bears_on"]
 
@@ -87,7 +88,8 @@ def _amended_sheet(accession: AccessionDocument, amendments: Sequence[AmendmentD
     except ValidationError as error:
         fault = error.errors(include_url=False)[0]
         place = ".".join(str(part) for part in fault["loc"])
-        said = str(fault.get("ctx", {}).get("error", fault["msg"]))
+        of_time = time_fault(fault["type"])
+        said = str(fault.get("ctx", {}).get("error", fault["msg"])) if of_time is None else "; ".join(of_time)
         raise BadRequest(
             f"the sheet of {accession.address} with its amendments "
             f"({', '.join(each.address for each in amendments)}) is no sheet: {said}",

@@ -319,6 +319,26 @@ def test_rows_left_out_afterwards_are_left_out_with_their_reason(lab: Archive, s
 
 
 @pytest.mark.parametrize(
+    ("written", "said"),
+    [
+        ("soon", "not a date with a time of day"),
+        ("2026-03-02", "not a date with a time of day"),
+        ("2026-03-02T09:10:00", "no offset from UTC"),
+    ],
+)
+def test_a_wrong_time_in_an_amendment_says_where_and_what_was_expected(
+    untouched: Archive, sheet, written: str, said: str
+) -> None:
+    text = amendment(DOSE + f'[[change]]\naddress = "2026-03/d02"\nfield = "at"\nvalue = "{written}"\n')
+    (finding,) = untouched.amend(sheet(text)).findings
+    assert said in finding.what
+    assert "2026-03-02T09:10:00+02:00" in finding.what
+    assert finding.field == "change[2].value"
+    assert finding.line is not None
+    assert text.splitlines()[finding.line - 1] == f'value = "{written}"'
+
+
+@pytest.mark.parametrize(
     ("body", "said"),
     [
         (DOSE.replace("d02", "d09"), "no sweep or dose d09"),
