@@ -21,6 +21,8 @@ from archive.lab.crew import Hands
 from archive.lab.effective import EffectiveSource
 from archive.lab.monte_carlo import answers, with_monte_carlo
 from archive.lab.outcomes import ReduceOutcome
+from archive.lab.repeating import same_inputs
+from archive.lab.source import LabSource
 from archive.reduction.monte_carlo import Request
 from archive.reduction.needs import NeedAddresses
 from archive.reduction.outputs import Stored
@@ -183,7 +185,7 @@ def _computed(source: EffectiveSource, task: Task) -> _Computed:
             supersedes=None if newest is None else newest.address,
             needs=None if task.needs is None else task.needs(source),
         )
-        if newest is not None and _same(newest, made.document) and answers(newest, task.request):
+        if newest is not None and _same(source.lab, newest, made.document) and answers(newest, task.request):
             return _Computed(ReduceOutcome(address, plan.address, newest.address, newest, already=True))
         document = with_monte_carlo(made, task.request, clock=task.clock, progress=task.progress)
     except ArchiveError as problem:
@@ -191,14 +193,13 @@ def _computed(source: EffectiveSource, task: Task) -> _Computed:
     return _Computed(ReduceOutcome(address, plan.address, document.address, document), made.arrays)
 
 
-def _same(old: ReductionDocument, new: ReductionDocument) -> bool:
+def _same(source: LabSource, old: ReductionDocument, new: ReductionDocument) -> bool:
     """Whether a reduction repeats the one before: same plan, same inputs, same outputs to the bit."""
     return (
         old.plan_digest == new.plan_digest
-        and [(entry.address, entry.digest) for entry in old.inputs]
-        == [(entry.address, entry.digest) for entry in new.inputs]
         and [(entry.name, entry.digest, entry.uncertainty) for entry in old.outputs]
         == [(entry.name, entry.digest, entry.uncertainty) for entry in new.outputs]
         and [(step.name, step.version) for step in old.steps]
         == [(step.name, step.version) for step in new.steps]
+        and same_inputs(source, old.inputs, new.inputs)
     )

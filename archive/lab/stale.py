@@ -3,16 +3,14 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, field
 
-import numpy as np
-
-from archive.errors import ArchiveError, UnknownAddress
+from archive.errors import UnknownAddress
 from archive.index import InputRow, ReductionRow
 from archive.lab.reducing import current_plans
+from archive.lab.repeating import repeats
 from archive.lab.revisions import Revisions
 from archive.lab.source import LabSource
-from archive.reduction.estimate import Estimate
 from schemas.acts import AmendmentDocument, RevisionDocument
 from schemas.address import parse_address
 
@@ -220,22 +218,8 @@ class _Known:
         if output is None:
             return False
         if (old, now, output) not in self._compared:
-            try:
-                one, other = (self._source.output(each, output) for each in (old, now))
-            except ArchiveError:
-                return False
-            # Parameters of a fit are sources of uncertainty under the name of the reduction that fitted them.
-            named = {name.replace(f"{old} ", f"{now} "): part for name, part in one.shared.items()}
-            self._compared[old, now, output] = _equal(replace(one, shared=named), other)
+            self._compared[old, now, output] = repeats(self._source, old, now, output)
         return self._compared[old, now, output]
-
-
-def _equal(one: Estimate, other: Estimate) -> bool:
-    if (one.quantity, one.scale, one.shared.keys()) != (other.quantity, other.scale, other.shared.keys()):
-        return False
-    pairs = [(one.value, other.value), (one.points, other.points)]
-    pairs += [(one.shared[name], other.shared[name]) for name in one.shared]
-    return all(np.array_equal(left, right, equal_nan=True) for left, right in pairs)
 
 
 def _ordered(rows: list[ReductionRow], known: _Known) -> list[ReductionRow]:

@@ -318,6 +318,18 @@ def test_rows_left_out_afterwards_are_left_out_with_their_reason(lab: Archive, s
     assert any("5 of 60 points" in each["sentence"] and "door" in each["sentence"] for each in steps)
 
 
+def test_a_new_number_of_what_a_reduction_rests_on_alone_makes_no_new_one(lab: Archive) -> None:
+    (repeated,) = lab.reduce("2026-03/s001", plan="empty-cell", monte_carlo=Request(trials=2))
+    assert repeated.address == f"{EMPTY}.2"
+    assert stale_now(lab) == {}
+    (again,) = lab.reduce("2026-03", plan="filling")
+    assert (again.address, again.already) == (f"{FILLING}.1", True)
+    # What rests on something withdrawn is made anew, though its numbers are the same.
+    lab.withdraw(f"{EMPTY}.1", why="it was made without drawn inputs", by="data steward")
+    (anew,) = lab.reduce("2026-03", plan="filling")
+    assert (anew.address, anew.already) == (f"{FILLING}.2", False)
+
+
 @pytest.mark.parametrize(
     ("written", "said"),
     [

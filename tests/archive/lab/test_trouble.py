@@ -138,7 +138,7 @@ def test_a_reduction_that_cannot_be_sealed_stops_no_other(
     """Each outcome carries its own problem."""
     sqlite_lab.ingest(folder)
     count = len(sqlite_lab.reduce("2026-03"))
-    monkeypatch.setattr("archive.lab.carrying._same", lambda old, new: False)
+    monkeypatch.setattr("archive.lab.carrying._same", lambda *_: False)
     monkeypatch.setattr(sqlite_lab, "_seal_reduction", raiser(ArchiveError("the disk is full")))
     outcomes = sqlite_lab.reduce("2026-03")
     assert len(outcomes) == count
