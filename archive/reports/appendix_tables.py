@@ -84,7 +84,8 @@ def number_and_unit(output: OutputEntry) -> tuple[Shown, Shown]:
         Quantity(value=output.value, uncertainty=spread, unit=output.unit, kind=output.quantity)
     )
     unit = parse_unit(shown.unit)
-    return _digits(shown.value, shown.uncertainty), Shown(
+    # What was counted is exact.
+    return _digits(shown.value, shown.uncertainty, setting=output.quantity == "count"), Shown(
         shown.unit, unit.typographic, Tex(rf"$\mathrm{{{unit.latex}}}$")
     )
 

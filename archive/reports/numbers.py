@@ -173,6 +173,8 @@ def _of(
     setting: bool = False,
     unit_shown: str | None = None,
 ) -> Shown:
+    # What was counted is exact: an order, a number of lines.
+    setting = setting or kind == "count"
     # A zero uncertainty in a document says that none is known, not that the value is exact.
     spread = u if u is not None and math.isfinite(u) and u > 0 else None
     if spread is None and not setting:

@@ -6,6 +6,7 @@ import math
 
 import pytest
 
+from archive.reports.appendix_tables import number_and_unit
 from archive.reports.numbers import shown, shown_output, shown_value
 from archive.reports.prose import prose, symbol_of
 from schemas.lineage import OutputEntry, Value
@@ -40,6 +41,21 @@ def test_what_is_no_number_is_said_to_be_lost(value):
 
 def test_an_uncertainty_of_zero_is_never_shown_as_exact():
     assert shown_value(Value(value=1.5, uncertainty=0.0, unit="K"), "temperature").plain == "1.5 K [u nr]"
+
+
+def test_what_was_counted_is_exact():
+    order = OutputEntry(
+        name="order",
+        quantity="count",
+        unit="1",
+        description="highest power",
+        step=1,
+        value=5.0,
+        digest="0" * 64,
+    )
+    shape = order.model_copy(update={"quantity": "number"})
+    assert (shown_output(order).plain, number_and_unit(order)[0].plain) == ("5", "5")
+    assert (shown_output(shape).plain, number_and_unit(shape)[0].plain) == ("5 [u nr]", "5 [u nr]")
 
 
 def test_a_verdict_stands_in_place_of_a_number():
