@@ -83,11 +83,11 @@ def amend(
     try:
         document = _with_effect(source, document)
     except ArchiveError as problem:
-        number = _refused_change(source, document)
-        wrong = None if number is None else sheet.change[number].value
+        refused = _refused_change(source, document)
+        wrong = None if refused is None else sheet.change[refused].value
         said = reading.fault(
-            problem.what, *(("change", 0) if number is None else ("change", number, "value")),
-            field=problem.field if number is None else f"change[{number + 1}].value",
+            problem.what, *(("change", 0) if refused is None else ("change", refused, "value")),
+            field=problem.field if refused is None else f"change[{refused + 1}].value",
             found=None if wrong is None else json.dumps(wrong, ensure_ascii=False)[:80], remedy="correct the amendment",
         )  # fmt: skip
         return ActOutcome("refused", findings=(said,))
