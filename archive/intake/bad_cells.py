@@ -2,14 +2,14 @@
 
 from __future__ import annotations
 
-from archive.intake.dialect import BadCell
+from archive.intake.dialect import DETAILED, BadCell
 from archive.intake.reading import Reading
 from schemas.finding import Finding
 from schemas.sweep import Sweep
 
 __all__ = ["report_cells"]
 
-_SHOWN_CELLS = 1000
+_SHOWN_CELLS = DETAILED
 _EVERYWHERE = 20
 """As many rows with one and the same fault are not listed one by one when hardly a row is without it."""
 

@@ -59,7 +59,7 @@ def numbers(
     absent : numpy.ndarray of bool
         Cells that are empty or `NaN`; they are not among the faults.
     faults : dict of int to str
-        Reason per index of every other cell that is not a finite number; the first thousand are looked at closely.
+        Reason per index of every other cell that is not a finite number; the first ten thousand are looked at closely.
 
     Examples
     --------

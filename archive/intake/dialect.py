@@ -18,7 +18,7 @@ from schemas.sweep import Dialect
 
 __all__ = ["BadCell", "BadCells", "Block", "ColumnRequest", "dialect_faults", "require_usable"]
 
-DETAILED: Final = 1000
+DETAILED: Final = 10_000
 """Bad cells that are kept word for word; beyond that they are only counted."""
 
 SHOWN: Final = 80
@@ -102,7 +102,7 @@ class Block:
 
 
 class BadCells:
-    """Bad cells of one file in file order: the first thousand in detail, all of them counted."""
+    """Bad cells of one file in file order: the first ten thousand in detail, all of them counted."""
 
     def __init__(self, file: str) -> None:
         self.file = file

@@ -7,6 +7,7 @@ so that one pass finds everything. Cells must end on their line: a quoted line b
 
 from __future__ import annotations
 
+import re
 from collections.abc import Callable, Iterable, Iterator, Sequence
 from pathlib import Path
 from typing import Any, BinaryIO
@@ -25,6 +26,10 @@ from archive.intake.timestamps import TimeStamps
 from schemas.sweep import Dialect
 
 __all__ = ["TableReader", "read_header"]
+
+_REFUSED = re.compile(r"^In CSV column #(\d+): ")
+_ONE_BY_ONE = 3  # columns that are taken for text one by one, each after a reading that was refused
+_BLOCKS_AS_TEXT = 8  # blocks until a column that was taken for text is tried as numbers again
 
 
 class TableReader:
@@ -48,7 +53,7 @@ class TableReader:
     Attributes
     ----------
     bad_cells : list of BadCell
-        The first thousand, in file order. Complete after `blocks` has ended, like the following.
+        The first ten thousand, in file order. Complete after `blocks` has ended, like the following.
     bad_cell_count : int
         All of them.
     rows : int
@@ -98,7 +103,7 @@ class TableReader:
         )
         self._header = Header(dialect, self._rows, self._bad)
         self._places: dict[str, int] | None = None
-        self._typed = True
+        self._texts: dict[str, int] = {}
         self.rows = 0
 
     @property
@@ -117,7 +122,7 @@ class TableReader:
 
     @property
     def bad_cells(self) -> list[BadCell]:
-        """The first thousand bad cells, in file order."""
+        """The first ten thousand bad cells, in file order."""
         return self._bad.detailed
 
     @property
@@ -159,6 +164,7 @@ class TableReader:
 
     def _block(self, data: bytes, lines: npt.NDArray[np.int64], first: int) -> Block:
         table, lines = self._table(data, lines)
+        self._settle_texts()
         block = Block(first_line=first, columns={}, lines=lines, sentinel={})
         for request in self._columns:
             place = self._placed.get(request.name)
@@ -174,23 +180,42 @@ class TableReader:
         return block
 
     def _table(self, data: bytes, lines: npt.NDArray[np.int64]) -> tuple[pa.Table, npt.NDArray[np.int64]]:
-        """Return the asked columns, as numbers if all of them allow it, else as text; ragged rows are reported."""
-        if self._typed:
-            # Most blocks are clean: then Arrow reads the numbers itself, three times faster than through text.
+        """Return the asked columns, as numbers where all cells of one allow it, else as text; ragged rows are reported."""
+        # Most columns are clean in most blocks: then Arrow reads the numbers itself, many times faster than through text.
+        # Its refusal costs a reading, so that after a few columns all that are left are taken for text.
+        table: pa.Table | None = None
+        while table is None:
             try:
-                table, ragged = self._parsed(data, typed=True)
-            except pa.ArrowInvalid:
-                self._typed = False
-            else:
-                if table.num_rows + len(ragged) == len(lines) and self._clean(table):
-                    return table, self._without_ragged(ragged, lines)
-        try:
-            table, ragged = self._parsed(data, typed=False)
-        except pa.ArrowInvalid as error:
-            return self._nothing(lines, str(error))
+                table, ragged = self._parsed(data)
+            except pa.ArrowInvalid as error:
+                told = _REFUSED.search(str(error))
+                column = str(told[1]) if told else ""
+                if column not in self._numbers:
+                    return self._nothing(lines, str(error))
+                self._take_as_text({column})
+                continue
+            if unclean := self._unclean(table):
+                self._take_as_text(unclean)
+                table = None
         if table.num_rows + len(ragged) != len(lines):
             return self._nothing(lines, f"{table.num_rows + len(ragged)} rows on {len(lines)} lines")
         return table, self._without_ragged(ragged, lines)
+
+    @property
+    def _numbers(self) -> set[str]:
+        """Columns that are asked for as numbers alone and not known to hold anything else; by their place."""
+        # One column can be asked for twice, as text and as number; then it is read as text.
+        other = {self._placed.get(request.name) for request in self._columns if request.kind != "number"}
+        return {str(place) for place in self._placed.values() if place not in other} - self._texts.keys()
+
+    def _take_as_text(self, columns: set[str]) -> None:
+        if len(self._texts) + len(columns) > _ONE_BY_ONE:
+            columns = self._numbers
+        self._texts |= dict.fromkeys(columns, _BLOCKS_AS_TEXT)
+
+    def _settle_texts(self) -> None:
+        """Give columns that held something else than numbers another chance after some blocks."""
+        self._texts = {column: left - 1 for column, left in self._texts.items() if left > 1}
 
     def _nothing(self, lines: npt.NDArray[np.int64], why: str) -> tuple[pa.Table, npt.NDArray[np.int64]]:
         # No table is known that comes here: `Rows` leaves no line that could be split in two ways. If one does,
@@ -200,7 +225,7 @@ class TableReader:
         nothing = {str(place): pa.array([], pa.string()) for place in self._placed.values()}
         return pa.table(nothing), lines[:0]
 
-    def _parsed(self, data: bytes, *, typed: bool) -> tuple[pa.Table, list[tuple[int, int, str]]]:
+    def _parsed(self, data: bytes) -> tuple[pa.Table, list[tuple[int, int, str]]]:
         ragged: list[tuple[int, int, str]] = []
 
         def skip(row: Any) -> str:
@@ -208,10 +233,7 @@ class TableReader:
             return "skip"
 
         types = {str(place): pa.string() for place in self._placed.values()} or {"0": pa.string()}
-        if typed:
-            # One column can be asked for twice, as text and as number; then it is read as text.
-            other = {self._placed.get(request.name) for request in self._columns if request.kind != "number"}
-            types |= {str(place): pa.float64() for place in self._placed.values() if place not in other}
+        types |= dict.fromkeys(self._numbers, pa.float64())
         quote = self._dialect.quote
         table = csv.read_csv(
             pa.BufferReader(data),
@@ -240,13 +262,14 @@ class TableReader:
         )
         return table, ragged
 
-    def _clean(self, table: pa.Table) -> bool:
-        """Whether every number can stand as Arrow read it."""
-        return all(
-            stands_as_read(request, table.column(str(self._placed[request.name])))
+    def _unclean(self, table: pa.Table) -> set[str]:
+        """Return the columns of which a number cannot stand as Arrow read it."""
+        asked = {
+            str(self._placed[request.name]): request
             for request in self._columns
             if request.kind == "number" and request.name in self._placed
-        )
+        }
+        return {place for place, request in asked.items() if not stands_as_read(request, table.column(place))}
 
     def _without_ragged(
         self, ragged: list[tuple[int, int, str]], lines: npt.NDArray[np.int64]

@@ -9,6 +9,7 @@ Written after RFC 3339 (2002), sections 4.3, 5.6 and 5.7, and PEP 495 (2015) for
 
 from __future__ import annotations
 
+import re
 from datetime import datetime, timedelta, tzinfo
 from typing import Any, Final, Literal
 from zoneinfo import ZoneInfo
@@ -20,6 +21,7 @@ import pyarrow.compute as pc
 
 from archive.errors import BadRequest
 from archive.intake.cells import as_mask, numbers
+from archive.intake.even_stamps import even_parts
 from archive.intake.time_formats import time_pattern
 
 __all__ = ["EARLIEST", "LATEST", "TimeStamps"]
@@ -123,14 +125,10 @@ class TimeStamps:
         """
         if self._pattern is None:
             return self._epoch(texts, known)
-        bare = pc.utf8_trim_whitespace(texts)
-        groups = pc.extract_regex(bare, self._pattern)
-        matched = as_mask(groups.is_valid())
-        part = {f.name: groups.field(i) for i, f in enumerate(groups.type)}
+        part, fraction, matched = self._parts(texts)
         faults: Faults = {}
         whole, bad = _calendar_seconds(part, matched)
         self._note(faults, bad & matched, "names a day or time that does not exist")
-        fraction = _fraction(part["f"]) if "f" in part else np.zeros(len(texts))
         good = matched & ~bad
         offset, without = self._offsets(part, whole, good, faults)
         whole = whole - offset
@@ -149,6 +147,22 @@ class TimeStamps:
         )
         seconds[list(faults)] = np.nan
         return seconds, faults
+
+    def _parts(
+        self, texts: pa.StringArray
+    ) -> tuple[dict[str, Any], npt.NDArray[np.float64], npt.NDArray[np.bool_]]:
+        """Return the parts of stamps by name, fractions of seconds, and which stamps have the format at all."""
+        pattern = self._pattern or ""
+        even = even_parts(texts, re.compile(pattern, re.ASCII))
+        if even is not None:
+            part, width = even
+            # Both powers and digits are exact in a double (below 1e9), so that the quotient is the nearest double.
+            fraction = part["f"] / 10.0**width if "f" in part else np.zeros(len(texts))
+            return part, fraction, np.ones(len(texts), dtype=np.bool_)
+        groups = pc.extract_regex(pc.utf8_trim_whitespace(texts), pattern)
+        matched = as_mask(groups.is_valid())
+        part = {f.name: groups.field(i) for i, f in enumerate(groups.type)}
+        return part, _fraction(part["f"]) if "f" in part else np.zeros(len(texts)), matched
 
     def _epoch(
         self, texts: pa.StringArray, known: npt.NDArray[np.bool_] | None
@@ -216,6 +230,8 @@ def _zone(name: str) -> tzinfo:
 
 def _integer(texts: Any) -> Ints:
     """Return digits as numbers; an empty text, of a part that does not stand there, is 0."""
+    if isinstance(texts, np.ndarray):
+        return texts
     filled = pc.if_else(pc.equal(texts, ""), "0", pc.fill_null(texts, "0"))
     return np.asarray(pc.cast(filled, pa.int64()).to_numpy(zero_copy_only=False), dtype=np.int64)
 
@@ -224,7 +240,6 @@ def _fraction(texts: Any) -> npt.NDArray[np.float64]:
     width = np.asarray(
         pc.fill_null(pc.utf8_length(texts), 0).to_numpy(zero_copy_only=False), dtype=np.float64
     )
-    # Both powers and digits are exact in a double (below 1e9), so that the quotient is the nearest double.
     return _integer(texts) / 10.0**width
 
 

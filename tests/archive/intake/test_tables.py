@@ -299,12 +299,12 @@ def test_lines_are_right_across_three_blocks() -> None:
     )
 
 
-def test_ten_thousand_bad_cells_are_all_counted() -> None:
-    content = b"a,b\n" + b"".join(b"%d,bad%d\n" % (row, row) for row in range(10_000))
+def test_ten_thousand_bad_cells_are_named_and_all_are_counted() -> None:
+    content = b"a,b\n" + b"".join(b"%d,bad%d\n" % (row, row) for row in range(10_005))
     _, _, _, reader = read(content, number("b"), block_bytes=4096)
-    assert reader.bad_cell_count == 10_000
+    assert reader.bad_cell_count == 10_005
     assert len(reader.bad_cells) == DETAILED
-    assert (reader.bad_cells[-1].line, reader.bad_cells[-1].found) == (1001, "bad999")
+    assert (reader.bad_cells[-1].line, reader.bad_cells[-1].found) == (10_001, "bad9999")
 
 
 def test_a_long_bad_cell_is_shown_shortened() -> None:
@@ -472,3 +472,26 @@ def test_rows_that_arrow_does_not_split_as_expected_are_never_taken(
     values, _, lines, reader = read(b"a\n1\n2\n", number("a"))
     assert (values["x"].tolist(), lines) == ([], [])
     assert [(cell.line, "cannot be read" in cell.why) for cell in reader.bad_cells] == [(2, True)]
+
+
+def test_one_wrong_cell_makes_text_of_its_column_for_some_blocks_only() -> None:
+    """Columns beside it, and its own some blocks later, are read as numbers at once; nothing of the result shows it."""
+    rows = [f"{n},{n}.5,{-n}" for n in range(4000)]
+    rows[1000] = "1000,1000.5.5,-1000"
+    seen: list[set[str]] = []
+    reader = TableReader(
+        io.BytesIO(("a,b,c\n" + "\n".join(rows) + "\n").encode()),
+        file="log.csv",
+        dialect=Dialect(),
+        columns=[number(name, name=name) for name in "abc"],
+        block_bytes=1024,
+    )
+    sums = np.zeros(3)
+    for block in reader.blocks():
+        seen.append(set("012") - reader._numbers)
+        sums += [np.nansum(block.columns[name]) for name in "abc"]
+    assert [(cell.line, cell.column) for cell in reader.bad_cells] == [(1002, '2 "b"')]
+    assert sums.tolist() == [4000 * 3999 / 2, 4000 * 3999 / 2 + 3999 * 0.5 - 1000, -4000 * 3999 / 2]
+    assert {frozenset(each) for each in seen} == {frozenset(), frozenset({"1"})}
+    assert not seen[0]
+    assert not seen[-1]

@@ -186,3 +186,26 @@ def test_local_times_are_those_of_the_standard_library(moments: list[datetime], 
             exact = (aware - datetime(1970, 1, 1, tzinfo=UTC)) / timedelta(seconds=1)
             assert index not in faults
             assert values[index] == pytest.approx(exact, abs=5e-7)  # two units in the last place of a double
+
+
+EVEN = {
+    "offset": ("iso8601", None, ["2026-03-01T23:59:59.250+02:00", "2026-03-02T00:00:00.750+02:00"]),
+    "offsets that change": ("iso8601", None, ["2026-03-29T02:59:59+02:00", "2026-03-29T04:00:00+03:00"]),
+    "local": ("iso8601", "Europe/Helsinki", ["2026-03-29 02:59:59", "2026-03-29 04:00:00"]),
+    "month in letters": ("%d %b %Y %H:%M:%S.%f", "UTC", ["01 Mar 2026 10:00:00.5", "02 Mar 2026 10:00:00.5"]),
+    "afternoon": ("%j/%Y %I:%M %p", "UTC", ["061/2026 12:30 pm", "062/2026 01:30 pm"]),
+    "no such day": ("iso8601", None, ["2026-02-28T10:00:00Z", "2026-02-29T10:00:00Z"]),
+    "leap second": ("iso8601", None, ["2016-12-31T23:59:60Z", "2016-12-31T23:58:60Z"]),
+    "a letter for a digit": ("iso8601", None, ["2026-03-01T10:00:00Z", "2026-03-01T1O:00:00Z"]),
+    "a colon for a digit": ("iso8601", None, ["2026-03-01T10:00:00Z", "2026-03-01T10:0:000Z"]),
+}
+
+
+@pytest.mark.parametrize(("time_format", "zone", "texts"), EVEN.values(), ids=EVEN.keys())
+def test_stamps_that_are_written_alike_are_read_as_single_ones_are(time_format, zone, texts):
+    """One more stamp with a blank before it is not like the others, so that all are read singly."""
+    stamps = TimeStamps(time_format=time_format, time_zone=zone)
+    even, even_faults = stamps.seconds(pa.array(texts))
+    single, single_faults = stamps.seconds(pa.array([*texts, " " + texts[0]]))
+    assert even.tobytes() == single[:-1].tobytes()
+    assert even_faults == {index: why for index, why in single_faults.items() if index < len(texts)}
