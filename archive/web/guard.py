@@ -34,7 +34,7 @@ HEADERS = {
     "Cross-Origin-Resource-Policy": "same-origin",
     "Cross-Origin-Opener-Policy": "same-origin",
 }
-"""On every answer."""
+"""On every answer; one that needs another policy, such as a run sheet, brings its own."""
 
 ANY_ADDRESS = "*"
 """In `hosts`: any number of an address is welcome too, since a number cannot be given another meaning."""
@@ -135,7 +135,7 @@ def _with_headers(send: Send) -> Send:
         if message["type"] == "http.response.start":
             headers = MutableHeaders(scope=message)
             for name, value in HEADERS.items():
-                headers[name] = value
+                headers.setdefault(name, value)
             headers.setdefault("Cache-Control", "private, no-cache")
         await send(message)
 

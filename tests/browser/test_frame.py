@@ -43,7 +43,7 @@ def test_nothing_jumps_and_a_small_screen_is_enough(page: Page) -> None:
     for path in PAGES:
         page.goto(path)
         assert page.evaluate(_SHIFT) == 0, path
-    page.set_viewport_size({"width": 360, "height": 740})
+    page.set_viewport_size({"width": 320, "height": 740})
     for path in PAGES:
         page.goto(path)
         assert page.evaluate(_OVERFLOW) <= 0, path
@@ -90,6 +90,13 @@ def test_a_stroke_of_the_time_line_opens_its_sweep(page: Page) -> None:
     stroke.focus()
     page.keyboard.press("Enter")
     page.wait_for_url(f"**/at/{PLAIN}/s002")
+
+
+def test_a_run_sheet_opens_as_a_page_with_its_style(page: Page) -> None:
+    page.goto(f"/at/{PLAIN}")
+    page.get_by_role("link", name="page", exact=True).click()
+    page.wait_for_url(f"**/run-sheet/{PLAIN}.html")
+    assert page.evaluate("document.styleSheets[0].cssRules.length") > 5
 
 
 def test_a_point_of_a_life_story_opens_its_result(page: Page) -> None:

@@ -240,6 +240,7 @@ class Chart {
         setCursor: [u => { if (u.cursor.event || u.cursor.left >= 0) this.read(strip); }],
       },
     }, [[this.view[0], this.view[1]], [null, null]], box);
+    this.underFingers(strip.plot.over);
     strip.plot.over.addEventListener("dblclick", () => this.show(...this.whole));
     return strip;
   }
@@ -271,6 +272,29 @@ class Chart {
     this.zoom(event.deltaY < 0 ? 0.8 : 1.25, (event.clientX - box.left) / box.width);
   }
 
+  // One finger moves along the axis, two hold what is under them; up and down still scroll the page.
+  underFingers(over) {
+    const fingers = new Map();
+    let begun = null;
+    const share = event => { const box = over.getBoundingClientRect(); return (event.clientX - box.left) / box.width; };
+    const grip = () => { begun = { view: [...this.view], at: [...fingers.values()] }; };
+    const moved = () => {
+      const [low, high] = begun.view, under = begun.at.map(at => low + at * (high - low)), [one, two] = fingers.values();
+      if (fingers.size === 1) this.move(under[0] - one * (high - low), high - low);
+      if (fingers.size !== 2 || Math.abs(two - one) < 0.02 || (two > one) !== (under[1] > under[0])) return;
+      const width = (under[1] - under[0]) / (two - one);
+      this.show(under[0] - one * width, under[0] - one * width + width);
+    };
+    over.addEventListener("pointerdown", event => {
+      if (event.pointerType !== "touch") return;
+      fingers.set(event.pointerId, share(event));
+      over.setPointerCapture(event.pointerId);
+      grip();
+    });
+    over.addEventListener("pointermove", event => { if (fingers.has(event.pointerId)) { fingers.set(event.pointerId, share(event)); moved(); } });
+    for (const end of ["pointerup", "pointercancel"]) over.addEventListener(end, event => { if (fingers.delete(event.pointerId)) grip(); });
+  }
+
   zoom(factor, about = 0.5) {
     const [low, high] = this.view, middle = low + about * (high - low);
     this.show(middle - (middle - low) * factor, middle + (high - middle) * factor);
@@ -278,8 +302,13 @@ class Chart {
 
   pan(share) {
     const width = this.view[1] - this.view[0];
-    const low = Math.min(Math.max(this.view[0] + share * width, this.whole[0]), this.whole[1] - width);
-    this.show(low, low + width);
+    this.move(this.view[0] + share * width, width);
+  }
+
+  // Show a part of this width, as far as there are rows.
+  move(begin, width) {
+    const low = Math.min(Math.max(begin, this.whole[0]), this.whole[1] - width);
+    if (low !== this.view[0]) this.show(low, low + width);
   }
 
   show(low, high) {

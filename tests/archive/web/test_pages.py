@@ -206,6 +206,12 @@ def test_run_sheets_are_handed_over(client: TestClient) -> None:
     sheet = client.get(f"/run-sheet/{PLAIN}.json")
     assert sheet.json()["format"] == "stillroom-run-sheet/1"
     assert sheet.headers["content-disposition"] == f'attachment; filename="run-sheet-{PLAIN}.json"'
+    page = client.get(f"/run-sheet/{PLAIN}.html")
+    policy = page.headers.get_list("content-security-policy")
+    assert len(policy) == 1
+    assert "script" not in policy[0]
+    assert "unsafe" not in policy[0]
+    assert page.headers["content-disposition"].startswith("inline")
     assert client.get(f"/run-sheet/{PLAIN}.exe").status_code == 404
     assert client.get("/run-sheet/2025-12.pdf").status_code == 404
 
