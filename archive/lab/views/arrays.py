@@ -168,13 +168,28 @@ class ArrayView(Mapping[str, NDArray[np.float64]]):
         x, y = hours(chosen[0]), chosen[1]
         from archive.reports.svg import Series, axis_of, plot  # as below
 
-        across, up = axis_of(x.label, [x.values]), axis_of(y.label, [y.values])
+        (X, across_name), (Y, up_name) = _on_axis(x), _on_axis(y)
+        across, up = axis_of(across_name, [X]), axis_of(up_name, [Y])
         if across is None or up is None:
             return ""
         label = f"{y.label} against {x.label} of {self.address}"
-        return plot(
-            across, up, [Series(x.values, y.values, marks=True)], label=label, width=110.0, height=64.0
-        )
+        drawn = plot(across, up, [Series(X, Y, marks=True)], label=label, width=110.0, height=64.0)
+        # The ink of the page around it: black would not be seen on a dark one.
+        return drawn.replace('"#000"', '"currentColor"').replace("<svg ", '<svg fill="currentColor" ', 1)
+
+
+def _on_axis(column: Column) -> tuple[NDArray[np.float64], str]:
+    """Values as a small plot writes them, less a round offset where they hardly differ, and the name of the axis."""
+    from archive.reports.axis_units import (
+        axis_unit,
+    )  # what draws takes longer to import than a search to answer
+    from schemas.kinds import KINDS
+
+    ends = _ends(column.values[np.isfinite(column.values)])
+    if column.kind not in KINDS or column.kind == "time" or not ends:
+        return column.values, column.label
+    unit = axis_unit(ends[0], ends[1], column.kind, column.unit)
+    return (column.values - unit.offset) * unit.factor, unit.name
 
 
 def _line(column: Column) -> tuple[str, ...]:

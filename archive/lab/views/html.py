@@ -7,6 +7,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Mapping, Sequence
 from html import escape
+from unicodedata import category
 
 __all__ = ["described", "fragment", "grid"]
 
@@ -15,8 +16,12 @@ _CELL = "padding:0.1em 0.8em 0.1em 0;text-align:left;vertical-align:top"
 
 def _text(text: object) -> str:
     # Control codes and lone surrogates have no place in HTML (HTML Living Standard, 13.2.3.5).
+    # Thin and unbroken spaces stand between digits and units; Python does not count them as printable.
     plain = "".join(
-        sign if sign.isprintable() or sign in "\t\n" else "\N{REPLACEMENT CHARACTER}" for sign in str(text)
+        sign
+        if sign.isprintable() or sign in "\t\n" or category(sign) == "Zs"
+        else "\N{REPLACEMENT CHARACTER}"
+        for sign in str(text)
     )
     return escape(plain)
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 import sys
 from collections.abc import Iterator
 from pathlib import Path
@@ -165,6 +166,17 @@ def test_a_sweep_shows_a_small_picture_with_named_axes(sweep: SweepView) -> None
     page = sweep._repr_html_()
     assert "<svg" in page
     assert "period/ms against temperature/K of 2026-03/s001" in page
+    # 1 ms + 1e-6 T ms from 0.2 K to 0.79 K: less an offset, in ps. In the ink of the page, dark or light.
+    assert re.search(r"\(P \u2212 1\.0+ ms\) / ps", page)
+    assert "#000" not in page
+    assert page.count("currentColor") > 60
+
+
+def test_spaces_between_digits_and_units_are_kept(lab: Archive) -> None:
+    row = next(each for each in lab.results() if each.unit == "K")
+    shown = lab.result(f"{row.reduction}#{row.name}")._repr_html_()
+    assert "\N{REPLACEMENT CHARACTER}" not in shown
+    assert "\u00a0mK" in shown or "\u00a0K" in shown
 
 
 def test_text_of_files_is_escaped_everywhere() -> None:
