@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from functools import cache, lru_cache
 
-from sqlalchemy import and_, or_, select
+from sqlalchemy import and_, bindparam, or_, select
 
 from archive.index.act_tables import Amendment, AmendmentSweep, ReplacedRecord, Revision, Withdrawal
 from archive.index.conditions import part_of
@@ -59,15 +59,16 @@ def amendments(cooldown: str | None) -> Query:
     return found if cooldown is None else found.where(Amendment.cooldown == cooldown)
 
 
-def amendments_of_sweeps(sweeps: Sequence[str] | None = None) -> Query:
-    """Sweep and amendment, for each that counts, by sweep and number."""
+@cache
+def amendments_of_sweeps(*, some: bool = False) -> Query:
+    """Sweep and amendment, for each that counts, by sweep and number; of the sweeps `addresses` only if `some`."""
     found = (
         select(AmendmentSweep.sweep, AmendmentSweep.amendment)
         .join(Amendment, Amendment.address == AmendmentSweep.amendment)
         .where(~withdrawn(Amendment.address))
         .order_by(AmendmentSweep.sweep, Amendment.number)
     )
-    return found if sweeps is None else found.where(AmendmentSweep.sweep.in_(sweeps))
+    return found.where(AmendmentSweep.sweep.in_(bindparam("addresses", expanding=True))) if some else found
 
 
 @lru_cache(maxsize=64)

@@ -12,6 +12,7 @@ from __future__ import annotations
 import sqlite3
 from collections.abc import Iterable, Iterator, Sequence
 from contextlib import closing, contextmanager, suppress
+from dataclasses import replace
 from itertools import zip_longest
 from pathlib import Path
 from types import TracebackType
@@ -365,7 +366,17 @@ class Index:
                 found=query.after[:200],
                 remedy="begin the list anew",
             )
-        return self._sweeps(queries.search(query, amended=self._is_amended(), last=last))
+        with reading(self._engine, self._url) as connection:
+            amended = connection.execute(queries.anything_amended()).first() is not None
+            if connection.execute(queries.anything_withdrawn()).first() is None:
+                # Not to be asked of each sweep anew.
+                query = replace(query, withdrawn=True)
+            if not amended and queries.walks(query) and connection.execute(queries.many(query)).first():
+                found = sweep_rows(connection, queries.walked(query, last=last))
+                # Fewer may be the end of the list, or those without a date are still to come.
+                if len(found) == query.limit:
+                    return found
+            return sweep_rows(connection, queries.search(query, amended=amended, last=last))
 
     def plane_sweeps(
         self,

@@ -6,15 +6,32 @@ the version of the newest (for records: with the earliest) accession that holds 
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from functools import lru_cache
+from collections.abc import Iterator
+from dataclasses import replace
+from functools import cache, lru_cache
 from typing import Any
 
-from sqlalchemy import ColumnElement, Select, Table, and_, cast, exists, func, null, or_, select, union_all
+from sqlalchemy import (
+    ColumnElement,
+    Select,
+    Table,
+    UnaryExpression,
+    and_,
+    bindparam,
+    cast,
+    exists,
+    func,
+    null,
+    or_,
+    select,
+    union_all,
+)
 from sqlalchemy.orm import InstrumentedAttribute, aliased
+from sqlalchemy.sql.operators import custom_op
 
-from archive.index.act_tables import AmendedSweep, Revision
+from archive.index.act_tables import AmendedSweep, Revision, Withdrawal
 from archive.index.answers import SearchQuery, SweepRow
+from archive.index.columns import REAL
 from archive.index.conditions import named, part_of, search_conditions
 from archive.index.found import (
     column_found,
@@ -47,6 +64,7 @@ __all__ = [
     "accessions",
     "all_rows",
     "anything_amended",
+    "anything_withdrawn",
     "channel_names",
     "cooldown_names",
     "cooldown_newest",
@@ -55,6 +73,7 @@ __all__ = [
     "doses",
     "finding_counts",
     "findings",
+    "many",
     "plan_known",
     "plans",
     "raw_files",
@@ -69,6 +88,8 @@ __all__ = [
     "sweep_results",
     "sweeps",
     "thermometers",
+    "walked",
+    "walks",
 ]
 
 _BUILT = 512  # statements kept, since building one costs more than asking a small archive
@@ -157,6 +178,59 @@ def search(query: SearchQuery, *, amended: bool = False, last: SweepRow | None =
     return found.limit(query.limit).offset(query.offset or None)
 
 
+_MANY = 1_000
+
+
+def walks(query: SearchQuery) -> bool:
+    """Whether a search is for a cell, and perhaps a window of coverage, by date: then `walked` may be the shorter way."""
+    free = SearchQuery(
+        cell=query.cell,
+        coverage=query.coverage,
+        descending=query.descending,
+        limit=query.limit,
+        offset=query.offset,
+        after=query.after,
+        withdrawn=query.withdrawn,
+    )
+    one_cell = query.cell is not None and "." in query.cell
+    return query == free and one_cell and query.limit is not None and query.limit + query.offset <= _MANY // 2
+
+
+def many(query: SearchQuery) -> Query:
+    """Return one row if very many sweeps lie in the cell and the window of a search; no more of them are looked at than that."""
+    found = select(Sweep.coverage_mol_per_m2).where(
+        Sweep.cell == query.cell, *_window(query, Sweep.coverage_mol_per_m2)
+    )
+    return found.limit(1).offset(_MANY - 1)
+
+
+def _window(query: SearchQuery, column: Any) -> Iterator[ColumnElement[bool]]:
+    low, high = query.coverage or (None, None)
+    if query.coverage is not None:
+        yield column.is_not(None)
+    if low is not None:
+        yield column >= low
+    if high is not None:
+        yield column <= high
+
+
+def walked(query: SearchQuery, *, last: SweepRow | None = None) -> Query:
+    """Sweeps that satisfy a search and have a date, found by going through their cell by date.
+
+    Notes
+    -----
+    Short where very many sweeps satisfy it: sorting all of them to show fifty takes longer than meeting fifty on the way. SQLite cannot
+    know how many that are, and would go by coverage; the sign before the column, which changes no value, keeps it from that.
+    """
+    order = Sweep.begin.desc() if query.descending else Sweep.begin.asc()
+    unindexed = UnaryExpression(Sweep.coverage_mol_per_m2.expression, operator=custom_op("+"), type_=REAL)
+    conditions = search_conditions(replace(query, coverage=None), amended=False)
+    found = _sweeps(amended=False).where(*conditions, *_window(query, unindexed), Sweep.begin.is_not(None))
+    if last is not None:
+        found = found.where(_behind(query, last, amended=False))
+    return found.order_by(order, Sweep.address).limit(query.limit).offset(query.offset or None)
+
+
 def _behind(query: SearchQuery, last: SweepRow, *, amended: bool) -> ColumnElement[bool]:
     """Whether a sweep stands behind another in the order of a search: by the first column in which the two differ."""
     shown = {column: label for label, column in _SWEEP.items()}
@@ -192,39 +266,53 @@ def sweeps(
     return found if address is None else found.where(Sweep.address == address)
 
 
+@cache
 def anything_amended() -> Query:
     """One row if any sweep is amended."""
     return select(AmendedSweep.act).limit(1)
 
 
-def thermometers(addresses: Sequence[str]) -> Query:
-    """Return accession, sweep and thermometer of some sweeps, in all their versions."""
+@cache
+def anything_withdrawn() -> Query:
+    """One row if anything was ever withdrawn."""
+    return select(Withdrawal.address).limit(1)
+
+
+@cache
+def thermometers() -> Query:
+    """Return accession, sweep and thermometer of the sweeps `addresses`, in all their versions."""
     return (
         select(Sweep.accession, Sweep.address, SweepThermometer.thermometer)
         .join(
             Sweep, and_(Sweep.accession == SweepThermometer.accession, Sweep.name == SweepThermometer.sweep)
         )
-        .where(Sweep.address.in_(addresses))
+        .where(Sweep.address.in_(bindparam("addresses", expanding=True)))
         .order_by(Sweep.accession, Sweep.address, SweepThermometer.position)
     )
 
 
-def channel_names(addresses: Sequence[str]) -> Query:
-    """Return accession, sweep and channel of some sweeps, in all their versions."""
+@cache
+def channel_names() -> Query:
+    """Return accession, sweep and channel of the sweeps `addresses`, in all their versions."""
     return (
         select(Sweep.accession, Sweep.address, Channel.name)
         .join(Sweep, and_(Sweep.accession == Channel.accession, Sweep.name == Channel.sweep))
-        .where(Sweep.address.in_(addresses))
+        .where(Sweep.address.in_(bindparam("addresses", expanding=True)))
         .order_by(Sweep.accession, Sweep.address, Channel.position)
     )
 
 
-def sweep_results(addresses: Sequence[str]) -> Query:
-    """Results of the newest reductions of some sweeps, headline ones first within a plan."""
+@cache
+def sweep_results() -> Query:
+    """Results of the newest reductions of the sweeps `addresses`, headline ones first within a plan."""
     return (
         select(Reduction.sweep, Output.name, Output.value, Output.uncertainty, Output.unit, Output.verdict)
         .join(Output, Output.reduction == Reduction.address)
-        .where(Reduction.sweep.in_(addresses), Output.rows.is_(None), newest_reduction())
+        .where(
+            Reduction.sweep.in_(bindparam("addresses", expanding=True)),
+            Output.rows.is_(None),
+            newest_reduction(),
+        )
         .order_by(
             Reduction.sweep, Output.headline.is_(None), Reduction.plan, Output.headline, Output.position
         )

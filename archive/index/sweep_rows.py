@@ -34,14 +34,14 @@ def sweep_rows(connection: Connection, query: queries.Query) -> list[SweepRow]:
     channels: dict[tuple[str, str], list[str]] = defaultdict(list)
     results = results_of(connection, addresses)
     amended: dict[str, list[str]] = defaultdict(list)
-    withdrawn = _withdrawn(connection)
+    withdrawn = _withdrawn(connection) if connection.execute(queries.anything_withdrawn()).first() else {}
     flagged = flagged_now(connection) if withdrawn else {}
     for some in _pieces(addresses):
-        for accession, address, thermometer in connection.execute(queries.thermometers(some)):
+        for accession, address, thermometer in connection.execute(queries.thermometers(), some):
             thermometers[accession, address].append(thermometer)
-        for accession, address, channel in connection.execute(queries.channel_names(some)):
+        for accession, address, channel in connection.execute(queries.channel_names(), some):
             channels[accession, address].append(channel)
-        for address, amendment in connection.execute(act_queries.amendments_of_sweeps(some)):
+        for address, amendment in connection.execute(act_queries.amendments_of_sweeps(some=True), some):
             amended[address].append(amendment)
     return [
         SweepRow(
@@ -75,7 +75,7 @@ def results_of(connection: Connection, addresses: Sequence[str]) -> dict[str, li
     """
     results: dict[str, list[SweepResult]] = defaultdict(list)
     for some in _pieces(addresses):
-        for address, *result in connection.execute(queries.sweep_results(some)):
+        for address, *result in connection.execute(queries.sweep_results(), some):
             results[address].append(SweepResult(*result))
     return dict(results)
 
@@ -87,6 +87,6 @@ def _withdrawn(connection: Connection) -> dict[str, str]:
     return {row.target: row.sentence() for row in found}
 
 
-def _pieces(addresses: Sequence[str]) -> Iterator[Sequence[str]]:
+def _pieces(addresses: Sequence[str]) -> Iterator[dict[str, Sequence[str]]]:
     for begin in range(0, len(addresses), _AT_ONCE):
-        yield addresses[begin : begin + _AT_ONCE]
+        yield {"addresses": addresses[begin : begin + _AT_ONCE]}
