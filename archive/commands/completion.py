@@ -9,13 +9,12 @@ import click
 from click.shell_completion import BashComplete, add_completion_class, get_completion_class, split_arg_string
 from typing_extensions import override
 
+from archive.commands.offered import VARIABLE
+
 if TYPE_CHECKING:
     from click.shell_completion import CompletionItem
 
-__all__ = ["VARIABLE", "completion", "prepare"]
-
-VARIABLE: Final = "_STILLROOM_COMPLETE"
-"""Environment variable by which a shell's script asks for words."""
+__all__ = ["completion", "prepare"]
 
 _SHELLS: Final = ("bash", "zsh", "fish")
 # Where bash breaks words beside blanks (Bash Reference Manual, COMP_WORDBREAKS); addresses hold both signs.

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import os
 import sys
+from importlib import import_module
 from pathlib import Path
 from typing import Final
 
@@ -15,76 +16,80 @@ import click
 from typing_extensions import override
 
 from archive import __version__
-from archive.commands import (
-    acts_commands,
-    archive_commands,
-    bench_commands,
-    calibration_commands,
-    compare_command,
-    completion,
-    demo_command,
-    exchange_commands,
-    intake_commands,
-    keeping_commands,
-    lineage_commands,
-    plane_command,
-    reduce_commands,
-    report_commands,
-    search_command,
-    serve_command,
-    tour_command,
-)
 from archive.commands.failures import EXIT_INTERRUPTED, GuardedGroup
-from archive.commands.offered import offer
+from archive.commands.offered import VARIABLE, offer
 from archive.commands.terminal import note
 
 __all__ = ["main", "stillroom"]
 
-_COMMANDS: Final = (
-    demo_command.demo,
-    tour_command.tour,
-    archive_commands.init,
-    intake_commands.schema,
-    intake_commands.draft,
-    intake_commands.check,
-    intake_commands.ingest,
-    reduce_commands.plans,
-    reduce_commands.reduce,
-    acts_commands.stale,
-    acts_commands.revise,
-    acts_commands.amend,
-    acts_commands.withdraw,
-    search_command.search,
-    plane_command.plane,
-    serve_command.serve,
-    lineage_commands.show,
-    lineage_commands.trace,
-    lineage_commands.replay,
-    compare_command.compare,
-    calibration_commands.calibration,
-    calibration_commands.drift,
-    report_commands.run_sheet,
-    report_commands.appendix,
-    archive_commands.journal,
-    exchange_commands.prov,
-    exchange_commands.export,
-    exchange_commands.import_,
-    archive_commands.fixity,
-    archive_commands.rebuild_index,
-    archive_commands.roles,
-    keeping_commands.mirror,
-    keeping_commands.mend,
-    bench_commands.convert,
-    bench_commands.helium,
-    completion.completion,
-)
+_COMMANDS: Final = {
+    "demo": ("demo_command", "demo", "See it all work on invented data."),
+    "tour": ("tour_command", "tour", "Be shown around in five steps."),
+    "init": ("archive_commands", "init", "Make a new archive."),
+    "schema": ("intake_commands", "schema", "Print the JSON Schema of the sheet, or of another."),
+    "draft": ("intake_commands", "draft", "Write a first sheet from a folder's files."),
+    "check": ("intake_commands", "check", "Report every fault of a cooldown folder."),
+    "ingest": ("intake_commands", "ingest", "Take a cooldown folder into the archive."),
+    "plans": ("reduce_commands", "plans", "List the plans, or show one."),
+    "reduce": ("reduce_commands", "reduce", "Carry out plans on a cooldown."),
+    "stale": ("acts_commands", "stale", "List reductions that newer inputs have overtaken."),
+    "revise": ("acts_commands", "revise", "Add a revision of a record or plan."),
+    "amend": ("acts_commands", "amend", "Amend a sealed cooldown."),
+    "withdraw": ("acts_commands", "withdraw", "Mark something as not to be used any more."),
+    "search": ("search_command", "search", "Find sweeps."),
+    "plane": ("plane_command", "plane", "Draw all sweeps over temperature."),
+    "serve": ("serve_command", "serve", "Look at the archive in a browser."),
+    "show": ("lineage_commands", "show", "Show whatever has an address."),
+    "trace": ("lineage_commands", "trace", "Trace a number down to raw bytes, or what rests on it."),
+    "replay": ("lineage_commands", "replay", "Compute a reduction again and compare."),
+    "compare": ("compare_command", "compare", "Set two reductions side by side."),
+    "calibration": (
+        "calibration_commands",
+        "calibration",
+        "Write the calibration record that a reduction found.",
+    ),
+    "drift": ("calibration_commands", "drift", "Show how a thermometer's calibrations drifted."),
+    "run-sheet": ("report_commands", "run_sheet", "Write the run sheet of a cooldown."),
+    "appendix": ("report_commands", "appendix", "Write a methods appendix in LaTeX."),
+    "journal": ("archive_commands", "journal", "Tell what was done to the archive."),
+    "prov": ("exchange_commands", "prov", "Write provenance in the terms of W3C PROV."),
+    "export": ("exchange_commands", "export", "Write a package that leaves the archive."),
+    "import": ("exchange_commands", "import_", "Take a package into the archive."),
+    "fixity": ("archive_commands", "fixity", "Prove that every sealed byte is as it was."),
+    "rebuild-index": ("archive_commands", "rebuild_index", "Make the index anew from sealed files."),
+    "roles": ("archive_commands", "roles", "Print the database roles of a shared index."),
+    "mirror": ("keeping_commands", "mirror", "Keep a copy of the archive in another place."),
+    "mend": ("keeping_commands", "mend", "Bring damaged files back from another copy."),
+    "convert": ("bench_commands", "convert", "Convert units, scales, layers."),
+    "helium": ("bench_commands", "helium", "Properties of liquid 4He and its vapour."),
+    "completion": ("completion", "completion", "Write the completion script of a shell."),
+}
+"""Module, function and short help of each command, so that the list of them is there without any of their modules."""
 
 
 class _InOrder(GuardedGroup):
+    """Group whose commands are imported when they are asked for."""
+
     @override
     def list_commands(self, ctx: click.Context) -> list[str]:
         """Names in the order in which a laboratory meets them."""
-        return list(self.commands)
+        return list(_COMMANDS)
+
+    @override
+    def get_command(self, ctx: click.Context, cmd_name: str) -> click.Command | None:
+        """Return a command, from its module; None for a name that no command has."""
+        if cmd_name not in self.commands and cmd_name in _COMMANDS:
+            module, function, _ = _COMMANDS[cmd_name]
+            command: click.Command = getattr(import_module(f"archive.commands.{module}"), function)
+            offer(cmd_name, command)
+            self.add_command(command, cmd_name)
+        return self.commands.get(cmd_name)
+
+    @override
+    def format_commands(self, ctx: click.Context, formatter: click.HelpFormatter) -> None:
+        """Write the list of commands, as every group does, from the short help that stands here."""
+        with formatter.section("Commands"):
+            formatter.write_dl([(name, short_help) for name, (_, _, short_help) in _COMMANDS.items()])
 
 
 @click.group(
@@ -120,11 +125,6 @@ def stillroom(archive_dir: Path | None) -> None:
     """
 
 
-for _command in _COMMANDS:
-    stillroom.add_command(_command)
-offer(stillroom)
-
-
 def main() -> None:
     """Run the command line and leave the process with its exit code."""
     # Streams that were closed before the start (>&-) are None; what is written to them is lost, as was asked for.
@@ -134,8 +134,10 @@ def main() -> None:
         # A sign that the terminal's code page lacks is written as an escape, never as a traceback.
         if hasattr(stream, "reconfigure"):
             stream.reconfigure(errors="backslashreplace")
-    if completion.VARIABLE in os.environ:
-        completion.prepare()
+    if VARIABLE in os.environ:
+        from archive.commands.completion import prepare
+
+        prepare()
     try:
         stillroom(prog_name="stillroom")
     except KeyboardInterrupt:

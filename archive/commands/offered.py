@@ -17,7 +17,10 @@ from typing_extensions import override
 if TYPE_CHECKING:
     from click.shell_completion import CompletionItem
 
-__all__ = ["Offered", "addresses", "cooldowns", "offer", "plans"]
+__all__ = ["VARIABLE", "Offered", "addresses", "cooldowns", "offer", "plans"]
+
+VARIABLE: Final = "_STILLROOM_COMPLETE"
+"""Environment variable by which a shell's script asks for words."""
 
 _SETTINGS: Final = "stillroom.toml"
 _SEALED: Final = ".h5"
@@ -102,10 +105,9 @@ class Offered(click.types.StringParamType):
         return [CompletionItem(word) for word in words if word.startswith(incomplete)]
 
 
-def offer(group: click.Group) -> None:
-    """Let the parameters of a group's commands offer words by their names; how they are read stays the same."""
-    for name, command in group.commands.items():
-        for param in command.params:
-            kind = "plan" if (name, param.name) == _PLANS_COMMAND else _KINDS.get(param.name or "")
-            if kind is not None and isinstance(param.type, click.types.StringParamType):
-                param.type = Offered(kind)
+def offer(name: str, command: click.Command) -> None:
+    """Let the parameters of a command offer words by their names; how they are read stays the same."""
+    for param in command.params:
+        kind = "plan" if (name, param.name) == _PLANS_COMMAND else _KINDS.get(param.name or "")
+        if kind is not None and isinstance(param.type, click.types.StringParamType):
+            param.type = Offered(kind)

@@ -47,7 +47,7 @@ def test_plans_are_the_shipped_ones() -> None:
 
 
 def _offered(root: Path | None, command: str, name: str, begun: str) -> list[str]:
-    asked = stillroom.commands[command]
+    asked = stillroom.get_command(click.Context(stillroom), command)
     param = next(param for param in asked.params if param.name == name)
     ctx = click.Context(asked)
     ctx.params["archive_dir"] = root

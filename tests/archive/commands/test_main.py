@@ -45,6 +45,9 @@ HEAVY = (
 )
 
 
+EVERY = {name: stillroom.get_command(click.Context(stillroom), name) for name in COMMANDS}
+
+
 @pytest.mark.parametrize("words", [["--help"], ["search", "--help"], ["--version"]], ids=" ".join)
 def test_help_imports_nothing_heavy(words: list[str]) -> None:
     program = (
@@ -76,9 +79,17 @@ def test_the_door_imports_nothing_that_draws() -> None:
 
 
 def test_the_commands_are_those_of_the_contract(run: Run) -> None:
-    assert tuple(stillroom.commands) == COMMANDS
+    assert tuple(stillroom.list_commands(click.Context(stillroom))) == COMMANDS
     listed = re.findall(r"^  ([a-z-]+)  +\S", run("--help").stdout.partition("Commands:")[2], re.MULTILINE)
     assert tuple(listed) == COMMANDS
+
+
+def test_the_list_says_of_each_command_what_the_command_says(run: Run) -> None:
+    listed = run("--help").stdout.partition("Commands:")[2].split("\n")
+    told = {
+        line.split()[0]: " ".join(line.split()[1:]) for line in listed if line.strip() and ":" not in line
+    }
+    assert {name: command.get_short_help_str(1000) for name, command in EVERY.items()}.items() <= told.items()
 
 
 @pytest.mark.parametrize("name", COMMANDS)
@@ -90,7 +101,7 @@ def test_each_help_teaches_by_example(name: str, run: Run) -> None:
 
 @pytest.mark.parametrize("name", COMMANDS)
 def test_each_command_that_prints_data_offers_json(name: str) -> None:
-    options = {option for parameter in stillroom.commands[name].params for option in parameter.opts}
+    options = {option for parameter in EVERY[name].params for option in parameter.opts}
     # Pages are for people. Schema, lineage and roles are a format of their own already; a draft is TOML; demonstration and tour are stories; a script is for a shell.
     assert ("--json" in options) == (
         name not in ("schema", "draft", "demo", "tour", "completion", "prov", "roles", "serve")
@@ -206,7 +217,7 @@ def test_a_closed_stdout_is_no_fault() -> None:
 
 def test_click_shows_a_real_backspace_mark() -> None:
     # A raw docstring would hold a backslash and a b, and every example would be wrapped into one line.
-    for command in stillroom.commands.values():
+    for command in EVERY.values():
         assert isinstance(command, click.Command)
         assert "\\b" not in (command.help or "")
         assert "\b" in (command.help or "")
