@@ -14,6 +14,8 @@ from tests.benchmarks import (
     picture,
     plane,
     rebuild,
+    reductions,
+    run_sheet,
     sealed_files,
     search,
     starting,
@@ -47,6 +49,9 @@ BENCHMARKS: tuple[Benchmark, ...] = (
     starting.HELP,
     starting.VERSION,
     starting.SEARCH,
+    reductions.FILM,
+    reductions.RENEWAL,
+    run_sheet.BENCHMARK,
     picture.FIRST,
     picture.ZOOM,
 )
