@@ -16,6 +16,7 @@ __all__ = ["KINDS", "Kind", "kind_of", "kind_of_si"]
 
 _OSCILLATING = ("rms", "peak", "peak-to-peak")
 _PURE = frozenset({"1"})
+_SHORT_TIME_S = 1e-6
 _SHARE = frozenset({"1", "%", "ppm"})
 
 _PER_MASS_HEAT = (
@@ -201,12 +202,16 @@ def kind_of(name: str) -> Kind:
     return found
 
 
-def kind_of_si(unit: str) -> str | None:
+def kind_of_si(unit: str, value: float | None = None) -> str | None:
     """Return the first kind whose SI unit this is, for a number of which no more than its unit is known.
+
+    A time of less than a microsecond is taken for the change of a period, which people read in ns and ps.
 
     Examples
     --------
-    >>> kind_of_si("mol/m^2"), kind_of_si("furlong")
-    ('coverage', None)
+    >>> kind_of_si("mol/m^2"), kind_of_si("furlong"), kind_of_si("s", 3600.0), kind_of_si("s", -7e-13)
+    ('coverage', None, 'time', 'period')
     """
+    if unit == "s" and value is not None and 0 < abs(value) < _SHORT_TIME_S:
+        return "period"
     return next((name for name, each in KINDS.items() if unit in each.si), None)

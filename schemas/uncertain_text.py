@@ -38,6 +38,7 @@ _WIDE = Context(prec=700, rounding=ROUND_HALF_EVEN)
 # A value without uncertainty is shown as a person wrote it; beyond these a power of ten reads better.
 _LARGE, _SMALL = 6, -4
 _POWER_TAKEN = 9.95
+_LONG, _NOT_TOO_SHORT = 9999.5, 9.9e-4
 # More digits than this come from converting units, not from a person or an instrument (common practice, no source).
 _MOST_DIGITS = 12
 
@@ -248,8 +249,8 @@ def in_preferred_unit(quantity: Quantity) -> Quantity:
     -------
     Quantity
         In the largest display unit that leaves at least one digit before the point; where a standard uncertainty of 10
-        or more would take a power of ten out there, the next larger one, so that 60(140) nmol reads 0.06(14) umol. The
-        smallest if none leaves a digit, the middle of the list for zero. Exact fractions convert, so the digits shown do
+        or more would take a power of ten out there, or five digits stand before the point, the next larger one, so that
+        60(140) nmol reads 0.06(14) umol and an inverse quality factor of 0.1 is not 100000 ppm. The smallest if none leaves a digit, the middle of the list for zero. Exact fractions convert, so the digits shown do
         not depend on the way.
     """
     units = [
@@ -262,8 +263,10 @@ def in_preferred_unit(quantity: Quantity) -> Quantity:
     if size[0] == 0:
         return shown[len(shown) // 2]
     place = max((place for place, big in enumerate(size) if big >= 1), default=0)
-    spread = shown[place].uncertainty
+    larger = [at for at, big in enumerate(size) if big < size[place]]
+    if not larger:
+        return shown[place]
+    following = max(larger, key=size.__getitem__)
+    long = size[place] >= _LONG and size[following] >= _NOT_TOO_SHORT
     # 9.95 rounds to 10, which takes a power of ten out as well.
-    if spread is not None and spread >= _POWER_TAKEN and place + 1 < len(shown):
-        place += 1
-    return shown[place]
+    return shown[following if long or (shown[place].uncertainty or 0.0) >= _POWER_TAKEN else place]

@@ -41,7 +41,7 @@ def readable(value: float | None, uncertainty: float | None, unit: str) -> str:
     from schemas.quantity import Quantity
     from schemas.uncertain_text import in_preferred_unit
 
-    kind = kind_of_si(unit)
+    kind = kind_of_si(unit, value)
     if kind is not None and unit not in _KEPT and value is not None and math.isfinite(value):
         known = (
             uncertainty

@@ -156,7 +156,7 @@ def shown_number(
     if unit == "1":
         # A pure number may be of any kind: it is shown as it is.
         return _of(value, uncertainty, unit, "", None, setting=setting)
-    kind = kind_of_si(unit)
+    kind = kind_of_si(unit, value)
     if unit == "K":
         # Temperatures of one table are compared with each other, so they keep one unit.
         return _of(value, uncertainty, unit, "temperature", None, setting=setting, unit_shown="K")

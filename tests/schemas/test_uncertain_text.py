@@ -139,6 +139,10 @@ PREFERRED = [
     ("0.02 V rms", "drive", "20 mV rms"),
     ("3.3e5", "quality_factor", "330000"),
     ("0.5", "fraction", "0.5"),
+    ("2.5(1)e-6", "dissipation", "2.50(10) ppm"),
+    ("2.4(1)e-7", "dissipation", "2.40(10)e-7"),
+    ("5.61(30)", "dissipation", "5.61(30)"),
+    ("0.1", "dissipation", "0.1"),
     ("90 deg", "phase", "1.57079632679 rad"),
 ]
 
