@@ -26,7 +26,7 @@ from sqlalchemy import (
     select,
     union_all,
 )
-from sqlalchemy.orm import InstrumentedAttribute, aliased
+from sqlalchemy.orm import InstrumentedAttribute
 from sqlalchemy.sql.operators import custom_op
 
 from archive.index.act_tables import AmendedSweep, Revision, Withdrawal
@@ -418,30 +418,32 @@ def records(name: str | None, kind: str | None) -> Query:
 
     Those that came in outside a cooldown, and that no accession holds, have none.
     """
-    holder, other, earlier = aliased(Accession), aliased(Record), aliased(Accession)
-    before = exists().where(
-        other.address == Record.address,
-        other.digest == Record.digest,
-        earlier.address == other.accession,
-        or_(
-            earlier.accessioned < holder.accessioned,
-            and_(earlier.accessioned == holder.accessioned, earlier.address < holder.address),
-        ),
+    # Ranked at one go: asked of each row whether one came before it, the work grows as the square of the accessions that hold it.
+    place = func.row_number().over(
+        partition_by=(Record.address, Record.digest), order_by=(Accession.accessioned, Accession.address)
     )
+    ranked = select(Record.accession, Record.address, place.label("place")).join(
+        Accession, Accession.address == Record.accession
+    )
+    if name is not None:
+        ranked = ranked.where(named(Record.address, name))
+    if kind is not None:
+        ranked = ranked.where(Record.kind == kind)
+    first = ranked.subquery()
     shown = ("name", "revision", "kind", "address", "digest", "content")
     held = (
         select(*(getattr(Record, column) for column in shown), Record.accession)
-        .join(holder, holder.address == Record.accession)
-        .where(~before)
+        .join(first, and_(first.c.accession == Record.accession, first.c.address == Record.address))
+        .where(first.c.place == 1)
     )
     same = exists().where(Record.address == Revision.address, Record.digest == Revision.digest)
     outside = select(*(getattr(Revision, column) for column in shown), null().label("accession")).where(
         Revision.kind != "plan", ~same
     )
     if name is not None:
-        held, outside = held.where(named(Record.address, name)), outside.where(named(Revision.address, name))
+        outside = outside.where(named(Revision.address, name))
     if kind is not None:
-        held, outside = held.where(Record.kind == kind), outside.where(Revision.kind == kind)
+        outside = outside.where(Revision.kind == kind)
     both = union_all(held, outside).subquery()
     return select(both).order_by(both.c.kind, both.c.name, both.c.revision, both.c.digest)
 

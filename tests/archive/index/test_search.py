@@ -2,14 +2,18 @@
 
 from __future__ import annotations
 
+import json
+import sqlite3
 from collections.abc import Iterator
+from contextlib import closing
 from datetime import UTC, datetime, timedelta, timezone
+from pathlib import Path
 from typing import Any
 
 import pytest
 
 from archive.errors import BadRequest
-from archive.index import Index, ResultCondition, SearchQuery, SweepResult
+from archive.index import Index, ResultCondition, SearchQuery, SweepResult, queries
 from tests.archive.index import documents as make
 
 
@@ -395,3 +399,44 @@ def test_short_answers_agree_with_the_long_ones(filled: Index) -> None:
     assert {plan["name"] for plan in filled.plans()} == {row.plan for row in filled.reductions()}
     assert filled.result_quantities("T_KT") == ["temperature"]
     assert filled.result_quantities("nothing") == []
+
+
+def _steps_of_records(folder: Path, held: int) -> int:
+    """Return how many steps SQLite takes to list records that so many accessions hold, the earliest of them recorded last."""
+    path = folder / f"{held}.sqlite3"
+    with Index.create(f"sqlite:///{path}") as index:
+        key, sha256, size, document = make.entry(make.accession())
+        index.record(document, key=key, sha256=sha256, size=size)
+    statement = str(queries.records(None, None).compile(compile_kwargs={"literal_binds": True}))
+    steps = 0
+
+    def step() -> None:
+        nonlocal steps
+        steps += 1
+
+    with closing(sqlite3.connect(path)) as connection:
+        connection.execute("PRAGMA foreign_keys = OFF")
+        for table in ("accession", "record"):
+            columns = [row[1] for row in connection.execute(f"PRAGMA table_info({table})")]
+            changed = {
+                "address": "'c' || value" if table == "accession" else "address",
+                "accession": "'c' || value",
+                "cooldown": "'c' || value",
+                "key": "'c' || value",
+                "accessioned": "datetime(accessioned, '-' || value || ' days')",
+            }
+            said = ", ".join(changed.get(each, each) for each in columns)
+            connection.execute(
+                f"INSERT INTO {table} SELECT {said} FROM {table}, json_each(?)",  # noqa: S608 - names of our own
+                [json.dumps(list(range(1, held)))],
+            )
+        connection.set_progress_handler(step, 1)
+        (row,) = connection.execute(statement).fetchall()
+        connection.set_progress_handler(None, 0)
+    assert f"c{held - 1}" in row
+    return steps
+
+
+def test_listing_records_costs_in_proportion_to_the_accessions_that_hold_them(tmp_path: Path) -> None:
+    # In proportion it would be 8 times as many, as the square 64 times.
+    assert _steps_of_records(tmp_path, 400) < 12 * _steps_of_records(tmp_path, 50)
