@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 from typing import Literal
 
 import numpy as np
@@ -71,22 +72,28 @@ def amount_from_doses(
     """
     doses, entries = dose_amounts(gas, sample)
     counted = [each for each in doses if each.counted]
+    computed = any(each.dose.amount is None for each in counted)
     facts: dict[str, object] = {
         "crossed_out": [each.dose.name for each in doses if not each.counted],
-        "method": f"by {METHOD}" if any(each.dose.amount is None for each in counted) else "as stated in the notebook",
+        "method": f"by {METHOD}" if computed else "as stated in the notebook",
     }  # fmt: skip
     if gas.during:
         if time is None:
             raise ValueError(
                 f"time: doses {', '.join(gas.during)} were admitted during the sweep, and no channel gives the time of a row"
             )
-        return _running(counted, entries, time, facts)
+        return _cited(_running(counted, entries, time, facts), computed=computed)
     last = gas.admitted
     if last is not None and last not in {each.dose.name for each in doses}:
         raise ValueError(f"gas: the sweep follows dose {last}, and the sheet has no such dose")
     taken = [] if last is None else _up_to(counted, doses, last)
     facts |= {"doses": len(taken), "count": _doses_text(taken), "last": last or "none"}
-    return _total(taken, entries, gas.cooldown, last, facts)
+    return _cited(_total(taken, entries, gas.cooldown, last, facts), computed=computed)
+
+
+def _cited(outcome: Outcome, *, computed: bool) -> Outcome:
+    """Cite the equation of state only where a dose was computed by it."""
+    return outcome if computed else replace(outcome, citations=())
 
 
 def _doses_text(doses: list[DoseAmount]) -> str:

@@ -109,6 +109,8 @@ class Outcome:
         Temperature scale of outputs, when not that of the inputs.
     facts, findings, verdicts
         What else there is to say; a verdict is a word instead of a number.
+    citations : tuple of str, optional
+        Those of the step's citations that bear on what was done this time; all of them if nothing is said.
     """
 
     outputs: Mapping[str, float | FloatArray]
@@ -121,6 +123,7 @@ class Outcome:
     facts: Mapping[str, Any] = field(default_factory=dict)
     findings: tuple[Finding, ...] = ()
     verdicts: Mapping[str, str] = field(default_factory=dict)
+    citations: tuple[str, ...] | None = None
 
     def array(self, name: str) -> FloatArray:
         """Return an output as an array of 0 or 1 dimensions."""

@@ -65,7 +65,9 @@ def step_record(
         parameters=settings,
         inputs=inputs,
         outputs=tuple(each.name for each in found),
-        citations=step.citations,
+        citations=step.citations
+        if outcome.citations is None
+        else tuple(key for key in step.citations if key in outcome.citations),
         effects={effect: filled(sentence, words) for effect, sentence in step.effects.items()},
         considered={effect: filled(sentence, words) for effect, sentence in step.considered.items()},
         begin=begin,

@@ -254,6 +254,12 @@ value = "16.0(1) umol"
 """
 
 
+def test_a_dose_that_was_stated_cites_no_equation_of_state(untouched: Archive) -> None:
+    steps = {each["name"]: each for each in untouched.show(f"{FILLING}.1")["steps"]}
+    assert "as stated in the notebook" in steps["amount-from-doses"]["sentence"]
+    assert steps["amount-from-doses"]["citations"] == []
+
+
 def test_a_corrected_dose_is_used_found_and_told_and_the_sealed_value_stays(lab: Archive, sheet) -> None:
     path = sheet(amendment(DOSE))
     shown = lab.amend(path, dry_run=True)

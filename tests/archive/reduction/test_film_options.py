@@ -304,6 +304,7 @@ def test_a_run_of_doses_counts_those_that_its_rows_have_seen(tools: Any) -> None
     # Rows for 0 to 16 doses, the last three cut off.
     assert step.facts["doses"] == 13
     assert step.sentence.startswith("13 doses gave a total of 0")
+    assert step.citations == ("cencek-2012",)
 
 
 def test_no_alignment_adds_nothing() -> None:
