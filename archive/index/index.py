@@ -627,10 +627,10 @@ class Index:
         with reading(self._engine, self._url) as connection:
             return list(map(Use._make, connection.execute(uses(role, name, amended=amended)).all()))
 
-    def resting_reductions(self, address: str) -> list[Resting]:
-        """Reductions that took a record, or followed it if it is a plan; older and withdrawn ones are marked."""
+    def resting_reductions(self, address: str, *, most: int) -> list[Resting]:
+        """Reductions that took a record, or followed it if it is a plan, up to so many; older and withdrawn ones are marked."""
         with reading(self._engine, self._url) as connection:
-            return list(map(Resting._make, connection.execute(resting_reductions(address)).all()))
+            return list(map(Resting._make, connection.execute(resting_reductions(address, most)).all()))
 
     def flagged(self) -> dict[str, tuple[str, ...]]:
         """Reductions that rest on something withdrawn, each with the addresses of what that is."""

@@ -90,11 +90,14 @@ def uses(role: Role, name: str, *, amended: bool) -> Query:
     )
 
 
-def resting_reductions(address: str) -> Query:
+def resting_reductions(address: str, most: int) -> Query:
     """Reductions that took a record, or followed it if it is a plan, whether each is current, and whether it is withdrawn."""
     took = Reduction.address.in_(
         select(ReductionInput.reduction).where(part_of(ReductionInput.address, address))
     )
+    order = (Reduction.cooldown, Reduction.plan, Reduction.sweep, Reduction.number)
+    # Whether one is current is asked of those alone that are told.
+    told = select(Reduction.address).where(or_(took, Reduction.plan_address == address)).order_by(*order)
     return (
         select(
             Reduction.address,
@@ -103,6 +106,6 @@ def resting_reductions(address: str) -> Query:
             newest_reduction().label("newest"),
             withdrawn_reduction().label("withdrawn"),
         )
-        .where(or_(took, Reduction.plan_address == address))
-        .order_by(Reduction.cooldown, Reduction.plan, Reduction.sweep, Reduction.number)
+        .where(Reduction.address.in_(told.limit(most)))
+        .order_by(*order)
     )

@@ -31,16 +31,28 @@ _COURSES: Final[Mapping[str, tuple[str, ...]]] = {
 _EMPTY_ONLY: Final = ("quality_factor",)
 """What tells of the cell only while it is empty."""
 _MOST_RESTING: Final = 300
+# More points, or rows below them, are read by nobody.
+_MOST_POINTS: Final = 400
 # A list of more than this is told by its length: a calibration has hundreds of points.
 _MOST_LISTED: Final = 8
 
 
 @dataclass(frozen=True)
 class Course:
-    """One result in the course of time, oldest first; not empty, all of one kind and unit."""
+    """One result in the course of time, oldest first; not empty, all of one kind and unit.
+
+    Attributes
+    ----------
+    name : str
+    points : tuple of LifeResult
+        The newest 400.
+    left_out : int
+        How many are older.
+    """
 
     name: str
     points: tuple[LifeResult, ...]
+    left_out: int = 0
 
 
 @dataclass(frozen=True)
@@ -91,7 +103,9 @@ class Life:
     fields : tuple of Field
     courses : tuple of Course
     uses : tuple of Use
-        Cooldowns in order of time.
+        Cooldowns in order of time, the newest 400.
+    more_uses : int
+        How many are older.
     """
 
     name: str
@@ -101,6 +115,7 @@ class Life:
     fields: tuple[Field, ...]
     courses: tuple[Course, ...]
     uses: tuple[Use, ...]
+    more_uses: int = 0
 
 
 def life(source: LabSource, name: str) -> Life:
@@ -121,6 +136,7 @@ def life(source: LabSource, name: str) -> Life:
     if not revisions:
         raise UnknownAddress(f"there is no record or plan {name} in this archive")
     kind = revisions[-1].kind
+    uses = tuple(_uses(source, kind, name))
     return Life(
         name=name,
         kind=kind,
@@ -128,7 +144,8 @@ def life(source: LabSource, name: str) -> Life:
         acts={row.address: row for row in source.index.revisions(name=name)},
         fields=tuple(_fields([_content(source, row) for row in revisions])),
         courses=tuple(_courses(source, kind, name)),
-        uses=tuple(_uses(source, kind, name)),
+        uses=uses[-_MOST_POINTS:],
+        more_uses=max(len(uses) - _MOST_POINTS, 0),
     )
 
 
@@ -195,7 +212,8 @@ def _courses(source: LabSource, kind: str, name: str) -> Iterator[Course]:
         # A laboratory's own plan may call something else by the same name.
         points.sort(key=lambda each: (each.quantity, each.unit))
         for _, same in groupby(points, key=lambda each: (each.quantity, each.unit)):
-            yield Course(result, tuple(same))
+            every = tuple(same)
+            yield Course(result, every[-_MOST_POINTS:], max(len(every) - _MOST_POINTS, 0))
 
 
 def _uses(source: LabSource, kind: str, name: str) -> Iterator[Use]:
@@ -216,12 +234,12 @@ def resting(source: LabSource, address: str) -> Rests:
     address : str
         Of a revision.
     """
-    direct = source.index.resting_reductions(address)
+    direct = source.index.resting_reductions(address, most=_MOST_RESTING + 1)
     seen = {each.reduction for each in direct}
     behind: list[Resting] = []
     waiting = [each.reduction for each in direct]
     while waiting and len(seen) <= _MOST_RESTING:
-        for each in source.index.resting_reductions(waiting.pop(0)):
+        for each in source.index.resting_reductions(waiting.pop(0), most=_MOST_RESTING + 1):
             if each.reduction not in seen:
                 seen.add(each.reduction)
                 behind.append(each)
