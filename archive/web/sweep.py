@@ -18,7 +18,8 @@ from archive.web.site import lab_of
 from archive.web.thing import thing
 from schemas.address import Address
 from schemas.lineage import Value
-from schemas.quantity import unit_factor
+from schemas.quantity import Quantity, unit_factor
+from schemas.uncertain_text import in_preferred_unit
 
 __all__ = ["sweep"]
 
@@ -52,6 +53,7 @@ def sweep(request: Request, address: Address) -> Response:
         temperatures=_temperatures(facts.entry.temperature_low, facts.entry.temperature_high),
         marks=lab.marks(own),
         drawn=drawn,
+        alike=_alike(facts.entry.coverage),
         columns=[
             each
             for each in drawn.outline.members[0].leaf.columns.values()
@@ -76,6 +78,14 @@ def _temperatures(low: Value | None, high: Value | None) -> str:
     unit = in_unit(np.array(ends), "K", "temperature")[1]
     texts = list(dict.fromkeys(f"{each / unit_factor(unit, 'temperature'):.4g}" for each in ends))
     return " to ".join(texts) + f"\u00a0{unit_text(unit)}" + (f" on {low.scale}" if low.scale else "")
+
+
+def _alike(coverage: Value | None) -> str:
+    """Return coverages within a tenth of this one, as a search asks for them; "" where there is nothing to compare with."""
+    if coverage is None or coverage.value is None or not coverage.value > 0:
+        return ""
+    shown = in_preferred_unit(Quantity(value=coverage.value, unit=coverage.unit, kind="coverage"))
+    return f"{0.9 * shown.value:.4g}:{1.1 * shown.value:.4g} {shown.unit}"
 
 
 def _number(value: float | None) -> str:

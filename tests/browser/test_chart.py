@@ -80,6 +80,7 @@ def test_keys_alone_draw_closer_move_and_go_back(page: Page) -> None:
     page.wait_for_url("**from=*")
     closer = list(map(float, _view(page)))
     assert closer[1] - closer[0] == pytest.approx(613.6 / 2, rel=0.01)
+    assert page.get_by_role("status").inner_text().startswith("T / mK (ITS-90) from 3")
     page.wait_for_selector(_READY)
     page.keyboard.press("ArrowRight")
     page.wait_for_function("low => Number(document.getElementById('from').value) > low", arg=closer[0])

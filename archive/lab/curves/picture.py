@@ -243,7 +243,8 @@ def _marks(mark: str, X: FloatArray, Y: FloatArray, r: float) -> str:
 
 
 def _filled(mark: str, colour: str) -> str:
-    return colour if mark in ("circle", "triangle", "diamond") else "none"
+    # What is laid over leaves what lies below in sight.
+    return colour if mark == "circle" else "none"
 
 
 def _dashed(dash: str) -> str:

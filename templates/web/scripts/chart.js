@@ -35,7 +35,8 @@ function outline(path, mark, x, y, r) {
   }
 }
 
-const filled = mark => mark === "circle" || mark === "triangle" || mark === "diamond";
+// What is laid over leaves what lies below in sight.
+const filled = mark => mark === "circle";
 
 // Ends of what is seen along y, with a margin.
 function reach(curves, low, high, log) {
@@ -116,6 +117,7 @@ class Chart {
     this.figure = figure;
     this.names = figure.dataset.names.split(" ");
     this.reading = figure.querySelector(".reading");
+    this.heard = figure.querySelector("[role=status]");
     this.picture = figure.querySelector("picture");
     this.strips = [];
     this.view = null;
@@ -351,6 +353,7 @@ class Chart {
     history.replaceState(null, "", follow(new URL(location.href)));
     for (const link of document.querySelectorAll("a[data-file]")) link.href = follow(new URL(link.href));
     const [from, to] = [document.getElementById("from"), document.getElementById("to")];
+    this.heard.textContent = view ? `${this.across} from ${view[0]} to ${view[1]}` : "all rows";
     from.value = view ? view[0] : "";
     to.value = view ? view[1] : "";
   }

@@ -9,6 +9,7 @@ import xml.etree.ElementTree as ET
 from collections.abc import Iterator
 from html.parser import HTMLParser
 from pathlib import Path
+from urllib.parse import parse_qs, urlsplit
 
 import h5py
 import numpy as np
@@ -260,6 +261,15 @@ def test_what_cannot_be_laid_over_is_told_on_the_page(client: TestClient) -> Non
 def test_points_of_a_hostile_archive_are_json_and_its_picture_is_xml(client: TestClient) -> None:
     assert json.loads(client.get(f"/points/{HOSTILE}/s001").text)["panels"]
     ET.fromstring(client.get(f"/picture/{HOSTILE}/s001").text)  # noqa: S314 - our own
+
+
+def test_a_sweep_leads_to_those_of_a_like_coverage(client: TestClient) -> None:
+    said = re.search(r'href="(/search\?[^"]*coverage=[^"]*)"', client.get(f"/at/{SWEEP}").text)
+    assert said is not None
+    path = said[1].replace("&amp;", "&")
+    # 48.0 umol over 1.60 m^2 are 30 umol/m^2.
+    assert parse_qs(urlsplit(path).query)["coverage"] == ["27:33 umol/m^2"]
+    assert f'href="/at/{SWEEP}"' in client.get(path).text
 
 
 def test_what_is_ticked_in_a_list_is_laid_over_on_the_page_of_the_first(client: TestClient) -> None:
