@@ -157,6 +157,7 @@ def replay(
     everything: bool,
     fraction: float,
     jobs: int,
+    executor: str | None,
     archive_dir: Path | None,
     as_json: bool,
     strict: bool,
@@ -185,7 +186,7 @@ def replay(
             require_address(address)
             told.append(lab.replay(address))
         else:
-            for each, outcome in lab.replay_all(jobs=jobs, progress=progress.count):
+            for each, outcome in lab.replay_all(jobs=jobs, executor=executor, progress=progress.count):
                 if isinstance(outcome, ArchiveError):
                     failed.append((each, outcome))
                 else:

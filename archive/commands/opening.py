@@ -61,7 +61,12 @@ def strict_option(function: Callable[..., Any]) -> Callable[..., Any]:
 
 
 def jobs_option(function: Callable[..., Any]) -> Callable[..., Any]:
-    """Add `--jobs N`."""
+    """Add `--jobs N` and `--executor dask://HOST:PORT`."""
+    function = click.option(
+        "--executor",
+        metavar="ADDRESS",
+        help="dask://HOST:PORT of a running cluster whose workers compute instead; they must see the archive.",
+    )(function)
     return click.option(
         "--jobs",
         type=click.IntRange(1, 1024),

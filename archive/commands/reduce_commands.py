@@ -142,6 +142,7 @@ def reduce(
     digits: int,
     workers: int,
     jobs: int,
+    executor: str | None,
     archive_dir: Path | None,
     as_json: bool,
     strict: bool,
@@ -167,16 +168,18 @@ def reduce(
     _require_target(cooldown, stale_only=stale_only, plan=plan)
     name, _, part = (cooldown or "").partition("/")
     chosen: str | Path | None = Path(plan) if plan is not None and plan.endswith(".toml") else plan
-    if jobs > 1 and workers > 1:
+    if (jobs > 1 or executor is not None) and workers > 1:
         raise BadRequest(
-            "--jobs and --workers exclude each other",
-            remedy="--jobs for many reductions at once, --workers for the trials of one",
+            "--jobs or --executor and --workers exclude each other",
+            remedy="--jobs or a cluster for many reductions at once, --workers for the trials of one",
         )
     request = requested(trials, seed=seed, digits=digits, workers=workers)
     with opening.open_archive(archive_dir) as lab, Progress("reducing") as progress:
         if stale_only:
             whose = "/".join(each for each in (name, sweep or part) if each) or None
-            outcomes = lab.reduce_stale(whose, monte_carlo=request, jobs=jobs, progress=progress.sentence)
+            outcomes = lab.reduce_stale(
+                whose, monte_carlo=request, jobs=jobs, executor=executor, progress=progress.sentence
+            )
         else:
             outcomes = lab.reduce(
                 name,
@@ -184,6 +187,7 @@ def reduce(
                 sweep=sweep or part or None,
                 monte_carlo=request,
                 jobs=jobs,
+                executor=executor,
                 progress=progress.sentence,
             )
     if as_json:

@@ -14,10 +14,11 @@ import threading
 import uuid
 from collections import deque
 from collections.abc import Callable, Iterable, Iterator
-from concurrent.futures import Future, ProcessPoolExecutor
+from concurrent.futures import ProcessPoolExecutor
 from concurrent.futures.process import BrokenProcessPool
 from contextlib import contextmanager
 from dataclasses import dataclass
+from functools import partial
 from itertools import islice
 from multiprocessing.context import BaseContext
 from pathlib import Path
@@ -26,6 +27,7 @@ from typing import Any, Protocol, TypeVar
 from archive.errors import ArchiveError, BadRequest
 from archive.index import Index
 from archive.intake.settings import read_settings
+from archive.lab.cluster import at_cluster
 from archive.lab.effective import EffectiveSource
 from archive.lab.revisions import Revisions
 from archive.lab.source import LabSource
@@ -69,10 +71,13 @@ class Crew:
         Folder of the archive.
     jobs : int
         Processes; 1 is this one.
+    executor : str, optional
+        Address of a cluster whose workers compute instead; see `archive.lab.cluster`.
     """
 
     root: Path
     jobs: int = 1
+    executor: str | None = None
 
     @contextmanager
     def at_work(self, reading: EffectiveSource) -> Iterator[Hands]:
@@ -81,16 +86,25 @@ class Crew:
         Raises
         ------
         BadRequest
-            If there are no jobs.
+            If there are no jobs, or several besides a cluster, or no cluster.
         """
+        if self.executor is not None and self.jobs != 1:
+            raise BadRequest(
+                "jobs and an executor exclude each other", remedy="a cluster has as many as its workers"
+            )
         if self.jobs < 1:
             raise BadRequest("nothing can be done by no process", found=str(self.jobs), expected="at least 1")
-        if self.jobs == 1:
+        if self.jobs == 1 and self.executor is None:
             yield _Here(reading)
             return
         order = pickle.dumps(_Order(uuid.uuid4().hex, self.root, reading.revisions))
+        if self.executor is not None:
+            with at_cluster(self.executor) as (submit, threads, lost):
+                # With each task, since a worker may come late or come again.
+                yield _There(submit, partial(_by_order, order), threads * _AHEAD, lost)
+            return
         with _processes(self.jobs, order) as pool:
-            yield _There(pool.submit, _in_process, self.jobs * _AHEAD)
+            yield _There(pool.submit, _in_process, self.jobs * _AHEAD, (BrokenProcessPool,))
 
 
 @dataclass(frozen=True)
@@ -110,23 +124,30 @@ class _Here:
 class _There:
     """Work handed to others."""
 
-    submit: Callable[..., Future[Any]]
+    submit: Callable[..., Any]
     entrance: Callable[..., Any]
     ahead: int
+    lost: tuple[type[BaseException], ...]
     here: bool = False
 
     def each(
         self, work: Callable[[EffectiveSource, _Task], _Result], tasks: Iterable[_Task]
     ) -> Iterator[_Result]:
         left = iter(tasks)
-        waiting = deque(self.submit(self.entrance, work, task) for task in islice(left, self.ahead))
+        return self._results(
+            work, deque(self.submit(self.entrance, work, task) for task in islice(left, self.ahead)), left
+        )
+
+    def _results(
+        self, work: Callable[..., _Result], waiting: deque[Any], left: Iterator[Any]
+    ) -> Iterator[_Result]:
         while waiting:
             try:
-                result = waiting.popleft().result()
-            except BrokenProcessPool:
+                result: _Result = waiting.popleft().result()
+            except self.lost:
                 raise ArchiveError(
                     "a process that computed ended by itself, perhaps for want of memory",
-                    remedy="what was sealed is sealed; do it again, with fewer --jobs",
+                    remedy="what was sealed is sealed; do it again, with fewer --jobs or other workers",
                 ) from None
             waiting.extend(self.submit(self.entrance, work, task) for task in islice(left, 1))
             yield result

@@ -364,6 +364,7 @@ class Archive:
         sweep: str | None = None,
         monte_carlo: Request | None = None,
         jobs: int = 1,
+        executor: str | None = None,
         progress: Progress = _quiet,
     ) -> list[ReduceOutcome]:
         """Carry out plans on the sweeps of a cooldown, in an order in which each finds what it rests on.
@@ -380,6 +381,8 @@ class Archive:
             Repeat each plan with drawn inputs and seal what that finds with the reduction.
         jobs : int
             Processes that compute; what is sealed does not depend on it.
+        executor : str, optional
+            ``dask://HOST:PORT`` of a cluster whose workers compute instead.
 
         Returns
         -------
@@ -396,7 +399,7 @@ class Archive:
                 clock=self._clock,
                 seal=self._seal_reduction if monte_carlo is None else self._seal_alone,
                 progress=progress,
-                crew=Crew(self.root, jobs),
+                crew=Crew(self.root, jobs, executor),
                 request=monte_carlo,
             )
 
@@ -429,13 +432,14 @@ class Archive:
         *,
         monte_carlo: Request | None = None,
         jobs: int = 1,
+        executor: str | None = None,
         progress: Progress = _quiet,
     ) -> list[ReduceOutcome]:
         """Make stale reductions anew with the newest revisions that hold; see `archive.lab.renewing.reduce_stale`."""
         with self._writing():
             return reduce_stale(
                 self._source, cooldown, clock=self._clock, seal=self._seal_reduction, progress=progress,
-                crew=Crew(self.root, jobs), request=monte_carlo,
+                crew=Crew(self.root, jobs, executor), request=monte_carlo,
             )  # fmt: skip
 
     def revise(self, sheet: Path | str, *, by: str | None = None, dry_run: bool = False) -> ActOutcome:
@@ -483,10 +487,16 @@ class Archive:
         return reducing.replay(self._source, address, clock=self._clock)
 
     def replay_all(
-        self, *, jobs: int = 1, progress: Callable[[int, int, str], None] | None = None
+        self,
+        *,
+        jobs: int = 1,
+        executor: str | None = None,
+        progress: Callable[[int, int, str], None] | None = None,
     ) -> Iterator[tuple[str, ReplayReport | ArchiveError]]:
         """Every reduction computed again by some processes; see `archive.lab.replaying.replay_all`."""
-        return replay_all(self._source, clock=self._clock, crew=Crew(self.root, jobs), progress=progress)
+        return replay_all(
+            self._source, clock=self._clock, crew=Crew(self.root, jobs, executor), progress=progress
+        )
 
     def compare(self, first: str, second: str) -> Comparison:
         """Two reductions side by side: parameters, inputs, results with the significance of their change, arrays."""

@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
+import logging
 import multiprocessing
 import os
 import shutil
+import signal
+import time
 from collections.abc import Callable
 from datetime import UTC, datetime
 from functools import partial
@@ -12,10 +15,11 @@ from pathlib import Path
 from typing import Any
 
 import pytest
+from distributed import LocalCluster
 
 from archive import Archive
 from archive.commands.failures import EXIT_INTERRUPTED, stopped
-from archive.errors import ArchiveError, Stopped
+from archive.errors import ArchiveError, BadRequest, Stopped
 from tests.revisable_cooldown import PLAN, calibration, write_calibrated
 
 MOMENT: Callable[[], datetime] = partial(datetime, 2026, 4, 1, 12, tzinfo=UTC)
@@ -45,13 +49,15 @@ def calibrated(tmp_path_factory: pytest.TempPathFactory) -> Path:
     return place
 
 
-def _carried_out(place: Path, root: Path, jobs: int) -> dict[str, Any]:
+def _carried_out(
+    place: Path, root: Path, *, progress: Callable[[str], None] = print, **crew: Any
+) -> dict[str, Any]:
     with Archive.open(shutil.copytree(place / "lab", root), clock=MOMENT) as lab:
-        outcomes = lab.reduce("2026-03", jobs=jobs)
-        outcomes += lab.reduce("2026-03", plan=place / "filling.toml", jobs=jobs)
+        outcomes = lab.reduce("2026-03", progress=progress, **crew)
+        outcomes += lab.reduce("2026-03", plan=place / "filling.toml", **crew)
         lab.revise(place / "revision.toml")
         stale = len(lab.stale())
-        renewed = lab.reduce_stale(jobs=jobs)
+        renewed = lab.reduce_stale(**crew)
         assert stale == len(renewed) > 1
         assert not lab.stale()
         return {
@@ -59,15 +65,60 @@ def _carried_out(place: Path, root: Path, jobs: int) -> dict[str, Any]:
             "sealed": {path.name: path.read_bytes() for path in (root / "sealed").rglob("*.h5")},
             "rows": lab.reductions(),
             "acts": lab.journal(),
-            "replayed": list(lab.replay_all(jobs=jobs)),
+            "replayed": list(lab.replay_all(**crew)),
         }
 
 
-def test_two_processes_seal_what_one_does(calibrated: Path, tmp_path: Path) -> None:
-    one, two = (_carried_out(calibrated, tmp_path / f"lab{jobs}", jobs) for jobs in (1, 2))
+@pytest.fixture(scope="module")
+def alone(calibrated: Path, tmp_path_factory: pytest.TempPathFactory) -> dict[str, Any]:
+    """Give what one process seals and replays."""
+    one = _carried_out(calibrated, tmp_path_factory.mktemp("alone") / "lab")
     assert len(one["sealed"]) > 5
     assert all(told.identical for _, told in one["replayed"])
-    assert two == one
+    return one
+
+
+def test_two_processes_seal_what_one_does(calibrated: Path, alone: dict[str, Any], tmp_path: Path) -> None:
+    assert _carried_out(calibrated, tmp_path / "lab", jobs=2) == alone
+
+
+def test_a_cluster_seals_what_one_process_does_and_a_killed_worker_loses_nothing(
+    calibrated: Path, alone: dict[str, Any], tmp_path: Path
+) -> None:
+    with LocalCluster(  # type: ignore[no-untyped-call]
+        n_workers=2, threads_per_worker=1, dashboard_address=":0", silence_logs=logging.CRITICAL
+    ) as cluster:
+        killed: list[int] = []
+
+        def kill(sentence: str) -> None:
+            until = time.monotonic() + 20
+            while not killed and time.monotonic() < until:
+                at_work = [each.pid for each in cluster.scheduler.workers.values() if each.processing]
+                killed[:] = at_work[:1]
+                for pid in killed:
+                    os.kill(pid, signal.SIGKILL)
+
+        address = cluster.scheduler_address.replace("tcp://", "dask://")
+        assert _carried_out(calibrated, tmp_path / "lab", executor=address, progress=kill) == alone
+        assert killed
+
+
+@pytest.mark.parametrize(
+    ("crew", "words"),
+    [
+        pytest.param({"executor": "somewhere:8786"}, "dask://HOST:PORT", id="no address"),
+        pytest.param({"executor": "dask://127.0.0.1:1", "jobs": 2}, "exclude each other", id="both"),
+        pytest.param({"jobs": 0}, "at least 1", id="nobody"),
+    ],
+)
+def test_a_crew_that_cannot_be_is_refused(
+    calibrated: Path, tmp_path: Path, crew: dict[str, Any], words: str
+) -> None:
+    with (
+        Archive.open(shutil.copytree(calibrated / "lab", tmp_path / "lab")) as lab,
+        pytest.raises(BadRequest, match=words),
+    ):
+        lab.reduce("2026-03", **crew)
 
 
 def test_a_process_that_dies_loses_nothing(calibrated: Path, tmp_path: Path) -> None:
