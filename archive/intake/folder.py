@@ -12,6 +12,7 @@ from pathlib import Path
 
 from archive.errors import BadRequest
 from archive.intake.bad_cells import report_cells
+from archive.intake.beside import Beside
 from archive.intake.dialect import ColumnRequest
 from archive.intake.gather import Gatherer, stored_columns
 from archive.intake.own_readers import own_reader
@@ -69,9 +70,10 @@ def read_cooldown(
     _check_name(reading)
     _take_records(reading, archived)
     _keep_raw(reading, SHEET_NAME, "sheet", sink, field=None, line=1)
-    for number, sweep in enumerate(reading.sheet.sweep):
-        progress(f"reading {sweep.name}")
-        _read_sweep(reading, number, sweep, sink)
+    with Beside() as beside:
+        for number, sweep in enumerate(reading.sheet.sweep):
+            progress(f"reading {sweep.name}")
+            _read_sweep(reading, number, sweep, sink, beside)
     for number, name in enumerate(reading.sheet.other_files):
         _keep_raw(
             reading,
@@ -164,28 +166,28 @@ def _keep_raw(
         return None
     if name in reading.raw_files:
         return path
-    digest = hashlib.sha256()
     size = 0
 
     def chunks() -> Iterator[bytes]:
         nonlocal size
         with path.open("rb") as stream:
             while chunk := stream.read(_CHUNK):
-                digest.update(chunk)
                 size += len(chunk)
                 yield chunk
 
     try:
         if sink is None:
-            for _ in chunks():
-                pass
+            digest = hashlib.sha256()
+            for chunk in chunks():
+                digest.update(chunk)
+            sha256 = digest.hexdigest()
         else:
-            sink.raw(name, chunks())
+            sha256 = sink.raw(name, chunks())
     except OSError as error:
         _fault(reading, name, f"cannot be read ({error.strerror})", field=field, line=line)
         return None
     reading.raw_files[name] = RawFileEntry.model_validate(
-        {"name": name, "sha256": digest.hexdigest(), "size": size, "role": role}
+        {"name": name, "sha256": sha256, "size": size, "role": role}
     )
     return path
 
@@ -240,7 +242,7 @@ def _factors(
     return factors if whole else None
 
 
-def _read_sweep(reading: Reading, number: int, sweep: Sweep, sink: Writer | None) -> None:
+def _read_sweep(reading: Reading, number: int, sweep: Sweep, sink: Writer | None, beside: Beside) -> None:
     channels = reading.sheet.channels_of(sweep)
     if sweep.layout is not None and sweep.layout not in reading.sheet.layout:
         reading.findings.append(
@@ -279,7 +281,7 @@ def _read_sweep(reading: Reading, number: int, sweep: Sweep, sink: Writer | None
             f"sweeps/{sweep.name}", stored_columns(channels), index=instants[0] if instants else None
         )
     )
-    gatherer = Gatherer(channels, factors, table)
+    gatherer = Gatherer(channels, factors, table, beside)
     first_lines: dict[str, int] = {}
     whole = True
     for file_number, (name, path) in enumerate(zip(sweep.files, paths, strict=True)):
@@ -287,7 +289,7 @@ def _read_sweep(reading: Reading, number: int, sweep: Sweep, sink: Writer | None
             continue
         before = gatherer.rows
         try:
-            whole &= _read_file(reading, sweep, name, path, gatherer, file_number, first_lines)
+            whole &= _read_file(reading, sweep, name, path, gatherer, file_number, first_lines, beside)
         except BadRequest as error:
             whole = False
             reading.findings.append(
@@ -347,6 +349,7 @@ def _read_file(
     gatherer: Gatherer,
     file_number: int,
     first_lines: dict[str, int],
+    beside: Beside,
 ) -> bool:
     """Rows of one file into the gatherer; whether every cell was as it should be."""
     requests = _requests(gatherer.channels)
@@ -357,12 +360,12 @@ def _read_file(
         gatherer.add(block, file_number)
         report_cells(reading, sweep, name, block.bad_cells, block.bad_cell_count, len(block.lines))
         return not block.bad_cell_count
-    digest = hashlib.sha256()
+    digest = beside.digest()
     with path.open("rb") as stream:
         reader = TableReader(
             stream, file=name, dialect=reading.sheet.dialect_of(sweep), columns=requests, tee=[digest.update]
         )
-        for block in reader.blocks():
+        for block in beside.ahead(reader.blocks()):
             if len(block.lines):
                 first_lines.setdefault(name, int(block.lines[0]))
             gatherer.add(block, file_number)

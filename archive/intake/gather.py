@@ -2,13 +2,12 @@
 
 from __future__ import annotations
 
-import hashlib
 import math
-from typing import Protocol
 
 import numpy as np
 from numpy.typing import NDArray
 
+from archive.intake.beside import Beside
 from archive.intake.dialect import Block
 from archive.intake.reading import LISTED, ChannelFacts, SweepTable
 from archive.store.interface import Column, TableWriter
@@ -17,26 +16,25 @@ from schemas.units import ucum
 
 __all__ = ["Gatherer", "stored_columns"]
 
-KEPT_ROWS = 1_000_000
+KEPT_ROWS = 262_144
 """Rows of one sweep kept in memory for the checks; beyond that every second, fourth, ... row is kept."""
-
-
-class _Digest(Protocol):
-    def update(self, data: bytes, /) -> None: ...
-    def hexdigest(self) -> str: ...
 
 
 class Gatherer:
     """Rows of one sweep as they stream by: statistics of all, values of some, all of them to the sealed file."""
 
     def __init__(
-        self, channels: dict[str, Channel], factors: dict[str, float], table: TableWriter | None
+        self,
+        channels: dict[str, Channel],
+        factors: dict[str, float],
+        table: TableWriter | None,
+        beside: Beside,
     ) -> None:
         self.channels = channels
         self.factors = factors
         self.table = table
         self.facts = {name: ChannelFacts() for name in channels}
-        self.digests: dict[str, _Digest] = {name: hashlib.sha256() for name in channels}
+        self.digests = {name: beside.digest() for name in channels}
         self.kept: dict[str, list[NDArray[np.float64]]] = {name: [] for name in channels}
         self.lines: list[NDArray[np.int64]] = []
         self.file_numbers: list[NDArray[np.int64]] = []
@@ -54,7 +52,7 @@ class Gatherer:
         for name in self.channels:
             values = np.ascontiguousarray(block.columns[name], dtype=np.float64)
             self._count(name, values, block, file_number)
-            self.digests[name].update(values.tobytes())
+            self.digests[name].update(values.data)
             self.kept[name].append(values[chosen] * self.factors[name])
         self.lines.append(block.lines[chosen])
         self.file_numbers.append(numbers[chosen])

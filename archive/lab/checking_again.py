@@ -16,6 +16,7 @@ from pathlib import Path
 import numpy as np
 
 from archive.errors import ArchiveError
+from archive.intake.beside import Beside
 from archive.intake.dialect import Block
 from archive.intake.examine import examined
 from archive.intake.gather import Gatherer
@@ -182,14 +183,15 @@ class _Sealed:
             name: 1.0 if each.quantity == "instant" else unit_factor(each.unit or "", each.quantity)
             for name, each in channels.items()
         }
-        gatherer = Gatherer(channels, factors, None)
         read = {name: self._column(sweep.name, name) for name in (*channels, "source_line", "source_file")}
         lines, files = read.pop("source_line").astype(np.int64), read.pop("source_file").astype(np.int64)
-        for file in np.unique(files):
-            chosen = files == file
-            columns = {name: values[chosen] for name, values in read.items()}
-            gatherer.add(Block(int(lines[chosen][0]), columns, lines[chosen], {}), int(file))
-        table = gatherer.finished(number, sweep)
+        with Beside() as beside:
+            gatherer = Gatherer(channels, factors, None, beside)
+            for file in np.unique(files):
+                chosen = files == file
+                columns = {name: values[chosen] for name, values in read.items()}
+                gatherer.add(Block(int(lines[chosen][0]), columns, lines[chosen], {}), int(file))
+            table = gatherer.finished(number, sweep)
         table.first_lines = dict(entry.first_lines)
         return table
 
