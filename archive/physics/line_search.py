@@ -18,7 +18,7 @@ from archive.physics.fitting import FitResult
 from archive.physics.pulse_response import PulseResponse, smooth_part
 from archive.physics.resonance import Resonance, fit_resonance, resonance_curve
 
-__all__ = ["Line", "LineSearch", "resonance_lines"]
+__all__ = ["HOPELESS", "Line", "LineSearch", "resonance_lines"]
 
 IntArray = npt.NDArray[np.int64]
 
@@ -28,6 +28,13 @@ has that share (derived by summing 1/(1 + 4 k^2))."""
 
 FIT_WIDTHS = 12
 """Half widths on either side of a line that are fitted."""
+
+HOPELESS = 4
+"""Lines refused one after the other, from which on a search ends: what is left is not made of resonances (no source). The fits
+that come to nothing are the ones that take long."""
+
+EVALUATIONS = 300
+"""Of a curve in one fit, after which there is no line: from a filter's frequency and width a resonance takes some ten to fifty."""
 
 WILD = 5.0
 """Residual, in standard deviations, from which on a point is another line's and left out of the fit once (no source)."""
@@ -78,12 +85,15 @@ class LineSearch:
     threshold : float
         Statistic that noise alone reaches with the chance asked for.
     complete : bool
-        False if the search ended because there were as many lines as asked for.
+        False if the search ended because there were as many lines as asked for, or was given up.
+    given_up : bool
+        Whether it ended because nothing but refused lines was found any more; weaker resonances may be left.
     """
 
     lines: tuple[Line, ...]
     threshold: float
     complete: bool
+    given_up: bool = False
 
 
 def resonance_lines(response: PulseResponse, *, most: int = 12, false_alarm: float = 1e-3) -> LineSearch:
@@ -108,7 +118,8 @@ def resonance_lines(response: PulseResponse, *, most: int = 12, false_alarm: flo
     squared magnitude is exponential with mean one, so that n trials exceed s with a chance below ``n exp(-s)`` (derived).
     A line found and fitted, on a background that slopes, is subtracted before the feedthrough is estimated anew and the next
     line is looked for; at the end each resonance is fitted once more with all others subtracted. A tone that is not at a
-    frequency of the grid leaks as one over the distance; that region is left out.
+    frequency of the grid leaks as one over the distance; that region is left out. After `HOPELESS` refused lines in a row, as
+    the edge of a decay without a pulse gives, the search is given up.
     """
     if most < 1:
         raise ValueError(f"most: found {most}, expected at least 1")
@@ -116,15 +127,18 @@ def resonance_lines(response: PulseResponse, *, most: int = 12, false_alarm: flo
         raise ValueError(f"false_alarm: found {false_alarm}, expected between 0 and 1")
     search = _Search(response)
     threshold = math.log(search.trials / false_alarm)
-    while len(search.found) < most:
+    given_up = False
+    while len(search.found) < most and not given_up:
         index, width, statistic = search.strongest()
         if statistic < threshold:
             break
         search.take(index, width, statistic)
-    complete = len(search.found) < most or search.strongest()[2] < threshold
+        last = search.found[-HOPELESS:]
+        given_up = len(last) == HOPELESS and all(each.line.kind == "refused" for each in last)
+    complete = (len(search.found) < most and not given_up) or search.strongest()[2] < threshold
     search.refine()
     lines = sorted((each.line for each in search.found), key=lambda line: -line.statistic)
-    return LineSearch(tuple(lines), threshold, complete)
+    return LineSearch(tuple(lines), threshold, complete, given_up and not complete)
 
 
 @dataclass
@@ -254,6 +268,7 @@ class _Search:
             self.response.frequency[rows], z.real, z.imag, background="sloped",
             standard_uncertainty=self.response.standard_uncertainty[rows], near=near, over_noise=0.0,
             ending=1 / self.response.divisor[rows] if self.response.driven else None,
+            max_evaluations=EVALUATIONS,
         )  # fmt: skip
 
     def _unresolved(self, near: slice, power: FloatArray) -> Line:

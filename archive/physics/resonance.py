@@ -122,6 +122,7 @@ def fit_resonance(
     near: tuple[float, float] | None = None,
     over_noise: float = AMPLITUDE_OVER_NOISE,
     ending: npt.ArrayLike | None = None,
+    max_evaluations: int = 3000,
 ) -> Resonance:
     """Return the one resonance of a sweep, or that there is none in range.
 
@@ -145,6 +146,8 @@ def fit_resonance(
     ending : array_like of complex, optional
         One over the spectrum of the drive at each frequency, where a record may end before the resonator has come to rest: a part
         proportional to it is fitted, too, as ``ending_x`` and ``ending_y`` (see Notes).
+    max_evaluations : int
+        Evaluations of the curve from one start, after which a fit has not converged.
 
     Returns
     -------
@@ -184,10 +187,10 @@ def fit_resonance(
     rounding = (1e-13 * float(np.max(np.abs(z) * weights))) ** 2 * f.size
     if alone <= rounding or float(np.ptp(f)) == 0:
         return _none("no resonance in range: the record does not change", None, sweep, convention)
-    known = None if near is None else sweep.fit(sweep.start_near(*near))
+    known = None if near is None else sweep.fit(sweep.start_near(*near), max_evaluations)
     if known is None or not known.converged:
         known = min(
-            (sweep.fit(start) for start in sweep.starts()),
+            (sweep.fit(start, max_evaluations) for start in sweep.starts()),
             key=lambda result: (not result.converged, result.chi2),
         )
     return _judged(known, sweep, alone=alone, convention=convention, over_noise=over_noise)
@@ -277,7 +280,7 @@ class _Sweep:
                 found.append((float(f[index]), float(f[index]) / width, size, phase, off))
         return found
 
-    def fit(self, start: tuple[float, float, float, float, complex]) -> FitResult:
+    def fit(self, start: tuple[float, float, float, float, complex], max_evaluations: int) -> FitResult:
         """Return the fit of resonance and background from one start."""
         f0, q, height, phase, off = start
         f, z = self.frequency, self.z
@@ -304,7 +307,7 @@ class _Sweep:
             difference = (z - self.curve(p)) * self.weights
             return np.concatenate([difference.real, difference.imag])
 
-        return fit_residuals(residuals, parameters, absolute=False, max_evaluations=3000)
+        return fit_residuals(residuals, parameters, absolute=False, max_evaluations=max_evaluations)
 
     def resonance(self, p: FloatArray) -> ComplexArray:
         """Return the resonant part at the fit's own parameters."""

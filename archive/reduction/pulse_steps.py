@@ -7,7 +7,7 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from archive.physics.line_search import Line, LineSearch, resonance_lines
+from archive.physics.line_search import HOPELESS, Line, LineSearch, resonance_lines
 from archive.physics.pulse_response import pulse_response
 from archive.reduction.background_steps import known_rows
 from archive.reduction.estimate import FloatArray
@@ -155,7 +155,15 @@ def _findings(resonances: list[Line], tones: list[Line], search: LineSearch) -> 
                 what="no line of this record is a resonance wider than the resolution; nothing was fitted",
             )
         )  # fmt: skip
-    if len(resonances) > SLOTS or len(tones) > SLOTS or not search.complete:
+    if search.given_up:
+        found.append(
+            Finding(
+                code="search-given-up", severity="note",
+                what=f"the search was given up after {HOPELESS} lines in a row that are no resonance; weaker resonances may be left",
+                remedy="narrow the range (low_hz, high_hz) in a copy of the plan; if there was a pulse, give its column",
+            )
+        )  # fmt: skip
+    elif len(resonances) > SLOTS or len(tones) > SLOTS or not search.complete:
         found.append(
             Finding(
                 code="lines-left", severity="note",
@@ -230,7 +238,7 @@ PULSE_STEPS: tuple[Step, ...] = (
         sentence="The temperature of the record is {temperature}; its drift over {range_mK} mK is taken as a rectangular distribution.", spread="refit",
     ),
     Step(
-        name="pulse-lines", version=2, function=pulse_lines, parameters=PulseLineParameters,
+        name="pulse-lines", version=3, function=pulse_lines, parameters=PulseLineParameters,
         takes={
             "signal": Port("amplitude|voltage|current", "array", "response against time"), "rate": Port("frequency", "number", "readings per time"),
             "pulse": Port("drive|voltage|current|number", "array", "pulse over the same time", optional=True),

@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 import math
+import time
 
 import numpy as np
 import pytest
 
-from archive.physics.line_search import resonance_lines
+from archive.physics.line_search import HOPELESS, resonance_lines
 from archive.physics.pulse_response import pulse_response
 
 RATE, POINTS = 4096.0, 8192
@@ -84,6 +85,23 @@ def test_a_record_that_ends_while_it_rings_gives_no_broader_line() -> None:
     assert (np.abs(np.std(pulls, axis=0) - 1) < 4 / math.sqrt(2 * count)).all()
     # Without what was cut off the width comes out some per cent too large.
     assert max(relative) < 0.015
+
+
+def test_a_broad_decay_without_a_pulse_is_found_and_the_search_given_up_in_time() -> None:
+    """The edge at which a decay begins has no end of lines that are no resonance; some of their fits took minutes."""
+    rate, frequency, quality = 1e5, 1000.0, 5.0
+    t = np.arange(2000) / rate
+    decay = np.exp(-np.pi * frequency / quality * t) * np.cos(2 * np.pi * frequency * t)
+    began = time.process_time()
+    search = resonance_lines(
+        pulse_response(decay + np.random.default_rng(1).normal(0, 1e-3, t.size), rate=rate, pulse=None)
+    )
+    assert time.process_time() - began < 10
+    assert [line.kind for line in search.lines].count("refused") == HOPELESS
+    assert (search.given_up, search.complete) == (True, False)
+    (line,) = [each for each in search.lines if each.kind == "resonance"]
+    assert line.frequency == pytest.approx(frequency, rel=0.01)
+    assert line.quality_factor == pytest.approx(quality, rel=0.05)
 
 
 def test_noise_alone_has_no_line() -> None:
