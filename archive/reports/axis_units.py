@@ -21,7 +21,7 @@ _SYMBOLS = {
     "temperature": "T", "period": "P", "dissipation": "1/Q", "amplitude": "A", "drive": "drive", "frequency": "f", "time": "t", "pressure": "p",
     "amount": "n", "specific_amount": "n per mass", "relative_pressure": "p/p\u2080", "pressure_ratio": "p/p\u2080", "coverage": "n/A",
     "areal_mass_density": "\u03c3\u209b", "resistance": "R", "voltage": "U", "current": "I", "heat_capacity": "C", "quality_factor": "Q",
-    "molar_heat_capacity": "C", "temperature_difference": "\u0394T", "density": "\u03c1", "angular_momentum": "L", "length": "d", "speed": "c", "mutual_inductance": "M",
+    "molar_heat_capacity": "C", "temperature_difference": "\u0394T", "density": "\u03c1", "angular_momentum": "L", "length": "d", "speed": "c", "mutual_inductance": "M", "amount_sensitivity": "dP/dn",
 }  # fmt: skip
 # Small differences of a quantity are read in these, smallest first.
 _FINE_UNITS: dict[str, tuple[str, ...]] = {"period": ("ps", "ns"), "frequency": ("uHz", "mHz")}

@@ -77,8 +77,8 @@ def _course(course: Course, looks: dict[str, int]) -> Strip | None:
     unit = axis_unit(low, high, first.quantity, first.unit)
     shown = (values - unit.offset) * unit.factor
     ends = (np.array([low, high]) - unit.offset) * unit.factor
-    name = unit.name.replace("amount sensitivity", "dP/dn").replace("fraction", "")
-    axis = axis_of(name, [ends])
+    # A pure number has no more to say than the name above the strip.
+    axis = axis_of("" if unit.name == "fraction" else unit.name, [ends])
     if axis is None:
         return None
     margin = 0.15 * (axis.high - axis.low)

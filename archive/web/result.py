@@ -59,7 +59,7 @@ def result(request: Request, address: Address) -> Response:
         output=output,
         step=document.steps[output.step - 1],
         zone=lab.sweep_facts(document.sweep).accession.sheet.time_zone,
-        marks=lab.marks(own),
+        marks=_marks(lab, address, document),
         stale=[each.text for each in stale],
         relative=_relative(output),
         budget=list(_budget(document, output)),
@@ -70,6 +70,12 @@ def result(request: Request, address: Address) -> Response:
         more=len(using) - _MOST,
         others=list(_others(lab, document, output)),
     )
+
+
+def _marks(lab: Archive, address: Address, document: ReductionDocument) -> dict[str, object]:
+    """What was said later of the result, and of the sweep that it was found from."""
+    amended = lab.marks(document.sweep).get("amended")
+    return {**lab.marks(address.text), **({"amended": amended} if amended else {})}
 
 
 def _relative(output: OutputEntry) -> str:

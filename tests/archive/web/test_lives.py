@@ -10,7 +10,10 @@ from starlette.testclient import TestClient
 
 from archive import Archive
 from archive.errors import UnknownAddress
+from archive.reduction.monte_carlo import Request
+from archive.web import application
 from tests.filled_archive import PLAIN
+from tests.revisable_cooldown import write_calibrated
 
 
 def _drawing(text: str) -> str:
@@ -93,3 +96,21 @@ def test_a_result_tells_its_budget_its_use_and_how_it_stands(client: TestClient,
     assert client.get(f"/at/{own}/no_such_thing").status_code == 404
     with Archive.open(root, read_only=True) as lab:
         assert lab.trace(f"{own}#empty_period", forward=True).children == ()
+
+
+def test_a_result_that_was_found_again_says_so_and_shows_both(tmp_path: Path) -> None:
+    first, second = (f"2026-03/s001@empty-cell.{number}" for number in (1, 2))
+    with Archive.create(tmp_path / "lab") as lab:
+        lab.ingest(write_calibrated(tmp_path / "2026-03"))
+        for trials in (None, Request(trials=20)):
+            (outcome,) = lab.reduce("2026-03", plan="empty-cell", sweep="s001", monte_carlo=trials)
+            assert outcome.problem is None
+        with TestClient(application(lab.root), base_url="http://localhost") as visitor:
+            old = visitor.get(f"/at/{first}/empty_period").text
+            assert f'superseded by</strong>: <a class="address" href="/at/{second}"' in old
+            table = old[old.index('<h2 id="others">') :]
+            states = re.findall(r"<td>(current|superseded|withdrawn)</td>", table)
+            assert states == ["superseded", "current"]
+            assert "20 trials" in visitor.get(f"/at/{second}/empty_period").text
+            lab.withdraw("2026-03/s001", why="the wrong cell was cabled", by="data steward")
+            assert "the wrong cell was cabled" in visitor.get(f"/at/{second}/empty_period").text
