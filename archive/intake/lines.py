@@ -13,7 +13,7 @@ from typing import BinaryIO, Final
 
 __all__ = ["LineBlocks"]
 
-BLOCK_BYTES: Final = 4 << 20
+BLOCK_BYTES: Final = 1 << 20
 READ_BYTES: Final = 1 << 20
 LONGEST_LINE: Final = 1 << 20
 """A megabyte without a line end is no table; without this bound one line could fill the memory."""
