@@ -15,77 +15,60 @@ from pathlib import Path
 from types import TracebackType
 from typing import TYPE_CHECKING, Any, Self
 
-import numpy as np
-from numpy.typing import NDArray
-
 from archive.errors import ArchiveBusy, ArchiveError, BadRequest, UnknownAddress
-from archive.index import (
-    AccessionRow,
-    CellUse,
-    CooldownRow,
-    FindingRow,
-    Index,
-    RecordRow,
-    ReductionRow,
-    ResultRow,
-    SearchQuery,
-    SweepRow,
-    WithdrawalRow,
-)
-from archive.index.acts import ActDocument
+from archive.index import Index, SearchQuery
 from archive.index.engine import for_reading_only
-from archive.intake import ingest as intake_ingest
-from archive.intake.examine import examined
 from archive.intake.settings import SETTINGS_NAME, Settings, read_settings, settings_text
-from archive.lab import calibrating, exchanging, keeping, reducing, reporting, showing
-from archive.lab.act_outcomes import ActOutcome, WithdrawOutcome
-from archive.lab.amending import amend
-from archive.lab.checking import check_folder, earlier_runs, folder_report, require_folder
-from archive.lab.comparing import Comparison, compare
-from archive.lab.crew import Crew
-from archive.lab.curves.columns import facts_of
-from archive.lab.forward import forward as lineage_forward
-from archive.lab.index_check import index_damage
 from archive.lab.journaling import AFTERWARDS, Acts
-from archive.lab.keeping import MirrorOutcome
-from archive.lab.life import Life, Rests, life, resting
-from archive.lab.lineage_pictures import lineage_picture, sweep_picture
-from archive.lab.marks import marked, marks_of
-from archive.lab.outcomes import CheckReport, IngestOutcome, ReduceOutcome, ReplayReport
 from archive.lab.place import find_root, made, make_root, unmade
-from archive.lab.plan_figure import PlanFigure, plan_figure
-from archive.lab.renewing import reduce_stale
-from archive.lab.replaying import replay_all
-from archive.lab.report_files import manifest_digest, written_reports
-from archive.lab.revising import revise
 from archive.lab.source import LabSource, key_of
-from archive.lab.stale import Stale, stale
-from archive.lab.tracing import backward
-from archive.lab.viewing import archive_html, reduction_view, result, sweep_view
-from archive.lab.views import ReductionView, Result, RowList, SweepView
-from archive.lab.withdrawing import withdraw
-from archive.reduction.calibration_comparison import Drift
-from archive.reduction.facts import SweepFacts
-from archive.reduction.monte_carlo import Request
-from archive.reduction.software import software
-from archive.reduction.trace import TraceNode
+from archive.lab.views import RowList
 from archive.store.durable import archive_lock
-from archive.store.fixity import fixity
-from archive.store.interface import Damage, SealedFile
-from archive.store.journal import Entry
-from archive.store.local import LocalStore, open_store
-from archive.store.mend import Mended
+from archive.store.interface import SealedFile
+from archive.store.local import open_store
 from archive.store.staging import sweep_staging
 from schemas.address import parse_address
-from schemas.lineage import ReductionDocument
-from schemas.plan import Plan
-from schemas.thermometer import Calibration
 
 if TYPE_CHECKING:
+    import numpy as np
+    from numpy.typing import NDArray
+
+    from archive.index import (
+        AccessionRow,
+        CellUse,
+        CooldownRow,
+        FindingRow,
+        RecordRow,
+        ReductionRow,
+        ResultRow,
+        SweepRow,
+        WithdrawalRow,
+    )
+    from archive.index.acts import ActDocument
+    from archive.lab import exchanging
+    from archive.lab.act_outcomes import ActOutcome, WithdrawOutcome
+    from archive.lab.comparing import Comparison
     from archive.lab.curves.chart import Asked, Chart, Outline
+    from archive.lab.keeping import MirrorOutcome
+    from archive.lab.life import Life, Rests
+    from archive.lab.outcomes import CheckReport, IngestOutcome, ReduceOutcome, ReplayReport
+    from archive.lab.plan_figure import PlanFigure
     from archive.lab.plane import PlaneState
+    from archive.lab.stale import Stale
+    from archive.lab.views import ReductionView, Result, SweepView
+    from archive.reduction.calibration_comparison import Drift
+    from archive.reduction.facts import SweepFacts
+    from archive.reduction.monte_carlo import Request
+    from archive.reduction.trace import TraceNode
     from archive.reports import CooldownView
     from archive.reports.plane_view import PlaneAxis, PlaneView, Window
+    from archive.store.interface import Damage
+    from archive.store.journal import Entry
+    from archive.store.local import LocalStore
+    from archive.store.mend import Mended
+    from schemas.lineage import ReductionDocument
+    from schemas.plan import Plan
+    from schemas.thermometer import Calibration
 
 __all__ = ["Archive"]
 
@@ -305,6 +288,8 @@ class Archive:
 
     def check(self, folder: Path | str, *, progress: Progress = _quiet) -> CheckReport:
         """All findings on a cooldown folder, with the archive's records and thresholds; nothing is stored."""
+        from archive.lab.checking import check_folder
+
         return check_folder(
             Path(folder), thresholds=self.settings.thresholds, source=self._source, progress=progress
         )
@@ -323,6 +308,12 @@ class Archive:
         ArchiveBusy
             If another process is writing.
         """
+        from archive.intake import ingest as intake_ingest
+        from archive.intake.examine import examined
+        from archive.lab.checking import earlier_runs, folder_report, require_folder
+        from archive.lab.outcomes import CheckReport, IngestOutcome
+        from archive.reduction.software import software
+
         folder = Path(folder)
         require_folder(folder)
         thresholds = self.settings.thresholds
@@ -354,6 +345,8 @@ class Archive:
 
     def plans(self) -> list[Plan]:
         """Shipped plans and those that reductions of this archive used."""
+        from archive.lab import reducing
+
         return reducing.plans(self._source)
 
     def reduce(
@@ -389,6 +382,9 @@ class Archive:
         list of ReduceOutcome
             One per sweep and plan, in the order carried out; a problem stands in the outcome and stops no other.
         """
+        from archive.lab import reducing
+        from archive.lab.crew import Crew
+
         # Trials may take an hour: they run without the lock, which is taken to seal.
         with self._writing() if monte_carlo is None else nullcontext():
             return reducing.reduce(
@@ -424,6 +420,8 @@ class Archive:
 
     def stale(self, cooldown: str | None = None) -> list[Stale]:
         """Current reductions that rest on something read otherwise now, those that others rest on first."""
+        from archive.lab.stale import stale
+
         return stale(self._source, cooldown=cooldown)
 
     def reduce_stale(
@@ -436,6 +434,9 @@ class Archive:
         progress: Progress = _quiet,
     ) -> list[ReduceOutcome]:
         """Make stale reductions anew with the newest revisions that hold; see `archive.lab.renewing.reduce_stale`."""
+        from archive.lab.crew import Crew
+        from archive.lab.renewing import reduce_stale
+
         with self._writing():
             return reduce_stale(
                 self._source, cooldown, clock=self._clock, seal=self._seal_reduction, progress=progress,
@@ -444,6 +445,8 @@ class Archive:
 
     def revise(self, sheet: Path | str, *, by: str | None = None, dry_run: bool = False) -> ActOutcome:
         """Add the revision of a record or plan that a sheet describes, outside a cooldown; or show what it would do."""
+        from archive.lab.revising import revise
+
         with nullcontext() if dry_run else self._writing():
             seal = None if dry_run else self._seal_act
             return revise(
@@ -453,6 +456,8 @@ class Archive:
 
     def amend(self, sheet: Path | str, *, by: str | None = None, dry_run: bool = False) -> ActOutcome:
         """Add the amendment of a sealed cooldown that a sheet describes; or show what it would do."""
+        from archive.lab.amending import amend
+
         with nullcontext() if dry_run else self._writing():
             seal = None if dry_run else self._seal_act
             return amend(
@@ -462,6 +467,8 @@ class Archive:
 
     def withdraw(self, address: str, *, why: str, by: str | None = None) -> WithdrawOutcome:
         """Mark something as not to be used any more; it stays, and what rests on it is flagged."""
+        from archive.lab.withdrawing import withdraw
+
         with self._writing():
             return withdraw(self._source, address, why=why, by=by, clock=self._clock, seal=self._seal_act)
 
@@ -484,6 +491,8 @@ class Archive:
 
     def replay(self, address: str) -> ReplayReport:
         """Compute a reduction again from raw and compare it with what was sealed."""
+        from archive.lab import reducing
+
         return reducing.replay(self._source, address, clock=self._clock)
 
     def replay_all(
@@ -494,16 +503,23 @@ class Archive:
         progress: Callable[[int, int, str], None] | None = None,
     ) -> Iterator[tuple[str, ReplayReport | ArchiveError]]:
         """Every reduction computed again by some processes; see `archive.lab.replaying.replay_all`."""
+        from archive.lab.crew import Crew
+        from archive.lab.replaying import replay_all
+
         return replay_all(
             self._source, clock=self._clock, crew=Crew(self.root, jobs, executor), progress=progress
         )
 
     def compare(self, first: str, second: str) -> Comparison:
         """Two reductions side by side: parameters, inputs, results with the significance of their change, arrays."""
+        from archive.lab.comparing import compare
+
         return compare(self._source, first, second)
 
     def compare_figure(self, found: Comparison, *, kind: str = "pdf") -> bytes:
         """Figure of a comparison, as PDF or SVG."""
+        from archive.lab import reporting
+
         return reporting.comparison(self._source, found, kind=kind)
 
     # Finding and showing ------------------------------------------------------------------------------------------
@@ -584,6 +600,8 @@ class Archive:
         UnknownAddress
             If there is none.
         """
+        from archive.lab import reporting
+
         return reporting.view(self._source, self.name, name, reductions=False)
 
     def findings(self, address: str) -> list[FindingRow]:
@@ -640,17 +658,25 @@ class Archive:
         address : str
             Such as `2026-03/s017`.
         """
+        from archive.lab.viewing import sweep_view
+
         return sweep_view(self._source, address)
 
     def reduction(self, address: str) -> ReductionView:
         """Arrays of a reduction by name, with uncertainties and units beside them, and its results."""
+        from archive.lab.viewing import reduction_view
+
         return reduction_view(self._source, address)
 
     def result(self, address: str) -> Result:
         """One number with uncertainty and unit, by an address such as `2026-03/s017@film-transition.2#T_KT`."""
+        from archive.lab.viewing import result
+
         return result(self._source, address)
 
     def _repr_html_(self) -> str:
+        from archive.lab.viewing import archive_html
+
         return archive_html(self.name, str(self.root), self.statistics(), self.cooldowns())
 
     def array(self, address: str) -> NDArray[np.float64]:
@@ -664,6 +690,8 @@ class Archive:
 
     def show(self, address: str) -> dict[str, Any]:
         """Everything the archive knows of a thing, as JSON-able content with `address` and `what`."""
+        from archive.lab import showing
+
         return showing.show(self._source, address)
 
     def chart(self, asked: Asked) -> Chart:
@@ -692,10 +720,14 @@ class Archive:
 
     def plan_figure(self, address: str, *, kind: str = "svg") -> PlanFigure:
         """Figure that the plan of a reduction has, as SVG or PDF, with its caption; or why there is none."""
+        from archive.lab.plan_figure import plan_figure
+
         return plan_figure(self._source, address, kind=kind)
 
     def sweep_facts(self, address: str) -> SweepFacts:
         """A sweep with what its sheet and the records say of it, as it is to be read: amended, shown even if withdrawn."""
+        from archive.lab.curves.columns import facts_of
+
         return facts_of(self._source, address)
 
     def reduction_document(self, address: str) -> ReductionDocument:
@@ -704,20 +736,30 @@ class Archive:
 
     def marks(self, address: str) -> dict[str, Any]:
         """What was said of a thing after it was sealed: withdrawn, amended, superseded, resting on something withdrawn."""
+        from archive.lab.marks import marks_of
+
         return marks_of(self._source, parse_address(address))
 
     def sweep_picture(self, facts: SweepFacts, *, link: Callable[[str], str | None]) -> str | None:
         """A sweep, its current reductions and what these took, as SVG; None where nothing is reduced."""
+        from archive.lab.lineage_pictures import sweep_picture
+
         return sweep_picture(self._source, facts, link=link)
 
     def lineage_picture(
         self, address: str, *, forward: bool = False, link: Callable[[str], str | None]
     ) -> str:
         """Lineage of a thing down to raw files, or forward to all that rests on it, as SVG."""
+        from archive.lab.lineage_pictures import lineage_picture
+
         return lineage_picture(self._source, address, forwards=forward, link=link)
 
     def trace(self, address: str, *, forward: bool = False) -> TraceNode:
         """Lineage of a result, array, sentence or figure down to raw files and lines; or forward, to all that rests on it."""
+        from archive.lab.forward import forward as lineage_forward
+        from archive.lab.marks import marked
+        from archive.lab.tracing import backward
+
         found = lineage_forward(self._source, address) if forward else backward(self._source, address)
         return marked(self._source, found)
 
@@ -725,34 +767,48 @@ class Archive:
         self, reduction: str, *, name: str | None = None, revision: int | None = None
     ) -> Calibration:
         """Calibration record that a reduction found, as a new record or the next revision of one; see `calibrating`."""
+        from archive.lab import calibrating
+
         return calibrating.made_calibration(self._source, reduction, name=name, revision=revision)
 
     def calibration_drift(self, thermometer: str) -> list[Drift]:
         """Each calibration of a thermometer held against the one before it."""
+        from archive.lab import calibrating
+
         return calibrating.calibration_drift(self._source, thermometer)
 
     def calibrations_against_last(self, thermometer: str) -> tuple[tuple[Calibration, ...], list[Drift]]:
         """Every calibration of a thermometer, oldest first, and the last one held against each before it."""
+        from archive.lab import calibrating
+
         return calibrating.calibrations_against_last(self._source, thermometer)
 
     def life(self, name: str) -> Life:
         """Life story of a cell, substrate, thermometer, calibration, sample, cryostat or plan over all cooldowns."""
+        from archive.lab.life import life
+
         return life(self._source, name)
 
     def resting(self, address: str) -> Rests:
         """Reductions that rest on a revision of a record or plan, directly or through others, up to 300 of them."""
+        from archive.lab.life import resting
+
         return resting(self._source, address)
 
     # Telling ------------------------------------------------------------------------------------------------------
 
     def run_sheet(self, cooldown: str, *, paper: str = "a4") -> dict[str, bytes]:
         """Run sheet of a cooldown as HTML, PDF and JSON, by file name."""
+        from archive.lab import reporting
+
         return reporting.run_sheet(self._source, self.name, cooldown, paper=paper)
 
     def appendix(
         self, addresses: Sequence[str], *, title: str | None = None, level: str = "section"
     ) -> dict[str, bytes]:
         """Methods appendix behind cooldowns, sweeps or reductions: LaTeX, bibliography, figures, by file name."""
+        from archive.lab import reporting
+
         return reporting.appendix(self._source, self.name, addresses, title=title, level=level)
 
     def write_reports(
@@ -768,6 +824,8 @@ class Archive:
         of : sequence of str
             Addresses of what they tell, for the journal; left out: the names of the files.
         """
+        from archive.lab.report_files import manifest_digest, written_reports
+
         written = written_reports(files, Path(target))
         self._given_away("report", of or sorted(files), manifest_digest(files), f"{len(files)} files")
         return written
@@ -776,6 +834,8 @@ class Archive:
 
     def provenance(self, address: str, *, notation: str = "json") -> exchanging.Provenance:
         """Provenance in the terms of W3C PROV, as `json` (PROV-JSON) or `provn` (PROV-N): a cooldown, or what lies behind a thing."""
+        from archive.lab import exchanging
+
         return exchanging.provenance(self._source, address, notation=notation)
 
     def export(
@@ -788,6 +848,9 @@ class Archive:
         progress: Callable[[int, int, str], None] = _uncounted,
     ) -> exchanging.ExportOutcome:
         """Write a package of some addresses, or of the whole archive when none is named, with all that they rest on."""
+        from archive.lab import exchanging
+        from archive.reduction.software import software
+
         if self.root in (place := Path(target).resolve(), *place.parents):
             raise BadRequest(
                 "a package cannot lie in the archive itself", file=str(target), remedy="name another folder"
@@ -826,6 +889,8 @@ class Archive:
         progress: Callable[[int, int, str], None] = _uncounted,
     ) -> exchanging.ImportOutcome:
         """Take a package that `export` made into this archive, byte for byte: all of it or nothing."""
+        from archive.lab import exchanging
+
         with self._writing(), self._acts.entered_as("import"):
             return exchanging.taken_in(
                 self._source, self._store, Path(folder), record=self._record, dry=dry_run, progress=progress
@@ -844,6 +909,9 @@ class Archive:
             Whether the outcome is entered in the journal, where the archive can be written to.
         progress : callable, optional
         """
+        from archive.lab.index_check import index_damage
+        from archive.store.fixity import fixity
+
         recorded = self._recorded()
         damage = fixity(self._store, recorded, progress)
         hurt = {each.key for each in damage if each.kind != "stray"}
@@ -860,6 +928,8 @@ class Archive:
         self, other: Path | str, *, progress: Callable[[int, int, str], None] | None = None
     ) -> list[Mended]:
         """Bring damaged or missing sealed files back from another copy of the archive; see `archive.store.mend`."""
+        from archive.lab import keeping
+
         with self._writing():
             hurt = {each.key for each in self.fixity() if each.kind != "stray"}
             outcomes = keeping.mend(
@@ -881,6 +951,8 @@ class Archive:
         progress: Callable[[int, int, str], None] | None = None,
     ) -> MirrorOutcome:
         """Bring a mirror of this archive in another folder up to date; see `archive.lab.keeping.mirror`."""
+        from archive.lab import keeping
+
         return keeping.mirror(
             self._store,
             self.settings,
@@ -923,6 +995,8 @@ class Archive:
         DamagedFile
             If a sealed file is damaged; the old index stays.
         """
+        from archive.lab import reducing
+
         root = find_root(None if start is None else Path(start))
         settings = read_settings(root)
         counts = reducing.rebuilt_index(

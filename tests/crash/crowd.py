@@ -79,7 +79,9 @@ def _child(work: Callable[[], dict[str, object]]) -> int:
 
 def main(root: Path, folders: Path, writers: int, readers: int) -> None:
     """Let them loose, and wait for all."""
-    import archive.lab.door  # noqa: F401 - once, before the children
+    import archive.intake.ingest
+    import archive.lab.door
+    import archive.lab.reducing  # noqa: F401
 
     done = folders / "done"
     common = folders / "common"

@@ -13,6 +13,7 @@ import hashlib
 import importlib
 import json
 import os
+import pkgutil
 import re
 import shutil
 import signal
@@ -21,6 +22,8 @@ import traceback
 from collections.abc import Iterable, Iterator, Sequence
 from pathlib import Path
 from typing import Any
+
+import archive.lab
 
 __all__: list[str] = []
 
@@ -227,8 +230,10 @@ def _lent(asked: dict[str, Any]) -> None:
 
 def main() -> None:
     """Serve until there is no more input."""
-    for name in ("archive.lab.door", "archive.reduction.steps", "tests.crash.operations"):
-        importlib.import_module(name)  # what children will need
+    # What children will need; the door itself imports it when it is asked for.
+    behind = [f"archive.lab.{module.name}" for module in pkgutil.iter_modules(archive.lab.__path__)]
+    for name in (*behind, "archive.intake.ingest", "archive.reduction.steps", "tests.crash.operations"):
+        importlib.import_module(name)
     _compiled_once()
     _say("ready")
     for line in sys.stdin:
