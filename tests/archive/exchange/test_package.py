@@ -353,7 +353,7 @@ def test_an_import_waits_for_no_other_writer(
 ) -> None:
     there = other()
     with archive_lock(there.root):
-        monkeypatch.setattr("archive.lab.door.archive_lock", lambda root: archive_lock(root, wait_s=0.0))
+        monkeypatch.setattr("archive.lab.opened.archive_lock", lambda root: archive_lock(root, wait_s=0.0))
         with pytest.raises(ArchiveBusy):
             there.import_package(package)
 

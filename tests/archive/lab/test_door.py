@@ -189,7 +189,7 @@ def test_a_sealed_file_without_index_rows_is_completed_on_opening(sqlite_lab: Ar
 
 
 def test_one_writer_at_a_time(lab: Archive, folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setattr("archive.lab.door.archive_lock", lambda root: archive_lock(root, wait_s=0.1))
+    monkeypatch.setattr("archive.lab.opened.archive_lock", lambda root: archive_lock(root, wait_s=0.1))
     with archive_lock(lab.root), pytest.raises(ArchiveBusy) as caught:
         lab.ingest(folder)
     assert caught.value.exit_code == 4

@@ -301,7 +301,7 @@ def test_what_is_given_away_is_entered_with_its_digest(
         def busy(*_: object) -> None:
             raise ArchiveBusy("another process is writing")
 
-        monkeypatch.setattr("archive.lab.door.archive_lock", busy)
+        monkeypatch.setattr("archive.lab.handing.archive_lock", busy)
         lab.write_reports({"again.json": prov}, tmp_path, of=["2026-03"])
         assert lab.notices == [
             "the journal does not tell of this report: another process was writing all the while"

@@ -126,7 +126,7 @@ def test_a_full_disk_keeps_no_reader_out(sqlite_lab: Archive, monkeypatch: pytes
     """What an interruption left waits until there is room."""
     sqlite_lab.close()
     (sqlite_lab.root / "staging" / "left").write_text("")
-    monkeypatch.setattr("archive.lab.door.sweep_staging", raiser(NO_SPACE))
+    monkeypatch.setattr("archive.lab.opened.sweep_staging", raiser(NO_SPACE))
     with Archive.open(sqlite_lab.root) as again:
         assert again.cooldowns() == []
         assert "No space left on device" in again.notices[0]
