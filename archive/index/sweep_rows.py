@@ -7,7 +7,7 @@ from collections.abc import Iterator, Sequence
 
 from sqlalchemy import Connection
 
-from archive.index import act_queries, queries
+from archive.index import act_queries, queries, sweep_queries
 from archive.index.act_answers import WithdrawalRow
 from archive.index.answers import SweepResult, SweepRow
 from archive.index.flags import flagged_now
@@ -26,7 +26,7 @@ def sweep_rows(connection: Connection, query: queries.Query) -> list[SweepRow]:
     connection : Connection
         In one reading transaction, so that the parts fit each other.
     query : Select
-        One of `queries.search` and `queries.sweeps`.
+        One of `sweep_queries.search` and `sweep_queries.sweeps`.
     """
     found = list(connection.execute(query).mappings())
     addresses = [row["address"] for row in found]
@@ -34,12 +34,14 @@ def sweep_rows(connection: Connection, query: queries.Query) -> list[SweepRow]:
     channels: dict[tuple[str, str], list[str]] = defaultdict(list)
     results = results_of(connection, addresses)
     amended: dict[str, list[str]] = defaultdict(list)
-    withdrawn = _withdrawn(connection) if connection.execute(queries.anything_withdrawn()).first() else {}
+    withdrawn = (
+        _withdrawn(connection) if connection.execute(sweep_queries.anything_withdrawn()).first() else {}
+    )
     flagged = flagged_now(connection) if withdrawn else {}
     for some in _pieces(addresses):
-        for accession, address, thermometer in connection.execute(queries.thermometers(), some):
+        for accession, address, thermometer in connection.execute(sweep_queries.thermometers(), some):
             thermometers[accession, address].append(thermometer)
-        for accession, address, channel in connection.execute(queries.channel_names(), some):
+        for accession, address, channel in connection.execute(sweep_queries.channel_names(), some):
             channels[accession, address].append(channel)
         for address, amendment in connection.execute(act_queries.amendments_of_sweeps(some=True), some):
             amended[address].append(amendment)
@@ -75,7 +77,7 @@ def results_of(connection: Connection, addresses: Sequence[str]) -> dict[str, li
     """
     results: dict[str, list[SweepResult]] = defaultdict(list)
     for some in _pieces(addresses):
-        for address, *result in connection.execute(queries.sweep_results(), some):
+        for address, *result in connection.execute(sweep_queries.sweep_results(), some):
             results[address].append(SweepResult(*result))
     return dict(results)
 
