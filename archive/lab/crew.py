@@ -7,7 +7,6 @@ seals and records does it in one order, whatever the number of workers; only so 
 from __future__ import annotations
 
 import multiprocessing
-import pickle
 import signal
 import sys
 import threading
@@ -97,10 +96,10 @@ class Crew:
         if self.jobs == 1 and self.executor is None:
             yield _Here(reading)
             return
-        order = pickle.dumps(_Order(uuid.uuid4().hex, self.root, reading.revisions))
+        order = _Order(uuid.uuid4().hex, self.root, reading.revisions)
         if self.executor is not None:
             with at_cluster(self.executor) as (submit, threads, lost):
-                # With each task, since a worker may come late or come again.
+                # With each task (revisions that are tried out, and little else), since a worker may come late or come again.
                 yield _There(submit, partial(_by_order, order), threads * _AHEAD, lost)
             return
         with _processes(self.jobs, order) as pool:
@@ -154,7 +153,7 @@ class _There:
 
 
 @contextmanager
-def _processes(count: int, order: bytes) -> Iterator[ProcessPoolExecutor]:
+def _processes(count: int, order: _Order) -> Iterator[ProcessPoolExecutor]:
     context = _context()
     others = {each.pid for each in multiprocessing.active_children()}
     pool = ProcessPoolExecutor(count, mp_context=context, initializer=_begin, initargs=(order,))
@@ -189,12 +188,12 @@ class _Order:
     revisions: Revisions
 
 
-_order_here: list[bytes] = []
+_order_here: list[_Order] = []
 _opened: dict[str, tuple[Index, EffectiveSource]] = {}
 _one_at_a_time = threading.Lock()
 
 
-def _begin(order: bytes) -> None:
+def _begin(order: _Order) -> None:
     """Take the order once in each process, and end without words when the person stops the command."""
     signal.signal(signal.SIGINT, signal.SIG_DFL)
     _order_here[:] = [order]
@@ -204,16 +203,15 @@ def _in_process(work: Callable[[EffectiveSource, _Task], _Result], task: _Task) 
     return _by_order(_order_here[0], work, task)
 
 
-def _by_order(order: bytes, work: Callable[[EffectiveSource, _Task], _Result], task: _Task) -> _Result:
+def _by_order(order: _Order, work: Callable[[EffectiveSource, _Task], _Result], task: _Task) -> _Result:
     """Carry out a task on the archive that an order names, which stays open until another order comes."""
-    told: _Order = pickle.loads(order)  # noqa: S301 - from the process that gives the tasks
     # Libraries of fits and HDF5 are not asked to serve two threads.
     with _one_at_a_time:
-        if told.token not in _opened:
+        if order.token not in _opened:
             for index, _ in _opened.values():
                 index.close()
             _opened.clear()
-            index = Index.open(read_settings(told.root).index_address(told.root), read_only=True)
-            source = LabSource(open_store(told.root), index)
-            _opened[told.token] = (index, EffectiveSource(source, revisions=told.revisions))
-        return work(_opened[told.token][1], task)
+            index = Index.open(read_settings(order.root).index_address(order.root), read_only=True)
+            source = LabSource(open_store(order.root), index)
+            _opened[order.token] = (index, EffectiveSource(source, revisions=order.revisions))
+        return work(_opened[order.token][1], task)

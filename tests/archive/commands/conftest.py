@@ -42,4 +42,4 @@ def run() -> Callable[..., Result]:
 def demonstration(tmp_path_factory: pytest.TempPathFactory) -> tuple[Path, subprocess.CompletedProcess[str]]:
     """Folder of the demonstration, and how its command ended."""
     folder = tmp_path_factory.mktemp("commands") / "stillroom-demo"
-    return folder, child("demo", str(folder), seconds=1200)
+    return folder, child("demo", str(folder), seconds=1200, counted=False)
